@@ -1,0 +1,1 @@
+//! A checked design in, every result of its nine conditions out.

@@ -1,0 +1,1 @@
+//! Ideal parts, netlists, and the state equations of a netlist for one set of closed switches.

@@ -1,0 +1,1 @@
+//! What joins stage and compensator: the modulator and its delay.

@@ -1,0 +1,1 @@
+//! The power stage: topologies, operating point, averaged model, landmarks.

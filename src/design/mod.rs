@@ -1,0 +1,1 @@
+//! The document an engineer enters, its check and its file.

@@ -1,0 +1,1 @@
+//! Linear systems: state space, zeros-poles-gain, margins, stability, exact time response.

@@ -1,0 +1,2 @@
+//! Chooses between the window and the terminal.
+fn main() {}

@@ -1,0 +1,1 @@
+//! Numbers as engineers write them, and the rows of the table of entries.

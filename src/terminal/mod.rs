@@ -1,0 +1,1 @@
+//! The command line: the same results as text and JSON.

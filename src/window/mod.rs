@@ -1,0 +1,1 @@
+//! The desktop window: shows an analysis, edits a design, computes no electronics.
