@@ -1,1 +1,27 @@
-//! The power stage: topologies, operating point, averaged model, landmarks.
+//! The power stage: one file per topology, operating point, averaged model, landmarks.
+//!
+//! A topology draws its netlist once ([`Topology`]); everything else follows from that netlist by general methods:
+//! the duty ratio that gives the wanted output, currents, and the averaged small-signal model. Textbook formulas
+//! appear as [`Landmark`]s only and feed no curve.
+
+mod averaged;
+mod bank;
+mod drawing;
+mod entries;
+mod landmark;
+mod operating_point;
+mod registry;
+mod stage;
+#[cfg(test)]
+mod tests;
+mod topologies;
+
+pub use averaged::AveragedModel;
+pub use bank::Branch;
+pub use drawing::StageDrawing;
+pub use entries::{CHOICES, ENTRIES, applies};
+pub use landmark::{Landmark, Textbook};
+pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint};
+pub use registry::{find, registry};
+pub use stage::{LoadKind, OutOfReach, Stage, StageCondition};
+pub use drawing::{Reach, Topology};

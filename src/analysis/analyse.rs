@@ -1,0 +1,229 @@
+//! The analysis itself: nine conditions at every edit, one of them in full.
+
+use super::condition::index_of;
+use super::crossover_window::window;
+use super::curves::curves;
+use super::ledger::ledger;
+use super::loop_model::{LoopModel, Shared, model_finding};
+use super::readouts::readouts;
+use super::remarks::remarks;
+use super::requirement::verdict;
+use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult};
+use super::steps::{load_figures, steps};
+use crate::converter::Conduction;
+use crate::design::CheckedDesign;
+use crate::finding::Finding;
+use crate::linear::{FrequencyResponse, Zpk, margins};
+use crate::quantity::{Unit, print};
+
+/// Which condition is shown in full.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Shown {
+    /// One of the nine.
+    Levels(Level, Level),
+    /// A what-if: input voltage [V] and load current [A], positive.
+    At {
+        /// Input voltage [V].
+        input_voltage: f64,
+        /// Load current at the regulated output [A].
+        load_current: f64,
+    },
+}
+
+/// What an analysis is asked for.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Request {
+    /// The condition shown in full.
+    pub shown: Shown,
+    /// Frequencies of its curves [Hz], rising.
+    pub frequencies_hz: Vec<f64>,
+    /// Frequencies of the bands over the nine conditions [Hz], rising; may be empty.
+    pub band_frequencies_hz: Vec<f64>,
+    /// Points of its step curves.
+    pub step_points: usize,
+}
+
+impl Request {
+    /// A request over the usual span of a stage: from a hundred-thousandth of the switching frequency to it.
+    pub fn spanning(shown: Shown, switching_frequency: f64, points: usize) -> Self {
+        let grid = |n: usize| logarithmic(switching_frequency * 1e-5, switching_frequency, n);
+        Request { shown, frequencies_hz: grid(points), band_frequencies_hz: grid(points.div_ceil(4)), step_points: points }
+    }
+}
+
+/// Frequencies evenly spaced on a logarithmic axis, both ends included [Hz].
+pub fn logarithmic(from_hz: f64, to_hz: f64, points: usize) -> Vec<f64> {
+    let last = points.saturating_sub(1).max(1) as f64;
+    let ratio = (to_hz / from_hz).ln();
+    (0..points).map(|k| from_hz * (ratio * k as f64 / last).exp()).collect()
+}
+
+/// Margins are searched from this share of the switching frequency …
+const SEARCH_FROM: f64 = 1e-6;
+/// … to this one.
+const SEARCH_TO: f64 = 0.5;
+
+/// Analyses a checked design.
+pub fn analyse(design: &CheckedDesign, request: &Request) -> Analysis {
+    let shared = Shared::new(design);
+    let results: Vec<(Condition, Result<Worked, Finding>)> = Condition::nine(&design.stage)
+        .into_iter()
+        .map(|condition| {
+            let worked = shared.as_ref().map_err(Clone::clone).and_then(|s| work(design, s, &condition));
+            (condition, worked)
+        })
+        .collect();
+    let (condition, shown) = match request.shown {
+        Shown::Levels(input, load) => {
+            let (condition, worked) = &results[index_of(input, load)];
+            (condition.clone(), worked.clone())
+        }
+        Shown::At { input_voltage, load_current } => {
+            let condition = Condition::what_if(input_voltage, load_current);
+            let worked = shared.as_ref().map_err(Clone::clone).and_then(|s| work(design, s, &condition));
+            (condition, worked)
+        }
+    };
+    let detail = shown.and_then(|worked| match &shared {
+        Ok(shared) => detailed(design, shared, &condition, &worked, request).map(Box::new),
+        Err(finding) => Err(finding.clone()),
+    });
+    let band = &request.band_frequencies_hz;
+    let conditions: Vec<ConditionResult> = results
+        .into_iter()
+        .map(|(condition, worked)| ConditionResult { condition, outcome: worked.map(|w| w.summary(band)) })
+        .collect();
+    conclude(design, shared.ok().as_ref(), condition, detail, conditions, band)
+}
+
+/// Requirements, read-outs and remarks over finished conditions.
+fn conclude(
+    design: &CheckedDesign,
+    shared: Option<&Shared>,
+    condition: Condition,
+    shown: Result<Box<Detail>, Finding>,
+    conditions: Vec<ConditionResult>,
+    band: &[f64],
+) -> Analysis {
+    let requirements: Vec<_> = design.requirements.iter().map(|limit| verdict(limit, &conditions)).collect();
+    let detail = shown.as_deref().ok();
+    let window = shared.map(|s| window(design, s, &conditions)).unwrap_or_default();
+    let findings = match shared {
+        Some(shared) => remarks(design, shared, detail, &conditions, &requirements, &window),
+        None => shown.as_ref().err().into_iter().cloned().collect(),
+    };
+    Analysis {
+        readouts: readouts(detail, &conditions, &requirements),
+        shown,
+        condition,
+        conditions,
+        band_frequencies_hz: band.to_vec(),
+        requirements,
+        window,
+        findings,
+    }
+}
+
+/// A condition worked out, its model kept.
+#[derive(Clone, Debug)]
+struct Worked {
+    model: LoopModel,
+    loop_gain: LoopResult,
+    load_step: Option<super::result::StepFigures>,
+    right_half_plane_zero_hz: Option<f64>,
+}
+
+impl Worked {
+    fn summary(self, band: &[f64]) -> ConditionSummary {
+        let (mut loop_db, mut loop_deg) = (vec![0.0; band.len()], vec![0.0; band.len()]);
+        self.model.loop_gain.curve(band, &mut loop_db, &mut loop_deg);
+        ConditionSummary {
+            operating_point: self.model.averaged.operating_point,
+            loop_gain: self.loop_gain,
+            load_step: self.load_step,
+            right_half_plane_zero_hz: self.right_half_plane_zero_hz,
+            loop_db,
+            loop_deg,
+        }
+    }
+}
+
+fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Worked, Finding> {
+    let stage_condition = condition.of_stage(&design.stage);
+    let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
+    refuse_unmodelled(design, condition, &model)?;
+    let fs = design.stage.switching_frequency;
+    let loop_gain = LoopResult {
+        verdict: model.verdict(shared).map_err(|e| model_finding(&e))?,
+        margins: margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO),
+        gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
+        gain_at_switching: model.loop_gain.at_hz(fs).norm(),
+    };
+    let load_step = if loop_gain.stable() {
+        Some(load_figures(design, shared, &model).map_err(|e| model_finding(&e))?)
+    } else {
+        None
+    };
+    let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
+    Ok(Worked { model, loop_gain, load_step, right_half_plane_zero_hz })
+}
+
+/// Conditions outside what is modelled: discontinuous conduction, a duty ratio beyond the modulator's limits.
+fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &LoopModel) -> Result<(), Finding> {
+    let point = &model.averaged.operating_point;
+    if point.conduction == Conduction::Discontinuous {
+        let boundary = design.stage.boundary_load(&condition.of_stage(&design.stage));
+        let below = boundary.map_or(String::new(), |b| format!(" below {}", print(b, Unit::Ampere)));
+        let message = format!(
+            "the stage runs in discontinuous conduction{below}, and a load of {} is not modelled",
+            print(condition.load_current, Unit::Ampere)
+        );
+        return Err(Finding::problem("stage.load.least", message)
+            .with_hint("raise the load or the inductance, or choose a synchronous rectifier"));
+    }
+    let (least, greatest) = (design.modulator.duty_least, design.modulator.duty_greatest);
+    if !(least..=greatest).contains(&point.duty) {
+        let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
+        let message = format!("a duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}", point.duty);
+        return Err(Finding::problem(place, message).with_hint("widen the duty limits or the input range"));
+    }
+    Ok(())
+}
+
+fn detailed(design: &CheckedDesign, shared: &Shared, condition: &Condition, worked: &Worked, request: &Request) -> Result<Detail, Finding> {
+    let model = &worked.model;
+    let stage_condition = condition.of_stage(&design.stage);
+    let landmarks = design.stage.landmarks(&stage_condition, model.plant.zpk());
+    let reference = Zpk::from_state_space(&shared.compensator, 0, 1).map_err(|e| model_finding(&e))?;
+    let scale = design.compensator.dc_output_voltage() / design.compensator.reference;
+    let curves = curves(model, shared, &reference, &request.frequencies_hz, scale).map_err(|e| model_finding(&e))?;
+    let crossover = worked.loop_gain.margins.headline_crossover();
+    let ledger = crossover.map(|c| ledger(model, shared, &design.compensator, &landmarks, c.frequency_hz));
+    let operating_point = model.averaged.operating_point.clone();
+    let control_voltage = design.modulator.control_voltage(operating_point.duty, condition.input_voltage);
+    let steps = if worked.loop_gain.stable() {
+        steps(design, shared, model, control_voltage, request.step_points).map_err(|e| model_finding(&e))?
+    } else {
+        super::result::Steps::default()
+    };
+    Ok(Detail {
+        condition: condition.clone(),
+        boundary_load: design.stage.boundary_load(&stage_condition),
+        right_half_plane_zero_hz: worked.right_half_plane_zero_hz,
+        operating_point,
+        landmarks,
+        loop_gain: worked.loop_gain.clone(),
+        curves,
+        steps,
+        ledger,
+        control_voltage,
+    })
+}
+
+impl Detail {
+    /// Lowest right-half-plane zero over the headline crossover.
+    pub fn right_half_plane_ratio(&self) -> Option<f64> {
+        let crossover = self.loop_gain.margins.headline_crossover()?;
+        Some(self.right_half_plane_zero_hz? / crossover.frequency_hz)
+    }
+}

@@ -1,0 +1,63 @@
+//! Frequency curves of the condition shown in full.
+//!
+//! *Conventions*: closed-loop quantities are the open-loop ones over 1 + T with the exact delay; the output impedance
+//! counts current drawn by the load as positive, so a resistive output reads positive.
+
+use super::loop_model::{LoopModel, Shared};
+use super::result::Curves;
+use crate::linear::{Complex, FactoredResponse, LinearError, Zpk};
+
+/// Decibels of a magnitude.
+fn db(magnitude: f64) -> f64 {
+    20.0 * magnitude.log10()
+}
+
+/// All curves of a loop over the given frequencies [Hz]. `reference_scale` is the output voltage over the reference.
+///
+/// # Errors
+/// As the reduction to zeros and poles.
+pub(super) fn curves(model: &LoopModel, shared: &Shared, reference: &Zpk, frequencies_hz: &[f64], reference_scale: f64) -> Result<Curves, LinearError> {
+    let n = frequencies_hz.len();
+    let both = |response: &FactoredResponse| {
+        let (mut gain, mut phase) = (vec![0.0; n], vec![0.0; n]);
+        response.curve(frequencies_hz, &mut gain, &mut phase);
+        (gain, phase)
+    };
+    let (plant_db, plant_deg) = both(&model.plant);
+    let (compensator_db, compensator_deg) = both(&shared.compensator_response);
+    let (loop_db, loop_deg) = both(&model.loop_gain);
+    let (impedance_db, impedance_deg) = both(&FactoredResponse::new(model.vout_from_load()?.scaled(-1.0), 0.0));
+    let (line_db, line_deg) = both(&FactoredResponse::new(model.vout_from_input()?, 0.0));
+    let (reference_db, reference_deg) = both(&FactoredResponse::new(reference.clone(), 0.0));
+    let mut c = Curves {
+        frequencies_hz: frequencies_hz.to_vec(),
+        open_loop_output_impedance_ohm: impedance_db.iter().map(|g| from_db(*g)).collect(),
+        open_loop_line_to_output_db: line_db.clone(),
+        ..Curves::default()
+    };
+    for k in 0..n {
+        let feedback = Complex::ONE + polar(loop_db[k], loop_deg[k]);
+        let (size, turn) = (db(feedback.norm()), feedback.arg().to_degrees());
+        c.output_impedance_ohm.push(from_db(impedance_db[k] - size));
+        c.output_impedance_deg.push(wrapped(impedance_deg[k] - turn));
+        c.line_to_output_db.push(line_db[k] - size);
+        c.line_to_output_deg.push(wrapped(line_deg[k] - turn));
+        c.reference_to_output_db.push(plant_db[k] + reference_db[k] - size - db(reference_scale));
+        c.reference_to_output_deg.push(wrapped(plant_deg[k] + reference_deg[k] - turn));
+    }
+    Ok(Curves { plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, ..c })
+}
+
+fn from_db(gain_db: f64) -> f64 {
+    10.0_f64.powf(gain_db / 20.0)
+}
+
+fn polar(gain_db: f64, phase_deg: f64) -> Complex {
+    Complex::from_polar(from_db(gain_db), phase_deg.to_radians())
+}
+
+/// An angle brought into (−180°, 180°].
+pub(super) fn wrapped(degrees: f64) -> f64 {
+    let turned = degrees.rem_euclid(360.0);
+    if turned > 180.0 { turned - 360.0 } else { turned }
+}

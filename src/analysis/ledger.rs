@@ -1,0 +1,86 @@
+//! The phase ledger: the phase at the headline crossover itemised by cause, adding up to the phase margin.
+
+use super::curves::wrapped;
+use super::loop_model::{LoopModel, Shared};
+use super::result::{Ledger, LedgerRole, LedgerRow};
+use crate::compensator::{Compensator, LaneKind};
+use crate::converter::Landmark;
+use crate::linear::{FactorKind, FactorPhase, FactoredResponse};
+use crate::quantity::{Unit, print_digits};
+use std::f64::consts::TAU;
+
+/// Shares of less than this [°] are taken together in one row.
+const SMALL_DEG: f64 = 0.05;
+
+/// The ledger at a crossover [Hz].
+pub(super) fn ledger(model: &LoopModel, shared: &Shared, compensator: &Compensator, landmarks: &[Landmark], crossover_hz: f64) -> Ledger {
+    let mut rows = vec![LedgerRow { label: "half turn".into(), degrees: 180.0, role: LedgerRole::HalfTurn, lane: None }];
+    let ideal = FactoredResponse::new(compensator.ideal(), 0.0);
+    rows.extend(compensator_rows(compensator, &ideal, crossover_hz));
+    let amplifier = shared.compensator_response.phase_deg(crossover_hz) - ideal.phase_deg(crossover_hz);
+    rows.push(LedgerRow { label: "amplifier".into(), degrees: amplifier, role: LedgerRole::Amplifier, lane: None });
+    let mut small = 0.0;
+    for factor in model.plant.factor_phases_deg(crossover_hz) {
+        if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
+            small += factor.phase_deg;
+        } else {
+            rows.push(plant_row(&factor, landmarks));
+        }
+    }
+    if small != 0.0 {
+        rows.push(LedgerRow { label: "stage, far poles and zeros".into(), degrees: small, role: LedgerRole::Plant, lane: None });
+    }
+    let sum: f64 = rows.iter().map(|row| row.degrees).sum();
+    let phase_margin_deg = wrapped(sum);
+    let turns = phase_margin_deg - sum;
+    if turns.abs() > 180.0 {
+        rows.push(LedgerRow { label: "whole turns".into(), degrees: turns, role: LedgerRole::Turns, lane: None });
+    }
+    Ledger { frequency_hz: crossover_hz, rows, phase_margin_deg }
+}
+
+/// One row per lane, and one for what the ideal network has beside its lanes.
+fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64) -> Vec<LedgerRow> {
+    let mut rows: Vec<LedgerRow> = compensator
+        .lanes()
+        .iter()
+        .map(|lane| {
+            let at = print_digits(lane.frequency_hz, Unit::Hertz, 3);
+            let turn = (f / lane.frequency_hz).atan().to_degrees();
+            let (label, degrees) = match lane.kind {
+                LaneKind::Gain => ("integrator".to_owned(), -90.0),
+                LaneKind::Zero => (format!("zero {at}"), turn),
+                LaneKind::Pole => (format!("pole {at}"), -turn),
+            };
+            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key) }
+        })
+        .collect();
+    let beside = ideal.phase_deg(f) - rows.iter().map(|row| row.degrees).sum::<f64>();
+    if beside.abs() > 1e-6 {
+        rows.push(LedgerRow { label: "network beside its lanes".into(), degrees: beside, role: LedgerRole::Compensator, lane: None });
+    } else if let Some(first) = rows.first_mut() {
+        // Rounding of the sum, so that the ledger closes to the last digit.
+        first.degrees += beside;
+    }
+    rows
+}
+
+fn plant_row(factor: &FactorPhase, landmarks: &[Landmark]) -> LedgerRow {
+    let f = factor.root.norm() / TAU;
+    let at = print_digits(f, Unit::Hertz, 3);
+    let near = |key: &str| landmarks.iter().any(|m| m.key == key && (m.frequency_hz / f).ln().abs() < 0.3);
+    let right = factor.root.re > 0.0;
+    let (label, role) = match factor.kind {
+        FactorKind::Sign => ("sign of the plant".to_owned(), LedgerRole::RightHalfPlane),
+        FactorKind::Delay => ("delay".to_owned(), LedgerRole::Delay),
+        FactorKind::Zero if right => (format!("RHP zero {at}"), LedgerRole::RightHalfPlane),
+        FactorKind::Zero if factor.root.im != 0.0 => (format!("zero pair {at}"), LedgerRole::Plant),
+        FactorKind::Zero if near("esr-zero") => (format!("ESR zero {at}"), LedgerRole::Plant),
+        FactorKind::Zero => (format!("stage zero {at}"), LedgerRole::Plant),
+        FactorKind::Pole if right => (format!("RHP pole {at}"), LedgerRole::RightHalfPlane),
+        FactorKind::Pole if factor.root.im != 0.0 && near("lc-resonance") => (format!("LC resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
+    };
+    LedgerRow { label, degrees: factor.phase_deg, role, lane: None }
+}

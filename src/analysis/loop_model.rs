@@ -1,0 +1,180 @@
+//! The loop at one condition: stage, modulator and compensator joined.
+//!
+//! *Conventions*: the plant runs from control voltage to output voltage, modulator and delay included; the compensator
+//! from output voltage to control voltage with its inversion taken out; their product is the loop gain. The delay is
+//! exact in every frequency response and a third-order Padé form in the closed-loop state space.
+
+use crate::control::Modulator;
+use crate::converter::{AveragedModel, Stage, StageCondition};
+use crate::design::CheckedDesign;
+use crate::finding::Finding;
+use crate::linear::{FactoredResponse, LinearError, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict, pade_delay};
+use nalgebra::DMatrix;
+
+/// What all conditions of a design share: the compensator, solved once.
+#[derive(Clone, Debug)]
+pub struct Shared {
+    /// From "vout" and "vref" to "vc".
+    pub compensator: StateSpace,
+    /// −vc/vout.
+    pub compensator_response: FactoredResponse,
+    delay: Option<StateSpace>,
+}
+
+/// Order of the rational form of the delay in poles and time responses.
+const DELAY_ORDER: usize = 3;
+
+impl Shared {
+    /// Solves the compensator of a design.
+    ///
+    /// # Errors
+    /// A finding when its network has no state equations.
+    pub fn new(design: &CheckedDesign) -> Result<Self, Finding> {
+        let singular = |e: &dyn std::fmt::Display| Finding::problem("compensator", format!("the compensator cannot be solved: {e}"));
+        let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
+        let response = design.compensator.response().map_err(|e| singular(&e))?;
+        let delay_s = design.modulator.delay_s;
+        let delay = if delay_s > 0.0 { Some(pade_delay(delay_s, DELAY_ORDER).map_err(|e| singular(&e))?) } else { None };
+        Ok(Shared { compensator, compensator_response: FactoredResponse::new(response, 0.0), delay })
+    }
+}
+
+/// The loop at one condition.
+#[derive(Clone, Debug)]
+pub struct LoopModel {
+    /// The stage linearised about its operating point.
+    pub averaged: AveragedModel,
+    /// The stage with the modulator's feed-forward in its input-voltage column: inputs "duty", "input voltage",
+    /// "load current".
+    stage: StateSpace,
+    /// Control voltage to output voltage, delay included.
+    pub plant: FactoredResponse,
+    /// The loop gain.
+    pub loop_gain: FactoredResponse,
+    /// Duty ratio from control voltage [1/V].
+    duty_from_control: f64,
+}
+
+/// Names of the closed loop's inputs.
+pub const EVENTS: [&str; 3] = ["load current", "input voltage", "reference"];
+
+impl LoopModel {
+    /// Builds the loop at a condition.
+    ///
+    /// # Errors
+    /// A finding when the stage has no operating point there or a model is singular.
+    pub fn new(stage: &Stage, modulator: &Modulator, shared: &Shared, condition: &StageCondition) -> Result<Self, Finding> {
+        let averaged = stage.averaged(condition)?;
+        let duty_from_control = modulator.duty_from_control(condition.input_voltage);
+        let duty_from_input = modulator.duty_from_input(averaged.operating_point.duty, condition.input_voltage);
+        let fed_forward = with_feedforward(&averaged.stage, duty_from_input);
+        let vout_from_duty = Zpk::from_state_space(&averaged.stage, 0, 0).map_err(|e| model_finding(&e))?;
+        let plant = vout_from_duty.scaled(duty_from_control);
+        let loop_zpk = plant.multiply(shared.compensator_response.zpk());
+        Ok(LoopModel {
+            plant: FactoredResponse::new(plant, modulator.delay_s),
+            loop_gain: FactoredResponse::new(loop_zpk, modulator.delay_s),
+            stage: fed_forward,
+            averaged,
+            duty_from_control,
+        })
+    }
+
+    /// Output voltage from load current with the loop open, the bank's series inductance included.
+    ///
+    /// # Errors
+    /// As the reduction to zeros and poles.
+    pub fn vout_from_load(&self) -> Result<Zpk, LinearError> {
+        let Some(extra) = &self.averaged.bank_inductance else {
+            return Zpk::from_state_space(&self.stage, 0, 2);
+        };
+        let parts = [&self.stage, extra];
+        let inputs = [0, 1].map(|part| Port { name: "load current", part, port: "load current" });
+        let outputs = [0, 1].map(|part| Port { name: "output voltage", part, port: "output voltage" });
+        let both = StateSpace::connect(&parts, &[], &inputs, &outputs)?;
+        Zpk::from_state_space(&both, 0, 0)
+    }
+
+    /// Output voltage from input voltage with the loop open, feed-forward included.
+    ///
+    /// # Errors
+    /// As the reduction to zeros and poles.
+    pub fn vout_from_input(&self) -> Result<Zpk, LinearError> {
+        Zpk::from_state_space(&self.stage, 0, 1)
+    }
+
+    /// The closed loop, from load current, input voltage and reference to output and control voltage.
+    ///
+    /// # Errors
+    /// As the joining of systems.
+    pub fn closed(&self, shared: &Shared) -> Result<StateSpace, LinearError> {
+        self.close(shared, self.averaged.bank_inductance.as_ref())
+    }
+
+    fn close(&self, shared: &Shared, extra: Option<&StateSpace>) -> Result<StateSpace, LinearError> {
+        const STAGE: usize = 0;
+        const COMPENSATOR: usize = 1;
+        let mut parts = vec![&self.stage, &shared.compensator];
+        let mut wires = vec![wire(STAGE, "output voltage", COMPENSATOR, "vout", 1.0)];
+        if let Some(delay) = &shared.delay {
+            let place = parts.len();
+            let (input, output) = (delay.inputs[0].as_str(), delay.outputs[0].as_str());
+            parts.push(delay);
+            wires.push(wire(COMPENSATOR, "vc", place, input, self.duty_from_control));
+            wires.push(wire(place, output, STAGE, "duty", 1.0));
+        } else {
+            wires.push(wire(COMPENSATOR, "vc", STAGE, "duty", self.duty_from_control));
+        }
+        let mut inputs = vec![
+            Port { name: EVENTS[0], part: STAGE, port: "load current" },
+            Port { name: EVENTS[1], part: STAGE, port: "input voltage" },
+            Port { name: EVENTS[2], part: COMPENSATOR, port: "vref" },
+        ];
+        let mut outputs = vec![
+            Port { name: "output voltage", part: STAGE, port: "output voltage" },
+            Port { name: "control voltage", part: COMPENSATOR, port: "vc" },
+        ];
+        if let Some(extra) = extra {
+            let place = parts.len();
+            parts.push(extra);
+            wires.push(wire(place, "output voltage", COMPENSATOR, "vout", 1.0));
+            inputs.push(Port { name: EVENTS[0], part: place, port: "load current" });
+            outputs.push(Port { name: "output voltage", part: place, port: "output voltage" });
+        }
+        StateSpace::connect(&parts, &wires, &inputs, &outputs)
+    }
+
+    /// Stability by the poles of the closed loop, checked by the encirclement count on the exact delay.
+    ///
+    /// # Errors
+    /// As the joining of systems.
+    pub fn verdict(&self, shared: &Shared) -> Result<Verdict, LinearError> {
+        // The load-side model of the bank's inductance stands outside the loop and is stable by itself.
+        let poles = self.close(shared, None)?.poles()?;
+        Ok(closed_loop_verdict(&poles, &self.loop_gain))
+    }
+}
+
+fn wire<'a>(from_part: usize, output: &'a str, to_part: usize, input: &'a str, gain: f64) -> Wire<'a> {
+    Wire { from_part, output, to_part, input, gain }
+}
+
+/// Adds the duty ratio that feed-forward makes of the input voltage to the stage's input-voltage column.
+fn with_feedforward(stage: &StateSpace, duty_from_input: f64) -> StateSpace {
+    let mut fed = stage.clone();
+    if duty_from_input != 0.0 {
+        let add = |m: &mut DMatrix<f64>| {
+            let duty = m.column(0) * duty_from_input;
+            let mut column = m.column_mut(1);
+            column += duty;
+        };
+        add(&mut fed.b);
+        add(&mut fed.d);
+    }
+    fed
+}
+
+/// A linear-algebra error as a finding about the whole design.
+pub(super) fn model_finding(error: &LinearError) -> Finding {
+    Finding::problem("", format!("the loop's model cannot be solved at this condition: {error}"))
+}

@@ -1,0 +1,138 @@
+//! The neutral list of read-outs that window, terminal and sheet print.
+
+use super::requirement::worst_shown;
+use super::result::{ConditionResult, Detail, Readout, RequirementVerdict, Worst};
+use crate::design::Asked;
+use crate::quantity::Unit;
+
+/// A row of the list before its values are known.
+struct Row {
+    key: &'static str,
+    name: &'static str,
+    unit: Unit,
+    asked: Option<Asked>,
+    absent: &'static str,
+    help: &'static str,
+    take: fn(&Detail) -> Option<f64>,
+}
+
+static ROWS: [Row; 10] = [
+    Row {
+        key: "crossover",
+        name: "Crossover",
+        unit: Unit::Hertz,
+        asked: Some(Asked::CrossoverGreatest),
+        absent: "none",
+        help: "Where the loop gain falls through 0 dB; of several crossovers the one with the least phase margin.",
+        take: |d| d.loop_gain.margins.headline_crossover().map(|c| c.frequency_hz),
+    },
+    Row {
+        key: "phase-margin",
+        name: "Phase margin",
+        unit: Unit::Degree,
+        asked: Some(Asked::PhaseMargin),
+        absent: "none",
+        help: "180° plus the loop's phase at the crossover, between −180° and 180°.",
+        take: |d| d.loop_gain.margins.headline_crossover().map(|c| c.phase_margin_deg),
+    },
+    Row {
+        key: "gain-margin",
+        name: "Gain margin",
+        unit: Unit::Decibel,
+        asked: Some(Asked::GainMargin),
+        absent: "infinite",
+        help: "How much the loop gain may rise before the loop oscillates: −|T| in decibels where the phase is −180° − k·360°.",
+        take: |d| d.loop_gain.margins.gain_margin_up_db(),
+    },
+    Row {
+        key: "gain-reduction",
+        name: "Gain may fall",
+        unit: Unit::Decibel,
+        asked: None,
+        absent: "any",
+        help: "How much the loop gain may fall before the loop oscillates; only a conditionally stable loop has such a limit.",
+        take: |d| d.loop_gain.margins.gain_margin_down_db(),
+    },
+    Row {
+        key: "modulus-margin",
+        name: "Modulus margin",
+        unit: Unit::One,
+        asked: Some(Asked::ModulusMargin),
+        absent: "none",
+        help: "Least distance of the loop gain from −1: min |1 + T|. Its inverse is the peak sensitivity Ms.",
+        take: |d| Some(d.loop_gain.margins.modulus_margin),
+    },
+    Row {
+        key: "delay-margin",
+        name: "Delay margin",
+        unit: Unit::Second,
+        asked: None,
+        absent: "infinite",
+        help: "Additional delay the loop bears: least over the crossovers of (phase margin mod 360°) / (360°·f).",
+        take: |d| if d.loop_gain.stable() { d.loop_gain.margins.delay_margin_s } else { None },
+    },
+    Row {
+        key: "gain-at-half-switching",
+        name: "Gain at ½ switching",
+        unit: Unit::Decibel,
+        asked: None,
+        absent: "none",
+        help: "Loop gain at half the switching frequency; the averaged model ends there.",
+        take: |d| Some(d.loop_gain.gain_at_half_switching_db),
+    },
+    Row {
+        key: "right-half-plane-ratio",
+        name: "RHP zero / crossover",
+        unit: Unit::One,
+        asked: Some(Asked::RightHalfPlaneRatio),
+        absent: "no RHP zero",
+        help: "Lowest right-half-plane zero over the crossover. Common practice: three to five at least.",
+        take: |d| d.right_half_plane_ratio(),
+    },
+    Row {
+        key: "load-step-deviation",
+        name: "Load step",
+        unit: Unit::Volt,
+        asked: Some(Asked::LoadStepDeviation),
+        absent: "unstable",
+        help: "Signed extreme of the output against its value before the load step; linear prediction.",
+        take: |d| d.steps.load.as_ref().map(|s| s.deviation_v),
+    },
+    Row {
+        key: "settling",
+        name: "Settles in",
+        unit: Unit::Second,
+        asked: Some(Asked::Settling),
+        absent: "does not settle",
+        help: "Last exit from the settling band around the final value after the load step.",
+        take: |d| d.steps.load.as_ref().and_then(|s| s.settling_s),
+    },
+];
+
+/// The read-outs of the shown condition, with the worst of the nine and the requirements beside them.
+pub(super) fn readouts(detail: Option<&Detail>, conditions: &[ConditionResult], verdicts: &[RequirementVerdict]) -> Vec<Readout> {
+    let stable = detail.is_some_and(|d| d.loop_gain.stable());
+    let shown = |row: &Row| {
+        let requirements: Vec<_> = verdicts.iter().filter(|v| v.readout == row.key).cloned().collect();
+        let of_margins = matches!(row.key, "crossover" | "phase-margin" | "gain-margin" | "gain-reduction" | "modulus-margin");
+        Readout {
+            key: row.key,
+            name: row.name,
+            unit: row.unit,
+            value: detail.and_then(row.take).filter(|v| v.is_finite()),
+            absent: if detail.is_none() { "not computed" } else { row.absent },
+            greyed: !stable && of_margins,
+            worst: row.asked.and_then(|asked| worst_shown(asked, conditions)),
+            range: (row.key == "crossover").then(|| range(conditions)).flatten(),
+            requirements,
+            help: row.help,
+        }
+    };
+    let useful = |r: &Readout| r.value.is_some() || r.key != "gain-reduction";
+    ROWS.iter().map(shown).filter(useful).collect()
+}
+
+/// Least and greatest crossover over the conditions.
+fn range(conditions: &[ConditionResult]) -> Option<[Worst; 2]> {
+    Some([worst_shown(Asked::CrossoverLeast, conditions)?, worst_shown(Asked::CrossoverGreatest, conditions)?])
+}

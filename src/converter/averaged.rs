@@ -1,0 +1,128 @@
+//! The averaged small-signal model of a stage at one condition.
+//!
+//! *Conventions*: inputs "duty", "input voltage" [V], "load current" [A, drawn from the output]; outputs
+//! "output voltage" [V, magnitude], "inductor current" [A], "input current" [A]. The duty column is
+//! (A_on − A_off)·X + (B_on − B_off)·U, and likewise for the outputs, so an ESR's step is kept.
+//! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
+
+use super::bank::inductance_share;
+use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT};
+use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
+use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
+use super::stage::{LoadKind, OutOfReach, Stage, StageCondition, circuit_finding};
+use crate::finding::Finding;
+use crate::linear::{StateSpace, Zpk};
+use crate::quantity::{Unit, print};
+use nalgebra::DMatrix;
+
+/// The stage linearised about one operating point.
+#[derive(Clone, Debug)]
+pub struct AveragedModel {
+    /// The operating point.
+    pub operating_point: OperatingPoint,
+    /// From duty, input voltage and load current to output voltage, inductor and input current.
+    pub stage: StateSpace,
+    /// What the bank's series inductance adds to the output voltage from the load current, where the stage must not
+    /// carry it as a state.
+    pub bank_inductance: Option<StateSpace>,
+}
+
+impl Stage {
+    /// The averaged model at a condition.
+    ///
+    /// # Errors
+    /// A finding when no duty ratio gives the output; it names the greatest output that can be had.
+    pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
+        let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
+        let operating_point = self.figures(condition, &solution);
+        let stage = self.linearise(&solution).ok_or_else(|| Finding::problem("stage", "the stage's averaged model is singular"))?;
+        let bank_inductance = if self.bank_inductance_averaged {
+            None
+        } else {
+            let resistance = condition.output_voltage / condition.load_current;
+            inductance_share(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
+        };
+        Ok(AveragedModel { operating_point, stage, bank_inductance })
+    }
+
+    fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
+        let (i, x, duty) = (&solution.intervals, &solution.x, solution.duty);
+        let rows: Vec<usize> = std::iter::once(self.rows.output_voltage)
+            .chain(self.rows.inductor_currents.iter().take(1).copied())
+            .chain(std::iter::once(self.rows.input_current))
+            .collect();
+        let a = i.mix(duty, |e| &e.a);
+        let b = i.mix(duty, |e| &e.b);
+        let c = i.mix(duty, |e| &e.c).select_rows(&rows);
+        let d = i.mix(duty, |e| &e.d).select_rows(&rows);
+        let push = (&i.on.a - &i.off.a) * x + (&i.on.b - &i.off.b) * &i.inputs;
+        let jump = ((&i.on.c - &i.off.c) * x + (&i.on.d - &i.off.d) * &i.inputs).select_rows(&rows);
+        let join = |first: &[f64], m: &DMatrix<f64>| {
+            DMatrix::from_fn(m.nrows(), 3, |r, k| match k {
+                0 => first[r],
+                1 => m[(r, INPUT_VOLTAGE)],
+                _ => m[(r, LOAD_CURRENT)],
+            })
+        };
+        let b = join(push.as_slice(), &b);
+        let d = join(jump.as_slice(), &d);
+        StateSpace::new(
+            a,
+            b,
+            c,
+            d,
+            &["duty", "input voltage", "load current"],
+            &["output voltage", "inductor current", "input current"],
+        )
+        .ok()
+    }
+
+    /// The landmarks at a condition; `vout_from_duty` serves where no textbook form fits.
+    pub fn landmarks(&self, condition: &StageCondition, vout_from_duty: &Zpk) -> Vec<Landmark> {
+        landmarks(self.topology(), &self.textbook(condition), &self.bank, self.switching_frequency, vout_from_duty)
+    }
+
+    /// The lossless quantities textbook formulas are written in.
+    pub fn textbook(&self, condition: &StageCondition) -> Textbook {
+        Textbook {
+            duty: (self.topology().ideal_duty)(condition.input_voltage, condition.output_voltage),
+            inductance: self.inductance,
+            capacitance: self.output_capacitance(),
+            load_resistance: condition.output_voltage / condition.load_current,
+        }
+    }
+
+    /// The lowest right-half-plane zero of a derived plant [Hz].
+    pub fn right_half_plane_zero_hz(&self, vout_from_duty: &Zpk) -> Option<f64> {
+        right_half_plane_zero_hz(vout_from_duty)
+    }
+
+    /// Whether linear results take a constant-power load by its tangent.
+    pub fn load_is_tangent(&self) -> bool {
+        self.load == LoadKind::Power
+    }
+}
+
+fn no_operating_point(why: &NoOperatingPoint, condition: &StageCondition) -> Finding {
+    let wanted = print(condition.output_voltage, Unit::Volt);
+    let from = print(condition.input_voltage, Unit::Volt);
+    match why {
+        NoOperatingPoint::Circuit(error) => circuit_finding(error),
+        NoOperatingPoint::OutOfReach(OutOfReach::Above { greatest, at_duty }) => Finding::problem(
+            "stage.output.voltage",
+            format!(
+                "{wanted} is out of reach from {from}: the greatest output is {}, at a duty ratio of {at_duty:.3}",
+                print(*greatest, Unit::Volt)
+            ),
+        )
+        .with_hint("raise the input, lower the output or the load, or lower the resistances"),
+        NoOperatingPoint::OutOfReach(OutOfReach::Below { least }) => Finding::problem(
+            "stage.output.voltage",
+            format!(
+                "{wanted} is out of reach from {from}: even a duty ratio of zero gives {}",
+                print(*least, Unit::Volt)
+            ),
+        )
+        .with_hint("a boost's output must stand above its input"),
+    }
+}

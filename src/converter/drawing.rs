@@ -1,0 +1,215 @@
+//! How a topology draws its stage: the parts it has of its own, around the input network, output bank and load that
+//! every stage shares.
+
+use super::landmark::Textbook;
+use crate::circuit::{InputId, Netlist, Node, OutputId, PartId, Slot};
+
+/// A power-stage topology. One file reads like its schematic; textbook formulas serve as landmarks only.
+#[derive(Debug)]
+pub struct Topology {
+    /// Word in files and on the command line.
+    pub key: &'static str,
+    /// Name shown.
+    pub name: &'static str,
+    /// What it does, in one line.
+    pub line: &'static str,
+    /// Where its output can stand against its input.
+    pub reach: Reach,
+    /// Draws the stage's own parts.
+    pub draw: fn(&mut StageDrawing),
+    /// Lossless duty ratio in continuous conduction from input and output voltage [V].
+    pub ideal_duty: fn(f64, f64) -> f64,
+    /// Resonance of inductor and output capacitor [Hz].
+    pub resonance_hz: fn(&Textbook) -> f64,
+    /// The formula of the resonance, for people.
+    pub resonance_formula: &'static str,
+    /// Right-half-plane zero [Hz], where there is one.
+    pub right_half_plane_zero_hz: fn(&Textbook) -> Option<f64>,
+    /// The formula of the right-half-plane zero, for people.
+    pub right_half_plane_zero_formula: &'static str,
+}
+
+/// Where an output can stand against the input.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Reach {
+    /// Below the input voltage.
+    BelowInput,
+    /// Above the input voltage.
+    AboveInput,
+    /// Anywhere.
+    Any,
+}
+
+/// What the drawing needs to know of the choices made.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) struct Options {
+    pub(super) synchronous: bool,
+    pub(super) input_capacitor: bool,
+    pub(super) load_resistor: bool,
+    pub(super) branches: usize,
+    /// Which branches have their series inductance drawn.
+    pub(super) branch_inductance: [bool; super::entries::BRANCHES],
+}
+
+/// A stage being drawn.
+#[derive(Debug)]
+pub struct StageDrawing {
+    pub(super) netlist: Netlist,
+    options: Options,
+    supply: Node,
+    output: Option<(Node, Node)>,
+    input_current_part: PartId,
+    pub(super) inductors: Vec<PartId>,
+    switch: Option<PartId>,
+    rectifier: Option<PartId>,
+    branches: Vec<PartId>,
+    drop: InputId,
+}
+
+/// Rows of the outputs every stage answers with.
+#[derive(Clone, Debug)]
+pub(super) struct Rows {
+    pub(super) output_voltage: usize,
+    pub(super) input_current: usize,
+    pub(super) switch_current: usize,
+    pub(super) rectifier_current: usize,
+    pub(super) inductor_currents: Vec<usize>,
+    pub(super) branch_currents: Vec<usize>,
+}
+
+/// Columns of the inputs every stage has.
+pub(super) const INPUT_VOLTAGE: usize = 0;
+pub(super) const LOAD_CURRENT: usize = 1;
+pub(super) const DIODE_DROP: usize = 2;
+
+/// Name of the controlled switch in the netlist; it conducts in the first interval.
+pub(super) const SWITCH: &str = "switch";
+/// Name of the rectifier in the netlist; it conducts in the second interval.
+pub(super) const RECTIFIER: &str = "rectifier";
+
+impl StageDrawing {
+    /// A drawing that holds the input network so far.
+    pub(super) fn new(options: Options) -> Self {
+        let mut netlist = Netlist::new();
+        let input = netlist.input("input voltage");
+        netlist.input("load current");
+        let drop = netlist.input("diode drop");
+        let (source, supply, ground) = (netlist.node("source"), netlist.node("supply"), netlist.ground());
+        netlist.voltage_source("source", source, ground, input);
+        let resistance = netlist.slot("stage.source.resistance");
+        let input_current_part = netlist.resistor("source resistance", source, supply, resistance);
+        if options.input_capacitor {
+            let inner = netlist.node("input capacitor");
+            let (farads, ohms) = (netlist.slot("stage.input-capacitor.capacitance"), netlist.slot("stage.input-capacitor.esr"));
+            netlist.capacitor("input capacitor", supply, inner, farads);
+            netlist.resistor("input capacitor ESR", inner, ground, ohms);
+        }
+        StageDrawing {
+            netlist,
+            options,
+            supply,
+            output: None,
+            input_current_part,
+            inductors: Vec::new(),
+            switch: None,
+            rectifier: None,
+            branches: Vec::new(),
+            drop,
+        }
+    }
+
+    /// The stage's positive input terminal, behind source resistance and input capacitor.
+    pub fn supply(&self) -> Node {
+        self.supply
+    }
+
+    /// The negative input terminal.
+    pub fn ground(&self) -> Node {
+        self.netlist.ground()
+    }
+
+    /// A new node.
+    pub fn node(&mut self, name: &str) -> Node {
+        self.netlist.node(name)
+    }
+
+    /// The controlled switch; it conducts for the duty ratio's share of the period.
+    pub fn switch(&mut self, from: Node, to: Node) {
+        let ohms = self.netlist.slot("stage.switch.resistance");
+        self.switch = Some(self.netlist.switch(SWITCH, from, to, ohms));
+    }
+
+    /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
+    pub fn rectifier(&mut self, anode: Node, cathode: Node) {
+        let part = if self.options.synchronous {
+            let ohms = self.netlist.slot("stage.synchronous.resistance");
+            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
+        } else {
+            let ohms = self.netlist.slot("stage.diode.resistance");
+            self.netlist.diode(RECTIFIER, anode, cathode, ohms, self.drop)
+        };
+        self.rectifier = Some(part);
+    }
+
+    /// The inductor with its winding resistance; its current counts from `from` to `to`.
+    pub fn inductor(&mut self, from: Node, to: Node) {
+        let inner = self.netlist.node("winding");
+        let (henries, ohms) = (self.netlist.slot("stage.inductor.inductance"), self.netlist.slot("stage.inductor.resistance"));
+        let part = self.netlist.inductor("inductor", from, inner, henries);
+        self.inductors.push(part);
+        self.netlist.resistor("winding", inner, to, ohms);
+    }
+
+    /// Output bank and load between the output's terminals.
+    pub fn output(&mut self, plus: Node, minus: Node) {
+        self.output = Some((plus, minus));
+        for k in 0..self.options.branches {
+            let part = draw_branch(&mut self.netlist, k, (plus, minus), self.options.branch_inductance[k]);
+            self.branches.push(part);
+        }
+        if self.options.load_resistor {
+            let ohms = self.netlist.slot("load resistance");
+            self.netlist.resistor("load", plus, minus, ohms);
+        }
+        let n = &mut self.netlist;
+        n.current_source("load current", plus, minus, load_input());
+    }
+
+    /// Asks for the outputs every stage answers with.
+    pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
+        let (plus, minus) = self.output?;
+        let (switch, rectifier) = (self.switch?, self.rectifier?);
+        let n = &mut self.netlist;
+        let row = OutputId::index;
+        let rows = Rows {
+            output_voltage: row(n.voltage_output("output voltage", plus, minus)),
+            input_current: row(n.current_output("input current", self.input_current_part)),
+            switch_current: row(n.current_output("switch current", switch)),
+            rectifier_current: row(n.current_output("rectifier current", rectifier)),
+            inductor_currents: self.inductors.iter().map(|part| row(n.current_output("inductor current", *part))).collect(),
+            branch_currents: self.branches.iter().map(|part| row(n.current_output("branch current", *part))).collect(),
+        };
+        Some((self.netlist, rows))
+    }
+}
+
+/// The load current's input was the second to be declared.
+fn load_input() -> InputId {
+    InputId::nth(LOAD_CURRENT)
+}
+
+/// Draws one branch of the bank; its slots hold the values of all its capacitors taken together.
+pub(super) fn draw_branch(netlist: &mut Netlist, k: usize, (plus, minus): (Node, Node), inductance: bool) -> PartId {
+    let name = |what: &str| format!("bank {} {what}", k + 1);
+    let slots: [Slot; 3] = ["capacitance", "ESR", "ESL"].map(|what| netlist.slot(&name(what)));
+    let mut top = plus;
+    if inductance {
+        let inner = netlist.node(&name("ESL"));
+        netlist.inductor(&name("ESL"), top, inner, slots[2]);
+        top = inner;
+    }
+    let inner = netlist.node(&name("capacitor"));
+    let part = netlist.resistor(&name("ESR"), top, inner, slots[1]);
+    netlist.capacitor(&name("capacitor"), inner, minus, slots[0]);
+    part
+}

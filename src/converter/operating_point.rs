@@ -1,0 +1,354 @@
+//! The operating point: the duty ratio that gives the wanted output with all losses, and the currents that follow.
+//!
+//! *Method*: the averaged state equations A(d)·x + B(d)·u = 0, A(d) = d·A_on + (1−d)·A_off, are solved for the duty
+//! ratio by scanning from zero for the first bracket and refining with safeguarded Newton steps, so that of two
+//! solutions the one below the peak of the conversion curve is found. Ripple is that of straight-line segments.
+//! *Source*: state-space averaging, Middlebrook & Ćuk 1976.
+
+use super::drawing::Rows;
+use super::stage::{Intervals, OutOfReach, Stage, StageCondition};
+use crate::circuit::{CircuitError, StateEquations};
+use nalgebra::{DMatrix, DVector};
+
+/// How the inductor current behaves over a period.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Conduction {
+    /// Never reaches zero.
+    Continuous,
+    /// A synchronous rectifier conducts throughout, reverse current included.
+    ForcedContinuous,
+    /// A diode blocks and the current rests at zero for part of the period.
+    Discontinuous,
+}
+
+impl Conduction {
+    /// The word for people and files.
+    pub fn word(self) -> &'static str {
+        match self {
+            Conduction::Continuous => "continuous",
+            Conduction::ForcedContinuous => "forced continuous",
+            Conduction::Discontinuous => "discontinuous",
+        }
+    }
+}
+
+/// A current over one period [A].
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct CurrentFigures {
+    /// Average [A].
+    pub average: f64,
+    /// Peak to peak of the triangular part [A].
+    pub ripple: f64,
+    /// Greatest value [A].
+    pub peak: f64,
+    /// Least value [A].
+    pub least: f64,
+    /// Root mean square [A].
+    pub rms: f64,
+}
+
+/// An inductor and its current.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct InductorFigures {
+    /// Its name.
+    pub name: &'static str,
+    /// Its current.
+    pub current: CurrentFigures,
+}
+
+/// A conduction loss.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Loss {
+    /// Where it arises.
+    pub name: &'static str,
+    /// Power [W].
+    pub watts: f64,
+}
+
+/// The operating point of a stage at one condition.
+#[derive(Clone, Debug, PartialEq)]
+pub struct OperatingPoint {
+    /// Fraction of the period in which the controlled switch conducts.
+    pub duty: f64,
+    /// How the inductor current behaves.
+    pub conduction: Conduction,
+    /// Output voltage, as a magnitude [V].
+    pub output_voltage: f64,
+    /// Input voltage at the ideal source [V].
+    pub input_voltage: f64,
+    /// Load current [A].
+    pub load_current: f64,
+    /// Average current drawn from the source [A].
+    pub input_current: f64,
+    /// The inductors.
+    pub inductors: Vec<InductorFigures>,
+    /// The controlled switch.
+    pub switch: CurrentFigures,
+    /// The rectifier.
+    pub rectifier: CurrentFigures,
+    /// RMS current of the whole output bank [A].
+    pub output_bank_rms: f64,
+    /// Step of the output voltage at a switching instant, from the bank's ESR [V].
+    pub output_step: f64,
+    /// Losses by conduction; switching, core and gate losses are not modelled.
+    pub conduction_losses: Vec<Loss>,
+    /// Sum of the conduction losses [W].
+    pub conduction_loss: f64,
+}
+
+/// The averaged steady state at one duty ratio.
+struct Steady {
+    x: DVector<f64>,
+    output: f64,
+    /// Slope of the output over the duty ratio [V].
+    slope: f64,
+}
+
+impl Intervals {
+    /// d·on + (1 − d)·off.
+    pub(super) fn mix(&self, duty: f64, part: impl Fn(&StateEquations) -> &DMatrix<f64>) -> DMatrix<f64> {
+        part(&self.on) * duty + part(&self.off) * (1.0 - duty)
+    }
+
+    fn steady(&self, duty: f64, row: usize) -> Option<Steady> {
+        let lu = self.mix(duty, |e| &e.a).lu();
+        let x = lu.solve(&-(self.mix(duty, |e| &e.b) * &self.inputs))?;
+        let push = (&self.on.a - &self.off.a) * &x + (&self.on.b - &self.off.b) * &self.inputs;
+        let dx = lu.solve(&-push)?;
+        let c = self.on.c.row(row) * duty + self.off.c.row(row) * (1.0 - duty);
+        let d = self.on.d.row(row) * duty + self.off.d.row(row) * (1.0 - duty);
+        let output = (&c * &x)[0] + (d * &self.inputs)[0];
+        let slope = (c * dx)[0]
+            + ((self.on.c.row(row) - self.off.c.row(row)) * &x)[0]
+            + ((self.on.d.row(row) - self.off.d.row(row)) * &self.inputs)[0];
+        (output.is_finite() && slope.is_finite()).then_some(Steady { x, output, slope })
+    }
+
+    /// The duty ratio below the conversion curve's peak that gives `target` at output `row`, and its steady state.
+    fn solve_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
+        let mut below = (0.0, f64::NEG_INFINITY);
+        let mut best = (0.0, f64::NEG_INFINITY);
+        for k in 0..=SCAN {
+            // Denser towards one, where the curve of a boost bends.
+            let duty = 1.0 - (1.0 - f64::from(k) / f64::from(SCAN)).powi(2);
+            let Some(steady) = self.steady(duty, row) else { continue };
+            if steady.output >= target {
+                if k == 0 {
+                    return Err(OutOfReach::Below { least: steady.output });
+                }
+                return self.refine(below.0, duty, target, row);
+            }
+            below = (duty, steady.output);
+            if steady.output > best.1 {
+                best = below;
+            }
+        }
+        let (at_duty, greatest) = self.peak(best.0, row).unwrap_or(best);
+        if greatest >= target {
+            let step = f64::from(SCAN).recip();
+            return self.refine((at_duty - 2.0 * step).max(0.0), at_duty, target, row);
+        }
+        Err(OutOfReach::Above { greatest, at_duty })
+    }
+
+    /// Newton steps on the output, bisecting whenever one would leave the bracket.
+    fn refine(&self, low: f64, high: f64, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
+        let (mut low, mut high) = (low, high);
+        let mut duty = f64::midpoint(low, high);
+        let mut state = None;
+        for _ in 0..MOST_STEPS {
+            let Some(steady) = self.steady(duty, row) else { break };
+            let error = steady.output - target;
+            if error < 0.0 { low = duty } else { high = duty }
+            let newton = duty - error / steady.slope;
+            let next = if newton > low && newton < high { newton } else { f64::midpoint(low, high) };
+            let moved = (next - duty).abs();
+            let done = error.abs() <= 4.0 * f64::EPSILON * target.abs() || moved <= f64::EPSILON * duty;
+            state = Some((duty, steady.x));
+            if done {
+                break;
+            }
+            duty = next;
+        }
+        state.ok_or(OutOfReach::Above { greatest: f64::NAN, at_duty: duty })
+    }
+
+    /// The peak of the conversion curve near a duty ratio, by bisection on its slope.
+    fn peak(&self, near: f64, row: usize) -> Option<(f64, f64)> {
+        let step = 2.0 / f64::from(SCAN);
+        let (mut low, mut high) = ((near - step).max(0.0), (near + step).min(1.0));
+        for _ in 0..MOST_STEPS {
+            let middle = f64::midpoint(low, high);
+            if self.steady(middle, row)?.slope > 0.0 { low = middle } else { high = middle }
+        }
+        self.steady(low, row).map(|steady| (low, steady.output))
+    }
+}
+
+/// Points of the scan for the first bracket.
+const SCAN: u16 = 12;
+/// Refinements halve the bracket at worst, so this many reach the last bit.
+const MOST_STEPS: u32 = 60;
+
+/// Why a stage has no operating point at a condition.
+#[derive(Clone, Debug, PartialEq)]
+pub enum NoOperatingPoint {
+    /// No duty ratio gives the output.
+    OutOfReach(OutOfReach),
+    /// The netlist has no state equations.
+    Circuit(CircuitError),
+}
+
+/// A solved condition: interval equations, duty ratio and averaged state.
+#[derive(Clone, Debug)]
+pub(super) struct Solution {
+    pub(super) intervals: Intervals,
+    pub(super) duty: f64,
+    pub(super) x: DVector<f64>,
+}
+
+impl Stage {
+    /// Solves the duty ratio at a condition.
+    pub(super) fn solve(&self, condition: &StageCondition) -> Result<Solution, NoOperatingPoint> {
+        let intervals = self.intervals(condition).map_err(NoOperatingPoint::Circuit)?;
+        let (duty, x) = intervals
+            .solve_duty(condition.output_voltage, self.rows.output_voltage)
+            .map_err(NoOperatingPoint::OutOfReach)?;
+        Ok(Solution { intervals, duty, x })
+    }
+
+    /// Currents and losses of a solved condition.
+    pub(super) fn figures(&self, condition: &StageCondition, solution: &Solution) -> OperatingPoint {
+        let waves = Waves::new(solution, self.switching_frequency);
+        let duty = solution.duty;
+        let rows: &Rows = &self.rows;
+        let inductors: Vec<InductorFigures> = rows
+            .inductor_currents
+            .iter()
+            .map(|row| InductorFigures { name: "inductor", current: waves.figures(&[*row], (true, true)) })
+            .collect();
+        let switch = waves.figures(&[rows.switch_current], (true, false));
+        let rectifier = waves.figures(&[rows.rectifier_current], (false, true));
+        let bank = waves.figures(&rows.branch_currents, (true, true));
+        let input = waves.figures(&[rows.input_current], (true, true));
+        let least = inductors.iter().map(|i| i.current.least).fold(f64::INFINITY, f64::min);
+        let conduction = match (self.synchronous, least > 0.0) {
+            (true, _) => Conduction::ForcedContinuous,
+            (false, true) => Conduction::Continuous,
+            (false, false) => Conduction::Discontinuous,
+        };
+        let winding: f64 = inductors.iter().map(|i| i.current.rms.powi(2)).sum::<f64>() * self.resistances.winding;
+        let branches: f64 = rows
+            .branch_currents
+            .iter()
+            .zip(&self.bank)
+            .map(|(row, branch)| waves.figures(&[*row], (true, true)).rms.powi(2) * branch.esr)
+            .sum();
+        let rectifier_loss = self.resistances.rectifier * rectifier.rms.powi(2) + self.diode_drop * rectifier.average;
+        let mut conduction_losses = vec![
+            Loss { name: "inductor winding", watts: winding },
+            Loss { name: "switch", watts: self.resistances.switch * switch.rms.powi(2) },
+            Loss { name: "rectifier", watts: rectifier_loss },
+            Loss { name: "output bank ESR", watts: branches },
+            Loss { name: "source resistance", watts: self.resistances.source * input.rms.powi(2) },
+        ];
+        conduction_losses.retain(|loss| loss.watts > 0.0);
+        OperatingPoint {
+            duty,
+            conduction,
+            output_voltage: condition.output_voltage,
+            input_voltage: condition.input_voltage,
+            load_current: condition.load_current,
+            input_current: input.average,
+            inductors,
+            switch,
+            rectifier,
+            output_bank_rms: bank.rms,
+            output_step: waves.step(rows.output_voltage),
+            conduction_loss: conduction_losses.iter().map(|loss| loss.watts).sum(),
+            conduction_losses,
+        }
+    }
+
+    /// Load current at which the least inductor current reaches zero [A]; none for a synchronous rectifier, or where
+    /// no load reaches it.
+    pub fn boundary_load(&self, condition: &StageCondition) -> Option<f64> {
+        if self.synchronous {
+            return None;
+        }
+        let mut load = condition.load_current;
+        // The average current is nearly proportional to the load and the ripple nearly independent of it.
+        for _ in 0..50 {
+            let at = StageCondition { load_current: load, ..*condition };
+            let solution = self.solve(&at).ok()?;
+            let current = self.figures(&at, &solution).inductors.first()?.current;
+            let next = load * (current.ripple / 2.0) / current.average;
+            if !(next.is_finite() && next > 0.0) {
+                return None;
+            }
+            if (next / load - 1.0).abs() < 1e-10 {
+                return Some(next);
+            }
+            load = next;
+        }
+        None
+    }
+}
+
+/// Straight-line waveforms over one period around the averaged state.
+struct Waves<'a> {
+    solution: &'a Solution,
+    rates: [DVector<f64>; 2],
+    durations: [f64; 2],
+    period: f64,
+}
+
+impl<'a> Waves<'a> {
+    fn new(solution: &'a Solution, switching_frequency: f64) -> Self {
+        let (i, x) = (&solution.intervals, &solution.x);
+        let period = switching_frequency.recip();
+        Waves {
+            solution,
+            rates: [&i.on.a * x + &i.on.b * &i.inputs, &i.off.a * x + &i.off.b * &i.inputs],
+            durations: [solution.duty * period, (1.0 - solution.duty) * period],
+            period,
+        }
+    }
+
+    /// Middle value and swing of the sum of output rows in one interval.
+    fn segment(&self, rows: &[usize], interval: usize) -> (f64, f64) {
+        let equations = [&self.solution.intervals.on, &self.solution.intervals.off][interval];
+        rows.iter().fold((0.0, 0.0), |(middle, swing), &row| {
+            let c = equations.c.row(row);
+            let value = (c * &self.solution.x)[0] + (equations.d.row(row) * &self.solution.intervals.inputs)[0];
+            (middle + value, swing + (c * &self.rates[interval])[0] * self.durations[interval])
+        })
+    }
+
+    /// Figures of a current that flows in the intervals marked.
+    fn figures(&self, rows: &[usize], flows: (bool, bool)) -> CurrentFigures {
+        let mut figures = CurrentFigures { peak: f64::NEG_INFINITY, least: f64::INFINITY, ..CurrentFigures::default() };
+        let mut square = 0.0;
+        for (interval, flows) in [flows.0, flows.1].into_iter().enumerate() {
+            let share = self.durations[interval] / self.period;
+            let (middle, swing) = if flows { self.segment(rows, interval) } else { continue };
+            figures.average += share * middle;
+            square += share * (middle * middle + swing * swing / 12.0);
+            figures.peak = figures.peak.max(middle + swing.abs() / 2.0);
+            figures.least = figures.least.min(middle - swing.abs() / 2.0);
+            figures.ripple = figures.ripple.max(swing.abs());
+        }
+        if !(flows.0 && flows.1) {
+            figures.least = figures.least.min(0.0);
+        }
+        figures.rms = square.sqrt();
+        figures
+    }
+
+    /// Jump of an output where the switch opens, the states holding still.
+    fn step(&self, row: usize) -> f64 {
+        let (on, on_swing) = self.segment(&[row], 0);
+        let (off, off_swing) = self.segment(&[row], 1);
+        ((off - off_swing / 2.0) - (on + on_swing / 2.0)).abs()
+    }
+}

@@ -1,0 +1,272 @@
+//! A power stage with usable values: its netlist drawn and compiled, ready for any operating condition.
+
+use super::bank::{Branch, branch_value};
+use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, RECTIFIER, Rows, SWITCH, StageDrawing, Topology};
+use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
+use super::registry::find;
+use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
+use crate::finding::Finding;
+use crate::quantity::{Choices, Values};
+use nalgebra::DVector;
+
+/// How the load current answers the output voltage.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum LoadKind {
+    /// Proportional to the voltage.
+    Resistor,
+    /// Constant.
+    Current,
+    /// Inverse to the voltage; linear models take the tangent.
+    Power,
+}
+
+/// One operating condition of a stage.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct StageCondition {
+    /// Input voltage at the ideal source [V].
+    pub input_voltage: f64,
+    /// Load current at the regulated output voltage [A].
+    pub load_current: f64,
+    /// Regulated output voltage, as a magnitude [V].
+    pub output_voltage: f64,
+}
+
+/// Why no duty ratio gives the wanted output.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum OutOfReach {
+    /// The wanted output is above the peak of the conversion curve.
+    Above {
+        /// Greatest output that can be had [V].
+        greatest: f64,
+        /// Duty ratio at which it is had.
+        at_duty: f64,
+    },
+    /// Even a duty ratio of zero gives more than the wanted output.
+    Below {
+        /// Least output that can be had [V].
+        least: f64,
+    },
+}
+
+/// A power stage with usable values.
+#[derive(Clone, Debug)]
+pub struct Stage {
+    topology: &'static Topology,
+    on: Compiled,
+    off: Compiled,
+    pub(super) rows: Rows,
+    values: Vec<f64>,
+    load_slot: Option<usize>,
+    pub(super) diode_drop: f64,
+    /// Least, nominal and greatest input voltage [V].
+    pub input_voltages: [f64; 3],
+    /// Least, nominal and greatest load current at the regulated output [A].
+    pub load_currents: [f64; 3],
+    /// Regulated output voltage, as a magnitude [V].
+    pub output_voltage: f64,
+    /// Switching frequency [Hz].
+    pub switching_frequency: f64,
+    /// Inductance [H].
+    pub inductance: f64,
+    /// Series resistances that carry the inductor's, switch's and rectifier's current, with their names [Ω].
+    pub(super) resistances: Resistances,
+    /// How the load current answers the output voltage.
+    pub load: LoadKind,
+    /// Whether the rectifier is a synchronous switch: forced continuous conduction.
+    pub synchronous: bool,
+    /// The output bank.
+    pub bank: Vec<Branch>,
+    /// Whether the bank's series inductance is an ordinary part of the averaged stage.
+    pub bank_inductance_averaged: bool,
+}
+
+/// Resistances that turn currents into conduction losses [Ω].
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) struct Resistances {
+    pub(super) winding: f64,
+    pub(super) switch: f64,
+    pub(super) rectifier: f64,
+    pub(super) source: f64,
+}
+
+/// The state equations of the two switching intervals at one condition.
+#[derive(Clone, Debug)]
+pub(super) struct Intervals {
+    pub(super) on: StateEquations,
+    pub(super) off: StateEquations,
+    /// Steady inputs: input voltage, load current, diode drop.
+    pub(super) inputs: DVector<f64>,
+}
+
+impl Stage {
+    /// A stage from entered values, which must have been checked against their bounds and order; the output voltage is
+    /// the one that reference and divider give.
+    ///
+    /// # Errors
+    /// A finding for an unknown topology or a netlist without state equations.
+    pub fn from_values(values: &Values, choices: &Choices) -> Result<Self, Vec<Finding>> {
+        let get = |path: &str| {
+            let entry = ENTRIES.iter().find(|entry| entry.path == path);
+            entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
+        };
+        let key = choices.get("stage.topology").unwrap_or("boost");
+        let Some(topology) = find(key) else {
+            return Err(vec![Finding::problem("stage.topology", format!("no topology is called \"{key}\""))]);
+        };
+        let input_voltages = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.input.{level}")));
+        let load_currents = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.load.{level}")));
+        let synchronous = choices.is("stage.rectifier", "synchronous");
+        let bank: Vec<Branch> = (1..=branch_count(choices)).map(|k| entered_branch(k, &get)).collect();
+        let load = match choices.get("stage.load") {
+            Some("current") => LoadKind::Current,
+            Some("power") => LoadKind::Power,
+            _ => LoadKind::Resistor,
+        };
+        let resistances = Resistances {
+            winding: get("stage.inductor.resistance"),
+            switch: get("stage.switch.resistance"),
+            rectifier: get(if synchronous { "stage.synchronous.resistance" } else { "stage.diode.resistance" }),
+            source: get("stage.source.resistance"),
+        };
+        let options = Options {
+            synchronous,
+            // Across an ideal source a capacitor changes nothing but the source's own current.
+            input_capacitor: choices.is("stage.input-capacitor", "fitted") && resistances.source > 0.0,
+            load_resistor: load != LoadKind::Current,
+            branches: bank.len(),
+            branch_inductance: [false; BRANCHES],
+        };
+        let output = get("stage.output.voltage");
+        let lookup = |name: &str| match name {
+            "load resistance" => output / load_currents[1],
+            _ => branch_value(name, &bank).unwrap_or_else(|| get(name)),
+        };
+        let drawn = Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?;
+        let averaged_inductance = load == LoadKind::Resistor && bank.iter().any(|b| b.esl > 0.0) && !drawn.bank_is_switched();
+        let drawn = if averaged_inductance {
+            let mut branch_inductance = [false; BRANCHES];
+            for (flag, branch) in branch_inductance.iter_mut().zip(&bank) {
+                *flag = branch.esl > 0.0;
+            }
+            Drawn::new(topology, Options { branch_inductance, ..options }, &lookup).map_err(|e| vec![circuit_finding(&e)])?
+        } else {
+            drawn
+        };
+        Ok(Stage {
+            topology,
+            on: drawn.on,
+            off: drawn.off,
+            rows: drawn.rows,
+            load_slot: drawn.load_slot,
+            values: drawn.values,
+            diode_drop: get("stage.diode.drop"),
+            input_voltages,
+            load_currents,
+            output_voltage: output,
+            switching_frequency: get("stage.switching-frequency"),
+            inductance: get("stage.inductor.inductance"),
+            resistances,
+            load,
+            synchronous,
+            bank_inductance_averaged: averaged_inductance,
+            bank,
+        })
+    }
+
+    /// The topology.
+    pub fn topology(&self) -> &'static Topology {
+        self.topology
+    }
+
+    /// Capacitance of the whole output bank [F].
+    pub fn output_capacitance(&self) -> f64 {
+        self.bank.iter().map(|branch| branch.capacitance).sum()
+    }
+
+    /// Equivalent series resistance of the whole bank well above its corner frequencies [Ω].
+    pub fn bank_esr(&self) -> f64 {
+        if self.bank.iter().any(|branch| branch.esr <= 0.0) {
+            return 0.0;
+        }
+        self.bank.iter().map(|branch| branch.esr.recip()).sum::<f64>().recip()
+    }
+
+    /// State equations of both intervals and the steady inputs at a condition.
+    ///
+    /// # Errors
+    /// As netlist extraction.
+    pub(super) fn intervals(&self, condition: &StageCondition) -> Result<Intervals, CircuitError> {
+        let resistance = condition.output_voltage / condition.load_current;
+        let mut inputs = DVector::zeros(3);
+        inputs[INPUT_VOLTAGE] = condition.input_voltage;
+        inputs[DIODE_DROP] = self.diode_drop;
+        let mut values = self.values.clone();
+        let load_slot_value = match self.load {
+            LoadKind::Resistor => resistance,
+            LoadKind::Current => {
+                inputs[LOAD_CURRENT] = condition.load_current;
+                0.0
+            }
+            // The tangent at V, I: conductance −I/V beside a source of 2·I.
+            LoadKind::Power => {
+                inputs[LOAD_CURRENT] = 2.0 * condition.load_current;
+                -resistance
+            }
+        };
+        if let Some(slot) = self.load_slot {
+            values[slot] = load_slot_value;
+        }
+        let on = self.on.equations(&values)?.independent().0;
+        let off = self.off.equations(&values)?.independent().0;
+        Ok(Intervals { on, off, inputs })
+    }
+}
+
+/// A netlist drawn and compiled for both intervals.
+struct Drawn {
+    on: Compiled,
+    off: Compiled,
+    rows: Rows,
+    values: Vec<f64>,
+    load_slot: Option<usize>,
+}
+
+impl Drawn {
+    fn new(topology: &Topology, options: Options, lookup: &dyn Fn(&str) -> f64) -> Result<Self, CircuitError> {
+        let mut drawing = StageDrawing::new(options);
+        (topology.draw)(&mut drawing);
+        let unfinished = || CircuitError::Floating { names: vec![topology.name.to_owned()] };
+        let (netlist, rows): (Netlist, Rows) = drawing.finish().ok_or_else(unfinished)?;
+        let values: Vec<f64> = netlist.slot_names().iter().map(|name| lookup(name)).collect();
+        let load_slot = netlist.slot_names().iter().position(|name| name == "load resistance");
+        let on = Compiled::new(&netlist, |part| part == SWITCH, &values)?;
+        let off = Compiled::new(&netlist, |part| part == RECTIFIER, &values)?;
+        Ok(Drawn { on, off, rows, values, load_slot })
+    }
+
+    /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.
+    fn bank_is_switched(&self) -> bool {
+        let (Ok(on), Ok(off)) = (self.on.equations(&self.values), self.off.equations(&self.values)) else {
+            return true;
+        };
+        self.rows.branch_currents.iter().any(|&row| {
+            let scale = on.c.row(row).amax().max(off.c.row(row).amax());
+            (on.c.row(row) - off.c.row(row)).amax() > 1e-9 * scale
+        })
+    }
+}
+
+fn entered_branch(k: usize, get: &dyn Fn(&str) -> f64) -> Branch {
+    let value = |what: &str| get(&format!("stage.bank.{k}.{what}"));
+    let count = value("count").max(1.0);
+    Branch {
+        capacitance: value("capacitance") * value("remaining") * count,
+        esr: value("esr") / count,
+        esl: value("esl") / count,
+    }
+}
+
+/// A netlist error as a finding about the stage.
+pub(super) fn circuit_finding(error: &CircuitError) -> Finding {
+    Finding::problem("stage", format!("the stage has no state equations: {error}"))
+}

@@ -1,0 +1,29 @@
+//! The boost: the inductor charges from the input and discharges into the output.
+//!
+//! *Source* of the landmarks: Erickson & Maksimovic, Fundamentals of Power Electronics, 3rd ed., Table 8.2.
+
+use crate::converter::drawing::{Reach, StageDrawing, Topology};
+use std::f64::consts::TAU;
+
+/// The boost.
+pub static TOPOLOGY: Topology = Topology {
+    key: "boost",
+    name: "Boost",
+    line: "Output above the input; the inductor stands at the input.",
+    reach: Reach::AboveInput,
+    draw,
+    ideal_duty: |input, output| 1.0 - input / output,
+    resonance_hz: |t| (1.0 - t.duty) / (TAU * (t.inductance * t.capacitance).sqrt()),
+    resonance_formula: "(1 − D) / (2π·√(L·C))",
+    right_half_plane_zero_hz: |t| Some((1.0 - t.duty).powi(2) * t.load_resistance / (TAU * t.inductance)),
+    right_half_plane_zero_formula: "(1 − D)²·R / (2π·L)",
+};
+
+fn draw(stage: &mut StageDrawing) {
+    let (supply, ground, output) = (stage.supply(), stage.ground(), stage.node("output"));
+    let switch_node = stage.node("switch node");
+    stage.inductor(supply, switch_node);
+    stage.switch(switch_node, ground);
+    stage.rectifier(switch_node, output);
+    stage.output(output, ground);
+}

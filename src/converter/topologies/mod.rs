@@ -1,0 +1,5 @@
+//! One file per topology; each reads like its schematic.
+
+pub(super) mod boost;
+pub(super) mod buck;
+pub(super) mod buck_boost;
