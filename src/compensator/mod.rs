@@ -13,6 +13,19 @@
 //!
 //! *Sign.* The amplifier inverts. Every response here is control voltage from output voltage with the inversion taken out, so an
 //! integrator is positive at low frequency; only [`Compensator::state_space`] keeps the sign of the circuit.
+//!
+//! | file | holds |
+//! |---|---|
+//! | `entries` | what a user enters and chooses, and what applies to which network |
+//! | `network` | the compensator as checked parts |
+//! | `lanes` | poles, zeros and gain from the parts, amplifier ideal |
+//! | `place` | parts from poles, zeros and gain: exactly, or the nearest and why |
+//! | `fit` | the nearest parts while some are kept |
+//! | `netlist` | the actual network, solved |
+//! | `preferred` | the series of preferred values |
+//! | `rounding` | parts of preferred value |
+//! | `method` | where poles and zeros might go: K factor, landmarks |
+//! | `crossing` | those methods carried out with the actual amplifier |
 
 mod crossing;
 mod entries;

@@ -6,7 +6,7 @@
 //!
 //! *Source.* The formulas of `lanes.rs`, solved for the parts. With f the gain lane, z and p the lanes of a branch:
 //! C1 + C2 = 1/(2π·f·Rupper) or gm·H/(2π·f), C2/(C1 + C2) = z1/p1, R2 = 1/(2π·z1·C1); around an op amp R3 = Rupper·z2/(p2 − z2);
-//! behind a transconductance amplifier R3 = (Rupper − k·Rupper∥Rlower)/(k − 1) with k = p2/z2, so k stays below 1 + Rupper/Rlower.
+//! behind a transconductance amplifier R3 = (Rupper − k·(Rupper || Rlower))/(k − 1) with k = p2/z2, so k stays below 1 + Rupper/Rlower.
 
 use std::collections::BTreeSet;
 use std::f64::consts::TAU;
@@ -18,7 +18,7 @@ use crate::quantity::{Unit, print, print_digits};
 
 /// A pole stays this far above the zero of its branch: nearer, parts run off to extremes for no effect on the response.
 pub const LEAST_RATIO: f64 = 1.01;
-/// Behind a transconductance amplifier r3 keeps at least this fraction of Rupper∥Rlower when a lane is pushed to the limit of
+/// Behind a transconductance amplifier r3 keeps at least this fraction of (Rupper || Rlower) when a lane is pushed to the limit of
 /// the divider, so that a resistor remains to be fitted.
 const LEAST_R3: f64 = 0.01;
 /// Relative change of a part below which it counts as kept; far above rounding, far below any tolerance.
@@ -436,10 +436,11 @@ mod tests {
         #[test]
         fn parts_to_lanes_to_parts(network in any_network(), scale in 0.1f64..10.0) {
             let lanes = network.corners();
-            let ratio = |zero: Option<f64>, pole: Option<f64>| pole.unwrap_or(2.0) / zero.unwrap_or(1.0);
-            prop_assume!(ratio(lanes.zero_1, lanes.pole_1) >= LEAST_RATIO);
-            prop_assume!(ratio(lanes.zero_2, lanes.pole_2) >= LEAST_RATIO);
-            prop_assume!(network.kind != Kind::Three || ratio(lanes.zero_2, lanes.pole_2) <= network.greatest_ratio());
+            let ratio = |zero: Option<f64>, pole: Option<f64>| Some(pole? / zero?);
+            prop_assume!(ratio(lanes.zero_1, lanes.pole_1).is_none_or(|ratio| ratio >= LEAST_RATIO));
+            let second = ratio(lanes.zero_2, lanes.pole_2);
+            prop_assume!(second.is_none_or(|ratio| ratio >= LEAST_RATIO));
+            prop_assume!(network.kind != Kind::Three || second.is_none_or(|ratio| ratio <= network.greatest_ratio()));
             let mut other = network.clone();
             for part in [Part::C1, Part::C2, Part::R3, Part::C3, Part::Feedforward] {
                 other.parts.set(part, network.parts.get(part) * scale);
@@ -520,6 +521,34 @@ mod tests {
         assert_near(placed.as_built_hz, aim, "zero");
         assert_eq!(placed.compensator.parts.r2.to_bits(), network.parts.r2.to_bits());
         assert!(placed.why.unwrap().contains("integrator gain"));
+    }
+
+    #[test]
+    fn beside_a_locked_part_the_moved_lane_comes_first() {
+        let network = compensator(Kind::Three, OP_AMP, Anchor::Upper);
+        let locks: BTreeSet<_> = [Part::C1.path().to_owned()].into();
+        let aim = network.corners().zero_1.unwrap() * 3.0;
+        let placed = network.move_lane("zero-1", aim, &locks);
+        assert_near(placed.as_built_hz, aim, "zero");
+        assert!(same(&placed.compensator.parts, &network.parts, Part::C1));
+        let (before, after) = (network.corners(), placed.compensator.corners());
+        assert_near(after.zero_2.unwrap(), before.zero_2.unwrap(), "the other branch stays");
+        assert!((after.pole_1.unwrap() / before.pole_1.unwrap()).ln().abs() < 0.1);
+        assert!(placed.why.unwrap().contains("C1"));
+    }
+
+    #[test]
+    fn gain_moves_without_poles_and_zeros() {
+        for (amplifier, anchor) in [(OP_AMP, Anchor::Upper), (OP_AMP, Anchor::R2), (TRANSCONDUCTANCE, Anchor::Upper)] {
+            let network = compensator(Kind::Three, amplifier, anchor);
+            let placed = network.with_gain(2.0, &unlocked());
+            assert_eq!(placed.why, None);
+            for frequency in [1.0, 1e3, 1e6] {
+                let (before, after) = (network.ideal().at_hz(frequency), placed.compensator.ideal().at_hz(frequency));
+                assert!((after / before - 2.0).norm() < 1e-9);
+            }
+            assert_near(placed.compensator.dc_output_voltage(), network.dc_output_voltage(), "output voltage");
+        }
     }
 
     #[test]

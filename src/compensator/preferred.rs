@@ -6,6 +6,9 @@
 //!
 //! *Conventions.* Nearest means nearest in ratio, as tolerances are ratios.
 
+use super::entries::chosen;
+use crate::quantity::Choices;
+
 /// E24 in hundredths; every second one is E12, every fourth E6, every eighth E3.
 const E24_HUNDREDTHS: [f64; 24] = [
     100.0, 110.0, 120.0, 130.0, 150.0, 160.0, 180.0, 200.0, 220.0, 240.0, 270.0, 300.0, 330.0, 360.0, 390.0, 430.0,
@@ -61,6 +64,12 @@ impl Series {
     /// The series of a key.
     pub fn from_key(key: &str) -> Option<Series> {
         Series::ALL.into_iter().find(|series| series.key() == key)
+    }
+
+    /// The series chosen for resistors and for capacitors.
+    pub fn chosen(choices: &Choices) -> (Series, Series) {
+        let series = |path| Series::from_key(chosen(choices, path)).unwrap_or(Series::Exact);
+        (series("compensator.series.resistors"), series("compensator.series.capacitors"))
     }
 
     /// The values of one decade in hundredths, rising from 100 to below 1000; empty for `Exact`.
@@ -180,6 +189,15 @@ mod tests {
         assert_eq!(Series::Exact.nearest(1.2345).to_bits(), 1.2345f64.to_bits());
         assert!(Series::E24.nearest(f64::NAN).is_nan());
         assert_eq!(Series::E24.nearest(0.0).to_bits(), 0f64.to_bits());
+    }
+
+    #[test]
+    fn every_option_of_the_choices_is_a_series() {
+        assert_eq!(Series::chosen(&Choices::new()), (Series::E96, Series::E12));
+        for row in crate::compensator::CHOICES.iter().filter(|row| row.path.starts_with("compensator.series.")) {
+            let options: Vec<_> = row.options.iter().map(|option| Series::from_key(option.key).unwrap()).collect();
+            assert_eq!(options, Series::ALL);
+        }
     }
 
     #[test]
