@@ -1,1 +1,48 @@
 //! Networks around the error amplifier, parts from poles and zeros and back, placement.
+//!
+//! A [`Compensator`] is its parts: a divider with its reference, a type I, II or III network, an op amp or a transconductance
+//! amplifier. Everything else is derived from them. [`Compensator::lanes`] says where the parts put each pole and zero when the
+//! amplifier is ideal, [`Compensator::place`] finds parts for wanted poles and zeros, [`Compensator::rounded`] makes the parts
+//! preferred values, [`k_factor`] and [`pole_zero_rules`] say where poles and zeros might go. [`Compensator::state_space`] solves
+//! the actual netlist, amplifier limits and divider loading included: that is what is plotted.
+//!
+//! *The networks.* An inverting op amp has the upper divider resistor as its input and the series pair `r2`, `c1` with `c2`
+//! across it as its feedback; `c1` alone for a type I. A transconductance amplifier reads the tap of the divider and drives the
+//! same parts to ground. Type III has the branch `r3`, `c3` across the upper resistor; types I and II may have a capacitor
+//! straight across it instead.
+//!
+//! *Sign.* The amplifier inverts. Every response here is control voltage from output voltage with the inversion taken out, so an
+//! integrator is positive at low frequency; only [`Compensator::state_space`] keeps the sign of the circuit.
+//!
+//! | file | holds |
+//! |---|---|
+//! | `entries` | what a user enters and chooses, and what applies to which network |
+//! | `network` | the compensator as checked parts |
+//! | `lanes` | poles, zeros and gain from the parts, amplifier ideal |
+//! | `place` | parts from poles, zeros and gain: exactly, or the nearest and why |
+//! | `fit` | the nearest parts while some are kept |
+//! | `netlist` | the actual network, solved |
+//! | `preferred` | the series of preferred values |
+//! | `rounding` | parts of preferred value |
+//! | `method` | where poles and zeros might go: K factor, landmarks |
+//! | `crossing` | those methods carried out with the actual amplifier |
+
+mod crossing;
+mod entries;
+mod fit;
+mod lanes;
+mod method;
+mod netlist;
+mod network;
+mod place;
+mod preferred;
+mod rounding;
+
+pub use crossing::RuledPlacement;
+pub use entries::{CHOICES, ENTRIES, applies};
+pub use lanes::{Corners, Lane, LaneKind};
+pub use method::{KFactor, KFactorGoal, Reason, RuleGoal, RulePlacement, k_factor, pole_zero_rules};
+pub use netlist::{NetworkError, ValuedNetlist};
+pub use network::{Amplifier, Anchor, Compensator, Kind, OpAmp, Part, Parts, Transconductance};
+pub use place::{Built, LEAST_RATIO, Placed, Placement};
+pub use preferred::{Series, round_ratio};

@@ -1,0 +1,3 @@
+//! Checks against published and independently computed values, one module per room.
+
+mod compensator;
