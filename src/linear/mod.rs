@@ -1,1 +1,59 @@
 //! Linear systems: state space, zeros-poles-gain, margins, stability, exact time response.
+//!
+//! Conventions: inputs, states and outputs are SI, time is in seconds, poles and zeros are in rad/s, frequencies at
+//! interfaces are in hertz. A loop gain `T` has the sign of the negative feedback taken out, so the critical point is −1.
+//! No polynomial is ever expanded to find its roots or to multiply systems.
+//!
+//! | file | holds |
+//! |---|---|
+//! | `state_space` | systems with named inputs and outputs, their poles and their response at a frequency |
+//! | `interconnect` | joining systems by state-space algebra |
+//! | `eigen` | balancing and eigenvalues of real matrices |
+//! | `zeros` | zeros of one input to one output |
+//! | `zpk` | zeros, poles and gain |
+//! | `cascade` | zeros, poles and gain back to state space, as a scaled cascade |
+//! | `response` | gain and unwrapped phase as the sum of the factors' phases, with an exact delay |
+//! | `sampled` | a measured response that answers at a frequency |
+//! | `margins` | crossovers, phase, gain, modulus and delay margin of anything that answers at a frequency |
+//! | `stability` | the verdict: closed-loop poles checked by the encirclement count on the exact delay |
+//! | `exponential` | the matrix exponential |
+//! | `time` | exact step response on a uniform grid |
+//! | `root` | a root between two values of opposite sign |
+//! | `modes` | deviation and settling of a step, from the modes |
+//! | `delay` | a delay as a rational all-pass, for poles and time responses |
+
+mod cascade;
+mod delay;
+mod eigen;
+mod error;
+mod exponential;
+mod interconnect;
+mod margins;
+mod modes;
+#[cfg(test)]
+pub(crate) mod precision;
+mod response;
+mod root;
+mod sampled;
+mod stability;
+mod state_space;
+mod time;
+mod zeros;
+mod zpk;
+
+pub use delay::{pade_delay, pade_phase_error_deg};
+pub use eigen::eigenvalues;
+pub use error::LinearError;
+pub use exponential::expm;
+pub use interconnect::{Port, Wire};
+pub use margins::{Crossover, Margins, PhaseCrossover, margins};
+pub use modes::{Modes, StepMetrics, settle};
+pub use response::{FactorKind, FactorPhase, FactoredResponse, FrequencyResponse, LogPoint};
+pub use sampled::SampledResponse;
+pub use stability::{Verdict, closed_loop_verdict, encirclement_count};
+pub use state_space::StateSpace;
+pub use time::{RampStep, UniformGrid, step_response};
+pub use zpk::Zpk;
+
+/// A complex number in double precision.
+pub type Complex = num_complex::Complex<f64>;

@@ -1,0 +1,373 @@
+//! Crossovers and margins of anything that answers at a frequency.
+//!
+//! Conventions: phase margin is 180° + phase wrapped to (−180°, 180°]; gain margins lie at crossings of −180° − k·360° and are −|T| in
+//! dB, positive where the gain may rise; modulus margin is the least |1 + T|, its inverse the peak sensitivity; delay margin is
+//! the least of (PM mod 360°)/(360°·f) over all crossovers and means something for a stable loop only.
+//!
+//! Method: the band is scanned on a logarithmic grid that is refined around every resonance and notch the response knows of.
+//! Sign changes bracket a crossing; an extremum near the level is found itself, so that two crossings between grid points are
+//! not missed. Each bracket is closed in ln f by Newton's method, safeguarded by bisection, on the response itself.
+//!
+//! Bad input: a band that is empty or not finite has no crossings; the modulus margin is then the one at its lower end.
+
+use std::f64::consts::{LN_10, PI, TAU};
+
+use wide::f64x4;
+
+use super::root::bracketed_root;
+use super::{Complex, FrequencyResponse, LogPoint};
+
+/// Grid points per decade: a real corner bends over a decade, and resonances bring their own points.
+const POINTS_PER_DECADE: f64 = 24.0;
+
+/// Crossovers above the upper limit are listed up to this many times the limit.
+const LISTED_ABOVE: f64 = 100.0;
+
+/// Level crossings of the phase listed at most; only an absurd delay has more.
+const PHASE_CROSSINGS_AT_MOST: usize = 1000;
+
+/// Steps granted to a refinement. Newton needs three to six; pure bisection of a grid interval to the last bit 50.
+const REFINEMENTS_AT_MOST: usize = 120;
+
+/// A frequency where |T| = 1.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Crossover {
+    /// Frequency [Hz].
+    pub frequency_hz: f64,
+    /// 180° + phase wrapped to (−180°, 180°] [°].
+    pub phase_margin_deg: f64,
+    /// Whether the gain falls through 0 dB with rising frequency.
+    pub falling: bool,
+    /// Slope of the gain there [dB/decade].
+    pub slope_db_per_decade: f64,
+}
+
+/// A frequency where the phase crosses −180° − turns·360°.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct PhaseCrossover {
+    /// Frequency [Hz].
+    pub frequency_hz: f64,
+    /// −|T| [dB]: positive where the gain may rise by so much, negative where it may fall.
+    pub gain_margin_db: f64,
+    /// Whole turns below −180°.
+    pub turns: i32,
+}
+
+/// All crossings and margins of a loop gain within a band.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Margins {
+    /// Gain crossovers in the band, by rising frequency.
+    pub crossovers: Vec<Crossover>,
+    /// Phase crossovers in the band, by rising frequency.
+    pub phase_crossovers: Vec<PhaseCrossover>,
+    /// Least |1 + T| in the band.
+    pub modulus_margin: f64,
+    /// Where it lies [Hz].
+    pub modulus_frequency_hz: f64,
+    /// Peak sensitivity, 1/modulus margin; infinite for a loop through −1.
+    pub sensitivity_peak: f64,
+    /// Delay [s] that takes a stable loop to the boundary; `None` without a crossover.
+    pub delay_margin_s: Option<f64>,
+    /// Gain crossovers above the band, up to 100 times its upper limit: listed only.
+    pub above: Vec<Crossover>,
+}
+
+impl Margins {
+    /// The crossover of least |phase margin|.
+    pub fn headline_crossover(&self) -> Option<&Crossover> {
+        self.crossovers.iter().min_by(|p, q| p.phase_margin_deg.abs().total_cmp(&q.phase_margin_deg.abs()))
+    }
+
+    /// The least positive gain margin: how far the gain may rise [dB].
+    pub fn gain_margin_up_db(&self) -> Option<f64> {
+        self.phase_crossovers.iter().map(|c| c.gain_margin_db).filter(|m| *m >= 0.0).min_by(f64::total_cmp)
+    }
+
+    /// The greatest negative gain margin: how far the gain may fall [dB].
+    pub fn gain_margin_down_db(&self) -> Option<f64> {
+        self.phase_crossovers.iter().map(|c| c.gain_margin_db).filter(|m| *m < 0.0).max_by(f64::total_cmp)
+    }
+}
+
+/// All margins of a loop gain between two frequencies [Hz].
+pub fn margins(loop_gain: &impl FrequencyResponse, from_hz: f64, to_hz: f64) -> Margins {
+    let scan = Scan::new(loop_gain, from_hz, to_hz, LISTED_ABOVE);
+    let mut crossovers = scan.gain_crossings();
+    let above = crossovers.split_off(crossovers.partition_point(|c| c.frequency_hz <= to_hz));
+    let phase_crossovers = scan.phase_crossings(|_| true);
+    let (modulus_margin, modulus_frequency_hz) = scan.modulus();
+    let delay_margin_s =
+        crossovers.iter().map(|c| c.phase_margin_deg.rem_euclid(360.0) / (360.0 * c.frequency_hz)).min_by(f64::total_cmp);
+    Margins {
+        crossovers,
+        phase_crossovers,
+        modulus_margin,
+        modulus_frequency_hz,
+        sensitivity_peak: 1.0 / modulus_margin,
+        delay_margin_s,
+        above,
+    }
+}
+
+/// Whether the phase crosses −180° − k·360° anywhere in the band while the gain is above one.
+pub(super) fn crosses_above_unity(loop_gain: &impl FrequencyResponse, from_hz: f64, to_hz: f64) -> bool {
+    Scan::new(loop_gain, from_hz, to_hz, 1.0).phase_crossings(|ln_gain| ln_gain > 0.0).iter().any(|c| c.gain_margin_db < 0.0)
+}
+
+/// A response on a grid fine enough to bracket everything.
+struct Scan<'a, R> {
+    response: &'a R,
+    frequencies: Vec<f64>,
+    ln_gain: Vec<f64>,
+    phase: Vec<f64>,
+    /// Grid points within the band; the rest lies above it.
+    within: usize,
+}
+
+impl<'a, R: FrequencyResponse> Scan<'a, R> {
+    fn new(response: &'a R, from_hz: f64, to_hz: f64, above: f64) -> Self {
+        let (lowest, highest) = response.band_hz().unwrap_or((0.0, f64::MAX));
+        let (from, to) = (from_hz.max(lowest), to_hz.min(highest));
+        let sensible = from > 0.0 && from < to && to < f64::MAX / LISTED_ABOVE;
+        let grid = if sensible { grid(response.breakpoints_hz(), from, to, (to * above).min(highest)) } else { Vec::new() };
+        let mut scan = Self { response, frequencies: grid, ln_gain: Vec::new(), phase: Vec::new(), within: 0 };
+        if scan.frequencies.is_empty() {
+            scan.frequencies.push(if from_hz > 0.0 && from_hz.is_finite() { from_hz } else { 1.0 });
+        }
+        scan.evaluate(to);
+        let extremes = scan.extremes_near_a_level();
+        if !extremes.is_empty() {
+            scan.frequencies = merge(&scan.frequencies, &extremes);
+            scan.evaluate(to);
+        }
+        scan
+    }
+
+    fn evaluate(&mut self, to: f64) {
+        let count = self.frequencies.len();
+        self.ln_gain.resize(count, 0.0);
+        self.phase.resize(count, 0.0);
+        self.response.log_curve(&self.frequencies, &mut self.ln_gain, &mut self.phase);
+        self.within = self.frequencies.partition_point(|f| *f <= to).max(1);
+    }
+
+    /// Extremes of gain and phase that may reach over a level from between grid points.
+    fn extremes_near_a_level(&self) -> Vec<f64> {
+        let mut found = Vec::new();
+        for i in 1..self.frequencies.len().saturating_sub(1) {
+            let g = &self.ln_gain[i - 1..=i + 1];
+            if reaches(g, if g[1] < 0.0 { 1.0 } else { -1.0 }, g[1].abs()) {
+                found.extend(self.extremum(i, |point| point.gain_slope));
+            }
+            if i + 1 < self.within {
+                let p = &self.phase[i - 1..=i + 1];
+                let to_level_above = (-PI - p[1]).rem_euclid(TAU);
+                if reaches(p, 1.0, to_level_above) || reaches(p, -1.0, TAU - to_level_above) {
+                    found.extend(self.extremum(i, |point| point.phase_slope));
+                }
+            }
+        }
+        found.sort_by(f64::total_cmp);
+        found
+    }
+
+    /// The extremum around grid point `i` where the slope vanishes.
+    fn extremum(&self, i: usize, slope: impl Fn(&LogPoint) -> f64) -> Option<f64> {
+        let (low, high) = (self.frequencies[i - 1].ln(), self.frequencies[i + 1].ln());
+        let value = |x: f64| slope(&self.response.log_point(x.exp()));
+        let (at_low, at_high) = (value(low), value(high));
+        (at_low * at_high < 0.0).then(|| bracketed_root(value, (low, at_low), (high, at_high), 1e-9).exp())
+    }
+
+    fn gain_crossings(&self) -> Vec<Crossover> {
+        let mut found = Vec::new();
+        for i in 1..self.frequencies.len() {
+            let (before, after) = (self.ln_gain[i - 1], self.ln_gain[i]);
+            if (before >= 0.0) == (after >= 0.0) {
+                continue;
+            }
+            if let Some((frequency_hz, point)) = self.close(i, before, after, |p| (p.ln_gain, p.gain_slope)) {
+                found.push(Crossover {
+                    frequency_hz,
+                    phase_margin_deg: wrap_deg(180.0 + point.phase_rad.to_degrees()),
+                    falling: after < 0.0,
+                    slope_db_per_decade: 20.0 * point.gain_slope,
+                });
+            }
+        }
+        found
+    }
+
+    /// Phase crossings in the band, of those intervals whose gain at either end is of interest.
+    fn phase_crossings(&self, interesting: impl Fn(f64) -> bool) -> Vec<PhaseCrossover> {
+        let mut found = Vec::new();
+        let level_number = |phase: f64| (-PI - phase) / TAU;
+        for i in 1..self.within {
+            let (before, after) = (level_number(self.phase[i - 1]).floor(), level_number(self.phase[i]).floor());
+            let (least, most) = (before.min(after), before.max(after));
+            if least >= most || !(interesting(self.ln_gain[i - 1]) || interesting(self.ln_gain[i])) {
+                continue;
+            }
+            let mut passed = 0.0;
+            while passed < most - least && found.len() < PHASE_CROSSINGS_AT_MOST {
+                let number = if after > before { least + 1.0 + passed } else { most - passed };
+                passed += 1.0;
+                let level = -PI - TAU * number;
+                let ends = (self.phase[i - 1] - level, self.phase[i] - level);
+                if let Some((frequency_hz, point)) = self.close(i, ends.0, ends.1, |p| (p.phase_rad - level, p.phase_slope)) {
+                    let gain_margin_db = -point.ln_gain * 20.0 / LN_10;
+                    found.push(PhaseCrossover { frequency_hz, gain_margin_db, turns: whole(number) });
+                }
+            }
+        }
+        found
+    }
+
+    /// Closes the bracket between grid points `i − 1` and `i`; `None` when the value jumps over zero instead of passing it.
+    fn close(&self, i: usize, at_low: f64, at_high: f64, value: impl Fn(&LogPoint) -> (f64, f64)) -> Option<(f64, LogPoint)> {
+        let (mut low, mut high) = (self.frequencies[i - 1].ln(), self.frequencies[i].ln());
+        let mut x = low + (high - low) * (at_low / (at_low - at_high)).clamp(0.0, 1.0);
+        let mut last_step = high - low;
+        for _ in 0..REFINEMENTS_AT_MOST {
+            let f_hz = x.exp();
+            let point = self.response.log_point(f_hz);
+            let (v, slope) = value(&point);
+            let resolution = 4.0 * f64::EPSILON * x.abs().max(1.0);
+            let newton = v / slope;
+            if v == 0.0 || newton.abs() <= resolution || high - low <= resolution {
+                // A jump leaves a large value at a bracket of no width.
+                return (v.abs() < 1e-3 || newton.abs() <= resolution).then_some((f_hz, point));
+            }
+            if (v > 0.0) == (at_low > 0.0) {
+                low = x;
+            } else {
+                high = x;
+            }
+            let next = x - newton;
+            let trusted = next > low && next < high && newton.abs() < 0.5 * last_step;
+            let next = if trusted { next } else { 0.5 * (low + high) };
+            last_step = (next - x).abs();
+            x = next;
+        }
+        None
+    }
+
+    /// Least |1 + T| in the band, and where.
+    fn modulus(&self) -> (f64, f64) {
+        let squares = self.distance_squares();
+        let (mut best, mut best_f) = (f64::INFINITY, self.frequencies[0]);
+        for (square, f) in squares.iter().zip(&self.frequencies) {
+            if *square < best {
+                (best, best_f) = (*square, *f);
+            }
+        }
+        // A minimum between grid points lies below its neighbours by less than half.
+        let candidates = 4.0 * best;
+        for i in 1..squares.len().saturating_sub(1) {
+            let here = squares[i];
+            if here > candidates || here > squares[i - 1] || here > squares[i + 1] {
+                continue;
+            }
+            let (square, f) = self.refine_modulus(i);
+            if square < best {
+                (best, best_f) = (square, f);
+            }
+        }
+        (best.sqrt(), best_f)
+    }
+
+    /// |1 + T|² on the grid points of the band.
+    fn distance_squares(&self) -> Vec<f64> {
+        let mut squares = Vec::with_capacity(self.within + 3);
+        let gains = self.ln_gain[..self.within].chunks(4);
+        for (g, p) in gains.zip(self.phase[..self.within].chunks(4)) {
+            let mut padded = ([0.0; 4], [0.0; 4]);
+            padded.0[..g.len()].copy_from_slice(g);
+            padded.1[..p.len()].copy_from_slice(p);
+            let gain = f64x4::new(padded.0).fast_max(f64x4::splat(-300.0)).fast_min(f64x4::splat(300.0)).exp();
+            let (_, half) = (f64x4::new(padded.1) * f64x4::splat(0.5)).sin_cos();
+            squares.extend_from_slice(distance_square(gain, half).as_array());
+        }
+        squares.truncate(self.within);
+        squares
+    }
+
+    /// The minimum of |1 + T|² around grid point `i`, and where.
+    fn refine_modulus(&self, i: usize) -> (f64, f64) {
+        let evaluate = |x: f64| {
+            let point = self.response.log_point(x.exp());
+            let t = point.value();
+            // Half the derivative of |1 + T|² by ln f.
+            let slope = ((t + 1.0).conj() * t * Complex::new(point.gain_slope, point.phase_slope)).re;
+            let gain = point.ln_gain.clamp(-300.0, 300.0).exp();
+            let half = (0.5 * point.phase_rad).cos();
+            ((1.0 - gain) * (1.0 - gain) + 4.0 * gain * half * half, slope)
+        };
+        let [low, middle, high] = [i - 1, i, i + 1].map(|k| self.frequencies[k].ln());
+        let (square, at_middle) = evaluate(middle);
+        let (low, high) = if at_middle > 0.0 { ((low, evaluate(low).1), (middle, at_middle)) } else { ((middle, at_middle), (high, evaluate(high).1)) };
+        let x = bracketed_root(|x| evaluate(x).1, low, high, 1e-11);
+        let refined = evaluate(x).0;
+        if refined < square { (refined, x.exp()) } else { (square, middle.exp()) }
+    }
+}
+
+/// |1 + T|² from |T| and the cosine of half the phase, without cancellation near −1.
+fn distance_square(gain: f64x4, cos_half_phase: f64x4) -> f64x4 {
+    let off = f64x4::ONE - gain;
+    off * off + f64x4::splat(4.0) * gain * cos_half_phase * cos_half_phase
+}
+
+/// Whether the middle of three values is an extremum in the given direction that may reach a level so far away.
+fn reaches(values: &[f64], direction: f64, distance: f64) -> bool {
+    let (before, after) = (direction * (values[1] - values[0]), direction * (values[1] - values[2]));
+    // A parabola rises above its highest sample by at most a quarter of the larger step to a neighbour; four times that is granted.
+    before >= 0.0 && after >= 0.0 && distance <= before.max(after)
+}
+
+/// Wraps an angle to (−180°, 180°].
+fn wrap_deg(angle: f64) -> f64 {
+    180.0 - (180.0 - angle).rem_euclid(360.0)
+}
+
+/// A whole number of turns as an integer.
+#[expect(clippy::cast_possible_truncation, reason = "clamped to the range of the type")]
+fn whole(x: f64) -> i32 {
+    x.round().clamp(f64::from(i32::MIN), f64::from(i32::MAX)) as i32
+}
+
+/// The grid from `from` to `top` [Hz], with `to` and the breakpoints in it.
+fn grid(mut breakpoints: Vec<f64>, from: f64, to: f64, top: f64) -> Vec<f64> {
+    let ratio = 10.0_f64.powf(1.0 / POINTS_PER_DECADE);
+    let mut regular = Vec::with_capacity(256);
+    let mut f = from;
+    while f < to {
+        regular.push(f);
+        f *= ratio;
+    }
+    f = to;
+    while f < top {
+        regular.push(f);
+        f *= ratio;
+    }
+    regular.push(top);
+    breakpoints.retain(|b| *b > from && *b < top);
+    breakpoints.sort_by(f64::total_cmp);
+    merge(&regular, &breakpoints)
+}
+
+/// Two rising lists as one, each value once.
+fn merge(p: &[f64], q: &[f64]) -> Vec<f64> {
+    let mut all: Vec<f64> = Vec::with_capacity(p.len() + q.len());
+    let (mut p, mut q) = (p.iter().peekable(), q.iter().peekable());
+    while let Some(next) = match (p.peek(), q.peek()) {
+        (Some(x), Some(y)) if **x <= **y => p.next(),
+        (Some(_), None) => p.next(),
+        _ => q.next(),
+    } {
+        if all.last().is_none_or(|last| *last < *next) {
+            all.push(*next);
+        }
+    }
+    all
+}

@@ -1,0 +1,43 @@
+//! A root between two values of opposite sign.
+
+/// Steps granted; the method needs about ten, and never more than bisection to the last bit.
+const STEPS_AT_MOST: usize = 120;
+
+/// The root of `value` between `low` and `high`, to the tolerance, by the Illinois variant of regula falsi with bisection as its guard.
+///
+/// The values at the ends are given, since callers know them; when they have one sign the end nearer to zero is returned.
+///
+/// Source: Dowell and Jarratt, BIT 11 (1971), 168 (from memory).
+pub(super) fn bracketed_root(
+    mut value: impl FnMut(f64) -> f64,
+    (mut low, mut at_low): (f64, f64),
+    (mut high, mut at_high): (f64, f64),
+    tolerance: f64,
+) -> f64 {
+    if at_low * at_high >= 0.0 || at_low.is_nan() || at_high.is_nan() {
+        return if at_low.abs() <= at_high.abs() { low } else { high };
+    }
+    for step in 0..STEPS_AT_MOST {
+        let falsi = high - at_high * (high - low) / (at_high - at_low);
+        // Every fourth step halves, so that a curve that fools the secant cannot stall it.
+        let x = if falsi > low && falsi < high && step % 4 != 3 { falsi } else { 0.5 * (low + high) };
+        let here = value(x);
+        if here == 0.0 {
+            return x;
+        }
+        let moved;
+        if (here > 0.0) == (at_low > 0.0) {
+            moved = x - low;
+            (low, at_low) = (x, here);
+            at_high *= 0.5;
+        } else {
+            moved = high - x;
+            (high, at_high) = (x, here);
+            at_low *= 0.5;
+        }
+        if high - low <= tolerance || (moved <= tolerance && step % 4 != 3) {
+            return x;
+        }
+    }
+    0.5 * (low + high)
+}

@@ -1,0 +1,346 @@
+//! The verdict on a closed loop: its poles, checked by the encirclement count on the exact delay.
+//!
+//! The count is a proof, not a plot: the imaginary axis is cut into intervals until on each of them one of three things is certain
+//! from bounds on the distances of the roots: |T| stays above one (then 1 + T turns with T), |T| stays below one (then it stays
+//! right of the origin), or T moves less than its distance from −1 (then it cannot go around). Nothing is read off a grid.
+//!
+//! Conventions: the contour passes poles on the imaginary axis on their right, so they count as stable open-loop poles; the loop
+//! has Z = N + P closed-loop poles in the right half-plane, N clockwise turns around −1 and P open-loop poles there.
+//!
+//! Source: the argument principle; Nyquist, Bell System Technical Journal 11 (1932), 126 (from memory).
+//!
+//! Valid for: proper loops; with a delay the gain must fall below one at high frequency.
+
+use std::f64::consts::{FRAC_PI_2, PI, TAU};
+
+use super::margins::crosses_above_unity;
+use super::{Complex, FactoredResponse, FrequencyResponse, LogPoint};
+
+/// Intervals looked at before giving up; a loop of ten roots needs some tens.
+const INTERVALS_AT_MOST: usize = 20_000;
+
+/// Width in ln ω below which an undecided interval means that the loop passes through −1.
+const NARROWEST: f64 = 1e-12;
+
+/// Room left for rounding in each bound.
+const SLACK: f64 = 1e-9;
+
+/// What closing the loop leads to.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Verdict {
+    /// All closed-loop poles lie in the left half-plane, and the encirclement count agrees.
+    Stable {
+        /// Whether a lower gain would make the loop unstable.
+        conditionally: bool,
+    },
+    /// There are closed-loop poles in the right half-plane, and the encirclement count agrees.
+    Unstable {
+        /// Frequency of the fastest growing pole [Hz].
+        frequency_hz: f64,
+        /// Its growth [1/s].
+        growth_per_s: f64,
+        /// Closed-loop poles in the right half-plane, by the encirclement count.
+        poles: usize,
+    },
+    /// Poles and count disagree, or the loop passes through the critical point.
+    Undecided {
+        /// Why, in words.
+        reason: String,
+    },
+}
+
+/// The verdict from the closed-loop poles [rad/s], which may rest on a rational form of the delay, and the open loop with its exact delay.
+pub fn closed_loop_verdict(closed_loop_poles: &[Complex], open: &FactoredResponse) -> Verdict {
+    let count = match encirclement_count(open) {
+        Ok(count) => count,
+        Err(reason) => return Verdict::Undecided { reason },
+    };
+    let growing = closed_loop_poles.iter().filter(|p| p.re >= 0.0 || p.re.is_nan()).count();
+    if (growing == 0) != (count == 0) {
+        return Verdict::Undecided {
+            reason: format!("{growing} closed-loop poles are not in the left half-plane, but the encirclement count finds {count}"),
+        };
+    }
+    match closed_loop_poles.iter().max_by(|p, q| p.re.total_cmp(&q.re)) {
+        Some(fastest) if count > 0 => {
+            Verdict::Unstable { frequency_hz: fastest.im.abs() / TAU, growth_per_s: fastest.re, poles: count }
+        }
+        _ => Verdict::Stable { conditionally: conditionally_stable(open) },
+    }
+}
+
+/// Whether a stable loop would become unstable with less gain: its phase passes −180° − k·360° somewhere at a gain above one.
+fn conditionally_stable(open: &FactoredResponse) -> bool {
+    let (ln_scale, negative) = open.scale();
+    // A gain below −1 at zero frequency: less gain takes a pole through the origin.
+    if open.origin() == 0 && negative && ln_scale > 0.0 {
+        return true;
+    }
+    match Contour::new(open) {
+        Ok(contour) => crosses_above_unity(open, contour.low.exp() / TAU, contour.high.exp() / TAU),
+        Err(_) => false,
+    }
+}
+
+/// Number of closed-loop poles in the right half-plane by the encirclement count, with the exact delay.
+///
+/// # Errors
+/// The reason in words when the count does not exist: the loop passes through −1, is improper, or has a delay and a gain of one or
+/// more at infinite frequency.
+pub fn encirclement_count(open: &FactoredResponse) -> Result<usize, String> {
+    let unstable_open = open.zpk().poles.iter().filter(|p| p.re > 0.0).count();
+    if open.scale().0 == f64::NEG_INFINITY {
+        return Ok(unstable_open);
+    }
+    let contour = Contour::new(open)?;
+    let half_turns = (contour.start_angle - contour.end_angle()?) / PI;
+    let whole = half_turns.round();
+    if (half_turns - whole).abs() > 1e-6 {
+        return Err("the encirclement count does not close".to_owned());
+    }
+    let closed = whole + unstable_open as f64;
+    // A count below zero cannot come from a closed contour.
+    if closed < 0.0 { Err("the encirclement count does not close".to_owned()) } else { Ok(count_of(closed)) }
+}
+
+/// A non-negative whole number as a count.
+#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a non-negative whole number far below the limit")]
+fn count_of(x: f64) -> usize {
+    x.clamp(0.0, 1e9) as usize
+}
+
+/// What is certain about an interval.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Certain {
+    /// |T| > 1 throughout.
+    Above,
+    /// |T| < 1 throughout.
+    Below,
+    /// T stays within a disc that leaves −1 out.
+    Disc,
+}
+
+/// One root, prepared for bounds.
+struct Root {
+    re: f64,
+    im: f64,
+    /// 1/|root|².
+    inverse_square: f64,
+    /// Whether it is a zero, else a pole.
+    zero: bool,
+}
+
+/// The positive imaginary axis with the ends that are settled in closed form.
+struct Contour<'a> {
+    open: &'a FactoredResponse,
+    roots: Vec<Root>,
+    /// ln ω of the lower end.
+    low: f64,
+    /// ln ω of the upper end.
+    high: f64,
+    /// Angle of 1 + T on the positive real axis near the origin [rad].
+    start_angle: f64,
+    /// Angle of 1 + T at the lower end [rad].
+    low_angle: f64,
+    /// T at infinite frequency, for a loop that does not fall to zero.
+    at_infinity: f64,
+}
+
+impl<'a> Contour<'a> {
+    fn new(open: &'a FactoredResponse) -> Result<Self, String> {
+        let zpk = open.zpk();
+        if zpk.zeros.len() > zpk.poles.len() {
+            return Err("the loop gain rises without bound at high frequency".to_owned());
+        }
+        let at_infinity = if zpk.zeros.len() == zpk.poles.len() { zpk.gain } else { 0.0 };
+        if open.delay_s() > 0.0 && at_infinity.abs() >= 1.0 {
+            return Err("with a delay, the loop gain must fall below one at high frequency".to_owned());
+        }
+        let prepare = |zero: bool| {
+            move |r: &Complex| Root { re: r.re, im: r.im, inverse_square: 1.0 / r.norm_sqr(), zero }
+        };
+        let zeros = zpk.zeros.iter().filter(|r| **r != Complex::ZERO).map(prepare(true));
+        let poles = zpk.poles.iter().filter(|r| **r != Complex::ZERO).map(prepare(false));
+        let mut roots: Vec<Root> = zeros.chain(poles).collect();
+        // By size, so that the running product of bounds stays near the gain itself.
+        roots.sort_by(|p, q| q.inverse_square.total_cmp(&p.inverse_square));
+        let mut contour = Self { open, roots, low: 0.0, high: 0.0, start_angle: 0.0, low_angle: 0.0, at_infinity };
+        contour.settle_low_end()?;
+        contour.settle_high_end()?;
+        Ok(contour)
+    }
+
+    /// Sum over the roots of 1/|root|, and the delay: how fast ln T can move per rad/s near the origin.
+    fn inverse_sum(&self) -> f64 {
+        self.roots.iter().map(|r| r.inverse_square.sqrt()).sum::<f64>() + self.open.delay_s()
+    }
+
+    /// Chooses the lower end so that what lies below it is certain, and the angle of 1 + T there.
+    fn settle_low_end(&mut self) -> Result<(), String> {
+        let (ln_scale, negative) = self.open.scale();
+        let origin = f64::from(self.open.origin());
+        let inverse_sum = self.inverse_sum();
+        // Below this ln T departs from its asymptote by less than 0.02 (each factor by at most twice ω/|root|).
+        let mut low = if inverse_sum > 0.0 { (0.01 / inverse_sum).ln() } else { 0.0 };
+        if origin != 0.0 {
+            // Gain above e with poles at the origin, below 1/e with zeros.
+            low = low.min(-(ln_scale + origin.signum()) / origin);
+        }
+        let at_zero = if origin == 0.0 { ln_scale.exp() * if negative { -1.0 } else { 1.0 } } else { 0.0 };
+        if origin == 0.0 {
+            let distance = (1.0 + at_zero).abs();
+            if distance <= 1e-12 * (1.0 + at_zero.abs()) {
+                return Err("the loop gain is −1 at zero frequency: a closed-loop pole lies at the origin".to_owned());
+            }
+            // Here 1 + T moves by less than half its length.
+            low = low.min((0.2 * distance / (at_zero.abs() * inverse_sum + f64::MIN_POSITIVE)).ln().min(700.0));
+        }
+        if !low.is_finite() || low.abs() > 600.0 {
+            return Err("the loop gain is out of the number range".to_owned());
+        }
+        self.low = low;
+        let point = self.at(low);
+        let sign_angle = if negative { -PI } else { 0.0 };
+        (self.start_angle, self.low_angle) = if origin < 0.0 {
+            (sign_angle, point.phase_rad + inverse_angle(&point))
+        } else if origin > 0.0 {
+            (0.0, (point.value() + 1.0).arg())
+        } else {
+            let start = if at_zero < -1.0 { -PI } else { 0.0 };
+            (start, start + ((point.value() + 1.0) / (1.0 + at_zero)).arg())
+        };
+        Ok(())
+    }
+
+    /// Chooses the upper end so that what lies above it is certain.
+    fn settle_high_end(&mut self) -> Result<(), String> {
+        let zpk = self.open.zpk();
+        let sum: f64 = self.roots.iter().map(|r| r.inverse_square.sqrt().recip()).sum();
+        let largest = self.roots.last().map_or(1.0, |r| r.inverse_square.sqrt().recip());
+        let excess = (zpk.poles.len() - zpk.zeros.len()) as f64;
+        // Above twice the largest root, |ln(1 − root/s)| ≤ 1.4·|root|/ω.
+        let mut high = (2.0 * largest).ln().max(self.low + 1.0);
+        let ln_gain = zpk.gain.abs().ln();
+        for _ in 0..4000 {
+            let departure = 1.4 * sum / high.exp();
+            let certain = if self.at_infinity != 0.0 && self.open.delay_s() == 0.0 {
+                self.at_infinity.abs() * departure.exp_m1() < 0.5 * (1.0 + self.at_infinity).abs()
+            } else {
+                ln_gain - excess * high + departure < -1e-6
+            };
+            if certain {
+                self.high = high;
+                return Ok(());
+            }
+            high += 1.0;
+            if high > 600.0 {
+                break;
+            }
+        }
+        Err("the loop gain is −1 at infinite frequency, or out of the number range".to_owned())
+    }
+
+    fn at(&self, ln_omega: f64) -> LogPoint {
+        self.open.log_point(ln_omega.exp() / TAU)
+    }
+
+    /// Angle of 1 + T at infinite frequency, followed from the lower end [rad].
+    fn end_angle(&self) -> Result<f64, String> {
+        let mut angle = self.low_angle;
+        let mut run: Option<(Certain, LogPoint)> = None;
+        let mut stack = vec![(self.low, self.high)];
+        let mut looked_at = 0;
+        while let Some((from, to)) = stack.pop() {
+            looked_at += 1;
+            let Some(certain) = self.judge(from, to) else {
+                let middle = 0.5 * (from + to);
+                if to - from < NARROWEST || looked_at > INTERVALS_AT_MOST {
+                    return Err(format!("the loop passes through the critical point near {:.6e} Hz", middle.exp() / TAU));
+                }
+                stack.push((middle, to));
+                stack.push((from, middle));
+                continue;
+            };
+            // Intervals of one certainty join, so that the response is evaluated only where the certainty changes.
+            match run {
+                Some((kind, _)) if kind == certain && kind != Certain::Disc => {}
+                Some((kind, start)) => {
+                    let here = self.at(from);
+                    angle += turn(kind, &start, &here);
+                    run = Some((certain, here));
+                }
+                None => run = Some((certain, self.at(from))),
+            }
+        }
+        let top = self.at(self.high);
+        if let Some((kind, start)) = run {
+            angle += turn(kind, &start, &top);
+        }
+        let left = if self.at_infinity != 0.0 && self.open.delay_s() == 0.0 {
+            ((1.0 + self.at_infinity) / (top.value() + 1.0)).arg()
+        } else {
+            -(top.value() + 1.0).arg()
+        };
+        Ok(angle + left)
+    }
+
+    /// What is certain about T between two values of ln ω.
+    fn judge(&self, from: f64, to: f64) -> Option<Certain> {
+        let (low, high) = (from.exp(), to.exp());
+        let (ln_scale, _) = self.open.scale();
+        let origin = f64::from(self.open.origin());
+        let (first, second) = if origin < 0.0 { (to, from) } else { (from, to) };
+        let mut least = (2.0 * (ln_scale + origin * first)).exp();
+        let mut most = (2.0 * (ln_scale + origin * second)).exp();
+        for root in &self.roots {
+            let (near, far) = root.distance_squares(low, high);
+            if root.zero {
+                least *= near * root.inverse_square;
+                most *= far * root.inverse_square;
+            } else {
+                least /= far * root.inverse_square;
+                most /= near * root.inverse_square;
+            }
+        }
+        if least > 1.0 + SLACK {
+            return Some(Certain::Above);
+        }
+        if most < 1.0 - SLACK {
+            return Some(Certain::Below);
+        }
+        let steepness = origin.abs()
+            + high * self.open.delay_s()
+            + self.roots.iter().map(|r| high / r.distance_squares(low, high).0.sqrt()).sum::<f64>();
+        let radius = 0.5 * steepness * (to - from);
+        if radius > FRAC_PI_2 {
+            return None;
+        }
+        let centre = self.at(0.5 * (from + to)).value();
+        (centre.norm() * radius.exp_m1() < (1.0 - SLACK) * (centre + 1.0).norm()).then_some(Certain::Disc)
+    }
+}
+
+impl Root {
+    /// Least and greatest squared distance from the points `jω`, ω from `low` to `high`.
+    fn distance_squares(&self, low: f64, high: f64) -> (f64, f64) {
+        let (below, above) = (self.im - low, high - self.im);
+        let gap = if below < 0.0 { -below } else if above < 0.0 { -above } else { 0.0 };
+        let far = below.abs().max(above.abs());
+        let square = self.re * self.re;
+        (square + gap * gap, square + far * far)
+    }
+}
+
+/// Angle of 1 + 1/T [rad].
+fn inverse_angle(point: &LogPoint) -> f64 {
+    (Complex::from_polar((-point.ln_gain).clamp(-690.0, 690.0).exp(), -point.phase_rad) + 1.0).arg()
+}
+
+/// By how much 1 + T turns over a run of one certainty [rad].
+fn turn(kind: Certain, start: &LogPoint, end: &LogPoint) -> f64 {
+    match kind {
+        Certain::Above => end.phase_rad - start.phase_rad + inverse_angle(end) - inverse_angle(start),
+        Certain::Below => (end.value() + 1.0).arg() - (start.value() + 1.0).arg(),
+        Certain::Disc => ((end.value() + 1.0) / (start.value() + 1.0)).arg(),
+    }
+}

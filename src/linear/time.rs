@@ -1,0 +1,214 @@
+//! Exact step response on a uniform grid, by powers of the transition matrix.
+//!
+//! The input is made part of the state, so one matrix exponential carries system and input over a grid step without any error of
+//! discretisation. The output is read through precomputed rows `c Φ^j`, and the state only leaps from block to block.
+//!
+//! Conventions: before t = 0 the system rests at the input's value `from`; at t = 0 the value after an ideal step is given.
+
+use nalgebra::{DMatrix, DVector, RowDVector};
+
+use super::{LinearError, StateSpace, expm};
+
+/// Grid points between leaps of the state: the cost of the rows and of the leaps balances for the usual 1,000 points.
+const BLOCK: usize = 32;
+
+/// An input that goes from one value to another at constant slew.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct RampStep {
+    /// Value before t = 0 [unit of the input].
+    pub from: f64,
+    /// Value from `rise_s` on [unit of the input].
+    pub to: f64,
+    /// Time of the way [s]; 0 is an ideal step.
+    pub rise_s: f64,
+}
+
+impl RampStep {
+    /// An ideal step from zero.
+    pub fn ideal(to: f64) -> Self {
+        Self { from: 0.0, to, rise_s: 0.0 }
+    }
+
+    /// From zero at a slew [unit of the input per second]; a slew of zero or infinite is an ideal step.
+    pub fn with_slew(to: f64, slew: f64) -> Self {
+        let rise = (to / slew).abs();
+        Self { from: 0.0, to, rise_s: if rise.is_finite() { rise } else { 0.0 } }
+    }
+
+    /// Whether the numbers can be used.
+    pub(super) fn check(&self) -> Result<(), LinearError> {
+        if !(self.from.is_finite() && self.to.is_finite() && self.rise_s.is_finite()) {
+            return Err(LinearError::NotFinite);
+        }
+        if self.rise_s < 0.0 {
+            return Err(LinearError::Shape("a rise time is not negative".to_owned()));
+        }
+        Ok(())
+    }
+}
+
+/// Times 0, step, 2·step, …
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct UniformGrid {
+    /// Distance of the times [s].
+    pub step_s: f64,
+    /// Number of times.
+    pub count: usize,
+}
+
+impl UniformGrid {
+    /// The times [s].
+    pub fn times_s(&self) -> Vec<f64> {
+        (0..self.count).map(|k| k as f64 * self.step_s).collect()
+    }
+}
+
+/// Output values on the grid for an input that steps, absolute (not as a deviation).
+///
+/// # Errors
+/// [`LinearError::UnknownPort`], [`LinearError::Shape`] for a grid step or rise that is negative, [`LinearError::PoleThere`] when there is no rest at
+/// a `from` other than zero, [`LinearError::NotFinite`] when numbers run out of range, as the response of an unstable system can.
+pub fn step_response(
+    system: &StateSpace,
+    input: usize,
+    output: usize,
+    grid: UniformGrid,
+    event: RampStep,
+) -> Result<Vec<f64>, LinearError> {
+    event.check()?;
+    if !grid.step_s.is_finite() || grid.step_s <= 0.0 {
+        return Err(LinearError::Shape("a grid step is positive".to_owned()));
+    }
+    if input >= system.inputs.len() || output >= system.outputs.len() {
+        return Err(LinearError::UnknownPort(format!("output {output}, input {input}")));
+    }
+    let before = if event.from == 0.0 {
+        0.0
+    } else {
+        event.from * system.dc_gain(output, input).ok_or(LinearError::PoleThere)?
+    };
+    let mut values = Vec::with_capacity(grid.count + BLOCK);
+    let driven = Driven::new(system, input, output);
+    if event.rise_s > 0.0 {
+        driven.ramp(&mut values, grid, event)?;
+    } else {
+        let start = driven.at_rest(&[event.to - event.from]);
+        driven.propagate(&driven.held(), start, grid.step_s, grid.count, &mut values)?;
+    }
+    values.truncate(grid.count);
+    for value in &mut values {
+        *value += before;
+    }
+    if values.iter().all(|v| v.is_finite()) { Ok(values) } else { Err(LinearError::NotFinite) }
+}
+
+/// A system with one input made part of its state, seen through one output.
+struct Driven<'a> {
+    system: &'a StateSpace,
+    input: usize,
+    output: usize,
+}
+
+impl<'a> Driven<'a> {
+    fn new(system: &'a StateSpace, input: usize, output: usize) -> Self {
+        Self { system, input, output }
+    }
+
+    /// State matrix with the input held: `[A b; 0 0]`.
+    fn held(&self) -> DMatrix<f64> {
+        let n = self.system.order();
+        let mut m = DMatrix::zeros(n + 1, n + 1);
+        m.view_mut((0, 0), (n, n)).copy_from(&self.system.a);
+        m.view_mut((0, n), (n, 1)).copy_from(&self.system.b.column(self.input));
+        m
+    }
+
+    /// State matrix with the input moving at a rate that is the last state.
+    fn moving(&self) -> DMatrix<f64> {
+        let n = self.system.order();
+        let mut m = self.held().resize(n + 2, n + 2, 0.0);
+        m[(n, n + 1)] = 1.0;
+        m
+    }
+
+    /// The states at zero, followed by the states of the input.
+    fn at_rest(&self, input: &[f64]) -> DVector<f64> {
+        let n = self.system.order();
+        DVector::from_fn(n + input.len(), |i, _| if i < n { 0.0 } else { input[i - n] })
+    }
+
+    /// Appends the output values at `count` times from the start state on.
+    fn propagate(
+        &self,
+        matrix: &DMatrix<f64>,
+        start: DVector<f64>,
+        step_s: f64,
+        count: usize,
+        values: &mut Vec<f64>,
+    ) -> Result<(), LinearError> {
+        let size = matrix.nrows();
+        let transition = expm(&(matrix * step_s))?;
+        let n = self.system.order();
+        let mut row = RowDVector::from_fn(size, |_, j| match j {
+            j if j < n => self.system.c[(self.output, j)],
+            j if j == n => self.system.d[(self.output, self.input)],
+            _ => 0.0,
+        });
+        let block = BLOCK.min(count.max(1));
+        // Rows c Φ^j, one state after the other, so that a block of outputs is a sum of scaled columns.
+        let mut rows = DMatrix::zeros(block, size);
+        let mut next = row.clone();
+        for j in 0..block {
+            rows.row_mut(j).copy_from(&row);
+            row.mul_to(&transition, &mut next);
+            std::mem::swap(&mut row, &mut next);
+        }
+        let leap = power(&transition, block);
+        let mut state = start;
+        let mut outputs = DVector::zeros(block);
+        for _ in 0..count / block {
+            rows.mul_to(&state, &mut outputs);
+            values.extend_from_slice(outputs.as_slice());
+            state = &leap * state;
+        }
+        rows.mul_to(&state, &mut outputs);
+        values.extend_from_slice(&outputs.as_slice()[..count % block]);
+        Ok(())
+    }
+
+    /// Values for a ramp that ends in a held value; the end of the ramp need not lie on the grid.
+    fn ramp(&self, values: &mut Vec<f64>, grid: UniformGrid, event: RampStep) -> Result<(), LinearError> {
+        let moving = self.moving();
+        let change = event.to - event.from;
+        let n = self.system.order();
+        let start = self.at_rest(&[0.0, change / event.rise_s]);
+        let on_ramp = (0..grid.count).take_while(|k| *k as f64 * grid.step_s <= event.rise_s).count();
+        let mut at_end = expm(&(&moving * event.rise_s))? * &start;
+        self.propagate(&moving, start, grid.step_s, on_ramp, values)?;
+        if on_ramp == grid.count {
+            return Ok(());
+        }
+        at_end[n] = change;
+        let held = self.held();
+        let to_next_time = on_ramp as f64 * grid.step_s - event.rise_s;
+        let first = expm(&(&held * to_next_time))? * at_end.rows(0, n + 1);
+        self.propagate(&held, first, grid.step_s, grid.count - on_ramp, values)
+    }
+}
+
+/// A matrix to a whole power of at least one.
+fn power(matrix: &DMatrix<f64>, exponent: usize) -> DMatrix<f64> {
+    let mut result: Option<DMatrix<f64>> = None;
+    let mut square = matrix.clone();
+    let mut left = exponent;
+    while left > 0 {
+        if left & 1 == 1 {
+            result = Some(result.map_or_else(|| square.clone(), |r| r * &square));
+        }
+        left >>= 1;
+        if left > 0 {
+            square = &square * &square;
+        }
+    }
+    result.unwrap_or_else(|| DMatrix::identity(matrix.nrows(), matrix.ncols()))
+}
