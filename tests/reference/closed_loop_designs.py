@@ -26,7 +26,7 @@ class Design:
     band: float = 0.01  # settling band, fraction of the output
     load_step: tuple = (1.0, 1e6)  # change [A], slew [A/s]
     line_step: tuple = (1.0, 1e5)  # change [V], slew [V/s]
-    reference_step: float = 0.1  # change at the output [V]
+    reference_step: tuple = (0.1, 1e4)  # change and slew at the output [V], [V/s]
 
     @property
     def regulated(self):
@@ -73,7 +73,8 @@ class Design:
             "event.load-step.slew": self.load_step[1],
             "event.line-step.change": self.line_step[0],
             "event.line-step.slew": self.line_step[1],
-            "event.reference-step.change": self.reference_step,
+            "event.reference-step.change": self.reference_step[0],
+            "event.reference-step.slew": self.reference_step[1],
             "event.settling-band": self.band,
         }
         for k, name in enumerate(["least", "nominal", "greatest"]):
@@ -110,7 +111,7 @@ DESIGNS = [
         Stage("buck", 500e3, 2.2e-6, 5e-3, 8e-3, "synchronous", [Branch(47e-6, 3e-3, 0.0, 6, 0.7)], "resistor", synchronous=6e-3),
         (9.0, 12.0, 14.0), 3.3, (2.0, 5.0, 8.0), 1.5,
         Network(3, "op-amp", 0.8, 10e3, 3.2e3, 3.3e-9, 11e3, 68e-12, 330.0, 2e-9, 0.0, 2e4, 12e6),
-        load_step=(3.0, 2e6), line_step=(2.0, 1e5), reference_step=0.05, band=0.002,
+        load_step=(3.0, 2e6), line_step=(2.0, 1e5), reference_step=(0.05, 1e4), band=0.002,
     ),
     Design(
         "diode buck, unlike bank with ESL, input capacitor, line feed-forward, delay",
@@ -119,14 +120,14 @@ DESIGNS = [
               "resistor", 0.04, (470e-6, 0.03), 0.45, 0.02),
         (18.0, 24.0, 32.0), 12.0, (2.0, 3.0, 5.0), 2.0,
         Network(3, "op-amp", 1.2, 20e3, 2220.0, 15e-9, 8200.0, 220e-12, 1e3, 3.6e-9, 0.0, 1e4, 8e6),
-        delay=250e-9, feedforward=True, line_step=(4.0, 2e5), reference_step=0.2, band=0.002,
+        delay=250e-9, feedforward=True, line_step=(4.0, 2e5), reference_step=(0.2, 1e5), band=0.002,
     ),
     Design(
         "synchronous buck, constant power, transconductance type II, delay, source resistance alone",
         Stage("buck", 600e3, 1.5e-6, 6e-3, 20e-3, "synchronous", [Branch(330e-6, 20e-3)], "power", 0.01, synchronous=15e-3),
         (4.5, 5.0, 5.5), 1.8, (1.0, 2.0, 3.0), 1.0,
         Network(2, "transconductance", 0.6, 10e3, 5e3, 2.4e-9, 13e3, 43e-12, gain=1.2e-3, limit=2e6),
-        delay=60e-9, load_step=(-0.7, 1e6), line_step=(-0.4, 5e4), reference_step=0.03, band=0.003,
+        delay=60e-9, load_step=(-0.7, 1e6), line_step=(-0.4, 5e4), reference_step=(0.03, 1e6), band=0.003,
     ),
     Design(
         "diode buck, constant current, electrolytic with ceramic, type II",
@@ -134,14 +135,14 @@ DESIGNS = [
               "current", drop=0.5, diode=0.03),
         (36.0, 48.0, 56.0), 15.0, (1.5, 2.0, 4.0), 2.5,
         Network(2, "op-amp", 2.5, 10e3, 2e3, 15e-9, 20e3, 120e-12, gain=5e4, limit=3e6),
-        load_step=(1.0, 1e7), line_step=(5.0, 1e5), reference_step=-0.3, band=0.002,
+        load_step=(1.0, 1e7), line_step=(5.0, 1e5), reference_step=(-0.3, 1e5), band=0.002,
     ),
     Design(
         "diode boost, resistor, type III, delay",
         Stage("boost", 300e3, 22e-6, 25e-3, 20e-3, "diode", [Branch(150e-6, 0.03, 0.0, 2)], "resistor", drop=0.4, diode=0.025),
         (9.0, 12.0, 15.0), 24.0, (0.8, 1.5, 2.5), 1.5,
         Network(3, "op-amp", 1.25, 22e3, 1210.0, 200e-9, 1500.0, 820e-12, 2400.0, 6.8e-9, 0.0, 1e4, 8e6),
-        delay=150e-9, load_step=(0.5, 1e6), line_step=(1.0, 1e5), reference_step=0.5, band=0.003,
+        delay=150e-9, load_step=(0.5, 1e6), line_step=(1.0, 1e5), reference_step=(0.5, 1e4), band=0.003,
     ),
     Design(
         "synchronous boost, constant power, transconductance type II with feed-forward capacitor, input capacitor, delay",
@@ -149,7 +150,7 @@ DESIGNS = [
               "power", 0.03, (47e-6, 0.01), synchronous=22e-3),
         (3.0, 3.7, 4.2), 5.0, (1.0, 1.5, 2.0), 0.8,
         Network(2, "transconductance", 0.6, 100e3, 13.6e3, 33e-9, 430.0, 820e-12, cff=100e-12, gain=1.2e-3, limit=2e6),
-        delay=30e-9, load_step=(0.4, 1e6), line_step=(0.3, 1e4), reference_step=0.05, band=0.003,
+        delay=30e-9, load_step=(0.4, 1e6), line_step=(0.3, 1e4), reference_step=(0.05, 1e3), band=0.003,
     ),
     Design(
         "diode boost, constant current, unlike bank, type III",
@@ -157,7 +158,7 @@ DESIGNS = [
               drop=0.6, diode=0.05),
         (20.0, 24.0, 28.0), 48.0, (0.5, 1.0, 1.5), 3.0,
         Network(3, "op-amp", 2.5, 47e3, 2580.0, 160e-9, 5100.0, 680e-12, 3300.0, 10e-9, 0.0, 1e5, 4e6),
-        load_step=(0.4, 1e5), line_step=(2.0, 1e4), reference_step=1.0, band=0.002,
+        load_step=(0.4, 1e5), line_step=(2.0, 1e4), reference_step=(1.0, 1e4), band=0.002,
     ),
     Design(
         "diode inverting buck-boost, resistor, input capacitor, type III",
@@ -165,7 +166,7 @@ DESIGNS = [
               0.05, (220e-6, 0.04), 0.5, 0.02),
         (18.0, 24.0, 30.0), 15.0, (1.0, 2.0, 3.0), 2.0,
         Network(3, "op-amp", 1.25, 22e3, 2e3, 150e-9, 2700.0, 820e-12, 1300.0, 11e-9, 0.0, 2e4, 10e6),
-        load_step=(0.8, 1e6), line_step=(3.0, 1e5), reference_step=0.3, band=0.002,
+        load_step=(0.8, 1e6), line_step=(3.0, 1e5), reference_step=(0.3, 1e5), band=0.002,
     ),
     Design(
         "synchronous inverting buck-boost, constant current, unlike bank, transconductance type III, delay",
@@ -173,7 +174,7 @@ DESIGNS = [
               synchronous=0.014),
         (10.0, 12.0, 16.0), 5.0, (1.0, 2.0, 3.0), 1.0,
         Network(3, "transconductance", 0.8, 52.3e3, 10e3, 120e-9, 820.0, 1.1e-9, 2e3, 1.3e-9, gain=1.2e-3, limit=1e6),
-        delay=50e-9, load_step=(0.5, 1e6), line_step=(1.0, 1e5), reference_step=0.1, band=0.003,
+        delay=50e-9, load_step=(0.5, 1e6), line_step=(1.0, 1e5), reference_step=(0.1, 1e6), band=0.003,
     ),
     Design(
         "diode inverting buck-boost, constant power, type III, delay",
@@ -181,6 +182,6 @@ DESIGNS = [
               drop=0.45, diode=0.02),
         (9.0, 12.0, 15.0), 12.0, (1.0, 1.5, 2.0), 1.8,
         Network(3, "op-amp", 1.2, 18e3, 2e3, 180e-9, 2200.0, 620e-12, 1300.0, 12e-9, 0.0, 3e4, 6e6),
-        delay=300e-9, load_step=(0.3, 1e6), line_step=(1.0, 1e5), reference_step=0.2, band=0.001,
+        delay=300e-9, load_step=(0.3, 1e6), line_step=(1.0, 1e5), reference_step=(0.2, 2e3), band=0.001,
     ),
 ]
