@@ -47,7 +47,12 @@ impl Request {
     /// A request over the usual span of a stage: from a hundred-thousandth of the switching frequency to it.
     pub fn spanning(shown: Shown, switching_frequency: f64, points: usize) -> Self {
         let grid = |n: usize| logarithmic(switching_frequency * 1e-5, switching_frequency, n);
-        Request { shown, frequencies_hz: grid(points), band_frequencies_hz: grid(points.div_ceil(4)), step_points: points }
+        Request {
+            shown,
+            frequencies_hz: grid(points),
+            band_frequencies_hz: grid(points.div_ceil(4)),
+            step_points: points,
+        }
     }
 }
 
@@ -153,17 +158,14 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
     refuse_unmodelled(design, condition, &model)?;
     let fs = design.stage.switching_frequency;
+    let (verdict, modes) = model.verdict(shared).map_err(|e| model_finding(&e))?;
     let loop_gain = LoopResult {
-        verdict: model.verdict(shared).map_err(|e| model_finding(&e))?,
+        verdict,
         margins: margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO),
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
         gain_at_switching: model.loop_gain.at_hz(fs).norm(),
     };
-    let load_step = if loop_gain.stable() {
-        Some(load_figures(design, shared, &model).map_err(|e| model_finding(&e))?)
-    } else {
-        None
-    };
+    let load_step = modes.map(|modes| load_figures(design, &modes)).transpose().map_err(|e| model_finding(&e))?;
     let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
     Ok(Worked { model, loop_gain, load_step, right_half_plane_zero_hz })
 }
@@ -184,13 +186,20 @@ fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &Loop
     let (least, greatest) = (design.modulator.duty_least, design.modulator.duty_greatest);
     if !(least..=greatest).contains(&point.duty) {
         let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
-        let message = format!("a duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}", point.duty);
+        let message =
+            format!("a duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}", point.duty);
         return Err(Finding::problem(place, message).with_hint("widen the duty limits or the input range"));
     }
     Ok(())
 }
 
-fn detailed(design: &CheckedDesign, shared: &Shared, condition: &Condition, worked: &Worked, request: &Request) -> Result<Detail, Finding> {
+fn detailed(
+    design: &CheckedDesign,
+    shared: &Shared,
+    condition: &Condition,
+    worked: &Worked,
+    request: &Request,
+) -> Result<Detail, Finding> {
     let model = &worked.model;
     let stage_condition = condition.of_stage(&design.stage);
     let landmarks = design.stage.landmarks(&stage_condition, model.plant.zpk());
@@ -202,7 +211,9 @@ fn detailed(design: &CheckedDesign, shared: &Shared, condition: &Condition, work
     let operating_point = model.averaged.operating_point.clone();
     let control_voltage = design.modulator.control_voltage(operating_point.duty, condition.input_voltage);
     let steps = if worked.loop_gain.stable() {
-        steps(design, shared, model, control_voltage, request.step_points).map_err(|e| model_finding(&e))?
+        let crossover_hz = crossover.map(|c| c.frequency_hz);
+        steps(design, shared, model, crossover_hz, control_voltage, request.step_points)
+            .map_err(|e| model_finding(&e))?
     } else {
         super::result::Steps::default()
     };

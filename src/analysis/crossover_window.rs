@@ -53,8 +53,10 @@ fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Opt
     let resonance = |condition: &Condition| {
         (design.stage.topology().resonance_hz)(&design.stage.textbook(&condition.of_stage(&design.stage)))
     };
-    let highest = conditions.iter().map(|c| (resonance(&c.condition), &c.condition)).max_by(|a, b| a.0.total_cmp(&b.0))?;
-    let cause = format!("{ABOVE_RESONANCE} × LC resonance {} at {}", print_digits(highest.0, Unit::Hertz, 3), highest.1.label);
+    let highest =
+        conditions.iter().map(|c| (resonance(&c.condition), &c.condition)).max_by(|a, b| a.0.total_cmp(&b.0))?;
+    let cause =
+        format!("{ABOVE_RESONANCE} × LC resonance {} at {}", print_digits(highest.0, Unit::Hertz, 3), highest.1.label);
     edge(ABOVE_RESONANCE * highest.0, cause, Cause::Resonance)
 }
 
@@ -63,11 +65,8 @@ fn load_step_edge(design: &CheckedDesign) -> Option<(WindowEdge, Cause)> {
     let deviation = asked(Scope::Worst).into_iter().chain(asked(Scope::Nominal)).min_by(f64::total_cmp)?;
     let change = design.events.load_step.change.abs();
     let need = change / (TAU * design.stage.output_capacitance() * deviation);
-    let cause = format!(
-        "load step {} within {}: ΔI / (2π·C·ΔV)",
-        print(change, Unit::Ampere),
-        print(deviation, Unit::Volt)
-    );
+    let cause =
+        format!("load step {} within {}: ΔI / (2π·C·ΔV)", print(change, Unit::Ampere), print(deviation, Unit::Volt));
     edge(need, cause, Cause::LoadStep)
 }
 
@@ -75,10 +74,8 @@ fn right_half_plane_edge(design: &CheckedDesign, conditions: &[ConditionResult])
     let asked = |scope| design.requirements.get(Asked::RightHalfPlaneRatio, scope).map(|limit| limit.value);
     let ratio = asked(Scope::Worst).or(asked(Scope::Nominal)).unwrap_or(BELOW_ZERO);
     let zero = |c: &ConditionResult| c.outcome.as_ref().ok().and_then(|s| s.right_half_plane_zero_hz);
-    let lowest = conditions
-        .iter()
-        .filter_map(|c| zero(c).map(|f| (f, &c.condition)))
-        .min_by(|a, b| a.0.total_cmp(&b.0))?;
+    let lowest =
+        conditions.iter().filter_map(|c| zero(c).map(|f| (f, &c.condition))).min_by(|a, b| a.0.total_cmp(&b.0))?;
     let cause = format!("RHP zero {} ÷ {ratio} at {}", print_digits(lowest.0, Unit::Hertz, 3), lowest.1.label);
     edge(lowest.0 / ratio, cause, Cause::RightHalfPlaneZero)
 }

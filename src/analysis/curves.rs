@@ -16,7 +16,13 @@ fn db(magnitude: f64) -> f64 {
 ///
 /// # Errors
 /// As the reduction to zeros and poles.
-pub(super) fn curves(model: &LoopModel, shared: &Shared, reference: &Zpk, frequencies_hz: &[f64], reference_scale: f64) -> Result<Curves, LinearError> {
+pub(super) fn curves(
+    model: &LoopModel,
+    shared: &Shared,
+    reference: &Zpk,
+    frequencies_hz: &[f64],
+    reference_scale: f64,
+) -> Result<Curves, LinearError> {
     let n = frequencies_hz.len();
     let both = |response: &FactoredResponse| {
         let (mut gain, mut phase) = (vec![0.0; n], vec![0.0; n]);

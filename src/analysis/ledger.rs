@@ -13,8 +13,15 @@ use std::f64::consts::TAU;
 const SMALL_DEG: f64 = 0.05;
 
 /// The ledger at a crossover [Hz].
-pub(super) fn ledger(model: &LoopModel, shared: &Shared, compensator: &Compensator, landmarks: &[Landmark], crossover_hz: f64) -> Ledger {
-    let mut rows = vec![LedgerRow { label: "half turn".into(), degrees: 180.0, role: LedgerRole::HalfTurn, lane: None }];
+pub(super) fn ledger(
+    model: &LoopModel,
+    shared: &Shared,
+    compensator: &Compensator,
+    landmarks: &[Landmark],
+    crossover_hz: f64,
+) -> Ledger {
+    let mut rows =
+        vec![LedgerRow { label: "half turn".into(), degrees: 180.0, role: LedgerRole::HalfTurn, lane: None }];
     let ideal = FactoredResponse::new(compensator.ideal(), 0.0);
     rows.extend(compensator_rows(compensator, &ideal, crossover_hz));
     let amplifier = shared.compensator_response.phase_deg(crossover_hz) - ideal.phase_deg(crossover_hz);
@@ -28,7 +35,12 @@ pub(super) fn ledger(model: &LoopModel, shared: &Shared, compensator: &Compensat
         }
     }
     if small != 0.0 {
-        rows.push(LedgerRow { label: "stage, far poles and zeros".into(), degrees: small, role: LedgerRole::Plant, lane: None });
+        rows.push(LedgerRow {
+            label: "stage, far poles and zeros".into(),
+            degrees: small,
+            role: LedgerRole::Plant,
+            lane: None,
+        });
     }
     let sum: f64 = rows.iter().map(|row| row.degrees).sum();
     let phase_margin_deg = wrapped(sum);
@@ -57,7 +69,12 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
         .collect();
     let beside = ideal.phase_deg(f) - rows.iter().map(|row| row.degrees).sum::<f64>();
     if beside.abs() > 1e-6 {
-        rows.push(LedgerRow { label: "network beside its lanes".into(), degrees: beside, role: LedgerRole::Compensator, lane: None });
+        rows.push(LedgerRow {
+            label: "network beside its lanes".into(),
+            degrees: beside,
+            role: LedgerRole::Compensator,
+            lane: None,
+        });
     } else if let Some(first) = rows.first_mut() {
         // Rounding of the sum, so that the ledger closes to the last digit.
         first.degrees += beside;
@@ -78,7 +95,9 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark]) -> LedgerRow {
         FactorKind::Zero if near("esr-zero") => (format!("ESR zero {at}"), LedgerRole::Plant),
         FactorKind::Zero => (format!("stage zero {at}"), LedgerRole::Plant),
         FactorKind::Pole if right => (format!("RHP pole {at}"), LedgerRole::RightHalfPlane),
-        FactorKind::Pole if factor.root.im != 0.0 && near("lc-resonance") => (format!("LC resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if factor.root.im != 0.0 && near("lc-resonance") => {
+            (format!("LC resonance {at}"), LedgerRole::Plant)
+        }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };

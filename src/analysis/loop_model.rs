@@ -8,7 +8,9 @@ use crate::control::Modulator;
 use crate::converter::{AveragedModel, Stage, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
-use crate::linear::{FactoredResponse, LinearError, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict, pade_delay};
+use crate::linear::{
+    FactoredResponse, LinearError, Modes, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict, pade_delay,
+};
 use nalgebra::DMatrix;
 
 /// What all conditions of a design share: the compensator, solved once.
@@ -30,11 +32,14 @@ impl Shared {
     /// # Errors
     /// A finding when its network has no state equations.
     pub fn new(design: &CheckedDesign) -> Result<Self, Finding> {
-        let singular = |e: &dyn std::fmt::Display| Finding::problem("compensator", format!("the compensator cannot be solved: {e}"));
+        let singular = |e: &dyn std::fmt::Display| {
+            Finding::problem("compensator", format!("the compensator cannot be solved: {e}"))
+        };
         let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
         let response = design.compensator.response().map_err(|e| singular(&e))?;
         let delay_s = design.modulator.delay_s;
-        let delay = if delay_s > 0.0 { Some(pade_delay(delay_s, DELAY_ORDER).map_err(|e| singular(&e))?) } else { None };
+        let delay =
+            if delay_s > 0.0 { Some(pade_delay(delay_s, DELAY_ORDER).map_err(|e| singular(&e))?) } else { None };
         Ok(Shared { compensator, compensator_response: FactoredResponse::new(response, 0.0), delay })
     }
 }
@@ -63,7 +68,12 @@ impl LoopModel {
     ///
     /// # Errors
     /// A finding when the stage has no operating point there or a model is singular.
-    pub fn new(stage: &Stage, modulator: &Modulator, shared: &Shared, condition: &StageCondition) -> Result<Self, Finding> {
+    pub fn new(
+        stage: &Stage,
+        modulator: &Modulator,
+        shared: &Shared,
+        condition: &StageCondition,
+    ) -> Result<Self, Finding> {
         let averaged = stage.averaged(condition)?;
         let duty_from_control = modulator.duty_from_control(condition.input_voltage);
         let duty_from_input = modulator.duty_from_input(averaged.operating_point.duty, condition.input_voltage);
@@ -144,14 +154,24 @@ impl LoopModel {
         StateSpace::connect(&parts, &wires, &inputs, &outputs)
     }
 
-    /// Stability by the poles of the closed loop, checked by the encirclement count on the exact delay.
+    /// Stability by the poles of the closed loop, checked by the encirclement count on the exact delay; and for a stable
+    /// loop its modes.
     ///
     /// # Errors
     /// As the joining of systems.
-    pub fn verdict(&self, shared: &Shared) -> Result<Verdict, LinearError> {
+    pub fn verdict(&self, shared: &Shared) -> Result<(Verdict, Option<Modes>), LinearError> {
         // The load-side model of the bank's inductance stands outside the loop and is stable by itself.
-        let poles = self.close(shared, None)?.poles()?;
-        Ok(closed_loop_verdict(&poles, &self.loop_gain))
+        let inner = self.close(shared, None)?;
+        let poles = inner.poles()?;
+        let verdict = closed_loop_verdict(&poles, &self.loop_gain);
+        if !matches!(verdict, Verdict::Stable { .. }) {
+            return Ok((verdict, None));
+        }
+        let modes = match &self.averaged.bank_inductance {
+            None => Modes::with_poles(&inner, &poles)?,
+            Some(_) => Modes::new(&self.closed(shared)?)?,
+        };
+        Ok((verdict, Some(modes)))
     }
 }
 

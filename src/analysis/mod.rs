@@ -19,6 +19,6 @@ mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
 pub use result::{
-    Analysis, Condition, ConditionResult, ConditionSummary, CrossoverWindow, Curves, Detail, Ledger, LedgerRole, LedgerRow,
-    Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step, StepFigures, Steps, WindowEdge, Worst,
+    Analysis, Condition, ConditionResult, ConditionSummary, CrossoverWindow, Curves, Detail, Ledger, LedgerRole,
+    LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step, StepFigures, Steps, WindowEdge, Worst,
 };

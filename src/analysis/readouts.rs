@@ -110,11 +110,16 @@ static ROWS: [Row; 10] = [
 ];
 
 /// The read-outs of the shown condition, with the worst of the nine and the requirements beside them.
-pub(super) fn readouts(detail: Option<&Detail>, conditions: &[ConditionResult], verdicts: &[RequirementVerdict]) -> Vec<Readout> {
+pub(super) fn readouts(
+    detail: Option<&Detail>,
+    conditions: &[ConditionResult],
+    verdicts: &[RequirementVerdict],
+) -> Vec<Readout> {
     let stable = detail.is_some_and(|d| d.loop_gain.stable());
     let shown = |row: &Row| {
         let requirements: Vec<_> = verdicts.iter().filter(|v| v.readout == row.key).cloned().collect();
-        let of_margins = matches!(row.key, "crossover" | "phase-margin" | "gain-margin" | "gain-reduction" | "modulus-margin");
+        let of_margins =
+            matches!(row.key, "crossover" | "phase-margin" | "gain-margin" | "gain-reduction" | "modulus-margin");
         Readout {
             key: row.key,
             name: row.name,

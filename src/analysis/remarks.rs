@@ -102,8 +102,13 @@ fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
         }
     }
     if let Some((label, summary)) = conditional.first() {
-        let at: Vec<String> =
-            summary.loop_gain.margins.phase_crossovers.iter().map(|c| print_digits(c.frequency_hz, Unit::Hertz, 3)).collect();
+        let at: Vec<String> = summary
+            .loop_gain
+            .margins
+            .phase_crossovers
+            .iter()
+            .map(|c| print_digits(c.frequency_hz, Unit::Hertz, 3))
+            .collect();
         findings.push(Finding::notice(
             "",
             format!(
@@ -131,7 +136,10 @@ fn amplifier_out_of_range(design: &CheckedDesign, conditions: &[ConditionResult]
         print(least, Unit::Volt),
         print(greatest, Unit::Volt)
     );
-    Some(Finding::problem("control.ramp.amplitude", message).with_hint("change the ramp or the amplifier's output limits"))
+    Some(
+        Finding::problem("control.ramp.amplitude", message)
+            .with_hint("change the ramp or the amplifier's output limits"),
+    )
 }
 
 fn missed(verdict: &RequirementVerdict) -> Finding {
@@ -150,7 +158,8 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
     let fs = design.stage.switching_frequency;
     let high = shared.compensator_response.at_hz(fs).norm();
     let mut findings = Vec::new();
-    let gain = summaries(conditions).max_by(|a, b| a.1.loop_gain.gain_at_switching.total_cmp(&b.1.loop_gain.gain_at_switching));
+    let gain = summaries(conditions)
+        .max_by(|a, b| a.1.loop_gain.gain_at_switching.total_cmp(&b.1.loop_gain.gain_at_switching));
     if let Some((condition, summary)) = gain.filter(|(_, s)| s.loop_gain.gain_at_switching > RIPPLE_GAIN) {
         let message = format!(
             "The loop gain at the switching frequency is {}, above {RIPPLE_GAIN}, at {}: ripple reaches the comparator and averaged margins are doubtful.",
@@ -217,11 +226,23 @@ fn window_remarks(conditions: &[ConditionResult], window: &CrossoverWindow) -> V
     let crossover_text = print(crossover, Unit::Hertz);
     if let Some(upper) = window.upper.as_ref().filter(|e| crossover > e.frequency_hz) {
         let edge = print(upper.frequency_hz, Unit::Hertz);
-        findings.push(Finding::notice("", format!("The crossover {crossover_text} at {at} stands above the crossover window's upper edge {edge} ({}).", upper.cause)));
+        findings.push(Finding::notice(
+            "",
+            format!(
+                "The crossover {crossover_text} at {at} stands above the crossover window's upper edge {edge} ({}).",
+                upper.cause
+            ),
+        ));
     }
     if let Some(lower) = window.lower.as_ref().filter(|e| crossover < e.frequency_hz) {
         let edge = print(lower.frequency_hz, Unit::Hertz);
-        findings.push(Finding::note("", format!("The crossover {crossover_text} at {at} stands below the crossover window's lower edge {edge} ({}).", lower.cause)));
+        findings.push(Finding::note(
+            "",
+            format!(
+                "The crossover {crossover_text} at {at} stands below the crossover window's lower edge {edge} ({}).",
+                lower.cause
+            ),
+        ));
     }
     findings
 }
@@ -230,7 +251,10 @@ fn window_remarks(conditions: &[ConditionResult], window: &CrossoverWindow) -> V
 fn model_limits(design: &CheckedDesign) -> Vec<Finding> {
     let mut notes = Vec::new();
     if design.stage.load == LoadKind::Power {
-        notes.push(Finding::note("stage.load", "The constant-power load is taken by its tangent in all linear results."));
+        notes.push(Finding::note(
+            "stage.load",
+            "The constant-power load is taken by its tangent in all linear results.",
+        ));
     }
     if design.stage.bank.iter().any(|b| b.esl > 0.0) && !design.stage.bank_inductance_averaged {
         let why = if design.stage.load == LoadKind::Resistor {
@@ -238,7 +262,9 @@ fn model_limits(design: &CheckedDesign) -> Vec<Finding> {
         } else {
             "a load that is not a resistor leaves it undamped"
         };
-        let message = format!("The output bank's ESL is left out of the control path ({why}); output impedance and load step include it.");
+        let message = format!(
+            "The output bank's ESL is left out of the control path ({why}); output impedance and load step include it."
+        );
         notes.push(Finding::note("stage.bank.1.esl", message));
     }
     notes

@@ -62,7 +62,11 @@ pub(super) fn worst(asked: Asked, conditions: &[ConditionResult]) -> (Taken, usi
             (Taken::Absent(_), Taken::Absent(_)) | (Taken::Unbounded, _) | (Taken::Value(_), Taken::Absent(_)) => false,
             (Taken::Absent(_), _) | (Taken::Value(_), Taken::Unbounded) => true,
             (Taken::Value(new), Taken::Value(old)) => {
-                if asked.is_least() { new < old } else { new > old }
+                if asked.is_least() {
+                    new < old
+                } else {
+                    new > old
+                }
             }
         };
         if worse {

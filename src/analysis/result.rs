@@ -76,8 +76,8 @@ pub struct Step {
     pub output_v: Vec<f64>,
     /// Signed extreme of the output against its value before the event [V].
     pub deviation_v: f64,
-    /// When that extreme is reached [s].
-    pub deviation_at_s: f64,
+    /// When that extreme is reached [s]; absent when it is only approached.
+    pub deviation_at_s: Option<f64>,
     /// Last exit from the settling band around the final value [s]; absent when it does not settle in the time looked at.
     pub settling_s: Option<f64>,
     /// Value before the event [V].

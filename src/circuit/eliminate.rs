@@ -40,13 +40,19 @@ impl fmt::Display for CircuitError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             CircuitError::SourcesClash { parts } => {
-                write!(f, "sources contradict each other (a loop of voltage sources or a node fed by current sources alone): {}", parts.join(", "))
+                write!(
+                    f,
+                    "sources contradict each other (a loop of voltage sources or a node fed by current sources alone): {}",
+                    parts.join(", ")
+                )
             }
             CircuitError::Floating { names } => write!(f, "nothing determines {}", names.join(", ")),
             CircuitError::Improper { outputs } => {
                 write!(f, "{} would follow the rate of change of an input", outputs.join(", "))
             }
-            CircuitError::Degenerate { parts } => write!(f, "storage parts without a usable value: {}", parts.join(", ")),
+            CircuitError::Degenerate { parts } => {
+                write!(f, "storage parts without a usable value: {}", parts.join(", "))
+            }
         }
     }
 }
@@ -134,8 +140,16 @@ impl Tableau {
         row_names.extend(
             netlist.parts.iter().zip(&column_of_part).filter(|(_, c)| c.is_some()).map(|(p, _)| p.name.clone()),
         );
-        let mut tableau =
-            Tableau { rows, width, unknowns, column_of_part, coefficients: Vec::new(), row_names, states_at, inputs_at };
+        let mut tableau = Tableau {
+            rows,
+            width,
+            unknowns,
+            column_of_part,
+            coefficients: Vec::new(),
+            row_names,
+            states_at,
+            inputs_at,
+        };
         for (k, part) in netlist.parts.iter().enumerate() {
             tableau.place_part(k, part, closed[k]);
         }
@@ -289,8 +303,9 @@ impl Work {
     fn choose(&self, rows: usize, width: usize) -> Option<(usize, usize)> {
         let mut unit: Option<(usize, usize, usize)> = None;
         let mut largest: Option<(f64, usize, usize)> = None;
-        let row_count: Vec<usize> =
-            (0..rows).map(|r| (0..rows).filter(|c| !self.column_used[*c] && self.alive(r * width + c)).count()).collect();
+        let row_count: Vec<usize> = (0..rows)
+            .map(|r| (0..rows).filter(|c| !self.column_used[*c] && self.alive(r * width + c)).count())
+            .collect();
         let column_count: Vec<usize> =
             (0..rows).map(|c| (0..rows).filter(|r| !self.row_used[*r] && self.alive(r * width + c)).count()).collect();
         for r in (0..rows).filter(|r| !self.row_used[*r]) {
@@ -318,7 +333,8 @@ impl Work {
     /// Clears column `c` from all rows but `r`, recording what was done.
     fn eliminate(&mut self, r: usize, c: usize, rows: usize, width: usize) -> PivotStep {
         let pivot = r * width + c;
-        let row: Vec<usize> = (0..width).filter(|j| *j != c && self.present[r * width + j]).map(|j| r * width + j).collect();
+        let row: Vec<usize> =
+            (0..width).filter(|j| *j != c && self.present[r * width + j]).map(|j| r * width + j).collect();
         let scale = self.value[pivot].recip();
         for &place in &row {
             self.value[place] *= scale;

@@ -54,7 +54,8 @@ fn independent_basis(p: &DMatrix<f64>) -> (Vec<usize>, DMatrix<f64>) {
     let mut kept = Vec::new();
     let mut used = vec![false; n];
     for row in 0..n {
-        let best = (0..n).filter(|c| !used[*c]).max_by(|a, b| columns[(row, *a)].abs().total_cmp(&columns[(row, *b)].abs()));
+        let best =
+            (0..n).filter(|c| !used[*c]).max_by(|a, b| columns[(row, *a)].abs().total_cmp(&columns[(row, *b)].abs()));
         let Some(c) = best.filter(|c| columns[(row, *c)].abs() > 1e-9) else { continue };
         used[c] = true;
         kept.push((row, c));
@@ -98,7 +99,8 @@ impl Compiled {
         let mut a = &rates * wx;
         let mut b = &rates * wu;
         let f = &rates * wf;
-        let probes: Vec<Combination> = self.netlist.outputs.iter().map(|(_, probe)| self.probe(*probe, values)).collect();
+        let probes: Vec<Combination> =
+            self.netlist.outputs.iter().map(|(_, probe)| self.probe(*probe, values)).collect();
         let (mut c, mut d, cf) = self.expand(&solved, &probes);
         let mut projector = None;
         if free > 0 {

@@ -224,7 +224,15 @@ impl Netlist {
     }
 
     /// A voltage source of `gain` times the voltage from `plus` to `minus`.
-    pub fn controlled_voltage(&mut self, name: &str, from: Node, to: Node, gain: Slot, plus: Node, minus: Node) -> PartId {
+    pub fn controlled_voltage(
+        &mut self,
+        name: &str,
+        from: Node,
+        to: Node,
+        gain: Slot,
+        plus: Node,
+        minus: Node,
+    ) -> PartId {
         self.add(name, Kind::ControlledVoltage { gain, plus, minus }, from, to)
     }
 

@@ -13,7 +13,8 @@ fn close(a: &DMatrix<f64>, b: &[f64]) {
 #[test]
 fn boost_intervals_match_hand_written_equations() {
     let mut n = Netlist::new();
-    let (g, vin, mid, sw, out, cap) = (n.ground(), n.node("in"), n.node("mid"), n.node("sw"), n.node("out"), n.node("cap"));
+    let (g, vin, mid, sw, out, cap) =
+        (n.ground(), n.node("in"), n.node("mid"), n.node("sw"), n.node("out"), n.node("cap"));
     let (uv, ud) = (n.input("vin"), n.input("drop"));
     let names = ["l", "rl", "ron", "rd", "c", "esr", "load"];
     let s: Vec<Slot> = names.iter().map(|name| n.slot(name)).collect();

@@ -16,7 +16,11 @@ pub static CHOICES: &[Choice] = &[
     Choice {
         path: "control.mode",
         name: "Control",
-        options: &[ChoiceOption { key: "voltage", name: "Voltage mode", help: "The control voltage sets the duty ratio through a ramp." }],
+        options: &[ChoiceOption {
+            key: "voltage",
+            name: "Voltage mode",
+            help: "The control voltage sets the duty ratio through a ramp.",
+        }],
         default: "voltage",
         help: "What the control voltage commands.",
     },
@@ -25,7 +29,11 @@ pub static CHOICES: &[Choice] = &[
         name: "Line feed-forward",
         options: &[
             ChoiceOption { key: "none", name: "None", help: "The ramp has one height." },
-            ChoiceOption { key: "line", name: "Ramp follows the input", help: "The ramp's height is proportional to the input voltage." },
+            ChoiceOption {
+                key: "line",
+                name: "Ramp follows the input",
+                help: "The ramp's height is proportional to the input voltage.",
+            },
         ],
         default: "none",
         help: "Whether the ramp follows the input voltage, so that the duty ratio answers the line without the loop.",

@@ -27,7 +27,8 @@ pub struct Modulator {
 impl Modulator {
     /// A modulator from entered values, which must have been checked against their bounds and order.
     pub fn from_values(values: &Values, choices: &Choices) -> Self {
-        let get = |path: &str| ENTRIES.iter().find(|e| e.path == path).and_then(|e| values.get_or_default(e)).unwrap_or(0.0);
+        let get =
+            |path: &str| ENTRIES.iter().find(|e| e.path == path).and_then(|e| values.get_or_default(e)).unwrap_or(0.0);
         Modulator {
             ramp_amplitude: get("control.ramp.amplitude"),
             ramp_valley: get("control.ramp.valley"),

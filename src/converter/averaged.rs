@@ -35,7 +35,9 @@ impl Stage {
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
         let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
         let operating_point = self.figures(condition, &solution);
-        let stage = self.linearise(&solution).ok_or_else(|| Finding::problem("stage", "the stage's averaged model is singular"))?;
+        let stage = self
+            .linearise(&solution)
+            .ok_or_else(|| Finding::problem("stage", "the stage's averaged model is singular"))?;
         let bank_inductance = if self.bank_inductance_averaged {
             None
         } else {

@@ -100,7 +100,8 @@ impl StageDrawing {
         let input_current_part = netlist.resistor("source resistance", source, supply, resistance);
         if options.input_capacitor {
             let inner = netlist.node("input capacitor");
-            let (farads, ohms) = (netlist.slot("stage.input-capacitor.capacitance"), netlist.slot("stage.input-capacitor.esr"));
+            let (farads, ohms) =
+                (netlist.slot("stage.input-capacitor.capacitance"), netlist.slot("stage.input-capacitor.esr"));
             netlist.capacitor("input capacitor", supply, inner, farads);
             netlist.resistor("input capacitor ESR", inner, ground, ohms);
         }
@@ -154,7 +155,8 @@ impl StageDrawing {
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
     pub fn inductor(&mut self, from: Node, to: Node) {
         let inner = self.netlist.node("winding");
-        let (henries, ohms) = (self.netlist.slot("stage.inductor.inductance"), self.netlist.slot("stage.inductor.resistance"));
+        let (henries, ohms) =
+            (self.netlist.slot("stage.inductor.inductance"), self.netlist.slot("stage.inductor.resistance"));
         let part = self.netlist.inductor("inductor", from, inner, henries);
         self.inductors.push(part);
         self.netlist.resistor("winding", inner, to, ohms);
@@ -186,7 +188,11 @@ impl StageDrawing {
             input_current: row(n.current_output("input current", self.input_current_part)),
             switch_current: row(n.current_output("switch current", switch)),
             rectifier_current: row(n.current_output("rectifier current", rectifier)),
-            inductor_currents: self.inductors.iter().map(|part| row(n.current_output("inductor current", *part))).collect(),
+            inductor_currents: self
+                .inductors
+                .iter()
+                .map(|part| row(n.current_output("inductor current", *part)))
+                .collect(),
             branch_currents: self.branches.iter().map(|part| row(n.current_output("branch current", *part))).collect(),
         };
         Some((self.netlist, rows))

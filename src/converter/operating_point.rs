@@ -159,7 +159,11 @@ impl Intervals {
         for _ in 0..MOST_STEPS {
             let Some(steady) = self.steady(duty, row) else { break };
             let error = steady.output - target;
-            if error < 0.0 { low = duty } else { high = duty }
+            if error < 0.0 {
+                low = duty
+            } else {
+                high = duty
+            }
             let newton = duty - error / steady.slope;
             let next = if newton > low && newton < high { newton } else { f64::midpoint(low, high) };
             let moved = (next - duty).abs();
@@ -192,7 +196,7 @@ const MOST_STEPS: u32 = 60;
 
 /// Why a stage has no operating point at a condition.
 #[derive(Clone, Debug, PartialEq)]
-pub enum NoOperatingPoint {
+pub(super) enum NoOperatingPoint {
     /// No duty ratio gives the output.
     OutOfReach(OutOfReach),
     /// The netlist has no state equations.
@@ -215,6 +219,11 @@ impl Stage {
             .solve_duty(condition.output_voltage, self.rows.output_voltage)
             .map_err(NoOperatingPoint::OutOfReach)?;
         Ok(Solution { intervals, duty, x })
+    }
+
+    /// Output voltage at a given duty ratio in continuous conduction [V]; none where the averaged equations are singular.
+    pub fn output_at_duty(&self, condition: &StageCondition, duty: f64) -> Option<f64> {
+        self.intervals(condition).ok()?.steady(duty, self.rows.output_voltage).map(|steady| steady.output)
     }
 
     /// Currents and losses of a solved condition.

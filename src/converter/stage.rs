@@ -1,7 +1,9 @@
 //! A power stage with usable values: its netlist drawn and compiled, ready for any operating condition.
 
 use super::bank::{Branch, branch_value};
-use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, RECTIFIER, Rows, SWITCH, StageDrawing, Topology};
+use super::drawing::{
+    DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, RECTIFIER, Rows, SWITCH, StageDrawing, Topology,
+};
 use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
 use super::registry::find;
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
@@ -142,13 +144,15 @@ impl Stage {
             _ => branch_value(name, &bank).unwrap_or_else(|| get(name)),
         };
         let drawn = Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?;
-        let averaged_inductance = load == LoadKind::Resistor && bank.iter().any(|b| b.esl > 0.0) && !drawn.bank_is_switched();
+        let averaged_inductance =
+            load == LoadKind::Resistor && bank.iter().any(|b| b.esl > 0.0) && !drawn.bank_is_switched();
         let drawn = if averaged_inductance {
             let mut branch_inductance = [false; BRANCHES];
             for (flag, branch) in branch_inductance.iter_mut().zip(&bank) {
                 *flag = branch.esl > 0.0;
             }
-            Drawn::new(topology, Options { branch_inductance, ..options }, &lookup).map_err(|e| vec![circuit_finding(&e)])?
+            Drawn::new(topology, Options { branch_inductance, ..options }, &lookup)
+                .map_err(|e| vec![circuit_finding(&e)])?
         } else {
             drawn
         };

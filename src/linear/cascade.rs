@@ -78,8 +78,12 @@ fn sections(zpk: &Zpk) -> Result<Vec<Section>, LinearError> {
     if zpk.zeros.len() > zpk.poles.len() {
         return Err(LinearError::Improper);
     }
-    let mut sections: Vec<Section> =
-        zpk.poles.iter().filter(|p| p.im > 0.0).map(|p| Section { poles: Poles::Pair(*p), zeros: Vec::new() }).collect();
+    let mut sections: Vec<Section> = zpk
+        .poles
+        .iter()
+        .filter(|p| p.im > 0.0)
+        .map(|p| Section { poles: Poles::Pair(*p), zeros: Vec::new() })
+        .collect();
     let real: Vec<f64> = zpk.poles.iter().filter(|p| p.im == 0.0).map(|p| p.re).collect();
     for pair in real.chunks(2) {
         let poles = if let [p, q] = *pair { Poles::Two(p, q) } else { Poles::One(pair[0]) };

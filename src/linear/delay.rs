@@ -48,10 +48,22 @@ pub fn pade_delay(delay_s: f64, order: usize) -> Result<StateSpace, LinearError>
         for j in 0..order {
             let before = if j < i { 1.0 } else { 0.0 };
             let drive = match (inductor(i), inductor(j)) {
-                (true, true) => if odd { -1.0 } else { 0.0 },
+                (true, true) => {
+                    if odd {
+                        -1.0
+                    } else {
+                        0.0
+                    }
+                }
                 (true, false) => (if odd { 0.0 } else { 1.0 }) - before,
                 (false, true) => (if odd { 1.0 } else { 0.0 }) - before,
-                (false, false) => if odd { 0.0 } else { -1.0 },
+                (false, false) => {
+                    if odd {
+                        0.0
+                    } else {
+                        -1.0
+                    }
+                }
             };
             a[(i, j)] = rate * drive / (element(i) * element(j)).sqrt();
         }

@@ -68,7 +68,8 @@ fn irreducible_blocks(a: &DMatrix<f64>) -> Vec<Vec<usize>> {
         if taken >> i & 1 == 1 {
             continue;
         }
-        let block: Vec<usize> = (i..n).filter(|&j| j == i || (reach[i] >> j & 1 == 1 && reach[j] >> i & 1 == 1)).collect();
+        let block: Vec<usize> =
+            (i..n).filter(|&j| j == i || (reach[i] >> j & 1 == 1 && reach[j] >> i & 1 == 1)).collect();
         for &j in &block {
             taken |= 1 << j;
         }
@@ -185,10 +186,15 @@ impl Square {
     /// Orders the coordinates by falling row sum: the QR iteration finds small eigenvalues well from below a graded matrix.
     fn order_fast_to_slow(&mut self) {
         let n = self.n;
-        let mut order: Vec<(f64, usize)> = (0..n).map(|i| (self.data[i * n..(i + 1) * n].iter().map(|x| x.abs()).sum(), i)).collect();
+        let mut order: Vec<(f64, usize)> =
+            (0..n).map(|i| (self.data[i * n..(i + 1) * n].iter().map(|x| x.abs()).sum(), i)).collect();
         order.sort_by(|p, q| q.0.total_cmp(&p.0).then(p.1.cmp(&q.1)));
         let old = std::mem::take(&mut self.data);
-        self.data = order.iter().flat_map(|&(_, i)| order.iter().map(move |&(_, j)| (i, j))).map(|(i, j)| old[i * n + j]).collect();
+        self.data = order
+            .iter()
+            .flat_map(|&(_, i)| order.iter().map(move |&(_, j)| (i, j)))
+            .map(|(i, j)| old[i * n + j])
+            .collect();
     }
 
     /// Reduces to upper Hessenberg form by Householder reflections.
@@ -455,7 +461,8 @@ mod tests {
         for i in 0..5 {
             a[(i, (i + 4) % 5)] = 1.0;
         }
-        let roots: Vec<Complex> = (0..5).map(|k| Complex::from_polar(1.0, std::f64::consts::TAU * f64::from(k) / 5.0)).collect();
+        let roots: Vec<Complex> =
+            (0..5).map(|k| Complex::from_polar(1.0, std::f64::consts::TAU * f64::from(k) / 5.0)).collect();
         assert_same_roots(&eigenvalues(&a).unwrap(), &roots, 1e-14);
     }
 

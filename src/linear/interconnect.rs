@@ -39,7 +39,12 @@ impl StateSpace {
     /// # Errors
     /// [`LinearError::UnknownPort`], [`LinearError::Shape`] for a part that is not in the list, [`LinearError::AlgebraicLoop`] when
     /// the direct paths close on themselves with unit gain, [`LinearError::NotFinite`].
-    pub fn connect(parts: &[&Self], wires: &[Wire<'_>], inputs: &[Port<'_>], outputs: &[Port<'_>]) -> Result<Self, LinearError> {
+    pub fn connect(
+        parts: &[&Self],
+        wires: &[Wire<'_>],
+        inputs: &[Port<'_>],
+        outputs: &[Port<'_>],
+    ) -> Result<Self, LinearError> {
         let whole = Blocks::new(parts);
         let (input_count, output_count) = (whole.d.ncols(), whole.d.nrows());
         let mut k = DMatrix::zeros(input_count, output_count);
@@ -86,7 +91,11 @@ impl StateSpace {
     /// [`LinearError::Shape`] when the numbers of ports differ, [`LinearError::NotFinite`].
     pub fn series(&self, next: &Self) -> Result<Self, LinearError> {
         if self.outputs.len() != next.inputs.len() {
-            return Err(LinearError::Shape(format!("{} outputs drive {} inputs", self.outputs.len(), next.inputs.len())));
+            return Err(LinearError::Shape(format!(
+                "{} outputs drive {} inputs",
+                self.outputs.len(),
+                next.inputs.len()
+            )));
         }
         let (n1, n2) = (self.order(), next.order());
         let mut a = DMatrix::zeros(n1 + n2, n1 + n2);
@@ -174,12 +183,14 @@ impl Blocks {
 
     /// Place of a part's input among all inputs.
     fn input(&self, parts: &[&StateSpace], part: usize, name: &str) -> Result<usize, LinearError> {
-        Ok(self.first_input.get(part).ok_or_else(|| no_part(part))? + parts.get(part).ok_or_else(|| no_part(part))?.need_input(name)?)
+        Ok(self.first_input.get(part).ok_or_else(|| no_part(part))?
+            + parts.get(part).ok_or_else(|| no_part(part))?.need_input(name)?)
     }
 
     /// Place of a part's output among all outputs.
     fn output(&self, parts: &[&StateSpace], part: usize, name: &str) -> Result<usize, LinearError> {
-        Ok(self.first_output.get(part).ok_or_else(|| no_part(part))? + parts.get(part).ok_or_else(|| no_part(part))?.need_output(name)?)
+        Ok(self.first_output.get(part).ok_or_else(|| no_part(part))?
+            + parts.get(part).ok_or_else(|| no_part(part))?.need_output(name)?)
     }
 }
 

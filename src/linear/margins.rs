@@ -96,8 +96,10 @@ pub fn margins(loop_gain: &impl FrequencyResponse, from_hz: f64, to_hz: f64) -> 
     let above = crossovers.split_off(crossovers.partition_point(|c| c.frequency_hz <= to_hz));
     let phase_crossovers = scan.phase_crossings(|_| true);
     let (modulus_margin, modulus_frequency_hz) = scan.modulus();
-    let delay_margin_s =
-        crossovers.iter().map(|c| c.phase_margin_deg.rem_euclid(360.0) / (360.0 * c.frequency_hz)).min_by(f64::total_cmp);
+    let delay_margin_s = crossovers
+        .iter()
+        .map(|c| c.phase_margin_deg.rem_euclid(360.0) / (360.0 * c.frequency_hz))
+        .min_by(f64::total_cmp);
     Margins {
         crossovers,
         phase_crossovers,
@@ -111,7 +113,10 @@ pub fn margins(loop_gain: &impl FrequencyResponse, from_hz: f64, to_hz: f64) -> 
 
 /// Whether the phase crosses −180° − k·360° anywhere in the band while the gain is above one.
 pub(super) fn crosses_above_unity(loop_gain: &impl FrequencyResponse, from_hz: f64, to_hz: f64) -> bool {
-    Scan::new(loop_gain, from_hz, to_hz, 1.0).phase_crossings(|ln_gain| ln_gain > 0.0).iter().any(|c| c.gain_margin_db < 0.0)
+    Scan::new(loop_gain, from_hz, to_hz, 1.0)
+        .phase_crossings(|ln_gain| ln_gain > 0.0)
+        .iter()
+        .any(|c| c.gain_margin_db < 0.0)
 }
 
 /// A response on a grid fine enough to bracket everything.
@@ -129,7 +134,8 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
         let (lowest, highest) = response.band_hz().unwrap_or((0.0, f64::MAX));
         let (from, to) = (from_hz.max(lowest), to_hz.min(highest));
         let sensible = from > 0.0 && from < to && to < f64::MAX / LISTED_ABOVE;
-        let grid = if sensible { grid(response.breakpoints_hz(), from, to, (to * above).min(highest)) } else { Vec::new() };
+        let grid =
+            if sensible { grid(response.breakpoints_hz(), from, to, (to * above).min(highest)) } else { Vec::new() };
         let mut scan = Self { response, frequencies: grid, ln_gain: Vec::new(), phase: Vec::new(), within: 0 };
         if scan.frequencies.is_empty() {
             scan.frequencies.push(if from_hz > 0.0 && from_hz.is_finite() { from_hz } else { 1.0 });
@@ -214,7 +220,9 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
                 passed += 1.0;
                 let level = -PI - TAU * number;
                 let ends = (self.phase[i - 1] - level, self.phase[i] - level);
-                if let Some((frequency_hz, point)) = self.close(i, ends.0, ends.1, |p| (p.phase_rad - level, p.phase_slope)) {
+                if let Some((frequency_hz, point)) =
+                    self.close(i, ends.0, ends.1, |p| (p.phase_rad - level, p.phase_slope))
+                {
                     let gain_margin_db = -point.ln_gain * 20.0 / LN_10;
                     found.push(PhaseCrossover { frequency_hz, gain_margin_db, turns: whole(number) });
                 }
@@ -224,7 +232,13 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
     }
 
     /// Closes the bracket between grid points `i − 1` and `i`; `None` when the value jumps over zero instead of passing it.
-    fn close(&self, i: usize, at_low: f64, at_high: f64, value: impl Fn(&LogPoint) -> (f64, f64)) -> Option<(f64, LogPoint)> {
+    fn close(
+        &self,
+        i: usize,
+        at_low: f64,
+        at_high: f64,
+        value: impl Fn(&LogPoint) -> (f64, f64),
+    ) -> Option<(f64, LogPoint)> {
         let (mut low, mut high) = (self.frequencies[i - 1].ln(), self.frequencies[i].ln());
         let mut x = low + (high - low) * (at_low / (at_low - at_high)).clamp(0.0, 1.0);
         let mut last_step = high - low;
@@ -305,7 +319,11 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
         };
         let [low, middle, high] = [i - 1, i, i + 1].map(|k| self.frequencies[k].ln());
         let (square, at_middle) = evaluate(middle);
-        let (low, high) = if at_middle > 0.0 { ((low, evaluate(low).1), (middle, at_middle)) } else { ((middle, at_middle), (high, evaluate(high).1)) };
+        let (low, high) = if at_middle > 0.0 {
+            ((low, evaluate(low).1), (middle, at_middle))
+        } else {
+            ((middle, at_middle), (high, evaluate(high).1))
+        };
         let x = bracketed_root(|x| evaluate(x).1, low, high, 1e-11);
         let refined = evaluate(x).0;
         if refined < square { (refined, x.exp()) } else { (square, middle.exp()) }

@@ -59,7 +59,13 @@ pub struct Modes {
 ///
 /// # Errors
 /// [`LinearError::NotStable`], [`LinearError::UnknownPort`], [`LinearError::NotFinite`], [`LinearError::NoConvergence`].
-pub fn settle(system: &StateSpace, input: usize, output: usize, event: RampStep, band: f64) -> Result<StepMetrics, LinearError> {
+pub fn settle(
+    system: &StateSpace,
+    input: usize,
+    output: usize,
+    event: RampStep,
+    band: f64,
+) -> Result<StepMetrics, LinearError> {
     Modes::new(system)?.settle(input, output, event, band)
 }
 
@@ -114,7 +120,8 @@ impl Modes {
         segments.push(self.after(&residues, final_value, change, event.rise_s));
         let extreme = extreme(&segments, initial_value, final_value);
         let settling_s = (band > 0.0).then(|| last_exit(&segments, final_value, band));
-        let metrics = StepMetrics { initial_value, final_value, deviation: extreme.0, deviation_time_s: extreme.1, settling_s };
+        let metrics =
+            StepMetrics { initial_value, final_value, deviation: extreme.0, deviation_time_s: extreme.1, settling_s };
         let finite = [metrics.initial_value, metrics.final_value, metrics.deviation].iter().all(|x| x.is_finite());
         if finite { Ok(metrics) } else { Err(LinearError::NotFinite) }
     }
@@ -129,7 +136,8 @@ impl Modes {
     /// The response once the input has arrived: the modes alone.
     fn after(&self, residues: &[Complex], final_value: f64, change: f64, rise: f64) -> Segment<'_> {
         // A mode excited evenly over the rise has grown to the mean of exp(λτ) over it.
-        let amplitudes = residues.iter().zip(&self.poles).map(|(r, p)| r / p * mean_exponential(p * rise) * change).collect();
+        let amplitudes =
+            residues.iter().zip(&self.poles).map(|(r, p)| r / p * mean_exponential(p * rise) * change).collect();
         Segment { start: rise, offset: final_value, slope: 0.0, amplitudes, poles: &self.poles, length: f64::INFINITY }
     }
 }
@@ -204,7 +212,13 @@ struct Walk<'s> {
 
 impl<'s> Walk<'s> {
     fn new(segment: &'s Segment<'s>, t: f64) -> Self {
-        Self { segment, t, step: 0.0, terms: segment.terms(t).collect(), factors: vec![Complex::ZERO; segment.poles.len()] }
+        Self {
+            segment,
+            t,
+            step: 0.0,
+            terms: segment.terms(t).collect(),
+            factors: vec![Complex::ZERO; segment.poles.len()],
+        }
     }
 
     /// The largest sensible step for modes above a size; `None` when all are dead.
@@ -403,7 +417,10 @@ fn scatter(k: usize) -> f64 {
 }
 
 /// The eigenvector of a matrix to a known eigenvalue, of unit length, by two steps of inverse iteration.
-fn eigenvector<T: nalgebra::ComplexField<RealField = f64> + Copy>(mut matrix: DMatrix<T>, eigenvalue: T) -> Option<DVector<T>> {
+fn eigenvector<T: nalgebra::ComplexField<RealField = f64> + Copy>(
+    mut matrix: DMatrix<T>,
+    eigenvalue: T,
+) -> Option<DVector<T>> {
     let n = matrix.nrows();
     // Off the eigenvalue by little more than rounding, so that the factorisation exists.
     let shift = eigenvalue * T::from_real(1.0 + 1e-13);

@@ -6,7 +6,10 @@ use super::Complex;
 #[track_caller]
 pub(crate) fn assert_close(actual: f64, expected: f64, relative: f64) {
     let size = actual.abs().max(expected.abs());
-    assert!(actual == expected || (actual - expected).abs() <= relative * size, "{actual:e} is not {expected:e} to {relative:e}");
+    assert!(
+        actual == expected || (actual - expected).abs() <= relative * size,
+        "{actual:e} is not {expected:e} to {relative:e}"
+    );
 }
 
 /// Asserts that two numbers agree absolutely.
@@ -28,13 +31,12 @@ pub(crate) fn assert_same_roots(actual: &[Complex], expected: &[Complex], relati
     assert_eq!(actual.len(), expected.len(), "{actual:?} has not as many roots as {expected:?}");
     let mut left = actual.to_vec();
     for root in expected {
-        let (place, distance) = left
-            .iter()
-            .enumerate()
-            .map(|(i, r)| (i, (r - root).norm()))
-            .min_by(|p, q| p.1.total_cmp(&q.1))
-            .unwrap();
-        assert!(distance <= relative * root.norm(), "no root of {actual:?} is {root} to {relative:e}, the nearest is {distance:e} away");
+        let (place, distance) =
+            left.iter().enumerate().map(|(i, r)| (i, (r - root).norm())).min_by(|p, q| p.1.total_cmp(&q.1)).unwrap();
+        assert!(
+            distance <= relative * root.norm(),
+            "no root of {actual:?} is {root} to {relative:e}, the nearest is {distance:e} away"
+        );
         left.swap_remove(place);
     }
 }

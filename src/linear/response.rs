@@ -177,13 +177,22 @@ impl FactoredResponse {
         if self.negative {
             phases.push(FactorPhase { kind: FactorKind::Sign, root: Complex::ZERO, phase_deg: -180.0 });
         }
-        for (roots, kind, sign) in [(&self.zpk.zeros, FactorKind::Zero, 1.0), (&self.zpk.poles, FactorKind::Pole, -1.0)] {
+        for (roots, kind, sign) in [(&self.zpk.zeros, FactorKind::Zero, 1.0), (&self.zpk.poles, FactorKind::Pole, -1.0)]
+        {
             for root in roots.iter().filter(|r| r.im >= 0.0) {
-                phases.push(FactorPhase { kind, root: *root, phase_deg: sign * factor_phase_rad(*root, omega).to_degrees() });
+                phases.push(FactorPhase {
+                    kind,
+                    root: *root,
+                    phase_deg: sign * factor_phase_rad(*root, omega).to_degrees(),
+                });
             }
         }
         if self.delay_s != 0.0 {
-            phases.push(FactorPhase { kind: FactorKind::Delay, root: Complex::ZERO, phase_deg: -360.0 * f_hz * self.delay_s });
+            phases.push(FactorPhase {
+                kind: FactorKind::Delay,
+                root: Complex::ZERO,
+                phase_deg: -360.0 * f_hz * self.delay_s,
+            });
         }
         phases
     }
@@ -399,7 +408,9 @@ mod tests {
     }
 
     fn zpk(zeros: &[Complex], poles: &[Complex], gain: f64) -> Zpk {
-        let both = |roots: &[Complex]| roots.iter().flat_map(|r| if r.im == 0.0 { vec![*r] } else { vec![*r, r.conj()] }).collect();
+        let both = |roots: &[Complex]| {
+            roots.iter().flat_map(|r| if r.im == 0.0 { vec![*r] } else { vec![*r, r.conj()] }).collect()
+        };
         Zpk::new(both(zeros), both(poles), gain).unwrap()
     }
 
@@ -408,10 +419,27 @@ mod tests {
         vec![
             FactoredResponse::new(zpk(&[], &[], -2.0), 0.0),
             FactoredResponse::new(zpk(&[], &[Complex::ZERO], 1e3), 1e-6),
-            FactoredResponse::new(zpk(&[real(-1e3), real(-2e3), real(-1e5), real(4e4)], &[Complex::ZERO, lc, real(-2e5), real(-3e5)], -5e9), 2e-6),
-            FactoredResponse::new(zpk(&[Complex::new(0.0, 5e3)], &[real(2e3), Complex::new(0.0, 9e3), real(-1e4)], 3e5), 0.0),
+            FactoredResponse::new(
+                zpk(
+                    &[real(-1e3), real(-2e3), real(-1e5), real(4e4)],
+                    &[Complex::ZERO, lc, real(-2e5), real(-3e5)],
+                    -5e9,
+                ),
+                2e-6,
+            ),
+            FactoredResponse::new(
+                zpk(&[Complex::new(0.0, 5e3)], &[real(2e3), Complex::new(0.0, 9e3), real(-1e4)], 3e5),
+                0.0,
+            ),
             FactoredResponse::new(zpk(&[], &[lc, lc, lc, lc, lc, lc, real(-8e3), real(-8e3), real(-8e3)], 1e60), 0.0),
-            FactoredResponse::new(zpk(&[Complex::new(50.0, 8e3), Complex::ZERO, real(-1e7)], &[Complex::new(20.0, 3e3), Complex::new(-1.0, 9e5)], 1.0), 0.0),
+            FactoredResponse::new(
+                zpk(
+                    &[Complex::new(50.0, 8e3), Complex::ZERO, real(-1e7)],
+                    &[Complex::new(20.0, 3e3), Complex::new(-1.0, 9e5)],
+                    1.0,
+                ),
+                0.0,
+            ),
         ]
     }
 
@@ -461,10 +489,19 @@ mod tests {
         for response in samples() {
             for f in [11.0, 500.0, 1.1e3, 5e3, 3e4, 1e6] {
                 let step = 1e-5;
-                let (low, high) = (response.log_point(f * (-step as f64).exp()), response.log_point(f * f64::exp(step)));
+                let (low, high) =
+                    (response.log_point(f * (-step as f64).exp()), response.log_point(f * f64::exp(step)));
                 let here = response.log_point(f);
-                assert_near(here.gain_slope, (high.ln_gain - low.ln_gain) / (2.0 * step), 1e-4 * here.gain_slope.abs().max(1.0));
-                assert_near(here.phase_slope, (high.phase_rad - low.phase_rad) / (2.0 * step), 1e-4 * here.phase_slope.abs().max(1.0));
+                assert_near(
+                    here.gain_slope,
+                    (high.ln_gain - low.ln_gain) / (2.0 * step),
+                    1e-4 * here.gain_slope.abs().max(1.0),
+                );
+                assert_near(
+                    here.phase_slope,
+                    (high.phase_rad - low.phase_rad) / (2.0 * step),
+                    1e-4 * here.phase_slope.abs().max(1.0),
+                );
             }
         }
     }

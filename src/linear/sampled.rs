@@ -28,8 +28,17 @@ impl SampledResponse {
         for value in values {
             let principal = value.arg();
             let phase = match last {
-                None => if principal > 0.0 { principal - std::f64::consts::TAU } else { principal },
-                Some(last) => last + (principal - last + std::f64::consts::PI).rem_euclid(std::f64::consts::TAU) - std::f64::consts::PI,
+                None => {
+                    if principal > 0.0 {
+                        principal - std::f64::consts::TAU
+                    } else {
+                        principal
+                    }
+                }
+                Some(last) => {
+                    last + (principal - last + std::f64::consts::PI).rem_euclid(std::f64::consts::TAU)
+                        - std::f64::consts::PI
+                }
             };
             phases.push(phase);
             last = Some(phase);
@@ -49,7 +58,11 @@ impl SampledResponse {
     fn from_logarithms(frequencies_hz: &[f64], ln_gain: Vec<f64>, phase_rad: Vec<f64>) -> Result<Self, LinearError> {
         let count = frequencies_hz.len();
         if count < 2 || ln_gain.len() != count || phase_rad.len() != count {
-            return Err(LinearError::Shape(format!("{count} frequencies, {} gains, {} phases", ln_gain.len(), phase_rad.len())));
+            return Err(LinearError::Shape(format!(
+                "{count} frequencies, {} gains, {} phases",
+                ln_gain.len(),
+                phase_rad.len()
+            )));
         }
         if ln_gain.iter().chain(&phase_rad).chain(frequencies_hz).any(|x| !x.is_finite()) {
             return Err(LinearError::NotFinite);
@@ -70,7 +83,12 @@ impl SampledResponse {
 impl FrequencyResponse for SampledResponse {
     fn log_point(&self, f_hz: f64) -> LogPoint {
         let last = self.frequencies_hz.len() - 1;
-        let hold = |i: usize| LogPoint { ln_gain: self.ln_gain[i], phase_rad: self.phase_rad[i], gain_slope: 0.0, phase_slope: 0.0 };
+        let hold = |i: usize| LogPoint {
+            ln_gain: self.ln_gain[i],
+            phase_rad: self.phase_rad[i],
+            gain_slope: 0.0,
+            phase_slope: 0.0,
+        };
         let after = self.frequencies_hz.partition_point(|f| *f <= f_hz);
         if after == 0 {
             return hold(0);

@@ -58,7 +58,9 @@ pub fn closed_loop_verdict(closed_loop_poles: &[Complex], open: &FactoredRespons
     let growing = closed_loop_poles.iter().filter(|p| p.re >= 0.0 || p.re.is_nan()).count();
     if (growing == 0) != (count == 0) {
         return Verdict::Undecided {
-            reason: format!("{growing} closed-loop poles are not in the left half-plane, but the encirclement count finds {count}"),
+            reason: format!(
+                "{growing} closed-loop poles are not in the left half-plane, but the encirclement count finds {count}"
+            ),
         };
     }
     match closed_loop_poles.iter().max_by(|p, q| p.re.total_cmp(&q.re)) {
@@ -104,7 +106,11 @@ pub fn encirclement_count(open: &FactoredResponse) -> Result<usize, String> {
 }
 
 /// A non-negative whole number as a count.
-#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a non-negative whole number far below the limit")]
+#[expect(
+    clippy::cast_possible_truncation,
+    clippy::cast_sign_loss,
+    reason = "a non-negative whole number far below the limit"
+)]
 fn count_of(x: f64) -> usize {
     x.clamp(0.0, 1e9) as usize
 }
@@ -156,9 +162,8 @@ impl<'a> Contour<'a> {
         if open.delay_s() > 0.0 && at_infinity.abs() >= 1.0 {
             return Err("with a delay, the loop gain must fall below one at high frequency".to_owned());
         }
-        let prepare = |zero: bool| {
-            move |r: &Complex| Root { re: r.re, im: r.im, inverse_square: 1.0 / r.norm_sqr(), zero }
-        };
+        let prepare =
+            |zero: bool| move |r: &Complex| Root { re: r.re, im: r.im, inverse_square: 1.0 / r.norm_sqr(), zero };
         let zeros = zpk.zeros.iter().filter(|r| **r != Complex::ZERO).map(prepare(true));
         let poles = zpk.poles.iter().filter(|r| **r != Complex::ZERO).map(prepare(false));
         let mut roots: Vec<Root> = zeros.chain(poles).collect();
@@ -255,7 +260,10 @@ impl<'a> Contour<'a> {
             let Some(certain) = self.judge(from, to) else {
                 let middle = 0.5 * (from + to);
                 if to - from < NARROWEST || looked_at > INTERVALS_AT_MOST {
-                    return Err(format!("the loop passes through the critical point near {:.6e} Hz", middle.exp() / TAU));
+                    return Err(format!(
+                        "the loop passes through the critical point near {:.6e} Hz",
+                        middle.exp() / TAU
+                    ));
                 }
                 stack.push((middle, to));
                 stack.push((from, middle));
@@ -324,7 +332,13 @@ impl Root {
     /// Least and greatest squared distance from the points `jω`, ω from `low` to `high`.
     fn distance_squares(&self, low: f64, high: f64) -> (f64, f64) {
         let (below, above) = (self.im - low, high - self.im);
-        let gap = if below < 0.0 { -below } else if above < 0.0 { -above } else { 0.0 };
+        let gap = if below < 0.0 {
+            -below
+        } else if above < 0.0 {
+            -above
+        } else {
+            0.0
+        };
         let far = below.abs().max(above.abs());
         let square = self.re * self.re;
         (square + gap * gap, square + far * far)

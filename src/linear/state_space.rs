@@ -144,7 +144,8 @@ impl StateSpace {
             return None;
         }
         let states = self.a.clone().lu().solve(&self.b.column(input))?;
-        let gain = self.d[(output, input)] - self.c.row(output).iter().zip(states.iter()).map(|(c, x)| c * x).sum::<f64>();
+        let gain =
+            self.d[(output, input)] - self.c.row(output).iter().zip(states.iter()).map(|(c, x)| c * x).sum::<f64>();
         gain.is_finite().then_some(gain)
     }
 

@@ -109,7 +109,11 @@ fn used_states(a: &DMatrix<f64>, b: &DVector<f64>, c: &DVector<f64>) -> Vec<usiz
     let drivers = reachability(a);
     let driven_by_input = (0..n).filter(|&i| b[i] != 0.0).fold(0_u64, |set, i| set | 1 << i);
     let seen_by_output = (0..n).filter(|&i| c[i] != 0.0).fold(0_u64, |set, i| set | 1 << i | drivers[i]);
-    (0..n).filter(|&i| seen_by_output >> i & 1 == 1 && (driven_by_input >> i & 1 == 1 || drivers[i] & driven_by_input != 0)).collect()
+    (0..n)
+        .filter(|&i| {
+            seen_by_output >> i & 1 == 1 && (driven_by_input >> i & 1 == 1 || drivers[i] & driven_by_input != 0)
+        })
+        .collect()
 }
 
 /// Turns the coordinates so that the output row points along the last one.

@@ -45,7 +45,8 @@ impl Zpk {
         let root = |f: &f64| Complex::new(-TAU * f, 0.0);
         let product = |corners: &[f64]| corners.iter().map(|f| TAU * f).product::<f64>();
         let mut zeros: Vec<_> = zeros_hz.iter().map(root).collect();
-        let mut poles: Vec<_> = poles_hz.iter().map(root).chain(std::iter::repeat_n(Complex::ZERO, integrators)).collect();
+        let mut poles: Vec<_> =
+            poles_hz.iter().map(root).chain(std::iter::repeat_n(Complex::ZERO, integrators)).collect();
         sort_roots(&mut zeros);
         sort_roots(&mut poles);
         Self { zeros, poles, gain: dc_gain * product(poles_hz) / product(zeros_hz) }
@@ -131,7 +132,11 @@ impl Zpk {
             sort_roots(&mut roots);
             roots
         };
-        Self { zeros: join(&self.zeros, &other.zeros), poles: join(&self.poles, &other.poles), gain: self.gain * other.gain }
+        Self {
+            zeros: join(&self.zeros, &other.zeros),
+            poles: join(&self.poles, &other.poles),
+            gain: self.gain * other.gain,
+        }
     }
 
     /// The same with another gain factor on top.
@@ -163,7 +168,9 @@ mod tests {
         let current = vout / r / off;
         let a = DMatrix::from_row_slice(2, 2, &[0.0, -off / l, off / c, -1.0 / (r * c)]);
         let b = DMatrix::from_row_slice(2, 1, &[vout / l, -current / c]);
-        let system = StateSpace::new(a, b, DMatrix::from_row_slice(1, 2, &[0.0, 1.0]), DMatrix::zeros(1, 1), &["d"], &["v"]).unwrap();
+        let system =
+            StateSpace::new(a, b, DMatrix::from_row_slice(1, 2, &[0.0, 1.0]), DMatrix::zeros(1, 1), &["d"], &["v"])
+                .unwrap();
         let zpk = Zpk::from_state_space(&system, 0, 0).unwrap();
         assert_same_roots(&zpk.zeros, &[real(r * off * off / l)], 1e-14);
         assert_close(zpk.dc_gain().unwrap(), vout / off, 1e-13);
@@ -197,7 +204,10 @@ mod tests {
         let b = DMatrix::from_row_slice(3, 2, &[1.0, 0.0, 0.0, 1.0, 0.0, 0.0]);
         let c = DMatrix::from_row_slice(2, 3, &[1.0, 0.0, 0.0, 0.0, 0.0, 1.0]);
         let system = StateSpace::new(a, b, c, DMatrix::zeros(2, 2), &["p", "q"], &["y", "z"]).unwrap();
-        assert_eq!(Zpk::from_state_space(&system, 0, 0).unwrap(), Zpk { zeros: vec![], poles: vec![real(-1.0)], gain: 1.0 });
+        assert_eq!(
+            Zpk::from_state_space(&system, 0, 0).unwrap(),
+            Zpk { zeros: vec![], poles: vec![real(-1.0)], gain: 1.0 }
+        );
         assert_eq!(Zpk::from_state_space(&system, 0, 1).unwrap().gain, 0.0);
         assert_same_roots(&Zpk::from_state_space(&system, 1, 1).unwrap().poles, &[real(-2.0), real(-3.0)], 1e-15);
         assert!(matches!(Zpk::from_state_space(&system, 2, 0), Err(LinearError::UnknownPort(_))));
@@ -222,31 +232,33 @@ mod tests {
     /// Roots over six decades, stable and not, as a random rational function with at least as many poles as zeros.
     fn random_zpk() -> impl Strategy<Value = Zpk> {
         let root = || (1.0..7.0_f64, 0.02..1.0_f64, any::<bool>(), any::<bool>());
-        (prop::collection::vec(root(), 1..5), prop::collection::vec(root(), 0..4), 0.1..10.0_f64).prop_map(|(p, z, gain)| {
-            let expand = |roots: Vec<(f64, f64, bool, bool)>| -> Vec<Complex> {
-                roots
-                    .into_iter()
-                    .flat_map(|(decade, damping, paired, right)| {
-                        let size = 10.0_f64.powf(decade);
-                        let re = if right { size * damping } else { -size * damping };
-                        if paired {
-                            let im = size * (1.0 - damping * damping).sqrt();
-                            vec![Complex::new(re, im), Complex::new(re, -im)]
-                        } else {
-                            vec![real(re)]
-                        }
-                    })
-                    .collect()
-            };
-            let (mut zeros, poles) = (expand(z), expand(p));
-            while zeros.len() > poles.len() {
-                let last = zeros.pop().unwrap();
-                if last.im != 0.0 {
-                    zeros.pop();
+        (prop::collection::vec(root(), 1..5), prop::collection::vec(root(), 0..4), 0.1..10.0_f64).prop_map(
+            |(p, z, gain)| {
+                let expand = |roots: Vec<(f64, f64, bool, bool)>| -> Vec<Complex> {
+                    roots
+                        .into_iter()
+                        .flat_map(|(decade, damping, paired, right)| {
+                            let size = 10.0_f64.powf(decade);
+                            let re = if right { size * damping } else { -size * damping };
+                            if paired {
+                                let im = size * (1.0 - damping * damping).sqrt();
+                                vec![Complex::new(re, im), Complex::new(re, -im)]
+                            } else {
+                                vec![real(re)]
+                            }
+                        })
+                        .collect()
+                };
+                let (mut zeros, poles) = (expand(z), expand(p));
+                while zeros.len() > poles.len() {
+                    let last = zeros.pop().unwrap();
+                    if last.im != 0.0 {
+                        zeros.pop();
+                    }
                 }
-            }
-            Zpk::new(zeros, poles, gain).unwrap()
-        })
+                Zpk::new(zeros, poles, gain).unwrap()
+            },
+        )
     }
 
     proptest! {

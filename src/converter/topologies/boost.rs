@@ -6,7 +6,7 @@ use crate::converter::drawing::{Reach, StageDrawing, Topology};
 use std::f64::consts::TAU;
 
 /// The boost.
-pub static TOPOLOGY: Topology = Topology {
+pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     key: "boost",
     name: "Boost",
     line: "Output above the input; the inductor stands at the input.",

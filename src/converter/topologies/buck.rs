@@ -6,7 +6,7 @@ use crate::converter::drawing::{Reach, StageDrawing, Topology};
 use crate::converter::landmark::Textbook;
 
 /// The buck.
-pub static TOPOLOGY: Topology = Topology {
+pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     key: "buck",
     name: "Buck",
     line: "Output below the input; the switch stands between input and inductor.",

@@ -7,7 +7,7 @@ use crate::converter::drawing::{Reach, StageDrawing, Topology};
 use std::f64::consts::TAU;
 
 /// The inverting buck-boost.
-pub static TOPOLOGY: Topology = Topology {
+pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     key: "buck-boost",
     name: "Inverting buck-boost",
     line: "Negative output of any magnitude; the inductor stands between switch node and ground.",

@@ -1,0 +1,52 @@
+//! Cautions for people: voltages that are hazardous to touch, and the energy a bank keeps after the input is gone.
+//!
+//! *Source*: 60 V DC as the limit above which parts count as hazardous to touch in the IEC 60950 and 62368-1 lineage (from
+//! memory); stored energy ½·C·V². Which local code applies is the reader's to find.
+
+use super::Design;
+use crate::finding::Finding;
+use crate::quantity::{Unit, print};
+
+/// Greatest DC voltage that is not treated as hazardous to touch [V].
+const TOUCHABLE: f64 = 60.0;
+
+/// One caution when the input, the output or the switch node goes above [`TOUCHABLE`].
+pub(super) fn findings(design: &Design, output: f64) -> Option<Finding> {
+    let input = design.values.get("stage.input.greatest").unwrap_or(0.0);
+    let inverting = design.choices.is("stage.topology", "buck-boost");
+    // Between an inverted output and the input stands the sum of both.
+    let highest = if inverting { input + output } else { input.max(output) };
+    if highest <= TOUCHABLE {
+        return None;
+    }
+    let place = if output >= input { "stage.output.voltage" } else { "stage.input.greatest" };
+    let stored = 0.5 * bank_capacitance(design) * output * output;
+    Some(
+        Finding::notice(
+            place,
+            format!(
+                "Caution: this circuit carries {}. Above 60 V DC, parts are treated as hazardous to touch \
+                 (IEC 60950 and 62368-1 lineage, from memory). The output bank at {} holds {} (½·C·V²) and keeps it after \
+                 the input is gone; a loop measurement is made on a live circuit.",
+                print(highest, Unit::Volt),
+                print(output, Unit::Volt),
+                print(stored, Unit::Joule)
+            ),
+        )
+        .with_hint(
+            "discharge and measure before touching; the code of the place and its rules on who may work on live parts apply",
+        ),
+    )
+}
+
+/// Printed capacitance of the output bank [F]: what is left at bias is less, so the energy is not understated.
+fn bank_capacitance(design: &Design) -> f64 {
+    let branches = design.choices.get("stage.bank").and_then(|key| key.parse::<usize>().ok()).unwrap_or(1);
+    (1..=branches.min(4))
+        .filter_map(|branch| {
+            let capacitance = design.values.get(&format!("stage.bank.{branch}.capacitance"))?;
+            let count = design.values.get(&format!("stage.bank.{branch}.count"))?;
+            Some(capacitance * count)
+        })
+        .sum()
+}
