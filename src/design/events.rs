@@ -61,7 +61,7 @@ const SETTLING_BAND: Entry = Entry::new(
 );
 
 /// The rows of the table, in form order.
-pub static ENTRIES: [Entry; 7] =
+pub(super) static ENTRIES: [Entry; 7] =
     [LOAD_CHANGE, LOAD_SLEW, LINE_CHANGE, LINE_SLEW, REFERENCE_CHANGE, REFERENCE_SLEW, SETTLING_BAND];
 
 /// A change at a limited slew.

@@ -232,7 +232,7 @@ const fn row(
 }
 
 /// The rows of the table, in form order. All are optional.
-pub fn entries() -> impl Iterator<Item = &'static Entry> {
+pub(super) fn entries() -> impl Iterator<Item = &'static Entry> {
     ROWS.iter().map(|(_, _, entry)| entry)
 }
 

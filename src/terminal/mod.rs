@@ -1,1 +1,38 @@
 //! The command line: the same results as text and JSON.
+//!
+//! `polewright [FILE]` opens the window on a file, or on the built-in design. `polewright check FILE...` prints what the window would
+//! show. Exit code: 0 when every loop is stable and every requirement met in all files, 1 when one is not, 2 when an input
+//! cannot be used (a file, an entry, an argument, or a condition asked for that has no operating point); the worst of all files.
+//!
+//! # The JSON report (`--json`)
+//!
+//! Always an array, one object per file in the order given, an unusable file too. SI units, frequencies in hertz, phases in
+//! degrees, fractions as ratios. What is undefined or infinite is `null`; a list that cannot be computed is empty. Fields may
+//! be added, never renamed or removed.
+//!
+//! | field | meaning |
+//! |---|---|
+//! | `file` | the file as named on the command line |
+//! | `status` | `met`, `not met` or `unusable`, as the exit code |
+//! | `title` | title of the design; `null` when the file cannot be read |
+//! | `condition` | `{input_voltage, load_current, label}` of everything below that is not said to be over all conditions |
+//! | `operating_point` | `{duty, conduction, control_voltage, input_current, conduction_loss, boundary_load}`; conduction is `continuous`, `forced continuous` or `discontinuous` |
+//! | `inductors` | `[{name, average, ripple, peak}]` [A], ripple peak to peak |
+//! | `landmarks` | `[{name, frequency_hz}]`, textbook frequencies of the plant |
+//! | `loop` | `{stable, crossovers, phase_crossovers, modulus_margin, sensitivity_peak, delay_margin_s, gain_at_half_switching_db}`; `stable` is `null` when undecided |
+//! | `loop.crossovers` | `[{frequency_hz, phase_margin_deg, falling, slope_db_per_decade}]`, all of them |
+//! | `loop.phase_crossovers` | `[{frequency_hz, gain_margin_db}]`, all of them |
+//! | `conditions` | the nine: `[{condition, input_voltage, load_current, duty, conduction, stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin, load_step_deviation_v, settling_s, problem}]` |
+//! | `worst` | `[{requirement, condition, value}]` over the nine, by key of the read-out |
+//! | `response` | at the frequencies of `--at`, else in 1-2-5 steps from 10 Hz to half the switching frequency: `[{frequency_hz, plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, output_impedance_ohm, output_impedance_deg, line_to_output_db, line_to_output_deg, open_loop_output_impedance_ohm, open_loop_line_to_output_db}]`; plant is control voltage to output voltage with the modulator, compensator is output voltage to control voltage with the inversion taken out |
+//! | `load_step` | `{step_a, deviation_v, settling_s}` |
+//! | `requirements` | `[{name, limit, value, met, condition, reason}]`, named by path |
+//! | `findings` | `[{severity, where, message, hint}]`; severity is `note`, `notice` or `problem`, `where` a path or a place in the file, empty for the whole design |
+
+mod arguments;
+mod check;
+mod json;
+mod text;
+
+pub use arguments::{CheckRequest, Command, Usage, parse};
+pub use check::{Outcome, check};

@@ -1,0 +1,178 @@
+//! The arguments of the command line, read into typed requests.
+
+use crate::quantity::{Bounds, Unit};
+use clap::error::ErrorKind;
+use clap::{Args, Parser, Subcommand};
+use std::ffi::OsString;
+use std::path::PathBuf;
+
+/// What the command line asks for.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Command {
+    /// Open the window on a file, or on the built-in design.
+    Open(Option<PathBuf>),
+    /// Check designs and report.
+    Check(CheckRequest),
+}
+
+/// What `polewright check` asks for.
+#[derive(Clone, Debug, PartialEq)]
+pub struct CheckRequest {
+    /// Design files, in the order given.
+    pub files: Vec<PathBuf>,
+    /// Report as JSON.
+    pub json: bool,
+    /// Frequencies of the response [Hz], rising; none given leaves the choice to the report.
+    pub at_hz: Option<Vec<f64>>,
+    /// Input voltage in place of the nominal one [V].
+    pub input_voltage: Option<f64>,
+    /// Load current in place of the nominal one [A].
+    pub load_current: Option<f64>,
+    /// Entries set before the check, by path, in the order given.
+    pub settings: Vec<(String, String)>,
+}
+
+/// A text to print instead of working: help, version, or what is wrong with the arguments.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub struct Usage {
+    /// The text, line ends included.
+    pub text: String,
+    /// Whether the arguments are wrong; otherwise help or version was asked for.
+    pub is_error: bool,
+}
+
+/// Close the feedback loop around a switching power converter.
+#[derive(Parser)]
+#[command(name = "polewright", version, args_conflicts_with_subcommands = true)]
+struct Arguments {
+    /// Design file to open in the window; without one the built-in design is opened.
+    file: Option<PathBuf>,
+    #[command(subcommand)]
+    command: Option<Task>,
+}
+
+#[derive(Subcommand)]
+enum Task {
+    /// Check designs: operating point, margins, worst conditions, requirements, findings.
+    ///
+    /// Exit code: 0 when every loop is stable and every requirement is met, 1 when one is not, 2 when an input cannot be used; the
+    /// worst of all files.
+    Check(CheckArguments),
+}
+
+#[derive(Args)]
+struct CheckArguments {
+    /// Design files.
+    #[arg(required = true)]
+    files: Vec<PathBuf>,
+    /// Report as JSON: an array with one object per file.
+    #[arg(long)]
+    json: bool,
+    /// Frequencies of the response, such as 100,1k,10k.
+    #[arg(long, value_name = "FREQUENCIES", value_delimiter = ',', value_parser = frequency, allow_hyphen_values = true)]
+    at: Option<Vec<f64>>,
+    /// Input voltage in place of the nominal one, such as 11.5.
+    #[arg(long, value_name = "VOLTAGE", value_parser = voltage, allow_hyphen_values = true)]
+    input_voltage: Option<f64>,
+    /// Load current in place of the nominal one, such as 800m.
+    #[arg(long, value_name = "CURRENT", value_parser = current, allow_hyphen_values = true)]
+    load_current: Option<f64>,
+    /// Set an entry or a choice before the check, such as stage.inductor.inductance=8.2u; may be repeated.
+    #[arg(long = "set", value_name = "PATH=VALUE", value_parser = setting)]
+    settings: Vec<(String, String)>,
+}
+
+/// Reads the arguments, the program's own name first.
+///
+/// # Errors
+/// The text to print when help or version is asked for or the arguments are wrong.
+pub fn parse(arguments: impl IntoIterator<Item = OsString>) -> Result<Command, Usage> {
+    let arguments = Arguments::try_parse_from(arguments).map_err(|error| {
+        let asked = matches!(error.kind(), ErrorKind::DisplayHelp | ErrorKind::DisplayVersion);
+        Usage { text: error.render().to_string(), is_error: !asked }
+    })?;
+    Ok(match arguments.command {
+        None => Command::Open(arguments.file),
+        Some(Task::Check(check)) => Command::Check(check.into()),
+    })
+}
+
+impl From<CheckArguments> for CheckRequest {
+    fn from(arguments: CheckArguments) -> Self {
+        let at_hz = arguments.at.map(|mut frequencies| {
+            frequencies.sort_by(f64::total_cmp);
+            frequencies.dedup();
+            frequencies
+        });
+        let CheckArguments { files, json, input_voltage, load_current, settings, .. } = arguments;
+        Self { files, json, at_hz, input_voltage, load_current, settings }
+    }
+}
+
+fn positive(text: &str, unit: Unit) -> Result<f64, String> {
+    let value = crate::quantity::parse(text, unit).map_err(|error| error.to_string())?;
+    Bounds::Positive.check(value, unit).map(|()| value)
+}
+
+fn frequency(text: &str) -> Result<f64, String> {
+    positive(text, Unit::Hertz)
+}
+
+fn voltage(text: &str) -> Result<f64, String> {
+    positive(text, Unit::Volt)
+}
+
+fn current(text: &str) -> Result<f64, String> {
+    positive(text, Unit::Ampere)
+}
+
+fn setting(text: &str) -> Result<(String, String), String> {
+    match text.split_once('=') {
+        Some((path, value)) => Ok((path.trim().to_owned(), value.to_owned())),
+        None => Err("write PATH=VALUE, such as stage.inductor.inductance=8.2u".into()),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn read(line: &str) -> Result<Command, Usage> {
+        parse(line.split_whitespace().map(OsString::from))
+    }
+
+    #[test]
+    fn without_a_task_the_window_opens() {
+        assert_eq!(read("polewright"), Ok(Command::Open(None)));
+        assert_eq!(read("polewright a.ron"), Ok(Command::Open(Some("a.ron".into()))));
+    }
+
+    #[test]
+    fn a_check_is_read_in_engineering_notation() {
+        let line = "polewright check a.ron b.ron --json --at 10k,100,1k --input-voltage 11.5V --load-current 800m \
+                    --set stage.inductor.inductance=8.2u --set stage.topology=buck";
+        let Ok(Command::Check(request)) = read(line) else { panic!("a check") };
+        assert_eq!(request.files, [PathBuf::from("a.ron"), PathBuf::from("b.ron")]);
+        assert!(request.json);
+        assert_eq!(request.at_hz, Some(vec![100.0, 1e3, 1e4]));
+        assert_eq!((request.input_voltage, request.load_current), (Some(11.5), Some(0.8)));
+        assert_eq!(request.settings[1], ("stage.topology".into(), "buck".into()));
+    }
+
+    #[test]
+    fn wrong_arguments_are_told() {
+        for (line, said) in [
+            ("polewright check", "required"),
+            ("polewright check a.ron --input-voltage -5", "above 0 V"),
+            ("polewright check a.ron --load-current 0", "above 0 A"),
+            ("polewright check a.ron --at 1k,fast", "not a number"),
+            ("polewright check a.ron --at 10V", "a voltage"),
+            ("polewright check a.ron --set stage.topology", "PATH=VALUE"),
+            ("polewright check a.ron --jsno", "--json"),
+        ] {
+            let usage = read(line).expect_err(line);
+            assert!(usage.is_error && usage.text.contains(said), "{line}: {}", usage.text);
+        }
+        assert!(!read("polewright --help").expect_err("help").is_error);
+    }
+}

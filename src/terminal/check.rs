@@ -1,0 +1,144 @@
+//! `polewright check`: reads, sets, checks and analyses each file, and reports.
+
+use super::arguments::CheckRequest;
+use super::{json, text};
+use crate::analysis::{Analysis, Level, Request, Shown, analyse};
+use crate::converter::Stage;
+use crate::design::{CheckedDesign, Design, file};
+use crate::finding::Finding;
+use std::io::{self, Write};
+use std::path::Path;
+
+/// How a check ended, rising in gravity.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Outcome {
+    /// Every loop is stable and every requirement met.
+    Met,
+    /// A loop is not stable or a requirement not met.
+    NotMet,
+    /// An input cannot be used.
+    Unusable,
+}
+
+impl Outcome {
+    /// Exit code of the program.
+    pub fn code(self) -> u8 {
+        match self {
+            Outcome::Met => 0,
+            Outcome::NotMet => 1,
+            Outcome::Unusable => 2,
+        }
+    }
+
+    /// The word in reports.
+    pub(super) fn word(self) -> &'static str {
+        match self {
+            Outcome::Met => "met",
+            Outcome::NotMet => "not met",
+            Outcome::Unusable => "unusable",
+        }
+    }
+}
+
+/// Points of the step responses behind the figures; deviation and settling are refined between them.
+const STEP_POINTS: usize = 200;
+
+/// First frequency of the response when none is asked for [Hz].
+const FIRST_FREQUENCY: f64 = 10.0;
+
+/// What became of one file.
+pub(super) struct Report {
+    /// The file as named.
+    pub(super) file: String,
+    /// Title of its design, when it could be read.
+    pub(super) title: Option<String>,
+    /// How it ended.
+    pub(super) outcome: Outcome,
+    /// Design and results, when the design can be used.
+    pub(super) results: Option<(CheckedDesign, Analysis)>,
+    /// All findings, the gravest first.
+    pub(super) findings: Vec<Finding>,
+}
+
+/// Checks every file and reports to `out`; with text reports, unusable files are told on `err`.
+///
+/// # Errors
+/// When writing fails.
+pub fn check(request: &CheckRequest, out: &mut impl Write, err: &mut impl Write) -> io::Result<Outcome> {
+    let reports: Vec<Report> = request.files.iter().map(|file| report(file, request)).collect();
+    if request.json {
+        json::write(&reports, out)?;
+    } else {
+        for report in &reports {
+            match &report.results {
+                Some(results) => text::write(report, results, request.at_hz.is_some(), out)?,
+                None => text::write_unusable(report, err)?,
+            }
+        }
+    }
+    out.flush()?;
+    Ok(reports.iter().map(|report| report.outcome).max().unwrap_or(Outcome::Met))
+}
+
+fn report(path: &Path, request: &CheckRequest) -> Report {
+    let file = path.display().to_string();
+    let unusable =
+        |title, findings| Report { file: file.clone(), title, outcome: Outcome::Unusable, results: None, findings };
+    let mut design = match file::load(path) {
+        Ok(design) => design,
+        Err(error) => return unusable(None, error.findings()),
+    };
+    let title = Some(design.title.clone());
+    let wrong = set(&mut design, &request.settings);
+    if !wrong.is_empty() {
+        return unusable(title, wrong);
+    }
+    let checked = match design.check() {
+        Ok(checked) => checked,
+        Err(problems) => return unusable(title, problems),
+    };
+    let analysis = analyse(&checked, &asked(request, &checked.stage));
+    let mut findings = analysis.findings.clone();
+    if let Err(finding) = &analysis.shown
+        && !findings.contains(finding)
+    {
+        findings.insert(0, finding.clone());
+    }
+    let outcome = judge(&analysis);
+    Report { file, title, outcome, results: Some((checked, analysis)), findings }
+}
+
+/// Sets entries by path; every one that is wrong is told.
+fn set(design: &mut Design, settings: &[(String, String)]) -> Vec<Finding> {
+    settings.iter().filter_map(|(path, value)| design.set_from_text(path, value).err()).collect()
+}
+
+fn asked(request: &CheckRequest, stage: &Stage) -> Request {
+    let shown = match (request.input_voltage, request.load_current) {
+        (None, None) => Shown::Levels(Level::Nominal, Level::Nominal),
+        (input, load) => Shown::At {
+            input_voltage: input.unwrap_or(stage.input_voltages[Level::Nominal as usize]),
+            load_current: load.unwrap_or(stage.load_currents[Level::Nominal as usize]),
+        },
+    };
+    let frequencies_hz = request.at_hz.clone().unwrap_or_else(|| one_two_five(stage.switching_frequency / 2.0));
+    Request { shown, frequencies_hz, band_frequencies_hz: Vec::new(), step_points: STEP_POINTS }
+}
+
+/// 10, 20, 50, 100, … up to a limit [Hz].
+fn one_two_five(limit: f64) -> Vec<f64> {
+    let decades = std::iter::successors(Some(FIRST_FREQUENCY), |decade| Some(decade * 10.0));
+    decades.flat_map(|decade| [decade, 2.0 * decade, 5.0 * decade]).take_while(|f| *f <= limit).collect()
+}
+
+/// A condition asked for without results is unusable input; any of the nine without results, or not stable, is not met.
+fn judge(analysis: &Analysis) -> Outcome {
+    let Ok(detail) = &analysis.shown else {
+        return Outcome::Unusable;
+    };
+    let sound = |outcome: &Result<crate::analysis::ConditionSummary, Finding>| {
+        outcome.as_ref().is_ok_and(|summary| summary.loop_gain.stable())
+    };
+    let all_sound = detail.loop_gain.stable() && analysis.conditions.iter().all(|c| sound(&c.outcome));
+    if all_sound && analysis.all_met() { Outcome::Met } else { Outcome::NotMet }
+}

@@ -1,0 +1,323 @@
+//! The report as JSON. Its fields are documented in the room's docs and kept stable.
+
+use super::check::Report;
+use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
+use crate::design::CheckedDesign;
+use crate::finding::Finding;
+use crate::linear::Verdict;
+use serde::Serialize;
+use std::io::{self, Write};
+
+#[derive(Serialize)]
+struct File<'a> {
+    file: &'a str,
+    status: &'static str,
+    title: Option<&'a str>,
+    condition: Option<Condition<'a>>,
+    operating_point: Option<OperatingPoint>,
+    inductors: Vec<Inductor>,
+    landmarks: Vec<Landmark>,
+    #[serde(rename = "loop")]
+    loop_gain: Option<Loop>,
+    conditions: Vec<NineRow<'a>>,
+    worst: Vec<Worst<'a>>,
+    response: Vec<Response>,
+    load_step: Option<LoadStep>,
+    requirements: Vec<Requirement<'a>>,
+    findings: Vec<FindingRow<'a>>,
+}
+
+#[derive(Serialize)]
+struct Condition<'a> {
+    input_voltage: f64,
+    load_current: f64,
+    label: &'a str,
+}
+
+#[derive(Serialize)]
+struct OperatingPoint {
+    duty: f64,
+    conduction: &'static str,
+    control_voltage: f64,
+    input_current: f64,
+    conduction_loss: f64,
+    boundary_load: Option<f64>,
+}
+
+#[derive(Serialize)]
+struct Inductor {
+    name: &'static str,
+    average: f64,
+    ripple: f64,
+    peak: f64,
+}
+
+#[derive(Serialize)]
+struct Landmark {
+    name: &'static str,
+    frequency_hz: f64,
+}
+
+#[derive(Serialize)]
+struct Loop {
+    stable: Option<bool>,
+    crossovers: Vec<Crossover>,
+    phase_crossovers: Vec<PhaseCrossover>,
+    modulus_margin: f64,
+    sensitivity_peak: f64,
+    delay_margin_s: Option<f64>,
+    gain_at_half_switching_db: f64,
+}
+
+#[derive(Serialize)]
+struct Crossover {
+    frequency_hz: f64,
+    phase_margin_deg: f64,
+    falling: bool,
+    slope_db_per_decade: f64,
+}
+
+#[derive(Serialize)]
+struct PhaseCrossover {
+    frequency_hz: f64,
+    gain_margin_db: f64,
+}
+
+#[derive(Serialize)]
+struct NineRow<'a> {
+    condition: &'a str,
+    input_voltage: f64,
+    load_current: f64,
+    duty: Option<f64>,
+    conduction: Option<&'static str>,
+    stable: Option<bool>,
+    crossover_hz: Option<f64>,
+    phase_margin_deg: Option<f64>,
+    gain_margin_db: Option<f64>,
+    modulus_margin: Option<f64>,
+    load_step_deviation_v: Option<f64>,
+    settling_s: Option<f64>,
+    problem: Option<&'a str>,
+}
+
+#[derive(Serialize)]
+struct Worst<'a> {
+    requirement: &'static str,
+    condition: &'a str,
+    value: Option<f64>,
+}
+
+#[derive(Serialize)]
+struct Response {
+    frequency_hz: f64,
+    plant_db: Option<f64>,
+    plant_deg: Option<f64>,
+    compensator_db: Option<f64>,
+    compensator_deg: Option<f64>,
+    loop_db: Option<f64>,
+    loop_deg: Option<f64>,
+    output_impedance_ohm: Option<f64>,
+    output_impedance_deg: Option<f64>,
+    line_to_output_db: Option<f64>,
+    line_to_output_deg: Option<f64>,
+    open_loop_output_impedance_ohm: Option<f64>,
+    open_loop_line_to_output_db: Option<f64>,
+}
+
+#[derive(Serialize)]
+struct LoadStep {
+    step_a: f64,
+    deviation_v: Option<f64>,
+    settling_s: Option<f64>,
+}
+
+#[derive(Serialize)]
+struct Requirement<'a> {
+    name: &'static str,
+    limit: f64,
+    value: Option<f64>,
+    met: bool,
+    condition: &'a str,
+    reason: &'a str,
+}
+
+#[derive(Serialize)]
+struct FindingRow<'a> {
+    severity: &'static str,
+    #[serde(rename = "where")]
+    place: &'a str,
+    message: &'a str,
+    hint: Option<&'a str>,
+}
+
+/// Writes all reports as one array.
+pub(super) fn write(reports: &[Report], out: &mut impl Write) -> io::Result<()> {
+    let files: Vec<File<'_>> = reports.iter().map(file).collect();
+    // serde_json writes numbers that are not finite as null.
+    serde_json::to_writer_pretty(&mut *out, &files)?;
+    writeln!(out)
+}
+
+fn file(report: &Report) -> File<'_> {
+    let analysis = report.results.as_ref().map(|(_, analysis)| analysis);
+    let detail = analysis.and_then(|analysis| analysis.shown.as_deref().ok());
+    File {
+        file: &report.file,
+        status: report.outcome.word(),
+        title: report.title.as_deref(),
+        condition: analysis.map(|a| Condition {
+            input_voltage: a.condition.input_voltage,
+            load_current: a.condition.load_current,
+            label: &a.condition.label,
+        }),
+        operating_point: detail.map(operating_point),
+        inductors: detail.map(inductors).unwrap_or_default(),
+        landmarks: detail.map(landmarks).unwrap_or_default(),
+        loop_gain: detail.map(loop_gain),
+        conditions: analysis.map(|a| a.conditions.iter().map(nine_row).collect()).unwrap_or_default(),
+        worst: analysis.map(worst).unwrap_or_default(),
+        response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
+        load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
+        requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
+        findings: report.findings.iter().map(finding_row).collect(),
+    }
+}
+
+fn operating_point(detail: &Detail) -> OperatingPoint {
+    let point = &detail.operating_point;
+    OperatingPoint {
+        duty: point.duty,
+        conduction: point.conduction.word(),
+        control_voltage: detail.control_voltage,
+        input_current: point.input_current,
+        conduction_loss: point.conduction_loss,
+        boundary_load: detail.boundary_load,
+    }
+}
+
+fn inductors(detail: &Detail) -> Vec<Inductor> {
+    let row = |inductor: &crate::converter::InductorFigures| Inductor {
+        name: inductor.name,
+        average: inductor.current.average,
+        ripple: inductor.current.ripple,
+        peak: inductor.current.peak,
+    };
+    detail.operating_point.inductors.iter().map(row).collect()
+}
+
+fn landmarks(detail: &Detail) -> Vec<Landmark> {
+    detail.landmarks.iter().map(|mark| Landmark { name: mark.name, frequency_hz: mark.frequency_hz }).collect()
+}
+
+fn stable(verdict: &Verdict) -> Option<bool> {
+    match verdict {
+        Verdict::Stable { .. } => Some(true),
+        Verdict::Unstable { .. } => Some(false),
+        Verdict::Undecided { .. } => None,
+    }
+}
+
+fn loop_gain(detail: &Detail) -> Loop {
+    let result = &detail.loop_gain;
+    let margins = &result.margins;
+    let crossovers = margins.crossovers.iter().map(|c| Crossover {
+        frequency_hz: c.frequency_hz,
+        phase_margin_deg: c.phase_margin_deg,
+        falling: c.falling,
+        slope_db_per_decade: c.slope_db_per_decade,
+    });
+    let phase_crossovers = margins
+        .phase_crossovers
+        .iter()
+        .map(|c| PhaseCrossover { frequency_hz: c.frequency_hz, gain_margin_db: c.gain_margin_db });
+    Loop {
+        stable: stable(&result.verdict),
+        crossovers: crossovers.collect(),
+        phase_crossovers: phase_crossovers.collect(),
+        modulus_margin: margins.modulus_margin,
+        sensitivity_peak: margins.sensitivity_peak,
+        delay_margin_s: margins.delay_margin_s.filter(|_| result.stable()),
+        gain_at_half_switching_db: result.gain_at_half_switching_db,
+    }
+}
+
+fn nine_row(row: &ConditionResult) -> NineRow<'_> {
+    let summary = row.outcome.as_ref().ok();
+    let margins = summary.map(|s| &s.loop_gain.margins);
+    let crossover = margins.and_then(|m| m.headline_crossover());
+    let step = summary.and_then(|s| s.load_step);
+    NineRow {
+        condition: &row.condition.label,
+        input_voltage: row.condition.input_voltage,
+        load_current: row.condition.load_current,
+        duty: summary.map(|s| s.operating_point.duty),
+        conduction: summary.map(|s| s.operating_point.conduction.word()),
+        stable: summary.and_then(|s| stable(&s.loop_gain.verdict)),
+        crossover_hz: crossover.map(|c| c.frequency_hz),
+        phase_margin_deg: crossover.map(|c| c.phase_margin_deg),
+        gain_margin_db: margins.and_then(|m| m.gain_margin_up_db()),
+        modulus_margin: margins.map(|m| m.modulus_margin),
+        load_step_deviation_v: step.map(|s| s.deviation_v),
+        settling_s: step.and_then(|s| s.settling_s),
+        problem: row.outcome.as_ref().err().map(|finding| finding.message.as_str()),
+    }
+}
+
+fn worst(analysis: &Analysis) -> Vec<Worst<'_>> {
+    let rows = analysis.readouts.iter().filter_map(|readout| {
+        let worst = readout.worst.as_ref()?;
+        Some(Worst { requirement: readout.key, condition: &worst.condition, value: worst.value })
+    });
+    rows.collect()
+}
+
+fn response(curves: &Curves) -> Vec<Response> {
+    let row = |(k, frequency): (usize, &f64)| {
+        let at = |curve: &[f64]| curve.get(k).copied();
+        Response {
+            frequency_hz: *frequency,
+            plant_db: at(&curves.plant_db),
+            plant_deg: at(&curves.plant_deg),
+            compensator_db: at(&curves.compensator_db),
+            compensator_deg: at(&curves.compensator_deg),
+            loop_db: at(&curves.loop_db),
+            loop_deg: at(&curves.loop_deg),
+            output_impedance_ohm: at(&curves.output_impedance_ohm),
+            output_impedance_deg: at(&curves.output_impedance_deg),
+            line_to_output_db: at(&curves.line_to_output_db),
+            line_to_output_deg: at(&curves.line_to_output_deg),
+            open_loop_output_impedance_ohm: at(&curves.open_loop_output_impedance_ohm),
+            open_loop_line_to_output_db: at(&curves.open_loop_line_to_output_db),
+        }
+    };
+    curves.frequencies_hz.iter().enumerate().map(row).collect()
+}
+
+fn load_step(design: &CheckedDesign, detail: Option<&Detail>) -> LoadStep {
+    let step = detail.and_then(|d| d.steps.load.as_ref());
+    LoadStep {
+        step_a: design.events.load_step.change,
+        deviation_v: step.map(|s| s.deviation_v),
+        settling_s: step.and_then(|s| s.settling_s),
+    }
+}
+
+fn requirement(verdict: &RequirementVerdict) -> Requirement<'_> {
+    Requirement {
+        name: verdict.path,
+        limit: verdict.limit,
+        value: verdict.value,
+        met: verdict.met,
+        condition: &verdict.condition,
+        reason: &verdict.reason,
+    }
+}
+
+fn finding_row(finding: &Finding) -> FindingRow<'_> {
+    FindingRow {
+        severity: finding.severity.word(),
+        place: &finding.place,
+        message: &finding.message,
+        hint: finding.hint.as_deref(),
+    }
+}

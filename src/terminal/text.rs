@@ -1,0 +1,253 @@
+//! The report as text for people: aligned columns, one section per subject, every number with its condition.
+
+use super::check::{Outcome, Report};
+use crate::analysis::{Analysis, Curves, Detail, LimitKind, Readout, RequirementVerdict};
+use crate::design::CheckedDesign;
+use crate::finding::Finding;
+use crate::linear::Verdict;
+use crate::quantity::{Unit, print, print_digits};
+use std::fmt::Write as _;
+use std::io::{self, Write};
+
+/// Width of the column of names [characters].
+const NAMES: usize = 26;
+
+/// Width of lines of running text [characters].
+const LINE: usize = 100;
+
+/// Writes the report of a design that can be used; `response` when frequencies were asked for.
+pub(super) fn write(
+    report: &Report,
+    (design, analysis): &(CheckedDesign, Analysis),
+    response: bool,
+    out: &mut impl Write,
+) -> io::Result<()> {
+    let mut text = heading(report);
+    let _ = writeln!(text, "At {}\n", analysis.condition.label);
+    if let Ok(detail) = &analysis.shown {
+        operating_point(&mut text, detail);
+        landmarks(&mut text, detail);
+        stability(&mut text, detail);
+    }
+    readouts(&mut text, &analysis.readouts);
+    if let Ok(detail) = &analysis.shown {
+        load_step_line(&mut text, design);
+        if response {
+            response_table(&mut text, &detail.curves);
+        }
+    }
+    requirements(&mut text, &analysis.requirements);
+    findings(&mut text, &report.findings);
+    let _ = writeln!(text, "{}\n", verdict(report.outcome, analysis));
+    out.write_all(text.as_bytes())
+}
+
+/// Writes why a file cannot be used.
+pub(super) fn write_unusable(report: &Report, out: &mut impl Write) -> io::Result<()> {
+    let mut text = heading(report);
+    findings(&mut text, &report.findings);
+    let _ = writeln!(text, "Cannot be used.\n");
+    out.write_all(text.as_bytes())
+}
+
+fn heading(report: &Report) -> String {
+    match &report.title {
+        Some(title) => format!("{title} ({})\n", report.file),
+        None => format!("{}\n", report.file),
+    }
+}
+
+/// A name padded to its column; widths are counted in characters, as all that is printed here is one column wide.
+fn padded(text: &str, width: usize) -> String {
+    let missing = width.saturating_sub(text.chars().count());
+    format!("{text}{}", " ".repeat(missing))
+}
+
+fn row(text: &mut String, name: &str, value: &str) {
+    let _ = writeln!(text, "  {}{value}", padded(name, NAMES));
+}
+
+fn operating_point(text: &mut String, detail: &Detail) {
+    let point = &detail.operating_point;
+    let amperes = |value| print(value, Unit::Ampere);
+    text.push_str("Operating point\n");
+    row(text, "Duty ratio", &print(point.duty, Unit::Fraction));
+    row(text, "Conduction", point.conduction.word());
+    for inductor in &point.inductors {
+        let current = &inductor.current;
+        let figures = format!(
+            "{} average, {} ripple peak to peak, {} peak, {} RMS",
+            amperes(current.average),
+            amperes(current.ripple),
+            amperes(current.peak),
+            amperes(current.rms)
+        );
+        row(text, &format!("{} current", capitalised(inductor.name)), &figures);
+    }
+    row(text, "Input current", &amperes(point.input_current));
+    row(text, "Conduction losses", &print(point.conduction_loss, Unit::Watt));
+    row(text, "Control voltage", &print(detail.control_voltage, Unit::Volt));
+    if let Some(load) = detail.boundary_load {
+        row(text, "Discontinuous below", &format!("{} of load", amperes(load)));
+    }
+    text.push('\n');
+}
+
+fn capitalised(name: &str) -> String {
+    let mut letters = name.chars();
+    letters.next().map(|first| first.to_uppercase().chain(letters).collect()).unwrap_or_default()
+}
+
+fn landmarks(text: &mut String, detail: &Detail) {
+    text.push_str("Landmarks of the plant\n");
+    for mark in &detail.landmarks {
+        let value = print(mark.frequency_hz, Unit::Hertz);
+        row(text, mark.name, &format!("{}{}", padded(&value, 14), mark.formula));
+    }
+    text.push('\n');
+}
+
+fn stability(text: &mut String, detail: &Detail) {
+    let margins = &detail.loop_gain.margins;
+    text.push_str("Loop\n");
+    let words = match &detail.loop_gain.verdict {
+        Verdict::Stable { conditionally: false } => "stable".to_owned(),
+        Verdict::Stable { conditionally: true } => "conditionally stable: a lower gain makes it unstable".to_owned(),
+        Verdict::Unstable { frequency_hz, growth_per_s, .. } => format!(
+            "UNSTABLE: oscillation at {}, growing with {} per second",
+            print(*frequency_hz, Unit::Hertz),
+            print_digits(*growth_per_s, Unit::One, 3)
+        ),
+        Verdict::Undecided { reason } => format!("undecided: {reason}"),
+    };
+    row(text, "Stability", &words);
+    // One falling crossover is the headline below; more than that are listed.
+    if margins.crossovers.len() > 1 {
+        for crossover in &margins.crossovers {
+            let way = if crossover.falling { "falling" } else { "rising" };
+            let value = format!(
+                "{}{} phase margin, {way}, {}",
+                padded(&print(crossover.frequency_hz, Unit::Hertz), 14),
+                print(crossover.phase_margin_deg, Unit::Degree),
+                print_digits(crossover.slope_db_per_decade, Unit::DecibelPerDecade, 3)
+            );
+            row(text, "  crosses 0 dB at", &value);
+        }
+    }
+}
+
+fn readouts(text: &mut String, readouts: &[Readout]) {
+    for readout in readouts {
+        let here = readout.value.map_or(readout.absent.to_owned(), |value| print(value, readout.unit));
+        let here = if readout.greyed { format!("({here})") } else { here };
+        let worst = readout.worst.as_ref().map_or(String::new(), |worst| {
+            let value = worst.value.map_or("none".to_owned(), |value| print(value, readout.unit));
+            format!("worst {} at {}", padded(&value, 12), worst.condition)
+        });
+        row(text, readout.name, format!("{}{worst}", padded(&here, 14)).trim_end());
+    }
+    text.push('\n');
+}
+
+fn load_step_line(text: &mut String, design: &CheckedDesign) {
+    let step = &design.events.load_step;
+    let _ = writeln!(
+        text,
+        "The load step is {} at {}; settled means within {} of the output.\n",
+        print(step.change, Unit::Ampere),
+        print(step.slew, Unit::AmperePerSecond),
+        print(design.events.settling_band, Unit::Fraction)
+    );
+}
+
+fn response_table(text: &mut String, curves: &Curves) {
+    const WIDTHS: [usize; 6] = [12, 22, 22, 22, 22, 22];
+    let line = |cells: [String; 6]| {
+        let joined: String = cells.iter().zip(WIDTHS).map(|(cell, width)| padded(cell, width)).collect();
+        format!("  {}\n", joined.trim_end())
+    };
+    text.push_str("Response\n");
+    let titles = ["frequency", "plant", "compensator", "loop", "output impedance", "line to output"];
+    text.push_str(&line(titles.map(str::to_owned)));
+    for (k, frequency) in curves.frequencies_hz.iter().enumerate() {
+        let pair = |gain: &[f64], unit: Unit, phase: &[f64]| match (gain.get(k), phase.get(k)) {
+            (Some(gain), Some(phase)) => format!("{}, {}", print(*gain, unit), print(*phase, Unit::Degree)),
+            _ => String::new(),
+        };
+        text.push_str(&line([
+            print(*frequency, Unit::Hertz),
+            pair(&curves.plant_db, Unit::Decibel, &curves.plant_deg),
+            pair(&curves.compensator_db, Unit::Decibel, &curves.compensator_deg),
+            pair(&curves.loop_db, Unit::Decibel, &curves.loop_deg),
+            pair(&curves.output_impedance_ohm, Unit::Ohm, &curves.output_impedance_deg),
+            pair(&curves.line_to_output_db, Unit::Decibel, &curves.line_to_output_deg),
+        ]));
+    }
+    text.push('\n');
+}
+
+fn requirements(text: &mut String, verdicts: &[RequirementVerdict]) {
+    if verdicts.is_empty() {
+        text.push_str("Requirements\n  none\n\n");
+        return;
+    }
+    text.push_str("Requirements\n");
+    for verdict in verdicts {
+        let sign = match verdict.kind {
+            LimitKind::AtLeast => "≥",
+            LimitKind::AtMost => "≤",
+        };
+        let found = match verdict.value {
+            Some(value) => format!("{} at {}", print(value, verdict.unit), verdict.condition),
+            None => verdict.reason.clone(),
+        };
+        let met = if verdict.met { "met" } else { "MISSED" };
+        let limit = format!("{sign} {}", print(verdict.limit, verdict.unit));
+        let _ = writeln!(text, "  {}{}{}{found}", padded(met, 8), padded(verdict.name, 34), padded(&limit, 14));
+    }
+    text.push('\n');
+}
+
+fn findings(text: &mut String, findings: &[Finding]) {
+    if findings.is_empty() {
+        return;
+    }
+    text.push_str("Findings\n");
+    for finding in findings {
+        let place = if finding.place.is_empty() { "the design" } else { &finding.place };
+        let _ = writeln!(text, "  {}{place}", padded(finding.severity.word(), 9));
+        wrapped(text, &finding.message);
+        if let Some(hint) = &finding.hint {
+            wrapped(text, &format!("Hint: {hint}"));
+        }
+    }
+    text.push('\n');
+}
+
+/// Running text, broken between words and set in.
+fn wrapped(text: &mut String, message: &str) {
+    const INDENT: &str = "           ";
+    let mut used = 0;
+    for word in message.split_whitespace() {
+        let length = word.chars().count();
+        if used > 0 && used + 1 + length <= LINE - INDENT.len() {
+            let _ = write!(text, " {word}");
+            used += 1 + length;
+        } else {
+            let start = if used == 0 { "" } else { "\n" };
+            let _ = write!(text, "{start}{INDENT}{word}");
+            used = length;
+        }
+    }
+    text.push('\n');
+}
+
+fn verdict(outcome: Outcome, analysis: &Analysis) -> &'static str {
+    match outcome {
+        Outcome::Met if analysis.requirements.is_empty() => "Stable in all nine conditions; nothing is required.",
+        Outcome::Met => "Stable in all nine conditions; all requirements are met.",
+        Outcome::NotMet if analysis.all_met() => "Not stable, or without results, in every one of the conditions.",
+        Outcome::NotMet => "Requirements are missed.",
+        Outcome::Unusable => "The condition asked for has no results.",
+    }
+}
