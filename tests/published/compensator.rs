@@ -56,7 +56,9 @@ fn every_network_against_node_equations() {
             let wanted = complex(&network["limited"][index]);
             worst_ideal = worst_ideal.max(apart(ideal.at_hz(frequency), complex(&network["ideal"][index])));
             worst_limited = worst_limited.max(apart(limited.at_hz(frequency), wanted));
-            worst_limited = worst_limited.max(apart(-system.at_hz(frequency).unwrap()[(0, 0)], wanted));
+            let matrix = system.at_hz(frequency).unwrap();
+            worst_limited = worst_limited.max(apart(-matrix[(0, 0)], wanted));
+            worst_limited = worst_limited.max(apart(matrix[(0, 1)], complex(&network["from_reference"][index])));
         }
     }
     println!("worst relative error: ideal {worst_ideal:.1e}, limited {worst_limited:.1e}");

@@ -2,8 +2,8 @@
 
     python compensator.py OUTPUT.json
 
-Response: -vc/vout with the inversion taken out, once with an ideal amplifier and once with its limits, at 25 frequencies from 1 Hz to
-10 MHz.  Parts are our own choice, spread over decades, among them networks whose limits show (a gain of 200, a gain-bandwidth
+Responses: -vc/vout with the inversion taken out, once with an ideal amplifier and once with its limits, and vc/vref with the
+limits, at 25 frequencies from 1 Hz to 10 MHz.  Parts are our own choice, spread over decades, among them networks whose limits show (a gain of 200, a gain-bandwidth
 product of 300 kHz, an output resistance of 50 kohm).
 """
 
@@ -68,11 +68,13 @@ def main():
     rows = []
     for network in networks():
         choices, values = entries(network)
+        limited, from_reference = network.at(s)
         rows.append({
             "choices": choices,
             "values": values,
             "ideal": [[float(h.real), float(h.imag)] for h in replace(network, ideal=True).at(s)[0]],
-            "limited": [[float(h.real), float(h.imag)] for h in network.at(s)[0]],
+            "limited": [[float(h.real), float(h.imag)] for h in limited],
+            "from_reference": [[float(h.real), float(h.imag)] for h in from_reference],
         })
     write({"about": "made by tests/reference/compensator.py; complex values as [real, imaginary]",
            "frequencies_hz": frequencies.tolist(), "networks": rows}, sys.argv[1])
