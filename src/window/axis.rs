@@ -155,6 +155,17 @@ pub(super) fn grid_label(value: f64, step: f64, unit: Unit) -> String {
     quantity::print_digits(value, unit, digits)
 }
 
+/// Value of a sampled curve between its points, or nothing outside them. `xs` rises.
+pub(super) fn interpolate(xs: &[f64], ys: &[f64], x: f64) -> Option<f64> {
+    let after = xs.partition_point(|at| *at < x);
+    if after == 0 {
+        return (*xs.first()? - x).abs().lt(&1e-9).then(|| ys.first().copied()).flatten();
+    }
+    let (x0, x1) = (*xs.get(after - 1)?, *xs.get(after)?);
+    let (y0, y1) = (*ys.get(after - 1)?, *ys.get(after)?);
+    Some(y0 + (y1 - y0) * (x - x0) / (x1 - x0))
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -183,6 +194,15 @@ mod tests {
         assert_eq!(lines.len(), 19);
         assert_eq!(lines.iter().filter(|line| line.digit == 1).count(), 3);
         assert!((lines[0].value - 10.0).abs() < 1e-9);
+    }
+
+    #[test]
+    fn between_points_a_curve_is_straight() {
+        let (xs, ys) = ([0.0, 1.0, 3.0], [5.0, 7.0, 3.0]);
+        assert_eq!(interpolate(&xs, &ys, 2.0), Some(5.0));
+        assert_eq!(interpolate(&xs, &ys, 0.0), Some(5.0));
+        assert_eq!(interpolate(&xs, &ys, -0.1), None);
+        assert_eq!(interpolate(&xs, &ys, 3.1), None);
     }
 
     #[test]

@@ -215,7 +215,7 @@ fn held_curves(painter: &egui::Painter, stack: &Stack, held: &Analysis, palette:
 fn cursor_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
     let mut cursor = None;
     for (name, plot) in [("Gain plot", &stack.gain), ("Phase plot", &stack.phase)] {
-        let response = ui.interact(plot.rect, ui.id().with(name), Sense::drag());
+        let response = ui.interact(plot.rect, ui.scope_id().with(name), Sense::drag());
         response.widget_info(|| WidgetInfo::labeled(egui::Role::Canvas, true, name));
         if let Some(pointer) = response.hover_pos() {
             cursor = Some(plot.x.value(pointer.x));

@@ -56,7 +56,13 @@ pub struct Session {
     lanes: Vec<Lane>,
     problems: Vec<Finding>,
     held: Option<Held>,
+    lane_remark: Option<(&'static str, String)>,
 }
+
+/// Decades shown below the switching frequency: from the integrator to where switching hides the rest.
+const DECADES: f64 = 1e4;
+/// The whole range before any switching frequency is known [Hz].
+const USUAL_RANGE_HZ: (f64, f64) = (30.0, 300e3);
 
 impl Session {
     /// A session on a design, and the file it came from.
@@ -78,6 +84,7 @@ impl Session {
             lanes: Vec::new(),
             problems: Vec::new(),
             held: None,
+            lane_remark: None,
         }
     }
 
@@ -162,6 +169,38 @@ impl Session {
         &self.history
     }
 
+    /// Frequencies of the whole range [Hz]: four decades up to the switching frequency.
+    pub fn whole_range_hz(&self) -> (f64, f64) {
+        let switching = self.document.design.values.get("stage.switching-frequency");
+        switching.filter(|hz| (1.0..1e10).contains(hz)).map_or(USUAL_RANGE_HZ, |hz| (hz / DECADES, hz))
+    }
+
+    /// Shows the condition `steps` further in the list of nine.
+    pub fn step_condition(&mut self, steps: usize) {
+        let (input, load) = super::perform::condition_after(self.shown, steps);
+        self.show(input, load);
+    }
+
+    /// Why a lane could not go where it was asked to, or what else had to move.
+    pub fn lane_remark(&self, key: &str) -> Option<&str> {
+        self.lane_remark.as_ref().filter(|(lane, _)| *lane == key).map(|(_, remark)| remark.as_str())
+    }
+
+    /// Moves a lane by finding parts for it, reckoned from where the gesture began.
+    pub fn move_lane(&mut self, key: &'static str, frequency_hz: f64, gesture: Gesture) {
+        let start = self.design_before(gesture);
+        let Ok(compensator) = Compensator::from_values(&start.values, &start.choices) else { return };
+        let placed = compensator.move_lane(key, frequency_hz, &start.locks);
+        let name = self.lanes.iter().find(|lane| lane.key == key).map_or(key, |lane| lane.name);
+        let name = format!("Move {}", name.to_lowercase());
+        self.change(&name, Some(gesture), |document| {
+            placed.compensator.write(&mut document.design.values);
+            // The frequency comes from an axis or a parsed number, so it is finite.
+            let _ = document.design.aims.set(key, frequency_hz);
+        });
+        self.lane_remark = placed.why.map(|why| (key, why));
+    }
+
     /// What is held to compare with.
     pub fn held(&self) -> Option<&Held> {
         self.held.as_ref()
@@ -231,6 +270,7 @@ impl Session {
                 let request = Request {
                     shown: Shown::Levels(self.shown.0, self.shown.1),
                     frequencies_hz: self.frequencies_hz.clone(),
+                    band_frequencies_hz: self.frequencies_hz.iter().copied().step_by(BAND_STEP).collect(),
                     step_points: STEP_POINTS,
                 };
                 let analysis = analysis::analyse(&checked, &request);
@@ -243,5 +283,7 @@ impl Session {
     }
 }
 
+/// The band is drawn with a quarter of the curves' points: it is wide and soft.
+const BAND_STEP: usize = 4;
 /// Points of a step response: more than a plot of half a screen has columns.
 const STEP_POINTS: usize = 800;

@@ -126,6 +126,10 @@ pub(super) struct View {
     pub typing: Option<Typing>,
     /// Field being edited.
     pub field: Option<Field>,
+    /// Title being edited.
+    pub title: Option<String>,
+    /// Path of an entry whose field is to be brought into view and given the keyboard.
+    pub seek: Option<String>,
     /// Question or list over the window.
     pub dialog: Option<Dialog>,
     /// What was last said.
@@ -156,6 +160,8 @@ impl Default for View {
             lane: None,
             typing: None,
             field: None,
+            title: None,
+            seek: None,
             dialog: None,
             message: None,
             theme: ThemePreference::System,
