@@ -1,1 +1,45 @@
 //! The desktop window: shows an analysis, edits a design, computes no electronics.
+//!
+//! [`App`] is the whole of it: its `logic` carries out [`Command`] values and keeps the [`Session`] (document, history, file,
+//! latest results) up to date, its `ui` draws. Drawing functions end in `_ui`; they read the session, keep what is only seen in
+//! the view, and send commands, which are carried out before the next frame. One command table feeds menus, shortcuts and the
+//! searchable list. Colours, distances and line styles stand in `theme.rs` alone.
+//!
+//! *The one frequency axis.* Gain, phase and lanes are painted from one [`axis`] value per frame, so a handle stands under its
+//! place in the curve by construction, at every size and scale.
+
+mod app;
+mod axis;
+mod bar;
+mod bode;
+mod command;
+mod conditions;
+mod dialogs;
+mod drawing;
+mod files;
+mod findings;
+mod form;
+mod history;
+mod lanes;
+mod ledger;
+mod legend;
+mod marks;
+mod operating;
+mod parts;
+mod perform;
+mod plot;
+mod readouts;
+mod responses;
+mod run;
+mod session;
+mod stage;
+mod steps;
+mod theme;
+mod view;
+
+pub use app::App;
+pub use command::{Command, Curve};
+pub use history::{Gesture, History};
+pub use run::{WindowError, run};
+pub use session::{BadText, Document, Held, Session};
+pub use view::Message;

@@ -1,0 +1,152 @@
+//! The top bar: which design, which condition, the menus; and messages under it.
+
+use eframe::egui::{self, Align, Button, Color32, Layout, Pos2, Rect, RichText, Shape, Ui, UiBuilder, pos2, vec2};
+
+use super::command::{COMMANDS, Command, Menu};
+use super::conditions;
+use super::theme::{self, palette};
+use super::view::Desk;
+use crate::design;
+
+/// Draws the bar: names at the left, the chooser in the middle, what can be pressed at the right.
+pub(super) fn bar_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let room = ui.max_rect();
+    let third = room.width() * 0.29;
+    let left = Rect::from_min_max(room.min, pos2(room.left() + third, room.bottom()));
+    let right = Rect::from_min_max(pos2(room.right() - third, room.top()), room.max);
+    let middle = Rect::from_min_max(left.right_top(), right.left_bottom());
+    let mut at_left = ui.new_child(UiBuilder::new().max_rect(left).layout(Layout::left_to_right(Align::Center)));
+    names_ui(&mut at_left, desk);
+    let mut at_middle = ui.new_child(UiBuilder::new().max_rect(middle).layout(Layout::top_down(Align::Center)));
+    at_middle.add_space(((middle.height() - 26.0) / 2.0).max(0.0));
+    conditions::chooser_ui(&mut at_middle, desk);
+    let mut at_right = ui.new_child(UiBuilder::new().max_rect(right).layout(Layout::right_to_left(Align::Center)));
+    menus_ui(&mut at_right, desk);
+}
+
+fn names_ui(ui: &mut Ui, desk: &Desk<'_>) {
+    let design = desk.session.design();
+    let title = if design.title.is_empty() { "Untitled" } else { &design.title };
+    ui.add(egui::Label::new(RichText::new(title).font(theme::strong(14.5))).truncate());
+    let file = desk.session.path().and_then(|path| path.file_name()).map(|name| name.to_string_lossy().into_owned());
+    let mut text = file.unwrap_or_else(|| "not in a file yet".to_owned());
+    if desk.session.unsaved() {
+        text += ", edited";
+    }
+    ui.add(egui::Label::new(RichText::new(text).color(palette(ui).weak)).truncate());
+}
+
+fn menus_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    ui.spacing_mut().item_spacing.x = 4.0;
+    for (menu, name) in [(Menu::View, "View"), (Menu::Edit, "Edit"), (Menu::Design, "Design")] {
+        let text = RichText::new(name).color(palette(ui).accent);
+        ui.menu_button(text, |ui| menu_ui(ui, menu, desk));
+    }
+    ui.add_space(6.0);
+    let undo = desk.session.history().undo_name().map(str::to_owned);
+    let redo = desk.session.history().redo_name().map(str::to_owned);
+    let held = desk.session.held().is_some();
+    let hold = if held { (Command::DropHeld, "Drop held") } else { (Command::Hold, "Hold") };
+    word_ui(ui, hold.1, true, "Keep the present curves to compare with the next try.", hold.0, desk);
+    let help = redo.as_ref().map_or_else(|| "Nothing to redo.".to_owned(), |name| format!("Redo: {name}"));
+    word_ui(ui, "Redo", redo.is_some(), &help, Command::Redo, desk);
+    let help = undo.as_ref().map_or_else(|| "Nothing to undo.".to_owned(), |name| format!("Undo: {name}"));
+    word_ui(ui, "Undo", undo.is_some(), &help, Command::Undo, desk);
+}
+
+fn word_ui(ui: &mut Ui, word: &str, enabled: bool, help: &str, command: Command, desk: &mut Desk<'_>) {
+    let accent = palette(ui).accent;
+    let button = Button::new(RichText::new(word).color(accent)).frame(true).stroke(egui::Stroke::NONE);
+    let response = ui.add_enabled(enabled, button);
+    if response.on_hover_text(help).on_disabled_hover_text(help).clicked() {
+        desk.ask(command);
+    }
+}
+
+fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
+    ui.set_min_width(250.0);
+    for row in COMMANDS.iter().filter(|row| row.menu == menu) {
+        let mut button = Button::new(row.name).stroke(egui::Stroke::NONE).selected(chosen(&row.command, desk));
+        if let Some(shortcut) = &row.shortcut {
+            button = button.shortcut_text(ui.ctx().format_shortcut(shortcut));
+        }
+        if ui.add(button).on_hover_text(row.help).clicked() {
+            desk.ask(row.command.clone());
+            ui.close();
+        }
+    }
+    if menu == Menu::Design {
+        ui.separator();
+        ui.menu_button("Samples", |ui| samples_ui(ui, desk));
+    }
+}
+
+/// Whether a command stands for something that is switched on.
+fn chosen(command: &Command, desk: &Desk<'_>) -> bool {
+    match command {
+        Command::Toggle(curve) => desk.view.shows(*curve),
+        Command::ToggleBand => desk.view.band,
+        Command::ToggleStage => desk.view.stage_column,
+        Command::ToggleReadouts => desk.view.readout_column,
+        Command::Theme(theme) => desk.view.theme == *theme,
+        _ => false,
+    }
+}
+
+/// The sample designs, each with its line.
+pub(super) fn samples_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    ui.set_max_width(430.0);
+    for sample in design::sample::all() {
+        let title = RichText::new(sample.title).color(palette(ui).accent);
+        let response = ui.add(Button::new(title).stroke(egui::Stroke::NONE));
+        ui.label(RichText::new(sample.line).font(theme::small()).color(palette(ui).weak));
+        ui.add_space(4.0);
+        if response.clicked() {
+            desk.ask(Command::OpenSample(sample.file));
+            ui.close();
+        }
+    }
+}
+
+/// The mark of a list that opens.
+pub(super) fn down_mark(ui: &Ui, at: Pos2) {
+    let colour: Color32 = palette(ui).accent;
+    let points = vec![at + vec2(-4.0, -2.0), at + vec2(4.0, -2.0), at + vec2(0.0, 3.0)];
+    ui.painter().add(Shape::convex_polygon(points, colour, egui::Stroke::NONE));
+}
+
+/// A line under the bar: results are stale, or what was last said.
+pub(super) fn notices_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    if desk.session.stale() {
+        let count = desk.session.problems().len();
+        let first = desk.session.problems().first().map(|finding| finding.message.clone()).unwrap_or_default();
+        let more = if count > 1 { format!(" And {} more, see findings.", count - 1) } else { String::new() };
+        let shown = if desk.session.analysis().is_some() { "Stale: the curves are those of the last usable design. " } else { "" };
+        line_ui(ui, &format!("{shown}{first}{more}"), palette.problem, |_| {});
+    }
+    if let Some(message) = desk.view.message.clone() {
+        let colour = if message.failed { palette.problem } else { palette.good };
+        let mut closed = false;
+        line_ui(ui, &message.text, colour, |ui| closed = ui.button("Close").clicked());
+        if closed {
+            desk.view.message = None;
+        }
+    }
+}
+
+fn line_ui(ui: &mut Ui, text: &str, colour: Color32, end: impl FnOnce(&mut Ui)) {
+    let ground = palette(ui).field;
+    egui::Frame::new().fill(ground).inner_margin(egui::Margin::symmetric(14, 5)).show(ui, |ui| {
+        ui.horizontal(|ui| {
+            let (rect, _) = ui.allocate_exact_size(vec2(4.0, 16.0), egui::Sense::hover());
+            ui.painter().rect_filled(rect, 1.0, colour);
+            ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
+                end(ui);
+                ui.with_layout(Layout::left_to_right(Align::Center), |ui| {
+                    ui.add(egui::Label::new(RichText::new(text).color(palette(ui).ink)).truncate()).on_hover_text(text);
+                });
+            });
+        });
+    });
+}

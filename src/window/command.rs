@@ -1,0 +1,255 @@
+//! Everything the window can be asked to do. One table names the commands that menus, shortcuts and lists offer.
+
+use std::path::PathBuf;
+
+use eframe::egui::{Key, KeyboardShortcut, Modifiers, ThemePreference};
+
+use super::history::Gesture;
+use crate::analysis::Level;
+use crate::finding::Remedy;
+
+/// Curves of the Bode plots that can be shown or hidden.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Curve {
+    /// Control voltage to output voltage.
+    Plant,
+    /// Output voltage to control voltage.
+    Compensator,
+    /// Their product.
+    Loop,
+}
+
+/// A request to the window, from a menu, a key, a field or a handle.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Command {
+    /// Ask for a design file to open.
+    Open,
+    /// Open this file.
+    OpenPath(PathBuf),
+    /// Open the sample design with this file name.
+    OpenSample(&'static str),
+    /// Save under the known path, or ask for one.
+    Save,
+    /// Ask for a path and save.
+    SaveAs,
+    /// Save under this path.
+    SavePath(PathBuf),
+    /// Let the system's dialog choose a path.
+    Browse,
+    /// Close the window.
+    Quit,
+    /// Go on with what unsaved changes held up, without saving them.
+    DiscardAndGoOn,
+    /// Save, then go on with what unsaved changes held up.
+    SaveAndGoOn,
+    /// Close the question or the list that is open.
+    Dismiss,
+
+    /// Take the last step back.
+    Undo,
+    /// Do it again.
+    Redo,
+    /// Enter text for a number of the table of entries.
+    Enter {
+        /// Path of the entry.
+        path: &'static str,
+        /// What was typed.
+        text: String,
+    },
+    /// Choose an option of the table of entries.
+    Choose {
+        /// Path of the choice.
+        path: &'static str,
+        /// Key of the option.
+        key: &'static str,
+    },
+    /// Enter the design's title.
+    Title(String),
+    /// Move a pole, zero or gain of the compensator.
+    MoveLane {
+        /// Key of the lane.
+        key: &'static str,
+        /// Wanted frequency [Hz].
+        frequency_hz: f64,
+        /// Moves of one gesture are one step, all reckoned from where it began.
+        gesture: Gesture,
+    },
+    /// Keep a part as it is, or let it be changed again.
+    Lock {
+        /// Path of the part.
+        path: &'static str,
+        /// True to keep it.
+        locked: bool,
+    },
+    /// Round the parts of the compensator to their series.
+    RoundParts,
+    /// Take the remedy a finding offers.
+    Mend(Remedy),
+
+    /// Show this operating condition in full.
+    Show(Level, Level),
+    /// Show the next of the nine conditions.
+    NextCondition,
+    /// Show the one before.
+    PreviousCondition,
+    /// Show or hide a curve.
+    Toggle(Curve),
+    /// Show or hide the band over the nine conditions.
+    ToggleBand,
+    /// Show the whole frequency range again.
+    WholeRange,
+    /// Keep the present curves to compare with.
+    Hold,
+    /// Drop the held curves.
+    DropHeld,
+    /// Colours of the window.
+    Theme(ThemePreference),
+    /// Larger text and drawing.
+    Larger,
+    /// Smaller text and drawing.
+    Smaller,
+    /// Text and drawing at their normal size.
+    NormalSize,
+    /// Show or hide the column of the power stage.
+    ToggleStage,
+    /// Show or hide the column of read-outs.
+    ToggleReadouts,
+    /// Show the searchable list of commands.
+    ListCommands,
+}
+
+/// Where a command is offered.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Menu {
+    /// Files.
+    Design,
+    /// Changes.
+    Edit,
+    /// What is seen.
+    View,
+}
+
+/// A row of the command table.
+#[derive(Clone, Debug)]
+pub(super) struct Row {
+    /// Name in menus and lists.
+    pub name: &'static str,
+    /// Menu that offers it.
+    pub menu: Menu,
+    /// Keys that ask for it.
+    pub shortcut: Option<KeyboardShortcut>,
+    /// What it does, in a sentence.
+    pub help: &'static str,
+    /// The command.
+    pub command: Command,
+}
+
+const fn key(modifiers: Modifiers, key: Key) -> Option<KeyboardShortcut> {
+    Some(KeyboardShortcut::new(modifiers, key))
+}
+
+const fn row(
+    name: &'static str,
+    menu: Menu,
+    shortcut: Option<KeyboardShortcut>,
+    help: &'static str,
+    command: Command,
+) -> Row {
+    Row {
+        name,
+        menu,
+        shortcut,
+        help,
+        command,
+    }
+}
+
+const CTRL: Modifiers = Modifiers::COMMAND;
+const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
+
+/// The command table, in the order of the menus. Shortcuts with more modifiers stand first where keys are shared.
+pub(super) static COMMANDS: &[Row] = &[
+    row("Open…", Menu::Design, key(CTRL, Key::O), "Open a design file or a sample.", Command::Open),
+    row("Save as…", Menu::Design, key(CTRL_SHIFT, Key::S), "Save under another name.", Command::SaveAs),
+    row("Save", Menu::Design, key(CTRL, Key::S), "Save the design file.", Command::Save),
+    row("Quit", Menu::Design, key(CTRL, Key::Q), "Close the window.", Command::Quit),
+    row("Redo", Menu::Edit, key(CTRL_SHIFT, Key::Z), "Do again what was undone.", Command::Redo),
+    row("Undo", Menu::Edit, key(CTRL, Key::Z), "Take the last change back.", Command::Undo),
+    row(
+        "Round parts to their series",
+        Menu::Edit,
+        key(CTRL, Key::R),
+        "Set resistors and capacitors of the compensator to preferred values; locked parts stay.",
+        Command::RoundParts,
+    ),
+    row(
+        "Next condition",
+        Menu::View,
+        key(CTRL, Key::ArrowRight),
+        "Show the next of the nine operating conditions.",
+        Command::NextCondition,
+    ),
+    row(
+        "Previous condition",
+        Menu::View,
+        key(CTRL, Key::ArrowLeft),
+        "Show the operating condition before.",
+        Command::PreviousCondition,
+    ),
+    row("Hold curves", Menu::View, key(CTRL, Key::H), "Keep the present curves beside the next try.", Command::Hold),
+    row("Drop held curves", Menu::View, key(CTRL_SHIFT, Key::H), "Take the held curves away.", Command::DropHeld),
+    row("Plant curve", Menu::View, key(CTRL, Key::Num1), "Show or hide the plant.", Command::Toggle(Curve::Plant)),
+    row(
+        "Compensator curve",
+        Menu::View,
+        key(CTRL, Key::Num2),
+        "Show or hide the compensator.",
+        Command::Toggle(Curve::Compensator),
+    ),
+    row("Loop curve", Menu::View, key(CTRL, Key::Num3), "Show or hide the loop gain.", Command::Toggle(Curve::Loop)),
+    row(
+        "Band of conditions",
+        Menu::View,
+        key(CTRL, Key::B),
+        "Show or hide the band the loop covers over the nine conditions.",
+        Command::ToggleBand,
+    ),
+    row("Whole range", Menu::View, key(CTRL, Key::Home), "Show all frequencies again.", Command::WholeRange),
+    row("Power stage column", Menu::View, key(Modifiers::NONE, Key::F6), "Show or hide the entries.", Command::ToggleStage),
+    row(
+        "Read-outs column",
+        Menu::View,
+        key(Modifiers::NONE, Key::F7),
+        "Show or hide margins, parts and findings.",
+        Command::ToggleReadouts,
+    ),
+    row("Light", Menu::View, None, "Light colours.", Command::Theme(ThemePreference::Light)),
+    row("Dark", Menu::View, None, "Dark colours.", Command::Theme(ThemePreference::Dark)),
+    row("As the system", Menu::View, None, "Colours as the desktop has them.", Command::Theme(ThemePreference::System)),
+    row("Larger", Menu::View, key(CTRL, Key::Plus), "Larger text and drawing.", Command::Larger),
+    row("Smaller", Menu::View, key(CTRL, Key::Minus), "Smaller text and drawing.", Command::Smaller),
+    row("Normal size", Menu::View, key(CTRL, Key::Num0), "Text and drawing at normal size.", Command::NormalSize),
+    row("All commands…", Menu::View, key(CTRL, Key::K), "A list of all commands to search.", Command::ListCommands),
+];
+
+/// The row of a command, when the table has it.
+pub(super) fn row_of(command: &Command) -> Option<&'static Row> {
+    COMMANDS.iter().find(|row| row.command == *command)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn no_two_commands_share_a_name_or_keys() {
+        for (index, row) in COMMANDS.iter().enumerate() {
+            for other in &COMMANDS[index + 1..] {
+                assert_ne!(row.name, other.name);
+                assert!(row.shortcut.is_none() || row.shortcut != other.shortcut, "{} and {}", row.name, other.name);
+                assert_ne!(row.command, other.command);
+            }
+            assert!(row.help.ends_with('.'));
+        }
+    }
+}

@@ -1,0 +1,124 @@
+//! The nine operating conditions: the chooser in the bar, and the map that shows all of them at once.
+
+use eframe::egui::{Align2, Popup, PopupCloseBehavior, Rect, RichText, Sense, Stroke, StrokeKind, Ui, WidgetInfo, Role, pos2, vec2};
+
+use super::command::Command;
+use super::theme::{self, palette};
+use super::view::Desk;
+use crate::analysis::{Analysis, ConditionResult, Level, LimitKind};
+use crate::quantity::{self, Unit};
+
+/// The chooser: says which condition is shown; pressed, it opens the map. Wheel and arrow commands step through.
+pub(super) fn chooser_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let (input, load) = desk.session.shown();
+    let text = match desk.session.analysis() {
+        Some(analysis) => format!("Shown: {}", analysis.condition.label),
+        None => format!("Shown: {} input, {} load", input.word(), load.word()),
+    };
+    let galley = ui.painter().layout_no_wrap(text.clone(), theme::body(), palette.ink);
+    let (rect, response) = ui.allocate_exact_size(vec2(galley.size().x + 44.0, 26.0), Sense::click());
+    let ground = if response.hovered() { palette.accent_ground } else { palette.field };
+    ui.painter().rect(rect, 13.0, ground, Stroke::new(1.0, palette.field_edge), StrokeKind::Inside);
+    let at = pos2(rect.left() + 16.0, rect.center().y - galley.size().y / 2.0);
+    ui.painter().galley(at, galley, palette.ink);
+    super::bar::down_mark(ui, pos2(rect.right() - 16.0, rect.center().y));
+    response.widget_info(|| {
+        let mut info = WidgetInfo::labeled(Role::ComboBox, true, "Operating condition shown");
+        info.current_text_value = Some(text.clone());
+        info
+    });
+    super::legend::focus_ring(ui, &response);
+    Popup::menu(&response).close_behavior(PopupCloseBehavior::CloseOnClick).show(|ui| {
+        ui.set_min_width(360.0);
+        ui.label(RichText::new("Press a condition to show it in full.").color(palette.weak));
+        map_ui(ui, "chooser", desk);
+    });
+}
+
+/// The map: input voltage down, load across, each cell its phase margin and crossover.
+pub(super) fn map_ui(ui: &mut Ui, salt: &str, desk: &mut Desk<'_>) {
+    let Some(analysis) = desk.session.analysis() else { return };
+    let palette = palette(ui);
+    let room = ui.available_width();
+    let (head, label, cell_height) = (17.0, 46.0, 34.0);
+    let (rect, _) = ui.allocate_exact_size(vec2(room, head + 3.0 * cell_height), Sense::hover());
+    let width = (room - label) / 3.0;
+    for (index, result) in analysis.conditions.iter().take(9).enumerate() {
+        let (row, column) = ((index / 3) as f32, (index % 3) as f32);
+        let corner = pos2(rect.left() + label + column * width, rect.top() + head + row * cell_height);
+        let cell = Rect::from_min_size(corner, vec2(width - 3.0, cell_height - 3.0));
+        if index < 3 {
+            let text = quantity::print_digits(result.condition.load_current, Unit::Ampere, 3);
+            let at = pos2(cell.center().x, rect.top() + head / 2.0);
+            ui.painter().text(at, Align2::CENTER_CENTER, text, theme::small(), palette.weak);
+        }
+        if index % 3 == 0 {
+            let text = quantity::print_digits(result.condition.input_voltage, Unit::Volt, 3);
+            ui.painter().text(pos2(rect.left(), cell.center().y), Align2::LEFT_CENTER, text, theme::small(), palette.weak);
+        }
+        cell_ui(ui, cell, (salt, index), result, desk);
+    }
+}
+
+fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let Some((input, load)) = result.condition.levels else { return };
+    let shown = desk.session.shown() == (input, load);
+    let response = ui.interact(cell, ui.scope_id().with(id), Sense::click());
+    let (figure, under, missed) = figures(result, desk);
+    let label = format!("{} input, {} load: {figure}", input.word(), load.word());
+    response.widget_info(|| WidgetInfo::selected(Role::RadioButton, true, shown, &label));
+    let ground = if response.hovered() || shown { palette.accent_ground } else { palette.field };
+    let edge = if shown { Stroke::new(1.5, palette.accent) } else { Stroke::new(1.0, palette.hairline) };
+    ui.painter().rect(cell, 4.0, ground, edge, StrokeKind::Inside);
+    let ink = if missed { palette.amber } else { palette.ink };
+    let painter = ui.painter().with_clip_rect(cell);
+    painter.text(cell.center() - vec2(0.0, 6.5), Align2::CENTER_CENTER, &figure, theme::strong(12.5), ink);
+    painter.text(cell.center() + vec2(0.0, 7.5), Align2::CENTER_CENTER, under, theme::small(), palette.weak);
+    super::legend::focus_ring(ui, &response);
+    let help = match &result.outcome {
+        Ok(_) => result.condition.label.clone(),
+        Err(finding) => format!("{}\n{}", result.condition.label, finding.message),
+    };
+    if response.on_hover_text(help).clicked() {
+        desk.ask(Command::Show(input, load));
+    }
+}
+
+/// What a cell says: phase margin over crossover, or the word for what is wrong; and whether it misses what is asked.
+fn figures(result: &ConditionResult, desk: &Desk<'_>) -> (String, String, bool) {
+    let Ok(summary) = &result.outcome else {
+        return ("none".to_owned(), "no result".to_owned(), true);
+    };
+    if !summary.loop_gain.stable() {
+        return ("unstable".to_owned(), String::new(), true);
+    }
+    let Some(crossover) = summary.loop_gain.margins.headline_crossover() else {
+        return ("stable".to_owned(), "no crossover".to_owned(), false);
+    };
+    let margin_deg = crossover.phase_margin_deg;
+    let nominal = result.condition.levels == Some((Level::Nominal, Level::Nominal));
+    let missed = desk.session.analysis().is_some_and(|analysis| missed(analysis, margin_deg, nominal));
+    (format!("{margin_deg:.1}°"), quantity::print_digits(crossover.frequency_hz, Unit::Hertz, 3), missed)
+}
+
+/// True when a phase margin misses what is asked of this condition.
+fn missed(analysis: &Analysis, margin_deg: f64, nominal: bool) -> bool {
+    analysis
+        .requirements
+        .iter()
+        .filter(|verdict| verdict.readout == "phase-margin" && (verdict.over_all_conditions || nominal))
+        .any(|verdict| verdict.kind == LimitKind::AtLeast && margin_deg < verdict.limit)
+}
+
+/// The map with its heading, for the column of read-outs.
+pub(super) fn panel_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    ui.horizontal(|ui| {
+        ui.label(RichText::new("Nine conditions").font(theme::strong(13.5)));
+        let text = RichText::new("phase margin, crossover").font(theme::small()).color(palette.weak);
+        ui.label(text).on_hover_text("Input voltage down, load across. Press one to show it in full.");
+    });
+    map_ui(ui, "panel", desk);
+}

@@ -1,0 +1,160 @@
+//! Questions and lists over the window: open, save as, unsaved changes, all commands.
+
+use eframe::egui::{Button, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
+
+use super::bar;
+use super::command::{COMMANDS, Command};
+use super::theme::{self, palette};
+use super::view::{Desk, Dialog};
+
+/// Draws the dialog that is open, if any.
+pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let Some(mut dialog) = desk.view.dialog.clone() else { return };
+    let response = Modal::new(Id::unique("dialog")).show(ui.ctx(), |ui| {
+        ui.set_width(520.0);
+        match &mut dialog {
+            Dialog::Open { path } => open_ui(ui, path, desk),
+            Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
+            Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
+            Dialog::Commands { search } => commands_ui(ui, search, desk),
+        }
+    });
+    if response.should_close() {
+        desk.ask(Command::Dismiss);
+    }
+    desk.view.dialog = Some(dialog);
+}
+
+fn title(ui: &mut Ui, text: &str) {
+    ui.label(RichText::new(text).font(theme::strong(16.0)));
+    ui.add_space(6.0);
+}
+
+/// A field for a path with a button for the system's dialog; true when Enter was pressed in it.
+fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
+    let mut entered = false;
+    ui.horizontal(|ui| {
+        let edit = TextEdit::singleline(path).hint_text("path of a design file").desired_width(400.0);
+        let response = ui.add(edit).accessible_name("Path of the design file");
+        entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
+        let nothing_focused = ui.memory(|memory| memory.focused().is_none());
+        if nothing_focused && !entered {
+            response.request_focus();
+        }
+        if ui.button("Browse…").on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
+            desk.ask(Command::Browse);
+        }
+    });
+    entered
+}
+
+fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
+    title(ui, "Open a design");
+    let entered = path_ui(ui, path, desk);
+    ui.add_space(4.0);
+    buttons(ui, |ui| {
+        let open = ui.add_enabled(!path.is_empty(), primary(ui, "Open")).clicked();
+        if open || (entered && !path.is_empty()) {
+            desk.ask(Command::OpenPath(path.clone().into()));
+        }
+        if ui.button("Cancel").clicked() {
+            desk.ask(Command::Dismiss);
+        }
+    });
+    ui.add_space(10.0);
+    ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
+    ScrollArea::vertical().max_height(300.0).show(ui, |ui| bar::samples_ui(ui, desk));
+}
+
+fn save_as_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
+    title(ui, "Save the design as");
+    let entered = path_ui(ui, path, desk);
+    let target = with_ending(path);
+    if !path.is_empty() && target.exists() {
+        ui.label(RichText::new("This file exists and will be replaced.").color(palette(ui).problem));
+    }
+    ui.add_space(4.0);
+    buttons(ui, |ui| {
+        let save = ui.add_enabled(!path.is_empty(), primary(ui, "Save")).clicked();
+        if save || (entered && !path.is_empty()) {
+            desk.ask(Command::SavePath(target));
+        }
+        if ui.button("Cancel").clicked() {
+            desk.ask(Command::Dismiss);
+        }
+    });
+}
+
+/// The path with the ending of design files when it has none.
+fn with_ending(path: &str) -> std::path::PathBuf {
+    let mut path = std::path::PathBuf::from(path);
+    if path.extension().is_none() {
+        path.set_extension("ron");
+    }
+    path
+}
+
+fn unsaved_ui(ui: &mut Ui, next: &Command, desk: &mut Desk<'_>) {
+    title(ui, "There are unsaved changes");
+    let text = match next {
+        Command::Quit => "Closing now would lose them.",
+        _ => "Opening another design would lose them.",
+    };
+    ui.label(text);
+    if desk.session.bad_texts().next().is_some() {
+        ui.label("Text that is not a number stands in a field; it is not part of the file.");
+    }
+    ui.add_space(8.0);
+    buttons(ui, |ui| {
+        if ui.add(primary(ui, "Save")).clicked() {
+            desk.ask(Command::SaveAndGoOn);
+        }
+        if ui.button("Discard changes").clicked() {
+            desk.ask(Command::DiscardAndGoOn);
+        }
+        if ui.button("Cancel").clicked() {
+            desk.ask(Command::Dismiss);
+        }
+    });
+}
+
+fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
+    let edit = TextEdit::singleline(search).hint_text("search a command").desired_width(f32::INFINITY);
+    let response = ui.add(edit).accessible_name("Search a command");
+    let entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
+    if ui.memory(|memory| memory.focused().is_none()) && !entered {
+        response.request_focus();
+    }
+    ui.add_space(6.0);
+    let wanted = search.to_lowercase();
+    let found: Vec<_> = COMMANDS
+        .iter()
+        .filter(|row| row.name.to_lowercase().contains(&wanted) || row.help.to_lowercase().contains(&wanted))
+        .collect();
+    if let (true, Some(first)) = (entered, found.first()) {
+        desk.ask(Command::Dismiss);
+        desk.ask(first.command.clone());
+    }
+    ScrollArea::vertical().max_height(360.0).show(ui, |ui| {
+        for row in found {
+            let mut button = Button::new(row.name).stroke(Stroke::NONE).min_size(eframe::egui::vec2(ui.available_width(), 0.0));
+            if let Some(shortcut) = &row.shortcut {
+                button = button.shortcut_text(ui.ctx().format_shortcut(shortcut));
+            }
+            if ui.add(button).on_hover_text(row.help).clicked() {
+                desk.ask(Command::Dismiss);
+                desk.ask(row.command.clone());
+            }
+        }
+    });
+}
+
+fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
+    ui.horizontal(content);
+}
+
+/// The button that is meant.
+fn primary(ui: &Ui, text: &str) -> Button<'static> {
+    let palette = palette(ui);
+    Button::new(RichText::new(text).color(palette.panel).strong()).fill(palette.accent)
+}

@@ -1,0 +1,103 @@
+//! The line above the plots: which curves are shown, and what they read under the pointer.
+
+use eframe::egui::{self, Align2, Rect, Sense, Ui, WidgetInfo, Role, pos2, vec2};
+
+use super::axis;
+use super::bode;
+use super::command::{Command, Curve};
+use super::plot;
+use super::theme::{self, palette};
+use super::view::Desk;
+use crate::quantity::{self, Unit};
+
+/// Curves in the order of the legend, with their names.
+const CURVES: [(Curve, &str); 3] = [(Curve::Plant, "plant"), (Curve::Compensator, "compensator"), (Curve::Loop, "loop")];
+
+/// Draws the legend; pressing a name shows or hides its curve.
+pub(super) fn legend_ui(ui: &mut Ui, head: Rect, desk: &mut Desk<'_>) {
+    let slot = head.width() / 3.35;
+    for (index, (curve, name)) in (0_u8..).zip(CURVES) {
+        let left = head.left() + slot * f32::from(index);
+        let rect = Rect::from_min_size(pos2(left, head.top()), vec2(slot - 6.0, head.height() - 3.0));
+        curve_ui(ui, rect, curve, name, desk);
+    }
+    let rect = Rect::from_min_max(pos2(head.left() + slot * 3.0, head.top()), head.max - vec2(0.0, 3.0));
+    band_ui(ui, rect, desk);
+}
+
+fn curve_ui(ui: &mut Ui, rect: Rect, curve: Curve, name: &str, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let shown = desk.view.shows(curve);
+    let pen = bode::pen(curve, palette);
+    let ink = if shown { pen.colour } else { palette.weak.gamma_multiply(0.6) };
+    let painter = ui.painter();
+    let middle = rect.center().y;
+    plot::sample(painter, pos2(rect.left(), middle), 24.0, plot::Pen { colour: ink, ..pen });
+    let text = painter.text(pos2(rect.left() + 30.0, middle), Align2::LEFT_CENTER, name, theme::strong(12.0), ink);
+    let mut end = text.right();
+    if let (true, Some(reading)) = (shown, reading(desk, curve)) {
+        let at = pos2(text.right() + 8.0, middle);
+        end = painter.text(at, Align2::LEFT_CENTER, reading, theme::small(), palette.ink).right();
+    }
+    let press = Rect::from_min_max(rect.min, pos2(end.max(text.right()) + 4.0, rect.bottom()));
+    let response = ui.interact(press, ui.scope_id().with(("curve", name)), Sense::click());
+    let label = format!("Curve of the {name}");
+    response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, shown, &label));
+    focus_ring(ui, &response);
+    if response.on_hover_text(help(curve)).clicked() {
+        desk.ask(Command::Toggle(curve));
+    }
+}
+
+fn band_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let painter = ui.painter();
+    let middle = rect.center().y;
+    let swatch = Rect::from_min_size(pos2(rect.left(), middle - 5.0), vec2(14.0, 10.0));
+    let ink = if desk.view.band { palette.weak } else { palette.weak.gamma_multiply(0.5) };
+    painter.rect_filled(swatch, 2.0, palette.band);
+    let text = painter.text(pos2(rect.left() + 19.0, middle), Align2::LEFT_CENTER, "all nine", theme::small(), ink);
+    let press = Rect::from_min_max(rect.min, pos2(text.right() + 3.0, rect.bottom()));
+    let response = ui.interact(press, ui.scope_id().with("band"), Sense::click());
+    let shown = desk.view.band;
+    response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, shown, "Band of the nine conditions"));
+    focus_ring(ui, &response);
+    let help = "The loop at all nine conditions of input voltage and load lies within this band.";
+    if response.on_hover_text(help).clicked() {
+        desk.ask(Command::ToggleBand);
+    }
+}
+
+/// A ring around what has the keyboard.
+pub(super) fn focus_ring(ui: &Ui, response: &egui::Response) {
+    if response.has_focus() {
+        let stroke = egui::Stroke::new(1.5, palette(ui).accent);
+        ui.painter().rect_stroke(response.rect.expand(1.0), 4.0, stroke, egui::StrokeKind::Outside);
+    }
+}
+
+fn help(curve: Curve) -> &'static str {
+    match curve {
+        Curve::Plant => "Control voltage to output voltage, modulator included. Press to show or hide.",
+        Curve::Compensator => "Output voltage to control voltage, its inversion taken out. Press to show or hide.",
+        Curve::Loop => "Loop gain: plant times compensator, delay included. Press to show or hide.",
+    }
+}
+
+/// Gain and phase of a curve under the pointer.
+fn reading(desk: &Desk<'_>, curve: Curve) -> Option<String> {
+    let frequency_hz = desk.view.cursor_hz?;
+    let detail = desk.session.analysis()?.shown.as_ref().ok()?;
+    let (gain_db, phase_deg) = bode::of(&detail.curves, curve);
+    let at = frequency_hz.log10();
+    let log_hz = &desk.session.drawing().log_hz;
+    let gain = axis::interpolate(log_hz, gain_db, at)?;
+    let phase = axis::interpolate(log_hz, phase_deg, at)?;
+    let gain = quantity::print_digits(round(gain), Unit::Decibel, 4);
+    let phase = quantity::print_digits(round(phase), Unit::Degree, 4);
+    Some(format!("{gain}   {phase}"))
+}
+
+fn round(value: f64) -> f64 {
+    (value * 10.0).round() / 10.0
+}

@@ -1,0 +1,122 @@
+//! The compensator's panel: network, amplifier, its parts with their locks, rounding to preferred values.
+
+use eframe::egui::{self, Align, Layout, Rect, RichText, Sense, Stroke, StrokeKind, Ui, WidgetInfo, Role, pos2, vec2};
+
+use super::command::Command;
+use super::form;
+use super::theme::{self, palette};
+use super::view::Desk;
+use crate::compensator::Part;
+use crate::quantity::Entry;
+
+/// Draws the panel.
+pub(super) fn parts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    heading_ui(ui, desk);
+    ui.add_space(3.0);
+    let parts: Vec<_> = desk.session.design().entries().into_iter().filter(|entry| is_part(entry.path)).collect();
+    let room = ui.available_width();
+    for pair in parts.chunks(2) {
+        ui.allocate_ui_with_layout(vec2(room, theme::ROW), Layout::left_to_right(Align::Center), |ui| {
+            ui.spacing_mut().item_spacing.x = 3.0;
+            for entry in pair {
+                part_ui(ui, entry, (room - 10.0) / 2.0, desk);
+                ui.add_space(4.0);
+            }
+        });
+        for entry in pair {
+            form::problem_ui(ui, entry.path, desk);
+        }
+    }
+    ui.add_space(3.0);
+    round_ui(ui, desk);
+    egui::CollapsingHeader::new(RichText::new("Divider, amplifier, anchor").color(palette(ui).weak))
+        .id_salt("compensator entries")
+        .show_unindented(ui, |ui| {
+            form::section_ui(ui, "compensator", |path| !is_part(path) && !in_heading(path), desk);
+        });
+}
+
+fn is_part(path: &str) -> bool {
+    Part::ALL.iter().any(|part| part.path() == path)
+}
+
+/// Choices that stand in the heading or in the line of rounding.
+fn in_heading(path: &str) -> bool {
+    matches!(path, "compensator.type" | "compensator.amplifier") || path.starts_with("compensator.series.")
+}
+
+fn heading_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    ui.horizontal(|ui| {
+        ui.label(RichText::new("Compensator").font(theme::strong(13.5)));
+        ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
+            for path in ["compensator.amplifier", "compensator.type"] {
+                if let Some(choice) = desk.session.design().choice_rows().into_iter().find(|row| row.path == path) {
+                    form::choice_ui(ui, choice, 40.0, desk);
+                }
+            }
+        });
+    });
+}
+
+/// Name of a part without its explanation: "R2" of "R2, sets the first zero".
+pub(super) fn short_name(entry: &Entry) -> &'static str {
+    match entry.path {
+        "compensator.divider.upper" => "Rupper",
+        "compensator.divider.lower" => "Rlower",
+        "compensator.cff" => "Cff",
+        _ => entry.name.split(',').next().unwrap_or(entry.name),
+    }
+}
+
+fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) {
+    let active = desk.view.lane.and_then(|key| desk.session.lanes().iter().find(|lane| lane.key == key));
+    let lit = active.is_some_and(|lane| lane.parts.contains(&entry.path));
+    let palette = palette(ui);
+    let (rect, response) = ui.allocate_exact_size(vec2(46.0, theme::ROW), Sense::hover());
+    let ink = if lit { palette.compensator } else { palette.weak };
+    ui.painter().text(rect.left_center(), egui::Align2::LEFT_CENTER, short_name(entry), theme::body(), ink);
+    response.on_hover_text(format!("{}\n{}", entry.name, entry.help));
+    form::field_ui(ui, entry, width - 46.0 - 24.0, desk);
+    lock_ui(ui, entry, desk);
+}
+
+/// The padlock beside a part: closed, the part stays when lanes move and parts are rounded.
+fn lock_ui(ui: &mut Ui, entry: &'static Entry, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let locked = desk.session.design().locks.contains(entry.path);
+    let (rect, response) = ui.allocate_exact_size(vec2(16.0, theme::ROW), Sense::click());
+    let label = format!("Keep {}", short_name(entry));
+    response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, locked, &label));
+    super::legend::focus_ring(ui, &response);
+    let faint = if response.hovered() { palette.accent } else { palette.rail };
+    let colour = if locked { palette.accent } else { faint };
+    let body = Rect::from_center_size(rect.center() + vec2(0.0, 2.5), vec2(9.0, 7.0));
+    let shackle = Rect::from_min_max(pos2(body.left() + 1.8, body.top() - 5.0), pos2(body.right() - 1.8, body.top() + 2.0));
+    let lift = if locked { 0.0 } else { 2.0 };
+    ui.painter().rect_stroke(shackle.translate(vec2(lift, -lift * 0.5)), 2.5, Stroke::new(1.3, colour), StrokeKind::Middle);
+    ui.painter().rect_filled(body, 1.5, colour);
+    let help = if locked { "Kept: neither lanes nor rounding change it. Press to let it go." } else { "Press to keep this part as it is." };
+    if response.on_hover_text(help).clicked() {
+        desk.ask(Command::Lock {
+            path: entry.path,
+            locked: !locked,
+        });
+    }
+}
+
+fn round_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    ui.horizontal(|ui| {
+        ui.spacing_mut().item_spacing.x = 5.0;
+        let button = egui::Button::new(RichText::new("Round to").color(palette(ui).accent));
+        let response = ui.add(button).accessible_name("Round parts to their series");
+        if response.on_hover_text("Set all parts that are not kept to values of these series.").clicked() {
+            desk.ask(Command::RoundParts);
+        }
+        for (path, word) in [("compensator.series.resistors", "R"), ("compensator.series.capacitors", "C")] {
+            if let Some(choice) = desk.session.design().choice_rows().into_iter().find(|row| row.path == path) {
+                ui.label(RichText::new(word).color(palette(ui).weak));
+                form::choice_ui(ui, choice, 44.0, desk);
+            }
+        }
+    });
+}

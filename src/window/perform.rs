@@ -1,0 +1,299 @@
+//! Carrying out commands: what each does to the session, the view and the files.
+
+use std::path::{Path, PathBuf};
+
+use eframe::egui::{self, ViewportCommand};
+
+use super::app::App;
+use super::command::Command;
+use super::files::{self, Ask};
+use super::session::{BadText, Session};
+use super::view::{Dialog, Message};
+use crate::analysis::Level;
+use crate::compensator::{Compensator, Series};
+use crate::design::{self, Design};
+
+/// Step of the text size, and its least and greatest.
+const SIZE: (f32, f32, f32) = (0.1, 0.8, 2.0);
+
+impl App {
+    /// Carries out one command.
+    pub(super) fn perform(&mut self, command: Command, ctx: &egui::Context) {
+        match command {
+            Command::OpenPath(_) | Command::OpenSample(_) | Command::Quit if self.session.unsaved() => {
+                self.view.dialog = Some(Dialog::Unsaved(Box::new(command)));
+            }
+            Command::Open
+            | Command::OpenPath(_)
+            | Command::OpenSample(_)
+            | Command::Save
+            | Command::SaveAs
+            | Command::SavePath(_)
+            | Command::Browse
+            | Command::Quit
+            | Command::DiscardAndGoOn
+            | Command::SaveAndGoOn
+            | Command::Dismiss => self.perform_on_files(command, ctx),
+            Command::Undo
+            | Command::Redo
+            | Command::Enter { .. }
+            | Command::Choose { .. }
+            | Command::Title(_)
+            | Command::MoveLane { .. }
+            | Command::Lock { .. }
+            | Command::RoundParts
+            | Command::Mend(_) => self.perform_on_design(command),
+            other => self.perform_on_view(other, ctx),
+        }
+    }
+
+    fn perform_on_files(&mut self, command: Command, ctx: &egui::Context) {
+        match command {
+            Command::Open => self.view.dialog = Some(Dialog::Open { path: String::new() }),
+            Command::OpenPath(path) => self.open(&path),
+            Command::OpenSample(file) => self.open_sample(file),
+            Command::Save => match self.session.path().cloned() {
+                Some(path) => {
+                    self.save(path);
+                }
+                None => self.ask_where_to_save(),
+            },
+            Command::SaveAs => self.ask_where_to_save(),
+            Command::SavePath(path) => {
+                if self.save(path) {
+                    self.view.dialog = None;
+                    if let Some(next) = self.after_saving.take() {
+                        self.perform(next, ctx);
+                    }
+                }
+            }
+            Command::Browse => self.browse(ctx),
+            Command::Quit => {
+                self.leaving = true;
+                ctx.send_viewport_cmd(ViewportCommand::Close);
+            }
+            Command::DiscardAndGoOn => {
+                if let Some(Dialog::Unsaved(next)) = self.view.dialog.take() {
+                    self.perform_on_files(*next, ctx);
+                }
+            }
+            Command::SaveAndGoOn => self.save_and_go_on(ctx),
+            _ => {
+                self.after_saving = None;
+                self.view.dialog = None;
+            }
+        }
+    }
+
+    fn save_and_go_on(&mut self, ctx: &egui::Context) {
+        let Some(Dialog::Unsaved(next)) = self.view.dialog.take() else { return };
+        match self.session.path().cloned() {
+            Some(path) => {
+                if self.save(path) {
+                    self.perform_on_files(*next, ctx);
+                }
+            }
+            None => {
+                self.after_saving = Some(*next);
+                self.ask_where_to_save();
+            }
+        }
+    }
+
+    fn open(&mut self, path: &Path) {
+        match design::file::load(path) {
+            Ok(design) => {
+                self.start(design, Some(path.to_path_buf()));
+                self.view.message = None;
+            }
+            Err(error) => {
+                // Several entries may be at fault; the first says enough to find the file and the line.
+                let text = error.findings().first().map_or_else(|| error.to_string(), ToString::to_string);
+                self.fail(text);
+            }
+        }
+    }
+
+    fn open_sample(&mut self, file: &str) {
+        let Some(sample) = design::sample::all().iter().find(|sample| sample.file == file) else { return };
+        match sample.design() {
+            Ok(design) => self.start(design, None),
+            Err(error) => self.fail(error.to_string()),
+        }
+    }
+
+    fn start(&mut self, design: Design, path: Option<PathBuf>) {
+        self.session = Session::new(design, path);
+        self.view.dialog = None;
+        self.view.range_hz = None;
+        self.view.field = None;
+        self.view.typing = None;
+    }
+
+    fn ask_where_to_save(&mut self) {
+        let path = match self.session.path() {
+            Some(path) => path.display().to_string(),
+            None => files::proposed_name(&self.session.design().title),
+        };
+        self.view.dialog = Some(Dialog::SaveAs { path });
+    }
+
+    /// Saves; true when it worked. Says what happened either way.
+    fn save(&mut self, path: PathBuf) -> bool {
+        let design = self.session.design().clone();
+        match design::file::save(&design, &path) {
+            Ok(()) => {
+                let text = format!("Saved as {}.", path.display());
+                self.session.saved_as(path, design);
+                self.view.message = Some(Message { text, failed: false });
+                true
+            }
+            Err(error) => {
+                self.fail(error.findings().first().map_or_else(|| error.to_string(), ToString::to_string));
+                false
+            }
+        }
+    }
+
+    fn browse(&mut self, ctx: &egui::Context) {
+        let folder = self.session.path().and_then(|path| path.parent()).map(Path::to_path_buf);
+        let ask = match &self.view.dialog {
+            Some(Dialog::SaveAs { .. }) => Ask::Save(files::proposed_name(&self.session.design().title)),
+            _ => Ask::Open,
+        };
+        if let Err(error) = self.dialogs.ask(ask, folder, ctx) {
+            self.fail(format!("The file dialog could not be started: {error}. A path can be typed."));
+        }
+    }
+
+    /// Puts the answer of the system's dialog into the path that is being asked for.
+    pub(super) fn take_file_answer(&mut self) {
+        if let Some(Some(chosen)) = self.dialogs.answer()
+            && let Some(Dialog::Open { path } | Dialog::SaveAs { path }) = &mut self.view.dialog
+        {
+            *path = chosen.display().to_string();
+        }
+    }
+
+    fn fail(&mut self, text: String) {
+        self.view.message = Some(Message { text, failed: true });
+    }
+
+    fn perform_on_design(&mut self, command: Command) {
+        let session = &mut self.session;
+        match command {
+            Command::Undo => session.undo(),
+            Command::Redo => session.redo(),
+            Command::Enter { path, text } => enter(session, path, text),
+            Command::Choose { path, key } => {
+                let name = design::choice(path).map_or("choice", |choice| choice.name);
+                session.change(&format!("Choose {}", name.to_lowercase()), None, |document| {
+                    // The key comes from the table's own options.
+                    let _ = document.design.set_from_text(path, key);
+                });
+            }
+            Command::Title(title) => session.change("Enter the title", None, |document| document.design.title = title),
+            Command::MoveLane {
+                key,
+                frequency_hz,
+                gesture,
+            } => session.move_lane(key, frequency_hz, gesture),
+            Command::Lock { path, locked } => {
+                let name = if locked { "Keep a part" } else { "Let a part go" };
+                session.change(name, None, |document| {
+                    if locked {
+                        document.design.locks.insert(path.to_owned());
+                    } else {
+                        document.design.locks.remove(path);
+                    }
+                });
+            }
+            Command::RoundParts => round_parts(session),
+            Command::Mend(remedy) => session.change(&remedy.label, None, |document| {
+                for (path, key) in &remedy.choices {
+                    let _ = document.design.set_from_text(path, key);
+                }
+                for (path, value) in &remedy.values {
+                    let _ = document.design.values.set(path, *value);
+                    document.bad_texts.remove(path);
+                }
+            }),
+            _ => {}
+        }
+    }
+
+    fn perform_on_view(&mut self, command: Command, ctx: &egui::Context) {
+        let view = &mut self.view;
+        match command {
+            Command::Show(input, load) => self.session.show(input, load),
+            Command::NextCondition => self.session.step_condition(1),
+            Command::PreviousCondition => self.session.step_condition(8),
+            Command::Toggle(curve) => view.toggle(curve),
+            Command::ToggleBand => view.band = !view.band,
+            Command::WholeRange => view.range_hz = None,
+            Command::Hold => self.session.hold(),
+            Command::DropHeld => self.session.drop_held(),
+            Command::Theme(theme) => {
+                view.theme = theme;
+                ctx.set_theme(theme);
+            }
+            Command::Larger => scale(ctx, SIZE.0),
+            Command::Smaller => scale(ctx, -SIZE.0),
+            Command::NormalSize => ctx.set_zoom_factor(1.0),
+            Command::ToggleStage => view.stage_column = !view.stage_column,
+            Command::ToggleReadouts => view.readout_column = !view.readout_column,
+            Command::ListCommands => view.dialog = Some(Dialog::Commands { search: String::new() }),
+            _ => {}
+        }
+    }
+}
+
+fn scale(ctx: &egui::Context, by: f32) {
+    ctx.set_zoom_factor((ctx.zoom_factor() + by).clamp(SIZE.1, SIZE.2));
+}
+
+/// Takes text over for an entry: a number, or text that stays in its field with the reason.
+fn enter(session: &mut Session, path: &'static str, text: String) {
+    let name = design::entry(path).map_or(path, |entry| entry.name);
+    session.change(&format!("Enter {}", name.to_lowercase()), None, |document| {
+        match document.design.set_from_text(path, &text) {
+            Ok(()) => {
+                document.bad_texts.remove(path);
+            }
+            Err(finding) => {
+                document.bad_texts.insert(path.to_owned(), BadText { text, finding });
+            }
+        }
+    });
+}
+
+fn round_parts(session: &mut Session) {
+    session.change("Round parts to their series", None, |document| {
+        let design = &mut document.design;
+        if let Ok(compensator) = Compensator::from_values(&design.values, &design.choices) {
+            let series = |path: &str| design.choices.get(path).and_then(Series::from_key).unwrap_or(Series::Exact);
+            let (resistors, capacitors) = (series("compensator.series.resistors"), series("compensator.series.capacitors"));
+            compensator.rounded(resistors, capacitors, &design.locks).write(&mut design.values);
+        }
+    });
+}
+
+/// The condition `steps` further in the list of nine, from the end on from the start.
+pub(super) fn condition_after(shown: (Level, Level), steps: usize) -> (Level, Level) {
+    let all: Vec<_> = Level::ALL.iter().flat_map(|input| Level::ALL.iter().map(move |load| (*input, *load))).collect();
+    let at = all.iter().position(|levels| *levels == shown).unwrap_or(0);
+    all.get((at + steps) % all.len()).copied().unwrap_or(shown)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_nine_conditions_go_round() {
+        let first = (Level::Least, Level::Least);
+        assert_eq!(condition_after(first, 1), (Level::Least, Level::Nominal));
+        assert_eq!(condition_after(first, 8), (Level::Greatest, Level::Greatest));
+        assert_eq!(condition_after(condition_after(first, 8), 1), first);
+    }
+}

@@ -1,0 +1,208 @@
+//! Read-outs: numbers decisions are made on, each with its worst condition, its requirement and the distance to it.
+
+use eframe::egui::{Align2, Color32, Painter, Rect, Sense, Ui, WidgetInfo, Role, pos2, vec2};
+
+use super::command::Command;
+use super::marks;
+use super::theme::{self, Palette, palette};
+use super::view::Desk;
+use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict};
+use crate::quantity::{self, Unit};
+
+/// Height of a read-out with its requirement [points].
+const TALL: f32 = 50.0;
+/// Height of a read-out in a line [points].
+const SHORT: f32 = 19.0;
+/// Read-outs that stand large even while nothing is asked of them.
+const LARGE: [&str; 4] = ["crossover", "phase-margin", "gain-margin", "modulus-margin"];
+
+/// Draws all read-outs.
+pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let Some(analysis) = desk.session.analysis() else { return };
+    let (large, small): (Vec<_>, Vec<_>) =
+        analysis.readouts.iter().partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty());
+    for readout in large {
+        large_ui(ui, readout, analysis, desk);
+    }
+    for readout in small {
+        small_ui(ui, readout, analysis, desk);
+    }
+}
+
+fn value_text(readout: &Readout) -> String {
+    match readout.value {
+        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        None => readout.absent.to_owned(),
+    }
+}
+
+/// Angles and decibels to a tenth: more is noise to whoever decides.
+fn trimmed(value: f64, unit: Unit) -> f64 {
+    match unit {
+        Unit::Degree | Unit::Decibel => (value * 10.0).round() / 10.0,
+        _ => value,
+    }
+}
+
+/// The condition in a few letters: "9 V, 1.5 A".
+pub(super) fn short_condition(analysis: &Analysis, index: usize) -> String {
+    analysis.conditions.get(index).map_or_else(String::new, |result| {
+        let condition = &result.condition;
+        format!(
+            "{}, {}",
+            quantity::print_digits(condition.input_voltage, Unit::Volt, 3),
+            quantity::print_digits(condition.load_current, Unit::Ampere, 3)
+        )
+    })
+}
+
+/// Worst value over the nine conditions, with where it is.
+fn worst_text(readout: &Readout, analysis: &Analysis) -> Option<String> {
+    let worst = readout.worst.as_ref()?;
+    let value = match worst.value {
+        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        None => "none".to_owned(),
+    };
+    Some(format!("{value} at {}", short_condition(analysis, worst.index)))
+}
+
+fn ink(readout: &Readout, analysis: &Analysis, palette: &Palette) -> Color32 {
+    if readout.greyed {
+        palette.held
+    } else if marks::misses(readout, analysis) {
+        palette.amber
+    } else {
+        palette.ink
+    }
+}
+
+fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let verdict = decisive(readout);
+    let height = if verdict.is_some() { TALL } else { TALL - 8.0 };
+    let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), height), Sense::click());
+    let painter = ui.painter();
+    painter.text(rect.left_top() + vec2(0.0, 1.0), Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
+    let value = value_text(readout);
+    let at = rect.left_top() + vec2(0.0, 14.0);
+    painter.text(at, Align2::LEFT_TOP, &value, theme::figure(), ink(readout, analysis, palette));
+    if let Some(worst) = worst_text(readout, analysis) {
+        let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
+        let colour = if missed { palette.amber } else { palette.weak };
+        let at = rect.right_top() + vec2(0.0, 9.0);
+        painter.text(at, Align2::RIGHT_TOP, format!("worst {worst}"), theme::small(), colour);
+    }
+    if let Some(verdict) = verdict {
+        let colour = if verdict.met { palette.good } else { palette.amber };
+        let at = rect.right_top() + vec2(0.0, 24.0);
+        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), theme::small(), colour);
+        bar(painter, rect, verdict, palette);
+    }
+    announce(ui, &response, readout, &value);
+    let clicked = response.clicked();
+    response.on_hover_text(explain(readout));
+    if let (true, Some(worst)) = (clicked, &readout.worst) {
+        show_condition(worst.index, desk);
+    }
+}
+
+/// The requirement that decides: a missed one first, else the one with least to spare.
+fn decisive(readout: &Readout) -> Option<&RequirementVerdict> {
+    readout.requirements.iter().min_by(|one, other| {
+        one.met.cmp(&other.met).then(spare(one).total_cmp(&spare(other)))
+    })
+}
+
+/// How much is to spare, as a share of the limit; negative when missed.
+fn spare(verdict: &RequirementVerdict) -> f64 {
+    let Some(value) = verdict.value else { return -1.0 };
+    let scale = verdict.limit.abs().max(f64::MIN_POSITIVE);
+    match verdict.kind {
+        LimitKind::AtLeast => (value - verdict.limit) / scale,
+        LimitKind::AtMost => (verdict.limit - value) / scale,
+    }
+}
+
+fn verdict_text(verdict: &RequirementVerdict) -> String {
+    let way = match verdict.kind {
+        LimitKind::AtLeast => "at least",
+        LimitKind::AtMost => "at most",
+    };
+    let limit = quantity::print_digits(verdict.limit, verdict.unit, 3);
+    match verdict.value {
+        None => format!("{way} {limit}: {}", verdict.reason),
+        Some(value) => {
+            let apart = quantity::print_digits(trimmed((value - verdict.limit).abs(), verdict.unit), verdict.unit, 2);
+            let word = if verdict.met { "to spare" } else { "missing" };
+            format!("{way} {limit}, {apart} {word}")
+        }
+    }
+}
+
+/// A bar that fills up to the limit in its middle and beyond it, so that the distance is seen before it is read.
+fn bar(painter: &Painter, rect: Rect, verdict: &RequirementVerdict, palette: &Palette) {
+    let rail = Rect::from_min_max(pos2(rect.left(), rect.bottom() - 8.0), pos2(rect.right(), rect.bottom() - 5.0));
+    painter.rect_filled(rail, 1.5, palette.rail);
+    let share = (0.5 + 0.5 * spare(verdict)).clamp(0.02, 1.0);
+    let colour = if verdict.met { palette.good } else { palette.amber };
+    let right = rail.left() + rail.width() * super::axis::narrow(share);
+    painter.rect_filled(rail.with_max_x(right), 1.5, colour);
+    let middle = Rect::from_center_size(rail.center(), vec2(1.5, 9.0));
+    painter.rect_filled(middle, 0.0, palette.weak);
+}
+
+fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk<'_>) {
+    let palette = palette(ui);
+    let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), SHORT), Sense::click());
+    let painter = ui.painter().with_clip_rect(rect);
+    painter.text(rect.left_center(), Align2::LEFT_CENTER, readout.name, theme::small(), palette.weak);
+    let value = value_text(readout);
+    let end = pos2(rect.left() + rect.width() * 0.62, rect.center().y);
+    painter.text(end, Align2::RIGHT_CENTER, &value, theme::body(), ink(readout, analysis, palette));
+    if let Some(worst) = &readout.worst {
+        let text = match worst.value {
+            Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+            None => "none".to_owned(),
+        };
+        painter.text(rect.right_center(), Align2::RIGHT_CENTER, format!("worst {text}"), theme::small(), palette.weak);
+    }
+    announce(ui, &response, readout, &value);
+    let clicked = response.clicked();
+    response.on_hover_text(format!("{}{}", explain(readout), worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"))));
+    if let (true, Some(worst)) = (clicked, &readout.worst) {
+        show_condition(worst.index, desk);
+    }
+}
+
+fn announce(ui: &Ui, response: &eframe::egui::Response, readout: &Readout, value: &str) {
+    super::legend::focus_ring(ui, response);
+    response.widget_info(|| {
+        let mut info = WidgetInfo::labeled(Role::Button, true, readout.name);
+        info.current_text_value = Some(value.to_owned());
+        info
+    });
+    ui.ctx().accesskit_node_builder(response.id, |node| node.set_value(value));
+}
+
+fn explain(readout: &Readout) -> String {
+    let mut text = readout.help.to_owned();
+    for verdict in &readout.requirements {
+        let scope = if verdict.over_all_conditions { "all conditions" } else { "nominal condition" };
+        text += &format!("\nasked of {scope}: {}", verdict_text(verdict));
+        if !verdict.condition.is_empty() {
+            text += &format!(" ({})", verdict.condition);
+        }
+    }
+    if let Some(worst) = &readout.worst {
+        text += &format!("\nPress to show the worst condition: {}.", worst.condition);
+    }
+    text
+}
+
+/// Shows one of the nine conditions.
+pub(super) fn show_condition(index: usize, desk: &mut Desk<'_>) {
+    let levels = desk.session.analysis().and_then(|analysis| analysis.conditions.get(index)?.condition.levels);
+    if let Some((input, load)) = levels {
+        desk.ask(Command::Show(input, load));
+    }
+}

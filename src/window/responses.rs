@@ -1,0 +1,182 @@
+//! Closed-loop responses over frequency: output impedance, line to output, reference to output; open loop dotted beside.
+
+use eframe::egui::{self, Align2, Rect, Stroke, Ui, pos2, vec2};
+
+use super::axis::{self, Axis, DecadeLine, decade_lines};
+use super::drawing::extent;
+use super::plot::{self, Pen, Plot};
+use super::steps;
+use super::theme::{self, LineStyle, Palette, palette};
+use super::view::{ClosedLoop, Desk};
+use crate::analysis::Curves;
+use crate::quantity::{self, Unit};
+
+/// Draws heading and plot into a rectangle.
+pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
+    heading_ui(ui, Rect::from_min_size(rect.min, vec2(rect.width(), steps::HEADING)), desk);
+    let palette = palette(ui);
+    let frame = steps::frame_of(rect);
+    let detail = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok());
+    let Some(detail) = detail else {
+        steps::empty(ui, frame, "No response at this condition.", palette);
+        return;
+    };
+    let curves = &detail.curves;
+    let (closed, open, unit) = chosen(curves, desk.view.closed_loop);
+    let (from, to) = super::bode::frequency_range(desk);
+    let plot = Plot {
+        rect: frame,
+        x: Axis::logarithmic(from, to, frame.left(), frame.right()),
+        y: value_axis(frame, closed, open, unit),
+    };
+    grid(ui, &plot, unit, palette);
+    let mut painter = ui.painter().clone();
+    painter.multiply_opacity(if desk.session.stale() { 0.4 } else { 1.0 });
+    let log_hz = &desk.session.drawing().log_hz;
+    let inner = |values: &[f64]| -> Vec<f64> {
+        if unit == Unit::Ohm { values.iter().map(|value| value.log10()).collect() } else { values.to_vec() }
+    };
+    let inner_plot = Plot {
+        y: inner_axis(&plot, unit),
+        ..plot
+    };
+    if let Some(open) = open {
+        inner_plot.curve(&painter, log_hz, &inner(open), open_pen(palette));
+    }
+    inner_plot.curve(&painter, log_hz, &inner(closed), closed_pen(palette));
+    if desk.view.closed_loop == ClosedLoop::Impedance {
+        peak(&painter, &plot, curves, palette);
+    }
+    read(ui, &plot, (closed, open, unit), desk, palette);
+}
+
+fn closed_pen(palette: &Palette) -> Pen {
+    Pen {
+        colour: palette.loop_gain,
+        width: theme::CURVE,
+        style: LineStyle::Solid,
+    }
+}
+
+fn open_pen(palette: &Palette) -> Pen {
+    Pen {
+        colour: palette.held,
+        width: theme::THIN_CURVE,
+        style: LineStyle::Dashed,
+    }
+}
+
+fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
+    let inner = rect.with_min_x(rect.left() + theme::GUTTER - 2.0).with_max_x(rect.right() - theme::RIGHT_GUTTER);
+    let mut row = ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
+    row.spacing_mut().item_spacing.x = 10.0;
+    let names = [(ClosedLoop::Impedance, "Output impedance"), (ClosedLoop::Line, "Line to output"), (ClosedLoop::Reference, "Following")];
+    for (closed_loop, name) in names {
+        if steps::tab_ui(&mut row, name, desk.view.closed_loop == closed_loop) {
+            desk.view.closed_loop = closed_loop;
+        }
+    }
+}
+
+/// Closed-loop curve, open-loop curve and unit of what is shown.
+fn chosen(curves: &Curves, closed_loop: ClosedLoop) -> (&[f64], Option<&[f64]>, Unit) {
+    match closed_loop {
+        ClosedLoop::Impedance => (&curves.output_impedance_ohm, Some(&curves.open_loop_output_impedance_ohm), Unit::Ohm),
+        ClosedLoop::Line => (&curves.line_to_output_db, Some(&curves.open_loop_line_to_output_db), Unit::Decibel),
+        ClosedLoop::Reference => (&curves.reference_to_output_db, None, Unit::Decibel),
+    }
+}
+
+fn value_axis(frame: Rect, closed: &[f64], open: Option<&[f64]>, unit: Unit) -> Axis {
+    let all = closed.iter().chain(open.unwrap_or_default()).copied();
+    if unit == Unit::Ohm {
+        let (least, greatest) = extent(all.filter(|value| *value > 0.0)).unwrap_or((1e-3, 1.0));
+        let low = (least.log10() - 0.1).max(greatest.log10() - 6.0);
+        return Axis::logarithmic(10f64.powf(low), greatest * 1.6, frame.bottom(), frame.top());
+    }
+    let (least, greatest) = extent(all).unwrap_or((-40.0, 20.0));
+    Axis::linear(least.max(greatest - 140.0) - 4.0, greatest + 8.0, frame.bottom(), frame.top())
+}
+
+/// The value axis in its own measure, for curves given in it.
+fn inner_axis(plot: &Plot, unit: Unit) -> Axis {
+    let (low, high) = plot.y.range();
+    let (low, high) = if unit == Unit::Ohm { (low.log10(), high.log10()) } else { (low, high) };
+    Axis::linear(low, high, plot.rect.bottom(), plot.rect.top())
+}
+
+fn grid(ui: &Ui, plot: &Plot, unit: Unit, palette: &Palette) {
+    let painter = ui.painter();
+    plot.decades(painter, palette);
+    let (low, high) = plot.y.range();
+    if unit == Unit::Ohm {
+        let crowded = (high / low).log10() > 3.5;
+        for DecadeLine { value, digit } in decade_lines(low, high) {
+            if digit == 1 || !crowded {
+                plot.level(painter, value, if digit == 1 { palette.grid_strong } else { palette.grid });
+            }
+            if digit == 1 {
+                plot.level_label(painter, value, &quantity::print_digits(value, unit, 1), palette.weak);
+            }
+        }
+    } else {
+        let step = axis::nice_step(high - low, f64::from(plot.rect.height() / 24.0).max(1.0));
+        for value in axis::multiples(low, high, step) {
+            plot.level(painter, value, palette.grid);
+            plot.level_label(painter, value, &axis::grid_label(value, step, unit), palette.weak);
+        }
+    }
+    let (from, to) = plot.x.range();
+    for DecadeLine { value, digit } in decade_lines(from, to) {
+        if digit == 1 {
+            let at = pos2(plot.x.at(value).min(plot.rect.right() - 14.0), plot.rect.bottom() + 10.0);
+            painter.text(at, Align2::CENTER_CENTER, quantity::print_digits(value, Unit::Hertz, 1), theme::small(), palette.weak);
+        }
+    }
+    plot.frame(painter, palette);
+}
+
+/// Marks the greatest closed-loop output impedance.
+fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette) {
+    let pairs = curves.frequencies_hz.iter().zip(&curves.output_impedance_ohm);
+    let Some((frequency_hz, ohm)) = pairs.max_by(|one, other| one.1.total_cmp(other.1)) else { return };
+    if !plot.x.holds(*frequency_hz) {
+        return;
+    }
+    let at = plot.at(*frequency_hz, *ohm);
+    painter.circle_filled(at, 3.5, palette.good);
+    let text = format!("{} at {}", quantity::print_digits(*ohm, Unit::Ohm, 3), quantity::print_digits(*frequency_hz, Unit::Hertz, 3));
+    let align = if at.x > plot.rect.center().x { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
+    let x = if at.x > plot.rect.center().x { at.x - 10.0 } else { at.x + 10.0 };
+    let ground = palette.canvas.gamma_multiply(0.8);
+    plot::tag(painter, pos2(x, at.y - 2.0), align, &text, theme::strong(12.0), (palette.good, ground));
+}
+
+/// The linked line under the pointer, the values there, and what the lines mean.
+fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut Desk<'_>, palette: &Palette) {
+    let (closed, open, unit) = shown;
+    let painter = ui.painter().with_clip_rect(plot.rect);
+    let pointer = ui.input(|input| input.pointer.hover_pos()).filter(|at| plot.rect.contains(*at));
+    let cursor_hz = pointer.map(|at| plot.x.value(at.x)).or(desk.view.cursor_hz);
+    let log_hz = &desk.session.drawing().log_hz;
+    let value = |values: &[f64]| {
+        let value = axis::interpolate(log_hz, values, cursor_hz?.log10())?;
+        Some(format!("  {}", quantity::print_digits(value, unit, 3)))
+    };
+    if let Some(frequency_hz) = cursor_hz {
+        painter.vline(plot.x.at(frequency_hz), plot.rect.y_range(), Stroke::new(1.0, palette.weak.gamma_multiply(0.6)));
+    }
+    let entries = [(Some(closed), "closed loop", closed_pen(palette)), (open, "open loop", open_pen(palette))];
+    let mut y = plot.rect.bottom() - 12.0;
+    for (values, name, pen) in entries {
+        let Some(values) = values else { continue };
+        let text = format!("{name}{}", value(values).unwrap_or_default());
+        let ground = palette.canvas.gamma_multiply(0.85);
+        let rect = plot::tag(&painter, pos2(plot.rect.left() + 34.0, y), Align2::LEFT_CENTER, &text, theme::small(), (palette.weak, ground));
+        plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, pen);
+        y -= 15.0;
+    }
+    if let Some(at) = pointer {
+        desk.view.cursor_hz = Some(plot.x.value(at.x));
+    }
+}

@@ -1,0 +1,121 @@
+//! Opening the window, and saying what is missing where that fails.
+
+use std::fmt;
+use std::panic::{AssertUnwindSafe, catch_unwind};
+use std::path::PathBuf;
+use std::sync::{Arc, Mutex};
+
+use eframe::egui::{ViewportBuilder, vec2};
+
+use super::app::App;
+use crate::design::Design;
+
+/// Why the window could not be opened or went away.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub enum WindowError {
+    /// Neither an X11 nor a Wayland display is named in the environment.
+    NoDisplay,
+    /// The display is named but could not be reached, or a library to reach it is missing.
+    Display {
+        /// What the system said.
+        reason: String,
+    },
+    /// The display has no usable OpenGL.
+    Graphics {
+        /// What the system said.
+        reason: String,
+    },
+    /// The window stopped on an error of the program itself.
+    Stopped {
+        /// Where and why.
+        reason: String,
+    },
+}
+
+impl fmt::Display for WindowError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            WindowError::NoDisplay => write!(
+                f,
+                "no display: neither DISPLAY (X11) nor WAYLAND_DISPLAY (Wayland) is set. Start it from a desktop session, or ask the \
+                 same in the terminal: polewright check FILE"
+            ),
+            WindowError::Display { reason } => write!(
+                f,
+                "the display cannot be used: {reason}. Check that the display named by DISPLAY or WAYLAND_DISPLAY is running, and \
+                 that the libraries libX11, libXcursor, libXi, libxkbcommon and libxkbcommon-x11 (X11) or libwayland-client and \
+                 libxkbcommon (Wayland) are installed"
+            ),
+            WindowError::Graphics { reason } => write!(
+                f,
+                "the display has no usable OpenGL: {reason}. Install the GL driver of the graphics card, or Mesa's software driver \
+                 (libGL, libEGL)"
+            ),
+            WindowError::Stopped { reason } => write!(f, "the window stopped: {reason}"),
+        }
+    }
+}
+
+impl std::error::Error for WindowError {}
+
+/// Opens the window on a design and works until it is closed.
+///
+/// # Errors
+/// When there is no display, a library is missing, or the display has no OpenGL.
+pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
+    if !display_named() {
+        return Err(WindowError::NoDisplay);
+    }
+    let viewport = ViewportBuilder::default()
+        .with_title("Polewright")
+        .with_app_id("polewright")
+        .with_inner_size(vec2(1280.0, 800.0))
+        .with_min_inner_size(vec2(760.0, 520.0))
+        .with_drag_and_drop(true);
+    let options = eframe::NativeOptions {
+        viewport,
+        ..eframe::NativeOptions::default()
+    };
+    let open = move || {
+        let create: eframe::AppCreator<'_> = Box::new(|cc| Ok(Box::new(App::new(&cc.egui_ctx, design, path))));
+        eframe::run_native("polewright", options, create)
+    };
+    caught(open).and_then(|outcome| outcome.map_err(|error| explain(&error)))
+}
+
+/// On Linux and the BSDs a display is named in the environment; elsewhere the system always has one.
+fn display_named() -> bool {
+    let named = |name: &str| std::env::var_os(name).is_some_and(|value| !value.is_empty());
+    cfg!(any(windows, target_os = "macos")) || named("DISPLAY") || named("WAYLAND_DISPLAY") || named("WAYLAND_SOCKET")
+}
+
+/// The windowing crates panic where a library is missing; the message is kept and told as an error.
+fn caught<T>(open: impl FnOnce() -> T) -> Result<T, WindowError> {
+    let told = Arc::new(Mutex::new(String::new()));
+    let teller = Arc::clone(&told);
+    let usual = std::panic::take_hook();
+    std::panic::set_hook(Box::new(move |info| {
+        if let Ok(mut text) = teller.lock() {
+            *text = info.to_string();
+        }
+    }));
+    let outcome = catch_unwind(AssertUnwindSafe(open));
+    std::panic::set_hook(usual);
+    outcome.map_err(|_| {
+        let reason = told.lock().map(|text| text.replace('\n', " ")).unwrap_or_default();
+        if reason.contains("could not be loaded") || reason.contains("xkbcommon") || reason.contains(".so") {
+            WindowError::Display { reason }
+        } else {
+            WindowError::Stopped { reason }
+        }
+    })
+}
+
+fn explain(error: &eframe::Error) -> WindowError {
+    let reason = error.to_string();
+    match error {
+        eframe::Error::Winit(_) | eframe::Error::WinitEventLoop(_) => WindowError::Display { reason },
+        eframe::Error::Glutin(_) | eframe::Error::NoGlutinConfigs(..) | eframe::Error::OpenGL(_) => WindowError::Graphics { reason },
+        _ => WindowError::Stopped { reason },
+    }
+}

@@ -1,0 +1,210 @@
+//! What the window shows and how, apart from the work itself: none of it is saved with a design or undone.
+
+use eframe::egui::{Rect, ThemePreference};
+
+use super::command::{Command, Curve};
+use super::history::Gesture;
+use super::session::Session;
+
+/// Event whose time response is shown.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub(super) enum Event {
+    /// Rise in load current.
+    #[default]
+    Load,
+    /// Rise in input voltage.
+    Line,
+    /// Rise of the reference.
+    Reference,
+}
+
+/// Closed-loop response shown over frequency.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub(super) enum ClosedLoop {
+    /// Output impedance.
+    #[default]
+    Impedance,
+    /// Input voltage to output voltage.
+    Line,
+    /// Reference to output voltage.
+    Reference,
+}
+
+/// A question or a list over the window.
+#[derive(Clone, Debug, PartialEq)]
+pub(super) enum Dialog {
+    /// Which file or sample to open.
+    Open {
+        /// Typed path.
+        path: String,
+    },
+    /// Under which path to save.
+    SaveAs {
+        /// Typed path.
+        path: String,
+    },
+    /// Unsaved changes stand before this.
+    Unsaved(Box<Command>),
+    /// The searchable list of commands.
+    Commands {
+        /// What is searched for.
+        search: String,
+    },
+}
+
+/// A number being typed in the place of a lane's value.
+#[derive(Clone, Debug)]
+pub(super) struct Typing {
+    /// Key of the lane.
+    pub lane: &'static str,
+    /// What is typed.
+    pub text: String,
+    /// Why it cannot be read.
+    pub error: Option<String>,
+}
+
+/// A handle being dragged.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Drag {
+    /// Where the handle stood when it was taken [points].
+    pub handle_x: f32,
+    /// Where the pointer stood then [points].
+    pub pointer_x: f32,
+    /// The gesture its moves belong to.
+    pub gesture: Gesture,
+}
+
+/// Which field is edited, and what stands in it.
+#[derive(Clone, Debug)]
+pub(super) struct Field {
+    /// Path of the entry.
+    pub path: &'static str,
+    /// What stands in it.
+    pub text: String,
+}
+
+/// A message about something that failed or was done outside the document.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Message {
+    /// The message.
+    pub text: String,
+    /// True when something failed.
+    pub failed: bool,
+}
+
+/// State of the view.
+#[derive(Debug)]
+pub(super) struct View {
+    /// Curves shown.
+    pub plant: bool,
+    pub compensator: bool,
+    pub loop_gain: bool,
+    /// Band over the nine conditions.
+    pub band: bool,
+    /// Columns beside the plots.
+    pub stage_column: bool,
+    pub readout_column: bool,
+    /// Frequencies shown [Hz]; the whole range when absent.
+    pub range_hz: Option<(f64, f64)>,
+    /// Width of the Bode plots at the last frame [points].
+    pub plot_width: f32,
+    /// Ranges of the gain and phase axes, kept still while a handle is dragged.
+    pub axes: Option<((f64, f64), (f64, f64))>,
+    /// Time response shown.
+    pub event: Event,
+    /// Closed-loop response shown.
+    pub closed_loop: ClosedLoop,
+    /// Frequency under the pointer [Hz].
+    pub cursor_hz: Option<f64>,
+    /// Handle being dragged.
+    pub drag: Option<Drag>,
+    /// The last gesture given out.
+    pub gesture: Gesture,
+    /// Lane whose handle is dragged, has the focus or is under the pointer.
+    pub lane: Option<&'static str>,
+    /// Lane value being typed.
+    pub typing: Option<Typing>,
+    /// Field being edited.
+    pub field: Option<Field>,
+    /// Title being edited.
+    pub title: Option<String>,
+    /// Path of an entry whose field is to be brought into view and given the keyboard.
+    pub seek: Option<String>,
+    /// Question or list over the window.
+    pub dialog: Option<Dialog>,
+    /// What was last said.
+    pub message: Option<Message>,
+    /// Colours.
+    pub theme: ThemePreference,
+    /// Where the gain plot was drawn in the last frame, for tests and for what is laid over it.
+    pub gain_rect: Rect,
+}
+
+impl Default for View {
+    fn default() -> Self {
+        View {
+            plant: true,
+            compensator: true,
+            loop_gain: true,
+            band: true,
+            stage_column: true,
+            readout_column: true,
+            range_hz: None,
+            plot_width: 640.0,
+            axes: None,
+            event: Event::default(),
+            closed_loop: ClosedLoop::default(),
+            cursor_hz: None,
+            drag: None,
+            gesture: Gesture::default(),
+            lane: None,
+            typing: None,
+            field: None,
+            title: None,
+            seek: None,
+            dialog: None,
+            message: None,
+            theme: ThemePreference::System,
+            gain_rect: Rect::NOTHING,
+        }
+    }
+}
+
+impl View {
+    /// Whether a curve is shown.
+    pub(super) fn shows(&self, curve: Curve) -> bool {
+        match curve {
+            Curve::Plant => self.plant,
+            Curve::Compensator => self.compensator,
+            Curve::Loop => self.loop_gain,
+        }
+    }
+
+    /// Shows a curve, or hides it.
+    pub(super) fn toggle(&mut self, curve: Curve) {
+        let shown = match curve {
+            Curve::Plant => &mut self.plant,
+            Curve::Compensator => &mut self.compensator,
+            Curve::Loop => &mut self.loop_gain,
+        };
+        *shown = !*shown;
+    }
+}
+
+/// What a drawing function gets: the work to read, the view to change, and where requests go.
+#[derive(Debug)]
+pub(super) struct Desk<'a> {
+    /// The document and its results.
+    pub session: &'a Session,
+    /// The view.
+    pub view: &'a mut View,
+    /// Requests for the next turn of `logic`.
+    pub send: &'a mut Vec<Command>,
+}
+
+impl Desk<'_> {
+    /// Asks for something.
+    pub(super) fn ask(&mut self, command: Command) {
+        self.send.push(command);
+    }
+}
