@@ -14,12 +14,25 @@ impl Zpk {
     /// # Errors
     /// [`LinearError::Improper`] with more zeros than poles, [`LinearError::NotFinite`].
     pub fn cascade(&self) -> Result<StateSpace, LinearError> {
-        let mut whole = StateSpace::constant(DMatrix::from_element(1, 1, 1.0), &["u"], &["y"])?;
-        for section in sections(self)? {
-            whole = whole.series(&section.state_space()?)?;
+        let sections = sections(self)?.iter().map(Section::state_space).collect::<Result<Vec<_>, _>>()?;
+        // Every section is brought to gain one at its poles, and what remains is shared evenly: no signal inside is much larger than another.
+        let mut levelled = Vec::with_capacity(sections.len());
+        let mut ln_gain = self.gain.abs().ln();
+        for (section, size) in sections {
+            let level = section.entry_at(0, 0, Complex::new(0.0, size)).map_or(1.0, Complex::norm);
+            let level = if level.is_normal() { level } else { 1.0 };
+            ln_gain += level.ln();
+            levelled.push((section, level));
         }
-        whole.c *= self.gain;
-        whole.d *= self.gain;
+        let share = (ln_gain / levelled.len().max(1) as f64).exp();
+        let unit =
+            if levelled.is_empty() { self.gain } else { f64::from(u8::from(self.gain != 0.0)).copysign(self.gain) };
+        let mut whole = StateSpace::constant(DMatrix::from_element(1, 1, unit), &["u"], &["y"])?;
+        for (mut section, level) in levelled {
+            section.c *= share / level;
+            section.d *= share / level;
+            whole = whole.series(&section)?;
+        }
         scale_states(whole)
     }
 }
@@ -106,8 +119,8 @@ fn sections(zpk: &Zpk) -> Result<Vec<Section>, LinearError> {
 }
 
 impl Section {
-    /// The section with leading coefficient 1.
-    fn state_space(&self) -> Result<StateSpace, LinearError> {
+    /// The section with leading coefficient 1, and the size of its poles [rad/s].
+    fn state_space(&self) -> Result<(StateSpace, f64), LinearError> {
         let (a, b, c, d) = match self.poles {
             Poles::One(p) => {
                 let (c, d) = self.zeros.first().map_or((1.0, 0.0), |z| (p - z.re, 1.0));
@@ -116,7 +129,12 @@ impl Section {
             Poles::Two(p, q) => self.two_real(p, q),
             Poles::Pair(p) => self.pair(p),
         };
-        StateSpace::new(a, b, c, DMatrix::from_element(1, 1, d), &["u"], &["y"])
+        let size = match self.poles {
+            Poles::One(p) => p.abs(),
+            Poles::Two(p, q) => p.abs().max(q.abs()),
+            Poles::Pair(p) => p.norm(),
+        };
+        StateSpace::new(a, b, c, DMatrix::from_element(1, 1, d), &["u"], &["y"]).map(|section| (section, size))
     }
 
     /// Numerator as `d·(s − p)(s − q) + n1·(s − p) + n0`, which needs no expanded product.

