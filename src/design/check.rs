@@ -251,3 +251,147 @@ fn in_form_order(mut problems: Vec<Finding>) -> Vec<Finding> {
     problems.sort_by_key(|problem| paths.iter().position(|path| *path == problem.place).unwrap_or(usize::MAX));
     problems
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::design::sample;
+
+    fn set(pairs: &[(&str, &str)]) -> Design {
+        let mut design = sample::built_in();
+        for (path, text) in pairs {
+            design.set_from_text(path, text).unwrap_or_else(|problem| panic!("{problem}"));
+        }
+        design
+    }
+
+    /// The only problem of the built-in design after these settings.
+    fn only_problem(pairs: &[(&str, &str)]) -> Finding {
+        let problems = set(pairs).check().expect_err("a problem");
+        assert_eq!(problems.len(), 1, "{problems:?}");
+        assert!(problems[0].is_problem() && problems[0].hint.is_some(), "{problems:?}");
+        problems[0].clone()
+    }
+
+    #[test]
+    fn unusable_numbers_are_problems_with_place_reason_and_hint() {
+        for (path, text, reason) in [
+            ("stage.inductor.inductance", "-1u", "above 0 H"),
+            ("stage.inductor.inductance", "0", "above 0 H"),
+            ("stage.inductor.inductance", "1e300", "beyond"),
+            ("stage.switching-frequency", "1e-300", "nearer to zero"),
+            ("control.duty.greatest", "1.5", "from 0 to 1"),
+            ("control.duty.greatest", "-0.1", "from 0 to 1"),
+            ("requirement.phase-margin.worst", "200", "at most 180°"),
+        ] {
+            let problem = if path == "control.duty.greatest" && text.starts_with('-') {
+                set(&[(path, text)]).check().expect_err("a problem").remove(1)
+            } else {
+                only_problem(&[(path, text)])
+            };
+            assert!(problem.place.starts_with(path.trim_end_matches(".greatest")), "{problem}");
+            assert!(problem.message.contains(reason), "{problem}");
+        }
+    }
+
+    #[test]
+    fn texts_that_are_no_numbers_change_nothing() {
+        let mut design = sample::built_in();
+        let before = design.clone();
+        for text in ["", "ten", "NaN", "inf", "4,7u", "10 V", "1e999"] {
+            let problem = design.set_from_text("stage.inductor.inductance", text).expect_err(text);
+            assert_eq!(problem.place, "stage.inductor.inductance");
+            assert!(problem.is_problem() && problem.hint.is_some());
+        }
+        assert!(
+            design
+                .set_from_text("stage.topology", "bosst")
+                .expect_err("slip")
+                .hint
+                .is_some_and(|h| h.contains("boost"))
+        );
+        assert!(
+            design
+                .set_from_text("stage.topolgy", "buck")
+                .expect_err("slip")
+                .hint
+                .is_some_and(|h| h.contains("stage.topology"))
+        );
+        assert_eq!(design, before);
+    }
+
+    #[test]
+    fn an_optional_row_is_cleared_by_an_empty_text() {
+        let mut design = sample::built_in();
+        let asked = design.check().expect("usable").requirements.len();
+        design.set_from_text("requirement.settling.worst", " ").expect("cleared");
+        assert_eq!(design.check().expect("usable").requirements.len(), asked - 1);
+    }
+
+    #[test]
+    fn outputs_out_of_the_topologys_reach_are_problems() {
+        assert_eq!(only_problem(&[("stage.output.voltage", "15")]).place, "stage.output.voltage");
+        assert!(only_problem(&[("stage.output.voltage", "15")]).message.contains("above the greatest input, 16 V"));
+        assert!(only_problem(&[("stage.topology", "buck")]).message.contains("below the input"));
+        assert!(set(&[("stage.topology", "buck-boost")]).check().is_ok());
+        let reference = only_problem(&[("compensator.reference", "30 V")]);
+        assert_eq!(reference.place, "compensator.reference");
+        assert!(reference.message.contains("only divides"));
+    }
+
+    #[test]
+    fn every_problem_is_reported_at_once_in_form_order() {
+        let mut design = set(&[("stage.input.least", "20"), ("stage.load.nominal", "-1"), ("compensator.r2", "0")]);
+        design.values.remove("stage.inductor.inductance");
+        design.choices.set("stage.load", "motor");
+        let problems = design.check().expect_err("five problems at least");
+        let places: Vec<&str> = problems.iter().map(|problem| problem.place.as_str()).collect();
+        for place in
+            ["stage.load", "stage.input.least", "stage.load.nominal", "stage.inductor.inductance", "compensator.r2"]
+        {
+            assert!(places.contains(&place), "{place} is not in {places:?}");
+        }
+        assert!(problems.iter().all(|problem| problem.hint.is_some()), "{problems:?}");
+        let empty = problems.iter().find(|p| p.place == "stage.inductor.inductance").expect("reported");
+        let remedy = empty.remedy.clone().expect("a usual value is offered");
+        for (path, value) in &remedy.values {
+            design.values.set(path, *value).expect("finite");
+        }
+        assert!(!design.check().expect_err("the others stay").iter().any(|p| p.place == "stage.inductor.inductance"));
+    }
+
+    #[test]
+    fn the_divider_decides_the_output_and_a_difference_is_a_notice_that_mends_itself() {
+        let mut design = set(&[("stage.output.voltage", "23 V")]);
+        let checked = design.check().expect("usable");
+        // 1.2 V · (1 + 38.3 kΩ / 2.02 kΩ) = 23.952 V.
+        assert!((checked.stage.output_voltage - 1.2 * (1.0 + 38.3 / 2.02)).abs() < 1e-12);
+        let notice = &checked.findings[0];
+        assert_eq!((notice.severity, notice.place.as_str()), (crate::finding::Severity::Notice, OUTPUT));
+        let remedy = notice.remedy.clone().expect("mends itself");
+        assert_eq!(remedy.label, "Set the output to 23.952 V");
+        for (path, value) in &remedy.values {
+            design.values.set(path, *value).expect("finite");
+        }
+        assert_eq!(design.check().expect("usable").findings, []);
+        // Half a per cent either way passes without remark.
+        assert_eq!(set(&[("stage.output.voltage", "24.07 V")]).check().expect("usable").findings, []);
+        assert_eq!(set(&[("stage.output.voltage", "24.08 V")]).check().expect("usable").findings.len(), 1);
+    }
+
+    #[test]
+    fn a_missing_input_capacitor_is_a_notice() {
+        let findings = set(&[("stage.input-capacitor", "none")]).check().expect("usable").findings;
+        assert_eq!(findings[0].place, "stage.input-capacitor");
+    }
+
+    #[test]
+    fn choosing_fills_the_rows_that_come_to_apply() {
+        let mut design = Design::default();
+        assert_eq!(design.values.get("stage.bank.3.esr"), None);
+        design.set_from_text("stage.bank", "3").expect("an option");
+        assert!(design.values.get("stage.bank.3.esr").is_some());
+        assert!(design.entries().iter().any(|row| row.path == "stage.bank.3.esr"));
+        assert!(!design.entries().iter().any(|row| row.path == "stage.bank.4.esr"));
+    }
+}

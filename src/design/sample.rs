@@ -22,11 +22,43 @@ macro_rules! sample {
     };
 }
 
-static ALL: &[Sample] = &[sample!(
-    "gimbal-rail.ron",
-    "Gimbal rail",
-    "A finished boost, 9 to 16 V in, 24 V out, that meets all it is asked."
-)];
+static ALL: &[Sample] = &[
+    sample!("gimbal-rail.ron", "Gimbal rail", "A finished boost, 9 to 16 V in, 24 V out, that meets all it is asked."),
+    sample!(
+        "sensor-mast.ron",
+        "Sensor mast",
+        "A buck with ceramic capacitors only, type III, the ramp following the line."
+    ),
+    sample!(
+        "pump-controller.ron",
+        "Pump controller",
+        "A buck with one large electrolytic capacitor and a type II network."
+    ),
+    sample!(
+        "depth-sounder.ron",
+        "Depth sounder",
+        "A boost with ceramics beside a polymer capacitor: landmarks read off the model."
+    ),
+    sample!(
+        "trail-radio.ron",
+        "Trail radio",
+        "A steep boost whose right-half-plane zero comes near the crossover; one requirement is missed."
+    ),
+    sample!("lamp-driver.ron", "Lamp driver", "A 240 V boost with a diode, and the caution that belongs to it."),
+    sample!("negative-rail.ron", "Negative rail", "An inverting buck-boost with a constant-current load."),
+    sample!("camera-core.ron", "Camera core", "A synchronous buck around a transconductance amplifier, type II."),
+    sample!("clock-oven.ron", "Clock oven", "A slow loop: one capacitor, type I, crossing below the LC resonance."),
+    sample!(
+        "field-laptop.ron",
+        "Field laptop",
+        "A buck that feeds a constant-power load through three unlike branches."
+    ),
+    sample!(
+        "bench-exercise.ron",
+        "Bench exercise, unstable on purpose",
+        "An integrator that crosses above the LC resonance, to be mended."
+    ),
+];
 
 impl Sample {
     /// The design itself.
@@ -47,4 +79,58 @@ pub fn all() -> &'static [Sample] {
 pub fn built_in() -> Design {
     // A test reads every sample; a broken one would still leave a program that opens.
     ALL.first().and_then(|sample| sample.design().ok()).unwrap_or_default()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::design::file::write;
+    use crate::finding::Severity;
+    use std::collections::BTreeSet;
+
+    #[test]
+    fn every_sample_can_be_used_and_is_written_as_the_program_writes() {
+        for sample in all() {
+            let design = sample.design().unwrap_or_else(|error| panic!("{}: {error}", sample.file));
+            assert_eq!(design.title, sample.title, "{}", sample.file);
+            assert!(!design.notes.is_empty() && !sample.line.is_empty(), "{}", sample.file);
+            design.check().unwrap_or_else(|problems| panic!("{}: {problems:?}", sample.file));
+            let mut text = Vec::new();
+            write(&design, &mut text).expect("written");
+            assert_eq!(String::from_utf8(text).expect("UTF-8"), sample.ron, "{}", sample.file);
+        }
+    }
+
+    #[test]
+    fn every_file_is_listed_once() {
+        let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("sample-designs");
+        let name = |entry: std::io::Result<std::fs::DirEntry>| entry.expect("readable").file_name().into_string();
+        let files: BTreeSet<String> =
+            std::fs::read_dir(folder).expect("there").map(|entry| name(entry).expect("UTF-8")).collect();
+        let listed: BTreeSet<String> = all().iter().map(|sample| sample.file.to_owned()).collect();
+        assert_eq!(files, listed);
+        assert_eq!(listed.len(), all().len());
+    }
+
+    #[test]
+    fn the_built_in_design_has_nothing_to_remark() {
+        let checked = built_in().check().expect("usable");
+        assert_eq!(checked.findings, []);
+        assert!(checked.requirements.len() >= 8);
+    }
+
+    #[test]
+    fn high_voltage_is_cautioned_and_its_energy_told() {
+        let lamp = all().iter().find(|sample| sample.file == "lamp-driver.ron").expect("listed");
+        let design = lamp.design().expect("read");
+        let caution = design.check().expect("usable").findings.into_iter().find(|f| f.message.starts_with("Caution"));
+        let caution = caution.expect("240 V is above 60 V");
+        assert_eq!(caution.severity, Severity::Notice);
+        // ½·(2 × 47 µF)·(240.75 V)² = 2.724 J.
+        assert!(caution.message.contains("2.724 J"), "{}", caution.message);
+        for sample in all().iter().filter(|sample| sample.file != lamp.file) {
+            let findings = sample.design().expect("read").check().expect("usable").findings;
+            assert!(!findings.iter().any(|f| f.message.starts_with("Caution")), "{}", sample.file);
+        }
+    }
 }

@@ -144,7 +144,7 @@ fn readouts(text: &mut String, readouts: &[Readout]) {
             let value = worst.value.map_or("none".to_owned(), |value| print(value, readout.unit));
             format!("worst {} at {}", padded(&value, 12), worst.condition)
         });
-        row(text, readout.name, format!("{}{worst}", padded(&here, 14)).trim_end());
+        row(text, readout.name, format!("{}{worst}", padded(&here, 16)).trim_end());
     }
     text.push('\n');
 }

@@ -123,7 +123,7 @@ fn wrong_entries_name_line_path_reason_and_hint() {
         assert!(wrong[0].reason.contains(reason) && !wrong[0].hint.is_empty(), "{wrong:?}");
     }
 
-    let text = text_of(&Design::default()).replace(" Ω\"", " F\"");
+    let text = text_of(&Design::default()).replace("Ω\"", "F\"");
     let FileErrorKind::Entries(all) = refused(text) else { panic!("wrong units are wrong entries") };
     assert!(all.len() > 3, "all are reported at once");
 }
@@ -158,8 +158,21 @@ fn the_oldest_file_of_format_1_opens() {
     let old =
         load(&PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("tests/designs/format-1.ron")).expect("opens for ever");
     assert_eq!(old.title, "Format 1, kept for ever");
-    assert_eq!(old.values.get("stage.inductor.inductance").map(f64::to_bits), Some(10e-6_f64.to_bits()));
+    assert_eq!(old.notes.lines().count(), 2);
     assert_eq!(old.choices.get("stage.topology"), Some("boost"));
+    let held =
+        |path: &str, value: f64| assert_eq!(old.values.get(path).map(f64::to_bits), Some(value.to_bits()), "{path}");
+    held("stage.inductor.inductance", 10e-6);
+    held("stage.bank.2.esl", 800e-12);
+    held("stage.bank.2.remaining", 0.55);
+    held("compensator.c1", 56e-9);
+    held("event.load-step.change", -0.5);
+    held("event.load-step.slew", 1e6);
+    held("requirement.crossover.greatest.worst", 15e3);
+    assert_eq!(old.values.len(), 61);
+    assert!(old.locks.contains("compensator.divider.upper"));
+    assert_eq!(old.aims.get("zero-1").map(f64::to_bits), Some(1300.0_f64.to_bits()));
+    old.check().expect("usable as it stands");
 }
 
 #[test]
@@ -207,7 +220,7 @@ fn saving_keeps_permissions_and_links_and_respects_read_only() {
 fn any_design() -> impl Strategy<Value = Design> {
     let numbers = proptest::collection::vec(proptest::option::of(any::<f64>()), all_entries().count());
     let keys = proptest::collection::vec(any::<usize>(), all_choices().count());
-    ("\\PC{0,40}", "(\\PC|\n|\"|\\\\){0,80}", numbers, keys).prop_map(|(title, notes, numbers, keys)| {
+    ("(\\PC|\t|\"#|\0){0,40}", "(\\PC|\n|\r|\"|\\\\){0,80}", numbers, keys).prop_map(|(title, notes, numbers, keys)| {
         let mut design = Design { title, notes, ..Design::default() };
         for (row, number) in all_entries().zip(numbers) {
             design.values.remove(row.path);

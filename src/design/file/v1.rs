@@ -179,11 +179,17 @@ pub(super) fn write(design: &Design) -> Result<String, FileError> {
             design.aims.iter().map(|(lane, f)| (lane.to_owned(), exact(f, crate::quantity::Unit::Hertz))).collect(),
         ),
     };
-    let pretty = ron::ser::PrettyConfig::new().new_line("\n").indentor("    ").struct_names(false);
+    let pretty = ron::ser::PrettyConfig::new().new_line("\n").indentor("    ").escape_strings(!reads_plainly(&file));
     let mut text = ron::ser::to_string_pretty(&file, pretty)
         .map_err(|error| FileErrorKind::NotSaved { reason: error.to_string() })?;
     text.push('\n');
     Ok(text)
+}
+
+/// Whether title and notes can stand in the file as typed, line ends included; otherwise they are escaped.
+fn reads_plainly(file: &DesignV1) -> bool {
+    let plain = |text: &str| text.chars().all(|c| c == '\n' || !c.is_control());
+    plain(&file.title) && plain(&file.notes)
 }
 
 fn written_choices(design: &Design) -> Result<TextMap, FileError> {
