@@ -41,21 +41,26 @@ pub(super) fn curves(
         open_loop_line_to_output_db: line_db.clone(),
         ..Curves::default()
     };
+    let reference_offset_db = db(reference_scale);
     for k in 0..n {
         let feedback = Complex::ONE + polar(loop_db[k], loop_deg[k]);
-        let (size, turn) = (db(feedback.norm()), feedback.arg().to_degrees());
+        let (size, turn) = (0.5 * db(feedback.norm_sqr()), feedback.arg().to_degrees());
         c.output_impedance_ohm.push(from_db(impedance_db[k] - size));
         c.output_impedance_deg.push(wrapped(impedance_deg[k] - turn));
         c.line_to_output_db.push(line_db[k] - size);
         c.line_to_output_deg.push(wrapped(line_deg[k] - turn));
-        c.reference_to_output_db.push(plant_db[k] + reference_db[k] - size - db(reference_scale));
+        c.reference_to_output_db.push(plant_db[k] + reference_db[k] - size - reference_offset_db);
         c.reference_to_output_deg.push(wrapped(plant_deg[k] + reference_deg[k] - turn));
     }
     Ok(Curves { plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, ..c })
 }
 
+/// Nepers per decibel.
+const NEPER_PER_DB: f64 = std::f64::consts::LN_10 / 20.0;
+
 fn from_db(gain_db: f64) -> f64 {
-    10.0_f64.powf(gain_db / 20.0)
+    // The exponential is several times faster than a power, and this runs for every point of every curve.
+    (gain_db * NEPER_PER_DB).exp()
 }
 
 fn polar(gain_db: f64, phase_deg: f64) -> Complex {

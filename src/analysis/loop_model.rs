@@ -36,7 +36,7 @@ impl Shared {
             Finding::problem("compensator", format!("the compensator cannot be solved: {e}"))
         };
         let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
-        let response = design.compensator.response().map_err(|e| singular(&e))?;
+        let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
         let delay_s = design.modulator.delay_s;
         let delay =
             if delay_s > 0.0 { Some(pade_delay(delay_s, DELAY_ORDER).map_err(|e| singular(&e))?) } else { None };

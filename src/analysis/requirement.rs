@@ -59,7 +59,7 @@ pub(super) fn worst(asked: Asked, conditions: &[ConditionResult]) -> (Taken, usi
             Err(_) => Taken::Absent("a condition has no operating point"),
         };
         let worse = match (taken, worst.0) {
-            (Taken::Absent(_), Taken::Absent(_)) | (Taken::Unbounded, _) | (Taken::Value(_), Taken::Absent(_)) => false,
+            (Taken::Absent(_) | Taken::Value(_), Taken::Absent(_)) | (Taken::Unbounded, _) => false,
             (Taken::Absent(_), _) | (Taken::Value(_), Taken::Unbounded) => true,
             (Taken::Value(new), Taken::Value(old)) => {
                 if asked.is_least() {

@@ -301,33 +301,23 @@ impl Work {
 
     /// The next pivot: an entry of exactly ±1 in the emptiest row and column, else the largest entry.
     fn choose(&self, rows: usize, width: usize) -> Option<(usize, usize)> {
-        let mut unit: Option<(usize, usize, usize)> = None;
-        let mut largest: Option<(f64, usize, usize)> = None;
-        let row_count: Vec<usize> = (0..rows)
-            .map(|r| (0..rows).filter(|c| !self.column_used[*c] && self.alive(r * width + c)).count())
-            .collect();
-        let column_count: Vec<usize> =
-            (0..rows).map(|c| (0..rows).filter(|r| !self.row_used[*r] && self.alive(r * width + c)).count()).collect();
+        let mut candidates: Vec<(usize, usize, f64)> = Vec::with_capacity(4 * rows);
+        let (mut row_count, mut column_count) = (vec![0_usize; rows], vec![0_usize; rows]);
         for r in (0..rows).filter(|r| !self.row_used[*r]) {
             for c in (0..rows).filter(|c| !self.column_used[*c]) {
                 let place = r * width + c;
-                if !self.alive(place) {
-                    continue;
-                }
-                let size = self.value[place].abs();
-                #[expect(clippy::float_cmp, reason = "exactly ±1 is the point: such pivots keep the arithmetic exact")]
-                if size == 1.0 {
-                    let fill = (row_count[r] - 1) * (column_count[c] - 1);
-                    if unit.is_none_or(|(best, _, _)| fill < best) {
-                        unit = Some((fill, r, c));
-                    }
-                }
-                if largest.is_none_or(|(best, _, _)| size > best) {
-                    largest = Some((size, r, c));
+                if self.alive(place) {
+                    candidates.push((r, c, self.value[place].abs()));
+                    row_count[r] += 1;
+                    column_count[c] += 1;
                 }
             }
         }
-        unit.map(|(_, r, c)| (r, c)).or(largest.map(|(_, r, c)| (r, c)))
+        #[expect(clippy::float_cmp, reason = "exactly ±1 is the point: such pivots keep the arithmetic exact")]
+        let units = candidates.iter().filter(|(_, _, size)| *size == 1.0);
+        let emptiest = units.min_by_key(|(r, c, _)| (row_count[*r] - 1) * (column_count[*c] - 1));
+        let largest = || candidates.iter().max_by(|a, b| a.2.total_cmp(&b.2));
+        emptiest.or_else(largest).map(|(r, c, _)| (*r, *c))
     }
 
     /// Clears column `c` from all rows but `r`, recording what was done.

@@ -27,7 +27,7 @@ pub struct StateEquations {
 impl StateEquations {
     /// The same equations over independent states only: keeps a subset of the states that determines the others.
     ///
-    /// Returns the reduced equations and the matrix N with x = N·x_kept.
+    /// Returns the reduced equations and the matrix N with x = N·kept.
     pub fn independent(&self) -> (StateEquations, DMatrix<f64>) {
         let n = self.a.nrows();
         let Some(p) = &self.projector else {

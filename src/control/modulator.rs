@@ -2,7 +2,7 @@
 //!
 //! *Conventions*: d = (vc − valley)/ramp, delayed. With line feed-forward the ramp is proportional to the input voltage
 //! and has its entered height at the nominal input, so ∂d/∂vin = −D/Vin.
-//! *Source*: Erickson & Maksimovic, Fundamentals of Power Electronics, 3rd ed., 7.3 (modulator gain 1/V_M).
+//! *Source*: Erickson & Maksimovic, Fundamentals of Power Electronics, 3rd ed., 7.3 (modulator gain 1/VM).
 
 use super::entries::ENTRIES;
 use crate::quantity::{Choices, Values};

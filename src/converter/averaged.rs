@@ -2,7 +2,7 @@
 //!
 //! *Conventions*: inputs "duty", "input voltage" [V], "load current" [A, drawn from the output]; outputs
 //! "output voltage" [V, magnitude], "inductor current" [A], "input current" [A]. The duty column is
-//! (A_on − A_off)·X + (B_on − B_off)·U, and likewise for the outputs, so an ESR's step is kept.
+//! (Aon − Aoff)·X + (Bon − Boff)·U, and likewise for the outputs, so an ESR's step is kept.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::inductance_share;

@@ -1,6 +1,6 @@
 //! The operating point: the duty ratio that gives the wanted output with all losses, and the currents that follow.
 //!
-//! *Method*: the averaged state equations A(d)·x + B(d)·u = 0, A(d) = d·A_on + (1−d)·A_off, are solved for the duty
+//! *Method*: the averaged state equations A(d)·x + B(d)·u = 0, A(d) = d·Aon + (1−d)·Aoff, are solved for the duty
 //! ratio by scanning from zero for the first bracket and refining with safeguarded Newton steps, so that of two
 //! solutions the one below the peak of the conversion curve is found. Ripple is that of straight-line segments.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976.
@@ -160,9 +160,9 @@ impl Intervals {
             let Some(steady) = self.steady(duty, row) else { break };
             let error = steady.output - target;
             if error < 0.0 {
-                low = duty
+                low = duty;
             } else {
-                high = duty
+                high = duty;
             }
             let newton = duty - error / steady.slope;
             let next = if newton > low && newton < high { newton } else { f64::midpoint(low, high) };
