@@ -1,6 +1,7 @@
 //! The program from outside: what it prints, how it ends, what it leaves on disk.
 //!
 //! Runs the built binary on samples and on every kind of wrong input, and kills a process that saves. Needs no display.
+#![expect(clippy::expect_used, clippy::panic, reason = "a test may stop at a wrong value")]
 
 use polewright::design::file::{load, save};
 use polewright::design::{Design, sample};
