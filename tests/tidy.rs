@@ -158,7 +158,7 @@ fn every_file_says_first_what_it_is_for() {
     for file in rust_files("src").into_iter().chain(rust_files("tests")) {
         let text = read(&file);
         let first = text.lines().next().unwrap_or_default();
-        if !first.strip_prefix("//! ").is_some_and(|purpose| purpose.len() > 15) {
+        if first.strip_prefix("//! ").is_none_or(|purpose| purpose.len() <= 15) {
             wrong.push(shown(&file));
         }
     }
@@ -213,7 +213,9 @@ fn named_paths(text: &str) -> Vec<String> {
     let linked = text.split("](").skip(1).filter_map(|rest| rest.split(')').next()).map(str::to_owned);
     quoted
         .chain(linked)
-        .filter(|word| top.iter().any(|start| word.starts_with(start)) || word.ends_with(".md"))
+        .filter(|word| {
+            top.iter().any(|start| word.starts_with(start)) || Path::new(word).extension().is_some_and(|e| e == "md")
+        })
         .collect()
 }
 
