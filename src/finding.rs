@@ -34,7 +34,7 @@ pub struct Finding {
     /// What would help, in words.
     pub hint: Option<String>,
     /// A change that mends it, to be taken with one press.
-    pub remedy: Option<Remedy>,
+    pub remedy: Option<Box<Remedy>>,
 }
 
 /// A change of a design that mends a finding.
@@ -78,7 +78,7 @@ impl Finding {
     /// The same finding with a change that mends it.
     #[must_use]
     pub fn with_remedy(mut self, remedy: Remedy) -> Self {
-        self.remedy = Some(remedy);
+        self.remedy = Some(Box::new(remedy));
         self
     }
 

@@ -40,7 +40,8 @@ impl Decimal {
     fn value(&self, shown: &str, unit: Unit) -> Result<f64, ParseError> {
         let sign = if self.negative { "-" } else { "" };
         let text = format!("{sign}{}.{}e{}", self.whole, self.fraction, self.exponent);
-        let value: f64 = text.parse().map_err(|_| not_a_number(shown, unit))?;
+        // Built from digits above, so it always parses; a failure would say nothing more than this.
+        let Ok(value) = text.parse::<f64>() else { return Err(not_a_number(shown, unit)) };
         if !value.is_finite() {
             return Err(error(format!("“{shown}” is too large to be held"), example(unit)));
         }

@@ -4,12 +4,12 @@ use super::check::Report;
 use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
-use crate::linear::Verdict;
+use crate::linear::{Margins, Verdict};
 use serde::Serialize;
 use std::io::{self, Write};
 
 #[derive(Serialize)]
-struct File<'a> {
+struct Object<'a> {
     file: &'a str,
     status: &'static str,
     title: Option<&'a str>,
@@ -152,16 +152,16 @@ struct FindingRow<'a> {
 
 /// Writes all reports as one array.
 pub(super) fn write(reports: &[Report], out: &mut impl Write) -> io::Result<()> {
-    let files: Vec<File<'_>> = reports.iter().map(file).collect();
+    let files: Vec<Object<'_>> = reports.iter().map(object).collect();
     // serde_json writes numbers that are not finite as null.
     serde_json::to_writer_pretty(&mut *out, &files)?;
     writeln!(out)
 }
 
-fn file(report: &Report) -> File<'_> {
+fn object(report: &Report) -> Object<'_> {
     let analysis = report.results.as_ref().map(|(_, analysis)| analysis);
     let detail = analysis.and_then(|analysis| analysis.shown.as_deref().ok());
-    File {
+    Object {
         file: &report.file,
         status: report.outcome.word(),
         title: report.title.as_deref(),
@@ -244,7 +244,7 @@ fn loop_gain(detail: &Detail) -> Loop {
 fn nine_row(row: &ConditionResult) -> NineRow<'_> {
     let summary = row.outcome.as_ref().ok();
     let margins = summary.map(|s| &s.loop_gain.margins);
-    let crossover = margins.and_then(|m| m.headline_crossover());
+    let crossover = margins.and_then(Margins::headline_crossover);
     let step = summary.and_then(|s| s.load_step);
     NineRow {
         condition: &row.condition.label,
@@ -255,7 +255,7 @@ fn nine_row(row: &ConditionResult) -> NineRow<'_> {
         stable: summary.and_then(|s| stable(&s.loop_gain.verdict)),
         crossover_hz: crossover.map(|c| c.frequency_hz),
         phase_margin_deg: crossover.map(|c| c.phase_margin_deg),
-        gain_margin_db: margins.and_then(|m| m.gain_margin_up_db()),
+        gain_margin_db: margins.and_then(Margins::gain_margin_up_db),
         modulus_margin: margins.map(|m| m.modulus_margin),
         load_step_deviation_v: step.map(|s| s.deviation_v),
         settling_s: step.and_then(|s| s.settling_s),

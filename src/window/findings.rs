@@ -50,7 +50,7 @@ fn actions_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
     if let Some(remedy) = &finding.remedy {
         let text = RichText::new(&remedy.label).font(theme::small()).color(accent);
         if ui.add(egui::Button::new(text).small()).clicked() {
-            desk.ask(Command::Mend(remedy.clone()));
+            desk.ask(Command::Mend((**remedy).clone()));
         }
     }
     if let Some(entry) = design::entry(&finding.place) {

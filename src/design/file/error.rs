@@ -129,14 +129,14 @@ impl FileErrorKind {
             FileErrorKind::Folder => "This is a folder, not a design file.".into(),
             FileErrorKind::Unreadable { reason } => format!("The file cannot be read: {reason}."),
             FileErrorKind::TooLarge => {
-                format!("The file is larger than {} MB, which no design file is.", super::LARGEST_FILE >> 20)
+                format!("The file is larger than {} MB, which no design file is.", super::read::LARGEST_FILE >> 20)
             }
             FileErrorKind::Empty => "The file is empty.".into(),
             FileErrorKind::Utf16 => "The file is UTF-16 text.".into(),
             FileErrorKind::NotText { .. } => "The file is not UTF-8 text.".into(),
             FileErrorKind::Syntax { reason, .. } => reason.clone(),
             FileErrorKind::Newer { format } => {
-                format!("The file has format {format}; this release reads formats up to {}.", super::FORMAT)
+                format!("The file has format {format}; this release reads formats up to {}.", super::read::FORMAT)
             }
             FileErrorKind::NoSuchFormat { format } => format!("There is no format {format}."),
             FileErrorKind::Entries(entries) => match entries.as_slice() {

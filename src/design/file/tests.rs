@@ -1,9 +1,11 @@
 //! Tests of design files: whole round trips, every kind of wrong file, the oldest file, saving.
 
 use super::*;
+use crate::design::Design;
 use crate::design::{all_choices, all_entries};
 use proptest::prelude::*;
-use std::path::PathBuf;
+use std::fs::File;
+use std::path::{Path, PathBuf};
 
 fn text_of(design: &Design) -> String {
     let mut bytes = Vec::new();
@@ -27,8 +29,7 @@ fn wrong_entries(from: &str, to: &str) -> Vec<EntryError> {
 
 #[test]
 fn a_file_is_readable_by_people() {
-    let mut design = Design::default();
-    design.title = "Rail".into();
+    let mut design = Design { title: "Rail".into(), ..Design::default() };
     design.set_from_text("stage.inductor.inductance", "8.2u").expect("a number");
     design.locks.insert("compensator.r2".into());
     design.aims.set("zero-1", 1500.0).expect("finite");
@@ -200,8 +201,7 @@ fn saving_keeps_permissions_and_links_and_respects_read_only() {
     assert_ne!(mode(&path) & 0o044, 0, "a new file is not private");
     fs::set_permissions(&path, fs::Permissions::from_mode(0o640)).expect("mode");
     symlink("design.ron", &link).expect("link");
-    let mut design = Design::default();
-    design.title = "through the link".into();
+    let design = Design { title: "through the link".into(), ..Design::default() };
     save(&design, &link).expect("through the link");
     assert!(fs::symlink_metadata(&link).expect("there").is_symlink());
     assert_eq!(load(&path).expect("saved").title, "through the link");

@@ -93,15 +93,15 @@ pub(super) fn read(text: &str) -> Result<Design, FileError> {
 fn read_choices(map: &TextMap, text: &str, errors: &mut Vec<EntryError>) -> Choices {
     let mut choices = Choices::new();
     for (path, key) in &map.0 {
-        match table::choice(path) {
-            None => errors.push(unknown_path(path, text)),
-            Some(choice) => match choice.option(key) {
-                Some(option) => choices.set(path, option.key),
-                None => {
-                    let finding = unknown_option(choice, key);
-                    errors.push(at_line(path, text, finding.message, finding.hint.unwrap_or_default()));
-                }
-            },
+        let Some(choice) = table::choice(path) else {
+            errors.push(unknown_path(path, text));
+            continue;
+        };
+        if let Some(option) = choice.option(key) {
+            choices.set(path, option.key);
+        } else {
+            let finding = unknown_option(choice, key);
+            errors.push(at_line(path, text, finding.message, finding.hint.unwrap_or_default()));
         }
     }
     choices

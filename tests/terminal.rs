@@ -1,0 +1,398 @@
+//! The program from outside: what it prints, how it ends, what it leaves on disk.
+//!
+//! Runs the built binary on samples and on every kind of wrong input, and kills a process that saves. Needs no display.
+#![expect(clippy::expect_used, clippy::panic, reason = "a test may stop at a wrong value")]
+
+use polewright::design::file::{load, save};
+use polewright::design::{Design, sample};
+use serde_json::Value;
+use std::collections::BTreeMap;
+use std::fs;
+use std::io::{BufRead, BufReader};
+use std::path::{Path, PathBuf};
+use std::process::{Command, Output, Stdio};
+
+fn program() -> Command {
+    let mut command = Command::new(env!("CARGO_BIN_EXE_polewright"));
+    command.stdin(Stdio::null());
+    for name in ["DISPLAY", "WAYLAND_DISPLAY", "WAYLAND_SOCKET"] {
+        command.env_remove(name);
+    }
+    command
+}
+
+fn check(arguments: &[&str]) -> Output {
+    program().arg("check").args(arguments).output().expect("the program runs")
+}
+
+fn code(output: &Output) -> i32 {
+    output.status.code().expect("ended by itself")
+}
+
+fn text(bytes: &[u8]) -> &str {
+    std::str::from_utf8(bytes).expect("UTF-8")
+}
+
+fn json(output: &Output) -> Vec<Value> {
+    match serde_json::from_slice(&output.stdout).expect("valid JSON") {
+        Value::Array(objects) => objects,
+        other => panic!("not an array: {other}"),
+    }
+}
+
+fn sample_path(file: &str) -> String {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("sample-designs").join(file);
+    path.to_str().expect("UTF-8").to_owned()
+}
+
+fn number(value: &Value) -> f64 {
+    value.as_f64().unwrap_or_else(|| panic!("{value} is no number"))
+}
+
+/// Exit code expected of each sample: two of them miss something on purpose.
+fn expected_code(file: &str) -> i32 {
+    i32::from(matches!(file, "trail-radio.ron" | "bench-exercise.ron"))
+}
+
+#[test]
+fn every_sample_is_reported_as_json_and_as_text() {
+    for sample in sample::all() {
+        let path = sample_path(sample.file);
+        let output = check(&[&path, "--json"]);
+        assert_eq!(code(&output), expected_code(sample.file), "{}", sample.file);
+        let objects = json(&output);
+        assert_eq!(objects.len(), 1);
+        let object = &objects[0];
+        assert_eq!(object["title"], sample.title);
+        assert_eq!(object["conditions"].as_array().map(Vec::len), Some(9));
+        assert_eq!(object["loop"]["stable"], sample.file != "bench-exercise.ron", "{}", sample.file);
+        assert!(object["operating_point"]["duty"].is_f64() && object["inductors"][0]["peak"].is_f64());
+        let last = object["response"].as_array().and_then(|rows| rows.last()).expect("a response");
+        assert!(last.as_object().expect("an object").values().all(Value::is_f64), "{last}");
+
+        let output = check(&[&path]);
+        let report = text(&output.stdout);
+        for heading in [sample.title, "Operating point", "Landmarks", "Loop", "Requirements"] {
+            assert!(report.contains(heading), "{heading} is not in\n{report}");
+        }
+        assert_eq!(text(&output.stderr), "");
+    }
+}
+
+#[test]
+fn the_worst_of_all_files_counts_and_every_file_has_its_object() {
+    let files = ["gimbal-rail.ron", "bench-exercise.ron"].map(sample_path);
+    let missing = sample_path("none.ron");
+    let output = check(&[&files[0], &missing, &files[1], "--json"]);
+    assert_eq!(code(&output), 2);
+    let objects = json(&output);
+    let statuses: Vec<&str> = objects.iter().filter_map(|object| object["status"].as_str()).collect();
+    assert_eq!(statuses, ["met", "unusable", "not met"]);
+    assert_eq!(objects[1]["title"], Value::Null);
+    assert_eq!(objects[1]["findings"][0]["severity"], "problem");
+    assert_eq!(code(&check(&[&files[0], &files[1]])), 1);
+    assert_eq!(code(&check(&[&files[0]])), 0);
+}
+
+#[test]
+fn an_unstable_loop_says_so_with_frequency_and_growth_and_has_no_figures() {
+    let path = sample_path("bench-exercise.ron");
+    let object = json(&check(&[&path, "--json"])).remove(0);
+    assert_eq!(object["loop"]["stable"], false);
+    assert_eq!(object["loop"]["delay_margin_s"], Value::Null);
+    assert_eq!(object["load_step"]["deviation_v"], Value::Null);
+    assert_eq!(object["load_step"]["settling_s"], Value::Null);
+    assert!(text(&check(&[&path]).stdout).contains("UNSTABLE: oscillation at 8.3"));
+    // Without a requirement an oscillator still is not met.
+    assert_eq!(code(&check(&[&path, "--set", "requirement.phase-margin.nominal="])), 1);
+}
+
+/// The definition put back: at each crossover the loop gain is 0 dB and its phase is the margin less 180°, whole turns apart.
+#[test]
+fn margins_meet_their_definition_in_the_response() {
+    for file in ["gimbal-rail.ron", "camera-core.ron", "negative-rail.ron", "bench-exercise.ron"] {
+        let path = sample_path(file);
+        let object = json(&check(&[&path, "--json"])).remove(0);
+        for crossover in object["loop"]["crossovers"].as_array().expect("crossovers") {
+            // Sixteen significant digits, so that the text is the same number again.
+            let at = format!("{:e}", number(&crossover["frequency_hz"]));
+            let row = json(&check(&[&path, "--json", "--at", &at])).remove(0)["response"][0].take();
+            assert_eq!(row["frequency_hz"], crossover["frequency_hz"]);
+            assert!(number(&row["loop_db"]).abs() < 1e-6, "{row}");
+            let margin = (number(&row["loop_deg"]) + 180.0 - number(&crossover["phase_margin_deg"])) / 360.0;
+            assert!((margin - margin.round()).abs() < 1e-8, "{row}");
+            let sum = number(&row["plant_db"]) + number(&row["compensator_db"]);
+            assert!((sum - number(&row["loop_db"])).abs() < 1e-9, "{row}");
+        }
+        for crossing in object["loop"]["phase_crossovers"].as_array().expect("phase crossovers") {
+            let at = format!("{:e}", number(&crossing["frequency_hz"]));
+            let row = json(&check(&[&path, "--json", "--at", &at])).remove(0)["response"][0].take();
+            assert!((number(&row["loop_db"]) + number(&crossing["gain_margin_db"])).abs() < 1e-6, "{row}");
+            let turns = (number(&row["loop_deg"]) + 180.0) / 360.0;
+            assert!((turns - turns.round()).abs() < 1e-8, "{row}");
+        }
+    }
+}
+
+#[test]
+fn conditions_and_entries_can_be_set() {
+    let path = sample_path("gimbal-rail.ron");
+    let asked = json(&check(&[&path, "--json", "--input-voltage", "9V", "--load-current", "1500m"])).remove(0);
+    assert_eq!(asked["condition"]["input_voltage"], 9.0);
+    assert_eq!(asked["condition"]["load_current"], 1.5);
+    // The same condition stands among the nine: least input, greatest load.
+    assert_eq!(asked["operating_point"]["duty"], asked["conditions"][2]["duty"]);
+    assert_eq!(asked["loop"]["crossovers"][0]["frequency_hz"], asked["conditions"][2]["crossover_hz"]);
+    let one = json(&check(&[&path, "--json", "--input-voltage", "10"])).remove(0);
+    assert_eq!(one["condition"]["load_current"], 1.0);
+
+    let before = fs::read(&path).expect("there");
+    let changed =
+        ["--set", "stage.inductor.inductance=22 µH", "--set", "stage.rectifier=diode", "--set", "stage.load.least=1"];
+    let object = json(&check(&[&[path.as_str(), "--json"], changed.as_slice()].concat())).remove(0);
+    assert_eq!(object["operating_point"]["conduction"], "continuous");
+    let ripple = |object: &Value| number(&object["inductors"][0]["ripple"]);
+    assert!(ripple(&object) < 0.6 * ripple(&one), "{} {}", ripple(&object), ripple(&one));
+    assert_eq!(fs::read(&path).expect("there"), before, "the file is not written");
+
+    let rows = json(&check(&[&path, "--json", "--at", "10k,100,1k"])).remove(0)["response"].take();
+    let frequencies: Vec<f64> = rows.as_array().expect("rows").iter().map(|row| number(&row["frequency_hz"])).collect();
+    assert_eq!(frequencies, [100.0, 1000.0, 10_000.0]);
+}
+
+/// Every entry that cannot be used: exit code 2, and place, reason and hint in both reports.
+#[test]
+fn wrong_entries_are_told_with_place_reason_and_hint() {
+    let path = sample_path("gimbal-rail.ron");
+    for (setting, place, reason) in [
+        ("stage.inductor.inductance=", "stage.inductor.inductance", "nothing is entered"),
+        ("stage.inductor.inductance=ten", "stage.inductor.inductance", "not a number"),
+        ("stage.inductor.inductance=-10u", "stage.inductor.inductance", "above 0 H"),
+        ("stage.inductor.inductance=0", "stage.inductor.inductance", "above 0 H"),
+        ("stage.inductor.inductance=NaN", "stage.inductor.inductance", "not a number"),
+        ("stage.inductor.inductance=1e300", "stage.inductor.inductance", "beyond"),
+        ("stage.inductor.inductance=4,7u", "stage.inductor.inductance", "comma"),
+        ("stage.output.voltage=15", "stage.output.voltage", "above the greatest input"),
+        ("control.duty.greatest=1.5", "control.duty.greatest", "from 0 to 1"),
+        ("control.duty.greatest=0.3", "control.duty.greatest", "duty ratio"),
+        ("compensator.reference=30", "compensator.reference", "only divides"),
+        ("stage.input.least=13", "stage.input.least", "must be below"),
+        ("stage.topology=bost", "stage.topology", "not an option"),
+        ("stage.inductance=1u", "stage.inductance", "no entry"),
+    ] {
+        let output = check(&[&path, "--set", setting]);
+        assert_eq!(code(&output), 2, "{setting}: {}", text(&output.stdout));
+        let told = format!("{}{}", text(&output.stdout), text(&output.stderr));
+        assert!(told.contains(place) && told.contains(reason) && told.contains("Hint: "), "{setting}:\n{told}");
+        assert!(!told.contains("panicked"), "{told}");
+
+        let object = json(&check(&[&path, "--json", "--set", setting])).remove(0);
+        assert_eq!(object["status"], "unusable");
+        let findings = object["findings"].as_array().expect("findings");
+        let told = findings.iter().any(|finding| {
+            finding["severity"] == "problem"
+                && finding["where"] == place
+                && finding["message"].as_str().is_some_and(|message| message.contains(reason))
+                && finding["hint"].is_string()
+        });
+        assert!(told, "{setting}: {findings:?}");
+    }
+}
+
+#[test]
+fn wrong_arguments_end_with_2_and_help_with_0() {
+    let path = sample_path("gimbal-rail.ron");
+    for arguments in [
+        vec![],
+        vec![path.as_str(), "--at", "fast"],
+        vec![path.as_str(), "--input-voltage", "-5"],
+        vec![path.as_str(), "--load-current", "0"],
+        vec![path.as_str(), "--set", "nonsense"],
+        vec![path.as_str(), "--unknown"],
+    ] {
+        let output = check(&arguments);
+        assert_eq!(code(&output), 2, "{arguments:?}");
+        assert!(output.stdout.is_empty() && !output.stderr.is_empty(), "{arguments:?}");
+    }
+    let help = program().arg("--help").output().expect("runs");
+    assert_eq!(code(&help), 0);
+    assert!(text(&help.stdout).contains("check"));
+}
+
+/// Name, bytes, and what must be told of a file that is no design.
+fn wrong_files() -> Vec<(&'static str, Vec<u8>, &'static str)> {
+    let whole = sample::all()[0].ron;
+    let changed = |from: &str, to: &str| {
+        assert!(whole.contains(from), "{from}");
+        whole.replacen(from, to, 1).into_bytes()
+    };
+    vec![
+        ("empty.ron", Vec::new(), "empty"),
+        ("truncated.ron", whole.as_bytes()[..whole.len() / 2].to_vec(), "cut off"),
+        ("latin1.ron", b"(format: 1, title: \"K\xfcche\")".to_vec(), "UTF-8"),
+        ("utf16.ron", whole.encode_utf16().flat_map(u16::to_le_bytes).collect(), "UTF-8"),
+        (
+            "utf16-bom.ron",
+            std::iter::once(0xFEFF).chain(whole.encode_utf16()).flat_map(u16::to_le_bytes).collect(),
+            "UTF-16",
+        ),
+        ("binary.ron", (0..=255).collect(), "UTF-8"),
+        ("unknown-field.ron", changed("    title:", "    colour: \"red\",\n    title:"), "colour"),
+        ("unknown-entry.ron", changed("stage.inductor.inductance", "stage.inductor.inductence"), "did you mean"),
+        ("wrong-type.ron", changed("title: \"Gimbal rail\"", "title: 5"), "as text"),
+        ("bare-number.ron", changed("\"10 µH\"", "1e-5"), "as text"),
+        ("newer.ron", changed("format: 1", "format: 9"), "later release"),
+        ("not-finite.ron", changed("\"10 µH\"", "\"inf\""), "not a number"),
+        ("overflow.ron", changed("\"10 µH\"", "\"1e999 H\""), "too large"),
+        ("nested.ron", format!("(format: 1, title: {}", "[".repeat(100_000)).into_bytes(), "nested"),
+        ("json.ron", b"{\"format\": 1}".to_vec(), "RON"),
+    ]
+}
+
+fn snapshot(folder: &Path) -> BTreeMap<PathBuf, u64> {
+    let entries = fs::read_dir(folder).expect("a folder").map(|entry| entry.expect("an entry"));
+    entries.map(|entry| (entry.path(), entry.metadata().expect("there").len())).collect()
+}
+
+#[test]
+fn wrong_files_are_told_and_nothing_on_disk_changes() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let mut cases: Vec<(PathBuf, &str)> = Vec::new();
+    for (name, bytes, told) in wrong_files() {
+        let path = folder.path().join(name);
+        fs::write(&path, bytes).expect("written");
+        cases.push((path, told));
+    }
+    let large = folder.path().join("large.ron");
+    fs::File::create(&large).and_then(|file| file.set_len(100 << 20)).expect("100 MB");
+    cases.push((large, "larger than"));
+    cases.push((folder.path().join("missing.ron"), "no such file"));
+    cases.push((folder.path().to_owned(), "folder"));
+    let before = snapshot(folder.path());
+    for (path, told) in &cases {
+        let path = path.to_str().expect("UTF-8");
+        let output = check(&[path]);
+        assert_eq!(code(&output), 2, "{path}");
+        let message = text(&output.stderr);
+        assert!(message.contains(path) && message.contains(told) && message.contains("Hint: "), "{path}:\n{message}");
+        assert!(!message.contains("panicked"), "{message}");
+        assert!(output.stdout.is_empty(), "{path}");
+
+        let output = check(&[path, "--json"]);
+        assert_eq!(code(&output), 2, "{path}");
+        let object = json(&output).remove(0);
+        assert_eq!(object["file"], path);
+        assert_eq!(object["findings"][0]["severity"], "problem");
+        assert_eq!(object["loop"], Value::Null);
+
+        // The window names the same before it opens anything.
+        let output = program().arg(path).output().expect("runs");
+        assert_eq!(code(&output), 2, "{path}");
+        assert!(!text(&output.stderr).contains("panicked"));
+    }
+    assert_eq!(snapshot(folder.path()), before);
+}
+
+#[cfg(unix)]
+#[test]
+fn a_file_that_may_not_be_read_is_told() {
+    use std::os::unix::fs::PermissionsExt;
+    let folder = tempfile::tempdir().expect("a folder");
+    let path = folder.path().join("locked.ron");
+    fs::write(&path, sample::all()[0].ron).expect("written");
+    fs::set_permissions(&path, fs::Permissions::from_mode(0o000)).expect("locked");
+    // The superuser may read anything, so there is nothing to see then.
+    if fs::File::open(&path).is_err() {
+        let output = check(&[path.to_str().expect("UTF-8")]);
+        assert_eq!(code(&output), 2);
+        assert!(text(&output.stderr).contains("may not be read"));
+    }
+}
+
+#[test]
+fn without_a_display_the_program_says_what_is_missing() {
+    let output = program().output().expect("runs");
+    assert_eq!(code(&output), 2);
+    let message = text(&output.stderr);
+    assert!(message.contains("cannot be opened") && message.contains("polewright check FILE"), "{message}");
+    assert!(!message.contains("panicked"), "{message}");
+}
+
+/// Every field the README documents is in the report, by that name.
+#[test]
+fn the_documented_fields_are_there() {
+    let readme = fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("README.md")).expect("the README");
+    let (_, section) = readme.split_once("### The JSON").expect("a section on the JSON");
+    let (section, _) = section.split_once("\n## ").expect("a next section");
+    // This one has findings and requirements too.
+    let report = text(&check(&[&sample_path("trail-radio.ron"), "--json"]).stdout).to_owned();
+    let rows = section.lines().filter(|line| line.starts_with("| `"));
+    let named = rows.flat_map(|line| line.split('`').skip(1).step_by(2));
+    let fields: Vec<&str> =
+        named.map(|word| word.trim_end_matches("[]")).filter(|word| !word.starts_with('-')).collect();
+    assert!(fields.len() > 30, "{fields:?}");
+    for field in fields.iter().filter(|field| field.chars().all(|c| c.is_ascii_lowercase() || c == '_')) {
+        assert!(report.contains(&format!("\"{field}\":")), "{field} is documented and not reported");
+    }
+}
+
+/// Names the file to save to in the process that is to be killed.
+const SAVE_TO: &str = "POLEWRIGHT_TEST_SAVE_TO";
+
+/// Two designs of very different length, so that a mixture of both could not be read.
+fn old_and_new() -> [Design; 2] {
+    let old = sample::built_in();
+    let new = Design { title: "The new one".into(), notes: "A long note. ".repeat(20_000), ..old.clone() };
+    [old, new]
+}
+
+/// Not a test of its own: saves in turn for ever when the test below starts it as a process to be killed.
+#[test]
+fn saving_in_turn_until_killed() {
+    let Some(path) = std::env::var_os(SAVE_TO) else { return };
+    let designs = old_and_new();
+    for design in designs.iter().cycle() {
+        save(design, Path::new(&path)).expect("saved");
+        println!("saved");
+    }
+}
+
+#[test]
+fn a_process_killed_while_saving_leaves_the_old_file_or_the_new() {
+    const KILLS: usize = 200;
+    let folder = tempfile::tempdir().expect("a folder");
+    let path = folder.path().join("design.ron");
+    let designs = old_and_new();
+    save(&designs[0], &path).expect("a first file");
+    let mut seen = [0; 2];
+    for round in 0..KILLS {
+        let mut child = Command::new(std::env::current_exe().expect("this test"))
+            .args(["--exact", "saving_in_turn_until_killed", "--nocapture"])
+            .env(SAVE_TO, &path)
+            .stdout(Stdio::piped())
+            .stderr(Stdio::null())
+            .spawn()
+            .expect("a process that saves");
+        // It is killed after a first save, some way into a later one; how far differs from round to round.
+        let mut lines = BufReader::new(child.stdout.take().expect("its output")).lines();
+        let saved =
+            (&mut lines).map_while(Result::ok).filter(|line| line.contains("saved")).take(1 + round % 2).count();
+        assert!(saved > 0, "it never saved");
+        for _ in 0..(round * 37) % 1000 {
+            std::hint::spin_loop();
+            std::thread::yield_now();
+        }
+        child.kill().expect("killed");
+        child.wait().expect("gone");
+        let found = load(&path).unwrap_or_else(|error| panic!("round {round}: {error}"));
+        let which = designs.iter().position(|design| *design == found).expect("one of the two, whole");
+        seen[which] += 1;
+    }
+    assert_eq!(seen[0] + seen[1], KILLS);
+    assert!(seen[0] > 0 && seen[1] > 0, "both were found at some time: {seen:?}");
+    for (left, _) in snapshot(folder.path()) {
+        let name = left.file_name().and_then(|name| name.to_str()).expect("UTF-8");
+        let temporary = name.strip_prefix(".polewright-").is_some_and(|rest| rest.strip_suffix(".tmp").is_some());
+        assert!(name == "design.ron" || temporary, "{name}");
+    }
+}
