@@ -212,32 +212,46 @@ fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     CentralPanel::default().frame(frame(palette.canvas)).show(ui, |ui| middle_ui(ui, desk));
 }
 
+/// Height from which the map of the nine conditions has a place of its own [points].
+const TALL_COLUMN: f32 = 880.0;
+
 fn left_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let below = 200.0_f32.min(ui.available_height() * 0.4);
-    Panel::bottom("operating")
-        .resizable(false)
-        .exact_size(below)
-        .frame(Frame::new().inner_margin(Margin { top: 8, right: 6, ..Margin::ZERO }))
-        .show(ui, |ui| ScrollArea::vertical().id_salt("operating").show(ui, |ui| operating::operating_ui(ui, desk)));
+    let tall = ui.available_height() > TALL_COLUMN;
+    let below = if tall { 350.0 } else { 190.0_f32.min(ui.available_height() * 0.4) };
+    let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
+    Panel::bottom("operating").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(ui, |ui| {
+        ScrollArea::vertical().id_salt("operating").show(ui, |ui| {
+            if tall {
+                conditions::panel_ui(ui, desk);
+                gap(ui);
+            }
+            ui.spacing_mut().item_spacing.y = 1.0;
+            operating::operating_ui(ui, desk);
+        });
+    });
     ScrollArea::vertical().id_salt("stage").auto_shrink(false).show(ui, |ui| {
         ui.set_max_width(ui.available_width() - 6.0);
         stage::stage_ui(ui, desk);
     });
 }
 
+/// Share of the right column that findings may take.
+const FINDINGS_SHARE: f32 = 0.22;
+
 fn right_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
+    let below = (ui.available_height() * FINDINGS_SHARE).max(90.0);
+    Panel::bottom("findings").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(ui, |ui| {
+        ScrollArea::vertical().id_salt("findings").auto_shrink(false).show(ui, |ui| findings::findings_ui(ui, desk));
+    });
     ScrollArea::vertical().id_salt("readouts").auto_shrink(false).show(ui, |ui| {
         ui.set_max_width(ui.available_width() - 6.0);
         ui.spacing_mut().item_spacing.y = 2.0;
         readouts::readouts_ui(ui, desk);
         gap(ui);
-        conditions::panel_ui(ui, desk);
+        ledger::ledger_ui(ui, desk);
         gap(ui);
         parts::parts_ui(ui, desk);
-        gap(ui);
-        findings::findings_ui(ui, desk);
-        gap(ui);
-        ledger::ledger_ui(ui, desk);
         ui.add_space(8.0);
     });
 }

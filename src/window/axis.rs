@@ -145,14 +145,10 @@ pub(super) fn multiples(from: f64, to: f64, step: f64) -> impl Iterator<Item = f
         .take_while(move |value| *value <= to + step * 1e-6)
 }
 
-/// Label of a grid line: the value with as many digits as the grid needs, in engineering notation.
+/// Label of a grid line. Zeros behind the last digit are not printed, so six digits say what the grid needs and no more.
 pub(super) fn grid_label(value: f64, step: f64, unit: Unit) -> String {
-    if value.abs() < step * 1e-6 {
-        return quantity::print_digits(0.0, unit, 1);
-    }
-    let digits = (value.abs() / step).log10().floor() + 1.0;
-    let digits = (1..=9_usize).find(|count| *count as f64 >= digits).unwrap_or(9);
-    quantity::print_digits(value, unit, digits)
+    let value = if value.abs() < step * 1e-6 { 0.0 } else { value };
+    quantity::print_digits(value, unit, 6)
 }
 
 /// Value of a sampled curve between its points, or nothing outside them. `xs` rises.

@@ -38,6 +38,7 @@ fn names_ui(ui: &mut Ui, desk: &Desk<'_>) {
 
 fn menus_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.spacing_mut().item_spacing.x = 4.0;
+    ui.visuals_mut().widgets.inactive.bg_stroke = egui::Stroke::NONE;
     for (menu, name) in [(Menu::View, "View"), (Menu::Edit, "Edit"), (Menu::Design, "Design")] {
         let text = RichText::new(name).color(palette(ui).accent);
         ui.menu_button(text, |ui| menu_ui(ui, menu, desk));
@@ -56,7 +57,7 @@ fn menus_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 
 fn word_ui(ui: &mut Ui, word: &str, enabled: bool, help: &str, command: Command, desk: &mut Desk<'_>) {
     let accent = palette(ui).accent;
-    let button = Button::new(RichText::new(word).color(accent)).frame(true).stroke(egui::Stroke::NONE);
+    let button = Button::new(RichText::new(word).color(accent));
     let response = ui.add_enabled(enabled, button);
     if response.on_hover_text(help).on_disabled_hover_text(help).clicked() {
         desk.ask(command);

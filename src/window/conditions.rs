@@ -1,6 +1,6 @@
 //! The nine operating conditions: the chooser in the bar, and the map that shows all of them at once.
 
-use eframe::egui::{Align2, Popup, PopupCloseBehavior, Rect, RichText, Sense, Stroke, StrokeKind, Ui, WidgetInfo, Role, pos2, vec2};
+use eframe::egui::{Align2, Popup, PopupCloseBehavior, Pos2, Rect, RichText, Sense, Stroke, StrokeKind, Ui, WidgetInfo, Role, pos2, vec2};
 
 use super::command::Command;
 use super::theme::{self, palette};
@@ -17,10 +17,11 @@ pub(super) fn chooser_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         None => format!("Shown: {} input, {} load", input.word(), load.word()),
     };
     let galley = ui.painter().layout_no_wrap(text.clone(), theme::body(), palette.ink);
-    let (rect, response) = ui.allocate_exact_size(vec2(galley.size().x + 44.0, 26.0), Sense::click());
+    let (rect, response) = ui.allocate_exact_size(vec2(galley.size().x + 76.0, 28.0), Sense::click());
     let ground = if response.hovered() { palette.accent_ground } else { palette.field };
-    ui.painter().rect(rect, 13.0, ground, Stroke::new(1.0, palette.field_edge), StrokeKind::Inside);
-    let at = pos2(rect.left() + 16.0, rect.center().y - galley.size().y / 2.0);
+    ui.painter().rect(rect, 14.0, ground, Stroke::new(1.0, palette.field_edge), StrokeKind::Inside);
+    glance(ui, pos2(rect.left() + 15.0, rect.center().y - 10.0), desk);
+    let at = pos2(rect.left() + 46.0, rect.center().y - galley.size().y / 2.0);
     ui.painter().galley(at, galley, palette.ink);
     super::bar::down_mark(ui, pos2(rect.right() - 16.0, rect.center().y));
     response.widget_info(|| {
@@ -34,6 +35,54 @@ pub(super) fn chooser_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         ui.label(RichText::new("Press a condition to show it in full.").color(palette.weak));
         map_ui(ui, "chooser", desk);
     });
+}
+
+/// All nine at a glance: a full square is well, an open amber one misses what is asked, a crossed one has no result or is
+/// unstable; the shown one has a ring.
+fn glance(ui: &Ui, at: Pos2, desk: &Desk<'_>) {
+    let Some(analysis) = desk.session.analysis() else { return };
+    let palette = palette(ui);
+    for (index, result) in analysis.conditions.iter().take(9).enumerate() {
+        let corner = at + vec2((index % 3) as f32 * 7.0, (index / 3) as f32 * 7.0);
+        let square = Rect::from_min_size(corner, vec2(5.0, 5.0));
+        let stroke = Stroke::new(1.2, palette.amber);
+        let painter = ui.painter();
+        match state(result, desk) {
+            State::Well => {
+                painter.rect_filled(square, 1.0, palette.good.gamma_multiply(0.75));
+            }
+            State::Missed => {
+                painter.rect_stroke(square, 1.0, stroke, StrokeKind::Inside);
+            }
+            State::None => {
+                painter.line_segment([square.left_top(), square.right_bottom()], stroke);
+                painter.line_segment([square.left_bottom(), square.right_top()], stroke);
+            }
+        }
+        if result.condition.levels == Some(desk.session.shown()) {
+            painter.rect_stroke(square.expand(2.0), 2.0, Stroke::new(1.0, palette.accent), StrokeKind::Inside);
+        }
+    }
+}
+
+/// How a condition fares.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum State {
+    /// All that is asked of it is met, as far as it can be told from one condition.
+    Well,
+    /// It misses what is asked.
+    Missed,
+    /// It is unstable or has no result.
+    None,
+}
+
+fn state(result: &ConditionResult, desk: &Desk<'_>) -> State {
+    let Ok(summary) = &result.outcome else { return State::None };
+    if !summary.loop_gain.stable() {
+        return State::None;
+    }
+    let (_, _, missed) = figures(result, desk);
+    if missed { State::Missed } else { State::Well }
 }
 
 /// The map: input voltage down, load across, each cell its phase margin and crossover.
@@ -74,7 +123,8 @@ fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult,
     ui.painter().rect(cell, 4.0, ground, edge, StrokeKind::Inside);
     let ink = if missed { palette.amber } else { palette.ink };
     let painter = ui.painter().with_clip_rect(cell);
-    painter.text(cell.center() - vec2(0.0, 6.5), Align2::CENTER_CENTER, &figure, theme::strong(12.5), ink);
+    let lift = if under.is_empty() { 0.0 } else { 6.5 };
+    painter.text(cell.center() - vec2(0.0, lift), Align2::CENTER_CENTER, &figure, theme::strong(12.5), ink);
     painter.text(cell.center() + vec2(0.0, 7.5), Align2::CENTER_CENTER, under, theme::small(), palette.weak);
     super::legend::focus_ring(ui, &response);
     let help = match &result.outcome {

@@ -93,7 +93,7 @@ fn is_range(least: &Entry, nominal: &Entry, greatest: &Entry) -> bool {
 }
 
 fn choice_row_ui(ui: &mut Ui, choice: &'static Choice, desk: &mut Desk<'_>) {
-    row_ui(ui, choice.name, choice.help, |ui, width| choice_ui(ui, choice, width, desk));
+    row_ui(ui, (choice.name, choice.help), CHOICE_LABEL_SHARE, |ui, width| choice_ui(ui, choice, width, desk));
 }
 
 /// A choice between options, as a list that opens.
@@ -126,7 +126,7 @@ pub(super) fn choice_ui(ui: &mut Ui, choice: &'static Choice, width: f32, desk: 
 }
 
 fn entry_row_ui(ui: &mut Ui, entry: &'static Entry, name: &str, desk: &mut Desk<'_>) {
-    row_ui(ui, name, entry.help, |ui, width| {
+    row_ui(ui, (name, entry.help), LABEL_SHARE, |ui, width| {
         field_ui(ui, entry, width, desk);
     });
     problem_ui(ui, entry.path, desk);
@@ -150,14 +150,16 @@ fn range_row_ui(ui: &mut Ui, entries: &[&'static Entry; 3], desk: &mut Desk<'_>)
 }
 
 /// Share of a row's width that the label takes.
-const LABEL_SHARE: f32 = 0.54;
+const LABEL_SHARE: f32 = 0.6;
+/// The same where the row holds a choice, whose options are words.
+const CHOICE_LABEL_SHARE: f32 = 0.4;
 
-fn row_ui(ui: &mut Ui, name: &str, help: &str, field: impl FnOnce(&mut Ui, f32)) {
+fn row_ui(ui: &mut Ui, words: (&str, &str), share: f32, field: impl FnOnce(&mut Ui, f32)) {
     let room = ui.available_width();
     ui.allocate_ui_with_layout(vec2(room, theme::ROW), Layout::left_to_right(Align::Center), |ui| {
         ui.spacing_mut().item_spacing.x = 4.0;
-        let label_width = (room * LABEL_SHARE).round();
-        label_ui(ui, name, help, label_width);
+        let label_width = (room * share).round();
+        label_ui(ui, words.0, words.1, label_width);
         field(ui, room - label_width - 4.0);
     });
 }
@@ -166,7 +168,7 @@ fn label_ui(ui: &mut Ui, name: &str, help: &str, width: f32) {
     let (rect, response) = ui.allocate_exact_size(vec2(width, theme::ROW), Sense::hover());
     let mut inner = ui.new_child(UiBuilder::new().max_rect(rect).layout(Layout::left_to_right(Align::Center)));
     inner.add(egui::Label::new(RichText::new(name).color(palette(ui).weak)).truncate());
-    response.on_hover_text(help);
+    response.on_hover_text(format!("{name}\n{help}"));
 }
 
 /// Identity of an entry's field, so that a finding can lead to it.
@@ -196,7 +198,7 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
                 .font(FontSelection::FontId(theme::body()))
                 .hint_text(if entry.optional { "not asked" } else { "" })
                 .margin(egui::Margin::symmetric(5, 2))
-                .desired_width(width - 12.0)
+                .desired_width(width)
                 .clip_text(true);
             ui.add(edit)
         })

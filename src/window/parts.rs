@@ -49,9 +49,10 @@ fn heading_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.horizontal(|ui| {
         ui.label(RichText::new("Compensator").font(theme::strong(13.5)));
         ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
-            for path in ["compensator.amplifier", "compensator.type"] {
+            ui.spacing_mut().item_spacing.x = 4.0;
+            for (path, width) in [("compensator.amplifier", 76.0), ("compensator.type", 74.0)] {
                 if let Some(choice) = desk.session.design().choice_rows().into_iter().find(|row| row.path == path) {
-                    form::choice_ui(ui, choice, 40.0, desk);
+                    form::choice_ui(ui, choice, width, desk);
                 }
             }
         });
@@ -76,7 +77,7 @@ fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) 
     let ink = if lit { palette.compensator } else { palette.weak };
     ui.painter().text(rect.left_center(), egui::Align2::LEFT_CENTER, short_name(entry), theme::body(), ink);
     response.on_hover_text(format!("{}\n{}", entry.name, entry.help));
-    form::field_ui(ui, entry, width - 46.0 - 24.0, desk);
+    form::field_ui(ui, entry, width - 46.0 - 25.0, desk);
     lock_ui(ui, entry, desk);
 }
 

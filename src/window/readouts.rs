@@ -24,9 +24,26 @@ pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     for readout in large {
         large_ui(ui, readout, analysis, desk);
     }
+    if !small.is_empty() {
+        header_ui(ui);
+    }
     for readout in small {
         small_ui(ui, readout, analysis, desk);
     }
+}
+
+/// What the two columns of the short rows are.
+fn header_ui(ui: &mut Ui) {
+    let palette = palette(ui);
+    let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), 15.0), Sense::hover());
+    let small = theme::small();
+    ui.painter().text(pos2(shown_column(rect), rect.center().y), Align2::RIGHT_CENTER, "shown", small.clone(), palette.weak);
+    ui.painter().text(rect.right_center(), Align2::RIGHT_CENTER, "worst of nine", small, palette.weak);
+}
+
+/// Right edge of the column of shown values in the short rows.
+fn shown_column(rect: Rect) -> f32 {
+    rect.left() + rect.width() * 0.68
 }
 
 fn value_text(readout: &Readout) -> String {
@@ -56,14 +73,23 @@ pub(super) fn short_condition(analysis: &Analysis, index: usize) -> String {
     })
 }
 
+/// Worst value over the nine conditions, or the word for why there is none.
+fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
+    let worst = readout.worst.as_ref()?;
+    Some(match worst.value {
+        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        None => match analysis.conditions.get(worst.index).map(|result| &result.outcome) {
+            Some(Err(_)) => "no result".to_owned(),
+            Some(Ok(summary)) if !summary.loop_gain.stable() => "unstable".to_owned(),
+            _ => "none".to_owned(),
+        },
+    })
+}
+
 /// Worst value over the nine conditions, with where it is.
 fn worst_text(readout: &Readout, analysis: &Analysis) -> Option<String> {
-    let worst = readout.worst.as_ref()?;
-    let value = match worst.value {
-        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
-        None => "none".to_owned(),
-    };
-    Some(format!("{value} at {}", short_condition(analysis, worst.index)))
+    let index = readout.worst.as_ref()?.index;
+    Some(format!("{} at {}", worst_value(readout, analysis)?, short_condition(analysis, index)))
 }
 
 fn ink(readout: &Readout, analysis: &Analysis, palette: &Palette) -> Color32 {
@@ -157,14 +183,10 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     let painter = ui.painter().with_clip_rect(rect);
     painter.text(rect.left_center(), Align2::LEFT_CENTER, readout.name, theme::small(), palette.weak);
     let value = value_text(readout);
-    let end = pos2(rect.left() + rect.width() * 0.62, rect.center().y);
+    let end = pos2(shown_column(rect), rect.center().y);
     painter.text(end, Align2::RIGHT_CENTER, &value, theme::body(), ink(readout, analysis, palette));
-    if let Some(worst) = &readout.worst {
-        let text = match worst.value {
-            Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
-            None => "none".to_owned(),
-        };
-        painter.text(rect.right_center(), Align2::RIGHT_CENTER, format!("worst {text}"), theme::small(), palette.weak);
+    if let Some(text) = worst_value(readout, analysis) {
+        painter.text(rect.right_center(), Align2::RIGHT_CENTER, text, theme::small(), palette.weak);
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();

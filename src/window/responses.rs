@@ -167,14 +167,14 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
         painter.vline(plot.x.at(frequency_hz), plot.rect.y_range(), Stroke::new(1.0, palette.weak.gamma_multiply(0.6)));
     }
     let entries = [(Some(closed), "closed loop", closed_pen(palette)), (open, "open loop", open_pen(palette))];
-    let mut y = plot.rect.bottom() - 12.0;
+    let mut y = plot.rect.top() + 12.0;
     for (values, name, pen) in entries {
         let Some(values) = values else { continue };
         let text = format!("{name}{}", value(values).unwrap_or_default());
         let ground = palette.canvas.gamma_multiply(0.85);
         let rect = plot::tag(&painter, pos2(plot.rect.left() + 34.0, y), Align2::LEFT_CENTER, &text, theme::small(), (palette.weak, ground));
         plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, pen);
-        y -= 15.0;
+        y += 15.0;
     }
     if let Some(at) = pointer {
         desk.view.cursor_hz = Some(plot.x.value(at.x));

@@ -8,7 +8,7 @@ use super::marks;
 use super::plot::{self, Pen, Plot};
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{Desk, Event};
-use crate::analysis::{Detail, Step, Steps};
+use crate::analysis::{Step, Steps};
 use crate::quantity::{self, Unit};
 
 /// Height of a heading above a plot [points].
@@ -37,11 +37,7 @@ pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let plot = axes(frame, step, held);
     let opacity = if desk.session.stale() { 0.4 } else { 1.0 };
     draw(ui, &plot, step, held, (opacity, palette));
-    if desk.view.event == Event::Load {
-        if let Some(detail) = detail {
-            read(ui, &plot, step, detail, palette);
-        }
-    }
+    read(ui, &plot, step, desk.view.event, palette);
 }
 
 /// Plot within a rectangle that has a heading above and labels left and below.
@@ -151,18 +147,21 @@ fn linear_grid(ui: &Ui, plot: &Plot, units: (Unit, Unit), palette: &Palette) {
 }
 
 /// Marks deviation and settling, in words and in the plot.
-fn read(ui: &Ui, plot: &Plot, step: &Step, _detail: &Detail, palette: &Palette) {
+fn read(ui: &Ui, plot: &Plot, step: &Step, event: Event, palette: &Palette) {
     let painter = ui.painter().with_clip_rect(plot.rect);
     let ground = palette.canvas.gamma_multiply(0.85);
-    let (top, low) = (plot.at(step.deviation_at_s, step.initial_v), plot.at(step.deviation_at_s, step.initial_v + step.deviation_v));
-    painter.line_segment([top, low], Stroke::new(1.5, palette.good));
-    let text = quantity::print_digits(step.deviation_v, Unit::Volt, 3);
-    let at = pos2(low.x + 8.0, low.y.clamp(plot.rect.top() + 8.0, plot.rect.bottom() - 9.0));
-    plot::tag(&painter, at, Align2::LEFT_CENTER, &text, theme::strong(12.5), (palette.good, ground));
+    if let Some(time) = step.deviation_at_s {
+        let (top, low) = (plot.at(time, step.initial_v), plot.at(time, step.initial_v + step.deviation_v));
+        painter.line_segment([top, low], Stroke::new(1.5, palette.good));
+        let text = quantity::print_digits(step.deviation_v, Unit::Volt, 3);
+        let at = pos2(low.x + 8.0, low.y.clamp(plot.rect.top() + 8.0, plot.rect.bottom() - 9.0));
+        plot::tag(&painter, at, Align2::LEFT_CENTER, &text, theme::strong(12.5), (palette.good, ground));
+    }
     if let Some(settling_s) = step.settling_s.filter(|time| plot.x.holds(*time)) {
         marks::tick(&painter, plot.rect, plot.x.at(settling_s), palette.good);
     }
-    let size = quantity::print_digits(step.size, Unit::Ampere, 3);
+    let unit = if event == Event::Load { Unit::Ampere } else { Unit::Volt };
+    let size = quantity::print_digits(step.size, unit, 3);
     let band = quantity::print_digits(step.band_v, Unit::Volt, 3);
     let text = match step.settling_s {
         Some(time) => format!("+{size}: settles to ±{band} in {}", quantity::print_digits(time, Unit::Second, 3)),

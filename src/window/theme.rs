@@ -153,7 +153,7 @@ impl LineStyle {
 }
 
 /// Width of the column of the power stage [points].
-pub(super) const LEFT_COLUMN: f32 = 252.0;
+pub(super) const LEFT_COLUMN: f32 = 264.0;
 /// Width of the column of read-outs [points].
 pub(super) const RIGHT_COLUMN: f32 = 286.0;
 /// Height of the top bar [points].
