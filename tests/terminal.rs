@@ -176,7 +176,7 @@ fn wrong_entries_are_told_with_place_reason_and_hint() {
         ("control.duty.greatest=1.5", "control.duty.greatest", "from 0 to 1"),
         ("control.duty.greatest=0.3", "control.duty.greatest", "duty ratio"),
         ("compensator.reference=30", "compensator.reference", "only divides"),
-        ("stage.input.least=13", "stage.input.least", "must be below"),
+        ("stage.input.least=13", "stage.input.least", "must not be above"),
         ("stage.topology=bost", "stage.topology", "not an option"),
         ("stage.inductance=1u", "stage.inductance", "no entry"),
     ] {

@@ -10,8 +10,8 @@ use crate::quantity::{Unit, print};
 /// Greatest DC voltage that is not treated as hazardous to touch [V].
 const TOUCHABLE: f64 = 60.0;
 
-/// One caution when the input, the output or the switch node goes above [`TOUCHABLE`].
-pub(super) fn findings(design: &Design, output: f64) -> Option<Finding> {
+/// A caution when the input, the output or the switch node goes above [`TOUCHABLE`].
+pub(super) fn caution(design: &Design, output: f64) -> Option<Finding> {
     let input = design.values.get("stage.input.greatest").unwrap_or(0.0);
     let inverting = design.choices.is("stage.topology", "buck-boost");
     // Between an inverted output and the input stands the sum of both.

@@ -88,13 +88,12 @@ impl Design {
 
     /// Least, nominal and greatest that do not rise.
     fn order_problems(&self) -> Vec<Finding> {
-        const RISING: [[&str; 2]; 6] = [
+        const RISING: [[&str; 2]; 5] = [
             ["stage.input.least", "stage.input.nominal"],
             ["stage.input.nominal", "stage.input.greatest"],
             ["stage.load.least", "stage.load.nominal"],
             ["stage.load.nominal", "stage.load.greatest"],
             ["control.duty.least", "control.duty.greatest"],
-            ["stage.input.least", "stage.input.greatest"],
         ];
         let falling = |[lower, upper]: [&'static str; 2]| {
             let (lower, upper) = (table::entry(lower)?, table::entry(upper)?);
@@ -104,9 +103,10 @@ impl Design {
                 return None;
             }
             let message = format!(
-                "{}, {}, must be below {}, {}.",
+                "{}, {}, must {} {}, {}.",
                 lower.name,
                 print(low, lower.unit),
+                if same_allowed { "not be above" } else { "be below" },
                 upper.name,
                 print(high, upper.unit)
             );
@@ -161,7 +161,7 @@ impl Design {
         let output = compensator.dc_output_voltage();
         let mut remarks = Vec::new();
         remarks.extend(self.values.get(OUTPUT).and_then(|entered| output_differs(entered, output)));
-        remarks.extend(caution::findings(self, output));
+        remarks.extend(caution::caution(self, output));
         if self.choices.is("stage.input-capacitor", "none") {
             remarks.push(
                 Finding::notice(
