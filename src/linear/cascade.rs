@@ -70,15 +70,16 @@ enum Poles {
 }
 
 impl Poles {
-    /// Distance of a zero from the nearer pole, on the scale of its own size.
-    fn distance(&self, zero: Complex) -> f64 {
-        let to = |pole: Complex| (zero - pole).norm() / (zero.norm() + pole.norm()).max(f64::MIN_POSITIVE);
-        let real = |x: f64| Complex::new(x, 0.0);
-        match *self {
-            Self::One(p) => to(real(p)),
-            Self::Two(p, q) => to(real(p)).min(to(real(q))),
-            Self::Pair(p) => to(p),
-        }
+    /// How badly a zero fits here. A zero far below the poles is a small rest of large terms, so it costs most; one far above only spreads
+    /// the scales.
+    fn cost(&self, zero: Complex) -> f64 {
+        let size = match *self {
+            Self::One(p) => p.abs(),
+            Self::Two(p, q) => p.abs().max(q.abs()),
+            Self::Pair(p) => p.norm(),
+        };
+        let apart = ((zero.norm() + f64::MIN_POSITIVE) / (size + f64::MIN_POSITIVE)).ln();
+        if apart < 0.0 { -apart } else { 1e-3 * apart }
     }
 
     fn room(&self) -> usize {
@@ -86,7 +87,7 @@ impl Poles {
     }
 }
 
-/// Groups the roots: complex pairs of zeros first, each to the nearest section with room for two, then the real ones.
+/// Groups the roots: complex pairs of zeros first, each to the section with room for two that it fits best, then the real ones.
 fn sections(zpk: &Zpk) -> Result<Vec<Section>, LinearError> {
     if zpk.zeros.len() > zpk.poles.len() {
         return Err(LinearError::Improper);
@@ -107,7 +108,7 @@ fn sections(zpk: &Zpk) -> Result<Vec<Section>, LinearError> {
             let nearest = sections
                 .iter_mut()
                 .filter(|s| s.zeros.len() + need <= s.poles.room())
-                .min_by(|p, q| p.poles.distance(*zero).total_cmp(&q.poles.distance(*zero)))
+                .min_by(|p, q| p.poles.cost(*zero).total_cmp(&q.poles.cost(*zero)))
                 .ok_or(LinearError::Improper)?;
             nearest.zeros.push(*zero);
             if need == 2 {

@@ -86,3 +86,58 @@ pub fn pade_phase_error_deg(delay_s: f64, order: usize, f_hz: f64) -> f64 {
     }
     error.abs().to_degrees()
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::precision::{assert_complex_close, assert_near, assert_same_roots};
+    use super::super::{Complex, Zpk};
+    use super::*;
+
+    /// Reference: the [3/3] approximant (120 − 60s + 12s² − s³)/(120 + 60s + 12s² + s³); Golub and Van Loan, Matrix Computations (from memory).
+    #[test]
+    fn order_three_is_the_known_quotient() {
+        let delay = 2e-6;
+        let system = pade_delay(delay, 3).unwrap();
+        for f in [1.0, 1e4, 1e5, 3e5, 1e6] {
+            let s = Complex::new(0.0, TAU * f * delay);
+            let expected =
+                (120.0 - 60.0 * s + 12.0 * s * s - s * s * s) / (120.0 + 60.0 * s + 12.0 * s * s + s * s * s);
+            assert_complex_close(system.entry_at(0, 0, s / delay).unwrap(), expected, 1e-13);
+        }
+        let zpk = Zpk::from_state_space(&system, 0, 0).unwrap();
+        let mirrored: Vec<Complex> = zpk.poles.iter().map(|p| -p).collect();
+        assert_same_roots(&zpk.zeros, &mirrored, 1e-11);
+        // Roots of s³ + 12s² + 60s + 120, from the cubic's closed form.
+        let real = -4.644_370_709_252_17;
+        let pair = Complex::new(-3.677_814_645_373_91, 3.508_761_919_567_44);
+        assert_same_roots(&zpk.poles, &[real / delay + 0.0 * pair, pair / delay, pair.conj() / delay], 1e-12);
+    }
+
+    /// Definition: unit gain at every order and frequency, and a phase error no larger than stated.
+    #[test]
+    fn all_pass_with_the_stated_error() {
+        let delay = 1e-6;
+        for order in 1..=8 {
+            let system = pade_delay(delay, order).unwrap();
+            assert_eq!(system.order(), order);
+            assert!(system.poles().unwrap().iter().all(|p| p.re < 0.0));
+            for x in [0.03, 0.3, 1.0, 1.9] {
+                let h = system.entry_at(0, 0, Complex::new(0.0, x / delay)).unwrap();
+                assert_near(h.norm(), 1.0, 1e-13);
+                let error = (h * Complex::cis(x)).arg().to_degrees().abs();
+                let stated = pade_phase_error_deg(delay, order, x / delay / TAU);
+                assert!(error <= 1.05 * stated + 1e-12, "order {order} at {x}: {error} against {stated}");
+            }
+        }
+        // The figures of the header.
+        assert!(pade_phase_error_deg(0.3e-5, 3, 0.5e5) < 0.01);
+        assert_near(pade_phase_error_deg(1.0, 3, 1.95 / TAU).to_radians(), 1e-3, 1e-4);
+    }
+
+    #[test]
+    fn no_delay_and_impossible_delays() {
+        assert_eq!(pade_delay(0.0, 3).unwrap().order(), 0);
+        assert!(pade_delay(-1e-6, 3).is_err() && pade_delay(1e-6, 0).is_err() && pade_delay(1e-6, 13).is_err());
+        assert_eq!(pade_delay(f64::NAN, 3), Err(LinearError::NotFinite));
+    }
+}

@@ -197,3 +197,71 @@ impl Blocks {
 fn no_part(part: usize) -> LinearError {
     LinearError::Shape(format!("there is no part {part}"))
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::precision::{assert_close, assert_complex_close};
+    use super::super::{Complex, Zpk};
+    use super::*;
+
+    fn lag(gain: f64, corner: f64) -> StateSpace {
+        Zpk::new(vec![], vec![Complex::new(-corner, 0.0)], gain * corner).unwrap().cascade().unwrap()
+    }
+
+    /// Definition: the closed loop of two lags and a direct path against the algebra of complex numbers.
+    #[test]
+    fn a_loop_with_a_disturbance() {
+        let (plant, controller) = (lag(5.0, 100.0), Zpk::from_corners_hz(3.0, &[7.0], &[900.0], 1).cascade().unwrap());
+        let system = StateSpace::connect(
+            &[&plant, &controller],
+            &[
+                Wire { from_part: 0, output: "y", to_part: 1, input: "u", gain: -2.0 },
+                Wire { from_part: 1, output: "y", to_part: 0, input: "u", gain: 1.0 },
+            ],
+            &[Port { name: "reference", part: 1, port: "u" }, Port { name: "disturbance", part: 0, port: "u" }],
+            &[Port { name: "out", part: 0, port: "y" }, Port { name: "control", part: 1, port: "y" }],
+        )
+        .unwrap();
+        assert_eq!(system.order(), 3);
+        for w in [0.3, 20.0, 4e3] {
+            let s = Complex::new(0.0, w);
+            let (p, c) = (plant.entry_at(0, 0, s).unwrap(), controller.entry_at(0, 0, s).unwrap());
+            let back = 1.0 / (1.0 + 2.0 * p * c);
+            assert_complex_close(system.entry_at(0, 0, s).unwrap(), p * c * back, 1e-12);
+            assert_complex_close(system.entry_at(0, 1, s).unwrap(), p * back, 1e-12);
+            assert_complex_close(system.entry_at(1, 1, s).unwrap(), -2.0 * p * c * back, 1e-12);
+            assert_complex_close(system.at_hz(w / std::f64::consts::TAU).unwrap()[(1, 0)], c * back, 1e-12);
+        }
+        assert_close(system.dc_gain(0, 0).unwrap(), 0.5, 1e-12);
+        assert_eq!(system.subsystem(&["control"], &["disturbance"]).unwrap().outputs, ["control"]);
+    }
+
+    #[test]
+    fn series_is_the_product() {
+        let (p, q) = (lag(2.0, 10.0), lag(-3.0, 1e4));
+        let both = p.series(&q).unwrap();
+        let s = Complex::new(0.0, 55.0);
+        assert_complex_close(
+            both.entry_at(0, 0, s).unwrap(),
+            p.entry_at(0, 0, s).unwrap() * q.entry_at(0, 0, s).unwrap(),
+            1e-13,
+        );
+        let closed = both.negative_feedback().unwrap();
+        let t = both.entry_at(0, 0, s).unwrap();
+        assert_complex_close(closed.entry_at(0, 0, s).unwrap(), t / (1.0 + t), 1e-13);
+    }
+
+    #[test]
+    fn impossible_connections_are_errors() {
+        let direct = StateSpace::constant(DMatrix::from_element(1, 1, -1.0), &["u"], &["y"]).unwrap();
+        assert_eq!(direct.negative_feedback(), Err(LinearError::AlgebraicLoop));
+        let wire = Wire { from_part: 0, output: "y", to_part: 0, input: "nothing", gain: 1.0 };
+        assert_eq!(
+            StateSpace::connect(&[&direct], &[wire], &[], &[]),
+            Err(LinearError::UnknownPort("nothing".to_owned()))
+        );
+        let wire = Wire { from_part: 3, output: "y", to_part: 0, input: "u", gain: 1.0 };
+        assert!(matches!(StateSpace::connect(&[&direct], &[wire], &[], &[]), Err(LinearError::Shape(_))));
+        assert!(direct.series(&StateSpace::constant(DMatrix::zeros(1, 2), &["a", "b"], &["y"]).unwrap()).is_err());
+    }
+}

@@ -161,15 +161,17 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
     fn extremes_near_a_level(&self) -> Vec<f64> {
         let mut found = Vec::new();
         for i in 1..self.frequencies.len().saturating_sub(1) {
-            let g = &self.ln_gain[i - 1..=i + 1];
-            if reaches(g, if g[1] < 0.0 { 1.0 } else { -1.0 }, g[1].abs()) {
-                found.extend(self.extremum(i, |point| point.gain_slope));
+            let gain = self.ln_gain[i];
+            let direction = if gain < 0.0 { 1.0 } else { -1.0 };
+            if is_extreme(&self.ln_gain[i - 1..=i + 1], direction) {
+                found.extend(self.extremum(i, direction, gain.abs(), |point| point.gain_slope));
             }
             if i + 1 < self.within {
-                let p = &self.phase[i - 1..=i + 1];
-                let to_level_above = (-PI - p[1]).rem_euclid(TAU);
-                if reaches(p, 1.0, to_level_above) || reaches(p, -1.0, TAU - to_level_above) {
-                    found.extend(self.extremum(i, |point| point.phase_slope));
+                let to_level_above = (-PI - self.phase[i]).rem_euclid(TAU);
+                for (direction, distance) in [(1.0, to_level_above), (-1.0, TAU - to_level_above)] {
+                    if is_extreme(&self.phase[i - 1..=i + 1], direction) {
+                        found.extend(self.extremum(i, direction, distance, |point| point.phase_slope));
+                    }
                 }
             }
         }
@@ -177,12 +179,20 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
         found
     }
 
-    /// The extremum around grid point `i` where the slope vanishes.
-    fn extremum(&self, i: usize, slope: impl Fn(&LogPoint) -> f64) -> Option<f64> {
-        let (low, high) = (self.frequencies[i - 1].ln(), self.frequencies[i + 1].ln());
+    /// The extremum beside grid point `i` where the slope vanishes, if it may lie as far beyond that point as `distance`.
+    fn extremum(&self, i: usize, direction: f64, distance: f64, slope: impl Fn(&LogPoint) -> f64) -> Option<f64> {
+        let here = self.frequencies[i].ln();
         let value = |x: f64| slope(&self.response.log_point(x.exp()));
-        let (at_low, at_high) = (value(low), value(high));
-        (at_low * at_high < 0.0).then(|| bracketed_root(value, (low, at_low), (high, at_high), 1e-9).exp())
+        let at_here = value(here);
+        let other = self.frequencies[if direction * at_here > 0.0 { i + 1 } else { i - 1 }].ln();
+        // The curve flattens towards its extremum, so the tangent overshoots it; half as much again is granted for curves that do not.
+        if distance > 1.5 * at_here.abs() * (other - here).abs() {
+            return None;
+        }
+        let at_other = value(other);
+        let (low, high) =
+            if other > here { ((here, at_here), (other, at_other)) } else { ((other, at_other), (here, at_here)) };
+        (at_here * at_other < 0.0).then(|| bracketed_root(value, low, high, 1e-9).exp())
     }
 
     fn gain_crossings(&self) -> Vec<Crossover> {
@@ -336,11 +346,9 @@ fn distance_square(gain: f64x4, cos_half_phase: f64x4) -> f64x4 {
     off * off + f64x4::splat(4.0) * gain * cos_half_phase * cos_half_phase
 }
 
-/// Whether the middle of three values is an extremum in the given direction that may reach a level so far away.
-fn reaches(values: &[f64], direction: f64, distance: f64) -> bool {
-    let (before, after) = (direction * (values[1] - values[0]), direction * (values[1] - values[2]));
-    // A parabola rises above its highest sample by at most a quarter of the larger step to a neighbour; four times that is granted.
-    before >= 0.0 && after >= 0.0 && distance <= before.max(after)
+/// Whether the middle of three values is an extremum in the given direction.
+fn is_extreme(values: &[f64], direction: f64) -> bool {
+    direction * (values[1] - values[0]) >= 0.0 && direction * (values[1] - values[2]) >= 0.0
 }
 
 /// Wraps an angle to (−180°, 180°].
@@ -388,4 +396,210 @@ fn merge(p: &[f64], q: &[f64]) -> Vec<f64> {
         }
     }
     all
+}
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use super::super::precision::{assert_close, assert_near};
+    use super::super::{FactoredResponse, SampledResponse, Zpk, eigenvalues};
+    use super::*;
+
+    fn real(x: f64) -> Complex {
+        Complex::new(x, 0.0)
+    }
+
+    fn response(zeros: &[Complex], poles: &[Complex], gain: f64, delay_s: f64) -> FactoredResponse {
+        let both = |roots: &[Complex]| {
+            roots.iter().flat_map(|r| if r.im == 0.0 { vec![*r] } else { vec![*r, r.conj()] }).collect()
+        };
+        FactoredResponse::new(Zpk::new(both(zeros), both(poles), gain).unwrap(), delay_s)
+    }
+
+    /// Reference: T = ω0/(s(1 + s/ω2)); Q = √(cos φm)/sin φm, so Q = 1 goes with 52° (any control text, from memory; exact here).
+    #[test]
+    fn second_order_loop() {
+        for q in [0.5_f64, 1.0, 3.0] {
+            let (w2, w0) = (TAU * 1e4, TAU * 1e4 * q * q);
+            let found = margins(&response(&[], &[Complex::ZERO, real(-w2)], w0 * w2, 0.0), 1.0, 1e6);
+            assert_eq!(found.crossovers.len(), 1);
+            let margin = found.crossovers[0].phase_margin_deg.to_radians();
+            assert_close(margin.cos().sqrt() / margin.sin(), q, 1e-12);
+            assert!(found.crossovers[0].falling && found.phase_crossovers.is_empty() && found.above.is_empty());
+            assert_eq!(found.gain_margin_up_db(), None);
+            let delay = found.delay_margin_s.unwrap();
+            assert_close(delay, margin / (TAU * found.crossovers[0].frequency_hz), 1e-14);
+        }
+    }
+
+    /// Planted answer: 1/(s + 1)³ scaled crosses −180° at √3 rad/s where it is 1/8 of its DC gain; an integrator with delay at a quarter period.
+    #[test]
+    fn gain_margins_in_closed_form() {
+        let cube = margins(&response(&[], &[real(-1.0); 3], 4.0, 0.0), 1e-4, 10.0);
+        assert_eq!(cube.phase_crossovers.len(), 1);
+        assert_close(cube.phase_crossovers[0].frequency_hz, 3.0_f64.sqrt() / TAU, 1e-13);
+        assert_close(cube.gain_margin_up_db().unwrap(), 20.0 * 2.0_f64.log10(), 1e-12);
+        assert_eq!(cube.phase_crossovers[0].turns, 0);
+        let delayed = margins(&response(&[], &[Complex::ZERO], TAU * 1e3, 1e-4), 1.0, 1e5);
+        assert_close(delayed.crossovers[0].phase_margin_deg, 90.0 - 36.0, 1e-12);
+        for (k, crossing) in delayed.phase_crossovers.iter().enumerate() {
+            assert_close(crossing.frequency_hz, (0.25 + k as f64) / 1e-4, 1e-12);
+            assert_eq!(crossing.turns, i32::try_from(k).unwrap());
+        }
+        assert_eq!(delayed.phase_crossovers.len(), 10);
+    }
+
+    /// Definition: every margin put back gives |T| = 1, T = −g, |1 + T| least, and the delay margin puts T on −1.
+    #[test]
+    fn margins_put_back() {
+        let lc = Complex::new(-2e3, 2.5e4);
+        let loop_gain = response(&[real(-1e4), real(-2e4), real(3e5)], &[Complex::ZERO, lc, real(-6e5)], -2e5, 0.3e-6);
+        let found = margins(&loop_gain, 0.3, 150e3);
+        assert!(!found.crossovers.is_empty() && !found.phase_crossovers.is_empty());
+        for c in &found.crossovers {
+            assert_close(loop_gain.at_hz(c.frequency_hz).norm(), 1.0, 1e-12);
+            assert_near(loop_gain.at_hz(c.frequency_hz).arg().to_degrees(), wrap_deg(c.phase_margin_deg - 180.0), 1e-9);
+        }
+        for c in &found.phase_crossovers {
+            let t = loop_gain.at_hz(c.frequency_hz);
+            assert_near(t.im / t.norm(), 0.0, 1e-12);
+            assert_close(-t.re, 10.0_f64.powf(-c.gain_margin_db / 20.0), 1e-11);
+        }
+        let least = (0..200_000)
+            .map(|k| (loop_gain.at_hz(0.3 * (150e3_f64 / 0.3).powf(f64::from(k) / 2e5)) + 1.0).norm())
+            .fold(f64::INFINITY, f64::min);
+        assert!(found.modulus_margin <= least && least < found.modulus_margin * (1.0 + 1e-6));
+        assert_close((loop_gain.at_hz(found.modulus_frequency_hz) + 1.0).norm(), found.modulus_margin, 1e-12);
+        assert_close(found.sensitivity_peak, 1.0 / found.modulus_margin, 1e-15);
+        let on_edge = FactoredResponse::new(loop_gain.zpk().clone(), 0.3e-6 + found.delay_margin_s.unwrap());
+        let touching = margins(&on_edge, 0.3, 150e3);
+        assert!(touching.modulus_margin < 1e-10, "{}", touching.modulus_margin);
+    }
+
+    /// Planted answer: a resonance of Q = 50,000 that pokes 1 dB through 0 dB between two grid points.
+    #[test]
+    fn a_needle_is_not_missed() {
+        let f = 13_579.0;
+        let w = TAU * f;
+        let q = 5e4;
+        let needle = Complex::new(-0.5 / q, (1.0 - 0.25 / (q * q)).sqrt()) * w;
+        let gain = w * w / q * 10.0_f64.powf(0.05);
+        let found = margins(&response(&[], &[needle], gain, 0.0), 1.0, 1e5);
+        assert_eq!(found.crossovers.len(), 2);
+        let [up, down] = found.crossovers[..] else { unreachable!() };
+        assert!(!up.falling && down.falling);
+        // Around the peak |T|² = peak²/(1 + x²), x = 2Q·Δf/f.
+        let expected = f * (10.0_f64.powf(0.1) - 1.0).sqrt() / q;
+        assert_close(down.frequency_hz - up.frequency_hz, expected, 1e-4);
+    }
+
+    /// Planted answer: a bump that stays 0.1 % below and one that rises 0.1 % above 0 dB, on a smooth loop without resonances.
+    #[test]
+    fn tangency_is_decided_between_grid_points() {
+        let bump = |peak: f64| {
+            // s/((s + a)(s + b)) peaks at √(ab) with 1/(a + b).
+            response(&[Complex::ZERO], &[real(-1e3), real(-1.3e3)], 2.3e3 * peak, 0.0)
+        };
+        assert_eq!(margins(&bump(1.001), 1.0, 1e5).crossovers.len(), 2);
+        assert!(margins(&bump(0.999), 1.0, 1e5).crossovers.is_empty());
+        let found = margins(&bump(1.0 + 1e-9), 1.0, 1e5);
+        assert_eq!(found.crossovers.len(), 2);
+        assert_close(found.crossovers[0].frequency_hz, 1.3e6_f64.sqrt() / TAU, 1e-3);
+    }
+
+    #[test]
+    fn crossovers_above_the_limit_are_listed_apart() {
+        let loop_gain = response(&[], &[Complex::ZERO], TAU * 1e4, 0.0);
+        let found = margins(&loop_gain, 1e-2, 1e3);
+        assert!(found.crossovers.is_empty() && found.delay_margin_s.is_none() && found.headline_crossover().is_none());
+        assert_eq!(found.above.len(), 1);
+        assert_close(found.above[0].frequency_hz, 1e4, 1e-13);
+        assert_close(found.above[0].slope_db_per_decade, -20.0, 1e-13);
+    }
+
+    /// Two routes: a model against itself sampled.
+    #[test]
+    fn sampled_data_has_the_margins_of_its_model() {
+        let loop_gain = response(&[real(-1e4)], &[Complex::ZERO, Complex::new(-3e3, 2e4), real(-4e5)], 5e14, 1e-6);
+        let f: Vec<f64> = (0..2001).map(|k| 10.0_f64.powf(2.0 + 0.002 * f64::from(k))).collect();
+        let values: Vec<Complex> = f.iter().map(|f| loop_gain.at_hz(*f)).collect();
+        let (exact, sampled) =
+            (margins(&loop_gain, 100.0, 1e6), margins(&SampledResponse::new(&f, &values).unwrap(), 1.0, 1e9));
+        assert_eq!(exact.crossovers.len(), sampled.crossovers.len());
+        for (p, q) in exact.crossovers.iter().zip(&sampled.crossovers) {
+            assert_close(p.frequency_hz, q.frequency_hz, 1e-5);
+            assert_near(p.phase_margin_deg, q.phase_margin_deg, 1e-2);
+        }
+        assert_close(exact.gain_margin_up_db().unwrap(), sampled.gain_margin_up_db().unwrap(), 1e-4);
+        assert_close(exact.modulus_margin, sampled.modulus_margin, 1e-4);
+        assert!(sampled.above.is_empty());
+    }
+
+    #[test]
+    fn headline_and_wrapped_margins() {
+        assert_near(wrap_deg(190.0), -170.0, 1e-12);
+        assert_near(wrap_deg(-180.0), 180.0, 1e-12);
+        assert_near(wrap_deg(540.0), 180.0, 1e-12);
+        // Phase −350° at crossover: a margin of 190° wraps to −170°, and a delay of 190° reaches −1.
+        let lc = Complex::new(-10.0, 1e3);
+        let found = margins(&response(&[real(-1e3)], &[lc, lc], 3e11, 0.0), 1.0, 1e4);
+        let least = found.headline_crossover().unwrap().phase_margin_deg.abs();
+        assert!(found.crossovers.iter().all(|c| c.phase_margin_deg.abs() >= least));
+    }
+
+    #[test]
+    fn impossible_bands_have_no_crossings() {
+        let loop_gain = response(&[], &[Complex::ZERO], 1.0, 0.0);
+        for (from, to) in [(1.0, 1.0), (2.0, 1.0), (0.0, 1.0), (f64::NAN, 1.0), (1.0, f64::INFINITY)] {
+            let found = margins(&loop_gain, from, to);
+            assert!(
+                found.crossovers.is_empty() && found.phase_crossovers.is_empty() && found.modulus_margin.is_finite()
+            );
+        }
+        let silent = margins(&FactoredResponse::new(Zpk::constant(0.0), 0.0), 1.0, 10.0);
+        assert_near(silent.modulus_margin, 1.0, 1e-15);
+    }
+
+    /// Frequencies [Hz] where |T| = 1, as the imaginary eigenvalues of the Hamiltonian matrix of a strictly proper loop.
+    /// Source: Boyd, Balakrishnan and Kabamba, Math. Control Signals Systems 2 (1989), 207 (from memory).
+    fn crossovers_by_hamiltonian(loop_gain: &FactoredResponse) -> Vec<f64> {
+        let system = loop_gain.zpk().cascade().unwrap();
+        let n = system.order();
+        let mut h = nalgebra::DMatrix::zeros(2 * n, 2 * n);
+        h.view_mut((0, 0), (n, n)).copy_from(&system.a);
+        h.view_mut((0, n), (n, n)).copy_from(&(&system.b * system.b.transpose()));
+        h.view_mut((n, 0), (n, n)).copy_from(&-(system.c.transpose() * &system.c));
+        h.view_mut((n, n), (n, n)).copy_from(&-system.a.transpose());
+        let on_axis = |r: &&Complex| r.im > 0.0 && r.re.abs() < 1e-6 * r.norm();
+        let mut found: Vec<f64> = eigenvalues(&h).unwrap().iter().filter(on_axis).map(|r| r.im / TAU).collect();
+        found.sort_by(f64::total_cmp);
+        found
+    }
+
+    proptest! {
+        /// Two routes: all crossovers against the Hamiltonian's eigenvalues, with resonances down to 1 % damping.
+        #[test]
+        fn all_crossovers_are_found(
+            pairs in prop::collection::vec((2.5..4.5_f64, 0.01..0.5_f64), 1..3),
+            zeros in prop::collection::vec((2.5..4.5_f64, 0.01..0.5_f64), 0..2),
+            gain_db in -20.0..60.0_f64,
+        ) {
+            let root = |(decade, damping): &(f64, f64)| Complex::new(-damping, (1.0 - damping * damping).sqrt()) * 10.0_f64.powf(*decade);
+            let mut poles: Vec<Complex> = pairs.iter().map(root).collect();
+            poles.push(real(-300.0));
+            let zeros: Vec<Complex> = zeros.iter().map(root).collect();
+            let shape = response(&zeros, &poles, 1.0, 0.0);
+            let gain = 10.0_f64.powf(gain_db / 20.0) / shape.at_hz(1.0).norm();
+            let loop_gain = response(&zeros, &poles, gain, 0.0);
+            let expected = crossovers_by_hamiltonian(&loop_gain);
+            let found = margins(&loop_gain, 1e-1, 1e12);
+            // Where the curve all but touches 0 dB, two eigenvalues meet and the count of either route is a matter of rounding.
+            prop_assume!(expected.windows(2).all(|pair| pair[1] > pair[0] * 1.0001));
+            prop_assert_eq!(found.crossovers.len(), expected.len(), "{:?} {:?}", found.crossovers, expected);
+            for (c, f) in found.crossovers.iter().zip(&expected) {
+                prop_assert!((c.frequency_hz / f - 1.0).abs() < 1e-5, "{} against {f}", c.frequency_hz);
+            }
+        }
+    }
 }

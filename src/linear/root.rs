@@ -41,3 +41,24 @@ pub(super) fn bracketed_root(
     }
     0.5 * (low + high)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::precision::assert_near;
+    use super::*;
+
+    #[test]
+    fn finds_roots_that_fool_the_secant() {
+        // A wall beside a plain: regula falsi alone would creep.
+        let steep = |x: f64| (40.0 * (x - 0.9)).exp_m1();
+        assert_near(bracketed_root(steep, (0.0, steep(0.0)), (2.0, steep(2.0)), 1e-13), 0.9, 1e-12);
+        // A jump.
+        let jump = |x: f64| if x < 0.3 { -1.0 } else { 1.0 };
+        assert_near(bracketed_root(jump, (0.0, -1.0), (1.0, 1.0), 1e-13), 0.3, 1e-12);
+    }
+
+    #[test]
+    fn without_a_sign_change_the_nearer_end_is_taken() {
+        assert_near(bracketed_root(|x| x, (1.0, 1.0), (2.0, 2.0), 1e-9), 1.0, 0.0);
+    }
+}

@@ -116,3 +116,38 @@ impl FrequencyResponse for SampledResponse {
         Some((*self.frequencies_hz.first()?, *self.frequencies_hz.last()?))
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::precision::assert_near;
+    use super::*;
+
+    #[test]
+    fn straight_lines_between_points_and_held_ends() {
+        let sampled = SampledResponse::from_db_degrees(&[10.0, 1e3], &[40.0, 0.0], &[-90.0, -180.0]).unwrap();
+        let middle = sampled.log_point(100.0);
+        assert_near(middle.ln_gain * 20.0 / std::f64::consts::LN_10, 20.0, 1e-12);
+        assert_near(middle.phase_rad.to_degrees(), -135.0, 1e-12);
+        assert_near(middle.gain_slope, -1.0, 1e-14);
+        assert_near(sampled.log_point(1.0).phase_rad.to_degrees(), -90.0, 1e-12);
+        assert_near(sampled.log_point(1e9).ln_gain, 0.0, 1e-12);
+        assert_eq!(sampled.band_hz(), Some((10.0, 1e3)));
+    }
+
+    #[test]
+    fn complex_points_unwrap() {
+        let f: Vec<f64> = (1..50).map(f64::from).collect();
+        let values: Vec<Complex> = f.iter().map(|f| Complex::cis(-0.5 * f)).collect();
+        let sampled = SampledResponse::new(&f, &values).unwrap();
+        assert_near(sampled.log_point(49.0).phase_rad, -24.5, 1e-12);
+    }
+
+    #[test]
+    fn bad_sweeps_are_errors() {
+        assert!(SampledResponse::from_db_degrees(&[1.0], &[0.0], &[0.0]).is_err());
+        assert!(SampledResponse::from_db_degrees(&[1.0, 1.0], &[0.0; 2], &[0.0; 2]).is_err());
+        assert!(SampledResponse::from_db_degrees(&[0.0, 1.0], &[0.0; 2], &[0.0; 2]).is_err());
+        assert!(SampledResponse::from_db_degrees(&[1.0, 2.0], &[0.0, f64::NAN], &[0.0; 2]).is_err());
+        assert_eq!(SampledResponse::new(&[1.0, 2.0], &[Complex::ZERO; 2]), Err(LinearError::NotFinite));
+    }
+}

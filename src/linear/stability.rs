@@ -358,3 +358,191 @@ fn turn(kind: Certain, start: &LogPoint, end: &LogPoint) -> f64 {
         Certain::Disc => ((end.value() + 1.0) / (start.value() + 1.0)).arg(),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use super::super::precision::assert_close;
+    use super::super::{StateSpace, Wire, Zpk, pade_delay};
+    use super::*;
+
+    fn real(x: f64) -> Complex {
+        Complex::new(x, 0.0)
+    }
+
+    fn zpk(zeros: &[Complex], poles: &[Complex], gain: f64) -> Zpk {
+        let both = |roots: &[Complex]| {
+            roots.iter().flat_map(|r| if r.im == 0.0 { vec![*r] } else { vec![*r, r.conj()] }).collect()
+        };
+        Zpk::new(both(zeros), both(poles), gain).unwrap()
+    }
+
+    /// Closed-loop poles with the delay as an all-pass of order 3.
+    fn closed_loop_poles(open: &FactoredResponse) -> Vec<Complex> {
+        let forward = open.zpk().cascade().unwrap();
+        let delay = pade_delay(open.delay_s(), 3).unwrap();
+        let wires = [
+            Wire { from_part: 0, output: "y", to_part: 1, input: "u", gain: 1.0 },
+            Wire { from_part: 1, output: "y", to_part: 0, input: "u", gain: -1.0 },
+        ];
+        StateSpace::connect(&[&forward, &delay], &wires, &[], &[]).unwrap().poles().unwrap()
+    }
+
+    fn verdict(open: &FactoredResponse) -> Verdict {
+        closed_loop_verdict(&closed_loop_poles(open), open)
+    }
+
+    /// Whether the cascade is the loop it was made from at all: zeros far below all poles make it lose digits.
+    fn well_realised(open: &FactoredResponse) -> bool {
+        let system = open.zpk().cascade().unwrap();
+        (-4..14).all(|k| {
+            let s = Complex::from_polar(10.0_f64.powf(0.5 * f64::from(k)), 1.5);
+            let exact = open.zpk().at(s);
+            (system.entry_at(0, 0, s).unwrap() - exact).norm() < 1e-8 * exact.norm()
+        })
+    }
+
+    const STABLE: Verdict = Verdict::Stable { conditionally: false };
+    const CONDITIONALLY: Verdict = Verdict::Stable { conditionally: true };
+
+    /// Planted answer: 8/(s + 1)³ has the boundary at gain 8.
+    #[test]
+    fn three_lags() {
+        let open = |gain| FactoredResponse::new(zpk(&[], &[real(-1.0); 3], gain), 0.0);
+        assert_eq!(verdict(&open(7.999)), STABLE);
+        let Verdict::Unstable { frequency_hz, growth_per_s, poles } = verdict(&open(8.001)) else { panic!("stable") };
+        assert_eq!(poles, 2);
+        assert_close(frequency_hz, 3.0_f64.sqrt() / TAU, 1e-4);
+        assert!(growth_per_s > 0.0 && growth_per_s < 1e-3);
+        let closed: Vec<Complex> =
+            [real(-3.0), Complex::new(0.0, 3.0_f64.sqrt()), Complex::new(0.0, -3.0_f64.sqrt())].to_vec();
+        assert!(matches!(closed_loop_verdict(&closed, &open(8.0)), Verdict::Undecided { .. }));
+    }
+
+    #[test]
+    fn conditional_stability() {
+        // Three integrators and two zeros: stable only above a gain.
+        let open = |gain| FactoredResponse::new(zpk(&[real(-1.0); 2], &[Complex::ZERO; 3], gain), 0.0);
+        assert_eq!(verdict(&open(5.0)), CONDITIONALLY);
+        assert!(matches!(verdict(&open(0.3)), Verdict::Unstable { poles: 2, .. }));
+        // An unstable open loop needs its gain; so does one with a negative gain at zero frequency that is high enough.
+        assert_eq!(verdict(&FactoredResponse::new(zpk(&[], &[real(1.0)], 2.0), 0.0)), CONDITIONALLY);
+        assert!(matches!(
+            verdict(&FactoredResponse::new(zpk(&[], &[real(1.0)], 0.5), 0.0)),
+            Verdict::Unstable { poles: 1, .. }
+        ));
+    }
+
+    /// Planted answer: k/s with delay is stable below k·delay = π/2, a lag with inverted gain below one.
+    #[test]
+    fn exact_delay() {
+        let open = |gain: f64| FactoredResponse::new(zpk(&[], &[Complex::ZERO], gain), 1e-3);
+        assert_eq!(encirclement_count(&open(1e3 * (FRAC_PI_2 - 1e-9))), Ok(0));
+        assert_eq!(encirclement_count(&open(1e3 * (FRAC_PI_2 + 1e-9))), Ok(2));
+        assert_eq!(encirclement_count(&open(1e3 * (FRAC_PI_2 + TAU + 1e-6))), Ok(4));
+        assert_eq!(verdict(&open(1.5e3)), STABLE);
+        assert!(matches!(verdict(&open(1.6e3)), Verdict::Unstable { poles: 2, .. }));
+        let inverted = |gain: f64| FactoredResponse::new(zpk(&[], &[real(-1.0)], -gain), 0.0);
+        assert_eq!(encirclement_count(&inverted(0.999_999)), Ok(0));
+        assert_eq!(encirclement_count(&inverted(1.000_001)), Ok(1));
+        assert!(encirclement_count(&inverted(1.0)).is_err());
+    }
+
+    #[test]
+    fn ends_that_do_not_vanish() {
+        // Biproper: 1 + k(s + 1)/(s + 2) has its pole at −(2 + k)/(1 + k).
+        let biproper = |gain| encirclement_count(&FactoredResponse::new(zpk(&[real(-1.0)], &[real(-2.0)], gain), 0.0));
+        assert_eq!((biproper(5.0), biproper(-0.5), biproper(-1.5), biproper(-3.0)), (Ok(0), Ok(0), Ok(1), Ok(0)));
+        assert!(biproper(-1.0).is_err());
+        assert!(encirclement_count(&FactoredResponse::new(zpk(&[real(-1.0)], &[], 1.0), 0.0)).is_err());
+        assert!(encirclement_count(&FactoredResponse::new(zpk(&[real(-1.0)], &[real(-2.0)], 5.0), 1e-3)).is_err());
+        assert_eq!(encirclement_count(&FactoredResponse::new(zpk(&[real(-1.0)], &[real(-2.0)], 0.9), 1e-3)), Ok(0));
+        assert_eq!(encirclement_count(&FactoredResponse::new(Zpk::constant(3.0), 0.0)), Ok(0));
+        assert_eq!(encirclement_count(&FactoredResponse::new(zpk(&[], &[real(3.0)], 0.0), 0.0)), Ok(1));
+        // A differentiator in front, and an undamped pair on the axis.
+        assert_eq!(
+            encirclement_count(&FactoredResponse::new(zpk(&[Complex::ZERO], &[real(-1.0), real(-5.0)], 9.0), 0.0)),
+            Ok(0)
+        );
+        assert_eq!(
+            encirclement_count(&FactoredResponse::new(zpk(&[real(-1.0)], &[Complex::new(0.0, 7.0)], 9.0), 0.0)),
+            Ok(0)
+        );
+        assert_eq!(
+            encirclement_count(&FactoredResponse::new(zpk(&[], &[Complex::new(0.0, 7.0), real(-1.0)], 9.0), 0.0)),
+            Ok(2)
+        );
+    }
+
+    #[test]
+    fn disagreement_is_undecided() {
+        let open = FactoredResponse::new(zpk(&[], &[Complex::ZERO], 1.0), 0.0);
+        assert!(matches!(closed_loop_verdict(&[real(1.0)], &open), Verdict::Undecided { .. }));
+        assert!(matches!(closed_loop_verdict(&[real(f64::NAN)], &open), Verdict::Undecided { .. }));
+    }
+
+    /// A random loop: real roots and pairs over five decades on either side, integrators, resonances down to 1e-6 damping.
+    fn random_loop() -> impl Strategy<Value = FactoredResponse> {
+        let root = || (0.0..5.0_f64, -6.0..0.0_f64, 0..6_u8, prop::bool::weighted(0.15));
+        let roots = move |range| prop::collection::vec(root(), range);
+        (roots(1..6), roots(0..5), 0..3_usize, -20.0..20.0_f64, 0.0..4.0_f64, prop::option::of(-6.0..0.0_f64)).prop_map(
+            |(poles, zeros, integrators, gain_db, level_decade, delay)| {
+                let expand = |roots: Vec<(f64, f64, u8, bool)>| -> Vec<Complex> {
+                    let one = |(decade, damping, kind, right): (f64, f64, u8, bool)| {
+                        let size = 10.0_f64.powf(decade);
+                        let sign = if right { 1.0 } else { -1.0 };
+                        match kind {
+                            0..=2 => real(sign * size),
+                            3 => Complex::from_polar(size, 1.8) * sign.abs(),
+                            _ => Complex::new(sign * 10.0_f64.powf(damping), 1.0) * size,
+                        }
+                    };
+                    roots.into_iter().map(one).collect()
+                };
+                let mut poles = expand(poles);
+                poles.extend(vec![Complex::ZERO; integrators]);
+                let mut zeros = expand(zeros);
+                let degree = |roots: &[Complex]| roots.iter().map(|r| if r.im == 0.0 { 1 } else { 2 }).sum::<usize>();
+                while degree(&zeros) >= degree(&poles) {
+                    zeros.pop();
+                }
+                let shape = FactoredResponse::new(zpk(&zeros, &poles, 1.0), 0.0);
+                // The gain is set at a frequency among the roots, so that crossovers fall among them too.
+                let gain = (gain_db / 8.686 - shape.log_point(10.0_f64.powf(level_decade)).ln_gain).exp();
+                let delay_s = delay.map_or(0.0, |decade| 10.0_f64.powf(decade));
+                FactoredResponse::new(zpk(&zeros, &poles, gain), delay_s)
+            },
+        )
+    }
+
+    proptest! {
+        #![proptest_config(ProptestConfig { cases: 10_000, max_global_rejects: 100_000, ..ProptestConfig::default() })]
+
+        /// Two routes, 10,000 random loops without delay: the poles and the count never disagree.
+        #[test]
+        fn poles_and_encirclements_agree(open in random_loop()) {
+            prop_assume!(well_realised(&open));
+            let open = FactoredResponse::new(open.zpk().clone(), 0.0);
+            let poles = closed_loop_poles(&open);
+            // Poles on the axis to within rounding decide nothing.
+            let fastest = poles.iter().map(|p| p.norm()).fold(0.0, f64::max);
+            prop_assume!(poles.iter().all(|p| p.re.abs() > 1e-9 * p.norm() + 1e-10 * fastest));
+            let unstable = poles.iter().filter(|p| p.re > 0.0).count();
+            prop_assert_eq!(encirclement_count(&open), Ok(unstable), "{:?}", poles);
+        }
+
+        /// Two routes with a delay: wherever the phase error of the rational form is small up to the last frequency where |T| > 1/4, they agree.
+        #[test]
+        fn poles_and_encirclements_agree_with_delay(open in random_loop()) {
+            let grid = (0..900).map(|k| 10.0_f64.powf(-2.0 + 0.01 * f64::from(k))).chain(open.breakpoints_hz());
+            let last = grid.filter(|f| open.log_point(*f).ln_gain > -1.4).max_by(f64::total_cmp);
+            prop_assume!(well_realised(&open) && last.is_none_or(|f| f * open.delay_s() < 0.25));
+            let poles = closed_loop_poles(&open);
+            let fastest = poles.iter().map(|p| p.norm()).fold(0.0, f64::max);
+            prop_assume!(poles.iter().all(|p| p.re.abs() > 1e-5 * p.norm() + 1e-10 * fastest));
+            let unstable = poles.iter().filter(|p| p.re > 0.0).count();
+            prop_assert_eq!(encirclement_count(&open), Ok(unstable), "{:?}", poles);
+        }
+    }
+}

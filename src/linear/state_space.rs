@@ -171,3 +171,35 @@ impl StateSpace {
 fn finite_matrix(m: DMatrix<Complex>) -> Result<DMatrix<Complex>, LinearError> {
     if m.iter().all(|x| x.re.is_finite() && x.im.is_finite()) { Ok(m) } else { Err(LinearError::NotFinite) }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn shapes_and_numbers_are_checked() {
+        let square = |x| DMatrix::from_element(1, 1, x);
+        assert!(StateSpace::new(square(-1.0), square(1.0), square(1.0), square(0.0), &["u"], &["y"]).is_ok());
+        assert!(matches!(
+            StateSpace::new(square(-1.0), square(1.0), square(1.0), square(0.0), &["u", "v"], &["y"]),
+            Err(LinearError::Shape(_))
+        ));
+        assert_eq!(
+            StateSpace::new(square(f64::INFINITY), square(1.0), square(1.0), square(0.0), &["u"], &["y"]),
+            Err(LinearError::NotFinite)
+        );
+    }
+
+    #[test]
+    fn a_pole_where_it_is_evaluated_is_an_error() {
+        let one = DMatrix::from_element(1, 1, 1.0);
+        let integrator =
+            StateSpace::new(DMatrix::zeros(1, 1), one.clone(), one, DMatrix::zeros(1, 1), &["u"], &["y"]).unwrap();
+        assert_eq!(integrator.at_hz(0.0), Err(LinearError::PoleThere));
+        assert_eq!(integrator.dc_gain(0, 0), None);
+        assert_eq!(integrator.entry_at(0, 0, Complex::ZERO), None);
+        assert_eq!(integrator.entry_at(1, 0, Complex::ONE), None);
+        assert_eq!(integrator.at_hz(f64::NAN), Err(LinearError::NotFinite));
+        assert_eq!((integrator.input("u"), integrator.output("u")), (Some(0), None));
+    }
+}

@@ -212,3 +212,97 @@ fn power(matrix: &DMatrix<f64>, exponent: usize) -> DMatrix<f64> {
     }
     result.unwrap_or_else(|| DMatrix::identity(matrix.nrows(), matrix.ncols()))
 }
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use super::super::precision::{assert_close, assert_near};
+    use super::super::{Complex, Zpk};
+    use super::*;
+
+    fn grid(step_s: f64, count: usize) -> UniformGrid {
+        UniformGrid { step_s, count }
+    }
+
+    /// Planted answer: a damped pair's step response in closed form.
+    #[test]
+    fn resonant_step_in_closed_form() {
+        let (sigma, beta) = (-300.0, 4e3);
+        let size = sigma * sigma + beta * beta;
+        let pair = Complex::new(sigma, beta);
+        let system = Zpk::new(vec![], vec![pair, pair.conj()], size).unwrap().cascade().unwrap();
+        let values = step_response(&system, 0, 0, grid(5e-6, 1000), RampStep::ideal(2.0)).unwrap();
+        for (k, value) in values.iter().enumerate() {
+            let t = k as f64 * 5e-6;
+            let expected = 2.0 * (1.0 - (sigma * t).exp() * ((beta * t).cos() - sigma / beta * (beta * t).sin()));
+            assert_near(*value, expected, 1e-12);
+        }
+    }
+
+    /// Planted answer: one lag under a ramp whose end falls between grid points, at its end, before the first and after the last.
+    #[test]
+    fn ramp_in_closed_form() {
+        let rate = 1e3;
+        let system = Zpk::new(vec![], vec![Complex::new(-rate, 0.0)], rate).unwrap().cascade().unwrap();
+        for rise in [1e-9, 1e-4, 7.3e-4, 1e-3, 1.0] {
+            let event = RampStep { from: 1.0, to: 3.0, rise_s: rise };
+            let values = step_response(&system, 0, 0, grid(1e-4, 60), event).unwrap();
+            let ramp = |t: f64| if t <= 0.0 { 0.0 } else { 2.0 / rise * (t + (-rate * t).exp_m1() / rate) };
+            for (k, value) in values.iter().enumerate() {
+                let t = k as f64 * 1e-4;
+                // The closed form loses digits where the rise is short.
+                assert_near(*value, 1.0 + ramp(t) - ramp(t - rise), 1e-12 + 3e-18 / rise);
+            }
+        }
+    }
+
+    #[test]
+    fn a_direct_path_jumps_and_unstable_systems_grow() {
+        let lead =
+            Zpk::new(vec![Complex::new(-1.0, 0.0)], vec![Complex::new(-10.0, 0.0)], 4.0).unwrap().cascade().unwrap();
+        let values = step_response(&lead, 0, 0, grid(10.0, 2), RampStep::ideal(1.0)).unwrap();
+        assert_close(values[0], 4.0, 1e-14);
+        assert_close(values[1], 0.4, 1e-13);
+        let runaway = Zpk::new(vec![], vec![Complex::new(1.0, 0.0)], 1.0).unwrap().cascade().unwrap();
+        assert_close(
+            step_response(&runaway, 0, 0, grid(1.0, 9), RampStep::ideal(1.0)).unwrap()[8],
+            8.0_f64.exp_m1(),
+            1e-12,
+        );
+        assert_eq!(step_response(&runaway, 0, 0, grid(1e3, 9), RampStep::ideal(1.0)), Err(LinearError::NotFinite));
+    }
+
+    #[test]
+    fn bad_events_are_errors() {
+        let gain = StateSpace::constant(DMatrix::from_element(1, 1, 2.0), &["u"], &["y"]).unwrap();
+        assert_eq!(step_response(&gain, 0, 0, grid(1.0, 3), RampStep::ideal(3.0)).unwrap(), [6.0; 3]);
+        assert_eq!(step_response(&gain, 0, 0, grid(1.0, 0), RampStep::ideal(3.0)).unwrap(), [0.0; 0]);
+        assert!(step_response(&gain, 0, 0, grid(0.0, 3), RampStep::ideal(3.0)).is_err());
+        assert!(step_response(&gain, 1, 0, grid(1.0, 3), RampStep::ideal(3.0)).is_err());
+        assert!(step_response(&gain, 0, 0, grid(1.0, 3), RampStep { from: 0.0, to: 1.0, rise_s: -1.0 }).is_err());
+        assert!(step_response(&gain, 0, 0, grid(1.0, 3), RampStep::ideal(f64::NAN)).is_err());
+        assert_close(RampStep::with_slew(-2.0, 1e6).rise_s, 2e-6, 1e-15);
+        assert_near(RampStep::with_slew(1.0, 0.0).rise_s, 0.0, 0.0);
+    }
+
+    proptest! {
+        /// Two routes: the grid against grids ten times finer, which use other powers of other matrices.
+        #[test]
+        fn coarse_and_fine_grids_agree(
+            damping in 0.01..1.0_f64, fast in 1.0..4.0_f64, zero in -1e5..1e5_f64, rise in 0.0..3e-4_f64,
+        ) {
+            let pair = Complex::from_polar(1e4, std::f64::consts::PI - damping.acos());
+            let poles = vec![Complex::new(-2e3, 0.0), pair, pair.conj(), Complex::new(-(10.0_f64.powf(4.0 + fast)), 0.0)];
+            let gain = 1e12 * 10.0_f64.powf(fast);
+            let system = Zpk::new(vec![Complex::new(zero, 0.0)], poles, gain).unwrap().cascade().unwrap();
+            let event = RampStep { from: 0.0, to: 1.0, rise_s: rise };
+            let coarse = step_response(&system, 0, 0, grid(1e-5, 101), event).unwrap();
+            let fine = step_response(&system, 0, 0, grid(1e-6, 1010), event).unwrap();
+            let peak = fine.iter().fold(0.0, |peak: f64, v| peak.max(v.abs()));
+            for (k, value) in coarse.iter().enumerate() {
+                prop_assert!((value - fine[10 * k]).abs() <= 1e-11 * peak, "{value} against {} at {k}", fine[10 * k]);
+            }
+        }
+    }
+}
