@@ -1,0 +1,138 @@
+//! Everything registered goes through every view: each topology with each choice, each sample through analysis and terminal.
+
+use crate::common::checked;
+use polewright::analysis::{Level, Request, Shown, analyse};
+use polewright::converter::{self, Reach};
+use polewright::design::{Design, sample};
+use serde_json::Value;
+use std::path::PathBuf;
+use std::process::{Command, Output};
+
+fn terminal(arguments: &[&str]) -> Output {
+    Command::new(env!("CARGO_BIN_EXE_polewright")).args(arguments).output().expect("the program starts")
+}
+
+fn sample_path(file: &str) -> String {
+    let path = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("sample-designs").join(file);
+    path.to_str().expect("a plain path").to_owned()
+}
+
+/// A design of this topology that its reach allows, from the defaults.
+fn of_topology(key: &str, reach: Reach) -> Design {
+    let mut design = Design::default();
+    design.set_from_text("stage.topology", key).expect("registered");
+    let input = design.values.get("stage.input.greatest").expect("a default");
+    let output = match reach {
+        Reach::BelowInput => 0.3 * input,
+        Reach::AboveInput => 1.6 * input,
+        Reach::Any => input,
+    };
+    design.values.set("stage.output.voltage", output).expect("finite");
+    design.values.set("compensator.reference", output / 4.0).expect("finite");
+    design.values.set("compensator.divider.upper", 30e3).expect("finite");
+    design.values.set("compensator.divider.lower", 10e3).expect("finite");
+    design
+}
+
+#[test]
+fn every_topology_with_every_choice() {
+    for topology in converter::registry() {
+        for rectifier in ["diode", "synchronous"] {
+            for load in ["resistor", "current", "power"] {
+                for kind in ["1", "2", "3"] {
+                    for amplifier in ["op-amp", "transconductance"] {
+                        let mut design = of_topology(topology.key, topology.reach);
+                        let choices = [
+                            ("stage.rectifier", rectifier),
+                            ("stage.load", load),
+                            ("compensator.type", kind),
+                            ("compensator.amplifier", amplifier),
+                        ];
+                        for (path, key) in choices {
+                            design.set_from_text(path, key).expect("an option");
+                        }
+                        let request = Request {
+                            shown: Shown::Levels(Level::Nominal, Level::Greatest),
+                            frequencies_hz: vec![1e3, 1e4],
+                            band_frequencies_hz: Vec::new(),
+                            step_points: 20,
+                        };
+                        let analysis = analyse(&checked(&design), &request);
+                        let detail = analysis.shown.unwrap_or_else(|finding| panic!("{choices:?}: {finding:?}"));
+                        assert!((0.0..1.0).contains(&detail.operating_point.duty));
+                        assert_eq!(detail.curves.loop_db.len(), 2);
+                    }
+                }
+            }
+        }
+    }
+}
+
+#[test]
+fn samples_on_disk_are_the_samples_built_in() {
+    let folder = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("sample-designs");
+    let mut on_disk: Vec<String> = std::fs::read_dir(folder)
+        .expect("the folder")
+        .map(|entry| entry.expect("readable").file_name().into_string().expect("a plain name"))
+        .collect();
+    on_disk.sort();
+    let mut built_in: Vec<String> = sample::all().iter().map(|sample| sample.file.to_owned()).collect();
+    built_in.sort();
+    assert_eq!(on_disk, built_in);
+    assert!(built_in.len() >= 8);
+}
+
+/// The terminal gives the numbers of the analysis, for every sample.
+#[test]
+fn every_sample_through_the_terminal() {
+    for sample in sample::all() {
+        let design = sample.design().expect("a sample reads");
+        let request = Request {
+            shown: Shown::Levels(Level::Nominal, Level::Nominal),
+            frequencies_hz: vec![1e3],
+            band_frequencies_hz: Vec::new(),
+            step_points: 20,
+        };
+        let analysis = analyse(&checked(&design), &request);
+        let output = terminal(&["check", &sample_path(sample.file), "--json", "--at", "1k"]);
+        let wanted_code = i32::from(!analysis.all_met());
+        assert_eq!(
+            output.status.code(),
+            Some(wanted_code),
+            "{}: {}",
+            sample.file,
+            String::from_utf8_lossy(&output.stderr)
+        );
+        let content: Value = serde_json::from_slice(&output.stdout).expect("valid JSON");
+        let object = &content.as_array().expect("an array")[0];
+        assert_eq!(object["title"].as_str(), Some(design.title.as_str()));
+        let detail = analysis.shown.unwrap_or_else(|finding| panic!("{}: {finding:?}", sample.file));
+        assert_eq!(object["loop"]["stable"].as_bool(), Some(detail.loop_gain.stable()), "{}", sample.file);
+        assert_eq!(object["operating_point"]["duty"].as_f64(), Some(detail.operating_point.duty), "{}", sample.file);
+        assert_eq!(object["response"][0]["loop_db"].as_f64(), Some(detail.curves.loop_db[0]), "{}", sample.file);
+        let crossovers = object["loop"]["crossovers"].as_array().expect("a list");
+        let found: Vec<Option<f64>> = crossovers.iter().map(|c| c["frequency_hz"].as_f64()).collect();
+        let wanted: Vec<Option<f64>> =
+            detail.loop_gain.margins.crossovers.iter().map(|c| Some(c.frequency_hz)).collect();
+        assert_eq!(found, wanted, "{}", sample.file);
+    }
+}
+
+#[test]
+fn one_sample_is_unstable_on_purpose_and_says_so() {
+    let mut unstable = 0;
+    for sample in sample::all() {
+        let output = terminal(&["check", &sample_path(sample.file), "--json"]);
+        let content: Value = serde_json::from_slice(&output.stdout).expect("valid JSON");
+        if content[0]["loop"]["stable"].as_bool() == Some(false) {
+            unstable += 1;
+            assert!(!sample.design().expect("reads").notes.is_empty(), "{} has a note", sample.file);
+            let findings = content[0]["findings"].as_array().expect("a list");
+            let says = |finding: &Value| {
+                finding["message"].as_str().is_some_and(|text| text.to_lowercase().contains("unstable"))
+            };
+            assert!(findings.iter().any(says), "{}: {findings:?}", sample.file);
+        }
+    }
+    assert_eq!(unstable, 1);
+}
