@@ -8,12 +8,12 @@ use super::loop_model::{LoopModel, Shared, model_finding};
 use super::readouts::readouts;
 use super::remarks::remarks;
 use super::requirement::verdict;
-use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult};
+use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult, Steps};
 use super::steps::{load_figures, steps};
 use crate::converter::Conduction;
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
-use crate::linear::{FrequencyResponse, Zpk, margins};
+use crate::linear::{FrequencyResponse, Modes, Zpk, margins};
 use crate::quantity::{Unit, print};
 
 /// Which condition is shown in full.
@@ -133,6 +133,8 @@ fn conclude(
 #[derive(Clone, Debug)]
 struct Worked {
     model: LoopModel,
+    /// Modes of the closed loop, when it is stable.
+    modes: Option<Modes>,
     loop_gain: LoopResult,
     load_step: Option<super::result::StepFigures>,
     right_half_plane_zero_hz: Option<f64>,
@@ -158,16 +160,18 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
     refuse_unmodelled(design, condition, &model)?;
     let fs = design.stage.switching_frequency;
-    let (verdict, modes) = model.verdict(shared).map_err(|e| model_finding(&e))?;
+    let margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
+    let (verdict, modes) = model.verdict(shared, &margins).map_err(|e| model_finding(&e))?;
     let loop_gain = LoopResult {
         verdict,
-        margins: margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO),
+        margins,
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
         gain_at_switching: model.loop_gain.at_hz(fs).norm(),
     };
-    let load_step = modes.map(|modes| load_figures(design, &modes)).transpose().map_err(|e| model_finding(&e))?;
+    let load_step =
+        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
     let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
-    Ok(Worked { model, loop_gain, load_step, right_half_plane_zero_hz })
+    Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
 }
 
 /// Conditions outside what is modelled: discontinuous conduction, a duty ratio beyond the modulator's limits.
@@ -210,12 +214,10 @@ fn detailed(
     let ledger = crossover.map(|c| ledger(model, shared, &design.compensator, &landmarks, c.frequency_hz));
     let operating_point = model.averaged.operating_point.clone();
     let control_voltage = design.modulator.control_voltage(operating_point.duty, condition.input_voltage);
-    let steps = if worked.loop_gain.stable() {
-        let crossover_hz = crossover.map(|c| c.frequency_hz);
-        steps(design, shared, model, crossover_hz, control_voltage, request.step_points)
-            .map_err(|e| model_finding(&e))?
-    } else {
-        super::result::Steps::default()
+    let crossover_hz = crossover.map(|c| c.frequency_hz);
+    let steps = match &worked.modes {
+        Some(modes) => steps(design, modes, crossover_hz, control_voltage, request.step_points),
+        None => Ok(Steps::default()),
     };
     Ok(Detail {
         condition: condition.clone(),
@@ -225,7 +227,7 @@ fn detailed(
         landmarks,
         loop_gain: worked.loop_gain.clone(),
         curves,
-        steps,
+        steps: steps.map_err(|e| model_finding(&e))?,
         ledger,
         control_voltage,
     })

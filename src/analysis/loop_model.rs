@@ -9,7 +9,8 @@ use crate::converter::{AveragedModel, Stage, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{
-    FactoredResponse, LinearError, Modes, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict, pade_delay,
+    FactoredResponse, LinearError, Margins, Modes, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict_knowing,
+    pade_delay,
 };
 use nalgebra::DMatrix;
 
@@ -159,11 +160,11 @@ impl LoopModel {
     ///
     /// # Errors
     /// As the joining of systems.
-    pub fn verdict(&self, shared: &Shared) -> Result<(Verdict, Option<Modes>), LinearError> {
+    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Modes>), LinearError> {
         // The load-side model of the bank's inductance stands outside the loop and is stable by itself.
         let inner = self.close(shared, None)?;
         let poles = inner.poles()?;
-        let verdict = closed_loop_verdict(&poles, &self.loop_gain);
+        let verdict = closed_loop_verdict_knowing(&poles, &self.loop_gain, margins);
         if !matches!(verdict, Verdict::Stable { .. }) {
             return Ok((verdict, None));
         }

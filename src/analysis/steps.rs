@@ -4,10 +4,9 @@
 //! before; settling is the last exit from the band around the final value. Linear prediction: limits of amplifier and
 //! duty ratio do not act, and the results say so where they would.
 
-use super::loop_model::{LoopModel, Shared};
 use super::result::{Step, StepFigures, Steps};
 use crate::design::{CheckedDesign, Event};
-use crate::linear::{LinearError, Modes, RampStep, StateSpace, UniformGrid, step_response};
+use crate::linear::{LinearError, Modes, RampStep, UniformGrid};
 use std::f64::consts::TAU;
 
 /// Columns of the closed loop's inputs.
@@ -40,21 +39,18 @@ pub(super) fn load_figures(design: &CheckedDesign, modes: &Modes) -> Result<Step
     Ok(StepFigures { deviation_v: metrics.deviation, settling_s: metrics.settling_s })
 }
 
-/// The three steps with their curves. `control_voltage` is the one that holds the condition [V].
+/// The three steps with their curves, from the closed loop's modes. `control_voltage` holds the condition [V].
 ///
 /// # Errors
-/// As the joining of systems and their step response.
+/// As taking the response from the modes.
 pub(super) fn steps(
     design: &CheckedDesign,
-    shared: &Shared,
-    model: &LoopModel,
+    modes: &Modes,
     crossover_hz: Option<f64>,
     control_voltage: f64,
     points: usize,
 ) -> Result<Steps, LinearError> {
-    let closed = model.closed(shared)?;
-    let modes = Modes::new(&closed)?;
-    let context = Context { closed: &closed, modes: &modes, design, crossover_hz, control_voltage, points };
+    let context = Context { modes, design, crossover_hz, control_voltage, points };
     let events = &design.events;
     // The reference step is stated at the output; the loop takes it at the reference.
     let scale = design.compensator.reference / design.compensator.dc_output_voltage();
@@ -66,7 +62,6 @@ pub(super) fn steps(
 }
 
 struct Context<'a> {
-    closed: &'a StateSpace,
     modes: &'a Modes,
     design: &'a CheckedDesign,
     crossover_hz: Option<f64>,
@@ -85,8 +80,8 @@ impl Context<'_> {
         let span = self.span_s(metrics.settling_s, change.rise_s);
         let grid = UniformGrid { step_s: span / (self.points - 1) as f64, count: self.points };
         let before = self.design.stage.output_voltage;
-        let output = step_response(self.closed, input, OUTPUT, grid, change)?;
-        let control = step_response(self.closed, input, CONTROL, grid, change)?;
+        let output = self.modes.curve(input, OUTPUT, change, grid)?;
+        let control = self.modes.curve(input, CONTROL, change, grid)?;
         let extreme = |pick: fn(f64, f64) -> f64| self.control_voltage + control.iter().copied().fold(0.0, pick);
         Ok(Some(Step {
             times_s: grid.times_s(),

@@ -50,7 +50,7 @@ pub use margins::{Crossover, Margins, PhaseCrossover, margins};
 pub use modes::{Modes, StepMetrics, settle};
 pub use response::{FactorKind, FactorPhase, FactoredResponse, FrequencyResponse, LogPoint};
 pub use sampled::SampledResponse;
-pub use stability::{Verdict, closed_loop_verdict, encirclement_count};
+pub use stability::{Verdict, closed_loop_verdict, closed_loop_verdict_knowing, encirclement_count};
 pub use state_space::StateSpace;
 pub use time::{RampStep, UniformGrid, step_response};
 pub use zpk::Zpk;

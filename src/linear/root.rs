@@ -42,6 +42,37 @@ pub(super) fn bracketed_root(
     0.5 * (low + high)
 }
 
+/// The root of a function between `low` and `high`, to the tolerance, by Newton's method with bisection as its guard.
+///
+/// `value` gives the function and its slope; `at_low` is the function at `low`, the one at `high` having the other sign.
+pub(super) fn newton_root(
+    mut value: impl FnMut(f64) -> (f64, f64),
+    (mut low, at_low): (f64, f64),
+    (mut high, at_high): (f64, f64),
+    tolerance: f64,
+) -> f64 {
+    let mut x = low + (high - low) * (at_low / (at_low - at_high)).clamp(0.0, 1.0);
+    let mut last_step = high - low;
+    for _ in 0..STEPS_AT_MOST {
+        let (here, slope) = value(x);
+        let newton = here / slope;
+        if here == 0.0 || newton.abs() <= tolerance || high - low <= tolerance {
+            return if newton.is_finite() { (x - newton).clamp(low, high) } else { x };
+        }
+        if (here > 0.0) == (at_low > 0.0) {
+            low = x;
+        } else {
+            high = x;
+        }
+        let next = x - newton;
+        let trusted = next > low && next < high && newton.abs() < 0.5 * last_step;
+        let next = if trusted { next } else { 0.5 * (low + high) };
+        last_step = (next - x).abs();
+        x = next;
+    }
+    x
+}
+
 #[cfg(test)]
 mod tests {
     use super::super::precision::assert_near;
@@ -55,6 +86,14 @@ mod tests {
         // A jump.
         let jump = |x: f64| if x < 0.3 { -1.0 } else { 1.0 };
         assert_near(bracketed_root(jump, (0.0, -1.0), (1.0, 1.0), 1e-13), 0.3, 1e-12);
+    }
+
+    #[test]
+    fn newton_is_guarded_against_a_bend() {
+        let steep = |x: f64| ((40.0 * (x - 0.9)).exp_m1(), 40.0 * (40.0 * (x - 0.9)).exp());
+        assert_near(newton_root(steep, (0.0, steep(0.0).0), (2.0, steep(2.0).0), 1e-13), 0.9, 1e-12);
+        let flat = |x: f64| ((x - 0.3).powi(3), 3.0 * (x - 0.3).powi(2));
+        assert_near(newton_root(flat, (0.0, flat(0.0).0), (1.0, flat(1.0).0), 1e-13), 0.3, 1e-6);
     }
 
     #[test]
