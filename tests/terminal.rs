@@ -3,10 +3,11 @@
 //! Runs the built binary on samples and on every kind of wrong input, and kills a process that saves. Needs no display.
 #![expect(clippy::expect_used, clippy::panic, reason = "a test may stop at a wrong value")]
 
+use polewright::analysis::{Level, Request, Shown, analyse};
 use polewright::design::file::{load, save};
 use polewright::design::{Design, sample};
 use serde_json::Value;
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::fs;
 use std::io::{BufRead, BufReader};
 use std::path::{Path, PathBuf};
@@ -334,6 +335,89 @@ fn the_documented_fields_are_there() {
     for field in fields.iter().filter(|field| field.chars().all(|c| c.is_ascii_lowercase() || c == '_')) {
         assert!(report.contains(&format!("\"{field}\":")), "{field} is documented and not reported");
     }
+}
+
+/// Every key of the report, at any depth.
+fn keys(value: &Value, found: &mut BTreeSet<String>) {
+    match value {
+        Value::Object(fields) => {
+            for (key, field) in fields {
+                found.insert(key.clone());
+                keys(field, found);
+            }
+        }
+        Value::Array(items) => items.iter().for_each(|item| keys(item, found)),
+        _ => {}
+    }
+}
+
+#[test]
+fn every_field_of_the_report_is_documented() {
+    let docs = fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("src/terminal/mod.rs")).expect("the docs");
+    let words: BTreeSet<&str> = docs.split(|c: char| !(c.is_ascii_alphanumeric() || c == '_')).collect();
+    let mut reported = BTreeSet::new();
+    for sample in sample::all() {
+        keys(&json(&check(&[&sample_path(sample.file), "--json"]))[0], &mut reported);
+    }
+    let missing: Vec<&String> = reported.iter().filter(|key| !words.contains(key.as_str())).collect();
+    assert!(missing.is_empty(), "{missing:?}");
+}
+
+/// Numbers between 0 and 1 in a fixed order, by xorshift (Marsaglia 2003, from memory).
+struct Random(u64);
+
+impl Random {
+    fn next(&mut self) -> f64 {
+        self.0 ^= self.0 << 13;
+        self.0 ^= self.0 >> 7;
+        self.0 ^= self.0 << 17;
+        (self.0 >> 11) as f64 / (1_u64 << 53) as f64
+    }
+}
+
+/// Samples with some of their numbers moved by up to ten times either way, or set to zero.
+fn moved_samples(count: usize) -> impl Iterator<Item = Design> {
+    let mut random = Random(0x9E37_79B9_7F4A_7C15);
+    (0..count).map(move |k| {
+        let mut design = sample::all()[k % sample::all().len()].design().expect("a sample");
+        let rows = design.entries();
+        for row in rows.iter().filter(|_| random.next() < 0.1).collect::<Vec<_>>() {
+            let factor = if random.next() < 0.05 { 0.0 } else { 10_f64.powf(2.0 * random.next() - 1.0) };
+            if let Some(value) = design.values.get(row.path) {
+                design.values.set(row.path, value * factor).expect("finite");
+            }
+        }
+        design
+    })
+}
+
+#[test]
+fn any_design_gives_finite_numbers_or_says_why_not() {
+    let mut analysed = 0;
+    for design in moved_samples(600) {
+        let checked = match design.check() {
+            Ok(checked) => checked,
+            Err(problems) => {
+                assert!(!problems.is_empty() && problems.iter().all(|p| p.is_problem() && !p.place.is_empty()));
+                continue;
+            }
+        };
+        let shown = Shown::Levels(Level::Nominal, Level::Nominal);
+        let analysis = analyse(&checked, &Request::spanning(shown, checked.stage.switching_frequency, 30));
+        assert_eq!(analysis.conditions.len(), 9);
+        for summary in analysis.conditions.iter().filter_map(|condition| condition.outcome.as_ref().ok()) {
+            assert!((0.0..=1.0).contains(&summary.operating_point.duty), "{design:?}");
+            assert!(summary.loop_gain.margins.modulus_margin.is_finite(), "{design:?}");
+            assert!(summary.load_step.is_none_or(|step| step.deviation_v.is_finite()), "{design:?}");
+        }
+        let Ok(detail) = &analysis.shown else { continue };
+        analysed += 1;
+        let curves = &detail.curves;
+        for curve in [&curves.loop_db, &curves.loop_deg, &curves.output_impedance_ohm, &curves.line_to_output_db] {
+            assert!(curve.len() == 30 && curve.iter().all(|value| value.is_finite()), "{design:?}");
+        }
+    }
+    assert!(analysed > 150, "{analysed} of 600 could be used: too few to tell anything");
 }
 
 /// Names the file to save to in the process that is to be killed.
