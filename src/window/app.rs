@@ -46,7 +46,10 @@ impl App {
         theme::install(ctx);
         App {
             session: Session::new(design, path),
-            view: View::default(),
+            view: View {
+                theme: ctx.options(|options| options.theme_preference),
+                ..View::default()
+            },
             dialogs: FileDialogs::default(),
             after_saving: None,
             leaving: false,
@@ -221,6 +224,7 @@ fn left_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
     Panel::bottom("operating").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(ui, |ui| {
         ScrollArea::vertical().id_salt("operating").show(ui, |ui| {
+            ui.set_max_width(ui.available_width());
             if tall {
                 conditions::panel_ui(ui, desk);
                 gap(ui);

@@ -3,6 +3,7 @@
 use eframe::egui::{self, Align2, Pos2, Rect, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis::{self, Axis};
+use super::crossover;
 use super::lanes;
 use super::legend;
 use super::marks;
@@ -37,7 +38,7 @@ const HEAD: f32 = 24.0;
 /// Height of what stands under the lanes [points].
 const FOOT: f32 = 58.0;
 /// Distance between gain and phase [points].
-const GAP: f32 = 12.0;
+const GAP: f32 = 17.0;
 
 /// Draws the stack into all room of the `Ui`.
 pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
@@ -68,6 +69,7 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     cursor_line(ui, &stack, desk.view, palette);
     legend::legend_ui(ui, head, desk);
     lanes::lanes_ui(ui, &stack, desk);
+    crossover::crossover_ui(ui, &stack, desk);
     ui.advance_cursor_after_rect(room);
 }
 
@@ -130,10 +132,10 @@ fn ground(ui: &Ui, stack: &Stack, analysis: Option<&Analysis>, palette: &Palette
     }
     let (low, high) = stack.gain.y.range();
     let step = if stack.gain.rect.height() / axis::narrow((high - low) / 20.0) < 15.0 { 40.0 } else { 20.0 };
-    levels(ui, &stack.gain, step, Unit::Decibel, 0.0, palette);
+    levels(ui, &stack.gain, (20.0, step), (Unit::Decibel, 0.0), palette);
     let (low, high) = stack.phase.y.range();
-    let step = if stack.phase.rect.height() / axis::narrow((high - low) / 45.0) < 15.0 { 90.0 } else { 45.0 };
-    levels(ui, &stack.phase, step, Unit::Degree, -180.0, palette);
+    let label_step = if stack.phase.rect.height() / axis::narrow((high - low) / 45.0) < 18.0 { 90.0 } else { 45.0 };
+    levels(ui, &stack.phase, (45.0, label_step), (Unit::Degree, -180.0), palette);
 }
 
 /// Beyond half the switching frequency an averaged model says nothing: the ground says so.
@@ -148,11 +150,15 @@ fn beyond_half_switching(painter: &egui::Painter, plot: &Plot, detail: &Detail, 
     }
 }
 
-fn levels(ui: &Ui, plot: &Plot, step: f64, unit: Unit, heavy: f64, palette: &Palette) {
+/// Lines at every step, labels at every label step; the line the margins are read from is the heavy one.
+fn levels(ui: &Ui, plot: &Plot, steps: (f64, f64), what: (Unit, f64), palette: &Palette) {
+    let ((step, label_step), (unit, heavy)) = (steps, what);
     let (low, high) = plot.y.range();
     for value in axis::multiples(low, high, step) {
         let strong = (value - heavy).abs() < step * 0.01;
         plot.level(ui.painter(), value, if strong { palette.landmark.gamma_multiply(0.7) } else { palette.grid });
+    }
+    for value in axis::multiples(low, high, label_step) {
         plot.level_label(ui.painter(), value, &axis::grid_label(value, step, unit), palette.weak);
     }
     plot.frame(ui.painter(), palette);

@@ -74,6 +74,13 @@ pub enum Command {
         /// Moves of one gesture are one step, all reckoned from where it began.
         gesture: Gesture,
     },
+    /// Move the crossover: the gain follows.
+    MoveCrossover {
+        /// Wanted crossover [Hz].
+        frequency_hz: f64,
+        /// Moves of one gesture are one step.
+        gesture: Gesture,
+    },
     /// Keep a part as it is, or let it be changed again.
     Lock {
         /// Path of the part.
@@ -231,11 +238,6 @@ pub(super) static COMMANDS: &[Row] = &[
     row("Normal size", Menu::View, key(CTRL, Key::Num0), "Text and drawing at normal size.", Command::NormalSize),
     row("All commands…", Menu::View, key(CTRL, Key::K), "A list of all commands to search.", Command::ListCommands),
 ];
-
-/// The row of a command, when the table has it.
-pub(super) fn row_of(command: &Command) -> Option<&'static Row> {
-    COMMANDS.iter().find(|row| row.command == *command)
-}
 
 #[cfg(test)]
 mod tests {

@@ -31,7 +31,7 @@ pub(super) fn chooser_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     });
     super::legend::focus_ring(ui, &response);
     Popup::menu(&response).close_behavior(PopupCloseBehavior::CloseOnClick).show(|ui| {
-        ui.set_min_width(360.0);
+        ui.set_width(360.0);
         ui.label(RichText::new("Press a condition to show it in full.").color(palette.weak));
         map_ui(ui, "chooser", desk);
     });
@@ -167,7 +167,7 @@ pub(super) fn panel_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     ui.horizontal(|ui| {
         ui.label(RichText::new("Nine conditions").font(theme::strong(13.5)));
-        let text = RichText::new("phase margin, crossover").font(theme::small()).color(palette.weak);
+        let text = RichText::new("margin, crossover").font(theme::small()).color(palette.weak);
         ui.label(text).on_hover_text("Input voltage down, load across. Press one to show it in full.");
     });
     map_ui(ui, "panel", desk);

@@ -54,10 +54,21 @@ fn actions_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
         }
     }
     if let Some(entry) = design::entry(&finding.place) {
-        let text = RichText::new(format!("go to {}", entry.name.to_lowercase())).font(theme::small()).color(accent);
+        let text = RichText::new(format!("Go to {}", lower_first(entry.name))).font(theme::small()).color(accent);
         if ui.add(egui::Button::new(text).small().frame(false)).clicked() {
             desk.view.seek = Some(entry.path.to_owned());
         }
+    }
+}
+
+/// A name as it stands within a sentence: its first letter small, unless the word is an abbreviation.
+pub(super) fn lower_first(name: &str) -> String {
+    let mut letters = name.chars();
+    match (letters.next(), letters.next()) {
+        (Some(first), Some(second)) if second.is_lowercase() || second == ' ' => {
+            first.to_lowercase().chain(std::iter::once(second)).chain(letters).collect()
+        }
+        _ => name.to_owned(),
     }
 }
 

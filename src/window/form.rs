@@ -137,7 +137,7 @@ fn range_row_ui(ui: &mut Ui, entries: &[&'static Entry; 3], desk: &mut Desk<'_>)
     let room = ui.available_width();
     ui.allocate_ui_with_layout(vec2(room, theme::ROW), Layout::left_to_right(Align::Center), |ui| {
         ui.spacing_mut().item_spacing.x = 4.0;
-        let label_width = 50.0;
+        let label_width = 44.0;
         label_ui(ui, name, "least, nominal and greatest", label_width);
         let width = (room - label_width - 12.0) / 3.0;
         for entry in entries {
@@ -197,7 +197,7 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
                 .id(id)
                 .font(FontSelection::FontId(theme::body()))
                 .hint_text(if entry.optional { "not asked" } else { "" })
-                .margin(egui::Margin::symmetric(5, 2))
+                .margin(egui::Margin::symmetric(4, 2))
                 .desired_width(width)
                 .clip_text(true);
             ui.add(edit)

@@ -69,15 +69,18 @@ pub(super) fn short_name(entry: &Entry) -> &'static str {
     }
 }
 
+/// Width of a part's name [points].
+const LABEL: f32 = 44.0;
+
 fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) {
     let active = desk.view.lane.and_then(|key| desk.session.lanes().iter().find(|lane| lane.key == key));
     let lit = active.is_some_and(|lane| lane.parts.contains(&entry.path));
     let palette = palette(ui);
-    let (rect, response) = ui.allocate_exact_size(vec2(46.0, theme::ROW), Sense::hover());
+    let (rect, response) = ui.allocate_exact_size(vec2(LABEL, theme::ROW), Sense::hover());
     let ink = if lit { palette.compensator } else { palette.weak };
     ui.painter().text(rect.left_center(), egui::Align2::LEFT_CENTER, short_name(entry), theme::body(), ink);
     response.on_hover_text(format!("{}\n{}", entry.name, entry.help));
-    form::field_ui(ui, entry, width - 46.0 - 25.0, desk);
+    form::field_ui(ui, entry, width - LABEL - 25.0, desk);
     lock_ui(ui, entry, desk);
 }
 

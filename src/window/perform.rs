@@ -7,6 +7,7 @@ use eframe::egui::{self, ViewportCommand};
 use super::app::App;
 use super::command::Command;
 use super::files::{self, Ask};
+use super::findings::lower_first;
 use super::session::{BadText, Session};
 use super::view::{Dialog, Message};
 use crate::analysis::Level;
@@ -40,6 +41,7 @@ impl App {
             | Command::Choose { .. }
             | Command::Title(_)
             | Command::MoveLane { .. }
+            | Command::MoveCrossover { .. }
             | Command::Lock { .. }
             | Command::RoundParts
             | Command::Mend(_) => self.perform_on_design(command),
@@ -187,7 +189,7 @@ impl App {
             Command::Enter { path, text } => enter(session, path, text),
             Command::Choose { path, key } => {
                 let name = design::choice(path).map_or("choice", |choice| choice.name);
-                session.change(&format!("Choose {}", name.to_lowercase()), None, |document| {
+                session.change(&format!("Choose {}", lower_first(name)), None, |document| {
                     // The key comes from the table's own options.
                     let _ = document.design.set_from_text(path, key);
                 });
@@ -198,6 +200,7 @@ impl App {
                 frequency_hz,
                 gesture,
             } => session.move_lane(key, frequency_hz, gesture),
+            Command::MoveCrossover { frequency_hz, gesture } => session.move_crossover(frequency_hz, gesture),
             Command::Lock { path, locked } => {
                 let name = if locked { "Keep a part" } else { "Let a part go" };
                 session.change(name, None, |document| {
@@ -255,7 +258,7 @@ fn scale(ctx: &egui::Context, by: f32) {
 /// Takes text over for an entry: a number, or text that stays in its field with the reason.
 fn enter(session: &mut Session, path: &'static str, text: String) {
     let name = design::entry(path).map_or(path, |entry| entry.name);
-    session.change(&format!("Enter {}", name.to_lowercase()), None, |document| {
+    session.change(&format!("Enter {}", lower_first(name)), None, |document| {
         match document.design.set_from_text(path, &text) {
             Ok(()) => {
                 document.bad_texts.remove(path);

@@ -10,7 +10,7 @@ use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict};
 use crate::quantity::{self, Unit};
 
 /// Height of a read-out with its requirement [points].
-const TALL: f32 = 50.0;
+const TALL: f32 = 46.0;
 /// Height of a read-out in a line [points].
 const SHORT: f32 = 19.0;
 /// Read-outs that stand large even while nothing is asked of them.
@@ -110,17 +110,17 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     let painter = ui.painter();
     painter.text(rect.left_top() + vec2(0.0, 1.0), Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
     let value = value_text(readout);
-    let at = rect.left_top() + vec2(0.0, 14.0);
+    let at = rect.left_top() + vec2(0.0, 13.0);
     painter.text(at, Align2::LEFT_TOP, &value, theme::figure(), ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
-        let at = rect.right_top() + vec2(0.0, 9.0);
+        let at = rect.right_top() + vec2(0.0, 1.0);
         painter.text(at, Align2::RIGHT_TOP, format!("worst {worst}"), theme::small(), colour);
     }
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
-        let at = rect.right_top() + vec2(0.0, 24.0);
+        let at = rect.right_top() + vec2(0.0, 20.0);
         painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), theme::small(), colour);
         bar(painter, rect, verdict, palette);
     }
@@ -151,8 +151,8 @@ fn spare(verdict: &RequirementVerdict) -> f64 {
 
 fn verdict_text(verdict: &RequirementVerdict) -> String {
     let way = match verdict.kind {
-        LimitKind::AtLeast => "at least",
-        LimitKind::AtMost => "at most",
+        LimitKind::AtLeast => "≥",
+        LimitKind::AtMost => "≤",
     };
     let limit = quantity::print_digits(verdict.limit, verdict.unit, 3);
     match verdict.value {
@@ -167,7 +167,7 @@ fn verdict_text(verdict: &RequirementVerdict) -> String {
 
 /// A bar that fills up to the limit in its middle and beyond it, so that the distance is seen before it is read.
 fn bar(painter: &Painter, rect: Rect, verdict: &RequirementVerdict, palette: &Palette) {
-    let rail = Rect::from_min_max(pos2(rect.left(), rect.bottom() - 8.0), pos2(rect.right(), rect.bottom() - 5.0));
+    let rail = Rect::from_min_max(pos2(rect.left(), rect.bottom() - 7.0), pos2(rect.right(), rect.bottom() - 4.0));
     painter.rect_filled(rail, 1.5, palette.rail);
     let share = (0.5 + 0.5 * spare(verdict)).clamp(0.02, 1.0);
     let colour = if verdict.met { palette.good } else { palette.amber };

@@ -71,6 +71,7 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
         .with_app_id("polewright")
         .with_inner_size(vec2(1280.0, 800.0))
         .with_min_inner_size(vec2(760.0, 520.0))
+        .with_icon(super::icon::icon())
         .with_drag_and_drop(true);
     let options = eframe::NativeOptions {
         viewport,

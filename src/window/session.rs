@@ -9,7 +9,7 @@ use std::path::PathBuf;
 use super::drawing::Drawing;
 use super::history::{Gesture, History};
 use crate::analysis::{self, Analysis, Level, Request, Shown};
-use crate::compensator::{Compensator, Lane};
+use crate::compensator::{Compensator, Lane, LaneKind};
 use crate::design::Design;
 use crate::finding::Finding;
 
@@ -192,13 +192,23 @@ impl Session {
         let Ok(compensator) = Compensator::from_values(&start.values, &start.choices) else { return };
         let placed = compensator.move_lane(key, frequency_hz, &start.locks);
         let name = self.lanes.iter().find(|lane| lane.key == key).map_or(key, |lane| lane.name);
-        let name = format!("Move {}", name.to_lowercase());
+        let name = format!("Move {}", super::findings::lower_first(name));
         self.change(&name, Some(gesture), |document| {
             placed.compensator.write(&mut document.design.values);
             // The frequency comes from an axis or a parsed number, so it is finite.
             let _ = document.design.aims.set(key, frequency_hz);
         });
         self.lane_remark = placed.why.map(|why| (key, why));
+    }
+
+    /// Moves the crossover by the gain lane, by as much as the loop gain now differs from one at the wanted frequency [Hz].
+    pub fn move_crossover(&mut self, frequency_hz: f64, gesture: Gesture) {
+        let Some(Ok(detail)) = self.analysis.as_ref().map(|analysis| &analysis.shown) else { return };
+        let gain = super::axis::interpolate(&self.drawing.log_hz, &detail.curves.loop_db, frequency_hz.log10());
+        let lane = self.lanes.iter().find(|lane| lane.kind == LaneKind::Gain);
+        if let (Some(gain_db), Some(lane)) = (gain, lane) {
+            self.move_lane(lane.key, lane.frequency_hz * 10f64.powf(-gain_db / 20.0), gesture);
+        }
     }
 
     /// What is held to compare with.

@@ -88,10 +88,16 @@ pub(super) fn tab_ui(ui: &mut Ui, name: &str, chosen: bool) -> bool {
     response.clicked()
 }
 
+/// Half of the band that is seen at most, as a share of the span of the response.
+const BAND_SHARE: f64 = 1.2;
+
 fn axes(frame: Rect, step: &Step, held: Option<&Step>) -> Plot {
     let end = step.times_s.last().copied().unwrap_or(1.0);
     let all = step.output_v.iter().chain(held.into_iter().flat_map(|held| &held.output_v)).copied();
-    let band = [step.final_v - step.band_v, step.final_v + step.band_v];
+    // A band far wider than the response would flatten it: then only part of the band is seen.
+    let (least, greatest) = extent(all.clone()).unwrap_or((0.0, 1.0));
+    let half = step.band_v.min(BAND_SHARE * (greatest - least));
+    let band = [step.final_v - half, step.final_v + half];
     let (least, greatest) = extent(all.chain(band)).unwrap_or((0.0, 1.0));
     let room = (greatest - least).max(1e-9) * 0.08;
     Plot {
@@ -106,7 +112,8 @@ fn draw(ui: &Ui, plot: &Plot, step: &Step, held: Option<&Step>, look: (f32, &Pal
     let painter = ui.painter();
     let band = (step.final_v - step.band_v, step.final_v + step.band_v);
     let settle = Rect::from_x_y_ranges(plot.rect.x_range(), plot.y.at(band.1)..=plot.y.at(band.0));
-    painter.with_clip_rect(plot.rect).rect_filled(settle, 0.0, palette.settle);
+    let settle = settle.intersect(plot.rect);
+    painter.rect_filled(settle, 0.0, palette.settle);
     linear_grid(ui, plot, (Unit::Second, Unit::Volt), palette);
     let mut painter = painter.clone();
     painter.multiply_opacity(opacity);
@@ -164,9 +171,11 @@ fn read(ui: &Ui, plot: &Plot, step: &Step, event: Event, palette: &Palette) {
     let size = quantity::print_digits(step.size, unit, 3);
     let band = quantity::print_digits(step.band_v, Unit::Volt, 3);
     let text = match step.settling_s {
+        Some(0.0) => format!("+{size}: stays within ±{band}"),
         Some(time) => format!("+{size}: settles to ±{band} in {}", quantity::print_digits(time, Unit::Second, 3)),
         None => format!("+{size}: does not settle to ±{band} here"),
     };
-    let at = plot.rect.right_bottom() - vec2(8.0, 11.0);
+    let rises = step.deviation_v > 0.0 || event == Event::Reference;
+    let at = if rises { plot.rect.right_bottom() - vec2(8.0, 11.0) } else { plot.rect.right_top() + vec2(-8.0, 11.0) };
     plot::tag(&painter, at, Align2::RIGHT_CENTER, &text, theme::small(), (palette.weak, ground));
 }

@@ -54,8 +54,6 @@ pub(super) struct Palette {
     pub loop_gain: Color32,
     /// A held curve, and the open loop beside the closed one.
     pub held: Color32,
-    /// A measured curve.
-    pub measured: Color32,
     /// A landmark of the plant.
     pub landmark: Color32,
     /// Band over the nine conditions.
@@ -87,7 +85,6 @@ const LIGHT: Palette = Palette {
     compensator: Color32::from_rgb(0x9c, 0x3f, 0x8a),
     loop_gain: Color32::from_rgb(0x16, 0x17, 0x19),
     held: Color32::from_rgb(0x8c, 0x8e, 0x92),
-    measured: Color32::from_rgb(0x7a, 0x6a, 0x10),
     landmark: Color32::from_rgb(0x78, 0x7a, 0x7e),
     band: Color32::from_rgb(0xe3, 0xe7, 0xee),
     settle: Color32::from_rgb(0xe4, 0xf0, 0xea),
@@ -115,9 +112,8 @@ const DARK: Palette = Palette {
     compensator: Color32::from_rgb(0xdc, 0x8f, 0xcc),
     loop_gain: Color32::from_rgb(0xf4, 0xf4, 0xf4),
     held: Color32::from_rgb(0x80, 0x85, 0x8c),
-    measured: Color32::from_rgb(0xd8, 0xc4, 0x5a),
     landmark: Color32::from_rgb(0x8a, 0x8f, 0x96),
-    band: Color32::from_rgb(0x28, 0x2d, 0x35),
+    band: Color32::from_rgb(0x2c, 0x32, 0x3c),
     settle: Color32::from_rgb(0x1f, 0x2f, 0x29),
     veil: Color32::from_rgb(0x1b, 0x1d, 0x20),
 };
@@ -125,6 +121,11 @@ const DARK: Palette = Palette {
 /// The colours of the theme a `Ui` is drawn in.
 pub(super) fn palette(ui: &egui::Ui) -> &'static Palette {
     if ui.visuals().dark_mode { &DARK } else { &LIGHT }
+}
+
+/// Colours of the icon: ground, zero, pole, axis.
+pub(super) fn icon_colours() -> (Color32, Color32, Color32, Color32) {
+    (DARK.bar, DARK.plant, DARK.compensator, DARK.held)
 }
 
 /// How a line is broken up, so that a role is known without its colour.
@@ -155,7 +156,7 @@ impl LineStyle {
 /// Width of the column of the power stage [points].
 pub(super) const LEFT_COLUMN: f32 = 264.0;
 /// Width of the column of read-outs [points].
-pub(super) const RIGHT_COLUMN: f32 = 286.0;
+pub(super) const RIGHT_COLUMN: f32 = 296.0;
 /// Height of the top bar [points].
 pub(super) const BAR_HEIGHT: f32 = 38.0;
 /// Room left of a plot for its labels [points].
@@ -192,7 +193,7 @@ pub(super) fn strong(size: f32) -> FontId {
 
 /// Letters of the numbers decisions are made on.
 pub(super) fn figure() -> FontId {
-    FontId::new(21.0, FontFamily::Proportional)
+    FontId::new(19.5, FontFamily::Proportional)
 }
 
 /// Loads the fonts and sets both themes; called once.
@@ -235,7 +236,7 @@ fn style(palette: &Palette, visuals: egui::Visuals) -> egui::Style {
     style.spacing.interact_size.y = 21.0;
     style.spacing.menu_margin = Margin::same(7);
     style.spacing.window_margin = Margin::same(18);
-    style.spacing.scroll = egui::style::ScrollStyle::thin();
+    style.spacing.scroll = egui::style::ScrollStyle::floating();
     style.spacing.tooltip_width = 340.0;
     style.interaction.tooltip_delay = 0.4;
     style.interaction.selectable_labels = false;

@@ -1,0 +1,287 @@
+//! The window driven by accessible name, without a display: handles, fields, undo, conditions, and handles against curves.
+
+#![cfg(feature = "window")]
+#![allow(missing_docs, reason = "a test binary has no public interface")]
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, reason = "a test that fails is meant to panic")]
+
+use eframe::egui::{Key, Modifiers, Pos2, Vec2, pos2, vec2};
+use egui_kittest::Harness;
+use egui_kittest::kittest::Queryable;
+use polewright::analysis::Level;
+use polewright::design::sample;
+use polewright::quantity::{Unit, parse};
+use polewright::window::App;
+
+fn window(size: Vec2, pixels_per_point: f32) -> Harness<'static, App> {
+    let mut harness = Harness::builder()
+        .with_size(size)
+        .with_pixels_per_point(pixels_per_point)
+        .build_eframe(|cc| App::new(&cc.egui_ctx, sample::built_in(), None));
+    harness.run();
+    harness
+}
+
+fn usual() -> Harness<'static, App> {
+    window(vec2(1280.0, 800.0), 1.0)
+}
+
+fn value(harness: &Harness<'_, App>, path: &str) -> f64 {
+    harness.state().session().design().values.get(path).unwrap()
+}
+
+fn lane_hz(harness: &Harness<'_, App>, key: &str) -> f64 {
+    harness.state().session().lanes().iter().find(|lane| lane.key == key).unwrap().frequency_hz
+}
+
+fn lane_name(harness: &Harness<'_, App>, key: &str) -> &'static str {
+    harness.state().session().lanes().iter().find(|lane| lane.key == key).unwrap().name
+}
+
+fn handle(harness: &Harness<'_, App>, key: &str) -> Pos2 {
+    harness.get_by_label(lane_name(harness, key)).rect().center()
+}
+
+/// Where a frequency stands on the plots' axis, worked out here from the frame and the span alone.
+fn place(harness: &Harness<'_, App>, frequency_hz: f64) -> f64 {
+    let app = harness.state();
+    let (from, to) = app.frequency_range_hz();
+    let rect = app.gain_rect();
+    f64::from(rect.left()) + f64::from(rect.width()) * (frequency_hz / from).ln() / (to / from).ln()
+}
+
+fn drag(harness: &mut Harness<'_, App>, from: Pos2, to: Pos2) {
+    harness.hover_at(from);
+    harness.step();
+    harness.drag_at(from);
+    harness.step();
+    for part in 1..=8 {
+        harness.hover_at(from + (to - from) * (part as f32 / 8.0));
+        harness.step();
+    }
+    harness.drop_at(to);
+    harness.run();
+}
+
+fn enter(harness: &mut Harness<'_, App>, label: &str, text: &str) {
+    harness.get_by_label(label).focus();
+    harness.run();
+    harness.get_by_label(label).type_text(text);
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+}
+
+#[test]
+fn a_window_opens_with_results() {
+    let harness = usual();
+    let session = harness.state().session();
+    assert!(session.analysis().unwrap().shown.is_ok());
+    assert!(!session.stale() && !session.unsaved());
+}
+
+#[test]
+fn handles_stand_under_the_curves_at_every_size_and_scale() {
+    for size in [vec2(1000.0, 700.0), vec2(1280.0, 800.0), vec2(1920.0, 1080.0)] {
+        for scale in [1.0, 1.25, 2.0] {
+            let harness = window(size, scale);
+            let app = harness.state();
+            for lane in app.session().lanes() {
+                let wanted = place(&harness, lane.frequency_hz);
+                let found = f64::from(handle(&harness, lane.key).x);
+                let (left, right) = (f64::from(app.gain_rect().left()), f64::from(app.gain_rect().right()));
+                let apart = (wanted.clamp(left, right) - found).abs() * f64::from(scale);
+                assert!(apart < 1.0, "{} is {apart} pixels off at {size} × {scale}", lane.key);
+            }
+        }
+    }
+}
+
+#[test]
+fn a_dragged_handle_moves_parts_and_margins() {
+    let mut harness = usual();
+    let before_hz = lane_hz(&harness, "zero-1");
+    let margin = |harness: &Harness<'_, App>| {
+        let analysis = harness.state().session().analysis().unwrap();
+        analysis.readouts.iter().find(|readout| readout.key == "phase-margin").unwrap().value
+    };
+    let (margin_before, r2_before) = (margin(&harness), value(&harness, "compensator.r2"));
+    let from = handle(&harness, "zero-1");
+    let to = from + vec2(-60.0, 0.0);
+    drag(&mut harness, from, to);
+    let after_hz = lane_hz(&harness, "zero-1");
+    assert!(after_hz < before_hz);
+    assert!((place(&harness, after_hz) - f64::from(to.x)).abs() < 4.5, "the handle is where it was dropped, or snapped");
+    assert!((value(&harness, "compensator.r2") - r2_before).abs() > 1e-3 * r2_before);
+    assert_ne!(margin(&harness), margin_before);
+    // One drag is one step, and it is named.
+    let name = harness.state().session().history().undo_name().unwrap().to_owned();
+    assert!(name.starts_with("Move "), "{name}");
+    harness.get_by_label("Undo").click();
+    harness.run();
+    assert!((lane_hz(&harness, "zero-1") / before_hz - 1.0).abs() < 1e-12);
+    assert_eq!(harness.state().session().history().undo_name(), None);
+    harness.get_by_label("Redo").click();
+    harness.run();
+    assert!((lane_hz(&harness, "zero-1") / after_hz - 1.0).abs() < 1e-12);
+}
+
+#[test]
+fn arrow_keys_move_a_handle() {
+    let mut harness = usual();
+    let before_hz = lane_hz(&harness, "pole-2");
+    let name = lane_name(&harness, "pole-2");
+    harness.get_by_label(name).focus();
+    harness.run();
+    harness.key_press(Key::ArrowLeft);
+    harness.run();
+    harness.key_press(Key::ArrowLeft);
+    harness.run();
+    let after_hz = lane_hz(&harness, "pole-2");
+    // Two keys of a fortieth of a decade each.
+    assert!((after_hz / before_hz - 10f64.powf(-0.05)).abs() < 1e-6, "{before_hz} to {after_hz}");
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
+    harness.run();
+    assert!((lane_hz(&harness, "pole-2") / before_hz - 1.0).abs() < 1e-12, "a run of keys is one step");
+}
+
+#[test]
+fn a_lane_takes_a_typed_value() {
+    let mut harness = usual();
+    let name = lane_name(&harness, "zero-1");
+    harness.get_by_label(&format!("Type {name}")).click();
+    harness.run();
+    let field = format!("{name} frequency");
+    harness.get_by_label(&field).set_text_value_accesskit("");
+    harness.run();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+    harness.get_by_label(&field).type_text("1.7k");
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+    let found = lane_hz(&harness, "zero-1");
+    assert!((found / 1700.0 - 1.0).abs() < 1e-6, "{found}");
+}
+
+#[test]
+fn a_field_takes_engineering_notation() {
+    let mut harness = usual();
+    enter(&mut harness, "Inductor", "12u");
+    assert!((value(&harness, "stage.inductor.inductance") - 12e-6).abs() < 1e-15);
+    let shown = harness.get_by_label("Inductor").value().unwrap();
+    assert!((parse(&shown, Unit::Henry).unwrap() - 12e-6).abs() < 1e-15, "{shown}");
+    assert!(harness.state().session().unsaved());
+}
+
+#[test]
+fn unreadable_text_stays_in_its_field_with_the_reason() {
+    let mut harness = usual();
+    let before = value(&harness, "stage.inductor.inductance");
+    enter(&mut harness, "Inductor", "ten micro");
+    let session = harness.state().session();
+    assert!(session.stale() && session.analysis().is_some());
+    assert!((value(&harness, "stage.inductor.inductance") - before).abs() < 1e-18);
+    assert_eq!(harness.get_by_label("Inductor").value().as_deref(), Some("ten micro"));
+    let reason = session.bad_text("stage.inductor.inductance").unwrap().finding.message.clone();
+    assert!(harness.query_all_by(|node| node.value().is_some_and(|text| text.contains(&reason))).count() > 0);
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
+    harness.run();
+    assert!(!harness.state().session().stale());
+}
+
+#[test]
+fn an_unusable_value_keeps_the_last_results_and_can_be_mended() {
+    let mut harness = usual();
+    enter(&mut harness, "Inductor", "-3u");
+    assert!(harness.state().session().stale());
+    assert!(harness.state().session().analysis().is_some());
+    assert!((value(&harness, "stage.inductor.inductance") + 3e-6).abs() < 1e-15);
+    enter(&mut harness, "Inductor", "10u");
+    assert!(!harness.state().session().stale());
+}
+
+#[test]
+fn another_condition_is_shown() {
+    let mut harness = usual();
+    assert_eq!(harness.state().session().shown(), (Level::Nominal, Level::Nominal));
+    let duty = |harness: &Harness<'_, App>| {
+        harness.state().session().analysis().unwrap().shown.as_ref().unwrap().operating_point.duty
+    };
+    let before = duty(&harness);
+    harness.get_by_label("Operating condition shown").click();
+    harness.run();
+    let cell = |label: &str| label.starts_with("least input, greatest load");
+    harness.get_by(|node| node.label().is_some_and(|label| cell(&label))).click();
+    harness.run();
+    assert_eq!(harness.state().session().shown(), (Level::Least, Level::Greatest));
+    assert!((duty(&harness) - before).abs() > 0.01);
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::ArrowRight);
+    harness.run();
+    assert_eq!(harness.state().session().shown(), (Level::Nominal, Level::Least));
+}
+
+#[test]
+fn parts_are_rounded_and_kept() {
+    let mut harness = usual();
+    enter(&mut harness, "R2, sets the first zero", "8.123k");
+    harness.get_by_label("Keep R2").click();
+    harness.run();
+    harness.get_by_label("Round parts to their series").click();
+    harness.run();
+    assert!((value(&harness, "compensator.r2") - 8123.0).abs() < 1e-9);
+    harness.get_by_label("Keep R2").click();
+    harness.run();
+    harness.get_by_label("Round parts to their series").click();
+    harness.run();
+    assert!((value(&harness, "compensator.r2") - 8123.0).abs() > 1.0);
+}
+
+#[test]
+fn unsaved_changes_are_asked_about_and_saved() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("try.ron");
+    let mut harness = usual();
+    enter(&mut harness, "Inductor", "12u");
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::O);
+    harness.run();
+    let sample = sample::all().last().unwrap();
+    harness.get_by_label(sample.title).click();
+    harness.run();
+    harness.get_by_label("Save").click();
+    harness.run();
+    let field = harness.get_by_label("Path of the design file");
+    field.focus();
+    harness.run();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+    harness.get_by_label("Path of the design file").type_text(&path.display().to_string());
+    harness.run();
+    harness.get_by_label("Save").click();
+    harness.run();
+    let saved = polewright::design::file::load(&path).unwrap();
+    assert!((saved.values.get("stage.inductor.inductance").unwrap() - 12e-6).abs() < 1e-15);
+    assert_eq!(harness.state().session().design().title, sample.design().unwrap().title);
+    assert!(!harness.state().session().unsaved());
+}
+
+#[test]
+fn a_file_that_cannot_be_opened_is_told_and_nothing_is_lost() {
+    let mut harness = usual();
+    let title = harness.state().session().design().title.clone();
+    harness.state_mut().ask(polewright::window::Command::OpenPath("/no/such/file.ron".into()));
+    harness.run();
+    assert!(harness.state().message().unwrap().failed);
+    assert_eq!(harness.state().session().design().title, title);
+}
+
+#[test]
+fn every_sample_is_drawn_with_every_control_named() {
+    for sample in sample::all() {
+        let design = sample.design().unwrap();
+        let mut harness = Harness::builder()
+            .with_size(vec2(1280.0, 800.0))
+            .build_eframe(|cc| App::new(&cc.egui_ctx, design, None));
+        harness.run();
+        harness.check_accessibility();
+        assert!(harness.state().session().analysis().is_some(), "{}", sample.file);
+        assert!(harness.state().gain_rect().contains(pos2(harness.state().gain_rect().center().x, harness.state().gain_rect().center().y)));
+    }
+}
