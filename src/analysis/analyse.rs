@@ -15,6 +15,7 @@ use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{FrequencyResponse, Modes, Zpk, margins};
 use crate::quantity::{Unit, print};
+use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// Which condition is shown in full.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -71,34 +72,74 @@ const SEARCH_TO: f64 = 0.5;
 /// Analyses a checked design.
 pub fn analyse(design: &CheckedDesign, request: &Request) -> Analysis {
     let shared = Shared::new(design);
-    let results: Vec<(Condition, Result<Worked, Finding>)> = Condition::nine(&design.stage)
-        .into_iter()
-        .map(|condition| {
-            let worked = shared.as_ref().map_err(Clone::clone).and_then(|s| work(design, s, &condition));
-            (condition, worked)
-        })
-        .collect();
-    let (condition, shown) = match request.shown {
-        Shown::Levels(input, load) => {
-            let (condition, worked) = &results[index_of(input, load)];
-            (condition.clone(), worked.clone())
-        }
-        Shown::At { input_voltage, load_current } => {
-            let condition = Condition::what_if(input_voltage, load_current);
-            let worked = shared.as_ref().map_err(Clone::clone).and_then(|s| work(design, s, &condition));
-            (condition, worked)
+    let (condition, place) = match request.shown {
+        Shown::Levels(input, load) => (Condition::at_levels(&design.stage, input, load), Some(index_of(input, load))),
+        Shown::At { input_voltage, load_current } => (Condition::what_if(input_voltage, load_current), None),
+    };
+    let band = &request.band_frequencies_hz;
+    let (shown, conditions) = match &shared {
+        Ok(shared) => Crew { design, shared, band }.work_off(&condition, place, request),
+        Err(finding) => {
+            let failed = |condition| ConditionResult { condition, outcome: Err(finding.clone()) };
+            (Err(finding.clone()), Condition::nine(&design.stage).into_iter().map(failed).collect())
         }
     };
-    let detail = shown.and_then(|worked| match &shared {
-        Ok(shared) => detailed(design, shared, &condition, &worked, request).map(Box::new),
-        Err(finding) => Err(finding.clone()),
-    });
-    let band = &request.band_frequencies_hz;
-    let conditions: Vec<ConditionResult> = results
-        .into_iter()
-        .map(|(condition, worked)| ConditionResult { condition, outcome: worked.map(|w| w.summary(band)) })
-        .collect();
-    conclude(design, shared.ok().as_ref(), condition, detail, conditions, band)
+    conclude(design, shared.ok().as_ref(), condition, shown, conditions, band)
+}
+
+/// Two threads that share the nine conditions: one starts with the condition shown in full, and both take what is left.
+struct Crew<'a> {
+    design: &'a CheckedDesign,
+    shared: &'a Shared,
+    band: &'a [f64],
+}
+
+impl Crew<'_> {
+    fn work_off(
+        &self,
+        shown: &Condition,
+        place: Option<usize>,
+        request: &Request,
+    ) -> (Result<Box<Detail>, Finding>, Vec<ConditionResult>) {
+        let nine = Condition::nine(&self.design.stage);
+        let next = AtomicUsize::new(0);
+        let take_rest = || {
+            let mut done = Vec::with_capacity(nine.len());
+            while let Some((k, condition)) = {
+                let k = next.fetch_add(1, Ordering::Relaxed);
+                nine.get(k).map(|condition| (k, condition))
+            } {
+                if Some(k) != place {
+                    let outcome = work(self.design, self.shared, condition).map(|w| w.summary(self.band));
+                    done.push((k, outcome));
+                }
+            }
+            done
+        };
+        let (detail, mut done) = std::thread::scope(|scope| {
+            let helper = scope.spawn(take_rest);
+            let worked = work(self.design, self.shared, shown);
+            let detail = worked
+                .as_ref()
+                .map_err(Clone::clone)
+                .and_then(|w| detailed(self.design, self.shared, shown, w, request).map(Box::new));
+            let mut done = take_rest();
+            done.extend(place.map(|k| (k, worked.map(|w| w.summary(self.band)))));
+            // A helper that panicked leaves its conditions out; they are worked off below.
+            done.extend(helper.join().unwrap_or_default());
+            (detail, done)
+        });
+        done.sort_by_key(|(k, _)| *k);
+        let mut done = done.into_iter().peekable();
+        let conditions = nine.iter().enumerate().map(|(k, condition)| {
+            let outcome = match done.next_if(|(at, _)| *at == k) {
+                Some((_, outcome)) => outcome,
+                None => work(self.design, self.shared, condition).map(|w| w.summary(self.band)),
+            };
+            ConditionResult { condition: condition.clone(), outcome }
+        });
+        (detail, conditions.collect())
+    }
 }
 
 /// Requirements, read-outs and remarks over finished conditions.
