@@ -63,7 +63,9 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
     });
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().max_height(300.0).show(ui, |ui| bar::samples_ui(ui, desk));
+    ScrollArea::vertical().max_height(300.0).show(ui, |ui| {
+        bar::samples_ui(ui, desk);
+    });
 }
 
 fn save_as_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {

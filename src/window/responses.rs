@@ -92,10 +92,13 @@ fn value_axis(frame: Rect, closed: &[f64], open: Option<&[f64]>, unit: Unit) -> 
     if unit == Unit::Ohm {
         let (least, greatest) = extent(all.filter(|value| *value > 0.0)).unwrap_or((1e-3, 1.0));
         let low = (least.log10() - 0.1).max(greatest.log10() - 6.0);
-        return Axis::logarithmic(10f64.powf(low), greatest * 1.6, frame.bottom(), frame.top());
+        // A fifth of the height stays free above the curves for their names.
+        let high = greatest.log10() + 0.25 * (greatest.log10() - low) + 0.1;
+        return Axis::logarithmic(10f64.powf(low), 10f64.powf(high), frame.bottom(), frame.top());
     }
     let (least, greatest) = extent(all).unwrap_or((-40.0, 20.0));
-    Axis::linear(least.max(greatest - 140.0) - 4.0, greatest + 8.0, frame.bottom(), frame.top())
+    let low = least.max(greatest - 140.0) - 4.0;
+    Axis::linear(low, greatest + 0.25 * (greatest - low) + 2.0, frame.bottom(), frame.top())
 }
 
 /// The value axis in its own measure, for curves given in it.

@@ -103,7 +103,7 @@ fn axes(frame: Rect, step: &Step, held: Option<&Step>) -> Plot {
     Plot {
         rect: frame,
         x: Axis::linear(0.0, end, frame.left(), frame.right()),
-        y: Axis::linear(least - room, greatest + room, frame.bottom(), frame.top()),
+        y: Axis::linear(least - room, greatest + 2.0 * room, frame.bottom(), frame.top()),
     }
 }
 
