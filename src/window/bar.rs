@@ -104,7 +104,7 @@ pub(super) fn samples_ui(ui: &mut Ui, desk: &mut Desk<'_>) -> bool {
     ui.set_max_width(430.0);
     for sample in design::sample::all() {
         let title = RichText::new(sample.title).color(palette(ui).accent);
-        let response = ui.add(Button::new(title).stroke(egui::Stroke::NONE));
+        let response = ui.add(Button::new(title).frame(false));
         ui.label(RichText::new(sample.line).font(theme::small()).color(palette(ui).weak));
         ui.add_space(4.0);
         if response.clicked() {

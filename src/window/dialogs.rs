@@ -1,6 +1,6 @@
 //! Questions and lists over the window: open, save as, unsaved changes, all commands.
 
-use eframe::egui::{Button, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
+use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
 
 use super::bar;
 use super::command::{COMMANDS, Command};
@@ -10,7 +10,8 @@ use super::view::{Desk, Dialog};
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(mut dialog) = desk.view.dialog.clone() else { return };
-    let response = Modal::new(Id::unique("dialog")).show(ui.ctx(), |ui| {
+    let frame = Frame::popup(ui.style()).inner_margin(18);
+    let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
         ui.set_width(520.0);
         match &mut dialog {
             Dialog::Open { path } => open_ui(ui, path, desk),

@@ -86,6 +86,9 @@ fn sum_ui(ui: &mut Ui, margin_deg: f64, x: &Axis, palette: &Palette) {
 
 /// Degrees with one decimal and their sign.
 fn signed(degrees: f64) -> String {
+    if degrees.abs() < 0.05 {
+        return "0.0°".to_owned();
+    }
     let sign = if degrees < 0.0 { '\u{2212}' } else { '+' };
     format!("{sign}{:.1}°", degrees.abs())
 }

@@ -31,7 +31,7 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     };
     grid(ui, &plot, unit, palette);
     let mut painter = ui.painter().clone();
-    painter.multiply_opacity(if desk.session.stale() { 0.4 } else { 1.0 });
+    painter.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
     let log_hz = &desk.session.drawing().log_hz;
     let inner = |values: &[f64]| -> Vec<f64> {
         if unit == Unit::Ohm { values.iter().map(|value| value.log10()).collect() } else { values.to_vec() }
@@ -149,8 +149,10 @@ fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette
     let at = plot.at(*frequency_hz, *ohm);
     painter.circle_filled(at, 3.5, palette.good);
     let text = format!("{} at {}", quantity::print_digits(*ohm, Unit::Ohm, 3), quantity::print_digits(*frequency_hz, Unit::Hertz, 3));
-    let align = if at.x > plot.rect.center().x { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
-    let x = if at.x > plot.rect.center().x { at.x - 10.0 } else { at.x + 10.0 };
+    // At the right of the peak wherever the number fits there: the names of the curves stand at the left.
+    let at_left = at.x + 140.0 > plot.rect.right();
+    let align = if at_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
+    let x = if at_left { at.x - 10.0 } else { at.x + 10.0 };
     let ground = palette.canvas.gamma_multiply(0.8);
     plot::tag(painter, pos2(x, at.y - 2.0), align, &text, theme::strong(12.0), (palette.good, ground));
 }
