@@ -4,7 +4,7 @@
 #![allow(missing_docs, reason = "a test binary has no public interface")]
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, reason = "a test that fails is meant to panic")]
 
-use eframe::egui::{Key, Modifiers, Pos2, Vec2, pos2, vec2};
+use eframe::egui::{Key, Role, Modifiers, Pos2, Vec2, pos2, vec2};
 use egui_kittest::Harness;
 use egui_kittest::kittest::Queryable;
 use polewright::analysis::Level;
@@ -62,10 +62,14 @@ fn drag(harness: &mut Harness<'_, App>, from: Pos2, to: Pos2) {
     harness.run();
 }
 
+fn field<'h>(harness: &'h Harness<'_, App>, label: &'h str) -> egui_kittest::Node<'h> {
+    harness.get_by_role_and_label(Role::TextInput, label)
+}
+
 fn enter(harness: &mut Harness<'_, App>, label: &str, text: &str) {
-    harness.get_by_label(label).focus();
+    field(harness, label).focus();
     harness.run();
-    harness.get_by_label(label).type_text(text);
+    field(harness, label).type_text(text);
     harness.run();
     harness.key_press(Key::Enter);
     harness.run();
@@ -153,11 +157,9 @@ fn a_lane_takes_a_typed_value() {
     let name = lane_name(&harness, "zero-1");
     harness.get_by_label(&format!("Type {name}")).click();
     harness.run();
-    let field = format!("{name} frequency");
-    harness.get_by_label(&field).set_text_value_accesskit("");
-    harness.run();
     harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
-    harness.get_by_label(&field).type_text("1.7k");
+    harness.run();
+    field(&harness, &format!("{name} frequency")).type_text("1.7k");
     harness.run();
     harness.key_press(Key::Enter);
     harness.run();
@@ -170,7 +172,7 @@ fn a_field_takes_engineering_notation() {
     let mut harness = usual();
     enter(&mut harness, "Inductor", "12u");
     assert!((value(&harness, "stage.inductor.inductance") - 12e-6).abs() < 1e-15);
-    let shown = harness.get_by_label("Inductor").value().unwrap();
+    let shown = field(&harness, "Inductor").value().unwrap();
     assert!((parse(&shown, Unit::Henry).unwrap() - 12e-6).abs() < 1e-15, "{shown}");
     assert!(harness.state().session().unsaved());
 }
@@ -183,7 +185,7 @@ fn unreadable_text_stays_in_its_field_with_the_reason() {
     let session = harness.state().session();
     assert!(session.stale() && session.analysis().is_some());
     assert!((value(&harness, "stage.inductor.inductance") - before).abs() < 1e-18);
-    assert_eq!(harness.get_by_label("Inductor").value().as_deref(), Some("ten micro"));
+    assert_eq!(field(&harness, "Inductor").value().as_deref(), Some("ten micro"));
     let reason = session.bad_text("stage.inductor.inductance").unwrap().finding.message.clone();
     assert!(harness.query_all_by(|node| node.value().is_some_and(|text| text.contains(&reason))).count() > 0);
     harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
@@ -224,15 +226,18 @@ fn another_condition_is_shown() {
 
 #[test]
 fn parts_are_rounded_and_kept() {
-    let mut harness = usual();
+    let mut harness = window(vec2(1280.0, 1300.0), 1.0);
     enter(&mut harness, "R2, sets the first zero", "8.123k");
+    let locked = |harness: &Harness<'_, App>| harness.state().session().design().locks.contains("compensator.r2");
     harness.get_by_label("Keep R2").click();
     harness.run();
+    assert!(locked(&harness));
     harness.get_by_label("Round parts to their series").click();
     harness.run();
     assert!((value(&harness, "compensator.r2") - 8123.0).abs() < 1e-9);
     harness.get_by_label("Keep R2").click();
     harness.run();
+    assert!(!locked(&harness));
     harness.get_by_label("Round parts to their series").click();
     harness.run();
     assert!((value(&harness, "compensator.r2") - 8123.0).abs() > 1.0);
@@ -246,13 +251,12 @@ fn unsaved_changes_are_asked_about_and_saved() {
     enter(&mut harness, "Inductor", "12u");
     harness.key_press_modifiers(Modifiers::COMMAND, Key::O);
     harness.run();
-    let sample = sample::all().last().unwrap();
+    let sample = &sample::all()[1];
     harness.get_by_label(sample.title).click();
     harness.run();
     harness.get_by_label("Save").click();
     harness.run();
-    let field = harness.get_by_label("Path of the design file");
-    field.focus();
+    field(&harness, "Path of the design file").focus();
     harness.run();
     harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
     harness.get_by_label("Path of the design file").type_text(&path.display().to_string());

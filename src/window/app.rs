@@ -225,6 +225,7 @@ fn left_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     Panel::bottom("operating").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(ui, |ui| {
         ScrollArea::vertical().id_salt("operating").show(ui, |ui| {
             ui.set_max_width(ui.available_width());
+            ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
             if tall {
                 conditions::panel_ui(ui, desk);
                 gap(ui);
@@ -251,9 +252,13 @@ fn right_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ScrollArea::vertical().id_salt("readouts").auto_shrink(false).show(ui, |ui| {
         ui.set_max_width(ui.available_width() - 6.0);
         ui.spacing_mut().item_spacing.y = 2.0;
-        readouts::readouts_ui(ui, desk);
-        gap(ui);
-        ledger::ledger_ui(ui, desk);
+        // Stale results stand back; the parts beside them are the present ones.
+        ui.scope(|ui| {
+            ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
+            readouts::readouts_ui(ui, desk);
+            gap(ui);
+            ledger::ledger_ui(ui, desk);
+        });
         gap(ui);
         parts::parts_ui(ui, desk);
         ui.add_space(8.0);

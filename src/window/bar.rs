@@ -78,7 +78,11 @@ fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
     }
     if menu == Menu::Design {
         ui.separator();
-        ui.menu_button("Samples", |ui| samples_ui(ui, desk));
+        ui.menu_button("Samples", |ui| {
+            if samples_ui(ui, desk) {
+                ui.close();
+            }
+        });
     }
 }
 
@@ -94,19 +98,21 @@ fn chosen(command: &Command, desk: &Desk<'_>) -> bool {
     }
 }
 
-/// The sample designs, each with its line.
-pub(super) fn samples_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+/// The sample designs, each with its line; true when one was pressed.
+pub(super) fn samples_ui(ui: &mut Ui, desk: &mut Desk<'_>) -> bool {
+    let mut pressed = false;
     ui.set_max_width(430.0);
     for sample in design::sample::all() {
         let title = RichText::new(sample.title).color(palette(ui).accent);
-        let response = ui.add(Button::new(title).stroke(egui::Stroke::NONE));
+        let response = ui.add(Button::new(title).frame(false));
         ui.label(RichText::new(sample.line).font(theme::small()).color(palette(ui).weak));
         ui.add_space(4.0);
         if response.clicked() {
             desk.ask(Command::OpenSample(sample.file));
-            ui.close();
+            pressed = true;
         }
     }
+    pressed
 }
 
 /// The mark of a list that opens.

@@ -49,7 +49,7 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let head = Rect::from_min_max(pos2(stack.gain.rect.left(), room.top()), pos2(stack.gain.rect.right(), room.top() + HEAD));
     cursor_ui(ui, &stack, desk);
     let palette = palette(ui);
-    let veil = if desk.session.stale() { 0.4 } else { 1.0 };
+    let veil = if desk.session.stale() { theme::STALE } else { 1.0 };
     ground(ui, &stack, desk.session.analysis(), palette);
     if let Some(analysis) = desk.session.analysis() {
         let mut painter = ui.painter().clone();

@@ -1,6 +1,6 @@
 //! Questions and lists over the window: open, save as, unsaved changes, all commands.
 
-use eframe::egui::{Button, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
+use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
 
 use super::bar;
 use super::command::{COMMANDS, Command};
@@ -10,7 +10,8 @@ use super::view::{Desk, Dialog};
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(mut dialog) = desk.view.dialog.clone() else { return };
-    let response = Modal::new(Id::unique("dialog")).show(ui.ctx(), |ui| {
+    let frame = Frame::popup(ui.style()).inner_margin(18);
+    let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
         ui.set_width(520.0);
         match &mut dialog {
             Dialog::Open { path } => open_ui(ui, path, desk),
@@ -63,7 +64,9 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
     });
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().max_height(300.0).show(ui, |ui| bar::samples_ui(ui, desk));
+    ScrollArea::vertical().max_height(300.0).show(ui, |ui| {
+        bar::samples_ui(ui, desk);
+    });
 }
 
 fn save_as_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {

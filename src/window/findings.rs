@@ -38,7 +38,7 @@ fn finding_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
             let text = RichText::new(&finding.message).font(theme::small()).color(ink);
             ui.label(text).on_hover_text(finding.severity.word());
             if let Some(hint) = &finding.hint {
-                ui.label(RichText::new(hint).font(theme::small()).color(palette.weak));
+                ui.label(RichText::new(sentence(hint)).font(theme::small()).color(palette.weak));
             }
             ui.horizontal_wrapped(|ui| actions_ui(ui, finding, desk));
         });
@@ -59,6 +59,14 @@ fn actions_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
             desk.view.seek = Some(entry.path.to_owned());
         }
     }
+}
+
+/// A hint as a sentence of its own.
+pub(super) fn sentence(hint: &str) -> String {
+    let mut letters = hint.chars();
+    let first = letters.next().map(|first| first.to_uppercase().to_string()).unwrap_or_default();
+    let end = if hint.ends_with(['.', '?', '!']) { "" } else { "." };
+    format!("{first}{}{end}", letters.as_str())
 }
 
 /// A name as it stands within a sentence: its first letter small, unless the word is an abbreviation.

@@ -272,7 +272,7 @@ pub(super) fn problem_ui(ui: &mut Ui, path: &str, desk: &Desk<'_>) {
     let palette = palette(ui);
     let mut text = finding.message.clone();
     if let Some(hint) = &finding.hint {
-        text = format!("{text} {hint}");
+        text = format!("{text} {}", super::findings::sentence(hint));
     }
     let response = ui.label(RichText::new(text).font(theme::small()).color(palette.problem));
     let edge = response.rect.left() - 6.0;

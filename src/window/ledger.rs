@@ -31,7 +31,7 @@ pub(super) fn ledger_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
     let room = ui.available_width();
     let left = ui.cursor().left();
-    let x = Axis::linear(least - 4.0, greatest + 4.0, left + room * 0.44, left + room - 58.0);
+    let x = Axis::linear(least - 4.0, greatest + 4.0, left + room * 0.46, left + room - 58.0);
     let mut from = 0.0;
     for row in &ledger.rows {
         row_ui(ui, row, from, &x, desk);
@@ -86,6 +86,9 @@ fn sum_ui(ui: &mut Ui, margin_deg: f64, x: &Axis, palette: &Palette) {
 
 /// Degrees with one decimal and their sign.
 fn signed(degrees: f64) -> String {
+    if degrees.abs() < 0.05 {
+        return "0.0°".to_owned();
+    }
     let sign = if degrees < 0.0 { '\u{2212}' } else { '+' };
     format!("{sign}{:.1}°", degrees.abs())
 }

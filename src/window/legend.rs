@@ -13,15 +13,17 @@ use crate::quantity::{self, Unit};
 /// Curves in the order of the legend, with their names.
 const CURVES: [(Curve, &str); 3] = [(Curve::Plant, "plant"), (Curve::Compensator, "compensator"), (Curve::Loop, "loop")];
 
+/// Where each curve and the band begin, as shares of the line; the longest name has the most room.
+const PLACES: [f32; 4] = [0.0, 0.27, 0.615, 0.885];
+
 /// Draws the legend; pressing a name shows or hides its curve.
 pub(super) fn legend_ui(ui: &mut Ui, head: Rect, desk: &mut Desk<'_>) {
-    let slot = head.width() / 3.35;
-    for (index, (curve, name)) in (0_u8..).zip(CURVES) {
-        let left = head.left() + slot * f32::from(index);
-        let rect = Rect::from_min_size(pos2(left, head.top()), vec2(slot - 6.0, head.height() - 3.0));
+    let at = |share: f32| head.left() + head.width() * share;
+    for (index, (curve, name)) in CURVES.into_iter().enumerate() {
+        let rect = Rect::from_min_max(pos2(at(PLACES[index]), head.top()), pos2(at(PLACES[index + 1]) - 6.0, head.bottom() - 3.0));
         curve_ui(ui, rect, curve, name, desk);
     }
-    let rect = Rect::from_min_max(pos2(head.left() + slot * 3.0, head.top()), head.max - vec2(0.0, 3.0));
+    let rect = Rect::from_min_max(pos2(at(PLACES[3]), head.top()), head.max - vec2(0.0, 3.0));
     band_ui(ui, rect, desk);
 }
 

@@ -176,12 +176,13 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
         format!("{}: {cause}", quantity::print_digits(edge.frequency_hz, Unit::Hertz, 2))
     };
     let mut help = String::from("Crossover window: the crossover frequencies this stage allows.");
+    let ground = palette.canvas;
     if let Some(edge) = &window.lower {
-        painter.text(pos2(left - 6.0, y), Align2::RIGHT_CENTER, name(edge), theme::small(), palette.weak);
+        plot::tag(&painter, pos2(left - 6.0, y), Align2::RIGHT_CENTER, &name(edge), theme::small(), (palette.weak, ground));
         help += &format!("\nleast {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause);
     }
     if let Some(edge) = &window.upper {
-        painter.text(pos2(right + 6.0, y), Align2::LEFT_CENTER, name(edge), theme::small(), palette.weak);
+        plot::tag(&painter, pos2(right + 6.0, y), Align2::LEFT_CENTER, &name(edge), theme::small(), (palette.weak, ground));
         help += &format!("\ngreatest {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause);
     }
     let bar = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));

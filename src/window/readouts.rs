@@ -141,7 +141,7 @@ fn decisive(readout: &Readout) -> Option<&RequirementVerdict> {
 
 /// How much is to spare, as a share of the limit; negative when missed.
 fn spare(verdict: &RequirementVerdict) -> f64 {
-    let Some(value) = verdict.value else { return -1.0 };
+    let Some(value) = verdict.value else { return if verdict.met { 1.0 } else { -1.0 } };
     let scale = verdict.limit.abs().max(f64::MIN_POSITIVE);
     match verdict.kind {
         LimitKind::AtLeast => (value - verdict.limit) / scale,
@@ -181,10 +181,11 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), SHORT), Sense::click());
     let painter = ui.painter().with_clip_rect(rect);
-    painter.text(rect.left_center(), Align2::LEFT_CENTER, readout.name, theme::small(), palette.weak);
     let value = value_text(readout);
     let end = pos2(shown_column(rect), rect.center().y);
-    painter.text(end, Align2::RIGHT_CENTER, &value, theme::body(), ink(readout, analysis, palette));
+    let taken = painter.text(end, Align2::RIGHT_CENTER, &value, theme::body(), ink(readout, analysis, palette));
+    let before = painter.with_clip_rect(rect.with_max_x(taken.left() - 5.0));
+    before.text(rect.left_center(), Align2::LEFT_CENTER, readout.name, theme::small(), palette.weak);
     if let Some(text) = worst_value(readout, analysis) {
         painter.text(rect.right_center(), Align2::RIGHT_CENTER, text, theme::small(), palette.weak);
     }

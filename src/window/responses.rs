@@ -31,7 +31,7 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     };
     grid(ui, &plot, unit, palette);
     let mut painter = ui.painter().clone();
-    painter.multiply_opacity(if desk.session.stale() { 0.4 } else { 1.0 });
+    painter.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
     let log_hz = &desk.session.drawing().log_hz;
     let inner = |values: &[f64]| -> Vec<f64> {
         if unit == Unit::Ohm { values.iter().map(|value| value.log10()).collect() } else { values.to_vec() }
@@ -92,10 +92,13 @@ fn value_axis(frame: Rect, closed: &[f64], open: Option<&[f64]>, unit: Unit) -> 
     if unit == Unit::Ohm {
         let (least, greatest) = extent(all.filter(|value| *value > 0.0)).unwrap_or((1e-3, 1.0));
         let low = (least.log10() - 0.1).max(greatest.log10() - 6.0);
-        return Axis::logarithmic(10f64.powf(low), greatest * 1.6, frame.bottom(), frame.top());
+        // A fifth of the height stays free above the curves for their names.
+        let high = greatest.log10() + 0.25 * (greatest.log10() - low) + 0.1;
+        return Axis::logarithmic(10f64.powf(low), 10f64.powf(high), frame.bottom(), frame.top());
     }
     let (least, greatest) = extent(all).unwrap_or((-40.0, 20.0));
-    Axis::linear(least.max(greatest - 140.0) - 4.0, greatest + 8.0, frame.bottom(), frame.top())
+    let low = least.max(greatest - 140.0) - 4.0;
+    Axis::linear(low, greatest + 0.25 * (greatest - low) + 2.0, frame.bottom(), frame.top())
 }
 
 /// The value axis in its own measure, for curves given in it.
@@ -146,8 +149,10 @@ fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette
     let at = plot.at(*frequency_hz, *ohm);
     painter.circle_filled(at, 3.5, palette.good);
     let text = format!("{} at {}", quantity::print_digits(*ohm, Unit::Ohm, 3), quantity::print_digits(*frequency_hz, Unit::Hertz, 3));
-    let align = if at.x > plot.rect.center().x { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
-    let x = if at.x > plot.rect.center().x { at.x - 10.0 } else { at.x + 10.0 };
+    // At the right of the peak wherever the number fits there: the names of the curves stand at the left.
+    let at_left = at.x + 140.0 > plot.rect.right();
+    let align = if at_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
+    let x = if at_left { at.x - 10.0 } else { at.x + 10.0 };
     let ground = palette.canvas.gamma_multiply(0.8);
     plot::tag(painter, pos2(x, at.y - 2.0), align, &text, theme::strong(12.0), (palette.good, ground));
 }

@@ -35,7 +35,7 @@ pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let held = desk.session.held().and_then(|held| held.analysis.shown.as_ref().ok());
     let held = held.and_then(|detail| chosen(&detail.steps, desk.view.event));
     let plot = axes(frame, step, held);
-    let opacity = if desk.session.stale() { 0.4 } else { 1.0 };
+    let opacity = if desk.session.stale() { theme::STALE } else { 1.0 };
     draw(ui, &plot, step, held, (opacity, palette));
     read(ui, &plot, step, desk.view.event, palette);
 }
@@ -103,7 +103,7 @@ fn axes(frame: Rect, step: &Step, held: Option<&Step>) -> Plot {
     Plot {
         rect: frame,
         x: Axis::linear(0.0, end, frame.left(), frame.right()),
-        y: Axis::linear(least - room, greatest + room, frame.bottom(), frame.top()),
+        y: Axis::linear(least - room, greatest + 2.0 * room, frame.bottom(), frame.top()),
     }
 }
 

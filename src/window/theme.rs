@@ -169,6 +169,8 @@ pub(super) const LANE_HEIGHT: f32 = 23.0;
 pub(super) const ROW: f32 = 23.0;
 /// Radius of a lane's handle [points].
 pub(super) const HANDLE: f32 = 6.5;
+/// How much of stale results is left to see.
+pub(super) const STALE: f32 = 0.42;
 /// Width of the main curve [points].
 pub(super) const CURVE: f32 = 1.9;
 /// Width of the curves beside it [points].
