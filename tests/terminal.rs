@@ -337,6 +337,29 @@ fn the_documented_fields_are_there() {
     }
 }
 
+/// The definition put back: an output that leaves the band around its value before, to which an integrating loop returns it, settles
+/// after the start; one that stays in it has settled from the start.
+#[test]
+fn settling_meets_its_definition_in_every_condition() {
+    let mut outside = 0;
+    for sample in sample::all().iter().filter(|sample| sample.file != "bench-exercise.ron") {
+        let checked = sample.design().expect("a sample").check().expect("usable");
+        let band = checked.events.settling_band * checked.stage.output_voltage;
+        let object = json(&check(&[&sample_path(sample.file), "--json"])).remove(0);
+        for row in object["conditions"].as_array().expect("nine") {
+            let (deviation, settling) = (number(&row["load_step_deviation_v"]).abs(), number(&row["settling_s"]));
+            // Finite DC gain leaves the final value a little beside the first: keep away from the edge of the band.
+            if deviation > 1.1 * band {
+                assert!(settling > 0.0, "{}: {row}", sample.file);
+                outside += 1;
+            } else if deviation < 0.9 * band {
+                assert!(settling == 0.0, "{}: {row}", sample.file);
+            }
+        }
+    }
+    assert!(outside >= 9, "{outside}");
+}
+
 /// Every key of the report, at any depth.
 fn keys(value: &Value, found: &mut BTreeSet<String>) {
     match value {

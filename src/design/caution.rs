@@ -26,7 +26,7 @@ pub(super) fn caution(design: &Design, output: f64) -> Option<Finding> {
             place,
             format!(
                 "Caution: this circuit carries {}. Above 60 V DC, parts are treated as hazardous to touch \
-                 (IEC 60950 and 62368-1 lineage, from memory). The output bank at {} holds {} (½·C·V²) and keeps it after \
+                 (in the lineage of IEC 60950 and 62368-1). The output bank at {} holds {} (½·C·V²) and keeps it after \
                  the input is gone; a loop measurement is made on a live circuit.",
                 print(highest, Unit::Volt),
                 print(output, Unit::Volt),

@@ -89,13 +89,14 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
         Err(error) => return unusable(None, error.findings()),
     };
     let title = Some(design.title.clone());
-    let wrong = set(&mut design, &request.settings);
-    if !wrong.is_empty() {
-        return unusable(title, wrong);
-    }
+    let mut problems = set(&mut design, &request.settings);
     let checked = match design.check() {
-        Ok(checked) => checked,
-        Err(problems) => return unusable(title, problems),
+        Ok(checked) if problems.is_empty() => checked,
+        Ok(_) => return unusable(title, problems),
+        Err(more) => {
+            problems.extend(more);
+            return unusable(title, problems);
+        }
     };
     let analysis = analyse(&checked, &asked(request, &checked.stage));
     let mut findings = analysis.findings.clone();
