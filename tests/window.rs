@@ -1,10 +1,9 @@
 //! The window driven by accessible name, without a display: handles, fields, undo, conditions, and handles against curves.
 
 #![cfg(feature = "window")]
-#![allow(missing_docs, reason = "a test binary has no public interface")]
-#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, reason = "a test that fails is meant to panic")]
+#![expect(clippy::unwrap_used, reason = "a test may stop at a wrong value")]
 
-use eframe::egui::{Key, Role, Modifiers, Pos2, Vec2, pos2, vec2};
+use eframe::egui::{Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
 use egui_kittest::Harness;
 use egui_kittest::kittest::Queryable;
 use polewright::analysis::Level;
@@ -114,7 +113,10 @@ fn a_dragged_handle_moves_parts_and_margins() {
     drag(&mut harness, from, to);
     let after_hz = lane_hz(&harness, "zero-1");
     assert!(after_hz < before_hz);
-    assert!((place(&harness, after_hz) - f64::from(to.x)).abs() < 4.5, "the handle is where it was dropped, or snapped");
+    assert!(
+        (place(&harness, after_hz) - f64::from(to.x)).abs() < 4.5,
+        "the handle is where it was dropped, or snapped"
+    );
     assert!((value(&harness, "compensator.r2") - r2_before).abs() > 1e-3 * r2_before);
     assert_ne!(margin(&harness), margin_before);
     // One drag is one step, and it is named.
@@ -280,12 +282,16 @@ fn a_file_that_cannot_be_opened_is_told_and_nothing_is_lost() {
 fn every_sample_is_drawn_with_every_control_named() {
     for sample in sample::all() {
         let design = sample.design().unwrap();
-        let mut harness = Harness::builder()
-            .with_size(vec2(1280.0, 800.0))
-            .build_eframe(|cc| App::new(&cc.egui_ctx, design, None));
+        let mut harness =
+            Harness::builder().with_size(vec2(1280.0, 800.0)).build_eframe(|cc| App::new(&cc.egui_ctx, design, None));
         harness.run();
         harness.check_accessibility();
         assert!(harness.state().session().analysis().is_some(), "{}", sample.file);
-        assert!(harness.state().gain_rect().contains(pos2(harness.state().gain_rect().center().x, harness.state().gain_rect().center().y)));
+        assert!(
+            harness
+                .state()
+                .gain_rect()
+                .contains(pos2(harness.state().gain_rect().center().x, harness.state().gain_rect().center().y))
+        );
     }
 }
