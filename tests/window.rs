@@ -1,10 +1,9 @@
 //! The window driven by accessible name, without a display: handles, fields, undo, conditions, and handles against curves.
 
 #![cfg(feature = "window")]
-#![allow(missing_docs, reason = "a test binary has no public interface")]
-#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic, reason = "a test that fails is meant to panic")]
+#![expect(clippy::unwrap_used, reason = "a test may stop at a wrong value")]
 
-use eframe::egui::{Key, Role, Modifiers, Pos2, Vec2, pos2, vec2};
+use eframe::egui::{Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
 use egui_kittest::Harness;
 use egui_kittest::kittest::Queryable;
 use polewright::analysis::Level;

@@ -46,10 +46,7 @@ impl App {
         theme::install(ctx);
         App {
             session: Session::new(design, path),
-            view: View {
-                theme: ctx.options(|options| options.theme_preference),
-                ..View::default()
-            },
+            view: View { theme: ctx.options(|options| options.theme_preference), ..View::default() },
             dialogs: FileDialogs::default(),
             after_saving: None,
             leaving: false,
@@ -90,7 +87,11 @@ impl App {
             // While text is edited, undo and steps of the cursor are the field's own.
             let of_field = matches!(
                 row.command,
-                Command::Undo | Command::Redo | Command::NextCondition | Command::PreviousCondition | Command::WholeRange
+                Command::Undo
+                    | Command::Redo
+                    | Command::NextCondition
+                    | Command::PreviousCondition
+                    | Command::WholeRange
             );
             if typing && of_field {
                 continue;
@@ -104,7 +105,7 @@ impl App {
 
     /// A command given while a field is edited works on what stands in the field.
     fn take_over_field(&mut self, ctx: &egui::Context) {
-        if let Some(focused) = ctx.memory(|memory| memory.focused())
+        if let Some(focused) = ctx.memory(egui::Memory::focused)
             && self.view.field.is_some()
         {
             ctx.memory_mut(|memory| memory.surrender_focus(focused));
@@ -115,16 +116,13 @@ impl App {
             let before = entry.zip(value).map(|(entry, value)| crate::quantity::exact(value, entry.unit));
             let before = self.session.bad_text(field.path).map(|bad| bad.text.clone()).or(before);
             if before.unwrap_or_default() != field.text {
-                self.asked.push(Command::Enter {
-                    path: field.path,
-                    text: field.text,
-                });
+                self.asked.push(Command::Enter { path: field.path, text: field.text });
             }
         }
     }
 
     fn dropped_files(&mut self, ctx: &egui::Context) {
-        let dropped = ctx.input(|input| input.raw.dropped_files.iter().next().map(|file| file.path().to_path_buf()));
+        let dropped = ctx.input(|input| input.raw.dropped_files.first().map(|file| file.path().to_path_buf()));
         if let Some(path) = dropped {
             self.asked.push(Command::OpenPath(path));
         }
@@ -174,11 +172,7 @@ impl eframe::App for App {
 
     fn ui(&mut self, ui: &mut Ui, _frame: &mut eframe::Frame) {
         let width_before = self.view.plot_width;
-        let mut desk = Desk {
-            session: &self.session,
-            view: &mut self.view,
-            send: &mut self.asked,
-        };
+        let mut desk = Desk { session: &self.session, view: &mut self.view, send: &mut self.asked };
         window_ui(ui, &mut desk);
         dialogs::dialog_ui(ui, &mut desk);
         // What was asked for is carried out in the next turn, and new widths ask for new curves there.
@@ -207,10 +201,18 @@ fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let roomy = ui.available_width() > 2.0 * theme::LEFT_COLUMN + theme::RIGHT_COLUMN;
     let column = frame(palette.panel).inner_margin(Margin { left: 14, right: 8, top: 10, bottom: 8 });
     if desk.view.stage_column && roomy {
-        Panel::left("stage").exact_size(theme::LEFT_COLUMN).resizable(false).frame(column).show(ui, |ui| left_ui(ui, desk));
+        Panel::left("stage")
+            .exact_size(theme::LEFT_COLUMN)
+            .resizable(false)
+            .frame(column)
+            .show(ui, |ui| left_ui(ui, desk));
     }
     if desk.view.readout_column {
-        Panel::right("readouts").exact_size(theme::RIGHT_COLUMN).resizable(false).frame(column).show(ui, |ui| right_ui(ui, desk));
+        Panel::right("readouts")
+            .exact_size(theme::RIGHT_COLUMN)
+            .resizable(false)
+            .frame(column)
+            .show(ui, |ui| right_ui(ui, desk));
     }
     CentralPanel::default().frame(frame(palette.canvas)).show(ui, |ui| middle_ui(ui, desk));
 }
@@ -222,18 +224,21 @@ fn left_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let tall = ui.available_height() > TALL_COLUMN;
     let below = if tall { 350.0 } else { 190.0_f32.min(ui.available_height() * 0.4) };
     let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
-    Panel::bottom("operating").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(ui, |ui| {
-        ScrollArea::vertical().id_salt("operating").show(ui, |ui| {
-            ui.set_max_width(ui.available_width());
-            ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
-            if tall {
-                conditions::panel_ui(ui, desk);
-                gap(ui);
-            }
-            ui.spacing_mut().item_spacing.y = 1.0;
-            operating::operating_ui(ui, desk);
-        });
-    });
+    Panel::bottom("operating").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(
+        ui,
+        |ui| {
+            ScrollArea::vertical().id_salt("operating").show(ui, |ui| {
+                ui.set_max_width(ui.available_width());
+                ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
+                if tall {
+                    conditions::panel_ui(ui, desk);
+                    gap(ui);
+                }
+                ui.spacing_mut().item_spacing.y = 1.0;
+                operating::operating_ui(ui, desk);
+            });
+        },
+    );
     ScrollArea::vertical().id_salt("stage").auto_shrink(false).show(ui, |ui| {
         ui.set_max_width(ui.available_width() - 6.0);
         stage::stage_ui(ui, desk);
@@ -246,9 +251,15 @@ const FINDINGS_SHARE: f32 = 0.22;
 fn right_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
     let below = (ui.available_height() * FINDINGS_SHARE).max(90.0);
-    Panel::bottom("findings").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(ui, |ui| {
-        ScrollArea::vertical().id_salt("findings").auto_shrink(false).show(ui, |ui| findings::findings_ui(ui, desk));
-    });
+    Panel::bottom("findings").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(
+        ui,
+        |ui| {
+            ScrollArea::vertical()
+                .id_salt("findings")
+                .auto_shrink(false)
+                .show(ui, |ui| findings::findings_ui(ui, desk));
+        },
+    );
     ScrollArea::vertical().id_salt("readouts").auto_shrink(false).show(ui, |ui| {
         ui.set_max_width(ui.available_width() - 6.0);
         ui.spacing_mut().item_spacing.y = 2.0;
@@ -285,7 +296,8 @@ fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 }
 
 fn plots_ui(ui: &mut Ui, room: Rect, upper: f32, desk: &mut Desk<'_>) {
-    let stack = Rect::from_min_max(pos2(room.left() + 4.0, room.top() + 6.0), pos2(room.right() - 4.0, room.top() + upper));
+    let stack =
+        Rect::from_min_max(pos2(room.left() + 4.0, room.top() + 6.0), pos2(room.right() - 4.0, room.top() + upper));
     let mut stack_ui = ui.new_child(egui::UiBuilder::new().max_rect(stack));
     bode::bode_ui(&mut stack_ui, desk);
     let top = stack.bottom() + 4.0;

@@ -28,23 +28,14 @@ impl Axis {
     /// A linear axis from `from` at `start` to `to` at `end`.
     pub(super) fn linear(from: f64, to: f64, start: f32, end: f32) -> Self {
         let high = if to > from { to } else { from + 1.0 };
-        Axis {
-            spacing: Spacing::Linear,
-            low: from,
-            high,
-            start,
-            end,
-        }
+        Axis { spacing: Spacing::Linear, low: from, high, start, end }
     }
 
     /// A logarithmic axis from `from` at `start` to `to` at `end`; both positive.
     pub(super) fn logarithmic(from: f64, to: f64, start: f32, end: f32) -> Self {
         let low = from.max(f64::MIN_POSITIVE).log10();
         let high = to.max(f64::MIN_POSITIVE).log10();
-        Axis {
-            spacing: Spacing::Logarithmic,
-            ..Axis::linear(low, high, start, end)
-        }
+        Axis { spacing: Spacing::Logarithmic, ..Axis::linear(low, high, start, end) }
     }
 
     /// Screen position of a value [points].
@@ -111,10 +102,7 @@ pub(super) fn decade_lines(from: f64, to: f64) -> impl Iterator<Item = DecadeLin
     (0..20_u8)
         .flat_map(move |decade| {
             let base = 10f64.powf(first + f64::from(decade));
-            (1..10_u8).map(move |digit| DecadeLine {
-                value: base * f64::from(digit),
-                digit,
-            })
+            (1..10_u8).map(move |digit| DecadeLine { value: base * f64::from(digit), digit })
         })
         .filter(move |line| line.value >= from * 0.999_999)
         .take_while(move |line| line.value <= to * 1.000_001)
@@ -140,9 +128,7 @@ pub(super) fn nice_step(span: f64, most: f64) -> f64 {
 /// Multiples of `step` within a range, rising; at most two hundred.
 pub(super) fn multiples(from: f64, to: f64, step: f64) -> impl Iterator<Item = f64> {
     let first = (from / step - 1e-6).ceil();
-    (0..200_u16)
-        .map(move |index| (first + f64::from(index)) * step)
-        .take_while(move |value| *value <= to + step * 1e-6)
+    (0..200_u16).map(move |index| (first + f64::from(index)) * step).take_while(move |value| *value <= to + step * 1e-6)
 }
 
 /// Label of a grid line. Zeros behind the last digit are not printed, so six digits say what the grid needs and no more.

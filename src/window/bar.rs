@@ -129,7 +129,11 @@ pub(super) fn notices_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         let count = desk.session.problems().len();
         let first = desk.session.problems().first().map(|finding| finding.message.clone()).unwrap_or_default();
         let more = if count > 1 { format!(" And {} more, see findings.", count - 1) } else { String::new() };
-        let shown = if desk.session.analysis().is_some() { "Stale: the curves are those of the last usable design. " } else { "" };
+        let shown = if desk.session.analysis().is_some() {
+            "Stale: the curves are those of the last usable design. "
+        } else {
+            ""
+        };
         line_ui(ui, &format!("{shown}{first}{more}"), palette.problem, |_| {});
     }
     if let Some(message) = desk.view.message.clone() {

@@ -46,7 +46,8 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let stack = lay_out(room, desk);
     desk.view.plot_width = stack.gain.rect.width();
     desk.view.gain_rect = stack.gain.rect;
-    let head = Rect::from_min_max(pos2(stack.gain.rect.left(), room.top()), pos2(stack.gain.rect.right(), room.top() + HEAD));
+    let head =
+        Rect::from_min_max(pos2(stack.gain.rect.left(), room.top()), pos2(stack.gain.rect.right(), room.top() + HEAD));
     cursor_ui(ui, &stack, desk);
     let palette = palette(ui);
     let veil = if desk.session.stale() { theme::STALE } else { 1.0 };
@@ -83,23 +84,18 @@ fn lay_out(room: Rect, desk: &mut Desk<'_>) -> Stack {
     let gain = Rect::from_min_max(pos2(left, gain_top), pos2(right, gain_top + gain_height));
     let phase_top = gain.bottom() + GAP;
     let phase = Rect::from_min_max(pos2(left, phase_top), pos2(right, phase_top + (rest - gain_height).round()));
-    let lanes = Rect::from_min_max(pos2(room.left(), phase.bottom() + 4.0), pos2(room.right(), phase.bottom() + 4.0 + lanes_height));
+    let lanes = Rect::from_min_max(
+        pos2(room.left(), phase.bottom() + 4.0),
+        pos2(room.right(), phase.bottom() + 4.0 + lanes_height),
+    );
     let foot = Rect::from_min_max(pos2(room.left(), lanes.bottom()), pos2(room.right(), lanes.bottom() + FOOT));
 
     let (from, to) = frequency_range(desk);
     let x = Axis::logarithmic(from, to, left, right);
     let (gain_range, phase_range) = value_ranges(desk);
     Stack {
-        gain: Plot {
-            rect: gain,
-            x,
-            y: Axis::linear(gain_range.0, gain_range.1, gain.bottom(), gain.top()),
-        },
-        phase: Plot {
-            rect: phase,
-            x,
-            y: Axis::linear(phase_range.0, phase_range.1, phase.bottom(), phase.top()),
-        },
+        gain: Plot { rect: gain, x, y: Axis::linear(gain_range.0, gain_range.1, gain.bottom(), gain.top()) },
+        phase: Plot { rect: phase, x, y: Axis::linear(phase_range.0, phase_range.1, phase.bottom(), phase.top()) },
         lanes,
         foot,
     }
@@ -208,11 +204,7 @@ pub(super) fn of(curves: &Curves, curve: super::command::Curve) -> (&[f64], &[f6
 fn held_curves(painter: &egui::Painter, stack: &Stack, held: &Analysis, palette: &Palette) {
     let Ok(detail) = &held.shown else { return };
     let log_hz: Vec<f64> = detail.curves.frequencies_hz.iter().map(|frequency| frequency.log10()).collect();
-    let pen = Pen {
-        colour: palette.held,
-        width: theme::THIN_CURVE,
-        style: LineStyle::Dotted,
-    };
+    let pen = Pen { colour: palette.held, width: theme::THIN_CURVE, style: LineStyle::Dotted };
     stack.gain.curve(painter, &log_hz, &detail.curves.loop_db, pen);
     stack.phase.curve(painter, &log_hz, &detail.curves.loop_deg, pen);
 }

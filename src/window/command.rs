@@ -151,8 +151,8 @@ pub(super) struct Row {
     pub command: Command,
 }
 
-const fn key(modifiers: Modifiers, key: Key) -> Option<KeyboardShortcut> {
-    Some(KeyboardShortcut::new(modifiers, key))
+const fn key(modifiers: Modifiers, key: Key) -> KeyboardShortcut {
+    KeyboardShortcut::new(modifiers, key)
 }
 
 const fn row(
@@ -162,13 +162,7 @@ const fn row(
     help: &'static str,
     command: Command,
 ) -> Row {
-    Row {
-        name,
-        menu,
-        shortcut,
-        help,
-        command,
-    }
+    Row { name, menu, shortcut, help, command }
 }
 
 const CTRL: Modifiers = Modifiers::COMMAND;
@@ -176,67 +170,97 @@ const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
 
 /// The command table, in the order of the menus. Shortcuts with more modifiers stand first where keys are shared.
 pub(super) static COMMANDS: &[Row] = &[
-    row("Open…", Menu::Design, key(CTRL, Key::O), "Open a design file or a sample.", Command::Open),
-    row("Save as…", Menu::Design, key(CTRL_SHIFT, Key::S), "Save under another name.", Command::SaveAs),
-    row("Save", Menu::Design, key(CTRL, Key::S), "Save the design file.", Command::Save),
-    row("Quit", Menu::Design, key(CTRL, Key::Q), "Close the window.", Command::Quit),
-    row("Redo", Menu::Edit, key(CTRL_SHIFT, Key::Z), "Do again what was undone.", Command::Redo),
-    row("Undo", Menu::Edit, key(CTRL, Key::Z), "Take the last change back.", Command::Undo),
+    row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
+    row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
+    row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
+    row("Quit", Menu::Design, Some(key(CTRL, Key::Q)), "Close the window.", Command::Quit),
+    row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),
+    row("Undo", Menu::Edit, Some(key(CTRL, Key::Z)), "Take the last change back.", Command::Undo),
     row(
         "Round parts to their series",
         Menu::Edit,
-        key(CTRL, Key::R),
+        Some(key(CTRL, Key::R)),
         "Set resistors and capacitors of the compensator to preferred values; locked parts stay.",
         Command::RoundParts,
     ),
     row(
         "Next condition",
         Menu::View,
-        key(CTRL, Key::ArrowRight),
+        Some(key(CTRL, Key::ArrowRight)),
         "Show the next of the nine operating conditions.",
         Command::NextCondition,
     ),
     row(
         "Previous condition",
         Menu::View,
-        key(CTRL, Key::ArrowLeft),
+        Some(key(CTRL, Key::ArrowLeft)),
         "Show the operating condition before.",
         Command::PreviousCondition,
     ),
-    row("Hold curves", Menu::View, key(CTRL, Key::H), "Keep the present curves beside the next try.", Command::Hold),
-    row("Drop held curves", Menu::View, key(CTRL_SHIFT, Key::H), "Take the held curves away.", Command::DropHeld),
-    row("Plant curve", Menu::View, key(CTRL, Key::Num1), "Show or hide the plant.", Command::Toggle(Curve::Plant)),
+    row(
+        "Hold curves",
+        Menu::View,
+        Some(key(CTRL, Key::H)),
+        "Keep the present curves beside the next try.",
+        Command::Hold,
+    ),
+    row("Drop held curves", Menu::View, Some(key(CTRL_SHIFT, Key::H)), "Take the held curves away.", Command::DropHeld),
+    row(
+        "Plant curve",
+        Menu::View,
+        Some(key(CTRL, Key::Num1)),
+        "Show or hide the plant.",
+        Command::Toggle(Curve::Plant),
+    ),
     row(
         "Compensator curve",
         Menu::View,
-        key(CTRL, Key::Num2),
+        Some(key(CTRL, Key::Num2)),
         "Show or hide the compensator.",
         Command::Toggle(Curve::Compensator),
     ),
-    row("Loop curve", Menu::View, key(CTRL, Key::Num3), "Show or hide the loop gain.", Command::Toggle(Curve::Loop)),
+    row(
+        "Loop curve",
+        Menu::View,
+        Some(key(CTRL, Key::Num3)),
+        "Show or hide the loop gain.",
+        Command::Toggle(Curve::Loop),
+    ),
     row(
         "Band of conditions",
         Menu::View,
-        key(CTRL, Key::B),
+        Some(key(CTRL, Key::B)),
         "Show or hide the band the loop covers over the nine conditions.",
         Command::ToggleBand,
     ),
-    row("Whole range", Menu::View, key(CTRL, Key::Home), "Show all frequencies again.", Command::WholeRange),
-    row("Power stage column", Menu::View, key(Modifiers::NONE, Key::F6), "Show or hide the entries.", Command::ToggleStage),
+    row("Whole range", Menu::View, Some(key(CTRL, Key::Home)), "Show all frequencies again.", Command::WholeRange),
+    row(
+        "Power stage column",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F6)),
+        "Show or hide the entries.",
+        Command::ToggleStage,
+    ),
     row(
         "Read-outs column",
         Menu::View,
-        key(Modifiers::NONE, Key::F7),
+        Some(key(Modifiers::NONE, Key::F7)),
         "Show or hide margins, parts and findings.",
         Command::ToggleReadouts,
     ),
     row("Light", Menu::View, None, "Light colours.", Command::Theme(ThemePreference::Light)),
     row("Dark", Menu::View, None, "Dark colours.", Command::Theme(ThemePreference::Dark)),
     row("As the system", Menu::View, None, "Colours as the desktop has them.", Command::Theme(ThemePreference::System)),
-    row("Larger", Menu::View, key(CTRL, Key::Plus), "Larger text and drawing.", Command::Larger),
-    row("Smaller", Menu::View, key(CTRL, Key::Minus), "Smaller text and drawing.", Command::Smaller),
-    row("Normal size", Menu::View, key(CTRL, Key::Num0), "Text and drawing at normal size.", Command::NormalSize),
-    row("All commands…", Menu::View, key(CTRL, Key::K), "A list of all commands to search.", Command::ListCommands),
+    row("Larger", Menu::View, Some(key(CTRL, Key::Plus)), "Larger text and drawing.", Command::Larger),
+    row("Smaller", Menu::View, Some(key(CTRL, Key::Minus)), "Smaller text and drawing.", Command::Smaller),
+    row("Normal size", Menu::View, Some(key(CTRL, Key::Num0)), "Text and drawing at normal size.", Command::NormalSize),
+    row(
+        "All commands…",
+        Menu::View,
+        Some(key(CTRL, Key::K)),
+        "A list of all commands to search.",
+        Command::ListCommands,
+    ),
 ];
 
 #[cfg(test)]

@@ -1,6 +1,9 @@
 //! The nine operating conditions: the chooser in the bar, and the map that shows all of them at once.
 
-use eframe::egui::{Align2, Popup, PopupCloseBehavior, Pos2, Rect, RichText, Sense, Stroke, StrokeKind, Ui, WidgetInfo, Role, pos2, vec2};
+use eframe::egui::{
+    Align2, Popup, PopupCloseBehavior, Pos2, Rect, RichText, Role, Sense, Stroke, StrokeKind, Ui, WidgetInfo, pos2,
+    vec2,
+};
 
 use super::command::Command;
 use super::theme::{self, palette};
@@ -104,7 +107,13 @@ pub(super) fn map_ui(ui: &mut Ui, salt: &str, desk: &mut Desk<'_>) {
         }
         if index % 3 == 0 {
             let text = quantity::print_digits(result.condition.input_voltage, Unit::Volt, 3);
-            ui.painter().text(pos2(rect.left(), cell.center().y), Align2::LEFT_CENTER, text, theme::small(), palette.weak);
+            ui.painter().text(
+                pos2(rect.left(), cell.center().y),
+                Align2::LEFT_CENTER,
+                text,
+                theme::small(),
+                palette.weak,
+            );
         }
         cell_ui(ui, cell, (salt, index), result, desk);
     }

@@ -1,6 +1,8 @@
 //! The crossover as a handle: taken on the gain curve and moved along the axis, the gain of the compensator follows.
 
-use eframe::egui::{self, CursorIcon, EventFilter, Id, Key, Modifiers, Rect, Sense, Stroke, StrokeKind, Ui, WidgetInfo, vec2};
+use eframe::egui::{
+    self, CursorIcon, EventFilter, Id, Key, Modifiers, Rect, Sense, Stroke, StrokeKind, Ui, WidgetInfo, vec2,
+};
 
 use super::bode::Stack;
 use super::command::Command;
@@ -34,7 +36,12 @@ pub(super) fn crossover_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
         ui.painter().circle_stroke(at, 8.0, Stroke::new(1.5, colour));
     }
     if response.has_focus() {
-        ui.painter().rect_stroke(Rect::from_center_size(at, vec2(22.0, 22.0)), 5.0, Stroke::new(1.5, colour), StrokeKind::Outside);
+        ui.painter().rect_stroke(
+            Rect::from_center_size(at, vec2(22.0, 22.0)),
+            5.0,
+            Stroke::new(1.5, colour),
+            StrokeKind::Outside,
+        );
     }
     let response = response.on_hover_and_drag_cursor(CursorIcon::ResizeHorizontal);
     drag(ui, stack, frequency_hz, &response, desk);
@@ -49,11 +56,8 @@ fn drag(ui: &Ui, stack: &Stack, frequency_hz: f64, response: &egui::Response, de
         desk.view.gesture = desk.view.gesture.next();
         let handle_x = stack.gain.x.at(frequency_hz);
         let press = ui.input(|input| input.pointer.press_origin());
-        desk.view.drag = Some(Drag {
-            handle_x,
-            pointer_x: press.map_or(handle_x, |at| at.x),
-            gesture: desk.view.gesture,
-        });
+        desk.view.drag =
+            Some(Drag { handle_x, pointer_x: press.map_or(handle_x, |at| at.x), gesture: desk.view.gesture });
     }
     if let (true, Some(drag), Some(pointer)) = (response.dragged(), desk.view.drag, response.interact_pointer_pos())
         && (response.drag_delta().x != 0.0 || response.drag_started())

@@ -140,7 +140,8 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
     }
     ScrollArea::vertical().max_height(360.0).show(ui, |ui| {
         for row in found {
-            let mut button = Button::new(row.name).stroke(Stroke::NONE).min_size(eframe::egui::vec2(ui.available_width(), 0.0));
+            let mut button =
+                Button::new(row.name).stroke(Stroke::NONE).min_size(eframe::egui::vec2(ui.available_width(), 0.0));
             if let Some(shortcut) = &row.shortcut {
                 button = button.shortcut_text(ui.ctx().format_shortcut(shortcut));
             }

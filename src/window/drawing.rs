@@ -31,12 +31,7 @@ impl Drawing {
     pub(super) fn new(analysis: &Analysis) -> Self {
         let band = band(analysis);
         let Ok(detail) = &analysis.shown else {
-            return Drawing {
-                band,
-                gain_range: (-40.0, 40.0),
-                phase_range: (-180.0, 0.0),
-                ..Drawing::default()
-            };
+            return Drawing { band, gain_range: (-40.0, 40.0), phase_range: (-180.0, 0.0), ..Drawing::default() };
         };
         let curves = &detail.curves;
         Drawing {

@@ -17,8 +17,8 @@ pub(super) enum Ask {
 /// Answers of the system's file dialog.
 #[derive(Debug)]
 pub(super) struct FileDialogs {
-    sender: Sender<Option<PathBuf>>,
-    receiver: Receiver<Option<PathBuf>>,
+    sender: Sender<PathBuf>,
+    receiver: Receiver<PathBuf>,
 }
 
 impl Default for FileDialogs {
@@ -41,16 +41,16 @@ impl FileDialogs {
                 Ask::Open => dialog.pick_file(),
                 Ask::Save(name) => dialog.set_file_name(name).save_file(),
             };
-            // The window may be gone by now; then nobody waits for the answer.
-            if sender.send(path).is_ok() {
+            // No path: the dialog was left, or there is none. The window may be gone by now; then nobody waits.
+            if path.is_some_and(|path| sender.send(path).is_ok()) {
                 ctx.request_repaint();
             }
         };
         std::thread::Builder::new().name("file dialog".to_owned()).spawn(run).map(|_| ())
     }
 
-    /// An answer that has come in: a path, or nothing when the dialog was left or is not there.
-    pub(super) fn answer(&self) -> Option<Option<PathBuf>> {
+    /// A path that has been chosen.
+    pub(super) fn answer(&self) -> Option<PathBuf> {
         self.receiver.try_recv().ok()
     }
 }

@@ -4,8 +4,8 @@
 //! read stays in its field with the reason under it. A field shows four digits; while edited it shows the exact number.
 
 use eframe::egui::{
-    self, Align, FontSelection, Id, Key, Layout, Response, RichText, Sense, Stroke, TextEdit, Ui, UiBuilder, WidgetInfo, Role,
-    pos2, text::CCursor, text::CCursorRange, vec2,
+    self, Align, FontSelection, Id, Key, Layout, Response, RichText, Role, Sense, Stroke, TextEdit, Ui, UiBuilder,
+    WidgetInfo, pos2, text::CCursor, text::CCursorRange, vec2,
 };
 
 use super::command::Command;
@@ -46,7 +46,8 @@ fn items(section: &str, takes: impl Fn(&str) -> bool, desk: &Desk<'_>) -> Vec<It
     let entries: Vec<_> = design.entries().into_iter().filter(|entry| inside(entry.path)).collect();
     let mut choices: Vec<_> = design.choice_rows().into_iter().filter(|choice| inside(choice.path)).collect();
     let governs = |choice: &Choice| entries.iter().any(|entry| under(entry.path, choice.path));
-    let mut items: Vec<Item> = choices.iter().filter(|choice| !governs(choice)).map(|choice| Item::Choice(choice)).collect();
+    let mut items: Vec<Item> =
+        choices.iter().filter(|choice| !governs(choice)).map(|choice| Item::Choice(choice)).collect();
     choices.retain(|choice| governs(choice));
     let mut group = "";
     let mut index = 0;
@@ -89,7 +90,9 @@ fn numbered(parent: &str) -> Option<String> {
 
 fn is_range(least: &Entry, nominal: &Entry, greatest: &Entry) -> bool {
     let parent = least.path.strip_suffix(".least");
-    parent.is_some() && parent == nominal.path.strip_suffix(".nominal") && parent == greatest.path.strip_suffix(".greatest")
+    parent.is_some()
+        && parent == nominal.path.strip_suffix(".nominal")
+        && parent == greatest.path.strip_suffix(".greatest")
 }
 
 fn choice_row_ui(ui: &mut Ui, choice: &'static Choice, desk: &mut Desk<'_>) {
@@ -109,10 +112,7 @@ pub(super) fn choice_ui(ui: &mut Ui, choice: &'static Choice, width: f32, desk: 
             for option in choice.options {
                 let response = ui.selectable_label(option.key == key, option.name).on_hover_text(option.help);
                 if response.clicked() && option.key != key {
-                    desk.ask(Command::Choose {
-                        path: choice.path,
-                        key: option.key,
-                    });
+                    desk.ask(Command::Choose { path: choice.path, key: option.key });
                 }
             }
         })
@@ -207,18 +207,12 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
     if response.gained_focus() {
         text = exact_text(entry, desk);
         select_all(ui, id, &text);
-        desk.view.field = Some(Field {
-            path: entry.path,
-            text,
-        });
+        desk.view.field = Some(Field { path: entry.path, text });
     } else if editing {
         if response.lost_focus() || !response.has_focus() {
             leave_field(ui, entry, text, desk);
         } else {
-            desk.view.field = Some(Field {
-                path: entry.path,
-                text,
-            });
+            desk.view.field = Some(Field { path: entry.path, text });
         }
     }
     if desk.view.seek.as_deref() == Some(entry.path) {
@@ -252,10 +246,7 @@ fn leave_field(ui: &Ui, entry: &'static Entry, text: String, desk: &mut Desk<'_>
     desk.view.field = None;
     let escaped = ui.input(|input| input.key_pressed(Key::Escape));
     if !escaped && text != exact_text(entry, desk) {
-        desk.ask(Command::Enter {
-            path: entry.path,
-            text,
-        });
+        desk.ask(Command::Enter { path: entry.path, text });
     }
 }
 

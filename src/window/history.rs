@@ -31,10 +31,7 @@ pub struct History<T> {
 
 impl<T> Default for History<T> {
     fn default() -> Self {
-        History {
-            done: Vec::new(),
-            undone: Vec::new(),
-        }
+        History { done: Vec::new(), undone: Vec::new() }
     }
 }
 
@@ -49,11 +46,7 @@ impl<T: Clone + PartialEq> History<T> {
         if self.done.len() == MOST_STEPS {
             self.done.remove(0);
         }
-        self.done.push(Step {
-            name: name.to_owned(),
-            document: before,
-            gesture,
-        });
+        self.done.push(Step { name: name.to_owned(), document: before, gesture });
     }
 
     /// The document before the running gesture, when it has changed anything yet.
@@ -64,22 +57,14 @@ impl<T: Clone + PartialEq> History<T> {
     /// Takes the last step back: hands out the document before it.
     pub fn undo(&mut self, present: &T) -> Option<T> {
         let step = self.done.pop()?;
-        self.undone.push(Step {
-            name: step.name,
-            document: present.clone(),
-            gesture: None,
-        });
+        self.undone.push(Step { name: step.name, document: present.clone(), gesture: None });
         Some(step.document)
     }
 
     /// Does the last step taken back again: hands out the document after it.
     pub fn redo(&mut self, present: &T) -> Option<T> {
         let step = self.undone.pop()?;
-        self.done.push(Step {
-            name: step.name,
-            document: present.clone(),
-            gesture: None,
-        });
+        self.done.push(Step { name: step.name, document: present.clone(), gesture: None });
         Some(step.document)
     }
 

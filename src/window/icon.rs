@@ -17,17 +17,14 @@ pub(super) fn icon() -> IconData {
         for column in 0..SIDE {
             let (x, y) = (f32::from(column) + 0.5, f32::from(row) + 0.5);
             let mut colour = Color32::TRANSPARENT;
-            for (distance, ink) in [(plate(x, y), ground), (rail(x, y), axis), (ring(x, y), zero), (cross(x, y), pole)] {
+            for (distance, ink) in [(plate(x, y), ground), (rail(x, y), axis), (ring(x, y), zero), (cross(x, y), pole)]
+            {
                 colour = blend(colour, ink, (0.5 - distance).clamp(0.0, 1.0));
             }
             rgba.extend(colour.to_srgba_unmultiplied());
         }
     }
-    IconData {
-        rgba,
-        width: u32::from(SIDE),
-        height: u32::from(SIDE),
-    }
+    IconData { rgba, width: u32::from(SIDE), height: u32::from(SIDE) }
 }
 
 fn blend(under: Color32, over: Color32, share: f32) -> Color32 {
@@ -50,7 +47,7 @@ fn ring(x: f32, y: f32) -> f32 {
 
 fn cross(x: f32, y: f32) -> f32 {
     let (x, y) = ((x - 44.0).abs(), (y - 32.0).abs());
-    let along = ((x + y) / 2.0).min(8.5);
+    let along = x.midpoint(y).min(8.5);
     (x - along).hypot(y - along) - HALF_LINE
 }
 

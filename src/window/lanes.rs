@@ -5,8 +5,8 @@
 //! fortieth of a decade, with Shift by a tenth of that; Enter or a press on the number types a value.
 
 use eframe::egui::{
-    self, Align2, CursorIcon, EventFilter, Id, Key, Modifiers, Painter, Pos2, Rect, Response, Sense, Stroke, StrokeKind, Ui,
-    WidgetInfo, pos2, vec2,
+    self, Align2, CursorIcon, EventFilter, Id, Key, Modifiers, Painter, Pos2, Rect, Response, Sense, Stroke,
+    StrokeKind, Ui, WidgetInfo, pos2, vec2,
 };
 
 use super::bode::Stack;
@@ -31,7 +31,8 @@ pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
     let mut active = None;
     for (index, lane) in session.lanes().iter().enumerate() {
         let top = stack.lanes.top() + 3.0 + theme::LANE_HEIGHT * index as f32;
-        let row = Rect::from_min_max(pos2(stack.lanes.left(), top), pos2(stack.lanes.right(), top + theme::LANE_HEIGHT));
+        let row =
+            Rect::from_min_max(pos2(stack.lanes.left(), top), pos2(stack.lanes.right(), top + theme::LANE_HEIGHT));
         if lane_ui(ui, stack, row, lane, desk) {
             active = Some(lane.key);
         }
@@ -106,7 +107,8 @@ fn aim(painter: &Painter, stack: &Stack, lane: &Lane, y: f32, desk: &Desk<'_>, p
         return;
     }
     let x = stack.gain.x.at(aim_hz);
-    painter.line_segment([pos2(x, y - 7.0), pos2(x, y + 7.0)], Stroke::new(1.6, palette.compensator.gamma_multiply(0.7)));
+    painter
+        .line_segment([pos2(x, y - 7.0), pos2(x, y + 7.0)], Stroke::new(1.6, palette.compensator.gamma_multiply(0.7)));
     let handle = stack.gain.x.at(lane.frequency_hz);
     painter.hline(x.min(handle)..=x.max(handle), y, Stroke::new(2.5, palette.compensator.gamma_multiply(0.45)));
 }
@@ -148,11 +150,8 @@ fn drag(ui: &Ui, stack: &Stack, lane: &Lane, response: &Response, desk: &mut Des
         desk.view.gesture = desk.view.gesture.next();
         let handle_x = stack.gain.x.at(lane.frequency_hz);
         let press = ui.input(|input| input.pointer.press_origin());
-        desk.view.drag = Some(Drag {
-            handle_x,
-            pointer_x: press.map_or(handle_x, |at| at.x),
-            gesture: desk.view.gesture,
-        });
+        desk.view.drag =
+            Some(Drag { handle_x, pointer_x: press.map_or(handle_x, |at| at.x), gesture: desk.view.gesture });
         response.request_focus();
     }
     if let (true, Some(drag), Some(pointer)) = (response.dragged(), desk.view.drag, response.interact_pointer_pos()) {
@@ -160,11 +159,7 @@ fn drag(ui: &Ui, stack: &Stack, lane: &Lane, response: &Response, desk: &mut Des
         let moved = (pointer.x - drag.pointer_x) * if modifiers.shift { FINE } else { 1.0 };
         let x = snapped(stack, drag.handle_x + moved, modifiers, desk);
         if response.drag_delta().x != 0.0 || response.drag_started() {
-            desk.ask(Command::MoveLane {
-                key: lane.key,
-                frequency_hz: stack.gain.x.value(x),
-                gesture: drag.gesture,
-            });
+            desk.ask(Command::MoveLane { key: lane.key, frequency_hz: stack.gain.x.value(x), gesture: drag.gesture });
         }
     }
     if response.drag_stopped() {
@@ -188,10 +183,7 @@ fn keys(ui: &Ui, lane: &Lane, response: &Response, desk: &mut Desk<'_>) {
     if response.gained_focus() && desk.view.drag.is_none() {
         desk.view.gesture = desk.view.gesture.next();
     }
-    let filter = EventFilter {
-        horizontal_arrows: true,
-        ..EventFilter::default()
-    };
+    let filter = EventFilter { horizontal_arrows: true, ..EventFilter::default() };
     ui.memory_mut(|memory| memory.set_focus_lock_filter(response.id, filter));
     let mut steps = 0.0;
     let mut typing = false;
@@ -217,11 +209,8 @@ fn keys(ui: &Ui, lane: &Lane, response: &Response, desk: &mut Desk<'_>) {
 }
 
 fn begin_typing(lane: &Lane, desk: &mut Desk<'_>) {
-    desk.view.typing = Some(Typing {
-        lane: lane.key,
-        text: quantity::print(lane.frequency_hz, Unit::Hertz),
-        error: None,
-    });
+    desk.view.typing =
+        Some(Typing { lane: lane.key, text: quantity::print(lane.frequency_hz, Unit::Hertz), error: None });
 }
 
 /// The number beside the handle; pressed, it is typed. While the handle is in use it also says what the parts become.
@@ -234,7 +223,12 @@ fn value_ui(ui: &mut Ui, stack: &Stack, lane: &Lane, handle: (Pos2, bool), desk:
     let align = if on_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
     let start = at + vec2(way * 15.0, 0.0);
     if desk.view.typing.as_ref().is_some_and(|typing| typing.lane == lane.key) {
-        typing_ui(ui, Rect::from_min_size(start - vec2(if on_left { 92.0 } else { 0.0 }, 10.5), vec2(92.0, 21.0)), lane, desk);
+        typing_ui(
+            ui,
+            Rect::from_min_size(start - vec2(if on_left { 92.0 } else { 0.0 }, 10.5), vec2(92.0, 21.0)),
+            lane,
+            desk,
+        );
         return;
     }
     let painter = ui.painter().clone();
@@ -261,20 +255,15 @@ fn value_ui(ui: &mut Ui, stack: &Stack, lane: &Lane, handle: (Pos2, bool), desk:
 /// What the parts of a lane are, and what limits it.
 fn parts_text(lane: &Lane, desk: &Desk<'_>) -> String {
     let design = desk.session.design();
-    let mut text = String::new();
-    for path in &lane.parts {
-        let Some(entry) = crate::compensator::ENTRIES.iter().find(|entry| entry.path == *path) else {
-            continue;
-        };
-        if let Some(value) = design.values.get_or_default(entry) {
-            let name = super::parts::short_name(entry);
-            text += &format!("{name} {}   ", quantity::print_digits(value, entry.unit, 3));
-        }
-    }
-    if let Some(remark) = desk.session.lane_remark(lane.key) {
-        text += remark;
-    }
-    text
+    let entry = |path: &str| crate::compensator::ENTRIES.iter().find(|entry| entry.path == path);
+    let part = |path: &&str| {
+        let entry = entry(path)?;
+        let value = design.values.get_or_default(entry)?;
+        Some(format!("{} {}", super::parts::short_name(entry), quantity::print_digits(value, entry.unit, 3)))
+    };
+    let mut words: Vec<String> = lane.parts.iter().filter_map(part).collect();
+    words.extend(desk.session.lane_remark(lane.key).map(str::to_owned));
+    words.join("   ")
 }
 
 /// The field a lane's frequency is typed into.
@@ -304,11 +293,7 @@ fn typing_ui(ui: &mut Ui, rect: Rect, lane: &Lane, desk: &mut Desk<'_>) {
             desk.view.typing = None;
             desk.view.gesture = desk.view.gesture.next();
             let gesture = desk.view.gesture;
-            desk.ask(Command::MoveLane {
-                key: lane.key,
-                frequency_hz,
-                gesture,
-            });
+            desk.ask(Command::MoveLane { key: lane.key, frequency_hz, gesture });
         }
         Ok(_) => typing.error = Some("must be above 0 Hz".to_owned()),
         Err(error) if entered => typing.error = Some(error.reason),

@@ -5,7 +5,7 @@ use eframe::egui::{Align2, Color32, Rect, RichText, Sense, Stroke, Ui, pos2, vec
 use super::axis::Axis;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
-use crate::analysis::{LedgerRow, LedgerRole};
+use crate::analysis::{LedgerRole, LedgerRow};
 use crate::quantity::{self, Unit};
 
 /// Height of a row [points].

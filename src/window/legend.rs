@@ -1,6 +1,6 @@
 //! The line above the plots: which curves are shown, and what they read under the pointer.
 
-use eframe::egui::{self, Align2, Rect, Sense, Ui, WidgetInfo, Role, pos2, vec2};
+use eframe::egui::{self, Align2, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis;
 use super::bode;
@@ -11,7 +11,8 @@ use super::view::Desk;
 use crate::quantity::{self, Unit};
 
 /// Curves in the order of the legend, with their names.
-const CURVES: [(Curve, &str); 3] = [(Curve::Plant, "plant"), (Curve::Compensator, "compensator"), (Curve::Loop, "loop")];
+const CURVES: [(Curve, &str); 3] =
+    [(Curve::Plant, "plant"), (Curve::Compensator, "compensator"), (Curve::Loop, "loop")];
 
 /// Where each curve and the band begin, as shares of the line; the longest name has the most room.
 const PLACES: [f32; 4] = [0.0, 0.27, 0.615, 0.885];
@@ -20,7 +21,10 @@ const PLACES: [f32; 4] = [0.0, 0.27, 0.615, 0.885];
 pub(super) fn legend_ui(ui: &mut Ui, head: Rect, desk: &mut Desk<'_>) {
     let at = |share: f32| head.left() + head.width() * share;
     for (index, (curve, name)) in CURVES.into_iter().enumerate() {
-        let rect = Rect::from_min_max(pos2(at(PLACES[index]), head.top()), pos2(at(PLACES[index + 1]) - 6.0, head.bottom() - 3.0));
+        let rect = Rect::from_min_max(
+            pos2(at(PLACES[index]), head.top()),
+            pos2(at(PLACES[index + 1]) - 6.0, head.bottom() - 3.0),
+        );
         curve_ui(ui, rect, curve, name, desk);
     }
     let rect = Rect::from_min_max(pos2(at(PLACES[3]), head.top()), head.max - vec2(0.0, 3.0));

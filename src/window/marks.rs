@@ -76,7 +76,13 @@ fn phase_margin(painter: &Painter, stack: &Stack, detail: &Detail, at: (f64, f64
     label(&painter, stack.phase.rect, (from.x, middle), &text, (colour, palette.canvas));
 }
 
-fn gain_margin(painter: &Painter, stack: &Stack, frequency_hz: f64, margin_db: f64, colours: (egui::Color32, &Palette)) {
+fn gain_margin(
+    painter: &Painter,
+    stack: &Stack,
+    frequency_hz: f64,
+    margin_db: f64,
+    colours: (egui::Color32, &Palette),
+) {
     let (colour, palette) = colours;
     if !stack.gain.x.holds(frequency_hz) {
         return;
@@ -132,7 +138,9 @@ fn landmarks_ui(ui: &mut Ui, stack: &Stack, detail: &Detail, palette: &Palette) 
             landmark.formula,
             if landmark.derived { "\nderived from the model" } else { "" }
         );
-        let _ = ui.interact(rect.expand(2.0), ui.scope_id().with(("landmark", landmark.key, landmark.name)), Sense::hover()).on_hover_text(help);
+        let _ = ui
+            .interact(rect.expand(2.0), ui.scope_id().with(("landmark", landmark.key, landmark.name)), Sense::hover())
+            .on_hover_text(help);
     }
 }
 
@@ -170,31 +178,45 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
         return;
     }
     let painter = ui.painter().with_clip_rect(stack.foot);
-    painter.rect_filled(Rect::from_x_y_ranges(left..=right, (y - 2.5)..=(y + 2.5)), 2.5, palette.good.gamma_multiply(0.55));
+    painter.rect_filled(
+        Rect::from_x_y_ranges(left..=right, (y - 2.5)..=(y + 2.5)),
+        2.5,
+        palette.good.gamma_multiply(0.55),
+    );
     let name = |edge: &crate::analysis::WindowEdge| {
         let cause = edge.cause.split(" at ").next().unwrap_or_default();
         format!("{}: {cause}", quantity::print_digits(edge.frequency_hz, Unit::Hertz, 2))
     };
-    let mut help = String::from("Crossover window: the crossover frequencies this stage allows.");
+    let mut help = vec!["Crossover window: the crossover frequencies this stage allows.".to_owned()];
     let ground = palette.canvas;
     if let Some(edge) = &window.lower {
-        plot::tag(&painter, pos2(left - 6.0, y), Align2::RIGHT_CENTER, &name(edge), theme::small(), (palette.weak, ground));
-        help += &format!("\nleast {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause);
+        plot::tag(
+            &painter,
+            pos2(left - 6.0, y),
+            Align2::RIGHT_CENTER,
+            &name(edge),
+            theme::small(),
+            (palette.weak, ground),
+        );
+        help.push(format!("least {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
     }
     if let Some(edge) = &window.upper {
-        plot::tag(&painter, pos2(right + 6.0, y), Align2::LEFT_CENTER, &name(edge), theme::small(), (palette.weak, ground));
-        help += &format!("\ngreatest {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause);
+        plot::tag(
+            &painter,
+            pos2(right + 6.0, y),
+            Align2::LEFT_CENTER,
+            &name(edge),
+            theme::small(),
+            (palette.weak, ground),
+        );
+        help.push(format!("greatest {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
     }
     let bar = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));
-    let _ = ui.interact(bar, ui.scope_id().with("crossover window"), Sense::hover()).on_hover_text(help);
+    let _ = ui.interact(bar, ui.scope_id().with("crossover window"), Sense::hover()).on_hover_text(help.join("\n"));
 }
 
 /// A dotted vertical tick, used for marks of time as well.
 pub(super) fn tick(painter: &Painter, rect: Rect, x: f32, colour: egui::Color32) {
-    let pen = plot::Pen {
-        colour,
-        width: 1.0,
-        style: LineStyle::Dotted,
-    };
+    let pen = plot::Pen { colour, width: 1.0, style: LineStyle::Dotted };
     plot::stroke(painter, vec![pos2(x, rect.top()), pos2(x, rect.top()) + vec2(0.0, rect.height())], pen);
 }

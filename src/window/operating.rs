@@ -1,6 +1,6 @@
 //! The operating point of the shown condition: duty ratio, currents, losses.
 
-use eframe::egui::{Align2, RichText, Sense, Ui, WidgetInfo, Role, vec2};
+use eframe::egui::{Align2, RichText, Role, Sense, Ui, WidgetInfo, vec2};
 
 use super::theme::{self, palette};
 use super::view::Desk;
@@ -26,16 +26,27 @@ pub(super) fn operating_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 /// Name, value and explanation of each row.
 fn rows(point: &OperatingPoint) -> Vec<(String, String, String)> {
     let amperes = |value| quantity::print_digits(value, Unit::Ampere, 3);
-    let mut rows = vec![row("Duty ratio", quantity::print_digits(point.duty, Unit::One, 3), "Share of the period in which the controlled switch conducts.")];
+    let mut rows = vec![row(
+        "Duty ratio",
+        quantity::print_digits(point.duty, Unit::One, 3),
+        "Share of the period in which the controlled switch conducts.",
+    )];
     rows.push(row("Conduction", point.conduction.word().to_owned(), "How the inductor current behaves over a period."));
     for inductor in &point.inductors {
         let current = &inductor.current;
         let text = format!("{}, peak {}", amperes(current.average), amperes(current.peak));
-        rows.push(row(&format!("{} current", capital(inductor.name)), text, &format!("Average and peak. RMS {}.", amperes(current.rms))));
+        rows.push(row(
+            &format!("{} current", capital(inductor.name)),
+            text,
+            &format!("Average and peak. RMS {}.", amperes(current.rms)),
+        ));
         rows.push(row(&format!("{} ripple", capital(inductor.name)), amperes(current.ripple), "Peak to peak."));
     }
     rows.push(row("Input current", amperes(point.input_current), "Average current from the source."));
-    let help = format!("Step of the output voltage at a switching instant, from the ESR. The bank carries {} RMS.", amperes(point.output_bank_rms));
+    let help = format!(
+        "Step of the output voltage at a switching instant, from the ESR. The bank carries {} RMS.",
+        amperes(point.output_bank_rms)
+    );
     rows.push(row("Output step", quantity::print_digits(point.output_step, Unit::Volt, 3), &help));
     let parts: Vec<String> = point
         .conduction_losses

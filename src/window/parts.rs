@@ -1,6 +1,6 @@
 //! The compensator's panel: network, amplifier, its parts with their locks, rounding to preferred values.
 
-use eframe::egui::{self, Align, Layout, Rect, RichText, Sense, Stroke, StrokeKind, Ui, WidgetInfo, Role, pos2, vec2};
+use eframe::egui::{self, Align, Layout, Rect, RichText, Role, Sense, Stroke, StrokeKind, Ui, WidgetInfo, pos2, vec2};
 
 use super::command::Command;
 use super::form;
@@ -95,16 +95,23 @@ fn lock_ui(ui: &mut Ui, entry: &'static Entry, desk: &mut Desk<'_>) {
     let faint = if response.hovered() { palette.accent } else { palette.rail };
     let colour = if locked { palette.accent } else { faint };
     let body = Rect::from_center_size(rect.center() + vec2(0.0, 2.5), vec2(9.0, 7.0));
-    let shackle = Rect::from_min_max(pos2(body.left() + 1.8, body.top() - 5.0), pos2(body.right() - 1.8, body.top() + 2.0));
+    let shackle =
+        Rect::from_min_max(pos2(body.left() + 1.8, body.top() - 5.0), pos2(body.right() - 1.8, body.top() + 2.0));
     let lift = if locked { 0.0 } else { 2.0 };
-    ui.painter().rect_stroke(shackle.translate(vec2(lift, -lift * 0.5)), 2.5, Stroke::new(1.3, colour), StrokeKind::Middle);
+    ui.painter().rect_stroke(
+        shackle.translate(vec2(lift, -lift * 0.5)),
+        2.5,
+        Stroke::new(1.3, colour),
+        StrokeKind::Middle,
+    );
     ui.painter().rect_filled(body, 1.5, colour);
-    let help = if locked { "Kept: neither lanes nor rounding change it. Press to let it go." } else { "Press to keep this part as it is." };
+    let help = if locked {
+        "Kept: neither lanes nor rounding change it. Press to let it go."
+    } else {
+        "Press to keep this part as it is."
+    };
     if response.on_hover_text(help).clicked() {
-        desk.ask(Command::Lock {
-            path: entry.path,
-            locked: !locked,
-        });
+        desk.ask(Command::Lock { path: entry.path, locked: !locked });
     }
 }
 

@@ -45,7 +45,7 @@ impl App {
             | Command::Lock { .. }
             | Command::RoundParts
             | Command::Mend(_) => self.perform_on_design(command),
-            other => self.perform_on_view(other, ctx),
+            other => self.perform_on_view(&other, ctx),
         }
     }
 
@@ -89,16 +89,13 @@ impl App {
 
     fn save_and_go_on(&mut self, ctx: &egui::Context) {
         let Some(Dialog::Unsaved(next)) = self.view.dialog.take() else { return };
-        match self.session.path().cloned() {
-            Some(path) => {
-                if self.save(path) {
-                    self.perform_on_files(*next, ctx);
-                }
-            }
-            None => {
-                self.after_saving = Some(*next);
-                self.ask_where_to_save();
-            }
+        let Some(path) = self.session.path().cloned() else {
+            self.after_saving = Some(*next);
+            self.ask_where_to_save();
+            return;
+        };
+        if self.save(path) {
+            self.perform_on_files(*next, ctx);
         }
     }
 
@@ -170,7 +167,7 @@ impl App {
 
     /// Puts the answer of the system's dialog into the path that is being asked for.
     pub(super) fn take_file_answer(&mut self) {
-        if let Some(Some(chosen)) = self.dialogs.answer()
+        if let Some(chosen) = self.dialogs.answer()
             && let Some(Dialog::Open { path } | Dialog::SaveAs { path }) = &mut self.view.dialog
         {
             *path = chosen.display().to_string();
@@ -195,11 +192,7 @@ impl App {
                 });
             }
             Command::Title(title) => session.change("Enter the title", None, |document| document.design.title = title),
-            Command::MoveLane {
-                key,
-                frequency_hz,
-                gesture,
-            } => session.move_lane(key, frequency_hz, gesture),
+            Command::MoveLane { key, frequency_hz, gesture } => session.move_lane(key, frequency_hz, gesture),
             Command::MoveCrossover { frequency_hz, gesture } => session.move_crossover(frequency_hz, gesture),
             Command::Lock { path, locked } => {
                 let name = if locked { "Keep a part" } else { "Let a part go" };
@@ -225,20 +218,20 @@ impl App {
         }
     }
 
-    fn perform_on_view(&mut self, command: Command, ctx: &egui::Context) {
+    fn perform_on_view(&mut self, command: &Command, ctx: &egui::Context) {
         let view = &mut self.view;
         match command {
-            Command::Show(input, load) => self.session.show(input, load),
+            Command::Show(input, load) => self.session.show(*input, *load),
             Command::NextCondition => self.session.step_condition(1),
             Command::PreviousCondition => self.session.step_condition(8),
-            Command::Toggle(curve) => view.toggle(curve),
+            Command::Toggle(curve) => view.toggle(*curve),
             Command::ToggleBand => view.band = !view.band,
             Command::WholeRange => view.range_hz = None,
             Command::Hold => self.session.hold(),
             Command::DropHeld => self.session.drop_held(),
             Command::Theme(theme) => {
-                view.theme = theme;
-                ctx.set_theme(theme);
+                view.theme = *theme;
+                ctx.set_theme(*theme);
             }
             Command::Larger => scale(ctx, SIZE.0),
             Command::Smaller => scale(ctx, -SIZE.0),
@@ -275,7 +268,8 @@ fn round_parts(session: &mut Session) {
         let design = &mut document.design;
         if let Ok(compensator) = Compensator::from_values(&design.values, &design.choices) {
             let series = |path: &str| design.choices.get(path).and_then(Series::from_key).unwrap_or(Series::Exact);
-            let (resistors, capacitors) = (series("compensator.series.resistors"), series("compensator.series.capacitors"));
+            let (resistors, capacitors) =
+                (series("compensator.series.resistors"), series("compensator.series.capacitors"));
             compensator.rounded(resistors, capacitors, &design.locks).write(&mut design.values);
         }
     });

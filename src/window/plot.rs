@@ -1,8 +1,6 @@
 //! A plot's ground, grid and curves, painted straight onto the screen from two axes.
 
-use eframe::egui::{
-    Align2, Color32, FontId, Mesh, Painter, Pos2, Rect, Shape, Stroke, StrokeKind, pos2, vec2,
-};
+use eframe::egui::{Align2, Color32, FontId, Mesh, Painter, Pos2, Rect, Shape, Stroke, StrokeKind, pos2, vec2};
 
 use super::axis::{Axis, DecadeLine, decade_lines};
 use super::theme::{self, LineStyle, Palette};
@@ -150,7 +148,14 @@ pub(super) fn stroke(painter: &Painter, points: Vec<Pos2>, pen: Pen) {
 }
 
 /// Text on a ground of its own, so that it can be read over curves. Gives back the ground.
-pub(super) fn tag(painter: &Painter, at: Pos2, align: Align2, text: &str, font: FontId, colours: (Color32, Color32)) -> Rect {
+pub(super) fn tag(
+    painter: &Painter,
+    at: Pos2,
+    align: Align2,
+    text: &str,
+    font: FontId,
+    colours: (Color32, Color32),
+) -> Rect {
     let (ink, ground) = colours;
     let galley = painter.layout_no_wrap(text.to_owned(), font, ink);
     let rect = align.anchor_size(at, galley.size());

@@ -1,6 +1,6 @@
 //! Read-outs: numbers decisions are made on, each with its worst condition, its requirement and the distance to it.
 
-use eframe::egui::{Align2, Color32, Painter, Rect, Sense, Ui, WidgetInfo, Role, pos2, vec2};
+use eframe::egui::{Align2, Color32, Painter, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 
 use super::command::Command;
 use super::marks;
@@ -37,7 +37,13 @@ fn header_ui(ui: &mut Ui) {
     let palette = palette(ui);
     let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), 15.0), Sense::hover());
     let small = theme::small();
-    ui.painter().text(pos2(shown_column(rect), rect.center().y), Align2::RIGHT_CENTER, "shown", small.clone(), palette.weak);
+    ui.painter().text(
+        pos2(shown_column(rect), rect.center().y),
+        Align2::RIGHT_CENTER,
+        "shown",
+        small.clone(),
+        palette.weak,
+    );
     ui.painter().text(rect.right_center(), Align2::RIGHT_CENTER, "worst of nine", small, palette.weak);
 }
 
@@ -134,9 +140,7 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
 
 /// The requirement that decides: a missed one first, else the one with least to spare.
 fn decisive(readout: &Readout) -> Option<&RequirementVerdict> {
-    readout.requirements.iter().min_by(|one, other| {
-        one.met.cmp(&other.met).then(spare(one).total_cmp(&spare(other)))
-    })
+    readout.requirements.iter().min_by(|one, other| one.met.cmp(&other.met).then(spare(one).total_cmp(&spare(other))))
 }
 
 /// How much is to spare, as a share of the limit; negative when missed.
@@ -191,7 +195,11 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(format!("{}{}", explain(readout), worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"))));
+    response.on_hover_text(format!(
+        "{}{}",
+        explain(readout),
+        worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"))
+    ));
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -208,18 +216,16 @@ fn announce(ui: &Ui, response: &eframe::egui::Response, readout: &Readout, value
 }
 
 fn explain(readout: &Readout) -> String {
-    let mut text = readout.help.to_owned();
+    let mut lines = vec![readout.help.to_owned()];
     for verdict in &readout.requirements {
         let scope = if verdict.over_all_conditions { "all conditions" } else { "nominal condition" };
-        text += &format!("\nasked of {scope}: {}", verdict_text(verdict));
-        if !verdict.condition.is_empty() {
-            text += &format!(" ({})", verdict.condition);
-        }
+        let place = if verdict.condition.is_empty() { String::new() } else { format!(" ({})", verdict.condition) };
+        lines.push(format!("asked of {scope}: {}{place}", verdict_text(verdict)));
     }
     if let Some(worst) = &readout.worst {
-        text += &format!("\nPress to show the worst condition: {}.", worst.condition);
+        lines.push(format!("Press to show the worst condition: {}.", worst.condition));
     }
-    text
+    lines.join("\n")
 }
 
 /// Shows one of the nine conditions.

@@ -36,10 +36,7 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let inner = |values: &[f64]| -> Vec<f64> {
         if unit == Unit::Ohm { values.iter().map(|value| value.log10()).collect() } else { values.to_vec() }
     };
-    let inner_plot = Plot {
-        y: inner_axis(&plot, unit),
-        ..plot
-    };
+    let inner_plot = Plot { y: inner_axis(&plot, unit), ..plot };
     if let Some(open) = open {
         inner_plot.curve(&painter, log_hz, &inner(open), open_pen(palette));
     }
@@ -51,26 +48,23 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
 }
 
 fn closed_pen(palette: &Palette) -> Pen {
-    Pen {
-        colour: palette.loop_gain,
-        width: theme::CURVE,
-        style: LineStyle::Solid,
-    }
+    Pen { colour: palette.loop_gain, width: theme::CURVE, style: LineStyle::Solid }
 }
 
 fn open_pen(palette: &Palette) -> Pen {
-    Pen {
-        colour: palette.held,
-        width: theme::THIN_CURVE,
-        style: LineStyle::Dashed,
-    }
+    Pen { colour: palette.held, width: theme::THIN_CURVE, style: LineStyle::Dashed }
 }
 
 fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let inner = rect.with_min_x(rect.left() + theme::GUTTER - 2.0).with_max_x(rect.right() - theme::RIGHT_GUTTER);
-    let mut row = ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
+    let mut row =
+        ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     row.spacing_mut().item_spacing.x = 10.0;
-    let names = [(ClosedLoop::Impedance, "Output impedance"), (ClosedLoop::Line, "Line to output"), (ClosedLoop::Reference, "Following")];
+    let names = [
+        (ClosedLoop::Impedance, "Output impedance"),
+        (ClosedLoop::Line, "Line to output"),
+        (ClosedLoop::Reference, "Following"),
+    ];
     for (closed_loop, name) in names {
         if steps::tab_ui(&mut row, name, desk.view.closed_loop == closed_loop) {
             desk.view.closed_loop = closed_loop;
@@ -81,7 +75,9 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
 /// Closed-loop curve, open-loop curve and unit of what is shown.
 fn chosen(curves: &Curves, closed_loop: ClosedLoop) -> (&[f64], Option<&[f64]>, Unit) {
     match closed_loop {
-        ClosedLoop::Impedance => (&curves.output_impedance_ohm, Some(&curves.open_loop_output_impedance_ohm), Unit::Ohm),
+        ClosedLoop::Impedance => {
+            (&curves.output_impedance_ohm, Some(&curves.open_loop_output_impedance_ohm), Unit::Ohm)
+        }
         ClosedLoop::Line => (&curves.line_to_output_db, Some(&curves.open_loop_line_to_output_db), Unit::Decibel),
         ClosedLoop::Reference => (&curves.reference_to_output_db, None, Unit::Decibel),
     }
@@ -133,7 +129,13 @@ fn grid(ui: &Ui, plot: &Plot, unit: Unit, palette: &Palette) {
     for DecadeLine { value, digit } in decade_lines(from, to) {
         if digit == 1 {
             let at = pos2(plot.x.at(value).min(plot.rect.right() - 14.0), plot.rect.bottom() + 10.0);
-            painter.text(at, Align2::CENTER_CENTER, quantity::print_digits(value, Unit::Hertz, 1), theme::small(), palette.weak);
+            painter.text(
+                at,
+                Align2::CENTER_CENTER,
+                quantity::print_digits(value, Unit::Hertz, 1),
+                theme::small(),
+                palette.weak,
+            );
         }
     }
     plot.frame(painter, palette);
@@ -148,7 +150,11 @@ fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette
     }
     let at = plot.at(*frequency_hz, *ohm);
     painter.circle_filled(at, 3.5, palette.good);
-    let text = format!("{} at {}", quantity::print_digits(*ohm, Unit::Ohm, 3), quantity::print_digits(*frequency_hz, Unit::Hertz, 3));
+    let text = format!(
+        "{} at {}",
+        quantity::print_digits(*ohm, Unit::Ohm, 3),
+        quantity::print_digits(*frequency_hz, Unit::Hertz, 3)
+    );
     // At the right of the peak wherever the number fits there: the names of the curves stand at the left.
     let at_left = at.x + 140.0 > plot.rect.right();
     let align = if at_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
@@ -177,7 +183,14 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
         let Some(values) = values else { continue };
         let text = format!("{name}{}", value(values).unwrap_or_default());
         let ground = palette.canvas.gamma_multiply(0.85);
-        let rect = plot::tag(&painter, pos2(plot.rect.left() + 34.0, y), Align2::LEFT_CENTER, &text, theme::small(), (palette.weak, ground));
+        let rect = plot::tag(
+            &painter,
+            pos2(plot.rect.left() + 34.0, y),
+            Align2::LEFT_CENTER,
+            &text,
+            theme::small(),
+            (palette.weak, ground),
+        );
         plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, pen);
         y += 15.0;
     }

@@ -73,10 +73,7 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
         .with_min_inner_size(vec2(760.0, 520.0))
         .with_icon(super::icon::icon())
         .with_drag_and_drop(true);
-    let options = eframe::NativeOptions {
-        viewport,
-        ..eframe::NativeOptions::default()
-    };
+    let options = eframe::NativeOptions { viewport, ..eframe::NativeOptions::default() };
     let open = move || {
         let create: eframe::AppCreator<'_> = Box::new(|cc| Ok(Box::new(App::new(&cc.egui_ctx, design, path))));
         eframe::run_native("polewright", options, create)
@@ -102,7 +99,7 @@ fn caught<T>(open: impl FnOnce() -> T) -> Result<T, WindowError> {
     }));
     let outcome = catch_unwind(AssertUnwindSafe(open));
     std::panic::set_hook(usual);
-    outcome.map_err(|_| {
+    outcome.map_err(|_told_by_the_hook| {
         let reason = told.lock().map(|text| text.replace('\n', " ")).unwrap_or_default();
         if reason.contains("could not be loaded") || reason.contains("xkbcommon") || reason.contains(".so") {
             WindowError::Display { reason }
@@ -116,7 +113,9 @@ fn explain(error: &eframe::Error) -> WindowError {
     let reason = error.to_string();
     match error {
         eframe::Error::Winit(_) | eframe::Error::WinitEventLoop(_) => WindowError::Display { reason },
-        eframe::Error::Glutin(_) | eframe::Error::NoGlutinConfigs(..) | eframe::Error::OpenGL(_) => WindowError::Graphics { reason },
-        _ => WindowError::Stopped { reason },
+        eframe::Error::Glutin(_) | eframe::Error::NoGlutinConfigs(..) | eframe::Error::OpenGL(_) => {
+            WindowError::Graphics { reason }
+        }
+        eframe::Error::AppCreation(_) => WindowError::Stopped { reason },
     }
 }

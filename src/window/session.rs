@@ -69,10 +69,7 @@ impl Session {
     pub fn new(design: Design, path: Option<PathBuf>) -> Self {
         Session {
             saved: design.clone(),
-            document: Document {
-                design,
-                bad_texts: BTreeMap::new(),
-            },
+            document: Document { design, bad_texts: BTreeMap::new() },
             path,
             history: History::default(),
             shown: (Level::Nominal, Level::Nominal),

@@ -63,7 +63,8 @@ fn chosen(steps: &Steps, event: Event) -> Option<&Step> {
 
 fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let inner = rect.with_min_x(rect.left() + theme::GUTTER - 2.0).with_max_x(rect.right() - theme::RIGHT_GUTTER);
-    let mut row = ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
+    let mut row =
+        ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     let row = &mut row;
     row.spacing_mut().item_spacing.x = 10.0;
     let names = [(Event::Load, "Load step"), (Event::Line, "Line step"), (Event::Reference, "Reference step")];
@@ -118,18 +119,10 @@ fn draw(ui: &Ui, plot: &Plot, step: &Step, held: Option<&Step>, look: (f32, &Pal
     let mut painter = painter.clone();
     painter.multiply_opacity(opacity);
     if let Some(held) = held {
-        let pen = Pen {
-            colour: palette.held,
-            width: theme::THIN_CURVE,
-            style: LineStyle::Dotted,
-        };
+        let pen = Pen { colour: palette.held, width: theme::THIN_CURVE, style: LineStyle::Dotted };
         plot.curve(&painter, &held.times_s, &held.output_v, pen);
     }
-    let pen = Pen {
-        colour: palette.loop_gain,
-        width: theme::CURVE,
-        style: LineStyle::Solid,
-    };
+    let pen = Pen { colour: palette.loop_gain, width: theme::CURVE, style: LineStyle::Solid };
     plot.curve(&painter, &step.times_s, &step.output_v, pen);
 }
 

@@ -221,10 +221,7 @@ fn fonts() -> FontDefinitions {
 }
 
 fn style(palette: &Palette, visuals: egui::Visuals) -> egui::Style {
-    let mut style = egui::Style {
-        visuals,
-        ..egui::Style::default()
-    };
+    let mut style = egui::Style { visuals, ..egui::Style::default() };
     style.text_styles = [
         (TextStyle::Small, small()),
         (TextStyle::Body, body()),
@@ -273,19 +270,10 @@ fn colour(visuals: &mut egui::Visuals, palette: &Palette) {
         expansion: 0.0,
     };
     visuals.widgets.noninteractive = calm;
-    visuals.widgets.inactive = WidgetVisuals {
-        bg_stroke: Stroke::new(1.0, palette.field_edge),
-        ..calm
-    };
-    visuals.widgets.hovered = WidgetVisuals {
-        weak_bg_fill: palette.accent_ground,
-        bg_stroke: Stroke::new(1.0, palette.accent),
-        ..calm
-    };
-    visuals.widgets.active = WidgetVisuals {
-        weak_bg_fill: palette.accent_ground,
-        bg_stroke: Stroke::new(1.5, palette.accent),
-        ..calm
-    };
+    visuals.widgets.inactive = WidgetVisuals { bg_stroke: Stroke::new(1.0, palette.field_edge), ..calm };
+    visuals.widgets.hovered =
+        WidgetVisuals { weak_bg_fill: palette.accent_ground, bg_stroke: Stroke::new(1.0, palette.accent), ..calm };
+    visuals.widgets.active =
+        WidgetVisuals { weak_bg_fill: palette.accent_ground, bg_stroke: Stroke::new(1.5, palette.accent), ..calm };
     visuals.widgets.open = visuals.widgets.hovered;
 }
