@@ -116,10 +116,25 @@ impl Modes {
     /// [`LinearError::UnknownPort`], [`LinearError::NotFinite`], [`LinearError::Shape`] for a negative rise time.
     pub fn settle(&self, input: usize, output: usize, event: RampStep, band: f64) -> Result<StepMetrics, LinearError> {
         let (segments, initial_value, final_value) = self.segments(input, output, event)?;
-        let extreme = extreme(&segments, initial_value, final_value);
-        let settling_s = (band > 0.0).then(|| last_exit(&segments, final_value, band));
-        let metrics =
-            StepMetrics { initial_value, final_value, deviation: extreme.0, deviation_time_s: extreme.1, settling_s };
+        let mut met = Met {
+            before: initial_value,
+            final_value,
+            band: band.max(0.0),
+            deviation: 0.0,
+            deviation_time_s: Some(0.0),
+            outside: false,
+            last_way_in: None,
+        };
+        for segment in &segments {
+            met.walk(segment);
+        }
+        let change = final_value - initial_value;
+        if change.abs() >= met.deviation.abs() && change != 0.0 {
+            (met.deviation, met.deviation_time_s) = (change, None);
+        }
+        let settling_s = (band > 0.0).then(|| met.last_exit());
+        let (deviation, deviation_time_s) = (met.deviation, met.deviation_time_s);
+        let metrics = StepMetrics { initial_value, final_value, deviation, deviation_time_s, settling_s };
         let finite = [metrics.initial_value, metrics.final_value, metrics.deviation].iter().all(|x| x.is_finite());
         if finite { Ok(metrics) } else { Err(LinearError::NotFinite) }
     }
@@ -263,25 +278,6 @@ impl Segment<'_> {
     fn turning_point(&self, from: &Point, to: &Point) -> f64 {
         newton_root(|t| self.rate_and_bend(t), (from.t, from.rate), (to.t, to.rate), 1e-9 * (to.t - from.t))
     }
-
-    /// Time after which the modes together stay within the band for good.
-    fn envelope_end(&self, band: f64) -> f64 {
-        let mut t = 0.0;
-        // ln Σ|a|·exp(σt) is convex and falling, so Newton's method from the left never overshoots.
-        for _ in 0..100 {
-            let (mut sum, mut rate) = (0.0, 0.0);
-            for (a, p) in self.amplitudes.iter().zip(self.poles) {
-                let size = a.norm() * (p.re * t).exp();
-                sum += size;
-                rate += size * p.re;
-            }
-            if sum <= band * (1.0 + 1e-6) || rate >= 0.0 {
-                break;
-            }
-            t -= sum * (sum / band).ln() / rate;
-        }
-        t
-    }
 }
 
 /// A walk along a segment in steps that adapt to the modes still alive.
@@ -311,7 +307,7 @@ impl<'s> Walk<'s> {
         (fastest > 0.0).then(|| STEP_PART / fastest.sqrt())
     }
 
-    /// Goes on by about the given signed time: a step in use is kept while it is between half and all of it.
+    /// Goes on by about the given time: a step in use is kept while it is between half and all of it.
     fn advance(&mut self, wanted: f64) {
         let ratio = wanted / self.step;
         if !(1.0..2.0).contains(&ratio) {
@@ -321,23 +317,29 @@ impl<'s> Walk<'s> {
             }
         }
         self.t += self.step;
-        let modes = self.segment.amplitudes.iter().zip(self.segment.poles);
-        for ((term, factor), (a, p)) in self.terms.iter_mut().zip(&self.factors).zip(modes) {
-            // On the way back a mode rises again from below the number range.
-            *term = if self.step < 0.0 && term.norm_sqr() < 1e-290 { a * (p * self.t).exp() } else { *term * factor };
+        for (term, factor) in self.terms.iter_mut().zip(&self.factors) {
+            // A dead mode would crawl through the slow numbers near zero.
+            *term = if term.norm_sqr() < 1e-290 { Complex::ZERO } else { *term * factor };
         }
     }
 
-    fn value(&self) -> f64 {
-        self.segment.offset + self.segment.slope * self.t + self.terms.iter().map(|term| term.re).sum::<f64>()
+    /// Where the walk stands.
+    fn point(&self) -> Point {
+        let start = (self.segment.offset + self.segment.slope * self.t, self.segment.slope);
+        let modes = self.terms.iter().zip(self.segment.poles);
+        let (value, rate) =
+            modes.fold(start, |(value, rate), (term, p)| (value + term.re, rate + term.re * p.re - term.im * p.im));
+        Point { t: self.t, value, rate }
     }
 
-    fn rate(&self) -> f64 {
-        self.segment.slope + self.terms.iter().zip(self.segment.poles).map(|(term, p)| (term * p).re).sum::<f64>()
+    /// Sum of the modes' magnitudes: what the response can still depart from its line.
+    fn size(&self) -> f64 {
+        self.terms.iter().map(|term| term.norm_sqr().sqrt()).sum()
     }
 }
 
 /// One point of a walk.
+#[derive(Clone, Copy)]
 struct Point {
     t: f64,
     value: f64,
@@ -345,100 +347,93 @@ struct Point {
 }
 
 impl Point {
-    /// Whether the response turns between this point and another, and perhaps beyond a size.
-    fn may_turn_above(&self, other: &Self, size: f64) -> bool {
+    /// Whether the response turns between this point and another, and perhaps further from a level than a distance.
+    fn may_turn_beyond(&self, other: &Self, level: f64, distance: f64) -> bool {
         let reach = (self.t - other.t).abs() * self.rate.abs().max(other.rate.abs());
-        self.rate * other.rate < 0.0 && self.value.abs().max(other.value.abs()) + reach >= size
+        let furthest = (self.value - level).abs().max((other.value - level).abs());
+        self.rate * other.rate < 0.0 && furthest + reach >= distance
     }
 }
 
-/// The signed extreme against the value before, and when.
-fn extreme(segments: &[Segment<'_>], before: f64, final_value: f64) -> (f64, Option<f64>) {
-    let mut best: (f64, Option<f64>) = (0.0, Some(0.0));
-    for segment in segments {
-        let mut take = |deviation: f64, t: f64| {
-            if deviation.abs() > best.0.abs() {
-                best = (deviation, Some(segment.start + t));
-            }
-            best.0.abs()
-        };
+/// What a walk along the response has met: the signed extreme against the value before, and the last way into the band.
+struct Met<'s> {
+    before: f64,
+    final_value: f64,
+    band: f64,
+    deviation: f64,
+    deviation_time_s: Option<f64>,
+    outside: bool,
+    /// The stretch and the two times, outside and inside, around the last way into the band.
+    last_way_in: Option<(&'s Segment<'s>, f64, f64)>,
+}
+
+impl<'s> Met<'s> {
+    /// Takes note of a point; `from` is the time of the point before it on the same stretch.
+    fn note(&mut self, segment: &'s Segment<'s>, from: f64, here: Point) {
+        let deviation = here.value - self.before;
+        if deviation.abs() > self.deviation.abs() {
+            (self.deviation, self.deviation_time_s) = (deviation, Some(segment.start + here.t));
+        }
+        let outside = (here.value - self.final_value).abs() > self.band;
+        if self.outside && !outside {
+            self.last_way_in = Some((segment, from, here.t));
+        }
+        self.outside = outside;
+    }
+
+    /// Walks along a stretch, turning points included, until nothing further can matter.
+    fn walk(&mut self, segment: &'s Segment<'s>) {
         let mut walk = Walk::new(segment, 0.0);
-        let mut last = Point { t: 0.0, value: walk.value() - before, rate: walk.rate() };
-        let mut largest = take(last.value, 0.0);
+        let mut last = walk.point();
+        self.note(segment, 0.0, last);
+        let modes = 1.0 + segment.poles.len() as f64;
         for _ in 0..POINTS_AT_MOST {
-            let Some(step) = walk.sensible_step(DEAD * largest) else { break };
-            let left = walk.terms.iter().map(|term| term.norm()).sum::<f64>();
-            if segment.slope == 0.0 && (segment.offset - before).abs() + left < largest {
+            let mut dead = DEAD * self.deviation.abs();
+            if self.band > 0.0 {
+                dead = dead.min(0.02 * self.band / modes);
+            }
+            let Some(step) = walk.sensible_step(dead) else { break };
+            if segment.length.is_infinite() && self.is_over(segment.offset, walk.size()) {
                 break;
             }
             let at_end = walk.t + step >= segment.length;
             walk.advance(if at_end { segment.length - walk.t } else { step });
-            let here = Point { t: walk.t, value: walk.value() - before, rate: walk.rate() };
-            largest = take(here.value, here.t);
-            if here.may_turn_above(&last, largest) {
+            let here = walk.point();
+            if here.may_turn_beyond(&last, self.before, self.deviation.abs())
+                || here.may_turn_beyond(&last, self.final_value, self.band)
+            {
                 let t = segment.turning_point(&last, &here);
-                largest = take(segment.value(t) - before, t);
+                self.note(segment, last.t, Point { t, value: segment.value(t), rate: 0.0 });
+                last.t = t;
             }
+            self.note(segment, last.t, here);
             last = here;
             if at_end {
                 break;
             }
         }
-        if segment.length.is_finite() {
-            take(segment.value(segment.length) - before, segment.length);
+        if segment.length.is_finite() && last.t < segment.length {
+            let end = Point { t: segment.length, value: segment.value(segment.length), rate: 0.0 };
+            self.note(segment, last.t, end);
         }
     }
-    let at_last = final_value - before;
-    if at_last.abs() >= best.0.abs() && at_last != 0.0 { (at_last, None) } else { best }
-}
 
-/// Last time the response is outside the band around the final value [s]; 0 when it never is.
-fn last_exit(segments: &[Segment<'_>], final_value: f64, band: f64) -> f64 {
-    for segment in segments.iter().rev() {
-        // A hair inside, so that the search starts where the band holds for good.
-        let from = if segment.length.is_finite() { segment.length } else { segment.envelope_end(band * (1.0 - 2e-6)) };
-        if let Some(t) = last_exit_of(segment, final_value, band, from) {
-            return segment.start + t;
-        }
+    /// Whether modes of this summed size can neither make a new extreme nor leave the band again.
+    fn is_over(&self, offset: f64, size: f64) -> bool {
+        (offset - self.before).abs() + size < self.deviation.abs() && size <= self.band
+            || size <= DEAD * DEAD * self.deviation.abs()
     }
-    0.0
-}
 
-/// Searches one segment backward from a time.
-fn last_exit_of(segment: &Segment<'_>, final_value: f64, band: f64, from: f64) -> Option<f64> {
-    let excess = |t: f64| (segment.value(t) - final_value).abs() - band;
-    let close = |outside: f64, inside: f64| {
-        let with_slope = |t: f64| {
+    /// The last exit from the band [s]; 0 when it is never left.
+    fn last_exit(&self) -> f64 {
+        let Some((segment, outside, inside)) = self.last_way_in else { return 0.0 };
+        let excess = |t: f64| {
             let (value, rate) = segment.value_and_rate(t);
-            ((value - final_value).abs() - band, if value < final_value { -rate } else { rate })
+            ((value - self.final_value).abs() - self.band, if value < self.final_value { -rate } else { rate })
         };
-        newton_root(with_slope, (outside, excess(outside)), (inside, excess(inside)), 1e-12 * inside.abs())
-    };
-    let mut walk = Walk::new(segment, from);
-    let mut last = Point { t: from, value: walk.value() - final_value, rate: walk.rate() };
-    if last.value.abs() > band && segment.length.is_finite() {
-        return Some(from);
+        let (at_outside, at_inside) = (excess(outside).0, excess(inside).0);
+        segment.start + newton_root(excess, (outside, at_outside), (inside, at_inside), 1e-12 * inside.abs())
     }
-    let dead = 0.02 * band / (1.0 + segment.poles.len() as f64);
-    for _ in 0..POINTS_AT_MOST {
-        if walk.t <= 0.0 {
-            break;
-        }
-        let step = walk.sensible_step(dead).unwrap_or(walk.t).min(walk.t);
-        walk.advance(-step);
-        let here = Point { t: walk.t.max(0.0), value: walk.value() - final_value, rate: walk.rate() };
-        if here.may_turn_above(&last, band) {
-            let t = segment.turning_point(&here, &last);
-            if excess(t) > 0.0 {
-                return Some(close(t, last.t));
-            }
-        }
-        if here.value.abs() > band {
-            return Some(close(here.t, last.t));
-        }
-        last = here;
-    }
-    None
 }
 
 /// A system with its states scaled alike.
@@ -598,6 +593,18 @@ mod tests {
             assert_close(found.final_value, 3.0, 1e-13);
             assert_near(found.initial_value, 0.0, 0.0);
         }
+    }
+
+    /// Planted answer: a fast mode leaves the band while a slow one lives on far inside it.
+    #[test]
+    fn a_slow_small_mode_does_not_hide_the_exit_of_a_fast_one() {
+        let a = DMatrix::from_diagonal(&DVector::from_vec(vec![-1e4, -10.0]));
+        let b = DMatrix::from_column_slice(2, 1, &[1e4, 10.0]);
+        let c = DMatrix::from_row_slice(1, 2, &[1.0, 1e-3]);
+        let both = StateSpace::new(a, b, c, DMatrix::zeros(1, 1), &["in"], &["out"]).unwrap();
+        let found = settle(&both, 0, 0, RampStep::ideal(1.0), 0.01).unwrap();
+        let t = found.settling_s.unwrap();
+        assert_close((-1e4 * t).exp() + 1e-3 * (-10.0 * t).exp(), 0.01, 1e-9);
     }
 
     /// Two routes: the curve from the modes against the transition matrix, over a ramp that ends between grid points.
