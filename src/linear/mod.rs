@@ -19,7 +19,8 @@
 //! | `exponential` | the matrix exponential |
 //! | `time` | exact step response on a uniform grid |
 //! | `root` | a root between two values of opposite sign |
-//! | `modes` | deviation and settling of a step, from the modes |
+//! | `modes` | a stable system taken apart into its modes, and its step response from them |
+//! | `settling` | extreme and last exit of a band along such a response |
 //! | `delay` | a delay as a rational all-pass, for poles and time responses |
 
 mod cascade;
@@ -35,6 +36,7 @@ pub(crate) mod precision;
 mod response;
 mod root;
 mod sampled;
+mod settling;
 mod stability;
 mod state_space;
 mod time;
