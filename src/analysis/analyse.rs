@@ -222,7 +222,7 @@ fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &Loop
         let boundary = design.stage.boundary_load(&condition.of_stage(&design.stage));
         let below = boundary.map_or(String::new(), |b| format!(" below {}", print(b, Unit::Ampere)));
         let message = format!(
-            "the stage runs in discontinuous conduction{below}, and a load of {} is not modelled",
+            "The stage runs in discontinuous conduction{below}, and a load of {} is not modelled.",
             print(condition.load_current, Unit::Ampere)
         );
         return Err(Finding::problem("stage.load.least", message)
@@ -232,7 +232,7 @@ fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &Loop
     if !(least..=greatest).contains(&point.duty) {
         let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
         let message =
-            format!("a duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}", point.duty);
+            format!("A duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}.", point.duty);
         return Err(Finding::problem(place, message).with_hint("widen the duty limits or the input range"));
     }
     Ok(())

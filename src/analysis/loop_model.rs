@@ -34,7 +34,7 @@ impl Shared {
     /// A finding when its network has no state equations.
     pub fn new(design: &CheckedDesign) -> Result<Self, Finding> {
         let singular = |e: &dyn std::fmt::Display| {
-            Finding::problem("compensator", format!("the compensator cannot be solved: {e}"))
+            Finding::problem("compensator", format!("The compensator cannot be solved: {e}."))
         };
         let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
         let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
@@ -197,5 +197,5 @@ fn with_feedforward(stage: &StateSpace, duty_from_input: f64) -> StateSpace {
 
 /// A linear-algebra error as a finding about the whole design.
 pub(super) fn model_finding(error: &LinearError) -> Finding {
-    Finding::problem("", format!("the loop's model cannot be solved at this condition: {error}"))
+    Finding::problem("", format!("The loop's model cannot be solved at this condition: {error}."))
 }

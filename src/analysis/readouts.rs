@@ -125,7 +125,11 @@ pub(super) fn readouts(
             name: row.name,
             unit: row.unit,
             value: detail.and_then(row.take).filter(|v| v.is_finite()),
-            absent: if detail.is_none() { "not computed" } else { row.absent },
+            absent: match detail {
+                None => "not computed",
+                Some(_) if of_margins && !stable => "unstable",
+                Some(_) => row.absent,
+            },
             greyed: !stable && of_margins,
             worst: row.asked.and_then(|asked| worst_shown(asked, conditions)),
             range: (row.key == "crossover").then(|| range(conditions)).flatten(),

@@ -53,7 +53,7 @@ fn no_outcome(conditions: &[ConditionResult]) -> Vec<Finding> {
             known.1 += 1;
         } else {
             let mut first = finding.clone();
-            first.message = format!("{} ({})", first.message, condition.condition.label);
+            first.message = format!("{} First at {}", first.message, condition.condition.label);
             grouped.push((first, 1));
         }
     }
@@ -61,7 +61,9 @@ fn no_outcome(conditions: &[ConditionResult]) -> Vec<Finding> {
         .into_iter()
         .map(|(mut finding, count)| {
             if count > 1 {
-                finding.message = format!("{}; so or alike in {count} of the nine conditions", finding.message);
+                finding.message = format!("{}; so or alike in {count} of the nine conditions.", finding.message);
+            } else {
+                finding.message.push('.');
             }
             finding
         })

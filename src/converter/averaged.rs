@@ -37,7 +37,7 @@ impl Stage {
         let operating_point = self.figures(condition, &solution);
         let stage = self
             .linearise(&solution)
-            .ok_or_else(|| Finding::problem("stage", "the stage's averaged model is singular"))?;
+            .ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
         let bank_inductance = if self.bank_inductance_averaged {
             None
         } else {
@@ -113,7 +113,7 @@ fn no_operating_point(why: &NoOperatingPoint, condition: &StageCondition) -> Fin
         NoOperatingPoint::OutOfReach(OutOfReach::Above { greatest, at_duty }) => Finding::problem(
             "stage.output.voltage",
             format!(
-                "{wanted} is out of reach from {from}: the greatest output is {}, at a duty ratio of {at_duty:.3}",
+                "{wanted} is out of reach from {from}: the greatest output is {}, at a duty ratio of {at_duty:.3}.",
                 print(*greatest, Unit::Volt)
             ),
         )
@@ -121,7 +121,7 @@ fn no_operating_point(why: &NoOperatingPoint, condition: &StageCondition) -> Fin
         NoOperatingPoint::OutOfReach(OutOfReach::Below { least }) => Finding::problem(
             "stage.output.voltage",
             format!(
-                "{wanted} is out of reach from {from}: even a duty ratio of zero gives {}",
+                "{wanted} is out of reach from {from}: even a duty ratio of zero gives {}.",
                 print(*least, Unit::Volt)
             ),
         )

@@ -113,7 +113,7 @@ impl Stage {
         };
         let key = choices.get("stage.topology").unwrap_or("boost");
         let Some(topology) = find(key) else {
-            return Err(vec![Finding::problem("stage.topology", format!("no topology is called \"{key}\""))]);
+            return Err(vec![Finding::problem("stage.topology", format!("No topology is called \"{key}\"."))]);
         };
         let input_voltages = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.input.{level}")));
         let load_currents = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.load.{level}")));
@@ -272,5 +272,5 @@ fn entered_branch(k: usize, get: &dyn Fn(&str) -> f64) -> Branch {
 
 /// A netlist error as a finding about the stage.
 pub(super) fn circuit_finding(error: &CircuitError) -> Finding {
-    Finding::problem("stage", format!("the stage has no state equations: {error}"))
+    Finding::problem("stage", format!("The stage has no state equations: {error}."))
 }
