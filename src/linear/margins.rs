@@ -167,9 +167,9 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
                 found.extend(self.extremum(i, direction, gain.abs(), |point| point.gain_slope));
             }
             if i + 1 < self.within {
-                let to_level_above = (-PI - self.phase[i]).rem_euclid(TAU);
-                for (direction, distance) in [(1.0, to_level_above), (-1.0, TAU - to_level_above)] {
+                for direction in [1.0, -1.0] {
                     if is_extreme(&self.phase[i - 1..=i + 1], direction) {
+                        let distance = (direction * (-PI - self.phase[i])).rem_euclid(TAU);
                         found.extend(self.extremum(i, direction, distance, |point| point.phase_slope));
                     }
                 }
@@ -217,9 +217,11 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
     /// Phase crossings in the band, of those intervals whose gain at either end is of interest.
     fn phase_crossings(&self, interesting: impl Fn(f64) -> bool) -> Vec<PhaseCrossover> {
         let mut found = Vec::new();
-        let level_number = |phase: f64| (-PI - phase) / TAU;
+        let level_number = |phase: f64| ((-PI - phase) / TAU).floor();
+        let mut after = level_number(self.phase[0]);
         for i in 1..self.within {
-            let (before, after) = (level_number(self.phase[i - 1]).floor(), level_number(self.phase[i]).floor());
+            let before = after;
+            after = level_number(self.phase[i]);
             let (least, most) = (before.min(after), before.max(after));
             if least >= most || !(interesting(self.ln_gain[i - 1]) || interesting(self.ln_gain[i])) {
                 continue;
@@ -285,11 +287,15 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
                 (best, best_f) = (*square, *f);
             }
         }
-        // A minimum between grid points lies below its neighbours by less than half.
-        let candidates = 4.0 * best;
+        let least = best.sqrt();
         for i in 1..squares.len().saturating_sub(1) {
-            let here = squares[i];
-            if here > candidates || here > squares[i - 1] || here > squares[i + 1] {
+            let [before, here, after] = [squares[i - 1], squares[i], squares[i + 1]];
+            if here > before || here > after {
+                continue;
+            }
+            // Between grid points the distance falls below the smaller neighbour by less than what separates the neighbours.
+            let here = here.sqrt();
+            if here - (before.max(after).sqrt() - here) > least {
                 continue;
             }
             let (square, f) = self.refine_modulus(i);

@@ -13,6 +13,7 @@
 //! | `zpk` | zeros, poles and gain |
 //! | `cascade` | zeros, poles and gain back to state space, as a scaled cascade |
 //! | `response` | gain and unwrapped phase as the sum of the factors' phases, with an exact delay |
+//! | `kernel` | logarithm and angle of four numbers at once |
 //! | `sampled` | a measured response that answers at a frequency |
 //! | `margins` | crossovers, phase, gain, modulus and delay margin of anything that answers at a frequency |
 //! | `stability` | the verdict: closed-loop poles checked by the encirclement count on the exact delay |
@@ -29,6 +30,7 @@ mod eigen;
 mod error;
 mod exponential;
 mod interconnect;
+mod kernel;
 mod margins;
 mod modes;
 #[cfg(test)]

@@ -12,10 +12,14 @@ use std::f64::consts::{LN_10, PI, TAU};
 
 use wide::f64x4;
 
+use super::kernel::{angle, ln_ratio};
 use super::{Complex, Zpk};
 
 /// Sections multiplied before a logarithm is taken: keeps the squares within the number range for corners 1e18 away.
 const SECTIONS_PER_GROUP: usize = 4;
+
+/// Vectors of four frequencies evaluated together: enough to spread the cost of each section, few enough for the fastest cache.
+const BLOCK: usize = 4;
 
 /// Decibels per neper.
 const DB_PER_NEPER: f64 = 20.0 / LN_10;
@@ -202,61 +206,101 @@ impl FactoredResponse {
         f64::from(self.origin) * (0.5 * PI) - if self.negative { PI } else { 0.0 }
     }
 
-    /// The kernel: four frequencies at a time.
+    /// Gain and phase in the units asked for, in blocks of many frequencies and a remainder.
     fn scan(&self, frequencies_hz: &[f64], gain: &mut [f64], phase: &mut [f64], gain_unit: f64, phase_unit: f64) {
+        const POINTS: usize = 4 * BLOCK;
         let count = frequencies_hz.len().min(gain.len()).min(phase.len());
-        let units = (gain_unit, phase_unit);
-        let mut f = frequencies_hz[..count].chunks_exact(4);
-        let mut g = gain[..count].chunks_exact_mut(4);
-        let mut p = phase[..count].chunks_exact_mut(4);
-        for ((f, g), p) in (&mut f).zip(&mut g).zip(&mut p) {
-            let (gains, phases) = self.four(f64x4::new([f[0], f[1], f[2], f[3]]), units);
-            g.copy_from_slice(gains.as_array());
-            p.copy_from_slice(phases.as_array());
+        let whole = count - count % POINTS;
+        let mut done = 0;
+        while done < whole {
+            let block = done..done + POINTS;
+            let f_hz = std::array::from_fn(|k| four(&frequencies_hz[block.start + 4 * k..]));
+            let values = self.evaluate::<BLOCK>(&f_hz);
+            values.write(&mut gain[block.clone()], &mut phase[block], gain_unit, phase_unit);
+            done += POINTS;
         }
-        let rest = f.remainder();
-        if !rest.is_empty() {
-            let mut padded = [rest[0]; 4];
-            padded[..rest.len()].copy_from_slice(rest);
-            let (gains, phases) = self.four(f64x4::new(padded), units);
-            g.into_remainder().copy_from_slice(&gains.as_array()[..rest.len()]);
-            p.into_remainder().copy_from_slice(&phases.as_array()[..rest.len()]);
+        while done < count {
+            let block = done..count.min(done + 4);
+            let values = self.evaluate::<1>(&[four(&frequencies_hz[block.clone()])]);
+            values.write(&mut gain[block.clone()], &mut phase[block], gain_unit, phase_unit);
+            done += 4;
         }
     }
 
-    /// Gain and phase at four frequencies [Hz], in the units asked for.
+    /// ln|T| and phase [rad] at frequencies [Hz], a section at a time over the whole block.
     #[inline]
-    fn four(&self, f_hz: f64x4, (gain_unit, phase_unit): (f64, f64)) -> (f64x4, f64x4) {
-        let omega = f_hz * f64x4::splat(TAU);
-        let omega2 = omega * omega;
-        let mut ln_gain = f64x4::splat(self.ln_scale);
-        let mut phase = f64x4::splat(self.constant_phase()) - omega * f64x4::splat(self.delay_s);
+    fn evaluate<const W: usize>(&self, f_hz: &[f64x4; W]) -> Values<W> {
+        let omega = f_hz.map(|f| f * f64x4::splat(TAU));
+        let omega2 = omega.map(|w| w * w);
+        let delay = f64x4::splat(self.delay_s);
+        let mut values = Values {
+            ln_gain: [f64x4::splat(self.ln_scale); W],
+            phase: omega.map(|w| f64x4::splat(self.constant_phase()) - w * delay),
+        };
         let groups = self.zeros.len().max(self.poles.len()).div_ceil(SECTIONS_PER_GROUP).max(1);
         for group in 0..groups {
-            let zeros = Turning::product(group_of(&self.zeros, group), omega, omega2);
-            let poles = Turning::product(group_of(&self.poles, group), omega, omega2);
-            let (mut top, mut bottom) = (zeros.squared(), poles.squared());
-            if group == 0 {
-                for _ in 0..self.origin.max(0) {
-                    top *= omega2;
+            let zeros = Turning::product(group_of(&self.zeros, group), &omega, &omega2);
+            let poles = Turning::product(group_of(&self.poles, group), &omega, &omega2);
+            for (k, square) in omega2.iter().enumerate() {
+                values.phase[k] += zeros.phase_against(&poles, k);
+                let (mut top, mut bottom) = (zeros.squared(k), poles.squared(k));
+                match self.origin {
+                    n if group > 0 || n == 0 => {}
+                    -1 => bottom *= *square,
+                    n if n > 0 => top *= power(*square, n),
+                    n => bottom *= power(*square, -n),
                 }
-                for _ in 0..(-self.origin).max(0) {
-                    bottom *= omega2;
-                }
+                values.ln_gain[k] += ln_ratio(top, bottom) * f64x4::splat(0.5);
             }
-            let least = f64x4::splat(f64::MIN_POSITIVE);
-            let ratio = (top / bottom.fast_max(least)).fast_max(least).fast_min(f64x4::splat(f64::MAX));
-            ln_gain += ratio.ln() * f64x4::splat(0.5);
-            phase += zeros.phase_against(&poles);
         }
-        (ln_gain * f64x4::splat(gain_unit), phase * f64x4::splat(phase_unit))
+        values
+    }
+}
+
+/// A whole positive power.
+fn power(x: f64x4, exponent: i32) -> f64x4 {
+    (1..exponent).fold(x, |product, _| product * x)
+}
+
+/// Four frequencies from the start of a slice; what it lacks is its last.
+#[inline]
+fn four(f_hz: &[f64]) -> f64x4 {
+    match *f_hz {
+        [a, b, c, d, ..] => f64x4::new([a, b, c, d]),
+        [a, b, c] => f64x4::new([a, b, c, c]),
+        [a, b] => f64x4::new([a, b, b, b]),
+        [a] => f64x4::splat(a),
+        [] => f64x4::ONE,
+    }
+}
+
+/// ln|T| and phase [rad] of a block.
+struct Values<const W: usize> {
+    ln_gain: [f64x4; W],
+    phase: [f64x4; W],
+}
+
+impl<const W: usize> Values<W> {
+    /// Writes the block out in other units; the slices may be shorter than the block.
+    #[inline]
+    fn write(&self, gain: &mut [f64], phase: &mut [f64], gain_unit: f64, phase_unit: f64) {
+        for (slice, values, unit) in [(gain, &self.ln_gain, gain_unit), (phase, &self.phase, phase_unit)] {
+            let mut points = slice.chunks_exact_mut(4);
+            for (points, value) in (&mut points).zip(values) {
+                points.copy_from_slice((*value * f64x4::splat(unit)).as_array());
+            }
+            let rest = points.into_remainder();
+            if let Some(last) = values.last().filter(|_| !rest.is_empty()) {
+                rest.copy_from_slice(&(*last * f64x4::splat(unit)).as_array()[..rest.len()]);
+            }
+        }
     }
 }
 
 impl FrequencyResponse for FactoredResponse {
     fn log_point(&self, f_hz: f64) -> LogPoint {
         let omega = TAU * f_hz;
-        let (gain, phase) = self.four(f64x4::splat(f_hz), (1.0, 1.0));
+        let values = self.evaluate::<1>(&[f64x4::splat(f_hz)]);
         let (mut gain_slope, mut phase_slope) = (f64::from(self.origin), -omega * self.delay_s);
         for (sections, sign) in [(&self.zeros, 1.0), (&self.poles, -1.0)] {
             for section in sections {
@@ -268,7 +312,8 @@ impl FrequencyResponse for FactoredResponse {
                 phase_slope += weight * (v * re + 2.0 * u * v);
             }
         }
-        LogPoint { ln_gain: gain.to_array()[0], phase_rad: phase.to_array()[0], gain_slope, phase_slope }
+        let first = |v: f64x4| v.to_array()[0];
+        LogPoint { ln_gain: first(values.ln_gain[0]), phase_rad: first(values.phase[0]), gain_slope, phase_slope }
     }
 
     fn log_curve(&self, frequencies_hz: &[f64], ln_gain: &mut [f64], phase_rad: &mut [f64]) {
@@ -346,53 +391,68 @@ fn group_of(sections: &[Section], group: usize) -> &[Section] {
     &sections[start..end]
 }
 
-/// A product of sections at four frequencies that remembers how often its phase went around.
-struct Turning {
-    re: f64x4,
-    im: f64x4,
-    /// All bits where the imaginary part is negative, so the principal phase is taken in (−π, 0) there and in [0, π] elsewhere.
-    below: f64x4,
-    turns: f64x4,
+/// A product of sections at a block of frequencies that remembers how often its phase went around.
+struct Turning<const W: usize> {
+    re: [f64x4; W],
+    im: [f64x4; W],
+    /// Whole turns on top of the principal phase, which is in (−π, 0) where the imaginary part is negative and in [0, π] elsewhere.
+    turns: [f64x4; W],
 }
 
-impl Turning {
+impl<const W: usize> Turning<W> {
     #[inline]
-    fn product(sections: &[Section], omega: f64x4, omega2: f64x4) -> Self {
-        let one = f64x4::ONE;
-        let mut all = Self { re: one, im: f64x4::ZERO, below: f64x4::ZERO, turns: f64x4::ZERO };
-        for (k, section) in sections.iter().enumerate() {
-            let re = one - omega2 * f64x4::splat(section.c2);
-            let im = omega * f64x4::splat(section.c1);
-            if k == 0 {
-                all = Self { re, im, below: im.simd_lt(f64x4::ZERO), turns: f64x4::ZERO };
-                continue;
-            }
-            (all.re, all.im) = (all.re * re - all.im * im, all.re * im + all.im * re);
-            // A section of positive phase carries the product over π exactly when its sign changes from plus to minus.
-            let below = all.im.simd_lt(f64x4::ZERO);
+    fn product(sections: &[Section], omega: &[f64x4; W], omega2: &[f64x4; W]) -> Self {
+        let (one, zero) = (f64x4::ONE, f64x4::ZERO);
+        let mut all = Self { re: [one; W], im: [zero; W], turns: [zero; W] };
+        let Some((first, rest)) = sections.split_first() else { return all };
+        let (c1, c2) = (f64x4::splat(first.c1), f64x4::splat(first.c2));
+        for k in 0..W {
+            all.re[k] = one - omega2[k] * c2;
+            all.im[k] = omega[k] * c1;
+        }
+        for section in rest {
+            let (c1, c2) = (f64x4::splat(section.c1), f64x4::splat(section.c2));
+            // A section of positive phase carries the product over π exactly when its sign changes from plus to minus, one of negative
+            // phase when it changes from minus to plus.
             if section.c1 > 0.0 {
-                all.turns += (below & !all.below) & one;
+                for k in 0..W {
+                    let above = all.im[k].simd_ge(zero);
+                    all.multiply(k, one - omega2[k] * c2, omega[k] * c1);
+                    all.turns[k] += above & all.im[k].simd_lt(zero) & one;
+                }
             } else {
-                all.turns -= (all.below & !below) & one;
+                for k in 0..W {
+                    let below = all.im[k].simd_lt(zero);
+                    all.multiply(k, one - omega2[k] * c2, omega[k] * c1);
+                    all.turns[k] -= below & all.im[k].simd_ge(zero) & one;
+                }
             }
-            all.below = below;
         }
         all
     }
 
     #[inline]
-    fn squared(&self) -> f64x4 {
-        self.re * self.re + self.im * self.im
+    fn multiply(&mut self, k: usize, re: f64x4, im: f64x4) {
+        (self.re[k], self.im[k]) = (self.re[k] * re - self.im[k] * im, self.re[k] * im + self.im[k] * re);
+    }
+
+    #[inline]
+    fn squared(&self, k: usize) -> f64x4 {
+        self.re[k] * self.re[k] + self.im[k] * self.im[k]
     }
 
     /// Phase of this product less the phase of the other [rad].
     #[inline]
-    fn phase_against(&self, other: &Self) -> f64x4 {
-        let re = self.re * other.re + self.im * other.im;
-        let im = self.im * other.re - self.re * other.im;
-        let up = (!self.below & other.below) & im.simd_lt(f64x4::ZERO) & f64x4::ONE;
-        let down = (self.below & !other.below) & im.simd_ge(f64x4::ZERO) & f64x4::ONE;
-        im.atan2(re) + (self.turns - other.turns + up - down) * f64x4::splat(TAU)
+    fn phase_against(&self, other: &Self, k: usize) -> f64x4 {
+        let zero = f64x4::ZERO;
+        let re = self.re[k] * other.re[k] + self.im[k] * other.im[k];
+        let im = self.im[k] * other.re[k] - self.re[k] * other.im[k];
+        let (here, there) = (self.im[k].simd_lt(zero), other.im[k].simd_lt(zero));
+        // Principal phases of one sign leave their difference in (−π, π]; of unlike sign, it leaves that upwards (here ≥ 0 > there) when its own
+        // sign is minus, downwards (there ≥ 0 > here) when it is plus: when its sign is that of `there`.
+        let left = (here ^ there) & !(there ^ im.simd_lt(zero));
+        let turn = left & (f64x4::ONE | (here & f64x4::splat(-0.0)));
+        angle(im, re) + (self.turns[k] - other.turns[k] + turn) * f64x4::splat(TAU)
     }
 }
 

@@ -3,11 +3,11 @@
 /// Steps granted; the method needs about ten, and never more than bisection to the last bit.
 const STEPS_AT_MOST: usize = 120;
 
-/// The root of `value` between `low` and `high`, to the tolerance, by the Illinois variant of regula falsi with bisection as its guard.
+/// The root of `value` between `low` and `high`, to the tolerance, by a variant of regula falsi with bisection as its guard.
 ///
 /// The values at the ends are given, since callers know them; when they have one sign the end nearer to zero is returned.
 ///
-/// Source: Dowell and Jarratt, BIT 11 (1971), 168 (from memory).
+/// Source: Anderson and Björck, BIT 13 (1973), 253 (from memory).
 pub(super) fn bracketed_root(
     mut value: impl FnMut(f64) -> f64,
     (mut low, mut at_low): (f64, f64),
@@ -17,10 +17,17 @@ pub(super) fn bracketed_root(
     if at_low * at_high >= 0.0 || at_low.is_nan() || at_high.is_nan() {
         return if at_low.abs() <= at_high.abs() { low } else { high };
     }
-    for step in 0..STEPS_AT_MOST {
+    let mut width = high - low;
+    // A secant that lands beside an end has only converged if the value has fallen, too.
+    let fallen = 0.5 * at_low.abs().min(at_high.abs());
+    for step in 1..=STEPS_AT_MOST {
         let falsi = high - at_high * (high - low) / (at_high - at_low);
-        // Every fourth step halves, so that a curve that fools the secant cannot stall it.
-        let x = if falsi > low && falsi < high && step % 4 != 3 { falsi } else { 0.5 * (low + high) };
+        // A curve that fools the secant cannot stall it: three steps that do not halve the bracket are followed by one that does.
+        let stalled = step % 4 == 0 && high - low > 0.5 * width;
+        if step % 4 == 0 {
+            width = high - low;
+        }
+        let x = if falsi > low && falsi < high && !stalled { falsi } else { 0.5 * (low + high) };
         let here = value(x);
         if here == 0.0 {
             return x;
@@ -28,14 +35,15 @@ pub(super) fn bracketed_root(
         let moved;
         if (here > 0.0) == (at_low > 0.0) {
             moved = x - low;
+            // Anderson and Björck: the end that stays is weighed by how the moving end improved.
+            at_high *= weight(here, at_low);
             (low, at_low) = (x, here);
-            at_high *= 0.5;
         } else {
             moved = high - x;
+            at_low *= weight(here, at_high);
             (high, at_high) = (x, here);
-            at_low *= 0.5;
         }
-        if high - low <= tolerance || (moved <= tolerance && step % 4 != 3) {
+        if high - low <= tolerance || (moved <= tolerance && !stalled && here.abs() <= fallen) {
             return x;
         }
     }
@@ -71,6 +79,12 @@ pub(super) fn newton_root(
         x = next;
     }
     x
+}
+
+/// Factor for the value at the end that stays, from the new and the old value at the end that moves.
+fn weight(new: f64, old: f64) -> f64 {
+    let left = 1.0 - new / old;
+    if left > 0.0 { left } else { 0.5 }
 }
 
 #[cfg(test)]
