@@ -2,14 +2,14 @@
 
 use std::path::PathBuf;
 
-use eframe::egui::{self, CentralPanel, Frame, Margin, Panel, Rect, ScrollArea, Stroke, Ui, ViewportCommand, pos2};
+use eframe::egui::{self, Rect, Ui, ViewportCommand};
 
 use super::command::{COMMANDS, Command};
 use super::files::FileDialogs;
 use super::session::Session;
-use super::theme::{self, palette};
+use super::theme;
 use super::view::{Desk, View};
-use super::{bar, bode, conditions, dialogs, findings, ledger, operating, parts, readouts, responses, stage, steps};
+use super::{dialogs, layout};
 use crate::analysis;
 use crate::design::Design;
 
@@ -33,13 +33,6 @@ const COLUMNS_STEP: f32 = 64.0;
 const COLUMNS: usize = 64;
 /// The widest plot, in such lots: four thousand columns.
 const MOST_LOTS: usize = 64;
-/// Height that steps and responses take under the Bode plots, as a share of the room.
-const LOWER_SHARE: f32 = 0.29;
-/// Least height of the stack before the column scrolls [points].
-const LEAST_STACK: f32 = 400.0;
-/// Least height of the plots under it [points].
-const LEAST_LOWER: f32 = 150.0;
-
 impl App {
     /// A window on a design and the file it came from.
     pub fn new(ctx: &egui::Context, design: Design, path: Option<PathBuf>) -> Self {
@@ -173,7 +166,7 @@ impl eframe::App for App {
     fn ui(&mut self, ui: &mut Ui, _frame: &mut eframe::Frame) {
         let width_before = self.view.plot_width;
         let mut desk = Desk { session: &self.session, view: &mut self.view, send: &mut self.asked };
-        window_ui(ui, &mut desk);
+        layout::window_ui(ui, &mut desk);
         dialogs::dialog_ui(ui, &mut desk);
         // What was asked for is carried out in the next turn, and new widths ask for new curves there.
         let resized = (self.view.plot_width - width_before).abs() >= 1.0;
@@ -185,126 +178,4 @@ impl eframe::App for App {
     fn clear_color(&self, visuals: &egui::Visuals) -> [f32; 4] {
         visuals.panel_fill.to_normalized_gamma_f32()
     }
-}
-
-fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let palette = palette(ui);
-    let frame = |fill| Frame::new().fill(fill);
-    Panel::top("bar")
-        .exact_size(theme::BAR_HEIGHT)
-        .resizable(false)
-        .frame(frame(palette.bar).inner_margin(Margin::symmetric(14, 0)))
-        .show(ui, |ui| bar::bar_ui(ui, desk));
-    if desk.session.stale() || desk.view.message.is_some() {
-        Panel::top("notices").resizable(false).frame(frame(palette.field)).show(ui, |ui| bar::notices_ui(ui, desk));
-    }
-    let roomy = ui.available_width() > 2.0 * theme::LEFT_COLUMN + theme::RIGHT_COLUMN;
-    let column = frame(palette.panel).inner_margin(Margin { left: 14, right: 8, top: 10, bottom: 8 });
-    if desk.view.stage_column && roomy {
-        Panel::left("stage")
-            .exact_size(theme::LEFT_COLUMN)
-            .resizable(false)
-            .frame(column)
-            .show(ui, |ui| left_ui(ui, desk));
-    }
-    if desk.view.readout_column {
-        Panel::right("readouts")
-            .exact_size(theme::RIGHT_COLUMN)
-            .resizable(false)
-            .frame(column)
-            .show(ui, |ui| right_ui(ui, desk));
-    }
-    CentralPanel::default().frame(frame(palette.canvas)).show(ui, |ui| middle_ui(ui, desk));
-}
-
-/// Height from which the map of the nine conditions has a place of its own [points].
-const TALL_COLUMN: f32 = 880.0;
-
-fn left_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let tall = ui.available_height() > TALL_COLUMN;
-    let below = if tall { 350.0 } else { 190.0_f32.min(ui.available_height() * 0.4) };
-    let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
-    Panel::bottom("operating").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(
-        ui,
-        |ui| {
-            ScrollArea::vertical().id_salt("operating").show(ui, |ui| {
-                ui.set_max_width(ui.available_width());
-                ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
-                if tall {
-                    conditions::panel_ui(ui, desk);
-                    gap(ui);
-                }
-                ui.spacing_mut().item_spacing.y = 1.0;
-                operating::operating_ui(ui, desk);
-            });
-        },
-    );
-    ScrollArea::vertical().id_salt("stage").auto_shrink(false).show(ui, |ui| {
-        ui.set_max_width(ui.available_width() - 6.0);
-        stage::stage_ui(ui, desk);
-    });
-}
-
-/// Share of the right column that findings may take.
-const FINDINGS_SHARE: f32 = 0.22;
-
-fn right_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let margin = Margin { top: 8, right: 6, ..Margin::ZERO };
-    let below = (ui.available_height() * FINDINGS_SHARE).max(90.0);
-    Panel::bottom("findings").resizable(false).exact_size(below).frame(Frame::new().inner_margin(margin)).show(
-        ui,
-        |ui| {
-            ScrollArea::vertical()
-                .id_salt("findings")
-                .auto_shrink(false)
-                .show(ui, |ui| findings::findings_ui(ui, desk));
-        },
-    );
-    ScrollArea::vertical().id_salt("readouts").auto_shrink(false).show(ui, |ui| {
-        ui.set_max_width(ui.available_width() - 6.0);
-        ui.spacing_mut().item_spacing.y = 2.0;
-        // Stale results stand back; the parts beside them are the present ones.
-        ui.scope(|ui| {
-            ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
-            readouts::readouts_ui(ui, desk);
-            gap(ui);
-            ledger::ledger_ui(ui, desk);
-        });
-        gap(ui);
-        parts::parts_ui(ui, desk);
-        ui.add_space(8.0);
-    });
-}
-
-fn gap(ui: &mut Ui) {
-    ui.add_space(12.0);
-}
-
-/// Bode plots with lanes above, time and closed-loop plots below; scrolls when the window is low.
-fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let room = ui.available_rect_before_wrap();
-    let lower = (room.height() * LOWER_SHARE).max(LEAST_LOWER);
-    let upper = (room.height() - lower).max(LEAST_STACK);
-    if upper + lower <= room.height() + 0.5 {
-        plots_ui(ui, room, upper, desk);
-        return;
-    }
-    ScrollArea::vertical().id_salt("plots").auto_shrink(false).show(ui, |ui| {
-        let (_, whole) = ui.allocate_space(egui::vec2(room.width(), upper + lower));
-        plots_ui(ui, whole, upper, desk);
-    });
-}
-
-fn plots_ui(ui: &mut Ui, room: Rect, upper: f32, desk: &mut Desk<'_>) {
-    let stack =
-        Rect::from_min_max(pos2(room.left() + 4.0, room.top() + 6.0), pos2(room.right() - 4.0, room.top() + upper));
-    let mut stack_ui = ui.new_child(egui::UiBuilder::new().max_rect(stack));
-    bode::bode_ui(&mut stack_ui, desk);
-    let top = stack.bottom() + 4.0;
-    ui.painter().hline(room.x_range(), top, Stroke::new(1.0, palette(ui).hairline));
-    let middle = room.center().x;
-    let left = Rect::from_min_max(pos2(stack.left(), top + 2.0), pos2(middle, room.bottom() - 4.0));
-    let right = Rect::from_min_max(pos2(middle, top + 2.0), pos2(stack.right(), room.bottom() - 4.0));
-    steps::steps_ui(ui, left, desk);
-    responses::responses_ui(ui, right, desk);
 }

@@ -8,26 +8,36 @@ use super::theme::{self, palette};
 use super::view::Desk;
 use crate::design;
 
+/// Room that the words at the right of the bar take [points].
+const WORDS: f32 = 345.0;
+/// Least room for the chooser's full text, and for the name of the file [points].
+const ROOMY: f32 = 860.0;
+
 /// Draws the bar: names at the left, the chooser in the middle, what can be pressed at the right.
 pub(super) fn bar_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let room = ui.max_rect();
-    let third = room.width() * 0.29;
-    let left = Rect::from_min_max(room.min, pos2(room.left() + third, room.bottom()));
-    let right = Rect::from_min_max(pos2(room.right() - third, room.top()), room.max);
+    let roomy = room.width() > ROOMY;
+    let left_width = if roomy { room.width() * 0.29 } else { (room.width() - WORDS) * 0.42 };
+    let right_width = if roomy { (room.width() * 0.29).max(WORDS) } else { WORDS };
+    let left = Rect::from_min_max(room.min, pos2(room.left() + left_width, room.bottom()));
+    let right = Rect::from_min_max(pos2(room.right() - right_width, room.top()), room.max);
     let middle = Rect::from_min_max(left.right_top(), right.left_bottom());
     let mut at_left = ui.new_child(UiBuilder::new().max_rect(left).layout(Layout::left_to_right(Align::Center)));
-    names_ui(&mut at_left, desk);
+    names_ui(&mut at_left, roomy, desk);
     let mut at_middle = ui.new_child(UiBuilder::new().max_rect(middle).layout(Layout::top_down(Align::Center)));
-    at_middle.add_space(((middle.height() - 26.0) / 2.0).max(0.0));
-    conditions::chooser_ui(&mut at_middle, desk);
+    at_middle.add_space(((middle.height() - 28.0) / 2.0).max(0.0));
+    conditions::chooser_ui(&mut at_middle, roomy, desk);
     let mut at_right = ui.new_child(UiBuilder::new().max_rect(right).layout(Layout::right_to_left(Align::Center)));
     menus_ui(&mut at_right, desk);
 }
 
-fn names_ui(ui: &mut Ui, desk: &Desk<'_>) {
+fn names_ui(ui: &mut Ui, with_file: bool, desk: &Desk<'_>) {
     let design = desk.session.design();
     let title = if design.title.is_empty() { "Untitled" } else { &design.title };
     ui.add(egui::Label::new(RichText::new(title).font(theme::strong(14.5))).truncate());
+    if !with_file {
+        return;
+    }
     let file = desk.session.path().and_then(|path| path.file_name()).map(|name| name.to_string_lossy().into_owned());
     let mut text = file.unwrap_or_else(|| "not in a file yet".to_owned());
     if desk.session.unsaved() {

@@ -237,6 +237,8 @@ fn zoom(ui: &Ui, plot: &Plot, pointer: Pos2, desk: &mut Desk<'_>) {
     if turn.abs() < 0.1 {
         return;
     }
+    // The wheel is the plot's own here; a column that scrolls must not move under it.
+    ui.input_mut(|input| input.smooth_scroll_delta = egui::Vec2::ZERO);
     let (from, to) = plot.x.range();
     let centre = plot.x.value(pointer.x);
     let factor = (-f64::from(turn) / 300.0).exp();

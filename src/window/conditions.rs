@@ -8,15 +8,16 @@ use eframe::egui::{
 use super::command::Command;
 use super::theme::{self, palette};
 use super::view::Desk;
-use crate::analysis::{Analysis, ConditionResult, Level, LimitKind};
+use crate::analysis::{Analysis, Condition, ConditionResult, Level, LimitKind};
 use crate::quantity::{self, Unit};
 
 /// The chooser: says which condition is shown; pressed, it opens the map. Wheel and arrow commands step through.
-pub(super) fn chooser_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let (input, load) = desk.session.shown();
     let text = match desk.session.analysis() {
-        Some(analysis) => format!("Shown: {}", analysis.condition.label),
+        Some(analysis) if roomy => format!("Shown: {}", analysis.condition.label),
+        Some(analysis) => short(&analysis.condition),
         None => format!("Shown: {} input, {} load", input.word(), load.word()),
     };
     let galley = ui.painter().layout_no_wrap(text.clone(), theme::body(), palette.ink);
@@ -38,6 +39,12 @@ pub(super) fn chooser_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         ui.label(RichText::new("Press a condition to show it in full.").color(palette.weak));
         map_ui(ui, "chooser", desk);
     });
+}
+
+/// A condition in a few letters: "9 V, 1.5 A".
+pub(super) fn short(condition: &Condition) -> String {
+    let volts = quantity::print_digits(condition.input_voltage, Unit::Volt, 3);
+    format!("{volts}, {}", quantity::print_digits(condition.load_current, Unit::Ampere, 3))
 }
 
 /// All nine at a glance: a full square is well, an open amber one misses what is asked, a crossed one has no result or is

@@ -17,18 +17,27 @@ const CURVES: [(Curve, &str); 3] =
 /// Where each curve and the band begin, as shares of the line; the longest name has the most room.
 const PLACES: [f32; 4] = [0.0, 0.27, 0.615, 0.885];
 
+/// The same without the band.
+const NARROW_PLACES: [f32; 4] = [0.0, 0.26, 0.72, 1.0];
+
+/// Width below which lines are short, readings are left out and the band has no place [points].
+const NARROW: f32 = 470.0;
+
 /// Draws the legend; pressing a name shows or hides its curve.
 pub(super) fn legend_ui(ui: &mut Ui, head: Rect, desk: &mut Desk<'_>) {
+    let places = if head.width() > NARROW { PLACES } else { NARROW_PLACES };
     let at = |share: f32| head.left() + head.width() * share;
     for (index, (curve, name)) in CURVES.into_iter().enumerate() {
         let rect = Rect::from_min_max(
-            pos2(at(PLACES[index]), head.top()),
-            pos2(at(PLACES[index + 1]) - 6.0, head.bottom() - 3.0),
+            pos2(at(places[index]), head.top()),
+            pos2(at(places[index + 1]) - 6.0, head.bottom() - 3.0),
         );
         curve_ui(ui, rect, curve, name, desk);
     }
-    let rect = Rect::from_min_max(pos2(at(PLACES[3]), head.top()), head.max - vec2(0.0, 3.0));
-    band_ui(ui, rect, desk);
+    if head.width() > NARROW {
+        let rect = Rect::from_min_max(pos2(at(PLACES[3]), head.top()), head.max - vec2(0.0, 3.0));
+        band_ui(ui, rect, desk);
+    }
 }
 
 fn curve_ui(ui: &mut Ui, rect: Rect, curve: Curve, name: &str, desk: &mut Desk<'_>) {
@@ -38,10 +47,13 @@ fn curve_ui(ui: &mut Ui, rect: Rect, curve: Curve, name: &str, desk: &mut Desk<'
     let ink = if shown { pen.colour } else { palette.weak.gamma_multiply(0.6) };
     let painter = ui.painter();
     let middle = rect.center().y;
-    plot::sample(painter, pos2(rect.left(), middle), 24.0, plot::Pen { colour: ink, ..pen });
-    let text = painter.text(pos2(rect.left() + 30.0, middle), Align2::LEFT_CENTER, name, theme::strong(12.0), ink);
+    let narrow = rect.width() < NARROW * 0.25;
+    let length = if narrow { 13.0 } else { 24.0 };
+    plot::sample(painter, pos2(rect.left(), middle), length, plot::Pen { colour: ink, ..pen });
+    let text =
+        painter.text(pos2(rect.left() + length + 6.0, middle), Align2::LEFT_CENTER, name, theme::strong(12.0), ink);
     let mut end = text.right();
-    if let (true, Some(reading)) = (shown, reading(desk, curve)) {
+    if let (true, Some(reading)) = (shown && !narrow, reading(desk, curve)) {
         let at = pos2(text.right() + 8.0, middle);
         end = painter.text(at, Align2::LEFT_CENTER, reading, theme::small(), palette.ink).right();
     }

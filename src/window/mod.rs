@@ -23,6 +23,7 @@ mod form;
 mod history;
 mod icon;
 mod lanes;
+mod layout;
 mod ledger;
 mod legend;
 mod marks;
@@ -37,6 +38,7 @@ mod session;
 mod stage;
 mod steps;
 mod theme;
+mod verdict;
 mod view;
 
 pub use app::App;

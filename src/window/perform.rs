@@ -236,6 +236,9 @@ impl App {
             Command::Larger => scale(ctx, SIZE.0),
             Command::Smaller => scale(ctx, -SIZE.0),
             Command::NormalSize => ctx.set_zoom_factor(1.0),
+            Command::ToggleStage | Command::ToggleReadouts if view.one_column => {
+                view.readouts_first = !view.readouts_first;
+            }
             Command::ToggleStage => view.stage_column = !view.stage_column,
             Command::ToggleReadouts => view.readout_column = !view.readout_column,
             Command::ListCommands => view.dialog = Some(Dialog::Commands { search: String::new() }),

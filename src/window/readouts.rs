@@ -3,6 +3,7 @@
 use eframe::egui::{Align2, Color32, Painter, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 
 use super::command::Command;
+use super::conditions;
 use super::marks;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
@@ -67,18 +68,6 @@ fn trimmed(value: f64, unit: Unit) -> f64 {
     }
 }
 
-/// The condition in a few letters: "9 V, 1.5 A".
-pub(super) fn short_condition(analysis: &Analysis, index: usize) -> String {
-    analysis.conditions.get(index).map_or_else(String::new, |result| {
-        let condition = &result.condition;
-        format!(
-            "{}, {}",
-            quantity::print_digits(condition.input_voltage, Unit::Volt, 3),
-            quantity::print_digits(condition.load_current, Unit::Ampere, 3)
-        )
-    })
-}
-
 /// Worst value over the nine conditions, or the word for why there is none.
 fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
     let worst = readout.worst.as_ref()?;
@@ -95,7 +84,8 @@ fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
 /// Worst value over the nine conditions, with where it is.
 fn worst_text(readout: &Readout, analysis: &Analysis) -> Option<String> {
     let index = readout.worst.as_ref()?.index;
-    Some(format!("{} at {}", worst_value(readout, analysis)?, short_condition(analysis, index)))
+    let condition = &analysis.conditions.get(index)?.condition;
+    Some(format!("{} at {}", worst_value(readout, analysis)?, conditions::short(condition)))
 }
 
 fn ink(readout: &Readout, analysis: &Analysis, palette: &Palette) -> Color32 {

@@ -31,7 +31,9 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     };
     grid(ui, &plot, unit, palette);
     let mut painter = ui.painter().clone();
-    painter.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
+    // What a closed loop would do that is not stable is no result: it stands back as stale curves do.
+    let doubtful = desk.session.stale() || !detail.loop_gain.stable();
+    painter.multiply_opacity(if doubtful { theme::STALE } else { 1.0 });
     let log_hz = &desk.session.drawing().log_hz;
     let inner = |values: &[f64]| -> Vec<f64> {
         if unit == Unit::Ohm { values.iter().map(|value| value.log10()).collect() } else { values.to_vec() }
@@ -41,10 +43,15 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         inner_plot.curve(&painter, log_hz, &inner(open), open_pen(palette));
     }
     inner_plot.curve(&painter, log_hz, &inner(closed), closed_pen(palette));
-    if desk.view.closed_loop == ClosedLoop::Impedance {
+    if desk.view.closed_loop == ClosedLoop::Impedance && detail.loop_gain.stable() {
         peak(&painter, &plot, curves, palette);
     }
     read(ui, &plot, (closed, open, unit), desk, palette);
+    if !detail.loop_gain.stable() {
+        let at = plot.rect.center_bottom() - vec2(0.0, 14.0);
+        let colours = (palette.problem, palette.canvas);
+        plot::tag(ui.painter(), at, Align2::CENTER_CENTER, "the closed loop is not stable", theme::small(), colours);
+    }
 }
 
 fn closed_pen(palette: &Palette) -> Pen {
@@ -61,12 +68,13 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     row.spacing_mut().item_spacing.x = 10.0;
     let names = [
-        (ClosedLoop::Impedance, "Output impedance"),
-        (ClosedLoop::Line, "Line to output"),
-        (ClosedLoop::Reference, "Following"),
+        (ClosedLoop::Impedance, "Output impedance", "Impedance"),
+        (ClosedLoop::Line, "Line to output", "Line"),
+        (ClosedLoop::Reference, "Following", "Following"),
     ];
-    for (closed_loop, name) in names {
-        if steps::tab_ui(&mut row, name, desk.view.closed_loop == closed_loop) {
+    let narrow = inner.width() < steps::NARROW;
+    for (closed_loop, name, short) in names {
+        if steps::tab_ui(&mut row, (name, if narrow { short } else { name }), desk.view.closed_loop == closed_loop) {
             desk.view.closed_loop = closed_loop;
         }
     }

@@ -67,21 +67,30 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     let row = &mut row;
     row.spacing_mut().item_spacing.x = 10.0;
-    let names = [(Event::Load, "Load step"), (Event::Line, "Line step"), (Event::Reference, "Reference step")];
-    for (event, name) in names {
-        if tab_ui(row, name, desk.view.event == event) {
+    let names = [
+        (Event::Load, "Load step", "Load"),
+        (Event::Line, "Line step", "Line"),
+        (Event::Reference, "Reference step", "Reference"),
+    ];
+    let narrow = inner.width() < NARROW;
+    for (event, name, short) in names {
+        if tab_ui(row, (name, if narrow { short } else { name }), desk.view.event == event) {
             desk.view.event = event;
         }
     }
 }
 
+/// Width of a heading below which its words are short [points].
+pub(super) const NARROW: f32 = 270.0;
+
 /// A word that chooses what a plot shows: ink when chosen, accent when it can be.
-pub(super) fn tab_ui(ui: &mut Ui, name: &str, chosen: bool) -> bool {
+pub(super) fn tab_ui(ui: &mut Ui, names: (&str, &str), chosen: bool) -> bool {
+    let (name, shown) = names;
     let palette = palette(ui);
     let text = if chosen {
-        RichText::new(name).font(theme::strong(13.0)).color(palette.ink)
+        RichText::new(shown).font(theme::strong(13.0)).color(palette.ink)
     } else {
-        RichText::new(name).font(theme::body()).color(palette.accent)
+        RichText::new(shown).font(theme::body()).color(palette.accent)
     };
     let response = ui.add(egui::Button::new(text).frame(false));
     response.widget_info(|| egui::WidgetInfo::selected(egui::Role::RadioButton, true, chosen, name));

@@ -104,6 +104,11 @@ pub(super) struct View {
     /// Columns beside the plots.
     pub stage_column: bool,
     pub readout_column: bool,
+    /// There is room for one column only, and which of the two it is.
+    pub one_column: bool,
+    pub readouts_first: bool,
+    /// Height of all findings at the last frame [points].
+    pub findings_height: f32,
     /// Frequencies shown [Hz]; the whole range when absent.
     pub range_hz: Option<(f64, f64)>,
     /// Width of the Bode plots at the last frame [points].
@@ -149,6 +154,9 @@ impl Default for View {
             band: true,
             stage_column: true,
             readout_column: true,
+            one_column: false,
+            readouts_first: true,
+            findings_height: 100.0,
             range_hz: None,
             plot_width: 640.0,
             axes: None,
