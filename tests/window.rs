@@ -295,3 +295,55 @@ fn every_sample_is_drawn_with_every_control_named() {
         );
     }
 }
+
+#[test]
+fn the_crossover_can_be_taken_on_the_curve() {
+    let mut harness = usual();
+    let crossover_hz = |harness: &Harness<'_, App>| {
+        let analysis = harness.state().session().analysis().unwrap();
+        let shown = analysis.shown.as_ref().unwrap();
+        shown.loop_gain.margins.headline_crossover().unwrap().frequency_hz
+    };
+    let from = harness.get_by_label("Crossover handle").rect().center();
+    assert!((place(&harness, crossover_hz(&harness)) - f64::from(from.x)).abs() < 1.0);
+    let zero_hz = lane_hz(&harness, "zero-1");
+    drag(&mut harness, from, from + vec2(-50.0, 0.0));
+    let found = place(&harness, crossover_hz(&harness));
+    assert!((found - f64::from(from.x - 50.0)).abs() < 2.0, "{found}");
+    assert!((lane_hz(&harness, "zero-1") / zero_hz - 1.0).abs() < 1e-6, "zeros stay");
+    harness.get_by_label("Undo").click();
+    harness.run();
+    assert_eq!(harness.state().session().history().undo_name(), None, "a drag is one step");
+}
+
+#[test]
+fn held_curves_stay_and_are_dropped() {
+    let mut harness = usual();
+    harness.get_by_label("Hold").click();
+    harness.run();
+    enter(&mut harness, "Inductor", "15u");
+    assert!(harness.state().session().held().is_some());
+    harness.get_by_label("Drop held").click();
+    harness.run();
+    assert!(harness.state().session().held().is_none());
+}
+
+#[test]
+fn an_idle_window_asks_for_no_frame() {
+    let mut harness = usual();
+    harness.run_steps(3);
+    let output = harness.output();
+    let delay = output.viewport_output.values().map(|viewport| viewport.repaint_delay).min().unwrap();
+    assert!(delay > std::time::Duration::from_secs(10), "{delay:?}");
+}
+
+#[test]
+fn large_text_in_a_small_window_leaves_room_for_the_plots() {
+    let mut harness = window(vec2(640.0, 400.0), 2.0);
+    assert!(harness.state().gain_rect().width() > 150.0);
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_none());
+    harness.key_press(Key::F6);
+    harness.run();
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_some());
+    assert!(harness.state().gain_rect().width() > 150.0);
+}

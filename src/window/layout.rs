@@ -86,11 +86,14 @@ fn right_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
             verdict::verdict_ui(ui, desk);
             readouts::readouts_ui(ui, desk);
-            gap(ui);
-            ledger::ledger_ui(ui, desk);
         });
         gap(ui);
         parts::parts_ui(ui, desk);
+        gap(ui);
+        ui.scope(|ui| {
+            ui.multiply_opacity(if desk.session.stale() { theme::STALE } else { 1.0 });
+            ledger::ledger_ui(ui, desk);
+        });
         ui.add_space(8.0);
     });
 }

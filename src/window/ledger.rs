@@ -31,7 +31,7 @@ pub(super) fn ledger_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
     let room = ui.available_width();
     let left = ui.cursor().left();
-    let x = Axis::linear(least - 4.0, greatest + 4.0, left + room * 0.46, left + room - 58.0);
+    let x = Axis::linear(least - 4.0, greatest + 4.0, left + room * 0.49, left + room - 58.0);
     let mut from = 0.0;
     for row in &ledger.rows {
         row_ui(ui, row, from, &x, desk);

@@ -70,7 +70,7 @@ pub(super) fn short_name(entry: &Entry) -> &'static str {
 }
 
 /// Width of a part's name [points].
-const LABEL: f32 = 44.0;
+const LABEL: f32 = 38.0;
 
 fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) {
     let active = desk.view.lane.and_then(|key| desk.session.lanes().iter().find(|lane| lane.key == key));
@@ -78,9 +78,9 @@ fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) 
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(LABEL, theme::ROW), Sense::hover());
     let ink = if lit { palette.compensator } else { palette.weak };
-    ui.painter().text(rect.left_center(), egui::Align2::LEFT_CENTER, short_name(entry), theme::body(), ink);
+    ui.painter().text(rect.left_center(), egui::Align2::LEFT_CENTER, short_name(entry), theme::small(), ink);
     response.on_hover_text(format!("{}\n{}", entry.name, entry.help));
-    form::field_ui(ui, entry, width - LABEL - 25.0, desk);
+    form::field_ui(ui, entry, width - LABEL - 21.0, desk);
     lock_ui(ui, entry, desk);
 }
 
@@ -88,7 +88,7 @@ fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) 
 fn lock_ui(ui: &mut Ui, entry: &'static Entry, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let locked = desk.session.design().locks.contains(entry.path);
-    let (rect, response) = ui.allocate_exact_size(vec2(16.0, theme::ROW), Sense::click());
+    let (rect, response) = ui.allocate_exact_size(vec2(14.0, theme::ROW), Sense::click());
     let label = format!("Keep {}", short_name(entry));
     response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, locked, &label));
     super::legend::focus_ring(ui, &response);

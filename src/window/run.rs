@@ -109,13 +109,50 @@ fn caught<T>(open: impl FnOnce() -> T) -> Result<T, WindowError> {
     })
 }
 
+/// The message without the place in the source that some errors begin with; it helps nobody at a desk.
+fn without_place(message: &str) -> &str {
+    match message.rsplit_once(".rs:") {
+        Some((_, rest)) => rest.trim_start_matches(|letter: char| letter.is_ascii_digit() || ": ".contains(letter)),
+        None => message,
+    }
+}
+
 fn explain(error: &eframe::Error) -> WindowError {
-    let reason = error.to_string();
+    let reason = without_place(&error.to_string()).to_owned();
     match error {
         eframe::Error::Winit(_) | eframe::Error::WinitEventLoop(_) => WindowError::Display { reason },
         eframe::Error::Glutin(_) | eframe::Error::NoGlutinConfigs(..) | eframe::Error::OpenGL(_) => {
             WindowError::Graphics { reason }
         }
         eframe::Error::AppCreation(_) => WindowError::Stopped { reason },
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_place_in_the_source_is_left_out() {
+        let message = "os error at /some/where/mod.rs:788: Failed to open connection to X server";
+        assert_eq!(without_place(message), "Failed to open connection to X server");
+        assert_eq!(without_place("no config"), "no config");
+    }
+
+    #[test]
+    fn every_error_says_what_to_do() {
+        let reason = String::from("why");
+        let all = [
+            WindowError::NoDisplay,
+            WindowError::Display { reason: reason.clone() },
+            WindowError::Graphics { reason: reason.clone() },
+        ];
+        assert!(all.iter().all(|error| error.to_string().contains("DISPLAY") || error.to_string().contains("Install")));
+    }
+
+    #[test]
+    fn a_panic_while_opening_is_an_error() {
+        let missing = caught(|| std::panic::panic_any("Library libxkbcommon-x11.so could not be loaded."));
+        assert!(matches!(missing, Err::<(), _>(WindowError::Display { .. })), "{missing:?}");
     }
 }
