@@ -26,6 +26,13 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     desk.view.dialog = Some(dialog);
 }
 
+/// Why the last try failed, where it is looked for.
+fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
+    if let Some(message) = desk.view.message.as_ref().filter(|message| message.failed) {
+        ui.label(RichText::new(&message.text).color(palette(ui).problem));
+    }
+}
+
 fn title(ui: &mut Ui, text: &str) {
     ui.label(RichText::new(text).font(theme::strong(16.0)));
     ui.add_space(6.0);
@@ -52,6 +59,7 @@ fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
 fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
     title(ui, "Open a design");
     let entered = path_ui(ui, path, desk);
+    failure_ui(ui, desk);
     ui.add_space(4.0);
     buttons(ui, |ui| {
         let open = ui.add_enabled(!path.is_empty(), primary(ui, "Open")).clicked();
@@ -72,6 +80,7 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
 fn save_as_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
     title(ui, "Save the design as");
     let entered = path_ui(ui, path, desk);
+    failure_ui(ui, desk);
     let target = with_ending(path);
     if !path.is_empty() && target.exists() {
         ui.label(RichText::new("This file exists and will be replaced.").color(palette(ui).problem));

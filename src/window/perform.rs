@@ -51,7 +51,10 @@ impl App {
 
     fn perform_on_files(&mut self, command: Command, ctx: &egui::Context) {
         match command {
-            Command::Open => self.view.dialog = Some(Dialog::Open { path: String::new() }),
+            Command::Open => {
+                self.view.message = None;
+                self.view.dialog = Some(Dialog::Open { path: String::new() });
+            }
             Command::OpenPath(path) => self.open(&path),
             Command::OpenSample(file) => self.open_sample(file),
             Command::Save => match self.session.path().cloned() {
