@@ -163,6 +163,10 @@ impl Square {
                 if column == 0.0 || row == 0.0 {
                     continue;
                 }
+                // Within a factor of two either way the nearest power of two to the root is one.
+                if (0.5..=2.0).contains(&(row / column)) {
+                    continue;
+                }
                 // The power of two nearest to √(row/column).
                 let factor = (0.5 * (row / column).log2()).round().clamp(-500.0, 500.0).exp2();
                 if column * factor + row / factor < 0.95 * (column + row) {

@@ -6,6 +6,7 @@
 use nalgebra::DMatrix;
 
 use super::LinearError;
+use super::dense::Rows;
 use super::eigen::balance;
 
 /// Largest 1-norm for which each degree is good to double precision.
@@ -35,22 +36,19 @@ pub fn expm(a: &DMatrix<f64>) -> Result<DMatrix<f64>, LinearError> {
     }
     let mut scaled = a.clone();
     let scales = balance(&mut scaled);
-    let mut result = exponential(scaled)?;
-    for i in 0..n {
-        for j in 0..n {
-            result[(i, j)] *= scales[i] / scales[j];
-        }
-    }
+    let rows = exponential(Rows::from_fn(n, n, |i, j| scaled[(i, j)]))?;
+    let result = DMatrix::from_fn(n, n, |i, j| rows.at(i, j) * (scales[i] / scales[j]));
     if result.iter().all(|x| x.is_finite()) { Ok(result) } else { Err(LinearError::NotFinite) }
 }
 
 /// The algorithm on a balanced matrix.
-fn exponential(mut a: DMatrix<f64>) -> Result<DMatrix<f64>, LinearError> {
-    let norm = a.column_iter().map(|column| column.iter().map(|x| x.abs()).sum::<f64>()).fold(0.0, f64::max);
+pub(super) fn exponential(mut a: Rows) -> Result<Rows, LinearError> {
+    let n = a.rows();
+    let norm = (0..n).map(|j| (0..n).map(|i| a.at(i, j).abs()).sum::<f64>()).fold(0.0, f64::max);
     for (degree, bound) in THETA {
         if norm <= bound {
             let (odd, even) = low_degree(&a, degree);
-            return quotient(&odd, &even);
+            return quotient(&odd, even);
         }
     }
     let mut squarings = 0;
@@ -62,37 +60,41 @@ fn exponential(mut a: DMatrix<f64>) -> Result<DMatrix<f64>, LinearError> {
             return Err(LinearError::NotFinite);
         }
     }
-    a *= 0.5_f64.powi(squarings);
+    a.scale(0.5_f64.powi(squarings));
     let (odd, even) = degree_13(&a);
-    let mut result = quotient(&odd, &even)?;
-    let mut product = DMatrix::zeros(result.nrows(), result.ncols());
+    let mut result = quotient(&odd, even)?;
     for _ in 0..squarings {
-        result.mul_to(&result, &mut product);
-        std::mem::swap(&mut result, &mut product);
+        result = result.times(&result);
     }
     Ok(result)
 }
 
 /// `(even − odd)⁻¹ (even + odd)`.
-fn quotient(odd: &DMatrix<f64>, even: &DMatrix<f64>) -> Result<DMatrix<f64>, LinearError> {
-    let mut result = even + odd;
-    if (even - odd).lu().solve_mut(&mut result) { Ok(result) } else { Err(LinearError::NotFinite) }
+fn quotient(odd: &Rows, even: Rows) -> Result<Rows, LinearError> {
+    let mut right = even.clone();
+    right.add_scaled(odd, 1.0);
+    let mut left = even;
+    left.add_scaled(odd, -1.0);
+    if left.solve(&mut right) { Ok(right) } else { Err(LinearError::NotFinite) }
 }
 
 /// Odd and even part of the numerator for degree 3, 5, 7 or 9.
-fn low_degree(a: &DMatrix<f64>, degree: usize) -> (DMatrix<f64>, DMatrix<f64>) {
-    let n = a.nrows();
+fn low_degree(a: &Rows, degree: usize) -> (Rows, Rows) {
+    let n = a.rows();
     let coefficients = pade_coefficients(degree);
-    let squared = a * a;
-    let mut power = DMatrix::identity(n, n);
-    let mut odd = DMatrix::zeros(n, n);
-    let mut even = DMatrix::zeros(n, n);
-    for pair in coefficients.chunks_exact(2) {
-        even += &power * pair[0];
-        odd += &power * pair[1];
-        power = &power * &squared;
+    let squared = a.times(a);
+    let (mut odd, mut even) = (Rows::zeros(n, n), Rows::zeros(n, n));
+    even.add_to_diagonal(coefficients[0]);
+    odd.add_to_diagonal(coefficients[1]);
+    let mut power = squared.clone();
+    for (k, pair) in coefficients.chunks_exact(2).enumerate().skip(1) {
+        if k > 1 {
+            power = power.times(&squared);
+        }
+        even.add_scaled(&power, pair[0]);
+        odd.add_scaled(&power, pair[1]);
     }
-    (a * odd, even)
+    (a.times(&odd), even)
 }
 
 /// Numerator coefficients `(2m − k)! m! / ((2m)! (m − k)! k!)` of the diagonal Padé approximant of degree m, k rising from 0.
@@ -107,7 +109,7 @@ fn pade_coefficients(m: usize) -> Vec<f64> {
 }
 
 /// Odd and even part of the numerator for degree 13, with six products.
-fn degree_13(a: &DMatrix<f64>) -> (DMatrix<f64>, DMatrix<f64>) {
+fn degree_13(a: &Rows) -> (Rows, Rows) {
     const B: [f64; 14] = [
         64764752532480000.0,
         32382376266240000.0,
@@ -124,19 +126,22 @@ fn degree_13(a: &DMatrix<f64>) -> (DMatrix<f64>, DMatrix<f64>) {
         182.0,
         1.0,
     ];
-    let a2 = a * a;
-    let a4 = &a2 * &a2;
-    let a6 = &a4 * &a2;
+    let a2 = a.times(a);
+    let a4 = a2.times(&a2);
+    let a6 = a4.times(&a2);
     let mix = |c6: f64, c4: f64, c2: f64, c0: f64| {
-        let mut sum = a6.zip_zip_map(&a4, &a2, |x6, x4, x2| c6 * x6 + c4 * x4 + c2 * x2);
-        for i in 0..sum.nrows() {
-            sum[(i, i)] += c0;
-        }
+        let mut sum = a6.clone();
+        sum.scale(c6);
+        sum.add_scaled(&a4, c4);
+        sum.add_scaled(&a2, c2);
+        sum.add_to_diagonal(c0);
         sum
     };
-    let odd = &a6 * mix(B[13], B[11], B[9], 0.0) + mix(B[7], B[5], B[3], B[1]);
-    let even = &a6 * mix(B[12], B[10], B[8], 0.0) + mix(B[6], B[4], B[2], B[0]);
-    (a * odd, even)
+    let mut odd = a6.times(&mix(B[13], B[11], B[9], 0.0));
+    odd.add_scaled(&mix(B[7], B[5], B[3], B[1]), 1.0);
+    let mut even = a6.times(&mix(B[12], B[10], B[8], 0.0));
+    even.add_scaled(&mix(B[6], B[4], B[2], B[0]), 1.0);
+    (a.times(&odd), even)
 }
 
 #[cfg(test)]

@@ -17,6 +17,7 @@
 //! | `sampled` | a measured response that answers at a frequency |
 //! | `margins` | crossovers, phase, gain, modulus and delay margin of anything that answers at a frequency |
 //! | `stability` | the verdict: closed-loop poles checked by the encirclement count on the exact delay |
+//! | `dense` | small dense matrices by rows of vectors |
 //! | `exponential` | the matrix exponential |
 //! | `time` | exact step response on a uniform grid |
 //! | `root` | a root between two values of opposite sign |
@@ -26,6 +27,7 @@
 
 mod cascade;
 mod delay;
+mod dense;
 mod eigen;
 mod error;
 mod exponential;

@@ -5,8 +5,9 @@
 //!
 //! Conventions: before t = 0 the system rests at the input's value `from`; at t = 0 the value after an ideal step is given.
 
-use nalgebra::{DMatrix, DVector, RowDVector};
+use nalgebra::{DMatrix, DVector};
 
+use super::dense::Rows;
 use super::{LinearError, StateSpace, expm};
 
 /// Grid points between leaps of the state: the cost of the rows and of the leaps balances for the usual 1,000 points.
@@ -93,7 +94,7 @@ pub fn step_response(
         driven.ramp(&mut values, grid, event)?;
     } else {
         let start = driven.at_rest(&[event.to - event.from]);
-        driven.propagate(&driven.held(), start, grid.step_s, grid.count, &mut values)?;
+        driven.propagate(&driven.held(), &start, grid.step_s, grid.count, &mut values)?;
     }
     values.truncate(grid.count);
     for value in &mut values {
@@ -141,38 +142,31 @@ impl<'a> Driven<'a> {
     fn propagate(
         &self,
         matrix: &DMatrix<f64>,
-        start: DVector<f64>,
+        start: &DVector<f64>,
         step_s: f64,
         count: usize,
         values: &mut Vec<f64>,
     ) -> Result<(), LinearError> {
         let size = matrix.nrows();
         let transition = expm(&(matrix * step_s))?;
+        let transition = Rows::from_fn(size, size, |i, j| transition[(i, j)]);
         let n = self.system.order();
-        let mut row = RowDVector::from_fn(size, |_, j| match j {
+        let seen = Rows::from_fn(1, size, |_, j| match j {
             j if j < n => self.system.c[(self.output, j)],
             j if j == n => self.system.d[(self.output, self.input)],
             _ => 0.0,
         });
-        let block = BLOCK.min(count.max(1));
-        // Rows c Φ^j, one state after the other, so that a block of outputs is a sum of scaled columns.
-        let mut rows = DMatrix::zeros(block, size);
-        let mut next = row.clone();
-        for j in 0..block {
-            rows.row_mut(j).copy_from(&row);
-            row.mul_to(&transition, &mut next);
-            std::mem::swap(&mut row, &mut next);
+        // Rows c Φ^j side by side, times the state at the start of each block: all outputs of a block at once.
+        let outputs = transition.orbit(&seen, BLOCK).transpose(size);
+        let mut leap = transition;
+        for _ in 0..BLOCK.ilog2() {
+            leap = leap.times(&leap);
         }
-        let leap = power(&transition, block);
-        let mut state = start;
-        let mut outputs = DVector::zeros(block);
-        for _ in 0..count / block {
-            rows.mul_to(&state, &mut outputs);
-            values.extend_from_slice(outputs.as_slice());
-            state = &leap * state;
-        }
-        rows.mul_to(&state, &mut outputs);
-        values.extend_from_slice(&outputs.as_slice()[..count % block]);
+        let start = Rows::from_fn(1, size, |_, j| start[j]);
+        let states = leap.transpose(size).orbit(&start, count.div_ceil(BLOCK));
+        let blocks = states.times(&outputs);
+        // A block is a whole number of vectors, so its rows follow each other without padding.
+        values.extend(blocks.entries().iter().take(count));
         Ok(())
     }
 
@@ -184,7 +178,7 @@ impl<'a> Driven<'a> {
         let start = self.at_rest(&[0.0, change / event.rise_s]);
         let on_ramp = (0..grid.count).take_while(|k| *k as f64 * grid.step_s <= event.rise_s).count();
         let mut at_end = expm(&(&moving * event.rise_s))? * &start;
-        self.propagate(&moving, start, grid.step_s, on_ramp, values)?;
+        self.propagate(&moving, &start, grid.step_s, on_ramp, values)?;
         if on_ramp == grid.count {
             return Ok(());
         }
@@ -192,25 +186,8 @@ impl<'a> Driven<'a> {
         let held = self.held();
         let to_next_time = on_ramp as f64 * grid.step_s - event.rise_s;
         let first = expm(&(&held * to_next_time))? * at_end.rows(0, n + 1);
-        self.propagate(&held, first, grid.step_s, grid.count - on_ramp, values)
+        self.propagate(&held, &first, grid.step_s, grid.count - on_ramp, values)
     }
-}
-
-/// A matrix to a whole power of at least one.
-fn power(matrix: &DMatrix<f64>, exponent: usize) -> DMatrix<f64> {
-    let mut result: Option<DMatrix<f64>> = None;
-    let mut square = matrix.clone();
-    let mut left = exponent;
-    while left > 0 {
-        if left & 1 == 1 {
-            result = Some(result.map_or_else(|| square.clone(), |r| r * &square));
-        }
-        left >>= 1;
-        if left > 0 {
-            square = &square * &square;
-        }
-    }
-    result.unwrap_or_else(|| DMatrix::identity(matrix.nrows(), matrix.ncols()))
 }
 
 #[cfg(test)]
