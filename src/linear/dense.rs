@@ -7,7 +7,7 @@ use wide::f64x4;
 /// A matrix stored by rows, each padded to whole vectors.
 #[derive(Clone, Debug)]
 pub(super) struct Rows {
-    rows: usize,
+    height: usize,
     /// Vectors in a row.
     lanes: usize,
     data: Vec<[f64; 4]>,
@@ -20,7 +20,7 @@ impl Rows {
     }
 
     fn blank(rows: usize, lanes: usize) -> Self {
-        Self { rows, lanes, data: vec![[0.0; 4]; rows * lanes] }
+        Self { height: rows, lanes, data: vec![[0.0; 4]; rows * lanes] }
     }
 
     /// From entries by place.
@@ -37,7 +37,7 @@ impl Rows {
 
     /// Number of rows.
     pub(super) fn rows(&self) -> usize {
-        self.rows
+        self.height
     }
 
     /// The entry at a place.
@@ -75,11 +75,11 @@ impl Rows {
 
     /// The product with a matrix that has as many rows as this has columns.
     pub(super) fn times(&self, other: &Self) -> Self {
-        let mut data = Vec::with_capacity(self.rows * other.lanes);
-        for i in 0..self.rows {
+        let mut data = Vec::with_capacity(self.height * other.lanes);
+        for i in 0..self.height {
             other.combine(self.row(i), &mut data);
         }
-        Self { rows: self.rows, lanes: other.lanes, data }
+        Self { height: self.height, lanes: other.lanes, data }
     }
 
     /// The rows `start`, `start·M`, `start·M²`, … of this square matrix M.
@@ -93,12 +93,12 @@ impl Rows {
             self.combine(last.as_flattened(), &mut data);
             last.copy_from_slice(&data[i * self.lanes..]);
         }
-        Self { rows: count, lanes: self.lanes, data }
+        Self { height: count, lanes: self.lanes, data }
     }
 
     /// The transpose of the first columns.
     pub(super) fn transpose(&self, columns: usize) -> Self {
-        Self::from_fn(columns, self.rows, |i, j| self.at(j, i))
+        Self::from_fn(columns, self.height, |i, j| self.at(j, i))
     }
 
     /// Appends a sum of the rows, weighted: a row vector times this matrix.
@@ -123,7 +123,7 @@ impl Rows {
 
     /// Solves `self · X = right` in place of `right`, by elimination with row pivoting; false when this matrix is singular.
     pub(super) fn solve(mut self, right: &mut Self) -> bool {
-        let n = self.rows;
+        let n = self.height;
         for c in 0..n {
             let pivot = (c..n).max_by(|&p, &q| self.at(p, c).abs().total_cmp(&self.at(q, c).abs())).unwrap_or(c);
             let value = self.at(pivot, c);
