@@ -78,9 +78,9 @@ impl Segment<'_> {
         self.amplitudes.iter().zip(self.poles).map(move |(a, p)| a * (p * t).exp())
     }
 
-    /// Where the rate vanishes between two points of a walk.
+    /// Where the rate vanishes between two points of a walk; the last Newton step squares the tolerance.
     fn turning_point(&self, from: &Point, to: &Point) -> f64 {
-        newton_root(|t| self.rate_and_bend(t), (from.t, from.rate), (to.t, to.rate), 1e-9 * (to.t - from.t))
+        newton_root(|t| self.rate_and_bend(t), (from.t, from.rate), (to.t, to.rate), 1e-5 * (to.t - from.t))
     }
 }
 
@@ -215,14 +215,16 @@ impl<'s> Met<'s> {
         self.note(segment, 0.0, last);
         let modes = 1.0 + segment.poles.len() as f64;
         for _ in 0..POINTS_AT_MOST {
-            let mut dead = DEAD * self.deviation.abs();
-            if self.band > 0.0 {
-                dead = dead.min(0.02 * self.band / modes);
-            }
-            let Some(step) = walk.sensible_step(dead) else { break };
-            if segment.length.is_infinite() && self.is_over(segment.offset, walk.size()) {
+            let size = walk.size();
+            let endless = segment.length.is_infinite();
+            // Once no new extreme can come, only the band matters, and modes far inside it do not.
+            let extreme_is_over = endless && (segment.offset - self.before).abs() + size < self.deviation.abs();
+            let for_band = if self.band > 0.0 { 0.02 * self.band / modes } else { f64::INFINITY };
+            let dead = if extreme_is_over { for_band } else { for_band.min(DEAD * self.deviation.abs()) };
+            if extreme_is_over && size <= self.band || endless && size <= DEAD * DEAD * self.deviation.abs() {
                 break;
             }
+            let Some(step) = walk.sensible_step(dead) else { break };
             let at_end = walk.t + step >= segment.length;
             walk.advance(if at_end { segment.length - walk.t } else { step });
             let here = walk.point();
@@ -243,12 +245,6 @@ impl<'s> Met<'s> {
             let end = Point { t: segment.length, value: segment.value(segment.length), rate: 0.0 };
             self.note(segment, last.t, end);
         }
-    }
-
-    /// Whether modes of this summed size can neither make a new extreme nor leave the band again.
-    fn is_over(&self, offset: f64, size: f64) -> bool {
-        (offset - self.before).abs() + size < self.deviation.abs() && size <= self.band
-            || size <= DEAD * DEAD * self.deviation.abs()
     }
 
     /// The last exit from the band [s]; 0 when it is never left.
