@@ -201,7 +201,10 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
     refuse_unmodelled(design, condition, &model)?;
     let fs = design.stage.switching_frequency;
-    let margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
+    let mut margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
+    // Far above the band the loop gain dies out and |1 + T| tends to one, so its least value is no more than that.
+    margins.modulus_margin = margins.modulus_margin.min(1.0);
+    margins.sensitivity_peak = margins.sensitivity_peak.max(1.0);
     let (verdict, modes) = model.verdict(shared, &margins).map_err(|e| model_finding(&e))?;
     let loop_gain = LoopResult {
         verdict,
@@ -215,7 +218,8 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
 }
 
-/// Conditions outside what is modelled: discontinuous conduction, a duty ratio beyond the modulator's limits.
+/// Conditions outside what is modelled or can be held: discontinuous conduction, a duty ratio beyond the modulator's limits,
+/// a control voltage beyond the amplifier's.
 fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &LoopModel) -> Result<(), Finding> {
     let point = &model.averaged.operating_point;
     if point.conduction == Conduction::Discontinuous {

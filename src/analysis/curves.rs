@@ -5,7 +5,7 @@
 
 use super::loop_model::{LoopModel, Shared};
 use super::result::Curves;
-use crate::linear::{Complex, FactoredResponse, LinearError, Zpk};
+use crate::linear::{Complex, FactoredResponse, FrequencyResponse, LinearError, Zpk};
 
 /// Decibels of a magnitude.
 fn db(magnitude: f64) -> f64 {
@@ -32,7 +32,13 @@ pub(super) fn curves(
     let (plant_db, plant_deg) = both(&model.plant);
     let (compensator_db, compensator_deg) = both(&shared.compensator_response);
     let (loop_db, loop_deg) = both(&model.loop_gain);
-    let (impedance_db, impedance_deg) = both(&FactoredResponse::new(model.vout_from_load()?.scaled(-1.0), 0.0));
+    let (mut impedance_db, mut impedance_deg) = both(&FactoredResponse::new(model.vout_from_load()?.scaled(-1.0), 0.0));
+    if let Some([with, without]) = model.bank_inductance()? {
+        for ((gain, phase), f) in impedance_db.iter_mut().zip(&mut impedance_deg).zip(frequencies_hz) {
+            let impedance = polar(*gain, *phase) - with.at_hz(*f) + without.at_hz(*f);
+            (*gain, *phase) = (db(impedance.norm()), impedance.arg().to_degrees());
+        }
+    }
     let (line_db, line_deg) = both(&FactoredResponse::new(model.vout_from_input()?, 0.0));
     let (reference_db, reference_deg) = both(&FactoredResponse::new(reference.clone(), 0.0));
     let mut c = Curves {

@@ -62,7 +62,11 @@ pub struct LoopModel {
 }
 
 /// Names of the closed loop's inputs.
-pub const EVENTS: [&str; 3] = ["load current", "input voltage", "reference"];
+pub const EVENTS: [&str; 4] = ["load current", "input voltage", "reference", "output disturbance"];
+/// Column of the load current.
+const LOAD: usize = 0;
+/// Column of the output's disturbance.
+const DISTURBANCE: usize = 3;
 
 impl LoopModel {
     /// Builds the loop at a condition.
@@ -91,19 +95,23 @@ impl LoopModel {
         })
     }
 
-    /// Output voltage from load current with the loop open, the bank's series inductance included.
+    /// Output voltage from load current with the loop open, the bank's series inductance left out where the stage leaves
+    /// it out.
     ///
     /// # Errors
     /// As the reduction to zeros and poles.
     pub fn vout_from_load(&self) -> Result<Zpk, LinearError> {
-        let Some(extra) = &self.averaged.bank_inductance else {
-            return Zpk::from_state_space(&self.stage, 0, 2);
-        };
-        let parts = [&self.stage, extra];
-        let inputs = [0, 1].map(|part| Port { name: "load current", part, port: "load current" });
-        let outputs = [0, 1].map(|part| Port { name: "output voltage", part, port: "output voltage" });
-        let both = StateSpace::connect(&parts, &[], &inputs, &outputs)?;
-        Zpk::from_state_space(&both, 0, 0)
+        Zpk::from_state_space(&self.stage, 0, 2)
+    }
+
+    /// What the bank's series inductance adds to that; none where the stage holds it, or there is none.
+    ///
+    /// # Errors
+    /// As the reduction to zeros and poles.
+    pub fn bank_inductance(&self) -> Result<Option<[FactoredResponse; 2]>, LinearError> {
+        let Some(bank) = &self.averaged.bank_inductance else { return Ok(None) };
+        let response = |s: &StateSpace| Zpk::from_state_space(s, 0, 0).map(|zpk| FactoredResponse::new(zpk, 0.0));
+        Ok(Some([response(&bank.with)?, response(&bank.without)?]))
     }
 
     /// Output voltage from input voltage with the loop open, feed-forward included.
@@ -114,19 +122,21 @@ impl LoopModel {
         Zpk::from_state_space(&self.stage, 0, 1)
     }
 
-    /// The closed loop, from load current, input voltage and reference to output and control voltage.
+    /// The closed loop, from load current, input voltage, reference and a disturbance of the output voltage to output and
+    /// control voltage. The bank's series inductance stands outside.
     ///
     /// # Errors
     /// As the joining of systems.
     pub fn closed(&self, shared: &Shared) -> Result<StateSpace, LinearError> {
-        self.close(shared, self.averaged.bank_inductance.as_ref())
-    }
-
-    fn close(&self, shared: &Shared, extra: Option<&StateSpace>) -> Result<StateSpace, LinearError> {
         const STAGE: usize = 0;
         const COMPENSATOR: usize = 1;
-        let mut parts = vec![&self.stage, &shared.compensator];
-        let mut wires = vec![wire(STAGE, "output voltage", COMPENSATOR, "vout", 1.0)];
+        const TAP: usize = 2;
+        let tap = StateSpace::constant(DMatrix::identity(1, 1), &["disturbance"], &["disturbance"])?;
+        let mut parts = vec![&self.stage, &shared.compensator, &tap];
+        let mut wires = vec![
+            wire(STAGE, "output voltage", COMPENSATOR, "vout", 1.0),
+            wire(TAP, "disturbance", COMPENSATOR, "vout", 1.0),
+        ];
         if let Some(delay) = &shared.delay {
             let place = parts.len();
             let (input, output) = (delay.inputs[0].as_str(), delay.outputs[0].as_str());
@@ -136,22 +146,17 @@ impl LoopModel {
         } else {
             wires.push(wire(COMPENSATOR, "vc", STAGE, "duty", self.duty_from_control));
         }
-        let mut inputs = vec![
+        let inputs = [
             Port { name: EVENTS[0], part: STAGE, port: "load current" },
             Port { name: EVENTS[1], part: STAGE, port: "input voltage" },
             Port { name: EVENTS[2], part: COMPENSATOR, port: "vref" },
+            Port { name: EVENTS[3], part: TAP, port: "disturbance" },
         ];
-        let mut outputs = vec![
+        let outputs = [
             Port { name: "output voltage", part: STAGE, port: "output voltage" },
+            Port { name: "output voltage", part: TAP, port: "disturbance" },
             Port { name: "control voltage", part: COMPENSATOR, port: "vc" },
         ];
-        if let Some(extra) = extra {
-            let place = parts.len();
-            parts.push(extra);
-            wires.push(wire(place, "output voltage", COMPENSATOR, "vout", 1.0));
-            inputs.push(Port { name: EVENTS[0], part: place, port: "load current" });
-            outputs.push(Port { name: "output voltage", part: place, port: "output voltage" });
-        }
         StateSpace::connect(&parts, &wires, &inputs, &outputs)
     }
 
@@ -161,17 +166,17 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Modes>), LinearError> {
-        // The load-side model of the bank's inductance stands outside the loop and is stable by itself.
-        let inner = self.close(shared, None)?;
-        let poles = inner.poles()?;
+        let closed = self.closed(shared)?;
+        let poles = closed.poles()?;
         let verdict = closed_loop_verdict_knowing(&poles, &self.loop_gain, margins);
         if !matches!(verdict, Verdict::Stable { .. }) {
             return Ok((verdict, None));
         }
-        let modes = match &self.averaged.bank_inductance {
-            None => Modes::with_poles(&inner, &poles)?,
-            Some(_) => Modes::new(&self.closed(shared)?)?,
-        };
+        let mut modes = Modes::with_poles(&closed, &poles)?;
+        if let Some(bank) = &self.averaged.bank_inductance {
+            modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.with)?, 1.0)?;
+            modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.without)?, -1.0)?;
+        }
         Ok((verdict, Some(modes)))
     }
 }

@@ -40,7 +40,7 @@ static ROWS: [Row; 10] = [
         name: "Gain margin",
         unit: Unit::Decibel,
         asked: Some(Asked::GainMargin),
-        absent: "infinite",
+        absent: "none below ½ fs",
         help: "How much the loop gain may rise before the loop oscillates: −|T| in decibels where the phase is −180° − k·360°.",
         take: |d| d.loop_gain.margins.gain_margin_up_db(),
     },

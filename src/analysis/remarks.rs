@@ -29,7 +29,8 @@ pub(super) fn remarks(
     let mut findings = design.findings.clone();
     findings.extend(no_outcome(conditions));
     findings.extend(unstable(conditions));
-    findings.extend(amplifier_out_of_range(design, conditions));
+    findings.extend(what_if_unstable(detail));
+    findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));
     findings.extend(step_leaves_limits(design, detail));
@@ -80,20 +81,10 @@ fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
     let mut conditional = Vec::new();
     for (condition, summary) in summaries(conditions) {
         let label = &condition.condition.label;
-        match &summary.loop_gain.verdict {
-            Verdict::Unstable { frequency_hz, growth_per_s, .. } => findings.push(Finding::problem(
-                "",
-                format!(
-                    "Unstable at {label}: oscillation at {} growing with {} per second.",
-                    print(*frequency_hz, Unit::Hertz),
-                    print_digits(*growth_per_s, Unit::One, 3)
-                ),
-            )),
-            Verdict::Undecided { reason } => {
-                findings.push(Finding::problem("", format!("Stability undecided at {label}: {reason}.")));
-            }
-            Verdict::Stable { conditionally: true } => conditional.push((label, summary)),
-            Verdict::Stable { .. } => {}
+        if let Some(told) = not_stable(&summary.loop_gain.verdict, label) {
+            findings.push(Finding::problem("", told).with_hint(UNSTABLE_HINT));
+        } else if matches!(summary.loop_gain.verdict, Verdict::Stable { conditionally: true }) {
+            conditional.push((label, summary));
         }
     }
     if findings.len() > 2 {
@@ -122,26 +113,46 @@ fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
     findings
 }
 
-/// Control voltages the amplifier cannot give.
-fn amplifier_out_of_range(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<Finding> {
-    let (least, greatest) = design.compensator.amplifier.output_limits();
-    let control = |c: &ConditionResult, s: &ConditionSummary| {
-        design.modulator.control_voltage(s.operating_point.duty, c.condition.input_voltage)
-    };
-    let (condition, volts) = summaries(conditions)
-        .map(|(c, s)| (c, control(c, s)))
-        .find(|(_, volts)| !(least..=greatest).contains(volts))?;
+/// A condition shown beside the nine that is not stable.
+fn what_if_unstable(detail: Option<&Detail>) -> Option<Finding> {
+    let detail = detail.filter(|d| d.condition.levels.is_none())?;
+    let told = not_stable(&detail.loop_gain.verdict, &detail.condition.label)?;
+    Some(Finding::problem("", told).with_hint(UNSTABLE_HINT))
+}
+
+/// A loop gain that has not fallen below one where the averaged model ends.
+fn beyond_the_model(conditions: &[ConditionResult]) -> Option<Finding> {
+    let (condition, summary) = summaries(conditions)
+        .max_by(|a, b| {
+            let gain = |s: &ConditionSummary| s.loop_gain.gain_at_half_switching_db;
+            gain(a.1).total_cmp(&gain(b.1))
+        })
+        .filter(|(_, s)| s.loop_gain.gain_at_half_switching_db >= 0.0)?;
     let message = format!(
-        "The control voltage must be {} at {}, and the amplifier gives {} to {}.",
-        print(volts, Unit::Volt),
-        condition.condition.label,
-        print(least, Unit::Volt),
-        print(greatest, Unit::Volt)
+        "The loop gain is still {} at half the switching frequency at {}: the averaged model ends there, so crossover and margins say nothing.",
+        print_digits(summary.loop_gain.gain_at_half_switching_db, Unit::Decibel, 3),
+        condition.condition.label
     );
-    Some(
-        Finding::problem("control.ramp.amplitude", message)
-            .with_hint("change the ramp or the amplifier's output limits"),
-    )
+    Some(Finding::problem("", message).with_hint("lower the gain or raise the switching frequency"))
+}
+
+const UNSTABLE_HINT: &str = "lower the gain, or move zeros down and poles up to gain phase at the crossover";
+
+/// The sentence about a loop that is not stable, or whose stability is undecided.
+fn not_stable(verdict: &Verdict, label: &str) -> Option<String> {
+    match verdict {
+        Verdict::Stable { .. } => None,
+        Verdict::Undecided { reason } => Some(format!("Stability undecided at {label}: {reason}.")),
+        Verdict::Unstable { frequency_hz, growth_per_s, .. } => {
+            let growth = print_digits(*growth_per_s, Unit::One, 3);
+            Some(if *frequency_hz > 0.0 {
+                let at = print(*frequency_hz, Unit::Hertz);
+                format!("Unstable at {label}: oscillation at {at} growing with {growth} per second.")
+            } else {
+                format!("Unstable at {label}: the output runs away, growing with {growth} per second.")
+            })
+        }
+    }
 }
 
 fn missed(verdict: &RequirementVerdict) -> Finding {
@@ -258,7 +269,7 @@ fn model_limits(design: &CheckedDesign) -> Vec<Finding> {
             "The constant-power load is taken by its tangent in all linear results.",
         ));
     }
-    if design.stage.bank.iter().any(|b| b.esl > 0.0) && !design.stage.bank_inductance_averaged {
+    if design.stage.bank.iter().any(|b| b.esl > 0.0) && !design.stage.bank_inductance_averaged() {
         let why = if design.stage.load == LoadKind::Resistor {
             "it carries switched current and settles within one switching interval"
         } else {

@@ -28,6 +28,11 @@ pub(super) fn take(asked: Asked, summary: &ConditionSummary) -> Taken {
     if !summary.loop_gain.stable() {
         return Taken::Absent("the loop is not stable");
     }
+    if summary.loop_gain.gain_at_half_switching_db >= 0.0
+        && !matches!(asked, Asked::LoadStepDeviation | Asked::Settling)
+    {
+        return Taken::Absent("the loop gain is still above 1 at half the switching frequency, where the model ends");
+    }
     let crossover = margins.headline_crossover();
     let none = Taken::Absent("the loop gain has no crossover");
     match asked {
@@ -109,7 +114,7 @@ pub(super) fn verdict(limit: &Limit, conditions: &[ConditionResult]) -> Requirem
     };
     let (met, reason) = match taken {
         Taken::Value(value) => (limit.met_by(Some(value)), ""),
-        Taken::Unbounded => (limit.is_least(), "nothing bounds it"),
+        Taken::Unbounded => (limit.is_least(), "nothing bounds it below half the switching frequency"),
         Taken::Absent(why) => (false, why),
     };
     RequirementVerdict {

@@ -42,6 +42,41 @@ fn closed_loop_state_space_agrees_with_the_curves() {
     }
 }
 
+/// The load step goes continuously with the bank's series inductance, for every topology and load kind: a slewed step adds
+/// at most ESL·slew, and what it does to the control path is small. (Two nearly equal banks side by side once cancelled to
+/// kilovolts.)
+#[test]
+fn load_step_is_continuous_in_the_series_inductance() {
+    let with = |sample: &sample::Sample, load: &str, esl: f64| {
+        let mut design = sample.design().unwrap();
+        design.choices.set("stage.load", load);
+        for branch in ["1", "2"] {
+            design.values.set(&format!("stage.bank.{branch}.esl"), esl).unwrap();
+        }
+        let checked = design.check().unwrap();
+        let band = checked.stage.switching_frequency;
+        analyse(&checked, &Request::spanning(Shown::Levels(Level::Nominal, Level::Greatest), band, 50))
+    };
+    for sample in sample::all() {
+        for load in ["resistor", "current", "power"] {
+            let plain = with(sample, load, 0.0);
+            for esl in [1e-11, 1e-10, 1e-9, 5e-9, 2e-8] {
+                let inductive = with(sample, load, esl);
+                for (a, b) in plain.conditions.iter().zip(&inductive.conditions) {
+                    let (Ok(a), Ok(b)) = (&a.outcome, &b.outcome) else {
+                        assert_eq!(a.outcome.is_ok(), b.outcome.is_ok(), "{} {load} {esl}", sample.file);
+                        continue;
+                    };
+                    let (Some(a), Some(b)) = (a.load_step, b.load_step) else { continue };
+                    let (a, b) = (a.deviation_v.abs(), b.deviation_v.abs());
+                    let spike = 2.0 * esl * 1e6;
+                    assert!((a - b).abs() < 0.05 * a + spike, "{} {load} {esl}: {a} V against {b} V", sample.file);
+                }
+            }
+        }
+    }
+}
+
 #[test]
 fn nominal_condition_is_the_middle_one() {
     let analysis = analyse(&built_in(), &request());

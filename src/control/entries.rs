@@ -32,7 +32,7 @@ pub static CHOICES: &[Choice] = &[
             ChoiceOption {
                 key: "line",
                 name: "Ramp follows the input",
-                help: "The ramp's height is proportional to the input voltage.",
+                help: "The ramp's height is proportional to the ideal source's voltage, without delay.",
             },
         ],
         default: "none",

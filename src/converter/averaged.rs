@@ -5,7 +5,7 @@
 //! (Aon − Aoff)·X + (Bon − Boff)·U, and likewise for the outputs, so an ESR's step is kept.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
-use super::bank::inductance_share;
+use super::bank::{BankInductance, bank_inductance};
 use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
 use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
@@ -22,9 +22,9 @@ pub struct AveragedModel {
     pub operating_point: OperatingPoint,
     /// From duty, input voltage and load current to output voltage, inductor and input current.
     pub stage: StateSpace,
-    /// What the bank's series inductance adds to the output voltage from the load current, where the stage must not
-    /// carry it as a state.
-    pub bank_inductance: Option<StateSpace>,
+    /// The bank with and without its series inductance, where the stage must not carry it as a state; the difference
+    /// belongs to the output voltage from the load current.
+    pub bank_inductance: Option<BankInductance>,
 }
 
 impl Stage {
@@ -35,14 +35,19 @@ impl Stage {
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
         let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
         let operating_point = self.figures(condition, &solution);
-        let stage = self
-            .linearise(&solution)
-            .ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
-        let bank_inductance = if self.bank_inductance_averaged {
+        let linearised = match self.intervals_with_inductance(condition) {
+            None => self.linearise(&solution),
+            Some(intervals) => {
+                let intervals = intervals.map_err(|e| circuit_finding(&e))?;
+                self.solution_at(intervals, solution.duty).and_then(|solution| self.linearise(&solution))
+            }
+        };
+        let stage = linearised.ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
+        let bank_inductance = if self.bank_inductance_averaged() {
             None
         } else {
             let resistance = condition.output_voltage / condition.load_current;
-            inductance_share(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
+            bank_inductance(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
         };
         Ok(AveragedModel { operating_point, stage, bank_inductance })
     }

@@ -20,32 +20,43 @@ pub struct Branch {
     pub esl: f64,
 }
 
-/// Output voltage from load current [V/A] that the branches' inductance adds; none without inductance.
+/// Output voltage from load current [V/A] of the bank alone, with and without its branches' inductance.
+#[derive(Clone, Debug, PartialEq)]
+pub struct BankInductance {
+    /// The bank as it is.
+    pub with: StateSpace,
+    /// The bank its inductance left out; the stage stands for this one.
+    pub without: StateSpace,
+}
+
+/// The two banks whose difference gives the inductance back; none without inductance.
 ///
 /// # Errors
 /// As netlist extraction.
-pub(super) fn inductance_share(bank: &[Branch], load_resistance: f64) -> Result<Option<StateSpace>, CircuitError> {
+pub(super) fn bank_inductance(bank: &[Branch], load_resistance: f64) -> Result<Option<BankInductance>, CircuitError> {
     if bank.iter().all(|branch| branch.esl <= 0.0) {
         return Ok(None);
     }
+    let (with, without) = (alone(bank, load_resistance, true)?, alone(bank, load_resistance, false)?);
+    Ok(with.zip(without).map(|(with, without)| BankInductance { with, without }))
+}
+
+/// A bank ended by the load's resistance and driven by the load current.
+fn alone(bank: &[Branch], load_resistance: f64, inductance: bool) -> Result<Option<StateSpace>, CircuitError> {
     let mut n = Netlist::new();
-    let ground = n.ground();
+    let (ground, end) = (n.ground(), n.node("output"));
     let input = n.input("load current");
-    let ends = ["with", "without"].map(|name| n.node(name));
-    let load = n.slot("load resistance");
-    for (end, inductance) in ends.into_iter().zip([true, false]) {
-        for (k, branch) in bank.iter().enumerate() {
-            draw_branch(&mut n, k, (end, ground), inductance && branch.esl > 0.0);
-        }
-        n.resistor("load", end, ground, load);
-        n.current_source("load current", end, ground, input);
+    for (k, branch) in bank.iter().enumerate() {
+        draw_branch(&mut n, k, (end, ground), inductance && branch.esl > 0.0);
     }
-    n.voltage_output("output voltage", ends[0], ends[1]);
+    let load = n.slot("load resistance");
+    n.resistor("load", end, ground, load);
+    n.current_source("load current", end, ground, input);
+    n.voltage_output("output voltage", end, ground);
     let values: Vec<f64> =
         n.slot_names().iter().map(|name| branch_value(name, bank).unwrap_or(load_resistance)).collect();
     let (equations, _) = Compiled::new(&n, |_| true, &values)?.equations(&values)?.independent();
-    let s = StateSpace::new(equations.a, equations.b, equations.c, equations.d, &["load current"], &["output voltage"]);
-    Ok(s.ok())
+    Ok(StateSpace::new(equations.a, equations.b, equations.c, equations.d, &["load current"], &["output voltage"]).ok())
 }
 
 /// The value of a bank slot by name: "bank 2 ESR".

@@ -17,7 +17,7 @@ mod tests;
 mod topologies;
 
 pub use averaged::AveragedModel;
-pub use bank::Branch;
+pub use bank::{BankInductance, Branch};
 pub use drawing::StageDrawing;
 pub use drawing::{Reach, Topology};
 pub use entries::{CHOICES, ENTRIES, applies};

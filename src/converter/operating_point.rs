@@ -221,6 +221,12 @@ impl Stage {
         Ok(Solution { intervals, duty, x })
     }
 
+    /// The averaged state at a duty ratio that is known already.
+    pub(super) fn solution_at(&self, intervals: Intervals, duty: f64) -> Option<Solution> {
+        let x = intervals.steady(duty, self.rows.output_voltage)?.x;
+        Some(Solution { intervals, duty, x })
+    }
+
     /// Output voltage at a given duty ratio in continuous conduction [V]; none where the averaged equations are singular.
     pub fn output_at_duty(&self, condition: &StageCondition, duty: f64) -> Option<f64> {
         self.intervals(condition).ok()?.steady(duty, self.rows.output_voltage).map(|steady| steady.output)

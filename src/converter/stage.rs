@@ -54,11 +54,11 @@ pub enum OutOfReach {
 #[derive(Clone, Debug)]
 pub struct Stage {
     topology: &'static Topology,
-    on: Compiled,
-    off: Compiled,
+    /// The stage without the bank's series inductance: operating point and waveforms, for which it is a fast mode.
+    plain: Drawn,
+    /// The stage with it, where it is an ordinary part of the averaged model.
+    with_inductance: Option<Drawn>,
     pub(super) rows: Rows,
-    values: Vec<f64>,
-    load_slot: Option<usize>,
     pub(super) diode_drop: f64,
     /// Least, nominal and greatest input voltage [V].
     pub input_voltages: [f64; 3],
@@ -78,8 +78,6 @@ pub struct Stage {
     pub synchronous: bool,
     /// The output bank.
     pub bank: Vec<Branch>,
-    /// Whether the bank's series inductance is an ordinary part of the averaged stage.
-    pub bank_inductance_averaged: bool,
 }
 
 /// Resistances that turn currents into conduction losses [Ω].
@@ -146,23 +144,21 @@ impl Stage {
         let drawn = Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?;
         let averaged_inductance =
             load == LoadKind::Resistor && bank.iter().any(|b| b.esl > 0.0) && !drawn.bank_is_switched();
-        let drawn = if averaged_inductance {
+        let with_inductance = if averaged_inductance {
             let mut branch_inductance = [false; BRANCHES];
             for (flag, branch) in branch_inductance.iter_mut().zip(&bank) {
                 *flag = branch.esl > 0.0;
             }
-            Drawn::new(topology, Options { branch_inductance, ..options }, &lookup)
-                .map_err(|e| vec![circuit_finding(&e)])?
+            let options = Options { branch_inductance, ..options };
+            Some(Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?)
         } else {
-            drawn
+            None
         };
         Ok(Stage {
             topology,
-            on: drawn.on,
-            off: drawn.off,
-            rows: drawn.rows,
-            load_slot: drawn.load_slot,
-            values: drawn.values,
+            rows: drawn.rows.clone(),
+            plain: drawn,
+            with_inductance,
             diode_drop: get("stage.diode.drop"),
             input_voltages,
             load_currents,
@@ -172,7 +168,6 @@ impl Stage {
             resistances,
             load,
             synchronous,
-            bank_inductance_averaged: averaged_inductance,
             bank,
         })
     }
@@ -195,16 +190,33 @@ impl Stage {
         self.bank.iter().map(|branch| branch.esr.recip()).sum::<f64>().recip()
     }
 
-    /// State equations of both intervals and the steady inputs at a condition.
+    /// Whether the bank's series inductance is an ordinary part of the averaged model.
+    pub fn bank_inductance_averaged(&self) -> bool {
+        self.with_inductance.is_some()
+    }
+
+    /// State equations of both intervals and the steady inputs at a condition, for operating point and waveforms.
     ///
     /// # Errors
     /// As netlist extraction.
     pub(super) fn intervals(&self, condition: &StageCondition) -> Result<Intervals, CircuitError> {
+        self.intervals_of(&self.plain, condition)
+    }
+
+    /// The same with the bank's series inductance, where it is an ordinary part of the averaged model.
+    pub(super) fn intervals_with_inductance(
+        &self,
+        condition: &StageCondition,
+    ) -> Option<Result<Intervals, CircuitError>> {
+        self.with_inductance.as_ref().map(|drawn| self.intervals_of(drawn, condition))
+    }
+
+    fn intervals_of(&self, drawn: &Drawn, condition: &StageCondition) -> Result<Intervals, CircuitError> {
         let resistance = condition.output_voltage / condition.load_current;
         let mut inputs = DVector::zeros(3);
         inputs[INPUT_VOLTAGE] = condition.input_voltage;
         inputs[DIODE_DROP] = self.diode_drop;
-        let mut values = self.values.clone();
+        let mut values = drawn.values.clone();
         let load_slot_value = match self.load {
             LoadKind::Resistor => resistance,
             LoadKind::Current => {
@@ -217,16 +229,17 @@ impl Stage {
                 -resistance
             }
         };
-        if let Some(slot) = self.load_slot {
+        if let Some(slot) = drawn.load_slot {
             values[slot] = load_slot_value;
         }
-        let on = self.on.equations(&values)?.independent().0;
-        let off = self.off.equations(&values)?.independent().0;
+        let on = drawn.on.equations(&values)?.independent().0;
+        let off = drawn.off.equations(&values)?.independent().0;
         Ok(Intervals { on, off, inputs })
     }
 }
 
 /// A netlist drawn and compiled for both intervals.
+#[derive(Clone, Debug)]
 struct Drawn {
     on: Compiled,
     off: Compiled,

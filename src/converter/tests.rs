@@ -80,7 +80,14 @@ fn series_inductance_of_a_buck_is_an_ordinary_part() {
         ("stage.bank.1.esl", 1e-9),
     ];
     let stage = stage("buck", &entries, &[]);
-    assert!(stage.bank_inductance_averaged);
+    assert!(stage.bank_inductance_averaged());
+    let point = stage
+        .averaged(&StageCondition { input_voltage: 12.0, load_current: 3.0, output_voltage: 5.0 })
+        .unwrap()
+        .operating_point;
+    // A triangle has its peak-to-peak over √12 as RMS, and the bank carries all of the ripple but the share of the load.
+    let ripple = point.inductors[0].current.ripple;
+    assert!((point.output_bank_rms / (ripple / 12.0_f64.sqrt()) - 1.0).abs() < 3e-3);
     let plant = vout_from_duty(&stage, &StageCondition { input_voltage: 12.0, load_current: 3.0, output_voltage: 5.0 });
     // Nodal solution by hand at 2 MHz.
     let s = crate::linear::Complex::new(0.0, TAU * 2e6);

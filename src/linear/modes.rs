@@ -139,6 +139,50 @@ impl Modes {
         if values.iter().all(|v| v.is_finite()) { Ok(values) } else { Err(LinearError::NotFinite) }
     }
 
+    /// Adds to what `input` does all that it does through a filter into the input `via`: `sign` times their product, exactly,
+    /// by partial fractions. The filter, of one input and output, keeps its own modes, so a stiff one costs no accuracy.
+    ///
+    /// # Errors
+    /// [`LinearError::UnknownPort`]; [`LinearError::NotFinite`] where a mode of the filter coincides with one of the system.
+    pub fn add_through(&mut self, input: usize, via: usize, filter: &Self, sign: f64) -> Result<(), LinearError> {
+        let unknown = || LinearError::UnknownPort(format!("inputs {input} and {via}"));
+        let entry = self.driven.get(via).cloned().ok_or_else(unknown)?;
+        let own: Vec<Complex> = filter.residues(0, 0).ok_or_else(unknown)?;
+        let at_own_poles: Vec<Complex> =
+            self.poles.iter().map(|p| sign * filter.value_at(*p, &own, filter.direct[(0, 0)])).collect();
+        let target = self.driven.get_mut(input).ok_or_else(unknown)?;
+        for ((driven, entered), passed) in target.iter_mut().zip(&entry).zip(&at_own_poles) {
+            *driven += entered * passed;
+        }
+        for output in 0..self.seen.len() {
+            let through: Vec<Complex> = self.residues(output, via).ok_or_else(unknown)?;
+            let direct = self.direct[(output, via)];
+            let seen: Vec<Complex> = filter.poles.iter().map(|q| self.value_at(*q, &through, direct)).collect();
+            self.direct[(output, input)] += sign * direct * filter.direct[(0, 0)];
+            self.seen[output].extend(seen);
+        }
+        for (place, driven) in self.driven.iter_mut().enumerate() {
+            driven.extend(own.iter().map(|r| if place == input { r * sign } else { Complex::ZERO }));
+        }
+        self.poles.extend(&filter.poles);
+        let finite = |x: &Complex| x.re.is_finite() && x.im.is_finite();
+        if self.seen.iter().chain(&self.driven).flatten().all(finite) { Ok(()) } else { Err(LinearError::NotFinite) }
+    }
+
+    /// What an output sees of each mode an input excites; of a pair twice the residue of its upper pole.
+    fn residues(&self, output: usize, input: usize) -> Option<Vec<Complex>> {
+        Some(self.seen.get(output)?.iter().zip(self.driven.get(input)?).map(|(c, b)| c * b).collect())
+    }
+
+    /// The transfer function at a complex frequency [rad/s], from its residues; residues of modes not listed are zero.
+    fn value_at(&self, s: Complex, residues: &[Complex], direct: f64) -> Complex {
+        let modes = residues
+            .iter()
+            .zip(&self.poles)
+            .map(|(r, p)| if p.im == 0.0 { r / (s - p) } else { (r / (s - p) + r.conj() / (s - p.conj())) * 0.5 });
+        modes.sum::<Complex>() + direct
+    }
+
     /// The stretches of the response to an event, with the values before it and long after.
     fn segments(
         &self,
