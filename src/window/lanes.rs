@@ -26,8 +26,6 @@ const APART: f64 = 0.004;
 const SNAP: f32 = 4.0;
 /// Greatest width of the lines that say what limits a lane [points].
 const REMARK_WIDTH: f32 = 400.0;
-/// Room between the names of lanes and the plot, in which a handle at the very edge has its mark [points].
-const EDGE: f32 = 19.0;
 
 /// Draws all lanes.
 pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
