@@ -44,16 +44,29 @@ impl Labels {
     }
 }
 
-/// Places beside a vertical mark: right and left of it at each height, the first heights first.
+/// Places right and left of a vertical mark at each height, the first heights first.
 pub(super) fn beside(x: f32, heights: &[f32]) -> Vec<(Pos2, Align2)> {
-    let sides = |y: &f32| [(pos2(x + BESIDE, *y), Align2::LEFT_CENTER), (pos2(x - BESIDE, *y), Align2::RIGHT_CENTER)];
-    heights.iter().flat_map(sides).collect()
+    heights.iter().flat_map(|y| [right_of(x, *y), left_of(x, *y)]).collect()
 }
 
-/// Heights above and below a level, the nearest first; `up` says which side is tried first.
-pub(super) fn around(level: f32, up: bool) -> Vec<f32> {
-    let way = if up { -1.0 } else { 1.0 };
-    [way, -way, 2.6 * way, -2.6 * way].iter().map(|steps| level + steps * APART).collect()
+/// Places about the point where a mark meets a level. Curves fall there as a rule, so above it the right is clear of them
+/// and below it the left; `up` says which of the two comes first.
+pub(super) fn around(at: Pos2, up: bool) -> Vec<(Pos2, Align2)> {
+    let row = |y: f32| {
+        let (above, below) = (at.y - y * APART, at.y + y * APART);
+        let (clear, other) = (right_of(at.x, above), left_of(at.x, below));
+        let (first, second) = if up { (clear, other) } else { (other, clear) };
+        [first, second, left_of(at.x, above), right_of(at.x, below)]
+    };
+    [1.0, 2.6].into_iter().flat_map(row).collect()
+}
+
+fn right_of(x: f32, y: f32) -> (Pos2, Align2) {
+    (pos2(x + BESIDE, y), Align2::LEFT_CENTER)
+}
+
+fn left_of(x: f32, y: f32) -> (Pos2, Align2) {
+    (pos2(x - BESIDE, y), Align2::RIGHT_CENTER)
 }
 
 #[cfg(test)]
@@ -65,7 +78,7 @@ mod tests {
         let bounds = Rect::from_min_max(pos2(0.0, 0.0), pos2(200.0, 100.0));
         let size = vec2(50.0, 14.0);
         let mut labels = Labels::default();
-        let places = beside(100.0, &around(50.0, true));
+        let places = around(pos2(100.0, 50.0), true);
         let rects = || places.iter().map(|(at, align)| align.anchor_size(*at, size));
         labels.keep_off(100.0, 0.0, 100.0);
         let mut found: Vec<Rect> = Vec::new();

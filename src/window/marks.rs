@@ -56,7 +56,7 @@ fn crossover(
     painter.circle_filled(at, 4.0, colour);
     labels.keep_off(at.x, stack.gain.rect.top(), stack.gain.rect.bottom());
     let text = quantity::print_digits(frequency_hz, Unit::Hertz, 3);
-    let places = labels::beside(at.x, &labels::around(at.y, true));
+    let places = labels::around(at, true);
     labels.write(painter, stack.gain.rect, &places, &text, (colour, palette.canvas));
 }
 
@@ -118,11 +118,11 @@ fn gain_margin_label(
     let (colour, palette) = colours;
     let (frequency_hz, margin_db) = at;
     let (from, to) = (stack.gain.at(frequency_hz, 0.0), stack.gain.at(frequency_hz, -margin_db));
-    let mut heights = labels::around(from.y, margin_db > 0.0);
+    let mut places = labels::around(from, margin_db > 0.0);
     let end = to.y.clamp(stack.gain.rect.top() + 11.0, stack.gain.rect.bottom() - 11.0);
-    heights.extend([from.y.midpoint(end), end]);
+    places.extend(labels::beside(from.x, &[from.y.midpoint(end), end]));
     let text = quantity::print_digits(margin_db, Unit::Decibel, 3);
-    labels.write(painter, stack.gain.rect, &labels::beside(from.x, &heights), &text, (colour, palette.canvas));
+    labels.write(painter, stack.gain.rect, &places, &text, (colour, palette.canvas));
 }
 
 /// Draws landmarks across the stack, and under it their names, the frequencies and the crossover window.
