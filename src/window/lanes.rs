@@ -26,6 +26,8 @@ const APART: f64 = 0.004;
 const SNAP: f32 = 4.0;
 /// Greatest width of the lines that say what limits a lane [points].
 const REMARK_WIDTH: f32 = 400.0;
+/// Room between the names of lanes and the plot, in which a handle beyond the axis has its mark [points].
+const EDGE: f32 = 20.0;
 
 /// Draws all lanes.
 pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
@@ -72,7 +74,7 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     let painter = ui.painter().clone();
     painter.hline(plot.x_range(), y, Stroke::new(2.5, palette.rail));
     let word = kind_word(lane.kind);
-    painter.text(pos2(plot.left() - 7.0, y), Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
+    painter.text(pos2(plot.left() - EDGE, y), Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
     aim(&painter, stack, lane, y, desk, palette);
 
     let id = Id::unique(("lane", lane.key));
