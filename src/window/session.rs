@@ -293,4 +293,4 @@ impl Session {
 /// The band is drawn with a quarter of the curves' points: it is wide and soft.
 const BAND_STEP: usize = 4;
 /// Points of a step response: more than a plot of half a screen has columns.
-const STEP_POINTS: usize = 800;
+const STEP_POINTS: usize = 400;
