@@ -34,7 +34,7 @@ pub(super) fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         .resizable(false)
         .frame(frame(palette.bar).inner_margin(Margin::symmetric(14, 0)))
         .show(ui, |ui| bar::bar_ui(ui, desk));
-    if desk.session.stale() || desk.view.message.is_some() {
+    if desk.session.stale() || desk.view.banner().is_some() {
         Panel::top("notices").resizable(false).frame(frame(palette.field)).show(ui, |ui| bar::notices_ui(ui, desk));
     }
     let (left_width, right_width) = column_widths(ui.available_width());

@@ -188,6 +188,17 @@ impl View {
         }
     }
 
+    /// What the line under the bar says. A failure that an open dialog tells is not told twice.
+    pub(super) fn banner(&self) -> Option<&Message> {
+        let in_dialog = matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. }));
+        self.message.as_ref().filter(|message| !(message.failed && in_dialog))
+    }
+
+    /// Drops what was said about a try that failed and is over.
+    pub(super) fn forget_failure(&mut self) {
+        self.message = self.message.take().filter(|message| !message.failed);
+    }
+
     /// Shows a curve, or hides it.
     pub(super) fn toggle(&mut self, curve: Curve) {
         let shown = match curve {
