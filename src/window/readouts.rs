@@ -67,11 +67,21 @@ fn shown_column(rect: Rect) -> f32 {
     rect.left() + rect.width() * SHOWN
 }
 
-fn value_text(readout: &Readout) -> String {
-    match readout.value {
-        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
-        None => readout.absent.to_owned(),
+fn value_text(readout: &Readout, analysis: &Analysis) -> String {
+    match (readout.value, &analysis.shown) {
+        (Some(value), _) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        (None, Ok(detail)) if of_load_step(readout) && detail.loop_gain.stable() && detail.steps.load.is_none() => {
+            NO_STEP.to_owned()
+        }
+        (None, _) => readout.absent.to_owned(),
     }
+}
+
+/// What stands in the place of a figure of a load step of 0 A.
+const NO_STEP: &str = "no step";
+
+fn of_load_step(readout: &Readout) -> bool {
+    matches!(readout.key, "load-step-deviation" | "settling")
 }
 
 /// Angles and decibels to a tenth: more is noise to whoever decides.
@@ -90,6 +100,7 @@ fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
         None => match analysis.conditions.get(worst.index).map(|result| &result.outcome) {
             Some(Err(_)) => "no result".to_owned(),
             Some(Ok(summary)) if !summary.loop_gain.stable() => "unstable".to_owned(),
+            Some(Ok(summary)) if of_load_step(readout) && summary.load_step.is_none() => NO_STEP.to_owned(),
             _ => "none".to_owned(),
         },
     })
@@ -119,7 +130,7 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), height), Sense::click());
     let painter = ui.painter();
     painter.text(rect.left_top() + vec2(0.0, 1.0), Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
-    let value = value_text(readout);
+    let value = value_text(readout, analysis);
     let at = rect.left_top() + vec2(0.0, 13.0);
     painter.text(at, Align2::LEFT_TOP, &value, theme::figure(), ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
@@ -187,7 +198,7 @@ fn bar(painter: &Painter, rect: Rect, verdict: &RequirementVerdict, palette: &Pa
 
 fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk<'_>) {
     let palette = palette(ui);
-    let value = value_text(readout);
+    let value = value_text(readout, analysis);
     let width = ui.available_width();
     let value_galley = ui.painter().layout_no_wrap(value.clone(), theme::body(), ink(readout, analysis, palette));
     let room = (width * SHOWN - value_galley.size().x - 6.0).max(40.0);
