@@ -1,6 +1,6 @@
 //! What is marked on the stack: crossover and margins, landmarks of the plant, the crossover window, frequencies.
 
-use eframe::egui::{self, Align2, Painter, Rect, Sense, Shape, Stroke, Ui, pos2, vec2};
+use eframe::egui::{self, Align2, Painter, Rect, Role, Sense, Shape, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis::{DecadeLine, decade_lines};
 use super::bode::Stack;
@@ -188,7 +188,9 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
     if !window.empty.is_empty() {
         let text = format!("crossover window {}", window.empty);
         let painter = ui.painter().with_clip_rect(stack.foot);
-        painter.text(pos2(plot.left(), y), Align2::LEFT_CENTER, text, theme::small(), palette.amber);
+        let at = pos2(plot.left(), y);
+        let rect = painter.text(at, Align2::LEFT_CENTER, &text, theme::small(), palette.amber);
+        explained_ui(ui, rect, &text);
         return;
     }
     let edge = |at: Option<f64>, otherwise: f32| {
@@ -210,31 +212,25 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
         format!("{}: {cause}", quantity::print_digits(edge.frequency_hz, Unit::Hertz, 2))
     };
     let mut help = vec!["Crossover window: the crossover frequencies this stage allows.".to_owned()];
-    let ground = palette.canvas;
-    if let Some(edge) = &window.lower {
-        plot::tag(
-            &painter,
-            pos2(left - 6.0, y),
-            Align2::RIGHT_CENTER,
-            &name(edge),
-            theme::small(),
-            (palette.weak, ground),
-        );
-        help.push(format!("least {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
+    let mut whole = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));
+    let sides = [
+        (&window.lower, "least", pos2(left - 6.0, y), Align2::RIGHT_CENTER),
+        (&window.upper, "greatest", pos2(right + 6.0, y), Align2::LEFT_CENTER),
+    ];
+    for (edge, word, at, align) in sides {
+        let Some(edge) = edge else { continue };
+        let colours = (palette.weak, palette.canvas);
+        whole = whole.union(plot::tag(&painter, at, align, &name(edge), theme::small(), colours));
+        help.push(format!("{word} {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
     }
-    if let Some(edge) = &window.upper {
-        plot::tag(
-            &painter,
-            pos2(right + 6.0, y),
-            Align2::LEFT_CENTER,
-            &name(edge),
-            theme::small(),
-            (palette.weak, ground),
-        );
-        help.push(format!("greatest {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
-    }
-    let bar = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));
-    let _ = ui.interact(bar, ui.scope_id().with("crossover window"), Sense::hover()).on_hover_text(help.join("\n"));
+    explained_ui(ui, whole, &help.join("\n"));
+}
+
+/// Gives the crossover window its words, for the pointer and for screen readers.
+fn explained_ui(ui: &Ui, rect: Rect, help: &str) {
+    let response = ui.interact(rect, ui.scope_id().with("crossover window"), Sense::hover());
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, help));
+    let _ = response.on_hover_text(help);
 }
 
 /// A dotted vertical tick, used for marks of time as well.
