@@ -135,7 +135,8 @@ fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let rows = if room.width() < SIDE_BY_SIDE { 2.0 } else { 1.0 };
     let lower = (room.height() * LOWER_SHARE).max(LEAST_LOWER) * rows;
     let upper = (room.height() - lower).max(LEAST_STACK);
-    if upper + lower <= room.height() + 0.5 {
+    desk.view.plots_scroll = upper + lower > room.height() + 0.5;
+    if !desk.view.plots_scroll {
         plots_ui(ui, room, upper, desk);
         return;
     }

@@ -68,20 +68,17 @@ fn shown_column(rect: Rect) -> f32 {
 }
 
 fn value_text(readout: &Readout, analysis: &Analysis) -> String {
-    match (readout.value, &analysis.shown) {
-        (Some(value), _) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
-        (None, Ok(detail)) if of_load_step(readout) && detail.loop_gain.stable() && detail.steps.load.is_none() => {
-            NO_STEP.to_owned()
-        }
-        (None, _) => readout.absent.to_owned(),
+    match readout.value {
+        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        None if no_step(readout, analysis) => "no step".to_owned(),
+        None => readout.absent.to_owned(),
     }
 }
 
-/// What stands in the place of a figure of a load step of 0 A.
-const NO_STEP: &str = "no step";
-
-fn of_load_step(readout: &Readout) -> bool {
+/// True for the figures of a load step of 0 A: then a stable loop has no response to it, at any condition.
+fn no_step(readout: &Readout, analysis: &Analysis) -> bool {
     matches!(readout.key, "load-step-deviation" | "settling")
+        && analysis.shown.as_ref().is_ok_and(|detail| detail.loop_gain.stable() && detail.steps.load.is_none())
 }
 
 /// Angles and decibels to a tenth: more is noise to whoever decides.
@@ -94,13 +91,12 @@ fn trimmed(value: f64, unit: Unit) -> f64 {
 
 /// Worst value over the nine conditions, or the word for why there is none.
 fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
-    let worst = readout.worst.as_ref()?;
+    let worst = readout.worst.as_ref().filter(|_| !no_step(readout, analysis))?;
     Some(match worst.value {
         Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
         None => match analysis.conditions.get(worst.index).map(|result| &result.outcome) {
             Some(Err(_)) => "no result".to_owned(),
             Some(Ok(summary)) if !summary.loop_gain.stable() => "unstable".to_owned(),
-            Some(Ok(summary)) if of_load_step(readout) && summary.load_step.is_none() => NO_STEP.to_owned(),
             _ => "none".to_owned(),
         },
     })

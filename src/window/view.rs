@@ -107,6 +107,8 @@ pub(super) struct View {
     /// There is room for one column only, and which of the two it is.
     pub one_column: bool,
     pub readouts_first: bool,
+    /// The column of the plots is higher than the window and scrolls.
+    pub plots_scroll: bool,
     /// Height of all findings at the last frame [points].
     pub findings_height: f32,
     /// Frequencies shown [Hz]; the whole range when absent.
@@ -156,6 +158,7 @@ impl Default for View {
             readout_column: true,
             one_column: false,
             readouts_first: true,
+            plots_scroll: false,
             findings_height: 100.0,
             range_hz: None,
             plot_width: 640.0,
