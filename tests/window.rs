@@ -3,7 +3,7 @@
 #![cfg(feature = "window")]
 #![expect(clippy::unwrap_used, reason = "a test may stop at a wrong value")]
 
-use eframe::egui::{Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
+use eframe::egui::{self, Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
 use egui_kittest::Harness;
 use egui_kittest::kittest::Queryable;
 use polewright::analysis::Level;
@@ -276,6 +276,82 @@ fn a_file_that_cannot_be_opened_is_told_and_nothing_is_lost() {
     harness.run();
     assert!(harness.state().message().unwrap().failed);
     assert_eq!(harness.state().session().design().title, title);
+}
+
+#[test]
+fn a_failed_open_is_told_once_and_is_over_after_cancel() {
+    let mut harness = usual();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::O);
+    harness.run();
+    harness.state_mut().ask(polewright::window::Command::OpenPath("/no/such/file.ron".into()));
+    harness.run();
+    let text = harness.state().message().unwrap().text.clone();
+    let told = |harness: &Harness<'_, App>| {
+        harness.query_all_by(|node| node.value().as_deref() == Some(text.as_str())).count()
+    };
+    assert_eq!(told(&harness), 1);
+    harness.get_by_label("Cancel").click();
+    harness.run();
+    assert_eq!(told(&harness), 0);
+    assert!(harness.state().message().is_none());
+}
+
+#[test]
+fn shift_tells_redo_from_undo() {
+    let mut harness = usual();
+    enter(&mut harness, "Inductor", "12u");
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
+    harness.run();
+    assert!((value(&harness, "stage.inductor.inductance") - 10e-6).abs() < 1e-15);
+    harness.key_press_modifiers(Modifiers::COMMAND | Modifiers::SHIFT, Key::Z);
+    harness.run();
+    assert!((value(&harness, "stage.inductor.inductance") - 12e-6).abs() < 1e-15);
+}
+
+#[test]
+fn a_load_step_of_nothing_is_no_unstable_loop() {
+    let mut design = sample::built_in();
+    design.values.set("event.load-step.change", 0.0).unwrap();
+    let mut harness =
+        Harness::builder().with_size(vec2(1280.0, 800.0)).build_eframe(|cc| App::new(&cc.egui_ctx, design, None));
+    harness.run();
+    let shown = harness.get_by_role_and_label(Role::Button, "Load step").value().unwrap();
+    assert_eq!(shown, "no step");
+}
+
+#[test]
+fn the_crossover_window_has_words() {
+    let harness = usual();
+    let words =
+        |text: &str| text.starts_with("Crossover window:") && text.contains("least") && text.contains("greatest");
+    assert_eq!(harness.query_all_by(|node| node.value().is_some_and(|text| words(&text))).count(), 1);
+}
+
+#[test]
+fn the_wheel_scrolls_where_the_plots_do_not_fit() {
+    let wheel = |harness: &mut Harness<'_, App>, modifiers: Modifiers| {
+        let over = harness.state().gain_rect().center();
+        harness.hover_at(over);
+        harness.step();
+        harness.event(egui::Event::MouseWheel {
+            unit: egui::MouseWheelUnit::Point,
+            source: egui::MouseWheelSource::Wheel,
+            delta: vec2(0.0, -60.0),
+            phase: egui::TouchPhase::Move,
+            modifiers,
+        });
+        harness.run();
+    };
+    let mut low = window(vec2(640.0, 400.0), 2.0);
+    let (range, top) = (low.state().frequency_range_hz(), low.state().gain_rect().top());
+    wheel(&mut low, Modifiers::NONE);
+    assert_eq!(low.state().frequency_range_hz(), range);
+    assert!(low.state().gain_rect().top() < top - 20.0, "the column moved");
+    wheel(&mut low, Modifiers::COMMAND);
+    assert_ne!(low.state().frequency_range_hz(), range);
+    let mut high = usual();
+    wheel(&mut high, Modifiers::NONE);
+    assert_ne!(high.state().frequency_range_hz(), range);
 }
 
 #[test]

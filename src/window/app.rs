@@ -4,7 +4,7 @@ use std::path::PathBuf;
 
 use eframe::egui::{self, Rect, Ui, ViewportCommand};
 
-use super::command::{COMMANDS, Command};
+use super::command::{COMMANDS, Command, Row};
 use super::files::FileDialogs;
 use super::session::Session;
 use super::theme;
@@ -75,7 +75,10 @@ impl App {
 
     fn shortcuts(&mut self, ctx: &egui::Context) {
         let typing = ctx.text_edit_focused();
-        for row in COMMANDS {
+        // A shortcut without Shift takes the key with Shift as well, so those with Shift are asked first.
+        let shifted = |row: &&Row| row.shortcut.is_some_and(|shortcut| shortcut.modifiers.shift);
+        let rest = COMMANDS.iter().filter(|row| !shifted(row));
+        for row in COMMANDS.iter().filter(shifted).chain(rest) {
             let Some(shortcut) = &row.shortcut else { continue };
             // While text is edited, undo and steps of the cursor are the field's own.
             let of_field = matches!(

@@ -146,7 +146,7 @@ pub(super) fn notices_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         };
         line_ui(ui, &format!("{shown}{first}{more}"), palette.problem, |_| {});
     }
-    if let Some(message) = desk.view.message.clone() {
+    if let Some(message) = desk.view.banner().cloned() {
         let colour = if message.failed { palette.problem } else { palette.good };
         let mut closed = false;
         line_ui(ui, &message.text, colour, |ui| closed = ui.button("Close").clicked());

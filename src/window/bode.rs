@@ -209,7 +209,8 @@ fn held_curves(painter: &egui::Painter, stack: &Stack, held: &Analysis, palette:
     stack.phase.curve(painter, &log_hz, &detail.curves.loop_deg, pen);
 }
 
-/// Follows the pointer over the plots; wheel zooms about it, dragging pans, a double click shows all again.
+/// Follows the pointer over the plots; the wheel zooms about it, with Ctrl where the column scrolls; dragging pans, a double
+/// click shows all again.
 fn cursor_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
     let mut cursor = None;
     for (name, plot) in [("Gain plot", &stack.gain), ("Phase plot", &stack.phase)] {
@@ -233,12 +234,15 @@ fn cursor_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
 const SPANS: (f64, f64) = (0.5, 7.0);
 
 fn zoom(ui: &Ui, plot: &Plot, pointer: Pos2, desk: &mut Desk<'_>) {
-    let turn = ui.input(|input| input.smooth_scroll_delta().y + 200.0 * (input.zoom_delta() - 1.0));
+    // Where the column scrolls the wheel is the column's, or its lower plots could not be reached; Ctrl and pinching zoom.
+    let scrolls = desk.view.plots_scroll;
+    let turn = ui.input(|input| {
+        let wheel = if scrolls { 0.0 } else { input.smooth_scroll_delta().y };
+        wheel + 200.0 * (input.zoom_delta() - 1.0)
+    });
     if turn.abs() < 0.1 {
         return;
     }
-    // The wheel is the plot's own here; a column that scrolls must not move under it.
-    ui.input_mut(|input| input.smooth_scroll_delta = egui::Vec2::ZERO);
     let (from, to) = plot.x.range();
     let centre = plot.x.value(pointer.x);
     let factor = (-f64::from(turn) / 300.0).exp();

@@ -168,14 +168,14 @@ const fn row(
 const CTRL: Modifiers = Modifiers::COMMAND;
 const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
 
-/// The command table, in the order of the menus. Shortcuts with more modifiers stand first where keys are shared.
+/// The command table, in the order of the menus.
 pub(super) static COMMANDS: &[Row] = &[
     row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
-    row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
     row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
+    row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
     row("Quit", Menu::Design, Some(key(CTRL, Key::Q)), "Close the window.", Command::Quit),
-    row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),
     row("Undo", Menu::Edit, Some(key(CTRL, Key::Z)), "Take the last change back.", Command::Undo),
+    row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),
     row(
         "Round parts to their series",
         Menu::Edit,

@@ -153,12 +153,16 @@ fn range_row_ui(ui: &mut Ui, entries: &[&'static Entry; 3], desk: &mut Desk<'_>)
 const LABEL_SHARE: f32 = 0.6;
 /// The same where the row holds a choice, whose options are words.
 const CHOICE_LABEL_SHARE: f32 = 0.4;
+/// Greatest width of a field for a number [points].
+const FIELD_WIDTH: f32 = 104.0;
 
 fn row_ui(ui: &mut Ui, words: (&str, &str), share: f32, field: impl FnOnce(&mut Ui, f32)) {
     let room = ui.available_width();
     ui.allocate_ui_with_layout(vec2(room, theme::ROW), Layout::left_to_right(Align::Center), |ui| {
         ui.spacing_mut().item_spacing.x = 4.0;
-        let label_width = (room * share).round();
+        // A field needs no more than its number; what a wide column has beyond that is the label's.
+        let number = if share < LABEL_SHARE { 0.0 } else { room - FIELD_WIDTH };
+        let label_width = (room * share).max(number).round();
         label_ui(ui, words.0, words.1, label_width);
         field(ui, room - label_width - 4.0);
     });

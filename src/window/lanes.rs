@@ -24,6 +24,10 @@ const FINE: f32 = 0.1;
 const APART: f64 = 0.004;
 /// Distance within which a dragged handle snaps to a landmark [points].
 const SNAP: f32 = 4.0;
+/// Greatest width of the lines that say what limits a lane [points].
+const REMARK_WIDTH: f32 = 400.0;
+/// Room between the names of lanes and the plot, in which a handle beyond the axis has its mark [points].
+const EDGE: f32 = 20.0;
 
 /// Draws all lanes.
 pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
@@ -34,10 +38,30 @@ pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
         let row =
             Rect::from_min_max(pos2(stack.lanes.left(), top), pos2(stack.lanes.right(), top + theme::LANE_HEIGHT));
         if lane_ui(ui, stack, row, lane, desk) {
-            active = Some(lane.key);
+            active = Some((lane, row));
         }
     }
-    desk.view.lane = active;
+    // After all lanes, since it lies over the next one.
+    if let Some((lane, row)) = active {
+        remark(ui, stack, row, lane, desk);
+    }
+    desk.view.lane = active.map(|(lane, _)| lane.key);
+}
+
+/// What limits a lane, under it and within the width of the plot.
+fn remark(ui: &Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &Desk<'_>) {
+    let Some(text) = desk.session.lane_remark(lane.key) else { return };
+    let palette = palette(ui);
+    let plot = stack.gain.rect;
+    let width = (plot.width() - 16.0).min(REMARK_WIDTH);
+    let galley = ui.painter().layout(text.to_owned(), theme::small(), palette.ink, width);
+    let size = galley.size();
+    let x = stack.gain.x.at(lane.frequency_hz) - size.x / 2.0;
+    let left = x.clamp(plot.left() + 8.0, (plot.right() - size.x - 8.0).max(plot.left() + 8.0));
+    let at = pos2(left, row.center().y + theme::HANDLE + 8.0);
+    let ground = Rect::from_min_size(at, size).expand2(vec2(6.0, 3.0));
+    ui.painter().rect(ground, 3.0, palette.field, Stroke::new(1.0, palette.field_edge), StrokeKind::Inside);
+    ui.painter().galley(at, galley, palette.ink);
 }
 
 /// Draws one lane; true when its handle is held, has the keyboard or is under the pointer.
@@ -50,7 +74,7 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     let painter = ui.painter().clone();
     painter.hline(plot.x_range(), y, Stroke::new(2.5, palette.rail));
     let word = kind_word(lane.kind);
-    painter.text(pos2(plot.left() - 7.0, y), Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
+    painter.text(pos2(plot.left() - EDGE, y), Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
     aim(&painter, stack, lane, y, desk, palette);
 
     let id = Id::unique(("lane", lane.key));
@@ -247,12 +271,16 @@ fn value_ui(ui: &mut Ui, stack: &Stack, lane: &Lane, handle: (Pos2, bool), desk:
     }
     if active {
         let at = if on_left { rect.left_center() } else { rect.right_center() } + vec2(way * 10.0, 0.0);
-        let text = parts_text(lane, desk);
-        super::plot::tag(&painter, at, align, &text, theme::small(), (palette.weak, palette.canvas));
+        let galley = painter.layout_no_wrap(parts_text(lane, desk), theme::small(), palette.weak);
+        let ground = align.anchor_size(at, galley.size());
+        if !galley.is_empty() && plot.x_range().contains(ground.left()) && plot.x_range().contains(ground.right()) {
+            painter.rect_filled(ground.expand2(vec2(3.0, 1.0)), 3.0, palette.canvas);
+            painter.galley(ground.min, galley, palette.weak);
+        }
     }
 }
 
-/// What the parts of a lane are, and what limits it.
+/// What the parts of a lane are.
 fn parts_text(lane: &Lane, desk: &Desk<'_>) -> String {
     let design = desk.session.design();
     let entry = |path: &str| crate::compensator::ENTRIES.iter().find(|entry| entry.path == path);
@@ -261,8 +289,7 @@ fn parts_text(lane: &Lane, desk: &Desk<'_>) -> String {
         let value = design.values.get_or_default(entry)?;
         Some(format!("{} {}", super::parts::short_name(entry), quantity::print_digits(value, entry.unit, 3)))
     };
-    let mut words: Vec<String> = lane.parts.iter().filter_map(part).collect();
-    words.extend(desk.session.lane_remark(lane.key).map(str::to_owned));
+    let words: Vec<String> = lane.parts.iter().filter_map(part).collect();
     words.join("   ")
 }
 

@@ -16,6 +16,8 @@ const LEAST_STACK: f32 = 400.0;
 const LEAST_LOWER: f32 = 150.0;
 /// Least width of the plots while both columns stand beside them [points].
 const LEAST_MIDDLE: f32 = 440.0;
+/// Widths of the window between which the columns grow [points].
+const WINDOW_WIDTHS: (f32, f32) = (1280.0, 1920.0);
 /// Width of the plots from which the two under the stack stand side by side [points].
 const SIDE_BY_SIDE: f32 = 480.0;
 /// Height from which the map of the nine conditions has a place of its own [points].
@@ -32,23 +34,32 @@ pub(super) fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         .resizable(false)
         .frame(frame(palette.bar).inner_margin(Margin::symmetric(14, 0)))
         .show(ui, |ui| bar::bar_ui(ui, desk));
-    if desk.session.stale() || desk.view.message.is_some() {
+    if desk.session.stale() || desk.view.banner().is_some() {
         Panel::top("notices").resizable(false).frame(frame(palette.field)).show(ui, |ui| bar::notices_ui(ui, desk));
     }
+    let (left_width, right_width) = column_widths(ui.available_width());
     let narrow = ui.available_width() < theme::LEFT_COLUMN + theme::RIGHT_COLUMN + LEAST_MIDDLE;
     let both = desk.view.stage_column && desk.view.readout_column;
     desk.view.one_column = narrow && both;
     let column = frame(palette.panel).inner_margin(Margin { left: 14, right: 8, top: 10, bottom: 8 });
     let (one, readouts_first) = (desk.view.one_column, desk.view.readouts_first);
     if desk.view.stage_column && (!one || !readouts_first) {
-        let panel = Panel::left("stage").exact_size(theme::LEFT_COLUMN).resizable(false).frame(column);
+        let panel = Panel::left("stage").exact_size(left_width).resizable(false).frame(column);
         panel.show(ui, |ui| left_ui(ui, desk));
     }
     if desk.view.readout_column && (!one || readouts_first) {
-        let panel = Panel::right("readouts").exact_size(theme::RIGHT_COLUMN).resizable(false).frame(column);
+        let panel = Panel::right("readouts").exact_size(right_width).resizable(false).frame(column);
         panel.show(ui, |ui| right_ui(ui, desk));
     }
     CentralPanel::default().frame(frame(palette.canvas)).show(ui, |ui| middle_ui(ui, desk));
+}
+
+/// Widths of both columns: they grow with a window that is wider than usual, up to where their words have room [points].
+fn column_widths(window: f32) -> (f32, f32) {
+    let (usual, wide) = WINDOW_WIDTHS;
+    let share = ((window - usual) / (wide - usual)).clamp(0.0, 1.0);
+    let grown = |least: f32, most: f32| (least + share * (most - least)).round();
+    (grown(theme::LEFT_COLUMN, theme::WIDE_LEFT_COLUMN), grown(theme::RIGHT_COLUMN, theme::WIDE_RIGHT_COLUMN))
 }
 
 /// Margin of what stands at the foot of a column.
@@ -124,7 +135,8 @@ fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let rows = if room.width() < SIDE_BY_SIDE { 2.0 } else { 1.0 };
     let lower = (room.height() * LOWER_SHARE).max(LEAST_LOWER) * rows;
     let upper = (room.height() - lower).max(LEAST_STACK);
-    if upper + lower <= room.height() + 0.5 {
+    desk.view.plots_scroll = upper + lower > room.height() + 0.5;
+    if !desk.view.plots_scroll {
         plots_ui(ui, room, upper, desk);
         return;
     }

@@ -10,6 +10,8 @@ use crate::quantity::{self, Unit};
 
 /// Height of a row [points].
 const ROW: f32 = 17.0;
+/// Room for the degrees at the right [points].
+const VALUE: f32 = 52.0;
 
 /// Draws the ledger at the headline crossover.
 pub(super) fn ledger_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
@@ -31,13 +33,20 @@ pub(super) fn ledger_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
     let room = ui.available_width();
     let left = ui.cursor().left();
-    let x = Axis::linear(least - 4.0, greatest + 4.0, left + room * 0.49, left + room - 58.0);
+    // The labels take what they need; the blocks keep a quarter of the width at least.
+    let widest = ledger.rows.iter().map(|row| label_width(ui, &row.label)).fold(0.0, f32::max);
+    let blocks = left + (widest + 8.0).clamp(room * 0.4, room * 0.75 - VALUE);
+    let x = Axis::linear(least - 4.0, greatest + 4.0, blocks, left + room - VALUE);
     let mut from = 0.0;
     for row in &ledger.rows {
         row_ui(ui, row, from, &x, desk);
         from += row.degrees;
     }
     sum_ui(ui, ledger.phase_margin_deg, &x, palette);
+}
+
+fn label_width(ui: &Ui, label: &str) -> f32 {
+    ui.painter().layout_no_wrap(label.to_owned(), theme::small(), Color32::PLACEHOLDER).size().x
 }
 
 fn colour(role: LedgerRole, palette: &Palette) -> Color32 {

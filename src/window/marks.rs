@@ -1,9 +1,10 @@
 //! What is marked on the stack: crossover and margins, landmarks of the plant, the crossover window, frequencies.
 
-use eframe::egui::{self, Align2, Painter, Rect, Sense, Shape, Stroke, Ui, pos2, vec2};
+use eframe::egui::{self, Align2, Painter, Rect, Role, Sense, Shape, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis::{DecadeLine, decade_lines};
 use super::bode::Stack;
+use super::labels::{self, Labels};
 use super::plot;
 use super::theme::{self, LineStyle, Palette};
 use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout};
@@ -16,26 +17,47 @@ pub(super) fn margins(painter: &Painter, stack: &Stack, analysis: &Analysis, det
     for crossover in &margins.crossovers {
         painter.circle_filled(stack.gain.at(crossover.frequency_hz, 0.0), 3.0, palette.loop_gain);
     }
-    for crossing in &margins.phase_crossovers {
-        let wanted = Some(crossing.gain_margin_db);
-        if wanted == margins.gain_margin_up_db() || wanted == margins.gain_margin_down_db() {
-            let colour = colour(analysis, "gain-margin", stable, palette);
-            gain_margin(painter, stack, crossing.frequency_hz, crossing.gain_margin_db, (colour, palette));
-        }
+    // All marks come before all numbers, so that no line strikes through a number.
+    let mut labels = Labels::default();
+    let wanted = [margins.gain_margin_up_db(), margins.gain_margin_down_db()];
+    let of_gain: Vec<_> = margins
+        .phase_crossovers
+        .iter()
+        .filter(|crossing| wanted.contains(&Some(crossing.gain_margin_db)) && stack.gain.x.holds(crossing.frequency_hz))
+        .map(|crossing| (crossing.frequency_hz, crossing.gain_margin_db))
+        .collect();
+    let colour_of_gain = colour(analysis, "gain-margin", stable, palette);
+    for (frequency_hz, margin_db) in &of_gain {
+        gain_margin(painter, stack, (*frequency_hz, *margin_db), colour_of_gain, &mut labels);
     }
-    let Some(headline) = margins.headline_crossover() else { return };
-    let frequency_hz = headline.frequency_hz;
-    if !stack.gain.x.holds(frequency_hz) {
-        return;
+    let headline = margins.headline_crossover().filter(|crossover| stack.gain.x.holds(crossover.frequency_hz));
+    if let Some(headline) = headline {
+        let colour_of_crossover = colour(analysis, "crossover", stable, palette);
+        crossover(painter, stack, headline.frequency_hz, (colour_of_crossover, palette), &mut labels);
+        let colour = colour(analysis, "phase-margin", stable, palette);
+        phase_margin(painter, stack, detail, (headline.frequency_hz, headline.phase_margin_deg), (colour, palette));
     }
-    let colour_of_crossover = colour(analysis, "crossover", stable, palette);
-    let x = stack.gain.x.at(frequency_hz);
-    painter.vline(x, stack.whole(), Stroke::new(1.2, colour_of_crossover));
-    painter.circle_filled(stack.gain.at(frequency_hz, 0.0), 4.0, colour_of_crossover);
+    for at in of_gain {
+        gain_margin_label(painter, stack, at, (colour_of_gain, palette), &mut labels);
+    }
+}
+
+/// The line at the crossover and its frequency.
+fn crossover(
+    painter: &Painter,
+    stack: &Stack,
+    frequency_hz: f64,
+    colours: (egui::Color32, &Palette),
+    labels: &mut Labels,
+) {
+    let (colour, palette) = colours;
+    let at = stack.gain.at(frequency_hz, 0.0);
+    painter.vline(at.x, stack.whole(), Stroke::new(1.2, colour));
+    painter.circle_filled(at, 4.0, colour);
+    labels.keep_off(at.x, stack.gain.rect.top(), stack.gain.rect.bottom());
     let text = quantity::print_digits(frequency_hz, Unit::Hertz, 3);
-    label(painter, stack.gain.rect, (x, stack.gain.y.at(0.0) - 11.0), &text, (colour_of_crossover, palette.canvas));
-    let colour = colour(analysis, "phase-margin", stable, palette);
-    phase_margin(painter, stack, detail, (frequency_hz, headline.phase_margin_deg), (colour, palette));
+    let places = labels::around(at, true);
+    labels.write(painter, stack.gain.rect, &places, &text, (colour, palette.canvas));
 }
 
 /// Green for a margin that is there, amber for one that misses what is asked, weak for those of an unstable loop.
@@ -72,35 +94,35 @@ fn phase_margin(painter: &Painter, stack: &Stack, detail: &Detail, at: (f64, f64
     let painter = painter.with_clip_rect(stack.phase.rect);
     painter.line_segment([from, to], Stroke::new(3.5, colour));
     let text = quantity::print_digits(margin_deg, Unit::Degree, 3);
-    let middle = from.y.midpoint(to.y).clamp(stack.phase.rect.top() + 9.0, stack.phase.rect.bottom() - 9.0);
-    label(&painter, stack.phase.rect, (from.x, middle), &text, (colour, palette.canvas));
+    let middle = from.y.midpoint(to.y).clamp(stack.phase.rect.top() + 11.0, stack.phase.rect.bottom() - 11.0);
+    let places = labels::beside(from.x, &[middle]);
+    Labels::default().write(&painter, stack.phase.rect, &places, &text, (colour, palette.canvas));
 }
 
-fn gain_margin(
+/// The bar between 0 dB and the gain at a phase crossover.
+fn gain_margin(painter: &Painter, stack: &Stack, at: (f64, f64), colour: egui::Color32, labels: &mut Labels) {
+    let (frequency_hz, margin_db) = at;
+    let (from, to) = (stack.gain.at(frequency_hz, 0.0), stack.gain.at(frequency_hz, -margin_db));
+    painter.with_clip_rect(stack.gain.rect).line_segment([from, to], Stroke::new(3.5, colour));
+    labels.keep_off(from.x, from.y, to.y);
+}
+
+/// The number of a gain margin: beyond the end of its bar at 0 dB, else beside the bar.
+fn gain_margin_label(
     painter: &Painter,
     stack: &Stack,
-    frequency_hz: f64,
-    margin_db: f64,
+    at: (f64, f64),
     colours: (egui::Color32, &Palette),
+    labels: &mut Labels,
 ) {
     let (colour, palette) = colours;
-    if !stack.gain.x.holds(frequency_hz) {
-        return;
-    }
+    let (frequency_hz, margin_db) = at;
     let (from, to) = (stack.gain.at(frequency_hz, 0.0), stack.gain.at(frequency_hz, -margin_db));
-    let painter = painter.with_clip_rect(stack.gain.rect);
-    painter.line_segment([from, to], Stroke::new(3.5, colour));
+    let mut places = labels::around(from, margin_db > 0.0);
+    let end = to.y.clamp(stack.gain.rect.top() + 11.0, stack.gain.rect.bottom() - 11.0);
+    places.extend(labels::beside(from.x, &[from.y.midpoint(end), end]));
     let text = quantity::print_digits(margin_db, Unit::Decibel, 3);
-    let side = if margin_db > 0.0 { -11.0 } else { 11.0 };
-    label(&painter, stack.gain.rect, (from.x, from.y + side), &text, (colour, palette.canvas));
-}
-
-/// A number beside a mark, kept within the plot.
-fn label(painter: &Painter, bounds: Rect, at: (f32, f32), text: &str, colours: (egui::Color32, egui::Color32)) {
-    let (colour, ground) = colours;
-    let left = at.0 > bounds.right() - 80.0;
-    let (x, align) = if left { (at.0 - 9.0, Align2::RIGHT_CENTER) } else { (at.0 + 9.0, Align2::LEFT_CENTER) };
-    plot::tag(painter, pos2(x, at.1), align, text, theme::strong(12.5), (colour, ground.gamma_multiply(0.82)));
+    labels.write(painter, stack.gain.rect, &places, &text, (colour, palette.canvas));
 }
 
 /// Draws landmarks across the stack, and under it their names, the frequencies and the crossover window.
@@ -166,7 +188,9 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
     if !window.empty.is_empty() {
         let text = format!("crossover window {}", window.empty);
         let painter = ui.painter().with_clip_rect(stack.foot);
-        painter.text(pos2(plot.left(), y), Align2::LEFT_CENTER, text, theme::small(), palette.amber);
+        let at = pos2(plot.left(), y);
+        let rect = painter.text(at, Align2::LEFT_CENTER, &text, theme::small(), palette.amber);
+        explained_ui(ui, rect, &text);
         return;
     }
     let edge = |at: Option<f64>, otherwise: f32| {
@@ -188,31 +212,25 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
         format!("{}: {cause}", quantity::print_digits(edge.frequency_hz, Unit::Hertz, 2))
     };
     let mut help = vec!["Crossover window: the crossover frequencies this stage allows.".to_owned()];
-    let ground = palette.canvas;
-    if let Some(edge) = &window.lower {
-        plot::tag(
-            &painter,
-            pos2(left - 6.0, y),
-            Align2::RIGHT_CENTER,
-            &name(edge),
-            theme::small(),
-            (palette.weak, ground),
-        );
-        help.push(format!("least {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
+    let mut whole = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));
+    let sides = [
+        (&window.lower, "least", pos2(left - 6.0, y), Align2::RIGHT_CENTER),
+        (&window.upper, "greatest", pos2(right + 6.0, y), Align2::LEFT_CENTER),
+    ];
+    for (edge, word, at, align) in sides {
+        let Some(edge) = edge else { continue };
+        let colours = (palette.weak, palette.canvas);
+        whole = whole.union(plot::tag(&painter, at, align, &name(edge), theme::small(), colours));
+        help.push(format!("{word} {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
     }
-    if let Some(edge) = &window.upper {
-        plot::tag(
-            &painter,
-            pos2(right + 6.0, y),
-            Align2::LEFT_CENTER,
-            &name(edge),
-            theme::small(),
-            (palette.weak, ground),
-        );
-        help.push(format!("greatest {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
-    }
-    let bar = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));
-    let _ = ui.interact(bar, ui.scope_id().with("crossover window"), Sense::hover()).on_hover_text(help.join("\n"));
+    explained_ui(ui, whole, &help.join("\n"));
+}
+
+/// Gives the crossover window its words, for the pointer and for screen readers.
+fn explained_ui(ui: &Ui, rect: Rect, help: &str) {
+    let response = ui.interact(rect, ui.scope_id().with("crossover window"), Sense::hover());
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, help));
+    let _ = response.on_hover_text(help);
 }
 
 /// A dotted vertical tick, used for marks of time as well.

@@ -22,6 +22,7 @@ mod findings;
 mod form;
 mod history;
 mod icon;
+mod labels;
 mod lanes;
 mod layout;
 mod ledger;

@@ -85,7 +85,9 @@ impl App {
             Command::SaveAndGoOn => self.save_and_go_on(ctx),
             _ => {
                 self.after_saving = None;
-                self.view.dialog = None;
+                if matches!(self.view.dialog.take(), Some(Dialog::Open { .. } | Dialog::SaveAs { .. })) {
+                    self.view.forget_failure();
+                }
             }
         }
     }
@@ -126,6 +128,7 @@ impl App {
 
     fn start(&mut self, design: Design, path: Option<PathBuf>) {
         self.session = Session::new(design, path);
+        self.view.forget_failure();
         self.view.dialog = None;
         self.view.range_hz = None;
         self.view.field = None;
@@ -137,6 +140,7 @@ impl App {
             Some(path) => path.display().to_string(),
             None => files::proposed_name(&self.session.design().title),
         };
+        self.view.forget_failure();
         self.view.dialog = Some(Dialog::SaveAs { path });
     }
 

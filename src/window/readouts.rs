@@ -14,14 +14,19 @@ use crate::quantity::{self, Unit};
 const TALL: f32 = 46.0;
 /// Height of a read-out in a line [points].
 const SHORT: f32 = 19.0;
+/// Where the shown values of the short rows end, as a share of the width.
+const SHOWN: f32 = 0.68;
 /// Read-outs that stand large even while nothing is asked of them.
 const LARGE: [&str; 4] = ["crossover", "phase-margin", "gain-margin", "modulus-margin"];
 
 /// Draws all read-outs.
 pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(analysis) = desk.session.analysis() else { return };
-    let (large, small): (Vec<_>, Vec<_>) =
-        analysis.readouts.iter().partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty());
+    let (large, small): (Vec<_>, Vec<_>) = analysis
+        .readouts
+        .iter()
+        .filter(|readout| !beside_the_point(readout, analysis))
+        .partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty());
     for readout in large {
         large_ui(ui, readout, analysis, desk);
     }
@@ -31,6 +36,15 @@ pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     for readout in small {
         small_ui(ui, readout, analysis, desk);
     }
+}
+
+/// True for the ratio to a right-half-plane zero where no condition has such a zero and nothing is asked of it.
+fn beside_the_point(readout: &Readout, analysis: &Analysis) -> bool {
+    let conditions = analysis.conditions.iter().filter_map(|result| result.outcome.as_ref().ok());
+    readout.key == "right-half-plane-ratio"
+        && readout.requirements.is_empty()
+        && analysis.shown.as_ref().is_ok_and(|detail| detail.right_half_plane_zero_hz.is_none())
+        && conditions.into_iter().all(|summary| summary.right_half_plane_zero_hz.is_none())
 }
 
 /// What the two columns of the short rows are.
@@ -50,14 +64,21 @@ fn header_ui(ui: &mut Ui) {
 
 /// Right edge of the column of shown values in the short rows.
 fn shown_column(rect: Rect) -> f32 {
-    rect.left() + rect.width() * 0.68
+    rect.left() + rect.width() * SHOWN
 }
 
-fn value_text(readout: &Readout) -> String {
+fn value_text(readout: &Readout, analysis: &Analysis) -> String {
     match readout.value {
         Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        None if no_step(readout, analysis) => "no step".to_owned(),
         None => readout.absent.to_owned(),
     }
+}
+
+/// True for the figures of a load step of 0 A: then a stable loop has no response to it, at any condition.
+fn no_step(readout: &Readout, analysis: &Analysis) -> bool {
+    matches!(readout.key, "load-step-deviation" | "settling")
+        && analysis.shown.as_ref().is_ok_and(|detail| detail.loop_gain.stable() && detail.steps.load.is_none())
 }
 
 /// Angles and decibels to a tenth: more is noise to whoever decides.
@@ -70,7 +91,7 @@ fn trimmed(value: f64, unit: Unit) -> f64 {
 
 /// Worst value over the nine conditions, or the word for why there is none.
 fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
-    let worst = readout.worst.as_ref()?;
+    let worst = readout.worst.as_ref().filter(|_| !no_step(readout, analysis))?;
     Some(match worst.value {
         Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
         None => match analysis.conditions.get(worst.index).map(|result| &result.outcome) {
@@ -105,7 +126,7 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), height), Sense::click());
     let painter = ui.painter();
     painter.text(rect.left_top() + vec2(0.0, 1.0), Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
-    let value = value_text(readout);
+    let value = value_text(readout, analysis);
     let at = rect.left_top() + vec2(0.0, 13.0);
     painter.text(at, Align2::LEFT_TOP, &value, theme::figure(), ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
@@ -173,13 +194,17 @@ fn bar(painter: &Painter, rect: Rect, verdict: &RequirementVerdict, palette: &Pa
 
 fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk<'_>) {
     let palette = palette(ui);
-    let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), SHORT), Sense::click());
+    let value = value_text(readout, analysis);
+    let width = ui.available_width();
+    let value_galley = ui.painter().layout_no_wrap(value.clone(), theme::body(), ink(readout, analysis, palette));
+    let room = (width * SHOWN - value_galley.size().x - 6.0).max(40.0);
+    let name = ui.painter().layout(readout.name.to_owned(), theme::small(), palette.weak, room);
+    let height = SHORT.max(name.size().y + 4.0);
+    let (rect, response) = ui.allocate_exact_size(vec2(width, height), Sense::click());
     let painter = ui.painter().with_clip_rect(rect);
-    let value = value_text(readout);
-    let end = pos2(shown_column(rect), rect.center().y);
-    let taken = painter.text(end, Align2::RIGHT_CENTER, &value, theme::body(), ink(readout, analysis, palette));
-    let before = painter.with_clip_rect(rect.with_max_x(taken.left() - 5.0));
-    before.text(rect.left_center(), Align2::LEFT_CENTER, readout.name, theme::small(), palette.weak);
+    let at = Align2::RIGHT_CENTER.anchor_size(pos2(shown_column(rect), rect.center().y), value_galley.size()).min;
+    painter.galley(at, value_galley, palette.ink);
+    painter.galley(pos2(rect.left(), rect.center().y - name.size().y / 2.0), name, palette.weak);
     if let Some(text) = worst_value(readout, analysis) {
         painter.text(rect.right_center(), Align2::RIGHT_CENTER, text, theme::small(), palette.weak);
     }

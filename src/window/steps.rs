@@ -27,6 +27,7 @@ pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let Some(step) = step else {
         let why = match detail {
             Some(detail) if !detail.loop_gain.stable() => "The closed loop is not stable: there is no step response.",
+            Some(_) if desk.view.event == Event::Load => "The load step is 0 A: there is no response.",
             _ => "No step response at this condition.",
         };
         empty(ui, frame, why, palette);

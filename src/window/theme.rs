@@ -157,6 +157,10 @@ impl LineStyle {
 pub(super) const LEFT_COLUMN: f32 = 264.0;
 /// Width of the column of read-outs [points].
 pub(super) const RIGHT_COLUMN: f32 = 296.0;
+/// Width of the column of the power stage in a wide window [points].
+pub(super) const WIDE_LEFT_COLUMN: f32 = 336.0;
+/// Width of the column of read-outs in a wide window [points].
+pub(super) const WIDE_RIGHT_COLUMN: f32 = 364.0;
 /// Height of the top bar [points].
 pub(super) const BAR_HEIGHT: f32 = 38.0;
 /// Room left of a plot for its labels [points].

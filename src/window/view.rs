@@ -107,6 +107,8 @@ pub(super) struct View {
     /// There is room for one column only, and which of the two it is.
     pub one_column: bool,
     pub readouts_first: bool,
+    /// The column of the plots is higher than the window and scrolls.
+    pub plots_scroll: bool,
     /// Height of all findings at the last frame [points].
     pub findings_height: f32,
     /// Frequencies shown [Hz]; the whole range when absent.
@@ -156,6 +158,7 @@ impl Default for View {
             readout_column: true,
             one_column: false,
             readouts_first: true,
+            plots_scroll: false,
             findings_height: 100.0,
             range_hz: None,
             plot_width: 640.0,
@@ -186,6 +189,17 @@ impl View {
             Curve::Compensator => self.compensator,
             Curve::Loop => self.loop_gain,
         }
+    }
+
+    /// What the line under the bar says. A failure that an open dialog tells is not told twice.
+    pub(super) fn banner(&self) -> Option<&Message> {
+        let in_dialog = matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. }));
+        self.message.as_ref().filter(|message| !(message.failed && in_dialog))
+    }
+
+    /// Drops what was said about a try that failed and is over.
+    pub(super) fn forget_failure(&mut self) {
+        self.message = self.message.take().filter(|message| !message.failed);
     }
 
     /// Shows a curve, or hides it.
