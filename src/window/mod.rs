@@ -5,7 +5,7 @@
 //! the view, and send commands, which are carried out before the next frame. One command table feeds menus, shortcuts and the
 //! searchable list. Colours, distances and line styles stand in `theme.rs` alone.
 //!
-//! *The one frequency axis.* Gain, phase and lanes are painted from one [`axis`] value per frame, so a handle stands under its
+//! *The one frequency axis.* Gain, phase and lanes are painted from one `axis` value per frame, so a handle stands under its
 //! place in the curve by construction, at every size and scale.
 
 mod app;
