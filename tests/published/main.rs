@@ -7,9 +7,9 @@
 mod common;
 mod compensator;
 mod cross_checks;
-mod inductance;
 mod lossless;
 mod random;
 mod reference;
 mod registry;
+mod switched;
 mod textbook;
