@@ -8,7 +8,7 @@ loop's step responses carry the delay as a diagonal Pade form of order 3.  Frequ
 
 Second routes, asserted while running: compensator by node equations against its state equations; closed-loop frequency
 response of the assembled state space (python-control) against the algebra on transfer functions; step responses by
-eigenvectors against python-control's simulation; crossovers against python-control's where the loop has no delay.
+eigenvectors against python-control's simulation.
 """
 
 import json
@@ -224,7 +224,7 @@ class RampResponse:
 
 
 def check_with_control(loop, a, b, c, d, events):
-    """python-control as the second route: closed-loop responses, a simulation, and crossovers where there is no delay."""
+    """python-control as the second route: closed-loop responses and a simulation."""
     system = control.ss(a, b, c[None, :], d[None, :])
     fs = loop.design.stage.fs
     f = np.geomspace(fs / 1e5, fs / 20.0, 25)
