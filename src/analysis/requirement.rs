@@ -31,7 +31,7 @@ pub(super) fn take(asked: Asked, summary: &ConditionSummary) -> Taken {
     if summary.loop_gain.gain_at_half_switching_db >= 0.0
         && !matches!(asked, Asked::LoadStepDeviation | Asked::Settling)
     {
-        return Taken::Absent("the loop gain is still above 1 at half the switching frequency, where the model ends");
+        return Taken::Absent("the loop gain is above 1 at ½ fs");
     }
     let crossover = margins.headline_crossover();
     let none = Taken::Absent("the loop gain has no crossover");
@@ -50,7 +50,7 @@ pub(super) fn take(asked: Asked, summary: &ConditionSummary) -> Taken {
         }
         Asked::Settling => found(
             summary.load_step.and_then(|step| step.settling_s),
-            Taken::Absent("the output does not settle in the time looked at"),
+            Taken::Absent("it does not settle"),
         ),
     }
 }
@@ -61,7 +61,7 @@ pub(super) fn worst(asked: Asked, conditions: &[ConditionResult]) -> (Taken, usi
     for (index, condition) in conditions.iter().enumerate() {
         let taken = match &condition.outcome {
             Ok(summary) => take(asked, summary),
-            Err(_) => Taken::Absent("a condition has no operating point"),
+            Err(_) => Taken::Absent("a condition has no results"),
         };
         let worse = match (taken, worst.0) {
             (Taken::Absent(_) | Taken::Value(_), Taken::Absent(_)) | (Taken::Unbounded, _) => false,
@@ -109,12 +109,12 @@ pub(super) fn verdict(limit: &Limit, conditions: &[ConditionResult]) -> Requirem
         Scope::Worst => worst(limit.asked, conditions),
         Scope::Nominal => match conditions.get(NOMINAL).map(|c| &c.outcome) {
             Some(Ok(summary)) => (take(limit.asked, summary), NOMINAL),
-            _ => (Taken::Absent("the nominal condition has no operating point"), NOMINAL),
+            _ => (Taken::Absent("the nominal condition has no results"), NOMINAL),
         },
     };
     let (met, reason) = match taken {
         Taken::Value(value) => (limit.met_by(Some(value)), ""),
-        Taken::Unbounded => (limit.is_least(), "nothing bounds it below half the switching frequency"),
+        Taken::Unbounded => (limit.is_least(), "none below ½ fs"),
         Taken::Absent(why) => (false, why),
     };
     RequirementVerdict {

@@ -171,6 +171,7 @@ fn verdict_text(verdict: &RequirementVerdict) -> String {
     };
     let limit = quantity::print_digits(verdict.limit, verdict.unit, 3);
     match verdict.value {
+        None if verdict.met => format!("{way} {limit}: met"),
         None => format!("{way} {limit}: {}", verdict.reason),
         Some(value) => {
             let apart = quantity::print_digits(trimmed((value - verdict.limit).abs(), verdict.unit), verdict.unit, 2);
