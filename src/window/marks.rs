@@ -10,6 +10,9 @@ use super::theme::{self, LineStyle, Palette};
 use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout};
 use crate::quantity::{self, Unit};
 
+/// Length below which a bar has its number above or below it [points].
+const SHORT_BAR: f32 = 18.0;
+
 /// Draws crossover, phase margin and gain margin of the shown condition.
 pub(super) fn margins(painter: &Painter, stack: &Stack, analysis: &Analysis, detail: &Detail, palette: &Palette) {
     let margins = &detail.loop_gain.margins;
@@ -95,7 +98,9 @@ fn phase_margin(painter: &Painter, stack: &Stack, detail: &Detail, at: (f64, f64
     painter.line_segment([from, to], Stroke::new(3.5, colour));
     let text = quantity::print_digits(margin_deg, Unit::Degree, 3);
     let middle = from.y.midpoint(to.y).clamp(stack.phase.rect.top() + 11.0, stack.phase.rect.bottom() - 11.0);
-    let places = labels::beside(from.x, &[middle]);
+    // Beside a short bar the number would lie on the line the margin is measured from.
+    let short = (to.y - from.y).abs() < SHORT_BAR;
+    let places = if short { labels::around(pos2(from.x, middle), true) } else { labels::beside(from.x, &[middle]) };
     Labels::default().write(&painter, stack.phase.rect, &places, &text, (colour, palette.canvas));
 }
 
