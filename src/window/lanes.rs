@@ -27,7 +27,7 @@ const SNAP: f32 = 4.0;
 /// Greatest width of the lines that say what limits a lane [points].
 const REMARK_WIDTH: f32 = 400.0;
 /// Room between the names of lanes and the plot, in which a handle beyond the axis has its mark [points].
-const EDGE: f32 = 20.0;
+const EDGE: f32 = 22.0;
 
 /// Draws all lanes.
 pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {

@@ -10,6 +10,9 @@ use super::theme::{self, LineStyle, Palette};
 use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout};
 use crate::quantity::{self, Unit};
 
+/// Length below which a bar has its number above or below it [points].
+const SHORT_BAR: f32 = 18.0;
+
 /// Draws crossover, phase margin and gain margin of the shown condition.
 pub(super) fn margins(painter: &Painter, stack: &Stack, analysis: &Analysis, detail: &Detail, palette: &Palette) {
     let margins = &detail.loop_gain.margins;
@@ -95,7 +98,9 @@ fn phase_margin(painter: &Painter, stack: &Stack, detail: &Detail, at: (f64, f64
     painter.line_segment([from, to], Stroke::new(3.5, colour));
     let text = quantity::print_digits(margin_deg, Unit::Degree, 3);
     let middle = from.y.midpoint(to.y).clamp(stack.phase.rect.top() + 11.0, stack.phase.rect.bottom() - 11.0);
-    let places = labels::beside(from.x, &[middle]);
+    // Beside a short bar the number would lie on the line the margin is measured from.
+    let short = (to.y - from.y).abs() < SHORT_BAR;
+    let places = if short { labels::around(pos2(from.x, middle), true) } else { labels::beside(from.x, &[middle]) };
     Labels::default().write(&painter, stack.phase.rect, &places, &text, (colour, palette.canvas));
 }
 
@@ -207,20 +212,24 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
         2.5,
         palette.good.gamma_multiply(0.55),
     );
-    let name = |edge: &crate::analysis::WindowEdge| {
+    // Cause and frequency where both fit beside the bar, else the frequency alone.
+    let name = |edge: &crate::analysis::WindowEdge, room: f32| {
         let cause = edge.cause.split(" at ").next().unwrap_or_default();
-        format!("{}: {cause}", quantity::print_digits(edge.frequency_hz, Unit::Hertz, 2))
+        let frequency = quantity::print_digits(edge.frequency_hz, Unit::Hertz, 2);
+        let text = format!("{frequency}: {cause}");
+        let width = painter.layout_no_wrap(text.clone(), theme::small(), palette.weak).size().x;
+        if width + 8.0 < room { text } else { frequency }
     };
     let mut help = vec!["Crossover window: the crossover frequencies this stage allows.".to_owned()];
     let mut whole = Rect::from_x_y_ranges(left..=right, (y - 7.0)..=(y + 7.0));
     let sides = [
-        (&window.lower, "least", pos2(left - 6.0, y), Align2::RIGHT_CENTER),
-        (&window.upper, "greatest", pos2(right + 6.0, y), Align2::LEFT_CENTER),
+        (&window.lower, "least", pos2(left - 6.0, y), (Align2::RIGHT_CENTER, left - 6.0 - stack.foot.left())),
+        (&window.upper, "greatest", pos2(right + 6.0, y), (Align2::LEFT_CENTER, stack.foot.right() - right - 6.0)),
     ];
-    for (edge, word, at, align) in sides {
+    for (edge, word, at, (align, room)) in sides {
         let Some(edge) = edge else { continue };
         let colours = (palette.weak, palette.canvas);
-        whole = whole.union(plot::tag(&painter, at, align, &name(edge), theme::small(), colours));
+        whole = whole.union(plot::tag(&painter, at, align, &name(edge, room), theme::small(), colours));
         help.push(format!("{word} {}: {}", quantity::print(edge.frequency_hz, Unit::Hertz), edge.cause));
     }
     explained_ui(ui, whole, &help.join("\n"));

@@ -125,15 +125,21 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     let height = if verdict.is_some() { TALL } else { TALL - 8.0 };
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), height), Sense::click());
     let painter = ui.painter();
-    painter.text(rect.left_top() + vec2(0.0, 1.0), Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
+    let at = rect.left_top() + vec2(0.0, 1.0);
+    let name = painter.text(at, Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
     let value = value_text(readout, analysis);
     let at = rect.left_top() + vec2(0.0, 13.0);
     painter.text(at, Align2::LEFT_TOP, &value, theme::figure(), ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
-        let at = rect.right_top() + vec2(0.0, 1.0);
-        painter.text(at, Align2::RIGHT_TOP, format!("worst {worst}"), theme::small(), colour);
+        // A long name leaves no room for the word, but the place at the right says it in every row.
+        let layout = |text: String| painter.layout_no_wrap(text, theme::small(), colour);
+        let mut galley = layout(format!("worst {worst}"));
+        if name.right() + 6.0 > rect.right() - galley.size().x {
+            galley = layout(worst);
+        }
+        painter.galley(pos2(rect.right() - galley.size().x, rect.top() + 1.0), galley, colour);
     }
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
