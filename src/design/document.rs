@@ -113,6 +113,19 @@ pub(super) fn unknown_option(choice: &Choice, key: &str) -> Finding {
     Finding::problem(choice.path, format!("{}: “{}” is not an option.", choice.name, short(key))).with_hint(hint)
 }
 
+/// A text as it may go to a terminal: characters that would steer the terminal or turn the direction of writing are replaced
+/// by U+FFFD, a tab by a space; line ends stay.
+pub fn printable(text: &str) -> String {
+    let safe = |c: char| match c {
+        '\n' => c,
+        '\t' => ' ',
+        '\u{2028}'..='\u{202E}' | '\u{2066}'..='\u{2069}' => char::REPLACEMENT_CHARACTER,
+        _ if c.is_control() => char::REPLACEMENT_CHARACTER,
+        _ => c,
+    };
+    text.chars().map(safe).collect()
+}
+
 /// The start of a text, for a message.
 pub(super) fn short(text: &str) -> String {
     const SHOWN: usize = 60;

@@ -14,7 +14,7 @@ pub mod sample;
 mod table;
 
 pub use check::CheckedDesign;
-pub use document::Design;
+pub use document::{Design, printable};
 pub use events::{Event, Events};
 pub use requirements::{Asked, Limit, Requirements, Scope};
 pub use table::{all_choices, all_entries, choice, entry, nearest_path};

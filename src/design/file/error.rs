@@ -1,6 +1,8 @@
 //! Why a design file could not be read or saved: file, place, reason and hint.
 
+use crate::design::document::printable;
 use crate::finding::Finding;
+use std::fmt::Write as _;
 use std::io;
 use std::path::{Path, PathBuf};
 
@@ -22,6 +24,8 @@ pub enum FileErrorKind {
     NotAllowed,
     /// The path names a folder.
     Folder,
+    /// The path names a pipe, a device or the like.
+    NotAFile,
     /// Reading failed part of the way.
     Unreadable {
         /// What the system says.
@@ -36,6 +40,11 @@ pub enum FileErrorKind {
     /// The bytes are not UTF-8 text.
     NotText {
         /// Line of the first such byte, from 1.
+        line: usize,
+    },
+    /// The bytes hold a NUL, which no text holds.
+    NulByte {
+        /// Line of the first one, from 1.
         line: usize,
     },
     /// The text is not a design in RON.
@@ -65,6 +74,11 @@ pub enum FileErrorKind {
     NotSaved {
         /// What the system says.
         reason: String,
+    },
+    /// The folder to save in does not exist.
+    NoFolder {
+        /// The folder.
+        folder: PathBuf,
     },
     /// The design holds a path that is not in the table.
     UnknownPath {
@@ -101,32 +115,13 @@ impl FileErrorKind {
         }
     }
 
-    /// A failure of the RON reader, with a hint for the usual causes.
-    pub(super) fn syntax(error: &ron::error::SpannedError) -> Self {
-        use ron::Error;
-        let hint = match &error.code {
-            Error::Eof | Error::ExpectedStringEnd => "the file ends too early; it may have been cut off",
-            Error::ExpectedString => "numbers are written as text with their unit, such as \"10 µH\"",
-            Error::ExceededRecursionLimit => "a design file is never nested this deeply",
-            Error::NoSuchStructField { .. } => "the field may be misspelt or come from a later release",
-            Error::MissingStructField { .. } => "every design file has format, title, choices and values",
-            Error::Message(_) => "see the message",
-            _ => "a design file is RON text: ( format: 1, title: \"…\", choices: {…}, values: {…} )",
-        };
-        FileErrorKind::Syntax {
-            line: error.span.start.line,
-            column: error.span.start.col,
-            reason: format!("{}.", error.code),
-            hint: hint.into(),
-        }
-    }
-
     /// What is wrong, as a sentence.
     pub fn reason(&self) -> String {
         match self {
             FileErrorKind::Missing => "There is no such file.".into(),
             FileErrorKind::NotAllowed => "The file may not be read.".into(),
             FileErrorKind::Folder => "This is a folder, not a design file.".into(),
+            FileErrorKind::NotAFile => "This is a pipe or a device, not a design file.".into(),
             FileErrorKind::Unreadable { reason } => format!("The file cannot be read: {reason}."),
             FileErrorKind::TooLarge => {
                 format!("The file is larger than {} MB, which no design file is.", super::read::LARGEST_FILE >> 20)
@@ -134,6 +129,7 @@ impl FileErrorKind {
             FileErrorKind::Empty => "The file is empty.".into(),
             FileErrorKind::Utf16 => "The file is UTF-16 text.".into(),
             FileErrorKind::NotText { .. } => "The file is not UTF-8 text.".into(),
+            FileErrorKind::NulByte { .. } => "The file holds a NUL byte, which text never does.".into(),
             FileErrorKind::Syntax { reason, .. } => reason.clone(),
             FileErrorKind::Newer { format } => {
                 format!("The file has format {format}; this release reads formats up to {}.", super::read::FORMAT)
@@ -144,6 +140,7 @@ impl FileErrorKind {
                 all => format!("{} entries cannot be read.", all.len()),
             },
             FileErrorKind::NotSaved { reason } => format!("The file could not be saved: {reason}."),
+            FileErrorKind::NoFolder { folder } => format!("The folder {} does not exist.", folder.display()),
             FileErrorKind::UnknownPath { entry } => format!("The design holds “{entry}”, which is not in the table."),
         }
     }
@@ -154,9 +151,10 @@ impl FileErrorKind {
             FileErrorKind::Missing => "check the name and the folder",
             FileErrorKind::NotAllowed => "check the permissions of the file and its folder",
             FileErrorKind::Folder => "name a file in it",
+            FileErrorKind::NotAFile => "put the design into a file and name that",
             FileErrorKind::Unreadable { .. } => "check that the disk or share is still there",
             FileErrorKind::TooLarge | FileErrorKind::Empty => "check that this is the right file",
-            FileErrorKind::Utf16 | FileErrorKind::NotText { .. } => {
+            FileErrorKind::Utf16 | FileErrorKind::NotText { .. } | FileErrorKind::NulByte { .. } => {
                 "save it as UTF-8 text, or check that this is the right file"
             }
             FileErrorKind::Syntax { hint, .. } => hint,
@@ -167,8 +165,9 @@ impl FileErrorKind {
                 _ => "see each of them",
             },
             FileErrorKind::NotSaved { .. } => {
-                "the old file is untouched; check that the folder can be written and has room"
+                "nothing on disk was changed; check that the folder can be written and has room"
             }
+            FileErrorKind::NoFolder { .. } => "create it, or choose another folder",
             FileErrorKind::UnknownPath { .. } => "remove the entry",
         };
         hint.to_owned()
@@ -177,7 +176,9 @@ impl FileErrorKind {
     /// Line the failure stands in, from 1.
     pub fn line(&self) -> Option<usize> {
         match self {
-            FileErrorKind::NotText { line } | FileErrorKind::Syntax { line, .. } => Some(*line),
+            FileErrorKind::NotText { line } | FileErrorKind::NulByte { line } | FileErrorKind::Syntax { line, .. } => {
+                Some(*line)
+            }
             FileErrorKind::Entries(entries) => match entries.as_slice() {
                 [one] => one.line,
                 _ => None,
@@ -222,19 +223,17 @@ impl FileError {
 impl std::fmt::Display for FileError {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         let place = self.place();
-        if !place.is_empty() {
-            write!(f, "{place}: ")?;
-        }
-        write!(f, "{} ({})", self.kind.reason(), self.kind.hint())?;
+        let place = if place.is_empty() { place } else { format!("{place}: ") };
+        let mut text = format!("{place}{} ({})", self.kind.reason(), self.kind.hint());
         if let FileErrorKind::Entries(entries) = &self.kind
             && entries.len() > 1
         {
             for error in entries {
                 let line = error.line.map(|line| format!("line {line}, ")).unwrap_or_default();
-                write!(f, "\n  {line}{}: {} ({})", error.entry, error.reason, error.hint)?;
+                let _ = write!(text, "\n  {line}{}: {} ({})", error.entry, error.reason, error.hint);
             }
         }
-        Ok(())
+        f.write_str(&printable(&text))
     }
 }
 

@@ -8,6 +8,7 @@
 mod error;
 mod read;
 mod save;
+mod syntax;
 #[cfg(test)]
 mod tests;
 mod v1;

@@ -1,6 +1,7 @@
 //! Reading a design: size and encoding first, then the version, then the structure of that version.
 
 use super::error::{FileError, FileErrorKind};
+use super::syntax::syntax;
 use super::v1;
 use crate::design::Design;
 use serde::Deserialize;
@@ -32,7 +33,7 @@ pub fn read(reader: &mut impl Read) -> Result<Design, FileError> {
         return Err(FileErrorKind::TooLarge.into());
     }
     let text = decode(&bytes)?;
-    let head: Head = ron::from_str(text).map_err(|error| FileErrorKind::syntax(&error))?;
+    let head: Head = ron::from_str(text).map_err(|error| syntax(&error))?;
     match head.format {
         1 => v1::read(text),
         format if format > FORMAT => Err(FileErrorKind::Newer { format }.into()),
@@ -46,14 +47,18 @@ pub fn read(reader: &mut impl Read) -> Result<Design, FileError> {
 /// As [`read`], with the file's path.
 pub fn load(path: &Path) -> Result<Design, FileError> {
     let open = || {
-        let mut file = File::open(path).map_err(|error| FileErrorKind::opening(&error))?;
-        let about = file.metadata().map_err(|error| FileErrorKind::opening(&error))?;
+        // Looked at before it is opened: opening a pipe waits for someone to write to it.
+        let about = std::fs::metadata(path).map_err(|error| FileErrorKind::opening(&error))?;
         if about.is_dir() {
             return Err(FileErrorKind::Folder.into());
+        }
+        if !about.is_file() {
+            return Err(FileErrorKind::NotAFile.into());
         }
         if about.len() > LARGEST_FILE {
             return Err(FileErrorKind::TooLarge.into());
         }
+        let mut file = File::open(path).map_err(|error| FileErrorKind::opening(&error))?;
         read(&mut file)
     };
     open().map_err(|error: FileError| error.at(path))
@@ -67,7 +72,7 @@ fn decode(bytes: &[u8]) -> Result<&str, FileError> {
     let bytes = bytes.strip_prefix(&[0xEF, 0xBB, 0xBF]).unwrap_or(bytes);
     if bytes.contains(&0) {
         return Err(
-            FileErrorKind::NotText { line: line_at(bytes, bytes.iter().position(|b| *b == 0).unwrap_or(0)) }.into()
+            FileErrorKind::NulByte { line: line_at(bytes, bytes.iter().position(|b| *b == 0).unwrap_or(0)) }.into()
         );
     }
     if bytes.iter().all(u8::is_ascii_whitespace) {

@@ -23,17 +23,17 @@ pub(super) fn replace(path: &Path, bytes: &[u8]) -> io::Result<()> {
         Ok(about) if about.permissions().readonly() => {
             return Err(io::Error::new(io::ErrorKind::PermissionDenied, "the file is read-only"));
         }
+        Ok(about) if !about.is_file() => return Err(io::Error::other("it is a pipe or a device, not a file")),
         Ok(about) => Some(about.permissions()),
         Err(error) if error.kind() == io::ErrorKind::NotFound => None,
         Err(error) => return Err(error),
     };
-    let folder = match target.parent() {
-        Some(parent) if !parent.as_os_str().is_empty() => parent,
-        _ => Path::new("."),
-    };
-    let mut temporary = builder(old.is_none()).tempfile_in(folder)?;
-    temporary.write_all(bytes)?;
-    temporary.flush()?;
+    let folder = folder_of(&target);
+    // The reason alone: the name of the temporary file tells nobody anything.
+    let reason = |error: io::Error| io::Error::from(error.kind());
+    let mut temporary = builder(old.is_none()).tempfile_in(folder).map_err(reason)?;
+    temporary.write_all(bytes).map_err(reason)?;
+    temporary.flush().map_err(reason)?;
     if let Some(permissions) = old {
         temporary.as_file().set_permissions(permissions)?;
     }
@@ -41,6 +41,20 @@ pub(super) fn replace(path: &Path, bytes: &[u8]) -> io::Result<()> {
     temporary.persist(&target).map_err(|error| error.error)?;
     sync_folder(folder);
     Ok(())
+}
+
+/// The folder a file is to stand in, when that folder does not exist.
+pub(super) fn missing_folder(path: &Path) -> Option<PathBuf> {
+    let target = follow_links(path).ok()?;
+    let folder = folder_of(&target);
+    matches!(fs::metadata(folder), Err(error) if error.kind() == io::ErrorKind::NotFound).then(|| folder.to_owned())
+}
+
+fn folder_of(file: &Path) -> &Path {
+    match file.parent() {
+        Some(parent) if !parent.as_os_str().is_empty() => parent,
+        _ => Path::new("."),
+    }
 }
 
 /// A new file gets the permissions any program's new file gets; temporary files are private by default.

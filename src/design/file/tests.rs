@@ -67,7 +67,7 @@ fn wrong_files_say_what_is_wrong() {
     assert_eq!(refused(" \n\t\n"), FileErrorKind::Empty);
     assert_eq!(refused([0xFF, 0xFE, b'(', 0]), FileErrorKind::Utf16);
     assert_eq!(refused(b"(\nformat: 1,\ntitle: \"K\xf6nig\")"), FileErrorKind::NotText { line: 3 });
-    assert_eq!(refused(b"(\nformat\0"), FileErrorKind::NotText { line: 2 });
+    assert_eq!(refused(b"(\nformat\0"), FileErrorKind::NulByte { line: 2 });
     assert_eq!(refused(whole.replacen("format: 1", "format: 2", 1)), FileErrorKind::Newer { format: 2 });
     assert_eq!(refused("(format: 7, whatever: [1, 2], title: (3, \"x\"))"), FileErrorKind::Newer { format: 7 });
     assert_eq!(refused(whole.replacen("format: 1", "format: 0", 1)), FileErrorKind::NoSuchFormat { format: 0 });
@@ -86,9 +86,46 @@ fn wrong_files_say_what_is_wrong() {
     syntax("(\n    format: 1,\n    title: 5,\n    choices: {},\n    values: {},\n)", 3, "as text");
     syntax("(\nformat: 1,\ntitle: \"\",\nchoices: {},\nvalues: {\n\"stage.output.voltage\": 24.0})", 6, "\"10 µH\"");
     syntax("(format: 1, title: \"\")", 1, "every design file has");
-    syntax(&whole.replacen("    notes:", "    title: \"again\",\n    notes:", 1), 4, "");
+    syntax(&whole.replacen("    notes:", "    title: \"again\",\n    notes:", 1), 4, "one of the two");
     let twice = whole.replacen("    values: {\n", "    values: {\n        \"stage.load.least\": \"1 A\",\n", 1);
-    assert!(matches!(refused(twice), FileErrorKind::Syntax { reason, .. } if reason.contains("stands twice")));
+    assert!(matches!(refused(twice), FileErrorKind::Syntax { reason, hint, .. }
+        if reason.contains("stands twice") && hint == "keep one of the two"));
+}
+
+#[test]
+fn no_word_of_the_libraries_reaches_the_user() {
+    let deep = format!("(format: 1, title: {}", "[".repeat(1000));
+    let texts = [
+        &deep,
+        "(title: \"\")",
+        "hello",
+        "{}",
+        "[1, 2]",
+        "(1, 2)",
+        "Other(format: 1)",
+        "(format: -1)",
+        "(format: 1.5)",
+        "(format: \"1\")",
+        "(format: 1, titel: \"\")",
+        "(format: 1, title: \"\")",
+        "(format: 1, title: \"",
+        "(format: 1) /*",
+        "(format: 1, title: \"\", choices: [], values: {})",
+        "(format: 1, title: \"\", choices: {}, values: {}) more",
+        "(format: 1, title: \"\", title: \"\", choices: {}, values: {})",
+        "(format: 1, title: \"\\q\")",
+        "(format: 1, title: \"\", locks: \"x\")",
+        "#![enable(that)](format: 1)",
+    ];
+    for text in texts {
+        let error = FileError::from(refused(text));
+        let said = error.to_string();
+        assert!(error.kind.line().is_some(), "{said}");
+        for word in ["Head", "struct", "ron::", "serde", "Unexpected", "identifier", "DesignV1", "see the message", "`"]
+        {
+            assert!(!said.contains(word), "{text:.60}: {said}");
+        }
+    }
 }
 
 #[test]
@@ -214,7 +251,24 @@ fn saving_keeps_permissions_and_links_and_respects_read_only() {
 
     symlink("round.ron", folder.path().join("round.ron")).expect("link");
     assert!(save(&design, &folder.path().join("round.ron")).is_err());
-    assert!(save(&design, &folder.path().join("no-such-folder/design.ron")).is_err());
+}
+
+#[test]
+fn saving_into_a_missing_folder_names_the_folder() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let error = save(&Design::default(), &folder.path().join("no-such-folder/design.ron")).expect_err("no folder");
+    assert_eq!(error.kind, FileErrorKind::NoFolder { folder: folder.path().join("no-such-folder") });
+    let said = error.to_string();
+    assert!(said.contains("does not exist") && !said.contains(".polewright-") && !said.contains("old file"), "{said}");
+}
+
+#[cfg(unix)]
+#[test]
+fn a_device_is_neither_read_nor_replaced() {
+    let device = Path::new("/dev/null");
+    assert_eq!(load(device).expect_err("a device").kind, FileErrorKind::NotAFile);
+    let error = save(&Design::default(), device).expect_err("a device");
+    assert!(error.to_string().contains("device"), "{error}");
 }
 
 fn any_design() -> impl Strategy<Value = Design> {

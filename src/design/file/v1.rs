@@ -5,6 +5,7 @@
 //! check.
 
 use super::error::{EntryError, FileError, FileErrorKind};
+use super::syntax::syntax;
 use crate::design::document::{Design, short, unknown_option};
 use crate::design::table;
 use crate::quantity::{Choices, Values, exact};
@@ -73,7 +74,7 @@ impl<'de> Visitor<'de> for TextMapVisitor {
 
 /// Reads a text of format 1.
 pub(super) fn read(text: &str) -> Result<Design, FileError> {
-    let file: DesignV1 = ron::from_str(text).map_err(|error| FileErrorKind::syntax(&error))?;
+    let file: DesignV1 = ron::from_str(text).map_err(|error| syntax(&error))?;
     let mut errors = Vec::new();
     let mut design = Design {
         title: file.title,
