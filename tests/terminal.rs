@@ -156,7 +156,7 @@ fn conditions_and_entries_can_be_set() {
     assert!(ripple(&object) < 0.6 * ripple(&one), "{} {}", ripple(&object), ripple(&one));
     assert_eq!(fs::read(&path).expect("there"), before, "the file is not written");
 
-    let rows = json(&check(&[&path, "--json", "--at", "10k,100,1k"])).remove(0)["response"].take();
+    let rows = json(&check(&[&path, "--json", "--at", "100,1k,10k"])).remove(0)["response"].take();
     let frequencies: Vec<f64> = rows.as_array().expect("rows").iter().map(|row| number(&row["frequency_hz"])).collect();
     assert_eq!(frequencies, [100.0, 1000.0, 10_000.0]);
 }
@@ -237,7 +237,7 @@ fn wrong_files() -> Vec<(&'static str, Vec<u8>, &'static str)> {
             std::iter::once(0xFEFF).chain(whole.encode_utf16()).flat_map(u16::to_le_bytes).collect(),
             "UTF-16",
         ),
-        ("binary.ron", (0..=255).collect(), "UTF-8"),
+        ("binary.ron", (0..=255).collect(), "NUL"),
         ("unknown-field.ron", changed("    title:", "    colour: \"red\",\n    title:"), "colour"),
         ("unknown-entry.ron", changed("stage.inductor.inductance", "stage.inductor.inductence"), "did you mean"),
         ("wrong-type.ron", changed("title: \"Gimbal rail\"", "title: 5"), "as text"),
@@ -248,6 +248,89 @@ fn wrong_files() -> Vec<(&'static str, Vec<u8>, &'static str)> {
         ("nested.ron", format!("(format: 1, title: {}", "[".repeat(100_000)).into_bytes(), "nested"),
         ("json.ron", b"{\"format\": 1}".to_vec(), "RON"),
     ]
+}
+
+#[test]
+fn no_control_character_reaches_the_terminal() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let path = folder.path().join("steering.ron");
+    let design = Design { title: "Rail\u{1b}]0;owned\u{7}\0\u{9b}2J\nline".into(), ..sample::built_in() };
+    save(&design, &path).expect("saved");
+    let path = path.to_str().expect("UTF-8");
+    let controls = |told: &str| told.chars().any(|c| c.is_control() && c != '\n');
+    let usable = check(&[path]);
+    let unusable = check(&[path, "--set", "stage.topo\u{1b}[31mlogy=buck"]);
+    let missing = check(&["none\u{1b}[31m.ron"]);
+    for output in [&usable, &unusable, &missing] {
+        let told = format!("{}{}", text(&output.stdout), text(&output.stderr));
+        assert!(told.contains(char::REPLACEMENT_CHARACTER) && !controls(&told), "{told:?}");
+    }
+    // JSON escapes them and loses nothing.
+    let output = check(&[path, "--json"]);
+    assert!(!controls(text(&output.stdout)));
+    assert_eq!(json(&output)[0]["title"], design.title);
+}
+
+#[cfg(unix)]
+#[test]
+fn a_pipe_given_as_a_file_is_told_at_once() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let path = folder.path().join("pipe.ron");
+    let made = Command::new("mkfifo").arg(&path).status().expect("mkfifo is there");
+    assert!(made.success());
+    let output = check(&[path.to_str().expect("UTF-8")]);
+    assert_eq!(code(&output), 2);
+    let told = text(&output.stderr);
+    assert!(told.contains("pipe or a device") && told.contains("Hint: "), "{told}");
+}
+
+#[test]
+fn the_closing_sentence_counts_conditions() {
+    let closing = |arguments: &[&str]| {
+        let output = check(arguments);
+        let last = text(&output.stdout).trim_end().lines().last().map(str::to_owned);
+        (code(&output), last.expect("a last line"))
+    };
+    let (gimbal, bench) = (sample_path("gimbal-rail.ron"), sample_path("bench-exercise.ron"));
+    assert_eq!(closing(&[&gimbal]), (0, "Stable in all nine conditions; all requirements are met.".into()));
+    let (ended, said) = closing(&[&bench]);
+    let rows = json(&check(&[&bench, "--json"])).remove(0)["conditions"].take();
+    let unstable = rows.as_array().expect("nine").iter().filter(|row| row["stable"] == false).count();
+    assert_eq!(ended, 1);
+    assert_eq!(unstable, 9);
+    assert!(said.starts_with("Unstable in all nine conditions; "), "{said}");
+    // A load far above the design's makes the boost's right-half-plane zero fall to the crossover.
+    let (ended, said) = closing(&[&gimbal, "--input-voltage", "9", "--load-current", "8"]);
+    assert_eq!(ended, 1, "{said}");
+    assert_eq!(said, "Unstable at the condition asked for; stable in all nine conditions; all requirements are met.");
+}
+
+#[test]
+fn a_load_step_of_zero_is_no_step() {
+    let output = check(&[&sample_path("gimbal-rail.ron"), "--set", "event.load-step.change=0"]);
+    let report = text(&output.stdout);
+    for name in ["Load step ", "Settles in "] {
+        let line = report.lines().find(|line| line.trim_start().starts_with(name)).expect("a row");
+        assert!(line.ends_with("no step"), "{line}");
+    }
+    assert!(!report.contains("unstable") && !report.contains("does not settle"), "{report}");
+}
+
+#[test]
+fn a_condition_outside_the_range_is_noted_and_one_without_results_goes_to_the_error_output() {
+    let path = sample_path("gimbal-rail.ron");
+    let output = check(&[&path, "--input-voltage", "18"]);
+    assert!(text(&output.stdout).contains("outside the design's range of 9 V to 16 V"), "{}", text(&output.stdout));
+    let object = json(&check(&[&path, "--input-voltage", "18", "--load-current", "1", "--json"])).remove(0);
+    let of_range = |finding: &&Value| finding["where"].as_str().is_some_and(|place| place.starts_with("--"));
+    let found: Vec<&Value> = object["findings"].as_array().expect("findings").iter().filter(of_range).collect();
+    assert_eq!(found.len(), 1, "{found:?}");
+    assert_eq!((&found[0]["severity"], &found[0]["where"]), (&"note".into(), &"--input-voltage".into()));
+
+    let output = check(&[&path, "--input-voltage", "40"]);
+    assert_eq!(code(&output), 2);
+    assert_eq!(text(&output.stdout), "");
+    assert!(text(&output.stderr).contains("has no results"));
 }
 
 fn snapshot(folder: &Path) -> BTreeMap<PathBuf, u64> {

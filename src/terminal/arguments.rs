@@ -1,8 +1,9 @@
 //! The arguments of the command line, read into typed requests.
 
+use crate::design::printable;
 use crate::quantity::{Bounds, Unit};
 use clap::error::ErrorKind;
-use clap::{Args, Parser, Subcommand};
+use clap::{Args, CommandFactory, Parser, Subcommand};
 use std::ffi::OsString;
 use std::path::PathBuf;
 
@@ -68,7 +69,7 @@ struct CheckArguments {
     /// Report as JSON: an array with one object per file.
     #[arg(long)]
     json: bool,
-    /// Frequencies of the response, such as 100,1k,10k.
+    /// Frequencies of the response, rising, such as 100,1k,10k. A comma separates frequencies; a decimal point is written 1.5k.
     #[arg(long, value_name = "FREQUENCIES", value_delimiter = ',', value_parser = frequency, allow_hyphen_values = true)]
     at: Option<Vec<f64>>,
     /// Input voltage in place of the nominal one, such as 11.5.
@@ -87,25 +88,30 @@ struct CheckArguments {
 /// # Errors
 /// The text to print when help or version is asked for or the arguments are wrong.
 pub fn parse(arguments: impl IntoIterator<Item = OsString>) -> Result<Command, Usage> {
-    let arguments = Arguments::try_parse_from(arguments).map_err(|error| {
-        let asked = matches!(error.kind(), ErrorKind::DisplayHelp | ErrorKind::DisplayVersion);
-        Usage { text: error.render().to_string(), is_error: !asked }
-    })?;
-    Ok(match arguments.command {
-        None => Command::Open(arguments.file),
-        Some(Task::Check(check)) => Command::Check(check.into()),
-    })
+    let arguments = Arguments::try_parse_from(arguments).map_err(|error| usage(&error))?;
+    match arguments.command {
+        None => Ok(Command::Open(arguments.file)),
+        Some(Task::Check(check)) => {
+            // What does not rise was most likely a number with a decimal comma.
+            if check.at.as_ref().is_some_and(|at| !at.is_sorted_by(|before, after| before < after)) {
+                let message = "the frequencies of '--at' do not rise\n\n  \
+                               tip: a comma separates frequencies; a decimal point is written '1.5k'";
+                return Err(usage(&Arguments::command().error(ErrorKind::ValueValidation, message)));
+            }
+            Ok(Command::Check(check.into()))
+        }
+    }
+}
+
+fn usage(error: &clap::Error) -> Usage {
+    let asked = matches!(error.kind(), ErrorKind::DisplayHelp | ErrorKind::DisplayVersion);
+    Usage { text: printable(&error.render().to_string()), is_error: !asked }
 }
 
 impl From<CheckArguments> for CheckRequest {
     fn from(arguments: CheckArguments) -> Self {
-        let at_hz = arguments.at.map(|mut frequencies| {
-            frequencies.sort_by(f64::total_cmp);
-            frequencies.dedup();
-            frequencies
-        });
-        let CheckArguments { files, json, input_voltage, load_current, settings, .. } = arguments;
-        Self { files, json, at_hz, input_voltage, load_current, settings }
+        let CheckArguments { files, json, at, input_voltage, load_current, settings } = arguments;
+        Self { files, json, at_hz: at, input_voltage, load_current, settings }
     }
 }
 
@@ -149,7 +155,7 @@ mod tests {
 
     #[test]
     fn a_check_is_read_in_engineering_notation() {
-        let line = "polewright check a.ron b.ron --json --at 10k,100,1k --input-voltage 11.5V --load-current 800m \
+        let line = "polewright check a.ron b.ron --json --at 100,1k,10k --input-voltage 11.5V --load-current 800m \
                     --set stage.inductor.inductance=8.2u --set stage.topology=buck";
         let Ok(Command::Check(request)) = read(line) else { panic!("a check") };
         assert_eq!(request.files, [PathBuf::from("a.ron"), PathBuf::from("b.ron")]);
@@ -167,6 +173,9 @@ mod tests {
             ("polewright check a.ron --load-current 0", "above 0 A"),
             ("polewright check a.ron --at 1k,fast", "not a number"),
             ("polewright check a.ron --at 10V", "a voltage"),
+            ("polewright check a.ron --at 4,7k,5,2k", "'1.5k'"),
+            ("polewright check a.ron --at 1k,1k", "do not rise"),
+            ("polewright check a.ron --at \u{1b}[31m", "\u{FFFD}[31m"),
             ("polewright check a.ron --set stage.topology", "PATH=VALUE"),
             ("polewright check a.ron --jsno", "--json"),
         ] {

@@ -6,6 +6,7 @@ use crate::analysis::{Analysis, Level, Request, Shown, analyse};
 use crate::converter::Stage;
 use crate::design::{CheckedDesign, Design, file};
 use crate::finding::Finding;
+use crate::quantity::{Unit, print};
 use std::io::{self, Write};
 use std::path::Path;
 
@@ -60,7 +61,8 @@ pub(super) struct Report {
     pub(super) findings: Vec<Finding>,
 }
 
-/// Checks every file and reports to `out`; with text reports, unusable files are told on `err`.
+/// Checks every file and reports to `out`; with text reports, what cannot be used is told on `err`: files, and a condition asked
+/// for that has no results.
 ///
 /// # Errors
 /// When writing fails.
@@ -71,6 +73,9 @@ pub fn check(request: &CheckRequest, out: &mut impl Write, err: &mut impl Write)
     } else {
         for report in &reports {
             match &report.results {
+                Some(results) if report.outcome == Outcome::Unusable => {
+                    text::write(report, results, request.at_hz.is_some(), err)?;
+                }
                 Some(results) => text::write(report, results, request.at_hz.is_some(), out)?,
                 None => text::write_unusable(report, err)?,
             }
@@ -105,6 +110,7 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
     {
         findings.insert(0, finding.clone());
     }
+    findings.extend(outside(request, &checked.stage));
     let outcome = judge(&analysis);
     Report { file, title, outcome, results: Some((checked, analysis)), findings }
 }
@@ -124,6 +130,21 @@ fn asked(request: &CheckRequest, stage: &Stage) -> Request {
     };
     let frequencies_hz = request.at_hz.clone().unwrap_or_else(|| one_two_five(stage.switching_frequency / 2.0));
     Request { shown, frequencies_hz, band_frequencies_hz: Vec::new(), step_points: STEP_POINTS }
+}
+
+/// A note for each value asked for that lies outside what the design is entered for.
+fn outside(request: &CheckRequest, stage: &Stage) -> Vec<Finding> {
+    let asked = [
+        ("--input-voltage", "input voltage", request.input_voltage, stage.input_voltages, Unit::Volt),
+        ("--load-current", "load current", request.load_current, stage.load_currents, Unit::Ampere),
+    ];
+    let note = |(option, name, value, [least, _, greatest], unit): (&str, &str, Option<f64>, [f64; 3], Unit)| {
+        let value = value.filter(|value| !(least..=greatest).contains(value))?;
+        let (value, least, greatest) = (print(value, unit), print(least, unit), print(greatest, unit));
+        let message = format!("The {name} of {value} is outside the design's range of {least} to {greatest}.");
+        Some(Finding::note(option, message))
+    };
+    asked.into_iter().filter_map(note).collect()
 }
 
 /// 10, 20, 50, 100, … up to a limit [Hz].

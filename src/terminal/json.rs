@@ -6,6 +6,7 @@ use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{Margins, Verdict};
 use serde::Serialize;
+use std::fmt::Write as _;
 use std::io::{self, Write};
 
 #[derive(Serialize)]
@@ -154,8 +155,21 @@ struct FindingRow<'a> {
 pub(super) fn write(reports: &[Report], out: &mut impl Write) -> io::Result<()> {
     let files: Vec<Object<'_>> = reports.iter().map(object).collect();
     // serde_json writes numbers that are not finite as null.
-    serde_json::to_writer_pretty(&mut *out, &files)?;
-    writeln!(out)
+    let text = serde_json::to_string_pretty(&files)?;
+    writeln!(out, "{}", escaped(&text))
+}
+
+/// The control characters that JSON allows as they are, escaped as well: some terminals obey them. They can only stand in texts.
+fn escaped(json: &str) -> String {
+    let mut safe = String::with_capacity(json.len());
+    for c in json.chars() {
+        if ('\u{7F}'..='\u{9F}').contains(&c) {
+            let _ = write!(safe, "\\u{:04x}", u32::from(c));
+        } else {
+            safe.push(c);
+        }
+    }
+    safe
 }
 
 fn object(report: &Report) -> Object<'_> {

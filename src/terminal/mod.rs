@@ -27,7 +27,7 @@
 //! | `response` | at the frequencies of `--at`, else in 1-2-5 steps from 10 Hz to half the switching frequency: `[{frequency_hz, plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, output_impedance_ohm, output_impedance_deg, line_to_output_db, line_to_output_deg, open_loop_output_impedance_ohm, open_loop_line_to_output_db}]`; plant is control voltage to output voltage with the modulator, compensator is output voltage to control voltage with the inversion taken out |
 //! | `load_step` | `{step_a, deviation_v, settling_s}` |
 //! | `requirements` | `[{name, limit, value, met, condition, reason}]`, named by path |
-//! | `findings` | `[{severity, where, message, hint}]`; severity is `note`, `notice` or `problem`, `where` a path or a place in the file, empty for the whole design |
+//! | `findings` | `[{severity, where, message, hint}]`; severity is `note`, `notice` or `problem`, `where` a path, a place in the file or an option of the command line, empty for the whole design |
 
 mod arguments;
 mod check;

@@ -1,8 +1,8 @@
 //! The report as text for people: aligned columns, one section per subject, every number with its condition.
 
-use super::check::{Outcome, Report};
-use crate::analysis::{Analysis, Curves, Detail, LimitKind, Readout, RequirementVerdict};
-use crate::design::CheckedDesign;
+use super::check::Report;
+use crate::analysis::{Analysis, Curves, Detail, LimitKind, RequirementVerdict};
+use crate::design::{CheckedDesign, printable};
 use crate::finding::Finding;
 use crate::linear::Verdict;
 use crate::quantity::{Unit, print, print_digits};
@@ -29,7 +29,7 @@ pub(super) fn write(
         landmarks(&mut text, detail);
         stability(&mut text, detail);
     }
-    readouts(&mut text, &analysis.readouts);
+    readouts(&mut text, analysis, design);
     if let Ok(detail) = &analysis.shown {
         load_step_line(&mut text, design);
         if response {
@@ -38,8 +38,8 @@ pub(super) fn write(
     }
     requirements(&mut text, &analysis.requirements);
     findings(&mut text, &report.findings);
-    let _ = writeln!(text, "{}\n", verdict(report.outcome, analysis));
-    out.write_all(text.as_bytes())
+    let _ = writeln!(text, "{}\n", verdict(analysis));
+    out.write_all(printable(&text).as_bytes())
 }
 
 /// Writes why a file cannot be used.
@@ -47,13 +47,16 @@ pub(super) fn write_unusable(report: &Report, out: &mut impl Write) -> io::Resul
     let mut text = heading(report);
     findings(&mut text, &report.findings);
     let _ = writeln!(text, "Cannot be used.\n");
-    out.write_all(text.as_bytes())
+    out.write_all(printable(&text).as_bytes())
 }
 
+/// Title and file on one line, whatever line ends they hold.
 fn heading(report: &Report) -> String {
+    let one_line = |text: &str| text.replace(['\n', '\r'], " ");
+    let file = one_line(&report.file);
     match &report.title {
-        Some(title) => format!("{title} ({})\n", report.file),
-        None => format!("{}\n", report.file),
+        Some(title) => format!("{} ({file})\n", one_line(title)),
+        None => format!("{file}\n"),
     }
 }
 
@@ -136,8 +139,14 @@ fn stability(text: &mut String, detail: &Detail) {
     }
 }
 
-fn readouts(text: &mut String, readouts: &[Readout]) {
-    for readout in readouts {
+fn readouts(text: &mut String, analysis: &Analysis, design: &CheckedDesign) {
+    let stands_still = analysis.shown.is_ok() && design.events.load_step.change == 0.0;
+    for readout in &analysis.readouts {
+        let of_step = matches!(readout.key, "load-step-deviation" | "settling");
+        if of_step && stands_still {
+            row(text, readout.name, "no step");
+            continue;
+        }
         let here = readout.value.map_or(readout.absent.to_owned(), |value| print(value, readout.unit));
         let here = if readout.greyed { format!("({here})") } else { here };
         let worst = readout.worst.as_ref().map_or(String::new(), |worst| {
@@ -151,6 +160,10 @@ fn readouts(text: &mut String, readouts: &[Readout]) {
 
 fn load_step_line(text: &mut String, design: &CheckedDesign) {
     let step = &design.events.load_step;
+    if step.change == 0.0 {
+        text.push_str("No load step is entered: its change is zero.\n\n");
+        return;
+    }
     let _ = writeln!(
         text,
         "The load step is {} at {}; settled means within {} of the output.\n",
@@ -242,12 +255,43 @@ fn wrapped(text: &mut String, message: &str) {
     text.push('\n');
 }
 
-fn verdict(outcome: Outcome, analysis: &Analysis) -> &'static str {
-    match outcome {
-        Outcome::Met if analysis.requirements.is_empty() => "Stable in all nine conditions; nothing is required.",
-        Outcome::Met => "Stable in all nine conditions; all requirements are met.",
-        Outcome::NotMet if analysis.all_met() => "Not stable, or without results, in every one of the conditions.",
-        Outcome::NotMet => "Requirements are missed.",
-        Outcome::Unusable => "The condition asked for has no results.",
+/// The closing sentence: the shown condition first when it is none of the nine, then the nine, then the requirements.
+fn verdict(analysis: &Analysis) -> String {
+    let Ok(detail) = &analysis.shown else {
+        return "The condition asked for has no results.".into();
+    };
+    let loops = || analysis.conditions.iter().filter_map(|row| row.outcome.as_ref().ok()).map(|row| &row.loop_gain);
+    let all = analysis.conditions.len();
+    let mut parts = Vec::new();
+    if analysis.condition.levels.is_none() && !detail.loop_gain.stable() {
+        parts.push(format!("{} at the condition asked for", unsettled(&detail.loop_gain.verdict)));
+    }
+    let stable = loops().filter(|row| row.stable()).count();
+    let unstable = loops().filter(|row| matches!(row.verdict, Verdict::Unstable { .. })).count();
+    let undecided = loops().filter(|row| matches!(row.verdict, Verdict::Undecided { .. })).count();
+    let absent = all - loops().count();
+    if stable == all {
+        parts.push("stable in all nine conditions".into());
+    } else {
+        let counts = [(unstable, "unstable"), (undecided, "undecided"), (absent, "without results")];
+        let told = counts.iter().filter(|(count, _)| *count > 0);
+        parts.extend(told.map(|(count, word)| match *count {
+            count if count == all => format!("{word} in all nine conditions"),
+            count => format!("{word} in {count} of the nine conditions"),
+        }));
+    }
+    let missed = analysis.requirements.iter().filter(|requirement| !requirement.met).count();
+    parts.push(match (analysis.requirements.len(), missed) {
+        (0, _) => "nothing is required".into(),
+        (_, 0) => "all requirements are met".into(),
+        (asked, missed) => format!("{missed} of {asked} requirements missed"),
+    });
+    capitalised(&format!("{}.", parts.join("; ")))
+}
+
+fn unsettled(verdict: &Verdict) -> &'static str {
+    match verdict {
+        Verdict::Undecided { .. } => "undecided",
+        _ => "unstable",
     }
 }
