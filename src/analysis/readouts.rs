@@ -120,6 +120,7 @@ pub(super) fn readouts(
         let requirements: Vec<_> = verdicts.iter().filter(|v| v.readout == row.key).cloned().collect();
         let of_margins =
             matches!(row.key, "crossover" | "phase-margin" | "gain-margin" | "gain-reduction" | "modulus-margin");
+        let of_step = matches!(row.key, "load-step-deviation" | "settling");
         Readout {
             key: row.key,
             name: row.name,
@@ -128,6 +129,7 @@ pub(super) fn readouts(
             absent: match detail {
                 None => "not computed",
                 Some(_) if of_margins && !stable => "unstable",
+                Some(d) if of_step && stable && d.steps.load.is_none() => "no step",
                 Some(_) => row.absent,
             },
             greyed: !stable && of_margins,

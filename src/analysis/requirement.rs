@@ -48,10 +48,9 @@ pub(super) fn take(asked: Asked, summary: &ConditionSummary) -> Taken {
         Asked::LoadStepDeviation => {
             found(summary.load_step.map(|step| step.deviation_v.abs()), Taken::Absent("the load step was not computed"))
         }
-        Asked::Settling => found(
-            summary.load_step.and_then(|step| step.settling_s),
-            Taken::Absent("it does not settle"),
-        ),
+        Asked::Settling => {
+            found(summary.load_step.and_then(|step| step.settling_s), Taken::Absent("it does not settle"))
+        }
     }
 }
 
