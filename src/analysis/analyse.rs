@@ -95,6 +95,10 @@ struct Crew<'a> {
 }
 
 impl Crew<'_> {
+    fn outcome(&self, condition: &Condition) -> Result<ConditionSummary, Finding> {
+        work(self.design, self.shared, condition).map(|w| w.summary(self.band))
+    }
+
     fn work_off(
         &self,
         shown: &Condition,
@@ -110,14 +114,14 @@ impl Crew<'_> {
                 nine.get(k).map(|condition| (k, condition))
             } {
                 if Some(k) != place {
-                    let outcome = work(self.design, self.shared, condition).map(|w| w.summary(self.band));
-                    done.push((k, outcome));
+                    done.push((k, self.outcome(condition)));
                 }
             }
             done
         };
-        let (detail, mut done) = std::thread::scope(|scope| {
-            let helper = scope.spawn(take_rest);
+        let (detail, done) = std::thread::scope(|scope| {
+            // Where no thread is to be had, this one does all the work.
+            let helper = std::thread::Builder::new().spawn_scoped(scope, take_rest);
             let worked = work(self.design, self.shared, shown);
             let detail = worked
                 .as_ref()
@@ -125,18 +129,17 @@ impl Crew<'_> {
                 .and_then(|w| detailed(self.design, self.shared, shown, w, request).map(Box::new));
             let mut done = take_rest();
             done.extend(place.map(|k| (k, worked.map(|w| w.summary(self.band)))));
-            // A helper that panicked leaves its conditions out; they are worked off below.
-            done.extend(helper.join().unwrap_or_default());
+            done.extend(helper.ok().and_then(|helper| helper.join().ok()).unwrap_or_default());
             (detail, done)
         });
-        done.sort_by_key(|(k, _)| *k);
-        let mut done = done.into_iter().peekable();
-        let conditions = nine.iter().enumerate().map(|(k, condition)| {
-            let outcome = match done.next_if(|(at, _)| *at == k) {
-                Some((_, outcome)) => outcome,
-                None => work(self.design, self.shared, condition).map(|w| w.summary(self.band)),
-            };
-            ConditionResult { condition: condition.clone(), outcome }
+        let mut outcomes: Vec<Option<_>> = nine.iter().map(|_| None).collect();
+        for (k, outcome) in done {
+            outcomes[k] = Some(outcome);
+        }
+        // What a lost thread left undone is worked off here.
+        let conditions = nine.into_iter().zip(outcomes).map(|(condition, outcome)| ConditionResult {
+            outcome: outcome.unwrap_or_else(|| self.outcome(&condition)),
+            condition,
         });
         (detail, conditions.collect())
     }

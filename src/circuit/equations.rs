@@ -226,10 +226,6 @@ impl Compiled {
     fn probe(&self, probe: Probe, values: &[f64]) -> Combination {
         match probe {
             Probe::Voltage { plus, minus } => voltage(plus, minus),
-            Probe::PartVoltage { part } => {
-                let part = &self.netlist.parts[part.0];
-                voltage(part.from, part.to)
-            }
             Probe::Current { part } => match self.netlist.parts[part.0].kind {
                 Kind::ControlledCurrent { siemens, plus, minus } => {
                     voltage(plus, minus).into_iter().map(|(c, sign)| (c, sign * values[siemens.0])).collect()

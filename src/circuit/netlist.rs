@@ -79,7 +79,6 @@ pub(super) struct Part {
 pub(super) enum Probe {
     Voltage { plus: Node, minus: Node },
     Current { part: PartId },
-    PartVoltage { part: PartId },
 }
 
 /// A pair of inductors that share flux.
@@ -263,12 +262,6 @@ impl Netlist {
     /// Asks for the current through a part.
     pub fn current_output(&mut self, name: &str, part: PartId) -> OutputId {
         self.outputs.push((name.to_owned(), Probe::Current { part }));
-        OutputId(self.outputs.len() - 1)
-    }
-
-    /// Asks for the voltage across a part.
-    pub fn part_voltage_output(&mut self, name: &str, part: PartId) -> OutputId {
-        self.outputs.push((name.to_owned(), Probe::PartVoltage { part }));
         OutputId(self.outputs.len() - 1)
     }
 }

@@ -139,6 +139,31 @@ fn transformer_reflects_impedance() {
     close(&eq.d, &[3.0, -1.0]);
 }
 
+/// Coupled inductors in series act as L1 + L2 ± 2M, M = k·√(L1·L2) (any circuits text; memory); a coupling of one is refused.
+#[test]
+fn coupled_inductors_in_series_add_their_mutual_inductance() {
+    let series = |k: f64| {
+        let mut n = Netlist::new();
+        let (g, a, b, c) = (n.ground(), n.node("a"), n.node("b"), n.node("c"));
+        let u = n.input("v");
+        let s: Vec<Slot> = ["l1", "l2", "k", "r"].iter().map(|name| n.slot(name)).collect();
+        n.voltage_source("V", a, g, u);
+        let first = n.inductor("L1", a, b, s[0]);
+        let second = n.inductor("L2", b, c, s[1]);
+        n.couple(first, second, s[2]);
+        n.resistor("R", c, g, s[3]);
+        let values = [4e-6, 9e-6, k, 2.0];
+        Compiled::new(&n, |_| true, &values).and_then(|c| c.equations(&values)).map(|e| e.independent().0)
+    };
+    for k in [0.0, 0.5, -0.5] {
+        let inductance = 13e-6 + 2.0 * k * 6e-6;
+        let eq = series(k).unwrap();
+        close(&eq.a, &[-2.0 / inductance]);
+        close(&eq.b, &[1.0 / inductance]);
+    }
+    assert!(matches!(series(1.0), Err(CircuitError::Degenerate { .. })));
+}
+
 /// Replay at other values equals a fresh elimination there.
 #[test]
 fn replay_equals_fresh_elimination() {

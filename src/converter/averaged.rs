@@ -9,7 +9,7 @@ use super::bank::{BankInductance, bank_inductance};
 use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
 use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
-use super::stage::{LoadKind, OutOfReach, Stage, StageCondition, circuit_finding};
+use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding};
 use crate::finding::Finding;
 use crate::linear::{StateSpace, Zpk};
 use crate::quantity::{Unit, print};
@@ -102,11 +102,6 @@ impl Stage {
     /// The lowest right-half-plane zero of a derived plant [Hz].
     pub fn right_half_plane_zero_hz(&self, vout_from_duty: &Zpk) -> Option<f64> {
         right_half_plane_zero_hz(vout_from_duty)
-    }
-
-    /// Whether linear results take a constant-power load by its tangent.
-    pub fn load_is_tangent(&self) -> bool {
-        self.load == LoadKind::Power
     }
 }
 

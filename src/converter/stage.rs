@@ -182,14 +182,6 @@ impl Stage {
         self.bank.iter().map(|branch| branch.capacitance).sum()
     }
 
-    /// Equivalent series resistance of the whole bank well above its corner frequencies [Ω].
-    pub fn bank_esr(&self) -> f64 {
-        if self.bank.iter().any(|branch| branch.esr <= 0.0) {
-            return 0.0;
-        }
-        self.bank.iter().map(|branch| branch.esr.recip()).sum::<f64>().recip()
-    }
-
     /// Whether the bank's series inductance is an ordinary part of the averaged model.
     pub fn bank_inductance_averaged(&self) -> bool {
         self.with_inductance.is_some()

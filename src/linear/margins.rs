@@ -14,7 +14,7 @@ use std::f64::consts::{LN_10, PI, TAU};
 
 use wide::f64x4;
 
-use super::root::bracketed_root;
+use super::root::{bracketed_root, newton_root};
 use super::{Complex, FrequencyResponse, LogPoint};
 
 /// Grid points per decade: a real corner bends over a decade, and resonances bring their own points.
@@ -25,9 +25,6 @@ const LISTED_ABOVE: f64 = 100.0;
 
 /// Level crossings of the phase listed at most; only an absurd delay has more.
 const PHASE_CROSSINGS_AT_MOST: usize = 1000;
-
-/// Steps granted to a refinement. Newton needs three to six; pure bisection of a grid interval to the last bit 50.
-const REFINEMENTS_AT_MOST: usize = 120;
 
 /// A frequency where |T| = 1.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -251,31 +248,14 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
         at_high: f64,
         value: impl Fn(&LogPoint) -> (f64, f64),
     ) -> Option<(f64, LogPoint)> {
-        let (mut low, mut high) = (self.frequencies[i - 1].ln(), self.frequencies[i].ln());
-        let mut x = low + (high - low) * (at_low / (at_low - at_high)).clamp(0.0, 1.0);
-        let mut last_step = high - low;
-        for _ in 0..REFINEMENTS_AT_MOST {
-            let f_hz = x.exp();
-            let point = self.response.log_point(f_hz);
-            let (v, slope) = value(&point);
-            let resolution = 4.0 * f64::EPSILON * x.abs().max(1.0);
-            let newton = v / slope;
-            if v == 0.0 || newton.abs() <= resolution || high - low <= resolution {
-                // A jump leaves a large value at a bracket of no width.
-                return (v.abs() < 1e-3 || newton.abs() <= resolution).then_some((f_hz, point));
-            }
-            if (v > 0.0) == (at_low > 0.0) {
-                low = x;
-            } else {
-                high = x;
-            }
-            let next = x - newton;
-            let trusted = next > low && next < high && newton.abs() < 0.5 * last_step;
-            let next = if trusted { next } else { 0.5 * (low + high) };
-            last_step = (next - x).abs();
-            x = next;
-        }
-        None
+        let (low, high) = (self.frequencies[i - 1].ln(), self.frequencies[i].ln());
+        let resolution = 4.0 * f64::EPSILON * low.abs().max(high.abs()).max(1.0);
+        let at = |x: f64| value(&self.response.log_point(x.exp()));
+        let f_hz = newton_root(at, (low, at_low), (high, at_high), resolution).exp();
+        let point = self.response.log_point(f_hz);
+        let (v, slope) = value(&point);
+        // A jump leaves a large value at a bracket of no width.
+        (v.abs() < 1e-3 || (v / slope).abs() <= resolution).then_some((f_hz, point))
     }
 
     /// Least |1 + T| in the band, and where.
