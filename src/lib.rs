@@ -11,6 +11,8 @@
 //! * [`control`]: what joins stage and compensator: the modulator and its delay.
 //! * [`design`]: the document an engineer enters, its check and its file.
 //! * [`analysis`]: a checked design in, every result of its nine conditions out.
+//! * [`figure`]: schematics and plots as neutral strokes, labels and colour roles.
+//! * [`sheet`]: what leaves the program: pictures, tables, curves.
 //! * [`terminal`]: the command line: the same results as text and JSON.
 //! * `window`: the desktop window; shows an analysis, edits a design, computes no electronics.
 //!
@@ -22,9 +24,11 @@ pub mod compensator;
 pub mod control;
 pub mod converter;
 pub mod design;
+pub mod figure;
 pub mod finding;
 pub mod linear;
 pub mod quantity;
+pub mod sheet;
 pub mod terminal;
 #[cfg(feature = "window")]
 pub mod window;

@@ -9,7 +9,7 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 /// The rooms, lowest floor first, as in `DEVELOPERS.md`. A room uses those above it in this list, never those below.
-const ROOMS: [&str; 11] = [
+const ROOMS: [&str; 13] = [
     "quantity",
     "finding",
     "linear",
@@ -19,16 +19,19 @@ const ROOMS: [&str; 11] = [
     "control",
     "design",
     "analysis",
+    "figure",
+    "sheet",
     "terminal",
     "window",
 ];
 
 /// Pairs that the order would allow and the idea forbids: room, and the rooms it must not know.
-const STRANGERS: [(&str, &[&str]); 5] = [
+const STRANGERS: [(&str, &[&str]); 6] = [
     ("finding", &["quantity"]),
     ("linear", &["quantity", "finding"]),
     ("compensator", &["converter"]),
     ("analysis", &["design::file"]),
+    ("figure", &["design::file"]),
     ("window", &["terminal"]),
 ];
 
