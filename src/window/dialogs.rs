@@ -2,10 +2,10 @@
 
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
 
-use super::bar;
 use super::command::{COMMANDS, Command};
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
+use super::{bar, recents, recovery};
 
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
@@ -17,6 +17,8 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
+            Dialog::Overwrite { path } => recovery::overwrite_ui(ui, path, desk),
+            Dialog::Recovery { discarding } => recovery::recovery_ui(ui, discarding, desk),
             Dialog::Commands { search } => commands_ui(ui, search, desk),
         }
     });
@@ -33,7 +35,7 @@ fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
     }
 }
 
-fn title(ui: &mut Ui, text: &str) {
+pub(super) fn title(ui: &mut Ui, text: &str) {
     ui.label(RichText::new(text).font(theme::strong(16.0)));
     ui.add_space(6.0);
 }
@@ -49,10 +51,15 @@ fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
         if nothing_focused && !entered {
             response.request_focus();
         }
-        if ui.button("Browse…").on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
+        let browse = ui.add_enabled(!desk.view.browsing, Button::new("Browse…"));
+        if browse.on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
             desk.ask(Command::Browse);
         }
     });
+    if desk.view.browsing {
+        let text = "Waiting for the system's file dialog. If none appears, type the path here.";
+        ui.label(RichText::new(text).font(theme::small()).color(palette(ui).weak));
+    }
     entered
 }
 
@@ -70,9 +77,14 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
             desk.ask(Command::Dismiss);
         }
     });
+    if !desk.kept.recent.is_empty() {
+        ui.add_space(10.0);
+        ui.label(RichText::new("Recent files").font(theme::strong(13.5)));
+        ScrollArea::vertical().id_salt("recent").max_height(170.0).show(ui, |ui| recents::recents_ui(ui, desk));
+    }
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().max_height(300.0).show(ui, |ui| {
+    ScrollArea::vertical().id_salt("samples").max_height(260.0).show(ui, |ui| {
         bar::samples_ui(ui, desk);
     });
 }
@@ -159,15 +171,16 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
                 desk.ask(row.command.clone());
             }
         }
+        recents::commands_ui(ui, &wanted, desk);
     });
 }
 
-fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
+pub(super) fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
     ui.horizontal(content);
 }
 
 /// The button that is meant.
-fn primary(ui: &Ui, text: &str) -> Button<'static> {
+pub(super) fn primary(ui: &Ui, text: &str) -> Button<'static> {
     let palette = palette(ui);
     Button::new(RichText::new(text).color(palette.panel).strong()).fill(palette.accent)
 }

@@ -1,13 +1,18 @@
 //! What the window shows and how, apart from the work itself: none of it is saved with a design or undone.
 
+use std::path::PathBuf;
+
 use eframe::egui::{Rect, ThemePreference};
 
 use super::command::{Command, Curve};
 use super::history::Gesture;
+use super::safety::Kept;
 use super::session::Session;
+use serde::{Deserialize, Serialize};
 
 /// Event whose time response is shown.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
 pub(super) enum Event {
     /// Rise in load current.
     #[default]
@@ -19,7 +24,8 @@ pub(super) enum Event {
 }
 
 /// Closed-loop response shown over frequency.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
 pub(super) enum ClosedLoop {
     /// Output impedance.
     #[default]
@@ -45,6 +51,16 @@ pub(super) enum Dialog {
     },
     /// Unsaved changes stand before this.
     Unsaved(Box<Command>),
+    /// The file changed since it was read: whether to save over it.
+    Overwrite {
+        /// The file.
+        path: PathBuf,
+    },
+    /// Unsaved work that an earlier window left behind.
+    Recovery {
+        /// Journal whose removal was asked for and waits for a second word.
+        discarding: Option<PathBuf>,
+    },
     /// The searchable list of commands.
     Commands {
         /// What is searched for.
@@ -139,6 +155,8 @@ pub(super) struct View {
     pub seek: Option<String>,
     /// Question or list over the window.
     pub dialog: Option<Dialog>,
+    /// The system's file dialog was asked for and has not answered.
+    pub browsing: bool,
     /// What was last said.
     pub message: Option<Message>,
     /// Colours.
@@ -174,6 +192,7 @@ impl Default for View {
             title: None,
             seek: None,
             dialog: None,
+            browsing: false,
             message: None,
             theme: ThemePreference::System,
             gain_rect: Rect::NOTHING,
@@ -218,6 +237,8 @@ impl View {
 pub(super) struct Desk<'a> {
     /// The document and its results.
     pub session: &'a Session,
+    /// What outlives the window, and what is known about the file.
+    pub kept: &'a Kept,
     /// The view.
     pub view: &'a mut View,
     /// Requests for the next turn of `logic`.
