@@ -22,6 +22,17 @@ pub enum LoadKind {
     Power,
 }
 
+impl LoadKind {
+    /// The kind chosen.
+    pub(super) fn chosen(choices: &Choices) -> Self {
+        match choices.get("stage.load") {
+            Some("current") => LoadKind::Current,
+            Some("power") => LoadKind::Power,
+            _ => LoadKind::Resistor,
+        }
+    }
+}
+
 /// One operating condition of a stage.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct StageCondition {
@@ -117,25 +128,16 @@ impl Stage {
         let load_currents = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.load.{level}")));
         let synchronous = choices.is("stage.rectifier", "synchronous");
         let bank: Vec<Branch> = (1..=branch_count(choices)).map(|k| entered_branch(k, &get)).collect();
-        let load = match choices.get("stage.load") {
-            Some("current") => LoadKind::Current,
-            Some("power") => LoadKind::Power,
-            _ => LoadKind::Resistor,
-        };
+        let load = LoadKind::chosen(choices);
         let resistances = Resistances {
             winding: get("stage.inductor.resistance"),
             switch: get("stage.switch.resistance"),
             rectifier: get(if synchronous { "stage.synchronous.resistance" } else { "stage.diode.resistance" }),
             source: get("stage.source.resistance"),
         };
-        let options = Options {
-            synchronous,
-            // Across an ideal source a capacitor changes nothing but the source's own current.
-            input_capacitor: choices.is("stage.input-capacitor", "fitted") && resistances.source > 0.0,
-            load_resistor: load != LoadKind::Current,
-            branches: bank.len(),
-            branch_inductance: [false; BRANCHES],
-        };
+        let mut options = Options::chosen(choices);
+        // Across an ideal source a capacitor changes nothing but the source's own current.
+        options.input_capacitor &= resistances.source > 0.0;
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
             "load resistance" => output / load_currents[1],
