@@ -43,7 +43,8 @@ pub enum Reach {
 /// What the drawing needs to know of the choices made.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) struct Options {
-    pub(super) synchronous: bool,
+    /// Whether the rectifier is a diode, else a switch.
+    pub(super) diode: bool,
     pub(super) input_capacitor: bool,
     pub(super) load_resistor: bool,
     pub(super) branches: usize,
@@ -142,12 +143,12 @@ impl StageDrawing {
 
     /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
     pub fn rectifier(&mut self, anode: Node, cathode: Node) {
-        let part = if self.options.synchronous {
-            let ohms = self.netlist.slot("stage.synchronous.resistance");
-            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
-        } else {
+        let part = if self.options.diode {
             let ohms = self.netlist.slot("stage.diode.resistance");
             self.netlist.diode(RECTIFIER, anode, cathode, ohms, self.drop)
+        } else {
+            let ohms = self.netlist.slot("stage.synchronous.resistance");
+            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
         };
         self.rectifier = Some(part);
     }
