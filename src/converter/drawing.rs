@@ -5,7 +5,7 @@
 
 use super::entries::{BRANCHES, branch_count};
 use super::landmark::Textbook;
-use super::stage::LoadKind;
+use super::stage::{LoadKind, Rectifier};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
 
@@ -48,7 +48,8 @@ pub enum Reach {
 /// What the drawing needs to know of the choices made.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) struct Options {
-    pub(super) synchronous: bool,
+    /// Whether the rectifier is a diode, else a switch.
+    pub(super) diode: bool,
     pub(super) input_capacitor: bool,
     pub(super) load: LoadKind,
     pub(super) branches: usize,
@@ -60,7 +61,7 @@ impl Options {
     /// What is chosen, before any value has its say.
     pub(super) fn chosen(choices: &Choices) -> Self {
         Options {
-            synchronous: choices.is("stage.rectifier", "synchronous"),
+            diode: Rectifier::chosen(choices) == Rectifier::Diode,
             input_capacitor: choices.is("stage.input-capacitor", "fitted"),
             load: LoadKind::chosen(choices),
             branches: branch_count(choices),
@@ -176,17 +177,17 @@ impl StageDrawing {
 
     /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
     pub fn rectifier(&mut self, anode: Node, cathode: Node) {
-        let part = if self.options.synchronous {
-            let ohms = self.netlist.slot("stage.synchronous.resistance");
-            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", "SR").value("stage.synchronous.resistance");
-            self.sketch.part(anode, cathode, drawn);
-            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
-        } else {
+        let part = if self.options.diode {
             let ohms = self.netlist.slot("stage.diode.resistance");
             let drawn =
                 Drawn::new(Symbol::Diode, "Diode", "D").value("stage.diode.drop").quiet("stage.diode.resistance");
             self.sketch.part(anode, cathode, drawn);
             self.netlist.diode(RECTIFIER, anode, cathode, ohms, self.drop)
+        } else {
+            let ohms = self.netlist.slot("stage.synchronous.resistance");
+            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", "SR").value("stage.synchronous.resistance");
+            self.sketch.part(anode, cathode, drawn);
+            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
         };
         self.rectifier = Some(part);
     }
