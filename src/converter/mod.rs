@@ -26,7 +26,7 @@ mod waves;
 pub use averaged::AveragedModel;
 pub use bank::{BankInductance, Branch};
 pub use drawing::StageDrawing;
-pub use drawing::{Reach, Topology};
+pub use drawing::{Reach, Topology, sketch};
 pub use entries::{CHOICES, ENTRIES, applies};
 pub use landmark::{Landmark, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};

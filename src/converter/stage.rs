@@ -24,6 +24,17 @@ pub enum LoadKind {
     Power,
 }
 
+impl LoadKind {
+    /// The kind chosen.
+    pub(super) fn chosen(choices: &Choices) -> Self {
+        match choices.get("stage.load") {
+            Some("current") => LoadKind::Current,
+            Some("power") => LoadKind::Power,
+            _ => LoadKind::Resistor,
+        }
+    }
+}
+
 /// What conducts while the controlled switch is open.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Rectifier {
@@ -156,25 +167,16 @@ impl Stage {
         let load_currents = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.load.{level}")));
         let rectifier = Rectifier::chosen(choices);
         let bank: Vec<Branch> = (1..=branch_count(choices)).map(|k| entered_branch(k, &get)).collect();
-        let load = match choices.get("stage.load") {
-            Some("current") => LoadKind::Current,
-            Some("power") => LoadKind::Power,
-            _ => LoadKind::Resistor,
-        };
+        let load = LoadKind::chosen(choices);
         let resistances = Resistances {
             winding: get("stage.inductor.resistance"),
             switch: get("stage.switch.resistance"),
             rectifier: get(rectifier.resistance_path()),
             source: get("stage.source.resistance"),
         };
-        let options = Options {
-            diode: rectifier == Rectifier::Diode,
-            // Across an ideal source a capacitor changes nothing but the source's own current.
-            input_capacitor: choices.is("stage.input-capacitor", "fitted") && resistances.source > 0.0,
-            load_resistor: load != LoadKind::Current,
-            branches: bank.len(),
-            branch_inductance: [false; BRANCHES],
-        };
+        let mut options = Options::chosen(choices);
+        // Across an ideal source a capacitor changes nothing but the source's own current.
+        options.input_capacitor &= resistances.source > 0.0;
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
             "load resistance" => output / load_currents[1],
