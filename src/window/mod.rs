@@ -9,7 +9,6 @@
 //! place in the curve by construction, at every size and scale.
 
 mod app;
-mod axis;
 mod bar;
 mod bode;
 mod command;
@@ -41,6 +40,8 @@ mod steps;
 mod theme;
 mod verdict;
 mod view;
+
+use crate::figure::axis;
 
 pub use app::App;
 pub use command::{Command, Curve};
