@@ -76,9 +76,7 @@ pub fn bode(
 
 fn of(curves: &Curves, role: Role) -> (Pen, &[f64], &[f64]) {
     match role {
-        Role::Plant => {
-            (Pen { role, width: WIDTHS.1, dash: Dash::Dashed }, &curves.plant_db, &curves.plant_deg)
-        }
+        Role::Plant => (Pen { role, width: WIDTHS.1, dash: Dash::Dashed }, &curves.plant_db, &curves.plant_deg),
         Role::Compensator => {
             (Pen { role, width: WIDTHS.1, dash: Dash::DashDot }, &curves.compensator_db, &curves.compensator_deg)
         }
@@ -150,7 +148,8 @@ fn margins(figure: &mut Figure, detail: &Detail, (gain, phase): (&Chart, &Chart)
     let up = margins.gain_margin_up_db();
     let of_gain = margins.phase_crossovers.iter().find(|crossing| Some(crossing.gain_margin_db) == up);
     if let Some(crossing) = of_gain.filter(|crossing| gain.x.holds(crossing.frequency_hz)) {
-        let (from, to) = (gain.at(crossing.frequency_hz, 0.0), gain.at(crossing.frequency_hz, -crossing.gain_margin_db));
+        let (from, to) =
+            (gain.at(crossing.frequency_hz, 0.0), gain.at(crossing.frequency_hz, -crossing.gain_margin_db));
         let to = [to[0], to[1].clamp(gain.corners[0][1], gain.corners[1][1])];
         line(figure, vec![from, to], role, (3.0, Dash::Solid));
         let words = print_digits(crossing.gain_margin_db, Unit::Decibel, 3);

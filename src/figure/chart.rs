@@ -183,8 +183,7 @@ impl Chart {
         let [[left, top], [right, bottom]] = self.corners;
         let (dx, dy) = (to[0] - from[0], to[1] - from[1]);
         let (mut start, mut end) = (0.0_f64, 1.0_f64);
-        let edges =
-            [(-dx, from[0] - left), (dx, right - from[0]), (-dy, from[1] - top), (dy, bottom - from[1])];
+        let edges = [(-dx, from[0] - left), (dx, right - from[0]), (-dy, from[1] - top), (dy, bottom - from[1])];
         for (slope, distance) in edges {
             if slope == 0.0 {
                 if distance < 0.0 {

@@ -41,11 +41,8 @@ pub fn png(figure: &Figure, pixels_per_point: f64) -> Result<Vec<u8>, PictureErr
     if let Some(family) = &family {
         fonts.set_sans_serif_family(family.clone());
     }
-    let options = usvg::Options {
-        fontdb: Arc::new(fonts),
-        font_family: family.unwrap_or_default(),
-        ..usvg::Options::default()
-    };
+    let options =
+        usvg::Options { fontdb: Arc::new(fonts), font_family: family.unwrap_or_default(), ..usvg::Options::default() };
     let drawing = |error: &dyn fmt::Display| PictureError::Drawing(error.to_string());
     let tree = usvg::Tree::from_str(&svg(figure), &options).map_err(|error| drawing(&error))?;
     let [width, height] = figure.size.map(|length| pixels(length * pixels_per_point));

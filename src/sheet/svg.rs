@@ -93,7 +93,11 @@ fn draw(out: &mut String, mark: &Mark) {
                 Align::Middle => 0.36,
                 Align::End => -0.14,
             };
-            let heavy = if *weight == Weight::Bold { " font-weight=\"600\"" } else { "" };
+            let heavy = if *weight == Weight::Bold {
+                " font-family=\"Inter Semi Bold, Inter, sans-serif\" font-weight=\"600\""
+            } else {
+                ""
+            };
             writeln!(
                 out,
                 "<text x=\"{}\" y=\"{}\" font-size=\"{}\" fill=\"{}\" text-anchor=\"{anchor}\"{heavy}>{}</text>",

@@ -16,6 +16,7 @@ mod conditions;
 mod crossover;
 mod dialogs;
 mod drawing;
+mod export;
 mod files;
 mod findings;
 mod form;
@@ -49,7 +50,7 @@ mod what_if;
 use crate::figure::axis;
 
 pub use app::App;
-pub use command::{Command, Curve};
+pub use command::{Command, Curve, Exported};
 pub use held::{Held, MOST_HELD};
 pub use history::{Gesture, History};
 pub use run::{WindowError, run};
