@@ -86,6 +86,7 @@ fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
     }
     if menu == Menu::Design {
         ui.separator();
+        ui.menu_button("Copy and export", |ui| menu_ui(ui, Menu::Export, desk));
         ui.menu_button("Samples", |ui| {
             if samples_ui(ui, desk) {
                 ui.close();

@@ -19,6 +19,21 @@ pub enum Curve {
     Loop,
 }
 
+/// What can be put out into a file.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Exported {
+    /// The Bode plot.
+    Bode,
+    /// The time plot.
+    Step,
+    /// The closed-loop plot.
+    Response,
+    /// The frequency curves.
+    Curves,
+    /// The time curve.
+    StepCurve,
+}
+
 /// A request to the window, from a menu, a key, a field or a handle.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Command {
@@ -38,6 +53,19 @@ pub enum Command {
     SaveAs,
     /// Save under this path.
     SavePath(PathBuf),
+    /// Ask where to put something out.
+    Export(Exported),
+    /// Put it out into this file.
+    ExportPath {
+        /// What is put out.
+        what: Exported,
+        /// The file.
+        path: PathBuf,
+    },
+    /// Put the parts list onto the clipboard.
+    CopyParts,
+    /// Put the margin table onto the clipboard.
+    CopyMargins,
     /// Let the system's dialog choose a path.
     Browse,
     /// Close the window.
@@ -182,6 +210,8 @@ impl Command {
 pub(super) enum Menu {
     /// Files.
     Design,
+    /// Pictures, curves, tables.
+    Export,
     /// Changes.
     Edit,
     /// What is seen.
@@ -225,6 +255,55 @@ pub(super) static COMMANDS: &[Row] = &[
     row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
     row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
     row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
+    row(
+        "Copy parts list",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::P)),
+        "Put the compensator's parts onto the clipboard, with tabs between the columns.",
+        Command::CopyParts,
+    ),
+    row(
+        "Copy margin table",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::M)),
+        "Put all read-outs with their worst conditions and requirements onto the clipboard.",
+        Command::CopyMargins,
+    ),
+    row(
+        "Bode plot as picture…",
+        Menu::Export,
+        Some(key(CTRL, Key::E)),
+        "Save gain and phase as PNG or SVG.",
+        Command::Export(Exported::Bode),
+    ),
+    row(
+        "Time plot as picture…",
+        Menu::Export,
+        None,
+        "Save the step response that is shown as PNG or SVG.",
+        Command::Export(Exported::Step),
+    ),
+    row(
+        "Closed-loop plot as picture…",
+        Menu::Export,
+        None,
+        "Save the closed-loop response that is shown as PNG or SVG.",
+        Command::Export(Exported::Response),
+    ),
+    row(
+        "Frequency curves as CSV…",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::E)),
+        "Save all frequency curves of the condition shown as comma-separated values.",
+        Command::Export(Exported::Curves),
+    ),
+    row(
+        "Time curve as CSV…",
+        Menu::Export,
+        None,
+        "Save the step response that is shown as comma-separated values.",
+        Command::Export(Exported::StepCurve),
+    ),
     row("Quit", Menu::Design, Some(key(CTRL, Key::Q)), "Close the window.", Command::Quit),
     row("Undo", Menu::Edit, Some(key(CTRL, Key::Z)), "Take the last change back.", Command::Undo),
     row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),

@@ -4,6 +4,7 @@ use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, 
 
 use super::bar;
 use super::command::{COMMANDS, Command};
+use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
 
@@ -17,6 +18,7 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
+            Dialog::Export { what, path } => export::export_ui(ui, *what, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
             Dialog::Commands { search } => commands_ui(ui, search, desk),
         }
@@ -28,23 +30,27 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 }
 
 /// Why the last try failed, where it is looked for.
-fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
+pub(super) fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
     if let Some(message) = desk.view.message.as_ref().filter(|message| message.failed) {
         ui.label(RichText::new(&message.text).color(palette(ui).problem));
     }
 }
 
-fn title(ui: &mut Ui, text: &str) {
+pub(super) fn title(ui: &mut Ui, text: &str) {
     ui.label(RichText::new(text).font(theme::strong(16.0)));
     ui.add_space(6.0);
 }
 
 /// A field for a path with a button for the system's dialog; true when Enter was pressed in it.
-fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
+pub(super) fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
     let mut entered = false;
+    let (name, hint) = match desk.view.dialog {
+        Some(Dialog::Export { .. }) => ("Path of the file", "path of a file"),
+        _ => ("Path of the design file", "path of a design file"),
+    };
     ui.horizontal(|ui| {
-        let edit = TextEdit::singleline(path).hint_text("path of a design file").desired_width(400.0);
-        let response = ui.add(edit).accessible_name("Path of the design file");
+        let edit = TextEdit::singleline(path).hint_text(hint).desired_width(400.0);
+        let response = ui.add(edit).accessible_name(name);
         entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
         let nothing_focused = ui.memory(|memory| memory.focused().is_none());
         if nothing_focused && !entered {
@@ -163,12 +169,12 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
     });
 }
 
-fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
+pub(super) fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
     ui.horizontal(content);
 }
 
 /// The button that is meant.
-fn primary(ui: &Ui, text: &str) -> Button<'static> {
+pub(super) fn primary(ui: &Ui, text: &str) -> Button<'static> {
     let palette = palette(ui);
     Button::new(RichText::new(text).color(palette.panel).strong()).fill(palette.accent)
 }

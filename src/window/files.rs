@@ -12,6 +12,8 @@ pub(super) enum Ask {
     Open,
     /// A path to save under; the name it proposes.
     Save(String),
+    /// A path for a picture or for curves; the name it proposes.
+    Export(String),
 }
 
 /// Answers of the system's file dialog.
@@ -33,13 +35,16 @@ impl FileDialogs {
     pub(super) fn ask(&self, ask: Ask, folder: Option<PathBuf>, ctx: &egui::Context) -> Result<(), std::io::Error> {
         let (sender, ctx) = (self.sender.clone(), ctx.clone());
         let run = move || {
-            let mut dialog = rfd::FileDialog::new().add_filter("design file", &["ron"]);
+            let mut dialog = rfd::FileDialog::new();
+            if !matches!(ask, Ask::Export(_)) {
+                dialog = dialog.add_filter("design file", &["ron"]);
+            }
             if let Some(folder) = folder {
                 dialog = dialog.set_directory(folder);
             }
             let path = match ask {
                 Ask::Open => dialog.pick_file(),
-                Ask::Save(name) => dialog.set_file_name(name).save_file(),
+                Ask::Save(name) | Ask::Export(name) => dialog.set_file_name(name).save_file(),
             };
             // No path: the dialog was left, or there is none. The window may be gone by now; then nobody waits.
             if path.is_some_and(|path| sender.send(path).is_ok()) {

@@ -9,7 +9,6 @@
 //! place in the curve by construction, at every size and scale.
 
 mod app;
-mod axis;
 mod bar;
 mod bode;
 mod command;
@@ -17,6 +16,7 @@ mod conditions;
 mod crossover;
 mod dialogs;
 mod drawing;
+mod export;
 mod files;
 mod findings;
 mod form;
@@ -47,8 +47,10 @@ mod verdict;
 mod view;
 mod what_if;
 
+use crate::figure::axis;
+
 pub use app::App;
-pub use command::{Command, Curve};
+pub use command::{Command, Curve, Exported};
 pub use held::{Held, MOST_HELD};
 pub use history::{Gesture, History};
 pub use run::{WindowError, run};

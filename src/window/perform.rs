@@ -43,6 +43,9 @@ impl App {
             | Command::DiscardAndGoOn
             | Command::SaveAndGoOn
             | Command::Dismiss => self.perform_on_files(command, ctx),
+            Command::Export(_) | Command::ExportPath { .. } | Command::CopyParts | Command::CopyMargins => {
+                self.perform_export(command, ctx);
+            }
             edit if edit.edits() => self.perform_on_design(edit),
             other => self.perform_on_view(&other, ctx),
         }
@@ -94,7 +97,8 @@ impl App {
             Command::SaveAndGoOn => self.save_and_go_on(ctx),
             _ => {
                 self.after_saving = None;
-                if matches!(self.view.dialog.take(), Some(Dialog::Open { .. } | Dialog::SaveAs { .. })) {
+                let asked = self.view.dialog.take();
+                if matches!(asked, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. })) {
                     self.view.forget_failure();
                 }
             }
@@ -173,6 +177,7 @@ impl App {
     fn browse(&mut self, ctx: &egui::Context) {
         let folder = self.session.path().and_then(|path| path.parent()).map(Path::to_path_buf);
         let ask = match &self.view.dialog {
+            Some(Dialog::Export { path, .. }) => Ask::Export(path.clone()),
             Some(Dialog::SaveAs { .. }) => Ask::Save(files::proposed_name(&self.session.design().title)),
             _ => Ask::Open,
         };
@@ -184,7 +189,8 @@ impl App {
     /// Puts the answer of the system's dialog into the path that is being asked for.
     pub(super) fn take_file_answer(&mut self) {
         if let Some(chosen) = self.dialogs.answer()
-            && let Some(Dialog::Open { path } | Dialog::SaveAs { path }) = &mut self.view.dialog
+            && let Some(Dialog::Open { path } | Dialog::SaveAs { path } | Dialog::Export { path, .. }) =
+                &mut self.view.dialog
         {
             *path = chosen.display().to_string();
         }

@@ -2,35 +2,13 @@
 
 use eframe::egui::{Rect, ThemePreference};
 
-use super::command::{Command, Curve};
+use super::command::{Command, Curve, Exported};
 use super::history::Gesture;
 use super::new_design::NewDesign;
 use super::session::Session;
 use super::what_if::WhatIf;
 
-/// Event whose time response is shown.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub(super) enum Event {
-    /// Rise in load current.
-    #[default]
-    Load,
-    /// Rise in input voltage.
-    Line,
-    /// Rise of the reference.
-    Reference,
-}
-
-/// Closed-loop response shown over frequency.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub(super) enum ClosedLoop {
-    /// Output impedance.
-    #[default]
-    Impedance,
-    /// Input voltage to output voltage.
-    Line,
-    /// Reference to output voltage.
-    Reference,
-}
+pub(super) use crate::figure::{ClosedLoop, Event};
 
 /// A question or a list over the window.
 #[derive(Clone, Debug, PartialEq)]
@@ -44,6 +22,13 @@ pub(super) enum Dialog {
     },
     /// Under which path to save.
     SaveAs {
+        /// Typed path.
+        path: String,
+    },
+    /// Under which path to put something out.
+    Export {
+        /// What is put out.
+        what: Exported,
         /// Typed path.
         path: String,
     },
@@ -209,7 +194,8 @@ impl View {
 
     /// What the line under the bar says. A failure that an open dialog tells is not told twice.
     pub(super) fn banner(&self) -> Option<&Message> {
-        let in_dialog = matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. }));
+        let in_dialog =
+            matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. }));
         self.message.as_ref().filter(|message| !(message.failed && in_dialog))
     }
 
