@@ -11,6 +11,9 @@ use polewright::design::sample;
 use polewright::quantity::{Unit, parse};
 use polewright::window::App;
 
+#[path = "window/safety.rs"]
+mod safety;
+
 fn window(size: Vec2, pixels_per_point: f32) -> Harness<'static, App> {
     let mut harness = Harness::builder()
         .with_size(size)

@@ -76,6 +76,22 @@ pub enum Command {
     SaveAndGoOn,
     /// Close the question or the list that is open.
     Dismiss,
+    /// Save over this file although it changed since it was read.
+    Overwrite(PathBuf),
+    /// Take over what the file holds now, as one step.
+    Reload,
+    /// Keep the design as it is here although its file changed.
+    KeepMine,
+    /// Look for unsaved work that was left behind, and offer it.
+    FindUnsaved,
+    /// Take up the work in this journal.
+    Recover(PathBuf),
+    /// Remove this journal.
+    DiscardJournal(PathBuf),
+    /// Take this file off the list of recent files.
+    ForgetRecent(PathBuf),
+    /// Empty the list of recent files.
+    ForgetAllRecent,
 
     /// Take the last step back.
     Undo,
@@ -304,6 +320,15 @@ pub(super) static COMMANDS: &[Row] = &[
         "Save the step response that is shown as comma-separated values.",
         Command::Export(Exported::StepCurve),
     ),
+    row("Reload", Menu::Design, None, "Take over what the file holds now; can be undone.", Command::Reload),
+    row(
+        "Recover unsaved work…",
+        Menu::Design,
+        None,
+        "Offer work that a window left behind unsaved.",
+        Command::FindUnsaved,
+    ),
+    row("Clear recent files", Menu::Design, None, "Empty the list of recent files.", Command::ForgetAllRecent),
     row("Quit", Menu::Design, Some(key(CTRL, Key::Q)), "Close the window.", Command::Quit),
     row("Undo", Menu::Edit, Some(key(CTRL, Key::Z)), "Take the last change back.", Command::Undo),
     row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),

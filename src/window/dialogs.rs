@@ -2,11 +2,11 @@
 
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
 
-use super::bar;
 use super::command::{COMMANDS, Command};
 use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
+use super::{bar, recents, recovery};
 
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
@@ -20,6 +20,8 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
             Dialog::Export { what, path } => export::export_ui(ui, *what, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
+            Dialog::Overwrite { path } => recovery::overwrite_ui(ui, path, desk),
+            Dialog::Recovery { discarding } => recovery::recovery_ui(ui, discarding, desk),
             Dialog::Commands { search } => commands_ui(ui, search, desk),
         }
     });
@@ -56,10 +58,15 @@ pub(super) fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bo
         if nothing_focused && !entered {
             response.request_focus();
         }
-        if ui.button("Browse…").on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
+        let browse = ui.add_enabled(!desk.view.browsing, Button::new("Browse…"));
+        if browse.on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
             desk.ask(Command::Browse);
         }
     });
+    if desk.view.browsing {
+        let text = "Waiting for the system's file dialog. If none appears, type the path here.";
+        ui.label(RichText::new(text).font(theme::small()).color(palette(ui).weak));
+    }
     entered
 }
 
@@ -77,9 +84,14 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
             desk.ask(Command::Dismiss);
         }
     });
+    if !desk.kept.recent.is_empty() {
+        ui.add_space(10.0);
+        ui.label(RichText::new("Recent files").font(theme::strong(13.5)));
+        ScrollArea::vertical().id_salt("recent").max_height(170.0).show(ui, |ui| recents::recents_ui(ui, desk));
+    }
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().max_height(300.0).show(ui, |ui| {
+    ScrollArea::vertical().id_salt("samples").max_height(260.0).show(ui, |ui| {
         bar::samples_ui(ui, desk);
     });
 }
@@ -166,6 +178,7 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
                 desk.ask(row.command.clone());
             }
         }
+        recents::commands_ui(ui, &wanted, desk);
     });
 }
 

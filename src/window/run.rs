@@ -5,9 +5,10 @@ use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::PathBuf;
 use std::sync::{Arc, Mutex};
 
-use eframe::egui::{ViewportBuilder, vec2};
+use eframe::egui::{ViewportBuilder, pos2, vec2};
 
 use super::app::App;
+use super::keep::{DataFolder, load_settings};
 use crate::design::Design;
 
 /// Why the window could not be opened or went away.
@@ -66,19 +67,44 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
     if !display_named() {
         return Err(WindowError::NoDisplay);
     }
-    let viewport = ViewportBuilder::default()
+    let folder = DataFolder::usual();
+    let viewport = placed(folder.as_ref())
         .with_title("Polewright")
         .with_app_id("polewright")
-        .with_inner_size(vec2(1280.0, 800.0))
         .with_min_inner_size(vec2(760.0, 520.0))
         .with_icon(super::icon::icon())
         .with_drag_and_drop(true);
-    let options = eframe::NativeOptions { viewport, ..eframe::NativeOptions::default() };
+    // The place of the window stands in the settings. The file named here is never written.
+    let unused = folder.as_ref().map(|folder| folder.path().join("unused.ron"));
+    let options = eframe::NativeOptions {
+        viewport,
+        persist_window: false,
+        persistence_path: unused,
+        ..eframe::NativeOptions::default()
+    };
     let open = move || {
-        let create: eframe::AppCreator<'_> = Box::new(|cc| Ok(Box::new(App::new(&cc.egui_ctx, design, path))));
+        let create: eframe::AppCreator<'_> = Box::new(|cc| {
+            Ok(Box::new(match folder {
+                Some(folder) => App::keeping(&cc.egui_ctx, design, path, folder),
+                None => App::new(&cc.egui_ctx, design, path),
+            }))
+        });
         eframe::run_native("polewright", options, create)
     };
     caught(open).and_then(|outcome| outcome.map_err(|error| explain(&error)))
+}
+
+/// A window of the size and in the place it was left in.
+fn placed(folder: Option<&DataFolder>) -> ViewportBuilder {
+    let usual = ViewportBuilder::default().with_inner_size(vec2(1280.0, 800.0));
+    // Broken settings are told by the window.
+    let settings = folder.and_then(|folder| load_settings(folder).ok());
+    let Some(place) = settings.and_then(|settings| settings.look.window) else { return usual };
+    let sized = usual.with_inner_size(vec2(place.size.0, place.size.1)).with_maximized(place.maximized);
+    match place.position {
+        Some((x, y)) => sized.with_position(pos2(x, y)),
+        None => sized,
+    }
 }
 
 /// On Linux and the BSDs a display is named in the environment; elsewhere the system always has one.

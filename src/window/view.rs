@@ -1,10 +1,13 @@
 //! What the window shows and how, apart from the work itself: none of it is saved with a design or undone.
 
+use std::path::PathBuf;
+
 use eframe::egui::{Rect, ThemePreference};
 
 use super::command::{Command, Curve, Exported};
 use super::history::Gesture;
 use super::new_design::NewDesign;
+use super::safety::Kept;
 use super::session::Session;
 use super::what_if::WhatIf;
 
@@ -34,6 +37,16 @@ pub(super) enum Dialog {
     },
     /// Unsaved changes stand before this.
     Unsaved(Box<Command>),
+    /// The file changed since it was read: whether to save over it.
+    Overwrite {
+        /// The file.
+        path: PathBuf,
+    },
+    /// Unsaved work that an earlier window left behind.
+    Recovery {
+        /// Journal whose removal was asked for and waits for a second word.
+        discarding: Option<PathBuf>,
+    },
     /// The searchable list of commands.
     Commands {
         /// What is searched for.
@@ -136,6 +149,8 @@ pub(super) struct View {
     pub what_if: WhatIf,
     /// The form of a new design.
     pub new_design: NewDesign,
+    /// The system's file dialog was asked for and has not answered.
+    pub browsing: bool,
     /// What was last said.
     pub message: Option<Message>,
     /// Colours.
@@ -175,6 +190,7 @@ impl Default for View {
             hint: false,
             what_if: WhatIf::default(),
             new_design: NewDesign::default(),
+            browsing: false,
             message: None,
             theme: ThemePreference::System,
             gain_rect: Rect::NOTHING,
@@ -220,6 +236,8 @@ impl View {
 pub(super) struct Desk<'a> {
     /// The document and its results.
     pub session: &'a Session,
+    /// What outlives the window, and what is known about the file.
+    pub kept: &'a Kept,
     /// The view.
     pub view: &'a mut View,
     /// Requests for the next turn of `logic`.
