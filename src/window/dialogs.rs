@@ -3,6 +3,7 @@
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
 
 use super::command::{COMMANDS, Command};
+use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
 use super::{bar, recents, recovery};
@@ -14,8 +15,10 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
         ui.set_width(520.0);
         match &mut dialog {
+            Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
+            Dialog::Export { what, path } => export::export_ui(ui, *what, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
             Dialog::Overwrite { path } => recovery::overwrite_ui(ui, path, desk),
             Dialog::Recovery { discarding } => recovery::recovery_ui(ui, discarding, desk),
@@ -29,7 +32,7 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 }
 
 /// Why the last try failed, where it is looked for.
-fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
+pub(super) fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
     if let Some(message) = desk.view.message.as_ref().filter(|message| message.failed) {
         ui.label(RichText::new(&message.text).color(palette(ui).problem));
     }
@@ -41,11 +44,15 @@ pub(super) fn title(ui: &mut Ui, text: &str) {
 }
 
 /// A field for a path with a button for the system's dialog; true when Enter was pressed in it.
-fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
+pub(super) fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
     let mut entered = false;
+    let (name, hint) = match desk.view.dialog {
+        Some(Dialog::Export { .. }) => ("Path of the file", "path of a file"),
+        _ => ("Path of the design file", "path of a design file"),
+    };
     ui.horizontal(|ui| {
-        let edit = TextEdit::singleline(path).hint_text("path of a design file").desired_width(400.0);
-        let response = ui.add(edit).accessible_name("Path of the design file");
+        let edit = TextEdit::singleline(path).hint_text(hint).desired_width(400.0);
+        let response = ui.add(edit).accessible_name(name);
         entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
         let nothing_focused = ui.memory(|memory| memory.focused().is_none());
         if nothing_focused && !entered {

@@ -13,6 +13,8 @@ pub(super) enum Ask {
     Open,
     /// A path to save under; the name it proposes.
     Save(String),
+    /// A path for a picture or for curves; the name it proposes.
+    Export(String),
 }
 
 /// What became of the system's dialog.
@@ -49,13 +51,16 @@ impl FileDialogs {
         let (sender, ctx) = (self.sender.clone(), ctx.clone());
         let run = move || {
             let asked = Instant::now();
-            let mut dialog = rfd::FileDialog::new().add_filter("design file", &["ron"]);
+            let mut dialog = rfd::FileDialog::new();
+            if !matches!(ask, Ask::Export(_)) {
+                dialog = dialog.add_filter("design file", &["ron"]);
+            }
             if let Some(folder) = folder {
                 dialog = dialog.set_directory(folder);
             }
             let path = match ask {
                 Ask::Open => dialog.pick_file(),
-                Ask::Save(name) => dialog.set_file_name(name).save_file(),
+                Ask::Save(name) | Ask::Export(name) => dialog.set_file_name(name).save_file(),
             };
             let answer = match path {
                 Some(path) => Answer::Chosen(path),

@@ -21,12 +21,22 @@ impl App {
     /// Carries out one command.
     pub(super) fn perform(&mut self, command: Command, ctx: &egui::Context) {
         match command {
-            Command::OpenPath(_) | Command::OpenSample(_) | Command::Recover(_) | Command::Quit
+            _ if self.view.review && command.edits() => {
+                let text = "The review view is for reading. Press Esc to go back to the design.".to_owned();
+                self.view.message = Some(Message { text, failed: false });
+            }
+            Command::OpenPath(_)
+            | Command::OpenSample(_)
+            | Command::CreateDesign
+            | Command::Recover(_)
+            | Command::Quit
                 if self.session.unsaved() =>
             {
                 self.view.dialog = Some(Dialog::Unsaved(Box::new(command)));
             }
             Command::Open
+            | Command::NewDesign
+            | Command::CreateDesign
             | Command::OpenPath(_)
             | Command::OpenSample(_)
             | Command::Save
@@ -45,16 +55,10 @@ impl App {
             | Command::ForgetRecent(_)
             | Command::ForgetAllRecent
             | Command::Dismiss => self.perform_on_files(command, ctx),
-            Command::Undo
-            | Command::Redo
-            | Command::Enter { .. }
-            | Command::Choose { .. }
-            | Command::Title(_)
-            | Command::MoveLane { .. }
-            | Command::MoveCrossover { .. }
-            | Command::Lock { .. }
-            | Command::RoundParts
-            | Command::Mend(_) => self.perform_on_design(command),
+            Command::Export(_) | Command::ExportPath { .. } | Command::CopyParts | Command::CopyMargins => {
+                self.perform_export(command, ctx);
+            }
+            edit if edit.edits() => self.perform_on_design(edit),
             other => self.perform_on_view(&other, ctx),
         }
     }
@@ -64,6 +68,16 @@ impl App {
             Command::Open => {
                 self.view.message = None;
                 self.view.dialog = Some(Dialog::Open { path: String::new() });
+            }
+            Command::NewDesign => {
+                self.view.message = None;
+                self.view.dialog = Some(Dialog::New);
+            }
+            Command::CreateDesign => {
+                if let Some(design) = self.view.new_design.design() {
+                    self.begin(Session::created(design), ctx);
+                    self.view.review = false;
+                }
             }
             Command::OpenPath(path) => self.open(&path, ctx),
             Command::OpenSample(file) => self.open_sample(file, ctx),
@@ -94,7 +108,8 @@ impl App {
             Command::SaveAndGoOn => self.save_and_go_on(ctx),
             _ => {
                 self.after_saving = None;
-                if matches!(self.view.dialog.take(), Some(Dialog::Open { .. } | Dialog::SaveAs { .. })) {
+                let asked = self.view.dialog.take();
+                if matches!(asked, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. })) {
                     self.view.forget_failure();
                 }
                 self.put_off_recovery();
@@ -202,6 +217,7 @@ impl App {
     fn browse(&mut self, ctx: &egui::Context) {
         let folder = self.last_folder();
         let ask = match &self.view.dialog {
+            Some(Dialog::Export { path, .. }) => Ask::Export(path.clone()),
             Some(Dialog::SaveAs { .. }) => Ask::Save(files::proposed_name(&self.session.design().title)),
             _ => Ask::Open,
         };
@@ -218,7 +234,10 @@ impl App {
     pub(super) fn take_file_answer(&mut self) {
         let Some(answer) = self.dialogs.answer() else { return };
         self.view.browsing = false;
-        let Some(Dialog::Open { path } | Dialog::SaveAs { path }) = &mut self.view.dialog else { return };
+        let Some(Dialog::Open { path } | Dialog::SaveAs { path } | Dialog::Export { path, .. }) = &mut self.view.dialog
+        else {
+            return;
+        };
         match answer {
             Answer::Chosen(chosen) => *path = chosen.display().to_string(),
             Answer::Left => {}
@@ -278,13 +297,27 @@ impl App {
         let view = &mut self.view;
         match command {
             Command::Show(input, load) => self.session.show(*input, *load),
+            Command::StepLevels { input, load } => self.session.step_levels(*input, *load),
+            Command::WhatIf { input_voltage, load_current } => {
+                self.session.show_what_if(*input_voltage, *load_current);
+            }
+            Command::Review => {
+                view.review = !view.review;
+                self.session.review(None);
+                ctx.memory_mut(egui::Memory::stop_text_input);
+            }
+            Command::ReviewTry(number) => self.session.review(*number),
+            Command::StepTry { forward } => self.session.step_try(*forward),
             Command::NextCondition => self.session.step_condition(1),
             Command::PreviousCondition => self.session.step_condition(8),
             Command::Toggle(curve) => view.toggle(*curve),
             Command::ToggleBand => view.band = !view.band,
             Command::WholeRange => view.range_hz = None,
             Command::Hold => self.session.hold(),
+            Command::CompareWith(number) => self.session.compare_with(*number),
+            Command::DropTry(number) => self.session.drop_try(*number),
             Command::DropHeld => self.session.drop_held(),
+            Command::Hint(shown) => view.hint = *shown,
             Command::Theme(theme) => {
                 view.theme = *theme;
                 ctx.set_theme(*theme);

@@ -4,41 +4,20 @@ use std::path::PathBuf;
 
 use eframe::egui::{Rect, ThemePreference};
 
-use super::command::{Command, Curve};
+use super::command::{Command, Curve, Exported};
 use super::history::Gesture;
+use super::new_design::NewDesign;
 use super::safety::Kept;
 use super::session::Session;
-use serde::{Deserialize, Serialize};
+use super::what_if::WhatIf;
 
-/// Event whose time response is shown.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
-#[serde(rename_all = "snake_case")]
-pub(super) enum Event {
-    /// Rise in load current.
-    #[default]
-    Load,
-    /// Rise in input voltage.
-    Line,
-    /// Rise of the reference.
-    Reference,
-}
-
-/// Closed-loop response shown over frequency.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
-#[serde(rename_all = "snake_case")]
-pub(super) enum ClosedLoop {
-    /// Output impedance.
-    #[default]
-    Impedance,
-    /// Input voltage to output voltage.
-    Line,
-    /// Reference to output voltage.
-    Reference,
-}
+pub(super) use crate::figure::{ClosedLoop, Event};
 
 /// A question or a list over the window.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) enum Dialog {
+    /// What a new design needs to know.
+    New,
     /// Which file or sample to open.
     Open {
         /// Typed path.
@@ -46,6 +25,13 @@ pub(super) enum Dialog {
     },
     /// Under which path to save.
     SaveAs {
+        /// Typed path.
+        path: String,
+    },
+    /// Under which path to put something out.
+    Export {
+        /// What is put out.
+        what: Exported,
         /// Typed path.
         path: String,
     },
@@ -155,6 +141,14 @@ pub(super) struct View {
     pub seek: Option<String>,
     /// Question or list over the window.
     pub dialog: Option<Dialog>,
+    /// The review view is open.
+    pub review: bool,
+    /// The hint for who is new here is shown.
+    pub hint: bool,
+    /// What is typed for a condition beside the nine.
+    pub what_if: WhatIf,
+    /// The form of a new design.
+    pub new_design: NewDesign,
     /// The system's file dialog was asked for and has not answered.
     pub browsing: bool,
     /// What was last said.
@@ -192,6 +186,10 @@ impl Default for View {
             title: None,
             seek: None,
             dialog: None,
+            review: false,
+            hint: false,
+            what_if: WhatIf::default(),
+            new_design: NewDesign::default(),
             browsing: false,
             message: None,
             theme: ThemePreference::System,
@@ -212,7 +210,8 @@ impl View {
 
     /// What the line under the bar says. A failure that an open dialog tells is not told twice.
     pub(super) fn banner(&self) -> Option<&Message> {
-        let in_dialog = matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. }));
+        let in_dialog =
+            matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. }));
         self.message.as_ref().filter(|message| !(message.failed && in_dialog))
     }
 

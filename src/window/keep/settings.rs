@@ -45,6 +45,24 @@ pub(in crate::window) enum Colours {
     System,
 }
 
+/// The words for the event of the time plot.
+#[derive(Serialize, Deserialize)]
+#[serde(remote = "Event", rename_all = "snake_case")]
+enum EventWord {
+    Load,
+    Line,
+    Reference,
+}
+
+/// The words for the closed-loop response that is shown.
+#[derive(Serialize, Deserialize)]
+#[serde(remote = "ClosedLoop", rename_all = "snake_case")]
+enum ClosedLoopWord {
+    Impedance,
+    Line,
+    Reference,
+}
+
 /// What is seen and how.
 #[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
 #[serde(default)]
@@ -61,7 +79,9 @@ pub(in crate::window) struct Look {
     pub readout_column: bool,
     /// Which column has the room for one.
     pub readouts_first: bool,
+    #[serde(with = "EventWord")]
     pub event: Event,
+    #[serde(with = "ClosedLoopWord")]
     pub closed_loop: ClosedLoop,
 }
 
