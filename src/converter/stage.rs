@@ -7,10 +7,11 @@ use super::drawing::{
 };
 use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
 use super::registry::find;
+use super::signals::INPUTS;
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
 use crate::finding::Finding;
 use crate::quantity::{Choices, Values};
-use nalgebra::DVector;
+use nalgebra::{DMatrix, DVector};
 
 /// How the load current answers the output voltage.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -21,6 +22,17 @@ pub enum LoadKind {
     Current,
     /// Inverse to the voltage; linear models take the tangent.
     Power,
+}
+
+impl LoadKind {
+    /// The kind chosen.
+    pub(super) fn chosen(choices: &Choices) -> Self {
+        match choices.get("stage.load") {
+            Some("current") => LoadKind::Current,
+            Some("power") => LoadKind::Power,
+            _ => LoadKind::Resistor,
+        }
+    }
 }
 
 /// What conducts while the controlled switch is open.
@@ -155,25 +167,16 @@ impl Stage {
         let load_currents = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.load.{level}")));
         let rectifier = Rectifier::chosen(choices);
         let bank: Vec<Branch> = (1..=branch_count(choices)).map(|k| entered_branch(k, &get)).collect();
-        let load = match choices.get("stage.load") {
-            Some("current") => LoadKind::Current,
-            Some("power") => LoadKind::Power,
-            _ => LoadKind::Resistor,
-        };
+        let load = LoadKind::chosen(choices);
         let resistances = Resistances {
             winding: get("stage.inductor.resistance"),
             switch: get("stage.switch.resistance"),
             rectifier: get(rectifier.resistance_path()),
             source: get("stage.source.resistance"),
         };
-        let options = Options {
-            diode: rectifier == Rectifier::Diode,
-            // Across an ideal source a capacitor changes nothing but the source's own current.
-            input_capacitor: choices.is("stage.input-capacitor", "fitted") && resistances.source > 0.0,
-            load_resistor: load != LoadKind::Current,
-            branches: bank.len(),
-            branch_inductance: [false; BRANCHES],
-        };
+        let mut options = Options::chosen(choices);
+        // Across an ideal source a capacitor changes nothing but the source's own current.
+        options.input_capacitor &= resistances.source > 0.0;
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
             "load resistance" => output / load_currents[1],
@@ -268,6 +271,15 @@ impl Stage {
         let cell = SwitchedCell::new(idle, &off, drawn.rows.rectifier_current)?;
         Ok(Intervals { on: on.independent().0, off, cell, inputs })
     }
+}
+
+/// Columns of an averaged model's inputs: the duty ratio's, and the two of the netlist's that it keeps.
+pub(super) fn with_duty(duty: &DVector<f64>, netlist: &DMatrix<f64>) -> DMatrix<f64> {
+    DMatrix::from_fn(netlist.nrows(), INPUTS.len(), |r, k| match k {
+        0 => duty[r],
+        1 => netlist[(r, INPUT_VOLTAGE)],
+        _ => netlist[(r, LOAD_CURRENT)],
+    })
 }
 
 /// A netlist drawn and compiled for both intervals.
