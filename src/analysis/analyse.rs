@@ -248,6 +248,7 @@ fn detailed(
     let model = &worked.model;
     let stage_condition = condition.of_stage(&design.stage);
     let landmarks = design.stage.landmarks(&stage_condition, model.plant.zpk());
+    let landmarks = shared.law.landmarks(landmarks, model.plant.zpk(), &model.controlled);
     let reference = Zpk::from_state_space(&shared.compensator, 0, 1).map_err(|e| model_finding(&e))?;
     let scale = design.compensator.dc_output_voltage() / design.compensator.reference;
     let curves = curves(model, shared, &reference, &request.frequencies_hz, scale).map_err(|e| model_finding(&e))?;

@@ -1,6 +1,7 @@
 //! Remarks about the results: what makes averaged numbers doubtful, what misses a requirement, what common practice says.
 
 use super::condition::NOMINAL;
+use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
 use super::loop_model::Shared;
 use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict};
@@ -30,6 +31,7 @@ pub(super) fn remarks(
     findings.extend(no_outcome(conditions));
     findings.extend(unstable(conditions));
     findings.extend(what_if_unstable(detail));
+    findings.extend(control_remarks(design, shared, detail, conditions));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));
@@ -71,7 +73,7 @@ fn no_outcome(conditions: &[ConditionResult]) -> Vec<Finding> {
         .collect()
 }
 
-fn summaries(conditions: &[ConditionResult]) -> impl Iterator<Item = (&ConditionResult, &ConditionSummary)> {
+pub(super) fn summaries(conditions: &[ConditionResult]) -> impl Iterator<Item = (&ConditionResult, &ConditionSummary)> {
     conditions.iter().filter_map(|c| c.outcome.as_ref().ok().map(|s| (c, s)))
 }
 
@@ -82,7 +84,9 @@ fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
     for (condition, summary) in summaries(conditions) {
         let label = &condition.condition.label;
         if let Some(told) = not_stable(&summary.loop_gain.verdict, label) {
-            findings.push(Finding::problem("", told).with_hint(UNSTABLE_HINT));
+            let subharmonic = summary.control.sampling.is_some_and(|s| s.subharmonic());
+            let hint = if subharmonic { SUBHARMONIC_HINT } else { UNSTABLE_HINT };
+            findings.push(Finding::problem("", told).with_hint(hint));
         } else if matches!(summary.loop_gain.verdict, Verdict::Stable { conditionally: true }) {
             conditional.push((label, summary));
         }
@@ -136,6 +140,8 @@ fn beyond_the_model(conditions: &[ConditionResult]) -> Option<Finding> {
     Some(Finding::problem("", message).with_hint("lower the gain or raise the switching frequency"))
 }
 
+const SUBHARMONIC_HINT: &str = "the current loop needs more compensating ramp; the voltage loop cannot mend it";
+
 const UNSTABLE_HINT: &str = "lower the gain, or move zeros down and poles up to gain phase at the crossover";
 
 /// The sentence about a loop that is not stable, or whose stability is undecided.
@@ -181,9 +187,8 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
         );
         findings.push(Finding::notice("", message).with_hint("lower the highest compensator pole or the crossover"));
     }
-    let share = |s: &ConditionSummary| {
-        s.operating_point.output_step * high / shared.law.swing(&s.operating_point, fs.recip())
-    };
+    let share =
+        |s: &ConditionSummary| s.operating_point.output_step * high / shared.law.swing(&s.operating_point, fs.recip());
     let step = summaries(conditions).map(|(c, s)| (c, share(s))).max_by(|a, b| a.1.total_cmp(&b.1));
     if let Some((condition, share)) = step.filter(|(_, share)| *share > RIPPLE_STEP) {
         let message = format!(
