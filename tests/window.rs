@@ -541,3 +541,55 @@ fn large_text_in_a_small_window_leaves_room_for_the_plots() {
     assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_some());
     assert!(harness.state().gain_rect().width() > 150.0);
 }
+
+#[test]
+fn a_new_design_is_proposed_with_its_assumptions_and_created() {
+    let mut harness = usual();
+    enter(&mut harness, "Inductor", "12u");
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::N);
+    harness.run();
+    let told = |harness: &Harness<'_, App>, text: &str| {
+        harness.query_all_by(|node| node.value().is_some_and(|value| value.contains(text))).count()
+    };
+    assert_eq!(told(&harness, "Stable and within all"), 1);
+    assert!(told(&harness, "common practice") > 5);
+    let set = |harness: &mut Harness<'_, App>, label: &str, text: &str| {
+        field(harness, label).focus();
+        harness.run();
+        harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+        field(harness, label).type_text(text);
+        harness.run();
+        harness.key_press(Key::Enter);
+        harness.run();
+    };
+    set(&mut harness, "Input, least, of the new design", "nine");
+    assert_eq!(told(&harness, "Stable and within all"), 0);
+    assert_eq!(told(&harness, "is not a number"), 1, "the reason stands under the field");
+    set(&mut harness, "Input, least, of the new design", "18");
+    assert_eq!(told(&harness, "must not be above"), 1);
+    set(&mut harness, "Input, least, of the new design", "10");
+    assert_eq!(told(&harness, "Stable and within all"), 1);
+    harness.get_by_label("Create").click();
+    harness.run();
+    // The design that stood there has unsaved changes.
+    harness.get_by_label("Discard changes").click();
+    harness.run();
+    let session = harness.state().session();
+    assert!((session.design().values.get("stage.input.least").unwrap() - 10.0).abs() < 1e-12);
+    assert!(session.unsaved(), "it is in no file yet");
+    assert!(session.analysis().unwrap().all_met());
+    assert!(session.design().notes.contains("common practice"));
+}
+
+#[test]
+fn a_dialog_of_any_size_has_every_control_named() {
+    for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+        for key in [Key::N, Key::O, Key::K] {
+            let mut harness = window(size, scale);
+            harness.key_press_modifiers(Modifiers::COMMAND, key);
+            harness.run();
+            harness.check_accessibility();
+            assert!(harness.query_by_label("Cancel").is_some() || key == Key::K);
+        }
+    }
+}

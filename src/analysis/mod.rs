@@ -9,6 +9,7 @@ mod crossover_window;
 mod curves;
 mod ledger;
 pub mod loop_model;
+pub mod proposal;
 mod readouts;
 mod remarks;
 mod requirement;

@@ -168,7 +168,8 @@ fn row_ui(ui: &mut Ui, words: (&str, &str), share: f32, field: impl FnOnce(&mut 
     });
 }
 
-fn label_ui(ui: &mut Ui, name: &str, help: &str, width: f32) {
+/// The name of a row, with its explanation.
+pub(super) fn label_ui(ui: &mut Ui, name: &str, help: &str, width: f32) {
     let (rect, response) = ui.allocate_exact_size(vec2(width, theme::ROW), Sense::hover());
     let mut inner = ui.new_child(UiBuilder::new().max_rect(rect).layout(Layout::left_to_right(Align::Center)));
     inner.add(egui::Label::new(RichText::new(name).color(palette(ui).weak)).truncate());

@@ -8,6 +8,7 @@ mod common;
 mod compensator;
 mod cross_checks;
 mod lossless;
+mod proposal;
 mod random;
 mod reference;
 mod registry;
