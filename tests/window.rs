@@ -5,8 +5,8 @@
 
 use eframe::egui::{self, Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
 use egui_kittest::Harness;
-use egui_kittest::kittest::Queryable;
-use polewright::analysis::Level;
+use egui_kittest::kittest::{NodeT, Queryable};
+use polewright::analysis::{Level, terms};
 use polewright::design::sample;
 use polewright::quantity::{Unit, parse};
 use polewright::window::App;
@@ -590,6 +590,40 @@ fn a_dialog_of_any_size_has_every_control_named() {
             harness.run();
             harness.check_accessibility();
             assert!(harness.query_by_label("Cancel").is_some() || key == Key::K);
+        }
+    }
+}
+
+#[test]
+fn the_hint_is_shown_when_asked_for_and_closed() {
+    for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+        let mut harness = window(size, scale);
+        harness.key_press(Key::F1);
+        harness.run();
+        assert!(harness.state().hinting());
+        let sentences = harness.query_all_by(|node| node.value().is_some_and(|text| text.contains("Drag a handle")));
+        assert_eq!(sentences.count(), 1);
+        harness.check_accessibility();
+        harness.get_by_label("Got it").click();
+        harness.run();
+        assert!(!harness.state().hinting());
+    }
+}
+
+#[test]
+fn every_read_out_is_explained_with_its_formula_in_letters_the_font_has() {
+    let harness = usual();
+    for readout in &harness.state().session().analysis().unwrap().readouts {
+        let node = harness.get_by_role_and_label(Role::Button, readout.name);
+        let term = terms::find(readout.key).unwrap();
+        let description = node.accesskit_node().description().unwrap_or_default();
+        assert!(description.contains(term.formula), "{}: {description}", readout.key);
+    }
+    let font = egui::FontId::proportional(13.0);
+    for term in terms::TERMS {
+        for letter in term.name.chars().chain(term.text.chars()).chain(term.formula.chars()) {
+            let there = letter == '\n' || harness.ctx.fonts_mut(|fonts| fonts.has_glyph(&font, letter));
+            assert!(there, "{letter} of {}", term.key);
         }
     }
 }

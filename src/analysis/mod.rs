@@ -15,6 +15,7 @@ mod remarks;
 mod requirement;
 mod result;
 mod steps;
+pub mod terms;
 #[cfg(test)]
 mod tests;
 

@@ -327,6 +327,13 @@ pub(super) static COMMANDS: &[Row] = &[
         "A list of all commands to search.",
         Command::ListCommands,
     ),
+    row(
+        "Show the hint",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F1)),
+        "Three sentences for who is new here.",
+        Command::Hint(true),
+    ),
 ];
 
 #[cfg(test)]
