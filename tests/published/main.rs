@@ -13,5 +13,6 @@ mod lossless;
 mod random;
 mod reference;
 mod registry;
+mod sampled;
 mod switched;
 mod textbook;
