@@ -11,11 +11,13 @@ mod crossover_window;
 mod curves;
 mod ledger;
 pub mod loop_model;
+pub mod proposal;
 mod readouts;
 mod remarks;
 mod requirement;
 mod result;
 mod steps;
+pub mod terms;
 #[cfg(test)]
 mod tests;
 

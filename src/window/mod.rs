@@ -9,7 +9,6 @@
 //! place in the curve by construction, at every size and scale.
 
 mod app;
-mod axis;
 mod bar;
 mod bode;
 mod command;
@@ -17,12 +16,16 @@ mod conditions;
 mod crossover;
 mod dialogs;
 mod drawing;
+mod explain;
+mod export;
 mod files;
 mod findings;
 mod form;
 mod held;
+mod hint;
 mod history;
 mod icon;
+mod keep;
 mod labels;
 mod lanes;
 mod layout;
@@ -30,14 +33,18 @@ mod ledger;
 mod legend;
 mod marks;
 mod new_design;
+mod on_disk;
 mod operating;
 mod parts;
 mod perform;
 mod plot;
 mod readouts;
+mod recents;
+mod recovery;
 mod responses;
 mod review;
 mod run;
+mod safety;
 mod session;
 mod stage;
 mod steps;
@@ -47,10 +54,13 @@ mod verdict;
 mod view;
 mod what_if;
 
+use crate::figure::axis;
+
 pub use app::App;
-pub use command::{Command, Curve};
+pub use command::{Command, Curve, Exported};
 pub use held::{Held, MOST_HELD};
 pub use history::{Gesture, History};
+pub use keep::DataFolder;
 pub use run::{WindowError, run};
 pub use session::{BadText, Document, Session};
 pub use view::Message;

@@ -10,6 +10,7 @@ mod cross_checks;
 mod current_mode;
 mod discontinuous;
 mod lossless;
+mod proposal;
 mod random;
 mod reference;
 mod registry;
