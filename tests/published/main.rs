@@ -14,5 +14,6 @@ mod proposal;
 mod random;
 mod reference;
 mod registry;
+mod sampled;
 mod switched;
 mod textbook;
