@@ -8,6 +8,7 @@ mod common;
 mod compensator;
 mod cross_checks;
 mod discontinuous;
+mod filters;
 mod lossless;
 mod random;
 mod reference;
