@@ -5,6 +5,7 @@
 
 mod analyse;
 mod condition;
+mod control_figures;
 mod crossover_window;
 mod curves;
 mod ledger;

@@ -181,13 +181,13 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
         );
         findings.push(Finding::notice("", message).with_hint("lower the highest compensator pole or the crossover"));
     }
-    let share = |c: &ConditionResult, s: &ConditionSummary| {
-        s.operating_point.output_step * high / design.modulator.ramp_at(c.condition.input_voltage)
+    let share = |s: &ConditionSummary| {
+        s.operating_point.output_step * high / shared.law.swing(&s.operating_point, fs.recip())
     };
-    let step = summaries(conditions).map(|(c, s)| (c, share(c, s))).max_by(|a, b| a.1.total_cmp(&b.1));
+    let step = summaries(conditions).map(|(c, s)| (c, share(s))).max_by(|a, b| a.1.total_cmp(&b.1));
     if let Some((condition, share)) = step.filter(|(_, share)| *share > RIPPLE_STEP) {
         let message = format!(
-            "The output's ESR step times the compensator's gain at the switching frequency is {} % of the ramp, above 5 %, at {}: averaged numbers are doubtful.",
+            "The output's ESR step times the compensator's gain at the switching frequency is {} % of what the comparator compares it with, above 5 %, at {}: averaged numbers are doubtful.",
             print_digits(100.0 * share, Unit::One, 2),
             condition.condition.label
         );
@@ -201,15 +201,14 @@ fn step_leaves_limits(design: &CheckedDesign, detail: Option<&Detail>) -> Option
     let detail = detail?;
     let step = detail.steps.load.as_ref()?;
     let (least, greatest) = design.compensator.amplifier.output_limits();
-    let volts = |duty: f64| design.modulator.control_voltage(duty, detail.condition.input_voltage);
-    let (least, greatest) =
-        (least.max(volts(design.modulator.duty_least)), greatest.min(volts(design.modulator.duty_greatest)));
+    let followed = design.law.control_limits(detail.condition.input_voltage);
+    let (least, greatest) = (least.max(followed.0), greatest.min(followed.1));
     let (low, high) = step.control_v;
     let label = &detail.condition.label;
     if high > greatest || low < least {
         let (asked, stop) = if high > greatest { (high, greatest) } else { (low, least) };
         let message = format!(
-            "The load step asks a control voltage of {} and amplifier and duty limits stop at {} ({label}): the real response is slower than the linear one shown.",
+            "The load step asks a control voltage of {} and amplifier, clamp and duty limits stop at {} ({label}): the real response is slower than the linear one shown.",
             print(asked, Unit::Volt),
             print(stop, Unit::Volt)
         );

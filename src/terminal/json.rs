@@ -202,7 +202,7 @@ fn operating_point(detail: &Detail) -> OperatingPoint {
     OperatingPoint {
         duty: point.duty,
         conduction: point.conduction.word(),
-        control_voltage: detail.control_voltage,
+        control_voltage: detail.control.control_voltage,
         input_current: point.input_current,
         conduction_loss: point.conduction_loss,
         boundary_load: detail.boundary_load,

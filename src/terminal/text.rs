@@ -89,7 +89,7 @@ fn operating_point(text: &mut String, detail: &Detail) {
     }
     row(text, "Input current", &amperes(point.input_current));
     row(text, "Conduction losses", &print(point.conduction_loss, Unit::Watt));
-    row(text, "Control voltage", &print(detail.control_voltage, Unit::Volt));
+    row(text, "Control voltage", &print(detail.control.control_voltage, Unit::Volt));
     if let Some(load) = detail.boundary_load {
         row(text, "Discontinuous below", &format!("{} of load", amperes(load)));
     }

@@ -7,6 +7,7 @@
 mod common;
 mod compensator;
 mod cross_checks;
+mod current_mode;
 mod discontinuous;
 mod filters;
 mod lossless;
