@@ -8,17 +8,25 @@ mod condition;
 mod control_figures;
 mod crossover_window;
 mod curves;
+mod filter_readouts;
+mod filter_remarks;
+mod filter_result;
+mod impedance;
 mod ledger;
 pub mod loop_model;
 mod readouts;
 mod remarks;
 mod requirement;
 mod result;
+mod stability_remarks;
 mod steps;
 #[cfg(test)]
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use filter_result::{
+    Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
+};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, CrossoverWindow, Curves, Detail, Ledger, LedgerRole,
     LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step, StepFigures, Steps, WindowEdge, Worst,

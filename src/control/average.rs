@@ -13,7 +13,9 @@ use crate::compensator::{Amplifier, Anchor, Compensator, Kind, OpAmp, Parts, Tra
 use crate::converter::AveragedModel;
 use crate::converter::signals::{DUTY, INPUT_VOLTAGE, LOAD_CURRENT, SWITCHED_CURRENT};
 use crate::finding::Finding;
-use crate::linear::{Complex, FactoredResponse, FrequencyResponse, LinearError, Port, StateSpace, Wire, Zpk, pade_delay};
+use crate::linear::{
+    Complex, FactoredResponse, FrequencyResponse, LinearError, Port, StateSpace, Wire, Zpk, pade_delay,
+};
 use crate::quantity::{Choices, Unit, print};
 use nalgebra::DMatrix;
 
@@ -83,8 +85,14 @@ impl AverageCurrent {
             c3: 0.0,
             feedforward: 0.0,
         };
-        let inner =
-            Compensator { kind: Kind::Two, amplifier, anchor: Anchor::Upper, has_feedforward: false, parts, reference: 0.0 };
+        let inner = Compensator {
+            kind: Kind::Two,
+            amplifier,
+            anchor: Anchor::Upper,
+            has_feedforward: false,
+            parts,
+            reference: 0.0,
+        };
         AverageCurrent { ohms: get("control.sense.gain"), filter_s: get("control.sense.filter"), inner, ramp }
     }
 
@@ -214,8 +222,7 @@ impl AverageCurrent {
             Port { name: INPUT_VOLTAGE, part: LINE, port: "line" },
             Port { name: LOAD_CURRENT, part: STAGE, port: LOAD_CURRENT },
         ];
-        let outputs: Vec<Port<'_>> =
-            stage.outputs.iter().map(|name| Port { name, part: STAGE, port: name }).collect();
+        let outputs: Vec<Port<'_>> = stage.outputs.iter().map(|name| Port { name, part: STAGE, port: name }).collect();
         StateSpace::connect(&parts, &wires, &inputs, &outputs)
     }
 }

@@ -89,8 +89,8 @@ impl Rested {
         let idle = decay(period - time - second);
         let (up_decay, down_decay) = (decay(time), decay(second));
         // What the filter still holds as the switch closes.
-        let held = idle * filter * (down * (one - down_decay) - slope * (one - up_decay) * down_decay)
-            / (one - decay(period));
+        let held =
+            idle * filter * (down * (one - down_decay) - slope * (one - up_decay) * down_decay) / (one - decay(period));
         let seen = time - delay;
         Rested { sensed: slope * (seen - filter) + (held + slope * filter) * decay(seen) }
     }

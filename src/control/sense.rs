@@ -171,7 +171,8 @@ pub(super) fn clamp_too_low(clamp: f64, nothing: f64) -> Finding {
         print(clamp, Unit::Volt),
         print(nothing, Unit::Volt)
     );
-    Finding::problem("control.clamp", message).with_hint("enter the data sheet's greatest control voltage, or leave it empty")
+    Finding::problem("control.clamp", message)
+        .with_hint("enter the data sheet's greatest control voltage, or leave it empty")
 }
 
 impl Edge {

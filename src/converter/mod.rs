@@ -9,6 +9,7 @@ mod bank;
 mod cell;
 mod drawing;
 mod entries;
+mod filter_damping;
 mod filter_entries;
 mod filter_figures;
 #[cfg(test)]
@@ -34,6 +35,7 @@ pub use bank::{BankInductance, Branch};
 pub use drawing::StageDrawing;
 pub use drawing::{Reach, Topology, sketch};
 pub use entries::{CHOICES, ENTRIES, applies};
+pub use filter_damping::OptimumDamping;
 pub use filter_values::{InputFilter, SecondStage};
 pub use filters::Damping;
 pub use landmark::{Landmark, Textbook};

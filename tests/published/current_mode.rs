@@ -8,15 +8,7 @@ use polewright::control::Sampling;
 use polewright::design::Design;
 
 /// A lossless stage in current mode at one condition: volts per ampere 1, no delay, no blanking, ramp in V/s = A/s.
-fn programmed(
-    topology: &str,
-    mode: &str,
-    vin: f64,
-    vout: f64,
-    load: f64,
-    ramp: f64,
-    values: &[(&str, f64)],
-) -> Design {
+fn programmed(topology: &str, mode: &str, vin: f64, vout: f64, load: f64, ramp: f64, values: &[(&str, f64)]) -> Design {
     let mut design = lossless(topology, &[]);
     for (path, key) in [("control.mode", mode), ("control.sense", "gain"), ("control.slope", "rate")] {
         design.set_from_text(path, key).expect("an option");
