@@ -272,6 +272,7 @@ fn detailed(
     let stage_condition = condition.of_stage(&design.stage);
     let plain = worked.input_filter.as_ref().map_or(model, |(interface, _)| &interface.without);
     let landmarks = design.stage.landmarks(&stage_condition, plain.plant.zpk());
+    let landmarks = shared.law.landmarks(landmarks, plain.plant.zpk(), &plain.controlled);
     let input_filter =
         worked.input_filter.as_ref().zip(design.stage.input_filter).map(|((interface, result), filter)| {
             InputFilterDetail {

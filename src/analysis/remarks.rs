@@ -1,6 +1,7 @@
 //! Remarks about the results: what makes averaged numbers doubtful, what misses a requirement, what common practice says.
 
 use super::condition::NOMINAL;
+use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
 use super::filter_remarks::filter_remarks;
 use super::loop_model::Shared;
@@ -34,6 +35,7 @@ pub(super) fn remarks(
     findings.extend(conditionally_stable(conditions, detail));
     findings.extend(what_if_unstable(detail));
     findings.extend(filter_remarks(design, detail, conditions));
+    findings.extend(control_remarks(design, shared, detail, conditions));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));

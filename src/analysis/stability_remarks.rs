@@ -7,14 +7,19 @@ use crate::finding::Finding;
 use crate::linear::Verdict;
 use crate::quantity::{Unit, print, print_digits};
 
+const SUBHARMONIC_HINT: &str = "the current loop needs more compensating ramp; the voltage loop cannot mend it";
 const UNSTABLE_HINT: &str = "lower the gain, or move zeros down and poles up to gain phase at the crossover";
 
 /// Unstable and undecided loops, alike ones taken together. One that its input filter makes unstable is told with the filter.
 pub(super) fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
     let mut findings: Vec<Finding> = summaries(conditions)
         .filter(|(_, summary)| !caused_by_filter(summary.input_filter.as_ref()))
-        .filter_map(|(condition, summary)| not_stable(&summary.loop_gain.verdict, &condition.condition.label))
-        .map(|told| Finding::problem("", told).with_hint(UNSTABLE_HINT))
+        .filter_map(|(condition, summary)| {
+            let told = not_stable(&summary.loop_gain.verdict, &condition.condition.label)?;
+            let subharmonic = summary.control.sampling.is_some_and(|s| s.subharmonic());
+            let hint = if subharmonic { SUBHARMONIC_HINT } else { UNSTABLE_HINT };
+            Some(Finding::problem("", told).with_hint(hint))
+        })
         .collect();
     if findings.len() > 2 {
         let more = findings.len() - 1;

@@ -184,6 +184,16 @@ impl ControlLaw {
         if let Mode::Current(edge, sense) = &self.mode { Some((*edge, sense)) } else { None }
     }
 
+    /// The mode's word in files and JSON.
+    pub fn word(&self) -> &'static str {
+        match self.mode {
+            Mode::Voltage(_) => "voltage",
+            Mode::Current(Edge::Peak, _) => "peak-current",
+            Mode::Current(Edge::Valley, _) => "valley-current",
+            Mode::Average(_) => "average-current",
+        }
+    }
+
     /// Whether the duty ratio is set by a ramp alone.
     pub fn voltage_mode(&self) -> bool {
         matches!(self.mode, Mode::Voltage(_))

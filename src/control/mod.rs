@@ -10,11 +10,13 @@
 //! | `sampling` | slope factor, quality factor of the sampling pair, subharmonic boundary |
 //! | `current` | the controlled stage of peak and valley current mode |
 //! | `rested` | the same where the current starts every period from rest |
+//! | `landmarks` | the landmarks that current mode leaves of the stage's |
 //! | `average` | average current mode: inner compensator, inner loop |
 
 mod average;
 mod current;
 mod entries;
+mod landmarks;
 mod law;
 mod modulator;
 mod rested;

@@ -6,14 +6,21 @@ use super::command::{COMMANDS, Command};
 use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
-use super::{bar, recents, recovery};
+use super::{bar, new_design, recents, recovery};
+
+/// Width of a dialog [points].
+const DIALOG: f32 = 520.0;
 
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(mut dialog) = desk.view.dialog.clone() else { return };
     let frame = Frame::popup(ui.style()).inner_margin(18);
     let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
-        ui.set_width(520.0);
+        if dialog == Dialog::New {
+            new_design::new_design_ui(ui, desk);
+            return;
+        }
+        ui.set_width(DIALOG.min(ui.ctx().content_rect().width() - 60.0));
         match &mut dialog {
             Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),

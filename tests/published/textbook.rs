@@ -73,7 +73,7 @@ fn the_buck_without_compensator() {
     flat_third(&mut design);
     let detail = nominal(&design, &[10.0, 5e3]);
     assert_relative("duty ratio", detail.operating_point.duty, 15.0 / 28.0, 1e-9);
-    assert_relative("control voltage (printed 2.14 V)", detail.control_voltage, 2.14286, 1e-5);
+    assert_relative("control voltage (printed 2.14 V)", detail.control.control_voltage, 2.14286, 1e-5);
     assert_relative("LC resonance (printed 1 kHz)", landmark(&detail, "lc-resonance"), 1006.6, 1e-4);
     assert_relative("Gd0/VM (printed 28 V / 4 V)", ratio(detail.curves.plant_db[0]), 7.0, PUBLISHED);
     // Recomputed; printed −20.6 dB is asymptotic.

@@ -210,7 +210,8 @@ fn load_file(file: &Path) -> Result<Settings, String> {
 pub(super) fn save(file: &Path, settings: &Settings) -> io::Result<()> {
     let kept = Kept { look: settings.look, folder: settings.folder.as_deref().map(path_text::to_text) };
     let pretty = ron::ser::PrettyConfig::new().new_line("\n");
-    let text = ron::ser::to_string_pretty(&kept, pretty).map_err(io::Error::other)?;
+    let mut text = ron::ser::to_string_pretty(&kept, pretty).map_err(io::Error::other)?;
+    text.push('\n');
     replace(file, text.as_bytes())
 }
 
