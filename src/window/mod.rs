@@ -9,7 +9,6 @@
 //! place in the curve by construction, at every size and scale.
 
 mod app;
-mod axis;
 mod bar;
 mod bode;
 mod command;
@@ -18,6 +17,7 @@ mod crossover;
 mod dialogs;
 mod drawing;
 mod explain;
+mod export;
 mod files;
 mod findings;
 mod form;
@@ -25,6 +25,7 @@ mod held;
 mod hint;
 mod history;
 mod icon;
+mod keep;
 mod labels;
 mod lanes;
 mod layout;
@@ -32,14 +33,18 @@ mod ledger;
 mod legend;
 mod marks;
 mod new_design;
+mod on_disk;
 mod operating;
 mod parts;
 mod perform;
 mod plot;
 mod readouts;
+mod recents;
+mod recovery;
 mod responses;
 mod review;
 mod run;
+mod safety;
 mod session;
 mod stage;
 mod steps;
@@ -49,10 +54,13 @@ mod verdict;
 mod view;
 mod what_if;
 
+use crate::figure::axis;
+
 pub use app::App;
-pub use command::{Command, Curve};
+pub use command::{Command, Curve, Exported};
 pub use held::{Held, MOST_HELD};
 pub use history::{Gesture, History};
+pub use keep::DataFolder;
 pub use run::{WindowError, run};
 pub use session::{BadText, Document, Session};
 pub use view::Message;

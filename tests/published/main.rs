@@ -7,6 +7,8 @@
 mod common;
 mod compensator;
 mod cross_checks;
+mod current_mode;
+mod discontinuous;
 mod lossless;
 mod proposal;
 mod random;

@@ -89,8 +89,7 @@ fn best_of(start: &Design) -> Result<Try, Vec<Finding>> {
         load_current: checked.stage.load_currents[1],
         output_voltage: checked.stage.output_voltage,
     };
-    let model =
-        LoopModel::new(&checked.stage, &checked.modulator, &shared, &condition).map_err(|finding| vec![finding])?;
+    let model = LoopModel::new(&checked.stage, &shared, &condition).map_err(|finding| vec![finding])?;
     let (aim_hz, _) = aim(&checked);
     let mut best: Option<Try> = None;
     let mut refused = Finding::problem("compensator", "No compensator could be placed.");
