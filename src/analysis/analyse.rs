@@ -1,6 +1,7 @@
 //! The analysis itself: nine conditions at every edit, one of them in full.
 
 use super::condition::index_of;
+use super::control_figures::control_figures;
 use super::crossover_window::window;
 use super::curves::curves;
 use super::ledger::ledger;
@@ -8,13 +9,13 @@ use super::loop_model::{LoopModel, Shared, model_finding};
 use super::readouts::readouts;
 use super::remarks::remarks;
 use super::requirement::verdict;
-use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult, Steps};
+use super::result::{
+    Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, Detail, Level, LoopResult, Steps,
+};
 use super::steps::{load_figures, steps};
-use crate::converter::Conduction;
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{FrequencyResponse, Modes, Zpk, margins};
-use crate::quantity::{Unit, print};
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// Which condition is shown in full.
@@ -180,6 +181,7 @@ struct Worked {
     /// Modes of the closed loop, when it is stable.
     modes: Option<Modes>,
     loop_gain: LoopResult,
+    control: ControlFigures,
     load_step: Option<super::result::StepFigures>,
     right_half_plane_zero_hz: Option<f64>,
 }
@@ -191,6 +193,7 @@ impl Worked {
         ConditionSummary {
             operating_point: self.model.averaged.operating_point,
             loop_gain: self.loop_gain,
+            control: self.control,
             load_step: self.load_step,
             right_half_plane_zero_hz: self.right_half_plane_zero_hz,
             loop_db,
@@ -201,8 +204,8 @@ impl Worked {
 
 fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Worked, Finding> {
     let stage_condition = condition.of_stage(&design.stage);
-    let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
-    refuse_unmodelled(design, condition, &model)?;
+    let model = LoopModel::new(&design.stage, shared, &stage_condition)?;
+    refuse_out_of_limits(design, &model)?;
     let fs = design.stage.switching_frequency;
     let mut margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
     // Far above the band the loop gain dies out and |1 + T| tends to one, so its least value is no more than that.
@@ -217,25 +220,15 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     };
     let load_step =
         modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
-    let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
-    Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
+    let control = control_figures(&model, fs * SEARCH_FROM, fs * SEARCH_TO).map_err(|e| model_finding(&e))?;
+    let right_half_plane_zero_hz = model.right_half_plane_zero_hz(&design.stage).map_err(|e| model_finding(&e))?;
+    Ok(Worked { model, modes, loop_gain, control, load_step, right_half_plane_zero_hz })
 }
 
-/// Conditions outside what is modelled or can be held: discontinuous conduction, a duty ratio beyond the modulator's limits,
-/// a control voltage beyond the amplifier's.
-fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &LoopModel) -> Result<(), Finding> {
+/// Conditions that cannot be held: a duty ratio beyond the modulator's limits.
+fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(), Finding> {
     let point = &model.averaged.operating_point;
-    if point.conduction == Conduction::Discontinuous {
-        let boundary = design.stage.boundary_load(&condition.of_stage(&design.stage));
-        let below = boundary.map_or(String::new(), |b| format!(" below {}", print(b, Unit::Ampere)));
-        let message = format!(
-            "The stage runs in discontinuous conduction{below}, and a load of {} is not modelled.",
-            print(condition.load_current, Unit::Ampere)
-        );
-        return Err(Finding::problem("stage.load.least", message)
-            .with_hint("raise the load or the inductance, or choose a synchronous rectifier"));
-    }
-    let (least, greatest) = (design.modulator.duty_least, design.modulator.duty_greatest);
+    let (least, greatest) = (design.law.duty_least, design.law.duty_greatest);
     if !(least..=greatest).contains(&point.duty) {
         let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
         let message =
@@ -255,13 +248,14 @@ fn detailed(
     let model = &worked.model;
     let stage_condition = condition.of_stage(&design.stage);
     let landmarks = design.stage.landmarks(&stage_condition, model.plant.zpk());
+    let landmarks = shared.law.landmarks(landmarks, model.plant.zpk(), &model.controlled);
     let reference = Zpk::from_state_space(&shared.compensator, 0, 1).map_err(|e| model_finding(&e))?;
     let scale = design.compensator.dc_output_voltage() / design.compensator.reference;
     let curves = curves(model, shared, &reference, &request.frequencies_hz, scale).map_err(|e| model_finding(&e))?;
     let crossover = worked.loop_gain.margins.headline_crossover();
     let ledger = crossover.map(|c| ledger(model, shared, &design.compensator, &landmarks, c.frequency_hz));
     let operating_point = model.averaged.operating_point.clone();
-    let control_voltage = design.modulator.control_voltage(operating_point.duty, condition.input_voltage);
+    let control_voltage = worked.control.control_voltage;
     let crossover_hz = crossover.map(|c| c.frequency_hz);
     let steps = match &worked.modes {
         Some(modes) => steps(design, modes, crossover_hz, control_voltage, request.step_points),
@@ -277,7 +271,8 @@ fn detailed(
         curves,
         steps: steps.map_err(|e| model_finding(&e))?,
         ledger,
-        control_voltage,
+        control: worked.control.clone(),
+        ramp: shared.law.current().map(|(_, sense)| sense.ramp()),
     })
 }
 

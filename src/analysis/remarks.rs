@@ -1,6 +1,7 @@
 //! Remarks about the results: what makes averaged numbers doubtful, what misses a requirement, what common practice says.
 
 use super::condition::NOMINAL;
+use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
 use super::loop_model::Shared;
 use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict};
@@ -30,6 +31,7 @@ pub(super) fn remarks(
     findings.extend(no_outcome(conditions));
     findings.extend(unstable(conditions));
     findings.extend(what_if_unstable(detail));
+    findings.extend(control_remarks(design, shared, detail, conditions));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));
@@ -71,7 +73,7 @@ fn no_outcome(conditions: &[ConditionResult]) -> Vec<Finding> {
         .collect()
 }
 
-fn summaries(conditions: &[ConditionResult]) -> impl Iterator<Item = (&ConditionResult, &ConditionSummary)> {
+pub(super) fn summaries(conditions: &[ConditionResult]) -> impl Iterator<Item = (&ConditionResult, &ConditionSummary)> {
     conditions.iter().filter_map(|c| c.outcome.as_ref().ok().map(|s| (c, s)))
 }
 
@@ -82,7 +84,9 @@ fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
     for (condition, summary) in summaries(conditions) {
         let label = &condition.condition.label;
         if let Some(told) = not_stable(&summary.loop_gain.verdict, label) {
-            findings.push(Finding::problem("", told).with_hint(UNSTABLE_HINT));
+            let subharmonic = summary.control.sampling.is_some_and(|s| s.subharmonic());
+            let hint = if subharmonic { SUBHARMONIC_HINT } else { UNSTABLE_HINT };
+            findings.push(Finding::problem("", told).with_hint(hint));
         } else if matches!(summary.loop_gain.verdict, Verdict::Stable { conditionally: true }) {
             conditional.push((label, summary));
         }
@@ -136,6 +140,8 @@ fn beyond_the_model(conditions: &[ConditionResult]) -> Option<Finding> {
     Some(Finding::problem("", message).with_hint("lower the gain or raise the switching frequency"))
 }
 
+const SUBHARMONIC_HINT: &str = "the current loop needs more compensating ramp; the voltage loop cannot mend it";
+
 const UNSTABLE_HINT: &str = "lower the gain, or move zeros down and poles up to gain phase at the crossover";
 
 /// The sentence about a loop that is not stable, or whose stability is undecided.
@@ -181,13 +187,12 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
         );
         findings.push(Finding::notice("", message).with_hint("lower the highest compensator pole or the crossover"));
     }
-    let share = |c: &ConditionResult, s: &ConditionSummary| {
-        s.operating_point.output_step * high / design.modulator.ramp_at(c.condition.input_voltage)
-    };
-    let step = summaries(conditions).map(|(c, s)| (c, share(c, s))).max_by(|a, b| a.1.total_cmp(&b.1));
+    let share =
+        |s: &ConditionSummary| s.operating_point.output_step * high / shared.law.swing(&s.operating_point, fs.recip());
+    let step = summaries(conditions).map(|(c, s)| (c, share(s))).max_by(|a, b| a.1.total_cmp(&b.1));
     if let Some((condition, share)) = step.filter(|(_, share)| *share > RIPPLE_STEP) {
         let message = format!(
-            "The output's ESR step times the compensator's gain at the switching frequency is {} % of the ramp, above 5 %, at {}: averaged numbers are doubtful.",
+            "The output's ESR step times the compensator's gain at the switching frequency is {} % of what the comparator compares it with, above 5 %, at {}: averaged numbers are doubtful.",
             print_digits(100.0 * share, Unit::One, 2),
             condition.condition.label
         );
@@ -201,15 +206,14 @@ fn step_leaves_limits(design: &CheckedDesign, detail: Option<&Detail>) -> Option
     let detail = detail?;
     let step = detail.steps.load.as_ref()?;
     let (least, greatest) = design.compensator.amplifier.output_limits();
-    let volts = |duty: f64| design.modulator.control_voltage(duty, detail.condition.input_voltage);
-    let (least, greatest) =
-        (least.max(volts(design.modulator.duty_least)), greatest.min(volts(design.modulator.duty_greatest)));
+    let followed = design.law.control_limits(detail.condition.input_voltage);
+    let (least, greatest) = (least.max(followed.0), greatest.min(followed.1));
     let (low, high) = step.control_v;
     let label = &detail.condition.label;
     if high > greatest || low < least {
         let (asked, stop) = if high > greatest { (high, greatest) } else { (low, least) };
         let message = format!(
-            "The load step asks a control voltage of {} and amplifier and duty limits stop at {} ({label}): the real response is slower than the linear one shown.",
+            "The load step asks a control voltage of {} and amplifier, clamp and duty limits stop at {} ({label}): the real response is slower than the linear one shown.",
             print(asked, Unit::Volt),
             print(stop, Unit::Volt)
         );

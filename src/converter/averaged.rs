@@ -6,15 +6,14 @@
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::{BankInductance, bank_inductance};
-use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
 use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
 use super::signals::{INPUTS, OUTPUTS};
-use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding};
+use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding, with_duty};
 use crate::finding::Finding;
 use crate::linear::{StateSpace, Zpk};
 use crate::quantity::{Unit, print};
-use nalgebra::{DMatrix, DVector, RowDVector};
+use nalgebra::{DMatrix, RowDVector};
 
 /// The stage linearised about one operating point.
 #[derive(Clone, Debug)]
@@ -37,7 +36,9 @@ impl Stage {
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
         let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
         let operating_point = self.figures(condition, &solution);
-        let linearised = match self.intervals_with_inductance(condition) {
+        let with_inductance = self.intervals_with_inductance(condition).filter(|_| solution.pulse.is_none());
+        let inductance_left_out = with_inductance.is_none();
+        let linearised = match with_inductance {
             None => self.linearise(&solution),
             Some(intervals) => {
                 let intervals = intervals.map_err(|e| circuit_finding(&e))?;
@@ -45,18 +46,21 @@ impl Stage {
             }
         };
         let stage = linearised.ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
-        let bank_inductance = if self.bank_inductance_averaged() {
-            None
-        } else {
+        let bank_inductance = if inductance_left_out {
             let resistance = condition.output_voltage / condition.load_current;
             bank_inductance(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
+        } else {
+            None
         };
         Ok(AveragedModel { operating_point, stage, bank_inductance })
     }
 
-    fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
+    pub(super) fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
         let (i, x, duty) = (&solution.intervals, &solution.x, solution.duty);
         let rows = self.averaged_rows();
+        if let Some(pulse) = &solution.pulse {
+            return i.linearise_pulse(solution, pulse, &rows, self.switching_frequency.recip());
+        }
         let a = i.mix(duty, |e| &e.a);
         let b = i.mix(duty, |e| &e.b);
         let c = i.mix(duty, |e| &e.c).select_rows(&rows);
@@ -109,15 +113,6 @@ impl Stage {
 fn stacked(top: &DMatrix<f64>, rows: &[&RowDVector<f64>]) -> DMatrix<f64> {
     DMatrix::from_fn(top.nrows() + rows.len(), top.ncols(), |r, k| {
         if r < top.nrows() { top[(r, k)] } else { rows[r - top.nrows()][k] }
-    })
-}
-
-/// Columns of an averaged model's inputs: the duty ratio's, and the two of the netlist's that it keeps.
-fn with_duty(duty: &DVector<f64>, netlist: &DMatrix<f64>) -> DMatrix<f64> {
-    DMatrix::from_fn(netlist.nrows(), INPUTS.len(), |r, k| match k {
-        0 => duty[r],
-        1 => netlist[(r, INPUT_VOLTAGE)],
-        _ => netlist[(r, LOAD_CURRENT)],
     })
 }
 

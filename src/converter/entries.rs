@@ -136,7 +136,7 @@ pub static ENTRIES: &[Entry] = &[
     ),
     Entry::new(
         "stage.synchronous.resistance",
-        "Synchronous switch resistance",
+        "Rectifier resistance",
         Unit::Ohm,
         Bounds::NonNegative,
         0.012,
@@ -146,7 +146,7 @@ pub static ENTRIES: &[Entry] = &[
     branch("stage.bank.1.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 47e-6, CAPACITANCE_HELP),
     branch(
         "stage.bank.1.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
@@ -158,7 +158,7 @@ pub static ENTRIES: &[Entry] = &[
     branch("stage.bank.2.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 100e-6, CAPACITANCE_HELP),
     branch(
         "stage.bank.2.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
@@ -170,7 +170,7 @@ pub static ENTRIES: &[Entry] = &[
     branch("stage.bank.3.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 10e-6, CAPACITANCE_HELP),
     branch(
         "stage.bank.3.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
@@ -182,7 +182,7 @@ pub static ENTRIES: &[Entry] = &[
     branch("stage.bank.4.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 1e-6, CAPACITANCE_HELP),
     branch(
         "stage.bank.4.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,

@@ -11,12 +11,17 @@ mod drawing;
 mod entries;
 mod landmark;
 mod operating_point;
+mod pulse;
+mod pulse_point;
+#[cfg(test)]
+mod pulse_tests;
 mod registry;
 pub mod signals;
 mod stage;
 #[cfg(test)]
 mod tests;
 mod topologies;
+mod waves;
 
 pub use averaged::AveragedModel;
 pub use bank::{BankInductance, Branch};

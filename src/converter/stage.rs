@@ -7,10 +7,11 @@ use super::drawing::{
 };
 use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
 use super::registry::find;
+use super::signals::INPUTS;
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
 use crate::finding::Finding;
 use crate::quantity::{Choices, Values};
-use nalgebra::DVector;
+use nalgebra::{DMatrix, DVector};
 
 /// How the load current answers the output voltage.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -270,6 +271,15 @@ impl Stage {
         let cell = SwitchedCell::new(idle, &off, drawn.rows.rectifier_current)?;
         Ok(Intervals { on: on.independent().0, off, cell, inputs })
     }
+}
+
+/// Columns of an averaged model's inputs: the duty ratio's, and the two of the netlist's that it keeps.
+pub(super) fn with_duty(duty: &DVector<f64>, netlist: &DMatrix<f64>) -> DMatrix<f64> {
+    DMatrix::from_fn(netlist.nrows(), INPUTS.len(), |r, k| match k {
+        0 => duty[r],
+        1 => netlist[(r, INPUT_VOLTAGE)],
+        _ => netlist[(r, LOAD_CURRENT)],
+    })
 }
 
 /// A netlist drawn and compiled for both intervals.

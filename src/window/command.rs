@@ -19,6 +19,21 @@ pub enum Curve {
     Loop,
 }
 
+/// What can be put out into a file.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Exported {
+    /// The Bode plot.
+    Bode,
+    /// The time plot.
+    Step,
+    /// The closed-loop plot.
+    Response,
+    /// The frequency curves.
+    Curves,
+    /// The time curve.
+    StepCurve,
+}
+
 /// A request to the window, from a menu, a key, a field or a handle.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Command {
@@ -38,6 +53,19 @@ pub enum Command {
     SaveAs,
     /// Save under this path.
     SavePath(PathBuf),
+    /// Ask where to put something out.
+    Export(Exported),
+    /// Put it out into this file.
+    ExportPath {
+        /// What is put out.
+        what: Exported,
+        /// The file.
+        path: PathBuf,
+    },
+    /// Put the parts list onto the clipboard.
+    CopyParts,
+    /// Put the margin table onto the clipboard.
+    CopyMargins,
     /// Let the system's dialog choose a path.
     Browse,
     /// Close the window.
@@ -48,6 +76,22 @@ pub enum Command {
     SaveAndGoOn,
     /// Close the question or the list that is open.
     Dismiss,
+    /// Save over this file although it changed since it was read.
+    Overwrite(PathBuf),
+    /// Take over what the file holds now, as one step.
+    Reload,
+    /// Keep the design as it is here although its file changed.
+    KeepMine,
+    /// Look for unsaved work that was left behind, and offer it.
+    FindUnsaved,
+    /// Take up the work in this journal.
+    Recover(PathBuf),
+    /// Remove this journal.
+    DiscardJournal(PathBuf),
+    /// Take this file off the list of recent files.
+    ForgetRecent(PathBuf),
+    /// Empty the list of recent files.
+    ForgetAllRecent,
 
     /// Take the last step back.
     Undo,
@@ -184,6 +228,8 @@ impl Command {
 pub(super) enum Menu {
     /// Files.
     Design,
+    /// Pictures, curves, tables.
+    Export,
     /// Changes.
     Edit,
     /// What is seen.
@@ -224,9 +270,74 @@ const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
 
 /// The command table, in the order of the menus.
 pub(super) static COMMANDS: &[Row] = &[
+    row(
+        "New design…",
+        Menu::Design,
+        Some(key(CTRL, Key::N)),
+        "Begin a design from what it has to do; every assumption is told first.",
+        Command::NewDesign,
+    ),
     row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
     row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
     row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
+    row(
+        "Copy parts list",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::P)),
+        "Put the compensator's parts onto the clipboard, with tabs between the columns.",
+        Command::CopyParts,
+    ),
+    row(
+        "Copy margin table",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::M)),
+        "Put all read-outs with their worst conditions and requirements onto the clipboard.",
+        Command::CopyMargins,
+    ),
+    row(
+        "Bode plot as picture…",
+        Menu::Export,
+        Some(key(CTRL, Key::E)),
+        "Save gain and phase as PNG or SVG.",
+        Command::Export(Exported::Bode),
+    ),
+    row(
+        "Time plot as picture…",
+        Menu::Export,
+        None,
+        "Save the step response that is shown as PNG or SVG.",
+        Command::Export(Exported::Step),
+    ),
+    row(
+        "Closed-loop plot as picture…",
+        Menu::Export,
+        None,
+        "Save the closed-loop response that is shown as PNG or SVG.",
+        Command::Export(Exported::Response),
+    ),
+    row(
+        "Frequency curves as CSV…",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::E)),
+        "Save all frequency curves of the condition shown as comma-separated values.",
+        Command::Export(Exported::Curves),
+    ),
+    row(
+        "Time curve as CSV…",
+        Menu::Export,
+        None,
+        "Save the step response that is shown as comma-separated values.",
+        Command::Export(Exported::StepCurve),
+    ),
+    row("Reload", Menu::Design, None, "Take over what the file holds now; can be undone.", Command::Reload),
+    row(
+        "Recover unsaved work…",
+        Menu::Design,
+        None,
+        "Offer work that a window left behind unsaved.",
+        Command::FindUnsaved,
+    ),
+    row("Clear recent files", Menu::Design, None, "Empty the list of recent files.", Command::ForgetAllRecent),
     row("Quit", Menu::Design, Some(key(CTRL, Key::Q)), "Close the window.", Command::Quit),
     row("Undo", Menu::Edit, Some(key(CTRL, Key::Z)), "Take the last change back.", Command::Undo),
     row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),
@@ -328,6 +439,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(CTRL, Key::K)),
         "A list of all commands to search.",
         Command::ListCommands,
+    ),
+    row(
+        "Show the hint",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F1)),
+        "Three sentences for who is new here.",
+        Command::Hint(true),
     ),
 ];
 

@@ -9,7 +9,7 @@ use super::plot;
 use super::pointed::Pointed;
 use super::theme::{self, LineStyle, Palette};
 use super::view::Desk;
-use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout};
+use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout, terms};
 use crate::quantity::{self, Unit};
 
 /// Length below which a bar has its number above or below it [points].
@@ -164,17 +164,12 @@ fn landmarks_ui(ui: &mut Ui, stack: &Stack, detail: &Detail, desk: &mut Desk<'_>
         let at = pos2(left, stack.foot.top() + 1.0 + 13.0 * f32::from(row));
         let rect = Rect::from_min_size(at, galley.size());
         ui.painter().galley(at, galley, colour);
-        let help = format!(
-            "{}: {}\n{}{}",
-            landmark.name,
-            quantity::print(landmark.frequency_hz, Unit::Hertz),
-            landmark.formula,
-            if landmark.derived { "\nderived from the model" } else { "" }
-        );
+        let name = || format!("{}: {}", landmark.name, quantity::print(landmark.frequency_hz, Unit::Hertz));
         let id = ui.scope_id().with(("landmark", landmark.key, landmark.name));
         let response = ui.interact(rect.expand(2.0), id, Sense::hover());
+        response.widget_info(|| WidgetInfo::labeled(Role::Label, true, name()));
         desk.view.point(Pointed::Landmark(landmark.key), &response);
-        let _ = response.on_hover_text(help);
+        let _ = super::explain::described(ui, response, || format!("{}\n{}", name(), terms::of_landmark(landmark)));
     }
 }
 
@@ -246,7 +241,7 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
 fn explained_ui(ui: &Ui, rect: Rect, help: &str) {
     let response = ui.interact(rect, ui.scope_id().with("crossover window"), Sense::hover());
     response.widget_info(|| WidgetInfo::labeled(Role::Label, true, help));
-    let _ = response.on_hover_text(help);
+    let _ = super::explain::explained(ui, response, "crossover-window", || help.to_owned());
 }
 
 /// A dotted vertical tick, used for marks of time as well.

@@ -37,6 +37,10 @@ pub struct Document {
 pub struct Session {
     document: Document,
     saved: Design,
+    /// The file does not hold what was last read or saved: it changed, vanished, or the work was recovered.
+    adrift: bool,
+    /// Counts the changes of the document.
+    revision: u64,
     path: Option<PathBuf>,
     history: History<Document>,
     shown: (Level, Level),
@@ -66,6 +70,8 @@ impl Session {
         Session {
             saved: design.clone(),
             document: Document { design, bad_texts: BTreeMap::new() },
+            adrift: false,
+            revision: 0,
             path,
             history: History::default(),
             shown: (Level::Nominal, Level::Nominal),
@@ -82,6 +88,35 @@ impl Session {
             reviewed: None,
             lane_remark: None,
         }
+    }
+
+    /// A session on work that was recovered, its file, and the design in that file. It counts as unsaved.
+    pub(super) fn recovered(document: Document, path: Option<PathBuf>, saved: Option<Design>) -> Self {
+        let mut session = Session::new(document.design, path);
+        session.document.bad_texts = document.bad_texts;
+        session.saved = saved.unwrap_or_else(|| session.saved.clone());
+        session.adrift = true;
+        session
+    }
+
+    /// The document as it stands.
+    pub fn document(&self) -> &Document {
+        &self.document
+    }
+
+    /// Moves with every change of the document.
+    pub(super) fn revision(&self) -> u64 {
+        self.revision
+    }
+
+    /// The design as it was last read or saved.
+    pub(super) fn saved(&self) -> &Design {
+        &self.saved
+    }
+
+    /// Takes note that the file no longer holds what was read or saved, or holds it again.
+    pub(super) fn set_adrift(&mut self, adrift: bool) {
+        self.adrift = adrift;
     }
 
     /// The design as it stands.
@@ -106,7 +141,7 @@ impl Session {
 
     /// True when the design differs from its file, or a field holds text that is in no file.
     pub fn unsaved(&self) -> bool {
-        self.document.design != self.saved || !self.document.bad_texts.is_empty()
+        self.adrift || self.document.design != self.saved || !self.document.bad_texts.is_empty()
     }
 
     /// A session on a design that is in no file yet.
@@ -313,6 +348,7 @@ impl Session {
         if self.document != before {
             self.history.record(name, before, gesture);
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -326,6 +362,7 @@ impl Session {
         if let Some(document) = self.history.undo(&self.document) {
             self.document = document;
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -334,6 +371,7 @@ impl Session {
         if let Some(document) = self.history.redo(&self.document) {
             self.document = document;
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -341,6 +379,7 @@ impl Session {
     pub fn saved_as(&mut self, path: PathBuf, design: Design) {
         self.path = Some(path);
         self.saved = design;
+        self.adrift = false;
     }
 
     /// Checks and analyses the document when it, the condition or the frequencies changed. True when results moved.

@@ -7,7 +7,10 @@
 mod common;
 mod compensator;
 mod cross_checks;
+mod current_mode;
+mod discontinuous;
 mod lossless;
+mod proposal;
 mod random;
 mod reference;
 mod registry;
