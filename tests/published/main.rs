@@ -9,6 +9,7 @@ mod compensator;
 mod cross_checks;
 mod current_mode;
 mod discontinuous;
+mod filters;
 mod lossless;
 mod proposal;
 mod random;
