@@ -1,0 +1,278 @@
+"""Stages under voltage, peak-current, valley-current and average-current control: from control voltage to output, averaged.
+
+Current mode in continuous conduction, derived.  In one period the current is its local average s plus a triangle of slopes M d' (on)
+and -M d (off), M = on slope less off slope, because s' = (on slope) - M d'.  The comparator trips at t_c, the switch follows after the
+delay td.  Peak control compares, through the sense gain Ri and the sense filter F = 1/(1 + s tau), with the control voltage less the ramp:
+
+    vc(t_c) = Ri [F s](t_c) + Ri w(dT - td) + Se (dT - td)
+
+w is the triangle behind the filter in its periodic state.  Without filter w(dT) = M d d' T/2, half the ripple.  Seen from the instant the
+switch opens, vc is td older, and so is s: [F s](t_c) = F s - td s'.  Valley control is the mirror image: w at the end of the off interval,
+ramp -Se (d'T - td).
+
+That holds for slow changes.  For fast ones the sampled current counts: steps M T d^ at the rate fs, seen at their middle, are exactly
+(sT/2) coth(sT/2) times the averaged current, to half the switching frequency 1 + s^2/wn^2 with wn = pi/T (Ridley, "A new, continuous-time
+model for current-mode control", 1991, from memory: He = 1 - sT/2 + s^2/wn^2 counts from the foot of the step, hence his term -sT/2).
+So F s becomes F (1 + s^2/wn^2) s.
+
+Discontinuous: every period starts from rest, so the law is algebraic: vc = Ri w + Se (dT - td) with w = m1 t for t = dT - td, behind a
+rested filter m1 (t - tau (1 - exp(-t/tau))).  Valley control has only its ramp there: vc = -Se (1 - d) T (delay taken off).
+
+Average control: an inner amplifier compares the sensed current, filtered, with the control voltage; its output meets a ramp: d = v/ramp,
+delayed.  What ripple the amplifier leaves on its output changes the slope at the comparator; averaging does not see that.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from amplifiers import Network
+from closed_loop import Loop, pade_modal
+from conduction import STEP, conduct
+
+
+@dataclass
+class Control:
+    """How a control voltage commands the switch."""
+
+    mode: str  # "voltage", "peak-current", "valley-current" or "average-current"
+    sense: float = 0.0  # sense gain [V/A]
+    slope: float = 0.0  # compensating ramp [V/s]
+    filter: float = 0.0  # time constant of the sense filter [s]
+    inner: Network | None = None  # inner amplifier; vout is the sensed current, vref the control voltage
+    ramp: float = 0.0  # ramp of voltage and average-current control [V]
+    divider: float = 1.0  # comparator's volts per volt of control voltage
+    offset: float = 0.0  # control voltage that the comparator sees as nothing [V]
+
+
+def triangle_behind_filter(at_end_of_on, d, m, period, tau, before):
+    """Filtered ripple current `before` [s] the end of the on (or off) interval."""
+    e = 1.0 - d
+    half = m * d * e * period / 2.0
+    if tau == 0.0:
+        return half - m * e * before if at_end_of_on else -half + m * d * before
+    a, b = np.exp(-d * period / tau), np.exp(-e * period / tau)
+    start = tau * m * (1.0 - b) / (1.0 - a * b)  # of the decaying part in the on interval
+    if at_end_of_on:
+        return half - m * e * before - tau * m * e + start * a * np.exp(before / tau)
+    return -half + m * d * before + tau * m * d - tau * m * (1.0 - a) / (1.0 - a * b) * b * np.exp(before / tau)
+
+
+def remainder(control, model, delay, period):
+    """What the law adds to Ri F (1 + s^2/wn^2) s (in discontinuous conduction: all of it), as a function of (d, M, on slope)."""
+    ri, se, tau = control.sense, control.slope, control.filter
+
+    def continuous(d, m, on):
+        peak = control.mode == "peak-current"
+        w = triangle_behind_filter(peak, d, m, period, tau, delay)
+        drift = on - m * (1.0 - d)
+        ramp = se * (d * period - delay) if peak else -se * ((1.0 - d) * period - delay)
+        return ri * (w - delay * drift) + ramp
+
+    def discontinuous(d, m, on):
+        if control.mode == "valley-current":
+            return -se * ((1.0 - d) * period - delay)
+        t = d * period - delay
+        return ri * on * (t - tau * (1.0 - np.exp(-t / tau)) if tau else t) + se * t
+
+    def voltage(d, m, on):
+        return control.ramp * d
+
+    if control.mode == "voltage":
+        return voltage
+    return continuous if model.conduction == "continuous" else discontinuous
+
+
+class Law:
+    """The linearised law v = [Ri F (1 + s^2/wn^2) s] + x-row x + u-row u + d-number d, v the delayed control voltage."""
+
+    def __init__(self, control, model, delay, period, line_to_duty=0.0):
+        function = remainder(control, model, delay, period)
+        point = (model.duty, model.difference.value, model.on_slope.value)
+        gradient = []
+        for k in range(3):
+            z = [complex(value) for value in point]
+            z[k] += 1j * STEP
+            gradient.append(function(*z).imag / STEP)
+        by_d, by_m, by_on = gradient
+        rows = [(by_m, model.difference), (by_on, model.on_slope)]
+        sampled = control.mode in ("peak-current", "valley-current") and model.conduction == "continuous"
+        self.x = sum(g * row.x for g, row in rows)
+        self.u = sum(g * row.u for g, row in rows)
+        self.d = by_d + sum(g * row.d for g, row in rows)
+        # A ramp that follows the input: ramp d^ = v - (d ramp/dvin) D vin^.
+        self.u = self.u - np.array([line_to_duty * control.ramp, 0.0])
+        # The control voltage that holds the point [V].
+        self.value = function(*point) + (control.sense * model.current.value if sampled else 0.0)
+        self.value = control.offset + self.value / control.divider
+
+
+class ControlledLoop(Loop):
+    """One design at one operating condition, in any control and conduction mode."""
+
+    def __init__(self, design, vin, load):
+        self.design, self.vin, self.load = design, vin, load
+        self.control = design.control
+        self.period = 1.0 / design.stage.fs
+        self.model = conduct(design.stage, vin, design.regulated, load)
+        if self.control.mode != "average-current":
+            line = -self.model.duty / vin if design.feedforward else 0.0
+            self.law = Law(self.control, self.model, design.delay, self.period, line)
+
+    @property
+    def sampled(self):
+        """True where a comparator samples a current that never rests."""
+        return self.control.mode in ("peak-current", "valley-current") and self.model.conduction == "continuous"
+
+    @property
+    def fast_multiplier(self):
+        """What a disturbance of the current becomes one period later, for straight-line slopes and continuous conduction."""
+        c, m = self.control, self.model
+        rise, fall, ramp = m.on_slope.value, -m.off_slope, c.slope / c.sense
+        return -(fall - ramp) / (rise + ramp) if c.mode == "peak-current" else -(rise - ramp) / (fall + ramp)
+
+    # --- frequency: scalar algebra at each frequency --------------------------------------------------------------
+
+    def stage_responses(self, s):
+        """Output from (vin, io, control voltage), and the inner loop gain where there is one."""
+        model, control = self.model, self.control
+        states = model.states_at(s)  # from (vin, io, duty)
+        output = model.at(s)
+        late = np.exp(-s * self.design.delay)
+        if control.mode == "average-current":
+            current = model.current.x @ states + np.array([*model.current.u, model.current.d])
+            amplifier, from_control = control.inner.at(s)
+            per_current = -control.sense / (1.0 + s * control.filter) * amplifier * late / control.ramp
+            inner = -per_current * current[:, 2]
+            duty_from_vc = late * from_control / control.ramp / (1.0 + inner)
+            per_current = per_current / (1.0 + inner)
+            duty = np.column_stack([per_current * current[:, 0], per_current * current[:, 1], duty_from_vc])
+        else:
+            law = self.law
+            rows = law.x @ states + np.array([*law.u, law.d])
+            if self.sampled:
+                wn = np.pi / self.period
+                filtered = control.sense * (1.0 + s**2 / wn**2) / (1.0 + s * control.filter)
+                rows = rows + filtered[:, None] * (model.current.x @ states)
+            inner = None
+            duty = np.column_stack([-rows[:, 0], -rows[:, 1], control.divider * late]) / rows[:, [2]]
+        out = output[:, [2]] * duty
+        out[:, :2] += output[:, :2]
+        return out, inner
+
+    def responses(self, frequency):
+        """All transfer functions at the given frequencies [Hz], the delay exact."""
+        s = 2j * np.pi * np.atleast_1d(frequency)
+        out, inner = self.stage_responses(s)
+        compensator, from_reference = self.design.network.at(s)
+        plant = out[:, 2]
+        loop = plant * compensator
+        found = {
+            "plant": plant,
+            "compensator": compensator,
+            "loop": loop,
+            "open_loop_output_impedance": -out[:, 1],
+            "output_impedance": -out[:, 1] / (1.0 + loop),
+            "open_loop_line_to_output": out[:, 0],
+            "line_to_output": out[:, 0] / (1.0 + loop),
+            "reference_to_output": plant * from_reference / (1.0 + loop),
+        }
+        return found if inner is None else found | {"inner_loop": inner}
+
+    # --- state space, the second route ------------------------------------------------------------------------------
+
+    def controlled(self):
+        """(A, B, C, D) of the stage under its control law, inputs (vin, io, control voltage), the delay as its Pade form."""
+        m, control = self.model, self.control
+        a_d, b_d, c_d, d_d = pade_modal(self.design.delay)
+        n_p, n_d = len(m.a), len(a_d)
+        average = control.mode == "average-current"
+        behind = int(average and control.filter > 0.0)
+        extra = len(control.inner.state_space()[0]) if average else int(self.sampled)
+        n = n_p + n_d + extra + behind
+        width = n + 3
+        p, q, e = slice(0, n_p), slice(n_p, n_p + n_d), slice(n_p + n_d, n - behind)
+        vc = np.zeros(width)
+        vc[n + 2] = control.divider
+
+        def rows(x, u=None):
+            """Rows over everything of rows over the stage's states and inputs."""
+            x = np.atleast_2d(x)
+            full = np.zeros((len(x), width))
+            full[:, p] = x
+            if u is not None:
+                full[:, n:n + 2] = u
+            return full
+
+        slopes = np.zeros((n, width))
+        if average:
+            a_i, b_i, c_i, _ = control.inner.state_space()
+            given = np.zeros(width)
+            given[e] = c_i
+        else:
+            given = vc
+        late = d_d * given
+        late[q] += c_d
+        slopes[q, q] = a_d
+        slopes[q, :] += np.outer(b_d, given)
+        natural = rows(m.a, m.b)
+        if average:
+            duty = late / control.ramp
+        else:
+            law = self.law
+            rest = rows(law.x, law.u)[0]
+            drift, gain = natural[0], m.f[0]  # s' = drift + M d
+            if not self.sampled:
+                duty = (late - rest) / law.d
+            elif control.filter == 0.0:
+                # The state is s' itself: no input needs to be differentiated.
+                rate = np.zeros(width)
+                rate[e] = 1.0
+                duty = (rate - drift) / gain
+                wn = np.pi / self.period
+                slopes[e, :] = wn**2 / control.sense * (late - control.sense * rows(m.current.x)[0] - rest - law.d * duty)
+            else:
+                # Filtered current w = state + s'/(wn^2 tau).
+                wn, tau = np.pi / self.period, control.filter
+                k = 1.0 / (wn**2 * tau)
+                state = np.zeros(width)
+                state[e] = 1.0
+                known = control.sense * (state + k * drift) + rest
+                duty = (late - known) / (control.sense * k * gain + law.d)
+                w = state + k * (drift + gain * duty)
+                slopes[e, :] = (rows(m.current.x)[0] - w) / tau
+        slopes[p, :] = natural + np.outer(m.f, duty)
+        out = rows(m.output.x, m.output.u)[0] + m.output.d * duty
+        if average:
+            sensed = control.sense * (rows(m.current.x, m.current.u)[0] + m.current.d * duty)
+            if behind:
+                filtered = np.zeros(width)
+                filtered[n - 1] = 1.0
+                slopes[n - 1] = (sensed - filtered) / control.filter
+                sensed = filtered
+            slopes[e, e] = a_i
+            slopes[e, :] += np.outer(b_i[:, 0], sensed) + np.outer(b_i[:, 1], vc)
+        return slopes[:, :n], slopes[:, n:], out[:n], out[n:]
+
+    def closed(self):
+        """Closed loop (A, B, C, D) with inputs (vin, io, vref) and the output voltage."""
+        a, b, c, d = self.controlled()
+        a_c, b_c, c_c, _ = self.design.network.state_space()
+        n, k = len(a), len(a_c)
+        out_x = np.concatenate([c, d[2] * c_c])
+        out_u = np.array([d[0], d[1], 0.0])
+        big_a, big_b = np.zeros((n + k, n + k)), np.zeros((n + k, 3))
+        big_a[:n, :n] = a
+        big_a[:n, n:] = np.outer(b[:, 2], c_c)
+        big_b[:n, :2] = b[:, :2]
+        big_a[n:, n:] = a_c
+        big_a[n:, :] += np.outer(b_c[:, 0], out_x)
+        big_b[n:, :] = np.outer(b_c[:, 0], out_u)
+        big_b[n:, 2] += b_c[:, 1]
+        return big_a, big_b, out_x, out_u
+
+    def poles(self):
+        """Closed-loop poles [rad/s], slowest first; one of each pair."""
+        found = np.linalg.eigvals(self.closed()[0])
+        found = found[found.imag >= 0.0]
+        return found[np.argsort(np.abs(found))]
