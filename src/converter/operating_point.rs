@@ -56,6 +56,17 @@ pub struct InductorFigures {
     pub current: CurrentFigures,
 }
 
+/// The switched current over one period: the one that stops when switch and rectifier block.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct SwitchedCurrent {
+    /// Average over the period [A].
+    pub average: f64,
+    /// Greatest value, as the switch opens [A].
+    pub peak: f64,
+    /// Least value, as the switch closes [A]; zero where it rests.
+    pub valley: f64,
+}
+
 /// A conduction loss.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Loss {
@@ -80,6 +91,14 @@ pub struct OperatingPoint {
     pub load_current: f64,
     /// Average current drawn from the source [A].
     pub input_current: f64,
+    /// The current that switch and rectifier carry in turn: the inductor's, or the sum of both in a stage of two.
+    pub switched_current: SwitchedCurrent,
+    /// Slope of the switched current while the switch conducts [A/s].
+    pub on_slope: f64,
+    /// Slope of the switched current while the rectifier conducts, negative [A/s].
+    pub off_slope: f64,
+    /// Fraction of the period in which the rectifier conducts, where that is not all the rest of it.
+    pub second_duty: Option<f64>,
     /// The inductors.
     pub inductors: Vec<InductorFigures>,
     /// The controlled switch.
@@ -246,11 +265,11 @@ impl Stage {
         let rectifier = waves.figures(&[rows.rectifier_current], (false, true));
         let bank = waves.figures(&rows.branch_currents, (true, true));
         let input = waves.figures(&[rows.input_current], (true, true));
-        let least = inductors.iter().map(|i| i.current.least).fold(f64::INFINITY, f64::min);
-        let conduction = match (self.synchronous, least > 0.0) {
-            (true, _) => Conduction::ForcedContinuous,
-            (false, true) => Conduction::Continuous,
-            (false, false) => Conduction::Discontinuous,
+        let (switched_current, on_slope, off_slope) = waves.switched_current();
+        let conduction = match (self.rectifier.blocks(), switched_current.valley > 0.0) {
+            (false, _) => Conduction::ForcedContinuous,
+            (true, true) => Conduction::Continuous,
+            (true, false) => Conduction::Discontinuous,
         };
         let winding: f64 = inductors.iter().map(|i| i.current.rms.powi(2)).sum::<f64>() * self.resistances.winding;
         let branches: f64 = rows
@@ -275,6 +294,10 @@ impl Stage {
             input_voltage: condition.input_voltage,
             load_current: condition.load_current,
             input_current: input.average,
+            switched_current,
+            on_slope,
+            off_slope,
+            second_duty: None,
             inductors,
             switch,
             rectifier,
@@ -288,7 +311,7 @@ impl Stage {
     /// Load current at which the least inductor current reaches zero [A]; none for a synchronous rectifier, or where
     /// no load reaches it.
     pub fn boundary_load(&self, condition: &StageCondition) -> Option<f64> {
-        if self.synchronous {
+        if !self.rectifier.blocks() {
             return None;
         }
         let mut load = condition.load_current;
@@ -296,8 +319,8 @@ impl Stage {
         for _ in 0..50 {
             let at = StageCondition { load_current: load, ..*condition };
             let solution = self.solve(&at).ok()?;
-            let current = self.figures(&at, &solution).inductors.first()?.current;
-            let next = load * (current.ripple / 2.0) / current.average;
+            let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
+            let next = load * (current.average - current.valley) / current.average;
             if !(next.is_finite() && next > 0.0) {
                 return None;
             }
@@ -338,6 +361,15 @@ impl<'a> Waves<'a> {
             let value = (c * &self.solution.x)[0] + (equations.d.row(row) * &self.solution.intervals.inputs)[0];
             (middle + value, swing + (c * &self.rates[interval])[0] * self.durations[interval])
         })
+    }
+
+    /// The switched current with its slopes while switch and rectifier conduct [A/s].
+    fn switched_current(&self) -> (SwitchedCurrent, f64, f64) {
+        let c = &self.solution.intervals.cell.c;
+        let [on, off] = [&self.rates[0], &self.rates[1]].map(|rate| (c * rate)[0]);
+        let average = (c * &self.solution.x)[0];
+        let half = on * self.durations[0] / 2.0;
+        (SwitchedCurrent { average, peak: average + half, valley: average - half }, on, off)
     }
 
     /// Figures of a current that flows in the intervals marked.
