@@ -6,6 +6,7 @@
 
 mod common;
 mod compensator;
+mod controlled;
 mod cross_checks;
 mod lossless;
 mod random;
