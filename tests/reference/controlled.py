@@ -22,7 +22,7 @@ Average control: an inner amplifier compares the sensed current, filtered, with 
 delayed.  What ripple the amplifier leaves on its output changes the slope at the comparator; averaging does not see that.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -112,7 +112,8 @@ class ControlledLoop(Loop):
 
     def __init__(self, design, vin, load):
         self.design, self.vin, self.load = design, vin, load
-        self.control = design.control
+        # A ramp that follows the input has its entered height at the nominal one.
+        self.control = replace(design.control, ramp=design.effective_ramp(vin))
         self.period = 1.0 / design.stage.fs
         self.model = conduct(design.stage, vin, design.regulated, load)
         if self.control.mode != "average-current":

@@ -65,7 +65,7 @@ class Orbit:
             self.intervals[which] = (rows[:, :n], rows[:, n], rows[:, n + 1], outputs[0])
         # The comparator trips where compare . (states, 1, vc) = ramp slope . time since its interval began.
         if control.mode == "voltage":
-            self.compare, self.slope = vc, loop.design.effective_ramp(loop.vin) / self.period
+            self.compare, self.slope = vc, control.ramp / self.period
         elif control.mode == "average-current":
             self.compare, self.slope = np.zeros(width), control.ramp / self.period
             self.compare[i_slot] = inner[2]
