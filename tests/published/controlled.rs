@@ -15,6 +15,8 @@ use polewright::design::Design;
 use serde_json::Value;
 
 const DISCONTINUOUS: &str = include_str!("../reference/discontinuous.json");
+const CURRENT_MODE: &str = include_str!("../reference/current_mode.json");
+const FILTERS: &str = include_str!("../reference/filters.json");
 
 fn each(text: &str, least: usize, compare: impl Fn(&Design, &Value)) {
     let designs = designs(text);
@@ -59,10 +61,64 @@ fn compare_switched(design: &Design, row: &Value) {
 }
 
 #[test]
-fn discontinuous_designs() {
-    each(DISCONTINUOUS, 6, compare_conduction);
+fn discontinuous_designs_over_frequency() {
     each(DISCONTINUOUS, 6, compare_responses);
+}
+
+#[test]
+fn discontinuous_designs_at_nine_conditions() {
     each(DISCONTINUOUS, 6, compare_conditions);
+    each(DISCONTINUOUS, 6, compare_conduction);
+}
+
+#[test]
+fn discontinuous_designs_through_three_steps() {
     each(DISCONTINUOUS, 6, compare_steps);
+}
+
+#[test]
+fn discontinuous_designs_against_the_switched_stage() {
     each(DISCONTINUOUS, 6, compare_switched);
+}
+
+#[test]
+fn current_mode_designs_over_frequency() {
+    each(CURRENT_MODE, 7, compare_responses);
+}
+
+#[test]
+fn current_mode_designs_at_nine_conditions() {
+    each(CURRENT_MODE, 7, compare_conditions);
+    each(CURRENT_MODE, 7, compare_conduction);
+}
+
+#[test]
+fn current_mode_designs_through_three_steps() {
+    each(CURRENT_MODE, 7, compare_steps);
+}
+
+#[test]
+fn current_mode_designs_against_the_switched_stage() {
+    each(CURRENT_MODE, 7, compare_switched);
+}
+
+#[test]
+fn filtered_designs_over_frequency() {
+    each(FILTERS, 4, compare_responses);
+}
+
+#[test]
+fn filtered_designs_at_nine_conditions() {
+    each(FILTERS, 4, compare_conditions);
+    each(FILTERS, 4, compare_conduction);
+}
+
+#[test]
+fn filtered_designs_through_three_steps() {
+    each(FILTERS, 4, compare_steps);
+}
+
+#[test]
+fn filtered_designs_against_the_switched_stage() {
+    each(FILTERS, 4, compare_switched);
 }

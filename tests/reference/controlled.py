@@ -10,10 +10,16 @@ w is the triangle behind the filter in its periodic state.  Without filter w(dT)
 switch opens, vc is td older, and so is s: [F s](t_c) = F s - td s'.  Valley control is the mirror image: w at the end of the off interval,
 ramp -Se (d'T - td).
 
-That holds for slow changes.  For fast ones the sampled current counts: steps M T d^ at the rate fs, seen at their middle, are exactly
-(sT/2) coth(sT/2) times the averaged current, to half the switching frequency 1 + s^2/wn^2 with wn = pi/T (Ridley, "A new, continuous-time
-model for current-mode control", 1991, from memory: He = 1 - sT/2 + s^2/wn^2 counts from the foot of the step, hence his term -sT/2).
-So F s becomes F (1 + s^2/wn^2) s.
+That holds for slow changes.  For fast ones the steps count that the duty ratio makes in the current: M T d^ once a period.  Behind the
+filter the steps before add up at the comparator, with x = sT, z = exp(x), p = exp(-T/tau), e = exp(-(T - td)/tau), to
+
+    M T [1/(z - 1) - e/(z - p)] d^        and on average, which is what F s holds of them, to        M T (F/x) d^
+
+so the law gains M T k d^ with k = 1/(z - 1) - e/(z - p) - F/x, less its value at rest, which w holds already.  What the voltages do to the
+current is no step and is not sampled.  1/(z - 1) = 1/x - 1/2 + x/pi^2 to half the switching frequency (Ridley, "A new, continuous-time
+model for current-mode control", 1991, from memory: He = 1 - x/2 + x^2/pi^2), which is z = (1 + x/2 + x^2/pi^2)/(1 - x/2 + x^2/pi^2).
+
+    k = x/pi^2 + (tau/T) (F - 1) - e [1/(z - p) - 1/(1 - p)]
 
 Discontinuous: every period starts from rest, so the law is algebraic: vc = Ri w + Se (dT - td) with w = m1 t for t = dT - td, behind a
 rested filter m1 (t - tau (1 - exp(-t/tau))).  Valley control has only its ramp there: vc = -Se (1 - d) T (delay taken off).
@@ -59,7 +65,7 @@ def triangle_behind_filter(at_end_of_on, d, m, period, tau, before):
 
 
 def remainder(control, model, delay, period):
-    """What the law adds to Ri F (1 + s^2/wn^2) s (in discontinuous conduction: all of it), as a function of (d, M, on slope)."""
+    """What the law adds to Ri (F s + M T k d) (in discontinuous conduction: all of it), as a function of (d, M, on slope)."""
     ri, se, tau = control.sense, control.slope, control.filter
 
     def continuous(d, m, on):
@@ -84,7 +90,7 @@ def remainder(control, model, delay, period):
 
 
 class Law:
-    """The linearised law v = [Ri F (1 + s^2/wn^2) s] + x-row x + u-row u + d-number d, v the delayed control voltage."""
+    """The linearised law v = [Ri (F s + M T k d)] + x-row x + u-row u + d-number d, v the delayed control voltage."""
 
     def __init__(self, control, model, delay, period, line_to_duty=0.0):
         function = remainder(control, model, delay, period)
@@ -125,12 +131,37 @@ class ControlledLoop(Loop):
         """True where a comparator samples a current that never rests."""
         return self.control.mode in ("peak-current", "valley-current") and self.model.conduction == "continuous"
 
+    def memory(self):
+        """(p, e): what a step in the filtered current is short of after a period, and at the comparator."""
+        tau = self.control.filter
+        return (np.exp(-self.period / tau), np.exp(-(self.period - self.design.delay) / tau)) if tau else (0.0, 0.0)
+
     @property
     def fast_multiplier(self):
-        """What a disturbance of the current becomes one period later, for straight-line slopes and continuous conduction."""
-        c, m = self.control, self.model
-        rise, fall, ramp = m.on_slope.value, -m.off_slope, c.slope / c.sense
-        return -(fall - ramp) / (rise + ramp) if c.mode == "peak-current" else -(rise - ramp) / (fall + ramp)
+        """What a disturbance of the current becomes one period later, for straight-line slopes and continuous conduction.
+
+        The steps before and the comparator's own slope must cancel: 1/(z - 1) - e/(z - p) + g = 0 with g M the slope of what it sees.
+        """
+        c, m, d, period = self.control, self.model, self.model.duty, self.period
+        peak = c.mode == "peak-current"
+        q = d if peak else 1.0 - d
+        g = 1.0 - q + c.slope / c.sense / m.difference.value
+        p, e = self.memory()
+        if p == 0.0:
+            return 1.0 - 1.0 / g
+        a, b = np.exp(-q * period / c.filter), np.exp(-(1.0 - q) * period / c.filter)
+        g -= a * np.exp(self.design.delay / c.filter) * (1.0 - b) / (1.0 - a * b)
+        return np.min(np.roots([g, 1.0 - e - g * (1.0 + p), e - p + g * p]).real)
+
+    def sampling(self, s):
+        """k: what sampling adds to the duty ratio's share of the current."""
+        x, tau, period = s * self.period, self.control.filter, self.period
+        k = x / np.pi**2
+        if tau:
+            p, e = self.memory()
+            z = (1.0 + x / 2.0 + x**2 / np.pi**2) / (1.0 - x / 2.0 + x**2 / np.pi**2)
+            k = k + tau / period * (1.0 / (1.0 + s * tau) - 1.0) - e * (1.0 / (z - p) - 1.0 / (1.0 - p))
+        return k
 
     # --- frequency: scalar algebra at each frequency --------------------------------------------------------------
 
@@ -152,9 +183,8 @@ class ControlledLoop(Loop):
             law = self.law
             rows = law.x @ states + np.array([*law.u, law.d])
             if self.sampled:
-                wn = np.pi / self.period
-                filtered = control.sense * (1.0 + s**2 / wn**2) / (1.0 + s * control.filter)
-                rows = rows + filtered[:, None] * (model.current.x @ states)
+                rows = rows + (control.sense / (1.0 + s * control.filter))[:, None] * (model.current.x @ states)
+                rows[:, 2] += control.sense * model.difference.value * self.period * self.sampling(s)
             inner = None
             duty = np.column_stack([-rows[:, 0], -rows[:, 1], control.divider * late]) / rows[:, [2]]
         out = output[:, [2]] * duty
@@ -189,7 +219,7 @@ class ControlledLoop(Loop):
         n_p, n_d = len(m.a), len(a_d)
         average = control.mode == "average-current"
         behind = int(average and control.filter > 0.0)
-        extra = len(control.inner.state_space()[0]) if average else int(self.sampled)
+        extra = len(control.inner.state_space()[0]) if average else (5 if control.filter else 1) * int(self.sampled)
         n = n_p + n_d + extra + behind
         width = n + 3
         p, q, e = slice(0, n_p), slice(n_p, n_p + n_d), slice(n_p + n_d, n - behind)
@@ -222,26 +252,25 @@ class ControlledLoop(Loop):
         else:
             law = self.law
             rest = rows(law.x, law.u)[0]
-            drift, gain = natural[0], m.f[0]  # s' = drift + M d
             if not self.sampled:
                 duty = (late - rest) / law.d
-            elif control.filter == 0.0:
-                # The state is s' itself: no input needs to be differentiated.
-                rate = np.zeros(width)
-                rate[e] = 1.0
-                duty = (rate - drift) / gain
-                wn = np.pi / self.period
-                slopes[e, :] = wn**2 / control.sense * (late - control.sense * rows(m.current.x)[0] - rest - law.d * duty)
             else:
-                # Filtered current w = state + s'/(wn^2 tau).
-                wn, tau = np.pi / self.period, control.filter
-                k = 1.0 / (wn**2 * tau)
-                state = np.zeros(width)
-                state[e] = 1.0
-                known = control.sense * (state + k * drift) + rest
-                duty = (late - known) / (control.sense * k * gain + law.d)
-                w = state + k * (drift + gain * duty)
-                slopes[e, :] = (rows(m.current.x)[0] - w) / tau
+                # The duty ratio is a state, since k ends in x/pi^2; behind it the filtered current, the filtered duty ratio, and
+                # e [1/(1 - p) - 1/(z - p)] = e/(1 - p)^2 x/(1 + (1 + p)/(1 - p) x/2 + x^2/pi^2) in two states.
+                tau, period = control.filter, self.period
+                units = np.eye(width)[e]
+                duty, step = units[0], control.sense * m.difference.value * period
+                sensed, more = rows(m.current.x)[0], np.zeros(width)
+                if tau:
+                    past, now = self.memory()
+                    square = (np.pi / period)**2
+                    slopes[e][1] = (sensed - units[1]) / tau
+                    slopes[e][2] = (duty - units[2]) / tau
+                    slopes[e][3] = units[4]
+                    slopes[e][4] = duty - square * units[3] - (1.0 + past) / (1.0 - past) / 2.0 * square * period * units[4]
+                    more = tau / period * (units[2] - duty) + now / (1.0 - past)**2 * square * period * units[4]
+                    sensed = units[1]
+                slopes[e][0] = (late - control.sense * sensed - rest - law.d * duty - step * more) / (step * period / np.pi**2)
         slopes[p, :] = natural + np.outer(m.f, duty)
         out = rows(m.output.x, m.output.u)[0] + m.output.d * duty
         if average:

@@ -140,7 +140,7 @@ CURRENT_MODE = [
         "peak-current buck above half duty, sense filter, unlike bank, transconductance",
         Stage("buck", 400e3, 10e-6, 20e-3, 25e-3, "diode", [Branch(220e-6, 0.03), Branch(22e-6, 4e-3, 0.0, 2, 0.6)], "current",
               drop=0.4, diode=0.02),
-        (15.0, 18.0, 24.0), 12.0, (1.5, 2.5, 4.0), Control("peak-current", 0.08, 60e3, 80e-9),
+        (15.0, 18.0, 24.0), 12.0, (1.5, 2.5, 4.0), Control("peak-current", 0.08, 60e3, 400e-9),
         ota2(0.8, 140e3, 10e3, 4.7e-9, 15e3, 47e-12, 1.2e-3),
         load_step=(1.0, 1e6), line_step=(2.0, 1e5), reference_step=(0.1, 1e4), band=0.002),
     design(
