@@ -5,11 +5,14 @@
 
 use eframe::egui::{self, Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
 use egui_kittest::Harness;
-use egui_kittest::kittest::Queryable;
-use polewright::analysis::Level;
+use egui_kittest::kittest::{NodeT, Queryable};
+use polewright::analysis::{Level, terms};
 use polewright::design::sample;
 use polewright::quantity::{Unit, parse};
 use polewright::window::App;
+
+#[path = "window/safety.rs"]
+mod safety;
 
 fn window(size: Vec2, pixels_per_point: f32) -> Harness<'static, App> {
     let mut harness = Harness::builder()
@@ -393,15 +396,133 @@ fn the_crossover_can_be_taken_on_the_curve() {
 }
 
 #[test]
-fn held_curves_stay_and_are_dropped() {
+fn held_tries_stay_and_are_dropped_one_by_one() {
+    let mut harness = window(vec2(1280.0, 1300.0), 1.0);
+    harness.get_by_label("Hold").click();
+    harness.run();
+    enter(&mut harness, "Inductor", "15u");
+    harness.get_by_label("Hold").click();
+    harness.run();
+    let titles = |harness: &Harness<'_, App>| {
+        harness.state().session().tries().iter().map(polewright::window::Held::title).collect::<Vec<_>>()
+    };
+    assert_eq!(titles(&harness), ["1: Gimbal rail", "2: Enter inductor"]);
+    let beside = |harness: &Harness<'_, App>| harness.state().session().held().map(|held| held.number);
+    assert_eq!(beside(&harness), Some(2), "the latest is drawn");
+    harness.get_by_label("Held try 1: Gimbal rail").click();
+    harness.run();
+    assert_eq!(beside(&harness), Some(1));
+    harness.get_by_label("Drop try 1: Gimbal rail").click();
+    harness.run();
+    assert_eq!(titles(&harness), ["2: Enter inductor"]);
+    harness.key_press_modifiers(Modifiers::COMMAND | Modifiers::SHIFT, Key::H);
+    harness.run();
+    assert!(harness.state().session().tries().is_empty());
+}
+
+#[test]
+fn held_tries_follow_the_condition_shown() {
+    let mut harness = usual();
+    harness.get_by_label("Hold").click();
+    harness.run();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::ArrowRight);
+    harness.run();
+    let session = harness.state().session();
+    let (held, shown) = (&session.held().unwrap().analysis, session.analysis().unwrap());
+    assert_eq!(held.condition, shown.condition);
+    assert_eq!(held.readouts[0].value, shown.readouts[0].value, "the design did not change");
+}
+
+/// The label of the condition shown.
+fn condition(harness: &Harness<'_, App>) -> String {
+    harness.state().session().analysis().unwrap().condition.label.clone()
+}
+
+#[test]
+fn the_review_steps_through_conditions_and_tries_and_changes_nothing() {
     let mut harness = usual();
     harness.get_by_label("Hold").click();
     harness.run();
     enter(&mut harness, "Inductor", "15u");
-    assert!(harness.state().session().held().is_some());
-    harness.get_by_label("Drop held").click();
+    let design = harness.state().session().design().clone();
+    harness.key_press(Key::F5);
     harness.run();
-    assert!(harness.state().session().held().is_none());
+    assert!(harness.state().reviewing());
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_none());
+    assert!(harness.query_by_label("Crossover handle").is_none());
+    assert_eq!(harness.query_all_by_role(Role::Slider).count(), 0, "no handle to move");
+    harness.key_press(Key::ArrowUp);
+    harness.key_press(Key::ArrowRight);
+    harness.run();
+    assert_eq!(condition(&harness), "least input 9 V, greatest load 1.5 A");
+    harness.key_press(Key::ArrowRight);
+    harness.run();
+    assert_eq!(condition(&harness), "least input 9 V, greatest load 1.5 A", "the last one stays");
+    let crossover = |harness: &Harness<'_, App>| harness.state().session().analysis().unwrap().readouts[0].value;
+    let present = crossover(&harness);
+    harness.key_press(Key::PageDown);
+    harness.run();
+    assert_eq!(harness.state().session().reviewed().unwrap().number, 1);
+    assert_eq!(condition(&harness), "least input 9 V, greatest load 1.5 A");
+    assert_ne!(crossover(&harness), present);
+    // Undo, rounding and lanes are the design's; here they say so and do nothing.
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::R);
+    harness.run();
+    assert_eq!(harness.state().session().design(), &design);
+    assert!(harness.state().message().unwrap().text.contains("for reading"));
+    harness.key_press(Key::Escape);
+    harness.run();
+    assert!(!harness.state().reviewing());
+    assert!(harness.state().session().reviewed().is_none());
+    assert_eq!(crossover(&harness), present);
+}
+
+#[test]
+fn every_sample_is_reviewed_with_every_control_named() {
+    for sample in sample::all() {
+        for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+            let design = sample.design().unwrap();
+            let mut harness = Harness::builder()
+                .with_size(size)
+                .with_pixels_per_point(scale)
+                .build_eframe(|cc| App::new(&cc.egui_ctx, design, None));
+            harness.run();
+            harness.key_press(Key::F5);
+            harness.run();
+            harness.check_accessibility();
+            assert!(harness.query_by_label("Phase margin").is_some(), "{}", sample.file);
+            assert!(harness.query_by_label("Back to the design").is_some());
+        }
+    }
+}
+
+#[test]
+fn a_what_if_stands_beside_the_nine() {
+    let mut harness = usual();
+    let nominal = condition(&harness);
+    harness.key_press(Key::F5);
+    harness.run();
+    enter(&mut harness, "What-if input voltage", "ten");
+    assert_eq!(condition(&harness), nominal);
+    let told = |harness: &Harness<'_, App>, text: &str| {
+        harness.query_all_by(|node| node.value().is_some_and(|value| value.contains(text))).count()
+    };
+    assert_eq!(told(&harness, "Input voltage: "), 1, "the reason stands under the field");
+    assert_eq!(field(&harness, "What-if input voltage").value().as_deref(), Some("ten"));
+    field(&harness, "What-if input voltage").focus();
+    harness.run();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+    field(&harness, "What-if input voltage").type_text("10.5");
+    harness.run();
+    enter(&mut harness, "What-if load current", "750m");
+    assert_eq!(condition(&harness), "input 10.5 V, load 750 mA");
+    assert_eq!(told(&harness, "Input voltage: "), 0);
+    assert_eq!(told(&harness, "What if: input 10.5 V"), 1, "it is labelled");
+    assert_eq!(harness.state().session().analysis().unwrap().conditions.len(), 9);
+    harness.get_by(|node| node.label().is_some_and(|label| label.starts_with("Back to the nine"))).click();
+    harness.run();
+    assert_eq!(condition(&harness), nominal);
 }
 
 #[test]
@@ -422,4 +543,170 @@ fn large_text_in_a_small_window_leaves_room_for_the_plots() {
     harness.run();
     assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_some());
     assert!(harness.state().gain_rect().width() > 150.0);
+}
+
+#[test]
+fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
+    use polewright::window::{Command, Exported};
+    let folder = tempfile::tempdir().unwrap();
+    let mut harness = usual();
+    let export = |harness: &mut Harness<'_, App>, what, name: &str| {
+        let path = folder.path().join(name);
+        harness.state_mut().ask(Command::ExportPath { what, path: path.clone() });
+        harness.run();
+        (harness.state().message().unwrap().clone(), std::fs::read(path).ok())
+    };
+    for (what, name) in [(Exported::Bode, "b"), (Exported::Step, "s"), (Exported::Response, "r")] {
+        let (message, svg) = export(&mut harness, what, &format!("{name}.svg"));
+        assert!(!message.failed, "{}", message.text);
+        let svg = String::from_utf8(svg.unwrap()).unwrap();
+        assert!(svg.contains("Gimbal rail") && svg.contains("nominal input 12 V"), "{svg}");
+        assert!(!svg.contains("NaN") && !svg.contains("inf"));
+        let (_, png) = export(&mut harness, what, &format!("{name}.PNG"));
+        assert!(png.unwrap().starts_with(b"\x89PNG"));
+    }
+    let (message, file) = export(&mut harness, Exported::Bode, "b.txt");
+    assert!(message.failed && file.is_none() && message.text.contains(".png or .svg"), "{}", message.text);
+    let (_, csv) = export(&mut harness, Exported::Curves, "c.csv");
+    let csv = String::from_utf8(csv.unwrap()).unwrap();
+    let rows = harness.state().session().analysis().unwrap().shown.as_ref().unwrap().curves.frequencies_hz.len();
+    assert_eq!(csv.lines().count(), rows + 1);
+    for (command, word) in [(Command::CopyParts, "R2"), (Command::CopyMargins, "Phase margin")] {
+        harness.state_mut().ask(command);
+        harness.step();
+        let copied = harness.output().platform_output.commands.iter().find_map(|command| match command {
+            egui::OutputCommand::CopyText(text) => Some(text.clone()),
+            _ => None,
+        });
+        assert!(copied.unwrap().contains(word));
+    }
+    enter(&mut harness, "Inductor", "0");
+    let (message, file) = export(&mut harness, Exported::Bode, "stale.svg");
+    assert!(message.failed && file.is_none() && message.text.contains("out of date"), "{}", message.text);
+}
+
+#[test]
+fn a_new_design_is_proposed_with_its_assumptions_and_created() {
+    let mut harness = usual();
+    enter(&mut harness, "Inductor", "12u");
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::N);
+    harness.run();
+    let told = |harness: &Harness<'_, App>, text: &str| {
+        harness.query_all_by(|node| node.value().is_some_and(|value| value.contains(text))).count()
+    };
+    assert_eq!(told(&harness, "Stable and within all"), 1);
+    assert!(told(&harness, "common practice") > 5);
+    let set = |harness: &mut Harness<'_, App>, label: &str, text: &str| {
+        field(harness, label).focus();
+        harness.run();
+        harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+        field(harness, label).type_text(text);
+        harness.run();
+        harness.key_press(Key::Enter);
+        harness.run();
+    };
+    set(&mut harness, "Input, least, of the new design", "nine");
+    assert_eq!(told(&harness, "Stable and within all"), 0);
+    assert_eq!(told(&harness, "is not a number"), 1, "the reason stands under the field");
+    set(&mut harness, "Input, least, of the new design", "18");
+    assert_eq!(told(&harness, "must not be above"), 1);
+    set(&mut harness, "Input, least, of the new design", "10");
+    assert_eq!(told(&harness, "Stable and within all"), 1);
+    harness.get_by_label("Create").click();
+    harness.run();
+    // The design that stood there has unsaved changes.
+    harness.get_by_label("Discard changes").click();
+    harness.run();
+    let session = harness.state().session();
+    assert!((session.design().values.get("stage.input.least").unwrap() - 10.0).abs() < 1e-12);
+    assert!(session.unsaved(), "it is in no file yet");
+    assert!(session.analysis().unwrap().all_met());
+    assert!(session.design().notes.contains("common practice"));
+}
+
+#[test]
+fn a_dialog_of_any_size_has_every_control_named() {
+    for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+        for key in [Key::N, Key::O, Key::K] {
+            let mut harness = window(size, scale);
+            harness.key_press_modifiers(Modifiers::COMMAND, key);
+            harness.run();
+            harness.check_accessibility();
+            assert!(harness.query_by_label("Cancel").is_some() || key == Key::K);
+        }
+    }
+}
+
+#[test]
+fn the_hint_is_shown_when_asked_for_and_closed() {
+    for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+        let mut harness = window(size, scale);
+        harness.key_press(Key::F1);
+        harness.run();
+        assert!(harness.state().hinting());
+        let sentences = harness.query_all_by(|node| node.value().is_some_and(|text| text.contains("Drag a handle")));
+        assert_eq!(sentences.count(), 1);
+        harness.check_accessibility();
+        harness.get_by_label("Got it").click();
+        harness.run();
+        assert!(!harness.state().hinting());
+    }
+}
+
+#[test]
+fn every_read_out_is_explained_with_its_formula_in_letters_the_font_has() {
+    let harness = usual();
+    for readout in &harness.state().session().analysis().unwrap().readouts {
+        let node = harness.get_by_role_and_label(Role::Button, readout.name);
+        let term = terms::find(readout.key).unwrap();
+        let description = node.accesskit_node().description().unwrap_or_default();
+        assert!(description.contains(term.formula), "{}: {description}", readout.key);
+    }
+    let font = egui::FontId::proportional(13.0);
+    for term in terms::TERMS {
+        for letter in term.name.chars().chain(term.text.chars()).chain(term.formula.chars()) {
+            let there = letter == '\n' || harness.ctx.fonts_mut(|fonts| fonts.has_glyph(&font, letter));
+            assert!(there, "{letter} of {}", term.key);
+        }
+    }
+}
+
+#[test]
+fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
+    use polewright::window::{Command, Exported};
+    let folder = tempfile::tempdir().unwrap();
+    let mut harness = usual();
+    let export = |harness: &mut Harness<'_, App>, what, name: &str| {
+        let path = folder.path().join(name);
+        harness.state_mut().ask(Command::ExportPath { what, path: path.clone() });
+        harness.run();
+        (harness.state().message().unwrap().clone(), std::fs::read(path).ok())
+    };
+    for (what, name) in [(Exported::Bode, "b"), (Exported::Step, "s"), (Exported::Response, "r")] {
+        let (message, svg) = export(&mut harness, what, &format!("{name}.svg"));
+        assert!(!message.failed, "{}", message.text);
+        let svg = String::from_utf8(svg.unwrap()).unwrap();
+        assert!(svg.contains("Gimbal rail") && svg.contains("nominal input 12 V"), "{svg}");
+        assert!(!svg.contains("NaN") && !svg.contains("inf"));
+        let (_, png) = export(&mut harness, what, &format!("{name}.PNG"));
+        assert!(png.unwrap().starts_with(b"\x89PNG"));
+    }
+    let (message, file) = export(&mut harness, Exported::Bode, "b.txt");
+    assert!(message.failed && file.is_none() && message.text.contains(".png or .svg"), "{}", message.text);
+    let (_, csv) = export(&mut harness, Exported::Curves, "c.csv");
+    let csv = String::from_utf8(csv.unwrap()).unwrap();
+    let rows = harness.state().session().analysis().unwrap().shown.as_ref().unwrap().curves.frequencies_hz.len();
+    assert_eq!(csv.lines().count(), rows + 1);
+    for (command, word) in [(Command::CopyParts, "R2"), (Command::CopyMargins, "Phase margin")] {
+        harness.state_mut().ask(command);
+        harness.step();
+        let copied = harness.output().platform_output.commands.iter().find_map(|command| match command {
+            egui::OutputCommand::CopyText(text) => Some(text.clone()),
+            _ => None,
+        });
+        assert!(copied.unwrap().contains(word));
+    }
+    enter(&mut harness, "Inductor", "0");
+    let (message, file) = export(&mut harness, Exported::Bode, "stale.svg");
+    assert!(message.failed && file.is_none() && message.text.contains("out of date"), "{}", message.text);
 }

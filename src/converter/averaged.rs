@@ -6,15 +6,14 @@
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::{BankInductance, bank_inductance};
-use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
 use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
 use super::signals::{INPUTS, OUTPUTS};
-use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding};
+use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding, with_duty};
 use crate::finding::Finding;
 use crate::linear::{StateSpace, Zpk};
 use crate::quantity::{Unit, print};
-use nalgebra::{DMatrix, DVector, RowDVector};
+use nalgebra::{DMatrix, RowDVector};
 
 /// The stage linearised about one operating point.
 #[derive(Clone, Debug)]
@@ -35,9 +34,12 @@ impl Stage {
     /// # Errors
     /// A finding when no duty ratio gives the output; it names the greatest output that can be had.
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
+        self.refuse_drop(condition)?;
         let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
         let operating_point = self.figures(condition, &solution);
-        let linearised = match self.intervals_with_inductance(condition) {
+        let with_inductance = self.intervals_with_inductance(condition).filter(|_| solution.pulse.is_none());
+        let inductance_left_out = with_inductance.is_none();
+        let linearised = match with_inductance {
             None => self.linearise(&solution),
             Some(intervals) => {
                 let intervals = intervals.map_err(|e| circuit_finding(&e))?;
@@ -45,18 +47,36 @@ impl Stage {
             }
         };
         let stage = linearised.ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
-        let bank_inductance = if self.bank_inductance_averaged() {
-            None
-        } else {
+        // Behind a second stage the load's current does not reach the bank fast enough for its inductance to count.
+        let bank_inductance = if inductance_left_out && self.second_stage.is_none() {
             let resistance = condition.output_voltage / condition.load_current;
             bank_inductance(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
+        } else {
+            None
         };
         Ok(AveragedModel { operating_point, stage, bank_inductance })
     }
 
-    fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
+    /// A second stage that drops the whole regulated voltage.
+    fn refuse_drop(&self, condition: &StageCondition) -> Result<(), Finding> {
+        if self.load_voltage(condition) > 0.0 {
+            return Ok(());
+        }
+        let message = format!(
+            "At a load of {} the second inductor's resistance drops the whole regulated {}.",
+            print(condition.load_current, Unit::Ampere),
+            print(condition.output_voltage, Unit::Volt)
+        );
+        Err(Finding::problem("stage.output-filter.resistance", message)
+            .with_hint("lower the resistance or the load, or sense at the load"))
+    }
+
+    pub(super) fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
         let (i, x, duty) = (&solution.intervals, &solution.x, solution.duty);
         let rows = self.averaged_rows();
+        if let Some(pulse) = &solution.pulse {
+            return i.linearise_pulse(solution, pulse, &rows, self.switching_frequency.recip());
+        }
         let a = i.mix(duty, |e| &e.a);
         let b = i.mix(duty, |e| &e.b);
         let c = i.mix(duty, |e| &e.c).select_rows(&rows);
@@ -77,16 +97,16 @@ impl Stage {
     }
 
     /// Rows of the netlist's outputs that an averaged model answers with.
-    fn averaged_rows(&self) -> Vec<usize> {
+    pub(super) fn averaged_rows(&self) -> Vec<usize> {
         std::iter::once(self.rows.output_voltage)
             .chain(self.rows.inductor_currents.iter().take(1).copied())
-            .chain(std::iter::once(self.rows.input_current))
+            .chain([self.rows.input_current, self.rows.load_voltage])
             .collect()
     }
 
-    /// The landmarks at a condition; `vout_from_duty` serves where no textbook form fits.
+    /// The landmarks at a condition; `vout_from_duty`, of the stage without its input filter, serves where no textbook form fits.
     pub fn landmarks(&self, condition: &StageCondition, vout_from_duty: &Zpk) -> Vec<Landmark> {
-        landmarks(self.topology(), &self.textbook(condition), &self.bank, self.switching_frequency, vout_from_duty)
+        landmarks(self.topology(), &self.textbook(condition), self, vout_from_duty)
     }
 
     /// The lossless quantities textbook formulas are written in.
@@ -109,15 +129,6 @@ impl Stage {
 fn stacked(top: &DMatrix<f64>, rows: &[&RowDVector<f64>]) -> DMatrix<f64> {
     DMatrix::from_fn(top.nrows() + rows.len(), top.ncols(), |r, k| {
         if r < top.nrows() { top[(r, k)] } else { rows[r - top.nrows()][k] }
-    })
-}
-
-/// Columns of an averaged model's inputs: the duty ratio's, and the two of the netlist's that it keeps.
-fn with_duty(duty: &DVector<f64>, netlist: &DMatrix<f64>) -> DMatrix<f64> {
-    DMatrix::from_fn(netlist.nrows(), INPUTS.len(), |r, k| match k {
-        0 => duty[r],
-        1 => netlist[(r, INPUT_VOLTAGE)],
-        _ => netlist[(r, LOAD_CURRENT)],
     })
 }
 

@@ -13,15 +13,12 @@ use nalgebra::{DMatrix, DVector, RowDVector};
 #[derive(Clone, Debug)]
 pub(super) struct SwitchedCell {
     /// State equations while both block.
-    #[expect(dead_code, reason = "for discontinuous conduction")]
     pub(super) idle: StateEquations,
     /// Switched current from states.
     pub(super) c: RowDVector<f64>,
     /// States that go with one ampere of switched current.
-    #[expect(dead_code, reason = "for discontinuous conduction")]
     pub(super) v: DVector<f64>,
     /// States without their switched current.
-    #[expect(dead_code, reason = "for discontinuous conduction")]
     pub(super) rest: DMatrix<f64>,
 }
 

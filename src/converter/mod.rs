@@ -9,20 +9,35 @@ mod bank;
 mod cell;
 mod drawing;
 mod entries;
+mod filter_damping;
+mod filter_entries;
+mod filter_figures;
+#[cfg(test)]
+mod filter_tests;
+mod filter_values;
+mod filters;
 mod landmark;
 mod operating_point;
+mod pulse;
+mod pulse_point;
+#[cfg(test)]
+mod pulse_tests;
 mod registry;
 pub mod signals;
 mod stage;
 #[cfg(test)]
 mod tests;
 mod topologies;
+mod waves;
 
 pub use averaged::AveragedModel;
 pub use bank::{BankInductance, Branch};
 pub use drawing::StageDrawing;
 pub use drawing::{Reach, Topology, sketch};
 pub use entries::{CHOICES, ENTRIES, applies};
+pub use filter_damping::OptimumDamping;
+pub use filter_values::{InputFilter, SecondStage};
+pub use filters::Damping;
 pub use landmark::{Landmark, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};

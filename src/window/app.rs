@@ -2,10 +2,11 @@
 
 use std::path::PathBuf;
 
-use eframe::egui::{self, Rect, Ui, ViewportCommand};
+use eframe::egui::{self, FocusDirection, Key, Modifiers, Rect, Ui, ViewportCommand};
 
 use super::command::{COMMANDS, Command, Row};
 use super::files::FileDialogs;
+use super::safety::Kept;
 use super::session::Session;
 use super::theme;
 use super::view::{Desk, View};
@@ -19,6 +20,8 @@ pub struct App {
     pub(super) session: Session,
     pub(super) view: View,
     pub(super) dialogs: FileDialogs,
+    /// What outlives the window.
+    pub(super) kept: Kept,
     /// What unsaved changes held up while a path to save under is asked for.
     pub(super) after_saving: Option<Command>,
     /// True once closing was settled.
@@ -34,18 +37,21 @@ const COLUMNS: usize = 64;
 /// The widest plot, in such lots: four thousand columns.
 const MOST_LOTS: usize = 64;
 impl App {
-    /// A window on a design and the file it came from.
+    /// A window on a design and the file it came from; it keeps nothing beyond its own life.
     pub fn new(ctx: &egui::Context, design: Design, path: Option<PathBuf>) -> Self {
         theme::install(ctx);
-        App {
+        let mut app = App {
             session: Session::new(design, path),
             view: View { theme: ctx.options(|options| options.theme_preference), ..View::default() },
             dialogs: FileDialogs::default(),
+            kept: Kept::nothing(),
             after_saving: None,
             leaving: false,
             asked: Vec::new(),
             title: String::new(),
-        }
+        };
+        app.in_file(ctx);
+        app
     }
 
     /// The work: document, history, results.
@@ -66,6 +72,16 @@ impl App {
     /// Frequencies the plots span [Hz].
     pub fn frequency_range_hz(&self) -> (f64, f64) {
         self.view.range_hz.unwrap_or_else(|| self.session.whole_range_hz())
+    }
+
+    /// True while the review view is open.
+    pub fn reviewing(&self) -> bool {
+        self.view.review
+    }
+
+    /// True while the hint for who is new here is shown.
+    pub fn hinting(&self) -> bool {
+        self.view.hint
     }
 
     /// The message under the bar, if any.
@@ -99,6 +115,29 @@ impl App {
         }
     }
 
+    /// Keys of the review view, where nothing else wants them.
+    fn review_keys(&mut self, ctx: &egui::Context) {
+        if !self.view.review || self.view.dialog.is_some() || ctx.text_edit_focused() || egui::Popup::is_any_open(ctx) {
+            return;
+        }
+        let keys = [
+            (Key::ArrowRight, Command::StepLevels { input: 0, load: 1 }),
+            (Key::ArrowLeft, Command::StepLevels { input: 0, load: -1 }),
+            (Key::ArrowDown, Command::StepLevels { input: 1, load: 0 }),
+            (Key::ArrowUp, Command::StepLevels { input: -1, load: 0 }),
+            (Key::PageDown, Command::StepTry { forward: true }),
+            (Key::PageUp, Command::StepTry { forward: false }),
+            (Key::Escape, Command::Review),
+        ];
+        for (key, command) in keys {
+            if ctx.input_mut(|input| input.consume_key(Modifiers::NONE, key)) {
+                // The keyboard's place stays where it is: the keys go through the conditions.
+                ctx.memory_mut(|memory| memory.move_focus(FocusDirection::None));
+                self.asked.push(command);
+            }
+        }
+    }
+
     /// A command given while a field is edited works on what stands in the field.
     fn take_over_field(&mut self, ctx: &egui::Context) {
         if let Some(focused) = ctx.memory(egui::Memory::focused)
@@ -106,14 +145,15 @@ impl App {
         {
             ctx.memory_mut(|memory| memory.surrender_focus(focused));
         }
-        if let Some(field) = self.view.field.take() {
-            let entry = crate::design::entry(field.path);
-            let value = self.session.design().values.get(field.path);
-            let before = entry.zip(value).map(|(entry, value)| crate::quantity::exact(value, entry.unit));
-            let before = self.session.bad_text(field.path).map(|bad| bad.text.clone()).or(before);
-            if before.unwrap_or_default() != field.text {
-                self.asked.push(Command::Enter { path: field.path, text: field.text });
-            }
+        if let Some((path, text)) = self.typed() {
+            let text = text.to_owned();
+            self.asked.push(Command::Enter { path, text });
+        }
+        self.view.field = None;
+        if let Some(title) = self.view.title.take()
+            && title != self.session.design().title
+        {
+            self.asked.push(Command::Title(title));
         }
     }
 
@@ -126,7 +166,13 @@ impl App {
 
     /// Closing with unsaved changes asks first.
     fn guard_closing(&mut self, ctx: &egui::Context) {
-        if ctx.input(|input| input.viewport().close_requested()) && !self.leaving && self.session.unsaved() {
+        if !ctx.input(|input| input.viewport().close_requested()) || self.leaving {
+            return;
+        }
+        // What is being typed counts like what was entered.
+        let asked = self.asked.len();
+        self.take_over_field(ctx);
+        if self.asked.len() > asked || self.session.unsaved() {
             ctx.send_viewport_cmd(ViewportCommand::CancelClose);
             self.asked.push(Command::Quit);
         }
@@ -155,6 +201,7 @@ impl App {
 impl eframe::App for App {
     fn logic(&mut self, ctx: &egui::Context, _frame: &mut eframe::Frame) {
         self.shortcuts(ctx);
+        self.review_keys(ctx);
         self.dropped_files(ctx);
         self.guard_closing(ctx);
         self.take_file_answer();
@@ -163,12 +210,13 @@ impl eframe::App for App {
         }
         self.ask_frequencies();
         self.session.refresh();
+        self.keep_up(ctx);
         self.name_window(ctx);
     }
 
     fn ui(&mut self, ui: &mut Ui, _frame: &mut eframe::Frame) {
         let width_before = self.view.plot_width;
-        let mut desk = Desk { session: &self.session, view: &mut self.view, send: &mut self.asked };
+        let mut desk = Desk { session: &self.session, kept: &self.kept, view: &mut self.view, send: &mut self.asked };
         layout::window_ui(ui, &mut desk);
         dialogs::dialog_ui(ui, &mut desk);
         // What was asked for is carried out in the next turn, and new widths ask for new curves there.
@@ -176,6 +224,15 @@ impl eframe::App for App {
         if !self.asked.is_empty() || resized {
             ui.ctx().request_repaint();
         }
+    }
+
+    fn on_exit(&mut self, _gl: Option<&eframe::glow::Context>) {
+        self.keep_on_exit();
+    }
+
+    fn persist_egui_memory(&self) -> bool {
+        // What is worth keeping stands in the settings.
+        false
     }
 
     fn clear_color(&self, visuals: &egui::Visuals) -> [f32; 4] {

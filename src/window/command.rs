@@ -19,11 +19,30 @@ pub enum Curve {
     Loop,
 }
 
+/// What can be put out into a file.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Exported {
+    /// The Bode plot.
+    Bode,
+    /// The time plot.
+    Step,
+    /// The closed-loop plot.
+    Response,
+    /// The frequency curves.
+    Curves,
+    /// The time curve.
+    StepCurve,
+}
+
 /// A request to the window, from a menu, a key, a field or a handle.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Command {
     /// Ask for a design file to open.
     Open,
+    /// Ask for what a new design needs to know.
+    NewDesign,
+    /// Make the design that the form of a new design proposes.
+    CreateDesign,
     /// Open this file.
     OpenPath(PathBuf),
     /// Open the sample design with this file name.
@@ -34,6 +53,19 @@ pub enum Command {
     SaveAs,
     /// Save under this path.
     SavePath(PathBuf),
+    /// Ask where to put something out.
+    Export(Exported),
+    /// Put it out into this file.
+    ExportPath {
+        /// What is put out.
+        what: Exported,
+        /// The file.
+        path: PathBuf,
+    },
+    /// Put the parts list onto the clipboard.
+    CopyParts,
+    /// Put the margin table onto the clipboard.
+    CopyMargins,
     /// Let the system's dialog choose a path.
     Browse,
     /// Close the window.
@@ -44,6 +76,22 @@ pub enum Command {
     SaveAndGoOn,
     /// Close the question or the list that is open.
     Dismiss,
+    /// Save over this file although it changed since it was read.
+    Overwrite(PathBuf),
+    /// Take over what the file holds now, as one step.
+    Reload,
+    /// Keep the design as it is here although its file changed.
+    KeepMine,
+    /// Look for unsaved work that was left behind, and offer it.
+    FindUnsaved,
+    /// Take up the work in this journal.
+    Recover(PathBuf),
+    /// Remove this journal.
+    DiscardJournal(PathBuf),
+    /// Take this file off the list of recent files.
+    ForgetRecent(PathBuf),
+    /// Empty the list of recent files.
+    ForgetAllRecent,
 
     /// Take the last step back.
     Undo,
@@ -99,6 +147,29 @@ pub enum Command {
     NextCondition,
     /// Show the one before.
     PreviousCondition,
+    /// Show the condition this many levels of input and load higher.
+    StepLevels {
+        /// Levels of input voltage.
+        input: isize,
+        /// Levels of load.
+        load: isize,
+    },
+    /// Show a condition beside the nine.
+    WhatIf {
+        /// Input voltage [V], positive.
+        input_voltage: f64,
+        /// Load current [A], positive.
+        load_current: f64,
+    },
+    /// Open the review view, or leave it.
+    Review,
+    /// Review the held try with this number, or the present design.
+    ReviewTry(Option<usize>),
+    /// Review the next of present design and held tries, or the one before.
+    StepTry {
+        /// True for the next one.
+        forward: bool,
+    },
     /// Show or hide a curve.
     Toggle(Curve),
     /// Show or hide the band over the nine conditions.
@@ -107,7 +178,11 @@ pub enum Command {
     WholeRange,
     /// Keep the present curves to compare with.
     Hold,
-    /// Drop the held curves.
+    /// Draw this held try beside the present design; asked again, none.
+    CompareWith(usize),
+    /// Drop this held try.
+    DropTry(usize),
+    /// Drop all held tries.
     DropHeld,
     /// Colours of the window.
     Theme(ThemePreference),
@@ -123,6 +198,27 @@ pub enum Command {
     ToggleReadouts,
     /// Show the searchable list of commands.
     ListCommands,
+    /// Show the hint for who is new here, or close it.
+    Hint(bool),
+}
+
+impl Command {
+    /// Whether it changes the design.
+    pub(super) fn edits(&self) -> bool {
+        matches!(
+            self,
+            Command::Undo
+                | Command::Redo
+                | Command::Enter { .. }
+                | Command::Choose { .. }
+                | Command::Title(_)
+                | Command::MoveLane { .. }
+                | Command::MoveCrossover { .. }
+                | Command::Lock { .. }
+                | Command::RoundParts
+                | Command::Mend(_)
+        )
+    }
 }
 
 /// Where a command is offered.
@@ -130,6 +226,8 @@ pub enum Command {
 pub(super) enum Menu {
     /// Files.
     Design,
+    /// Pictures, curves, tables.
+    Export,
     /// Changes.
     Edit,
     /// What is seen.
@@ -170,9 +268,74 @@ const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
 
 /// The command table, in the order of the menus.
 pub(super) static COMMANDS: &[Row] = &[
+    row(
+        "New design…",
+        Menu::Design,
+        Some(key(CTRL, Key::N)),
+        "Begin a design from what it has to do; every assumption is told first.",
+        Command::NewDesign,
+    ),
     row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
     row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
     row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
+    row(
+        "Copy parts list",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::P)),
+        "Put the compensator's parts onto the clipboard, with tabs between the columns.",
+        Command::CopyParts,
+    ),
+    row(
+        "Copy margin table",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::M)),
+        "Put all read-outs with their worst conditions and requirements onto the clipboard.",
+        Command::CopyMargins,
+    ),
+    row(
+        "Bode plot as picture…",
+        Menu::Export,
+        Some(key(CTRL, Key::E)),
+        "Save gain and phase as PNG or SVG.",
+        Command::Export(Exported::Bode),
+    ),
+    row(
+        "Time plot as picture…",
+        Menu::Export,
+        None,
+        "Save the step response that is shown as PNG or SVG.",
+        Command::Export(Exported::Step),
+    ),
+    row(
+        "Closed-loop plot as picture…",
+        Menu::Export,
+        None,
+        "Save the closed-loop response that is shown as PNG or SVG.",
+        Command::Export(Exported::Response),
+    ),
+    row(
+        "Frequency curves as CSV…",
+        Menu::Export,
+        Some(key(CTRL_SHIFT, Key::E)),
+        "Save all frequency curves of the condition shown as comma-separated values.",
+        Command::Export(Exported::Curves),
+    ),
+    row(
+        "Time curve as CSV…",
+        Menu::Export,
+        None,
+        "Save the step response that is shown as comma-separated values.",
+        Command::Export(Exported::StepCurve),
+    ),
+    row("Reload", Menu::Design, None, "Take over what the file holds now; can be undone.", Command::Reload),
+    row(
+        "Recover unsaved work…",
+        Menu::Design,
+        None,
+        "Offer work that a window left behind unsaved.",
+        Command::FindUnsaved,
+    ),
+    row("Clear recent files", Menu::Design, None, "Empty the list of recent files.", Command::ForgetAllRecent),
     row("Quit", Menu::Design, Some(key(CTRL, Key::Q)), "Close the window.", Command::Quit),
     row("Undo", Menu::Edit, Some(key(CTRL, Key::Z)), "Take the last change back.", Command::Undo),
     row("Redo", Menu::Edit, Some(key(CTRL_SHIFT, Key::Z)), "Do again what was undone.", Command::Redo),
@@ -204,7 +367,14 @@ pub(super) static COMMANDS: &[Row] = &[
         "Keep the present curves beside the next try.",
         Command::Hold,
     ),
-    row("Drop held curves", Menu::View, Some(key(CTRL_SHIFT, Key::H)), "Take the held curves away.", Command::DropHeld),
+    row("Drop held curves", Menu::View, Some(key(CTRL_SHIFT, Key::H)), "Take all held tries away.", Command::DropHeld),
+    row(
+        "Review view",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F5)),
+        "A page to read and not to change, for who reviews the design; Esc leaves it.",
+        Command::Review,
+    ),
     row(
         "Plant curve",
         Menu::View,
@@ -260,6 +430,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(CTRL, Key::K)),
         "A list of all commands to search.",
         Command::ListCommands,
+    ),
+    row(
+        "Show the hint",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F1)),
+        "Three sentences for who is new here.",
+        Command::Hint(true),
     ),
 ];
 

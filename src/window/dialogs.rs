@@ -2,21 +2,33 @@
 
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
 
-use super::bar;
 use super::command::{COMMANDS, Command};
+use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
+use super::{bar, new_design, recents, recovery};
+
+/// Width of a dialog [points].
+const DIALOG: f32 = 520.0;
 
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(mut dialog) = desk.view.dialog.clone() else { return };
     let frame = Frame::popup(ui.style()).inner_margin(18);
     let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
-        ui.set_width(520.0);
+        if dialog == Dialog::New {
+            new_design::new_design_ui(ui, desk);
+            return;
+        }
+        ui.set_width(DIALOG.min(ui.ctx().content_rect().width() - 60.0));
         match &mut dialog {
+            Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
+            Dialog::Export { what, path } => export::export_ui(ui, *what, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
+            Dialog::Overwrite { path } => recovery::overwrite_ui(ui, path, desk),
+            Dialog::Recovery { discarding } => recovery::recovery_ui(ui, discarding, desk),
             Dialog::Commands { search } => commands_ui(ui, search, desk),
         }
     });
@@ -27,32 +39,41 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 }
 
 /// Why the last try failed, where it is looked for.
-fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
+pub(super) fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
     if let Some(message) = desk.view.message.as_ref().filter(|message| message.failed) {
         ui.label(RichText::new(&message.text).color(palette(ui).problem));
     }
 }
 
-fn title(ui: &mut Ui, text: &str) {
+pub(super) fn title(ui: &mut Ui, text: &str) {
     ui.label(RichText::new(text).font(theme::strong(16.0)));
     ui.add_space(6.0);
 }
 
 /// A field for a path with a button for the system's dialog; true when Enter was pressed in it.
-fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
+pub(super) fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
     let mut entered = false;
+    let (name, hint) = match desk.view.dialog {
+        Some(Dialog::Export { .. }) => ("Path of the file", "path of a file"),
+        _ => ("Path of the design file", "path of a design file"),
+    };
     ui.horizontal(|ui| {
-        let edit = TextEdit::singleline(path).hint_text("path of a design file").desired_width(400.0);
-        let response = ui.add(edit).accessible_name("Path of the design file");
+        let edit = TextEdit::singleline(path).hint_text(hint).desired_width(400.0);
+        let response = ui.add(edit).accessible_name(name);
         entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
         let nothing_focused = ui.memory(|memory| memory.focused().is_none());
         if nothing_focused && !entered {
             response.request_focus();
         }
-        if ui.button("Browse…").on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
+        let browse = ui.add_enabled(!desk.view.browsing, Button::new("Browse…"));
+        if browse.on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
             desk.ask(Command::Browse);
         }
     });
+    if desk.view.browsing {
+        let text = "Waiting for the system's file dialog. If none appears, type the path here.";
+        ui.label(RichText::new(text).font(theme::small()).color(palette(ui).weak));
+    }
     entered
 }
 
@@ -70,9 +91,14 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
             desk.ask(Command::Dismiss);
         }
     });
+    if !desk.kept.recent.is_empty() {
+        ui.add_space(10.0);
+        ui.label(RichText::new("Recent files").font(theme::strong(13.5)));
+        list(ui, "recent", 170.0).show(ui, |ui| recents::recents_ui(ui, desk));
+    }
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().max_height(300.0).show(ui, |ui| {
+    list(ui, "samples", 260.0).show(ui, |ui| {
         bar::samples_ui(ui, desk);
     });
 }
@@ -147,7 +173,7 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
         desk.ask(Command::Dismiss);
         desk.ask(first.command.clone());
     }
-    ScrollArea::vertical().max_height(360.0).show(ui, |ui| {
+    list(ui, "commands", 360.0).show(ui, |ui| {
         for row in found {
             let mut button =
                 Button::new(row.name).stroke(Stroke::NONE).min_size(eframe::egui::vec2(ui.available_width(), 0.0));
@@ -159,15 +185,26 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
                 desk.ask(row.command.clone());
             }
         }
+        recents::commands_ui(ui, &wanted, desk);
     });
 }
 
-fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
+pub(super) fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
     ui.horizontal(content);
 }
 
+/// A list that scrolls: as high as wished where the window has the room. Without a least height it would take what the dialog
+/// happened to leave when it was first drawn.
+pub(super) fn list(ui: &Ui, name: &str, wish: f32) -> ScrollArea {
+    let height = wish.min(ui.ctx().content_rect().height() * LIST_SHARE);
+    ScrollArea::vertical().id_salt(name).max_height(height).min_scrolled_height(height)
+}
+
+/// Most of the window's height that one list takes.
+const LIST_SHARE: f32 = 0.4;
+
 /// The button that is meant.
-fn primary(ui: &Ui, text: &str) -> Button<'static> {
+pub(super) fn primary(ui: &Ui, text: &str) -> Button<'static> {
     let palette = palette(ui);
     Button::new(RichText::new(text).color(palette.panel).strong()).fill(palette.accent)
 }

@@ -6,13 +6,13 @@ use eframe::egui::{self, ViewportCommand};
 
 use super::app::App;
 use super::command::Command;
-use super::files::{self, Ask};
+use super::files::{self, Answer, Ask};
 use super::findings::lower_first;
 use super::session::{BadText, Session};
 use super::view::{Dialog, Message};
 use crate::analysis::Level;
 use crate::compensator::{Compensator, Series};
-use crate::design::{self, Design};
+use crate::design;
 
 /// Step of the text size, and its least and greatest.
 const SIZE: (f32, f32, f32) = (0.1, 0.8, 2.0);
@@ -21,10 +21,22 @@ impl App {
     /// Carries out one command.
     pub(super) fn perform(&mut self, command: Command, ctx: &egui::Context) {
         match command {
-            Command::OpenPath(_) | Command::OpenSample(_) | Command::Quit if self.session.unsaved() => {
+            _ if self.view.review && command.edits() => {
+                let text = "The review view is for reading. Press Esc to go back to the design.".to_owned();
+                self.view.message = Some(Message { text, failed: false });
+            }
+            Command::OpenPath(_)
+            | Command::OpenSample(_)
+            | Command::CreateDesign
+            | Command::Recover(_)
+            | Command::Quit
+                if self.session.unsaved() =>
+            {
                 self.view.dialog = Some(Dialog::Unsaved(Box::new(command)));
             }
             Command::Open
+            | Command::NewDesign
+            | Command::CreateDesign
             | Command::OpenPath(_)
             | Command::OpenSample(_)
             | Command::Save
@@ -34,17 +46,19 @@ impl App {
             | Command::Quit
             | Command::DiscardAndGoOn
             | Command::SaveAndGoOn
+            | Command::Overwrite(_)
+            | Command::Reload
+            | Command::KeepMine
+            | Command::FindUnsaved
+            | Command::Recover(_)
+            | Command::DiscardJournal(_)
+            | Command::ForgetRecent(_)
+            | Command::ForgetAllRecent
             | Command::Dismiss => self.perform_on_files(command, ctx),
-            Command::Undo
-            | Command::Redo
-            | Command::Enter { .. }
-            | Command::Choose { .. }
-            | Command::Title(_)
-            | Command::MoveLane { .. }
-            | Command::MoveCrossover { .. }
-            | Command::Lock { .. }
-            | Command::RoundParts
-            | Command::Mend(_) => self.perform_on_design(command),
+            Command::Export(_) | Command::ExportPath { .. } | Command::CopyParts | Command::CopyMargins => {
+                self.perform_export(command, ctx);
+            }
+            edit if edit.edits() => self.perform_on_design(edit),
             other => self.perform_on_view(&other, ctx),
         }
     }
@@ -55,23 +69,32 @@ impl App {
                 self.view.message = None;
                 self.view.dialog = Some(Dialog::Open { path: String::new() });
             }
-            Command::OpenPath(path) => self.open(&path),
-            Command::OpenSample(file) => self.open_sample(file),
-            Command::Save => match self.session.path().cloned() {
-                Some(path) => {
-                    self.save(path);
+            Command::NewDesign => {
+                self.view.message = None;
+                self.view.dialog = Some(Dialog::New);
+            }
+            Command::CreateDesign => {
+                if let Some(design) = self.view.new_design.design() {
+                    self.begin(Session::created(design), ctx);
+                    self.view.review = false;
                 }
+            }
+            Command::OpenPath(path) => self.open(&path, ctx),
+            Command::OpenSample(file) => self.open_sample(file, ctx),
+            Command::Save => match self.session.path().cloned() {
+                Some(path) => self.save_asking(path, ctx),
                 None => self.ask_where_to_save(),
             },
             Command::SaveAs => self.ask_where_to_save(),
-            Command::SavePath(path) => {
-                if self.save(path) {
-                    self.view.dialog = None;
-                    if let Some(next) = self.after_saving.take() {
-                        self.perform(next, ctx);
-                    }
-                }
-            }
+            Command::SavePath(path) => self.save_asking(path, ctx),
+            Command::Overwrite(path) => self.save_and_follow(path, ctx),
+            Command::Reload => self.reload(ctx),
+            Command::KeepMine => self.keep_mine(),
+            Command::FindUnsaved => self.find_unsaved(ctx),
+            Command::Recover(journal) => self.recover(&journal, ctx),
+            Command::DiscardJournal(journal) => self.discard_journal(&journal),
+            Command::ForgetRecent(path) => self.forget_recent(Some(path)),
+            Command::ForgetAllRecent => self.forget_recent(None),
             Command::Browse => self.browse(ctx),
             Command::Quit => {
                 self.leaving = true;
@@ -85,29 +108,53 @@ impl App {
             Command::SaveAndGoOn => self.save_and_go_on(ctx),
             _ => {
                 self.after_saving = None;
-                if matches!(self.view.dialog.take(), Some(Dialog::Open { .. } | Dialog::SaveAs { .. })) {
+                let asked = self.view.dialog.take();
+                if matches!(asked, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. })) {
                     self.view.forget_failure();
                 }
+                self.put_off_recovery();
             }
         }
     }
 
     fn save_and_go_on(&mut self, ctx: &egui::Context) {
         let Some(Dialog::Unsaved(next)) = self.view.dialog.take() else { return };
-        let Some(path) = self.session.path().cloned() else {
-            self.after_saving = Some(*next);
-            self.ask_where_to_save();
-            return;
-        };
-        if self.save(path) {
-            self.perform_on_files(*next, ctx);
+        self.after_saving = Some(*next);
+        match self.session.path().cloned() {
+            Some(path) => self.save_asking(path, ctx),
+            None => self.ask_where_to_save(),
         }
     }
 
-    fn open(&mut self, path: &Path) {
+    /// Saves, unless the file changed since it was read: then it asks first.
+    fn save_asking(&mut self, path: PathBuf, ctx: &egui::Context) {
+        if self.changed_on_disk(&path) {
+            self.view.dialog = Some(Dialog::Overwrite { path });
+        } else {
+            self.save_and_follow(path, ctx);
+        }
+    }
+
+    /// Saves, then goes on with what waits for it.
+    fn save_and_follow(&mut self, path: PathBuf, ctx: &egui::Context) {
+        if self.save(path, ctx) {
+            if matches!(self.view.dialog, Some(Dialog::SaveAs { .. } | Dialog::Overwrite { .. })) {
+                self.view.dialog = None;
+            }
+            if let Some(next) = self.after_saving.take() {
+                self.perform_on_files(next, ctx);
+            }
+        } else if !matches!(self.view.dialog, Some(Dialog::SaveAs { .. })) {
+            // The reason stands under the bar; what waited for the save does not go on.
+            self.view.dialog = None;
+            self.after_saving = None;
+        }
+    }
+
+    fn open(&mut self, path: &Path, ctx: &egui::Context) {
         match design::file::load(path) {
             Ok(design) => {
-                self.start(design, Some(path.to_path_buf()));
+                self.begin(Session::new(design, Some(path.to_path_buf())), ctx);
                 self.view.message = None;
             }
             Err(error) => {
@@ -118,39 +165,45 @@ impl App {
         }
     }
 
-    fn open_sample(&mut self, file: &str) {
+    fn open_sample(&mut self, file: &str, ctx: &egui::Context) {
         let Some(sample) = design::sample::all().iter().find(|sample| sample.file == file) else { return };
         match sample.design() {
-            Ok(design) => self.start(design, None),
+            Ok(design) => self.begin(Session::new(design, None), ctx),
             Err(error) => self.fail(error.to_string()),
         }
     }
 
-    fn start(&mut self, design: Design, path: Option<PathBuf>) {
-        self.session = Session::new(design, path);
+    /// Goes on with another document.
+    pub(super) fn begin(&mut self, session: Session, ctx: &egui::Context) {
+        self.session = session;
         self.view.forget_failure();
         self.view.dialog = None;
         self.view.range_hz = None;
         self.view.field = None;
+        self.view.title = None;
         self.view.typing = None;
+        self.kept.new_document();
+        self.in_file(ctx);
     }
 
     fn ask_where_to_save(&mut self) {
-        let path = match self.session.path() {
-            Some(path) => path.display().to_string(),
-            None => files::proposed_name(&self.session.design().title),
+        let proposed = || {
+            let name = PathBuf::from(files::proposed_name(&self.session.design().title));
+            self.last_folder().map_or_else(|| name.clone(), |folder| folder.join(&name))
         };
+        let path = self.session.path().cloned().unwrap_or_else(proposed).display().to_string();
         self.view.forget_failure();
         self.view.dialog = Some(Dialog::SaveAs { path });
     }
 
     /// Saves; true when it worked. Says what happened either way.
-    fn save(&mut self, path: PathBuf) -> bool {
+    fn save(&mut self, path: PathBuf, ctx: &egui::Context) -> bool {
         let design = self.session.design().clone();
         match design::file::save(&design, &path) {
             Ok(()) => {
                 let text = format!("Saved as {}.", path.display());
                 self.session.saved_as(path, design);
+                self.in_file(ctx);
                 self.view.message = Some(Message { text, failed: false });
                 true
             }
@@ -162,22 +215,35 @@ impl App {
     }
 
     fn browse(&mut self, ctx: &egui::Context) {
-        let folder = self.session.path().and_then(|path| path.parent()).map(Path::to_path_buf);
+        let folder = self.last_folder();
         let ask = match &self.view.dialog {
+            Some(Dialog::Export { path, .. }) => Ask::Export(path.clone()),
             Some(Dialog::SaveAs { .. }) => Ask::Save(files::proposed_name(&self.session.design().title)),
             _ => Ask::Open,
         };
-        if let Err(error) = self.dialogs.ask(ask, folder, ctx) {
-            self.fail(format!("The file dialog could not be started: {error}. A path can be typed."));
+        match self.dialogs.ask(ask, folder, ctx) {
+            Ok(()) => {
+                self.view.forget_failure();
+                self.view.browsing = true;
+            }
+            Err(error) => self.fail(format!("The file dialog could not be started: {error}. A path can be typed.")),
         }
     }
 
     /// Puts the answer of the system's dialog into the path that is being asked for.
     pub(super) fn take_file_answer(&mut self) {
-        if let Some(chosen) = self.dialogs.answer()
-            && let Some(Dialog::Open { path } | Dialog::SaveAs { path }) = &mut self.view.dialog
-        {
-            *path = chosen.display().to_string();
+        let Some(answer) = self.dialogs.answer() else { return };
+        self.view.browsing = false;
+        let Some(Dialog::Open { path } | Dialog::SaveAs { path } | Dialog::Export { path, .. }) = &mut self.view.dialog
+        else {
+            return;
+        };
+        match answer {
+            Answer::Chosen(chosen) => *path = chosen.display().to_string(),
+            Answer::Left => {}
+            Answer::Absent => {
+                self.fail("This desktop shows no file dialog. Type the path instead.".into());
+            }
         }
     }
 
@@ -229,13 +295,27 @@ impl App {
         let view = &mut self.view;
         match command {
             Command::Show(input, load) => self.session.show(*input, *load),
+            Command::StepLevels { input, load } => self.session.step_levels(*input, *load),
+            Command::WhatIf { input_voltage, load_current } => {
+                self.session.show_what_if(*input_voltage, *load_current);
+            }
+            Command::Review => {
+                view.review = !view.review;
+                self.session.review(None);
+                ctx.memory_mut(egui::Memory::stop_text_input);
+            }
+            Command::ReviewTry(number) => self.session.review(*number),
+            Command::StepTry { forward } => self.session.step_try(*forward),
             Command::NextCondition => self.session.step_condition(1),
             Command::PreviousCondition => self.session.step_condition(8),
             Command::Toggle(curve) => view.toggle(*curve),
             Command::ToggleBand => view.band = !view.band,
             Command::WholeRange => view.range_hz = None,
             Command::Hold => self.session.hold(),
+            Command::CompareWith(number) => self.session.compare_with(*number),
+            Command::DropTry(number) => self.session.drop_try(*number),
             Command::DropHeld => self.session.drop_held(),
+            Command::Hint(shown) => view.hint = *shown,
             Command::Theme(theme) => {
                 view.theme = *theme;
                 ctx.set_theme(*theme);

@@ -1,17 +1,20 @@
 //! Read-outs: numbers decisions are made on, each with its worst condition, its requirement and the distance to it.
 
-use eframe::egui::{Align2, Color32, Painter, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
+use eframe::egui::{Align2, Color32, FontId, Painter, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 
 use super::command::Command;
 use super::conditions;
+use super::explain;
 use super::marks;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
-use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict};
+use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict, terms};
 use crate::quantity::{self, Unit};
 
 /// Height of a read-out with its requirement [points].
 const TALL: f32 = 46.0;
+/// The same on a page for reading [points].
+const PAGE: f32 = 58.0;
 /// Height of a read-out in a line [points].
 const SHORT: f32 = 19.0;
 /// Where the shown values of the short rows end, as a share of the width.
@@ -22,18 +25,28 @@ const LARGE: [&str; 4] = ["crossover", "phase-margin", "gain-margin", "modulus-m
 /// Draws all read-outs.
 pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(analysis) = desk.session.analysis() else { return };
-    let (large, small): (Vec<_>, Vec<_>) = analysis
+    let (large, small) = sorted(analysis);
+    let look = Look::column();
+    for readout in large {
+        large_ui(ui, readout, analysis, &look, desk);
+    }
+    small_rows_ui(ui, &small, desk);
+}
+
+/// Read-outs that stand large and those that stand in lines.
+pub(super) fn sorted(analysis: &Analysis) -> (Vec<&Readout>, Vec<&Readout>) {
+    analysis
         .readouts
         .iter()
         .filter(|readout| !beside_the_point(readout, analysis))
-        .partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty());
-    for readout in large {
-        large_ui(ui, readout, analysis, desk);
-    }
-    if !small.is_empty() {
-        header_ui(ui);
-    }
-    for readout in small {
+        .partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty())
+}
+
+/// Read-outs in lines, shown value and worst value side by side.
+pub(super) fn small_rows_ui(ui: &mut Ui, readouts: &[&Readout], desk: &mut Desk<'_>) {
+    let Some(analysis) = desk.session.analysis().filter(|_| !readouts.is_empty()) else { return };
+    header_ui(ui);
+    for readout in readouts {
         small_ui(ui, readout, analysis, desk);
     }
 }
@@ -119,22 +132,51 @@ fn ink(readout: &Readout, analysis: &Analysis, palette: &Palette) -> Color32 {
     }
 }
 
-fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk<'_>) {
+/// Sizes of a read-out that stands large.
+#[derive(Clone, Debug)]
+pub(super) struct Look {
+    /// Height with a requirement [points].
+    height: f32,
+    /// Letters of the name and of the worst value.
+    name: FontId,
+    /// Letters of the value.
+    value: FontId,
+    /// Letters of limit and distance.
+    verdict: FontId,
+    /// Where value and verdict begin, below the top [points].
+    tops: (f32, f32),
+}
+
+impl Look {
+    /// In the column beside the plots.
+    pub(super) fn column() -> Self {
+        Look { height: TALL, name: theme::small(), value: theme::figure(), verdict: theme::small(), tops: (13.0, 20.0) }
+    }
+
+    /// On the page for a reviewer.
+    pub(super) fn page() -> Self {
+        let verdict = theme::strong(14.0);
+        Look { height: PAGE, name: theme::body(), value: theme::large(), verdict, tops: (16.0, 24.0) }
+    }
+}
+
+/// A read-out that stands large: value, worst condition by name, limit and distance.
+pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look: &Look, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let verdict = decisive(readout);
-    let height = if verdict.is_some() { TALL } else { TALL - 8.0 };
+    let height = if verdict.is_some() { look.height } else { look.height - 8.0 };
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), height), Sense::click());
     let painter = ui.painter();
     let at = rect.left_top() + vec2(0.0, 1.0);
-    let name = painter.text(at, Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
+    let name = painter.text(at, Align2::LEFT_TOP, readout.name, look.name.clone(), palette.weak);
     let value = value_text(readout, analysis);
-    let at = rect.left_top() + vec2(0.0, 13.0);
-    painter.text(at, Align2::LEFT_TOP, &value, theme::figure(), ink(readout, analysis, palette));
+    let at = rect.left_top() + vec2(0.0, look.tops.0);
+    painter.text(at, Align2::LEFT_TOP, &value, look.value.clone(), ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
         // A long name leaves no room for the word, but the place at the right says it in every row.
-        let layout = |text: String| painter.layout_no_wrap(text, theme::small(), colour);
+        let layout = |text: String| painter.layout_no_wrap(text, look.name.clone(), colour);
         let mut galley = layout(format!("worst {worst}"));
         if name.right() + 6.0 > rect.right() - galley.size().x {
             galley = layout(worst);
@@ -143,13 +185,13 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     }
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
-        let at = rect.right_top() + vec2(0.0, 20.0);
-        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), theme::small(), colour);
+        let at = rect.right_top() + vec2(0.0, look.tops.1);
+        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), look.verdict.clone(), colour);
         bar(painter, rect, verdict, palette);
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(explain(readout));
+    let _ = explain::explained(ui, response, readout.key, || further(readout));
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -217,11 +259,10 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(format!(
-        "{}{}",
-        explain(readout),
-        worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"))
-    ));
+    let _ = explain::explained(ui, response, readout.key, || {
+        let worst = worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"));
+        format!("{}{worst}", further(readout)).trim_start().to_owned()
+    });
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -237,8 +278,12 @@ fn announce(ui: &Ui, response: &eframe::egui::Response, readout: &Readout, value
     ui.ctx().accesskit_node_builder(response.id, |node| node.set_value(value));
 }
 
-fn explain(readout: &Readout) -> String {
-    let mut lines = vec![readout.help.to_owned()];
+/// What is asked of a read-out, and where its worst is. A read-out without a term says here what it means.
+fn further(readout: &Readout) -> String {
+    let mut lines = Vec::new();
+    if terms::find(readout.key).is_none() {
+        lines.push(readout.help.to_owned());
+    }
     for verdict in &readout.requirements {
         let scope = if verdict.over_all_conditions { "all conditions" } else { "nominal condition" };
         let place = if verdict.condition.is_empty() { String::new() } else { format!(" ({})", verdict.condition) };

@@ -7,10 +7,11 @@ use std::collections::BTreeMap;
 use std::path::PathBuf;
 
 use super::drawing::Drawing;
+use super::held::{Held, Tries};
 use super::history::{Gesture, History};
 use crate::analysis::{self, Analysis, Level, Request, Shown};
 use crate::compensator::{Compensator, Lane, LaneKind};
-use crate::design::Design;
+use crate::design::{CheckedDesign, Design};
 use crate::finding::Finding;
 
 /// Text that could not be read as a number; it stays with its field until it is mended or undone.
@@ -31,23 +32,19 @@ pub struct Document {
     pub bad_texts: BTreeMap<String, BadText>,
 }
 
-/// Curves kept to compare with.
-#[derive(Clone, Debug)]
-pub struct Held {
-    /// What was held: the name of the last change, or the title.
-    pub name: String,
-    /// The results.
-    pub analysis: Analysis,
-}
-
 /// The document, its file and its latest results.
 #[derive(Debug)]
 pub struct Session {
     document: Document,
     saved: Design,
+    /// The file does not hold what was last read or saved: it changed, vanished, or the work was recovered.
+    adrift: bool,
+    /// Counts the changes of the document.
+    revision: u64,
     path: Option<PathBuf>,
     history: History<Document>,
     shown: (Level, Level),
+    what_if: Option<(f64, f64)>,
     frequencies_hz: Vec<f64>,
     generation: u64,
     analysed: Option<u64>,
@@ -55,7 +52,10 @@ pub struct Session {
     drawing: Drawing,
     lanes: Vec<Lane>,
     problems: Vec<Finding>,
-    held: Option<Held>,
+    /// What the latest results belong to.
+    worked_out: Option<(CheckedDesign, Request)>,
+    tries: Tries,
+    reviewed: Option<usize>,
     lane_remark: Option<(&'static str, String)>,
 }
 
@@ -70,9 +70,12 @@ impl Session {
         Session {
             saved: design.clone(),
             document: Document { design, bad_texts: BTreeMap::new() },
+            adrift: false,
+            revision: 0,
             path,
             history: History::default(),
             shown: (Level::Nominal, Level::Nominal),
+            what_if: None,
             frequencies_hz: Vec::new(),
             generation: 0,
             analysed: None,
@@ -80,9 +83,40 @@ impl Session {
             drawing: Drawing::default(),
             lanes: Vec::new(),
             problems: Vec::new(),
-            held: None,
+            worked_out: None,
+            tries: Tries::default(),
+            reviewed: None,
             lane_remark: None,
         }
+    }
+
+    /// A session on work that was recovered, its file, and the design in that file. It counts as unsaved.
+    pub(super) fn recovered(document: Document, path: Option<PathBuf>, saved: Option<Design>) -> Self {
+        let mut session = Session::new(document.design, path);
+        session.document.bad_texts = document.bad_texts;
+        session.saved = saved.unwrap_or_else(|| session.saved.clone());
+        session.adrift = true;
+        session
+    }
+
+    /// The document as it stands.
+    pub fn document(&self) -> &Document {
+        &self.document
+    }
+
+    /// Moves with every change of the document.
+    pub(super) fn revision(&self) -> u64 {
+        self.revision
+    }
+
+    /// The design as it was last read or saved.
+    pub(super) fn saved(&self) -> &Design {
+        &self.saved
+    }
+
+    /// Takes note that the file no longer holds what was read or saved, or holds it again.
+    pub(super) fn set_adrift(&mut self, adrift: bool) {
+        self.adrift = adrift;
     }
 
     /// The design as it stands.
@@ -107,18 +141,42 @@ impl Session {
 
     /// True when the design differs from its file, or a field holds text that is in no file.
     pub fn unsaved(&self) -> bool {
-        self.document.design != self.saved || !self.document.bad_texts.is_empty()
+        self.adrift || self.document.design != self.saved || !self.document.bad_texts.is_empty()
     }
 
-    /// The condition shown in full.
+    /// A session on a design that is in no file yet.
+    pub fn created(design: Design) -> Self {
+        Session { saved: Design::default(), ..Session::new(design, None) }
+    }
+
+    /// The one of the nine conditions that is shown in full, or was before a what-if.
     pub fn shown(&self) -> (Level, Level) {
         self.shown
     }
 
+    /// True when this one of the nine conditions is shown.
+    pub fn shows(&self, input: Level, load: Level) -> bool {
+        self.what_if.is_none() && self.shown == (input, load)
+    }
+
     /// Shows another condition.
     pub fn show(&mut self, input: Level, load: Level) {
-        if self.shown != (input, load) {
+        if !self.shows(input, load) {
+            self.what_if = None;
             self.shown = (input, load);
+            self.generation += 1;
+        }
+    }
+
+    /// Input voltage [V] and load current [A] of the what-if that is shown.
+    pub fn what_if(&self) -> Option<(f64, f64)> {
+        self.what_if
+    }
+
+    /// Shows a condition beside the nine: input voltage [V] and load current [A], both positive.
+    pub fn show_what_if(&mut self, input_voltage: f64, load_current: f64) {
+        if self.what_if != Some((input_voltage, load_current)) {
+            self.what_if = Some((input_voltage, load_current));
             self.generation += 1;
         }
     }
@@ -133,12 +191,12 @@ impl Session {
 
     /// The latest results; stale when [`Session::stale`] says so.
     pub fn analysis(&self) -> Option<&Analysis> {
-        self.analysis.as_ref()
+        self.reviewed().map(|held| &held.analysis).or(self.analysis.as_ref())
     }
 
     /// What is worked out once per analysis for drawing it.
     pub(super) fn drawing(&self) -> &Drawing {
-        &self.drawing
+        self.reviewed().map_or(&self.drawing, |held| &held.drawing)
     }
 
     /// The compensator's lanes; of the last usable compensator while the present one cannot be used.
@@ -153,7 +211,7 @@ impl Session {
 
     /// True when the results shown are those of an earlier document.
     pub fn stale(&self) -> bool {
-        !self.problems.is_empty()
+        !self.problems.is_empty() && self.reviewed().is_none()
     }
 
     /// The problem or remark at an entry, the gravest first.
@@ -172,10 +230,22 @@ impl Session {
         switching.filter(|hz| (1.0..1e10).contains(hz)).map_or(USUAL_RANGE_HZ, |hz| (hz / DECADES, hz))
     }
 
-    /// Shows the condition `steps` further in the list of nine.
+    /// Shows the condition `steps` further in the list of nine; from a what-if, the one that was left for it.
     pub fn step_condition(&mut self, steps: usize) {
+        let steps = if self.what_if.is_some() { 0 } else { steps };
         let (input, load) = super::perform::condition_after(self.shown, steps);
         self.show(input, load);
+    }
+
+    /// Shows the condition this many levels of input and load higher, as far as there are any; from a what-if, the one that was
+    /// left for it.
+    pub fn step_levels(&mut self, input: isize, load: isize) {
+        let (by_input, by_load) = if self.what_if.is_some() { (0, 0) } else { (input, load) };
+        let moved = |level: Level, by: isize| {
+            let at = Level::ALL.iter().position(|other| *other == level).unwrap_or(0);
+            at.checked_add_signed(by).and_then(|at| Level::ALL.get(at)).copied().unwrap_or(level)
+        };
+        self.show(moved(self.shown.0, by_input), moved(self.shown.1, by_load));
     }
 
     /// Why a lane could not go where it was asked to, or what else had to move.
@@ -208,20 +278,62 @@ impl Session {
         }
     }
 
-    /// What is held to compare with.
+    /// The held try that is drawn beside the present design; none beside a held one.
     pub fn held(&self) -> Option<&Held> {
-        self.held.as_ref()
+        self.tries.beside().filter(|_| self.reviewed.is_none())
     }
 
-    /// Keeps the present results to compare with.
+    /// All held tries, oldest first.
+    pub fn tries(&self) -> &[Held] {
+        self.tries.all()
+    }
+
+    /// The held try that stands in the place of the present design, as the review shows it.
+    pub fn reviewed(&self) -> Option<&Held> {
+        self.reviewed.and_then(|number| self.tries.get(number))
+    }
+
+    /// Puts a held try, by its number, or the present design in the place of what is shown.
+    pub fn review(&mut self, number: Option<usize>) {
+        self.reviewed = number;
+        self.generation += 1;
+    }
+
+    /// Reviews the next of present design and held tries, or the one before, round and round.
+    pub fn step_try(&mut self, forward: bool) {
+        let all: Vec<_> = std::iter::once(None).chain(self.tries().iter().map(|held| Some(held.number))).collect();
+        let at = all.iter().position(|number| *number == self.reviewed).unwrap_or(0);
+        let by = if forward { 1 } else { all.len() - 1 };
+        if let Some(next) = all.get((at + by) % all.len()) {
+            self.review(*next);
+        }
+    }
+
+    /// Keeps the design of the present results with them, to compare with.
     pub fn hold(&mut self) {
         let name = self.history.undo_name().unwrap_or(&self.document.design.title).to_owned();
-        self.held = self.analysis.clone().map(|analysis| Held { name, analysis });
+        if let (Some((design, request)), Some(analysis), None) = (&self.worked_out, &self.analysis, self.reviewed) {
+            self.tries.hold(name, design.clone(), analysis.clone(), request.clone());
+        }
     }
 
-    /// Drops what is held.
+    /// Draws this held try beside the present design; asked again, none.
+    pub fn compare_with(&mut self, number: usize) {
+        self.tries.compare_with(number);
+        self.tries.follow(self.reviewed, &self.request());
+    }
+
+    /// Drops one held try.
+    pub fn drop_try(&mut self, number: usize) {
+        self.reviewed = self.reviewed.filter(|reviewed| *reviewed != number);
+        self.tries.drop_one(number);
+        self.tries.follow(self.reviewed, &self.request());
+    }
+
+    /// Drops all that is held.
     pub fn drop_held(&mut self) {
-        self.held = None;
+        self.reviewed = None;
+        self.tries.clear();
     }
 
     /// Changes the document as one named step.
@@ -231,6 +343,7 @@ impl Session {
         if self.document != before {
             self.history.record(name, before, gesture);
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -244,6 +357,7 @@ impl Session {
         if let Some(document) = self.history.undo(&self.document) {
             self.document = document;
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -252,6 +366,7 @@ impl Session {
         if let Some(document) = self.history.redo(&self.document) {
             self.document = document;
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -259,6 +374,7 @@ impl Session {
     pub fn saved_as(&mut self, path: PathBuf, design: Design) {
         self.path = Some(path);
         self.saved = design;
+        self.adrift = false;
     }
 
     /// Checks and analyses the document when it, the condition or the frequencies changed. True when results moved.
@@ -272,21 +388,30 @@ impl Session {
         if let Ok(compensator) = Compensator::from_values(&design.values, &design.choices) {
             self.lanes = compensator.lanes();
         }
-        match design.check() {
+        let request = self.request();
+        match self.document.design.check() {
             Ok(checked) => {
-                let request = Request {
-                    shown: Shown::Levels(self.shown.0, self.shown.1),
-                    frequencies_hz: self.frequencies_hz.clone(),
-                    band_frequencies_hz: self.frequencies_hz.iter().copied().step_by(BAND_STEP).collect(),
-                    step_points: STEP_POINTS,
-                };
                 let analysis = analysis::analyse(&checked, &request);
                 self.drawing = Drawing::new(&analysis);
                 self.analysis = Some(analysis);
+                self.worked_out = Some((checked, request.clone()));
             }
             Err(problems) => self.problems.extend(problems),
         }
+        self.tries.follow(self.reviewed, &request);
         true
+    }
+
+    /// What an analysis is asked for at present.
+    fn request(&self) -> Request {
+        let levels = Shown::Levels(self.shown.0, self.shown.1);
+        let at = |(input_voltage, load_current)| Shown::At { input_voltage, load_current };
+        Request {
+            shown: self.what_if.map_or(levels, at),
+            frequencies_hz: self.frequencies_hz.clone(),
+            band_frequencies_hz: self.frequencies_hz.iter().copied().step_by(BAND_STEP).collect(),
+            step_points: STEP_POINTS,
+        }
     }
 }
 
