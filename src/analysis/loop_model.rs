@@ -6,12 +6,13 @@
 //! the inner loop of average current mode it is the latter in both.
 
 use crate::control::{CONTROL, ControlLaw, Controlled, Edge, Mode};
+use crate::converter::signals::LOAD_VOLTAGE;
 use crate::converter::{AveragedModel, Conduction, Stage, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{
-    FactoredResponse, LinearError, Margins, Modes, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict_knowing,
-    pade_delay,
+    Complex, FactoredResponse, LinearError, Margins, Modes, Port, StateSpace, Verdict, Wire, Zpk,
+    closed_loop_verdict_knowing, pade_delay,
 };
 use nalgebra::DMatrix;
 
@@ -52,6 +53,13 @@ impl Shared {
     }
 }
 
+impl Shared {
+    /// The same with another control law of the same delay.
+    pub(super) fn with_law(&self, law: ControlLaw) -> Self {
+        Shared { law, ..self.clone() }
+    }
+}
+
 /// The control law with its compensating ramp settled by the nominal condition.
 fn settled(design: &CheckedDesign) -> Result<ControlLaw, Finding> {
     if !design.law.unsettled() {
@@ -84,6 +92,8 @@ pub struct LoopModel {
     pub plant: FactoredResponse,
     /// The loop gain.
     pub loop_gain: FactoredResponse,
+    /// Whether the load's voltage is another than the regulated one: a second stage stands behind the sense point.
+    pub load_beyond: bool,
 }
 
 /// Names of the closed loop's inputs.
@@ -110,19 +120,20 @@ impl LoopModel {
             loop_gain: FactoredResponse::new(loop_zpk, controlled.delay_s),
             controlled,
             averaged,
+            load_beyond: stage.second_stage.is_some_and(|second| !second.sensed_at_load),
         })
     }
 
-    /// Output voltage from load current with the loop open, the bank's series inductance left out where the stage leaves
-    /// it out.
+    /// An output of the controlled stage from one of its inputs, the loop open and without the control voltage's delay.
     ///
     /// # Errors
     /// As the reduction to zeros and poles.
-    pub fn vout_from_load(&self) -> Result<Zpk, LinearError> {
-        Zpk::from_state_space(&self.controlled.stage, 0, 2)
+    pub fn open_loop(&self, output: &str, input: &str) -> Result<Zpk, LinearError> {
+        let stage = &self.controlled.stage;
+        Zpk::from_state_space(stage, stage.need_output(output)?, stage.need_input(input)?)
     }
 
-    /// What the bank's series inductance adds to that; none where the stage holds it, or there is none.
+    /// What the bank's series inductance adds to the output voltage from the load current; none where the stage holds it, or there is none.
     ///
     /// # Errors
     /// As the reduction to zeros and poles.
@@ -130,14 +141,6 @@ impl LoopModel {
         let Some(bank) = &self.averaged.bank_inductance else { return Ok(None) };
         let response = |s: &StateSpace| Zpk::from_state_space(s, 0, 0).map(|zpk| FactoredResponse::new(zpk, 0.0));
         Ok(Some([response(&bank.with)?, response(&bank.without)?]))
-    }
-
-    /// Output voltage from input voltage with the loop open, the control law included.
-    ///
-    /// # Errors
-    /// As the reduction to zeros and poles.
-    pub fn vout_from_input(&self) -> Result<Zpk, LinearError> {
-        Zpk::from_state_space(&self.controlled.stage, 0, 1)
     }
 
     /// The lowest right-half-plane zero of the stage [Hz]. The rational form of an inner loop's delay has such zeros, too, and
@@ -153,8 +156,8 @@ impl LoopModel {
         Ok(stage.right_half_plane_zero_hz(&vout_from_duty))
     }
 
-    /// The closed loop, from load current, input voltage, reference and a disturbance of the output voltage to output and
-    /// control voltage. The bank's series inductance stands outside.
+    /// The closed loop, from load current, input voltage, reference and a disturbance of the output voltage to the load's
+    /// voltage and the control voltage. The bank's series inductance stands outside.
     ///
     /// # Errors
     /// As the joining of systems.
@@ -184,7 +187,7 @@ impl LoopModel {
             Port { name: EVENTS[3], part: TAP, port: "disturbance" },
         ];
         let outputs = [
-            Port { name: "output voltage", part: STAGE, port: "output voltage" },
+            Port { name: "output voltage", part: STAGE, port: LOAD_VOLTAGE },
             Port { name: "output voltage", part: TAP, port: "disturbance" },
             Port { name: "control voltage", part: COMPENSATOR, port: "vc" },
         ];
@@ -197,9 +200,7 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Modes>), LinearError> {
-        let closed = self.closed(shared)?;
-        let poles = closed.poles()?;
-        let verdict = closed_loop_verdict_knowing(&poles, &self.loop_gain, margins);
+        let (closed, poles, verdict) = self.judged(shared, margins)?;
         if !matches!(verdict, Verdict::Stable { .. }) {
             return Ok((verdict, None));
         }
@@ -209,6 +210,23 @@ impl LoopModel {
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.without)?, -1.0)?;
         }
         Ok((verdict, Some(modes)))
+    }
+}
+
+impl LoopModel {
+    /// Stability alone, as [`LoopModel::verdict`] decides it.
+    ///
+    /// # Errors
+    /// As the joining of systems.
+    pub fn stability(&self, shared: &Shared, margins: &Margins) -> Result<Verdict, LinearError> {
+        self.judged(shared, margins).map(|judged| judged.2)
+    }
+
+    fn judged(&self, shared: &Shared, margins: &Margins) -> Result<(StateSpace, Vec<Complex>, Verdict), LinearError> {
+        let closed = self.closed(shared)?;
+        let poles = closed.poles()?;
+        let verdict = closed_loop_verdict_knowing(&poles, &self.loop_gain, margins);
+        Ok((closed, poles, verdict))
     }
 }
 

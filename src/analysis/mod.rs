@@ -9,6 +9,10 @@ mod control_figures;
 mod control_remarks;
 mod crossover_window;
 mod curves;
+mod filter_readouts;
+mod filter_remarks;
+mod filter_result;
+mod impedance;
 mod ledger;
 pub mod loop_model;
 pub mod proposal;
@@ -16,12 +20,16 @@ mod readouts;
 mod remarks;
 mod requirement;
 mod result;
+mod stability_remarks;
 mod steps;
 pub mod terms;
 #[cfg(test)]
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use filter_result::{
+    Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
+};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, CrossoverWindow, Curves, Detail,
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,

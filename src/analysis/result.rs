@@ -4,6 +4,7 @@
 //! unwrapped upward from low frequency; the loop gain has the sign of the negative feedback taken out. Every result
 //! names the operating condition it was computed at.
 
+use super::filter_result::{InputFilterDetail, InputFilterResult};
 use crate::control::Sampling;
 use crate::converter::{Landmark, OperatingPoint};
 use crate::finding::Finding;
@@ -65,6 +66,11 @@ impl LoopResult {
     /// True when the closed loop is stable.
     pub fn stable(&self) -> bool {
         matches!(self.verdict, Verdict::Stable { .. })
+    }
+
+    /// True when it is stable, but a lower gain would make it unstable.
+    pub fn conditionally_stable(&self) -> bool {
+        matches!(self.verdict, Verdict::Stable { conditionally: true })
     }
 }
 
@@ -171,6 +177,8 @@ pub struct LedgerRow {
     pub role: LedgerRole,
     /// Key of the lane it belongs to, for compensator rows.
     pub lane: Option<&'static str>,
+    /// Key of the landmark it belongs to, for rows of the stage.
+    pub landmark: Option<&'static str>,
 }
 
 /// The phase at the headline crossover itemised by cause; the rows add up to the phase margin.
@@ -227,6 +235,8 @@ pub struct Detail {
     pub loop_gain: LoopResult,
     /// Frequency curves on the requested grid.
     pub curves: Curves,
+    /// Input filter against converter, where one is fitted.
+    pub input_filter: Option<InputFilterDetail>,
     /// Time responses.
     pub steps: Steps,
     /// Phase ledger; absent when the loop has no crossover.
@@ -257,6 +267,8 @@ pub struct ConditionSummary {
     pub control: ControlFigures,
     /// Load step; absent when unstable.
     pub load_step: Option<StepFigures>,
+    /// Input filter against converter, where one is fitted.
+    pub input_filter: Option<InputFilterResult>,
     /// Lowest right-half-plane zero of the plant [Hz].
     pub right_half_plane_zero_hz: Option<f64>,
     /// Loop gain on the band grid [dB].

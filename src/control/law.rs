@@ -108,6 +108,19 @@ impl ControlLaw {
         law
     }
 
+    /// The same law with its ramp held at the height it has at an input voltage [V]: what stands behind a filter's terminals does
+    /// not see the source.
+    #[must_use]
+    pub fn without_feedforward(&self, input_voltage: f64) -> Self {
+        let mut law = self.clone();
+        match &mut law.mode {
+            Mode::Voltage(ramp) => *ramp = ramp.held(input_voltage),
+            Mode::Average(average) => average.ramp = average.ramp.held(input_voltage),
+            Mode::Current(..) => {}
+        }
+        law
+    }
+
     /// Whether the compensating ramp waits to be settled by the nominal condition.
     pub fn unsettled(&self) -> bool {
         matches!(&self.mode, Mode::Current(_, sense) if sense.unsettled())

@@ -32,6 +32,12 @@ impl Ramp {
         self.feedforward_at.map_or(self.amplitude, |nominal| self.amplitude * input_voltage / nominal)
     }
 
+    /// A ramp of one height, the one this has at an input voltage [V].
+    #[must_use]
+    pub(super) fn held(&self, input_voltage: f64) -> Self {
+        Ramp { amplitude: self.at(input_voltage), valley: self.valley, feedforward_at: None }
+    }
+
     /// Duty ratio from the compared voltage [1/V].
     pub fn duty_from_voltage(&self, input_voltage: f64) -> f64 {
         self.at(input_voltage).recip()

@@ -1,7 +1,7 @@
 //! Landmarks: the textbook frequencies of the plant. They are shown and tested against, and feed no curve.
 
-use super::bank::Branch;
 use super::drawing::Topology;
+use super::stage::Stage;
 use crate::linear::Zpk;
 use std::f64::consts::TAU;
 
@@ -21,7 +21,8 @@ pub struct Textbook {
 /// A frequency worth knowing.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Landmark {
-    /// Stable key: "lc-resonance", "esr-zero", "right-half-plane-zero", "half-switching".
+    /// Stable key: "lc-resonance", "esr-zero", "right-half-plane-zero", "input-filter", "output-filter",
+    /// "half-switching".
     pub key: &'static str,
     /// Name for people.
     pub name: &'static str,
@@ -31,19 +32,24 @@ pub struct Landmark {
     pub formula: &'static str,
     /// True when it was read off the derived model's poles and zeros because no textbook formula fits.
     pub derived: bool,
+    /// Paths of the entries of the parts that make it.
+    pub parts: Vec<String>,
 }
 
-const READ_OFF: &str = "read off the poles and zeros of the derived model: no textbook form fits unlike branches";
+const READ_OFF: &str =
+    "read off the poles and zeros of the derived model: no textbook form fits unlike branches or a second stage";
 
-/// The landmarks of a stage: textbook forms for a bank of one kind of capacitor, else read off the plant.
-pub(super) fn landmarks(topology: &Topology, t: &Textbook, bank: &[Branch], fs: f64, plant: &Zpk) -> Vec<Landmark> {
-    let mut marks = Vec::with_capacity(4);
+/// The landmarks of a stage: textbook forms for a bank of one kind of capacitor at the load, else read off the plant, which is
+/// that of the stage without its input filter.
+pub(super) fn landmarks(topology: &Topology, t: &Textbook, stage: &Stage, plant: &Zpk) -> Vec<Landmark> {
+    let mut marks = Vec::with_capacity(6);
     let mut add = |key, name, frequency_hz: f64, formula, derived| {
         if frequency_hz.is_finite() && frequency_hz > 0.0 {
-            marks.push(Landmark { key, name, frequency_hz, formula, derived });
+            let parts = parts_of(key, stage.bank.len());
+            marks.push(Landmark { key, name, frequency_hz, formula, derived, parts });
         }
     };
-    if let [only] = bank {
+    if let ([only], None) = (stage.bank.as_slice(), &stage.second_stage) {
         add("lc-resonance", "LC resonance", (topology.resonance_hz)(t), topology.resonance_formula, false);
         if only.esr > 0.0 {
             add("esr-zero", "ESR zero", 1.0 / (TAU * only.esr * only.capacitance), "1 / (2π·ESR·C)", false);
@@ -59,8 +65,33 @@ pub(super) fn landmarks(topology: &Topology, t: &Textbook, bank: &[Branch], fs: 
         let right = right_half_plane_zero_hz(plant).filter(|_| topology.right_half_plane_zero_hz_exists());
         add("right-half-plane-zero", "RHP zero", right.unwrap_or(f64::NAN), READ_OFF, true);
     }
-    add("half-switching", "½ switching", fs / 2.0, "fs / 2", false);
+    if let Some(filter) = &stage.input_filter {
+        add("input-filter", "Input filter", filter.resonance_hz(), "1 / (2π·√(Lf·Cin))", false);
+    }
+    if let Some(second) = &stage.second_stage {
+        let resonance = second.resonance_hz(stage.bank_capacitance());
+        add("output-filter", "Output filter", resonance, "1 / (2π·√(Lo·C·Co/(C + Co)))", false);
+    }
+    add("half-switching", "½ switching", stage.switching_frequency / 2.0, "fs / 2", false);
     marks
+}
+
+/// Paths of the entries that a landmark follows from.
+fn parts_of(key: &str, branches: usize) -> Vec<String> {
+    let of_bank = |what: &str| (1..=branches).map(|k| format!("stage.bank.{k}.{what}")).collect::<Vec<_>>();
+    let one = |path: &str| vec![path.to_owned()];
+    match key {
+        "lc-resonance" => [one("stage.inductor.inductance"), of_bank("capacitance")].concat(),
+        "esr-zero" => [of_bank("esr"), of_bank("capacitance")].concat(),
+        "right-half-plane-zero" => [one("stage.inductor.inductance"), one("stage.load.nominal")].concat(),
+        "input-filter" => [one("stage.input-filter.inductance"), one("stage.input-capacitor.capacitance")].concat(),
+        "output-filter" => {
+            [one("stage.output-filter.inductance"), one("stage.output-filter.capacitance"), of_bank("capacitance")]
+                .concat()
+        }
+        "half-switching" => one("stage.switching-frequency"),
+        _ => Vec::new(),
+    }
 }
 
 /// The lowest right-half-plane zero of a plant [Hz].

@@ -162,7 +162,7 @@ impl Design {
         let mut remarks = Vec::new();
         remarks.extend(self.values.get(OUTPUT).and_then(|entered| output_differs(entered, output)));
         remarks.extend(caution::caution(self, output));
-        if self.choices.is("stage.input-capacitor", "none") {
+        if self.choices.is("stage.input-capacitor", "none") && !self.choices.is("stage.input-filter", "fitted") {
             remarks.push(
                 Finding::notice(
                     "stage.input-capacitor",
