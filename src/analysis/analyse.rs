@@ -10,9 +10,11 @@ use super::remarks::remarks;
 use super::requirement::verdict;
 use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult, Steps};
 use super::steps::{load_figures, steps};
+use crate::converter::Conduction;
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{FrequencyResponse, Modes, Zpk, margins};
+use crate::quantity::{Unit, print_digits};
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// Which condition is shown in full.
@@ -198,6 +200,22 @@ impl Worked {
 }
 
 fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Worked, Finding> {
+    let (model, loop_gain, modes) = loop_at(design, shared, condition)?;
+    let load_step =
+        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
+    let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
+    Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
+}
+
+/// Model, margins and verdict at a condition; and for a stable loop its modes.
+///
+/// # Errors
+/// A finding when the condition cannot be held or its model cannot be solved.
+pub(super) fn loop_at(
+    design: &CheckedDesign,
+    shared: &Shared,
+    condition: &Condition,
+) -> Result<(LoopModel, LoopResult, Option<Modes>), Finding> {
     let stage_condition = condition.of_stage(&design.stage);
     let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
     refuse_out_of_limits(design, &model)?;
@@ -213,23 +231,27 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
         gain_at_switching: model.loop_gain.at_hz(fs).norm(),
     };
-    let load_step =
-        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
-    let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
-    Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
+    Ok((model, loop_gain, modes))
 }
 
 /// Conditions that cannot be held: a duty ratio beyond the modulator's limits.
 fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(), Finding> {
-    let point = &model.averaged.operating_point;
+    let duty = model.averaged.operating_point.duty;
     let (least, greatest) = (design.modulator.duty_least, design.modulator.duty_greatest);
-    if !(least..=greatest).contains(&point.duty) {
-        let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
-        let message =
-            format!("A duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}.", point.duty);
-        return Err(Finding::problem(place, message).with_hint("widen the duty limits or the input range"));
+    if (least..=greatest).contains(&duty) {
+        return Ok(());
     }
-    Ok(())
+    let needed = print_digits(duty, Unit::One, 3);
+    let message = format!("A duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}.");
+    let resting = model.averaged.operating_point.conduction == Conduction::Discontinuous;
+    Err(if duty > greatest {
+        Finding::problem("control.duty.greatest", message).with_hint("widen the duty limits or the input range")
+    } else if resting {
+        Finding::problem("control.duty.least", message)
+            .with_hint("widen the duty limits, or raise the least load: below it the modulator skips pulses")
+    } else {
+        Finding::problem("control.duty.least", message).with_hint("widen the duty limits or the input range")
+    })
 }
 
 fn detailed(
@@ -241,7 +263,8 @@ fn detailed(
 ) -> Result<Detail, Finding> {
     let model = &worked.model;
     let stage_condition = condition.of_stage(&design.stage);
-    let landmarks = design.stage.landmarks(&stage_condition, model.plant.zpk());
+    let landmarks =
+        design.stage.landmarks(&stage_condition, model.averaged.operating_point.conduction, model.plant.zpk());
     let reference = Zpk::from_state_space(&shared.compensator, 0, 1).map_err(|e| model_finding(&e))?;
     let scale = design.compensator.dc_output_voltage() / design.compensator.reference;
     let curves = curves(model, shared, &reference, &request.frequencies_hz, scale).map_err(|e| model_finding(&e))?;

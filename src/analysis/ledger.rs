@@ -99,6 +99,8 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark]) -> LedgerRow {
             (format!("LC resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if near("low-pole") => (format!("low pole {at}"), LedgerRole::Plant),
+        FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };
     LedgerRow { label, degrees: factor.phase_deg, role, lane: None }

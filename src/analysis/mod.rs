@@ -5,9 +5,11 @@
 
 mod analyse;
 mod condition;
+mod conduction;
 mod crossover_window;
 mod curves;
 mod ledger;
+mod load_sweep;
 pub mod loop_model;
 mod readouts;
 mod remarks;
@@ -18,6 +20,7 @@ mod steps;
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use load_sweep::{LoadSweep, LoadSweepFigures, LoadSweepLine, LoadSweepPoint, SWEEP_POINTS, load_sweep};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, CrossoverWindow, Curves, Detail, Ledger, LedgerRole,
     LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step, StepFigures, Steps, WindowEdge, Worst,

@@ -322,6 +322,8 @@ pub struct WindowEdge {
     pub frequency_hz: f64,
     /// What sets it: "2 × LC resonance at greatest input 16 V, ...".
     pub cause: String,
+    /// Whether an LC resonance sets it, which conditions in discontinuous conduction do not have.
+    pub of_resonance: bool,
 }
 
 /// The band of crossover frequencies the stage allows.

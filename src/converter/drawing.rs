@@ -4,7 +4,7 @@
 //! Every call draws its parts twice: into the netlist, and into the sketch that says where they stand in the schematic.
 
 use super::entries::{BRANCHES, branch_count};
-use super::landmark::Textbook;
+use super::landmark::{RestingForms, Textbook};
 use super::stage::{LoadKind, Rectifier};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
@@ -32,6 +32,8 @@ pub struct Topology {
     pub right_half_plane_zero_hz: fn(&Textbook) -> Option<f64>,
     /// The formula of the right-half-plane zero, for people.
     pub right_half_plane_zero_formula: &'static str,
+    /// What holds in its place in discontinuous conduction.
+    pub resting: RestingForms,
 }
 
 /// Where an output can stand against the input.

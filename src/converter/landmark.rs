@@ -18,10 +18,47 @@ pub struct Textbook {
     pub load_resistance: f64,
 }
 
+/// The lossless quantities textbook forms of discontinuous conduction are written in.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct RestingTextbook {
+    /// Lossless duty ratio.
+    pub duty: f64,
+    /// Output voltage over input voltage, M.
+    pub conversion: f64,
+    /// Output capacitance [F].
+    pub capacitance: f64,
+    /// Output voltage over load current [Ω], whatever the load kind.
+    pub load_resistance: f64,
+    /// Whether the load is a resistor.
+    pub resistive: bool,
+    /// Switching frequency [Hz].
+    pub switching_frequency: f64,
+}
+
+/// A topology's textbook forms of discontinuous conduction.
+#[derive(Clone, Copy, Debug)]
+pub struct RestingForms {
+    /// Lossless duty ratio from M and K = 2·L·fs/R.
+    pub duty: fn(f64, f64) -> f64,
+    /// Pole of the output capacitor [Hz].
+    pub low_pole_hz: fn(&RestingTextbook) -> f64,
+    /// Its formula, for people.
+    pub low_pole_formula: &'static str,
+    /// Pole of the inductor [Hz], near or above the switching frequency.
+    pub second_pole_hz: fn(&RestingTextbook) -> f64,
+    /// Its formula, for people.
+    pub second_pole_formula: &'static str,
+    /// Right-half-plane zero [Hz], where there is one.
+    pub right_half_plane_zero_hz: Option<fn(&RestingTextbook) -> f64>,
+    /// Its formula, for people.
+    pub right_half_plane_zero_formula: &'static str,
+}
+
 /// A frequency worth knowing.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Landmark {
-    /// Stable key: "lc-resonance", "esr-zero", "right-half-plane-zero", "half-switching".
+    /// Stable key: "lc-resonance", "esr-zero", "right-half-plane-zero", "half-switching"; in discontinuous conduction
+    /// "low-pole" and "second-pole" in place of the resonance.
     pub key: &'static str,
     /// Name for people.
     pub name: &'static str,
@@ -34,6 +71,8 @@ pub struct Landmark {
 }
 
 const READ_OFF: &str = "read off the poles and zeros of the derived model: no textbook form fits unlike branches";
+
+const READ_OFF_LOAD: &str = "read off the poles of the derived model: the textbook form is that of a resistor";
 
 /// The landmarks of a stage: textbook forms for a bank of one kind of capacitor, else read off the plant.
 pub(super) fn landmarks(topology: &Topology, t: &Textbook, bank: &[Branch], fs: f64, plant: &Zpk) -> Vec<Landmark> {
@@ -60,6 +99,45 @@ pub(super) fn landmarks(topology: &Topology, t: &Textbook, bank: &[Branch], fs: 
         add("right-half-plane-zero", "RHP zero", right.unwrap_or(f64::NAN), READ_OFF, true);
     }
     add("half-switching", "½ switching", fs / 2.0, "fs / 2", false);
+    marks
+}
+
+/// The landmarks of a stage in discontinuous conduction, where inductor and capacitor do not resonate.
+pub(super) fn resting_landmarks(
+    topology: &Topology,
+    t: &RestingTextbook,
+    bank: &[Branch],
+    plant: &Zpk,
+) -> Vec<Landmark> {
+    let forms = &topology.resting;
+    let mut marks = Vec::with_capacity(5);
+    let mut add = |key, name, frequency_hz: f64, formula, derived| {
+        if frequency_hz.is_finite() && frequency_hz > 0.0 {
+            marks.push(Landmark { key, name, frequency_hz, formula, derived });
+        }
+    };
+    let textbook = bank.len() == 1;
+    if textbook && t.resistive {
+        add("low-pole", "low pole", (forms.low_pole_hz)(t), forms.low_pole_formula, false);
+    } else {
+        let why = if textbook { READ_OFF_LOAD } else { READ_OFF };
+        let pole = plant.poles.iter().map(|p| p.norm()).min_by(f64::total_cmp);
+        add("low-pole", "low pole", pole.unwrap_or(f64::NAN) / TAU, why, true);
+    }
+    if let [only] = bank {
+        if only.esr > 0.0 {
+            add("esr-zero", "ESR zero", 1.0 / (TAU * only.esr * only.capacitance), "1 / (2π·ESR·C)", false);
+        }
+    } else {
+        let left = plant.zeros.iter().filter(|z| z.re < 0.0 && z.im >= 0.0).map(|z| z.norm()).min_by(f64::total_cmp);
+        add("esr-zero", "ESR zero", left.unwrap_or(f64::NAN) / TAU, READ_OFF, true);
+    }
+    // The inductor's corners do not know the bank.
+    add("second-pole", "second pole", (forms.second_pole_hz)(t), forms.second_pole_formula, false);
+    if let Some(zero) = forms.right_half_plane_zero_hz {
+        add("right-half-plane-zero", "RHP zero", zero(t), forms.right_half_plane_zero_formula, false);
+    }
+    add("half-switching", "½ switching", t.switching_frequency / 2.0, "fs / 2", false);
     marks
 }
 

@@ -28,7 +28,7 @@ pub use bank::{BankInductance, Branch};
 pub use drawing::StageDrawing;
 pub use drawing::{Reach, Topology, sketch};
 pub use entries::{CHOICES, ENTRIES, applies};
-pub use landmark::{Landmark, Textbook};
+pub use landmark::{Landmark, RestingForms, RestingTextbook, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
