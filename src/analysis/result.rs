@@ -359,6 +359,14 @@ pub struct Analysis {
 }
 
 impl Analysis {
+    /// The condition shown with its conduction mode: "nominal input 12 V, nominal load 50 mA, discontinuous conduction".
+    pub fn place(&self) -> String {
+        match &self.shown {
+            Ok(detail) => format!("{}, {} conduction", self.condition.label, detail.operating_point.conduction.word()),
+            Err(_) => self.condition.label.clone(),
+        }
+    }
+
     /// True when every stated requirement is met.
     pub fn all_met(&self) -> bool {
         self.requirements.iter().all(|requirement| requirement.met)

@@ -282,3 +282,23 @@ fn the_gain_of_a_buck_jumps_at_the_boundary() {
         assert_relative("discontinuous", gain(boundary * (1.0 - 1e-9)), 2.0 * vin * (1.0 - d) / (2.0 - d), 1e-6);
     }
 }
+
+/// Every point of continuous conduction whose valley would be below zero has one of discontinuous conduction, down to a millionth of the
+/// boundary's load, and a plant without zeros made of rounding: a buck has none on the right.
+#[test]
+fn every_light_load_has_its_point() {
+    let mut random = Random::new(5);
+    for topology in TOPOLOGIES {
+        for _ in 0..1000 {
+            let stage = checked(&lossy(&mut random, topology)).stage;
+            let vin = stage.input_voltages[0];
+            let condition =
+                StageCondition { input_voltage: vin, load_current: 1.0, output_voltage: stage.output_voltage };
+            let Some(boundary) = stage.boundary_load(&condition) else { continue };
+            let model = model(&stage, vin, boundary * random.log(1e-6, 0.999));
+            assert_eq!(model.operating_point.conduction, Conduction::Discontinuous, "{topology}");
+            let zero = stage.right_half_plane_zero_hz(&zpk(&model, "output voltage", "duty"));
+            assert_eq!(zero.is_some(), topology != "buck", "{topology}: {zero:?}");
+        }
+    }
+}
