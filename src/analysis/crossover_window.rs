@@ -52,6 +52,10 @@ fn edge(frequency_hz: f64, cause: String, kind: Cause) -> Option<(WindowEdge, Ca
 }
 
 fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<(WindowEdge, Cause)> {
+    if !design.law.voltage_mode() {
+        // Current mode leaves no resonance of inductor and output capacitor.
+        return None;
+    }
     let resonance = |condition: &Condition| {
         (design.stage.topology().resonance_hz)(&design.stage.textbook(&condition.of_stage(&design.stage)))
     };

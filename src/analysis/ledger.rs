@@ -31,7 +31,7 @@ pub(super) fn ledger(
         if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
             small += factor.phase_deg;
         } else {
-            rows.push(plant_row(&factor, landmarks));
+            rows.push(plant_row(&factor, landmarks, model));
         }
     }
     if small != 0.0 {
@@ -82,24 +82,38 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
     rows
 }
 
-fn plant_row(factor: &FactorPhase, landmarks: &[Landmark]) -> LedgerRow {
+fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) -> LedgerRow {
     let f = factor.root.norm() / TAU;
     let at = print_digits(f, Unit::Hertz, 3);
     let near = |key: &str| landmarks.iter().any(|m| m.key == key && (m.frequency_hz / f).ln().abs() < 0.3);
     let right = factor.root.re > 0.0;
+    let sampled = model.controlled.sampling.is_some();
+    let half =
+        landmarks.iter().find(|mark| mark.key == "half-switching").map_or(f64::INFINITY, |mark| mark.frequency_hz);
     let (label, role) = match factor.kind {
         FactorKind::Sign => ("sign of the plant".to_owned(), LedgerRole::RightHalfPlane),
         FactorKind::Delay => ("delay".to_owned(), LedgerRole::Delay),
+        // The rational form of the inner loop's delay; the stage's own lies lower.
+        FactorKind::Zero if right && model.controlled.inner.is_some() && f > half => {
+            (format!("delay of the inner loop {at}"), LedgerRole::Delay)
+        }
         FactorKind::Zero if right => (format!("RHP zero {at}"), LedgerRole::RightHalfPlane),
         FactorKind::Zero if factor.root.im != 0.0 => (format!("zero pair {at}"), LedgerRole::Plant),
         FactorKind::Zero if near("esr-zero") => (format!("ESR zero {at}"), LedgerRole::Plant),
         FactorKind::Zero => (format!("stage zero {at}"), LedgerRole::Plant),
         FactorKind::Pole if right => (format!("RHP pole {at}"), LedgerRole::RightHalfPlane),
+        FactorKind::Pole if near("low-pole") => (format!("low pole {at}"), LedgerRole::Plant),
+        FactorKind::Pole if sampled && factor.root.im != 0.0 && near("half-switching") => {
+            (format!("sampling pair {at}"), LedgerRole::Plant)
+        }
+        // A pair of low quality parts into two poles around half the switching frequency.
+        FactorKind::Pole if sampled && factor.root.im == 0.0 && f > half / 10.0 => {
+            (format!("sampling pole {at}"), LedgerRole::Plant)
+        }
         FactorKind::Pole if factor.root.im != 0.0 && near("lc-resonance") => {
             (format!("LC resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
-        FactorKind::Pole if near("low-pole") => (format!("low pole {at}"), LedgerRole::Plant),
         FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };

@@ -52,7 +52,7 @@ impl Intervals {
     }
 
     fn bracket_and_polish(&self, near: f64, period: f64, target: f64, row: usize) -> Result<Found, OutOfReach> {
-        let found = self.with_resistor(row).bracket_pulse(near, period, target, row)?;
+        let found = self.with_resistor().bracket_pulse(near, period, target, row)?;
         let polished = found.pulse.is_some().then(|| self.newton_pulse(found.clone(), period, target, row)).flatten();
         Ok(polished.unwrap_or(found))
     }
@@ -100,11 +100,12 @@ impl Intervals {
 
     /// The stage with a resistor for its load, whose output rises with the duty ratio where that of a tangent may not. Both
     /// draw the same current at the output wanted.
-    pub(super) fn with_resistor(&self, row: usize) -> Self {
+    pub(super) fn with_resistor(&self) -> Self {
+        let (row, conductance) = self.to_resistor;
         let load = |e: &StateEquations| {
             let b: DVector<f64> = e.b.column(LOAD_CURRENT).into();
             let d: DVector<f64> = e.d.column(LOAD_CURRENT).into();
-            let share = self.to_resistor / (1.0 - d[row] * self.to_resistor);
+            let share = conductance / (1.0 - d[row] * conductance);
             let (by_states, by_inputs) = (e.c.row(row) * share, e.d.row(row) * share);
             StateEquations {
                 a: &e.a + &b * &by_states,
@@ -117,7 +118,7 @@ impl Intervals {
         let mut inputs = self.inputs.clone();
         inputs[LOAD_CURRENT] = 0.0;
         let cell = SwitchedCell { idle: load(&self.cell.idle), ..self.cell.clone() };
-        Intervals { on: load(&self.on), off: load(&self.off), cell, inputs, to_resistor: 0.0 }
+        Intervals { on: load(&self.on), off: load(&self.off), cell, inputs, to_resistor: (row, 0.0) }
     }
 
     /// The lowest duty ratio that gives the output, from brackets.

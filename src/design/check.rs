@@ -7,7 +7,7 @@
 use super::document::{Design, unknown_option};
 use super::{Events, Requirements, caution, table};
 use crate::compensator::Compensator;
-use crate::control::Modulator;
+use crate::control::ControlLaw;
 use crate::converter::{self, Reach, Stage};
 use crate::finding::{Finding, Remedy};
 use crate::quantity::{Entry, Unit, Values, print, print_digits};
@@ -29,7 +29,7 @@ pub struct CheckedDesign {
     /// The power stage, for the output voltage that reference and divider give.
     pub stage: Stage,
     /// What turns control voltage into duty ratio.
-    pub modulator: Modulator,
+    pub law: ControlLaw,
     /// The network around the error amplifier.
     pub compensator: Compensator,
     /// What the design is asked to meet.
@@ -51,18 +51,18 @@ impl Design {
         problems.extend(self.reach_problems());
         let mut rooms = Rooms { problems };
         let compensator = rooms.build("compensator", || Compensator::from_values(&self.values, &self.choices));
-        let modulator = rooms.build("control", || Ok(Modulator::from_values(&self.values, &self.choices)));
+        let law = rooms.build("control", || ControlLaw::from_values(&self.values, &self.choices));
         let requirements = rooms.build("requirement", || Requirements::from_values(&self.values));
         let events = rooms.build("event", || Ok(Events::from_values(&self.values)));
         let regulated = self.regulated(compensator.as_ref());
         let stage = rooms.build("stage", || Stage::from_values(&regulated, &self.choices));
-        match (stage, modulator, compensator, requirements, events) {
-            (Some(stage), Some(modulator), Some(compensator), Some(requirements), Some(events))
+        match (stage, law, compensator, requirements, events) {
+            (Some(stage), Some(law), Some(compensator), Some(requirements), Some(events))
                 if rooms.problems.is_empty() =>
             {
                 let findings = self.remarks(&compensator);
                 let title = self.title.clone();
-                Ok(CheckedDesign { title, stage, modulator, compensator, requirements, events, findings })
+                Ok(CheckedDesign { title, stage, law, compensator, requirements, events, findings })
             }
             _ => Err(in_form_order(rooms.problems)),
         }
@@ -162,7 +162,7 @@ impl Design {
         let mut remarks = Vec::new();
         remarks.extend(self.values.get(OUTPUT).and_then(|entered| output_differs(entered, output)));
         remarks.extend(caution::caution(self, output));
-        if self.choices.is("stage.input-capacitor", "none") {
+        if self.choices.is("stage.input-capacitor", "none") && !self.choices.is("stage.input-filter", "fitted") {
             remarks.push(
                 Finding::notice(
                     "stage.input-capacitor",

@@ -106,7 +106,7 @@ fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
     }
     row(text, "Input current", &amperes(point.input_current));
     row(text, "Conduction losses", &print(point.conduction_loss, Unit::Watt));
-    row(text, "Control voltage", &print(detail.control_voltage, Unit::Volt));
+    row(text, "Control voltage", &print(detail.control.control_voltage, Unit::Volt));
     if let Some(load) = detail.boundary_load {
         row(text, "Discontinuous below", &format!("{} of load", amperes(load)));
     }
@@ -158,7 +158,8 @@ fn stability(text: &mut String, detail: &Detail) {
 
 fn readouts(text: &mut String, analysis: &Analysis, design: &CheckedDesign) {
     let stands_still = analysis.shown.is_ok() && design.events.load_step.change == 0.0;
-    for readout in &analysis.readouts {
+    // The control voltage stands with the operating point already.
+    for readout in analysis.readouts.iter().filter(|readout| readout.key != "control-voltage") {
         let of_step = matches!(readout.key, "load-step-deviation" | "settling");
         if of_step && stands_still {
             row(text, readout.name, "no step");

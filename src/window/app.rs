@@ -79,6 +79,11 @@ impl App {
         self.view.review
     }
 
+    /// True while the hint for who is new here is shown.
+    pub fn hinting(&self) -> bool {
+        self.view.hint
+    }
+
     /// The message under the bar, if any.
     pub fn message(&self) -> Option<&super::view::Message> {
         self.view.message.as_ref()

@@ -268,6 +268,13 @@ const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
 
 /// The command table, in the order of the menus.
 pub(super) static COMMANDS: &[Row] = &[
+    row(
+        "New design…",
+        Menu::Design,
+        Some(key(CTRL, Key::N)),
+        "Begin a design from what it has to do; every assumption is told first.",
+        Command::NewDesign,
+    ),
     row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
     row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
     row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
@@ -423,6 +430,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(CTRL, Key::K)),
         "A list of all commands to search.",
         Command::ListCommands,
+    ),
+    row(
+        "Show the hint",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F1)),
+        "Three sentences for who is new here.",
+        Command::Hint(true),
     ),
 ];
 

@@ -6,6 +6,7 @@ use eframe::egui::{
 };
 
 use super::command::Command;
+use super::explain;
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::what_if;
@@ -201,9 +202,10 @@ fn missed(analysis: &Analysis, margin_deg: f64, nominal: bool) -> bool {
 pub(super) fn panel_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     ui.horizontal(|ui| {
-        ui.label(RichText::new("Nine conditions").font(theme::strong(13.5)));
+        let heading = ui.label(RichText::new("Nine conditions").font(theme::strong(13.5)));
+        explain::explained(ui, heading, "nine-conditions", explain::nothing);
         let text = RichText::new("margin, crossover").font(theme::small()).color(palette.weak);
-        ui.label(text).on_hover_text("Input voltage down, load across. Press one to show it in full.");
+        ui.label(text).on_hover_text("Input voltage down, load across.");
     });
     map_ui(ui, "panel", desk);
 }

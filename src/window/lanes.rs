@@ -74,7 +74,9 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     let painter = ui.painter().clone();
     painter.hline(plot.x_range(), y, Stroke::new(2.5, palette.rail));
     let word = kind_word(lane.kind);
-    painter.text(pos2(plot.left() - EDGE, y), Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
+    let at = pos2(plot.left() - EDGE, y);
+    let name = painter.text(at, Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
+    name_ui(ui, name, lane);
     aim(&painter, stack, lane, y, desk, palette);
 
     let id = Id::unique(("lane", lane.key));
@@ -98,6 +100,18 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
         response.on_hover_text(explain(lane));
     }
     active
+}
+
+/// Explains the word in the gutter.
+fn name_ui(ui: &Ui, name: Rect, lane: &Lane) {
+    let term = match lane.kind {
+        LaneKind::Gain => "lane-gain",
+        LaneKind::Zero => "compensator-zero",
+        LaneKind::Pole => "compensator-pole",
+    };
+    let response = ui.interact(name.expand(3.0), Id::unique(("lane name", lane.key)), Sense::hover());
+    response.widget_info(|| WidgetInfo::labeled(egui::Role::Label, true, format!("Name of the {}", lane.name)));
+    super::explain::explained(ui, response, term, || format!("here {}", lane.formula));
 }
 
 /// The word in the gutter.

@@ -7,7 +7,7 @@ use super::bode::Stack;
 use super::labels::{self, Labels};
 use super::plot;
 use super::theme::{self, LineStyle, Palette};
-use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout};
+use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout, terms};
 use crate::quantity::{self, Unit};
 
 /// Length below which a bar has its number above or below it [points].
@@ -158,16 +158,11 @@ fn landmarks_ui(ui: &mut Ui, stack: &Stack, detail: &Detail, palette: &Palette) 
         let at = pos2(left, stack.foot.top() + 1.0 + 13.0 * f32::from(row));
         let rect = Rect::from_min_size(at, galley.size());
         ui.painter().galley(at, galley, palette.landmark);
-        let help = format!(
-            "{}: {}\n{}{}",
-            landmark.name,
-            quantity::print(landmark.frequency_hz, Unit::Hertz),
-            landmark.formula,
-            if landmark.derived { "\nderived from the model" } else { "" }
-        );
-        let _ = ui
-            .interact(rect.expand(2.0), ui.scope_id().with(("landmark", landmark.key, landmark.name)), Sense::hover())
-            .on_hover_text(help);
+        let name = || format!("{}: {}", landmark.name, quantity::print(landmark.frequency_hz, Unit::Hertz));
+        let id = ui.scope_id().with(("landmark", landmark.key, landmark.name));
+        let response = ui.interact(rect.expand(2.0), id, Sense::hover());
+        response.widget_info(|| WidgetInfo::labeled(Role::Label, true, name()));
+        let _ = super::explain::described(ui, response, || format!("{}\n{}", name(), terms::of_landmark(landmark)));
     }
 }
 
@@ -239,7 +234,7 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
 fn explained_ui(ui: &Ui, rect: Rect, help: &str) {
     let response = ui.interact(rect, ui.scope_id().with("crossover window"), Sense::hover());
     response.widget_info(|| WidgetInfo::labeled(Role::Label, true, help));
-    let _ = response.on_hover_text(help);
+    let _ = super::explain::explained(ui, response, "crossover-window", || help.to_owned());
 }
 
 /// A dotted vertical tick, used for marks of time as well.

@@ -242,9 +242,7 @@ impl App {
             Answer::Chosen(chosen) => *path = chosen.display().to_string(),
             Answer::Left => {}
             Answer::Absent => {
-                self.fail(
-                    "This desktop shows no file dialog (no portal answers, no zenity). Type the path instead.".into(),
-                );
+                self.fail("This desktop shows no file dialog. Type the path instead.".into());
             }
         }
     }

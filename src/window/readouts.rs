@@ -4,10 +4,11 @@ use eframe::egui::{Align2, Color32, FontId, Painter, Rect, Role, Sense, Ui, Widg
 
 use super::command::Command;
 use super::conditions;
+use super::explain;
 use super::marks;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
-use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict};
+use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict, terms};
 use crate::quantity::{self, Unit};
 
 /// Height of a read-out with its requirement [points].
@@ -190,7 +191,7 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(explain(readout));
+    let _ = explain::explained(ui, response, readout.key, || further(readout));
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -258,11 +259,10 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(format!(
-        "{}{}",
-        explain(readout),
-        worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"))
-    ));
+    let _ = explain::explained(ui, response, readout.key, || {
+        let worst = worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"));
+        format!("{}{worst}", further(readout)).trim_start().to_owned()
+    });
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -278,8 +278,12 @@ fn announce(ui: &Ui, response: &eframe::egui::Response, readout: &Readout, value
     ui.ctx().accesskit_node_builder(response.id, |node| node.set_value(value));
 }
 
-fn explain(readout: &Readout) -> String {
-    let mut lines = vec![readout.help.to_owned()];
+/// What is asked of a read-out, and where its worst is. A read-out without a term says here what it means.
+fn further(readout: &Readout) -> String {
+    let mut lines = Vec::new();
+    if terms::find(readout.key).is_none() {
+        lines.push(readout.help.to_owned());
+    }
     for verdict in &readout.requirements {
         let scope = if verdict.over_all_conditions { "all conditions" } else { "nominal condition" };
         let place = if verdict.condition.is_empty() { String::new() } else { format!(" ({})", verdict.condition) };

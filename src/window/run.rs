@@ -1,9 +1,13 @@
 //! Opening the window, and saying what is missing where that fails.
 
+use std::cell::Cell;
 use std::fmt;
+use std::io::Write;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::PathBuf;
+use std::sync::atomic::{AtomicBool, Ordering};
 use std::sync::{Arc, Mutex};
+use std::time::Duration;
 
 use eframe::egui::{ViewportBuilder, pos2, vec2};
 
@@ -26,6 +30,11 @@ pub enum WindowError {
         /// What the system said.
         reason: String,
     },
+    /// The display went away while the window was open.
+    Lost {
+        /// What the system said.
+        reason: String,
+    },
     /// The window stopped on an error of the program itself.
     Stopped {
         /// Where and why.
@@ -35,27 +44,32 @@ pub enum WindowError {
 
 impl fmt::Display for WindowError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        const CLOSED: &str = "The window cannot be opened:";
         match self {
             WindowError::NoDisplay => write!(
                 f,
-                "no display: neither DISPLAY (X11) nor WAYLAND_DISPLAY (Wayland) is set. Start it from a desktop session, or ask the \
-                 same in the terminal: polewright check FILE"
+                "{CLOSED} no display: neither DISPLAY (X11) nor WAYLAND_DISPLAY (Wayland) is set. Start it from a desktop session, \
+                 or ask the same in the terminal: polewright check FILE"
             ),
             WindowError::Display { reason } => write!(
                 f,
-                "the display cannot be used: {reason}. Check that the display named by DISPLAY or WAYLAND_DISPLAY is running, and \
-                 that the libraries libX11, libXcursor, libXi, libxkbcommon and libxkbcommon-x11 (X11) or libwayland-client and \
-                 libxkbcommon (Wayland) are installed"
+                "{CLOSED} the display cannot be used: {reason}. Check that the display named by DISPLAY or WAYLAND_DISPLAY is \
+                 running, and that the libraries libX11, libXcursor, libXi, libxkbcommon and libxkbcommon-x11 (X11) or \
+                 libwayland-client and libxkbcommon (Wayland) are installed"
             ),
             WindowError::Graphics { reason } => write!(
                 f,
-                "the display has no usable OpenGL: {reason}. Install the GL driver of the graphics card, or Mesa's software driver \
-                 (libGL, libEGL)"
+                "{CLOSED} the display has no usable OpenGL: {reason}. Install the GL driver of the graphics card, or Mesa's \
+                 software driver (libGL, libEGL)"
             ),
-            WindowError::Stopped { reason } => write!(f, "the window stopped: {reason}"),
+            WindowError::Lost { reason } => write!(f, "The display went away: {reason}. {KEPT}"),
+            WindowError::Stopped { reason } => write!(f, "The window stopped: {reason}. {KEPT}"),
         }
     }
 }
+
+/// What becomes of the work when the window ends by itself.
+const KEPT: &str = "Unsaved work is in the journal, which the next start offers";
 
 impl std::error::Error for WindowError {}
 
@@ -82,8 +96,11 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
         persistence_path: unused,
         ..eframe::NativeOptions::default()
     };
+    let opened = Arc::new(AtomicBool::new(false));
+    let is_open = Arc::clone(&opened);
     let open = move || {
         let create: eframe::AppCreator<'_> = Box::new(|cc| {
+            is_open.store(true, Ordering::Relaxed);
             Ok(Box::new(match folder {
                 Some(folder) => App::keeping(&cc.egui_ctx, design, path, folder),
                 None => App::new(&cc.egui_ctx, design, path),
@@ -91,7 +108,34 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
         });
         eframe::run_native("polewright", options, create)
     };
-    caught(open).and_then(|outcome| outcome.map_err(|error| explain(&error)))
+    AT_WORK.with(|at_work| at_work.0.set(true));
+    let outcome = caught(open).and_then(|outcome| outcome.map_err(|error| explain(&error)));
+    AT_WORK.with(|at_work| at_work.0.set(false));
+    outcome.map_err(|error| match error {
+        WindowError::Display { reason } if opened.load(Ordering::Relaxed) => WindowError::Lost { reason },
+        error => error,
+    })
+}
+
+thread_local! {
+    /// Set while the window is open.
+    static AT_WORK: AtWork = const { AtWork(Cell::new(false)) };
+}
+
+/// Tells what became of the work where the X11 library ends the process by itself, as it does when its server goes away: it prints
+/// a line of its own and exits, and only what belongs to the thread is still dropped then.
+struct AtWork(Cell<bool>);
+
+/// Longest that the writer of the journal takes for what was handed to it.
+const LAST_WORDS: Duration = Duration::from_millis(600);
+
+impl Drop for AtWork {
+    fn drop(&mut self) {
+        if self.0.get() {
+            let _ = writeln!(std::io::stderr(), "The display went away. {KEPT}.");
+            std::thread::sleep(LAST_WORDS);
+        }
+    }
 }
 
 /// A window of the size and in the place it was left in.

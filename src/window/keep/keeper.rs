@@ -37,7 +37,7 @@ enum Job {
 pub(in crate::window) enum News {
     /// Something could not be kept, as a sentence; told once until it works again.
     Failed(String),
-    /// It works again.
+    /// The journal works again.
     Mended,
     /// The recent files, as they are kept now.
     Recent(Vec<PathBuf>),
@@ -66,7 +66,8 @@ impl Keeper {
                     wake();
                 }
             };
-            let mut writer = Writer { folder, own: None, written: false, failing: false, tell: &tell };
+            let mut writer =
+                Writer { folder, own: None, written: false, journal_failing: false, rest_failing: false, tell: &tell };
             writer.work(&asked);
             drop(alive);
         };
@@ -168,7 +169,8 @@ struct Writer<'a> {
     own: Option<(PathBuf, Lock)>,
     /// The journal is there.
     written: bool,
-    failing: bool,
+    journal_failing: bool,
+    rest_failing: bool,
     tell: &'a dyn Fn(News),
 }
 
@@ -179,7 +181,7 @@ impl Writer<'_> {
         while open {
             if due.is_empty() {
                 open = jobs.recv().map(|job| due.add(job)).is_ok();
-            } else if self.failing {
+            } else if self.journal_failing {
                 open = take(jobs, Instant::now() + AGAIN, &mut due) != Err(RecvTimeoutError::Disconnected);
             }
             for job in jobs.try_iter() {
@@ -203,61 +205,61 @@ impl Writer<'_> {
         }
     }
 
-    /// Writes what is due. A journal that fails stays due; the rest is written again when it next changes.
+    /// Writes what is due, and tells when that begins to fail or works again. A journal that fails stays due; the rest is
+    /// written again when it next changes.
     fn write(&mut self, due: &mut Due) {
-        let outcome = match &due.journal {
-            DueJournal::AsItIs => Ok(()),
-            DueJournal::Write(snapshot) => self.write_journal(snapshot),
-            DueJournal::Remove => self.remove_journal(),
-        };
-        let mut failures = Vec::new();
-        match outcome {
-            Ok(()) => {
-                due.journal = DueJournal::AsItIs;
-                // One that cannot be removed is offered again: that loses nothing.
-                due.done_with.drain(..).for_each(|left| drop(left.remove()));
-            }
-            Err(reason) => {
-                failures.push(format!("Unsaved changes cannot be journalled: {reason}. Save often; work goes on."));
-            }
+        let journal = self.write_due_journal(due);
+        let rest = self.write_rest(due);
+        if let (Err(reason), false) = (&journal, self.journal_failing) {
+            let text = format!("Unsaved changes cannot be journalled: {reason}. Save often; work goes on.");
+            (self.tell)(News::Failed(text));
+        } else if journal.is_ok() && self.journal_failing {
+            (self.tell)(News::Mended);
+        } else if let (Some(Err(text)), false) = (&rest, self.journal_failing || self.rest_failing) {
+            (self.tell)(News::Failed(text.clone()));
         }
-        let failed = |what: &str, error: &io::Error| format!("{what} cannot be kept: {}.", self.told(error));
-        if let Some(settings) = due.settings.take()
-            && let Err(error) = self.prepare().and_then(|()| settings::save(&self.folder.settings(), &settings))
-        {
-            failures.push(failed("The look of the window", &error));
-        }
-        if !due.recent.is_empty()
-            && let Err(error) = self.write_recent(&mut due.recent)
-        {
-            failures.push(failed("Recent files", &error));
-        }
-        self.tell(failures);
+        self.journal_failing = journal.is_err();
+        self.rest_failing = rest.map_or(self.rest_failing, |rest| rest.is_err());
     }
 
-    /// Tells the first failure, once until all works again.
-    fn tell(&mut self, failures: Vec<String>) {
-        match failures.into_iter().next() {
-            Some(text) if !self.failing => {
-                self.failing = true;
-                (self.tell)(News::Failed(text));
-            }
-            None if self.failing => {
-                self.failing = false;
-                (self.tell)(News::Mended);
-            }
-            _ => {}
+    fn write_due_journal(&mut self, due: &mut Due) -> Result<(), String> {
+        match &due.journal {
+            DueJournal::AsItIs => {}
+            DueJournal::Write(snapshot) => self.write_journal(snapshot)?,
+            DueJournal::Remove => self.remove_journal()?,
         }
+        due.journal = DueJournal::AsItIs;
+        // One that cannot be removed is offered again: that loses nothing.
+        due.done_with.drain(..).for_each(|left| drop(left.remove()));
+        Ok(())
     }
 
-    fn write_recent(&self, changes: &mut Vec<RecentChange>) -> io::Result<()> {
+    /// Writes settings and recent files; none when neither is due.
+    fn write_rest(&self, due: &mut Due) -> Option<Result<(), String>> {
+        if due.settings.is_none() && due.recent.is_empty() {
+            return None;
+        }
+        let save = |settings: Box<Settings>| settings::save(&self.folder.settings(), &settings);
+        let mut kept = self.prepare().and_then(|()| due.settings.take().map_or(Ok(()), save));
+        if kept.is_ok() && !due.recent.is_empty() {
+            kept = self.write_recent(&due.recent);
+        }
+        due.settings = None;
+        due.recent.clear();
+        Some(
+            kept.map_err(|error| {
+                format!("Recent files and the look of the window cannot be kept: {}.", self.told(&error))
+            }),
+        )
+    }
+
+    fn write_recent(&self, changes: &[RecentChange]) -> io::Result<()> {
         let file = self.folder.recent();
         // Another window may have changed the list since.
         let mut files = recent::load_file(&file);
-        for change in changes.drain(..) {
+        for change in changes {
             change.apply(&mut files);
         }
-        self.prepare()?;
         recent::save(&file, &files)?;
         (self.tell)(News::Recent(files));
         Ok(())

@@ -94,7 +94,10 @@ impl Left {
 pub(in crate::window) fn find(folder: &DataFolder) -> io::Result<Vec<Left>> {
     let entries = match std::fs::read_dir(folder.journals()) {
         Ok(entries) => entries,
-        Err(error) if error.kind() == io::ErrorKind::NotFound => return Ok(Vec::new()),
+        // No journal was ever written there; that none can be written now is told when one is due.
+        Err(error) if matches!(error.kind(), io::ErrorKind::NotFound | io::ErrorKind::NotADirectory) => {
+            return Ok(Vec::new());
+        }
         Err(error) => return Err(error),
     };
     let mut files: Vec<PathBuf> = entries.filter_map(|entry| Some(entry.ok()?.path())).collect();

@@ -71,7 +71,8 @@ pub(super) fn load_file(file: &Path) -> Vec<PathBuf> {
 pub(super) fn save(file: &Path, files: &[PathBuf]) -> io::Result<()> {
     let kept = Kept { files: files.iter().map(|path| path_text::to_text(path)).collect() };
     let pretty = ron::ser::PrettyConfig::new().new_line("\n");
-    let text = ron::ser::to_string_pretty(&kept, pretty).map_err(io::Error::other)?;
+    let mut text = ron::ser::to_string_pretty(&kept, pretty).map_err(io::Error::other)?;
+    text.push('\n');
     replace(file, text.as_bytes())
 }
 
