@@ -142,6 +142,7 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
             (format!("LC resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };
     let key = LANDMARKS.iter().find(|(words, _)| label.starts_with(words)).map(|(_, key)| *key);

@@ -7,7 +7,7 @@ use super::entries::{BRANCHES, branch_count};
 use super::filters::{
     Canvas, Damping, FilterParts, OutputFilter, draw_input_network, draw_output_filter, input_filter, output_filter,
 };
-use super::landmark::Textbook;
+use super::landmark::{RestingForms, Textbook};
 use super::stage::{LoadKind, Rectifier};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
@@ -35,6 +35,8 @@ pub struct Topology {
     pub right_half_plane_zero_hz: fn(&Textbook) -> Option<f64>,
     /// The formula of the right-half-plane zero, for people.
     pub right_half_plane_zero_formula: &'static str,
+    /// What holds in its place in discontinuous conduction.
+    pub resting: RestingForms,
 }
 
 /// Where an output can stand against the input.
