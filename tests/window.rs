@@ -11,6 +11,8 @@ use polewright::design::sample;
 use polewright::quantity::{Unit, parse};
 use polewright::window::App;
 
+#[path = "window/export.rs"]
+mod export;
 #[path = "window/safety.rs"]
 mod safety;
 
@@ -546,46 +548,6 @@ fn large_text_in_a_small_window_leaves_room_for_the_plots() {
 }
 
 #[test]
-fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
-    use polewright::window::{Command, Exported};
-    let folder = tempfile::tempdir().unwrap();
-    let mut harness = usual();
-    let export = |harness: &mut Harness<'_, App>, what, name: &str| {
-        let path = folder.path().join(name);
-        harness.state_mut().ask(Command::ExportPath { what, path: path.clone() });
-        harness.run();
-        (harness.state().message().unwrap().clone(), std::fs::read(path).ok())
-    };
-    for (what, name) in [(Exported::Bode, "b"), (Exported::Step, "s"), (Exported::Response, "r")] {
-        let (message, svg) = export(&mut harness, what, &format!("{name}.svg"));
-        assert!(!message.failed, "{}", message.text);
-        let svg = String::from_utf8(svg.unwrap()).unwrap();
-        assert!(svg.contains("Gimbal rail") && svg.contains("nominal input 12 V"), "{svg}");
-        assert!(!svg.contains("NaN") && !svg.contains("inf"));
-        let (_, png) = export(&mut harness, what, &format!("{name}.PNG"));
-        assert!(png.unwrap().starts_with(b"\x89PNG"));
-    }
-    let (message, file) = export(&mut harness, Exported::Bode, "b.txt");
-    assert!(message.failed && file.is_none() && message.text.contains(".png or .svg"), "{}", message.text);
-    let (_, csv) = export(&mut harness, Exported::Curves, "c.csv");
-    let csv = String::from_utf8(csv.unwrap()).unwrap();
-    let rows = harness.state().session().analysis().unwrap().shown.as_ref().unwrap().curves.frequencies_hz.len();
-    assert_eq!(csv.lines().count(), rows + 1);
-    for (command, word) in [(Command::CopyParts, "R2"), (Command::CopyMargins, "Phase margin")] {
-        harness.state_mut().ask(command);
-        harness.step();
-        let copied = harness.output().platform_output.commands.iter().find_map(|command| match command {
-            egui::OutputCommand::CopyText(text) => Some(text.clone()),
-            _ => None,
-        });
-        assert!(copied.unwrap().contains(word));
-    }
-    enter(&mut harness, "Inductor", "0");
-    let (message, file) = export(&mut harness, Exported::Bode, "stale.svg");
-    assert!(message.failed && file.is_none() && message.text.contains("out of date"), "{}", message.text);
-}
-
-#[test]
 fn a_new_design_is_proposed_with_its_assumptions_and_created() {
     let mut harness = usual();
     enter(&mut harness, "Inductor", "12u");
@@ -671,42 +633,65 @@ fn every_read_out_is_explained_with_its_formula_in_letters_the_font_has() {
     }
 }
 
+/// The part of a schematic whose accessible name begins so.
+fn part<'h>(harness: &'h Harness<'_, App>, begin: &'h str) -> egui_kittest::Node<'h> {
+    harness
+        .get_by(move |node| node.role() == Role::Button && node.label().is_some_and(|label| label.starts_with(begin)))
+}
+
 #[test]
-fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
-    use polewright::window::{Command, Exported};
-    let folder = tempfile::tempdir().unwrap();
+fn a_part_of_the_schematic_leads_to_its_field() {
     let mut harness = usual();
-    let export = |harness: &mut Harness<'_, App>, what, name: &str| {
-        let path = folder.path().join(name);
-        harness.state_mut().ask(Command::ExportPath { what, path: path.clone() });
-        harness.run();
-        (harness.state().message().unwrap().clone(), std::fs::read(path).ok())
-    };
-    for (what, name) in [(Exported::Bode, "b"), (Exported::Step, "s"), (Exported::Response, "r")] {
-        let (message, svg) = export(&mut harness, what, &format!("{name}.svg"));
-        assert!(!message.failed, "{}", message.text);
-        let svg = String::from_utf8(svg.unwrap()).unwrap();
-        assert!(svg.contains("Gimbal rail") && svg.contains("nominal input 12 V"), "{svg}");
-        assert!(!svg.contains("NaN") && !svg.contains("inf"));
-        let (_, png) = export(&mut harness, what, &format!("{name}.PNG"));
-        assert!(png.unwrap().starts_with(b"\x89PNG"));
+    part(&harness, "Inductor 10 µH").click();
+    harness.run();
+    assert!(field(&harness, "Inductor").is_focused());
+    // By keyboard, and into a section that is folded.
+    harness.get_by_label("Power stage").click();
+    harness.run();
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_none());
+    part(&harness, "Input 12 V").focus();
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+    assert!(field(&harness, "Input, nominal").is_focused());
+    part(&harness, "Reference").click();
+    harness.run();
+    assert!(field(&harness, "Reference voltage").is_focused());
+}
+
+#[test]
+fn a_part_and_what_it_sets_light_each_other() {
+    let mut harness = window(vec2(1280.0, 1300.0), 1.0);
+    let lit = |harness: &mut Harness<'_, App>| harness.state_mut().lit();
+    let has = |names: &[String], begin: &str| names.iter().any(|name| name.starts_with(begin));
+    part(&harness, "R2,").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    for wanted in ["R2,", "first zero", "first pole", "zero ", "pole "] {
+        assert!(has(&names, wanted), "{wanted}: {names:?}");
     }
-    let (message, file) = export(&mut harness, Exported::Bode, "b.txt");
-    assert!(message.failed && file.is_none() && message.text.contains(".png or .svg"), "{}", message.text);
-    let (_, csv) = export(&mut harness, Exported::Curves, "c.csv");
-    let csv = String::from_utf8(csv.unwrap()).unwrap();
-    let rows = harness.state().session().analysis().unwrap().shown.as_ref().unwrap().curves.frequencies_hz.len();
-    assert_eq!(csv.lines().count(), rows + 1);
-    for (command, word) in [(Command::CopyParts, "R2"), (Command::CopyMargins, "Phase margin")] {
-        harness.state_mut().ask(command);
-        harness.step();
-        let copied = harness.output().platform_output.commands.iter().find_map(|command| match command {
-            egui::OutputCommand::CopyText(text) => Some(text.clone()),
-            _ => None,
-        });
-        assert!(copied.unwrap().contains(word));
+    assert!(!has(&names, "second zero") && !has(&names, "C1,") && !has(&names, "LC resonance"), "{names:?}");
+    harness.get_by_label("second zero").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    for wanted in ["R3,", "C3,", "Upper divider resistor"] {
+        assert!(has(&names, wanted), "{wanted}: {names:?}");
     }
-    enter(&mut harness, "Inductor", "0");
-    let (message, file) = export(&mut harness, Exported::Bode, "stale.svg");
-    assert!(message.failed && file.is_none() && message.text.contains("out of date"), "{}", message.text);
+    assert!(!has(&names, "R2,"), "{names:?}");
+    part(&harness, "Inductor").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    assert!(has(&names, "LC resonance") && !has(&names, "ESR zero"), "{names:?}");
+    harness.hover_at(pos2(640.0, 3.0));
+    harness.run();
+    assert!(lit(&mut harness).is_empty());
+}
+
+#[test]
+fn schematics_fold() {
+    let mut harness = usual();
+    part(&harness, "Inductor 10 µH");
+    harness.key_press(Key::F8);
+    harness.run();
+    assert_eq!(harness.query_all_by_label("Inductor 10 µH").count(), 0);
 }

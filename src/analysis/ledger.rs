@@ -12,6 +12,15 @@ use std::f64::consts::TAU;
 /// Shares of less than this [°] are taken together in one row.
 const SMALL_DEG: f64 = 0.05;
 
+/// How the rows of the stage begin that belong to a landmark, with its key.
+const LANDMARKS: [(&str, &str); 5] = [
+    ("LC resonance", "lc-resonance"),
+    ("ESR zero", "esr-zero"),
+    ("RHP zero", "right-half-plane-zero"),
+    ("low pole", "low-pole"),
+    ("sampling", "half-switching"),
+];
+
 /// The ledger at a crossover [Hz].
 pub(super) fn ledger(
     model: &LoopModel,
@@ -20,12 +29,23 @@ pub(super) fn ledger(
     landmarks: &[Landmark],
     crossover_hz: f64,
 ) -> Ledger {
-    let mut rows =
-        vec![LedgerRow { label: "half turn".into(), degrees: 180.0, role: LedgerRole::HalfTurn, lane: None }];
+    let mut rows = vec![LedgerRow {
+        label: "half turn".into(),
+        degrees: 180.0,
+        role: LedgerRole::HalfTurn,
+        lane: None,
+        landmark: None,
+    }];
     let ideal = FactoredResponse::new(compensator.ideal(), 0.0);
     rows.extend(compensator_rows(compensator, &ideal, crossover_hz));
     let amplifier = shared.compensator_response.phase_deg(crossover_hz) - ideal.phase_deg(crossover_hz);
-    rows.push(LedgerRow { label: "amplifier".into(), degrees: amplifier, role: LedgerRole::Amplifier, lane: None });
+    rows.push(LedgerRow {
+        label: "amplifier".into(),
+        degrees: amplifier,
+        role: LedgerRole::Amplifier,
+        lane: None,
+        landmark: None,
+    });
     let mut small = 0.0;
     for factor in model.plant.factor_phases_deg(crossover_hz) {
         if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
@@ -40,13 +60,20 @@ pub(super) fn ledger(
             degrees: small,
             role: LedgerRole::Plant,
             lane: None,
+            landmark: None,
         });
     }
     let sum: f64 = rows.iter().map(|row| row.degrees).sum();
     let phase_margin_deg = wrapped(sum);
     let turns = phase_margin_deg - sum;
     if turns.abs() > 180.0 {
-        rows.push(LedgerRow { label: "whole turns".into(), degrees: turns, role: LedgerRole::Turns, lane: None });
+        rows.push(LedgerRow {
+            label: "whole turns".into(),
+            degrees: turns,
+            role: LedgerRole::Turns,
+            lane: None,
+            landmark: None,
+        });
     }
     Ledger { frequency_hz: crossover_hz, rows, phase_margin_deg }
 }
@@ -64,7 +91,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
                 LaneKind::Zero => (format!("zero {at}"), turn),
                 LaneKind::Pole => (format!("pole {at}"), -turn),
             };
-            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key) }
+            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key), landmark: None }
         })
         .collect();
     let beside = ideal.phase_deg(f) - rows.iter().map(|row| row.degrees).sum::<f64>();
@@ -74,6 +101,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
             degrees: beside,
             role: LedgerRole::Compensator,
             lane: None,
+            landmark: None,
         });
     } else if let Some(first) = rows.first_mut() {
         // Rounding of the sum, so that the ledger closes to the last digit.
@@ -114,7 +142,10 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
             (format!("LC resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };
-    LedgerRow { label, degrees: factor.phase_deg, role, lane: None }
+    let key = LANDMARKS.iter().find(|(words, _)| label.starts_with(words)).map(|(_, key)| *key);
+    let landmark = landmarks.iter().map(|mark| mark.key).find(|own| Some(*own) == key);
+    LedgerRow { label, degrees: factor.phase_deg, role, lane: None, landmark }
 }
