@@ -478,6 +478,18 @@ mod tests {
         assert!(touching.modulus_margin < 1e-10, "{}", touching.modulus_margin);
     }
 
+    /// The least distance of an integrator with delay lies just below the end of the band, where no grid point beyond brackets it.
+    #[test]
+    fn a_minimum_before_the_end_of_the_band_is_found() {
+        let loop_gain = response(&[], &[Complex::ZERO], 1e5, 2e-6);
+        let least = margins(&loop_gain, 1.0, 1e7);
+        for beyond in [1.0001, 1.001, 1.01, 1.05, 1.2] {
+            let found = margins(&loop_gain, 1.0, least.modulus_frequency_hz * beyond);
+            assert_close(found.modulus_margin, least.modulus_margin, 1e-12);
+            assert_close(found.modulus_frequency_hz, least.modulus_frequency_hz, 1e-6);
+        }
+    }
+
     /// Planted answer: a resonance of Q = 50,000 that pokes 1 dB through 0 dB between two grid points.
     #[test]
     fn a_needle_is_not_missed() {

@@ -6,9 +6,9 @@
 //! *Tolerance*: 1e-6 against the averaged equations. Against the switched stage, to a fifth of the switching frequency, what
 //! averaging itself costs: 0.4 dB and 1°; in average current mode, where ripple reaches the comparator, 0.5 dB and 10°.
 
-use crate::common::analysed;
+use crate::common::{analysed, assert_absolute, assert_relative};
 use crate::reference::{
-    compare_conditions, compare_responses, compare_steps, complex, designs, list, number, numbers, polar,
+    compare_conditions, compare_margins, compare_responses, compare_steps, complex, designs, list, number, numbers, polar,
 };
 use polewright::converter::Conduction;
 use polewright::design::Design;
@@ -26,18 +26,37 @@ fn each(text: &str, least: usize, compare: impl Fn(&Design, &Value)) {
     }
 }
 
-/// The mode, and how long the rectifier conducts, at all nine conditions.
-fn compare_conduction(design: &Design, row: &Value) {
+/// The mode, how long the rectifier conducts, and what the law asks, at all nine conditions.
+fn compare_laws(design: &Design, row: &Value) {
     let analysis = analysed(design, &[1e3], 10);
     for (found, wanted) in analysis.conditions.iter().zip(list(&row["conditions"])) {
-        let what = format!("{}, {}", design.title, found.condition.label);
-        let point = &found.outcome.as_ref().unwrap_or_else(|finding| panic!("{finding:?}")).operating_point;
+        let what = |name: &str| format!("{}, {}: {name}", design.title, found.condition.label);
+        let summary = found.outcome.as_ref().unwrap_or_else(|finding| panic!("{finding:?}"));
+        let point = &summary.operating_point;
         let rests = wanted["conduction"].as_str() == Some("discontinuous");
-        assert_eq!(point.conduction == Conduction::Discontinuous, rests, "{what}");
-        assert_eq!(point.second_duty.is_some(), rests, "{what}");
+        assert_eq!(point.conduction == Conduction::Discontinuous, rests, "{}", what("conduction"));
+        assert_eq!(point.second_duty.is_some(), rests, "{}", what("second duty ratio"));
         if let Some(second) = point.second_duty {
-            crate::common::assert_relative(&what, second, number(&wanted["second_duty"]), 1e-8);
+            assert_relative(&what("second duty ratio"), second, number(&wanted["second_duty"]), 1e-8);
         }
+        if let Some(volts) = wanted["control_voltage"].as_f64() {
+            assert_absolute(&what("control voltage"), summary.control.control_voltage, volts, 1e-8);
+        }
+        let multiplier = summary.control.sampling.map(|sampling| sampling.fast_multiplier);
+        assert_eq!(multiplier.is_some(), wanted["fast_multiplier"].is_number(), "{}", what("sampling"));
+        if let Some(multiplier) = multiplier {
+            assert_absolute(&what("fast multiplier"), multiplier, number(&wanted["fast_multiplier"]), 1e-8);
+        }
+    }
+}
+
+/// The inner loop of average current control at the nominal condition.
+fn compare_inner_loop(design: &Design, row: &Value) {
+    let detail = analysed(design, &[1e3], 10).shown.unwrap_or_else(|finding| panic!("{finding:?}"));
+    let inner = detail.control.inner.as_ref();
+    assert_eq!(inner.is_some(), row["inner_margins"].is_object(), "{}", design.title);
+    if let Some(inner) = inner {
+        compare_margins(&|name| format!("{}: inner {name}", design.title), &inner.margins, &row["inner_margins"]);
     }
 }
 
@@ -58,6 +77,11 @@ fn compare_switched(design: &Design, row: &Value) {
         let what = format!("{} at {} Hz: {db} dB, {deg}°", design.title, frequencies[k]);
         assert!(db.abs() < gain && deg.abs() < phase, "{what}");
     }
+    // A disturbance of the current, one period later: by straight lines here, by the map of the orbit there.
+    let multiplier = analysed(design, &[1e3], 10).shown.ok().and_then(|detail| detail.control.sampling);
+    if let Some(sampling) = multiplier {
+        assert_absolute(&design.title, sampling.fast_multiplier, number(&switched["fast_multiplier"]), 0.02);
+    }
 }
 
 #[test]
@@ -68,7 +92,7 @@ fn discontinuous_designs_over_frequency() {
 #[test]
 fn discontinuous_designs_at_nine_conditions() {
     each(DISCONTINUOUS, 6, compare_conditions);
-    each(DISCONTINUOUS, 6, compare_conduction);
+    each(DISCONTINUOUS, 6, compare_laws);
 }
 
 #[test]
@@ -89,7 +113,8 @@ fn current_mode_designs_over_frequency() {
 #[test]
 fn current_mode_designs_at_nine_conditions() {
     each(CURRENT_MODE, 7, compare_conditions);
-    each(CURRENT_MODE, 7, compare_conduction);
+    each(CURRENT_MODE, 7, compare_laws);
+    each(CURRENT_MODE, 7, compare_inner_loop);
 }
 
 #[test]
@@ -110,7 +135,7 @@ fn filtered_designs_over_frequency() {
 #[test]
 fn filtered_designs_at_nine_conditions() {
     each(FILTERS, 4, compare_conditions);
-    each(FILTERS, 4, compare_conduction);
+    each(FILTERS, 4, compare_laws);
 }
 
 #[test]

@@ -72,7 +72,7 @@ fn margins_go_back_into_their_definition() {
 
 /// The debug text around a number that no result may hold, if there is one. Minus infinity decibels are the one exception: a line response
 /// that feed-forward cancels exactly is nothing at all.
-fn non_number(analysis: &Analysis) -> Option<String> {
+pub(crate) fn non_number(analysis: &Analysis) -> Option<String> {
     let mut analysis = analysis.clone();
     if let Ok(detail) = &mut analysis.shown {
         for curve in [&mut detail.curves.line_to_output_db, &mut detail.curves.open_loop_line_to_output_db] {

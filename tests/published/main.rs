@@ -10,6 +10,7 @@ mod controlled;
 mod cross_checks;
 mod current_mode;
 mod discontinuous;
+mod every_mode;
 mod filters;
 mod lossless;
 mod proposal;
