@@ -328,6 +328,10 @@ impl App {
             }
             Command::ToggleStage => view.stage_column = !view.stage_column,
             Command::ToggleReadouts => view.readout_column = !view.readout_column,
+            Command::ToggleSchematics => {
+                let shown = view.schematics.shown();
+                view.schematics.show(!shown);
+            }
             Command::ListCommands => view.dialog = Some(Dialog::Commands { search: String::new() }),
             _ => {}
         }
