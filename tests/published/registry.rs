@@ -3,6 +3,7 @@
 use crate::common::{assert_relative, checked};
 use polewright::analysis::{Level, Request, Shown, analyse, load_sweep};
 use polewright::converter::{self, Conduction, Reach};
+use polewright::design::file::{read, write};
 use polewright::design::{CheckedDesign, Design, sample};
 use serde_json::Value;
 use std::path::PathBuf;
@@ -62,6 +63,53 @@ fn every_topology_with_every_choice() {
                         assert!((0.0..1.0).contains(&detail.operating_point.duty));
                         assert_eq!(detail.curves.loop_db.len(), 2);
                         at_light_load(&checked(&design), request, rectifier);
+                    }
+                }
+            }
+        }
+    }
+}
+
+/// Every topology in every control mode and conduction mode gives numbers or a reason, and comes back from its file alike.
+#[test]
+fn every_topology_in_every_control_mode() {
+    let modes = ["voltage", "peak-current", "valley-current", "average-current"];
+    let options = [
+        [("stage.rectifier", "diode"), ("control.sense", "gain"), ("control.slope", "quality")],
+        [("stage.rectifier", "emulated"), ("control.sense", "transconductance"), ("control.slope", "share")],
+        [("stage.rectifier", "synchronous"), ("control.sense", "gain"), ("control.slope", "rate")],
+    ];
+    for topology in converter::registry() {
+        for mode in modes {
+            for choices in options {
+                for inner in ["op-amp", "transconductance"] {
+                    let mut design = of_topology(topology.key, topology.reach);
+                    for (path, key) in
+                        choices.into_iter().chain([("control.mode", mode), ("control.inner.amplifier", inner)])
+                    {
+                        design.set_from_text(path, key).expect("an option");
+                    }
+                    design.values.set("stage.load.least", 1e-3).expect("finite");
+                    let mut file = Vec::new();
+                    write(&design, &mut file).expect("written");
+                    assert_eq!(read(&mut file.as_slice()).expect("read"), design);
+                    let request = Request {
+                        shown: Shown::Levels(Level::Nominal, Level::Greatest),
+                        frequencies_hz: vec![1e3, 1e5],
+                        band_frequencies_hz: Vec::new(),
+                        step_points: 20,
+                    };
+                    let analysis = analyse(&checked(&design), &request);
+                    let told = format!("{} {mode} {choices:?}", topology.key);
+                    let detail = analysis.shown.unwrap_or_else(|finding| panic!("{told}: {finding:?}"));
+                    assert!(detail.control.control_voltage.is_finite() && detail.curves.plant_db[0].is_finite());
+                    for condition in &analysis.conditions {
+                        match &condition.outcome {
+                            Ok(summary) => assert!(summary.control.control_voltage.is_finite(), "{told}"),
+                            Err(why) => {
+                                assert!(why.place == "control.slope" && mode == "valley-current", "{told}: {why}")
+                            }
+                        }
                     }
                 }
             }
