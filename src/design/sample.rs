@@ -54,6 +54,12 @@ static ALL: &[Sample] = &[
         "A buck that feeds a constant-power load through three unlike branches."
     ),
     sample!(
+        "weather-buoy.ron",
+        "Weather buoy",
+        "A buck behind an input filter whose damping keeps it off the converter's impedance."
+    ),
+    sample!("ultrasound-probe.ron", "Ultrasound probe", "A buck with a second-stage output filter inside the loop."),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."

@@ -33,6 +33,7 @@
 
 mod arguments;
 mod check;
+mod input_filter;
 mod json;
 mod text;
 

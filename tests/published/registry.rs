@@ -68,6 +68,62 @@ fn every_topology_with_every_choice() {
     }
 }
 
+/// Every topology behind every input filter and before every second stage, in every control mode: computed, through the file and back.
+#[test]
+fn every_topology_with_every_filter() {
+    for topology in converter::registry() {
+        for (input, damping) in [("none", "none"), ("fitted", "none"), ("fitted", "capacitor"), ("fitted", "inductor")]
+        {
+            for (output, across, sense) in
+                [("none", "none", "load"), ("fitted", "none", "load"), ("fitted", "resistor", "bank")]
+            {
+                for mode in ["voltage", "peak-current", "valley-current", "average-current"] {
+                    let mut design = of_topology(topology.key, topology.reach);
+                    let choices = [
+                        ("stage.input-filter", input),
+                        ("stage.input-filter.damping", damping),
+                        ("stage.output-filter", output),
+                        ("stage.output-filter.damping", across),
+                        ("stage.output-filter.sense", sense),
+                        ("control.mode", mode),
+                    ];
+                    for (path, key) in choices {
+                        design.set_from_text(path, key).expect("an option");
+                    }
+                    let mut text = Vec::new();
+                    polewright::design::file::write(&design, &mut text).expect("written");
+                    let back = polewright::design::file::read(&mut text.as_slice()).expect("read");
+                    assert_eq!(back, design, "{choices:?}");
+                    let request = Request {
+                        shown: Shown::Levels(Level::Nominal, Level::Greatest),
+                        frequencies_hz: vec![1e3, 1e4],
+                        band_frequencies_hz: Vec::new(),
+                        step_points: 20,
+                    };
+                    let analysis = analyse(&checked(&design), &request);
+                    let detail =
+                        analysis.shown.unwrap_or_else(|finding| panic!("{} {choices:?}: {finding:?}", topology.key));
+                    assert_eq!(detail.input_filter.is_some(), input == "fitted");
+                    let inductors = usize::from(input == "fitted")
+                        + usize::from(damping == "inductor")
+                        + usize::from(output == "fitted");
+                    assert_eq!(detail.operating_point.inductors.len(), 1 + inductors);
+                    let finite = |values: &[f64]| values.len() == 2 && values.iter().all(|v| v.is_finite());
+                    let c = &detail.curves;
+                    assert!(finite(&c.loop_db) && finite(&c.output_impedance_ohm) && finite(&c.line_to_output_db));
+                    if let Some(filter) = &detail.input_filter {
+                        let z = &filter.curves;
+                        for curve in [&z.filter_ohm, &z.open_loop_ohm, &z.nulled_ohm, &z.closed_loop_ohm] {
+                            assert!(finite(curve), "{choices:?}: {z:?}");
+                        }
+                        assert!(filter.result.margins.iter().all(|m| m.margin_db.is_finite()), "{filter:?}");
+                    }
+                }
+            }
+        }
+    }
+}
+
 #[test]
 fn samples_on_disk_are_the_samples_built_in() {
     let folder = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("sample-designs");
