@@ -20,12 +20,23 @@ pub(super) fn ledger(
     landmarks: &[Landmark],
     crossover_hz: f64,
 ) -> Ledger {
-    let mut rows =
-        vec![LedgerRow { label: "half turn".into(), degrees: 180.0, role: LedgerRole::HalfTurn, lane: None }];
+    let mut rows = vec![LedgerRow {
+        label: "half turn".into(),
+        degrees: 180.0,
+        role: LedgerRole::HalfTurn,
+        lane: None,
+        landmark: None,
+    }];
     let ideal = FactoredResponse::new(compensator.ideal(), 0.0);
     rows.extend(compensator_rows(compensator, &ideal, crossover_hz));
     let amplifier = shared.compensator_response.phase_deg(crossover_hz) - ideal.phase_deg(crossover_hz);
-    rows.push(LedgerRow { label: "amplifier".into(), degrees: amplifier, role: LedgerRole::Amplifier, lane: None });
+    rows.push(LedgerRow {
+        label: "amplifier".into(),
+        degrees: amplifier,
+        role: LedgerRole::Amplifier,
+        lane: None,
+        landmark: None,
+    });
     let mut small = 0.0;
     for factor in model.plant.factor_phases_deg(crossover_hz) {
         if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
@@ -40,13 +51,20 @@ pub(super) fn ledger(
             degrees: small,
             role: LedgerRole::Plant,
             lane: None,
+            landmark: None,
         });
     }
     let sum: f64 = rows.iter().map(|row| row.degrees).sum();
     let phase_margin_deg = wrapped(sum);
     let turns = phase_margin_deg - sum;
     if turns.abs() > 180.0 {
-        rows.push(LedgerRow { label: "whole turns".into(), degrees: turns, role: LedgerRole::Turns, lane: None });
+        rows.push(LedgerRow {
+            label: "whole turns".into(),
+            degrees: turns,
+            role: LedgerRole::Turns,
+            lane: None,
+            landmark: None,
+        });
     }
     Ledger { frequency_hz: crossover_hz, rows, phase_margin_deg }
 }
@@ -64,7 +82,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
                 LaneKind::Zero => (format!("zero {at}"), turn),
                 LaneKind::Pole => (format!("pole {at}"), -turn),
             };
-            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key) }
+            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key), landmark: None }
         })
         .collect();
     let beside = ideal.phase_deg(f) - rows.iter().map(|row| row.degrees).sum::<f64>();
@@ -74,6 +92,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
             degrees: beside,
             role: LedgerRole::Compensator,
             lane: None,
+            landmark: None,
         });
     } else if let Some(first) = rows.first_mut() {
         // Rounding of the sum, so that the ledger closes to the last digit.
@@ -86,6 +105,7 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
     let f = factor.root.norm() / TAU;
     let at = print_digits(f, Unit::Hertz, 3);
     let near = |key: &str| landmarks.iter().any(|m| m.key == key && (m.frequency_hz / f).ln().abs() < 0.3);
+    let landmark = |key: &str| landmarks.iter().find(|m| m.key == key).map(|m| m.key);
     let right = factor.root.re > 0.0;
     let sampled = model.controlled.sampling.is_some();
     let half =
@@ -116,5 +136,11 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };
-    LedgerRow { label, degrees: factor.phase_deg, role, lane: None }
+    let landmark = match factor.kind {
+        FactorKind::Zero if right => landmark("right-half-plane-zero"),
+        FactorKind::Zero if factor.root.im == 0.0 && near("esr-zero") => landmark("esr-zero"),
+        FactorKind::Pole if !right && factor.root.im != 0.0 && near("lc-resonance") => landmark("lc-resonance"),
+        _ => None,
+    };
+    LedgerRow { label, degrees: factor.phase_deg, role, lane: None, landmark }
 }

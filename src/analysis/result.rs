@@ -177,6 +177,8 @@ pub struct LedgerRow {
     pub role: LedgerRole,
     /// Key of the lane it belongs to, for compensator rows.
     pub lane: Option<&'static str>,
+    /// Key of the landmark it belongs to, for rows of the stage.
+    pub landmark: Option<&'static str>,
 }
 
 /// The phase at the headline crossover itemised by cause; the rows add up to the phase margin.

@@ -32,6 +32,8 @@ pub struct Landmark {
     pub formula: &'static str,
     /// True when it was read off the derived model's poles and zeros because no textbook formula fits.
     pub derived: bool,
+    /// Paths of the entries of the parts that make it.
+    pub parts: Vec<String>,
 }
 
 const READ_OFF: &str =
@@ -43,7 +45,8 @@ pub(super) fn landmarks(topology: &Topology, t: &Textbook, stage: &Stage, plant:
     let mut marks = Vec::with_capacity(6);
     let mut add = |key, name, frequency_hz: f64, formula, derived| {
         if frequency_hz.is_finite() && frequency_hz > 0.0 {
-            marks.push(Landmark { key, name, frequency_hz, formula, derived });
+            let parts = parts_of(key, stage.bank.len());
+            marks.push(Landmark { key, name, frequency_hz, formula, derived, parts });
         }
     };
     if let ([only], None) = (stage.bank.as_slice(), &stage.second_stage) {
@@ -71,6 +74,24 @@ pub(super) fn landmarks(topology: &Topology, t: &Textbook, stage: &Stage, plant:
     }
     add("half-switching", "½ switching", stage.switching_frequency / 2.0, "fs / 2", false);
     marks
+}
+
+/// Paths of the entries that a landmark follows from.
+fn parts_of(key: &str, branches: usize) -> Vec<String> {
+    let of_bank = |what: &str| (1..=branches).map(|k| format!("stage.bank.{k}.{what}")).collect::<Vec<_>>();
+    let one = |path: &str| vec![path.to_owned()];
+    match key {
+        "lc-resonance" => [one("stage.inductor.inductance"), of_bank("capacitance")].concat(),
+        "esr-zero" => [of_bank("esr"), of_bank("capacitance")].concat(),
+        "right-half-plane-zero" => [one("stage.inductor.inductance"), one("stage.load.nominal")].concat(),
+        "input-filter" => [one("stage.input-filter.inductance"), one("stage.input-capacitor.capacitance")].concat(),
+        "output-filter" => {
+            [one("stage.output-filter.inductance"), one("stage.output-filter.capacitance"), of_bank("capacitance")]
+                .concat()
+        }
+        "half-switching" => one("stage.switching-frequency"),
+        _ => Vec::new(),
+    }
 }
 
 /// The lowest right-half-plane zero of a plant [Hz].

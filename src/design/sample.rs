@@ -56,6 +56,26 @@ static ALL: &[Sample] = &[
     sample!(
         "weather-buoy.ron",
         "Weather buoy",
+        "A buck in peak current mode; at light load its diode lets the current rest."
+    ),
+    sample!(
+        "harbour-light.ron",
+        "Harbour light",
+        "A boost in peak current mode: no LC resonance, but the right-half-plane zero."
+    ),
+    sample!(
+        "winch-buffer.ron",
+        "Winch buffer",
+        "A boost in average current mode, a voltage loop around a current loop."
+    ),
+    sample!(
+        "map-table.ron",
+        "Map table",
+        "A buck in valley current mode, as a data sheet states it: A/V, offset, clamp."
+    ),
+    sample!(
+        "tram-display.ron",
+        "Tram display",
         "A buck behind an input filter whose damping keeps it off the converter's impedance."
     ),
     sample!("ultrasound-probe.ron", "Ultrasound probe", "A buck with a second-stage output filter inside the loop."),

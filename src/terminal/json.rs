@@ -52,7 +52,8 @@ struct OperatingPoint {
 #[derive(Serialize)]
 struct Control {
     mode: &'static str,
-    control_voltage: f64,
+    #[serde(rename = "control_voltage")]
+    voltage: f64,
     clamp: Option<f64>,
     sampling_quality: Option<f64>,
     subharmonic: Option<bool>,
@@ -277,7 +278,7 @@ fn control(design: &CheckedDesign, detail: &Detail) -> Control {
     });
     Control {
         mode: design.law.word(),
-        control_voltage: figures.control_voltage,
+        voltage: figures.control_voltage,
         clamp: design.law.clamp,
         sampling_quality: sampling.and_then(|s| s.quality()),
         subharmonic: sampling.map(|s| s.subharmonic()),

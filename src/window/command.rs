@@ -196,6 +196,8 @@ pub enum Command {
     ToggleStage,
     /// Show or hide the column of read-outs.
     ToggleReadouts,
+    /// Show or fold the schematics.
+    ToggleSchematics,
     /// Show the searchable list of commands.
     ListCommands,
     /// Show the hint for who is new here, or close it.
@@ -417,6 +419,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(Modifiers::NONE, Key::F7)),
         "Show or hide margins, parts and findings.",
         Command::ToggleReadouts,
+    ),
+    row(
+        "Schematics",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F8)),
+        "Show or fold the schematics of stage and compensator.",
+        Command::ToggleSchematics,
     ),
     row("Light", Menu::View, None, "Light colours.", Command::Theme(ThemePreference::Light)),
     row("Dark", Menu::View, None, "Dark colours.", Command::Theme(ThemePreference::Dark)),

@@ -94,11 +94,11 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
     if !desk.kept.recent.is_empty() {
         ui.add_space(10.0);
         ui.label(RichText::new("Recent files").font(theme::strong(13.5)));
-        ScrollArea::vertical().id_salt("recent").max_height(170.0).show(ui, |ui| recents::recents_ui(ui, desk));
+        list(ui, "recent", 170.0).show(ui, |ui| recents::recents_ui(ui, desk));
     }
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().id_salt("samples").max_height(260.0).show(ui, |ui| {
+    list(ui, "samples", 260.0).show(ui, |ui| {
         bar::samples_ui(ui, desk);
     });
 }
@@ -173,7 +173,7 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
         desk.ask(Command::Dismiss);
         desk.ask(first.command.clone());
     }
-    ScrollArea::vertical().max_height(360.0).show(ui, |ui| {
+    list(ui, "commands", 360.0).show(ui, |ui| {
         for row in found {
             let mut button =
                 Button::new(row.name).stroke(Stroke::NONE).min_size(eframe::egui::vec2(ui.available_width(), 0.0));
@@ -192,6 +192,16 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
 pub(super) fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
     ui.horizontal(content);
 }
+
+/// A list that scrolls: as high as wished where the window has the room. Without a least height it would take what the dialog
+/// happened to leave when it was first drawn.
+pub(super) fn list(ui: &Ui, name: &str, wish: f32) -> ScrollArea {
+    let height = wish.min(ui.ctx().content_rect().height() * LIST_SHARE);
+    ScrollArea::vertical().id_salt(name).max_height(height).min_scrolled_height(height)
+}
+
+/// Most of the window's height that one list takes.
+const LIST_SHARE: f32 = 0.4;
 
 /// The button that is meant.
 pub(super) fn primary(ui: &Ui, text: &str) -> Button<'static> {

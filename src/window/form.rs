@@ -12,6 +12,7 @@ use eframe::egui::{
 
 use super::command::Command;
 use super::explain;
+use super::pointed::Pointed;
 use super::theme::{self, palette};
 use super::view::{Desk, Field};
 use crate::analysis::terms;
@@ -224,6 +225,7 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
             desk.view.field = Some(Field { path: entry.path, text });
         }
     }
+    desk.view.point(Pointed::Entry(entry.path), &response);
     if desk.view.seek.as_deref() == Some(entry.path) {
         desk.view.seek = None;
         response.request_focus();

@@ -11,6 +11,7 @@ use eframe::egui::{
 
 use super::bode::Stack;
 use super::command::Command;
+use super::pointed::Pointed;
 use super::theme::{self, Palette, palette};
 use super::view::{Desk, Drag, Typing};
 use crate::compensator::{Lane, LaneKind};
@@ -84,7 +85,12 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     describe(ui, &response, lane);
     let held = response.dragged() || response.is_pointer_button_down_on();
     let active = held || response.has_focus() || response.hovered();
-    paint_handle(&painter, handle, lane.kind, active, palette);
+    desk.view.point(Pointed::Lane(lane.key), &response);
+    let lit = desk.lit_lane(lane);
+    if lit && !active {
+        painter.circle_filled(handle, theme::HANDLE + 5.0, palette.compensator.gamma_multiply(0.22));
+    }
+    paint_handle(&painter, handle, lane.kind, active || lit, palette);
     if response.has_focus() {
         let ring = Rect::from_center_size(handle, vec2(20.0, 20.0));
         painter.rect_stroke(ring, 5.0, Stroke::new(1.5, palette.accent), StrokeKind::Outside);

@@ -4,6 +4,7 @@ use eframe::egui::{Align2, Color32, Rect, RichText, Role, Sense, Stroke, Ui, Wid
 
 use super::axis::Axis;
 use super::explain;
+use super::pointed::Pointed;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
 use crate::analysis::{LedgerRole, LedgerRow};
@@ -16,7 +17,8 @@ const VALUE: f32 = 52.0;
 
 /// Draws the ledger at the headline crossover.
 pub(super) fn ledger_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let Some(detail) = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok()) else { return };
+    let session = desk.session;
+    let Some(detail) = session.analysis().and_then(|analysis| analysis.shown.as_ref().ok()) else { return };
     let Some(ledger) = &detail.ledger else { return };
     let palette = palette(ui);
     let at = quantity::print_digits(ledger.frequency_hz, Unit::Hertz, 3);
@@ -62,10 +64,14 @@ fn colour(role: LedgerRole, palette: &Palette) -> Color32 {
     }
 }
 
-fn row_ui(ui: &mut Ui, row: &LedgerRow, from: f64, x: &Axis, desk: &Desk<'_>) {
+fn row_ui(ui: &mut Ui, row: &LedgerRow, from: f64, x: &Axis, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), ROW), Sense::hover());
-    let lit = row.lane.is_some() && row.lane == desk.view.lane;
+    let thing = row.lane.map(Pointed::Lane).or(row.landmark.map(Pointed::Landmark));
+    if let Some(thing) = thing {
+        desk.view.point(thing, &response);
+    }
+    let lit = desk.lit_row(row);
     let painter = ui.painter();
     if lit {
         painter.rect_filled(rect.expand2(vec2(4.0, 0.0)), 3.0, palette.accent_ground);

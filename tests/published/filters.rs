@@ -1,10 +1,13 @@
 //! Input filters and second stages: worked examples of textbooks, and nodal equations written by hand.
 
 use crate::common::{
-    PUBLISHED, PUBLISHED_DEG, analysed, assert_absolute, assert_relative, at_one_condition, lossless, nominal, ratio,
+    PUBLISHED, PUBLISHED_DEG, analysed, assert_absolute, assert_relative, at_one_condition, checked, lossless, nominal,
+    ratio,
 };
+use crate::registry::of_topology;
 use crate::textbook::{buck, printed_network, set};
-use polewright::analysis::Curves;
+use polewright::analysis::{Curves, Level, Request, Shown, analyse};
+use polewright::converter;
 use polewright::design::Design;
 use polewright::linear::{Complex, Verdict};
 
@@ -305,6 +308,62 @@ fn output_impedance_beyond_the_sense_point() {
             let plant = Complex::from_polar(ratio(c.plant_db[k]), c.plant_deg[k].to_radians());
             assert!((plant / sensed_from_control - 1.0).norm() < 1e-6);
             assert_relative("open loop", c.open_loop_output_impedance_ohm[k], open.norm(), 1e-6);
+        }
+    }
+}
+
+/// Every topology behind every input filter and before every second stage, in every control mode: computed, through the file and back.
+#[test]
+fn every_topology_with_every_filter() {
+    for topology in converter::registry() {
+        for (input, damping) in [("none", "none"), ("fitted", "none"), ("fitted", "capacitor"), ("fitted", "inductor")]
+        {
+            for (output, across, sense) in
+                [("none", "none", "load"), ("fitted", "none", "load"), ("fitted", "resistor", "bank")]
+            {
+                for mode in ["voltage", "peak-current", "valley-current", "average-current"] {
+                    let mut design = of_topology(topology.key, topology.reach);
+                    let choices = [
+                        ("stage.input-filter", input),
+                        ("stage.input-filter.damping", damping),
+                        ("stage.output-filter", output),
+                        ("stage.output-filter.damping", across),
+                        ("stage.output-filter.sense", sense),
+                        ("control.mode", mode),
+                    ];
+                    for (path, key) in choices {
+                        design.set_from_text(path, key).expect("an option");
+                    }
+                    let mut text = Vec::new();
+                    polewright::design::file::write(&design, &mut text).expect("written");
+                    let back = polewright::design::file::read(&mut text.as_slice()).expect("read");
+                    assert_eq!(back, design, "{choices:?}");
+                    let request = Request {
+                        shown: Shown::Levels(Level::Nominal, Level::Greatest),
+                        frequencies_hz: vec![1e3, 1e4],
+                        band_frequencies_hz: Vec::new(),
+                        step_points: 20,
+                    };
+                    let analysis = analyse(&checked(&design), &request);
+                    let detail =
+                        analysis.shown.unwrap_or_else(|finding| panic!("{} {choices:?}: {finding:?}", topology.key));
+                    assert_eq!(detail.input_filter.is_some(), input == "fitted");
+                    let inductors = usize::from(input == "fitted")
+                        + usize::from(damping == "inductor")
+                        + usize::from(output == "fitted");
+                    assert_eq!(detail.operating_point.inductors.len(), 1 + inductors);
+                    let finite = |values: &[f64]| values.len() == 2 && values.iter().all(|v| v.is_finite());
+                    let c = &detail.curves;
+                    assert!(finite(&c.loop_db) && finite(&c.output_impedance_ohm) && finite(&c.line_to_output_db));
+                    if let Some(filter) = &detail.input_filter {
+                        let z = &filter.curves;
+                        for curve in [&z.filter_ohm, &z.open_loop_ohm, &z.nulled_ohm, &z.closed_loop_ohm] {
+                            assert!(finite(curve), "{choices:?}: {z:?}");
+                        }
+                        assert!(filter.result.margins.iter().all(|m| m.margin_db.is_finite()), "{filter:?}");
+                    }
+                }
+            }
         }
     }
 }
