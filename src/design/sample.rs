@@ -80,6 +80,16 @@ static ALL: &[Sample] = &[
     ),
     sample!("ultrasound-probe.ron", "Ultrasound probe", "A buck with a second-stage output filter inside the loop."),
     sample!(
+        "hive-scale.ron",
+        "Hive scale",
+        "A buck with a diode that falls into discontinuous conduction when its radio sleeps."
+    ),
+    sample!(
+        "tide-gauge.ron",
+        "Tide gauge",
+        "A boost whose synchronous switch emulates a diode: both conduction modes in one day's work."
+    ),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."

@@ -27,6 +27,7 @@ struct Object<'a> {
     response: Vec<Response>,
     input_filter: Option<InputFilter>,
     load_step: Option<LoadStep>,
+    load_sweep: Option<super::sweep::Sweep>,
     requirements: Vec<Requirement<'a>>,
     findings: Vec<FindingRow<'a>>,
 }
@@ -42,6 +43,7 @@ struct Condition<'a> {
 struct OperatingPoint {
     duty: f64,
     conduction: &'static str,
+    second_duty: Option<f64>,
     control_voltage: f64,
     input_current: f64,
     load_voltage: f64,
@@ -230,6 +232,7 @@ fn object(report: &Report) -> Object<'_> {
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
         input_filter: detail.and_then(input_filter::object),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
+        load_sweep: report.load_sweep.as_ref().map(super::sweep::json),
         requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
         findings: report.findings.iter().map(finding_row).collect(),
     }
@@ -240,6 +243,7 @@ fn operating_point(detail: &Detail) -> OperatingPoint {
     OperatingPoint {
         duty: point.duty,
         conduction: point.conduction.word(),
+        second_duty: point.second_duty,
         control_voltage: detail.control.control_voltage,
         input_current: point.input_current,
         load_voltage: point.load_voltage,

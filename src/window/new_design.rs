@@ -152,12 +152,12 @@ pub(super) fn new_design_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         });
     }
     ui.add_space(8.0);
-    buttons_ui(ui, &mut form, desk);
+    buttons_ui(ui, room.x > SIDE_BY_SIDE, &mut form, desk);
     form.refresh();
     desk.view.new_design = form;
 }
 
-fn buttons_ui(ui: &mut Ui, form: &mut NewDesign, desk: &mut Desk<'_>) {
+fn buttons_ui(ui: &mut Ui, wide: bool, form: &mut NewDesign, desk: &mut Desk<'_>) {
     ui.horizontal(|ui| {
         let primary = super::dialogs::primary(ui, "Create");
         if ui.add_enabled(form.proposal.is_some() && !form.changed, primary).clicked() {
@@ -174,6 +174,15 @@ fn buttons_ui(ui: &mut Ui, form: &mut NewDesign, desk: &mut Desk<'_>) {
                 }
             });
         });
+        // Where the assumptions stand below the form, a word says that they are there.
+        if let (false, Some(proposal)) = (wide, &form.proposal) {
+            let (met, colour) = match proposal.shortfalls.len() {
+                0 => ("all met".to_owned(), palette(ui).good),
+                count => (format!("{count} missed"), palette(ui).amber),
+            };
+            let text = format!("{met}, {} assumptions below", proposal.assumptions.len());
+            ui.add(egui::Label::new(RichText::new(text).color(colour)).truncate());
+        }
     });
 }
 

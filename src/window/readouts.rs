@@ -171,7 +171,7 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     let name = painter.text(at, Align2::LEFT_TOP, readout.name, look.name.clone(), palette.weak);
     let value = value_text(readout, analysis);
     let at = rect.left_top() + vec2(0.0, look.tops.0);
-    painter.text(at, Align2::LEFT_TOP, &value, look.value.clone(), ink(readout, analysis, palette));
+    let shown = painter.text(at, Align2::LEFT_TOP, &value, look.value.clone(), ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
@@ -185,8 +185,12 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     }
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
-        let at = rect.right_top() + vec2(0.0, look.tops.1);
-        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), look.verdict.clone(), colour);
+        let layout = |font| painter.layout_no_wrap(verdict_text(verdict), font, colour);
+        let mut galley = layout(look.verdict.clone());
+        if shown.right() + 8.0 > rect.right() - galley.size().x {
+            galley = layout(theme::small());
+        }
+        painter.galley(pos2(rect.right() - galley.size().x, rect.top() + look.tops.1), galley, colour);
         bar(painter, rect, verdict, palette);
     }
     announce(ui, &response, readout, &value);

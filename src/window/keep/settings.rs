@@ -90,7 +90,9 @@ pub(in crate::window) struct Look {
 impl Default for Look {
     fn default() -> Self {
         // Nobody has closed the hint who never saw it.
-        Look { hint_closed: false, ..Look::of(&View::default(), 1.0, None) }
+        let mut look = Look::of(&View::default(), 1.0, None);
+        look.hint_closed = false;
+        look
     }
 }
 
