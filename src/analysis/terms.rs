@@ -146,12 +146,6 @@ pub static TERMS: &[Term] = &[
         "GM = −20·log |Ti| where arg Ti = −180° − k·360°",
     ),
     term(
-        "low-pole",
-        "Low pole",
-        "What current mode leaves of the resonance: output capacitor and load, the inductor a current source.",
-        "about 1 / (2π·R·C), more with ramp and slopes",
-    ),
-    term(
         "lc-resonance",
         "LC resonance",
         "Resonance of the inductor with the output bank: the plant falls by 40 dB per decade above it and loses up to 180°.",
@@ -161,7 +155,7 @@ pub static TERMS: &[Term] = &[
         "low-pole",
         "Low pole",
         "The output bank against load and stage where the inductor is no state of its own: its current rests every period, or a current loop holds it.",
-        "discontinuous: (2 − M)/((1 − M)·2π·R·C) of a buck, (2M − 1)/((M − 1)·2π·R·C) of a boost, 1/(π·R·C) of a buck-boost",
+        "discontinuous: (2 − M)/((1 − M)·2π·R·C) of a buck, (2M − 1)/((M − 1)·2π·R·C) of a boost, 1/(π·R·C) of a buck-boost; current mode: about 1/(2π·R·C), more with ramp and slopes",
     ),
     term(
         "second-pole",
