@@ -162,7 +162,7 @@ fn conclude(
         None => shown.as_ref().err().into_iter().cloned().collect(),
     };
     Analysis {
-        readouts: readouts(detail, &conditions, &requirements),
+        readouts: readouts(detail, &conditions, &requirements, design.events.settling_band),
         shown,
         condition,
         conditions,

@@ -49,12 +49,19 @@ fn edge(frequency_hz: f64, cause: String, kind: Cause) -> Option<(WindowEdge, Ca
     (frequency_hz.is_finite() && frequency_hz > 0.0).then_some((WindowEdge { frequency_hz, cause }, kind))
 }
 
-fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<(WindowEdge, Cause)> {
+/// The highest LC resonance of the conditions [Hz], and the condition it belongs to.
+pub(super) fn highest_resonance<'a>(
+    design: &CheckedDesign,
+    conditions: &'a [ConditionResult],
+) -> Option<(f64, &'a Condition)> {
     let resonance = |condition: &Condition| {
         (design.stage.topology().resonance_hz)(&design.stage.textbook(&condition.of_stage(&design.stage)))
     };
-    let highest =
-        conditions.iter().map(|c| (resonance(&c.condition), &c.condition)).max_by(|a, b| a.0.total_cmp(&b.0))?;
+    conditions.iter().map(|c| (resonance(&c.condition), &c.condition)).max_by(|a, b| a.0.total_cmp(&b.0))
+}
+
+fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<(WindowEdge, Cause)> {
+    let highest = highest_resonance(design, conditions)?;
     let cause =
         format!("{ABOVE_RESONANCE} × LC resonance {} at {}", print_digits(highest.0, Unit::Hertz, 3), highest.1.label);
     edge(ABOVE_RESONANCE * highest.0, cause, Cause::Resonance)

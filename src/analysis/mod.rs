@@ -9,6 +9,8 @@ mod crossover_window;
 mod curves;
 mod ledger;
 pub mod loop_model;
+mod pairs;
+mod placement;
 mod readouts;
 mod remarks;
 mod requirement;
@@ -18,6 +20,7 @@ mod steps;
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use placement::{Goal, place_by_k_factor, place_by_rules, usual_goal};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, CrossoverWindow, Curves, Detail, Ledger, LedgerRole,
     LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step, StepFigures, Steps, WindowEdge, Worst,
