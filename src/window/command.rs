@@ -5,7 +5,9 @@ use std::path::PathBuf;
 use eframe::egui::{Key, KeyboardShortcut, Modifiers, ThemePreference};
 
 use super::history::Gesture;
+use super::placing::Method;
 use crate::analysis::Level;
+use crate::compensator::LaneKind;
 use crate::finding::Remedy;
 
 /// Curves of the Bode plots that can be shown or hidden.
@@ -17,6 +19,24 @@ pub enum Curve {
     Compensator,
     /// Their product.
     Loop,
+}
+
+/// Which way the frequency axis is zoomed.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Zoom {
+    /// Fewer frequencies, drawn wider.
+    In,
+    /// More frequencies, drawn narrower.
+    Out,
+}
+
+/// Which way the frequency axis is moved.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Pan {
+    /// To lower frequencies.
+    Lower,
+    /// To higher frequencies.
+    Higher,
 }
 
 /// A request to the window, from a menu, a key, a field or a handle.
@@ -81,6 +101,12 @@ pub enum Command {
         /// Moves of one gesture are one step.
         gesture: Gesture,
     },
+    /// Return a pole, zero or gain to where the placement rules put it.
+    ReturnLane(&'static str),
+    /// Let the zeros, or the poles, move together, or each by itself.
+    Tie(LaneKind),
+    /// Place all poles and zeros by a method, for the crossover and margin that are aimed at.
+    Place(Method),
     /// Keep a part as it is, or let it be changed again.
     Lock {
         /// Path of the part.
@@ -105,6 +131,10 @@ pub enum Command {
     ToggleBand,
     /// Show the whole frequency range again.
     WholeRange,
+    /// Show fewer frequencies, or more.
+    Zoom(Zoom),
+    /// Show lower frequencies, or higher.
+    Pan(Pan),
     /// Keep the present curves to compare with.
     Hold,
     /// Drop the held curves.
@@ -184,6 +214,34 @@ pub(super) static COMMANDS: &[Row] = &[
         Command::RoundParts,
     ),
     row(
+        "Place by K factor",
+        Menu::Edit,
+        None,
+        "Place poles, zeros and gain for the phase margin and crossover aimed at beside the parts.",
+        Command::Place(Method::KFactor),
+    ),
+    row(
+        "Place by pole-zero rules",
+        Menu::Edit,
+        None,
+        "Place zeros on the LC resonance, poles on the zeros of the plant or at half the switching frequency.",
+        Command::Place(Method::Rules),
+    ),
+    row(
+        "Tie the zeros",
+        Menu::Edit,
+        None,
+        "Let both zeros move together, their ratio kept, or each by itself again.",
+        Command::Tie(LaneKind::Zero),
+    ),
+    row(
+        "Tie the poles",
+        Menu::Edit,
+        None,
+        "Let both poles move together, their ratio kept, or each by itself again.",
+        Command::Tie(LaneKind::Pole),
+    ),
+    row(
         "Next condition",
         Menu::View,
         Some(key(CTRL, Key::ArrowRight)),
@@ -235,6 +293,34 @@ pub(super) static COMMANDS: &[Row] = &[
     ),
     row("Whole range", Menu::View, Some(key(CTRL, Key::Home)), "Show all frequencies again.", Command::WholeRange),
     row(
+        "Zoom in",
+        Menu::View,
+        Some(key(CTRL, Key::ArrowUp)),
+        "Show fewer frequencies, about the pointer or the crossover.",
+        Command::Zoom(Zoom::In),
+    ),
+    row(
+        "Zoom out",
+        Menu::View,
+        Some(key(CTRL, Key::ArrowDown)),
+        "Show more frequencies, about the pointer or the crossover.",
+        Command::Zoom(Zoom::Out),
+    ),
+    row(
+        "Lower frequencies",
+        Menu::View,
+        Some(key(CTRL_SHIFT, Key::ArrowLeft)),
+        "Move the frequency axis to lower frequencies.",
+        Command::Pan(Pan::Lower),
+    ),
+    row(
+        "Higher frequencies",
+        Menu::View,
+        Some(key(CTRL_SHIFT, Key::ArrowRight)),
+        "Move the frequency axis to higher frequencies.",
+        Command::Pan(Pan::Higher),
+    ),
+    row(
         "Power stage column",
         Menu::View,
         Some(key(Modifiers::NONE, Key::F6)),
@@ -262,6 +348,11 @@ pub(super) static COMMANDS: &[Row] = &[
         Command::ListCommands,
     ),
 ];
+
+/// Names of all commands, as menus and the searchable list show them.
+pub fn command_names() -> impl Iterator<Item = &'static str> {
+    COMMANDS.iter().map(|row| row.name)
+}
 
 #[cfg(test)]
 mod tests {

@@ -44,7 +44,12 @@ impl App {
             | Command::MoveCrossover { .. }
             | Command::Lock { .. }
             | Command::RoundParts
-            | Command::Mend(_) => self.perform_on_design(command),
+            | Command::Mend(_) => {
+                self.view.goal.said = None;
+                self.perform_on_design(command);
+            }
+            Command::ReturnLane(key) => self.return_lane(key),
+            Command::Place(method) => self.place(method),
             other => self.perform_on_view(&other, ctx),
         }
     }
@@ -233,7 +238,10 @@ impl App {
             Command::PreviousCondition => self.session.step_condition(8),
             Command::Toggle(curve) => view.toggle(*curve),
             Command::ToggleBand => view.band = !view.band,
+            Command::Tie(kind) => self.session.tie(*kind, !self.session.tied(*kind)),
             Command::WholeRange => view.range_hz = None,
+            Command::Zoom(zoom) => self.zoom(*zoom),
+            Command::Pan(pan) => self.pan(*pan),
             Command::Hold => self.session.hold(),
             Command::DropHeld => self.session.drop_held(),
             Command::Theme(theme) => {

@@ -18,6 +18,7 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let frame = steps::frame_of(rect);
     let detail = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok());
     let Some(detail) = detail else {
+        desk.view.cursor_below_hz = None;
         steps::empty(ui, frame, "No response at this condition.", palette);
         return;
     };
@@ -47,12 +48,30 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         peak(&painter, &plot, curves, palette);
     }
     read(ui, &plot, (closed, open, unit), desk, palette);
+    announce(ui, &plot, (closed, unit), desk);
     if !detail.loop_gain.stable() {
         let at = plot.rect.center_bottom() - vec2(0.0, 14.0);
         let colours = (palette.problem, palette.canvas);
         plot::tag(ui.painter(), at, Align2::CENTER_CENTER, "the closed loop is not stable", theme::small(), colours);
     }
 }
+
+/// Tells screen readers what the plot shows: its greatest value.
+fn announce(ui: &Ui, plot: &Plot, shown: (&[f64], Unit), desk: &Desk<'_>) {
+    let (closed, unit) = shown;
+    let name = NAMES.iter().find(|(which, ..)| *which == desk.view.closed_loop).map_or("", |(_, name, _)| name);
+    let greatest = closed.iter().copied().filter(|value| value.is_finite()).fold(f64::NEG_INFINITY, f64::max);
+    let text = format!("{name} plot: at most {}", quantity::print_digits(greatest, unit, 3));
+    let response = ui.interact(plot.rect, ui.scope_id().with("closed-loop plot"), egui::Sense::hover());
+    response.widget_info(|| egui::WidgetInfo::labeled(egui::Role::Image, true, &text));
+}
+
+/// The closed-loop responses with their names, long and short.
+const NAMES: [(ClosedLoop, &str, &str); 3] = [
+    (ClosedLoop::Impedance, "Output impedance", "Impedance"),
+    (ClosedLoop::Line, "Line to output", "Line"),
+    (ClosedLoop::Reference, "Following", "Following"),
+];
 
 fn closed_pen(palette: &Palette) -> Pen {
     Pen { colour: palette.loop_gain, width: theme::CURVE, style: LineStyle::Solid }
@@ -67,13 +86,8 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let mut row =
         ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     row.spacing_mut().item_spacing.x = 10.0;
-    let names = [
-        (ClosedLoop::Impedance, "Output impedance", "Impedance"),
-        (ClosedLoop::Line, "Line to output", "Line"),
-        (ClosedLoop::Reference, "Following", "Following"),
-    ];
     let narrow = inner.width() < steps::NARROW;
-    for (closed_loop, name, short) in names {
+    for (closed_loop, name, short) in NAMES {
         if steps::tab_ui(&mut row, (name, if narrow { short } else { name }), desk.view.closed_loop == closed_loop) {
             desk.view.closed_loop = closed_loop;
         }
@@ -202,7 +216,10 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
         plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, pen);
         y += 15.0;
     }
-    if let Some(at) = pointer {
-        desk.view.cursor_hz = Some(plot.x.value(at.x));
+    let below = pointer.map(|at| plot.x.value(at.x));
+    if below != desk.view.cursor_below_hz {
+        // The plots above are already drawn; they follow in the next frame.
+        desk.view.cursor_below_hz = below;
+        ui.ctx().request_repaint();
     }
 }

@@ -8,8 +8,9 @@ use std::path::PathBuf;
 
 use super::drawing::Drawing;
 use super::history::{Gesture, History};
+use super::placing::Hand;
 use crate::analysis::{self, Analysis, Level, Request, Shown};
-use crate::compensator::{Compensator, Lane, LaneKind};
+use crate::compensator::{Compensator, Lane};
 use crate::design::Design;
 use crate::finding::Finding;
 
@@ -56,7 +57,7 @@ pub struct Session {
     lanes: Vec<Lane>,
     problems: Vec<Finding>,
     held: Option<Held>,
-    lane_remark: Option<(&'static str, String)>,
+    pub(super) hand: Hand,
 }
 
 /// Decades shown below the switching frequency: from the integrator to where switching hides the rest.
@@ -81,7 +82,7 @@ impl Session {
             lanes: Vec::new(),
             problems: Vec::new(),
             held: None,
-            lane_remark: None,
+            hand: Hand::default(),
         }
     }
 
@@ -178,36 +179,6 @@ impl Session {
         self.show(input, load);
     }
 
-    /// Why a lane could not go where it was asked to, or what else had to move.
-    pub fn lane_remark(&self, key: &str) -> Option<&str> {
-        self.lane_remark.as_ref().filter(|(lane, _)| *lane == key).map(|(_, remark)| remark.as_str())
-    }
-
-    /// Moves a lane by finding parts for it, reckoned from where the gesture began.
-    pub fn move_lane(&mut self, key: &'static str, frequency_hz: f64, gesture: Gesture) {
-        let start = self.design_before(gesture);
-        let Ok(compensator) = Compensator::from_values(&start.values, &start.choices) else { return };
-        let placed = compensator.move_lane(key, frequency_hz, &start.locks);
-        let name = self.lanes.iter().find(|lane| lane.key == key).map_or(key, |lane| lane.name);
-        let name = format!("Move {}", super::findings::lower_first(name));
-        self.change(&name, Some(gesture), |document| {
-            placed.compensator.write(&mut document.design.values);
-            // The frequency comes from an axis or a parsed number, so it is finite.
-            let _ = document.design.aims.set(key, frequency_hz);
-        });
-        self.lane_remark = placed.why.map(|why| (key, why));
-    }
-
-    /// Moves the crossover by the gain lane, by as much as the loop gain now differs from one at the wanted frequency [Hz].
-    pub fn move_crossover(&mut self, frequency_hz: f64, gesture: Gesture) {
-        let Some(Ok(detail)) = self.analysis.as_ref().map(|analysis| &analysis.shown) else { return };
-        let gain = super::axis::interpolate(&self.drawing.log_hz, &detail.curves.loop_db, frequency_hz.log10());
-        let lane = self.lanes.iter().find(|lane| lane.kind == LaneKind::Gain);
-        if let (Some(gain_db), Some(lane)) = (gain, lane) {
-            self.move_lane(lane.key, lane.frequency_hz * 10f64.powf(-gain_db / 20.0), gesture);
-        }
-    }
-
     /// What is held to compare with.
     pub fn held(&self) -> Option<&Held> {
         self.held.as_ref()
@@ -282,6 +253,7 @@ impl Session {
                 };
                 let analysis = analysis::analyse(&checked, &request);
                 self.drawing = Drawing::new(&analysis);
+                self.hand.usual_goal = Some(analysis::usual_goal(&checked, &analysis));
                 self.analysis = Some(analysis);
             }
             Err(problems) => self.problems.extend(problems),

@@ -3,6 +3,7 @@
 use eframe::egui::{Rect, ThemePreference};
 
 use super::command::{Command, Curve};
+use super::goal::GoalFields;
 use super::history::Gesture;
 use super::session::Session;
 
@@ -66,12 +67,26 @@ pub(super) struct Typing {
 /// A handle being dragged.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Drag {
-    /// Where the handle stood when it was taken [points].
+    /// Where the hand has moved the handle, before snapping [points].
     pub handle_x: f32,
-    /// Where the pointer stood then [points].
+    /// Where the pointer stood at the last move [points].
     pub pointer_x: f32,
     /// The gesture its moves belong to.
     pub gesture: Gesture,
+}
+
+impl Drag {
+    /// Whether the pointer has moved since the last call that followed it.
+    pub(super) fn moved_to(&self, pointer_x: f32) -> bool {
+        (pointer_x - self.pointer_x).abs() > 0.0
+    }
+
+    /// Follows the pointer, fine or not; where the handle is to go [points].
+    pub(super) fn follow(&mut self, pointer_x: f32, share: f32) -> f32 {
+        self.handle_x += (pointer_x - self.pointer_x) * share;
+        self.pointer_x = pointer_x;
+        self.handle_x
+    }
 }
 
 /// Which field is edited, and what stands in it.
@@ -121,8 +136,12 @@ pub(super) struct View {
     pub event: Event,
     /// Closed-loop response shown.
     pub closed_loop: ClosedLoop,
-    /// Frequency under the pointer [Hz].
+    /// Frequency under the pointer, wherever among the plots over frequency it is [Hz].
     pub cursor_hz: Option<f64>,
+    /// Where the keyboard has put the cursor [Hz].
+    pub key_cursor_hz: Option<f64>,
+    /// The same while the pointer is over the closed-loop responses, which are drawn after the others [Hz].
+    pub cursor_below_hz: Option<f64>,
     /// Handle being dragged.
     pub drag: Option<Drag>,
     /// The last gesture given out.
@@ -131,6 +150,8 @@ pub(super) struct View {
     pub lane: Option<&'static str>,
     /// Lane value being typed.
     pub typing: Option<Typing>,
+    /// What placements aim at, as typed.
+    pub goal: GoalFields,
     /// Field being edited.
     pub field: Option<Field>,
     /// Title being edited.
@@ -166,10 +187,13 @@ impl Default for View {
             event: Event::default(),
             closed_loop: ClosedLoop::default(),
             cursor_hz: None,
+            key_cursor_hz: None,
+            cursor_below_hz: None,
             drag: None,
             gesture: Gesture::default(),
             lane: None,
             typing: None,
+            goal: GoalFields::default(),
             field: None,
             title: None,
             seek: None,
