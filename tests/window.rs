@@ -381,15 +381,133 @@ fn the_crossover_can_be_taken_on_the_curve() {
 }
 
 #[test]
-fn held_curves_stay_and_are_dropped() {
+fn held_tries_stay_and_are_dropped_one_by_one() {
+    let mut harness = window(vec2(1280.0, 1300.0), 1.0);
+    harness.get_by_label("Hold").click();
+    harness.run();
+    enter(&mut harness, "Inductor", "15u");
+    harness.get_by_label("Hold").click();
+    harness.run();
+    let titles = |harness: &Harness<'_, App>| {
+        harness.state().session().tries().iter().map(polewright::window::Held::title).collect::<Vec<_>>()
+    };
+    assert_eq!(titles(&harness), ["1: Gimbal rail", "2: Enter inductor"]);
+    let beside = |harness: &Harness<'_, App>| harness.state().session().held().map(|held| held.number);
+    assert_eq!(beside(&harness), Some(2), "the latest is drawn");
+    harness.get_by_label("Held try 1: Gimbal rail").click();
+    harness.run();
+    assert_eq!(beside(&harness), Some(1));
+    harness.get_by_label("Drop try 1: Gimbal rail").click();
+    harness.run();
+    assert_eq!(titles(&harness), ["2: Enter inductor"]);
+    harness.key_press_modifiers(Modifiers::COMMAND | Modifiers::SHIFT, Key::H);
+    harness.run();
+    assert!(harness.state().session().tries().is_empty());
+}
+
+#[test]
+fn held_tries_follow_the_condition_shown() {
+    let mut harness = usual();
+    harness.get_by_label("Hold").click();
+    harness.run();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::ArrowRight);
+    harness.run();
+    let session = harness.state().session();
+    let (held, shown) = (&session.held().unwrap().analysis, session.analysis().unwrap());
+    assert_eq!(held.condition, shown.condition);
+    assert_eq!(held.readouts[0].value, shown.readouts[0].value, "the design did not change");
+}
+
+/// The label of the condition shown.
+fn condition(harness: &Harness<'_, App>) -> String {
+    harness.state().session().analysis().unwrap().condition.label.clone()
+}
+
+#[test]
+fn the_review_steps_through_conditions_and_tries_and_changes_nothing() {
     let mut harness = usual();
     harness.get_by_label("Hold").click();
     harness.run();
     enter(&mut harness, "Inductor", "15u");
-    assert!(harness.state().session().held().is_some());
-    harness.get_by_label("Drop held").click();
+    let design = harness.state().session().design().clone();
+    harness.key_press(Key::F5);
     harness.run();
-    assert!(harness.state().session().held().is_none());
+    assert!(harness.state().reviewing());
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_none());
+    assert!(harness.query_by_label("Crossover handle").is_none());
+    assert_eq!(harness.query_all_by_role(Role::Slider).count(), 0, "no handle to move");
+    harness.key_press(Key::ArrowUp);
+    harness.key_press(Key::ArrowRight);
+    harness.run();
+    assert_eq!(condition(&harness), "least input 9 V, greatest load 1.5 A");
+    harness.key_press(Key::ArrowRight);
+    harness.run();
+    assert_eq!(condition(&harness), "least input 9 V, greatest load 1.5 A", "the last one stays");
+    let crossover = |harness: &Harness<'_, App>| harness.state().session().analysis().unwrap().readouts[0].value;
+    let present = crossover(&harness);
+    harness.key_press(Key::PageDown);
+    harness.run();
+    assert_eq!(harness.state().session().reviewed().unwrap().number, 1);
+    assert_eq!(condition(&harness), "least input 9 V, greatest load 1.5 A");
+    assert_ne!(crossover(&harness), present);
+    // Undo, rounding and lanes are the design's; here they say so and do nothing.
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::Z);
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::R);
+    harness.run();
+    assert_eq!(harness.state().session().design(), &design);
+    assert!(harness.state().message().unwrap().text.contains("for reading"));
+    harness.key_press(Key::Escape);
+    harness.run();
+    assert!(!harness.state().reviewing());
+    assert!(harness.state().session().reviewed().is_none());
+    assert_eq!(crossover(&harness), present);
+}
+
+#[test]
+fn every_sample_is_reviewed_with_every_control_named() {
+    for sample in sample::all() {
+        for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+            let design = sample.design().unwrap();
+            let mut harness = Harness::builder()
+                .with_size(size)
+                .with_pixels_per_point(scale)
+                .build_eframe(|cc| App::new(&cc.egui_ctx, design, None));
+            harness.run();
+            harness.key_press(Key::F5);
+            harness.run();
+            harness.check_accessibility();
+            assert!(harness.query_by_label("Phase margin").is_some(), "{}", sample.file);
+            assert!(harness.query_by_label("Back to the design").is_some());
+        }
+    }
+}
+
+#[test]
+fn a_what_if_stands_beside_the_nine() {
+    let mut harness = usual();
+    let nominal = condition(&harness);
+    harness.key_press(Key::F5);
+    harness.run();
+    enter(&mut harness, "What-if input voltage", "ten");
+    assert_eq!(condition(&harness), nominal);
+    let told = |harness: &Harness<'_, App>, text: &str| {
+        harness.query_all_by(|node| node.value().is_some_and(|value| value.contains(text))).count()
+    };
+    assert_eq!(told(&harness, "Input voltage: "), 1, "the reason stands under the field");
+    assert_eq!(field(&harness, "What-if input voltage").value().as_deref(), Some("ten"));
+    field(&harness, "What-if input voltage").focus();
+    harness.run();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+    field(&harness, "What-if input voltage").type_text("10.5");
+    harness.run();
+    enter(&mut harness, "What-if load current", "750m");
+    assert_eq!(condition(&harness), "input 10.5 V, load 750 mA");
+    assert_eq!(told(&harness, "Input voltage: "), 0);
+    assert_eq!(told(&harness, "What if: input 10.5 V"), 1, "it is labelled");
+    assert_eq!(harness.state().session().analysis().unwrap().conditions.len(), 9);
+    harness.get_by(|node| node.label().is_some_and(|label| label.starts_with("Back to the nine"))).click();
+    harness.run();
+    assert_eq!(condition(&harness), nominal);
 }
 
 #[test]

@@ -10,11 +10,9 @@ use super::remarks::remarks;
 use super::requirement::verdict;
 use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult, Steps};
 use super::steps::{load_figures, steps};
-use crate::converter::Conduction;
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{FrequencyResponse, Modes, Zpk, margins};
-use crate::quantity::{Unit, print};
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// Which condition is shown in full.
@@ -202,7 +200,7 @@ impl Worked {
 fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Worked, Finding> {
     let stage_condition = condition.of_stage(&design.stage);
     let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
-    refuse_unmodelled(design, condition, &model)?;
+    refuse_out_of_limits(design, &model)?;
     let fs = design.stage.switching_frequency;
     let mut margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
     // Far above the band the loop gain dies out and |1 + T| tends to one, so its least value is no more than that.
@@ -221,20 +219,9 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
 }
 
-/// Conditions outside what is modelled or can be held: discontinuous conduction, a duty ratio beyond the modulator's limits,
-/// a control voltage beyond the amplifier's.
-fn refuse_unmodelled(design: &CheckedDesign, condition: &Condition, model: &LoopModel) -> Result<(), Finding> {
+/// Conditions that cannot be held: a duty ratio beyond the modulator's limits.
+fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(), Finding> {
     let point = &model.averaged.operating_point;
-    if point.conduction == Conduction::Discontinuous {
-        let boundary = design.stage.boundary_load(&condition.of_stage(&design.stage));
-        let below = boundary.map_or(String::new(), |b| format!(" below {}", print(b, Unit::Ampere)));
-        let message = format!(
-            "The stage runs in discontinuous conduction{below}, and a load of {} is not modelled.",
-            print(condition.load_current, Unit::Ampere)
-        );
-        return Err(Finding::problem("stage.load.least", message)
-            .with_hint("raise the load or the inductance, or choose a synchronous rectifier"));
-    }
     let (least, greatest) = (design.modulator.duty_least, design.modulator.duty_greatest);
     if !(least..=greatest).contains(&point.duty) {
         let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };

@@ -44,6 +44,22 @@ impl StateEquations {
         };
         (reduced, basis)
     }
+
+    /// These equations over the states another set of closed switches leaves independent; the projector goes with them.
+    ///
+    /// *Valid* where the constraints of `other` hold here too, as when only switches were opened that `other` has closed.
+    #[must_use]
+    pub fn over_states_of(&self, other: &StateEquations) -> StateEquations {
+        let Some(p) = &other.projector else { return self.clone() };
+        let (kept, basis) = independent_basis(p);
+        StateEquations {
+            a: self.a.select_rows(&kept) * &basis,
+            b: self.b.select_rows(&kept),
+            c: &self.c * &basis,
+            d: self.d.clone(),
+            projector: self.projector.as_ref().map(|own| own.select_rows(&kept) * &basis),
+        }
+    }
 }
 
 /// States that span the range of a projector, and the matrix that gives all states from them.

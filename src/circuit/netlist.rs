@@ -10,6 +10,13 @@ use std::collections::HashMap;
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub struct Node(pub(super) usize);
 
+impl Node {
+    /// Whether it is the ground.
+    pub fn is_ground(self) -> bool {
+        self.0 == 0
+    }
+}
+
 /// Place of a part value in the values vector.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub struct Slot(pub(super) usize);

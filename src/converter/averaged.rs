@@ -1,26 +1,27 @@
 //! The averaged small-signal model of a stage at one condition.
 //!
-//! *Conventions*: inputs "duty", "input voltage" [V], "load current" [A, drawn from the output]; outputs
-//! "output voltage" [V, magnitude], "inductor current" [A], "input current" [A]. The duty column is
-//! (Aon − Aoff)·X + (Bon − Boff)·U, and likewise for the outputs, so an ESR's step is kept.
+//! *Conventions*: inputs and outputs by the names in `signals`. The duty column is (Aon − Aoff)·X + (Bon − Boff)·U, and
+//! likewise for the outputs, so an ESR's step is kept. The slopes of the switched current s = c·x are c·(A·x + B·u) of
+//! the intervals at the averaged state.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::{BankInductance, bank_inductance};
-use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
 use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
-use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding};
+use super::signals::{INPUTS, OUTPUTS};
+use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding, with_duty};
 use crate::finding::Finding;
 use crate::linear::{StateSpace, Zpk};
 use crate::quantity::{Unit, print};
-use nalgebra::DMatrix;
+use nalgebra::{DMatrix, RowDVector};
 
 /// The stage linearised about one operating point.
 #[derive(Clone, Debug)]
 pub struct AveragedModel {
     /// The operating point.
     pub operating_point: OperatingPoint,
-    /// From duty, input voltage and load current to output voltage, inductor and input current.
+    /// From duty, input voltage and load current to output voltage, inductor and input current, switched current and its
+    /// slopes: see [`signals`](super::signals).
     pub stage: StateSpace,
     /// The bank with and without its series inductance, where the stage must not carry it as a state; the difference
     /// belongs to the output voltage from the load current.
@@ -35,7 +36,9 @@ impl Stage {
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
         let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
         let operating_point = self.figures(condition, &solution);
-        let linearised = match self.intervals_with_inductance(condition) {
+        let with_inductance = self.intervals_with_inductance(condition).filter(|_| solution.pulse.is_none());
+        let inductance_left_out = with_inductance.is_none();
+        let linearised = match with_inductance {
             None => self.linearise(&solution),
             Some(intervals) => {
                 let intervals = intervals.map_err(|e| circuit_finding(&e))?;
@@ -43,45 +46,46 @@ impl Stage {
             }
         };
         let stage = linearised.ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
-        let bank_inductance = if self.bank_inductance_averaged() {
-            None
-        } else {
+        let bank_inductance = if inductance_left_out {
             let resistance = condition.output_voltage / condition.load_current;
             bank_inductance(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
+        } else {
+            None
         };
         Ok(AveragedModel { operating_point, stage, bank_inductance })
     }
 
-    fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
+    pub(super) fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
         let (i, x, duty) = (&solution.intervals, &solution.x, solution.duty);
-        let rows: Vec<usize> = std::iter::once(self.rows.output_voltage)
-            .chain(self.rows.inductor_currents.iter().take(1).copied())
-            .chain(std::iter::once(self.rows.input_current))
-            .collect();
+        let rows = self.averaged_rows();
+        if let Some(pulse) = &solution.pulse {
+            return i.linearise_pulse(solution, pulse, &rows, self.switching_frequency.recip());
+        }
         let a = i.mix(duty, |e| &e.a);
         let b = i.mix(duty, |e| &e.b);
         let c = i.mix(duty, |e| &e.c).select_rows(&rows);
         let d = i.mix(duty, |e| &e.d).select_rows(&rows);
         let push = (&i.on.a - &i.off.a) * x + (&i.on.b - &i.off.b) * &i.inputs;
         let jump = ((&i.on.c - &i.off.c) * x + (&i.on.d - &i.off.d) * &i.inputs).select_rows(&rows);
-        let join = |first: &[f64], m: &DMatrix<f64>| {
-            DMatrix::from_fn(m.nrows(), 3, |r, k| match k {
-                0 => first[r],
-                1 => m[(r, INPUT_VOLTAGE)],
-                _ => m[(r, LOAD_CURRENT)],
-            })
-        };
-        let b = join(push.as_slice(), &b);
-        let d = join(jump.as_slice(), &d);
-        StateSpace::new(
-            a,
-            b,
-            c,
-            d,
-            &["duty", "input voltage", "load current"],
-            &["output voltage", "inductor current", "input current"],
-        )
-        .ok()
+        let s = &i.cell.c;
+        let (slope_x, slope_u) = (s * (&i.on.a - &i.off.a), s * (&i.on.b - &i.off.b));
+        let (on_x, on_u) = (s * &i.on.a, s * &i.on.b);
+        // Switched current and its slopes have no direct path from the duty ratio.
+        let c = stacked(&c, &[s, &slope_x, &on_x]);
+        let none = RowDVector::zeros(d.ncols());
+        let d = stacked(&d, &[&none, &slope_u, &on_u]);
+        let jump = jump.resize_vertically(c.nrows(), 0.0);
+        let b = with_duty(&push, &b);
+        let d = with_duty(&jump, &d);
+        StateSpace::new(a, b, c, d, &INPUTS, &OUTPUTS).ok()
+    }
+
+    /// Rows of the netlist's outputs that an averaged model answers with.
+    fn averaged_rows(&self) -> Vec<usize> {
+        std::iter::once(self.rows.output_voltage)
+            .chain(self.rows.inductor_currents.iter().take(1).copied())
+            .chain(std::iter::once(self.rows.input_current))
+            .collect()
     }
 
     /// The landmarks at a condition; `vout_from_duty` serves where no textbook form fits.
@@ -103,6 +107,13 @@ impl Stage {
     pub fn right_half_plane_zero_hz(&self, vout_from_duty: &Zpk) -> Option<f64> {
         right_half_plane_zero_hz(vout_from_duty)
     }
+}
+
+/// A matrix with rows put below it.
+fn stacked(top: &DMatrix<f64>, rows: &[&RowDVector<f64>]) -> DMatrix<f64> {
+    DMatrix::from_fn(top.nrows() + rows.len(), top.ncols(), |r, k| {
+        if r < top.nrows() { top[(r, k)] } else { rows[r - top.nrows()][k] }
+    })
 }
 
 fn no_operating_point(why: &NoOperatingPoint, condition: &StageCondition) -> Finding {

@@ -1,8 +1,13 @@
 //! How a topology draws its stage: the parts it has of its own, around the input network, output bank and load that
 //! every stage shares.
+//!
+//! Every call draws its parts twice: into the netlist, and into the sketch that says where they stand in the schematic.
 
+use super::entries::{BRANCHES, branch_count};
 use super::landmark::Textbook;
-use crate::circuit::{InputId, Netlist, Node, OutputId, PartId, Slot};
+use super::stage::{LoadKind, Rectifier};
+use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
+use crate::quantity::{Choices, Unit};
 
 /// A power-stage topology. One file reads like its schematic; textbook formulas serve as landmarks only.
 #[derive(Debug)]
@@ -43,18 +48,34 @@ pub enum Reach {
 /// What the drawing needs to know of the choices made.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) struct Options {
-    pub(super) synchronous: bool,
+    /// Whether the rectifier is a diode, else a switch.
+    pub(super) diode: bool,
     pub(super) input_capacitor: bool,
-    pub(super) load_resistor: bool,
+    pub(super) load: LoadKind,
     pub(super) branches: usize,
     /// Which branches have their series inductance drawn.
-    pub(super) branch_inductance: [bool; super::entries::BRANCHES],
+    pub(super) branch_inductance: [bool; BRANCHES],
+}
+
+impl Options {
+    /// What is chosen, before any value has its say.
+    pub(super) fn chosen(choices: &Choices) -> Self {
+        Options {
+            diode: Rectifier::chosen(choices) == Rectifier::Diode,
+            input_capacitor: choices.is("stage.input-capacitor", "fitted"),
+            load: LoadKind::chosen(choices),
+            branches: branch_count(choices),
+            branch_inductance: [false; BRANCHES],
+        }
+    }
 }
 
 /// A stage being drawn.
 #[derive(Debug)]
 pub struct StageDrawing {
     pub(super) netlist: Netlist,
+    /// Where the parts stand in the schematic.
+    pub(super) sketch: Sketch,
     options: Options,
     supply: Node,
     output: Option<(Node, Node)>,
@@ -98,15 +119,24 @@ impl StageDrawing {
         netlist.voltage_source("source", source, ground, input);
         let resistance = netlist.slot("stage.source.resistance");
         let input_current_part = netlist.resistor("source resistance", source, supply, resistance);
+        let mut sketch = Sketch::default();
+        sketch.part(source, ground, drawn_source());
+        let drawn = Drawn::new(Symbol::Resistor, "Source resistance", "Rs").value("stage.source.resistance");
+        sketch.part(source, supply, drawn.wire_at_zero());
         if options.input_capacitor {
             let inner = netlist.node("input capacitor");
             let (farads, ohms) =
                 (netlist.slot("stage.input-capacitor.capacitance"), netlist.slot("stage.input-capacitor.esr"));
             netlist.capacitor("input capacitor", supply, inner, farads);
             netlist.resistor("input capacitor ESR", inner, ground, ohms);
+            let drawn = Drawn::new(Symbol::Capacitor, "Input capacitor", "Cin")
+                .value("stage.input-capacitor.capacitance")
+                .quiet("stage.input-capacitor.esr");
+            sketch.part(supply, ground, drawn);
         }
         StageDrawing {
             netlist,
+            sketch,
             options,
             supply,
             output: None,
@@ -138,16 +168,26 @@ impl StageDrawing {
     pub fn switch(&mut self, from: Node, to: Node) {
         let ohms = self.netlist.slot("stage.switch.resistance");
         self.switch = Some(self.netlist.switch(SWITCH, from, to, ohms));
+        let drawn = Drawn::new(Symbol::Switch, "Switch", "S")
+            .value("stage.switch.resistance")
+            .quiet("stage.switching-frequency");
+        // Current flows from `from` to `to`, so the body of a transistor points the other way.
+        self.sketch.part(to, from, drawn);
     }
 
     /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
     pub fn rectifier(&mut self, anode: Node, cathode: Node) {
-        let part = if self.options.synchronous {
-            let ohms = self.netlist.slot("stage.synchronous.resistance");
-            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
-        } else {
+        let part = if self.options.diode {
             let ohms = self.netlist.slot("stage.diode.resistance");
+            let drawn =
+                Drawn::new(Symbol::Diode, "Diode", "D").value("stage.diode.drop").quiet("stage.diode.resistance");
+            self.sketch.part(anode, cathode, drawn);
             self.netlist.diode(RECTIFIER, anode, cathode, ohms, self.drop)
+        } else {
+            let ohms = self.netlist.slot("stage.synchronous.resistance");
+            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", "SR").value("stage.synchronous.resistance");
+            self.sketch.part(anode, cathode, drawn);
+            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
         };
         self.rectifier = Some(part);
     }
@@ -160,6 +200,10 @@ impl StageDrawing {
         let part = self.netlist.inductor("inductor", from, inner, henries);
         self.inductors.push(part);
         self.netlist.resistor("winding", inner, to, ohms);
+        let drawn = Drawn::new(Symbol::Inductor, "Inductor", "L")
+            .value("stage.inductor.inductance")
+            .quiet("stage.inductor.resistance");
+        self.sketch.part(from, to, drawn);
     }
 
     /// Output bank and load between the output's terminals.
@@ -168,8 +212,10 @@ impl StageDrawing {
         for k in 0..self.options.branches {
             let part = draw_branch(&mut self.netlist, k, (plus, minus), self.options.branch_inductance[k]);
             self.branches.push(part);
+            self.sketch.part(plus, minus, drawn_branch(k));
         }
-        if self.options.load_resistor {
+        self.sketch.part(plus, minus, drawn_load(self.options.load));
+        if self.options.load != LoadKind::Current {
             let ohms = self.netlist.slot("load resistance");
             self.netlist.resistor("load", plus, minus, ohms);
         }
@@ -197,6 +243,48 @@ impl StageDrawing {
         };
         Some((self.netlist, rows))
     }
+}
+
+/// The stage as its schematic shows it under these choices, all parts chosen in it whatever their values; none for an unknown
+/// topology.
+pub fn sketch(choices: &Choices) -> Option<Sketch> {
+    let topology = super::registry::find(choices.get("stage.topology").unwrap_or("boost"))?;
+    let mut drawing = StageDrawing::new(Options::chosen(choices));
+    (topology.draw)(&mut drawing);
+    Some(drawing.sketch)
+}
+
+fn drawn_source() -> Drawn {
+    let paths = ["stage.input.least", "stage.input.greatest"];
+    Drawn::new(Symbol::VoltageSource, "Input", "Vin").value("stage.input.nominal").also(&paths)
+}
+
+/// One branch of the bank: one symbol for all its capacitors, with the ESR of one below.
+fn drawn_branch(k: usize) -> Drawn {
+    let path = |what: &str| format!("stage.bank.{}.{what}", k + 1);
+    let (each, count) = (path("capacitance"), path("count"));
+    let value = Shows::Count { count: count.clone(), each: each.clone() };
+    Drawn::new(Symbol::Capacitor, format!("Output capacitor {}", k + 1), format!("C{}", k + 1))
+        .shows(value, &[&each])
+        .quiet(&path("esr"))
+        .also(&[&path("remaining"), &count, &path("esl")])
+}
+
+fn drawn_load(load: LoadKind) -> Drawn {
+    let (symbol, name, designator) = match load {
+        LoadKind::Resistor => (Symbol::Resistor, "Load resistor", "R"),
+        LoadKind::Current => (Symbol::CurrentSource, "Load current", "I"),
+        LoadKind::Power => (Symbol::CurrentSource, "Constant-power load", "P"),
+    };
+    let (amperes, volts) = ("stage.load.nominal", "stage.output.voltage");
+    let drawn = Drawn::new(symbol, name, designator);
+    let drawn = match load {
+        LoadKind::Resistor => drawn
+            .shows(Shows::Ratio { over: volts.to_owned(), under: amperes.to_owned(), unit: Unit::Ohm }, &[])
+            .quiet(amperes),
+        LoadKind::Current | LoadKind::Power => drawn.value(amperes),
+    };
+    drawn.also(&["stage.load.least", "stage.load.greatest", "stage.load", volts])
 }
 
 /// The load current's input was the second to be declared.

@@ -1,5 +1,6 @@
 //! The table of entries of the power stage.
 
+use super::stage::Rectifier;
 use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 
 /// Largest number of unlike branches in an output bank.
@@ -239,6 +240,11 @@ pub static CHOICES: &[Choice] = &[
                 name: "Synchronous switch",
                 help: "Conducts whenever the controlled switch does not: forced continuous conduction.",
             },
+            ChoiceOption {
+                key: "emulated",
+                name: "Synchronous switch that emulates a diode",
+                help: "Opens when its current reaches zero, so light loads run in discontinuous conduction.",
+            },
         ],
         default: "diode",
         help: "What conducts while the controlled switch is open.",
@@ -296,8 +302,8 @@ pub fn applies(path: &str, choices: &Choices) -> bool {
         "stage.input-capacitor.capacitance" | "stage.input-capacitor.esr" => {
             choices.is("stage.input-capacitor", "fitted")
         }
-        "stage.diode.drop" | "stage.diode.resistance" => !choices.is("stage.rectifier", "synchronous"),
-        "stage.synchronous.resistance" => choices.is("stage.rectifier", "synchronous"),
+        "stage.diode.drop" | "stage.diode.resistance" => Rectifier::chosen(choices) == Rectifier::Diode,
+        "stage.synchronous.resistance" => Rectifier::chosen(choices) != Rectifier::Diode,
         _ => match path.strip_prefix("stage.bank.") {
             Some(rest) => {
                 let number = rest.split('.').next().and_then(|n| n.parse::<usize>().ok()).unwrap_or(0);

@@ -6,22 +6,29 @@
 
 mod averaged;
 mod bank;
+mod cell;
 mod drawing;
 mod entries;
 mod landmark;
 mod operating_point;
+mod pulse;
+mod pulse_point;
+#[cfg(test)]
+mod pulse_tests;
 mod registry;
+pub mod signals;
 mod stage;
 #[cfg(test)]
 mod tests;
 mod topologies;
+mod waves;
 
 pub use averaged::AveragedModel;
 pub use bank::{BankInductance, Branch};
 pub use drawing::StageDrawing;
-pub use drawing::{Reach, Topology};
+pub use drawing::{Reach, Topology, sketch};
 pub use entries::{CHOICES, ENTRIES, applies};
 pub use landmark::{Landmark, Textbook};
-pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint};
+pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};
-pub use stage::{LoadKind, OutOfReach, Stage, StageCondition};
+pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};

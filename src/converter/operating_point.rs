@@ -1,12 +1,15 @@
 //! The operating point: the duty ratio that gives the wanted output with all losses, and the currents that follow.
 //!
-//! *Method*: the averaged state equations A(d)·x + B(d)·u = 0, A(d) = d·Aon + (1−d)·Aoff, are solved for the duty
+//! *Method*: in continuous conduction the averaged state equations A(d)·x + B(d)·u = 0, A(d) = d·Aon + (1−d)·Aoff, are solved for the duty
 //! ratio by scanning from zero for the first bracket and refining with safeguarded Newton steps, so that of two
 //! solutions the one below the peak of the conversion curve is found. Ripple is that of straight-line segments.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976.
 
 use super::drawing::Rows;
+use super::pulse::Pulse;
+use super::pulse_point::Found;
 use super::stage::{Intervals, OutOfReach, Stage, StageCondition};
+use super::waves::{ALWAYS, RECTIFIER, SWITCH, Waves};
 use crate::circuit::{CircuitError, StateEquations};
 use nalgebra::{DMatrix, DVector};
 
@@ -17,7 +20,7 @@ pub enum Conduction {
     Continuous,
     /// A synchronous rectifier conducts throughout, reverse current included.
     ForcedContinuous,
-    /// A diode blocks and the current rests at zero for part of the period.
+    /// The rectifier blocks and the current rests at zero for part of the period.
     Discontinuous,
 }
 
@@ -56,6 +59,17 @@ pub struct InductorFigures {
     pub current: CurrentFigures,
 }
 
+/// The switched current over one period: the one that stops when switch and rectifier block.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct SwitchedCurrent {
+    /// Average over the period [A].
+    pub average: f64,
+    /// Greatest value, as the switch opens [A].
+    pub peak: f64,
+    /// Least value, as the switch closes [A]; zero where it rests.
+    pub valley: f64,
+}
+
 /// A conduction loss.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Loss {
@@ -80,6 +94,14 @@ pub struct OperatingPoint {
     pub load_current: f64,
     /// Average current drawn from the source [A].
     pub input_current: f64,
+    /// The current that switch and rectifier carry in turn: the inductor's, or the sum of both in a stage of two.
+    pub switched_current: SwitchedCurrent,
+    /// Slope of the switched current while the switch conducts [A/s].
+    pub on_slope: f64,
+    /// Slope of the switched current while the rectifier conducts, negative [A/s].
+    pub off_slope: f64,
+    /// Fraction of the period in which the rectifier conducts, where that is not all the rest of it.
+    pub second_duty: Option<f64>,
     /// The inductors.
     pub inductors: Vec<InductorFigures>,
     /// The controlled switch.
@@ -97,9 +119,9 @@ pub struct OperatingPoint {
 }
 
 /// The averaged steady state at one duty ratio.
-struct Steady {
-    x: DVector<f64>,
-    output: f64,
+pub(super) struct Steady {
+    pub(super) x: DVector<f64>,
+    pub(super) output: f64,
     /// Slope of the output over the duty ratio [V].
     slope: f64,
 }
@@ -110,7 +132,7 @@ impl Intervals {
         part(&self.on) * duty + part(&self.off) * (1.0 - duty)
     }
 
-    fn steady(&self, duty: f64, row: usize) -> Option<Steady> {
+    pub(super) fn steady(&self, duty: f64, row: usize) -> Option<Steady> {
         let lu = self.mix(duty, |e| &e.a).lu();
         let x = lu.solve(&-(self.mix(duty, |e| &e.b) * &self.inputs))?;
         let push = (&self.on.a - &self.off.a) * &x + (&self.on.b - &self.off.b) * &self.inputs;
@@ -125,7 +147,7 @@ impl Intervals {
     }
 
     /// The duty ratio below the conversion curve's peak that gives `target` at output `row`, and its steady state.
-    fn solve_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
+    pub(super) fn solve_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
         let mut below = (0.0, f64::NEG_INFINITY);
         let mut best = (0.0, f64::NEG_INFINITY);
         for k in 0..=SCAN {
@@ -209,22 +231,39 @@ pub(super) struct Solution {
     pub(super) intervals: Intervals,
     pub(super) duty: f64,
     pub(super) x: DVector<f64>,
+    /// The switched current's pulse in discontinuous conduction.
+    pub(super) pulse: Option<Pulse>,
 }
 
 impl Stage {
-    /// Solves the duty ratio at a condition.
+    /// Solves the duty ratio at a condition, in whichever conduction mode holds there.
     pub(super) fn solve(&self, condition: &StageCondition) -> Result<Solution, NoOperatingPoint> {
+        let solution = self.solve_continuous(condition)?;
+        let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
+        if !self.rectifier.blocks() || current.valley >= 0.0 {
+            return Ok(solution);
+        }
+        let Solution { intervals, duty, x, .. } = solution;
+        let start = Found { duty, x, pulse: None };
+        let found = intervals
+            .solve_pulse(&start, self.switching_frequency.recip(), condition.output_voltage, self.rows.output_voltage)
+            .map_err(NoOperatingPoint::OutOfReach)?;
+        Ok(Solution::from_found(intervals, found))
+    }
+
+    /// Solves the duty ratio as if the rectifier let current flow back.
+    fn solve_continuous(&self, condition: &StageCondition) -> Result<Solution, NoOperatingPoint> {
         let intervals = self.intervals(condition).map_err(NoOperatingPoint::Circuit)?;
         let (duty, x) = intervals
             .solve_duty(condition.output_voltage, self.rows.output_voltage)
             .map_err(NoOperatingPoint::OutOfReach)?;
-        Ok(Solution { intervals, duty, x })
+        Ok(Solution { intervals, duty, x, pulse: None })
     }
 
     /// The averaged state at a duty ratio that is known already.
     pub(super) fn solution_at(&self, intervals: Intervals, duty: f64) -> Option<Solution> {
         let x = intervals.steady(duty, self.rows.output_voltage)?.x;
-        Some(Solution { intervals, duty, x })
+        Some(Solution { intervals, duty, x, pulse: None })
     }
 
     /// Output voltage at a given duty ratio in continuous conduction [V]; none where the averaged equations are singular.
@@ -240,24 +279,24 @@ impl Stage {
         let inductors: Vec<InductorFigures> = rows
             .inductor_currents
             .iter()
-            .map(|row| InductorFigures { name: "inductor", current: waves.figures(&[*row], (true, true)) })
+            .map(|row| InductorFigures { name: "inductor", current: waves.figures(&[*row], ALWAYS) })
             .collect();
-        let switch = waves.figures(&[rows.switch_current], (true, false));
-        let rectifier = waves.figures(&[rows.rectifier_current], (false, true));
-        let bank = waves.figures(&rows.branch_currents, (true, true));
-        let input = waves.figures(&[rows.input_current], (true, true));
-        let least = inductors.iter().map(|i| i.current.least).fold(f64::INFINITY, f64::min);
-        let conduction = match (self.synchronous, least > 0.0) {
-            (true, _) => Conduction::ForcedContinuous,
-            (false, true) => Conduction::Continuous,
-            (false, false) => Conduction::Discontinuous,
+        let switch = waves.figures(&[rows.switch_current], SWITCH);
+        let rectifier = waves.figures(&[rows.rectifier_current], RECTIFIER);
+        let bank = waves.figures(&rows.branch_currents, ALWAYS);
+        let input = waves.figures(&[rows.input_current], ALWAYS);
+        let (switched_current, on_slope, off_slope) = waves.switched_current();
+        let conduction = match &solution.pulse {
+            Some(_) => Conduction::Discontinuous,
+            None if self.rectifier.blocks() => Conduction::Continuous,
+            None => Conduction::ForcedContinuous,
         };
         let winding: f64 = inductors.iter().map(|i| i.current.rms.powi(2)).sum::<f64>() * self.resistances.winding;
         let branches: f64 = rows
             .branch_currents
             .iter()
             .zip(&self.bank)
-            .map(|(row, branch)| waves.figures(&[*row], (true, true)).rms.powi(2) * branch.esr)
+            .map(|(row, branch)| waves.figures(&[*row], ALWAYS).rms.powi(2) * branch.esr)
             .sum();
         let rectifier_loss = self.resistances.rectifier * rectifier.rms.powi(2) + self.diode_drop * rectifier.average;
         let mut conduction_losses = vec![
@@ -275,6 +314,10 @@ impl Stage {
             input_voltage: condition.input_voltage,
             load_current: condition.load_current,
             input_current: input.average,
+            switched_current,
+            on_slope,
+            off_slope,
+            second_duty: solution.pulse.as_ref().map(|pulse| pulse.second_duty),
             inductors,
             switch,
             rectifier,
@@ -288,16 +331,16 @@ impl Stage {
     /// Load current at which the least inductor current reaches zero [A]; none for a synchronous rectifier, or where
     /// no load reaches it.
     pub fn boundary_load(&self, condition: &StageCondition) -> Option<f64> {
-        if self.synchronous {
+        if !self.rectifier.blocks() {
             return None;
         }
         let mut load = condition.load_current;
         // The average current is nearly proportional to the load and the ripple nearly independent of it.
         for _ in 0..50 {
             let at = StageCondition { load_current: load, ..*condition };
-            let solution = self.solve(&at).ok()?;
-            let current = self.figures(&at, &solution).inductors.first()?.current;
-            let next = load * (current.ripple / 2.0) / current.average;
+            let solution = self.solve_continuous(&at).ok()?;
+            let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
+            let next = load * (current.average - current.valley) / current.average;
             if !(next.is_finite() && next > 0.0) {
                 return None;
             }
@@ -307,63 +350,5 @@ impl Stage {
             load = next;
         }
         None
-    }
-}
-
-/// Straight-line waveforms over one period around the averaged state.
-struct Waves<'a> {
-    solution: &'a Solution,
-    rates: [DVector<f64>; 2],
-    durations: [f64; 2],
-    period: f64,
-}
-
-impl<'a> Waves<'a> {
-    fn new(solution: &'a Solution, switching_frequency: f64) -> Self {
-        let (i, x) = (&solution.intervals, &solution.x);
-        let period = switching_frequency.recip();
-        Waves {
-            solution,
-            rates: [&i.on.a * x + &i.on.b * &i.inputs, &i.off.a * x + &i.off.b * &i.inputs],
-            durations: [solution.duty * period, (1.0 - solution.duty) * period],
-            period,
-        }
-    }
-
-    /// Middle value and swing of the sum of output rows in one interval.
-    fn segment(&self, rows: &[usize], interval: usize) -> (f64, f64) {
-        let equations = [&self.solution.intervals.on, &self.solution.intervals.off][interval];
-        rows.iter().fold((0.0, 0.0), |(middle, swing), &row| {
-            let c = equations.c.row(row);
-            let value = (c * &self.solution.x)[0] + (equations.d.row(row) * &self.solution.intervals.inputs)[0];
-            (middle + value, swing + (c * &self.rates[interval])[0] * self.durations[interval])
-        })
-    }
-
-    /// Figures of a current that flows in the intervals marked.
-    fn figures(&self, rows: &[usize], flows: (bool, bool)) -> CurrentFigures {
-        let mut figures = CurrentFigures { peak: f64::NEG_INFINITY, least: f64::INFINITY, ..CurrentFigures::default() };
-        let mut square = 0.0;
-        for (interval, flows) in [flows.0, flows.1].into_iter().enumerate() {
-            let share = self.durations[interval] / self.period;
-            let (middle, swing) = if flows { self.segment(rows, interval) } else { continue };
-            figures.average += share * middle;
-            square += share * (middle * middle + swing * swing / 12.0);
-            figures.peak = figures.peak.max(middle + swing.abs() / 2.0);
-            figures.least = figures.least.min(middle - swing.abs() / 2.0);
-            figures.ripple = figures.ripple.max(swing.abs());
-        }
-        if !(flows.0 && flows.1) {
-            figures.least = figures.least.min(0.0);
-        }
-        figures.rms = square.sqrt();
-        figures
-    }
-
-    /// Jump of an output where the switch opens, the states holding still.
-    fn step(&self, row: usize) -> f64 {
-        let (on, on_swing) = self.segment(&[row], 0);
-        let (off, off_swing) = self.segment(&[row], 1);
-        ((off - off_swing / 2.0) - (on + on_swing / 2.0)).abs()
     }
 }

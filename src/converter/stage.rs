@@ -1,15 +1,17 @@
 //! A power stage with usable values: its netlist drawn and compiled, ready for any operating condition.
 
 use super::bank::{Branch, branch_value};
+use super::cell::SwitchedCell;
 use super::drawing::{
     DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, RECTIFIER, Rows, SWITCH, StageDrawing, Topology,
 };
 use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
 use super::registry::find;
+use super::signals::INPUTS;
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
 use crate::finding::Finding;
 use crate::quantity::{Choices, Values};
-use nalgebra::DVector;
+use nalgebra::{DMatrix, DVector};
 
 /// How the load current answers the output voltage.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -20,6 +22,52 @@ pub enum LoadKind {
     Current,
     /// Inverse to the voltage; linear models take the tangent.
     Power,
+}
+
+impl LoadKind {
+    /// The kind chosen.
+    pub(super) fn chosen(choices: &Choices) -> Self {
+        match choices.get("stage.load") {
+            Some("current") => LoadKind::Current,
+            Some("power") => LoadKind::Power,
+            _ => LoadKind::Resistor,
+        }
+    }
+}
+
+/// What conducts while the controlled switch is open.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Rectifier {
+    /// A diode: a drop, a resistance, and no reverse current.
+    Diode,
+    /// A switch that conducts whenever the controlled one does not, reverse current included.
+    Synchronous,
+    /// A switch that opens when its current reaches zero: a resistance, and no reverse current.
+    Emulated,
+}
+
+impl Rectifier {
+    /// The rectifier chosen.
+    pub(super) fn chosen(choices: &Choices) -> Self {
+        match choices.get("stage.rectifier") {
+            Some("synchronous") => Rectifier::Synchronous,
+            Some("emulated") => Rectifier::Emulated,
+            _ => Rectifier::Diode,
+        }
+    }
+
+    /// Whether it stops reverse current, so that light loads run in discontinuous conduction.
+    pub fn blocks(self) -> bool {
+        self != Rectifier::Synchronous
+    }
+
+    /// Path of the entry that holds its resistance.
+    pub(super) fn resistance_path(self) -> &'static str {
+        match self {
+            Rectifier::Diode => "stage.diode.resistance",
+            Rectifier::Synchronous | Rectifier::Emulated => "stage.synchronous.resistance",
+        }
+    }
 }
 
 /// One operating condition of a stage.
@@ -74,8 +122,8 @@ pub struct Stage {
     pub(super) resistances: Resistances,
     /// How the load current answers the output voltage.
     pub load: LoadKind,
-    /// Whether the rectifier is a synchronous switch: forced continuous conduction.
-    pub synchronous: bool,
+    /// What conducts while the controlled switch is open.
+    pub rectifier: Rectifier,
     /// The output bank.
     pub bank: Vec<Branch>,
 }
@@ -89,11 +137,13 @@ pub(super) struct Resistances {
     pub(super) source: f64,
 }
 
-/// The state equations of the two switching intervals at one condition.
+/// The state equations of the switching intervals at one condition.
 #[derive(Clone, Debug)]
 pub(super) struct Intervals {
     pub(super) on: StateEquations,
     pub(super) off: StateEquations,
+    /// Both open, and the current that stops then; of a synchronous rectifier too, for which it names the switched current.
+    pub(super) cell: SwitchedCell,
     /// Steady inputs: input voltage, load current, diode drop.
     pub(super) inputs: DVector<f64>,
 }
@@ -115,27 +165,18 @@ impl Stage {
         };
         let input_voltages = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.input.{level}")));
         let load_currents = ["least", "nominal", "greatest"].map(|level| get(&format!("stage.load.{level}")));
-        let synchronous = choices.is("stage.rectifier", "synchronous");
+        let rectifier = Rectifier::chosen(choices);
         let bank: Vec<Branch> = (1..=branch_count(choices)).map(|k| entered_branch(k, &get)).collect();
-        let load = match choices.get("stage.load") {
-            Some("current") => LoadKind::Current,
-            Some("power") => LoadKind::Power,
-            _ => LoadKind::Resistor,
-        };
+        let load = LoadKind::chosen(choices);
         let resistances = Resistances {
             winding: get("stage.inductor.resistance"),
             switch: get("stage.switch.resistance"),
-            rectifier: get(if synchronous { "stage.synchronous.resistance" } else { "stage.diode.resistance" }),
+            rectifier: get(rectifier.resistance_path()),
             source: get("stage.source.resistance"),
         };
-        let options = Options {
-            synchronous,
-            // Across an ideal source a capacitor changes nothing but the source's own current.
-            input_capacitor: choices.is("stage.input-capacitor", "fitted") && resistances.source > 0.0,
-            load_resistor: load != LoadKind::Current,
-            branches: bank.len(),
-            branch_inductance: [false; BRANCHES],
-        };
+        let mut options = Options::chosen(choices);
+        // Across an ideal source a capacitor changes nothing but the source's own current.
+        options.input_capacitor &= resistances.source > 0.0;
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
             "load resistance" => output / load_currents[1],
@@ -167,7 +208,7 @@ impl Stage {
             inductance: get("stage.inductor.inductance"),
             resistances,
             load,
-            synchronous,
+            rectifier,
             bank,
         })
     }
@@ -187,7 +228,7 @@ impl Stage {
         self.with_inductance.is_some()
     }
 
-    /// State equations of both intervals and the steady inputs at a condition, for operating point and waveforms.
+    /// State equations of the intervals and the steady inputs at a condition, for operating point and waveforms.
     ///
     /// # Errors
     /// As netlist extraction.
@@ -224,10 +265,21 @@ impl Stage {
         if let Some(slot) = drawn.load_slot {
             values[slot] = load_slot_value;
         }
-        let on = drawn.on.equations(&values)?.independent().0;
-        let off = drawn.off.equations(&values)?.independent().0;
-        Ok(Intervals { on, off, inputs })
+        let on = drawn.on.equations(&values)?;
+        let off = drawn.off.equations(&values)?.over_states_of(&on);
+        let idle = drawn.idle.equations(&values)?.over_states_of(&on);
+        let cell = SwitchedCell::new(idle, &off, drawn.rows.rectifier_current)?;
+        Ok(Intervals { on: on.independent().0, off, cell, inputs })
     }
+}
+
+/// Columns of an averaged model's inputs: the duty ratio's, and the two of the netlist's that it keeps.
+pub(super) fn with_duty(duty: &DVector<f64>, netlist: &DMatrix<f64>) -> DMatrix<f64> {
+    DMatrix::from_fn(netlist.nrows(), INPUTS.len(), |r, k| match k {
+        0 => duty[r],
+        1 => netlist[(r, INPUT_VOLTAGE)],
+        _ => netlist[(r, LOAD_CURRENT)],
+    })
 }
 
 /// A netlist drawn and compiled for both intervals.
@@ -235,6 +287,7 @@ impl Stage {
 struct Drawn {
     on: Compiled,
     off: Compiled,
+    idle: Compiled,
     rows: Rows,
     values: Vec<f64>,
     load_slot: Option<usize>,
@@ -250,7 +303,8 @@ impl Drawn {
         let load_slot = netlist.slot_names().iter().position(|name| name == "load resistance");
         let on = Compiled::new(&netlist, |part| part == SWITCH, &values)?;
         let off = Compiled::new(&netlist, |part| part == RECTIFIER, &values)?;
-        Ok(Drawn { on, off, rows, values, load_slot })
+        let idle = Compiled::new(&netlist, |_| false, &values)?;
+        Ok(Drawn { on, off, idle, rows, values, load_slot })
     }
 
     /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.

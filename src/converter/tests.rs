@@ -188,3 +188,38 @@ fn load_kinds_share_the_operating_point() {
     assert!(damping[1].abs() < 1e-6 * expected);
     assert!((damping[2] - expected).abs() < 1e-6 * expected);
 }
+
+/// Slopes of the switched current in lossless stages, and how they answer the voltages (Erickson & Maksimovic 3rd ed.,
+/// ch. 2; memory): buck (Vg − V)/L and −V/L, boost Vg/L and (Vg − V)/L, buck-boost Vg/L and −V/L.
+#[test]
+fn slopes_of_the_switched_current() {
+    let (vg, v, l, load) = (12.0, [5.0, 24.0, 15.0], 10e-6, 2.0);
+    for (topology, v) in registry().iter().zip(v) {
+        let entries =
+            [("stage.output.voltage", v), ("stage.inductor.inductance", l), ("stage.bank.1.capacitance", 1e-3)];
+        let stage = stage(topology.key, &entries, &[("stage.rectifier", "synchronous")]);
+        let condition = StageCondition { input_voltage: vg, load_current: load, output_voltage: v };
+        let model = stage.averaged(&condition).unwrap();
+        let (on, off, on_by_vin, on_by_vout) = match topology.key {
+            "buck" => ((vg - v) / l, -v / l, 1.0, -1.0),
+            "boost" => (vg / l, (vg - v) / l, 1.0, 0.0),
+            _ => (vg / l, -v / l, 1.0, 0.0),
+        };
+        let point = &model.operating_point;
+        assert!((point.on_slope / on - 1.0).abs() < 1e-9, "{}: {}", topology.key, point.on_slope);
+        assert!((point.off_slope / off - 1.0).abs() < 1e-9, "{}: {}", topology.key, point.off_slope);
+        let half = on * point.duty / stage.switching_frequency / 2.0;
+        let current = point.switched_current;
+        assert!((current.peak - current.average - half).abs() < 1e-9 * half);
+        assert!((current.average - current.valley - half).abs() < 1e-9 * half);
+        let row = model.stage.output(signals::ON_SLOPE).unwrap();
+        let voltage = model.stage.c.row(model.stage.output(signals::OUTPUT_VOLTAGE).unwrap()).transpose().imax();
+        assert!((model.stage.d[(row, 1)] * l - on_by_vin).abs() < 1e-9);
+        assert!((model.stage.c[(row, voltage)] * l - on_by_vout).abs() < 1e-9);
+        assert!(model.stage.d[(row, 0)].abs() < f64::MIN_POSITIVE);
+        // The duty ratio turns the switched current by the slope difference.
+        let switched = model.stage.c.row(model.stage.output(signals::SWITCHED_CURRENT).unwrap());
+        let turn = (switched * model.stage.b.column(0))[0];
+        assert!((turn / (on - off) - 1.0).abs() < 1e-9, "{}: {turn}", topology.key);
+    }
+}

@@ -55,6 +55,7 @@ pub use interconnect::{Port, Wire};
 pub use margins::{Crossover, Margins, PhaseCrossover, margins};
 pub use modes::{Modes, StepMetrics, settle};
 pub use response::{FactorKind, FactorPhase, FactoredResponse, FrequencyResponse, LogPoint};
+pub(crate) use root::bracketed_root;
 pub use sampled::SampledResponse;
 pub use stability::{Verdict, closed_loop_verdict, closed_loop_verdict_knowing, encirclement_count};
 pub use state_space::StateSpace;

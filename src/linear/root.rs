@@ -8,7 +8,7 @@ const STEPS_AT_MOST: usize = 120;
 /// The values at the ends are given, since callers know them; when they have one sign the end nearer to zero is returned.
 ///
 /// Source: Anderson and Björck, BIT 13 (1973), 253 (from memory).
-pub(super) fn bracketed_root(
+pub(crate) fn bracketed_root(
     mut value: impl FnMut(f64) -> f64,
     (mut low, mut at_low): (f64, f64),
     (mut high, mut at_high): (f64, f64),

@@ -2,7 +2,7 @@
 
 use std::path::PathBuf;
 
-use eframe::egui::{self, Rect, Ui, ViewportCommand};
+use eframe::egui::{self, FocusDirection, Key, Modifiers, Rect, Ui, ViewportCommand};
 
 use super::command::{COMMANDS, Command, Row};
 use super::files::FileDialogs;
@@ -68,6 +68,11 @@ impl App {
         self.view.range_hz.unwrap_or_else(|| self.session.whole_range_hz())
     }
 
+    /// True while the review view is open.
+    pub fn reviewing(&self) -> bool {
+        self.view.review
+    }
+
     /// The message under the bar, if any.
     pub fn message(&self) -> Option<&super::view::Message> {
         self.view.message.as_ref()
@@ -97,6 +102,29 @@ impl App {
             if ctx.input_mut(|input| input.consume_shortcut(shortcut)) {
                 self.take_over_field(ctx);
                 self.asked.push(row.command.clone());
+            }
+        }
+    }
+
+    /// Keys of the review view, where nothing else wants them.
+    fn review_keys(&mut self, ctx: &egui::Context) {
+        if !self.view.review || self.view.dialog.is_some() || ctx.text_edit_focused() || egui::Popup::is_any_open(ctx) {
+            return;
+        }
+        let keys = [
+            (Key::ArrowRight, Command::StepLevels { input: 0, load: 1 }),
+            (Key::ArrowLeft, Command::StepLevels { input: 0, load: -1 }),
+            (Key::ArrowDown, Command::StepLevels { input: 1, load: 0 }),
+            (Key::ArrowUp, Command::StepLevels { input: -1, load: 0 }),
+            (Key::PageDown, Command::StepTry { forward: true }),
+            (Key::PageUp, Command::StepTry { forward: false }),
+            (Key::Escape, Command::Review),
+        ];
+        for (key, command) in keys {
+            if ctx.input_mut(|input| input.consume_key(Modifiers::NONE, key)) {
+                // The keyboard's place stays where it is: the keys go through the conditions.
+                ctx.memory_mut(|memory| memory.move_focus(FocusDirection::None));
+                self.asked.push(command);
             }
         }
     }
@@ -157,6 +185,7 @@ impl App {
 impl eframe::App for App {
     fn logic(&mut self, ctx: &egui::Context, _frame: &mut eframe::Frame) {
         self.shortcuts(ctx);
+        self.review_keys(ctx);
         self.dropped_files(ctx);
         self.guard_closing(ctx);
         self.take_file_answer();

@@ -56,9 +56,7 @@ fn menus_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.add_space(6.0);
     let undo = desk.session.history().undo_name().map(str::to_owned);
     let redo = desk.session.history().redo_name().map(str::to_owned);
-    let held = desk.session.held().is_some();
-    let hold = if held { (Command::DropHeld, "Drop held") } else { (Command::Hold, "Hold") };
-    word_ui(ui, hold.1, true, "Keep the present curves to compare with the next try.", hold.0, desk);
+    word_ui(ui, "Hold", true, "Keep the present curves to compare with the next try.", Command::Hold, desk);
     let help = redo.as_ref().map_or_else(|| "Nothing to redo.".to_owned(), |name| format!("Redo: {name}"));
     word_ui(ui, "Redo", redo.is_some(), &help, Command::Redo, desk);
     let help = undo.as_ref().map_or_else(|| "Nothing to undo.".to_owned(), |name| format!("Undo: {name}"));

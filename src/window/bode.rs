@@ -4,6 +4,7 @@ use eframe::egui::{self, Align2, Rect, Sense, Stroke, Ui, WidgetInfo, pos2, vec2
 
 use super::axis::{self, Axis};
 use super::crossover;
+use super::held::Held;
 use super::lanes;
 use super::legend;
 use super::marks;
@@ -60,7 +61,7 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             bands(&painter, &stack, desk, palette);
         }
         if let Some(held) = desk.session.held() {
-            held_curves(&painter, &stack, &held.analysis, palette);
+            held_curves(&painter, &stack, held, palette);
         }
         if let Ok(detail) = &analysis.shown {
             curves(&painter, &stack, detail, desk, palette);
@@ -70,13 +71,17 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
     cursor_line(ui, &stack, desk.view, palette);
     legend::legend_ui(ui, head, desk);
-    lanes::lanes_ui(ui, &stack, desk);
-    crossover::crossover_ui(ui, &stack, desk);
+    if !desk.view.review {
+        lanes::lanes_ui(ui, &stack, desk);
+        crossover::crossover_ui(ui, &stack, desk);
+    }
     ui.advance_cursor_after_rect(room);
 }
 
 fn lay_out(room: Rect, desk: &mut Desk<'_>) -> Stack {
-    let lanes_height = theme::LANE_HEIGHT * desk.session.lanes().len().max(1) as f32 + 6.0;
+    // A review has no lanes: there is nothing to move.
+    let lanes = if desk.view.review { 0 } else { desk.session.lanes().len().max(1) };
+    let lanes_height = theme::LANE_HEIGHT * lanes as f32 + 6.0;
     let left = room.left() + theme::GUTTER;
     let right = (room.right() - theme::RIGHT_GUTTER).max(left + 50.0);
     let rest = (room.height() - HEAD - FOOT - GAP - lanes_height - 8.0).max(120.0);
@@ -202,12 +207,12 @@ pub(super) fn of(curves: &Curves, curve: super::command::Curve) -> (&[f64], &[f6
     }
 }
 
-fn held_curves(painter: &egui::Painter, stack: &Stack, held: &Analysis, palette: &Palette) {
-    let Ok(detail) = &held.shown else { return };
-    let log_hz: Vec<f64> = detail.curves.frequencies_hz.iter().map(|frequency| frequency.log10()).collect();
+fn held_curves(painter: &egui::Painter, stack: &Stack, held: &Held, palette: &Palette) {
+    let Ok(detail) = &held.analysis.shown else { return };
+    let log_hz = &held.drawing.log_hz;
     let pen = Pen { colour: palette.held, width: theme::THIN_CURVE, style: LineStyle::Dotted };
-    stack.gain.curve(painter, &log_hz, &detail.curves.loop_db, pen);
-    stack.phase.curve(painter, &log_hz, &detail.curves.loop_deg, pen);
+    stack.gain.curve(painter, log_hz, &detail.curves.loop_db, pen);
+    stack.phase.curve(painter, log_hz, &detail.curves.loop_deg, pen);
 }
 
 /// Follows the pointer over the plots; the wheel zooms about it, with Ctrl where the column scrolls; dragging pans, a double

@@ -44,6 +44,10 @@ pub enum Pan {
 pub enum Command {
     /// Ask for a design file to open.
     Open,
+    /// Ask for what a new design needs to know.
+    NewDesign,
+    /// Make the design that the form of a new design proposes.
+    CreateDesign,
     /// Open this file.
     OpenPath(PathBuf),
     /// Open the sample design with this file name.
@@ -125,6 +129,29 @@ pub enum Command {
     NextCondition,
     /// Show the one before.
     PreviousCondition,
+    /// Show the condition this many levels of input and load higher.
+    StepLevels {
+        /// Levels of input voltage.
+        input: isize,
+        /// Levels of load.
+        load: isize,
+    },
+    /// Show a condition beside the nine.
+    WhatIf {
+        /// Input voltage [V], positive.
+        input_voltage: f64,
+        /// Load current [A], positive.
+        load_current: f64,
+    },
+    /// Open the review view, or leave it.
+    Review,
+    /// Review the held try with this number, or the present design.
+    ReviewTry(Option<usize>),
+    /// Review the next of present design and held tries, or the one before.
+    StepTry {
+        /// True for the next one.
+        forward: bool,
+    },
     /// Show or hide a curve.
     Toggle(Curve),
     /// Show or hide the band over the nine conditions.
@@ -137,7 +164,11 @@ pub enum Command {
     Pan(Pan),
     /// Keep the present curves to compare with.
     Hold,
-    /// Drop the held curves.
+    /// Draw this held try beside the present design; asked again, none.
+    CompareWith(usize),
+    /// Drop this held try.
+    DropTry(usize),
+    /// Drop all held tries.
     DropHeld,
     /// Colours of the window.
     Theme(ThemePreference),
@@ -153,6 +184,29 @@ pub enum Command {
     ToggleReadouts,
     /// Show the searchable list of commands.
     ListCommands,
+    /// Show the hint for who is new here, or close it.
+    Hint(bool),
+}
+
+impl Command {
+    /// Whether it changes the design.
+    pub(super) fn edits(&self) -> bool {
+        matches!(
+            self,
+            Command::Undo
+                | Command::Redo
+                | Command::Enter { .. }
+                | Command::Choose { .. }
+                | Command::Title(_)
+                | Command::MoveLane { .. }
+                | Command::MoveCrossover { .. }
+                | Command::ReturnLane(_)
+                | Command::Place(_)
+                | Command::Lock { .. }
+                | Command::RoundParts
+                | Command::Mend(_)
+        )
+    }
 }
 
 /// Where a command is offered.
@@ -262,7 +316,14 @@ pub(super) static COMMANDS: &[Row] = &[
         "Keep the present curves beside the next try.",
         Command::Hold,
     ),
-    row("Drop held curves", Menu::View, Some(key(CTRL_SHIFT, Key::H)), "Take the held curves away.", Command::DropHeld),
+    row("Drop held curves", Menu::View, Some(key(CTRL_SHIFT, Key::H)), "Take all held tries away.", Command::DropHeld),
+    row(
+        "Review view",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F5)),
+        "A page to read and not to change, for who reviews the design; Esc leaves it.",
+        Command::Review,
+    ),
     row(
         "Plant curve",
         Menu::View,

@@ -8,6 +8,7 @@ use eframe::egui::{
 use super::command::Command;
 use super::theme::{self, palette};
 use super::view::Desk;
+use super::what_if;
 use crate::analysis::{Analysis, Condition, ConditionResult, Level, LimitKind};
 use crate::quantity::{self, Unit};
 
@@ -16,6 +17,10 @@ pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let (input, load) = desk.session.shown();
     let text = match desk.session.analysis() {
+        Some(analysis) if analysis.condition.levels.is_none() && roomy => {
+            format!("What if: {}", analysis.condition.label)
+        }
+        Some(analysis) if analysis.condition.levels.is_none() => format!("what if {}", short(&analysis.condition)),
         Some(analysis) if roomy => format!("Shown: {}", analysis.condition.label),
         Some(analysis) => short(&analysis.condition),
         None => format!("Shown: {} input, {} load", input.word(), load.word()),
@@ -34,10 +39,17 @@ pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
         info
     });
     super::legend::focus_ring(ui, &response);
-    Popup::menu(&response).close_behavior(PopupCloseBehavior::CloseOnClick).show(|ui| {
+    Popup::menu(&response).close_behavior(PopupCloseBehavior::CloseOnClickOutside).show(|ui| {
         ui.set_width(360.0);
         ui.label(RichText::new("Press a condition to show it in full.").color(palette.weak));
+        let asked = desk.send.len();
         map_ui(ui, "chooser", desk);
+        ui.add_space(4.0);
+        ui.separator();
+        what_if::what_if_ui(ui, "chooser", desk);
+        if desk.send.len() > asked {
+            ui.close();
+        }
     });
 }
 
@@ -69,7 +81,7 @@ fn glance(ui: &Ui, at: Pos2, desk: &Desk<'_>) {
                 painter.line_segment([square.left_bottom(), square.right_top()], stroke);
             }
         }
-        if result.condition.levels == Some(desk.session.shown()) {
+        if result.condition.levels.is_some_and(|(input, load)| desk.session.shows(input, load)) {
             painter.rect_stroke(square.expand(2.0), 2.0, Stroke::new(1.0, palette.accent), StrokeKind::Inside);
         }
     }
@@ -129,7 +141,7 @@ pub(super) fn map_ui(ui: &mut Ui, salt: &str, desk: &mut Desk<'_>) {
 fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let Some((input, load)) = result.condition.levels else { return };
-    let shown = desk.session.shown() == (input, load);
+    let shown = desk.session.shows(input, load);
     let response = ui.interact(cell, ui.scope_id().with(id), Sense::click());
     let (figure, under, missed) = figures(result, desk);
     let label = format!("{} input, {} load: {figure}", input.word(), load.word());

@@ -14,6 +14,7 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
         ui.set_width(520.0);
         match &mut dialog {
+            Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),

@@ -40,7 +40,9 @@ fn finding_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
             if let Some(hint) = &finding.hint {
                 ui.label(RichText::new(sentence(hint)).font(theme::small()).color(palette.weak));
             }
-            ui.horizontal_wrapped(|ui| actions_ui(ui, finding, desk));
+            if !desk.view.review {
+                ui.horizontal_wrapped(|ui| actions_ui(ui, finding, desk));
+            }
         });
     });
 }

@@ -6,7 +6,10 @@ use eframe::egui::{self, CentralPanel, Frame, Margin, Panel, Rect, ScrollArea, S
 
 use super::theme::{self, palette};
 use super::view::Desk;
-use super::{bar, bode, conditions, findings, ledger, operating, parts, readouts, responses, stage, steps, verdict};
+use super::{
+    bar, bode, conditions, findings, ledger, operating, parts, readouts, responses, review, stage, steps, tries,
+    verdict,
+};
 
 /// Height that steps and responses take under the Bode plots, as a share of the room.
 const LOWER_SHARE: f32 = 0.29;
@@ -27,6 +30,10 @@ const FINDINGS: (f32, f32) = (0.26, 74.0);
 
 /// Draws the whole window.
 pub(super) fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    if desk.view.review {
+        review::review_ui(ui, desk);
+        return;
+    }
     let palette = palette(ui);
     let frame = |fill| Frame::new().fill(fill);
     Panel::top("bar")
@@ -98,6 +105,10 @@ fn right_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             verdict::verdict_ui(ui, desk);
             readouts::readouts_ui(ui, desk);
         });
+        if !desk.session.tries().is_empty() {
+            gap(ui);
+            tries::tries_ui(ui, desk);
+        }
         gap(ui);
         parts::parts_ui(ui, desk);
         gap(ui);

@@ -12,7 +12,7 @@ use super::session::{BadText, Session};
 use super::view::{Dialog, Message};
 use crate::analysis::Level;
 use crate::compensator::{Compensator, Series};
-use crate::design::{self, Design};
+use crate::design;
 
 /// Step of the text size, and its least and greatest.
 const SIZE: (f32, f32, f32) = (0.1, 0.8, 2.0);
@@ -21,10 +21,18 @@ impl App {
     /// Carries out one command.
     pub(super) fn perform(&mut self, command: Command, ctx: &egui::Context) {
         match command {
-            Command::OpenPath(_) | Command::OpenSample(_) | Command::Quit if self.session.unsaved() => {
+            _ if self.view.review && command.edits() => {
+                let text = "The review view is for reading. Press Esc to go back to the design.".to_owned();
+                self.view.message = Some(Message { text, failed: false });
+            }
+            Command::OpenPath(_) | Command::OpenSample(_) | Command::CreateDesign | Command::Quit
+                if self.session.unsaved() =>
+            {
                 self.view.dialog = Some(Dialog::Unsaved(Box::new(command)));
             }
             Command::Open
+            | Command::NewDesign
+            | Command::CreateDesign
             | Command::OpenPath(_)
             | Command::OpenSample(_)
             | Command::Save
@@ -35,21 +43,12 @@ impl App {
             | Command::DiscardAndGoOn
             | Command::SaveAndGoOn
             | Command::Dismiss => self.perform_on_files(command, ctx),
-            Command::Undo
-            | Command::Redo
-            | Command::Enter { .. }
-            | Command::Choose { .. }
-            | Command::Title(_)
-            | Command::MoveLane { .. }
-            | Command::MoveCrossover { .. }
-            | Command::Lock { .. }
-            | Command::RoundParts
-            | Command::Mend(_) => {
-                self.view.goal.said = None;
-                self.perform_on_design(command);
-            }
             Command::ReturnLane(key) => self.return_lane(key),
             Command::Place(method) => self.place(method),
+            edit if edit.edits() => {
+                self.view.goal.said = None;
+                self.perform_on_design(edit);
+            }
             other => self.perform_on_view(&other, ctx),
         }
     }
@@ -59,6 +58,16 @@ impl App {
             Command::Open => {
                 self.view.message = None;
                 self.view.dialog = Some(Dialog::Open { path: String::new() });
+            }
+            Command::NewDesign => {
+                self.view.message = None;
+                self.view.dialog = Some(Dialog::New);
+            }
+            Command::CreateDesign => {
+                if let Some(design) = self.view.new_design.design() {
+                    self.start(Session::created(design));
+                    self.view.review = false;
+                }
             }
             Command::OpenPath(path) => self.open(&path),
             Command::OpenSample(file) => self.open_sample(file),
@@ -112,7 +121,7 @@ impl App {
     fn open(&mut self, path: &Path) {
         match design::file::load(path) {
             Ok(design) => {
-                self.start(design, Some(path.to_path_buf()));
+                self.start(Session::new(design, Some(path.to_path_buf())));
                 self.view.message = None;
             }
             Err(error) => {
@@ -126,13 +135,13 @@ impl App {
     fn open_sample(&mut self, file: &str) {
         let Some(sample) = design::sample::all().iter().find(|sample| sample.file == file) else { return };
         match sample.design() {
-            Ok(design) => self.start(design, None),
+            Ok(design) => self.start(Session::new(design, None)),
             Err(error) => self.fail(error.to_string()),
         }
     }
 
-    fn start(&mut self, design: Design, path: Option<PathBuf>) {
-        self.session = Session::new(design, path);
+    fn start(&mut self, session: Session) {
+        self.session = session;
         self.view.forget_failure();
         self.view.dialog = None;
         self.view.range_hz = None;
@@ -234,6 +243,17 @@ impl App {
         let view = &mut self.view;
         match command {
             Command::Show(input, load) => self.session.show(*input, *load),
+            Command::StepLevels { input, load } => self.session.step_levels(*input, *load),
+            Command::WhatIf { input_voltage, load_current } => {
+                self.session.show_what_if(*input_voltage, *load_current);
+            }
+            Command::Review => {
+                view.review = !view.review;
+                self.session.review(None);
+                ctx.memory_mut(egui::Memory::stop_text_input);
+            }
+            Command::ReviewTry(number) => self.session.review(*number),
+            Command::StepTry { forward } => self.session.step_try(*forward),
             Command::NextCondition => self.session.step_condition(1),
             Command::PreviousCondition => self.session.step_condition(8),
             Command::Toggle(curve) => view.toggle(*curve),
@@ -243,7 +263,10 @@ impl App {
             Command::Zoom(zoom) => self.zoom(*zoom),
             Command::Pan(pan) => self.pan(*pan),
             Command::Hold => self.session.hold(),
+            Command::CompareWith(number) => self.session.compare_with(*number),
+            Command::DropTry(number) => self.session.drop_try(*number),
             Command::DropHeld => self.session.drop_held(),
+            Command::Hint(shown) => view.hint = *shown,
             Command::Theme(theme) => {
                 view.theme = *theme;
                 ctx.set_theme(*theme);

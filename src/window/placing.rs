@@ -6,7 +6,7 @@
 use super::findings::lower_first;
 use super::history::Gesture;
 use super::session::Session;
-use crate::analysis::{self, Goal, Shown};
+use crate::analysis::{self, Goal};
 use crate::compensator::{Compensator, Corners, Lane, LaneKind, Placement};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
@@ -166,7 +166,7 @@ impl Session {
         let Ok(checked) = self.design().check() else { return };
         let present = self.headline().crossover.map_or(crossover_hz, |(frequency_hz, _)| frequency_hz);
         let goal = Goal { crossover_hz: present, phase_margin_deg: 60.0 };
-        match analysis::place_by_rules(&checked, &self.design().locks, self.request(), goal) {
+        match analysis::place_by_rules(&checked, &self.design().locks, self.request().shown, goal) {
             Ok(ruled) => {
                 let place = ruled.placement.lanes.iter().find(|lane| lane.key == key).map(|lane| lane.aim_hz);
                 let reason = ruled.reasons.iter().find(|reason| reason.lane == key).map(|reason| reason.text);
@@ -206,16 +206,11 @@ impl Session {
     fn placement(&self, checked: &CheckedDesign, method: Method, goal: Goal) -> Result<Placement, Box<Finding>> {
         let locks = &self.design().locks;
         match method {
-            Method::KFactor => analysis::place_by_k_factor(checked, locks, self.request(), goal),
+            Method::KFactor => analysis::place_by_k_factor(checked, locks, self.request().shown, goal),
             Method::Rules => {
-                analysis::place_by_rules(checked, locks, self.request(), goal).map(|ruled| ruled.placement)
+                analysis::place_by_rules(checked, locks, self.request().shown, goal).map(|ruled| ruled.placement)
             }
         }
-    }
-
-    fn request(&self) -> Shown {
-        let (input, load) = self.shown();
-        Shown::Levels(input, load)
     }
 
     /// What to aim at while nobody says; of the last usable design.

@@ -1,6 +1,6 @@
 //! Read-outs: numbers decisions are made on, each with its worst condition, its requirement and the distance to it.
 
-use eframe::egui::{Align2, Color32, Painter, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
+use eframe::egui::{Align2, Color32, FontId, Painter, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 
 use super::command::Command;
 use super::conditions;
@@ -12,6 +12,8 @@ use crate::quantity::{self, Unit};
 
 /// Height of a read-out with its requirement [points].
 const TALL: f32 = 46.0;
+/// The same on a page for reading [points].
+const PAGE: f32 = 58.0;
 /// Height of a read-out in a line [points].
 const SHORT: f32 = 19.0;
 /// Where the shown values of the short rows end, as a share of the width.
@@ -22,18 +24,28 @@ const LARGE: [&str; 4] = ["crossover", "phase-margin", "gain-margin", "modulus-m
 /// Draws all read-outs.
 pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(analysis) = desk.session.analysis() else { return };
-    let (large, small): (Vec<_>, Vec<_>) = analysis
+    let (large, small) = sorted(analysis);
+    let look = Look::column();
+    for readout in large {
+        large_ui(ui, readout, analysis, &look, desk);
+    }
+    small_rows_ui(ui, &small, desk);
+}
+
+/// Read-outs that stand large and those that stand in lines.
+pub(super) fn sorted(analysis: &Analysis) -> (Vec<&Readout>, Vec<&Readout>) {
+    analysis
         .readouts
         .iter()
         .filter(|readout| !beside_the_point(readout, analysis))
-        .partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty());
-    for readout in large {
-        large_ui(ui, readout, analysis, desk);
-    }
-    if !small.is_empty() {
-        header_ui(ui);
-    }
-    for readout in small {
+        .partition(|readout| LARGE.contains(&readout.key) || !readout.requirements.is_empty())
+}
+
+/// Read-outs in lines, shown value and worst value side by side.
+pub(super) fn small_rows_ui(ui: &mut Ui, readouts: &[&Readout], desk: &mut Desk<'_>) {
+    let Some(analysis) = desk.session.analysis().filter(|_| !readouts.is_empty()) else { return };
+    header_ui(ui);
+    for readout in readouts {
         small_ui(ui, readout, analysis, desk);
     }
 }
@@ -119,25 +131,54 @@ fn ink(readout: &Readout, analysis: &Analysis, palette: &Palette) -> Color32 {
     }
 }
 
-fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk<'_>) {
+/// Sizes of a read-out that stands large.
+#[derive(Clone, Debug)]
+pub(super) struct Look {
+    /// Height with a requirement [points].
+    height: f32,
+    /// Letters of the name and of the worst value.
+    name: FontId,
+    /// Letters of the value.
+    value: FontId,
+    /// Letters of limit and distance.
+    verdict: FontId,
+    /// Where value and verdict begin, below the top [points].
+    tops: (f32, f32),
+}
+
+impl Look {
+    /// In the column beside the plots.
+    pub(super) fn column() -> Self {
+        Look { height: TALL, name: theme::small(), value: theme::figure(), verdict: theme::small(), tops: (13.0, 20.0) }
+    }
+
+    /// On the page for a reviewer.
+    pub(super) fn page() -> Self {
+        let verdict = theme::strong(14.0);
+        Look { height: PAGE, name: theme::body(), value: theme::large(), verdict, tops: (16.0, 24.0) }
+    }
+}
+
+/// A read-out that stands large: value, worst condition by name, limit and distance.
+pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look: &Look, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let verdict = decisive(readout);
-    let height = if verdict.is_some() { TALL } else { TALL - 8.0 };
+    let height = if verdict.is_some() { look.height } else { look.height - 8.0 };
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), height), Sense::click());
     let painter = ui.painter();
     let at = rect.left_top() + vec2(0.0, 1.0);
-    let name = painter.text(at, Align2::LEFT_TOP, readout.name, theme::small(), palette.weak);
+    let name = painter.text(at, Align2::LEFT_TOP, readout.name, look.name.clone(), palette.weak);
     let value = value_text(readout, analysis);
-    let at = rect.left_top() + vec2(0.0, 13.0);
+    let at = rect.left_top() + vec2(0.0, look.tops.0);
     // Words stand smaller than numbers, or they would run into the requirement.
     let words = readout.value.is_none_or(|value| value == 0.0 && readout.at_zero.is_some());
-    let (at, font) = if words { (at + vec2(0.0, 5.0), theme::strong(13.0)) } else { (at, theme::figure()) };
+    let (at, font) = if words { (at + vec2(0.0, 5.0), theme::strong(13.0)) } else { (at, look.value.clone()) };
     painter.text(at, Align2::LEFT_TOP, &value, font, ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
         // A long name leaves no room for the word, but the place at the right says it in every row.
-        let layout = |text: String| painter.layout_no_wrap(text, theme::small(), colour);
+        let layout = |text: String| painter.layout_no_wrap(text, look.name.clone(), colour);
         let mut galley = layout(format!("worst {worst}"));
         if name.right() + 6.0 > rect.right() - galley.size().x {
             galley = layout(worst);
@@ -146,8 +187,8 @@ fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     }
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
-        let at = rect.right_top() + vec2(0.0, 20.0);
-        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), theme::small(), colour);
+        let at = rect.right_top() + vec2(0.0, look.tops.1);
+        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), look.verdict.clone(), colour);
         bar(painter, rect, verdict, palette);
     }
     announce(ui, &response, readout, &value);

@@ -7,11 +7,12 @@ use std::collections::BTreeMap;
 use std::path::PathBuf;
 
 use super::drawing::Drawing;
+use super::held::{Held, Tries};
 use super::history::{Gesture, History};
 use super::placing::Hand;
 use crate::analysis::{self, Analysis, Level, Request, Shown};
 use crate::compensator::{Compensator, Lane};
-use crate::design::Design;
+use crate::design::{CheckedDesign, Design};
 use crate::finding::Finding;
 
 /// Text that could not be read as a number; it stays with its field until it is mended or undone.
@@ -32,15 +33,6 @@ pub struct Document {
     pub bad_texts: BTreeMap<String, BadText>,
 }
 
-/// Curves kept to compare with.
-#[derive(Clone, Debug)]
-pub struct Held {
-    /// What was held: the name of the last change, or the title.
-    pub name: String,
-    /// The results.
-    pub analysis: Analysis,
-}
-
 /// The document, its file and its latest results.
 #[derive(Debug)]
 pub struct Session {
@@ -49,6 +41,7 @@ pub struct Session {
     path: Option<PathBuf>,
     history: History<Document>,
     shown: (Level, Level),
+    what_if: Option<(f64, f64)>,
     frequencies_hz: Vec<f64>,
     generation: u64,
     analysed: Option<u64>,
@@ -56,7 +49,10 @@ pub struct Session {
     drawing: Drawing,
     lanes: Vec<Lane>,
     problems: Vec<Finding>,
-    held: Option<Held>,
+    /// What the latest results belong to.
+    worked_out: Option<(CheckedDesign, Request)>,
+    tries: Tries,
+    reviewed: Option<usize>,
     pub(super) hand: Hand,
 }
 
@@ -74,6 +70,7 @@ impl Session {
             path,
             history: History::default(),
             shown: (Level::Nominal, Level::Nominal),
+            what_if: None,
             frequencies_hz: Vec::new(),
             generation: 0,
             analysed: None,
@@ -81,7 +78,9 @@ impl Session {
             drawing: Drawing::default(),
             lanes: Vec::new(),
             problems: Vec::new(),
-            held: None,
+            worked_out: None,
+            tries: Tries::default(),
+            reviewed: None,
             hand: Hand::default(),
         }
     }
@@ -111,15 +110,39 @@ impl Session {
         self.document.design != self.saved || !self.document.bad_texts.is_empty()
     }
 
-    /// The condition shown in full.
+    /// A session on a design that is in no file yet.
+    pub fn created(design: Design) -> Self {
+        Session { saved: Design::default(), ..Session::new(design, None) }
+    }
+
+    /// The one of the nine conditions that is shown in full, or was before a what-if.
     pub fn shown(&self) -> (Level, Level) {
         self.shown
     }
 
+    /// True when this one of the nine conditions is shown.
+    pub fn shows(&self, input: Level, load: Level) -> bool {
+        self.what_if.is_none() && self.shown == (input, load)
+    }
+
     /// Shows another condition.
     pub fn show(&mut self, input: Level, load: Level) {
-        if self.shown != (input, load) {
+        if !self.shows(input, load) {
+            self.what_if = None;
             self.shown = (input, load);
+            self.generation += 1;
+        }
+    }
+
+    /// Input voltage [V] and load current [A] of the what-if that is shown.
+    pub fn what_if(&self) -> Option<(f64, f64)> {
+        self.what_if
+    }
+
+    /// Shows a condition beside the nine: input voltage [V] and load current [A], both positive.
+    pub fn show_what_if(&mut self, input_voltage: f64, load_current: f64) {
+        if self.what_if != Some((input_voltage, load_current)) {
+            self.what_if = Some((input_voltage, load_current));
             self.generation += 1;
         }
     }
@@ -134,12 +157,12 @@ impl Session {
 
     /// The latest results; stale when [`Session::stale`] says so.
     pub fn analysis(&self) -> Option<&Analysis> {
-        self.analysis.as_ref()
+        self.reviewed().map(|held| &held.analysis).or(self.analysis.as_ref())
     }
 
     /// What is worked out once per analysis for drawing it.
     pub(super) fn drawing(&self) -> &Drawing {
-        &self.drawing
+        self.reviewed().map_or(&self.drawing, |held| &held.drawing)
     }
 
     /// The compensator's lanes; of the last usable compensator while the present one cannot be used.
@@ -154,7 +177,7 @@ impl Session {
 
     /// True when the results shown are those of an earlier document.
     pub fn stale(&self) -> bool {
-        !self.problems.is_empty()
+        !self.problems.is_empty() && self.reviewed().is_none()
     }
 
     /// The problem or remark at an entry, the gravest first.
@@ -173,26 +196,80 @@ impl Session {
         switching.filter(|hz| (1.0..1e10).contains(hz)).map_or(USUAL_RANGE_HZ, |hz| (hz / DECADES, hz))
     }
 
-    /// Shows the condition `steps` further in the list of nine.
+    /// Shows the condition `steps` further in the list of nine; from a what-if, the one that was left for it.
     pub fn step_condition(&mut self, steps: usize) {
+        let steps = if self.what_if.is_some() { 0 } else { steps };
         let (input, load) = super::perform::condition_after(self.shown, steps);
         self.show(input, load);
     }
 
-    /// What is held to compare with.
-    pub fn held(&self) -> Option<&Held> {
-        self.held.as_ref()
+    /// Shows the condition this many levels of input and load higher, as far as there are any; from a what-if, the one that was
+    /// left for it.
+    pub fn step_levels(&mut self, input: isize, load: isize) {
+        let (by_input, by_load) = if self.what_if.is_some() { (0, 0) } else { (input, load) };
+        let moved = |level: Level, by: isize| {
+            let at = Level::ALL.iter().position(|other| *other == level).unwrap_or(0);
+            at.checked_add_signed(by).and_then(|at| Level::ALL.get(at)).copied().unwrap_or(level)
+        };
+        self.show(moved(self.shown.0, by_input), moved(self.shown.1, by_load));
     }
 
-    /// Keeps the present results to compare with.
+    /// The held try that is drawn beside the present design; none beside a held one.
+    pub fn held(&self) -> Option<&Held> {
+        self.tries.beside().filter(|_| self.reviewed.is_none())
+    }
+
+    /// All held tries, oldest first.
+    pub fn tries(&self) -> &[Held] {
+        self.tries.all()
+    }
+
+    /// The held try that stands in the place of the present design, as the review shows it.
+    pub fn reviewed(&self) -> Option<&Held> {
+        self.reviewed.and_then(|number| self.tries.get(number))
+    }
+
+    /// Puts a held try, by its number, or the present design in the place of what is shown.
+    pub fn review(&mut self, number: Option<usize>) {
+        self.reviewed = number;
+        self.generation += 1;
+    }
+
+    /// Reviews the next of present design and held tries, or the one before, round and round.
+    pub fn step_try(&mut self, forward: bool) {
+        let all: Vec<_> = std::iter::once(None).chain(self.tries().iter().map(|held| Some(held.number))).collect();
+        let at = all.iter().position(|number| *number == self.reviewed).unwrap_or(0);
+        let by = if forward { 1 } else { all.len() - 1 };
+        if let Some(next) = all.get((at + by) % all.len()) {
+            self.review(*next);
+        }
+    }
+
+    /// Keeps the design of the present results with them, to compare with.
     pub fn hold(&mut self) {
         let name = self.history.undo_name().unwrap_or(&self.document.design.title).to_owned();
-        self.held = self.analysis.clone().map(|analysis| Held { name, analysis });
+        if let (Some((design, request)), Some(analysis), None) = (&self.worked_out, &self.analysis, self.reviewed) {
+            self.tries.hold(name, design.clone(), analysis.clone(), request.clone());
+        }
     }
 
-    /// Drops what is held.
+    /// Draws this held try beside the present design; asked again, none.
+    pub fn compare_with(&mut self, number: usize) {
+        self.tries.compare_with(number);
+        self.tries.follow(self.reviewed, &self.request());
+    }
+
+    /// Drops one held try.
+    pub fn drop_try(&mut self, number: usize) {
+        self.reviewed = self.reviewed.filter(|reviewed| *reviewed != number);
+        self.tries.drop_one(number);
+        self.tries.follow(self.reviewed, &self.request());
+    }
+
+    /// Drops all that is held.
     pub fn drop_held(&mut self) {
-        self.held = None;
+        self.reviewed = None;
+        self.tries.clear();
     }
 
     /// Changes the document as one named step.
@@ -243,22 +320,31 @@ impl Session {
         if let Ok(compensator) = Compensator::from_values(&design.values, &design.choices) {
             self.lanes = compensator.lanes();
         }
-        match design.check() {
+        let request = self.request();
+        match self.document.design.check() {
             Ok(checked) => {
-                let request = Request {
-                    shown: Shown::Levels(self.shown.0, self.shown.1),
-                    frequencies_hz: self.frequencies_hz.clone(),
-                    band_frequencies_hz: self.frequencies_hz.iter().copied().step_by(BAND_STEP).collect(),
-                    step_points: STEP_POINTS,
-                };
                 let analysis = analysis::analyse(&checked, &request);
                 self.drawing = Drawing::new(&analysis);
                 self.hand.usual_goal = Some(analysis::usual_goal(&checked, &analysis));
                 self.analysis = Some(analysis);
+                self.worked_out = Some((checked, request.clone()));
             }
             Err(problems) => self.problems.extend(problems),
         }
+        self.tries.follow(self.reviewed, &request);
         true
+    }
+
+    /// What an analysis is asked for at present.
+    pub(super) fn request(&self) -> Request {
+        let levels = Shown::Levels(self.shown.0, self.shown.1);
+        let at = |(input_voltage, load_current)| Shown::At { input_voltage, load_current };
+        Request {
+            shown: self.what_if.map_or(levels, at),
+            frequencies_hz: self.frequencies_hz.clone(),
+            band_frequencies_hz: self.frequencies_hz.iter().copied().step_by(BAND_STEP).collect(),
+            step_points: STEP_POINTS,
+        }
     }
 }
 

@@ -202,6 +202,11 @@ pub(super) fn figure() -> FontId {
     FontId::new(19.5, FontFamily::Proportional)
 }
 
+/// Letters of the same numbers on a page for reading.
+pub(super) fn large() -> FontId {
+    FontId::new(27.0, FontFamily::Proportional)
+}
+
 /// Loads the fonts and sets both themes; called once.
 pub(super) fn install(ctx: &egui::Context) {
     ctx.set_fonts(fonts());

@@ -5,7 +5,9 @@ use eframe::egui::{Rect, ThemePreference};
 use super::command::{Command, Curve};
 use super::goal::GoalFields;
 use super::history::Gesture;
+use super::new_design::NewDesign;
 use super::session::Session;
+use super::what_if::WhatIf;
 
 /// Event whose time response is shown.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
@@ -34,6 +36,8 @@ pub(super) enum ClosedLoop {
 /// A question or a list over the window.
 #[derive(Clone, Debug, PartialEq)]
 pub(super) enum Dialog {
+    /// What a new design needs to know.
+    New,
     /// Which file or sample to open.
     Open {
         /// Typed path.
@@ -160,6 +164,14 @@ pub(super) struct View {
     pub seek: Option<String>,
     /// Question or list over the window.
     pub dialog: Option<Dialog>,
+    /// The review view is open.
+    pub review: bool,
+    /// The hint for who is new here is shown.
+    pub hint: bool,
+    /// What is typed for a condition beside the nine.
+    pub what_if: WhatIf,
+    /// The form of a new design.
+    pub new_design: NewDesign,
     /// What was last said.
     pub message: Option<Message>,
     /// Colours.
@@ -198,6 +210,10 @@ impl Default for View {
             title: None,
             seek: None,
             dialog: None,
+            review: false,
+            hint: false,
+            what_if: WhatIf::default(),
+            new_design: NewDesign::default(),
             message: None,
             theme: ThemePreference::System,
             gain_rect: Rect::NOTHING,

@@ -7,6 +7,7 @@
 mod common;
 mod compensator;
 mod cross_checks;
+mod discontinuous;
 mod lossless;
 mod random;
 mod reference;

@@ -129,20 +129,6 @@ fn the_printed_parts_give_the_printed_corners() {
     }
 }
 
-/// The same buck at 25 Ω with a diode runs discontinuous (quoted, 15.4.2: K 0.40 below its limit 0.50). Until that mode is computed it
-/// must be a finding, never a curve.
-#[test]
-fn the_buck_at_light_load_is_not_computed_as_continuous() {
-    let mut design = buck();
-    printed_network(&mut design, Some(500.0));
-    design.set_from_text("stage.rectifier", "diode").expect("an option");
-    set(&mut design, &[("stage.diode.drop", 0.0), ("stage.diode.resistance", 0.0)]);
-    at_one_condition(&mut design, 28.0, 15.0 / 25.0);
-    let analysis = analysed(&design, &[100.0], 10);
-    let finding = analysis.shown.expect_err("a finding");
-    assert!(finding.message.contains("discontinuous"), "{finding:?}");
-}
-
 /// Basso, Designing Control Loops for Linear and Switching Power Supplies, 2012, 9.4 (quoted): 11.5 V to 19 V, 3 A, 100 kHz. L 50 µH,
 /// C 1000 µF and a ramp of 2 V reproduce the printed numbers (derived).
 fn boost(esr: f64) -> Design {

@@ -1,0 +1,27 @@
+//! Names of the inputs and outputs of an averaged stage.
+
+/// Input: duty ratio of the controlled switch.
+pub const DUTY: &str = "duty";
+/// Input: voltage of the ideal source [V].
+pub const INPUT_VOLTAGE: &str = "input voltage";
+/// Input: current drawn from the output [A].
+pub const LOAD_CURRENT: &str = "load current";
+/// Output: voltage at the load, a magnitude [V].
+pub const OUTPUT_VOLTAGE: &str = "output voltage";
+/// Output: average current of the first inductor [A].
+pub const INDUCTOR_CURRENT: &str = "inductor current";
+/// Output: average current drawn from the ideal source [A].
+pub const INPUT_CURRENT: &str = "input current";
+/// Output: average switched current [A], the one that stops when switch and rectifier block: the inductor's, or the
+/// sum of both in a stage of two inductors.
+pub const SWITCHED_CURRENT: &str = "switched current";
+/// Output: slope of the switched current while the switch conducts less that while the rectifier does [A/s].
+pub const SLOPE_DIFFERENCE: &str = "slope difference";
+/// Output: slope of the switched current while the switch conducts [A/s].
+pub const ON_SLOPE: &str = "on slope";
+
+/// The inputs, in column order.
+pub(super) const INPUTS: [&str; 3] = [DUTY, INPUT_VOLTAGE, LOAD_CURRENT];
+/// The outputs, in row order.
+pub(super) const OUTPUTS: [&str; 6] =
+    [OUTPUT_VOLTAGE, INDUCTOR_CURRENT, INPUT_CURRENT, SWITCHED_CURRENT, SLOPE_DIFFERENCE, ON_SLOPE];
