@@ -43,7 +43,7 @@ fn open(file: Option<PathBuf>) -> Result<(), String> {
         Some(path) => load(path).map_err(|error| format!("{error}\n"))?,
         None => sample::built_in(),
     };
-    polewright::window::run(design, file).map_err(|error| format!("The window cannot be opened: {error}.\n"))
+    polewright::window::run(design, file).map_err(|error| format!("{error}.\n"))
 }
 
 #[cfg(not(feature = "window"))]

@@ -6,6 +6,7 @@
 
 mod caution;
 mod check;
+mod difference;
 mod document;
 mod events;
 pub mod file;
@@ -14,6 +15,7 @@ pub mod sample;
 mod table;
 
 pub use check::CheckedDesign;
+pub use difference::{Difference, differences};
 pub use document::{Design, printable};
 pub use events::{Event, Events};
 pub use requirements::{Asked, Limit, Requirements, Scope};

@@ -1,17 +1,25 @@
 //! Schematics and plots as neutral strokes, labels and colour roles: the window paints them, the exports write them.
 
+pub(crate) mod axis;
+mod bode;
+mod chart;
 mod compensator;
 mod ladder;
 mod pen;
 mod plan;
+mod response;
 mod stage;
+mod step;
 mod stroke;
 mod symbol;
 #[cfg(test)]
 mod tests;
 mod values;
 
+pub use bode::{Shown, bode};
 pub use compensator::compensator_schematic;
+pub use response::{ClosedLoop, response};
 pub use stage::{schematic, stage_schematic};
+pub use step::{Event, step};
 pub use stroke::{Align, Dash, Figure, Mark, Place, Point, Role, Weight};
 pub use values::Numbers;

@@ -1,1 +1,13 @@
 //! What leaves the program: pictures, tables, curves.
+
+mod curves;
+#[cfg(feature = "window")]
+mod png;
+mod svg;
+mod table;
+
+pub use curves::{write_curves, write_step};
+#[cfg(feature = "window")]
+pub use png::{PictureError, png};
+pub use svg::svg;
+pub use table::{margin_table, parts_list};

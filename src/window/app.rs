@@ -6,6 +6,7 @@ use eframe::egui::{self, FocusDirection, Key, Modifiers, Rect, Ui, ViewportComma
 
 use super::command::{COMMANDS, Command, Row};
 use super::files::FileDialogs;
+use super::safety::Kept;
 use super::session::Session;
 use super::theme;
 use super::view::{Desk, View};
@@ -19,6 +20,8 @@ pub struct App {
     pub(super) session: Session,
     pub(super) view: View,
     pub(super) dialogs: FileDialogs,
+    /// What outlives the window.
+    pub(super) kept: Kept,
     /// What unsaved changes held up while a path to save under is asked for.
     pub(super) after_saving: Option<Command>,
     /// True once closing was settled.
@@ -34,18 +37,21 @@ const COLUMNS: usize = 64;
 /// The widest plot, in such lots: four thousand columns.
 const MOST_LOTS: usize = 64;
 impl App {
-    /// A window on a design and the file it came from.
+    /// A window on a design and the file it came from; it keeps nothing beyond its own life.
     pub fn new(ctx: &egui::Context, design: Design, path: Option<PathBuf>) -> Self {
         theme::install(ctx);
-        App {
+        let mut app = App {
             session: Session::new(design, path),
             view: View { theme: ctx.options(|options| options.theme_preference), ..View::default() },
             dialogs: FileDialogs::default(),
+            kept: Kept::nothing(),
             after_saving: None,
             leaving: false,
             asked: Vec::new(),
             title: String::new(),
-        }
+        };
+        app.in_file(ctx);
+        app
     }
 
     /// The work: document, history, results.
@@ -136,14 +142,15 @@ impl App {
         {
             ctx.memory_mut(|memory| memory.surrender_focus(focused));
         }
-        if let Some(field) = self.view.field.take() {
-            let entry = crate::design::entry(field.path);
-            let value = self.session.design().values.get(field.path);
-            let before = entry.zip(value).map(|(entry, value)| crate::quantity::exact(value, entry.unit));
-            let before = self.session.bad_text(field.path).map(|bad| bad.text.clone()).or(before);
-            if before.unwrap_or_default() != field.text {
-                self.asked.push(Command::Enter { path: field.path, text: field.text });
-            }
+        if let Some((path, text)) = self.typed() {
+            let text = text.to_owned();
+            self.asked.push(Command::Enter { path, text });
+        }
+        self.view.field = None;
+        if let Some(title) = self.view.title.take()
+            && title != self.session.design().title
+        {
+            self.asked.push(Command::Title(title));
         }
     }
 
@@ -156,7 +163,13 @@ impl App {
 
     /// Closing with unsaved changes asks first.
     fn guard_closing(&mut self, ctx: &egui::Context) {
-        if ctx.input(|input| input.viewport().close_requested()) && !self.leaving && self.session.unsaved() {
+        if !ctx.input(|input| input.viewport().close_requested()) || self.leaving {
+            return;
+        }
+        // What is being typed counts like what was entered.
+        let asked = self.asked.len();
+        self.take_over_field(ctx);
+        if self.asked.len() > asked || self.session.unsaved() {
             ctx.send_viewport_cmd(ViewportCommand::CancelClose);
             self.asked.push(Command::Quit);
         }
@@ -194,12 +207,13 @@ impl eframe::App for App {
         }
         self.ask_frequencies();
         self.session.refresh();
+        self.keep_up(ctx);
         self.name_window(ctx);
     }
 
     fn ui(&mut self, ui: &mut Ui, _frame: &mut eframe::Frame) {
         let width_before = self.view.plot_width;
-        let mut desk = Desk { session: &self.session, view: &mut self.view, send: &mut self.asked };
+        let mut desk = Desk { session: &self.session, kept: &self.kept, view: &mut self.view, send: &mut self.asked };
         layout::window_ui(ui, &mut desk);
         dialogs::dialog_ui(ui, &mut desk);
         // What was asked for is carried out in the next turn, and new widths ask for new curves there.
@@ -207,6 +221,15 @@ impl eframe::App for App {
         if !self.asked.is_empty() || resized {
             ui.ctx().request_repaint();
         }
+    }
+
+    fn on_exit(&mut self, _gl: Option<&eframe::glow::Context>) {
+        self.keep_on_exit();
+    }
+
+    fn persist_egui_memory(&self) -> bool {
+        // What is worth keeping stands in the settings.
+        false
     }
 
     fn clear_color(&self, visuals: &egui::Visuals) -> [f32; 4] {

@@ -3,9 +3,9 @@
 use eframe::egui::{self, Align, Button, Color32, Layout, Pos2, Rect, RichText, Shape, Ui, UiBuilder, pos2, vec2};
 
 use super::command::{COMMANDS, Command, Menu, Row};
-use super::conditions;
 use super::theme::{self, palette};
 use super::view::Desk;
+use super::{conditions, recents, recovery};
 use crate::design;
 
 /// Room that the words at the right of the bar take [points].
@@ -82,6 +82,12 @@ fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
     }
     if menu == Menu::Design {
         ui.separator();
+        ui.menu_button("Copy and export", |ui| menu_ui(ui, Menu::Export, desk));
+        ui.menu_button("Recent files", |ui| {
+            if recents::recents_ui(ui, desk) {
+                ui.close();
+            }
+        });
         ui.menu_button("Samples", |ui| {
             if samples_ui(ui, desk) {
                 ui.close();
@@ -158,6 +164,7 @@ pub(super) fn notices_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         };
         line_ui(ui, &format!("{shown}{first}{more}"), palette.problem, |_| {});
     }
+    recovery::notice_ui(ui, desk);
     if let Some(message) = desk.view.banner().cloned() {
         let colour = if message.failed { palette.problem } else { palette.good };
         let mut closed = false;
@@ -168,7 +175,8 @@ pub(super) fn notices_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
 }
 
-fn line_ui(ui: &mut Ui, text: &str, colour: Color32, end: impl FnOnce(&mut Ui)) {
+/// A line under the bar: a mark in its colour, its text, and what can be done about it at the right.
+pub(super) fn line_ui(ui: &mut Ui, text: &str, colour: Color32, end: impl FnOnce(&mut Ui)) {
     let ground = palette(ui).field;
     egui::Frame::new().fill(ground).inner_margin(egui::Margin::symmetric(14, 5)).show(ui, |ui| {
         ui.horizontal(|ui| {

@@ -2,10 +2,11 @@
 
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, TextEdit, Ui};
 
-use super::bar;
 use super::command::{COMMANDS, Command};
+use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
+use super::{bar, recents, recovery};
 
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
@@ -17,7 +18,10 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
+            Dialog::Export { what, path } => export::export_ui(ui, *what, path, desk),
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
+            Dialog::Overwrite { path } => recovery::overwrite_ui(ui, path, desk),
+            Dialog::Recovery { discarding } => recovery::recovery_ui(ui, discarding, desk),
             Dialog::Commands { search } => commands_ui(ui, search, desk),
         }
     });
@@ -28,32 +32,41 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 }
 
 /// Why the last try failed, where it is looked for.
-fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
+pub(super) fn failure_ui(ui: &mut Ui, desk: &Desk<'_>) {
     if let Some(message) = desk.view.message.as_ref().filter(|message| message.failed) {
         ui.label(RichText::new(&message.text).color(palette(ui).problem));
     }
 }
 
-fn title(ui: &mut Ui, text: &str) {
+pub(super) fn title(ui: &mut Ui, text: &str) {
     ui.label(RichText::new(text).font(theme::strong(16.0)));
     ui.add_space(6.0);
 }
 
 /// A field for a path with a button for the system's dialog; true when Enter was pressed in it.
-fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
+pub(super) fn path_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) -> bool {
     let mut entered = false;
+    let (name, hint) = match desk.view.dialog {
+        Some(Dialog::Export { .. }) => ("Path of the file", "path of a file"),
+        _ => ("Path of the design file", "path of a design file"),
+    };
     ui.horizontal(|ui| {
-        let edit = TextEdit::singleline(path).hint_text("path of a design file").desired_width(400.0);
-        let response = ui.add(edit).accessible_name("Path of the design file");
+        let edit = TextEdit::singleline(path).hint_text(hint).desired_width(400.0);
+        let response = ui.add(edit).accessible_name(name);
         entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
         let nothing_focused = ui.memory(|memory| memory.focused().is_none());
         if nothing_focused && !entered {
             response.request_focus();
         }
-        if ui.button("Browse…").on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
+        let browse = ui.add_enabled(!desk.view.browsing, Button::new("Browse…"));
+        if browse.on_hover_text("Ask the system's file dialog. A typed path always works.").clicked() {
             desk.ask(Command::Browse);
         }
     });
+    if desk.view.browsing {
+        let text = "Waiting for the system's file dialog. If none appears, type the path here.";
+        ui.label(RichText::new(text).font(theme::small()).color(palette(ui).weak));
+    }
     entered
 }
 
@@ -71,9 +84,14 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
             desk.ask(Command::Dismiss);
         }
     });
+    if !desk.kept.recent.is_empty() {
+        ui.add_space(10.0);
+        ui.label(RichText::new("Recent files").font(theme::strong(13.5)));
+        ScrollArea::vertical().id_salt("recent").max_height(170.0).show(ui, |ui| recents::recents_ui(ui, desk));
+    }
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().max_height(300.0).show(ui, |ui| {
+    ScrollArea::vertical().id_salt("samples").max_height(260.0).show(ui, |ui| {
         bar::samples_ui(ui, desk);
     });
 }
@@ -155,15 +173,16 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
                 desk.ask(row.command.clone());
             }
         }
+        recents::commands_ui(ui, &wanted, desk);
     });
 }
 
-fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
+pub(super) fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
     ui.horizontal(content);
 }
 
 /// The button that is meant.
-fn primary(ui: &Ui, text: &str) -> Button<'static> {
+pub(super) fn primary(ui: &Ui, text: &str) -> Button<'static> {
     let palette = palette(ui);
     Button::new(RichText::new(text).color(palette.panel).strong()).fill(palette.accent)
 }

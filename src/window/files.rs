@@ -2,6 +2,7 @@
 
 use std::path::PathBuf;
 use std::sync::mpsc::{Receiver, Sender, channel};
+use std::time::{Duration, Instant};
 
 use eframe::egui;
 
@@ -12,13 +13,29 @@ pub(super) enum Ask {
     Open,
     /// A path to save under; the name it proposes.
     Save(String),
+    /// A path for a picture or for curves; the name it proposes.
+    Export(String),
 }
+
+/// What became of the system's dialog.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub(super) enum Answer {
+    /// This was chosen.
+    Chosen(PathBuf),
+    /// Nothing: it was left.
+    Left,
+    /// Nothing, sooner than anyone can look at a dialog: there is none, or it failed. The library tells both alike.
+    Absent,
+}
+
+/// Time in which nobody has looked at a dialog and left it.
+const AT_ONCE: Duration = Duration::from_millis(700);
 
 /// Answers of the system's file dialog.
 #[derive(Debug)]
 pub(super) struct FileDialogs {
-    sender: Sender<PathBuf>,
-    receiver: Receiver<PathBuf>,
+    sender: Sender<Answer>,
+    receiver: Receiver<Answer>,
 }
 
 impl Default for FileDialogs {
@@ -33,24 +50,33 @@ impl FileDialogs {
     pub(super) fn ask(&self, ask: Ask, folder: Option<PathBuf>, ctx: &egui::Context) -> Result<(), std::io::Error> {
         let (sender, ctx) = (self.sender.clone(), ctx.clone());
         let run = move || {
-            let mut dialog = rfd::FileDialog::new().add_filter("design file", &["ron"]);
+            let asked = Instant::now();
+            let mut dialog = rfd::FileDialog::new();
+            if !matches!(ask, Ask::Export(_)) {
+                dialog = dialog.add_filter("design file", &["ron"]);
+            }
             if let Some(folder) = folder {
                 dialog = dialog.set_directory(folder);
             }
             let path = match ask {
                 Ask::Open => dialog.pick_file(),
-                Ask::Save(name) => dialog.set_file_name(name).save_file(),
+                Ask::Save(name) | Ask::Export(name) => dialog.set_file_name(name).save_file(),
             };
-            // No path: the dialog was left, or there is none. The window may be gone by now; then nobody waits.
-            if path.is_some_and(|path| sender.send(path).is_ok()) {
+            let answer = match path {
+                Some(path) => Answer::Chosen(path),
+                None if asked.elapsed() < AT_ONCE => Answer::Absent,
+                None => Answer::Left,
+            };
+            // The window may be gone by now; then nobody waits.
+            if sender.send(answer).is_ok() {
                 ctx.request_repaint();
             }
         };
         std::thread::Builder::new().name("file dialog".to_owned()).spawn(run).map(|_| ())
     }
 
-    /// A path that has been chosen.
-    pub(super) fn answer(&self) -> Option<PathBuf> {
+    /// What became of a dialog that was asked for.
+    pub(super) fn answer(&self) -> Option<Answer> {
         self.receiver.try_recv().ok()
     }
 }

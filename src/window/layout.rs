@@ -7,8 +7,8 @@ use eframe::egui::{self, CentralPanel, Frame, Margin, Panel, Rect, ScrollArea, S
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{
-    bar, bode, conditions, findings, ledger, operating, parts, readouts, responses, review, stage, steps, tries,
-    verdict,
+    bar, bode, conditions, findings, ledger, operating, parts, readouts, recovery, responses, review, stage, steps,
+    tries, verdict,
 };
 
 /// Height that steps and responses take under the Bode plots, as a share of the room.
@@ -41,7 +41,7 @@ pub(super) fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         .resizable(false)
         .frame(frame(palette.bar).inner_margin(Margin::symmetric(14, 0)))
         .show(ui, |ui| bar::bar_ui(ui, desk));
-    if desk.session.stale() || desk.view.banner().is_some() {
+    if desk.session.stale() || desk.view.banner().is_some() || recovery::notice(desk).is_some() {
         Panel::top("notices").resizable(false).frame(frame(palette.field)).show(ui, |ui| bar::notices_ui(ui, desk));
     }
     let (left_width, right_width) = column_widths(ui.available_width());

@@ -6,7 +6,7 @@ use eframe::egui::{self, ViewportCommand};
 
 use super::app::App;
 use super::command::Command;
-use super::files::{self, Ask};
+use super::files::{self, Answer, Ask};
 use super::findings::lower_first;
 use super::session::{BadText, Session};
 use super::view::{Dialog, Message};
@@ -25,7 +25,11 @@ impl App {
                 let text = "The review view is for reading. Press Esc to go back to the design.".to_owned();
                 self.view.message = Some(Message { text, failed: false });
             }
-            Command::OpenPath(_) | Command::OpenSample(_) | Command::CreateDesign | Command::Quit
+            Command::OpenPath(_)
+            | Command::OpenSample(_)
+            | Command::CreateDesign
+            | Command::Recover(_)
+            | Command::Quit
                 if self.session.unsaved() =>
             {
                 self.view.dialog = Some(Dialog::Unsaved(Box::new(command)));
@@ -42,7 +46,18 @@ impl App {
             | Command::Quit
             | Command::DiscardAndGoOn
             | Command::SaveAndGoOn
+            | Command::Overwrite(_)
+            | Command::Reload
+            | Command::KeepMine
+            | Command::FindUnsaved
+            | Command::Recover(_)
+            | Command::DiscardJournal(_)
+            | Command::ForgetRecent(_)
+            | Command::ForgetAllRecent
             | Command::Dismiss => self.perform_on_files(command, ctx),
+            Command::Export(_) | Command::ExportPath { .. } | Command::CopyParts | Command::CopyMargins => {
+                self.perform_export(command, ctx);
+            }
             Command::ReturnLane(key) => self.return_lane(key),
             Command::Place(method) => self.place(method),
             edit if edit.edits() => {
@@ -65,27 +80,26 @@ impl App {
             }
             Command::CreateDesign => {
                 if let Some(design) = self.view.new_design.design() {
-                    self.start(Session::created(design));
+                    self.begin(Session::created(design), ctx);
                     self.view.review = false;
                 }
             }
-            Command::OpenPath(path) => self.open(&path),
-            Command::OpenSample(file) => self.open_sample(file),
+            Command::OpenPath(path) => self.open(&path, ctx),
+            Command::OpenSample(file) => self.open_sample(file, ctx),
             Command::Save => match self.session.path().cloned() {
-                Some(path) => {
-                    self.save(path);
-                }
+                Some(path) => self.save_asking(path, ctx),
                 None => self.ask_where_to_save(),
             },
             Command::SaveAs => self.ask_where_to_save(),
-            Command::SavePath(path) => {
-                if self.save(path) {
-                    self.view.dialog = None;
-                    if let Some(next) = self.after_saving.take() {
-                        self.perform(next, ctx);
-                    }
-                }
-            }
+            Command::SavePath(path) => self.save_asking(path, ctx),
+            Command::Overwrite(path) => self.save_and_follow(path, ctx),
+            Command::Reload => self.reload(ctx),
+            Command::KeepMine => self.keep_mine(),
+            Command::FindUnsaved => self.find_unsaved(ctx),
+            Command::Recover(journal) => self.recover(&journal, ctx),
+            Command::DiscardJournal(journal) => self.discard_journal(&journal),
+            Command::ForgetRecent(path) => self.forget_recent(Some(path)),
+            Command::ForgetAllRecent => self.forget_recent(None),
             Command::Browse => self.browse(ctx),
             Command::Quit => {
                 self.leaving = true;
@@ -99,29 +113,53 @@ impl App {
             Command::SaveAndGoOn => self.save_and_go_on(ctx),
             _ => {
                 self.after_saving = None;
-                if matches!(self.view.dialog.take(), Some(Dialog::Open { .. } | Dialog::SaveAs { .. })) {
+                let asked = self.view.dialog.take();
+                if matches!(asked, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. })) {
                     self.view.forget_failure();
                 }
+                self.put_off_recovery();
             }
         }
     }
 
     fn save_and_go_on(&mut self, ctx: &egui::Context) {
         let Some(Dialog::Unsaved(next)) = self.view.dialog.take() else { return };
-        let Some(path) = self.session.path().cloned() else {
-            self.after_saving = Some(*next);
-            self.ask_where_to_save();
-            return;
-        };
-        if self.save(path) {
-            self.perform_on_files(*next, ctx);
+        self.after_saving = Some(*next);
+        match self.session.path().cloned() {
+            Some(path) => self.save_asking(path, ctx),
+            None => self.ask_where_to_save(),
         }
     }
 
-    fn open(&mut self, path: &Path) {
+    /// Saves, unless the file changed since it was read: then it asks first.
+    fn save_asking(&mut self, path: PathBuf, ctx: &egui::Context) {
+        if self.changed_on_disk(&path) {
+            self.view.dialog = Some(Dialog::Overwrite { path });
+        } else {
+            self.save_and_follow(path, ctx);
+        }
+    }
+
+    /// Saves, then goes on with what waits for it.
+    fn save_and_follow(&mut self, path: PathBuf, ctx: &egui::Context) {
+        if self.save(path, ctx) {
+            if matches!(self.view.dialog, Some(Dialog::SaveAs { .. } | Dialog::Overwrite { .. })) {
+                self.view.dialog = None;
+            }
+            if let Some(next) = self.after_saving.take() {
+                self.perform_on_files(next, ctx);
+            }
+        } else if !matches!(self.view.dialog, Some(Dialog::SaveAs { .. })) {
+            // The reason stands under the bar; what waited for the save does not go on.
+            self.view.dialog = None;
+            self.after_saving = None;
+        }
+    }
+
+    fn open(&mut self, path: &Path, ctx: &egui::Context) {
         match design::file::load(path) {
             Ok(design) => {
-                self.start(Session::new(design, Some(path.to_path_buf())));
+                self.begin(Session::new(design, Some(path.to_path_buf())), ctx);
                 self.view.message = None;
             }
             Err(error) => {
@@ -132,39 +170,45 @@ impl App {
         }
     }
 
-    fn open_sample(&mut self, file: &str) {
+    fn open_sample(&mut self, file: &str, ctx: &egui::Context) {
         let Some(sample) = design::sample::all().iter().find(|sample| sample.file == file) else { return };
         match sample.design() {
-            Ok(design) => self.start(Session::new(design, None)),
+            Ok(design) => self.begin(Session::new(design, None), ctx),
             Err(error) => self.fail(error.to_string()),
         }
     }
 
-    fn start(&mut self, session: Session) {
+    /// Goes on with another document.
+    pub(super) fn begin(&mut self, session: Session, ctx: &egui::Context) {
         self.session = session;
         self.view.forget_failure();
         self.view.dialog = None;
         self.view.range_hz = None;
         self.view.field = None;
+        self.view.title = None;
         self.view.typing = None;
+        self.kept.new_document();
+        self.in_file(ctx);
     }
 
     fn ask_where_to_save(&mut self) {
-        let path = match self.session.path() {
-            Some(path) => path.display().to_string(),
-            None => files::proposed_name(&self.session.design().title),
+        let proposed = || {
+            let name = PathBuf::from(files::proposed_name(&self.session.design().title));
+            self.last_folder().map_or_else(|| name.clone(), |folder| folder.join(&name))
         };
+        let path = self.session.path().cloned().unwrap_or_else(proposed).display().to_string();
         self.view.forget_failure();
         self.view.dialog = Some(Dialog::SaveAs { path });
     }
 
     /// Saves; true when it worked. Says what happened either way.
-    fn save(&mut self, path: PathBuf) -> bool {
+    fn save(&mut self, path: PathBuf, ctx: &egui::Context) -> bool {
         let design = self.session.design().clone();
         match design::file::save(&design, &path) {
             Ok(()) => {
                 let text = format!("Saved as {}.", path.display());
                 self.session.saved_as(path, design);
+                self.in_file(ctx);
                 self.view.message = Some(Message { text, failed: false });
                 true
             }
@@ -176,22 +220,37 @@ impl App {
     }
 
     fn browse(&mut self, ctx: &egui::Context) {
-        let folder = self.session.path().and_then(|path| path.parent()).map(Path::to_path_buf);
+        let folder = self.last_folder();
         let ask = match &self.view.dialog {
+            Some(Dialog::Export { path, .. }) => Ask::Export(path.clone()),
             Some(Dialog::SaveAs { .. }) => Ask::Save(files::proposed_name(&self.session.design().title)),
             _ => Ask::Open,
         };
-        if let Err(error) = self.dialogs.ask(ask, folder, ctx) {
-            self.fail(format!("The file dialog could not be started: {error}. A path can be typed."));
+        match self.dialogs.ask(ask, folder, ctx) {
+            Ok(()) => {
+                self.view.forget_failure();
+                self.view.browsing = true;
+            }
+            Err(error) => self.fail(format!("The file dialog could not be started: {error}. A path can be typed.")),
         }
     }
 
     /// Puts the answer of the system's dialog into the path that is being asked for.
     pub(super) fn take_file_answer(&mut self) {
-        if let Some(chosen) = self.dialogs.answer()
-            && let Some(Dialog::Open { path } | Dialog::SaveAs { path }) = &mut self.view.dialog
-        {
-            *path = chosen.display().to_string();
+        let Some(answer) = self.dialogs.answer() else { return };
+        self.view.browsing = false;
+        let Some(Dialog::Open { path } | Dialog::SaveAs { path } | Dialog::Export { path, .. }) = &mut self.view.dialog
+        else {
+            return;
+        };
+        match answer {
+            Answer::Chosen(chosen) => *path = chosen.display().to_string(),
+            Answer::Left => {}
+            Answer::Absent => {
+                self.fail(
+                    "This desktop shows no file dialog (no portal answers, no zenity). Type the path instead.".into(),
+                );
+            }
         }
     }
 

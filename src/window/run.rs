@@ -1,13 +1,18 @@
 //! Opening the window, and saying what is missing where that fails.
 
+use std::cell::Cell;
 use std::fmt;
+use std::io::Write;
 use std::panic::{AssertUnwindSafe, catch_unwind};
 use std::path::PathBuf;
+use std::sync::atomic::{AtomicBool, Ordering};
 use std::sync::{Arc, Mutex};
+use std::time::Duration;
 
-use eframe::egui::{ViewportBuilder, vec2};
+use eframe::egui::{ViewportBuilder, pos2, vec2};
 
 use super::app::App;
+use super::keep::{DataFolder, load_settings};
 use crate::design::Design;
 
 /// Why the window could not be opened or went away.
@@ -25,6 +30,11 @@ pub enum WindowError {
         /// What the system said.
         reason: String,
     },
+    /// The display went away while the window was open.
+    Lost {
+        /// What the system said.
+        reason: String,
+    },
     /// The window stopped on an error of the program itself.
     Stopped {
         /// Where and why.
@@ -34,27 +44,32 @@ pub enum WindowError {
 
 impl fmt::Display for WindowError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        const CLOSED: &str = "The window cannot be opened:";
         match self {
             WindowError::NoDisplay => write!(
                 f,
-                "no display: neither DISPLAY (X11) nor WAYLAND_DISPLAY (Wayland) is set. Start it from a desktop session, or ask the \
-                 same in the terminal: polewright check FILE"
+                "{CLOSED} no display: neither DISPLAY (X11) nor WAYLAND_DISPLAY (Wayland) is set. Start it from a desktop session, \
+                 or ask the same in the terminal: polewright check FILE"
             ),
             WindowError::Display { reason } => write!(
                 f,
-                "the display cannot be used: {reason}. Check that the display named by DISPLAY or WAYLAND_DISPLAY is running, and \
-                 that the libraries libX11, libXcursor, libXi, libxkbcommon and libxkbcommon-x11 (X11) or libwayland-client and \
-                 libxkbcommon (Wayland) are installed"
+                "{CLOSED} the display cannot be used: {reason}. Check that the display named by DISPLAY or WAYLAND_DISPLAY is \
+                 running, and that the libraries libX11, libXcursor, libXi, libxkbcommon and libxkbcommon-x11 (X11) or \
+                 libwayland-client and libxkbcommon (Wayland) are installed"
             ),
             WindowError::Graphics { reason } => write!(
                 f,
-                "the display has no usable OpenGL: {reason}. Install the GL driver of the graphics card, or Mesa's software driver \
-                 (libGL, libEGL)"
+                "{CLOSED} the display has no usable OpenGL: {reason}. Install the GL driver of the graphics card, or Mesa's \
+                 software driver (libGL, libEGL)"
             ),
-            WindowError::Stopped { reason } => write!(f, "the window stopped: {reason}"),
+            WindowError::Lost { reason } => write!(f, "The display went away: {reason}. {KEPT}"),
+            WindowError::Stopped { reason } => write!(f, "The window stopped: {reason}. {KEPT}"),
         }
     }
 }
+
+/// What becomes of the work when the window ends by itself.
+const KEPT: &str = "Unsaved work is in the journal, which the next start offers";
 
 impl std::error::Error for WindowError {}
 
@@ -66,19 +81,74 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
     if !display_named() {
         return Err(WindowError::NoDisplay);
     }
-    let viewport = ViewportBuilder::default()
+    let folder = DataFolder::usual();
+    let viewport = placed(folder.as_ref())
         .with_title("Polewright")
         .with_app_id("polewright")
-        .with_inner_size(vec2(1280.0, 800.0))
         .with_min_inner_size(vec2(760.0, 520.0))
         .with_icon(super::icon::icon())
         .with_drag_and_drop(true);
-    let options = eframe::NativeOptions { viewport, ..eframe::NativeOptions::default() };
+    // The place of the window stands in the settings. The file named here is never written.
+    let unused = folder.as_ref().map(|folder| folder.path().join("unused.ron"));
+    let options = eframe::NativeOptions {
+        viewport,
+        persist_window: false,
+        persistence_path: unused,
+        ..eframe::NativeOptions::default()
+    };
+    let opened = Arc::new(AtomicBool::new(false));
+    let is_open = Arc::clone(&opened);
     let open = move || {
-        let create: eframe::AppCreator<'_> = Box::new(|cc| Ok(Box::new(App::new(&cc.egui_ctx, design, path))));
+        let create: eframe::AppCreator<'_> = Box::new(|cc| {
+            is_open.store(true, Ordering::Relaxed);
+            Ok(Box::new(match folder {
+                Some(folder) => App::keeping(&cc.egui_ctx, design, path, folder),
+                None => App::new(&cc.egui_ctx, design, path),
+            }))
+        });
         eframe::run_native("polewright", options, create)
     };
-    caught(open).and_then(|outcome| outcome.map_err(|error| explain(&error)))
+    AT_WORK.with(|at_work| at_work.0.set(true));
+    let outcome = caught(open).and_then(|outcome| outcome.map_err(|error| explain(&error)));
+    AT_WORK.with(|at_work| at_work.0.set(false));
+    outcome.map_err(|error| match error {
+        WindowError::Display { reason } if opened.load(Ordering::Relaxed) => WindowError::Lost { reason },
+        error => error,
+    })
+}
+
+thread_local! {
+    /// Set while the window is open.
+    static AT_WORK: AtWork = const { AtWork(Cell::new(false)) };
+}
+
+/// Tells what became of the work where the X11 library ends the process by itself, as it does when its server goes away: it prints
+/// a line of its own and exits, and only what belongs to the thread is still dropped then.
+struct AtWork(Cell<bool>);
+
+/// Longest that the writer of the journal takes for what was handed to it.
+const LAST_WORDS: Duration = Duration::from_millis(600);
+
+impl Drop for AtWork {
+    fn drop(&mut self) {
+        if self.0.get() {
+            let _ = writeln!(std::io::stderr(), "The display went away. {KEPT}.");
+            std::thread::sleep(LAST_WORDS);
+        }
+    }
+}
+
+/// A window of the size and in the place it was left in.
+fn placed(folder: Option<&DataFolder>) -> ViewportBuilder {
+    let usual = ViewportBuilder::default().with_inner_size(vec2(1280.0, 800.0));
+    // Broken settings are told by the window.
+    let settings = folder.and_then(|folder| load_settings(folder).ok());
+    let Some(place) = settings.and_then(|settings| settings.look.window) else { return usual };
+    let sized = usual.with_inner_size(vec2(place.size.0, place.size.1)).with_maximized(place.maximized);
+    match place.position {
+        Some((x, y)) => sized.with_position(pos2(x, y)),
+        None => sized,
+    }
 }
 
 /// On Linux and the BSDs a display is named in the environment; elsewhere the system always has one.

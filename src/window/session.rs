@@ -38,6 +38,10 @@ pub struct Document {
 pub struct Session {
     document: Document,
     saved: Design,
+    /// The file does not hold what was last read or saved: it changed, vanished, or the work was recovered.
+    adrift: bool,
+    /// Counts the changes of the document.
+    revision: u64,
     path: Option<PathBuf>,
     history: History<Document>,
     shown: (Level, Level),
@@ -67,6 +71,8 @@ impl Session {
         Session {
             saved: design.clone(),
             document: Document { design, bad_texts: BTreeMap::new() },
+            adrift: false,
+            revision: 0,
             path,
             history: History::default(),
             shown: (Level::Nominal, Level::Nominal),
@@ -83,6 +89,35 @@ impl Session {
             reviewed: None,
             hand: Hand::default(),
         }
+    }
+
+    /// A session on work that was recovered, its file, and the design in that file. It counts as unsaved.
+    pub(super) fn recovered(document: Document, path: Option<PathBuf>, saved: Option<Design>) -> Self {
+        let mut session = Session::new(document.design, path);
+        session.document.bad_texts = document.bad_texts;
+        session.saved = saved.unwrap_or_else(|| session.saved.clone());
+        session.adrift = true;
+        session
+    }
+
+    /// The document as it stands.
+    pub fn document(&self) -> &Document {
+        &self.document
+    }
+
+    /// Moves with every change of the document.
+    pub(super) fn revision(&self) -> u64 {
+        self.revision
+    }
+
+    /// The design as it was last read or saved.
+    pub(super) fn saved(&self) -> &Design {
+        &self.saved
+    }
+
+    /// Takes note that the file no longer holds what was read or saved, or holds it again.
+    pub(super) fn set_adrift(&mut self, adrift: bool) {
+        self.adrift = adrift;
     }
 
     /// The design as it stands.
@@ -107,7 +142,7 @@ impl Session {
 
     /// True when the design differs from its file, or a field holds text that is in no file.
     pub fn unsaved(&self) -> bool {
-        self.document.design != self.saved || !self.document.bad_texts.is_empty()
+        self.adrift || self.document.design != self.saved || !self.document.bad_texts.is_empty()
     }
 
     /// A session on a design that is in no file yet.
@@ -279,6 +314,7 @@ impl Session {
         if self.document != before {
             self.history.record(name, before, gesture);
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -292,6 +328,7 @@ impl Session {
         if let Some(document) = self.history.undo(&self.document) {
             self.document = document;
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -300,6 +337,7 @@ impl Session {
         if let Some(document) = self.history.redo(&self.document) {
             self.document = document;
             self.generation += 1;
+            self.revision += 1;
         }
     }
 
@@ -307,6 +345,7 @@ impl Session {
     pub fn saved_as(&mut self, path: PathBuf, design: Design) {
         self.path = Some(path);
         self.saved = design;
+        self.adrift = false;
     }
 
     /// Checks and analyses the document when it, the condition or the frequencies changed. True when results moved.

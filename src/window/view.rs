@@ -1,37 +1,18 @@
 //! What the window shows and how, apart from the work itself: none of it is saved with a design or undone.
 
+use std::path::PathBuf;
+
 use eframe::egui::{Rect, ThemePreference};
 
-use super::command::{Command, Curve};
+use super::command::{Command, Curve, Exported};
 use super::goal::GoalFields;
 use super::history::Gesture;
 use super::new_design::NewDesign;
+use super::safety::Kept;
 use super::session::Session;
 use super::what_if::WhatIf;
 
-/// Event whose time response is shown.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub(super) enum Event {
-    /// Rise in load current.
-    #[default]
-    Load,
-    /// Rise in input voltage.
-    Line,
-    /// Rise of the reference.
-    Reference,
-}
-
-/// Closed-loop response shown over frequency.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
-pub(super) enum ClosedLoop {
-    /// Output impedance.
-    #[default]
-    Impedance,
-    /// Input voltage to output voltage.
-    Line,
-    /// Reference to output voltage.
-    Reference,
-}
+pub(super) use crate::figure::{ClosedLoop, Event};
 
 /// A question or a list over the window.
 #[derive(Clone, Debug, PartialEq)]
@@ -48,8 +29,25 @@ pub(super) enum Dialog {
         /// Typed path.
         path: String,
     },
+    /// Under which path to put something out.
+    Export {
+        /// What is put out.
+        what: Exported,
+        /// Typed path.
+        path: String,
+    },
     /// Unsaved changes stand before this.
     Unsaved(Box<Command>),
+    /// The file changed since it was read: whether to save over it.
+    Overwrite {
+        /// The file.
+        path: PathBuf,
+    },
+    /// Unsaved work that an earlier window left behind.
+    Recovery {
+        /// Journal whose removal was asked for and waits for a second word.
+        discarding: Option<PathBuf>,
+    },
     /// The searchable list of commands.
     Commands {
         /// What is searched for.
@@ -172,6 +170,8 @@ pub(super) struct View {
     pub what_if: WhatIf,
     /// The form of a new design.
     pub new_design: NewDesign,
+    /// The system's file dialog was asked for and has not answered.
+    pub browsing: bool,
     /// What was last said.
     pub message: Option<Message>,
     /// Colours.
@@ -214,6 +214,7 @@ impl Default for View {
             hint: false,
             what_if: WhatIf::default(),
             new_design: NewDesign::default(),
+            browsing: false,
             message: None,
             theme: ThemePreference::System,
             gain_rect: Rect::NOTHING,
@@ -233,7 +234,8 @@ impl View {
 
     /// What the line under the bar says. A failure that an open dialog tells is not told twice.
     pub(super) fn banner(&self) -> Option<&Message> {
-        let in_dialog = matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. }));
+        let in_dialog =
+            matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. }));
         self.message.as_ref().filter(|message| !(message.failed && in_dialog))
     }
 
@@ -258,6 +260,8 @@ impl View {
 pub(super) struct Desk<'a> {
     /// The document and its results.
     pub session: &'a Session,
+    /// What outlives the window, and what is known about the file.
+    pub kept: &'a Kept,
     /// The view.
     pub view: &'a mut View,
     /// Requests for the next turn of `logic`.

@@ -16,4 +16,5 @@ mod write;
 
 pub use error::{EntryError, FileError, FileErrorKind};
 pub use read::{FORMAT, LARGEST_FILE, load, read};
+pub use save::replace;
 pub use write::{save, write};

@@ -15,7 +15,7 @@ const MOST_LINKS: usize = 40;
 ///
 /// # Errors
 /// What the system says, or that the file is read-only. The old file is untouched then.
-pub(super) fn replace(path: &Path, bytes: &[u8]) -> io::Result<()> {
+pub fn replace(path: &Path, bytes: &[u8]) -> io::Result<()> {
     let target = follow_links(path)?;
     let old = match fs::metadata(&target) {
         Ok(about) if about.is_dir() => return Err(io::Error::new(io::ErrorKind::IsADirectory, "it is a folder")),
