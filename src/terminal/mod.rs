@@ -34,5 +34,5 @@ mod check;
 mod json;
 mod text;
 
-pub use arguments::{CheckRequest, Command, Usage, parse};
+pub use arguments::{CheckRequest, Command, Opening, Usage, parse};
 pub use check::{Outcome, check};
