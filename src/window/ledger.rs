@@ -1,6 +1,6 @@
 //! The phase ledger as a waterfall: each cause takes up where the one before ended, down to the phase margin.
 
-use eframe::egui::{Align2, Color32, Rect, RichText, Sense, Stroke, Ui, pos2, vec2};
+use eframe::egui::{Align2, Color32, Rect, RichText, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis::Axis;
 use super::theme::{self, Palette, palette};
@@ -79,11 +79,14 @@ fn row_ui(ui: &mut Ui, row: &LedgerRow, from: f64, x: &Axis, desk: &Desk<'_>) {
     }
     painter.vline(b, middle + 4.5..=rect.bottom() + ROW / 2.0 - 4.5, Stroke::new(1.0, palette.grid_strong));
     painter.text(rect.right_center(), Align2::RIGHT_CENTER, signed(row.degrees), theme::small(), palette.ink);
-    response.on_hover_text(format!("{}: {}", row.label, signed(row.degrees)));
+    let words = format!("{}: {}", row.label, signed(row.degrees));
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, &words));
+    response.on_hover_text(words);
 }
 
 fn sum_ui(ui: &mut Ui, margin_deg: f64, x: &Axis, palette: &Palette) {
-    let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), ROW + 2.0), Sense::hover());
+    let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), ROW + 2.0), Sense::hover());
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, format!("phase margin: {}", signed(margin_deg))));
     let painter = ui.painter();
     painter.hline(rect.x_range(), rect.top() + 0.5, Stroke::new(1.0, palette.hairline));
     painter.text(rect.left_center(), Align2::LEFT_CENTER, "phase margin", theme::strong(11.5), palette.ink);

@@ -177,12 +177,11 @@ fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette
         quantity::print_digits(*ohm, Unit::Ohm, 3),
         quantity::print_digits(*frequency_hz, Unit::Hertz, 3)
     );
-    // At the right of the peak wherever the number fits there: the names of the curves stand at the left.
-    let at_left = at.x + 140.0 > plot.rect.right();
-    let align = if at_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
-    let x = if at_left { at.x - 10.0 } else { at.x + 10.0 };
+    // Above the peak and at its right, pushed back to the left as far as the plot makes it: the closed-loop curve lies below.
+    let at = at + vec2(6.0, if at.y - plot.rect.top() > 40.0 { -13.0 } else { 15.0 });
     let ground = palette.canvas.gamma_multiply(0.8);
-    plot::tag(painter, pos2(x, at.y - 2.0), align, &text, theme::strong(12.0), (palette.good, ground));
+    let clipped = painter.with_clip_rect(plot.rect);
+    plot::tag(&clipped, at, Align2::LEFT_CENTER, &text, theme::strong(12.0), (palette.good, ground));
 }
 
 /// The linked line under the pointer, the values there, and what the lines mean.

@@ -21,7 +21,7 @@ pub(super) fn tie_ui(ui: &mut Ui, kind: LaneKind, left: f32, rows: (f32, f32), d
     let response = ui.interact(rect, ui.scope_id().with(("tie", word)), Sense::click());
     response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, tied, name));
     let lit = response.hovered() || response.has_focus();
-    let colour = if tied || lit { palette.accent } else { palette.rail };
+    let colour = if tied || lit { palette.accent } else { palette.weak.gamma_multiply(0.8) };
     let stroke = Stroke::new(if tied { 2.0 } else { 1.4 }, colour);
     let painter = ui.painter();
     let (x, end, middle) = (left + 5.0, left + 10.0, f32::midpoint(top, bottom));
