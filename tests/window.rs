@@ -5,12 +5,14 @@
 
 use eframe::egui::{self, Key, Modifiers, Pos2, Role, Vec2, pos2, vec2};
 use egui_kittest::Harness;
-use egui_kittest::kittest::Queryable;
-use polewright::analysis::Level;
+use egui_kittest::kittest::{NodeT, Queryable};
+use polewright::analysis::{Level, terms};
 use polewright::design::sample;
 use polewright::quantity::{Unit, parse};
 use polewright::window::App;
 
+#[path = "window/export.rs"]
+mod export;
 #[path = "window/lanes.rs"]
 mod lanes;
 #[path = "window/safety.rs"]
@@ -533,41 +535,150 @@ fn large_text_in_a_small_window_leaves_room_for_the_plots() {
 }
 
 #[test]
-fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
-    use polewright::window::{Command, Exported};
-    let folder = tempfile::tempdir().unwrap();
+fn a_new_design_is_proposed_with_its_assumptions_and_created() {
     let mut harness = usual();
-    let export = |harness: &mut Harness<'_, App>, what, name: &str| {
-        let path = folder.path().join(name);
-        harness.state_mut().ask(Command::ExportPath { what, path: path.clone() });
-        harness.run();
-        (harness.state().message().unwrap().clone(), std::fs::read(path).ok())
+    enter(&mut harness, "Inductor", "12u");
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::N);
+    harness.run();
+    let told = |harness: &Harness<'_, App>, text: &str| {
+        harness.query_all_by(|node| node.value().is_some_and(|value| value.contains(text))).count()
     };
-    for (what, name) in [(Exported::Bode, "b"), (Exported::Step, "s"), (Exported::Response, "r")] {
-        let (message, svg) = export(&mut harness, what, &format!("{name}.svg"));
-        assert!(!message.failed, "{}", message.text);
-        let svg = String::from_utf8(svg.unwrap()).unwrap();
-        assert!(svg.contains("Gimbal rail") && svg.contains("nominal input 12 V"), "{svg}");
-        assert!(!svg.contains("NaN") && !svg.contains("inf"));
-        let (_, png) = export(&mut harness, what, &format!("{name}.PNG"));
-        assert!(png.unwrap().starts_with(b"\x89PNG"));
+    assert_eq!(told(&harness, "Stable and within all"), 1);
+    assert!(told(&harness, "common practice") > 5);
+    let set = |harness: &mut Harness<'_, App>, label: &str, text: &str| {
+        field(harness, label).focus();
+        harness.run();
+        harness.key_press_modifiers(Modifiers::COMMAND, Key::A);
+        field(harness, label).type_text(text);
+        harness.run();
+        harness.key_press(Key::Enter);
+        harness.run();
+    };
+    set(&mut harness, "Input, least, of the new design", "nine");
+    assert_eq!(told(&harness, "Stable and within all"), 0);
+    assert_eq!(told(&harness, "is not a number"), 1, "the reason stands under the field");
+    set(&mut harness, "Input, least, of the new design", "18");
+    assert_eq!(told(&harness, "must not be above"), 1);
+    set(&mut harness, "Input, least, of the new design", "10");
+    assert_eq!(told(&harness, "Stable and within all"), 1);
+    harness.get_by_label("Create").click();
+    harness.run();
+    // The design that stood there has unsaved changes.
+    harness.get_by_label("Discard changes").click();
+    harness.run();
+    let session = harness.state().session();
+    assert!((session.design().values.get("stage.input.least").unwrap() - 10.0).abs() < 1e-12);
+    assert!(session.unsaved(), "it is in no file yet");
+    assert!(session.analysis().unwrap().all_met());
+    assert!(session.design().notes.contains("common practice"));
+}
+
+#[test]
+fn a_dialog_of_any_size_has_every_control_named() {
+    for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+        for key in [Key::N, Key::O, Key::K] {
+            let mut harness = window(size, scale);
+            harness.key_press_modifiers(Modifiers::COMMAND, key);
+            harness.run();
+            harness.check_accessibility();
+            assert!(harness.query_by_label("Cancel").is_some() || key == Key::K);
+        }
     }
-    let (message, file) = export(&mut harness, Exported::Bode, "b.txt");
-    assert!(message.failed && file.is_none() && message.text.contains(".png or .svg"), "{}", message.text);
-    let (_, csv) = export(&mut harness, Exported::Curves, "c.csv");
-    let csv = String::from_utf8(csv.unwrap()).unwrap();
-    let rows = harness.state().session().analysis().unwrap().shown.as_ref().unwrap().curves.frequencies_hz.len();
-    assert_eq!(csv.lines().count(), rows + 1);
-    for (command, word) in [(Command::CopyParts, "R2"), (Command::CopyMargins, "Phase margin")] {
-        harness.state_mut().ask(command);
-        harness.step();
-        let copied = harness.output().platform_output.commands.iter().find_map(|command| match command {
-            egui::OutputCommand::CopyText(text) => Some(text.clone()),
-            _ => None,
-        });
-        assert!(copied.unwrap().contains(word));
+}
+
+#[test]
+fn the_hint_is_shown_when_asked_for_and_closed() {
+    for (size, scale) in [(vec2(1280.0, 800.0), 1.0), (vec2(640.0, 400.0), 2.0)] {
+        let mut harness = window(size, scale);
+        harness.key_press(Key::F1);
+        harness.run();
+        assert!(harness.state().hinting());
+        let sentences = harness.query_all_by(|node| node.value().is_some_and(|text| text.contains("Drag a handle")));
+        assert_eq!(sentences.count(), 1);
+        harness.check_accessibility();
+        harness.get_by_label("Got it").click();
+        harness.run();
+        assert!(!harness.state().hinting());
     }
-    enter(&mut harness, "Inductor", "0");
-    let (message, file) = export(&mut harness, Exported::Bode, "stale.svg");
-    assert!(message.failed && file.is_none() && message.text.contains("out of date"), "{}", message.text);
+}
+
+#[test]
+fn every_read_out_is_explained_with_its_formula_in_letters_the_font_has() {
+    let harness = usual();
+    for readout in &harness.state().session().analysis().unwrap().readouts {
+        let node = harness.get_by_role_and_label(Role::Button, readout.name);
+        let term = terms::find(readout.key).unwrap();
+        let description = node.accesskit_node().description().unwrap_or_default();
+        assert!(description.contains(term.formula), "{}: {description}", readout.key);
+    }
+    let font = egui::FontId::proportional(13.0);
+    for term in terms::TERMS {
+        for letter in term.name.chars().chain(term.text.chars()).chain(term.formula.chars()) {
+            let there = letter == '\n' || harness.ctx.fonts_mut(|fonts| fonts.has_glyph(&font, letter));
+            assert!(there, "{letter} of {}", term.key);
+        }
+    }
+}
+
+/// The part of a schematic whose accessible name begins so.
+fn part<'h>(harness: &'h Harness<'_, App>, begin: &'h str) -> egui_kittest::Node<'h> {
+    harness
+        .get_by(move |node| node.role() == Role::Button && node.label().is_some_and(|label| label.starts_with(begin)))
+}
+
+#[test]
+fn a_part_of_the_schematic_leads_to_its_field() {
+    let mut harness = usual();
+    part(&harness, "Inductor 10 µH").click();
+    harness.run();
+    assert!(field(&harness, "Inductor").is_focused());
+    // By keyboard, and into a section that is folded.
+    harness.get_by_label("Power stage").click();
+    harness.run();
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_none());
+    part(&harness, "Input 12 V").focus();
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+    assert!(field(&harness, "Input, nominal").is_focused());
+    part(&harness, "Reference").click();
+    harness.run();
+    assert!(field(&harness, "Reference voltage").is_focused());
+}
+
+#[test]
+fn a_part_and_what_it_sets_light_each_other() {
+    let mut harness = window(vec2(1280.0, 1300.0), 1.0);
+    let lit = |harness: &mut Harness<'_, App>| harness.state_mut().lit();
+    let has = |names: &[String], begin: &str| names.iter().any(|name| name.starts_with(begin));
+    part(&harness, "R2,").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    for wanted in ["R2,", "first zero", "first pole", "zero ", "pole "] {
+        assert!(has(&names, wanted), "{wanted}: {names:?}");
+    }
+    assert!(!has(&names, "second zero") && !has(&names, "C1,") && !has(&names, "LC resonance"), "{names:?}");
+    harness.get_by_label("second zero").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    for wanted in ["R3,", "C3,", "Upper divider resistor"] {
+        assert!(has(&names, wanted), "{wanted}: {names:?}");
+    }
+    assert!(!has(&names, "R2,"), "{names:?}");
+    part(&harness, "Inductor").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    assert!(has(&names, "LC resonance") && !has(&names, "ESR zero"), "{names:?}");
+    harness.hover_at(pos2(640.0, 3.0));
+    harness.run();
+    assert!(lit(&mut harness).is_empty());
+}
+
+#[test]
+fn schematics_fold() {
+    let mut harness = usual();
+    part(&harness, "Inductor 10 µH");
+    harness.key_press(Key::F8);
+    harness.run();
+    assert_eq!(harness.query_all_by_label("Inductor 10 µH").count(), 0);
 }

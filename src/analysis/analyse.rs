@@ -1,18 +1,27 @@
 //! The analysis itself: nine conditions at every edit, one of them in full.
 
 use super::condition::index_of;
+use super::control_figures::control_figures;
 use super::crossover_window::window;
 use super::curves::curves;
+use super::filter_readouts::filter_readouts;
+use super::filter_remarks::DAMPED_BELOW;
+use super::filter_result::{InputFilterDetail, InputFilterResult};
+use super::impedance::Interface;
 use super::ledger::ledger;
 use super::loop_model::{LoopModel, Shared, model_finding};
 use super::readouts::readouts;
 use super::remarks::remarks;
 use super::requirement::verdict;
-use super::result::{Analysis, Condition, ConditionResult, ConditionSummary, Detail, Level, LoopResult, Steps};
+use super::result::{
+    Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, Detail, Level, LoopResult, Steps,
+};
 use super::steps::{load_figures, steps};
+use crate::converter::{Conduction, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
-use crate::linear::{FrequencyResponse, Modes, Zpk, margins};
+use crate::linear::{FrequencyResponse, Modes, Verdict, Zpk, margins};
+use crate::quantity::{Unit, print_digits};
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// Which condition is shown in full.
@@ -63,7 +72,7 @@ pub fn logarithmic(from_hz: f64, to_hz: f64, points: usize) -> Vec<f64> {
 }
 
 /// Margins are searched from this share of the switching frequency …
-const SEARCH_FROM: f64 = 1e-6;
+pub(super) const SEARCH_FROM: f64 = 1e-6;
 /// … to this one.
 const SEARCH_TO: f64 = 0.5;
 
@@ -160,7 +169,11 @@ fn conclude(
         None => shown.as_ref().err().into_iter().cloned().collect(),
     };
     Analysis {
-        readouts: readouts(detail, &conditions, &requirements, design.events.settling_band),
+        readouts: [
+            readouts(detail, &conditions, &requirements, design.events.settling_band),
+            filter_readouts(detail, &conditions),
+        ]
+        .concat(),
         shown,
         condition,
         conditions,
@@ -172,14 +185,16 @@ fn conclude(
 }
 
 /// A condition worked out, its model kept.
-#[derive(Clone, Debug)]
 struct Worked {
     model: LoopModel,
     /// Modes of the closed loop, when it is stable.
     modes: Option<Modes>,
     loop_gain: LoopResult,
+    control: ControlFigures,
     load_step: Option<super::result::StepFigures>,
     right_half_plane_zero_hz: Option<f64>,
+    /// The input filter's interface with what was found there.
+    input_filter: Option<(Interface, InputFilterResult)>,
 }
 
 impl Worked {
@@ -189,7 +204,9 @@ impl Worked {
         ConditionSummary {
             operating_point: self.model.averaged.operating_point,
             loop_gain: self.loop_gain,
+            control: self.control,
             load_step: self.load_step,
+            input_filter: self.input_filter.map(|(_, result)| result),
             right_half_plane_zero_hz: self.right_half_plane_zero_hz,
             loop_db,
             loop_deg,
@@ -198,8 +215,27 @@ impl Worked {
 }
 
 fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Worked, Finding> {
+    let (model, loop_gain, modes) = loop_at(design, shared, condition)?;
+    let (stage_condition, fs) = (condition.of_stage(&design.stage), design.stage.switching_frequency);
+    let load_step =
+        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
+    let control = control_figures(&model, fs * SEARCH_FROM, fs * SEARCH_TO).map_err(|e| model_finding(&e))?;
+    let right_half_plane_zero_hz = model.right_half_plane_zero_hz(&design.stage).map_err(|e| model_finding(&e))?;
+    let input_filter = filter_interface(design, shared, &stage_condition, &model, &loop_gain)?;
+    Ok(Worked { model, modes, loop_gain, control, load_step, right_half_plane_zero_hz, input_filter })
+}
+
+/// Model, margins and verdict at a condition; and for a stable loop its modes.
+///
+/// # Errors
+/// A finding when the condition cannot be held or its model cannot be solved.
+pub(super) fn loop_at(
+    design: &CheckedDesign,
+    shared: &Shared,
+    condition: &Condition,
+) -> Result<(LoopModel, LoopResult, Option<Modes>), Finding> {
     let stage_condition = condition.of_stage(&design.stage);
-    let model = LoopModel::new(&design.stage, &design.modulator, shared, &stage_condition)?;
+    let model = LoopModel::new(&design.stage, shared, &stage_condition)?;
     refuse_out_of_limits(design, &model)?;
     let fs = design.stage.switching_frequency;
     let mut margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
@@ -213,23 +249,42 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
         gain_at_switching: model.loop_gain.at_hz(fs).norm(),
     };
-    let load_step =
-        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
-    let right_half_plane_zero_hz = design.stage.right_half_plane_zero_hz(model.plant.zpk());
-    Ok(Worked { model, modes, loop_gain, load_step, right_half_plane_zero_hz })
+    Ok((model, loop_gain, modes))
+}
+
+/// The input filter against the converter, where one is fitted.
+fn filter_interface(
+    design: &CheckedDesign,
+    shared: &Shared,
+    condition: &StageCondition,
+    model: &LoopModel,
+    loop_gain: &LoopResult,
+) -> Result<Option<(Interface, InputFilterResult)>, Finding> {
+    let current = model.averaged.operating_point.input_current;
+    let Some(interface) = Interface::new(&design.stage, shared, condition, current)? else { return Ok(None) };
+    let unstable = matches!(loop_gain.verdict, Verdict::Unstable { .. });
+    let result = interface.study(&design.stage, model, unstable).map_err(|e| model_finding(&e))?;
+    Ok(result.map(|result| (interface, result)))
 }
 
 /// Conditions that cannot be held: a duty ratio beyond the modulator's limits.
 fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(), Finding> {
-    let point = &model.averaged.operating_point;
-    let (least, greatest) = (design.modulator.duty_least, design.modulator.duty_greatest);
-    if !(least..=greatest).contains(&point.duty) {
-        let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
-        let message =
-            format!("A duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}.", point.duty);
-        return Err(Finding::problem(place, message).with_hint("widen the duty limits or the input range"));
+    let duty = model.averaged.operating_point.duty;
+    let (least, greatest) = (design.law.duty_least, design.law.duty_greatest);
+    if (least..=greatest).contains(&duty) {
+        return Ok(());
     }
-    Ok(())
+    let needed = print_digits(duty, Unit::One, 3);
+    let message = format!("A duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}.");
+    let resting = model.averaged.operating_point.conduction == Conduction::Discontinuous;
+    Err(if duty > greatest {
+        Finding::problem("control.duty.greatest", message).with_hint("widen the duty limits or the input range")
+    } else if resting {
+        Finding::problem("control.duty.least", message)
+            .with_hint("widen the duty limits, or raise the least load: below it the modulator skips pulses")
+    } else {
+        Finding::problem("control.duty.least", message).with_hint("widen the duty limits or the input range")
+    })
 }
 
 fn detailed(
@@ -241,17 +296,28 @@ fn detailed(
 ) -> Result<Detail, Finding> {
     let model = &worked.model;
     let stage_condition = condition.of_stage(&design.stage);
-    let landmarks = design.stage.landmarks(&stage_condition, model.plant.zpk());
+    let plain = worked.input_filter.as_ref().map_or(model, |(interface, _)| &interface.without);
+    let conduction = model.averaged.operating_point.conduction;
+    let landmarks = design.stage.landmarks(&stage_condition, conduction, plain.plant.zpk());
+    let landmarks = shared.law.landmarks(landmarks, plain.plant.zpk(), &plain.controlled);
+    let input_filter =
+        worked.input_filter.as_ref().zip(design.stage.input_filter).map(|((interface, result), filter)| {
+            InputFilterDetail {
+                result: *result,
+                curves: interface.curves(&request.frequencies_hz),
+                damping: filter.damping_for(result.least_input_impedance_ohm * DAMPED_BELOW),
+            }
+        });
     let reference = Zpk::from_state_space(&shared.compensator, 0, 1).map_err(|e| model_finding(&e))?;
     let scale = design.compensator.dc_output_voltage() / design.compensator.reference;
     let curves = curves(model, shared, &reference, &request.frequencies_hz, scale).map_err(|e| model_finding(&e))?;
     let crossover = worked.loop_gain.margins.headline_crossover();
     let ledger = crossover.map(|c| ledger(model, shared, &design.compensator, &landmarks, c.frequency_hz));
     let operating_point = model.averaged.operating_point.clone();
-    let control_voltage = design.modulator.control_voltage(operating_point.duty, condition.input_voltage);
+    let at_rest = (operating_point.load_voltage, worked.control.control_voltage);
     let crossover_hz = crossover.map(|c| c.frequency_hz);
     let steps = match &worked.modes {
-        Some(modes) => steps(design, modes, crossover_hz, control_voltage, request.step_points),
+        Some(modes) => steps(design, modes, crossover_hz, at_rest, request.step_points),
         None => Ok(Steps::default()),
     };
     Ok(Detail {
@@ -262,9 +328,11 @@ fn detailed(
         landmarks,
         loop_gain: worked.loop_gain.clone(),
         curves,
+        input_filter,
         steps: steps.map_err(|e| model_finding(&e))?,
         ledger,
-        control_voltage,
+        control: worked.control.clone(),
+        ramp: shared.law.current().map(|(_, sense)| sense.ramp()),
     })
 }
 

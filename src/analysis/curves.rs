@@ -1,10 +1,12 @@
 //! Frequency curves of the condition shown in full.
 //!
 //! *Conventions*: closed-loop quantities are the open-loop ones over 1 + T with the exact delay; the output impedance
-//! counts current drawn by the load as positive, so a resistive output reads positive.
+//! counts current drawn by the load as positive, so a resistive output reads positive. All three are taken at the load's terminals.
 
 use super::loop_model::{LoopModel, Shared};
 use super::result::Curves;
+use crate::control::CONTROL;
+use crate::converter::signals::{INPUT_VOLTAGE, LOAD_CURRENT, LOAD_VOLTAGE, OUTPUT_VOLTAGE};
 use crate::linear::{Complex, FactoredResponse, FrequencyResponse, LinearError, Zpk};
 
 /// Decibels of a magnitude.
@@ -32,14 +34,15 @@ pub(super) fn curves(
     let (plant_db, plant_deg) = both(&model.plant);
     let (compensator_db, compensator_deg) = both(&shared.compensator_response);
     let (loop_db, loop_deg) = both(&model.loop_gain);
-    let (mut impedance_db, mut impedance_deg) = both(&FactoredResponse::new(model.vout_from_load()?.scaled(-1.0), 0.0));
+    let (mut impedance_db, mut impedance_deg) =
+        both(&FactoredResponse::new(model.open_loop(LOAD_VOLTAGE, LOAD_CURRENT)?.scaled(-1.0), 0.0));
     if let Some([with, without]) = model.bank_inductance()? {
         for ((gain, phase), f) in impedance_db.iter_mut().zip(&mut impedance_deg).zip(frequencies_hz) {
             let impedance = polar(*gain, *phase) - with.at_hz(*f) + without.at_hz(*f);
             (*gain, *phase) = (db(impedance.norm()), impedance.arg().to_degrees());
         }
     }
-    let (line_db, line_deg) = both(&FactoredResponse::new(model.vout_from_input()?, 0.0));
+    let (line_db, line_deg) = both(&FactoredResponse::new(model.open_loop(LOAD_VOLTAGE, INPUT_VOLTAGE)?, 0.0));
     let (reference_db, reference_deg) = both(&FactoredResponse::new(reference.clone(), 0.0));
     let mut c = Curves {
         frequencies_hz: frequencies_hz.to_vec(),
@@ -48,7 +51,21 @@ pub(super) fn curves(
         ..Curves::default()
     };
     let reference_offset_db = db(reference_scale);
+    let beyond = if model.load_beyond { Some(Beyond::new(model)?) } else { None };
     for k in 0..n {
+        if let Some(beyond) = &beyond {
+            let loop_gain = polar(loop_db[k], loop_deg[k]);
+            let at = beyond.at(frequencies_hz[k], loop_gain);
+            let follows = polar(plant_db[k] + reference_db[k] - reference_offset_db, plant_deg[k] + reference_deg[k]);
+            let following = follows * at.load_over_sensed / (loop_gain + 1.0);
+            c.output_impedance_ohm.push(at.impedance.norm());
+            c.output_impedance_deg.push(at.impedance.arg().to_degrees());
+            c.line_to_output_db.push(db(at.line.norm()));
+            c.line_to_output_deg.push(at.line.arg().to_degrees());
+            c.reference_to_output_db.push(db(following.norm()));
+            c.reference_to_output_deg.push(following.arg().to_degrees());
+            continue;
+        }
         let feedback = Complex::ONE + polar(loop_db[k], loop_deg[k]);
         let (size, turn) = (0.5 * db(feedback.norm_sqr()), feedback.arg().to_degrees());
         c.output_impedance_ohm.push(from_db(impedance_db[k] - size));
@@ -59,6 +76,39 @@ pub(super) fn curves(
         c.reference_to_output_deg.push(wrapped(plant_deg[k] + reference_deg[k] - turn));
     }
     Ok(Curves { plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, ..c })
+}
+
+/// Responses of a load behind a second stage, whose voltage is not the regulated one.
+///
+/// With w a disturbance, y the load's voltage, s the sensed one and r = y/s as the control voltage drives both:
+/// y/w closed = y/w open − r·T/(1 + T)·(s/w open).
+struct Beyond {
+    load: [FactoredResponse; 3],
+    sensed: [FactoredResponse; 3],
+}
+
+/// What they come to at one frequency.
+struct BeyondAt {
+    impedance: Complex,
+    line: Complex,
+    load_over_sensed: Complex,
+}
+
+impl Beyond {
+    fn new(model: &LoopModel) -> Result<Self, LinearError> {
+        let row = |output: &str| -> Result<[FactoredResponse; 3], LinearError> {
+            let from = |input: &str| model.open_loop(output, input).map(|zpk| FactoredResponse::new(zpk, 0.0));
+            Ok([from(CONTROL)?, from(INPUT_VOLTAGE)?, from(LOAD_CURRENT)?])
+        };
+        Ok(Beyond { load: row(LOAD_VOLTAGE)?, sensed: row(OUTPUT_VOLTAGE)? })
+    }
+
+    fn at(&self, f: f64, loop_gain: Complex) -> BeyondAt {
+        let load_over_sensed = self.load[0].at_hz(f) / self.sensed[0].at_hz(f);
+        let held = load_over_sensed * loop_gain / (loop_gain + 1.0);
+        let closed = |input: usize| self.load[input].at_hz(f) - held * self.sensed[input].at_hz(f);
+        BeyondAt { impedance: -closed(2), line: closed(1), load_over_sensed }
+    }
 }
 
 /// Nepers per decibel.

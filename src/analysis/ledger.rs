@@ -13,6 +13,15 @@ use std::f64::consts::TAU;
 /// Shares of less than this [°] are taken together in one row.
 const SMALL_DEG: f64 = 0.05;
 
+/// How the rows of the stage begin that belong to a landmark, with its key.
+const LANDMARKS: [(&str, &str); 5] = [
+    ("LC resonance", "lc-resonance"),
+    ("ESR zero", "esr-zero"),
+    ("RHP zero", "right-half-plane-zero"),
+    ("low pole", "low-pole"),
+    ("sampling", "half-switching"),
+];
+
 /// The ledger at a crossover [Hz].
 pub(super) fn ledger(
     model: &LoopModel,
@@ -21,12 +30,23 @@ pub(super) fn ledger(
     landmarks: &[Landmark],
     crossover_hz: f64,
 ) -> Ledger {
-    let mut rows =
-        vec![LedgerRow { label: "half turn".into(), degrees: 180.0, role: LedgerRole::HalfTurn, lane: None }];
+    let mut rows = vec![LedgerRow {
+        label: "half turn".into(),
+        degrees: 180.0,
+        role: LedgerRole::HalfTurn,
+        lane: None,
+        landmark: None,
+    }];
     let ideal = FactoredResponse::new(compensator.ideal(), 0.0);
     rows.extend(compensator_rows(compensator, &ideal, crossover_hz));
     let amplifier = shared.compensator_response.phase_deg(crossover_hz) - ideal.phase_deg(crossover_hz);
-    rows.push(LedgerRow { label: "amplifier".into(), degrees: amplifier, role: LedgerRole::Amplifier, lane: None });
+    rows.push(LedgerRow {
+        label: "amplifier".into(),
+        degrees: amplifier,
+        role: LedgerRole::Amplifier,
+        lane: None,
+        landmark: None,
+    });
     let mut small = 0.0;
     let mut factors = model.plant.factor_phases_deg(crossover_hz);
     let cancelling = pairs(&mut factors);
@@ -34,7 +54,7 @@ pub(super) fn ledger(
         if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
             small += factor.phase_deg;
         } else {
-            rows.push(plant_row(&factor, landmarks));
+            rows.push(plant_row(&factor, landmarks, model));
         }
     }
     for pair in cancelling {
@@ -50,13 +70,20 @@ pub(super) fn ledger(
             degrees: small,
             role: LedgerRole::Plant,
             lane: None,
+            landmark: None,
         });
     }
     let sum: f64 = rows.iter().map(|row| row.degrees).sum();
     let phase_margin_deg = wrapped(sum);
     let turns = phase_margin_deg - sum;
     if turns.abs() > 180.0 {
-        rows.push(LedgerRow { label: "whole turns".into(), degrees: turns, role: LedgerRole::Turns, lane: None });
+        rows.push(LedgerRow {
+            label: "whole turns".into(),
+            degrees: turns,
+            role: LedgerRole::Turns,
+            lane: None,
+            landmark: None,
+        });
     }
     Ledger { frequency_hz: crossover_hz, rows, phase_margin_deg }
 }
@@ -74,7 +101,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
                 LaneKind::Zero => (format!("zero {at}"), turn),
                 LaneKind::Pole => (format!("pole {at}"), -turn),
             };
-            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key) }
+            LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key), landmark: None }
         })
         .collect();
     let beside = ideal.phase_deg(f) - rows.iter().map(|row| row.degrees).sum::<f64>();
@@ -84,6 +111,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
             degrees: beside,
             role: LedgerRole::Compensator,
             lane: None,
+            landmark: None,
         });
     } else if let Some(first) = rows.first_mut() {
         // Rounding of the sum, so that the ledger closes to the last digit.
@@ -95,27 +123,45 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
 /// One row for a pole and a zero that nearly cancel.
 fn pair_row(pair: &Pair) -> LedgerRow {
     let label = format!("pole and zero near {}", print_digits(pair.frequency_hz, Unit::Hertz, 2));
-    LedgerRow { label, degrees: pair.phase_deg, role: LedgerRole::Plant, lane: None }
+    LedgerRow { label, degrees: pair.phase_deg, role: LedgerRole::Plant, lane: None, landmark: None }
 }
 
-fn plant_row(factor: &FactorPhase, landmarks: &[Landmark]) -> LedgerRow {
+fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) -> LedgerRow {
     let f = factor.root.norm() / TAU;
     let at = print_digits(f, Unit::Hertz, 3);
     let near = |key: &str| landmarks.iter().any(|m| m.key == key && (m.frequency_hz / f).ln().abs() < 0.3);
     let right = factor.root.re > 0.0;
+    let sampled = model.controlled.sampling.is_some();
+    let half =
+        landmarks.iter().find(|mark| mark.key == "half-switching").map_or(f64::INFINITY, |mark| mark.frequency_hz);
     let (label, role) = match factor.kind {
         FactorKind::Sign => ("sign of the plant".to_owned(), LedgerRole::RightHalfPlane),
         FactorKind::Delay => ("delay".to_owned(), LedgerRole::Delay),
+        // The rational form of the inner loop's delay; the stage's own lies lower.
+        FactorKind::Zero if right && model.controlled.inner.is_some() && f > half => {
+            (format!("delay of the inner loop {at}"), LedgerRole::Delay)
+        }
         FactorKind::Zero if right => (format!("RHP zero {at}"), LedgerRole::RightHalfPlane),
         FactorKind::Zero if factor.root.im != 0.0 => (format!("zero pair {at}"), LedgerRole::Plant),
         FactorKind::Zero if near("esr-zero") => (format!("ESR zero {at}"), LedgerRole::Plant),
         FactorKind::Zero => (format!("stage zero {at}"), LedgerRole::Plant),
         FactorKind::Pole if right => (format!("RHP pole {at}"), LedgerRole::RightHalfPlane),
+        FactorKind::Pole if near("low-pole") => (format!("low pole {at}"), LedgerRole::Plant),
+        FactorKind::Pole if sampled && factor.root.im != 0.0 && near("half-switching") => {
+            (format!("sampling pair {at}"), LedgerRole::Plant)
+        }
+        // A pair of low quality parts into two poles around half the switching frequency.
+        FactorKind::Pole if sampled && factor.root.im == 0.0 && f > half / 10.0 => {
+            (format!("sampling pole {at}"), LedgerRole::Plant)
+        }
         FactorKind::Pole if factor.root.im != 0.0 && near("lc-resonance") => {
             (format!("LC resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };
-    LedgerRow { label, degrees: factor.phase_deg, role, lane: None }
+    let key = LANDMARKS.iter().find(|(words, _)| label.starts_with(words)).map(|(_, key)| *key);
+    let landmark = landmarks.iter().map(|mark| mark.key).find(|own| Some(*own) == key);
+    LedgerRow { label, degrees: factor.phase_deg, role, lane: None, landmark }
 }

@@ -1,16 +1,18 @@
-//! The loop at one condition: stage, modulator and compensator joined.
+//! The loop at one condition: stage, control law and compensator joined.
 //!
-//! *Conventions*: the plant runs from control voltage to output voltage, modulator and delay included; the compensator
-//! from output voltage to control voltage with its inversion taken out; their product is the loop gain. The delay is
-//! exact in every frequency response and a third-order Padé form in the closed-loop state space.
+//! *Conventions*: the plant runs from control voltage to output voltage, control law and delay included; the compensator
+//! from output voltage to control voltage with its inversion taken out; their product is the loop gain. The delay of the
+//! control voltage is exact in every frequency response and a third-order Padé form in the closed-loop state space; inside
+//! the inner loop of average current mode it is the latter in both.
 
-use crate::control::Modulator;
-use crate::converter::{AveragedModel, Stage, StageCondition};
+use crate::control::{CONTROL, ControlLaw, Controlled, Edge, Mode};
+use crate::converter::signals::LOAD_VOLTAGE;
+use crate::converter::{AveragedModel, Conduction, Stage, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{
-    FactoredResponse, LinearError, Margins, Modes, Port, StateSpace, Verdict, Wire, Zpk, closed_loop_verdict_knowing,
-    pade_delay,
+    Complex, FactoredResponse, LinearError, Margins, Modes, Port, StateSpace, Verdict, Wire, Zpk,
+    closed_loop_verdict_knowing, pade_delay,
 };
 use nalgebra::DMatrix;
 
@@ -21,6 +23,8 @@ pub struct Shared {
     pub compensator: StateSpace,
     /// −vc/vout.
     pub compensator_response: FactoredResponse,
+    /// The control law, its compensating ramp settled.
+    pub law: ControlLaw,
     delay: Option<StateSpace>,
 }
 
@@ -38,10 +42,42 @@ impl Shared {
         };
         let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
         let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
-        let delay_s = design.modulator.delay_s;
-        let delay =
-            if delay_s > 0.0 { Some(pade_delay(delay_s, DELAY_ORDER).map_err(|e| singular(&e))?) } else { None };
-        Ok(Shared { compensator, compensator_response: FactoredResponse::new(response, 0.0), delay })
+        let law = settled(design)?;
+        let outside = !matches!(law.mode, Mode::Average(_));
+        let delay = if law.delay_s > 0.0 && outside {
+            Some(pade_delay(law.delay_s, DELAY_ORDER).map_err(|e| singular(&e))?)
+        } else {
+            None
+        };
+        Ok(Shared { compensator, compensator_response: FactoredResponse::new(response, 0.0), law, delay })
+    }
+}
+
+impl Shared {
+    /// The same with another control law of the same delay.
+    pub(super) fn with_law(&self, law: ControlLaw) -> Self {
+        Shared { law, ..self.clone() }
+    }
+}
+
+/// The control law with its compensating ramp settled by the nominal condition.
+fn settled(design: &CheckedDesign) -> Result<ControlLaw, Finding> {
+    if !design.law.unsettled() {
+        return Ok(design.law.clone());
+    }
+    let stage = &design.stage;
+    let nominal = StageCondition {
+        input_voltage: stage.input_voltages[1],
+        load_current: stage.load_currents[1],
+        output_voltage: stage.output_voltage,
+    };
+    match stage.averaged(&nominal) {
+        Ok(averaged) => Ok(design.law.settled(&averaged.operating_point, stage.switching_frequency.recip())),
+        Err(why) => Err(Finding::problem(
+            "control.slope",
+            format!("The compensating ramp is stated at the nominal condition, which cannot be held: {}", why.message),
+        )
+        .with_hint("state the ramp in V/s, or mend the nominal condition")),
     }
 }
 
@@ -50,16 +86,18 @@ impl Shared {
 pub struct LoopModel {
     /// The stage linearised about its operating point.
     pub averaged: AveragedModel,
-    /// The stage with the modulator's feed-forward in its input-voltage column: inputs "duty", "input voltage",
-    /// "load current".
-    stage: StateSpace,
+    /// The stage as the control voltage drives it.
+    pub controlled: Controlled,
     /// Control voltage to output voltage, delay included.
     pub plant: FactoredResponse,
     /// The loop gain.
     pub loop_gain: FactoredResponse,
-    /// Duty ratio from control voltage [1/V].
-    duty_from_control: f64,
+    /// Whether the load's voltage is another than the regulated one: a second stage stands behind the sense point.
+    pub load_beyond: bool,
 }
+
+/// A zero beyond this many switching frequencies is rounding of a path that is none.
+const FARTHEST_ZERO: f64 = 1000.0;
 
 /// Names of the closed loop's inputs.
 pub const EVENTS: [&str; 4] = ["load current", "input voltage", "reference", "output disturbance"];
@@ -73,38 +111,32 @@ impl LoopModel {
     ///
     /// # Errors
     /// A finding when the stage has no operating point there or a model is singular.
-    pub fn new(
-        stage: &Stage,
-        modulator: &Modulator,
-        shared: &Shared,
-        condition: &StageCondition,
-    ) -> Result<Self, Finding> {
+    pub fn new(stage: &Stage, shared: &Shared, condition: &StageCondition) -> Result<Self, Finding> {
         let averaged = stage.averaged(condition)?;
-        let duty_from_control = modulator.duty_from_control(condition.input_voltage);
-        let duty_from_input = modulator.duty_from_input(averaged.operating_point.duty, condition.input_voltage);
-        let fed_forward = with_feedforward(&averaged.stage, duty_from_input);
-        let vout_from_duty = Zpk::from_state_space(&averaged.stage, 0, 0).map_err(|e| model_finding(&e))?;
-        let plant = vout_from_duty.scaled(duty_from_control);
+        held_open(&shared.law, &averaged)?;
+        let period = stage.switching_frequency.recip();
+        let controlled = shared.law.controlled(&averaged, period).map_err(|e| model_finding(&e))?;
+        let plant = Zpk::from_state_space(&controlled.stage, 0, 0).map_err(|e| model_finding(&e))?;
         let loop_zpk = plant.multiply(shared.compensator_response.zpk());
         Ok(LoopModel {
-            plant: FactoredResponse::new(plant, modulator.delay_s),
-            loop_gain: FactoredResponse::new(loop_zpk, modulator.delay_s),
-            stage: fed_forward,
+            plant: FactoredResponse::new(plant, controlled.delay_s),
+            loop_gain: FactoredResponse::new(loop_zpk, controlled.delay_s),
+            controlled,
             averaged,
-            duty_from_control,
+            load_beyond: stage.second_stage.is_some_and(|second| !second.sensed_at_load),
         })
     }
 
-    /// Output voltage from load current with the loop open, the bank's series inductance left out where the stage leaves
-    /// it out.
+    /// An output of the controlled stage from one of its inputs, the loop open and without the control voltage's delay.
     ///
     /// # Errors
     /// As the reduction to zeros and poles.
-    pub fn vout_from_load(&self) -> Result<Zpk, LinearError> {
-        Zpk::from_state_space(&self.stage, 0, 2)
+    pub fn open_loop(&self, output: &str, input: &str) -> Result<Zpk, LinearError> {
+        let stage = &self.controlled.stage;
+        Zpk::from_state_space(stage, stage.need_output(output)?, stage.need_input(input)?)
     }
 
-    /// What the bank's series inductance adds to that; none where the stage holds it, or there is none.
+    /// What the bank's series inductance adds to the output voltage from the load current; none where the stage holds it, or there is none.
     ///
     /// # Errors
     /// As the reduction to zeros and poles.
@@ -114,16 +146,22 @@ impl LoopModel {
         Ok(Some([response(&bank.with)?, response(&bank.without)?]))
     }
 
-    /// Output voltage from input voltage with the loop open, feed-forward included.
+    /// The lowest right-half-plane zero of the stage [Hz]. The rational form of an inner loop's delay has such zeros, too, and
+    /// they are none of the stage's.
     ///
     /// # Errors
     /// As the reduction to zeros and poles.
-    pub fn vout_from_input(&self) -> Result<Zpk, LinearError> {
-        Zpk::from_state_space(&self.stage, 0, 1)
+    pub fn right_half_plane_zero_hz(&self, stage: &Stage) -> Result<Option<f64>, LinearError> {
+        let lowest = if self.controlled.inner.is_none() {
+            stage.right_half_plane_zero_hz(self.plant.zpk())
+        } else {
+            stage.right_half_plane_zero_hz(&Zpk::from_state_space(&self.averaged.stage, 0, 0)?)
+        };
+        Ok(lowest.filter(|zero| *zero < FARTHEST_ZERO * stage.switching_frequency))
     }
 
-    /// The closed loop, from load current, input voltage, reference and a disturbance of the output voltage to output and
-    /// control voltage. The bank's series inductance stands outside.
+    /// The closed loop, from load current, input voltage, reference and a disturbance of the output voltage to the load's
+    /// voltage and the control voltage. The bank's series inductance stands outside.
     ///
     /// # Errors
     /// As the joining of systems.
@@ -132,7 +170,7 @@ impl LoopModel {
         const COMPENSATOR: usize = 1;
         const TAP: usize = 2;
         let tap = StateSpace::constant(DMatrix::identity(1, 1), &["disturbance"], &["disturbance"])?;
-        let mut parts = vec![&self.stage, &shared.compensator, &tap];
+        let mut parts = vec![&self.controlled.stage, &shared.compensator, &tap];
         let mut wires = vec![
             wire(STAGE, "output voltage", COMPENSATOR, "vout", 1.0),
             wire(TAP, "disturbance", COMPENSATOR, "vout", 1.0),
@@ -141,10 +179,10 @@ impl LoopModel {
             let place = parts.len();
             let (input, output) = (delay.inputs[0].as_str(), delay.outputs[0].as_str());
             parts.push(delay);
-            wires.push(wire(COMPENSATOR, "vc", place, input, self.duty_from_control));
-            wires.push(wire(place, output, STAGE, "duty", 1.0));
+            wires.push(wire(COMPENSATOR, "vc", place, input, 1.0));
+            wires.push(wire(place, output, STAGE, CONTROL, 1.0));
         } else {
-            wires.push(wire(COMPENSATOR, "vc", STAGE, "duty", self.duty_from_control));
+            wires.push(wire(COMPENSATOR, "vc", STAGE, CONTROL, 1.0));
         }
         let inputs = [
             Port { name: EVENTS[0], part: STAGE, port: "load current" },
@@ -153,7 +191,7 @@ impl LoopModel {
             Port { name: EVENTS[3], part: TAP, port: "disturbance" },
         ];
         let outputs = [
-            Port { name: "output voltage", part: STAGE, port: "output voltage" },
+            Port { name: "output voltage", part: STAGE, port: LOAD_VOLTAGE },
             Port { name: "output voltage", part: TAP, port: "disturbance" },
             Port { name: "control voltage", part: COMPENSATOR, port: "vc" },
         ];
@@ -166,9 +204,7 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Modes>), LinearError> {
-        let closed = self.closed(shared)?;
-        let poles = closed.poles()?;
-        let verdict = closed_loop_verdict_knowing(&poles, &self.loop_gain, margins);
+        let (closed, poles, verdict) = self.judged(shared, margins)?;
         if !matches!(verdict, Verdict::Stable { .. }) {
             return Ok((verdict, None));
         }
@@ -181,23 +217,38 @@ impl LoopModel {
     }
 }
 
+impl LoopModel {
+    /// Stability alone, as [`LoopModel::verdict`] decides it.
+    ///
+    /// # Errors
+    /// As the joining of systems.
+    pub fn stability(&self, shared: &Shared, margins: &Margins) -> Result<Verdict, LinearError> {
+        self.judged(shared, margins).map(|judged| judged.2)
+    }
+
+    fn judged(&self, shared: &Shared, margins: &Margins) -> Result<(StateSpace, Vec<Complex>, Verdict), LinearError> {
+        let closed = self.closed(shared)?;
+        let poles = closed.poles()?;
+        let verdict = closed_loop_verdict_knowing(&poles, &self.loop_gain, margins);
+        Ok((closed, poles, verdict))
+    }
+}
+
 fn wire<'a>(from_part: usize, output: &'a str, to_part: usize, input: &'a str, gain: f64) -> Wire<'a> {
     Wire { from_part, output, to_part, input, gain }
 }
 
-/// Adds the duty ratio that feed-forward makes of the input voltage to the stage's input-voltage column.
-fn with_feedforward(stage: &StateSpace, duty_from_input: f64) -> StateSpace {
-    let mut fed = stage.clone();
-    if duty_from_input != 0.0 {
-        let add = |m: &mut DMatrix<f64>| {
-            let duty = m.column(0) * duty_from_input;
-            let mut column = m.column_mut(1);
-            column += duty;
-        };
-        add(&mut fed.b);
-        add(&mut fed.d);
+/// Valley current mode with the current at rest and no ramp: nothing decides when the switch closes.
+fn held_open(law: &ControlLaw, averaged: &AveragedModel) -> Result<(), Finding> {
+    let resting = averaged.operating_point.conduction == Conduction::Discontinuous;
+    match law.current() {
+        Some((Edge::Valley, sense)) if resting && sense.ramp() <= 0.0 => Err(Finding::problem(
+            "control.slope",
+            "Valley current mode needs a compensating ramp in discontinuous conduction: the current has come to rest and nothing else closes the switch.",
+        )
+        .with_hint("add a ramp, raise the load or the inductance, or choose a synchronous rectifier")),
+        _ => Ok(()),
     }
-    fed
 }
 
 /// A linear-algebra error as a finding about the whole design.

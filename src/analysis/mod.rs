@@ -1,27 +1,43 @@
 //! A checked design in, every result of its nine conditions out.
 //!
-//! [`analyse`] joins stage, modulator and compensator into one [`loop_model`] per condition and reads everything off it:
+//! [`analyse`] joins stage, control law and compensator into one [`loop_model`] per condition and reads everything off it:
 //! margins, verdict, closed-loop curves, steps, ledger. Window, terminal and sheet read the [`Analysis`] and compute nothing.
 
 mod analyse;
 mod condition;
+mod conduction;
+mod control_figures;
+mod control_remarks;
 mod crossover_window;
 mod curves;
+mod filter_readouts;
+mod filter_remarks;
+mod filter_result;
+mod impedance;
 mod ledger;
+mod load_sweep;
 pub mod loop_model;
 mod pairs;
 mod placement;
+pub mod proposal;
 mod readouts;
 mod remarks;
 mod requirement;
 mod result;
+mod stability_remarks;
 mod steps;
+pub mod terms;
 #[cfg(test)]
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use filter_result::{
+    Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
+};
+pub use load_sweep::{LoadSweep, LoadSweepFigures, LoadSweepLine, LoadSweepPoint, SWEEP_POINTS, load_sweep};
 pub use placement::{Goal, place_by_k_factor, place_by_rules, usual_goal};
 pub use result::{
-    Analysis, Condition, ConditionResult, ConditionSummary, CrossoverWindow, Curves, Detail, Ledger, LedgerRole,
-    LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step, StepFigures, Steps, WindowEdge, Worst,
+    Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, CrossoverWindow, Curves, Detail,
+    InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,
+    StepFigures, Steps, WindowEdge, Worst,
 };

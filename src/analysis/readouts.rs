@@ -1,7 +1,7 @@
 //! The neutral list of read-outs that window, terminal and sheet print.
 
 use super::requirement::worst_shown;
-use super::result::{ConditionResult, Detail, Readout, RequirementVerdict, Worst};
+use super::result::{ConditionResult, Detail, InnerResult, Readout, RequirementVerdict, Worst};
 use crate::design::Asked;
 use crate::quantity::{Unit, print};
 
@@ -16,7 +16,7 @@ struct Row {
     take: fn(&Detail) -> Option<f64>,
 }
 
-static ROWS: [Row; 10] = [
+static ROWS: &[Row] = &[
     Row {
         key: "crossover",
         name: "Crossover",
@@ -107,7 +107,106 @@ static ROWS: [Row; 10] = [
         help: "Last exit from the settling band around the final value after the load step.",
         take: |d| d.steps.load.as_ref().and_then(|s| s.settling_s),
     },
+    Row {
+        key: "control-voltage",
+        name: "Control voltage",
+        unit: Unit::Volt,
+        asked: None,
+        absent: "none",
+        help: "Control voltage that holds the operating point: sensed current and ramp at the comparator, or what the inner loop asks for.",
+        take: |d| Some(d.control.control_voltage),
+    },
+    Row {
+        key: "sampling-quality",
+        name: "Qp at ½ switching",
+        unit: Unit::One,
+        asked: None,
+        absent: "subharmonic",
+        help: "Quality factor of the sampling pair, 1 / (π·(mc·D' − ½)) without sense filter, D' the share of the period that is not sensed. Common practice: near 1; none beyond the subharmonic boundary.",
+        take: |d| d.control.sampling.and_then(|s| s.quality()),
+    },
+    Row {
+        key: "slope-factor",
+        name: "Slope factor mc",
+        unit: Unit::One,
+        asked: None,
+        absent: "none",
+        help: "1 + compensating ramp / slope of the sensed current.",
+        take: |d| d.control.sampling.map(|s| s.slope_factor),
+    },
+    Row {
+        key: "fast-multiplier",
+        name: "Fast multiplier α",
+        unit: Unit::One,
+        asked: None,
+        absent: "none",
+        help: "By how much a small deviation of the current is multiplied every period; it dies out while α is between −1 and 1.",
+        take: |d| d.control.sampling.map(|s| s.fast_multiplier),
+    },
+    Row {
+        key: "compensating-ramp",
+        name: "Compensating ramp",
+        unit: Unit::VoltPerSecond,
+        asked: None,
+        absent: "none",
+        help: "Slope of the ramp at the comparator; one ramp for all conditions.",
+        take: |d| d.ramp,
+    },
+    Row {
+        key: "ramp-share",
+        name: "Ramp / current's slope",
+        unit: Unit::Fraction,
+        asked: None,
+        absent: "none",
+        help: "The ramp as a share of the slope it works against: the down-slope in peak, the up-slope in valley current mode.",
+        take: |d| d.control.sampling.map(|s| s.ramp_share),
+    },
+    Row {
+        key: "inner-crossover",
+        name: "Inner crossover",
+        unit: Unit::Hertz,
+        asked: None,
+        absent: "none",
+        help: "Where the inner current loop's gain falls through 0 dB, the control voltage at rest.",
+        take: |d| inner(d)?.margins.headline_crossover().map(|c| c.frequency_hz),
+    },
+    Row {
+        key: "inner-phase-margin",
+        name: "Inner phase margin",
+        unit: Unit::Degree,
+        asked: None,
+        absent: "none",
+        help: "180° plus the inner loop's phase at its crossover.",
+        take: |d| inner(d)?.margins.headline_crossover().map(|c| c.phase_margin_deg),
+    },
+    Row {
+        key: "inner-gain-margin",
+        name: "Inner gain margin",
+        unit: Unit::Decibel,
+        asked: None,
+        absent: "none below ½ fs",
+        help: "How much the inner loop's gain may rise before it oscillates.",
+        take: |d| inner(d)?.margins.gain_margin_up_db(),
+    },
 ];
+
+fn inner(detail: &Detail) -> Option<&InnerResult> {
+    detail.control.inner.as_ref()
+}
+
+/// Whether a row says anything about a condition in its control mode; the rows above the control's always do.
+fn belongs(key: &str, detail: Option<&Detail>) -> bool {
+    let programmed = detail.is_some_and(|d| d.ramp.is_some());
+    let sampled = detail.is_some_and(|d| d.control.sampling.is_some());
+    let average = detail.is_some_and(|d| d.control.inner.is_some());
+    match key {
+        "control-voltage" => programmed || average,
+        "compensating-ramp" => programmed,
+        "sampling-quality" | "slope-factor" | "fast-multiplier" | "ramp-share" => sampled,
+        "inner-crossover" | "inner-phase-margin" | "inner-gain-margin" => average,
+        _ => true,
+    }
+}
 
 /// The read-outs of the shown condition, `settling_band` as a share of the output, with the worst of the nine and the requirements beside them.
 pub(super) fn readouts(
@@ -142,7 +241,7 @@ pub(super) fn readouts(
             help: row.help,
         }
     };
-    let useful = |r: &Readout| r.value.is_some() || r.key != "gain-reduction";
+    let useful = |r: &Readout| (r.value.is_some() || r.key != "gain-reduction") && belongs(r.key, detail);
     ROWS.iter().map(shown).filter(useful).collect()
 }
 

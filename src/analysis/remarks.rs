@@ -1,14 +1,18 @@
 //! Remarks about the results: what makes averaged numbers doubtful, what misses a requirement, what common practice says.
 
 use super::condition::NOMINAL;
+use super::conduction::{discontinuous, resonates, step_leaves_mode};
+use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
+use super::filter_remarks::filter_remarks;
 use super::loop_model::Shared;
-use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict};
+use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict, WindowEdge};
+use super::stability_remarks::{conditionally_stable, unstable, what_if_unstable};
 use crate::compensator::Amplifier;
 use crate::converter::LoadKind;
 use crate::design::CheckedDesign;
 use crate::finding::{Finding, Severity};
-use crate::linear::{FrequencyResponse, Verdict};
+use crate::linear::FrequencyResponse;
 use crate::quantity::{Unit, print, print_digits};
 
 /// Loop gain at the switching frequency above which ripple at the comparator makes averaged numbers doubtful (measured
@@ -29,13 +33,18 @@ pub(super) fn remarks(
     let mut findings = design.findings.clone();
     findings.extend(no_outcome(conditions));
     findings.extend(unstable(conditions));
+    findings.extend(conditionally_stable(conditions, detail));
     findings.extend(what_if_unstable(detail));
+    findings.extend(filter_remarks(design, detail, conditions));
+    findings.extend(control_remarks(design, shared, detail, conditions));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));
     findings.extend(step_leaves_limits(design, detail));
     findings.extend(window_remarks(conditions, window));
     findings.extend(model_limits(design));
+    findings.extend(discontinuous(design, conditions));
+    findings.extend(step_leaves_mode(design, detail));
     findings.sort_by_key(|f| match f.severity {
         Severity::Problem => 0,
         Severity::Notice => 1,
@@ -71,53 +80,8 @@ fn no_outcome(conditions: &[ConditionResult]) -> Vec<Finding> {
         .collect()
 }
 
-fn summaries(conditions: &[ConditionResult]) -> impl Iterator<Item = (&ConditionResult, &ConditionSummary)> {
+pub(super) fn summaries(conditions: &[ConditionResult]) -> impl Iterator<Item = (&ConditionResult, &ConditionSummary)> {
     conditions.iter().filter_map(|c| c.outcome.as_ref().ok().map(|s| (c, s)))
-}
-
-/// Unstable, undecided and conditionally stable loops.
-fn unstable(conditions: &[ConditionResult]) -> Vec<Finding> {
-    let mut findings = Vec::new();
-    let mut conditional = Vec::new();
-    for (condition, summary) in summaries(conditions) {
-        let label = &condition.condition.label;
-        if let Some(told) = not_stable(&summary.loop_gain.verdict, label) {
-            findings.push(Finding::problem("", told).with_hint(UNSTABLE_HINT));
-        } else if matches!(summary.loop_gain.verdict, Verdict::Stable { conditionally: true }) {
-            conditional.push((label, summary));
-        }
-    }
-    if findings.len() > 2 {
-        let more = findings.len() - 1;
-        findings.truncate(1);
-        if let Some(first) = findings.first_mut() {
-            first.message = format!("{} So or alike in {more} more of the nine conditions.", first.message);
-        }
-    }
-    if let Some((label, summary)) = conditional.first() {
-        let at: Vec<String> = summary
-            .loop_gain
-            .margins
-            .phase_crossovers
-            .iter()
-            .map(|c| print_digits(c.frequency_hz, Unit::Hertz, 3))
-            .collect();
-        findings.push(Finding::notice(
-            "",
-            format!(
-                "Conditionally stable at {label}: the phase passes −180° at {} and the loop turns unstable when its gain falls.",
-                at.join(", ")
-            ),
-        ));
-    }
-    findings
-}
-
-/// A condition shown beside the nine that is not stable.
-fn what_if_unstable(detail: Option<&Detail>) -> Option<Finding> {
-    let detail = detail.filter(|d| d.condition.levels.is_none())?;
-    let told = not_stable(&detail.loop_gain.verdict, &detail.condition.label)?;
-    Some(Finding::problem("", told).with_hint(UNSTABLE_HINT))
 }
 
 /// A loop gain that has not fallen below one where the averaged model ends.
@@ -134,25 +98,6 @@ fn beyond_the_model(conditions: &[ConditionResult]) -> Option<Finding> {
         condition.condition.label
     );
     Some(Finding::problem("", message).with_hint("lower the gain or raise the switching frequency"))
-}
-
-const UNSTABLE_HINT: &str = "lower the gain, or move zeros down and poles up to gain phase at the crossover";
-
-/// The sentence about a loop that is not stable, or whose stability is undecided.
-fn not_stable(verdict: &Verdict, label: &str) -> Option<String> {
-    match verdict {
-        Verdict::Stable { .. } => None,
-        Verdict::Undecided { reason } => Some(format!("Stability undecided at {label}: {reason}.")),
-        Verdict::Unstable { frequency_hz, growth_per_s, .. } => {
-            let growth = print_digits(*growth_per_s, Unit::One, 3);
-            Some(if *frequency_hz > 0.0 {
-                let at = print(*frequency_hz, Unit::Hertz);
-                format!("Unstable at {label}: oscillation at {at} growing with {growth} per second.")
-            } else {
-                format!("Unstable at {label}: the output runs away, growing with {growth} per second.")
-            })
-        }
-    }
 }
 
 fn missed(verdict: &RequirementVerdict) -> Finding {
@@ -181,13 +126,12 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
         );
         findings.push(Finding::notice("", message).with_hint("lower the highest compensator pole or the crossover"));
     }
-    let share = |c: &ConditionResult, s: &ConditionSummary| {
-        s.operating_point.output_step * high / design.modulator.ramp_at(c.condition.input_voltage)
-    };
-    let step = summaries(conditions).map(|(c, s)| (c, share(c, s))).max_by(|a, b| a.1.total_cmp(&b.1));
+    let share =
+        |s: &ConditionSummary| s.operating_point.output_step * high / shared.law.swing(&s.operating_point, fs.recip());
+    let step = summaries(conditions).map(|(c, s)| (c, share(s))).max_by(|a, b| a.1.total_cmp(&b.1));
     if let Some((condition, share)) = step.filter(|(_, share)| *share > RIPPLE_STEP) {
         let message = format!(
-            "The output's ESR step times the compensator's gain at the switching frequency is {} % of the ramp, above 5 %, at {}: averaged numbers are doubtful.",
+            "The output's ESR step times the compensator's gain at the switching frequency is {} % of what the comparator compares it with, above 5 %, at {}: averaged numbers are doubtful.",
             print_digits(100.0 * share, Unit::One, 2),
             condition.condition.label
         );
@@ -201,15 +145,14 @@ fn step_leaves_limits(design: &CheckedDesign, detail: Option<&Detail>) -> Option
     let detail = detail?;
     let step = detail.steps.load.as_ref()?;
     let (least, greatest) = design.compensator.amplifier.output_limits();
-    let volts = |duty: f64| design.modulator.control_voltage(duty, detail.condition.input_voltage);
-    let (least, greatest) =
-        (least.max(volts(design.modulator.duty_least)), greatest.min(volts(design.modulator.duty_greatest)));
+    let followed = design.law.control_limits(detail.condition.input_voltage);
+    let (least, greatest) = (least.max(followed.0), greatest.min(followed.1));
     let (low, high) = step.control_v;
     let label = &detail.condition.label;
     if high > greatest || low < least {
         let (asked, stop) = if high > greatest { (high, greatest) } else { (low, least) };
         let message = format!(
-            "The load step asks a control voltage of {} and amplifier and duty limits stop at {} ({label}): the real response is slower than the linear one shown.",
+            "The load step asks a control voltage of {} and amplifier, clamp and duty limits stop at {} ({label}): the real response is slower than the linear one shown.",
             print(asked, Unit::Volt),
             print(stop, Unit::Volt)
         );
@@ -247,7 +190,10 @@ fn window_remarks(conditions: &[ConditionResult], window: &CrossoverWindow) -> V
             ),
         ));
     }
-    if let Some(lower) = window.lower.as_ref().filter(|e| crossover < e.frequency_hz) {
+    // Where the current rests there is no resonance to stay above.
+    let resonates = conditions.get(NOMINAL).and_then(|c| c.outcome.as_ref().ok()).is_some_and(resonates);
+    let holds = |e: &&WindowEdge| crossover < e.frequency_hz && (resonates || !e.of_resonance);
+    if let Some(lower) = window.lower.as_ref().filter(holds) {
         let edge = print(lower.frequency_hz, Unit::Hertz);
         findings.push(Finding::note(
             "",

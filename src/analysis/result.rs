@@ -4,6 +4,8 @@
 //! unwrapped upward from low frequency; the loop gain has the sign of the negative feedback taken out. Every result
 //! names the operating condition it was computed at.
 
+use super::filter_result::{InputFilterDetail, InputFilterResult};
+use crate::control::Sampling;
 use crate::converter::{Landmark, OperatingPoint};
 use crate::finding::Finding;
 use crate::linear::{Margins, Verdict};
@@ -64,6 +66,11 @@ impl LoopResult {
     /// True when the closed loop is stable.
     pub fn stable(&self) -> bool {
         matches!(self.verdict, Verdict::Stable { .. })
+    }
+
+    /// True when it is stable, but a lower gain would make it unstable.
+    pub fn conditionally_stable(&self) -> bool {
+        matches!(self.verdict, Verdict::Stable { conditionally: true })
     }
 }
 
@@ -170,6 +177,8 @@ pub struct LedgerRow {
     pub role: LedgerRole,
     /// Key of the lane it belongs to, for compensator rows.
     pub lane: Option<&'static str>,
+    /// Key of the landmark it belongs to, for rows of the stage.
+    pub landmark: Option<&'static str>,
 }
 
 /// The phase at the headline crossover itemised by cause; the rows add up to the phase margin.
@@ -181,6 +190,32 @@ pub struct Ledger {
     pub rows: Vec<LedgerRow>,
     /// Their sum, the phase margin [°].
     pub phase_margin_deg: f64,
+}
+
+/// The inner loop of average current mode at one condition.
+#[derive(Clone, Debug)]
+pub struct InnerResult {
+    /// Stability of the inner loop with the control voltage at rest.
+    pub verdict: Verdict,
+    /// Its crossovers and margins.
+    pub margins: Margins,
+    /// Output of the inner amplifier that holds the operating point [V].
+    pub output_voltage: f64,
+    /// Least and greatest output of the inner amplifier [V].
+    pub output_limits: (f64, f64),
+    /// Slope of the current's falling ripple at the inner amplifier's output over the ramp's slope.
+    pub slope_ratio: f64,
+}
+
+/// What the control law comes to at one condition.
+#[derive(Clone, Debug)]
+pub struct ControlFigures {
+    /// Control voltage that holds the operating point [V].
+    pub control_voltage: f64,
+    /// Sampling figures of peak and valley current mode in continuous conduction.
+    pub sampling: Option<Sampling>,
+    /// The inner loop of average current mode.
+    pub inner: Option<InnerResult>,
 }
 
 /// Everything about the one condition that is shown in full.
@@ -200,12 +235,16 @@ pub struct Detail {
     pub loop_gain: LoopResult,
     /// Frequency curves on the requested grid.
     pub curves: Curves,
+    /// Input filter against converter, where one is fitted.
+    pub input_filter: Option<InputFilterDetail>,
     /// Time responses.
     pub steps: Steps,
     /// Phase ledger; absent when the loop has no crossover.
     pub ledger: Option<Ledger>,
-    /// Control voltage that holds the operating point [V].
-    pub control_voltage: f64,
+    /// Control voltage that holds the operating point, sampling figures, inner loop.
+    pub control: ControlFigures,
+    /// Compensating ramp of peak and valley current mode [V/s at the comparator].
+    pub ramp: Option<f64>,
 }
 
 /// The results of one of the nine conditions.
@@ -224,8 +263,12 @@ pub struct ConditionSummary {
     pub operating_point: OperatingPoint,
     /// Stability and margins.
     pub loop_gain: LoopResult,
+    /// Control voltage that holds the operating point, sampling figures, inner loop.
+    pub control: ControlFigures,
     /// Load step; absent when unstable.
     pub load_step: Option<StepFigures>,
+    /// Input filter against converter, where one is fitted.
+    pub input_filter: Option<InputFilterResult>,
     /// Lowest right-half-plane zero of the plant [Hz].
     pub right_half_plane_zero_hz: Option<f64>,
     /// Loop gain on the band grid [dB].
@@ -334,6 +377,8 @@ pub struct WindowEdge {
     pub frequency_hz: f64,
     /// What sets it: "2 × LC resonance at greatest input 16 V, ...".
     pub cause: String,
+    /// Whether an LC resonance sets it, which conditions in discontinuous conduction do not have.
+    pub of_resonance: bool,
 }
 
 /// The band of crossover frequencies the stage allows.
@@ -369,6 +414,14 @@ pub struct Analysis {
 }
 
 impl Analysis {
+    /// The condition shown with its conduction mode: "nominal input 12 V, nominal load 50 mA, discontinuous conduction".
+    pub fn place(&self) -> String {
+        match &self.shown {
+            Ok(detail) => format!("{}, {} conduction", self.condition.label, detail.operating_point.conduction.word()),
+            Err(_) => self.condition.label.clone(),
+        }
+    }
+
     /// True when every stated requirement is met.
     pub fn all_met(&self) -> bool {
         self.requirements.iter().all(|requirement| requirement.met)

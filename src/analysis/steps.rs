@@ -39,7 +39,8 @@ pub(super) fn load_figures(design: &CheckedDesign, modes: &Modes) -> Result<Step
     Ok(StepFigures { deviation_v: metrics.deviation, settling_s: metrics.settling_s })
 }
 
-/// The three steps with their curves, from the closed loop's modes. `control_voltage` holds the condition [V].
+/// The three steps with their curves, from the closed loop's modes. `at_rest` are the load's voltage and the control voltage that hold
+/// the condition [V].
 ///
 /// # Errors
 /// As taking the response from the modes.
@@ -47,10 +48,11 @@ pub(super) fn steps(
     design: &CheckedDesign,
     modes: &Modes,
     crossover_hz: Option<f64>,
-    control_voltage: f64,
+    at_rest: (f64, f64),
     points: usize,
 ) -> Result<Steps, LinearError> {
-    let context = Context { modes, design, crossover_hz, control_voltage, points };
+    let (before, control_voltage) = at_rest;
+    let context = Context { modes, design, crossover_hz, before, control_voltage, points };
     let events = &design.events;
     // The reference step is stated at the output; the loop takes it at the reference.
     let scale = design.compensator.reference / design.compensator.dc_output_voltage();
@@ -65,6 +67,8 @@ struct Context<'a> {
     modes: &'a Modes,
     design: &'a CheckedDesign,
     crossover_hz: Option<f64>,
+    /// Load's voltage before the event [V].
+    before: f64,
     control_voltage: f64,
     points: usize,
 }
@@ -79,7 +83,7 @@ impl Context<'_> {
         let metrics = self.modes.settle(input, OUTPUT, change, band)?;
         let span = self.span_s(metrics.settling_s, change.rise_s);
         let grid = UniformGrid { step_s: span / (self.points - 1) as f64, count: self.points };
-        let before = self.design.stage.output_voltage;
+        let before = self.before;
         let output = self.modes.curve(input, OUTPUT, change, grid)?;
         let control = self.modes.curve(input, CONTROL, change, grid)?;
         let extreme = |pick: fn(f64, f64) -> f64| self.control_voltage + control.iter().copied().fold(0.0, pick);

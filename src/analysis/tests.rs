@@ -32,9 +32,9 @@ fn closed_loop_state_space_agrees_with_the_curves() {
     let design = built_in();
     let shared = loop_model::Shared::new(&design).unwrap();
     let condition = Condition::at_levels(&design.stage, Level::Least, Level::Greatest).of_stage(&design.stage);
-    let model = loop_model::LoopModel::new(&design.stage, &design.modulator, &shared, &condition).unwrap();
+    let model = loop_model::LoopModel::new(&design.stage, &shared, &condition).unwrap();
     let closed = model.closed(&shared).unwrap();
-    let open = model.vout_from_load().unwrap();
+    let open = model.open_loop("load voltage", "load current").unwrap();
     for f in [10.0, 300.0, 3e3, 3e4] {
         let by_states = closed.at_hz(f).unwrap()[(0, 0)];
         let by_curve = open.at_hz(f) / (model.loop_gain.at_hz(f) + 1.0);

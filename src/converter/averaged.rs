@@ -6,8 +6,8 @@
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::{BankInductance, bank_inductance};
-use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
-use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
+use super::landmark::{Landmark, RestingTextbook, Textbook, landmarks, resting_landmarks, right_half_plane_zero_hz};
+use super::operating_point::{Conduction, NoOperatingPoint, OperatingPoint, Solution};
 use super::signals::{INPUTS, OUTPUTS};
 use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding, with_duty};
 use crate::finding::Finding;
@@ -34,6 +34,7 @@ impl Stage {
     /// # Errors
     /// A finding when no duty ratio gives the output; it names the greatest output that can be had.
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
+        self.refuse_drop(condition)?;
         let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
         let operating_point = self.figures(condition, &solution);
         let with_inductance = self.intervals_with_inductance(condition).filter(|_| solution.pulse.is_none());
@@ -46,13 +47,28 @@ impl Stage {
             }
         };
         let stage = linearised.ok_or_else(|| Finding::problem("stage", "The stage's averaged model is singular."))?;
-        let bank_inductance = if inductance_left_out {
+        // Behind a second stage the load's current does not reach the bank fast enough for its inductance to count.
+        let bank_inductance = if inductance_left_out && self.second_stage.is_none() {
             let resistance = condition.output_voltage / condition.load_current;
             bank_inductance(&self.bank, resistance).map_err(|e| circuit_finding(&e))?
         } else {
             None
         };
         Ok(AveragedModel { operating_point, stage, bank_inductance })
+    }
+
+    /// A second stage that drops the whole regulated voltage.
+    fn refuse_drop(&self, condition: &StageCondition) -> Result<(), Finding> {
+        if self.load_voltage(condition) > 0.0 {
+            return Ok(());
+        }
+        let message = format!(
+            "At a load of {} the second inductor's resistance drops the whole regulated {}.",
+            print(condition.load_current, Unit::Ampere),
+            print(condition.output_voltage, Unit::Volt)
+        );
+        Err(Finding::problem("stage.output-filter.resistance", message)
+            .with_hint("lower the resistance or the load, or sense at the load"))
     }
 
     pub(super) fn linearise(&self, solution: &Solution) -> Option<StateSpace> {
@@ -81,16 +97,37 @@ impl Stage {
     }
 
     /// Rows of the netlist's outputs that an averaged model answers with.
-    fn averaged_rows(&self) -> Vec<usize> {
+    pub(super) fn averaged_rows(&self) -> Vec<usize> {
         std::iter::once(self.rows.output_voltage)
             .chain(self.rows.inductor_currents.iter().take(1).copied())
-            .chain(std::iter::once(self.rows.input_current))
+            .chain([self.rows.input_current, self.rows.load_voltage])
             .collect()
     }
 
-    /// The landmarks at a condition; `vout_from_duty` serves where no textbook form fits.
-    pub fn landmarks(&self, condition: &StageCondition, vout_from_duty: &Zpk) -> Vec<Landmark> {
-        landmarks(self.topology(), &self.textbook(condition), &self.bank, self.switching_frequency, vout_from_duty)
+    /// The landmarks at a condition in its conduction mode; `vout_from_duty`, of the stage without its input filter, serves where no
+    /// textbook form fits.
+    pub fn landmarks(&self, condition: &StageCondition, conduction: Conduction, vout_from_duty: &Zpk) -> Vec<Landmark> {
+        let topology = self.topology();
+        match conduction {
+            Conduction::Discontinuous => {
+                resting_landmarks(topology, &self.resting_textbook(condition), self, vout_from_duty)
+            }
+            _ => landmarks(topology, &self.textbook(condition), self, vout_from_duty),
+        }
+    }
+
+    /// The lossless quantities textbook forms of discontinuous conduction are written in.
+    fn resting_textbook(&self, condition: &StageCondition) -> RestingTextbook {
+        let load_resistance = condition.output_voltage / condition.load_current;
+        let conversion = condition.output_voltage / condition.input_voltage;
+        let k = 2.0 * self.inductance * self.switching_frequency / load_resistance;
+        RestingTextbook {
+            duty: (self.topology().resting.duty)(conversion, k),
+            conversion,
+            capacitance: self.output_capacitance(),
+            load_resistance,
+            switching_frequency: self.switching_frequency,
+        }
     }
 
     /// The lossless quantities textbook formulas are written in.

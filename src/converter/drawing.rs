@@ -4,7 +4,10 @@
 //! Every call draws its parts twice: into the netlist, and into the sketch that says where they stand in the schematic.
 
 use super::entries::{BRANCHES, branch_count};
-use super::landmark::Textbook;
+use super::filters::{
+    Canvas, Damping, FilterParts, OutputFilter, draw_input_network, draw_output_filter, input_filter, output_filter,
+};
+use super::landmark::{RestingForms, Textbook};
 use super::stage::{LoadKind, Rectifier};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
@@ -32,6 +35,8 @@ pub struct Topology {
     pub right_half_plane_zero_hz: fn(&Textbook) -> Option<f64>,
     /// The formula of the right-half-plane zero, for people.
     pub right_half_plane_zero_formula: &'static str,
+    /// What holds in its place in discontinuous conduction.
+    pub resting: RestingForms,
 }
 
 /// Where an output can stand against the input.
@@ -50,7 +55,9 @@ pub enum Reach {
 pub(super) struct Options {
     /// Whether the rectifier is a diode, else a switch.
     pub(super) diode: bool,
+    pub(super) input_filter: Option<Damping>,
     pub(super) input_capacitor: bool,
+    pub(super) output_filter: Option<OutputFilter>,
     pub(super) load: LoadKind,
     pub(super) branches: usize,
     /// Which branches have their series inductance drawn.
@@ -62,7 +69,10 @@ impl Options {
     pub(super) fn chosen(choices: &Choices) -> Self {
         Options {
             diode: Rectifier::chosen(choices) == Rectifier::Diode,
-            input_capacitor: choices.is("stage.input-capacitor", "fitted"),
+            input_filter: input_filter(choices),
+            input_capacitor: choices.is("stage.input-filter", "fitted")
+                || choices.is("stage.input-capacitor", "fitted"),
+            output_filter: output_filter(choices),
             load: LoadKind::chosen(choices),
             branches: branch_count(choices),
             branch_inductance: [false; BRANCHES],
@@ -78,7 +88,11 @@ pub struct StageDrawing {
     pub(super) sketch: Sketch,
     options: Options,
     supply: Node,
-    output: Option<(Node, Node)>,
+    /// Terminals of the regulated voltage.
+    sensed: Option<(Node, Node)>,
+    /// Terminals of the load.
+    load: Option<(Node, Node)>,
+    filters: FilterParts,
     input_current_part: PartId,
     pub(super) inductors: Vec<PartId>,
     switch: Option<PartId>,
@@ -90,12 +104,19 @@ pub struct StageDrawing {
 /// Rows of the outputs every stage answers with.
 #[derive(Clone, Debug)]
 pub(super) struct Rows {
+    /// The regulated voltage, where divider and control sense it.
     pub(super) output_voltage: usize,
+    /// The voltage at the load's terminals.
+    pub(super) load_voltage: usize,
     pub(super) input_current: usize,
     pub(super) switch_current: usize,
     pub(super) rectifier_current: usize,
     pub(super) inductor_currents: Vec<usize>,
     pub(super) branch_currents: Vec<usize>,
+    /// Name and current of the filters' inductors, which carry no switched current.
+    pub(super) filter_inductors: Vec<(&'static str, usize)>,
+    /// Name, slot and current of the resistances of input network and output filter.
+    pub(super) filter_losses: Vec<(&'static str, usize, usize)>,
 }
 
 /// Columns of the inputs every stage has.
@@ -115,31 +136,20 @@ impl StageDrawing {
         let input = netlist.input("input voltage");
         netlist.input("load current");
         let drop = netlist.input("diode drop");
-        let (source, supply, ground) = (netlist.node("source"), netlist.node("supply"), netlist.ground());
+        let (source, ground) = (netlist.node("source"), netlist.ground());
         netlist.voltage_source("source", source, ground, input);
-        let resistance = netlist.slot("stage.source.resistance");
-        let input_current_part = netlist.resistor("source resistance", source, supply, resistance);
-        let mut sketch = Sketch::default();
+        let (mut sketch, mut filters) = (Sketch::default(), FilterParts::default());
         sketch.part(source, ground, drawn_source());
-        let drawn = Drawn::new(Symbol::Resistor, "Source resistance", "Rs").value("stage.source.resistance");
-        sketch.part(source, supply, drawn.wire_at_zero());
-        if options.input_capacitor {
-            let inner = netlist.node("input capacitor");
-            let (farads, ohms) =
-                (netlist.slot("stage.input-capacitor.capacitance"), netlist.slot("stage.input-capacitor.esr"));
-            netlist.capacitor("input capacitor", supply, inner, farads);
-            netlist.resistor("input capacitor ESR", inner, ground, ohms);
-            let drawn = Drawn::new(Symbol::Capacitor, "Input capacitor", "Cin")
-                .value("stage.input-capacitor.capacitance")
-                .quiet("stage.input-capacitor.esr");
-            sketch.part(supply, ground, drawn);
-        }
+        let mut canvas = Canvas { netlist: &mut netlist, sketch: &mut sketch, parts: &mut filters };
+        let (supply, input_current_part) = draw_input_network(&mut canvas, source, &options);
         StageDrawing {
             netlist,
             sketch,
             options,
             supply,
-            output: None,
+            sensed: None,
+            load: None,
+            filters,
             input_current_part,
             inductors: Vec::new(),
             switch: None,
@@ -206,14 +216,24 @@ impl StageDrawing {
         self.sketch.part(from, to, drawn);
     }
 
-    /// Output bank and load between the output's terminals.
+    /// Output bank and load between the output's terminals, the output filter between them where one is fitted.
     pub fn output(&mut self, plus: Node, minus: Node) {
-        self.output = Some((plus, minus));
         for k in 0..self.options.branches {
             let part = draw_branch(&mut self.netlist, k, (plus, minus), self.options.branch_inductance[k]);
             self.branches.push(part);
-            self.sketch.part(plus, minus, drawn_branch(k));
+            self.sketch.part(plus, minus, drawn_branch(k, self.options.branches));
         }
+        let bank = (plus, minus);
+        let (mut plus, mut minus) = bank;
+        self.sensed = Some(bank);
+        if let Some(filter) = self.options.output_filter {
+            let mut canvas = Canvas { netlist: &mut self.netlist, sketch: &mut self.sketch, parts: &mut self.filters };
+            (plus, minus) = draw_output_filter(&mut canvas, bank, filter);
+            if filter.sensed_at_load {
+                self.sensed = Some((plus, minus));
+            }
+        }
+        self.load = Some((plus, minus));
         self.sketch.part(plus, minus, drawn_load(self.options.load));
         if self.options.load != LoadKind::Current {
             let ohms = self.netlist.slot("load resistance");
@@ -225,12 +245,13 @@ impl StageDrawing {
 
     /// Asks for the outputs every stage answers with.
     pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
-        let (plus, minus) = self.output?;
+        let (sensed, load) = (self.sensed?, self.load?);
         let (switch, rectifier) = (self.switch?, self.rectifier?);
         let n = &mut self.netlist;
         let row = OutputId::index;
         let rows = Rows {
-            output_voltage: row(n.voltage_output("output voltage", plus, minus)),
+            output_voltage: row(n.voltage_output("output voltage", sensed.0, sensed.1)),
+            load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
             switch_current: row(n.current_output("switch current", switch)),
             rectifier_current: row(n.current_output("rectifier current", rectifier)),
@@ -240,6 +261,18 @@ impl StageDrawing {
                 .map(|part| row(n.current_output("inductor current", *part)))
                 .collect(),
             branch_currents: self.branches.iter().map(|part| row(n.current_output("branch current", *part))).collect(),
+            filter_inductors: self
+                .filters
+                .inductors
+                .iter()
+                .map(|(name, part)| (*name, row(n.current_output("filter inductor current", *part))))
+                .collect(),
+            filter_losses: self
+                .filters
+                .lossy
+                .iter()
+                .map(|lossy| (lossy.name, lossy.ohms.index(), row(n.current_output("filter current", lossy.part))))
+                .collect(),
         };
         Some((self.netlist, rows))
     }
@@ -260,11 +293,13 @@ fn drawn_source() -> Drawn {
 }
 
 /// One branch of the bank: one symbol for all its capacitors, with the ESR of one below.
-fn drawn_branch(k: usize) -> Drawn {
+fn drawn_branch(k: usize, of: usize) -> Drawn {
     let path = |what: &str| format!("stage.bank.{}.{what}", k + 1);
     let (each, count) = (path("capacitance"), path("count"));
     let value = Shows::Count { count: count.clone(), each: each.clone() };
-    Drawn::new(Symbol::Capacitor, format!("Output capacitor {}", k + 1), format!("C{}", k + 1))
+    let number = |one: &str, many: String| if of == 1 { one.to_owned() } else { many };
+    let name = number("Output capacitor", format!("Output capacitor {}", k + 1));
+    Drawn::new(Symbol::Capacitor, name, number("C", format!("C{}", k + 1)))
         .shows(value, &[&each])
         .quiet(&path("esr"))
         .also(&[&path("remaining"), &count, &path("esl")])

@@ -1,5 +1,6 @@
 //! The table of entries of the power stage.
 
+use super::filter_entries as filters;
 use super::stage::Rectifier;
 use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 
@@ -33,6 +34,11 @@ pub static ENTRIES: &[Entry] = &[
         0.0,
         "Resistance between the ideal input source and the stage: cable, connector, fuse.",
     ),
+    filters::INPUT_INDUCTANCE,
+    filters::INPUT_RESISTANCE,
+    filters::INPUT_DAMPING_RESISTANCE,
+    filters::INPUT_DAMPING_CAPACITANCE,
+    filters::INPUT_DAMPING_INDUCTANCE,
     Entry::new(
         "stage.input-capacitor.capacitance",
         "Input capacitor",
@@ -136,61 +142,66 @@ pub static ENTRIES: &[Entry] = &[
     ),
     Entry::new(
         "stage.synchronous.resistance",
-        "Synchronous switch resistance",
+        "Rectifier resistance",
         Unit::Ohm,
         Bounds::NonNegative,
         0.012,
         "Resistance of the conducting synchronous rectifier.",
     )
     .spread(0.3),
-    branch("stage.bank.1.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 47e-6, CAPACITANCE_HELP),
-    branch(
+    part("stage.bank.1.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 47e-6, CAPACITANCE_HELP),
+    part(
         "stage.bank.1.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
         REMAINING_HELP,
     ),
-    branch("stage.bank.1.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.003, ESR_HELP),
-    branch("stage.bank.1.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
-    branch("stage.bank.1.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
-    branch("stage.bank.2.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 100e-6, CAPACITANCE_HELP),
-    branch(
+    part("stage.bank.1.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.003, ESR_HELP),
+    part("stage.bank.1.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
+    part("stage.bank.1.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
+    part("stage.bank.2.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 100e-6, CAPACITANCE_HELP),
+    part(
         "stage.bank.2.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
         REMAINING_HELP,
     ),
-    branch("stage.bank.2.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.035, ESR_HELP),
-    branch("stage.bank.2.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
-    branch("stage.bank.2.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
-    branch("stage.bank.3.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 10e-6, CAPACITANCE_HELP),
-    branch(
+    part("stage.bank.2.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.035, ESR_HELP),
+    part("stage.bank.2.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
+    part("stage.bank.2.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
+    part("stage.bank.3.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 10e-6, CAPACITANCE_HELP),
+    part(
         "stage.bank.3.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
         REMAINING_HELP,
     ),
-    branch("stage.bank.3.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.004, ESR_HELP),
-    branch("stage.bank.3.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
-    branch("stage.bank.3.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
-    branch("stage.bank.4.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 1e-6, CAPACITANCE_HELP),
-    branch(
+    part("stage.bank.3.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.004, ESR_HELP),
+    part("stage.bank.3.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
+    part("stage.bank.3.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
+    part("stage.bank.4.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 1e-6, CAPACITANCE_HELP),
+    part(
         "stage.bank.4.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
         REMAINING_HELP,
     ),
-    branch("stage.bank.4.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.01, ESR_HELP),
-    branch("stage.bank.4.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
-    branch("stage.bank.4.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
+    part("stage.bank.4.esr", "ESR of one", Unit::Ohm, Bounds::NonNegative, 0.01, ESR_HELP),
+    part("stage.bank.4.esl", "ESL of one", Unit::Henry, Bounds::NonNegative, 0.0, ESL_HELP),
+    part("stage.bank.4.count", "Count in parallel", Unit::One, Bounds::Between(1.0, 1000.0), 1.0, COUNT_HELP),
+    filters::OUTPUT_INDUCTANCE,
+    filters::OUTPUT_RESISTANCE,
+    filters::OUTPUT_DAMPING_RESISTANCE,
+    filters::OUTPUT_CAPACITANCE,
+    filters::OUTPUT_ESR,
 ];
 
 const CAPACITANCE_HELP: &str = "Capacitance printed on one capacitor of this branch.";
@@ -200,8 +211,8 @@ const ESR_HELP: &str = "Equivalent series resistance of one capacitor of this br
 const ESL_HELP: &str = "Equivalent series inductance of one capacitor. It counts in the output impedance and load step everywhere; in the control path only where it carries no switched current and the load is a resistor.";
 const COUNT_HELP: &str = "How many such capacitors stand in parallel.";
 
-/// A row of a bank branch, with the spread usual for its unit.
-const fn branch(
+/// A row of a part, with the spread usual for its unit.
+pub(super) const fn part(
     path: &'static str,
     name: &'static str,
     unit: Unit,
@@ -268,6 +279,8 @@ pub static CHOICES: &[Choice] = &[
         default: "resistor",
         help: "How the load current answers the output voltage.",
     },
+    filters::INPUT,
+    filters::INPUT_DAMPING,
     Choice {
         path: "stage.input-capacitor",
         name: "Input capacitor",
@@ -280,7 +293,7 @@ pub static CHOICES: &[Choice] = &[
             },
         ],
         default: "none",
-        help: "Capacitor across the stage's input terminals. It counts only behind a source resistance.",
+        help: "Capacitor across the stage's input terminals. It counts only behind a source resistance; with an input filter it is the filter's capacitor.",
     },
     Choice {
         path: "stage.bank",
@@ -294,14 +307,31 @@ pub static CHOICES: &[Choice] = &[
         default: "1",
         help: "How many unlike kinds of capacitor stand in parallel at the output.",
     },
+    filters::OUTPUT,
+    filters::OUTPUT_DAMPING,
+    filters::OUTPUT_SENSE,
 ];
 
 /// Whether an entry or choice of the stage plays a part under these choices.
 pub fn applies(path: &str, choices: &Choices) -> bool {
+    let (input_filter, output_filter) =
+        (choices.is("stage.input-filter", "fitted"), choices.is("stage.output-filter", "fitted"));
+    let damped = |by: &str| input_filter && choices.is("stage.input-filter.damping", by);
     match path {
+        "stage.input-filter" | "stage.output-filter" => true,
+        // The filter brings its capacitor along.
+        "stage.input-capacitor" => !input_filter,
         "stage.input-capacitor.capacitance" | "stage.input-capacitor.esr" => {
-            choices.is("stage.input-capacitor", "fitted")
+            input_filter || choices.is("stage.input-capacitor", "fitted")
         }
+        "stage.input-filter.damping.resistance" => damped("capacitor") || damped("inductor"),
+        "stage.input-filter.damping.capacitance" => damped("capacitor"),
+        "stage.input-filter.damping.inductance" => damped("inductor"),
+        "stage.output-filter.damping.resistance" => {
+            output_filter && choices.is("stage.output-filter.damping", "resistor")
+        }
+        _ if path.starts_with("stage.input-filter.") => input_filter,
+        _ if path.starts_with("stage.output-filter.") => output_filter,
         "stage.diode.drop" | "stage.diode.resistance" => Rectifier::chosen(choices) == Rectifier::Diode,
         "stage.synchronous.resistance" => Rectifier::chosen(choices) != Rectifier::Diode,
         _ => match path.strip_prefix("stage.bank.") {

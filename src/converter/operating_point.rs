@@ -86,8 +86,10 @@ pub struct OperatingPoint {
     pub duty: f64,
     /// How the inductor current behaves.
     pub conduction: Conduction,
-    /// Output voltage, as a magnitude [V].
+    /// Regulated output voltage, as a magnitude [V].
     pub output_voltage: f64,
+    /// Voltage at the load's terminals, as a magnitude [V]; the regulated one unless the second stage's drop lies between.
+    pub load_voltage: f64,
     /// Input voltage at the ideal source [V].
     pub input_voltage: f64,
     /// Load current [A].
@@ -102,7 +104,7 @@ pub struct OperatingPoint {
     pub off_slope: f64,
     /// Fraction of the period in which the rectifier conducts, where that is not all the rest of it.
     pub second_duty: Option<f64>,
-    /// The inductors.
+    /// The inductors: those that carry switched current first, then those of the filters.
     pub inductors: Vec<InductorFigures>,
     /// The controlled switch.
     pub switch: CurrentFigures,
@@ -276,7 +278,7 @@ impl Stage {
         let waves = Waves::new(solution, self.switching_frequency);
         let duty = solution.duty;
         let rows: &Rows = &self.rows;
-        let inductors: Vec<InductorFigures> = rows
+        let mut inductors: Vec<InductorFigures> = rows
             .inductor_currents
             .iter()
             .map(|row| InductorFigures { name: "inductor", current: waves.figures(&[*row], ALWAYS) })
@@ -306,11 +308,16 @@ impl Stage {
             Loss { name: "output bank ESR", watts: branches },
             Loss { name: "source resistance", watts: self.resistances.source * input.rms.powi(2) },
         ];
+        let lines = |row: usize| waves.figures(&[row], ALWAYS);
+        let (filter_inductors, filter_losses) = self.filter_figures(waves.spans(), &solution.intervals.inputs, &lines);
+        inductors.extend(filter_inductors);
+        conduction_losses.extend(filter_losses);
         conduction_losses.retain(|loss| loss.watts > 0.0);
         OperatingPoint {
             duty,
             conduction,
             output_voltage: condition.output_voltage,
+            load_voltage: self.load_voltage(condition),
             input_voltage: condition.input_voltage,
             load_current: condition.load_current,
             input_current: input.average,

@@ -6,12 +6,14 @@ pub const DUTY: &str = "duty";
 pub const INPUT_VOLTAGE: &str = "input voltage";
 /// Input: current drawn from the output [A].
 pub const LOAD_CURRENT: &str = "load current";
-/// Output: voltage at the load, a magnitude [V].
+/// Output: voltage that is sensed and regulated, a magnitude [V].
 pub const OUTPUT_VOLTAGE: &str = "output voltage";
 /// Output: average current of the first inductor [A].
 pub const INDUCTOR_CURRENT: &str = "inductor current";
 /// Output: average current drawn from the ideal source [A].
 pub const INPUT_CURRENT: &str = "input current";
+/// Output: voltage at the load's terminals, a magnitude [V]; the output voltage unless a second stage stands between.
+pub const LOAD_VOLTAGE: &str = "load voltage";
 /// Output: average switched current [A], the one that stops when switch and rectifier block: the inductor's, or the
 /// sum of both in a stage of two inductors.
 pub const SWITCHED_CURRENT: &str = "switched current";
@@ -23,5 +25,5 @@ pub const ON_SLOPE: &str = "on slope";
 /// The inputs, in column order.
 pub(super) const INPUTS: [&str; 3] = [DUTY, INPUT_VOLTAGE, LOAD_CURRENT];
 /// The outputs, in row order.
-pub(super) const OUTPUTS: [&str; 6] =
-    [OUTPUT_VOLTAGE, INDUCTOR_CURRENT, INPUT_CURRENT, SWITCHED_CURRENT, SLOPE_DIFFERENCE, ON_SLOPE];
+pub(super) const OUTPUTS: [&str; 7] =
+    [OUTPUT_VOLTAGE, INDUCTOR_CURRENT, INPUT_CURRENT, LOAD_VOLTAGE, SWITCHED_CURRENT, SLOPE_DIFFERENCE, ON_SLOPE];

@@ -6,10 +6,13 @@ use super::drawing::{
     DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, RECTIFIER, Rows, SWITCH, StageDrawing, Topology,
 };
 use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
+use super::filter_values::{InputFilter, SecondStage};
+use super::filters::network_impedance;
 use super::registry::find;
 use super::signals::INPUTS;
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
 use crate::finding::Finding;
+use crate::linear::StateSpace;
 use crate::quantity::{Choices, Values};
 use nalgebra::{DMatrix, DVector};
 
@@ -126,6 +129,23 @@ pub struct Stage {
     pub rectifier: Rectifier,
     /// The output bank.
     pub bank: Vec<Branch>,
+    /// The input filter, where one is fitted.
+    pub input_filter: Option<InputFilter>,
+    /// The second-stage output filter, where one is fitted.
+    pub second_stage: Option<SecondStage>,
+    /// The same stage fed at its input terminals by an ideal source, where an input filter is fitted.
+    unfiltered: Option<Box<Stage>>,
+    /// Output impedance of the input network alone [V/A], where an input filter is fitted.
+    network_impedance: Option<StateSpace>,
+}
+
+/// What feeds a stage that is put together.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Fed {
+    /// Source resistance, input capacitor and filter, as entered.
+    ThroughNetwork,
+    /// An ideal source at the stage's input terminals.
+    AtTerminals,
 }
 
 /// Resistances that turn currents into conduction losses [Ω].
@@ -146,6 +166,8 @@ pub(super) struct Intervals {
     pub(super) cell: SwitchedCell,
     /// Steady inputs: input voltage, load current, diode drop.
     pub(super) inputs: DVector<f64>,
+    /// Row of the load's voltage, and the conductance that makes the load a resistor, its own current left out [S].
+    pub(super) to_resistor: (usize, f64),
 }
 
 impl Stage {
@@ -155,7 +177,18 @@ impl Stage {
     /// # Errors
     /// A finding for an unknown topology or a netlist without state equations.
     pub fn from_values(values: &Values, choices: &Choices) -> Result<Self, Vec<Finding>> {
+        let mut stage = Self::put_together(values, choices, Fed::ThroughNetwork)?;
+        if stage.input_filter.is_some() {
+            stage.unfiltered = Some(Box::new(Self::put_together(values, choices, Fed::AtTerminals)?));
+        }
+        Ok(stage)
+    }
+
+    fn put_together(values: &Values, choices: &Choices, fed: Fed) -> Result<Self, Vec<Finding>> {
         let get = |path: &str| {
+            if fed == Fed::AtTerminals && path == "stage.source.resistance" {
+                return 0.0;
+            }
             let entry = ENTRIES.iter().find(|entry| entry.path == path);
             entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
         };
@@ -175,16 +208,22 @@ impl Stage {
             source: get("stage.source.resistance"),
         };
         let mut options = Options::chosen(choices);
+        if fed == Fed::AtTerminals {
+            options.input_filter = None;
+        }
         // Across an ideal source a capacitor changes nothing but the source's own current.
-        options.input_capacitor &= resistances.source > 0.0;
+        options.input_capacitor &= resistances.source > 0.0 || options.input_filter.is_some();
+        let input_filter = InputFilter::entered(choices, &get).filter(|_| fed == Fed::ThroughNetwork);
+        let second_stage = SecondStage::entered(choices, &get);
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
-            "load resistance" => output / load_currents[1],
+            "load resistance" => load_voltage(second_stage.as_ref(), output, load_currents[1]) / load_currents[1],
             _ => branch_value(name, &bank).unwrap_or_else(|| get(name)),
         };
         let drawn = Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?;
-        let averaged_inductance =
-            load == LoadKind::Resistor && bank.iter().any(|b| b.esl > 0.0) && !drawn.bank_is_switched();
+        // A load that is not a resistor leaves the inductance undamped where it stands right at the bank.
+        let damped = load == LoadKind::Resistor || second_stage.is_some();
+        let averaged_inductance = damped && bank.iter().any(|b| b.esl > 0.0) && !drawn.bank_is_switched();
         let with_inductance = if averaged_inductance {
             let mut branch_inductance = [false; BRANCHES];
             for (flag, branch) in branch_inductance.iter_mut().zip(&bank) {
@@ -194,6 +233,10 @@ impl Stage {
             Some(Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?)
         } else {
             None
+        };
+        let network_impedance = match input_filter {
+            Some(_) => network_impedance(&options, &lookup).map_err(|e| vec![circuit_finding(&e)])?,
+            None => None,
         };
         Ok(Stage {
             topology,
@@ -210,7 +253,32 @@ impl Stage {
             load,
             rectifier,
             bank,
+            input_filter,
+            second_stage,
+            unfiltered: None,
+            network_impedance,
         })
+    }
+
+    /// The same stage fed at its input terminals by an ideal source; none where no input filter is fitted.
+    pub fn without_input_filter(&self) -> Option<&Stage> {
+        self.unfiltered.as_deref()
+    }
+
+    /// Output impedance [V/A] of source and input filter alone at the stage's input terminals; none where no input filter is fitted.
+    pub fn input_network_impedance(&self) -> Option<&StateSpace> {
+        self.network_impedance.as_ref()
+    }
+
+    /// Voltage at the load's terminals at a condition [V]: below the regulated one by the second stage's drop where the bank's is
+    /// regulated.
+    pub fn load_voltage(&self, condition: &StageCondition) -> f64 {
+        load_voltage(self.second_stage.as_ref(), condition.output_voltage, condition.load_current)
+    }
+
+    /// Value in a slot of the netlist.
+    pub(super) fn slot_value(&self, slot: usize) -> f64 {
+        self.plain.values.get(slot).copied().unwrap_or(0.0)
     }
 
     /// The topology.
@@ -218,8 +286,13 @@ impl Stage {
         self.topology
     }
 
-    /// Capacitance of the whole output bank [F].
+    /// Capacitance of the whole output bank, and of the second stage where one is fitted [F].
     pub fn output_capacitance(&self) -> f64 {
+        self.bank_capacitance() + self.second_stage.map_or(0.0, |second| second.capacitance)
+    }
+
+    /// Capacitance of the whole output bank [F].
+    pub fn bank_capacitance(&self) -> f64 {
         self.bank.iter().map(|branch| branch.capacitance).sum()
     }
 
@@ -245,7 +318,7 @@ impl Stage {
     }
 
     fn intervals_of(&self, drawn: &Drawn, condition: &StageCondition) -> Result<Intervals, CircuitError> {
-        let resistance = condition.output_voltage / condition.load_current;
+        let resistance = self.load_voltage(condition) / condition.load_current;
         let mut inputs = DVector::zeros(3);
         inputs[INPUT_VOLTAGE] = condition.input_voltage;
         inputs[DIODE_DROP] = self.diode_drop;
@@ -269,7 +342,14 @@ impl Stage {
         let off = drawn.off.equations(&values)?.over_states_of(&on);
         let idle = drawn.idle.equations(&values)?.over_states_of(&on);
         let cell = SwitchedCell::new(idle, &off, drawn.rows.rectifier_current)?;
-        Ok(Intervals { on: on.independent().0, off, cell, inputs })
+        // Of the load's own −I/V, 0 or I/V.
+        let to_resistor = match self.load {
+            LoadKind::Resistor => 0.0,
+            LoadKind::Current => resistance.recip(),
+            LoadKind::Power => 2.0 * resistance.recip(),
+        };
+        let to_resistor = (drawn.rows.load_voltage, to_resistor);
+        Ok(Intervals { on: on.independent().0, off, cell, inputs, to_resistor })
     }
 }
 
@@ -316,6 +396,14 @@ impl Drawn {
             let scale = on.c.row(row).amax().max(off.c.row(row).amax());
             (on.c.row(row) - off.c.row(row)).amax() > 1e-9 * scale
         })
+    }
+}
+
+/// Voltage at the load's terminals [V] from the regulated one.
+fn load_voltage(second: Option<&SecondStage>, regulated: f64, load_current: f64) -> f64 {
+    match second {
+        Some(second) if !second.sensed_at_load => regulated - load_current * second.dc_resistance,
+        _ => regulated,
     }
 }
 

@@ -7,7 +7,7 @@ use crate::quantity::{Choices, Values};
 use std::f64::consts::TAU;
 
 /// A stage from entries; what is not given is lossless where it can be.
-fn stage(topology: &str, entries: &[(&str, f64)], chosen: &[(&str, &str)]) -> Stage {
+pub(super) fn stage(topology: &str, entries: &[(&str, f64)], chosen: &[(&str, &str)]) -> Stage {
     let mut values = Values::new();
     for path in [
         "stage.source.resistance",

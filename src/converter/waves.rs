@@ -54,6 +54,11 @@ impl<'a> Waves<'a> {
         Waves { solution, segments, period }
     }
 
+    /// Equations and duration [s] of each interval.
+    pub(super) fn spans(&self) -> Vec<(&'a StateEquations, f64)> {
+        self.segments.iter().map(|segment| (segment.equations, segment.duration)).collect()
+    }
+
     /// Middle value and swing of the sum of output rows in one interval.
     fn line(&self, rows: &[usize], segment: &Segment<'_>) -> (f64, f64) {
         rows.iter().fold((0.0, 0.0), |(middle, swing), &row| {

@@ -7,7 +7,7 @@
 use super::document::{Design, unknown_option};
 use super::{Events, Requirements, caution, table};
 use crate::compensator::Compensator;
-use crate::control::Modulator;
+use crate::control::ControlLaw;
 use crate::converter::{self, Reach, Stage};
 use crate::finding::{Finding, Remedy};
 use crate::quantity::{Entry, Unit, Values, print, print_digits};
@@ -29,7 +29,7 @@ pub struct CheckedDesign {
     /// The power stage, for the output voltage that reference and divider give.
     pub stage: Stage,
     /// What turns control voltage into duty ratio.
-    pub modulator: Modulator,
+    pub law: ControlLaw,
     /// The network around the error amplifier.
     pub compensator: Compensator,
     /// What the design is asked to meet.
@@ -51,18 +51,18 @@ impl Design {
         problems.extend(self.reach_problems());
         let mut rooms = Rooms { problems };
         let compensator = rooms.build("compensator", || Compensator::from_values(&self.values, &self.choices));
-        let modulator = rooms.build("control", || Ok(Modulator::from_values(&self.values, &self.choices)));
+        let law = rooms.build("control", || ControlLaw::from_values(&self.values, &self.choices));
         let requirements = rooms.build("requirement", || Requirements::from_values(&self.values));
         let events = rooms.build("event", || Ok(Events::from_values(&self.values)));
         let regulated = self.regulated(compensator.as_ref());
         let stage = rooms.build("stage", || Stage::from_values(&regulated, &self.choices));
-        match (stage, modulator, compensator, requirements, events) {
-            (Some(stage), Some(modulator), Some(compensator), Some(requirements), Some(events))
+        match (stage, law, compensator, requirements, events) {
+            (Some(stage), Some(law), Some(compensator), Some(requirements), Some(events))
                 if rooms.problems.is_empty() =>
             {
                 let findings = self.remarks(&compensator);
                 let title = self.title.clone();
-                Ok(CheckedDesign { title, stage, modulator, compensator, requirements, events, findings })
+                Ok(CheckedDesign { title, stage, law, compensator, requirements, events, findings })
             }
             _ => Err(in_form_order(rooms.problems)),
         }
@@ -162,7 +162,7 @@ impl Design {
         let mut remarks = Vec::new();
         remarks.extend(self.values.get(OUTPUT).and_then(|entered| output_differs(entered, output)));
         remarks.extend(caution::caution(self, output));
-        if self.choices.is("stage.input-capacitor", "none") {
+        if self.choices.is("stage.input-capacitor", "none") && !self.choices.is("stage.input-filter", "fitted") {
             remarks.push(
                 Finding::notice(
                     "stage.input-capacitor",
@@ -291,6 +291,55 @@ mod tests {
             };
             assert!(problem.place.starts_with(path.trim_end_matches(".greatest")), "{problem}");
             assert!(problem.message.contains(reason), "{problem}");
+        }
+    }
+
+    /// Wrong input for every entry of the control: named at its place, nothing lost.
+    #[test]
+    fn unusable_control_entries_are_problems_at_their_place() {
+        let peak = [("control.mode", "peak-current")];
+        let lumped = [("control.mode", "valley-current"), ("control.sense", "transconductance")];
+        let rate = [("control.mode", "peak-current"), ("control.slope", "rate")];
+        let share = [("control.mode", "peak-current"), ("control.slope", "share")];
+        let average = [("control.mode", "average-current")];
+        let current = [("control.mode", "average-current"), ("control.inner.amplifier", "transconductance")];
+        for (choices, path, text) in [
+            (&peak[..], "control.sense.gain", "0"),
+            (&peak, "control.sense.gain", "-10m"),
+            (&peak, "control.sense.filter", "-1n"),
+            (&peak, "control.sense.divider", "0"),
+            (&peak, "control.sense.divider", "1.5"),
+            (&peak, "control.sense.offset", "2k"),
+            (&peak, "control.slope.quality", "0"),
+            (&peak, "control.blanking", "-1n"),
+            (&peak, "control.blanking", "4u"),
+            (&peak, "control.on-time.least", "1 ms"),
+            (&peak, "control.clamp", "-1"),
+            (&lumped, "control.sense.transconductance", "0"),
+            (&rate, "control.slope.rate", "-1k"),
+            (&share, "control.slope.share", "-10 %"),
+            (&average, "control.clamp", "0"),
+            (&average, "control.inner.r1", "0"),
+            (&average, "control.inner.r2", "-1k"),
+            (&average, "control.inner.c1", "0"),
+            (&average, "control.inner.c2", "0"),
+            (&average, "control.inner.op-amp.dc-gain", "0.5"),
+            (&average, "control.inner.op-amp.gain-bandwidth", "0"),
+            (&average, "control.inner.output-least", "5"),
+            (&average, "control.ramp.amplitude", "0"),
+            (&current, "control.inner.transconductance.gm", "0"),
+            (&current, "control.inner.transconductance.output-resistance", "0"),
+        ] {
+            let pairs: Vec<_> = choices.iter().copied().chain([(path, text)]).collect();
+            let problem = only_problem(&pairs);
+            assert_eq!(problem.place, path, "{problem}");
+            let mended = {
+                let mut design = set(&pairs);
+                let row = table::entry(path).expect("a row");
+                design.values.set(path, row.default).expect("finite");
+                design
+            };
+            assert!(mended.check().is_ok(), "{path}");
         }
     }
 

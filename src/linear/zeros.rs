@@ -131,8 +131,9 @@ impl Reduction {
                 noise_c[i] * self.b[i].abs() + c[i].abs() * (self.noise_b[i] + 2.0 * f64::EPSILON * self.b[i].abs())
             })
             .sum();
-        self.turn_to_last(c);
-        let direct = (self.b[last], carried / length);
+        // Taken from the rows as they are: turned first, a strong input elsewhere would leave its rounding here.
+        let along = c.dot(&self.b) / length;
+        let direct = (self.turn_to_last(c) * along, carried / length);
         let rate = self.a.row(last).columns(0, last).transpose();
         let noise = self.noise_a.row(last).columns(0, last).transpose();
         for m in [&mut self.a, &mut self.noise_a] {
@@ -146,8 +147,8 @@ impl Reduction {
         (direct, (rate, noise))
     }
 
-    /// Turns the coordinates so that the output row points along the last one.
-    fn turn_to_last(&mut self, c: &DVector<f64>) {
+    /// Turns the coordinates so that the output row points along the last one, and says in which sense, +1 or −1.
+    fn turn_to_last(&mut self, c: &DVector<f64>) -> f64 {
         let last = self.a.nrows() - 1;
         // An output that is a single state only needs two coordinates exchanged, which costs no rounding.
         let mut nonzero = c.iter().enumerate().filter(|(_, x)| **x != 0.0).map(|(i, _)| i);
@@ -158,9 +159,10 @@ impl Reduction {
             }
             self.b.swap_rows(only, last);
             self.noise_b.swap_rows(only, last);
-            return;
+            return c[only].signum();
         }
         let mut v = c / c.amax();
+        let sense = -1.0_f64.copysign(v[last]);
         v[last] += v.norm().copysign(v[last]);
         let beta = 2.0 / v.norm_squared();
         let size = v.abs();
@@ -172,5 +174,6 @@ impl Reduction {
         self.a.ger(-beta, &column, &v, 1.0);
         self.noise_b += &size * (beta * size.dot(&(&self.noise_b + self.b.abs() * f64::EPSILON)));
         self.b.axpy(-beta * v.dot(&self.b), &v, 1.0);
+        sense
     }
 }

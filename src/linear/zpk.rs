@@ -154,6 +154,28 @@ mod tests {
     use super::super::precision::{assert_close, assert_complex_close, assert_same_roots};
     use super::*;
 
+    /// Planted answer: a capacitor's ESR zero behind a strong input that the output does not see. Its rounding once passed for a
+    /// direct path and gave a zero at 1e21 rad/s.
+    #[test]
+    fn a_strong_input_elsewhere_is_no_direct_path() {
+        let (l, c, esr) = (1.5e-6, 1.12e-3, 9.783e-3);
+        let a = DMatrix::from_row_slice(
+            3,
+            3,
+            &[-2.1e4, -1.0 / l, 7.147e6, 1.0 / c, -3.7e3, 0.0, -2.213e5, -7.05e3, -1.64e6],
+        );
+        let b = DMatrix::from_row_slice(3, 1, &[0.0, 0.0, 2.209e6]);
+        for scale in [1.0, 3.0, -7.0] {
+            let seen = DMatrix::from_row_slice(1, 3, &[scale * esr, scale, 0.0]);
+            let system = StateSpace::new(a.clone(), b.clone(), seen, DMatrix::zeros(1, 1), &["u"], &["y"]).unwrap();
+            let zpk = Zpk::from_state_space(&system, 0, 0).unwrap();
+            // y = v + esr·i with v' = i/c − 3.7e3·v.
+            let zero = -(3.7e3 + 1.0 / (esr * c));
+            assert_eq!(zpk.zeros.len(), 1);
+            assert!((zpk.zeros[0].re / zero - 1.0).abs() < 1e-9, "{:?} against {zero}", zpk.zeros);
+        }
+    }
+
     fn real(x: f64) -> Complex {
         Complex::new(x, 0.0)
     }

@@ -18,12 +18,14 @@ struct Object<'a> {
     operating_point: Option<OperatingPoint>,
     inductors: Vec<Inductor>,
     landmarks: Vec<Landmark>,
+    control: Option<Control>,
     #[serde(rename = "loop")]
     loop_gain: Option<Loop>,
     conditions: Vec<NineRow<'a>>,
     worst: Vec<Worst<'a>>,
     response: Vec<Response>,
     load_step: Option<LoadStep>,
+    load_sweep: Option<super::sweep::Sweep>,
     requirements: Vec<Requirement<'a>>,
     findings: Vec<FindingRow<'a>>,
 }
@@ -39,10 +41,39 @@ struct Condition<'a> {
 struct OperatingPoint {
     duty: f64,
     conduction: &'static str,
+    second_duty: Option<f64>,
     control_voltage: f64,
     input_current: f64,
     conduction_loss: f64,
     boundary_load: Option<f64>,
+}
+
+#[derive(Serialize)]
+struct Control {
+    mode: &'static str,
+    #[serde(rename = "control_voltage")]
+    voltage: f64,
+    clamp: Option<f64>,
+    sampling_quality: Option<f64>,
+    subharmonic: Option<bool>,
+    slope_factor: Option<f64>,
+    fast_multiplier: Option<f64>,
+    ramp_v_per_s: Option<f64>,
+    ramp_share: Option<f64>,
+    boundary_ramp_v_per_s: Option<f64>,
+    recommended_ramp_v_per_s: Option<f64>,
+    inner_loop: Option<InnerLoop>,
+}
+
+#[derive(Serialize)]
+struct InnerLoop {
+    stable: Option<bool>,
+    crossover_hz: Option<f64>,
+    phase_margin_deg: Option<f64>,
+    gain_margin_db: Option<f64>,
+    modulus_margin: f64,
+    output_voltage: f64,
+    slope_ratio: f64,
 }
 
 #[derive(Serialize)]
@@ -91,6 +122,8 @@ struct NineRow<'a> {
     load_current: f64,
     duty: Option<f64>,
     conduction: Option<&'static str>,
+    control_voltage: Option<f64>,
+    sampling_quality: Option<f64>,
     stable: Option<bool>,
     crossover_hz: Option<f64>,
     phase_margin_deg: Option<f64>,
@@ -187,11 +220,13 @@ fn object(report: &Report) -> Object<'_> {
         operating_point: detail.map(operating_point),
         inductors: detail.map(inductors).unwrap_or_default(),
         landmarks: detail.map(landmarks).unwrap_or_default(),
+        control: report.results.as_ref().zip(detail).map(|((design, _), detail)| control(design, detail)),
         loop_gain: detail.map(loop_gain),
         conditions: analysis.map(|a| a.conditions.iter().map(nine_row).collect()).unwrap_or_default(),
         worst: analysis.map(worst).unwrap_or_default(),
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
+        load_sweep: report.load_sweep.as_ref().map(super::sweep::json),
         requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
         findings: report.findings.iter().map(finding_row).collect(),
     }
@@ -202,7 +237,8 @@ fn operating_point(detail: &Detail) -> OperatingPoint {
     OperatingPoint {
         duty: point.duty,
         conduction: point.conduction.word(),
-        control_voltage: detail.control_voltage,
+        second_duty: point.second_duty,
+        control_voltage: detail.control.control_voltage,
         input_current: point.input_current,
         conduction_loss: point.conduction_loss,
         boundary_load: detail.boundary_load,
@@ -221,6 +257,36 @@ fn inductors(detail: &Detail) -> Vec<Inductor> {
 
 fn landmarks(detail: &Detail) -> Vec<Landmark> {
     detail.landmarks.iter().map(|mark| Landmark { name: mark.name, frequency_hz: mark.frequency_hz }).collect()
+}
+
+fn control(design: &CheckedDesign, detail: &Detail) -> Control {
+    let (figures, sampling) = (&detail.control, detail.control.sampling);
+    let inner = figures.inner.as_ref().map(|inner| {
+        let crossover = inner.margins.headline_crossover();
+        InnerLoop {
+            stable: stable(&inner.verdict),
+            crossover_hz: crossover.map(|c| c.frequency_hz),
+            phase_margin_deg: crossover.map(|c| c.phase_margin_deg),
+            gain_margin_db: inner.margins.gain_margin_up_db(),
+            modulus_margin: inner.margins.modulus_margin.min(1.0),
+            output_voltage: inner.output_voltage,
+            slope_ratio: inner.slope_ratio,
+        }
+    });
+    Control {
+        mode: design.law.word(),
+        voltage: figures.control_voltage,
+        clamp: design.law.clamp,
+        sampling_quality: sampling.and_then(|s| s.quality()),
+        subharmonic: sampling.map(|s| s.subharmonic()),
+        slope_factor: sampling.map(|s| s.slope_factor),
+        fast_multiplier: sampling.map(|s| s.fast_multiplier),
+        ramp_v_per_s: detail.ramp,
+        ramp_share: sampling.map(|s| s.ramp_share),
+        boundary_ramp_v_per_s: sampling.map(|s| s.boundary_ramp),
+        recommended_ramp_v_per_s: sampling.map(|s| s.recommended_ramp),
+        inner_loop: inner,
+    }
 }
 
 fn stable(verdict: &Verdict) -> Option<bool> {
@@ -266,6 +332,8 @@ fn nine_row(row: &ConditionResult) -> NineRow<'_> {
         load_current: row.condition.load_current,
         duty: summary.map(|s| s.operating_point.duty),
         conduction: summary.map(|s| s.operating_point.conduction.word()),
+        control_voltage: summary.map(|s| s.control.control_voltage),
+        sampling_quality: summary.and_then(|s| s.control.sampling?.quality()),
         stable: summary.and_then(|s| stable(&s.loop_gain.verdict)),
         crossover_hz: crossover.map(|c| c.frequency_hz),
         phase_margin_deg: crossover.map(|c| c.phase_margin_deg),

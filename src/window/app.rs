@@ -79,6 +79,17 @@ impl App {
         self.view.review
     }
 
+    /// True while the hint for who is new here is shown.
+    pub fn hinting(&self) -> bool {
+        self.view.hint
+    }
+
+    /// Names of the parts, lanes and landmarks that are lit because of what is pointed at, for tests.
+    pub fn lit(&mut self) -> Vec<String> {
+        let desk = Desk { session: &self.session, kept: &self.kept, view: &mut self.view, send: &mut self.asked };
+        desk.lit()
+    }
+
     /// The message under the bar, if any.
     pub fn message(&self) -> Option<&super::view::Message> {
         self.view.message.as_ref()
@@ -213,12 +224,13 @@ impl eframe::App for App {
 
     fn ui(&mut self, ui: &mut Ui, _frame: &mut eframe::Frame) {
         let width_before = self.view.plot_width;
+        self.view.begin_pointing();
         let mut desk = Desk { session: &self.session, kept: &self.kept, view: &mut self.view, send: &mut self.asked };
         layout::window_ui(ui, &mut desk);
         dialogs::dialog_ui(ui, &mut desk);
         // What was asked for is carried out in the next turn, and new widths ask for new curves there.
         let resized = (self.view.plot_width - width_before).abs() >= 1.0;
-        if !self.asked.is_empty() || resized {
+        if !self.asked.is_empty() || resized || self.view.pointed_elsewhere() {
             ui.ctx().request_repaint();
         }
     }

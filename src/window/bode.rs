@@ -54,7 +54,8 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let veil = if desk.session.stale() { theme::STALE } else { 1.0 };
     ground(ui, &stack, desk.session.analysis(), palette);
-    if let Some(analysis) = desk.session.analysis() {
+    let session = desk.session;
+    if let Some(analysis) = session.analysis() {
         let mut painter = ui.painter().clone();
         painter.multiply_opacity(veil);
         if desk.view.band {
@@ -67,7 +68,7 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             curves(&painter, &stack, detail, desk, palette);
             marks::margins(&painter, &stack, analysis, detail, palette);
         }
-        marks::foot_ui(ui, &stack, analysis, palette);
+        marks::foot_ui(ui, &stack, analysis, desk);
     }
     cursor_line(ui, &stack, desk.view, palette);
     legend::legend_ui(ui, head, desk);

@@ -227,6 +227,8 @@ pub enum Command {
     ToggleStage,
     /// Show or hide the column of read-outs.
     ToggleReadouts,
+    /// Show or fold the schematics.
+    ToggleSchematics,
     /// Show the searchable list of commands.
     ListCommands,
     /// Show the hint for who is new here, or close it.

@@ -53,6 +53,13 @@ const CTRL_SHIFT: Modifiers = Modifiers::COMMAND.plus(Modifiers::SHIFT);
 
 /// The command table, in the order of the menus.
 pub(super) static COMMANDS: &[Row] = &[
+    row(
+        "New design…",
+        Menu::Design,
+        Some(key(CTRL, Key::N)),
+        "Begin a design from what it has to do; every assumption is told first.",
+        Command::NewDesign,
+    ),
     row("Open…", Menu::Design, Some(key(CTRL, Key::O)), "Open a design file or a sample.", Command::Open),
     row("Save", Menu::Design, Some(key(CTRL, Key::S)), "Save the design file.", Command::Save),
     row("Save as…", Menu::Design, Some(key(CTRL_SHIFT, Key::S)), "Save under another name.", Command::SaveAs),
@@ -252,6 +259,13 @@ pub(super) static COMMANDS: &[Row] = &[
         "Show or hide margins, parts and findings.",
         Command::ToggleReadouts,
     ),
+    row(
+        "Schematics",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F8)),
+        "Show or fold the schematics of stage and compensator.",
+        Command::ToggleSchematics,
+    ),
     row("Light", Menu::View, None, "Light colours.", Command::Theme(ThemePreference::Light)),
     row("Dark", Menu::View, None, "Dark colours.", Command::Theme(ThemePreference::Dark)),
     row("As the system", Menu::View, None, "Colours as the desktop has them.", Command::Theme(ThemePreference::System)),
@@ -264,6 +278,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(CTRL, Key::K)),
         "A list of all commands to search.",
         Command::ListCommands,
+    ),
+    row(
+        "Show the hint",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F1)),
+        "Three sentences for who is new here.",
+        Command::Hint(true),
     ),
 ];
 

@@ -6,10 +6,12 @@ use eframe::egui::{
 };
 
 use super::command::Command;
+use super::explain;
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::what_if;
-use crate::analysis::{Analysis, Condition, ConditionResult, Level, LimitKind};
+use crate::analysis::{Analysis, Condition, ConditionResult, Detail, Level, LimitKind};
+use crate::converter::Conduction;
 use crate::quantity::{self, Unit};
 
 /// The chooser: says which condition is shown; pressed, it opens the map. Wheel and arrow commands step through.
@@ -21,7 +23,11 @@ pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
             format!("What if: {}", analysis.condition.label)
         }
         Some(analysis) if analysis.condition.levels.is_none() => format!("what if {}", short(&analysis.condition)),
-        Some(analysis) if roomy => format!("Shown: {}", analysis.condition.label),
+        Some(analysis) if roomy => {
+            let rests = |d: &Detail| d.operating_point.conduction == Conduction::Discontinuous;
+            let mode = if analysis.shown.as_deref().is_ok_and(rests) { ", discontinuous" } else { "" };
+            format!("Shown: {}{mode}", analysis.condition.label)
+        }
         Some(analysis) => short(&analysis.condition),
         None => format!("Shown: {} input, {} load", input.word(), load.word()),
     };
@@ -156,7 +162,9 @@ fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult,
     painter.text(cell.center() + vec2(0.0, 7.5), Align2::CENTER_CENTER, under, theme::small(), palette.weak);
     super::legend::focus_ring(ui, &response);
     let help = match &result.outcome {
-        Ok(_) => result.condition.label.clone(),
+        Ok(summary) => {
+            format!("{}\n{} conduction", result.condition.label, summary.operating_point.conduction.word())
+        }
         Err(finding) => format!("{}\n{}", result.condition.label, finding.message),
     };
     if response.on_hover_text(help).clicked() {
@@ -194,9 +202,10 @@ fn missed(analysis: &Analysis, margin_deg: f64, nominal: bool) -> bool {
 pub(super) fn panel_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     ui.horizontal(|ui| {
-        ui.label(RichText::new("Nine conditions").font(theme::strong(13.5)));
+        let heading = ui.label(RichText::new("Nine conditions").font(theme::strong(13.5)));
+        explain::explained(ui, heading, "nine-conditions", explain::nothing);
         let text = RichText::new("margin, crossover").font(theme::small()).color(palette.weak);
-        ui.label(text).on_hover_text("Input voltage down, load across. Press one to show it in full.");
+        ui.label(text).on_hover_text("Input voltage down, load across.");
     });
     map_ui(ui, "panel", desk);
 }

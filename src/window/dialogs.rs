@@ -6,14 +6,21 @@ use super::command::{COMMANDS, Command};
 use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
-use super::{bar, recents, recovery};
+use super::{bar, new_design, recents, recovery};
+
+/// Width of a dialog [points].
+const DIALOG: f32 = 520.0;
 
 /// Draws the dialog that is open, if any.
 pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(mut dialog) = desk.view.dialog.clone() else { return };
     let frame = Frame::popup(ui.style()).inner_margin(18);
     let response = Modal::new(Id::unique("dialog")).frame(frame).show(ui.ctx(), |ui| {
-        ui.set_width(520.0);
+        if dialog == Dialog::New {
+            new_design::new_design_ui(ui, desk);
+            return;
+        }
+        ui.set_width(DIALOG.min(ui.ctx().content_rect().width() - 60.0));
         match &mut dialog {
             Dialog::New => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
@@ -87,11 +94,11 @@ fn open_ui(ui: &mut Ui, path: &mut String, desk: &mut Desk<'_>) {
     if !desk.kept.recent.is_empty() {
         ui.add_space(10.0);
         ui.label(RichText::new("Recent files").font(theme::strong(13.5)));
-        ScrollArea::vertical().id_salt("recent").max_height(170.0).show(ui, |ui| recents::recents_ui(ui, desk));
+        list(ui, "recent", 170.0).show(ui, |ui| recents::recents_ui(ui, desk));
     }
     ui.add_space(10.0);
     ui.label(RichText::new("Or a sample").font(theme::strong(13.5)));
-    ScrollArea::vertical().id_salt("samples").max_height(260.0).show(ui, |ui| {
+    list(ui, "samples", 260.0).show(ui, |ui| {
         bar::samples_ui(ui, desk);
     });
 }
@@ -166,7 +173,7 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
         desk.ask(Command::Dismiss);
         desk.ask(first.command.clone());
     }
-    ScrollArea::vertical().max_height(360.0).show(ui, |ui| {
+    list(ui, "commands", 360.0).show(ui, |ui| {
         for row in found {
             if bar::command_ui(ui, row, false) {
                 desk.ask(Command::Dismiss);
@@ -180,6 +187,16 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
 pub(super) fn buttons(ui: &mut Ui, content: impl FnOnce(&mut Ui)) {
     ui.horizontal(content);
 }
+
+/// A list that scrolls: as high as wished where the window has the room. Without a least height it would take what the dialog
+/// happened to leave when it was first drawn.
+pub(super) fn list(ui: &Ui, name: &str, wish: f32) -> ScrollArea {
+    let height = wish.min(ui.ctx().content_rect().height() * LIST_SHARE);
+    ScrollArea::vertical().id_salt(name).max_height(height).min_scrolled_height(height)
+}
+
+/// Most of the window's height that one list takes.
+const LIST_SHARE: f32 = 0.4;
 
 /// The button that is meant.
 pub(super) fn primary(ui: &Ui, text: &str) -> Button<'static> {

@@ -60,7 +60,7 @@ fn actions_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
         let response = ui.add(egui::Button::new(text).small().frame(false));
         super::legend::focus_ring(ui, &response);
         if response.clicked() {
-            desk.view.seek = Some(entry.path.to_owned());
+            desk.view.go_to(entry.path);
         }
     }
 }

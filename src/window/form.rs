@@ -3,14 +3,19 @@
 //! *Conventions*: text is taken over with Enter or when the field is left; Escape keeps what was there. Text that cannot be
 //! read stays in its field with the reason under it. A field shows four digits; while edited it shows the exact number.
 
+use std::borrow::Cow;
+
 use eframe::egui::{
     self, Align, FontSelection, Id, Key, Layout, Response, RichText, Role, Sense, Stroke, TextEdit, Ui, UiBuilder,
     WidgetInfo, pos2, text::CCursor, text::CCursorRange, vec2,
 };
 
 use super::command::Command;
+use super::explain;
+use super::pointed::Pointed;
 use super::theme::{self, palette};
 use super::view::{Desk, Field};
+use crate::analysis::terms;
 use crate::quantity::{self, Choice, Entry};
 
 /// What a form row stands for.
@@ -126,7 +131,7 @@ pub(super) fn choice_ui(ui: &mut Ui, choice: &'static Choice, width: f32, desk: 
 }
 
 fn entry_row_ui(ui: &mut Ui, entry: &'static Entry, name: &str, desk: &mut Desk<'_>) {
-    row_ui(ui, (name, entry.help), LABEL_SHARE, |ui, width| {
+    row_ui(ui, (name, &help(entry)), LABEL_SHARE, |ui, width| {
         field_ui(ui, entry, width, desk);
     });
     problem_ui(ui, entry.path, desk);
@@ -168,7 +173,8 @@ fn row_ui(ui: &mut Ui, words: (&str, &str), share: f32, field: impl FnOnce(&mut 
     });
 }
 
-fn label_ui(ui: &mut Ui, name: &str, help: &str, width: f32) {
+/// The name of a row, with its explanation.
+pub(super) fn label_ui(ui: &mut Ui, name: &str, help: &str, width: f32) {
     let (rect, response) = ui.allocate_exact_size(vec2(width, theme::ROW), Sense::hover());
     let mut inner = ui.new_child(UiBuilder::new().max_rect(rect).layout(Layout::left_to_right(Align::Center)));
     inner.add(egui::Label::new(RichText::new(name).color(palette(ui).weak)).truncate());
@@ -219,12 +225,21 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
             desk.view.field = Some(Field { path: entry.path, text });
         }
     }
+    desk.view.point(Pointed::Entry(entry.path), &response);
     if desk.view.seek.as_deref() == Some(entry.path) {
         desk.view.seek = None;
         response.request_focus();
         response.scroll_to_me(Some(Align::Center));
     }
-    if response.has_focus() { response } else { response.on_hover_text(entry.help) }
+    if response.has_focus() { response } else { explain::described(ui, response, || help(entry).into_owned()) }
+}
+
+/// The help of an entry; that of a requirement with the formula of what it limits.
+pub(super) fn help(entry: &Entry) -> Cow<'static, str> {
+    match terms::of_entry(entry.path) {
+        Some(term) => format!("{}\n{}", entry.help, term.formula).into(),
+        None => entry.help.into(),
+    }
 }
 
 /// What a field shows while nobody edits it.

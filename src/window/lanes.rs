@@ -13,6 +13,7 @@ use eframe::egui::{
 use super::bode::Stack;
 use super::command::Command;
 use super::lane_card::{self, Held};
+use super::pointed::Pointed;
 use super::theme::{self, Palette, palette};
 use super::ties;
 use super::view::{Desk, Drag, Typing};
@@ -85,7 +86,9 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     let painter = ui.painter().clone();
     painter.hline(plot.x_range(), y, Stroke::new(2.5, palette.rail));
     let word = kind_word(lane.kind);
-    painter.text(pos2(plot.left() - EDGE, y), Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
+    let at = pos2(plot.left() - EDGE, y);
+    let name = painter.text(at, Align2::RIGHT_CENTER, word, theme::small(), palette.weak);
+    name_ui(ui, name, lane);
     aim(&painter, stack, lane, y, desk, palette);
 
     let id = Id::unique(("lane", lane.key));
@@ -93,7 +96,12 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     describe(ui, &response, lane);
     let held = response.dragged() || response.is_pointer_button_down_on();
     let active = held || response.has_focus() || response.hovered();
-    paint_handle(&painter, handle, lane.kind, active, palette);
+    desk.view.point(Pointed::Lane(lane.key), &response);
+    let lit = desk.lit_lane(lane);
+    if lit && !active {
+        painter.circle_filled(handle, theme::HANDLE + 5.0, palette.compensator.gamma_multiply(0.22));
+    }
+    paint_handle(&painter, handle, lane.kind, active || lit, palette);
     if response.has_focus() {
         let ring = Rect::from_center_size(handle, vec2(20.0, 20.0));
         painter.rect_stroke(ring, 5.0, Stroke::new(1.5, palette.accent), StrokeKind::Outside);
@@ -116,6 +124,18 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     }
     let taken = number.union(Rect::from_center_size(handle, vec2(18.0, 18.0))).expand(1.0);
     Shown { active, in_hand, handle, taken }
+}
+
+/// Explains the word in the gutter.
+fn name_ui(ui: &Ui, name: Rect, lane: &Lane) {
+    let term = match lane.kind {
+        LaneKind::Gain => "lane-gain",
+        LaneKind::Zero => "compensator-zero",
+        LaneKind::Pole => "compensator-pole",
+    };
+    let response = ui.interact(name.expand(3.0), Id::unique(("lane name", lane.key)), Sense::hover());
+    response.widget_info(|| WidgetInfo::labeled(egui::Role::Label, true, format!("Name of the {}", lane.name)));
+    super::explain::explained(ui, response, term, || format!("here {}", lane.formula));
 }
 
 /// The word in the gutter.

@@ -4,11 +4,12 @@
 
 use eframe::egui::{self, CentralPanel, Frame, Margin, Panel, Rect, ScrollArea, Stroke, Ui, UiBuilder, pos2};
 
+use super::pointed::Sheet;
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{
-    bar, bode, conditions, findings, ledger, operating, parts, readouts, recovery, responses, review, stage, steps,
-    tries, verdict,
+    bar, bode, conditions, findings, hint, ledger, operating, parts, readouts, recovery, responses, review, schematic,
+    stage, steps, tries, verdict,
 };
 
 /// Height that steps and responses take under the Bode plots, as a share of the room.
@@ -25,6 +26,8 @@ const WINDOW_WIDTHS: (f32, f32) = (1280.0, 1920.0);
 const SIDE_BY_SIDE: f32 = 480.0;
 /// Height from which the map of the nine conditions has a place of its own [points].
 const TALL_COLUMN: f32 = 880.0;
+/// Height of the entries' part of the left column from which the schematic stands still above them [points].
+const HIGH_FORM: f32 = 400.0;
 /// Share of the right column that findings may take, and their least height [points].
 const FINDINGS: (f32, f32) = (0.26, 74.0);
 
@@ -43,6 +46,9 @@ pub(super) fn window_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         .show(ui, |ui| bar::bar_ui(ui, desk));
     if desk.session.stale() || desk.view.banner().is_some() || recovery::notice(desk).is_some() {
         Panel::top("notices").resizable(false).frame(frame(palette.field)).show(ui, |ui| bar::notices_ui(ui, desk));
+    }
+    if desk.view.hint {
+        hint::hint_ui(ui, desk);
     }
     let (left_width, right_width) = column_widths(ui.available_width());
     let narrow = ui.available_width() < theme::LEFT_COLUMN + theme::RIGHT_COLUMN + LEAST_MIDDLE;
@@ -88,7 +94,20 @@ fn left_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             operating::operating_ui(ui, desk);
         });
     });
+    // The schematic stays in view where there is height for it, else it scrolls with the entries.
+    let fixed = ui.available_height() > HIGH_FORM;
+    let head_ui = |ui: &mut Ui, desk: &mut Desk<'_>| {
+        ui.set_max_width(ui.available_width() - 6.0);
+        stage::title_ui(ui, desk);
+        schematic::schematic_ui(ui, Sheet::Stage, desk);
+    };
+    if fixed {
+        ui.scope(|ui| head_ui(ui, desk));
+    }
     ScrollArea::vertical().id_salt("stage").auto_shrink(false).show(ui, |ui| {
+        if !fixed {
+            ui.scope(|ui| head_ui(ui, desk));
+        }
         ui.set_max_width(ui.available_width() - 6.0);
         stage::stage_ui(ui, desk);
     });

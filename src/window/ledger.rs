@@ -3,6 +3,8 @@
 use eframe::egui::{Align2, Color32, Rect, RichText, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis::Axis;
+use super::explain;
+use super::pointed::Pointed;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
 use crate::analysis::{LedgerRole, LedgerRow};
@@ -15,12 +17,14 @@ const VALUE: f32 = 52.0;
 
 /// Draws the ledger at the headline crossover.
 pub(super) fn ledger_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    let Some(detail) = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok()) else { return };
+    let session = desk.session;
+    let Some(detail) = session.analysis().and_then(|analysis| analysis.shown.as_ref().ok()) else { return };
     let Some(ledger) = &detail.ledger else { return };
     let palette = palette(ui);
     let at = quantity::print_digits(ledger.frequency_hz, Unit::Hertz, 3);
     ui.horizontal(|ui| {
-        ui.label(RichText::new("Phase ledger").font(theme::strong(13.5)));
+        let heading = ui.label(RichText::new("Phase ledger").font(theme::strong(13.5)));
+        explain::explained(ui, heading, "phase-ledger", explain::nothing);
         ui.label(RichText::new(format!("at crossover, {at}")).font(theme::small()).color(palette.weak));
     });
     let mut least = 0.0_f64;
@@ -60,10 +64,14 @@ fn colour(role: LedgerRole, palette: &Palette) -> Color32 {
     }
 }
 
-fn row_ui(ui: &mut Ui, row: &LedgerRow, from: f64, x: &Axis, desk: &Desk<'_>) {
+fn row_ui(ui: &mut Ui, row: &LedgerRow, from: f64, x: &Axis, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), ROW), Sense::hover());
-    let lit = row.lane.is_some() && row.lane == desk.view.lane;
+    let thing = row.lane.map(Pointed::Lane).or(row.landmark.map(Pointed::Landmark));
+    if let Some(thing) = thing {
+        desk.view.point(thing, &response);
+    }
+    let lit = desk.lit_row(row);
     let painter = ui.painter();
     if lit {
         painter.rect_filled(rect.expand2(vec2(4.0, 0.0)), 3.0, palette.accent_ground);
@@ -79,9 +87,24 @@ fn row_ui(ui: &mut Ui, row: &LedgerRow, from: f64, x: &Axis, desk: &Desk<'_>) {
     }
     painter.vline(b, middle + 4.5..=rect.bottom() + ROW / 2.0 - 4.5, Stroke::new(1.0, palette.grid_strong));
     painter.text(rect.right_center(), Align2::RIGHT_CENTER, signed(row.degrees), theme::small(), palette.ink);
-    let words = format!("{}: {}", row.label, signed(row.degrees));
-    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, &words));
-    response.on_hover_text(words);
+    let name = || format!("{}: {}", row.label, signed(row.degrees));
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, name()));
+    explain::explained(ui, response, term(row), name);
+}
+
+/// Key of the term that explains a row.
+fn term(row: &LedgerRow) -> &'static str {
+    match (row.role, row.lane) {
+        (LedgerRole::HalfTurn, _) => "half-turn",
+        (LedgerRole::Turns, _) => "turns",
+        (LedgerRole::Compensator, Some("gain")) => "integrator",
+        (LedgerRole::Compensator, Some(lane)) if lane.starts_with("pole") => "compensator-pole",
+        (LedgerRole::Compensator, _) => "compensator-zero",
+        (LedgerRole::Amplifier, _) => "amplifier",
+        (LedgerRole::Plant, _) => "plant-phase",
+        (LedgerRole::RightHalfPlane, _) => "right-half-plane-zero",
+        (LedgerRole::Delay, _) => "delay",
+    }
 }
 
 fn sum_ui(ui: &mut Ui, margin_deg: f64, x: &Axis, palette: &Palette) {

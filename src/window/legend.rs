@@ -5,6 +5,7 @@ use eframe::egui::{self, Align2, Rect, Role, Sense, Ui, WidgetInfo, pos2, vec2};
 use super::axis;
 use super::bode;
 use super::command::{Command, Curve};
+use super::explain;
 use super::plot;
 use super::theme::{self, palette};
 use super::view::Desk;
@@ -62,7 +63,8 @@ fn curve_ui(ui: &mut Ui, rect: Rect, curve: Curve, name: &str, desk: &mut Desk<'
     let label = format!("Curve of the {name}");
     response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, shown, &label));
     focus_ring(ui, &response);
-    if response.on_hover_text(help(curve)).clicked() {
+    let response = explain::explained(ui, response, term(curve), || PRESS.to_owned());
+    if response.clicked() {
         desk.ask(Command::Toggle(curve));
     }
 }
@@ -80,8 +82,7 @@ fn band_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let shown = desk.view.band;
     response.widget_info(|| WidgetInfo::selected(Role::CheckBox, true, shown, "Band of the nine conditions"));
     focus_ring(ui, &response);
-    let help = "The loop at all nine conditions of input voltage and load lies within this band.";
-    if response.on_hover_text(help).clicked() {
+    if explain::explained(ui, response, "band", || PRESS.to_owned()).clicked() {
         desk.ask(Command::ToggleBand);
     }
 }
@@ -94,11 +95,15 @@ pub(super) fn focus_ring(ui: &Ui, response: &egui::Response) {
     }
 }
 
-fn help(curve: Curve) -> &'static str {
+/// What a press does.
+const PRESS: &str = "Press to show or hide.";
+
+/// Key of the term that explains a curve.
+fn term(curve: Curve) -> &'static str {
     match curve {
-        Curve::Plant => "Control voltage to output voltage, modulator included. Press to show or hide.",
-        Curve::Compensator => "Output voltage to control voltage, its inversion taken out. Press to show or hide.",
-        Curve::Loop => "Loop gain: plant times compensator, delay included. Press to show or hide.",
+        Curve::Plant => "plant",
+        Curve::Compensator => "compensator",
+        Curve::Loop => "loop",
     }
 }
 

@@ -6,8 +6,10 @@ use super::axis::{DecadeLine, decade_lines};
 use super::bode::Stack;
 use super::labels::{self, Labels};
 use super::plot;
+use super::pointed::Pointed;
 use super::theme::{self, LineStyle, Palette};
-use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout};
+use super::view::Desk;
+use crate::analysis::{Analysis, Detail, Level, LimitKind, Readout, terms};
 use crate::quantity::{self, Unit};
 
 /// Length below which a bar has its number above or below it [points].
@@ -131,24 +133,28 @@ fn gain_margin_label(
 }
 
 /// Draws landmarks across the stack, and under it their names, the frequencies and the crossover window.
-pub(super) fn foot_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette) {
+pub(super) fn foot_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, desk: &mut Desk<'_>) {
+    let palette = theme::palette(ui);
     if let Ok(detail) = &analysis.shown {
-        landmarks_ui(ui, stack, detail, palette);
+        landmarks_ui(ui, stack, detail, desk);
     }
     frequencies(ui.painter(), stack, palette);
     window_ui(ui, stack, analysis, palette);
 }
 
-fn landmarks_ui(ui: &mut Ui, stack: &Stack, detail: &Detail, palette: &Palette) {
+fn landmarks_ui(ui: &mut Ui, stack: &Stack, detail: &Detail, desk: &mut Desk<'_>) {
+    let palette = theme::palette(ui);
     let mut landmarks: Vec<_> = detail.landmarks.iter().filter(|mark| stack.gain.x.holds(mark.frequency_hz)).collect();
     landmarks.sort_by(|one, other| one.frequency_hz.total_cmp(&other.frequency_hz));
     let mut taken = [f32::NEG_INFINITY; 2];
     for landmark in landmarks {
         let x = stack.gain.x.at(landmark.frequency_hz);
         let line = [pos2(x, stack.whole().min), pos2(x, stack.whole().max)];
-        let dots = Shape::dashed_line(&line, Stroke::new(1.0, palette.landmark.gamma_multiply(0.75)), 1.5, 3.5);
-        ui.painter().extend(dots);
-        let galley = ui.painter().layout_no_wrap(landmark.name.to_owned(), theme::small(), palette.landmark);
+        let lit = desk.lit_landmark(landmark);
+        let colour = if lit { palette.plant } else { palette.landmark };
+        let pen = if lit { Stroke::new(1.8, colour) } else { Stroke::new(1.0, colour.gamma_multiply(0.75)) };
+        ui.painter().extend(Shape::dashed_line(&line, pen, 1.5, 3.5));
+        let galley = ui.painter().layout_no_wrap(landmark.name.to_owned(), theme::small(), colour);
         let half = galley.size().x / 2.0;
         let left = (x - half).clamp(stack.foot.left() + 4.0, (stack.foot.right() - 2.0 * half - 4.0).max(0.0));
         let Some(row) = (0..2_u8).find(|row| taken[usize::from(*row)] + 8.0 < left) else {
@@ -157,17 +163,13 @@ fn landmarks_ui(ui: &mut Ui, stack: &Stack, detail: &Detail, palette: &Palette) 
         taken[usize::from(row)] = left + 2.0 * half;
         let at = pos2(left, stack.foot.top() + 1.0 + 13.0 * f32::from(row));
         let rect = Rect::from_min_size(at, galley.size());
-        ui.painter().galley(at, galley, palette.landmark);
-        let help = format!(
-            "{}: {}\n{}{}",
-            landmark.name,
-            quantity::print(landmark.frequency_hz, Unit::Hertz),
-            landmark.formula,
-            if landmark.derived { "\nderived from the model" } else { "" }
-        );
-        let _ = ui
-            .interact(rect.expand(2.0), ui.scope_id().with(("landmark", landmark.key, landmark.name)), Sense::hover())
-            .on_hover_text(help);
+        ui.painter().galley(at, galley, colour);
+        let name = || format!("{}: {}", landmark.name, quantity::print(landmark.frequency_hz, Unit::Hertz));
+        let id = ui.scope_id().with(("landmark", landmark.key, landmark.name));
+        let response = ui.interact(rect.expand(2.0), id, Sense::hover());
+        response.widget_info(|| WidgetInfo::labeled(Role::Label, true, name()));
+        desk.view.point(Pointed::Landmark(landmark.key), &response);
+        let _ = super::explain::described(ui, response, || format!("{}\n{}", name(), terms::of_landmark(landmark)));
     }
 }
 
@@ -239,7 +241,7 @@ fn window_ui(ui: &mut Ui, stack: &Stack, analysis: &Analysis, palette: &Palette)
 fn explained_ui(ui: &Ui, rect: Rect, help: &str) {
     let response = ui.interact(rect, ui.scope_id().with("crossover window"), Sense::hover());
     response.widget_info(|| WidgetInfo::labeled(Role::Label, true, help));
-    let _ = response.on_hover_text(help);
+    let _ = super::explain::explained(ui, response, "crossover-window", || help.to_owned());
 }
 
 /// A dotted vertical tick, used for marks of time as well.

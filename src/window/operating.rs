@@ -2,9 +2,10 @@
 
 use eframe::egui::{Align2, RichText, Role, Sense, Ui, WidgetInfo, vec2};
 
+use super::explain;
 use super::theme::{self, palette};
 use super::view::Desk;
-use crate::converter::OperatingPoint;
+use crate::converter::{Loss, OperatingPoint};
 use crate::quantity::{self, Unit};
 
 /// Draws the operating point.
@@ -13,8 +14,8 @@ pub(super) fn operating_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let Some(analysis) = desk.session.analysis() else { return };
     match &analysis.shown {
         Ok(detail) => {
-            for (name, value, help) in rows(&detail.operating_point) {
-                row_ui(ui, &name, &value, &help);
+            for row in rows(&detail.operating_point) {
+                row_ui(ui, &row);
             }
         }
         Err(finding) => {
@@ -23,43 +24,38 @@ pub(super) fn operating_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
 }
 
-/// Name, value and explanation of each row.
-fn rows(point: &OperatingPoint) -> Vec<(String, String, String)> {
+/// A row: its term's key, name, value, and what the explanation adds to the term.
+struct Row {
+    term: &'static str,
+    name: String,
+    value: String,
+    further: String,
+}
+
+fn rows(point: &OperatingPoint) -> Vec<Row> {
     let amperes = |value| quantity::print_digits(value, Unit::Ampere, 3);
-    let mut rows = vec![row(
-        "Duty ratio",
-        quantity::print_digits(point.duty, Unit::One, 3),
-        "Share of the period in which the controlled switch conducts.",
-    )];
-    rows.push(row("Conduction", point.conduction.word().to_owned(), "How the inductor current behaves over a period."));
+    let row = |term, name: &str, value: String, further: String| Row { term, name: name.to_owned(), value, further };
+    let none = String::new;
+    let mut rows = vec![
+        row("duty-ratio", "Duty ratio", quantity::print_digits(point.duty, Unit::One, 3), none()),
+        row("conduction", "Conduction", point.conduction.word().to_owned(), none()),
+    ];
     for inductor in &point.inductors {
         let current = &inductor.current;
         let text = format!("{}, peak {}", amperes(current.average), amperes(current.peak));
-        rows.push(row(
-            &format!("{} current", capital(inductor.name)),
-            text,
-            &format!("Average and peak. RMS {}.", amperes(current.rms)),
-        ));
-        rows.push(row(&format!("{} ripple", capital(inductor.name)), amperes(current.ripple), "Peak to peak."));
+        let name = capital(inductor.name);
+        let rms = format!("RMS {}.", amperes(current.rms));
+        rows.push(row("inductor-current", &format!("{name} current"), text, rms));
+        rows.push(row("inductor-ripple", &format!("{name} ripple"), amperes(current.ripple), none()));
     }
-    rows.push(row("Input current", amperes(point.input_current), "Average current from the source."));
-    let help = format!(
-        "Step of the output voltage at a switching instant, from the ESR. The bank carries {} RMS.",
-        amperes(point.output_bank_rms)
-    );
-    rows.push(row("Output step", quantity::print_digits(point.output_step, Unit::Volt, 3), &help));
-    let parts: Vec<String> = point
-        .conduction_losses
-        .iter()
-        .map(|loss| format!("{}: {}", loss.name, quantity::print_digits(loss.watts, Unit::Watt, 3)))
-        .collect();
-    let help = format!("Losses of conduction alone, without switching.\n{}", parts.join("\n"));
-    rows.push(row("Conduction losses", quantity::print_digits(point.conduction_loss, Unit::Watt, 3), &help));
+    rows.push(row("input-current", "Input current", amperes(point.input_current), none()));
+    let carried = format!("The bank carries {} RMS.", amperes(point.output_bank_rms));
+    rows.push(row("output-step", "Output step", quantity::print_digits(point.output_step, Unit::Volt, 3), carried));
+    let loss = |loss: &Loss| format!("{}: {}", loss.name, quantity::print_digits(loss.watts, Unit::Watt, 3));
+    let parts = point.conduction_losses.iter().map(loss).collect::<Vec<_>>().join("\n");
+    let watts = quantity::print_digits(point.conduction_loss, Unit::Watt, 3);
+    rows.push(row("conduction-losses", "Conduction losses", watts, parts));
     rows
-}
-
-fn row(name: &str, value: String, help: &str) -> (String, String, String) {
-    (name.to_owned(), value, help.to_owned())
 }
 
 fn capital(word: &str) -> String {
@@ -67,12 +63,12 @@ fn capital(word: &str) -> String {
     letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
 }
 
-fn row_ui(ui: &mut Ui, name: &str, value: &str, help: &str) {
+fn row_ui(ui: &mut Ui, row: &Row) {
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), 18.0), Sense::hover());
     let painter = ui.painter();
-    painter.text(rect.left_center(), Align2::LEFT_CENTER, name, theme::body(), palette.weak);
-    painter.text(rect.right_center(), Align2::RIGHT_CENTER, value, theme::body(), palette.ink);
-    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, format!("{name}: {value}")));
-    response.on_hover_text(help);
+    painter.text(rect.left_center(), Align2::LEFT_CENTER, &row.name, theme::body(), palette.weak);
+    painter.text(rect.right_center(), Align2::RIGHT_CENTER, &row.value, theme::body(), palette.ink);
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, format!("{}: {}", row.name, row.value)));
+    explain::explained(ui, response, row.term, || row.further.clone());
 }

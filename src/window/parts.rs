@@ -4,6 +4,8 @@ use eframe::egui::{self, Align, Layout, Rect, RichText, Role, Sense, Stroke, Str
 
 use super::command::Command;
 use super::form;
+use super::pointed::{Pointed, Sheet};
+use super::schematic;
 use super::theme::{self, palette};
 use super::view::Desk;
 use crate::compensator::Part;
@@ -13,6 +15,7 @@ use crate::quantity::Entry;
 pub(super) fn parts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     heading_ui(ui, desk);
     ui.add_space(3.0);
+    schematic::schematic_ui(ui, Sheet::Compensator, desk);
     let parts: Vec<_> = desk.session.design().entries().into_iter().filter(|entry| is_part(entry.path)).collect();
     let room = ui.available_width();
     for pair in parts.chunks(2) {
@@ -33,10 +36,16 @@ pub(super) fn parts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     super::goal::goal_ui(ui, desk);
     let header = egui::CollapsingHeader::new(RichText::new("Divider, amplifier, anchor").color(palette(ui).weak))
         .id_salt("compensator entries")
+        .open(sought(desk).then_some(true))
         .show_unindented(ui, |ui| {
             form::section_ui(ui, "compensator", |path| !is_part(path) && !in_heading(path), desk);
         });
     super::legend::focus_ring(ui, &header.header_response);
+}
+
+/// True when something leads to an entry below the fold.
+fn sought(desk: &Desk<'_>) -> bool {
+    desk.view.seek.as_deref().is_some_and(|path| path.starts_with("compensator.") && !is_part(path))
 }
 
 fn is_part(path: &str) -> bool {
@@ -76,12 +85,12 @@ pub(super) fn short_name(entry: &Entry) -> &'static str {
 const LABEL: f32 = 38.0;
 
 fn part_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mut Desk<'_>) {
-    let active = desk.view.lane.and_then(|key| desk.session.lanes().iter().find(|lane| lane.key == key));
-    let lit = active.is_some_and(|lane| lane.parts.contains(&entry.path));
+    let lit = desk.lit_entry(entry.path);
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(LABEL, theme::ROW), Sense::hover());
     let ink = if lit { palette.compensator } else { palette.weak };
     ui.painter().text(rect.left_center(), egui::Align2::LEFT_CENTER, short_name(entry), theme::small(), ink);
+    desk.view.point(Pointed::Entry(entry.path), &response);
     response.on_hover_text(format!("{}\n{}", entry.name, entry.help));
     form::field_ui(ui, entry, width - LABEL - 21.0, desk);
     lock_ui(ui, entry, desk);

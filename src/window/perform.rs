@@ -247,9 +247,7 @@ impl App {
             Answer::Chosen(chosen) => *path = chosen.display().to_string(),
             Answer::Left => {}
             Answer::Absent => {
-                self.fail(
-                    "This desktop shows no file dialog (no portal answers, no zenity). Type the path instead.".into(),
-                );
+                self.fail("This desktop shows no file dialog. Type the path instead.".into());
             }
         }
     }
@@ -338,6 +336,10 @@ impl App {
             }
             Command::ToggleStage => view.stage_column = !view.stage_column,
             Command::ToggleReadouts => view.readout_column = !view.readout_column,
+            Command::ToggleSchematics => {
+                let shown = view.schematics.shown();
+                view.schematics.show(!shown);
+            }
             Command::ListCommands => view.dialog = Some(Dialog::Commands { search: String::new() }),
             _ => {}
         }

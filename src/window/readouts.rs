@@ -4,10 +4,11 @@ use eframe::egui::{Align2, Color32, FontId, Painter, Rect, Role, Sense, Ui, Widg
 
 use super::command::Command;
 use super::conditions;
+use super::explain;
 use super::marks;
 use super::theme::{self, Palette, palette};
 use super::view::Desk;
-use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict};
+use crate::analysis::{Analysis, LimitKind, Readout, RequirementVerdict, terms};
 use crate::quantity::{self, Unit};
 
 /// Height of a read-out with its requirement [points].
@@ -173,7 +174,7 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     // Words stand smaller than numbers, or they would run into the requirement.
     let words = readout.value.is_none_or(|value| value == 0.0 && readout.at_zero.is_some());
     let (at, font) = if words { (at + vec2(0.0, 5.0), theme::strong(13.0)) } else { (at, look.value.clone()) };
-    painter.text(at, Align2::LEFT_TOP, &value, font, ink(readout, analysis, palette));
+    let shown = painter.text(at, Align2::LEFT_TOP, &value, font, ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
@@ -187,13 +188,17 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     }
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
-        let at = rect.right_top() + vec2(0.0, look.tops.1);
-        painter.text(at, Align2::RIGHT_TOP, verdict_text(verdict), look.verdict.clone(), colour);
+        let layout = |font| painter.layout_no_wrap(verdict_text(verdict), font, colour);
+        let mut galley = layout(look.verdict.clone());
+        if shown.right() + 8.0 > rect.right() - galley.size().x {
+            galley = layout(theme::small());
+        }
+        painter.galley(pos2(rect.right() - galley.size().x, rect.top() + look.tops.1), galley, colour);
         bar(painter, rect, verdict, palette);
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(explain(readout));
+    let _ = explain::explained(ui, response, readout.key, || further(readout));
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -261,11 +266,10 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
-    response.on_hover_text(format!(
-        "{}{}",
-        explain(readout),
-        worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"))
-    ));
+    let _ = explain::explained(ui, response, readout.key, || {
+        let worst = worst_text(readout, analysis).map_or_else(String::new, |worst| format!("\nworst {worst}"));
+        format!("{}{worst}", further(readout)).trim_start().to_owned()
+    });
     if let (true, Some(worst)) = (clicked, &readout.worst) {
         show_condition(worst.index, desk);
     }
@@ -281,8 +285,12 @@ fn announce(ui: &Ui, response: &eframe::egui::Response, readout: &Readout, value
     ui.ctx().accesskit_node_builder(response.id, |node| node.set_value(value));
 }
 
-fn explain(readout: &Readout) -> String {
-    let mut lines = vec![readout.help.to_owned()];
+/// What is asked of a read-out, and where its worst is. A read-out without a term says here what it means.
+fn further(readout: &Readout) -> String {
+    let mut lines = Vec::new();
+    if terms::find(readout.key).is_none() {
+        lines.push(readout.help.to_owned());
+    }
     for verdict in &readout.requirements {
         let scope = if verdict.over_all_conditions { "all conditions" } else { "nominal condition" };
         let place = if verdict.condition.is_empty() { String::new() } else { format!(" ({})", verdict.condition) };

@@ -3,11 +3,11 @@
 use std::path::{Path, PathBuf};
 use std::time::SystemTime;
 
-use eframe::egui::{self, RichText, ScrollArea, Ui};
+use eframe::egui::{self, RichText, Ui};
 
 use super::bar;
 use super::command::Command;
-use super::dialogs::{buttons, primary, title};
+use super::dialogs::{buttons, list, primary, title};
 use super::keep::{Content, Left, OnDisk};
 use super::on_disk::FileState;
 use super::theme::{self, palette};
@@ -23,7 +23,7 @@ pub(super) fn recovery_ui(ui: &mut Ui, discarding: &mut Option<PathBuf>, desk: &
     let text = "A window ended before this was saved. Recovering opens it as unsaved work; no file is changed by that.";
     ui.label(RichText::new(text).color(palette(ui).weak));
     ui.add_space(8.0);
-    ScrollArea::vertical().max_height(ui.ctx().content_rect().height() * 0.55).show(ui, |ui| {
+    list(ui, "left behind", 420.0).show(ui, |ui| {
         for (index, left) in desk.kept.left.iter().enumerate() {
             if index > 0 {
                 ui.separator();

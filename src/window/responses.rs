@@ -59,18 +59,18 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
 /// Tells screen readers what the plot shows: its greatest value.
 fn announce(ui: &Ui, plot: &Plot, shown: (&[f64], Unit), desk: &Desk<'_>) {
     let (closed, unit) = shown;
-    let name = NAMES.iter().find(|(which, ..)| *which == desk.view.closed_loop).map_or("", |(_, name, _)| name);
+    let name = NAMES.iter().find(|(which, ..)| *which == desk.view.closed_loop).map_or("", |(_, name, ..)| name);
     let greatest = closed.iter().copied().filter(|value| value.is_finite()).fold(f64::NEG_INFINITY, f64::max);
     let text = format!("{name} plot: at most {}", quantity::print_digits(greatest, unit, 3));
     let response = ui.interact(plot.rect, ui.scope_id().with("closed-loop plot"), egui::Sense::hover());
     response.widget_info(|| egui::WidgetInfo::labeled(egui::Role::Image, true, &text));
 }
 
-/// The closed-loop responses with their names, long and short.
-const NAMES: [(ClosedLoop, &str, &str); 3] = [
-    (ClosedLoop::Impedance, "Output impedance", "Impedance"),
-    (ClosedLoop::Line, "Line to output", "Line"),
-    (ClosedLoop::Reference, "Following", "Following"),
+/// The closed-loop responses with their names, long and short, and the terms that explain them.
+const NAMES: [(ClosedLoop, &str, &str, &str); 3] = [
+    (ClosedLoop::Impedance, "Output impedance", "Impedance", "output-impedance"),
+    (ClosedLoop::Line, "Line to output", "Line", "line-to-output"),
+    (ClosedLoop::Reference, "Following", "Following", "following"),
 ];
 
 fn closed_pen(palette: &Palette) -> Pen {
@@ -87,8 +87,9 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     row.spacing_mut().item_spacing.x = 10.0;
     let narrow = inner.width() < steps::NARROW;
-    for (closed_loop, name, short) in NAMES {
-        if steps::tab_ui(&mut row, (name, if narrow { short } else { name }), desk.view.closed_loop == closed_loop) {
+    for (closed_loop, name, short, term) in NAMES {
+        let chosen = desk.view.closed_loop == closed_loop;
+        if steps::tab_ui(&mut row, (name, if narrow { short } else { name }), term, chosen) {
             desk.view.closed_loop = closed_loop;
         }
     }
@@ -198,9 +199,12 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
     if let Some(frequency_hz) = cursor_hz {
         painter.vline(plot.x.at(frequency_hz), plot.rect.y_range(), Stroke::new(1.0, palette.weak.gamma_multiply(0.6)));
     }
-    let entries = [(Some(closed), "closed loop", closed_pen(palette)), (open, "open loop", open_pen(palette))];
+    let entries = [
+        (Some(closed), "closed loop", "closed-loop", closed_pen(palette)),
+        (open, "open loop", "open-loop", open_pen(palette)),
+    ];
     let mut y = plot.rect.top() + 12.0;
-    for (values, name, pen) in entries {
+    for (values, name, term, pen) in entries {
         let Some(values) = values else { continue };
         let text = format!("{name}{}", value(values).unwrap_or_default());
         let ground = palette.canvas.gamma_multiply(0.85);
@@ -213,6 +217,9 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
             (palette.weak, ground),
         );
         plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, pen);
+        let response = ui.interact(rect, ui.scope_id().with(term), egui::Sense::hover());
+        response.widget_info(|| egui::WidgetInfo::labeled(egui::Role::Label, true, &text));
+        super::explain::explained(ui, response, term, super::explain::nothing);
         y += 15.0;
     }
     let below = pointer.map(|at| plot.x.value(at.x));

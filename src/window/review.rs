@@ -24,6 +24,8 @@ const UPPER: f32 = 0.6;
 const LOWER: f32 = 312.0;
 /// Heights of the plots in a narrow window [points].
 const NARROW_PLOTS: (f32, f32) = (380.0, 200.0);
+/// What the keys do.
+const KEYS: &str = "Arrow keys: load and input. Page Up, Page Down: held tries. Esc: back.";
 /// Height of the findings at most, as a share of their column.
 const FINDINGS: f32 = 0.3;
 
@@ -64,7 +66,7 @@ fn bar_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
         let text = RichText::new("Back to the design").color(palette.accent);
         let back = ui.add(Button::new(text).shortcut_text("Esc"));
-        if back.accessible_name("Back to the design").clicked() {
+        if back.accessible_name("Back to the design").on_hover_text(KEYS).clicked() {
             desk.ask(Command::Review);
         }
         ui.with_layout(Layout::left_to_right(Align::Center), |ui| {
@@ -103,7 +105,7 @@ fn tries_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
 /// The condition named large, what is met, and the what-if.
 fn condition_ui(ui: &mut Ui, wide: bool, desk: &mut Desk<'_>) {
     if !wide {
-        words_ui(ui, desk);
+        words_ui(ui, false, desk);
         what_if::what_if_ui(ui, "review", desk);
         return;
     }
@@ -111,13 +113,13 @@ fn condition_ui(ui: &mut Ui, wide: bool, desk: &mut Desk<'_>) {
         let width = (ui.available_width() - 380.0).max(300.0);
         ui.vertical(|ui| {
             ui.set_width(width);
-            words_ui(ui, desk);
+            words_ui(ui, true, desk);
         });
         ui.vertical(|ui| what_if::what_if_ui(ui, "review", desk));
     });
 }
 
-fn words_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+fn words_ui(ui: &mut Ui, wide: bool, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let Some(analysis) = desk.session.analysis() else {
         ui.label("There are no results yet.");
@@ -133,8 +135,9 @@ fn words_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.horizontal_wrapped(|ui| {
         let (text, colour) = outcome(analysis, palette);
         ui.label(RichText::new(text).font(theme::strong(14.0)).color(colour));
-        let keys = "Arrow keys: load and input. Page Up, Page Down: held tries. Esc: back.";
-        ui.label(RichText::new(keys).font(theme::small()).color(palette.weak));
+        if wide {
+            ui.label(RichText::new(KEYS).font(theme::small()).color(palette.weak));
+        }
     });
 }
 
@@ -184,6 +187,7 @@ fn results_ui(ui: &mut Ui, columns: usize, desk: &mut Desk<'_>) {
     let (large, small) = readouts::sorted(analysis);
     let look = Look::page();
     for row in large.chunks(columns) {
+        ui.spacing_mut().item_spacing.x = 20.0;
         ui.columns(columns, |uis| {
             for (ui, readout) in uis.iter_mut().zip(row) {
                 readouts::large_ui(ui, readout, analysis, &look, desk);

@@ -199,7 +199,7 @@ impl App {
         while let Some(news) = self.kept.keeper.as_ref().and_then(Keeper::news) {
             match news {
                 News::Failed(text) => self.tell(text, true),
-                News::Mended => self.tell("Unsaved changes and settings are kept again.".to_owned(), false),
+                News::Mended => self.tell("Unsaved changes are journalled again.".to_owned(), false),
                 News::Recent(files) => self.kept.set_recent(files),
             }
         }

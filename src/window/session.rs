@@ -205,6 +205,11 @@ impl Session {
         &self.lanes
     }
 
+    /// A number that moves with every change of document, condition or frequencies.
+    pub(super) fn generation(&self) -> u64 {
+        self.generation
+    }
+
     /// Why the present document cannot be used.
     pub fn problems(&self) -> &[Finding] {
         &self.problems

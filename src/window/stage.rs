@@ -10,14 +10,13 @@ use super::view::Desk;
 /// Sections of the form: path prefix, heading, whether it stands open at first.
 const SECTIONS: [(&str, &str, bool); 4] = [
     ("stage", "Power stage", true),
-    ("control", "Modulator", true),
+    ("control", "Control", true),
     ("requirement", "Requirements", false),
     ("event", "Steps", false),
 ];
 
 /// Draws the column.
 pub(super) fn stage_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
-    title_ui(ui, desk);
     ui.spacing_mut().item_spacing.y = 2.0;
     for (section, heading, open) in SECTIONS {
         ui.add_space(6.0);
@@ -35,7 +34,8 @@ fn seeks(section: &str, desk: &Desk<'_>) -> bool {
     desk.view.seek.as_deref().is_some_and(|path| path.starts_with(section))
 }
 
-fn title_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+/// Draws the field of the title.
+pub(super) fn title_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let id = Id::unique("title");
     let mut text = match desk.view.title.take() {
         Some(text) => text,

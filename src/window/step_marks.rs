@@ -87,7 +87,7 @@ fn words(step: &Step, event: Event) -> String {
 
 /// Tells screen readers what the plot shows.
 fn announce(ui: &Ui, plot: &Plot, event: Event, words: &str) {
-    let name = super::steps::NAMES.iter().find(|(which, ..)| *which == event).map_or("", |(_, name, _)| name);
+    let name = super::steps::NAMES.iter().find(|(which, ..)| *which == event).map_or("", |(_, name, ..)| name);
     let text = format!("{name} plot: {words}");
     let response = ui.interact(plot.rect, ui.scope_id().with("step plot"), Sense::hover());
     response.widget_info(|| WidgetInfo::labeled(Role::Image, true, &text));

@@ -62,11 +62,11 @@ fn chosen(steps: &Steps, event: Event) -> Option<&Step> {
     }
 }
 
-/// The events with their names, long and short.
-pub(super) const NAMES: [(Event, &str, &str); 3] = [
-    (Event::Load, "Load step", "Load"),
-    (Event::Line, "Line step", "Line"),
-    (Event::Reference, "Reference step", "Reference"),
+/// The events with their names, long and short, and the terms that explain them.
+pub(super) const NAMES: [(Event, &str, &str, &str); 3] = [
+    (Event::Load, "Load step", "Load", "load-step"),
+    (Event::Line, "Line step", "Line", "line-step"),
+    (Event::Reference, "Reference step", "Reference", "reference-step"),
 ];
 
 fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
@@ -76,8 +76,8 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let row = &mut row;
     row.spacing_mut().item_spacing.x = 10.0;
     let narrow = inner.width() < NARROW;
-    for (event, name, short) in NAMES {
-        if tab_ui(row, (name, if narrow { short } else { name }), desk.view.event == event) {
+    for (event, name, short, term) in NAMES {
+        if tab_ui(row, (name, if narrow { short } else { name }), term, desk.view.event == event) {
             desk.view.event = event;
         }
     }
@@ -87,7 +87,7 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
 pub(super) const NARROW: f32 = 270.0;
 
 /// A word that chooses what a plot shows: ink when chosen, accent when it can be.
-pub(super) fn tab_ui(ui: &mut Ui, names: (&str, &str), chosen: bool) -> bool {
+pub(super) fn tab_ui(ui: &mut Ui, names: (&str, &str), term: &str, chosen: bool) -> bool {
     let (name, shown) = names;
     let palette = palette(ui);
     let text = if chosen {
@@ -98,7 +98,7 @@ pub(super) fn tab_ui(ui: &mut Ui, names: (&str, &str), chosen: bool) -> bool {
     let response = ui.add(egui::Button::new(text).frame(false));
     response.widget_info(|| egui::WidgetInfo::selected(egui::Role::RadioButton, true, chosen, name));
     super::legend::focus_ring(ui, &response);
-    response.clicked()
+    super::explain::explained(ui, response, term, super::explain::nothing).clicked()
 }
 
 /// Half of the band that is seen at most, as a share of the span of the response.

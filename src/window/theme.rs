@@ -6,6 +6,7 @@
 
 use std::sync::Arc;
 
+use crate::figure::Role;
 use eframe::egui::{
     self, Color32, CornerRadius, FontData, FontDefinitions, FontFamily, FontId, Margin, Stroke, TextStyle,
     style::WidgetVisuals,
@@ -123,6 +124,26 @@ pub(super) fn palette(ui: &egui::Ui) -> &'static Palette {
     if ui.visuals().dark_mode { &DARK } else { &LIGHT }
 }
 
+/// The colour a mark of a figure has in the window.
+pub(super) fn of_role(role: Role, palette: &Palette) -> Color32 {
+    match role {
+        Role::Ink => palette.ink,
+        Role::Quiet => palette.weak,
+        Role::Grid => palette.grid,
+        Role::GridStrong => palette.grid_strong,
+        Role::Ground => palette.panel,
+        Role::Good => palette.good,
+        Role::Missed => palette.amber,
+        Role::Plant => palette.plant,
+        Role::Compensator => palette.compensator,
+        Role::LoopGain => palette.loop_gain,
+        Role::Held | Role::Measured => palette.held,
+        Role::Band => palette.band,
+        Role::Settle => palette.settle,
+        Role::Landmark => palette.landmark,
+    }
+}
+
 /// Colours of the icon: ground, zero, pole, axis.
 pub(super) fn icon_colours() -> (Color32, Color32, Color32, Color32) {
     (DARK.bar, DARK.plant, DARK.compensator, DARK.held)
@@ -154,7 +175,7 @@ impl LineStyle {
 }
 
 /// Width of the column of the power stage [points].
-pub(super) const LEFT_COLUMN: f32 = 264.0;
+pub(super) const LEFT_COLUMN: f32 = 276.0;
 /// Width of the column of read-outs [points].
 pub(super) const RIGHT_COLUMN: f32 = 296.0;
 /// Width of the column of the power stage in a wide window [points].

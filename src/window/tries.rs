@@ -3,6 +3,7 @@
 use eframe::egui::{Align2, Button, RichText, Role, Sense, Stroke, StrokeKind, Ui, WidgetInfo, vec2};
 
 use super::command::Command;
+use super::explain;
 use super::theme::{self, palette};
 use super::view::Desk;
 use crate::analysis::Analysis;
@@ -18,7 +19,8 @@ pub(super) fn tries_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         return;
     }
     ui.horizontal(|ui| {
-        ui.label(RichText::new("Held tries").font(theme::strong(13.5)));
+        let heading = ui.label(RichText::new("Held tries").font(theme::strong(13.5)));
+        explain::explained(ui, heading, "held-tries", explain::nothing);
         let text = RichText::new("dotted in the plots").font(theme::small()).color(palette(ui).weak);
         ui.label(text).on_hover_text("Press a try to draw it beside the present design, at the condition shown.");
     });

@@ -8,7 +8,9 @@ use super::command::{Command, Curve, Exported};
 use super::goal::GoalFields;
 use super::history::Gesture;
 use super::new_design::NewDesign;
+use super::pointed::{Pointed, Pointing};
 use super::safety::Kept;
+use super::schematic::Schematics;
 use super::session::Session;
 use super::what_if::WhatIf;
 
@@ -150,6 +152,12 @@ pub(super) struct View {
     pub gesture: Gesture,
     /// Lane whose handle is dragged, has the focus or is under the pointer.
     pub lane: Option<&'static str>,
+    /// What the pointer was at in the last frame, else what had the keyboard: what belongs to it is lit.
+    pub pointed: Option<Pointed>,
+    /// The same of the present frame, as far as it is drawn.
+    pub pointing: Pointing,
+    /// The schematics, worked out once per analysis.
+    pub schematics: Schematics,
     /// Lane value being typed.
     pub typing: Option<Typing>,
     /// What placements aim at, as typed.
@@ -204,6 +212,9 @@ impl Default for View {
             drag: None,
             gesture: Gesture::default(),
             lane: None,
+            pointed: None,
+            pointing: Pointing::default(),
+            schematics: Schematics::default(),
             typing: None,
             goal: GoalFields::default(),
             field: None,
@@ -237,6 +248,17 @@ impl View {
         let in_dialog =
             matches!(self.dialog, Some(Dialog::Open { .. } | Dialog::SaveAs { .. } | Dialog::Export { .. }));
         self.message.as_ref().filter(|message| !(message.failed && in_dialog))
+    }
+
+    /// Leads to the field of an entry: its column is shown, its section opens, it gets the keyboard.
+    pub(super) fn go_to(&mut self, path: &str) {
+        self.readouts_first = path.starts_with("compensator.");
+        if self.readouts_first {
+            self.readout_column = true
+        } else {
+            self.stage_column = true
+        }
+        self.seek = Some(path.to_owned());
     }
 
     /// Drops what was said about a try that failed and is over.

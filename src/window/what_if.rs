@@ -5,6 +5,7 @@
 use eframe::egui::{FontSelection, Key, Margin, RichText, Stroke, TextEdit, Ui};
 
 use super::command::Command;
+use super::explain;
 use super::theme::{self, palette};
 use super::view::Desk;
 use crate::quantity::{self, Bounds, Unit};
@@ -57,8 +58,8 @@ pub(super) fn what_if_ui(ui: &mut Ui, salt: &str, desk: &mut Desk<'_>) {
     ui.horizontal(|ui| {
         ui.spacing_mut().item_spacing.x = 6.0;
         let (word, colour) = if shown { ("What if:", palette.accent) } else { ("What if", palette.weak) };
-        let help = "A condition of your own beside the nine: type an input voltage and a load, press Enter.";
-        ui.label(RichText::new(word).font(theme::strong(13.0)).color(colour)).on_hover_text(help);
+        let label = ui.label(RichText::new(word).font(theme::strong(13.0)).color(colour));
+        explain::explained(ui, label, "what-if", explain::nothing);
         let fields = [
             (&mut form.input, "What-if input voltage", Unit::Volt, offered.0),
             (&mut form.load, "What-if load current", Unit::Ampere, offered.1),

@@ -6,11 +6,16 @@
 
 mod common;
 mod compensator;
+mod controlled;
 mod cross_checks;
+mod current_mode;
 mod discontinuous;
+mod filters;
 mod lossless;
+mod proposal;
 mod random;
 mod reference;
 mod registry;
+mod sampled;
 mod switched;
 mod textbook;

@@ -414,3 +414,19 @@ fn a_data_folder_that_cannot_be_used_is_told_and_work_goes_on() {
     ask(&mut harness, Command::Save);
     assert!(!harness.state().session().unsaved());
 }
+
+#[test]
+fn the_hint_is_shown_until_it_was_closed_once() {
+    let place = Place::new();
+    let mut harness = place.window(None);
+    assert!(harness.state().hinting());
+    click(&mut harness, "Got it");
+    wait(&mut harness, "the settings are written", |_| {
+        std::fs::read_to_string(place.data().join("settings.ron")).is_ok_and(|text| text.contains("hint_closed: true"))
+    });
+    drop(harness);
+    let mut harness = place.window(None);
+    assert!(!harness.state().hinting());
+    ask(&mut harness, Command::Hint(true));
+    assert!(harness.state().hinting());
+}

@@ -37,7 +37,7 @@ enum Job {
 pub(in crate::window) enum News {
     /// Something could not be kept, as a sentence; told once until it works again.
     Failed(String),
-    /// It works again.
+    /// The journal works again.
     Mended,
     /// The recent files, as they are kept now.
     Recent(Vec<PathBuf>),
@@ -208,20 +208,18 @@ impl Writer<'_> {
     /// Writes what is due, and tells when that begins to fail or works again. A journal that fails stays due; the rest is
     /// written again when it next changes.
     fn write(&mut self, due: &mut Due) {
-        let was_failing = self.journal_failing || self.rest_failing;
         let journal = self.write_due_journal(due);
         let rest = self.write_rest(due);
         if let (Err(reason), false) = (&journal, self.journal_failing) {
             let text = format!("Unsaved changes cannot be journalled: {reason}. Save often; work goes on.");
             (self.tell)(News::Failed(text));
-        } else if let (Some(Err(text)), false) = (&rest, was_failing) {
+        } else if journal.is_ok() && self.journal_failing {
+            (self.tell)(News::Mended);
+        } else if let (Some(Err(text)), false) = (&rest, self.journal_failing || self.rest_failing) {
             (self.tell)(News::Failed(text.clone()));
         }
         self.journal_failing = journal.is_err();
         self.rest_failing = rest.map_or(self.rest_failing, |rest| rest.is_err());
-        if was_failing && !self.journal_failing && !self.rest_failing {
-            (self.tell)(News::Mended);
-        }
     }
 
     fn write_due_journal(&mut self, due: &mut Due) -> Result<(), String> {

@@ -83,11 +83,16 @@ pub(in crate::window) struct Look {
     pub event: Event,
     #[serde(with = "ClosedLoopWord")]
     pub closed_loop: ClosedLoop,
+    /// The hint for who is new here was closed.
+    pub hint_closed: bool,
 }
 
 impl Default for Look {
     fn default() -> Self {
-        Look::of(&View::default(), 1.0, None)
+        // Nobody has closed the hint who never saw it.
+        let mut look = Look::of(&View::default(), 1.0, None);
+        look.hint_closed = false;
+        look
     }
 }
 
@@ -111,6 +116,7 @@ impl Look {
             readouts_first: view.readouts_first,
             event: view.event,
             closed_loop: view.closed_loop,
+            hint_closed: !view.hint,
         }
     }
 
@@ -139,6 +145,7 @@ impl Look {
         view.readouts_first = self.readouts_first;
         view.event = self.event;
         view.closed_loop = self.closed_loop;
+        view.hint = !self.hint_closed;
     }
 
     /// Without numbers that cannot be meant.

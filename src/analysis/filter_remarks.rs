@@ -1,0 +1,177 @@
+//! Remarks about an input filter: the impedance criterion, its resonance against the crossover, instability it causes, and the
+//! damping that mends it.
+//!
+//! *Source* of the rules: Middlebrook 1976 for the criterion; 6 dB and the neighbourhood of the crossover are common practice.
+
+use super::filter_result::InputFilterResult;
+use super::result::{ConditionResult, ConditionSummary, Detail};
+use crate::converter::{Damping, InputFilter, OptimumDamping};
+use crate::design::CheckedDesign;
+use crate::finding::{Finding, Remedy};
+use crate::linear::Verdict;
+use crate::quantity::{Unit, parse, print_digits};
+
+/// A damped filter's peak is put at this share of the least input impedance: 6 dB below.
+pub(super) const DAMPED_BELOW: f64 = 0.5;
+/// Margin below which the criterion is called narrowly met [dB].
+const NARROW_DB: f64 = 6.0;
+/// A resonance below this many times the crossover stands where the loop is at work.
+const NEAR: f64 = 3.0;
+/// A damping capacitor beyond this many times the input capacitor says that the filter itself is wrong.
+const UNWIELDY: f64 = 10.0;
+
+/// A condition with what was found of the filter at it.
+type At<'a> = (&'a str, &'a ConditionSummary, &'a InputFilterResult);
+
+/// All remarks about the input filter over the nine conditions.
+pub(super) fn filter_remarks(
+    design: &CheckedDesign,
+    detail: Option<&Detail>,
+    conditions: &[ConditionResult],
+) -> Vec<Finding> {
+    let Some(filter) = &design.stage.input_filter else { return Vec::new() };
+    let found: Vec<At<'_>> = conditions
+        .iter()
+        .filter_map(|c| {
+            let summary = c.outcome.as_ref().ok()?;
+            Some((c.condition.label.as_str(), summary, summary.input_filter.as_ref()?))
+        })
+        .collect();
+    let remedy = remedy(filter, &found);
+    let mut findings: Vec<Finding> = unstable_by_filter(&found).into_iter().collect();
+    findings.extend(criterion(filter, &found));
+    findings.extend(near_crossover(filter, &found));
+    findings.extend(what_if(detail));
+    if let Some((remedy, hint)) = remedy {
+        findings = findings.into_iter().map(|f| f.with_hint(hint.clone()).with_remedy(remedy.clone())).collect();
+    }
+    findings
+}
+
+/// Whether a loop is unstable and would not be without its filter.
+pub(super) fn caused_by_filter(result: Option<&InputFilterResult>) -> bool {
+    result.is_some_and(|r| r.stable_without == Some(true))
+}
+
+/// What to add to the sentence about an unstable loop: the filter that makes it so.
+pub(super) fn cause(result: &InputFilterResult) -> String {
+    format!(
+        "The input filter's resonance at {} makes it so: without the filter the loop is stable.",
+        print_digits(result.resonance_hz, Unit::Hertz, 3)
+    )
+}
+
+fn unstable_by_filter(found: &[At<'_>]) -> Option<Finding> {
+    let unstable: Vec<&At<'_>> = found.iter().filter(|(_, _, r)| caused_by_filter(Some(r))).collect();
+    let (label, summary, result) = unstable.first()?;
+    let Verdict::Unstable { frequency_hz, growth_per_s, .. } = &summary.loop_gain.verdict else { return None };
+    let more = match unstable.len() {
+        1 => String::new(),
+        n => format!(" So in {n} of the nine conditions."),
+    };
+    let message = format!(
+        "Unstable at {label} because of the input filter: oscillation at {} growing with {} per second. {}{more}",
+        print_digits(*frequency_hz, Unit::Hertz, 3),
+        print_digits(*growth_per_s, Unit::One, 3),
+        cause(result)
+    );
+    Some(Finding::problem("stage.input-filter", message))
+}
+
+/// A condition beside the nine that the filter makes unstable.
+fn what_if(detail: Option<&Detail>) -> Option<Finding> {
+    let detail = detail.filter(|d| d.condition.levels.is_none())?;
+    let result = &detail.input_filter.as_ref()?.result;
+    let message = format!("Unstable at {} because of the input filter. {}", detail.condition.label, cause(result));
+    caused_by_filter(Some(result)).then(|| Finding::problem("stage.input-filter", message))
+}
+
+/// The criterion violated, or met by less than 6 dB.
+fn criterion(filter: &InputFilter, found: &[At<'_>]) -> Option<Finding> {
+    let (label, _, result) = found
+        .iter()
+        .min_by(|a, b| a.2.least_margin().margin_db.total_cmp(&b.2.least_margin().margin_db))
+        .filter(|(_, _, r)| r.least_margin().margin_db < NARROW_DB)?;
+    let margin = result.least_margin();
+    let sizes = format!(
+        "{} of the filter against {} of the {} at {}",
+        print_digits(margin.filter_ohm, Unit::Ohm, 3),
+        print_digits(margin.converter_ohm, Unit::Ohm, 3),
+        margin.against.name(),
+        print_digits(margin.frequency_hz, Unit::Hertz, 3)
+    );
+    let bare = if filter.damping == Damping::None { " No damping branch is fitted." } else { "" };
+    if margin.margin_db < 0.0 {
+        let message = format!("The impedance criterion is violated at {label}: {sizes}.{bare}");
+        return Some(Finding::notice("stage.input-filter", message));
+    }
+    let by = print_digits(margin.margin_db, Unit::Decibel, 2);
+    let message = format!("The impedance criterion is met by only {by} at {label}: {sizes}; 6 dB are usual.{bare}");
+    Some(Finding::note("stage.input-filter", message))
+}
+
+/// A resonance that the criterion does not keep apart, near or below the crossover.
+fn near_crossover(filter: &InputFilter, found: &[At<'_>]) -> Option<Finding> {
+    let crossover = |s: &ConditionSummary| s.loop_gain.margins.headline_crossover().map(|c| c.frequency_hz);
+    let (label, at) = found
+        .iter()
+        .filter(|(_, _, r)| r.least_margin().margin_db < 0.0)
+        .filter_map(|(label, s, r)| crossover(s).filter(|f| r.peak_hz < NEAR * f).map(|f| (label, f)))
+        .max_by(|a, b| a.1.total_cmp(&b.1))?;
+    let resonance = filter.resonance_hz();
+    let place = if resonance < at / NEAR { "below" } else { "near" };
+    let message = format!(
+        "The input filter's resonance {} stands {place} the crossover {} at {label}, where the loop depends on it.",
+        print_digits(resonance, Unit::Hertz, 3),
+        print_digits(at, Unit::Hertz, 3)
+    );
+    Some(Finding::notice("stage.input-filter", message))
+}
+
+/// Damping for the worst of the conditions, and the same in words.
+fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Remedy, String)> {
+    let least = found.iter().map(|(_, _, r)| r.least_input_impedance_ohm).min_by(f64::total_cmp)?;
+    let damping = filter.damping_for(least * DAMPED_BELOW);
+    let words = in_words(&damping);
+    let mut hint = format!(
+        "damp the filter with {words}: its peak falls to {} at {}",
+        print_digits(damping.peak, Unit::Ohm, 3),
+        print_digits(damping.peak_hz, Unit::Hertz, 3)
+    );
+    if damping.kind == Damping::Capacitor && damping.ratio > UNWIELDY {
+        hint.push_str("; a smaller inductor or a larger input capacitor would need less");
+    }
+    let (key, part, unit) = match damping.kind {
+        Damping::Inductor => ("inductor", "stage.input-filter.damping.inductance", Unit::Henry),
+        _ => ("capacitor", "stage.input-filter.damping.capacitance", Unit::Farad),
+    };
+    let remedy = Remedy {
+        label: format!("Damp with {words}"),
+        values: vec![
+            ("stage.input-filter.damping.resistance".into(), rounded(damping.resistance, Unit::Ohm)),
+            (part.into(), rounded(damping.reactance_value, unit)),
+        ],
+        choices: vec![("stage.input-filter.damping".into(), key.into())],
+    };
+    Some((remedy, hint))
+}
+
+/// "0.67 Ω + 1.18 mF across the input capacitor".
+pub(super) fn in_words(damping: &OptimumDamping) -> String {
+    let resistance = print_digits(damping.resistance, Unit::Ohm, 3);
+    match damping.kind {
+        Damping::Inductor => {
+            let inductor = print_digits(damping.reactance_value, Unit::Henry, 3);
+            format!("{resistance} + {inductor} across the filter inductor")
+        }
+        _ => {
+            let capacitor = print_digits(damping.reactance_value, Unit::Farad, 3);
+            format!("{resistance} + {capacitor} across the input capacitor")
+        }
+    }
+}
+
+/// The number as it is printed to three digits.
+fn rounded(value: f64, unit: Unit) -> f64 {
+    parse(&print_digits(value, unit, 3), unit).unwrap_or(value)
+}

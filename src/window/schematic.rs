@@ -1,0 +1,265 @@
+//! A schematic in the window: a figure painted to the width of its column, each part a thing to press and to point at.
+//!
+//! The figures are worked out once per analysis and width. Axes of parts are put onto whole pixels, so that wires stay crisp.
+
+use eframe::egui::{
+    self, Align2, CursorIcon, Id, Painter, Pos2, Rect, Sense, Shape, Stroke, StrokeKind, Ui, WidgetInfo,
+    emath::GuiRounding, pos2, vec2,
+};
+
+use super::pointed::{Pointed, Sheet};
+use super::session::Session;
+use super::theme::{self, Palette, palette};
+use super::view::Desk;
+use crate::compensator::Compensator;
+
+use crate::figure::{self, Align, Figure, Mark, Numbers, Place, Weight};
+use crate::quantity::{self, Entry};
+
+/// Greatest size of a schematic against its own.
+const LARGEST: f32 = 1.15;
+
+/// The schematics, and what they were worked out for.
+#[derive(Debug, Default)]
+pub(super) struct Schematics {
+    folded: bool,
+    stage: Kept,
+    compensator: Kept,
+}
+
+/// A figure with the generation and width it belongs to.
+#[derive(Debug, Default)]
+struct Kept {
+    figure: Figure,
+    of: Option<(u64, u32)>,
+}
+
+impl Schematics {
+    /// Whether the schematics are shown.
+    pub(super) fn shown(&self) -> bool {
+        !self.folded
+    }
+
+    /// Shows the schematics, or folds them.
+    pub(super) fn show(&mut self, shown: bool) {
+        self.folded = !shown;
+    }
+
+    /// The parts of a schematic.
+    pub(super) fn places(&self, sheet: Sheet) -> &[Place] {
+        &self.figure(sheet).places
+    }
+
+    fn figure(&self, sheet: Sheet) -> &Figure {
+        match sheet {
+            Sheet::Stage => &self.stage.figure,
+            Sheet::Compensator => &self.compensator.figure,
+        }
+    }
+
+    fn kept(&mut self, sheet: Sheet) -> &mut Kept {
+        match sheet {
+            Sheet::Stage => &mut self.stage,
+            Sheet::Compensator => &mut self.compensator,
+        }
+    }
+}
+
+impl Kept {
+    /// Works the figure out anew where the session or the width moved. The last one stays where there is none.
+    fn follow(&mut self, sheet: Sheet, session: &Session, width: f32) {
+        let of = Some((session.generation(), width.to_bits()));
+        if self.of == of {
+            return;
+        }
+        self.of = of;
+        let design = session.design();
+        let condition = session.analysis().map(|analysis| {
+            let condition = &analysis.condition;
+            (condition.input_voltage, condition.load_current)
+        });
+        let numbers = Numbers { design, condition: condition.filter(|_| !session.stale()) };
+        let figure = match sheet {
+            Sheet::Stage => figure::stage_schematic(&numbers, f64::from(width)),
+            Sheet::Compensator => Compensator::from_values(&design.values, &design.choices)
+                .ok()
+                .map(|compensator| figure::compensator_schematic(&compensator, &numbers)),
+        };
+        if let Some(figure) = figure {
+            self.figure = figure;
+        }
+    }
+}
+
+/// Draws a schematic over the width of its column.
+pub(super) fn schematic_ui(ui: &mut Ui, sheet: Sheet, desk: &mut Desk<'_>) {
+    if !desk.view.schematics.shown() {
+        return;
+    }
+    let room = ui.available_width();
+    let session = desk.session;
+    let kept = desk.view.schematics.kept(sheet);
+    kept.follow(sheet, session, room);
+    let [width, height] = kept.figure.size.map(|length| length as f32);
+    if width <= 0.0 {
+        return;
+    }
+    let scale = (room / width).min(LARGEST);
+    let (rect, _) = ui.allocate_exact_size(vec2(room, (height * scale).ceil()), Sense::hover());
+    let middle = rect.min + vec2(((room - width * scale) / 2.0).max(0.0), 0.0);
+    let origin = middle.round_to_pixels(ui.pixels_per_point());
+    let view = Scale { origin, scale };
+    let count = desk.view.schematics.places(sheet).len();
+    for index in 0..count {
+        part_ui(ui, sheet, index, view, desk);
+    }
+    paint(ui, sheet, view, desk);
+}
+
+/// From the figure's lengths to the screen.
+#[derive(Clone, Copy, Debug)]
+struct Scale {
+    origin: Pos2,
+    scale: f32,
+}
+
+impl Scale {
+    fn at(self, [x, y]: figure::Point) -> Pos2 {
+        self.origin + vec2(x as f32, y as f32) * self.scale
+    }
+}
+
+/// One part as a thing to press.
+fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk<'_>) {
+    let Some(place) = desk.view.schematics.places(sheet).get(index) else { return };
+    let rect = Rect::from_two_pos(view.at(place.corners[0]), view.at(place.corners[1])).expand(1.5);
+    let response = ui.interact(rect, Id::unique(("part", sheet, index)), Sense::click());
+    response.widget_info(|| WidgetInfo::labeled(egui::Role::Button, true, &place.name));
+    let rows = || rows(place, desk);
+    ui.ctx().accesskit_node_builder(response.id, |node| node.set_value(rows().join(", ")));
+    let response = response.on_hover_cursor(CursorIcon::PointingHand).on_hover_ui(|ui| {
+        for row in rows() {
+            ui.label(row);
+        }
+    });
+    let target = place.paths.iter().find(|path| desk.session.design().entries().iter().any(|row| row.path == **path));
+    let target = target.cloned().filter(|_| response.clicked());
+    let painter = ui.painter();
+    if response.hovered() {
+        painter.rect_filled(rect, 3.0, palette(ui).accent_ground);
+    }
+    if response.has_focus() {
+        let ring = Stroke::new(1.5, palette(ui).accent);
+        painter.rect_stroke(rect, 3.0, ring, StrokeKind::Inside);
+    }
+    desk.view.point(Pointed::Part(sheet, index), &response);
+    if let Some(path) = target {
+        desk.view.go_to(&path);
+    }
+}
+
+/// Names and values of the entries a part stands for, as far as they apply.
+fn rows(place: &Place, desk: &Desk<'_>) -> Vec<String> {
+    let design = desk.session.design();
+    let applying = design.entries();
+    let entries = place.paths.iter().filter_map(|path| applying.iter().find(|entry| entry.path == path));
+    let row = |entry: &Entry| {
+        let value = design.values.get_or_default(entry)?;
+        Some(format!("{}: {}", entry.name, quantity::print(value, entry.unit)))
+    };
+    entries.filter_map(|entry| row(entry)).collect()
+}
+
+/// Paints all marks; those of a part that is lit stand out.
+fn paint(ui: &Ui, sheet: Sheet, view: Scale, desk: &Desk<'_>) {
+    let palette = palette(ui);
+    let figure = desk.view.schematics.figure(sheet);
+    let painter = ui.painter();
+    let light = match sheet {
+        Sheet::Stage => palette.plant,
+        Sheet::Compensator => palette.compensator,
+    };
+    let mut done = 0;
+    for (index, place) in figure.places.iter().enumerate() {
+        let wires = Brush { painter, palette, view, light: None };
+        figure.marks.get(done..place.marks.start).unwrap_or_default().iter().for_each(|mark| wires.mark(mark, None));
+        let lit = desk.lit_place(sheet, index, place).then_some(light);
+        let marks = figure.marks.get(place.marks.clone()).unwrap_or_default();
+        let brush = Brush { light: lit, ..wires };
+        let shift = marks.first().map(|mark| brush.onto_pixels(mark)).unwrap_or_default();
+        marks.iter().for_each(|mark| brush.mark(mark, Some(shift)));
+        done = place.marks.end;
+    }
+    let rest = Brush { painter, palette, view, light: None };
+    figure.marks.get(done..).unwrap_or_default().iter().for_each(|mark| rest.mark(mark, None));
+}
+
+/// What marks are painted with.
+#[derive(Clone, Copy)]
+struct Brush<'a> {
+    painter: &'a Painter,
+    palette: &'a Palette,
+    view: Scale,
+    /// Colour of a part that is lit.
+    light: Option<egui::Color32>,
+}
+
+impl Brush<'_> {
+    /// What puts a part's first point onto the middle of a pixel; the whole part moves by it.
+    fn onto_pixels(&self, mark: &Mark) -> egui::Vec2 {
+        let first = match mark {
+            Mark::Line { points, .. } | Mark::Area { points, .. } => points.first().copied(),
+            Mark::Circle { centre, .. } => Some(*centre),
+            Mark::Text { .. } => None,
+        };
+        first.map(|point| self.view.at(point)).map(|at| self.snapped(at) - at).unwrap_or_default()
+    }
+
+    fn snapped(&self, at: Pos2) -> Pos2 {
+        pos2(self.painter.round_to_pixel_center(at.x), self.painter.round_to_pixel_center(at.y))
+    }
+
+    /// Paints a mark, moved by `shift`; without one, each of its points goes onto pixels.
+    fn mark(&self, mark: &Mark, shift: Option<egui::Vec2>) {
+        let at = |point: &figure::Point| {
+            let at = self.view.at(*point);
+            shift.map_or_else(|| self.snapped(at), |shift| at + shift)
+        };
+        let colour = |role| self.light.unwrap_or_else(|| theme::of_role(role, self.palette));
+        let heavier = if self.light.is_some() { 1.35 } else { 1.0 };
+        let pen = |width: f64, role| Stroke::new((width as f32 * self.view.scale).max(1.0) * heavier, colour(role));
+        match mark {
+            Mark::Line { points, role, width, .. } => {
+                self.painter.add(Shape::line(points.iter().map(at).collect(), pen(*width, *role)));
+            }
+            Mark::Area { points, role } => {
+                let points = points.iter().map(at).collect();
+                self.painter.add(Shape::convex_polygon(points, colour(*role), Stroke::NONE));
+            }
+            Mark::Circle { centre, radius, role, width } => {
+                let radius = *radius as f32 * self.view.scale;
+                match width {
+                    Some(width) => self.painter.circle_stroke(at(centre), radius, pen(*width, *role)),
+                    None => self.painter.circle_filled(at(centre), radius, colour(*role)),
+                };
+            }
+            Mark::Text { at: anchor, text, role, size, weight, align } => {
+                let size = *size as f32 * self.view.scale;
+                let font = match weight {
+                    Weight::Regular => egui::FontId::new(size, egui::FontFamily::Proportional),
+                    Weight::Bold => theme::strong(size),
+                };
+                let place = self.view.at(*anchor);
+                self.painter.text(place, Align2([side(align.0), side(align.1)]), text, font, colour(*role));
+            }
+        }
+    }
+}
+
+fn side(align: Align) -> egui::Align {
+    match align {
+        Align::Start => egui::Align::Min,
+        Align::Middle => egui::Align::Center,
+        Align::End => egui::Align::Max,
+    }
+}
