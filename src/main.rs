@@ -1,14 +1,15 @@
 //! Chooses between the window and the terminal.
 
-use polewright::terminal::{self, Command, Usage};
+use polewright::terminal::{self, Command, Opening, Usage};
 use std::io::{self, Write};
-use std::path::PathBuf;
 use std::process::ExitCode;
+use std::time::Instant;
 
 /// Exit code when an input cannot be used, the window included.
 const UNUSABLE: u8 = 2;
 
 fn main() -> ExitCode {
+    let started = Instant::now();
     let (mut out, mut err) = (io::stdout().lock(), io::stderr().lock());
     let code = match terminal::parse(std::env::args_os()) {
         Ok(Command::Check(request)) => match terminal::check(&request, &mut out, &mut err) {
@@ -17,10 +18,10 @@ fn main() -> ExitCode {
             Err(error) if error.kind() == io::ErrorKind::BrokenPipe => 0,
             Err(error) => say(&mut err, &format!("The report could not be written: {error}.\n"), UNUSABLE),
         },
-        Ok(Command::Open(file)) => {
+        Ok(Command::Open(opening)) => {
             drop((out, err));
-            match open(file) {
-                Ok(()) => 0,
+            match open(opening, started) {
+                Ok(report) => say(&mut io::stdout(), &report, 0),
                 Err(message) => say(&mut io::stderr(), &message, UNUSABLE),
             }
         }
@@ -36,18 +37,22 @@ fn say(to: &mut impl Write, text: &str, code: u8) -> u8 {
     code
 }
 
+/// Opens the window and works until it is closed; gives back what a measurement has to report.
 #[cfg(feature = "window")]
-fn open(file: Option<PathBuf>) -> Result<(), String> {
+fn open(opening: Opening, started: Instant) -> Result<String, String> {
     use polewright::design::{file::load, sample};
-    let design = match &file {
+    use polewright::window::{Measurement, run};
+    let design = match &opening.file {
         Some(path) => load(path).map_err(|error| format!("{error}\n"))?,
         None => sample::built_in(),
     };
-    polewright::window::run(design, file).map_err(|error| format!("{error}.\n"))
+    let measurement = opening.measure.map(|rest| Measurement::new(started, rest));
+    run(design, opening.file, measurement.clone()).map_err(|error| format!("{error}.\n"))?;
+    Ok(measurement.map(|measurement| measurement.to_string()).unwrap_or_default())
 }
 
 #[cfg(not(feature = "window"))]
-fn open(_: Option<PathBuf>) -> Result<(), String> {
+fn open(_: Opening, _: Instant) -> Result<String, String> {
     Err("The window cannot be opened: this program was built without it (Cargo feature `window`).\n\
          Build it with `cargo run --release`, or ask the same in the terminal: polewright check FILE\n"
         .into())

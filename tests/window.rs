@@ -13,8 +13,12 @@ use polewright::window::App;
 
 #[path = "window/export.rs"]
 mod export;
+#[path = "window/lanes.rs"]
+mod lanes;
 #[path = "window/safety.rs"]
 mod safety;
+#[path = "window/walk.rs"]
+mod walk;
 
 fn window(size: Vec2, pixels_per_point: f32) -> Harness<'static, App> {
     let mut harness = Harness::builder()
@@ -85,23 +89,6 @@ fn a_window_opens_with_results() {
     let session = harness.state().session();
     assert!(session.analysis().unwrap().shown.is_ok());
     assert!(!session.stale() && !session.unsaved());
-}
-
-#[test]
-fn handles_stand_under_the_curves_at_every_size_and_scale() {
-    for size in [vec2(1000.0, 700.0), vec2(1280.0, 800.0), vec2(1920.0, 1080.0)] {
-        for scale in [1.0, 1.25, 2.0] {
-            let harness = window(size, scale);
-            let app = harness.state();
-            for lane in app.session().lanes() {
-                let wanted = place(&harness, lane.frequency_hz);
-                let found = f64::from(handle(&harness, lane.key).x);
-                let (left, right) = (f64::from(app.gain_rect().left()), f64::from(app.gain_rect().right()));
-                let apart = (wanted.clamp(left, right) - found).abs() * f64::from(scale);
-                assert!(apart < 1.0, "{} is {apart} pixels off at {size} × {scale}", lane.key);
-            }
-        }
-    }
 }
 
 #[test]

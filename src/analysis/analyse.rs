@@ -169,7 +169,11 @@ fn conclude(
         None => shown.as_ref().err().into_iter().cloned().collect(),
     };
     Analysis {
-        readouts: [readouts(detail, &conditions, &requirements), filter_readouts(detail, &conditions)].concat(),
+        readouts: [
+            readouts(detail, &conditions, &requirements, design.events.settling_band),
+            filter_readouts(detail, &conditions),
+        ]
+        .concat(),
         shown,
         condition,
         conditions,

@@ -51,7 +51,11 @@ fn edge(frequency_hz: f64, cause: String, kind: Cause) -> Option<(WindowEdge, Ca
         .then_some((WindowEdge { frequency_hz, cause, of_resonance: kind == Cause::Resonance }, kind))
 }
 
-fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<(WindowEdge, Cause)> {
+/// The highest LC resonance of the conditions that have one [Hz], and the condition it belongs to.
+pub(super) fn highest_resonance<'a>(
+    design: &CheckedDesign,
+    conditions: &'a [ConditionResult],
+) -> Option<(f64, &'a Condition)> {
     if !design.law.voltage_mode() {
         // Current mode leaves no resonance of inductor and output capacitor.
         return None;
@@ -61,11 +65,15 @@ fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Opt
     };
     // In discontinuous conduction there is no resonance.
     let resonates = |c: &&ConditionResult| c.outcome.as_ref().map_or(true, resonates);
-    let highest = conditions
+    conditions
         .iter()
         .filter(resonates)
         .map(|c| (resonance(&c.condition), &c.condition))
-        .max_by(|a, b| a.0.total_cmp(&b.0))?;
+        .max_by(|a, b| a.0.total_cmp(&b.0))
+}
+
+fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<(WindowEdge, Cause)> {
+    let highest = highest_resonance(design, conditions)?;
     let cause =
         format!("{ABOVE_RESONANCE} × LC resonance {} at {}", print_digits(highest.0, Unit::Hertz, 3), highest.1.label);
     edge(ABOVE_RESONANCE * highest.0, cause, Cause::Resonance)

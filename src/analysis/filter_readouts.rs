@@ -23,6 +23,7 @@ pub(super) fn filter_readouts(detail: Option<&Detail>, conditions: &[ConditionRe
         worst: worst.map(|(index, label, value)| Worst { value: Some(value), condition: label.to_owned(), index }),
         range: None,
         requirements: Vec::new(),
+        at_zero: None,
         help,
     };
     let least = results().map(|(k, label, r)| (k, label, r.least_margin().margin_db));

@@ -2,6 +2,7 @@
 
 use super::curves::wrapped;
 use super::loop_model::{LoopModel, Shared};
+use super::pairs::{Pair, pairs};
 use super::result::{Ledger, LedgerRole, LedgerRow};
 use crate::compensator::{Compensator, LaneKind};
 use crate::converter::Landmark;
@@ -47,11 +48,20 @@ pub(super) fn ledger(
         landmark: None,
     });
     let mut small = 0.0;
-    for factor in model.plant.factor_phases_deg(crossover_hz) {
+    let mut factors = model.plant.factor_phases_deg(crossover_hz);
+    let cancelling = pairs(&mut factors);
+    for factor in factors {
         if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
             small += factor.phase_deg;
         } else {
             rows.push(plant_row(&factor, landmarks, model));
+        }
+    }
+    for pair in cancelling {
+        if pair.phase_deg.abs() < SMALL_DEG {
+            small += pair.phase_deg;
+        } else {
+            rows.push(pair_row(&pair));
         }
     }
     if small != 0.0 {
@@ -108,6 +118,12 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
         first.degrees += beside;
     }
     rows
+}
+
+/// One row for a pole and a zero that nearly cancel.
+fn pair_row(pair: &Pair) -> LedgerRow {
+    let label = format!("pole and zero near {}", print_digits(pair.frequency_hz, Unit::Hertz, 2));
+    LedgerRow { label, degrees: pair.phase_deg, role: LedgerRole::Plant, lane: None, landmark: None }
 }
 
 fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) -> LedgerRow {

@@ -17,6 +17,8 @@ mod impedance;
 mod ledger;
 mod load_sweep;
 pub mod loop_model;
+mod pairs;
+mod placement;
 pub mod proposal;
 mod readouts;
 mod remarks;
@@ -33,6 +35,7 @@ pub use filter_result::{
     Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
 };
 pub use load_sweep::{LoadSweep, LoadSweepFigures, LoadSweepLine, LoadSweepPoint, SWEEP_POINTS, load_sweep};
+pub use placement::{Goal, place_by_k_factor, place_by_rules, usual_goal};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, CrossoverWindow, Curves, Detail,
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,

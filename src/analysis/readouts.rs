@@ -3,7 +3,7 @@
 use super::requirement::worst_shown;
 use super::result::{ConditionResult, Detail, InnerResult, Readout, RequirementVerdict, Worst};
 use crate::design::Asked;
-use crate::quantity::Unit;
+use crate::quantity::{Unit, print};
 
 /// A row of the list before its values are known.
 struct Row {
@@ -208,12 +208,14 @@ fn belongs(key: &str, detail: Option<&Detail>) -> bool {
     }
 }
 
-/// The read-outs of the shown condition, with the worst of the nine and the requirements beside them.
+/// The read-outs of the shown condition, `settling_band` as a share of the output, with the worst of the nine and the requirements beside them.
 pub(super) fn readouts(
     detail: Option<&Detail>,
     conditions: &[ConditionResult],
     verdicts: &[RequirementVerdict],
+    settling_band: f64,
 ) -> Vec<Readout> {
+    let within = format!("stays within ±{}", print(settling_band, Unit::Fraction));
     let stable = detail.is_some_and(|d| d.loop_gain.stable());
     let shown = |row: &Row| {
         let requirements: Vec<_> = verdicts.iter().filter(|v| v.readout == row.key).cloned().collect();
@@ -235,6 +237,7 @@ pub(super) fn readouts(
             worst: row.asked.and_then(|asked| worst_shown(asked, conditions)),
             range: (row.key == "crossover").then(|| range(conditions)).flatten(),
             requirements,
+            at_zero: (row.key == "settling").then(|| within.clone()),
             help: row.help,
         }
     };

@@ -343,8 +343,20 @@ pub struct Readout {
     pub range: Option<[Worst; 2]>,
     /// Verdicts of the requirements on this number.
     pub requirements: Vec<RequirementVerdict>,
+    /// What to say in place of a zero, where a zero would mislead: "stays within ±1 %" for a settling time.
+    pub at_zero: Option<String>,
     /// What the number means, with its formula.
     pub help: &'static str,
+}
+
+impl Readout {
+    /// A value of this read-out for people, with its unit: with so many digits, or in the words for a zero.
+    pub fn said(&self, value: f64, digits: usize) -> String {
+        match &self.at_zero {
+            Some(words) if value == 0.0 => words.clone(),
+            _ => crate::quantity::print_digits(value, self.unit, digits),
+        }
+    }
 }
 
 /// A worst value and where it was found.

@@ -147,7 +147,7 @@ impl Part {
     }
 
     /// The part's row in the table of entries.
-    pub(super) fn entry(self) -> &'static Entry {
+    pub fn entry(self) -> &'static Entry {
         // The table and this list are fixed together; the first row stands in for one that is missing, and a test sees to it
         // that none is.
         ENTRIES.iter().find(|row| row.path == self.path()).unwrap_or(&ENTRIES[0])

@@ -169,8 +169,6 @@ fn parts_of(key: &str, branches: usize) -> Vec<String> {
     match key {
         "lc-resonance" => [one("stage.inductor.inductance"), of_bank("capacitance")].concat(),
         "esr-zero" => [of_bank("esr"), of_bank("capacitance")].concat(),
-        "low-pole" => [of_bank("capacitance"), one("stage.load.nominal")].concat(),
-        "second-pole" => one("stage.inductor.inductance"),
         "right-half-plane-zero" => [one("stage.inductor.inductance"), one("stage.load.nominal")].concat(),
         "input-filter" => [one("stage.input-filter.inductance"), one("stage.input-capacitor.capacitance")].concat(),
         "output-filter" => {

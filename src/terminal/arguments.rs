@@ -6,14 +6,24 @@ use clap::error::ErrorKind;
 use clap::{Args, Parser, Subcommand};
 use std::ffi::OsString;
 use std::path::PathBuf;
+use std::time::Duration;
 
 /// What the command line asks for.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Command {
-    /// Open the window on a file, or on the built-in design.
-    Open(Option<PathBuf>),
+    /// Open the window.
+    Open(Opening),
     /// Check designs and report.
     Check(CheckRequest),
+}
+
+/// How the window is opened.
+#[derive(Clone, Debug, Default, PartialEq, Eq)]
+pub struct Opening {
+    /// The design file; without one the built-in design is opened.
+    pub file: Option<PathBuf>,
+    /// Measure the start and so long a rest, report, and close.
+    pub measure: Option<Duration>,
 }
 
 /// What `polewright check` asks for.
@@ -50,6 +60,10 @@ pub struct Usage {
 struct Arguments {
     /// Design file to open in the window; without one the built-in design is opened.
     file: Option<PathBuf>,
+    /// Measure instead of work: open the window, leave it alone for so many seconds, say how long the start took, how many frames
+    /// were painted at rest and how much memory is used, and close.
+    #[arg(long, value_name = "SECONDS", value_parser = seconds)]
+    measure: Option<Duration>,
     #[command(subcommand)]
     command: Option<Task>,
 }
@@ -95,7 +109,7 @@ struct CheckArguments {
 pub fn parse(arguments: impl IntoIterator<Item = OsString>) -> Result<Command, Usage> {
     let arguments = Arguments::try_parse_from(arguments).map_err(|error| usage(&error))?;
     match arguments.command {
-        None => Ok(Command::Open(arguments.file)),
+        None => Ok(Command::Open(Opening { file: arguments.file, measure: arguments.measure })),
         Some(Task::Check(check)) => Ok(Command::Check(check.into())),
     }
 }
@@ -115,6 +129,17 @@ impl From<CheckArguments> for CheckRequest {
 fn positive(text: &str, unit: Unit) -> Result<f64, String> {
     let value = crate::quantity::parse(text, unit).map_err(|error| error.to_string())?;
     Bounds::Positive.check(value, unit).map(|()| value)
+}
+
+/// Longest rest that may be asked for [s].
+const LONGEST_REST_S: f64 = 3600.0;
+
+fn seconds(text: &str) -> Result<Duration, String> {
+    let seconds = positive(text, Unit::Second)?;
+    if seconds > LONGEST_REST_S {
+        return Err("write at most an hour, 3600".into());
+    }
+    Ok(Duration::from_secs_f64(seconds))
 }
 
 fn frequency(text: &str) -> Result<f64, String> {
@@ -146,8 +171,11 @@ mod tests {
 
     #[test]
     fn without_a_task_the_window_opens() {
-        assert_eq!(read("polewright"), Ok(Command::Open(None)));
-        assert_eq!(read("polewright a.ron"), Ok(Command::Open(Some("a.ron".into()))));
+        assert_eq!(read("polewright"), Ok(Command::Open(Opening::default())));
+        let opening = Opening { file: Some("a.ron".into()), measure: None };
+        assert_eq!(read("polewright a.ron"), Ok(Command::Open(opening.clone())));
+        let measured = Opening { measure: Some(Duration::from_millis(2500)), ..opening };
+        assert_eq!(read("polewright --measure 2.5 a.ron"), Ok(Command::Open(measured)));
     }
 
     #[test]
@@ -174,6 +202,9 @@ mod tests {
             ("polewright check a.ron --at \u{1b}[31m", "\u{FFFD}[31m"),
             ("polewright check a.ron --set stage.topology", "PATH=VALUE"),
             ("polewright check a.ron --jsno", "--json"),
+            ("polewright --measure 0", "above 0 s"),
+            ("polewright --measure 2h", "not"),
+            ("polewright --measure 4000", "an hour"),
         ] {
             let usage = read(line).expect_err(line);
             assert!(usage.is_error && usage.text.contains(said), "{line}: {}", usage.text);

@@ -40,5 +40,5 @@ mod json;
 mod sweep;
 mod text;
 
-pub use arguments::{CheckRequest, Command, Usage, parse};
+pub use arguments::{CheckRequest, Command, Opening, Usage, parse};
 pub use check::{Outcome, check};

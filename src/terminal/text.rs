@@ -188,10 +188,10 @@ fn readouts(text: &mut String, analysis: &Analysis, design: &CheckedDesign) {
             row(text, readout.name, "no step");
             continue;
         }
-        let here = readout.value.map_or(readout.absent.to_owned(), |value| print(value, readout.unit));
+        let here = readout.value.map_or(readout.absent.to_owned(), |value| readout.said(value, 4));
         let here = if readout.greyed { format!("({here})") } else { here };
         let worst = readout.worst.as_ref().map_or(String::new(), |worst| {
-            let value = worst.value.map_or("none".to_owned(), |value| print(value, readout.unit));
+            let value = worst.value.map_or("none".to_owned(), |value| readout.said(value, 4));
             format!("worst {} at {}", padded(&value, 12), worst.condition)
         });
         row(text, readout.name, format!("{}{worst}", padded(&here, 16)).trim_end());

@@ -110,6 +110,8 @@ impl App {
                     | Command::NextCondition
                     | Command::PreviousCondition
                     | Command::WholeRange
+                    | Command::Pan(_)
+                    | Command::Zoom(_)
             );
             if typing && of_field {
                 continue;
@@ -184,10 +186,10 @@ impl App {
         }
     }
 
-    /// Curves at one frequency per column of the plot, over the frequencies shown.
+    /// Curves at no more than one frequency per column of the plot, over the frequencies shown.
     fn ask_frequencies(&mut self) {
-        let lots = (self.view.plot_width / COLUMNS_STEP).ceil();
-        let points = (2..=MOST_LOTS).find(|count| *count as f32 >= lots).unwrap_or(MOST_LOTS) * COLUMNS;
+        let lots = (self.view.plot_width / COLUMNS_STEP).floor();
+        let points = (1..=MOST_LOTS).rev().find(|count| *count as f32 <= lots).unwrap_or(1) * COLUMNS;
         let (from, to) = self.frequency_range_hz();
         let frequencies_hz = analysis::logarithmic(from, to, points);
         self.session.ask_frequencies(frequencies_hz);

@@ -2,7 +2,7 @@
 
 use eframe::egui::{self, Align, Button, Color32, Layout, Pos2, Rect, RichText, Shape, Ui, UiBuilder, pos2, vec2};
 
-use super::command::{COMMANDS, Command, Menu};
+use super::command::{COMMANDS, Command, Menu, Row};
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{conditions, recents, recovery};
@@ -75,11 +75,7 @@ fn word_ui(ui: &mut Ui, word: &str, enabled: bool, help: &str, command: Command,
 fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
     ui.set_min_width(250.0);
     for row in COMMANDS.iter().filter(|row| row.menu == menu) {
-        let mut button = Button::new(row.name).stroke(egui::Stroke::NONE).selected(chosen(&row.command, desk));
-        if let Some(shortcut) = &row.shortcut {
-            button = button.shortcut_text(ui.ctx().format_shortcut(shortcut));
-        }
-        if ui.add(button).on_hover_text(row.help).clicked() {
+        if command_ui(ui, row, chosen(&row.command, desk)) {
             desk.ask(row.command.clone());
             ui.close();
         }
@@ -100,11 +96,28 @@ fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
     }
 }
 
+/// A command as a line of a list or a menu; true when pressed. Its keys stand beside it and are no part of its name.
+pub(super) fn command_ui(ui: &mut Ui, row: &Row, selected: bool) -> bool {
+    let mut button = Button::new(row.name).stroke(egui::Stroke::NONE).selected(selected);
+    let keys = row.shortcut.map(|shortcut| ui.ctx().format_shortcut(&shortcut));
+    if let Some(keys) = &keys {
+        button = button.shortcut_text(keys);
+    }
+    button = button.min_size(vec2(ui.available_width(), 0.0));
+    let response = ui.add(button).accessible_name(row.name);
+    super::legend::focus_ring(ui, &response);
+    if let Some(keys) = keys {
+        ui.ctx().accesskit_node_builder(response.id, |node| node.set_keyboard_shortcut(keys));
+    }
+    response.on_hover_text(row.help).clicked()
+}
+
 /// Whether a command stands for something that is switched on.
 fn chosen(command: &Command, desk: &Desk<'_>) -> bool {
     match command {
         Command::Toggle(curve) => desk.view.shows(*curve),
         Command::ToggleBand => desk.view.band,
+        Command::Tie(kind) => desk.session.tied(*kind),
         Command::ToggleStage => desk.view.stage_column,
         Command::ToggleReadouts => desk.view.readout_column,
         Command::Theme(theme) => desk.view.theme == *theme,
@@ -119,6 +132,7 @@ pub(super) fn samples_ui(ui: &mut Ui, desk: &mut Desk<'_>) -> bool {
     for sample in design::sample::all() {
         let title = RichText::new(sample.title).color(palette(ui).accent);
         let response = ui.add(Button::new(title).frame(false));
+        super::legend::focus_ring(ui, &response);
         ui.label(RichText::new(sample.line).font(theme::small()).color(palette(ui).weak));
         ui.add_space(4.0);
         if response.clicked() {

@@ -1,6 +1,6 @@
 //! The stacked plots of gain and phase with the lanes under them, on one frequency axis.
 
-use eframe::egui::{self, Align2, Pos2, Rect, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
+use eframe::egui::{self, Align2, Rect, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis::{self, Axis};
 use super::crossover;
@@ -11,6 +11,7 @@ use super::marks;
 use super::plot::{Pen, Plot};
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{Desk, View};
+use super::zoom;
 use crate::analysis::{Analysis, Curves, Detail};
 use crate::quantity::{self, Unit};
 
@@ -222,51 +223,20 @@ fn cursor_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
     for (name, plot) in [("Gain plot", &stack.gain), ("Phase plot", &stack.phase)] {
         let response = ui.interact(plot.rect, ui.scope_id().with(name), Sense::drag());
         response.widget_info(|| WidgetInfo::labeled(egui::Role::Canvas, true, name));
+        legend::focus_ring(ui, &response);
+        cursor = cursor.or(zoom::cursor_by_keys(ui, &response, plot, desk));
         if let Some(pointer) = response.hover_pos() {
             cursor = Some(plot.x.value(pointer.x));
-            zoom(ui, plot, pointer, desk);
+            zoom::wheel(ui, plot, pointer, desk);
         }
         if response.dragged() {
-            pan(plot, response.drag_delta().x, desk);
+            zoom::drag(plot, response.drag_delta().x, desk);
         }
         if response.double_clicked() {
             desk.view.range_hz = None;
         }
     }
-    desk.view.cursor_hz = cursor;
-}
-
-/// Least and greatest span of the frequency axis [decades].
-const SPANS: (f64, f64) = (0.5, 7.0);
-
-fn zoom(ui: &Ui, plot: &Plot, pointer: Pos2, desk: &mut Desk<'_>) {
-    // Where the column scrolls the wheel is the column's, or its lower plots could not be reached; Ctrl and pinching zoom.
-    let scrolls = desk.view.plots_scroll;
-    let turn = ui.input(|input| {
-        let wheel = if scrolls { 0.0 } else { input.smooth_scroll_delta().y };
-        wheel + 200.0 * (input.zoom_delta() - 1.0)
-    });
-    if turn.abs() < 0.1 {
-        return;
-    }
-    let (from, to) = plot.x.range();
-    let centre = plot.x.value(pointer.x);
-    let factor = (-f64::from(turn) / 300.0).exp();
-    let span = (to / from).log10() * factor;
-    if (SPANS.0..=SPANS.1).contains(&span) {
-        let low = centre * (from / centre).powf(factor);
-        let high = centre * (to / centre).powf(factor);
-        desk.view.range_hz = Some((low.max(1e-3), high.min(1e10)));
-    }
-}
-
-fn pan(plot: &Plot, by: f32, desk: &mut Desk<'_>) {
-    let (from, to) = plot.x.range();
-    let ratio = plot.x.value(plot.rect.left() - by) / from;
-    let (from, to) = (from * ratio, to * ratio);
-    if from > 1e-3 && to < 1e10 && by != 0.0 {
-        desk.view.range_hz = Some((from, to));
-    }
+    desk.view.cursor_hz = cursor.or(desk.view.cursor_below_hz);
 }
 
 /// The line under the pointer, with its frequency.

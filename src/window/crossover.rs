@@ -1,4 +1,6 @@
 //! The crossover as a handle: taken on the gain curve and moved along the axis, the gain of the compensator follows.
+//!
+//! *Conventions* as for lanes: Shift is ten times finer, arrow keys move by a fortieth of a decade.
 
 use eframe::egui::{
     self, CursorIcon, EventFilter, Id, Key, Modifiers, Rect, Sense, Stroke, StrokeKind, Ui, WidgetInfo, vec2,
@@ -12,6 +14,8 @@ use crate::quantity::{self, Unit};
 
 /// One arrow key [decades].
 const NUDGE: f64 = 1.0 / 40.0;
+/// What Shift does to drags and arrow keys.
+const FINE: f32 = 0.1;
 
 /// Lets the headline crossover be dragged and moved by keys.
 pub(super) fn crossover_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
@@ -59,11 +63,14 @@ fn drag(ui: &Ui, stack: &Stack, frequency_hz: f64, response: &egui::Response, de
         desk.view.drag =
             Some(Drag { handle_x, pointer_x: press.map_or(handle_x, |at| at.x), gesture: desk.view.gesture });
     }
-    if let (true, Some(drag), Some(pointer)) = (response.dragged(), desk.view.drag, response.interact_pointer_pos())
-        && (response.drag_delta().x != 0.0 || response.drag_started())
+    if let (true, Some(drag), Some(pointer)) =
+        (response.dragged(), &mut desk.view.drag, response.interact_pointer_pos())
+        && drag.moved_to(pointer.x)
     {
-        let frequency_hz = stack.gain.x.value(drag.handle_x + pointer.x - drag.pointer_x);
-        desk.ask(Command::MoveCrossover { frequency_hz, gesture: drag.gesture });
+        let fine = ui.input(|input| input.modifiers.shift);
+        let x = drag.follow(pointer.x, if fine { FINE } else { 1.0 });
+        let gesture = drag.gesture;
+        desk.ask(Command::MoveCrossover { frequency_hz: stack.gain.x.value(x), gesture });
     }
     if response.drag_stopped() {
         desk.view.drag = None;
@@ -80,11 +87,13 @@ fn keys(ui: &Ui, frequency_hz: f64, response: &egui::Response, desk: &mut Desk<'
     let filter = EventFilter { horizontal_arrows: true, ..EventFilter::default() };
     ui.memory_mut(|memory| memory.set_focus_lock_filter(response.id, filter));
     let steps = ui.input_mut(|input| {
-        let right = input.count_and_consume_key(Modifiers::NONE, Key::ArrowRight)
-            + input.num_accesskit_action_requests(response.id, egui::accesskit::Action::Increment);
-        let left = input.count_and_consume_key(Modifiers::NONE, Key::ArrowLeft)
-            + input.num_accesskit_action_requests(response.id, egui::accesskit::Action::Decrement);
-        right as f64 - left as f64
+        let mut steps = 0.0;
+        for (key, way) in [(Key::ArrowRight, 1.0), (Key::ArrowLeft, -1.0)] {
+            steps += way * input.count_and_consume_key(Modifiers::NONE, key) as f64;
+            steps += way * f64::from(FINE) * input.count_and_consume_key(Modifiers::SHIFT, key) as f64;
+        }
+        steps += input.num_accesskit_action_requests(response.id, egui::accesskit::Action::Increment) as f64;
+        steps - input.num_accesskit_action_requests(response.id, egui::accesskit::Action::Decrement) as f64
     });
     if steps != 0.0 {
         let frequency_hz = frequency_hz * 10f64.powf(steps * NUDGE);

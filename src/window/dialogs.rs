@@ -1,6 +1,6 @@
 //! Questions and lists over the window: open, save as, unsaved changes, all commands.
 
-use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, Stroke, TextEdit, Ui};
+use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, TextEdit, Ui};
 
 use super::command::{COMMANDS, Command};
 use super::export;
@@ -175,12 +175,7 @@ fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
     }
     list(ui, "commands", 360.0).show(ui, |ui| {
         for row in found {
-            let mut button =
-                Button::new(row.name).stroke(Stroke::NONE).min_size(eframe::egui::vec2(ui.available_width(), 0.0));
-            if let Some(shortcut) = &row.shortcut {
-                button = button.shortcut_text(ui.ctx().format_shortcut(shortcut));
-            }
-            if ui.add(button).on_hover_text(row.help).clicked() {
+            if bar::command_ui(ui, row, false) {
                 desk.ask(Command::Dismiss);
                 desk.ask(row.command.clone());
             }

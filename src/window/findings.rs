@@ -57,7 +57,9 @@ fn actions_ui(ui: &mut Ui, finding: &Finding, desk: &mut Desk<'_>) {
     }
     if let Some(entry) = design::entry(&finding.place) {
         let text = RichText::new(format!("Go to {}", lower_first(entry.name))).font(theme::small()).color(accent);
-        if ui.add(egui::Button::new(text).small().frame(false)).clicked() {
+        let response = ui.add(egui::Button::new(text).small().frame(false));
+        super::legend::focus_ring(ui, &response);
+        if response.clicked() {
             desk.view.go_to(entry.path);
         }
     }

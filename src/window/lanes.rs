@@ -2,7 +2,8 @@
 //!
 //! *Conventions*: a zero is a ring, a pole a cross, the gain a diamond. The handle stands where the parts put the lane; a
 //! short bar on the rail shows the aim where the two differ. Dragging with Shift is ten times finer; arrow keys move by a
-//! fortieth of a decade, with Shift by a tenth of that; Enter or a press on the number types a value.
+//! fortieth of a decade, with Shift by a tenth of that; Enter or a press on the number types a value; a double click or Home
+//! returns a lane to the placement rule.
 
 use eframe::egui::{
     self, Align2, CursorIcon, EventFilter, Id, Key, Modifiers, Painter, Pos2, Rect, Response, Sense, Stroke,
@@ -11,8 +12,10 @@ use eframe::egui::{
 
 use super::bode::Stack;
 use super::command::Command;
+use super::lane_card::{self, Held};
 use super::pointed::Pointed;
 use super::theme::{self, Palette, palette};
+use super::ties;
 use super::view::{Desk, Drag, Typing};
 use crate::compensator::{Lane, LaneKind};
 use crate::quantity::{self, Unit};
@@ -25,48 +28,56 @@ const FINE: f32 = 0.1;
 const APART: f64 = 0.004;
 /// Distance within which a dragged handle snaps to a landmark [points].
 const SNAP: f32 = 4.0;
-/// Greatest width of the lines that say what limits a lane [points].
-const REMARK_WIDTH: f32 = 400.0;
 /// Room between the names of lanes and the plot, in which a handle beyond the axis has its mark [points].
 const EDGE: f32 = 22.0;
 
-/// Draws all lanes.
+/// Draws all lanes: the gain, then the zeros, then the poles.
 pub(super) fn lanes_ui(ui: &mut Ui, stack: &Stack, desk: &mut Desk<'_>) {
     let session = desk.session;
+    let kinds = [LaneKind::Gain, LaneKind::Zero, LaneKind::Pole];
     let mut active = None;
-    for (index, lane) in session.lanes().iter().enumerate() {
-        let top = stack.lanes.top() + 3.0 + theme::LANE_HEIGHT * index as f32;
-        let row =
-            Rect::from_min_max(pos2(stack.lanes.left(), top), pos2(stack.lanes.right(), top + theme::LANE_HEIGHT));
-        if lane_ui(ui, stack, row, lane, desk) {
-            active = Some((lane, row));
+    let mut taken = Vec::with_capacity(session.lanes().len());
+    let mut middle = stack.lanes.top() + 3.0 + theme::LANE_HEIGHT / 2.0;
+    for kind in kinds {
+        let first = middle;
+        for lane in session.lanes().iter().filter(|lane| lane.kind == kind) {
+            let row = Rect::from_x_y_ranges(
+                stack.lanes.x_range(),
+                (middle - theme::LANE_HEIGHT / 2.0)..=(middle + theme::LANE_HEIGHT / 2.0),
+            );
+            let shown = lane_ui(ui, stack, row, lane, desk);
+            taken.push(shown.taken);
+            if shown.active {
+                active = Some((lane, shown));
+            }
+            middle += theme::LANE_HEIGHT;
+        }
+        if middle - first > 1.5 * theme::LANE_HEIGHT {
+            ties::tie_ui(ui, kind, stack.lanes.left(), (first, middle - theme::LANE_HEIGHT), desk);
         }
     }
-    // After all lanes, since it lies over the next one.
-    if let Some((lane, row)) = active {
-        remark(ui, stack, row, lane, desk);
+    // After all lanes, since it lies among the others.
+    if let Some((lane, shown)) = &active {
+        let held = Held { lane, handle: shown.handle, taken: &taken, in_hand: shown.in_hand };
+        lane_card::card_ui(ui, stack, &held, desk);
     }
     desk.view.lane = active.map(|(lane, _)| lane.key);
 }
 
-/// What limits a lane, under it and within the width of the plot.
-fn remark(ui: &Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &Desk<'_>) {
-    let Some(text) = desk.session.lane_remark(lane.key) else { return };
-    let palette = palette(ui);
-    let plot = stack.gain.rect;
-    let width = (plot.width() - 16.0).min(REMARK_WIDTH);
-    let galley = ui.painter().layout(text.to_owned(), theme::small(), palette.ink, width);
-    let size = galley.size();
-    let x = stack.gain.x.at(lane.frequency_hz) - size.x / 2.0;
-    let left = x.clamp(plot.left() + 8.0, (plot.right() - size.x - 8.0).max(plot.left() + 8.0));
-    let at = pos2(left, row.center().y + theme::HANDLE + 8.0);
-    let ground = Rect::from_min_size(at, size).expand2(vec2(6.0, 3.0));
-    ui.painter().rect(ground, 3.0, palette.field, Stroke::new(1.0, palette.field_edge), StrokeKind::Inside);
-    ui.painter().galley(at, galley, palette.ink);
+/// How a lane was drawn.
+struct Shown {
+    /// Its handle is held, has the keyboard or is under the pointer.
+    active: bool,
+    /// Its handle is held or has the keyboard.
+    in_hand: bool,
+    /// Where its handle stands [points].
+    handle: Pos2,
+    /// Its handle and its number.
+    taken: Rect,
 }
 
-/// Draws one lane; true when its handle is held, has the keyboard or is under the pointer.
-fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'_>) -> bool {
+/// Draws one lane.
+fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'_>) -> Shown {
     let palette = palette(ui);
     let plot = stack.gain.rect;
     let y = row.center().y;
@@ -101,11 +112,18 @@ fn lane_ui(ui: &mut Ui, stack: &Stack, row: Rect, lane: &Lane, desk: &mut Desk<'
     let response = response.on_hover_and_drag_cursor(CursorIcon::ResizeHorizontal);
     drag(ui, stack, lane, &response, desk);
     keys(ui, lane, &response, desk);
-    value_ui(ui, stack, lane, (handle, active), desk);
-    if !held {
+    if response.double_clicked() {
+        desk.ask(Command::ReturnLane(lane.key));
+    } else if response.clicked() {
+        response.request_focus();
+    }
+    let number = value_ui(ui, stack, lane, handle, desk);
+    let in_hand = held || response.has_focus();
+    if !in_hand {
         response.on_hover_text(explain(lane));
     }
-    active
+    let taken = number.union(Rect::from_center_size(handle, vec2(18.0, 18.0))).expand(1.0);
+    Shown { active, in_hand, handle, taken }
 }
 
 /// Explains the word in the gutter.
@@ -130,7 +148,12 @@ fn kind_word(kind: LaneKind) -> &'static str {
 }
 
 fn explain(lane: &Lane) -> String {
-    format!("{}: {}\n{}\n{}", lane.name, quantity::print(lane.frequency_hz, Unit::Hertz), lane.formula, lane.help)
+    let at = quantity::print(lane.frequency_hz, Unit::Hertz);
+    let rule = match lane.kind {
+        LaneKind::Gain => "A double click lets the loop cross at the aim beside the parts.",
+        LaneKind::Zero | LaneKind::Pole => "A double click puts it where the pole-zero rules do.",
+    };
+    format!("{}: {at}\n{}\n{}\n{rule}", lane.name, lane.formula, lane.help)
 }
 
 /// Tells screen readers what the handle is and where it stands.
@@ -198,25 +221,34 @@ fn drag(ui: &Ui, stack: &Stack, lane: &Lane, response: &Response, desk: &mut Des
             Some(Drag { handle_x, pointer_x: press.map_or(handle_x, |at| at.x), gesture: desk.view.gesture });
         response.request_focus();
     }
-    if let (true, Some(drag), Some(pointer)) = (response.dragged(), desk.view.drag, response.interact_pointer_pos()) {
+    if let (true, Some(drag), Some(pointer)) =
+        (response.dragged(), &mut desk.view.drag, response.interact_pointer_pos())
+        && drag.moved_to(pointer.x)
+    {
         let modifiers = ui.input(|input| input.modifiers);
-        let moved = (pointer.x - drag.pointer_x) * if modifiers.shift { FINE } else { 1.0 };
-        let x = snapped(stack, drag.handle_x + moved, modifiers, desk);
-        if response.drag_delta().x != 0.0 || response.drag_started() {
-            desk.ask(Command::MoveLane { key: lane.key, frequency_hz: stack.gain.x.value(x), gesture: drag.gesture });
-        }
+        let x = drag.follow(pointer.x, if modifiers.shift { FINE } else { 1.0 });
+        let gesture = drag.gesture;
+        let frequency_hz = snapped(stack, x, modifiers, lane, desk);
+        desk.ask(Command::MoveLane { key: lane.key, frequency_hz, gesture });
     }
     if response.drag_stopped() {
         desk.view.drag = None;
     }
 }
 
-/// The position, or that of a landmark very near to it; not with Shift or Alt.
-fn snapped(stack: &Stack, x: f32, modifiers: Modifiers, desk: &Desk<'_>) -> f32 {
+/// The frequency at a position, or that of a landmark or a lane of the same kind very near to it; not with Shift or Alt [Hz].
+fn snapped(stack: &Stack, x: f32, modifiers: Modifiers, lane: &Lane, desk: &Desk<'_>) -> f64 {
+    let axis = stack.gain.x;
+    if modifiers.shift || modifiers.alt {
+        return axis.value(x);
+    }
     let detail = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok());
-    let Some(detail) = detail.filter(|_| !modifiers.shift && !modifiers.alt) else { return x };
-    let places = detail.landmarks.iter().map(|landmark| stack.gain.x.at(landmark.frequency_hz));
-    places.filter(|place| (place - x).abs() < SNAP).fold(x, |_, place| place)
+    let landmarks = detail.into_iter().flat_map(|detail| &detail.landmarks).map(|landmark| landmark.frequency_hz);
+    let alike = |other: &&Lane| other.kind == lane.kind && other.key != lane.key && !desk.session.tied(lane.kind);
+    let lanes = desk.session.lanes().iter().filter(alike).map(|other| other.frequency_hz);
+    let apart = |hz: f64| (axis.at(hz) - x).abs();
+    let near = landmarks.chain(lanes).filter(|hz| apart(*hz) < SNAP);
+    near.min_by(|one, other| apart(*one).total_cmp(&apart(*other))).unwrap_or_else(|| axis.value(x))
 }
 
 /// Arrow keys move, Enter types. A run of keys on one handle is one step of undo.
@@ -230,7 +262,7 @@ fn keys(ui: &Ui, lane: &Lane, response: &Response, desk: &mut Desk<'_>) {
     let filter = EventFilter { horizontal_arrows: true, ..EventFilter::default() };
     ui.memory_mut(|memory| memory.set_focus_lock_filter(response.id, filter));
     let mut steps = 0.0;
-    let mut typing = false;
+    let (mut typing, mut home) = (false, false);
     ui.input_mut(|input| {
         for (key, way) in [(Key::ArrowRight, 1.0), (Key::ArrowLeft, -1.0)] {
             steps += way * input.count_and_consume_key(Modifiers::NONE, key) as f64;
@@ -239,7 +271,11 @@ fn keys(ui: &Ui, lane: &Lane, response: &Response, desk: &mut Desk<'_>) {
         steps += input.num_accesskit_action_requests(response.id, egui::accesskit::Action::Increment) as f64;
         steps -= input.num_accesskit_action_requests(response.id, egui::accesskit::Action::Decrement) as f64;
         typing = input.consume_key(Modifiers::NONE, Key::Enter);
+        home = input.consume_key(Modifiers::NONE, Key::Home);
     });
+    if home {
+        desk.ask(Command::ReturnLane(lane.key));
+    }
     if steps != 0.0 {
         desk.ask(Command::MoveLane {
             key: lane.key,
@@ -257,23 +293,17 @@ fn begin_typing(lane: &Lane, desk: &mut Desk<'_>) {
         Some(Typing { lane: lane.key, text: quantity::print(lane.frequency_hz, Unit::Hertz), error: None });
 }
 
-/// The number beside the handle; pressed, it is typed. While the handle is in use it also says what the parts become.
-fn value_ui(ui: &mut Ui, stack: &Stack, lane: &Lane, handle: (Pos2, bool), desk: &mut Desk<'_>) {
-    let (at, active) = handle;
+/// The number beside the handle; pressed, it is typed. Gives back where it stands.
+fn value_ui(ui: &mut Ui, stack: &Stack, lane: &Lane, at: Pos2, desk: &mut Desk<'_>) -> Rect {
     let palette = palette(ui);
-    let plot = stack.gain.rect;
-    let on_left = at.x > plot.center().x;
+    let on_left = at.x > stack.gain.rect.center().x;
     let way = if on_left { -1.0 } else { 1.0 };
     let align = if on_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
     let start = at + vec2(way * 15.0, 0.0);
     if desk.view.typing.as_ref().is_some_and(|typing| typing.lane == lane.key) {
-        typing_ui(
-            ui,
-            Rect::from_min_size(start - vec2(if on_left { 92.0 } else { 0.0 }, 10.5), vec2(92.0, 21.0)),
-            lane,
-            desk,
-        );
-        return;
+        let rect = Rect::from_min_size(start - vec2(if on_left { 92.0 } else { 0.0 }, 10.5), vec2(92.0, 21.0));
+        typing_ui(ui, rect, lane, desk);
+        return rect;
     }
     let painter = ui.painter().clone();
     let text = quantity::print_digits(lane.frequency_hz, Unit::Hertz, 3);
@@ -289,28 +319,7 @@ fn value_ui(ui: &mut Ui, stack: &Stack, lane: &Lane, handle: (Pos2, bool), desk:
     if response.on_hover_text("Press to type a frequency.").clicked() {
         begin_typing(lane, desk);
     }
-    if active {
-        let at = if on_left { rect.left_center() } else { rect.right_center() } + vec2(way * 10.0, 0.0);
-        let galley = painter.layout_no_wrap(parts_text(lane, desk), theme::small(), palette.weak);
-        let ground = align.anchor_size(at, galley.size());
-        if !galley.is_empty() && plot.x_range().contains(ground.left()) && plot.x_range().contains(ground.right()) {
-            painter.rect_filled(ground.expand2(vec2(3.0, 1.0)), 3.0, palette.canvas);
-            painter.galley(ground.min, galley, palette.weak);
-        }
-    }
-}
-
-/// What the parts of a lane are.
-fn parts_text(lane: &Lane, desk: &Desk<'_>) -> String {
-    let design = desk.session.design();
-    let entry = |path: &str| crate::compensator::ENTRIES.iter().find(|entry| entry.path == path);
-    let part = |path: &&str| {
-        let entry = entry(path)?;
-        let value = design.values.get_or_default(entry)?;
-        Some(format!("{} {}", super::parts::short_name(entry), quantity::print_digits(value, entry.unit, 3)))
-    };
-    let words: Vec<String> = lane.parts.iter().filter_map(part).collect();
-    words.join("   ")
+    rect
 }
 
 /// The field a lane's frequency is typed into.

@@ -108,7 +108,8 @@ fn term(row: &LedgerRow) -> &'static str {
 }
 
 fn sum_ui(ui: &mut Ui, margin_deg: f64, x: &Axis, palette: &Palette) {
-    let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), ROW + 2.0), Sense::hover());
+    let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), ROW + 2.0), Sense::hover());
+    response.widget_info(|| WidgetInfo::labeled(Role::Label, true, format!("phase margin: {}", signed(margin_deg))));
     let painter = ui.painter();
     painter.hline(rect.x_range(), rect.top() + 0.5, Stroke::new(1.0, palette.hairline));
     painter.text(rect.left_center(), Align2::LEFT_CENTER, "phase margin", theme::strong(11.5), palette.ink);

@@ -32,12 +32,15 @@ pub(super) fn parts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
     ui.add_space(3.0);
     round_ui(ui, desk);
-    egui::CollapsingHeader::new(RichText::new("Divider, amplifier, anchor").color(palette(ui).weak))
+    ui.add_space(3.0);
+    super::goal::goal_ui(ui, desk);
+    let header = egui::CollapsingHeader::new(RichText::new("Divider, amplifier, anchor").color(palette(ui).weak))
         .id_salt("compensator entries")
         .open(sought(desk).then_some(true))
         .show_unindented(ui, |ui| {
             form::section_ui(ui, "compensator", |path| !is_part(path) && !in_heading(path), desk);
         });
+    super::legend::focus_ring(ui, &header.header_response);
 }
 
 /// True when something leads to an entry below the fold.

@@ -58,7 +58,12 @@ impl App {
             Command::Export(_) | Command::ExportPath { .. } | Command::CopyParts | Command::CopyMargins => {
                 self.perform_export(command, ctx);
             }
-            edit if edit.edits() => self.perform_on_design(edit),
+            Command::ReturnLane(key) => self.return_lane(key),
+            Command::Place(method) => self.place(method),
+            edit if edit.edits() => {
+                self.view.goal.said = None;
+                self.perform_on_design(edit);
+            }
             other => self.perform_on_view(&other, ctx),
         }
     }
@@ -310,7 +315,10 @@ impl App {
             Command::PreviousCondition => self.session.step_condition(8),
             Command::Toggle(curve) => view.toggle(*curve),
             Command::ToggleBand => view.band = !view.band,
+            Command::Tie(kind) => self.session.tie(*kind, !self.session.tied(*kind)),
             Command::WholeRange => view.range_hz = None,
+            Command::Zoom(zoom) => self.zoom(*zoom),
+            Command::Pan(pan) => self.pan(*pan),
             Command::Hold => self.session.hold(),
             Command::CompareWith(number) => self.session.compare_with(*number),
             Command::DropTry(number) => self.session.drop_try(*number),

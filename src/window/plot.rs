@@ -4,6 +4,7 @@ use eframe::egui::{Align2, Color32, FontId, Mesh, Painter, Pos2, Rect, Shape, St
 
 use super::axis::{Axis, DecadeLine, decade_lines};
 use super::theme::{self, LineStyle, Palette};
+use super::thin::thin;
 
 /// A rectangle of the screen with an axis along each side.
 #[derive(Clone, Copy, Debug)]
@@ -63,18 +64,16 @@ impl Plot {
     /// A curve through points whose x are in the axis' own measure. Values that are not finite break it.
     pub(super) fn curve(&self, painter: &Painter, inner_x: &[f64], y: &[f64], pen: Pen) {
         let painter = painter.with_clip_rect(self.rect.expand(0.5));
+        let column = 1.0 / painter.pixels_per_point();
         let mut run: Vec<Pos2> = Vec::with_capacity(inner_x.len().min(4096));
-        let mut column = Column::default();
         for (x, y) in inner_x.iter().zip(y) {
-            if !y.is_finite() {
-                column.flush(&mut run);
-                stroke(&painter, std::mem::take(&mut run), pen);
-                continue;
+            if y.is_finite() {
+                run.push(pos2(self.x.at_inner(*x), self.y.at(*y)));
+            } else {
+                stroke(&painter, thin(std::mem::take(&mut run), column), pen);
             }
-            column.take(pos2(self.x.at_inner(*x), self.y.at(*y)), &mut run);
         }
-        column.flush(&mut run);
-        stroke(&painter, run, pen);
+        stroke(&painter, thin(run, column), pen);
     }
 
     /// The area between two curves whose x are in the axis' own measure.
@@ -93,43 +92,6 @@ impl Plot {
             }
         }
         painter.add(Shape::mesh(mesh));
-    }
-}
-
-/// Points that fall into one column of pixels: only the first, the extremes and the last are drawn.
-#[derive(Debug, Default)]
-struct Column {
-    points: Option<[Pos2; 4]>,
-}
-
-impl Column {
-    fn take(&mut self, point: Pos2, run: &mut Vec<Pos2>) {
-        match &mut self.points {
-            Some([first, least, greatest, last]) if (point.x - first.x).abs() < 0.5 => {
-                if point.y < least.y {
-                    *least = point;
-                }
-                if point.y > greatest.y {
-                    *greatest = point;
-                }
-                *last = point;
-            }
-            _ => {
-                self.flush(run);
-                self.points = Some([point; 4]);
-            }
-        }
-    }
-
-    fn flush(&mut self, run: &mut Vec<Pos2>) {
-        if let Some([first, least, greatest, last]) = self.points.take() {
-            let (one, two) = if least.x <= greatest.x { (least, greatest) } else { (greatest, least) };
-            for point in [first, one, two, last] {
-                if run.last() != Some(&point) {
-                    run.push(point);
-                }
-            }
-        }
     }
 }
 

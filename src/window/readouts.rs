@@ -82,7 +82,7 @@ fn shown_column(rect: Rect) -> f32 {
 
 fn value_text(readout: &Readout, analysis: &Analysis) -> String {
     match readout.value {
-        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        Some(value) => readout.said(trimmed(value, readout.unit), 3),
         None if no_step(readout, analysis) => "no step".to_owned(),
         None => readout.absent.to_owned(),
     }
@@ -106,7 +106,7 @@ fn trimmed(value: f64, unit: Unit) -> f64 {
 fn worst_value(readout: &Readout, analysis: &Analysis) -> Option<String> {
     let worst = readout.worst.as_ref().filter(|_| !no_step(readout, analysis))?;
     Some(match worst.value {
-        Some(value) => quantity::print_digits(trimmed(value, readout.unit), readout.unit, 3),
+        Some(value) => readout.said(trimmed(value, readout.unit), 3),
         None => match analysis.conditions.get(worst.index).map(|result| &result.outcome) {
             Some(Err(_)) => "no result".to_owned(),
             Some(Ok(summary)) if !summary.loop_gain.stable() => "unstable".to_owned(),
@@ -171,7 +171,10 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     let name = painter.text(at, Align2::LEFT_TOP, readout.name, look.name.clone(), palette.weak);
     let value = value_text(readout, analysis);
     let at = rect.left_top() + vec2(0.0, look.tops.0);
-    let shown = painter.text(at, Align2::LEFT_TOP, &value, look.value.clone(), ink(readout, analysis, palette));
+    // Words stand smaller than numbers, or they would run into the requirement.
+    let words = readout.value.is_none_or(|value| value == 0.0 && readout.at_zero.is_some());
+    let (at, font) = if words { (at + vec2(0.0, 5.0), theme::strong(13.0)) } else { (at, look.value.clone()) };
+    let shown = painter.text(at, Align2::LEFT_TOP, &value, font, ink(readout, analysis, palette));
     if let Some(worst) = worst_text(readout, analysis) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };

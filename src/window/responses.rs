@@ -19,6 +19,7 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let frame = steps::frame_of(rect);
     let detail = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok());
     let Some(detail) = detail else {
+        desk.view.cursor_below_hz = None;
         steps::empty(ui, frame, "No response at this condition.", palette);
         return;
     };
@@ -60,12 +61,31 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         peak(&painter, &plot, curves, palette);
     }
     read(ui, &plot, &Legend::new(which, (closed, open, unit), &beside, palette), desk, palette);
+    announce(ui, &plot, (closed, unit), desk);
     if !detail.loop_gain.stable() {
         let at = plot.rect.center_bottom() - vec2(0.0, 14.0);
         let colours = (palette.problem, palette.canvas);
         plot::tag(ui.painter(), at, Align2::CENTER_CENTER, "the closed loop is not stable", theme::small(), colours);
     }
 }
+
+/// Tells screen readers what the plot shows: its greatest value.
+fn announce(ui: &Ui, plot: &Plot, shown: (&[f64], Unit), desk: &Desk<'_>) {
+    let (closed, unit) = shown;
+    let name = NAMES.iter().find(|(which, ..)| *which == desk.view.closed_loop).map_or("", |(_, name, ..)| name);
+    let greatest = closed.iter().copied().filter(|value| value.is_finite()).fold(f64::NEG_INFINITY, f64::max);
+    let text = format!("{name} plot: at most {}", quantity::print_digits(greatest, unit, 3));
+    let response = ui.interact(plot.rect, ui.scope_id().with("closed-loop plot"), egui::Sense::hover());
+    response.widget_info(|| egui::WidgetInfo::labeled(egui::Role::Image, true, &text));
+}
+
+/// The closed-loop responses with their names, long and short, and the terms that explain them.
+const NAMES: [(ClosedLoop, &str, &str, &str); 4] = [
+    (ClosedLoop::Impedance, "Output impedance", "Impedance", "output-impedance"),
+    (ClosedLoop::Line, "Line to output", "Line", "line-to-output"),
+    (ClosedLoop::Reference, "Following", "Following", "following"),
+    (ClosedLoop::Input, "Input impedance", "Input", "input-impedance"),
+];
 
 fn closed_pen(palette: &Palette) -> Pen {
     Pen { colour: palette.loop_gain, width: theme::CURVE, style: LineStyle::Solid }
@@ -89,18 +109,15 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let mut row =
         ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     row.spacing_mut().item_spacing.x = 10.0;
-    let names = [
-        (ClosedLoop::Impedance, "Output impedance", "Impedance", "output-impedance"),
-        (ClosedLoop::Line, "Line to output", "Line", "line-to-output"),
-        (ClosedLoop::Reference, "Following", "Following", "following"),
-    ];
-    // The fourth is there only with an input filter, or while it is still looked at.
-    let input = (ClosedLoop::Input, "Input impedance", "Input", "input-impedance");
+    // The last is there only with an input filter, or while it is still looked at.
     let filtered =
         desk.session.analysis().and_then(|a| a.shown.as_ref().ok()).is_some_and(|d| d.input_filter.is_some());
-    let fourth = (filtered || desk.view.closed_loop == ClosedLoop::Input).then_some(input);
+    let with_input = filtered || desk.view.closed_loop == ClosedLoop::Input;
     let narrow = inner.width() < steps::NARROW;
-    for (closed_loop, name, short, term) in names.into_iter().chain(fourth) {
+    for (closed_loop, name, short, term) in NAMES {
+        if closed_loop == ClosedLoop::Input && !with_input {
+            continue;
+        }
         let chosen = desk.view.closed_loop == closed_loop;
         if steps::tab_ui(&mut row, (name, if narrow { short } else { name }), term, chosen) {
             desk.view.closed_loop = closed_loop;
@@ -180,12 +197,11 @@ fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette
         quantity::print_digits(*ohm, Unit::Ohm, 3),
         quantity::print_digits(*frequency_hz, Unit::Hertz, 3)
     );
-    // At the right of the peak wherever the number fits there: the names of the curves stand at the left.
-    let at_left = at.x + 140.0 > plot.rect.right();
-    let align = if at_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
-    let x = if at_left { at.x - 10.0 } else { at.x + 10.0 };
+    // Above the peak and at its right, pushed back to the left as far as the plot makes it: the closed-loop curve lies below.
+    let at = at + vec2(6.0, if at.y - plot.rect.top() > 40.0 { -13.0 } else { 15.0 });
     let ground = palette.canvas.gamma_multiply(0.8);
-    plot::tag(painter, pos2(x, at.y - 2.0), align, &text, theme::strong(12.0), (palette.good, ground));
+    let clipped = painter.with_clip_rect(plot.rect);
+    plot::tag(&clipped, at, Align2::LEFT_CENTER, &text, theme::strong(12.0), (palette.good, ground));
 }
 
 /// Draws the least margin between filter and converter.
@@ -265,7 +281,10 @@ fn read(ui: &Ui, plot: &Plot, legend: &Legend<'_>, desk: &mut Desk<'_>, palette:
         super::explain::explained(ui, response, term, super::explain::nothing);
         y += 15.0;
     }
-    if let Some(at) = pointer {
-        desk.view.cursor_hz = Some(plot.x.value(at.x));
+    let below = pointer.map(|at| plot.x.value(at.x));
+    if below != desk.view.cursor_below_hz {
+        // The plots above are already drawn; they follow in the next frame.
+        desk.view.cursor_below_hz = below;
+        ui.ctx().request_repaint();
     }
 }

@@ -13,6 +13,7 @@ use eframe::egui::{ViewportBuilder, pos2, vec2};
 
 use super::app::App;
 use super::keep::{DataFolder, load_settings};
+use super::measure::Measurement;
 use crate::design::Design;
 
 /// Why the window could not be opened or went away.
@@ -73,11 +74,11 @@ const KEPT: &str = "Unsaved work is in the journal, which the next start offers"
 
 impl std::error::Error for WindowError {}
 
-/// Opens the window on a design and works until it is closed.
+/// Opens the window on a design and works until it is closed, or until it is measured.
 ///
 /// # Errors
 /// When there is no display, a library is missing, or the display has no OpenGL.
-pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
+pub fn run(design: Design, path: Option<PathBuf>, measurement: Option<Measurement>) -> Result<(), WindowError> {
     if !display_named() {
         return Err(WindowError::NoDisplay);
     }
@@ -101,10 +102,14 @@ pub fn run(design: Design, path: Option<PathBuf>) -> Result<(), WindowError> {
     let open = move || {
         let create: eframe::AppCreator<'_> = Box::new(|cc| {
             is_open.store(true, Ordering::Relaxed);
-            Ok(Box::new(match folder {
+            let app = match folder {
                 Some(folder) => App::keeping(&cc.egui_ctx, design, path, folder),
                 None => App::new(&cc.egui_ctx, design, path),
-            }))
+            };
+            Ok(match measurement {
+                Some(measurement) => Box::new(measurement.watch(app)),
+                None => Box::new(app),
+            })
         });
         eframe::run_native("polewright", options, create)
     };

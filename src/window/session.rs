@@ -9,8 +9,9 @@ use std::path::PathBuf;
 use super::drawing::Drawing;
 use super::held::{Held, Tries};
 use super::history::{Gesture, History};
+use super::placing::Hand;
 use crate::analysis::{self, Analysis, Level, Request, Shown};
-use crate::compensator::{Compensator, Lane, LaneKind};
+use crate::compensator::{Compensator, Lane};
 use crate::design::{CheckedDesign, Design};
 use crate::finding::Finding;
 
@@ -56,7 +57,7 @@ pub struct Session {
     worked_out: Option<(CheckedDesign, Request)>,
     tries: Tries,
     reviewed: Option<usize>,
-    lane_remark: Option<(&'static str, String)>,
+    pub(super) hand: Hand,
 }
 
 /// Decades shown below the switching frequency: from the integrator to where switching hides the rest.
@@ -86,7 +87,7 @@ impl Session {
             worked_out: None,
             tries: Tries::default(),
             reviewed: None,
-            lane_remark: None,
+            hand: Hand::default(),
         }
     }
 
@@ -253,36 +254,6 @@ impl Session {
         self.show(moved(self.shown.0, by_input), moved(self.shown.1, by_load));
     }
 
-    /// Why a lane could not go where it was asked to, or what else had to move.
-    pub fn lane_remark(&self, key: &str) -> Option<&str> {
-        self.lane_remark.as_ref().filter(|(lane, _)| *lane == key).map(|(_, remark)| remark.as_str())
-    }
-
-    /// Moves a lane by finding parts for it, reckoned from where the gesture began.
-    pub fn move_lane(&mut self, key: &'static str, frequency_hz: f64, gesture: Gesture) {
-        let start = self.design_before(gesture);
-        let Ok(compensator) = Compensator::from_values(&start.values, &start.choices) else { return };
-        let placed = compensator.move_lane(key, frequency_hz, &start.locks);
-        let name = self.lanes.iter().find(|lane| lane.key == key).map_or(key, |lane| lane.name);
-        let name = format!("Move {}", super::findings::lower_first(name));
-        self.change(&name, Some(gesture), |document| {
-            placed.compensator.write(&mut document.design.values);
-            // The frequency comes from an axis or a parsed number, so it is finite.
-            let _ = document.design.aims.set(key, frequency_hz);
-        });
-        self.lane_remark = placed.why.map(|why| (key, why));
-    }
-
-    /// Moves the crossover by the gain lane, by as much as the loop gain now differs from one at the wanted frequency [Hz].
-    pub fn move_crossover(&mut self, frequency_hz: f64, gesture: Gesture) {
-        let Some(Ok(detail)) = self.analysis.as_ref().map(|analysis| &analysis.shown) else { return };
-        let gain = super::axis::interpolate(&self.drawing.log_hz, &detail.curves.loop_db, frequency_hz.log10());
-        let lane = self.lanes.iter().find(|lane| lane.kind == LaneKind::Gain);
-        if let (Some(gain_db), Some(lane)) = (gain, lane) {
-            self.move_lane(lane.key, lane.frequency_hz * 10f64.powf(-gain_db / 20.0), gesture);
-        }
-    }
-
     /// The held try that is drawn beside the present design; none beside a held one.
     pub fn held(&self) -> Option<&Held> {
         self.tries.beside().filter(|_| self.reviewed.is_none())
@@ -398,6 +369,7 @@ impl Session {
             Ok(checked) => {
                 let analysis = analysis::analyse(&checked, &request);
                 self.drawing = Drawing::new(&analysis);
+                self.hand.usual_goal = Some(analysis::usual_goal(&checked, &analysis));
                 self.analysis = Some(analysis);
                 self.worked_out = Some((checked, request.clone()));
             }
@@ -408,7 +380,7 @@ impl Session {
     }
 
     /// What an analysis is asked for at present.
-    fn request(&self) -> Request {
+    pub(super) fn request(&self) -> Request {
         let levels = Shown::Levels(self.shown.0, self.shown.1);
         let at = |(input_voltage, load_current)| Shown::At { input_voltage, load_current };
         Request {

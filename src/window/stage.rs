@@ -20,11 +20,12 @@ pub(super) fn stage_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.spacing_mut().item_spacing.y = 2.0;
     for (section, heading, open) in SECTIONS {
         ui.add_space(6.0);
-        CollapsingHeader::new(RichText::new(heading).font(theme::strong(13.5)))
+        let header = CollapsingHeader::new(RichText::new(heading).font(theme::strong(13.5)))
             .id_salt(section)
             .default_open(open || seeks(section, desk))
             .open(seeks(section, desk).then_some(true))
             .show_unindented(ui, |ui| form::section_ui(ui, section, |_| true, desk));
+        super::legend::focus_ring(ui, &header.header_response);
     }
 }
 

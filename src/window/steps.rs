@@ -4,12 +4,12 @@ use eframe::egui::{self, Align2, Rect, RichText, Stroke, Ui, pos2, vec2};
 
 use super::axis::{self, Axis};
 use super::drawing::extent;
-use super::marks;
-use super::plot::{self, Pen, Plot};
+use super::plot::{Pen, Plot};
+use super::step_marks;
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{Desk, Event};
 use crate::analysis::{Step, Steps};
-use crate::quantity::{self, Unit};
+use crate::quantity::Unit;
 
 /// Height of a heading above a plot [points].
 pub(super) const HEADING: f32 = 26.0;
@@ -38,7 +38,7 @@ pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let plot = axes(frame, step, held);
     let opacity = if desk.session.stale() { theme::STALE } else { 1.0 };
     draw(ui, &plot, step, held, (opacity, palette));
-    read(ui, &plot, step, desk.view.event, palette);
+    step_marks::marks_ui(ui, &plot, step, desk.view.event, palette);
 }
 
 /// Plot within a rectangle that has a heading above and labels left and below.
@@ -62,19 +62,21 @@ fn chosen(steps: &Steps, event: Event) -> Option<&Step> {
     }
 }
 
+/// The events with their names, long and short, and the terms that explain them.
+pub(super) const NAMES: [(Event, &str, &str, &str); 3] = [
+    (Event::Load, "Load step", "Load", "load-step"),
+    (Event::Line, "Line step", "Line", "line-step"),
+    (Event::Reference, "Reference step", "Reference", "reference-step"),
+];
+
 fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let inner = rect.with_min_x(rect.left() + theme::GUTTER - 2.0).with_max_x(rect.right() - theme::RIGHT_GUTTER);
     let mut row =
         ui.new_child(egui::UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
     let row = &mut row;
     row.spacing_mut().item_spacing.x = 10.0;
-    let names = [
-        (Event::Load, "Load step", "Load", "load-step"),
-        (Event::Line, "Line step", "Line", "line-step"),
-        (Event::Reference, "Reference step", "Reference", "reference-step"),
-    ];
     let narrow = inner.width() < NARROW;
-    for (event, name, short, term) in names {
+    for (event, name, short, term) in NAMES {
         if tab_ui(row, (name, if narrow { short } else { name }), term, desk.view.event == event) {
             desk.view.event = event;
         }
@@ -154,31 +156,4 @@ fn linear_grid(ui: &Ui, plot: &Plot, units: (Unit, Unit), palette: &Palette) {
         painter.text(at, Align2::CENTER_CENTER, axis::grid_label(value, step, units.0), theme::small(), palette.weak);
     }
     plot.frame(painter, palette);
-}
-
-/// Marks deviation and settling, in words and in the plot.
-fn read(ui: &Ui, plot: &Plot, step: &Step, event: Event, palette: &Palette) {
-    let painter = ui.painter().with_clip_rect(plot.rect);
-    let ground = palette.canvas.gamma_multiply(0.85);
-    if let Some(time) = step.deviation_at_s {
-        let (top, low) = (plot.at(time, step.initial_v), plot.at(time, step.initial_v + step.deviation_v));
-        painter.line_segment([top, low], Stroke::new(1.5, palette.good));
-        let text = quantity::print_digits(step.deviation_v, Unit::Volt, 3);
-        let at = pos2(low.x + 8.0, low.y.clamp(plot.rect.top() + 8.0, plot.rect.bottom() - 9.0));
-        plot::tag(&painter, at, Align2::LEFT_CENTER, &text, theme::strong(12.5), (palette.good, ground));
-    }
-    if let Some(settling_s) = step.settling_s.filter(|time| plot.x.holds(*time)) {
-        marks::tick(&painter, plot.rect, plot.x.at(settling_s), palette.good);
-    }
-    let unit = if event == Event::Load { Unit::Ampere } else { Unit::Volt };
-    let size = quantity::print_digits(step.size, unit, 3);
-    let band = quantity::print_digits(step.band_v, Unit::Volt, 3);
-    let text = match step.settling_s {
-        Some(0.0) => format!("+{size}: stays within ±{band}"),
-        Some(time) => format!("+{size}: settles to ±{band} in {}", quantity::print_digits(time, Unit::Second, 3)),
-        None => format!("+{size}: does not settle to ±{band} here"),
-    };
-    let rises = step.deviation_v > 0.0 || event == Event::Reference;
-    let at = if rises { plot.rect.right_bottom() - vec2(8.0, 11.0) } else { plot.rect.right_top() + vec2(-8.0, 11.0) };
-    plot::tag(&painter, at, Align2::RIGHT_CENTER, &text, theme::small(), (palette.weak, ground));
 }

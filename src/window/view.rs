@@ -5,6 +5,7 @@ use std::path::PathBuf;
 use eframe::egui::{Rect, ThemePreference};
 
 use super::command::{Command, Curve, Exported};
+use super::goal::GoalFields;
 use super::history::Gesture;
 use super::new_design::NewDesign;
 use super::pointed::{Pointed, Pointing};
@@ -70,12 +71,26 @@ pub(super) struct Typing {
 /// A handle being dragged.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Drag {
-    /// Where the handle stood when it was taken [points].
+    /// Where the hand has moved the handle, before snapping [points].
     pub handle_x: f32,
-    /// Where the pointer stood then [points].
+    /// Where the pointer stood at the last move [points].
     pub pointer_x: f32,
     /// The gesture its moves belong to.
     pub gesture: Gesture,
+}
+
+impl Drag {
+    /// Whether the pointer has moved since the last call that followed it.
+    pub(super) fn moved_to(&self, pointer_x: f32) -> bool {
+        (pointer_x - self.pointer_x).abs() > 0.0
+    }
+
+    /// Follows the pointer, fine or not; where the handle is to go [points].
+    pub(super) fn follow(&mut self, pointer_x: f32, share: f32) -> f32 {
+        self.handle_x += (pointer_x - self.pointer_x) * share;
+        self.pointer_x = pointer_x;
+        self.handle_x
+    }
 }
 
 /// Which field is edited, and what stands in it.
@@ -125,8 +140,12 @@ pub(super) struct View {
     pub event: Event,
     /// Closed-loop response shown.
     pub closed_loop: ClosedLoop,
-    /// Frequency under the pointer [Hz].
+    /// Frequency under the pointer, wherever among the plots over frequency it is [Hz].
     pub cursor_hz: Option<f64>,
+    /// Where the keyboard has put the cursor [Hz].
+    pub key_cursor_hz: Option<f64>,
+    /// The same while the pointer is over the closed-loop responses, which are drawn after the others [Hz].
+    pub cursor_below_hz: Option<f64>,
     /// Handle being dragged.
     pub drag: Option<Drag>,
     /// The last gesture given out.
@@ -141,6 +160,8 @@ pub(super) struct View {
     pub schematics: Schematics,
     /// Lane value being typed.
     pub typing: Option<Typing>,
+    /// What placements aim at, as typed.
+    pub goal: GoalFields,
     /// Field being edited.
     pub field: Option<Field>,
     /// Title being edited.
@@ -186,6 +207,8 @@ impl Default for View {
             event: Event::default(),
             closed_loop: ClosedLoop::default(),
             cursor_hz: None,
+            key_cursor_hz: None,
+            cursor_below_hz: None,
             drag: None,
             gesture: Gesture::default(),
             lane: None,
@@ -193,6 +216,7 @@ impl Default for View {
             pointing: Pointing::default(),
             schematics: Schematics::default(),
             typing: None,
+            goal: GoalFields::default(),
             field: None,
             title: None,
             seek: None,
