@@ -302,3 +302,44 @@ fn every_light_load_has_its_point() {
         }
     }
 }
+
+/// Filters without loss change neither the point nor the low-frequency gains of the textbook: more states stand beside the pulse, and
+/// still one current rests.
+#[test]
+fn filters_leave_the_point_and_the_gains() {
+    for (topology, vin, vout) in [("buck", 12.0, 5.0), ("boost", 12.0, 20.0), ("buck-boost", 12.0, 9.0)] {
+        for (load, sense) in [("resistor", "load"), ("current", "bank"), ("power", "load")] {
+            let mut plain = blocking(topology, vin, vout, 0.02, &[]);
+            plain.set_from_text("stage.load", load).expect("an option");
+            let mut filtered = plain.clone();
+            for (path, key) in [
+                ("stage.input-filter", "fitted"),
+                ("stage.output-filter", "fitted"),
+                ("stage.output-filter.sense", sense),
+            ] {
+                filtered.set_from_text(path, key).expect("an option");
+            }
+            for path in ["stage.input-filter.resistance", "stage.output-filter.resistance", "stage.input-capacitor.esr"]
+            {
+                filtered.values.set(path, 0.0).expect("finite");
+            }
+            let [plain, filtered] = [plain, filtered].map(|design| {
+                let stage = checked(&design).stage;
+                model(&stage, vin, 0.02)
+            });
+            assert_eq!(filtered.operating_point.conduction, Conduction::Discontinuous, "{topology}");
+            assert!(filtered.stage.order() >= plain.stage.order() + 4, "{topology}");
+            assert_relative("duty ratio", filtered.operating_point.duty, plain.operating_point.duty, 1e-6);
+            let peak = |m: &AveragedModel| m.operating_point.switched_current.peak;
+            assert_relative("peak", peak(&filtered), peak(&plain), 1e-6);
+            // A lossless buck-boost that feeds a constant power is an integrator.
+            if (topology, load) == ("buck-boost", "power") {
+                continue;
+            }
+            for input in ["duty", "input voltage", "load current"] {
+                let gain = |m: &AveragedModel| zpk(m, "output voltage", input).dc_gain().expect("finite");
+                assert_relative(input, gain(&filtered), gain(&plain), 1e-5);
+            }
+        }
+    }
+}
