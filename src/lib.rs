@@ -8,7 +8,7 @@
 //! * [`circuit`]: ideal parts, netlists, and the state equations of a netlist for one set of closed switches.
 //! * [`converter`]: the power stage: one file per topology, operating point, averaged model, landmarks.
 //! * [`compensator`]: networks around the error amplifier, parts from poles and zeros and back, placement.
-//! * [`control`]: what joins stage and compensator: the modulator and its delay.
+//! * [`control`]: what joins stage and compensator: the control law, from the modulator to current modes, and its delay.
 //! * [`design`]: the document an engineer enters, its check and its file.
 //! * [`analysis`]: a checked design in, every result of its nine conditions out.
 //! * [`figure`]: schematics and plots as neutral strokes, labels and colour roles.

@@ -409,7 +409,7 @@ fn the_documented_fields_are_there() {
     let (_, section) = readme.split_once("### The JSON").expect("a section on the JSON");
     let (section, _) = section.split_once("\n## ").expect("a next section");
     // This one has findings and requirements too.
-    let report = text(&check(&[&sample_path("trail-radio.ron"), "--json"]).stdout).to_owned();
+    let report = text(&check(&[&sample_path("trail-radio.ron"), "--json", "--load-sweep"]).stdout).to_owned();
     let rows = section.lines().filter(|line| line.starts_with("| `"));
     let named = rows.flat_map(|line| line.split('`').skip(1).step_by(2));
     let fields: Vec<&str> =
@@ -463,7 +463,7 @@ fn every_field_of_the_report_is_documented() {
     let words: BTreeSet<&str> = docs.split(|c: char| !(c.is_ascii_alphanumeric() || c == '_')).collect();
     let mut reported = BTreeSet::new();
     for sample in sample::all() {
-        keys(&json(&check(&[&sample_path(sample.file), "--json"]))[0], &mut reported);
+        keys(&json(&check(&[&sample_path(sample.file), "--json", "--load-sweep"]))[0], &mut reported);
     }
     let missing: Vec<&String> = reported.iter().filter(|key| !words.contains(key.as_str())).collect();
     assert!(missing.is_empty(), "{missing:?}");
@@ -585,4 +585,39 @@ fn a_process_killed_while_saving_leaves_the_old_file_or_the_new() {
         let temporary = name.strip_prefix(".polewright-").is_some_and(|rest| rest.strip_suffix(".tmp").is_some());
         assert!(name == "design.ron" || temporary, "{name}");
     }
+}
+
+/// The load sweep: rising loads from a tenth of the least or lower to 1.2 times the greatest, one change of conduction where the
+/// boundary lies, and the same in the text. Without the option there is none.
+#[test]
+fn a_load_sweep_shows_where_conduction_changes() {
+    let path = sample_path("hive-scale.ron");
+    assert!(json(&check(&[&path, "--json"]))[0]["load_sweep"].is_null());
+    let object = json(&check(&[&path, "--json", "--load-sweep"])).remove(0);
+    let lines = object["load_sweep"].as_array().expect("lines");
+    assert_eq!(lines.len(), 3);
+    let design = load(Path::new(&path)).expect("a sample").check().expect("usable");
+    let [least, _, greatest] = design.stage.load_currents;
+    for line in lines {
+        let points = line["points"].as_array().expect("points");
+        let loads: Vec<f64> = points.iter().map(|point| number(&point["load_current"])).collect();
+        assert!(loads.len() >= 25 && loads.windows(2).all(|pair| pair[0] < pair[1]), "{loads:?}");
+        assert!(loads[0] <= 0.1 * least && (loads[loads.len() - 1] / (1.2 * greatest) - 1.0).abs() < 1e-9);
+        let boundary = number(&line["boundary_load"]);
+        for (point, load) in points.iter().zip(&loads) {
+            let wanted = if *load < boundary { "discontinuous" } else { "continuous" };
+            assert!(point["conduction"] == wanted && point["problem"].is_null(), "{point} at a boundary of {boundary}");
+        }
+        assert!(points.iter().any(|point| point["conduction"] == "discontinuous"));
+        // Duty ratio goes over the boundary without a jump, the loop with one.
+        let place = loads.iter().position(|load| *load > boundary).expect("loads above");
+        let pair = |field: &str| [number(&points[place - 1][field]), number(&points[place][field])];
+        let [below, above] = pair("duty");
+        assert!((below / above - 1.0).abs() < 1e-5, "{below} and {above}");
+        let [below, above] = pair("crossover_hz");
+        assert!((below / above - 1.0).abs() > 0.01, "{below} and {above}");
+    }
+    let report = check(&[&path, "--load-sweep"]);
+    let report = text(&report.stdout);
+    assert!(report.contains("Load sweep at least input") && report.contains("discontinuous below"), "{report}");
 }

@@ -632,3 +632,66 @@ fn every_read_out_is_explained_with_its_formula_in_letters_the_font_has() {
         }
     }
 }
+
+/// The part of a schematic whose accessible name begins so.
+fn part<'h>(harness: &'h Harness<'_, App>, begin: &'h str) -> egui_kittest::Node<'h> {
+    harness
+        .get_by(move |node| node.role() == Role::Button && node.label().is_some_and(|label| label.starts_with(begin)))
+}
+
+#[test]
+fn a_part_of_the_schematic_leads_to_its_field() {
+    let mut harness = usual();
+    part(&harness, "Inductor 10 µH").click();
+    harness.run();
+    assert!(field(&harness, "Inductor").is_focused());
+    // By keyboard, and into a section that is folded.
+    harness.get_by_label("Power stage").click();
+    harness.run();
+    assert!(harness.query_by_role_and_label(Role::TextInput, "Inductor").is_none());
+    part(&harness, "Input 12 V").focus();
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+    assert!(field(&harness, "Input, nominal").is_focused());
+    part(&harness, "Reference").click();
+    harness.run();
+    assert!(field(&harness, "Reference voltage").is_focused());
+}
+
+#[test]
+fn a_part_and_what_it_sets_light_each_other() {
+    let mut harness = window(vec2(1280.0, 1300.0), 1.0);
+    let lit = |harness: &mut Harness<'_, App>| harness.state_mut().lit();
+    let has = |names: &[String], begin: &str| names.iter().any(|name| name.starts_with(begin));
+    part(&harness, "R2,").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    for wanted in ["R2,", "first zero", "first pole", "zero ", "pole "] {
+        assert!(has(&names, wanted), "{wanted}: {names:?}");
+    }
+    assert!(!has(&names, "second zero") && !has(&names, "C1,") && !has(&names, "LC resonance"), "{names:?}");
+    harness.get_by_label("second zero").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    for wanted in ["R3,", "C3,", "Upper divider resistor"] {
+        assert!(has(&names, wanted), "{wanted}: {names:?}");
+    }
+    assert!(!has(&names, "R2,"), "{names:?}");
+    part(&harness, "Inductor").hover();
+    harness.run();
+    let names = lit(&mut harness);
+    assert!(has(&names, "LC resonance") && !has(&names, "ESR zero"), "{names:?}");
+    harness.hover_at(pos2(640.0, 3.0));
+    harness.run();
+    assert!(lit(&mut harness).is_empty());
+}
+
+#[test]
+fn schematics_fold() {
+    let mut harness = usual();
+    part(&harness, "Inductor 10 µH");
+    harness.key_press(Key::F8);
+    harness.run();
+    assert_eq!(harness.query_all_by_label("Inductor 10 µH").count(), 0);
+}

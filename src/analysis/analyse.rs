@@ -17,10 +17,11 @@ use super::result::{
     Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, Detail, Level, LoopResult, Steps,
 };
 use super::steps::{load_figures, steps};
-use crate::converter::StageCondition;
+use crate::converter::{Conduction, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{FrequencyResponse, Modes, Verdict, Zpk, margins};
+use crate::quantity::{Unit, print_digits};
 use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// Which condition is shown in full.
@@ -210,6 +211,25 @@ impl Worked {
 }
 
 fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Worked, Finding> {
+    let (model, loop_gain, modes) = loop_at(design, shared, condition)?;
+    let (stage_condition, fs) = (condition.of_stage(&design.stage), design.stage.switching_frequency);
+    let load_step =
+        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
+    let control = control_figures(&model, fs * SEARCH_FROM, fs * SEARCH_TO).map_err(|e| model_finding(&e))?;
+    let right_half_plane_zero_hz = model.right_half_plane_zero_hz(&design.stage).map_err(|e| model_finding(&e))?;
+    let input_filter = filter_interface(design, shared, &stage_condition, &model, &loop_gain)?;
+    Ok(Worked { model, modes, loop_gain, control, load_step, right_half_plane_zero_hz, input_filter })
+}
+
+/// Model, margins and verdict at a condition; and for a stable loop its modes.
+///
+/// # Errors
+/// A finding when the condition cannot be held or its model cannot be solved.
+pub(super) fn loop_at(
+    design: &CheckedDesign,
+    shared: &Shared,
+    condition: &Condition,
+) -> Result<(LoopModel, LoopResult, Option<Modes>), Finding> {
     let stage_condition = condition.of_stage(&design.stage);
     let model = LoopModel::new(&design.stage, shared, &stage_condition)?;
     refuse_out_of_limits(design, &model)?;
@@ -225,12 +245,7 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
         gain_at_switching: model.loop_gain.at_hz(fs).norm(),
     };
-    let load_step =
-        modes.as_ref().map(|modes| load_figures(design, modes)).transpose().map_err(|e| model_finding(&e))?;
-    let control = control_figures(&model, fs * SEARCH_FROM, fs * SEARCH_TO).map_err(|e| model_finding(&e))?;
-    let right_half_plane_zero_hz = model.right_half_plane_zero_hz(&design.stage).map_err(|e| model_finding(&e))?;
-    let input_filter = filter_interface(design, shared, &stage_condition, &model, &loop_gain)?;
-    Ok(Worked { model, modes, loop_gain, control, load_step, right_half_plane_zero_hz, input_filter })
+    Ok((model, loop_gain, modes))
 }
 
 /// The input filter against the converter, where one is fitted.
@@ -250,15 +265,22 @@ fn filter_interface(
 
 /// Conditions that cannot be held: a duty ratio beyond the modulator's limits.
 fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(), Finding> {
-    let point = &model.averaged.operating_point;
+    let duty = model.averaged.operating_point.duty;
     let (least, greatest) = (design.law.duty_least, design.law.duty_greatest);
-    if !(least..=greatest).contains(&point.duty) {
-        let place = if point.duty > greatest { "control.duty.greatest" } else { "control.duty.least" };
-        let message =
-            format!("A duty ratio of {:.3} is needed, and the modulator gives {least} to {greatest}.", point.duty);
-        return Err(Finding::problem(place, message).with_hint("widen the duty limits or the input range"));
+    if (least..=greatest).contains(&duty) {
+        return Ok(());
     }
-    Ok(())
+    let needed = print_digits(duty, Unit::One, 3);
+    let message = format!("A duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}.");
+    let resting = model.averaged.operating_point.conduction == Conduction::Discontinuous;
+    Err(if duty > greatest {
+        Finding::problem("control.duty.greatest", message).with_hint("widen the duty limits or the input range")
+    } else if resting {
+        Finding::problem("control.duty.least", message)
+            .with_hint("widen the duty limits, or raise the least load: below it the modulator skips pulses")
+    } else {
+        Finding::problem("control.duty.least", message).with_hint("widen the duty limits or the input range")
+    })
 }
 
 fn detailed(
@@ -271,7 +293,8 @@ fn detailed(
     let model = &worked.model;
     let stage_condition = condition.of_stage(&design.stage);
     let plain = worked.input_filter.as_ref().map_or(model, |(interface, _)| &interface.without);
-    let landmarks = design.stage.landmarks(&stage_condition, plain.plant.zpk());
+    let conduction = model.averaged.operating_point.conduction;
+    let landmarks = design.stage.landmarks(&stage_condition, conduction, plain.plant.zpk());
     let landmarks = shared.law.landmarks(landmarks, plain.plant.zpk(), &plain.controlled);
     let input_filter =
         worked.input_filter.as_ref().zip(design.stage.input_filter).map(|((interface, result), filter)| {

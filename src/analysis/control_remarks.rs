@@ -177,8 +177,8 @@ fn control_voltage(design: &CheckedDesign, law: &ControlLaw, cases: &[Case<'_>])
     }
     let (least, greatest) = design.compensator.amplifier.output_limits();
     let lowest = cases.iter().min_by(|a, b| needed(a).total_cmp(&needed(b))).filter(|case| needed(case) < least);
-    let beyond = (needed(&most) > greatest).then_some((most, greatest)).or(lowest.map(|case| (case, least)));
-    if let Some((case, limit)) = beyond {
+    let above = (needed(&most) > greatest).then_some((most, greatest, "greatest"));
+    if let Some((case, limit, end)) = above.or(lowest.map(|case| (case, least, "least"))) {
         let message = format!(
             "A control voltage of {} is needed at {}, and the error amplifier stops at {}.",
             volts(needed(&case)),
@@ -189,7 +189,6 @@ fn control_voltage(design: &CheckedDesign, law: &ControlLaw, cases: &[Case<'_>])
             crate::compensator::Amplifier::OpAmp(_) => "compensator.op-amp",
             crate::compensator::Amplifier::Transconductance(_) => "compensator.transconductance",
         };
-        let end = if limit == greatest { "greatest" } else { "least" };
         findings.push(
             Finding::problem(format!("{path}.output-{end}"), message)
                 .with_hint("change the sense gain or the offset, or the amplifier's supply"),

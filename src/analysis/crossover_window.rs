@@ -5,6 +5,7 @@
 //! the amplifier lags its ideal by 10°.
 
 use super::condition::NOMINAL;
+use super::conduction::resonates;
 use super::loop_model::Shared;
 use super::result::{Condition, ConditionResult, CrossoverWindow, WindowEdge};
 use crate::design::{Asked, CheckedDesign, Scope};
@@ -46,7 +47,8 @@ pub(super) fn window(design: &CheckedDesign, shared: &Shared, conditions: &[Cond
 }
 
 fn edge(frequency_hz: f64, cause: String, kind: Cause) -> Option<(WindowEdge, Cause)> {
-    (frequency_hz.is_finite() && frequency_hz > 0.0).then_some((WindowEdge { frequency_hz, cause }, kind))
+    (frequency_hz.is_finite() && frequency_hz > 0.0)
+        .then_some((WindowEdge { frequency_hz, cause, of_resonance: kind == Cause::Resonance }, kind))
 }
 
 fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Option<(WindowEdge, Cause)> {
@@ -57,8 +59,13 @@ fn resonance_edge(design: &CheckedDesign, conditions: &[ConditionResult]) -> Opt
     let resonance = |condition: &Condition| {
         (design.stage.topology().resonance_hz)(&design.stage.textbook(&condition.of_stage(&design.stage)))
     };
-    let highest =
-        conditions.iter().map(|c| (resonance(&c.condition), &c.condition)).max_by(|a, b| a.0.total_cmp(&b.0))?;
+    // In discontinuous conduction there is no resonance.
+    let resonates = |c: &&ConditionResult| c.outcome.as_ref().map_or(true, resonates);
+    let highest = conditions
+        .iter()
+        .filter(resonates)
+        .map(|c| (resonance(&c.condition), &c.condition))
+        .max_by(|a, b| a.0.total_cmp(&b.0))?;
     let cause =
         format!("{ABOVE_RESONANCE} × LC resonance {} at {}", print_digits(highest.0, Unit::Hertz, 3), highest.1.label);
     edge(ABOVE_RESONANCE * highest.0, cause, Cause::Resonance)

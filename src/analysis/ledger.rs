@@ -12,6 +12,15 @@ use std::f64::consts::TAU;
 /// Shares of less than this [°] are taken together in one row.
 const SMALL_DEG: f64 = 0.05;
 
+/// How the rows of the stage begin that belong to a landmark, with its key.
+const LANDMARKS: [(&str, &str); 5] = [
+    ("LC resonance", "lc-resonance"),
+    ("ESR zero", "esr-zero"),
+    ("RHP zero", "right-half-plane-zero"),
+    ("low pole", "low-pole"),
+    ("sampling", "half-switching"),
+];
+
 /// The ledger at a crossover [Hz].
 pub(super) fn ledger(
     model: &LoopModel,
@@ -105,7 +114,6 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
     let f = factor.root.norm() / TAU;
     let at = print_digits(f, Unit::Hertz, 3);
     let near = |key: &str| landmarks.iter().any(|m| m.key == key && (m.frequency_hz / f).ln().abs() < 0.3);
-    let landmark = |key: &str| landmarks.iter().find(|m| m.key == key).map(|m| m.key);
     let right = factor.root.re > 0.0;
     let sampled = model.controlled.sampling.is_some();
     let half =
@@ -134,13 +142,10 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
             (format!("LC resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
+        FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),
         FactorKind::Pole => (format!("stage pole {at}"), LedgerRole::Plant),
     };
-    let landmark = match factor.kind {
-        FactorKind::Zero if right => landmark("right-half-plane-zero"),
-        FactorKind::Zero if factor.root.im == 0.0 && near("esr-zero") => landmark("esr-zero"),
-        FactorKind::Pole if !right && factor.root.im != 0.0 && near("lc-resonance") => landmark("lc-resonance"),
-        _ => None,
-    };
+    let key = LANDMARKS.iter().find(|(words, _)| label.starts_with(words)).map(|(_, key)| *key);
+    let landmark = landmarks.iter().map(|mark| mark.key).find(|own| Some(*own) == key);
     LedgerRow { label, degrees: factor.phase_deg, role, lane: None, landmark }
 }

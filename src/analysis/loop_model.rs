@@ -96,6 +96,9 @@ pub struct LoopModel {
     pub load_beyond: bool,
 }
 
+/// A zero beyond this many switching frequencies is rounding of a path that is none.
+const FARTHEST_ZERO: f64 = 1000.0;
+
 /// Names of the closed loop's inputs.
 pub const EVENTS: [&str; 4] = ["load current", "input voltage", "reference", "output disturbance"];
 /// Column of the load current.
@@ -149,11 +152,12 @@ impl LoopModel {
     /// # Errors
     /// As the reduction to zeros and poles.
     pub fn right_half_plane_zero_hz(&self, stage: &Stage) -> Result<Option<f64>, LinearError> {
-        if self.controlled.inner.is_none() {
-            return Ok(stage.right_half_plane_zero_hz(self.plant.zpk()));
-        }
-        let vout_from_duty = Zpk::from_state_space(&self.averaged.stage, 0, 0)?;
-        Ok(stage.right_half_plane_zero_hz(&vout_from_duty))
+        let lowest = if self.controlled.inner.is_none() {
+            stage.right_half_plane_zero_hz(self.plant.zpk())
+        } else {
+            stage.right_half_plane_zero_hz(&Zpk::from_state_space(&self.averaged.stage, 0, 0)?)
+        };
+        Ok(lowest.filter(|zero| *zero < FARTHEST_ZERO * stage.switching_frequency))
     }
 
     /// The closed loop, from load current, input voltage, reference and a disturbance of the output voltage to the load's

@@ -5,6 +5,7 @@
 
 mod analyse;
 mod condition;
+mod conduction;
 mod control_figures;
 mod control_remarks;
 mod crossover_window;
@@ -14,6 +15,7 @@ mod filter_remarks;
 mod filter_result;
 mod impedance;
 mod ledger;
+mod load_sweep;
 pub mod loop_model;
 pub mod proposal;
 mod readouts;
@@ -30,6 +32,7 @@ pub use analyse::{Request, Shown, analyse, logarithmic};
 pub use filter_result::{
     Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
 };
+pub use load_sweep::{LoadSweep, LoadSweepFigures, LoadSweepLine, LoadSweepPoint, SWEEP_POINTS, load_sweep};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, CrossoverWindow, Curves, Detail,
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,

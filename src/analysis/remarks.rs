@@ -1,11 +1,12 @@
 //! Remarks about the results: what makes averaged numbers doubtful, what misses a requirement, what common practice says.
 
 use super::condition::NOMINAL;
+use super::conduction::{discontinuous, resonates, step_leaves_mode};
 use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
 use super::filter_remarks::filter_remarks;
 use super::loop_model::Shared;
-use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict};
+use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict, WindowEdge};
 use super::stability_remarks::{conditionally_stable, unstable, what_if_unstable};
 use crate::compensator::Amplifier;
 use crate::converter::LoadKind;
@@ -42,6 +43,8 @@ pub(super) fn remarks(
     findings.extend(step_leaves_limits(design, detail));
     findings.extend(window_remarks(conditions, window));
     findings.extend(model_limits(design));
+    findings.extend(discontinuous(design, conditions));
+    findings.extend(step_leaves_mode(design, detail));
     findings.sort_by_key(|f| match f.severity {
         Severity::Problem => 0,
         Severity::Notice => 1,
@@ -187,7 +190,10 @@ fn window_remarks(conditions: &[ConditionResult], window: &CrossoverWindow) -> V
             ),
         ));
     }
-    if let Some(lower) = window.lower.as_ref().filter(|e| crossover < e.frequency_hz) {
+    // Where the current rests there is no resonance to stay above.
+    let resonates = conditions.get(NOMINAL).and_then(|c| c.outcome.as_ref().ok()).is_some_and(resonates);
+    let holds = |e: &&WindowEdge| crossover < e.frequency_hz && (resonates || !e.of_resonance);
+    if let Some(lower) = window.lower.as_ref().filter(holds) {
         let edge = print(lower.frequency_hz, Unit::Hertz);
         findings.push(Finding::note(
             "",

@@ -365,6 +365,8 @@ pub struct WindowEdge {
     pub frequency_hz: f64,
     /// What sets it: "2 × LC resonance at greatest input 16 V, ...".
     pub cause: String,
+    /// Whether an LC resonance sets it, which conditions in discontinuous conduction do not have.
+    pub of_resonance: bool,
 }
 
 /// The band of crossover frequencies the stage allows.
@@ -400,6 +402,14 @@ pub struct Analysis {
 }
 
 impl Analysis {
+    /// The condition shown with its conduction mode: "nominal input 12 V, nominal load 50 mA, discontinuous conduction".
+    pub fn place(&self) -> String {
+        match &self.shown {
+            Ok(detail) => format!("{}, {} conduction", self.condition.label, detail.operating_point.conduction.word()),
+            Err(_) => self.condition.label.clone(),
+        }
+    }
+
     /// True when every stated requirement is met.
     pub fn all_met(&self) -> bool {
         self.requirements.iter().all(|requirement| requirement.met)

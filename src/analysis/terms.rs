@@ -103,6 +103,18 @@ pub static TERMS: &[Term] = &[
         "f0 = 1 / (2π·√(Le·C)), Le = L of a buck, L/(1 − D)² of a boost or buck-boost",
     ),
     term(
+        "low-pole",
+        "Low pole",
+        "The output bank against load and stage where the inductor is no state of its own: its current rests every period, or a current loop holds it.",
+        "discontinuous: (2 − M)/((1 − M)·2π·R·C) of a buck, (2M − 1)/((M − 1)·2π·R·C) of a boost, 1/(π·R·C) of a buck-boost",
+    ),
+    term(
+        "second-pole",
+        "Second pole",
+        "What is left of the inductor in discontinuous conduction; it lies near or above the switching frequency, D2 being the rectifier's share of the period.",
+        "fs / (π·D2)",
+    ),
+    term(
         "esr-zero",
         "ESR zero",
         "Above it the bank's series resistance bears the ripple: the plant falls by 20 dB per decade less and gains up to 90°.",

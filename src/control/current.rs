@@ -72,14 +72,14 @@ impl CurrentSense {
     ) -> Result<StateSpace, LinearError> {
         let (stage, point) = (&averaged.stage, &averaged.operating_point);
         if point.conduction == Conduction::Discontinuous {
-            return self.from_rest(edge, stage, point, period, delay);
+            return self.started_at_rest(edge, stage, point, period, delay);
         }
         let interval = self.interval(edge, point, period, delay);
         Sampled { sense: self, edge, interval, stage, difference: point.on_slope - point.off_slope }.close()
     }
 
     /// Discontinuous conduction: sensed current, and ramp, against the control voltage, solved for the duty ratio.
-    fn from_rest(
+    fn started_at_rest(
         &self,
         edge: Edge,
         stage: &StateSpace,
@@ -99,9 +99,9 @@ impl CurrentSense {
             return Err(LinearError::AlgebraicLoop);
         }
         let law = StaticLaw {
-            from_states: Some(sensed.states * (-1.0 / sensed.duty)),
-            from_control: 1.0 / (self.ohms * sensed.duty),
-            from_inputs: sensed.inputs.map(|x| -x / sensed.duty),
+            states: Some(sensed.states * (-1.0 / sensed.duty)),
+            control: 1.0 / (self.ohms * sensed.duty),
+            inputs: sensed.inputs.map(|x| -x / sensed.duty),
         };
         law.close(stage)
     }

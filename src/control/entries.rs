@@ -153,8 +153,12 @@ pub fn applies(path: &str, choices: &Choices) -> bool {
         "control.slope.rate" => slope("rate"),
         "control.slope.share" => slope("share"),
         "control.slope.quality" => slope("quality"),
-        "control.sense" | "control.sense.divider" | "control.sense.offset" => programmed,
-        "control.slope" | "control.blanking" | "control.on-time.least" => programmed,
+        "control.sense"
+        | "control.sense.divider"
+        | "control.sense.offset"
+        | "control.slope"
+        | "control.blanking"
+        | "control.on-time.least" => programmed,
         "control.inner.r1" => average && op_amp,
         _ if path.starts_with("control.inner.op-amp.") => average && op_amp,
         _ if path.starts_with("control.inner.transconductance.") => average && !op_amp,

@@ -10,7 +10,7 @@ const READ_OFF: &str = "read off the poles of the derived model";
 
 /// The low pole follows from the output bank and the load.
 fn low_pole_parts(stage: &[Landmark]) -> Vec<String> {
-    let resonance = stage.iter().find(|mark| mark.key == "lc-resonance");
+    let resonance = stage.iter().find(|mark| matches!(mark.key, "lc-resonance" | "low-pole"));
     let capacitances = resonance.into_iter().flat_map(|mark| &mark.parts).filter(|path| path.contains(".bank."));
     capacitances.cloned().chain(["stage.load.nominal".to_owned()]).collect()
 }
@@ -22,7 +22,8 @@ impl ControlLaw {
             return stage;
         }
         let parts = low_pole_parts(&stage);
-        stage.retain(|mark| mark.key != "lc-resonance");
+        // The current loop takes the inductor out of the plant, in either conduction mode.
+        stage.retain(|mark| !matches!(mark.key, "lc-resonance" | "low-pole" | "second-pole"));
         let lowest = plant.poles.iter().filter(|p| p.im == 0.0 && p.re < 0.0).map(|p| -p.re / TAU);
         if let Some(frequency_hz) = lowest.min_by(f64::total_cmp) {
             let low =

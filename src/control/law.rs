@@ -143,9 +143,9 @@ impl ControlLaw {
         match &self.mode {
             Mode::Voltage(ramp) => {
                 let law = StaticLaw {
-                    from_states: None,
-                    from_control: ramp.duty_from_voltage(point.input_voltage),
-                    from_inputs: [ramp.duty_from_input(point.duty, point.input_voltage), 0.0],
+                    states: None,
+                    control: ramp.duty_from_voltage(point.input_voltage),
+                    inputs: [ramp.duty_from_input(point.duty, point.input_voltage), 0.0],
                 };
                 Ok(plain(law.close(&averaged.stage)?, ramp.voltage(point.duty, point.input_voltage), None))
             }

@@ -9,11 +9,11 @@ use nalgebra::{DMatrix, RowDVector};
 #[derive(Clone, Debug)]
 pub(super) struct StaticLaw {
     /// Duty ratio from the stage's states; none for a law that does not look at them.
-    pub(super) from_states: Option<RowDVector<f64>>,
+    pub(super) states: Option<RowDVector<f64>>,
     /// Duty ratio from control voltage [1/V].
-    pub(super) from_control: f64,
+    pub(super) control: f64,
     /// Duty ratio from input voltage [1/V] and load current [1/A].
-    pub(super) from_inputs: [f64; 2],
+    pub(super) inputs: [f64; 2],
 }
 
 impl StaticLaw {
@@ -23,14 +23,14 @@ impl StaticLaw {
     /// [`LinearError::NotFinite`].
     pub(super) fn close(&self, stage: &StateSpace) -> Result<StateSpace, LinearError> {
         let (mut a, mut c) = (stage.a.clone(), stage.c.clone());
-        if let Some(row) = &self.from_states {
+        if let Some(row) = &self.states {
             a += stage.b.column(0) * row;
             c += stage.d.column(0) * row;
         }
         let driven = |m: &DMatrix<f64>| {
             DMatrix::from_fn(m.nrows(), 3, |r, k| match k {
-                0 => m[(r, 0)] * self.from_control,
-                _ => m[(r, k)] + m[(r, 0)] * self.from_inputs[k - 1],
+                0 => m[(r, 0)] * self.control,
+                _ => m[(r, k)] + m[(r, 0)] * self.inputs[k - 1],
             })
         };
         let outputs: Vec<&str> = stage.outputs.iter().map(String::as_str).collect();

@@ -6,8 +6,8 @@
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::{BankInductance, bank_inductance};
-use super::landmark::{Landmark, Textbook, landmarks, right_half_plane_zero_hz};
-use super::operating_point::{NoOperatingPoint, OperatingPoint, Solution};
+use super::landmark::{Landmark, RestingTextbook, Textbook, landmarks, resting_landmarks, right_half_plane_zero_hz};
+use super::operating_point::{Conduction, NoOperatingPoint, OperatingPoint, Solution};
 use super::signals::{INPUTS, OUTPUTS};
 use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding, with_duty};
 use crate::finding::Finding;
@@ -104,9 +104,30 @@ impl Stage {
             .collect()
     }
 
-    /// The landmarks at a condition; `vout_from_duty`, of the stage without its input filter, serves where no textbook form fits.
-    pub fn landmarks(&self, condition: &StageCondition, vout_from_duty: &Zpk) -> Vec<Landmark> {
-        landmarks(self.topology(), &self.textbook(condition), self, vout_from_duty)
+    /// The landmarks at a condition in its conduction mode; `vout_from_duty`, of the stage without its input filter, serves where no
+    /// textbook form fits.
+    pub fn landmarks(&self, condition: &StageCondition, conduction: Conduction, vout_from_duty: &Zpk) -> Vec<Landmark> {
+        let topology = self.topology();
+        match conduction {
+            Conduction::Discontinuous => {
+                resting_landmarks(topology, &self.resting_textbook(condition), self, vout_from_duty)
+            }
+            _ => landmarks(topology, &self.textbook(condition), self, vout_from_duty),
+        }
+    }
+
+    /// The lossless quantities textbook forms of discontinuous conduction are written in.
+    fn resting_textbook(&self, condition: &StageCondition) -> RestingTextbook {
+        let load_resistance = condition.output_voltage / condition.load_current;
+        let conversion = condition.output_voltage / condition.input_voltage;
+        let k = 2.0 * self.inductance * self.switching_frequency / load_resistance;
+        RestingTextbook {
+            duty: (self.topology().resting.duty)(conversion, k),
+            conversion,
+            capacitance: self.output_capacitance(),
+            load_resistance,
+            switching_frequency: self.switching_frequency,
+        }
     }
 
     /// The lossless quantities textbook formulas are written in.

@@ -7,7 +7,7 @@ use super::entries::{BRANCHES, branch_count};
 use super::filters::{
     Canvas, Damping, FilterParts, OutputFilter, draw_input_network, draw_output_filter, input_filter, output_filter,
 };
-use super::landmark::Textbook;
+use super::landmark::{RestingForms, Textbook};
 use super::stage::{LoadKind, Rectifier};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
@@ -35,6 +35,8 @@ pub struct Topology {
     pub right_half_plane_zero_hz: fn(&Textbook) -> Option<f64>,
     /// The formula of the right-half-plane zero, for people.
     pub right_half_plane_zero_formula: &'static str,
+    /// What holds in its place in discontinuous conduction.
+    pub resting: RestingForms,
 }
 
 /// Where an output can stand against the input.
@@ -219,7 +221,7 @@ impl StageDrawing {
         for k in 0..self.options.branches {
             let part = draw_branch(&mut self.netlist, k, (plus, minus), self.options.branch_inductance[k]);
             self.branches.push(part);
-            self.sketch.part(plus, minus, drawn_branch(k));
+            self.sketch.part(plus, minus, drawn_branch(k, self.options.branches));
         }
         let bank = (plus, minus);
         let (mut plus, mut minus) = bank;
@@ -291,11 +293,13 @@ fn drawn_source() -> Drawn {
 }
 
 /// One branch of the bank: one symbol for all its capacitors, with the ESR of one below.
-fn drawn_branch(k: usize) -> Drawn {
+fn drawn_branch(k: usize, of: usize) -> Drawn {
     let path = |what: &str| format!("stage.bank.{}.{what}", k + 1);
     let (each, count) = (path("capacitance"), path("count"));
     let value = Shows::Count { count: count.clone(), each: each.clone() };
-    Drawn::new(Symbol::Capacitor, format!("Output capacitor {}", k + 1), format!("C{}", k + 1))
+    let number = |one: &str, many: String| if of == 1 { one.to_owned() } else { many };
+    let name = number("Output capacitor", format!("Output capacitor {}", k + 1));
+    Drawn::new(Symbol::Capacitor, name, number("C", format!("C{}", k + 1)))
         .shows(value, &[&each])
         .quiet(&path("esr"))
         .also(&[&path("remaining"), &count, &path("esl")])

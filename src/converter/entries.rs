@@ -142,7 +142,7 @@ pub static ENTRIES: &[Entry] = &[
     ),
     Entry::new(
         "stage.synchronous.resistance",
-        "Synchronous switch resistance",
+        "Rectifier resistance",
         Unit::Ohm,
         Bounds::NonNegative,
         0.012,
@@ -152,7 +152,7 @@ pub static ENTRIES: &[Entry] = &[
     part("stage.bank.1.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 47e-6, CAPACITANCE_HELP),
     part(
         "stage.bank.1.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
@@ -164,7 +164,7 @@ pub static ENTRIES: &[Entry] = &[
     part("stage.bank.2.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 100e-6, CAPACITANCE_HELP),
     part(
         "stage.bank.2.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
@@ -176,7 +176,7 @@ pub static ENTRIES: &[Entry] = &[
     part("stage.bank.3.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 10e-6, CAPACITANCE_HELP),
     part(
         "stage.bank.3.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,
@@ -188,7 +188,7 @@ pub static ENTRIES: &[Entry] = &[
     part("stage.bank.4.capacitance", "Capacitance of one", Unit::Farad, Bounds::Positive, 1e-6, CAPACITANCE_HELP),
     part(
         "stage.bank.4.remaining",
-        "Left at bias and temperature",
+        "Share left at bias",
         Unit::Fraction,
         Bounds::PositiveUpTo(2.0),
         1.0,

@@ -38,7 +38,7 @@ pub use entries::{CHOICES, ENTRIES, applies};
 pub use filter_damping::OptimumDamping;
 pub use filter_values::{InputFilter, SecondStage};
 pub use filters::Damping;
-pub use landmark::{Landmark, Textbook};
+pub use landmark::{Landmark, RestingForms, RestingTextbook, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};

@@ -18,7 +18,8 @@ use super::signals::{INPUTS, OUTPUTS};
 use super::stage::{Intervals, with_duty};
 use crate::circuit::StateEquations;
 use crate::linear::StateSpace;
-use nalgebra::{DMatrix, DVector, RowDVector};
+use nalgebra::allocator::Allocator;
+use nalgebra::{DMatrix, DVector, DefaultAllocator, Dim, OMatrix, RowDVector};
 
 /// The switched current of one period in discontinuous conduction, and the states about it.
 #[derive(Clone, Debug)]
@@ -52,6 +53,29 @@ pub(super) struct Averaged {
 
 /// A pair of matrices that act on states and inputs.
 type Pair = (DMatrix<f64>, DMatrix<f64>);
+
+/// Below this share of the magnitudes it was summed from, an entry counts as cancelled to zero. What is left of it would
+/// be a path from duty ratio to output that does not exist, and zeros of the plant far beyond all frequencies.
+const CANCELLED: f64 = 1e-10;
+
+/// A sum whose cancelled entries are exactly zero.
+fn total<R: Dim, C: Dim, const N: usize>(terms: &[OMatrix<f64, R, C>; N]) -> OMatrix<f64, R, C>
+where
+    DefaultAllocator: Allocator<R, C>,
+{
+    let mut magnitude = terms[0].abs();
+    let mut sum = terms[0].clone();
+    for term in &terms[1..] {
+        sum += term;
+        magnitude += term.abs();
+    }
+    sum.zip_apply(&magnitude, |value, magnitude| {
+        if value.abs() <= CANCELLED * magnitude {
+            *value = 0.0;
+        }
+    });
+    sum
+}
 
 impl Intervals {
     /// The pulse at averaged states and a duty ratio; none where the current would not rise.
@@ -93,18 +117,26 @@ impl Intervals {
     /// The average over the period of what the three intervals make of states and inputs.
     fn average(&self, duty: f64, pulse: &Pulse, [half, second]: &[Derivative; 2], parts: &[Pair; 3]) -> Averaged {
         let [on, off, idle] = parts;
-        let at = |(a, b): &Pair, x: &DVector<f64>| a * x + b * &self.inputs;
-        let (first_value, second_value) = (at(on, &pulse.conducting), at(off, &pulse.conducting));
-        let rest_value = at(idle, &pulse.resting);
+        let v = &self.cell.v;
+        // What an interval makes of its states beyond what the rest makes of them: as changes of the equations, because the
+        // values themselves are nearly alike.
+        let beyond = |(a, b): &Pair| {
+            let (by_states, by_inputs) = (total(&[a.clone(), -&idle.0]), total(&[b.clone(), -&idle.1]));
+            by_states * &pulse.resting + by_inputs * &self.inputs + a * v * pulse.half
+        };
+        let (first, traded) = (beyond(on), beyond(off));
         let rest = 1.0 - duty - pulse.second_duty;
         let during = &on.0 * duty + &off.0 * pulse.second_duty;
-        let lifted = &during * &self.cell.v;
-        let traded = &second_value - &rest_value;
+        let lifted = &during * v;
         Averaged {
-            value: &first_value * duty + &second_value * pulse.second_duty + &rest_value * rest,
-            x: (&during + &idle.0 * rest) * &self.cell.rest + &lifted * &half.x + &traded * &second.x,
-            u: &on.1 * duty + &off.1 * pulse.second_duty + &idle.1 * rest + &lifted * &half.u + &traded * &second.u,
-            duty: first_value - rest_value + lifted * half.duty + traded * second.duty,
+            value: &first * duty + &traded * pulse.second_duty + &idle.0 * &pulse.resting + &idle.1 * &self.inputs,
+            x: total(&[(&during + &idle.0 * rest) * &self.cell.rest, &lifted * &half.x, &traded * &second.x]),
+            u: total(&[
+                &on.1 * duty + &off.1 * pulse.second_duty + &idle.1 * rest,
+                &lifted * &half.u,
+                &traded * &second.u,
+            ]),
+            duty: total(&[first, lifted * half.duty, traded * second.duty]),
         }
     }
 

@@ -5,9 +5,12 @@
 //! charge in either interval is the same). Where the steps fail, the output is bracketed over the duty ratio, each of
 //! its values from a bracket of the second duty ratio, and the steps polish that.
 
+use super::cell::SwitchedCell;
+use super::drawing::LOAD_CURRENT;
 use super::operating_point::Solution;
 use super::pulse::Pulse;
 use super::stage::{Intervals, OutOfReach};
+use crate::circuit::StateEquations;
 use crate::linear::bracketed_root;
 use nalgebra::{DMatrix, DVector, RowDVector};
 
@@ -15,6 +18,11 @@ use nalgebra::{DMatrix, DVector, RowDVector};
 const MOST_STEPS: u32 = 40;
 /// A relative step below this is followed by one more, which reaches the last digits.
 const NEARLY: f64 = 1e-7;
+/// A relative step that keeps this small is the rounding of a current beside the bank's far greater ones: loads of less than a
+/// millionth of the boundary's end there.
+const ROUNDING: f64 = 1e-3;
+/// Steps before that is believed.
+const PATIENCE: u32 = 12;
 /// Points of the scan above the duty ratio of continuous conduction.
 const SCAN: u16 = 24;
 
@@ -40,14 +48,20 @@ impl Intervals {
         let shrink = ((c * &continuous.x)[0] / ripple).sqrt();
         let start = Found { duty: continuous.duty * shrink, ..continuous.clone() };
         self.newton_pulse(start, period, target, row)
-            .map_or_else(|| self.bracket_pulse(continuous.duty, period, target, row), Ok)
+            .map_or_else(|| self.bracket_and_polish(continuous.duty, period, target, row), Ok)
+    }
+
+    fn bracket_and_polish(&self, near: f64, period: f64, target: f64, row: usize) -> Result<Found, OutOfReach> {
+        let found = self.with_resistor().bracket_pulse(near, period, target, row)?;
+        let polished = found.pulse.is_some().then(|| self.newton_pulse(found.clone(), period, target, row)).flatten();
+        Ok(polished.unwrap_or(found))
     }
 
     /// Newton steps on states and duty ratio; none where they leave what can be or do not settle.
     pub(super) fn newton_pulse(&self, start: Found, period: f64, target: f64, row: usize) -> Option<Found> {
         let Found { mut duty, mut x, .. } = start;
         let mut nearly = false;
-        for _ in 0..MOST_STEPS {
+        for count in 0..MOST_STEPS {
             let pulse = self.pulse(period, duty, &x)?;
             let [rates, outputs] = self.pulse_averages(period, duty, &pulse, &[row]);
             let n = x.len();
@@ -78,9 +92,33 @@ impl Intervals {
                     .filter(|p| p.second_duty > 0.0 && duty + p.second_duty <= 1.0 + NEARLY)?;
                 return x.iter().all(|v| v.is_finite()).then_some(Found { duty, x, pulse: Some(pulse) });
             }
-            nearly = whole >= 1.0 && turned.abs() <= NEARLY * duty && change.abs() <= NEARLY * current;
+            let enough = if count < PATIENCE { NEARLY } else { ROUNDING };
+            nearly = whole >= 1.0 && turned.abs() <= enough * duty && change.abs() <= enough * current;
         }
         None
+    }
+
+    /// The stage with a resistor for its load, whose output rises with the duty ratio where that of a tangent may not. Both
+    /// draw the same current at the output wanted.
+    pub(super) fn with_resistor(&self) -> Self {
+        let (row, conductance) = self.to_resistor;
+        let load = |e: &StateEquations| {
+            let b: DVector<f64> = e.b.column(LOAD_CURRENT).into();
+            let d: DVector<f64> = e.d.column(LOAD_CURRENT).into();
+            let share = conductance / (1.0 - d[row] * conductance);
+            let (by_states, by_inputs) = (e.c.row(row) * share, e.d.row(row) * share);
+            StateEquations {
+                a: &e.a + &b * &by_states,
+                b: &e.b + &b * &by_inputs,
+                c: &e.c + &d * &by_states,
+                d: &e.d + &d * &by_inputs,
+                projector: e.projector.clone(),
+            }
+        };
+        let mut inputs = self.inputs.clone();
+        inputs[LOAD_CURRENT] = 0.0;
+        let cell = SwitchedCell { idle: load(&self.cell.idle), ..self.cell.clone() };
+        Intervals { on: load(&self.on), off: load(&self.off), cell, inputs, to_resistor: (row, 0.0) }
     }
 
     /// The lowest duty ratio that gives the output, from brackets.
@@ -94,9 +132,7 @@ impl Intervals {
             if error >= 0.0 {
                 let root = bracketed_root(|d| off(d).unwrap_or(f64::NAN), low, (duty, error), f64::EPSILON * duty);
                 let found = self.held(root, period, row).map(|(_, found)| found);
-                let polished =
-                    found.clone().filter(|f| f.pulse.is_some()).and_then(|f| self.newton_pulse(f, period, target, row));
-                return polished.or(found).ok_or(OutOfReach::Above { greatest: target + best.1, at_duty: best.0 });
+                return found.ok_or(OutOfReach::Above { greatest: target + best.1, at_duty: best.0 });
             }
             low = (duty, error);
             if error > best.1 {

@@ -166,6 +166,8 @@ pub(super) struct Intervals {
     pub(super) cell: SwitchedCell,
     /// Steady inputs: input voltage, load current, diode drop.
     pub(super) inputs: DVector<f64>,
+    /// Row of the load's voltage, and the conductance that makes the load a resistor, its own current left out [S].
+    pub(super) to_resistor: (usize, f64),
 }
 
 impl Stage {
@@ -340,7 +342,14 @@ impl Stage {
         let off = drawn.off.equations(&values)?.over_states_of(&on);
         let idle = drawn.idle.equations(&values)?.over_states_of(&on);
         let cell = SwitchedCell::new(idle, &off, drawn.rows.rectifier_current)?;
-        Ok(Intervals { on: on.independent().0, off, cell, inputs })
+        // Of the load's own −I/V, 0 or I/V.
+        let to_resistor = match self.load {
+            LoadKind::Resistor => 0.0,
+            LoadKind::Current => resistance.recip(),
+            LoadKind::Power => 2.0 * resistance.recip(),
+        };
+        let to_resistor = (drawn.rows.load_voltage, to_resistor);
+        Ok(Intervals { on: on.independent().0, off, cell, inputs, to_resistor })
     }
 }
 

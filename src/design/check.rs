@@ -294,6 +294,55 @@ mod tests {
         }
     }
 
+    /// Wrong input for every entry of the control: named at its place, nothing lost.
+    #[test]
+    fn unusable_control_entries_are_problems_at_their_place() {
+        let peak = [("control.mode", "peak-current")];
+        let lumped = [("control.mode", "valley-current"), ("control.sense", "transconductance")];
+        let rate = [("control.mode", "peak-current"), ("control.slope", "rate")];
+        let share = [("control.mode", "peak-current"), ("control.slope", "share")];
+        let average = [("control.mode", "average-current")];
+        let current = [("control.mode", "average-current"), ("control.inner.amplifier", "transconductance")];
+        for (choices, path, text) in [
+            (&peak[..], "control.sense.gain", "0"),
+            (&peak, "control.sense.gain", "-10m"),
+            (&peak, "control.sense.filter", "-1n"),
+            (&peak, "control.sense.divider", "0"),
+            (&peak, "control.sense.divider", "1.5"),
+            (&peak, "control.sense.offset", "2k"),
+            (&peak, "control.slope.quality", "0"),
+            (&peak, "control.blanking", "-1n"),
+            (&peak, "control.blanking", "4u"),
+            (&peak, "control.on-time.least", "1 ms"),
+            (&peak, "control.clamp", "-1"),
+            (&lumped, "control.sense.transconductance", "0"),
+            (&rate, "control.slope.rate", "-1k"),
+            (&share, "control.slope.share", "-10 %"),
+            (&average, "control.clamp", "0"),
+            (&average, "control.inner.r1", "0"),
+            (&average, "control.inner.r2", "-1k"),
+            (&average, "control.inner.c1", "0"),
+            (&average, "control.inner.c2", "0"),
+            (&average, "control.inner.op-amp.dc-gain", "0.5"),
+            (&average, "control.inner.op-amp.gain-bandwidth", "0"),
+            (&average, "control.inner.output-least", "5"),
+            (&average, "control.ramp.amplitude", "0"),
+            (&current, "control.inner.transconductance.gm", "0"),
+            (&current, "control.inner.transconductance.output-resistance", "0"),
+        ] {
+            let pairs: Vec<_> = choices.iter().copied().chain([(path, text)]).collect();
+            let problem = only_problem(&pairs);
+            assert_eq!(problem.place, path, "{problem}");
+            let mended = {
+                let mut design = set(&pairs);
+                let row = table::entry(path).expect("a row");
+                design.values.set(path, row.default).expect("finite");
+                design
+            };
+            assert!(mended.check().is_ok(), "{path}");
+        }
+    }
+
     #[test]
     fn texts_that_are_no_numbers_change_nothing() {
         let mut design = sample::built_in();

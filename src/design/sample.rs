@@ -54,6 +54,36 @@ static ALL: &[Sample] = &[
         "A buck that feeds a constant-power load through three unlike branches."
     ),
     sample!(
+        "weather-buoy.ron",
+        "Weather buoy",
+        "A buck in peak current mode; at light load its diode lets the current rest."
+    ),
+    sample!(
+        "harbour-light.ron",
+        "Harbour light",
+        "A boost in peak current mode: no LC resonance, but the right-half-plane zero."
+    ),
+    sample!(
+        "winch-buffer.ron",
+        "Winch buffer",
+        "A boost in average current mode, a voltage loop around a current loop."
+    ),
+    sample!(
+        "map-table.ron",
+        "Map table",
+        "A buck in valley current mode, as a data sheet states it: A/V, offset, clamp."
+    ),
+    sample!(
+        "hive-scale.ron",
+        "Hive scale",
+        "A buck with a diode that falls into discontinuous conduction when its radio sleeps."
+    ),
+    sample!(
+        "tide-gauge.ron",
+        "Tide gauge",
+        "A boost whose synchronous switch emulates a diode: both conduction modes in one day's work."
+    ),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."

@@ -38,7 +38,7 @@ pub fn bode(
     let detail = analysis.shown.as_ref().ok()?;
     let mut figure = Figure { size, ..Figure::default() };
     let (gain, phase) = charts(&detail.curves, size)?;
-    heading(&mut figure, title, &format!("Loop gain at {}", analysis.condition.label));
+    heading(&mut figure, title, &format!("Loop gain at {}", analysis.place()));
     if shown.band {
         bands(&mut figure, analysis, (&gain, &phase));
     }

@@ -239,7 +239,9 @@ impl Maker<'_> {
             symbol = symbol.union(Frame::new(-6.5, symbol.top, WINDINGS + 6.5, symbol.bottom));
         }
         let words = &self.words[seat.part];
-        let label = Label::new(words.lines());
+        // Under the rail the words of a chain stand one below the other, so each takes a line less.
+        let under = count > 1 && self.manner != Manner::Beside;
+        let label = Label::new(if under { words.short_lines() } else { words.lines() });
         let (at, align, near) = match self.manner {
             Manner::Beside if second && !winding => {
                 ([symbol.left - BESIDE, centre[1]], (Align::End, Align::Middle), true)

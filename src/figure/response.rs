@@ -52,7 +52,7 @@ pub fn response(
     let curves = &detail.curves;
     let (closed, open, unit) = which.of(curves);
     let mut figure = Figure { size, ..Figure::default() };
-    heading(&mut figure, title, &format!("{} at {}", which.name(), analysis.condition.label));
+    heading(&mut figure, title, &format!("{} at {}", which.name(), analysis.place()));
     let chart = axes(curves, closed, open, unit, size)?;
     chart.decades(&mut figure, true);
     if unit == Unit::Ohm {

@@ -57,7 +57,7 @@ pub fn step(
     let held = held.and_then(|(name, held)| event.of(held).map(|step| (name, step)));
     let mut figure = Figure { size, ..Figure::default() };
     let rise = print_digits(response.size, event.unit(), 3);
-    heading(&mut figure, title, &format!("{}, +{rise}, at {}", event.name(), analysis.condition.label));
+    heading(&mut figure, title, &format!("{}, +{rise}, at {}", event.name(), analysis.place()));
     let chart = axes(response, held.map(|(_, step)| step), size)?;
     let band = (response.final_v - response.band_v, response.final_v + response.band_v);
     chart.area(&mut figure, chart.x.range(), band, Role::Settle);

@@ -77,6 +77,12 @@ impl Words {
         Words { designator: drawn.designator.clone(), quiet: quiet.collect(), value, name }
     }
 
+    /// Designator and value on one line, the rest below.
+    pub(super) fn short_lines(&self) -> Vec<Line> {
+        let quiet = self.quiet.iter().map(|text| Line::quiet(text));
+        std::iter::once(Line::both(&self.designator, &self.value)).chain(quiet).collect()
+    }
+
     /// Designator, value and the rest, each on a line of its own.
     pub(super) fn lines(&self) -> Vec<Line> {
         let quiet = self.quiet.iter().map(|text| Line::quiet(text));

@@ -283,7 +283,21 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
                 (best, best_f) = (square, f);
             }
         }
+        if let Some((square, f)) = self.modulus_before_the_end(squares.len()).filter(|(square, _)| *square < best) {
+            (best, best_f) = (square, f);
+        }
         (best.sqrt(), best_f)
+    }
+
+    /// The minimum of |1 + T|² between the last two of `count` grid points, which no point beyond brackets: there is one where the
+    /// distance falls into that interval and rises out of it.
+    fn modulus_before_the_end(&self, count: usize) -> Option<(f64, f64)> {
+        let (low, high) = (self.frequencies[count.checked_sub(2)?].ln(), self.frequencies[count - 1].ln());
+        let (rising, falling) = (self.distance(high).1, self.distance(low).1);
+        (falling < 0.0 && rising > 0.0).then(|| {
+            let x = bracketed_root(|x| self.distance(x).1, (low, falling), (high, rising), 1e-11);
+            (self.distance(x).0, x.exp())
+        })
     }
 
     /// |1 + T|² on the grid points of the band.
@@ -302,26 +316,27 @@ impl<'a, R: FrequencyResponse> Scan<'a, R> {
         squares
     }
 
+    /// |1 + T|² at ln f, and half its derivative by ln f.
+    fn distance(&self, x: f64) -> (f64, f64) {
+        let point = self.response.log_point(x.exp());
+        let t = point.value();
+        let slope = ((t + 1.0).conj() * t * Complex::new(point.gain_slope, point.phase_slope)).re;
+        let gain = point.ln_gain.clamp(-300.0, 300.0).exp();
+        let half = (0.5 * point.phase_rad).cos();
+        ((1.0 - gain) * (1.0 - gain) + 4.0 * gain * half * half, slope)
+    }
+
     /// The minimum of |1 + T|² around grid point `i`, and where.
     fn refine_modulus(&self, i: usize) -> (f64, f64) {
-        let evaluate = |x: f64| {
-            let point = self.response.log_point(x.exp());
-            let t = point.value();
-            // Half the derivative of |1 + T|² by ln f.
-            let slope = ((t + 1.0).conj() * t * Complex::new(point.gain_slope, point.phase_slope)).re;
-            let gain = point.ln_gain.clamp(-300.0, 300.0).exp();
-            let half = (0.5 * point.phase_rad).cos();
-            ((1.0 - gain) * (1.0 - gain) + 4.0 * gain * half * half, slope)
-        };
         let [low, middle, high] = [i - 1, i, i + 1].map(|k| self.frequencies[k].ln());
-        let (square, at_middle) = evaluate(middle);
+        let (square, at_middle) = self.distance(middle);
         let (low, high) = if at_middle > 0.0 {
-            ((low, evaluate(low).1), (middle, at_middle))
+            ((low, self.distance(low).1), (middle, at_middle))
         } else {
-            ((middle, at_middle), (high, evaluate(high).1))
+            ((middle, at_middle), (high, self.distance(high).1))
         };
-        let x = bracketed_root(|x| evaluate(x).1, low, high, 1e-11);
-        let refined = evaluate(x).0;
+        let x = bracketed_root(|x| self.distance(x).1, low, high, 1e-11);
+        let refined = self.distance(x).0;
         if refined < square { (refined, x.exp()) } else { (square, middle.exp()) }
     }
 }

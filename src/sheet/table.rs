@@ -24,8 +24,7 @@ pub fn parts_list(design: &Design, checked: &CheckedDesign) -> String {
 
 /// Every read-out: at the shown condition, worst of the conditions and where, what is required and whether it is met.
 pub fn margin_table(design: &Design, analysis: &Analysis) -> String {
-    let mut rows =
-        vec![row(&["Quantity", &format!("At {}", analysis.condition.label), "Worst", "At", "Required", "Met"])];
+    let mut rows = vec![row(&["Quantity", &format!("At {}", analysis.place()), "Worst", "At", "Required", "Met"])];
     for readout in &analysis.readouts {
         let here = readout.value.map_or(readout.absent.to_owned(), |value| figure(value, readout));
         let worst = readout.worst.as_ref();

@@ -29,6 +29,8 @@ pub struct CheckRequest {
     pub input_voltage: Option<f64>,
     /// Load current in place of the nominal one [A].
     pub load_current: Option<f64>,
+    /// Whether the load is swept too.
+    pub load_sweep: bool,
     /// Entries set before the check, by path, in the order given.
     pub settings: Vec<(String, String)>,
 }
@@ -78,6 +80,9 @@ struct CheckArguments {
     /// Load current in place of the nominal one, such as 800m.
     #[arg(long, value_name = "CURRENT", value_parser = current, allow_hyphen_values = true)]
     load_current: Option<f64>,
+    /// Sweep the load at three input voltages: duty ratio, conduction, crossover, margins.
+    #[arg(long)]
+    load_sweep: bool,
     /// Set an entry or a choice before the check, such as stage.inductor.inductance=8.2u; may be repeated.
     #[arg(long = "set", value_name = "PATH=VALUE", value_parser = setting)]
     settings: Vec<(String, String)>,
@@ -102,8 +107,8 @@ fn usage(error: &clap::Error) -> Usage {
 
 impl From<CheckArguments> for CheckRequest {
     fn from(arguments: CheckArguments) -> Self {
-        let CheckArguments { files, json, at, input_voltage, load_current, settings } = arguments;
-        Self { files, json, at_hz: at, input_voltage, load_current, settings }
+        let CheckArguments { files, json, at, input_voltage, load_current, load_sweep, settings } = arguments;
+        Self { files, json, at_hz: at, input_voltage, load_current, load_sweep, settings }
     }
 }
 
@@ -147,13 +152,14 @@ mod tests {
 
     #[test]
     fn a_check_is_read_in_engineering_notation() {
-        let line = "polewright check a.ron b.ron --json --at 100,1k,10k --input-voltage 11.5V --load-current 800m \
+        let line = "polewright check a.ron b.ron --json --at 100,1k,10k --input-voltage 11.5V --load-current 800m --load-sweep \
                     --set stage.inductor.inductance=8.2u --set stage.topology=buck";
         let Ok(Command::Check(request)) = read(line) else { panic!("a check") };
         assert_eq!(request.files, [PathBuf::from("a.ron"), PathBuf::from("b.ron")]);
         assert!(request.json);
         assert_eq!(request.at_hz, Some(vec![100.0, 1e3, 1e4]));
         assert_eq!((request.input_voltage, request.load_current), (Some(11.5), Some(0.8)));
+        assert!(request.load_sweep);
         assert_eq!(request.settings[1], ("stage.topology".into(), "buck".into()));
     }
 

@@ -2,7 +2,7 @@
 
 use super::arguments::CheckRequest;
 use super::{json, text};
-use crate::analysis::{Analysis, Level, Request, Shown, analyse};
+use crate::analysis::{Analysis, Level, LoadSweep, Request, SWEEP_POINTS, Shown, analyse, load_sweep};
 use crate::converter::Stage;
 use crate::design::{CheckedDesign, Design, file};
 use crate::finding::Finding;
@@ -57,6 +57,8 @@ pub(super) struct Report {
     pub(super) outcome: Outcome,
     /// Design and results, when the design can be used.
     pub(super) results: Option<(CheckedDesign, Analysis)>,
+    /// The load sweep, where it was asked for and could be computed.
+    pub(super) load_sweep: Option<LoadSweep>,
     /// All findings, the gravest first.
     pub(super) findings: Vec<Finding>,
 }
@@ -87,8 +89,14 @@ pub fn check(request: &CheckRequest, out: &mut impl Write, err: &mut impl Write)
 
 fn report(path: &Path, request: &CheckRequest) -> Report {
     let file = path.display().to_string();
-    let unusable =
-        |title, findings| Report { file: file.clone(), title, outcome: Outcome::Unusable, results: None, findings };
+    let unusable = |title, findings| Report {
+        file: file.clone(),
+        title,
+        outcome: Outcome::Unusable,
+        results: None,
+        load_sweep: None,
+        findings,
+    };
     let mut design = match file::load(path) {
         Ok(design) => design,
         Err(error) => return unusable(None, error.findings()),
@@ -112,7 +120,9 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
     }
     findings.extend(outside(request, &checked.stage));
     let outcome = judge(&analysis);
-    Report { file, title, outcome, results: Some((checked, analysis)), findings }
+    // A compensator that cannot be solved has been told by the analysis.
+    let load_sweep = request.load_sweep.then(|| load_sweep(&checked, SWEEP_POINTS).ok()).flatten();
+    Report { file, title, outcome, results: Some((checked, analysis)), load_sweep, findings }
 }
 
 /// Sets entries by path; every one that is wrong is told.

@@ -25,6 +25,7 @@ struct Object<'a> {
     worst: Vec<Worst<'a>>,
     response: Vec<Response>,
     load_step: Option<LoadStep>,
+    load_sweep: Option<super::sweep::Sweep>,
     requirements: Vec<Requirement<'a>>,
     findings: Vec<FindingRow<'a>>,
 }
@@ -40,6 +41,7 @@ struct Condition<'a> {
 struct OperatingPoint {
     duty: f64,
     conduction: &'static str,
+    second_duty: Option<f64>,
     control_voltage: f64,
     input_current: f64,
     conduction_loss: f64,
@@ -49,7 +51,8 @@ struct OperatingPoint {
 #[derive(Serialize)]
 struct Control {
     mode: &'static str,
-    control_voltage: f64,
+    #[serde(rename = "control_voltage")]
+    voltage: f64,
     clamp: Option<f64>,
     sampling_quality: Option<f64>,
     subharmonic: Option<bool>,
@@ -223,6 +226,7 @@ fn object(report: &Report) -> Object<'_> {
         worst: analysis.map(worst).unwrap_or_default(),
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
+        load_sweep: report.load_sweep.as_ref().map(super::sweep::json),
         requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
         findings: report.findings.iter().map(finding_row).collect(),
     }
@@ -233,6 +237,7 @@ fn operating_point(detail: &Detail) -> OperatingPoint {
     OperatingPoint {
         duty: point.duty,
         conduction: point.conduction.word(),
+        second_duty: point.second_duty,
         control_voltage: detail.control.control_voltage,
         input_current: point.input_current,
         conduction_loss: point.conduction_loss,
@@ -270,7 +275,7 @@ fn control(design: &CheckedDesign, detail: &Detail) -> Control {
     });
     Control {
         mode: design.law.word(),
-        control_voltage: figures.control_voltage,
+        voltage: figures.control_voltage,
         clamp: design.law.clamp,
         sampling_quality: sampling.and_then(|s| s.quality()),
         subharmonic: sampling.map(|s| s.subharmonic()),

@@ -16,7 +16,7 @@
 //! | `status` | `met`, `not met` or `unusable`, as the exit code |
 //! | `title` | title of the design; `null` when the file cannot be read |
 //! | `condition` | `{input_voltage, load_current, label}` of everything below that is not said to be over all conditions |
-//! | `operating_point` | `{duty, conduction, control_voltage, input_current, conduction_loss, boundary_load}`; conduction is `continuous`, `forced continuous` or `discontinuous` |
+//! | `operating_point` | `{duty, conduction, second_duty, control_voltage, input_current, conduction_loss, boundary_load}`; conduction is `continuous`, `forced continuous` or `discontinuous`, and `second_duty` the share of the period in which the rectifier then conducts, else `null` |
 //! | `inductors` | `[{name, average, ripple, peak}]` [A], ripple peak to peak |
 //! | `landmarks` | `[{name, frequency_hz}]`, textbook frequencies of the plant |
 //! | `control` | `{mode, control_voltage, clamp, sampling_quality, subharmonic, slope_factor, fast_multiplier, ramp_v_per_s, ramp_share, boundary_ramp_v_per_s, recommended_ramp_v_per_s, inner_loop}`: the control law at the condition; `sampling_quality` is `null` beyond the subharmonic boundary, all of sampling outside peak and valley current mode in continuous conduction |
@@ -28,12 +28,15 @@
 //! | `worst` | `[{requirement, condition, value}]` over the nine, by key of the read-out |
 //! | `response` | at the frequencies of `--at`, else in 1-2-5 steps from 10 Hz to half the switching frequency: `[{frequency_hz, plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, output_impedance_ohm, output_impedance_deg, line_to_output_db, line_to_output_deg, open_loop_output_impedance_ohm, open_loop_line_to_output_db}]`; plant is control voltage to output voltage with the modulator, compensator is output voltage to control voltage with the inversion taken out |
 //! | `load_step` | `{step_a, deviation_v, settling_s}` |
+//! | `load_sweep` | with `--load-sweep`, else `null`: per input voltage `[{input_voltage, boundary_load, points}]`; conduction is discontinuous below the boundary |
+//! | `load_sweep.points` | `[{load_current, duty, conduction, crossover_hz, phase_margin_deg, gain_margin_db, stable, problem}]`, rising; a point stands on either side of the boundary |
 //! | `requirements` | `[{name, limit, value, met, condition, reason}]`, named by path |
 //! | `findings` | `[{severity, where, message, hint}]`; severity is `note`, `notice` or `problem`, `where` a path, a place in the file or an option of the command line, empty for the whole design |
 
 mod arguments;
 mod check;
 mod json;
+mod sweep;
 mod text;
 
 pub use arguments::{CheckRequest, Command, Usage, parse};

@@ -25,7 +25,7 @@ pub(super) fn write(
     let mut text = heading(report);
     let _ = writeln!(text, "At {}\n", analysis.condition.label);
     if let Ok(detail) = &analysis.shown {
-        operating_point(&mut text, detail);
+        operating_point(&mut text, detail, analysis);
         landmarks(&mut text, detail);
         stability(&mut text, detail);
     }
@@ -35,6 +35,9 @@ pub(super) fn write(
         if response {
             response_table(&mut text, &detail.curves);
         }
+    }
+    if let Some(sweep) = &report.load_sweep {
+        super::sweep::text(&mut text, sweep);
     }
     requirements(&mut text, &analysis.requirements);
     findings(&mut text, &report.findings);
@@ -61,7 +64,7 @@ fn heading(report: &Report) -> String {
 }
 
 /// A name padded to its column; widths are counted in characters, as all that is printed here is one column wide.
-fn padded(text: &str, width: usize) -> String {
+pub(super) fn padded(text: &str, width: usize) -> String {
     let missing = width.saturating_sub(text.chars().count());
     format!("{text}{}", " ".repeat(missing))
 }
@@ -70,12 +73,26 @@ fn row(text: &mut String, name: &str, value: &str) {
     let _ = writeln!(text, "  {}{value}", padded(name, NAMES));
 }
 
-fn operating_point(text: &mut String, detail: &Detail) {
+/// The conduction mode here, and how many of the nine conditions share it where not all do.
+fn conduction(detail: &Detail, analysis: &Analysis) -> String {
+    let mode = detail.operating_point.conduction;
+    let modes = || analysis.conditions.iter().filter_map(|row| row.outcome.as_ref().ok());
+    let alike = modes().filter(|summary| summary.operating_point.conduction == mode).count();
+    if alike == modes().count() {
+        return mode.word().to_owned();
+    }
+    format!("{}; so in {alike} of the nine conditions", mode.word())
+}
+
+fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
     let point = &detail.operating_point;
     let amperes = |value| print(value, Unit::Ampere);
     text.push_str("Operating point\n");
     row(text, "Duty ratio", &print(point.duty, Unit::Fraction));
-    row(text, "Conduction", point.conduction.word());
+    if let Some(second) = point.second_duty {
+        row(text, "Rectifier conducts", &format!("{} of the period", print(second, Unit::Fraction)));
+    }
+    row(text, "Conduction", &conduction(detail, analysis));
     for inductor in &point.inductors {
         let current = &inductor.current;
         let figures = format!(

@@ -84,6 +84,12 @@ impl App {
         self.view.hint
     }
 
+    /// Names of the parts, lanes and landmarks that are lit because of what is pointed at, for tests.
+    pub fn lit(&mut self) -> Vec<String> {
+        let desk = Desk { session: &self.session, kept: &self.kept, view: &mut self.view, send: &mut self.asked };
+        desk.lit()
+    }
+
     /// The message under the bar, if any.
     pub fn message(&self) -> Option<&super::view::Message> {
         self.view.message.as_ref()

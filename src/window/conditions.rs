@@ -10,7 +10,8 @@ use super::explain;
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::what_if;
-use crate::analysis::{Analysis, Condition, ConditionResult, Level, LimitKind};
+use crate::analysis::{Analysis, Condition, ConditionResult, Detail, Level, LimitKind};
+use crate::converter::Conduction;
 use crate::quantity::{self, Unit};
 
 /// The chooser: says which condition is shown; pressed, it opens the map. Wheel and arrow commands step through.
@@ -22,7 +23,11 @@ pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
             format!("What if: {}", analysis.condition.label)
         }
         Some(analysis) if analysis.condition.levels.is_none() => format!("what if {}", short(&analysis.condition)),
-        Some(analysis) if roomy => format!("Shown: {}", analysis.condition.label),
+        Some(analysis) if roomy => {
+            let rests = |d: &Detail| d.operating_point.conduction == Conduction::Discontinuous;
+            let mode = if analysis.shown.as_deref().is_ok_and(rests) { ", discontinuous" } else { "" };
+            format!("Shown: {}{mode}", analysis.condition.label)
+        }
         Some(analysis) => short(&analysis.condition),
         None => format!("Shown: {} input, {} load", input.word(), load.word()),
     };
@@ -157,7 +162,9 @@ fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult,
     painter.text(cell.center() + vec2(0.0, 7.5), Align2::CENTER_CENTER, under, theme::small(), palette.weak);
     super::legend::focus_ring(ui, &response);
     let help = match &result.outcome {
-        Ok(_) => result.condition.label.clone(),
+        Ok(summary) => {
+            format!("{}\n{} conduction", result.condition.label, summary.operating_point.conduction.word())
+        }
         Err(finding) => format!("{}\n{}", result.condition.label, finding.message),
     };
     if response.on_hover_text(help).clicked() {

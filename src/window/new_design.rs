@@ -326,12 +326,8 @@ fn outcome_ui(ui: &mut Ui, proposal: &Proposal) {
 }
 
 /// Groups of assumptions by the first word of their path; what has none belongs to the compensator.
-const GROUPS: [(&str, &str); 4] = [
-    ("stage", "Power stage"),
-    ("control", "Modulator"),
-    ("compensator", "Compensator"),
-    ("requirement", "Requirements"),
-];
+const GROUPS: [(&str, &str); 4] =
+    [("stage", "Power stage"), ("control", "Control"), ("compensator", "Compensator"), ("requirement", "Requirements")];
 
 fn assumptions_ui(ui: &mut Ui, assumptions: &[Assumption]) {
     let palette = palette(ui);

@@ -71,7 +71,7 @@ impl Desk<'_> {
         let has = |path: &str| parts.iter().any(|part| part.as_ref() == path);
         match self.view.pointed {
             Some(Pointed::Part(sheet, index)) => {
-                let place = self.view.schematics.place(sheet, index);
+                let place = self.view.schematics.places(sheet).get(index);
                 place.is_some_and(|place| place.paths.iter().any(|path| has(path)))
             }
             Some(Pointed::Entry(path)) => has(path),
@@ -116,6 +116,27 @@ impl Desk<'_> {
             Some(Pointed::Lane(_) | Pointed::Landmark(_)) => place.paths.iter().any(|path| self.lit_entry(path)),
             None => false,
         }
+    }
+
+    /// Names of all that is lit.
+    pub(super) fn lit(&self) -> Vec<String> {
+        let mut names = Vec::new();
+        for sheet in [Sheet::Stage, Sheet::Compensator] {
+            for (index, place) in self.view.schematics.places(sheet).iter().enumerate() {
+                if self.lit_place(sheet, index, place) {
+                    names.push(place.name.clone());
+                }
+            }
+        }
+        let lanes = self.session.lanes().iter().filter(|lane| self.lit_lane(lane));
+        names.extend(lanes.map(|lane| lane.name.to_owned()));
+        let detail = self.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok());
+        let landmarks = detail.map_or(&[][..], |detail| &detail.landmarks);
+        let landmarks = landmarks.iter().filter(|landmark| self.lit_landmark(landmark));
+        names.extend(landmarks.map(|landmark| landmark.name.to_owned()));
+        let rows = detail.and_then(|detail| detail.ledger.as_ref()).map_or(&[][..], |ledger| &ledger.rows);
+        names.extend(rows.iter().filter(|row| self.lit_row(row)).map(|row| row.label.clone()));
+        names
     }
 
     fn lane(&self, key: &str) -> Option<&Lane> {

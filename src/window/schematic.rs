@@ -20,7 +20,7 @@ use crate::quantity::{self, Entry};
 const LARGEST: f32 = 1.15;
 
 /// The schematics, and what they were worked out for.
-#[derive(Debug)]
+#[derive(Debug, Default)]
 pub(super) struct Schematics {
     folded: bool,
     stage: Kept,
@@ -34,12 +34,6 @@ struct Kept {
     of: Option<(u64, u32)>,
 }
 
-impl Default for Schematics {
-    fn default() -> Self {
-        Schematics { folded: false, stage: Kept::default(), compensator: Kept::default() }
-    }
-}
-
 impl Schematics {
     /// Whether the schematics are shown.
     pub(super) fn shown(&self) -> bool {
@@ -51,11 +45,15 @@ impl Schematics {
         self.folded = !shown;
     }
 
-    /// A part by its number.
-    pub(super) fn place(&self, sheet: Sheet, index: usize) -> Option<&Place> {
+    /// The parts of a schematic.
+    pub(super) fn places(&self, sheet: Sheet) -> &[Place] {
+        &self.figure(sheet).places
+    }
+
+    fn figure(&self, sheet: Sheet) -> &Figure {
         match sheet {
-            Sheet::Stage => self.stage.figure.places.get(index),
-            Sheet::Compensator => self.compensator.figure.places.get(index),
+            Sheet::Stage => &self.stage.figure,
+            Sheet::Compensator => &self.compensator.figure,
         }
     }
 
@@ -111,7 +109,7 @@ pub(super) fn schematic_ui(ui: &mut Ui, sheet: Sheet, desk: &mut Desk<'_>) {
     let middle = rect.min + vec2(((room - width * scale) / 2.0).max(0.0), 0.0);
     let origin = middle.round_to_pixels(ui.pixels_per_point());
     let view = Scale { origin, scale };
-    let count = desk.view.schematics.kept(sheet).figure.places.len();
+    let count = desk.view.schematics.places(sheet).len();
     for index in 0..count {
         part_ui(ui, sheet, index, view, desk);
     }
@@ -133,7 +131,7 @@ impl Scale {
 
 /// One part as a thing to press.
 fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk<'_>) {
-    let Some(place) = desk.view.schematics.place(sheet, index) else { return };
+    let Some(place) = desk.view.schematics.places(sheet).get(index) else { return };
     let rect = Rect::from_two_pos(view.at(place.corners[0]), view.at(place.corners[1])).expand(1.5);
     let response = ui.interact(rect, Id::unique(("part", sheet, index)), Sense::click());
     response.widget_info(|| WidgetInfo::labeled(egui::Role::Button, true, &place.name));
@@ -175,10 +173,7 @@ fn rows(place: &Place, desk: &Desk<'_>) -> Vec<String> {
 /// Paints all marks; those of a part that is lit stand out.
 fn paint(ui: &Ui, sheet: Sheet, view: Scale, desk: &Desk<'_>) {
     let palette = palette(ui);
-    let figure = match sheet {
-        Sheet::Stage => &desk.view.schematics.stage.figure,
-        Sheet::Compensator => &desk.view.schematics.compensator.figure,
-    };
+    let figure = desk.view.schematics.figure(sheet);
     let painter = ui.painter();
     let light = match sheet {
         Sheet::Stage => palette.plant,

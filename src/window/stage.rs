@@ -10,7 +10,7 @@ use super::view::Desk;
 /// Sections of the form: path prefix, heading, whether it stands open at first.
 const SECTIONS: [(&str, &str, bool); 4] = [
     ("stage", "Power stage", true),
-    ("control", "Modulator", true),
+    ("control", "Control", true),
     ("requirement", "Requirements", false),
     ("event", "Steps", false),
 ];

@@ -95,7 +95,7 @@ fn random_design(random: &mut Random) -> Design {
         design.set_from_text(path, random.pick::<&str>(keys)).expect("an option");
     };
     choose(&mut design, "stage.topology", &["buck", "boost", "buck-boost"], random);
-    choose(&mut design, "stage.rectifier", &["diode", "synchronous"], random);
+    choose(&mut design, "stage.rectifier", &["diode", "synchronous", "emulated"], random);
     choose(&mut design, "stage.load", &["resistor", "current", "power"], random);
     choose(&mut design, "stage.input-capacitor", &["none", "fitted"], random);
     choose(&mut design, "stage.bank", &["1", "2", "3", "4"], random);

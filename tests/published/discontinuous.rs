@@ -112,6 +112,12 @@ fn the_boost_plant() {
     assert_relative("low pole", -slow.re / TAU, 113.0, PUBLISHED);
     assert_relative("second pole", -fast.re / TAU, 63.58e3, PUBLISHED);
     assert_relative("RHP zero", zero.re / TAU, 127.3e3, PUBLISHED);
+    let condition = StageCondition { input_voltage: 24.0, load_current: 3.0, output_voltage: 36.0 };
+    let marks = stage.landmarks(&condition, Conduction::Discontinuous, &control);
+    for (key, printed) in [("low-pole", 112.9), ("second-pole", 63.7e3), ("right-half-plane-zero", 127.3e3)] {
+        let mark = marks.iter().find(|mark| mark.key == key).unwrap_or_else(|| panic!("no {key}"));
+        assert_relative(key, mark.frequency_hz, printed, 1e-3);
+    }
 }
 
 /// Conversion ratio, current and corners of a thousand random lossless stages per topology. With K = 2L/(R·T): buck
@@ -121,6 +127,7 @@ fn the_boost_plant() {
 fn lossless_stages() {
     for (topology, seed) in TOPOLOGIES.into_iter().zip(71..) {
         let mut random = Random::new(seed);
+        let mut marked = 0;
         for _ in 0..1000 {
             let (vin, vout) = voltages(&mut random, topology);
             let values = [
@@ -153,8 +160,24 @@ fn lossless_stages() {
             assert_relative("RMS", inductor.rms, peak * (share / 3.0).sqrt(), 1e-6);
             assert_relative("input power", vin * point.input_current, vout * load, 1e-6);
             assert_relative("Gd0", zpk(&model, "output voltage", "duty").dc_gain().expect("finite"), gain, 1e-6);
+            // The corners are the book's where they lie apart: its two poles neglect one another.
+            let control = zpk(&model, "output voltage", "duty");
+            let [slow, fast] = control.poles.as_slice() else { panic!("two poles") };
+            let apart = fast.norm() / slow.norm();
+            let at = StageCondition { load_current: load, ..condition };
+            for mark in stage.landmarks(&at, Conduction::Discontinuous, &control).iter().filter(|_| apart > 1e4) {
+                let wanted = match mark.key {
+                    "low-pole" => slow.norm(),
+                    "second-pole" => fast.norm(),
+                    "right-half-plane-zero" => control.zeros[0].re,
+                    _ => continue,
+                };
+                assert_relative(mark.key, mark.frequency_hz * TAU, wanted, 5e-3);
+                marked += 1;
+            }
             assert_relative("Gg0", zpk(&model, "output voltage", "input voltage").dc_gain().expect("finite"), m, 1e-6);
         }
+        assert!(marked > 200, "{topology}: {marked} landmarks");
     }
 }
 
@@ -257,5 +280,25 @@ fn the_gain_of_a_buck_jumps_at_the_boundary() {
         let d = vout / vin;
         assert_relative("continuous", gain(boundary * (1.0 + 1e-9)), vin, 1e-6);
         assert_relative("discontinuous", gain(boundary * (1.0 - 1e-9)), 2.0 * vin * (1.0 - d) / (2.0 - d), 1e-6);
+    }
+}
+
+/// Every point of continuous conduction whose valley would be below zero has one of discontinuous conduction, down to a millionth of the
+/// boundary's load, and a plant without zeros made of rounding: a buck has none on the right.
+#[test]
+fn every_light_load_has_its_point() {
+    let mut random = Random::new(5);
+    for topology in TOPOLOGIES {
+        for _ in 0..1000 {
+            let stage = checked(&lossy(&mut random, topology)).stage;
+            let vin = stage.input_voltages[0];
+            let condition =
+                StageCondition { input_voltage: vin, load_current: 1.0, output_voltage: stage.output_voltage };
+            let Some(boundary) = stage.boundary_load(&condition) else { continue };
+            let model = model(&stage, vin, boundary * random.log(1e-6, 0.999));
+            assert_eq!(model.operating_point.conduction, Conduction::Discontinuous, "{topology}");
+            let zero = stage.right_half_plane_zero_hz(&zpk(&model, "output voltage", "duty"));
+            assert_eq!(zero.is_some(), topology != "buck", "{topology}: {zero:?}");
+        }
     }
 }

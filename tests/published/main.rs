@@ -6,6 +6,7 @@
 
 mod common;
 mod compensator;
+mod controlled;
 mod cross_checks;
 mod current_mode;
 mod discontinuous;

@@ -15,19 +15,19 @@ fn json(text: &str) -> Value {
     serde_json::from_str(text).expect("valid JSON")
 }
 
-fn list(value: &Value) -> &[Value] {
+pub(crate) fn list(value: &Value) -> &[Value] {
     value.as_array().expect("a list")
 }
 
-fn number(value: &Value) -> f64 {
+pub(crate) fn number(value: &Value) -> f64 {
     value.as_f64().expect("a number")
 }
 
-fn numbers(value: &Value) -> Vec<f64> {
+pub(crate) fn numbers(value: &Value) -> Vec<f64> {
     list(value).iter().map(number).collect()
 }
 
-fn complex(value: &Value) -> Vec<Complex> {
+pub(crate) fn complex(value: &Value) -> Vec<Complex> {
     list(value).iter().map(|pair| Complex::new(number(&pair[0]), number(&pair[1]))).collect()
 }
 
@@ -39,25 +39,30 @@ fn values(value: &Value) -> Vec<(&str, f64)> {
     value.as_object().expect("an object").iter().map(|(k, v)| (k.as_str(), number(v))).collect()
 }
 
-/// The ten designs with what Python found for each.
-fn ten() -> Vec<(Design, Value)> {
-    let content = json(CLOSED_LOOP);
-    let rows = list(&content["designs"]).to_vec();
-    assert_eq!(rows.len(), 10);
-    rows.into_iter()
+/// The designs of a reference with what Python found for each.
+pub(crate) fn designs(text: &str) -> Vec<(Design, Value)> {
+    let content = json(text);
+    list(&content["designs"])
+        .iter()
         .map(|row| {
             let mut design = design(&texts(&row["choices"]), &values(&row["values"]));
             row["title"].as_str().expect("a text").clone_into(&mut design.title);
-            (design, row)
+            (design, row.clone())
         })
         .collect()
+}
+
+fn ten() -> Vec<(Design, Value)> {
+    let found = designs(CLOSED_LOOP);
+    assert_eq!(found.len(), 10);
+    found
 }
 
 fn shown(analysis: Analysis) -> Detail {
     *analysis.shown.unwrap_or_else(|finding| panic!("{finding:?}"))
 }
 
-fn polar(db: f64, deg: f64) -> Complex {
+pub(crate) fn polar(db: f64, deg: f64) -> Complex {
     Complex::from_polar(ratio(db), deg.to_radians())
 }
 
@@ -101,39 +106,49 @@ fn compare_curves(title: &str, curves: &Curves, row: &Value, reference: f64, reg
     }
 }
 
+/// All curves of the nominal condition.
+pub(crate) fn compare_responses(design: &Design, row: &Value) {
+    let frequencies = numbers(&row["frequencies_hz"]);
+    let detail = shown(analysed(design, &frequencies, 10));
+    let regulated = number(&row["regulated_output"]);
+    let reference = design.values.get("compensator.reference").expect("entered");
+    compare_curves(&design.title, &detail.curves, row, reference, regulated);
+}
+
 #[test]
 fn ten_designs_at_sixty_frequencies() {
     for (design, row) in ten() {
-        let frequencies = numbers(&row["frequencies_hz"]);
-        assert_eq!(frequencies.len(), 60);
-        let detail = shown(analysed(&design, &frequencies, 10));
-        let regulated = number(&row["regulated_output"]);
-        let reference = design.values.get("compensator.reference").expect("entered");
-        compare_curves(&design.title, &detail.curves, &row, reference, regulated);
+        assert_eq!(list(&row["frequencies_hz"]).len(), 60);
+        compare_responses(&design, &row);
+    }
+}
+
+/// Operating point and margins of all nine conditions.
+pub(crate) fn compare_conditions(design: &Design, row: &Value) {
+    let analysis = analysed(design, &[1e3], 10);
+    let wanted = list(&row["conditions"]);
+    assert_eq!(analysis.conditions.len(), wanted.len());
+    for (found, wanted) in analysis.conditions.iter().zip(wanted) {
+        let what = |name: &str| format!("{}, {}: {name}", design.title, found.condition.label);
+        let summary = found.outcome.as_ref().unwrap_or_else(|finding| panic!("{finding:?}"));
+        let at = |name: &str| number(&wanted[name]);
+        assert_relative(&what("input voltage"), found.condition.input_voltage, at("input_voltage"), 1e-12);
+        assert_relative(&what("load current"), found.condition.load_current, at("load_current"), 1e-12);
+        let point = &summary.operating_point;
+        assert_relative(&what("duty ratio"), point.duty, at("duty"), 1e-9);
+        assert_relative(&what("input current"), point.input_current, at("input_current"), 1e-8);
+        let inductor = &point.inductors[0].current;
+        assert_relative(&what("inductor current"), inductor.average, at("inductor_current"), 1e-8);
+        // Straight-line ripple from averaged states; the on and off slopes close to well under a percent.
+        assert_relative(&what("inductor ripple"), inductor.ripple, at("inductor_ripple"), 1e-6);
+        compare_margins(&what, &summary.loop_gain, wanted);
     }
 }
 
 #[test]
 fn ten_designs_at_nine_conditions() {
     for (design, row) in ten() {
-        let analysis = analysed(&design, &[1e3], 10);
-        let wanted = list(&row["conditions"]);
-        assert_eq!(analysis.conditions.len(), wanted.len());
-        for (found, wanted) in analysis.conditions.iter().zip(wanted) {
-            let what = |name: &str| format!("{}, {}: {name}", design.title, found.condition.label);
-            let summary = found.outcome.as_ref().unwrap_or_else(|finding| panic!("{finding:?}"));
-            let at = |name: &str| number(&wanted[name]);
-            assert_relative(&what("input voltage"), found.condition.input_voltage, at("input_voltage"), 1e-12);
-            assert_relative(&what("load current"), found.condition.load_current, at("load_current"), 1e-12);
-            let point = &summary.operating_point;
-            assert_relative(&what("duty ratio"), point.duty, at("duty"), 1e-9);
-            assert_relative(&what("input current"), point.input_current, at("input_current"), 1e-8);
-            let inductor = &point.inductors[0].current;
-            assert_relative(&what("inductor current"), inductor.average, at("inductor_current"), 1e-8);
-            // Straight-line ripple from averaged states; the on and off slopes close to well under a percent.
-            assert_relative(&what("inductor ripple"), inductor.ripple, at("inductor_ripple"), 1e-6);
-            compare_margins(&what, &summary.loop_gain, wanted);
-        }
+        compare_conditions(&design, &row);
     }
 }
 
@@ -184,37 +199,37 @@ fn between_points(step: &Step, t: f64) -> Option<f64> {
     Some(weights.iter().zip(&step.output_v[start..]).map(|(w, v)| w * (v - step.initial_v)).sum())
 }
 
+/// Load, line and reference step of the nominal condition.
+pub(crate) fn compare_steps(design: &Design, row: &Value) {
+    // Points so dense that a cubic between them is exact to far below the tolerance.
+    let detail = shown(analysed(design, &[1e3], 20_001));
+    let steps = [("load", &detail.steps.load), ("line", &detail.steps.line), ("reference", &detail.steps.reference)];
+    for (name, step) in steps {
+        let step = step.as_ref().unwrap_or_else(|| panic!("{}: no {name} step", design.title));
+        let wanted = &row["steps"][name];
+        let what = |part: &str| format!("{}: {name} step, {part}", design.title);
+        let peak = number(&wanted["deviation_v"]).abs();
+        let (times, curve) = (numbers(&wanted["times_s"]), numbers(&wanted["values_v"]));
+        let mut compared = 0;
+        for (t, value) in times.iter().zip(&curve) {
+            if let Some(found) = between_points(step, *t) {
+                assert_absolute(&what(&format!("at {t} s")), found, *value, 1e-6 * peak);
+                compared += 1;
+            }
+        }
+        assert!(compared > 30, "{} of {} times compared", compared, times.len());
+        assert_absolute(&what("deviation"), step.deviation_v, number(&wanted["deviation_v"]), 1e-6 * peak);
+        let final_v = step.final_v - step.initial_v;
+        assert_absolute(&what("final value"), final_v, number(&wanted["final_v"]), 1e-6 * peak);
+        let settling = step.settling_s.expect("it settles");
+        assert_absolute(&what("settling"), settling, number(&wanted["settling_s"]), 1e-5 * settling + 1e-12);
+    }
+}
+
 #[test]
 fn ten_designs_through_three_steps() {
     for (design, row) in ten() {
-        // Points so dense that a cubic between them is exact to far below the tolerance.
-        let detail = shown(analysed(&design, &[1e3], 20_001));
-        let steps =
-            [("load", &detail.steps.load), ("line", &detail.steps.line), ("reference", &detail.steps.reference)];
-        for (name, step) in steps {
-            let step = step.as_ref().unwrap_or_else(|| panic!("{}: no {name} step", design.title));
-            let wanted = &row["steps"][name];
-            let what = |part: &str| format!("{}: {name} step, {part}", design.title);
-            let peak = number(&wanted["deviation_v"]).abs();
-            let (times, curve) = (numbers(&wanted["times_s"]), numbers(&wanted["values_v"]));
-            let mut compared = 0;
-            for (t, value) in times.iter().zip(&curve) {
-                if let Some(found) = between_points(step, *t) {
-                    assert_absolute(&what(&format!("at {t} s")), found, *value, 1e-6 * peak);
-                    compared += 1;
-                }
-            }
-            assert!(compared > 30, "{} of {} times compared", compared, times.len());
-            assert_absolute(&what("deviation"), step.deviation_v, number(&wanted["deviation_v"]), 1e-6 * peak);
-            assert_absolute(
-                &what("final value"),
-                step.final_v - step.initial_v,
-                number(&wanted["final_v"]),
-                1e-6 * peak,
-            );
-            let settling = step.settling_s.expect("it settles");
-            assert_absolute(&what("settling"), settling, number(&wanted["settling_s"]), 1e-5 * settling + 1e-12);
-        }
+        compare_steps(&design, &row);
     }
 }
 

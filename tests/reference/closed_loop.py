@@ -98,7 +98,8 @@ class Loop:
         return {
             "crossovers": crossovers,
             "phase_crossovers": phase_crossovers,
-            "modulus_margin": min(found.fun, distance[k]),
+            # Far above the band the loop gain dies out, and the distance tends to one.
+            "modulus_margin": min(found.fun, distance[k], 1.0),
             "delay_margin_s": min((c["phase_margin_deg"] % 360.0) / 360.0 / c["frequency_hz"] for c in crossovers),
         }
 

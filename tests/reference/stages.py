@@ -1,4 +1,4 @@
-"""Power stages in continuous conduction: equations of the on and off interval written by hand, averaged and perturbed.
+"""Power stages: equations of the on, off and idle interval written by hand; averaged and perturbed in continuous conduction.
 
 Conventions: SI units; the inverting output counts as a magnitude; a rise of load current `io` is drawn at the output in
 parallel with the load.  Every quantity is a row over (states, inputs), so the lines below read like the circuit laws.
@@ -27,6 +27,19 @@ class Branch:
 
 
 @dataclass
+class Filter:
+    """An inductor in series and a capacitor across, and what damps them."""
+
+    inductance: float  # [H]
+    resistance: float  # of the inductor [ohm]
+    capacitance: float  # [F]
+    esr: float = 0.0  # [ohm]
+    damping: tuple = ()  # resistor and capacitor in series, across the capacitor: ([ohm], [F])
+    bypass: tuple = ()  # input only: resistor and inductor in series, across the inductor and its winding: ([ohm], [H])
+    across: float = 0.0  # output only: resistor across the inductor and its winding [ohm]
+
+
+@dataclass
 class Stage:
     """A power stage as an engineer enters it."""
 
@@ -43,6 +56,8 @@ class Stage:
     drop: float = 0.0  # diode drop [V]
     diode: float = 0.0  # diode resistance [ohm]
     synchronous: float = 0.0  # on resistance of the synchronous rectifier [ohm]
+    input_filter: Filter | None = None  # between the source's resistance and the stage's input
+    output_filter: Filter | None = None  # between the bank and the load
 
 
 @dataclass
@@ -69,8 +84,26 @@ class Averaged:
         return self.c[0] @ x + np.array([self.d[0, 0], self.d[0, 2], self.g[0]])
 
 
-def intervals(stage, vout, load_current):
-    """The matrices (A, B, C, D) of the on and of the off interval for outputs (vout, iL, iin)."""
+def branch_currents(v_node_of, injected, branches):
+    """A node with resistive branches (resistance, row of the far voltage): its voltage once `injected` flows into it.
+
+    A branch without resistance fixes the voltage, and its current is what the others leave.
+    """
+    stiff = [k for k, (resistance, _) in enumerate(branches) if resistance == 0.0]
+    assert len(stiff) <= 1, "two capacitors without resistance share one voltage"
+    if stiff:
+        v_node = branches[stiff[0]][1]
+    else:
+        g = [1.0 / r for r, _ in branches]
+        v_node = (injected + sum(gk * far for gk, (_, far) in zip(g, branches))) / (v_node_of + sum(g))
+    currents = [None if r == 0.0 else (v_node - far) / r for r, far in branches]
+    if stiff:
+        currents[stiff[0]] = injected - v_node_of * v_node - sum(i for i in currents if i is not None)
+    return v_node, currents
+
+
+def equations(stage, vout, load_current):
+    """{interval: (A, B, C, D)} of the on, off and idle interval for outputs (vout, iL, iin), and the names of the states."""
     branches = stage.bank
     with_esl = any(branch.esl > 0.0 for branch in branches)
     names = ["iL"] + [f"v{k}" for k in range(len(branches))]
@@ -78,6 +111,10 @@ def intervals(stage, vout, load_current):
         names += [f"i{k}" for k in range(len(branches))]
     if stage.input_capacitor:
         names += ["vci"]
+    for prefix, part in [("in", stage.input_filter), ("out", stage.output_filter)]:
+        if part:
+            names += [f"i_{prefix}", f"v_{prefix}"] + ([f"vd_{prefix}"] if part.damping else [])
+            names += [f"id_{prefix}"] if part.bypass else []
     columns = names + INPUTS
 
     def row(name):
@@ -94,66 +131,114 @@ def intervals(stage, vout, load_current):
         "power": (-load_current / vout, 2.0 * load_current),
     }[stage.load]
 
-    def input_node(drawn):
-        """Node voltage behind the source resistance, and the source's current, while `drawn` flows into the stage."""
-        if stage.input_capacitor:
-            capacitance, esr = stage.input_capacitor
-            assert stage.source > 0.0 and esr > 0.0
-            v_node = (vin / stage.source + row("vci") / esr - drawn) / (1.0 / stage.source + 1.0 / esr)
-            return v_node, (vin - v_node) / stage.source, (v_node - row("vci")) / (esr * capacitance)
-        return vin - stage.source * drawn, drawn, None
+    def across(part, prefix):
+        """Branches of a filter's capacitors: (resistance, far voltage, name of the state, capacitance)."""
+        found = [(part.esr, row(f"v_{prefix}"), f"v_{prefix}", part.capacitance)]
+        if part.damping:
+            found.append((part.damping[0], row(f"vd_{prefix}"), f"vd_{prefix}", part.damping[1]))
+        return found
 
-    def interval(on):
+    def input_node(drawn, slopes):
+        """Voltage of the stage's input terminal and the source's current, while `drawn` flows into the stage."""
+        capacitors = []
+        if stage.input_capacitor:
+            assert stage.input_capacitor[1] > 0.0 and (stage.source > 0.0 or stage.input_filter)
+            capacitors.append((stage.input_capacitor[1], row("vci"), "vci", stage.input_capacitor[0]))
+        part = stage.input_filter
+        if part:
+            i_in = row("i_in") + (row("id_in") if part.bypass else 0.0)
+            capacitors += across(part, "in")
+            v_node, currents = branch_currents(0.0, i_in - drawn, [c[:2] for c in capacitors])
+            v_filter = vin - stage.source * i_in - v_node
+            slopes["i_in"] = (v_filter - part.resistance * row("i_in")) / part.inductance
+            if part.bypass:
+                slopes["id_in"] = (v_filter - part.bypass[0] * row("id_in")) / part.bypass[1]
+        elif capacitors:
+            v_node, currents = branch_currents(1.0 / stage.source, vin / stage.source - drawn, [c[:2] for c in capacitors])
+            i_in = (vin - v_node) / stage.source
+        else:
+            return vin - stage.source * drawn, drawn
+        for (_, _, name, capacitance), current in zip(capacitors, currents):
+            slopes[name] = current / capacitance
+        return v_node, i_in
+
+    def output_nodes(delivered, slopes):
+        """Voltages of the bank and of the load, which are one without an output filter."""
+        part = stage.output_filter
+        into_bank, at_bank = delivered - io - constant * one, conductance
+        if part:
+            into_bank, at_bank = delivered - row("i_out"), 0.0
+            into_load = row("i_out") - io - constant * one
+        if with_esl:
+            assert at_bank > 0.0
+            v_bank = (into_bank - sum(row(f"i{k}") for k in range(len(branches)))) / at_bank
+            for k, branch in enumerate(branches):
+                slopes[f"i{k}"] = (v_bank - row(f"v{k}") - branch.esr / branch.count * row(f"i{k}")) / (branch.esl / branch.count)
+            currents = [row(f"i{k}") for k in range(len(branches))]
+        else:
+            bank = [(branch.esr / branch.count, row(f"v{k}")) for k, branch in enumerate(branches)]
+            if part and part.across:
+                # Both nodes as sources behind their branches' resistance, joined by the resistor.
+                v_1, _ = branch_currents(0.0, into_bank, bank)
+                v_2, _ = branch_currents(conductance, into_load, [c[:2] for c in across(part, "out")])
+                r_1 = 1.0 / sum(1.0 / r for r, _ in bank)
+                r_2 = 1.0 / (conductance + sum(1.0 / c[0] for c in across(part, "out")))
+                passing = (v_1 - v_2) / (part.across + r_1 + r_2)
+                into_bank, into_load = into_bank - passing, into_load + passing
+            v_bank, currents = branch_currents(at_bank, into_bank, bank)
+        for k, branch in enumerate(branches):
+            slopes[f"v{k}"] = currents[k] / (branch.capacitance * branch.remaining * branch.count)
+        if not part:
+            return v_bank, v_bank
+        capacitors = across(part, "out")
+        v_out, currents = branch_currents(conductance, into_load, [c[:2] for c in capacitors])
+        slopes["i_out"] = (v_bank - part.resistance * row("i_out") - v_out) / part.inductance
+        for (_, _, name, capacitance), current in zip(capacitors, currents):
+            slopes[name] = current / capacitance
+        return v_bank, v_out
+
+    def interval(which):
+        on = which == "on"
         resistance = stage.switch if on else (stage.diode if stage.rectifier == "diode" else stage.synchronous)
         drop = 0.0 if on or stage.rectifier != "diode" else stage.drop
         lost = (resistance + stage.winding) * i_l + drop * one
-        if stage.topology == "buck":
+        if which == "idle":
+            drawn, delivered = zero, zero
+        elif stage.topology == "buck":
             drawn, delivered = (i_l if on else zero), i_l
         elif stage.topology == "boost":
             drawn, delivered = i_l, (zero if on else i_l)
         else:
             drawn, delivered = (i_l, zero) if on else (zero, i_l)
-        v_node, i_in, vci_slope = input_node(drawn)
-
         slopes = {}
-        into_bank = delivered - io - constant * one  # current for the bank and the load's conductance
-        if with_esl:
-            assert conductance > 0.0
-            v_out = (into_bank - sum(row(f"i{k}") for k in range(len(branches)))) / conductance
-        else:
-            g = [branch.count / branch.esr for branch in branches]
-            v_out = (into_bank + sum(gk * row(f"v{k}") for k, gk in enumerate(g))) / (conductance + sum(g))
-        for k, branch in enumerate(branches):
-            c_k = branch.capacitance * branch.remaining * branch.count
-            r_k = branch.esr / branch.count
-            if with_esl:
-                slopes[f"v{k}"] = row(f"i{k}") / c_k
-                slopes[f"i{k}"] = (v_out - row(f"v{k}") - r_k * row(f"i{k}")) / (branch.esl / branch.count)
-            else:
-                slopes[f"v{k}"] = (v_out - row(f"v{k}")) / (r_k * c_k)
-        if vci_slope is not None:
-            slopes["vci"] = vci_slope
-
-        # Voltage across the inductor, losses taken off.
+        v_node, i_in = input_node(drawn, slopes)
+        v_bank, v_out = output_nodes(delivered, slopes)
+        # Voltage across the inductor, losses taken off; none while the current rests at zero.
         v_l = {
-            ("buck", True): v_node - v_out,
-            ("buck", False): -v_out,
-            ("boost", True): v_node,
-            ("boost", False): v_node - v_out,
-            ("buck-boost", True): v_node,
-            ("buck-boost", False): -v_out,
-        }[(stage.topology, on)] - lost
+            ("buck", "on"): v_node - v_bank,
+            ("buck", "off"): -v_bank,
+            ("boost", "on"): v_node,
+            ("boost", "off"): v_node - v_bank,
+            ("buck-boost", "on"): v_node,
+            ("buck-boost", "off"): -v_bank,
+        }.get((stage.topology, which), lost) - lost
         slopes["iL"] = v_l / stage.inductance
 
         n = len(names)
         ab = np.array([slopes[name] for name in names])
-        cd = np.array([v_out, i_l, i_in])
+        cd = np.array([v_out, zero if which == "idle" else i_l, i_in])
         return ab[:, :n], ab[:, n:], cd[:, :n], cd[:, n:]
 
-    return interval(True), interval(False), names
+    return {which: interval(which) for which in ["on", "off", "idle"]}, names
 
 
-def averaged(stage, vin, vout, load_current):
+def intervals(stage, vout, load_current):
+    """The matrices (A, B, C, D) of the on and of the off interval, and the names of the states."""
+    found, names = equations(stage, vout, load_current)
+    return found["on"], found["off"], names
+
+
+def averaged(stage, vin, vout, load_current, check=True):
     """Duty ratio with all losses for the wanted output (the solution below the conversion curve's peak), and the model."""
     on, off, names = intervals(stage, vout, load_current)
     u = np.array([vin, 1.0, 0.0])
@@ -180,5 +265,5 @@ def averaged(stage, vin, vout, load_current):
     on_slope = (on[0] @ x + on[1] @ u)[0]
     model = Averaged(duty, y[1], y[2], a, b, c, d, f, g, on_slope, names)
     # Continuous conduction is what these equations are about.
-    assert y[1] > 0.5 * on_slope * duty / stage.fs, "discontinuous conduction"
+    assert not check or y[1] > 0.5 * on_slope * duty / stage.fs, "discontinuous conduction"
     return model

@@ -22,7 +22,7 @@ const OLD: Duration = Duration::from_hours(24);
 #[derive(Debug)]
 pub(super) struct Lock {
     path: PathBuf,
-    _file: File,
+    file: File,
 }
 
 impl Lock {
@@ -37,7 +37,7 @@ impl Lock {
         let path = Self::file_of(journal);
         let file = File::options().create(true).append(true).open(&path)?;
         match file.try_lock() {
-            Ok(()) | Err(TryLockError::Error(_)) => Ok(Some(Lock { path, _file: file })),
+            Ok(()) | Err(TryLockError::Error(_)) => Ok(Some(Lock { path, file })),
             Err(TryLockError::WouldBlock) => Ok(None),
         }
     }
@@ -45,6 +45,13 @@ impl Lock {
     /// Lets go and removes the lock file: nothing is left to be locked.
     pub(super) fn remove(self) {
         let _ = std::fs::remove_file(&self.path);
+    }
+}
+
+impl Drop for Lock {
+    fn drop(&mut self) {
+        // Closing alone would leave it locked while a process that was just started still has a copy of the open file.
+        let _ = self.file.unlock();
     }
 }
 
@@ -111,7 +118,7 @@ fn open(file: PathBuf) -> Option<Left> {
     // In a folder that cannot be written no window is at work.
     let lock = match Lock::take(&file) {
         Ok(lock) => lock?,
-        Err(_) => Lock { path: Lock::file_of(&file), _file: File::open(&file).ok()? },
+        Err(_) => Lock { path: Lock::file_of(&file), file: File::open(&file).ok()? },
     };
     // Its window may have ended well between the listing and the lock.
     if !file.exists() {
