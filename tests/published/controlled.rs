@@ -8,7 +8,8 @@
 
 use crate::common::{analysed, assert_absolute, assert_relative};
 use crate::reference::{
-    compare_conditions, compare_margins, compare_responses, compare_steps, complex, designs, list, number, numbers, polar,
+    compare_conditions, compare_margins, compare_responses, compare_steps, complex, designs, list, number, numbers,
+    polar,
 };
 use polewright::converter::Conduction;
 use polewright::design::Design;

@@ -21,9 +21,12 @@ const CONDUCTION: [(&str, f64, Conduction); 5] = [
 /// 12 V into an output the topology can give, at a load so many times that of the boundary between conduction modes.
 fn design_of(topology: &Topology, mode: &str, rectifier: &str, over_boundary: f64) -> Design {
     let mut design = Design::default();
-    for (path, key) in
-        [("stage.topology", topology.key), ("control.mode", mode), ("stage.rectifier", rectifier), ("control.slope", "share")]
-    {
+    for (path, key) in [
+        ("stage.topology", topology.key),
+        ("control.mode", mode),
+        ("stage.rectifier", rectifier),
+        ("control.slope", "share"),
+    ] {
         design.set_from_text(path, key).unwrap_or_else(|finding| panic!("{finding:?}"));
     }
     let output = match topology.reach {
