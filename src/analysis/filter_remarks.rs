@@ -5,7 +5,7 @@
 
 use super::filter_result::InputFilterResult;
 use super::result::{ConditionResult, ConditionSummary, Detail};
-use crate::converter::{Damping, InputFilter, OptimumDamping};
+use crate::converter::{Damping, InputFilter};
 use crate::design::CheckedDesign;
 use crate::finding::{Finding, Remedy};
 use crate::linear::Verdict;
@@ -42,8 +42,10 @@ pub(super) fn filter_remarks(
     findings.extend(criterion(filter, &found));
     findings.extend(near_crossover(filter, &found));
     findings.extend(what_if(detail));
-    if let Some((remedy, hint)) = remedy {
-        findings = findings.into_iter().map(|f| f.with_hint(hint.clone()).with_remedy(remedy.clone())).collect();
+    // One press is enough: the gravest remark carries it.
+    if let (Some((remedy, hint)), false) = (remedy, findings.is_empty()) {
+        let first = findings.remove(0).with_hint(hint).with_remedy(remedy);
+        findings.insert(0, first);
     }
     findings
 }
@@ -132,7 +134,7 @@ fn near_crossover(filter: &InputFilter, found: &[At<'_>]) -> Option<Finding> {
 fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Remedy, String)> {
     let least = found.iter().map(|(_, _, r)| r.least_input_impedance_ohm).min_by(f64::total_cmp)?;
     let damping = filter.damping_for(least * DAMPED_BELOW);
-    let words = in_words(&damping);
+    let words = damping.in_words();
     let mut hint = format!(
         "damp the filter with {words}: its peak falls to {} at {}",
         print_digits(damping.peak, Unit::Ohm, 3),
@@ -154,21 +156,6 @@ fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Remedy, String)> {
         choices: vec![("stage.input-filter.damping".into(), key.into())],
     };
     Some((remedy, hint))
-}
-
-/// "0.67 Ω + 1.18 mF across the input capacitor".
-pub(super) fn in_words(damping: &OptimumDamping) -> String {
-    let resistance = print_digits(damping.resistance, Unit::Ohm, 3);
-    match damping.kind {
-        Damping::Inductor => {
-            let inductor = print_digits(damping.reactance_value, Unit::Henry, 3);
-            format!("{resistance} + {inductor} across the filter inductor")
-        }
-        _ => {
-            let capacitor = print_digits(damping.reactance_value, Unit::Farad, 3);
-            format!("{resistance} + {capacitor} across the input capacitor")
-        }
-    }
 }
 
 /// The number as it is printed to three digits.

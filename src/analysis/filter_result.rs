@@ -16,6 +16,15 @@ pub enum Against {
 }
 
 impl Against {
+    /// The symbol.
+    pub fn symbol(self) -> &'static str {
+        match self {
+            Against::OpenLoop => "ZD",
+            Against::Nulled => "ZN",
+            Against::ClosedLoop => "Zi",
+        }
+    }
+
     /// The name for people.
     pub fn name(self) -> &'static str {
         match self {

@@ -221,9 +221,12 @@ fn model_limits(design: &CheckedDesign) -> Vec<Finding> {
         } else {
             "a load that is not a resistor leaves it undamped"
         };
-        let message = format!(
-            "The output bank's ESL is left out of the control path ({why}); output impedance and load step include it."
-        );
+        let rest = if design.stage.second_stage.is_some() {
+            "behind the second stage it does not reach the load"
+        } else {
+            "output impedance and load step include it"
+        };
+        let message = format!("The output bank's ESL is left out of the control path ({why}); {rest}.");
         notes.push(Finding::note("stage.bank.1.esl", message));
     }
     notes

@@ -97,6 +97,55 @@ pub static TERMS: &[Term] = &[
         "last t with |v(t) − v(∞)| > band",
     ),
     term(
+        "control-voltage",
+        "Control voltage",
+        "Holds the operating point: sensed current and ramp where the comparator decides, or what the inner loop asks for.",
+        "Vc = R·I + ramp·t at the peak, R·I − ramp·t at the valley",
+    ),
+    term(
+        "sampling-quality",
+        "Qp at ½ switching",
+        "Quality factor of the pair of poles that sampling the current once a period makes. Common practice: near 1.",
+        "Qp = 1 / (π·(mc·D' − ½))",
+    ),
+    term("slope-factor", "Slope factor mc", "How much the ramp steepens what the comparator sees.", "mc = 1 + Se / Sn"),
+    term(
+        "fast-multiplier",
+        "Fast multiplier α",
+        "By how much a small deviation of the current is multiplied every period; below −1 it grows: subharmonic oscillation.",
+        "α = −(m2 − ma) / (m1 + ma)",
+    ),
+    term(
+        "compensating-ramp",
+        "Compensating ramp",
+        "Added to the sensed current so that the current does not oscillate at half the switching frequency.",
+        "Se [V/s at the comparator]",
+    ),
+    term(
+        "ramp-share",
+        "Ramp / current's slope",
+        "The ramp against the slope it works against: the down-slope in peak, the up-slope in valley current mode.",
+        "ma / m2",
+    ),
+    term(
+        "inner-crossover",
+        "Inner crossover",
+        "Where the gain of the inner current loop passes 0 dB, the control voltage at rest.",
+        "|Ti(j·2π·fi)| = 1",
+    ),
+    term(
+        "inner-phase-margin",
+        "Inner phase margin",
+        "Phase that is left at the inner crossover before the current loop oscillates.",
+        "PM = 180° + arg Ti(j·2π·fi)",
+    ),
+    term(
+        "inner-gain-margin",
+        "Inner gain margin",
+        "How far the inner loop's gain may rise until the current loop oscillates.",
+        "GM = −20·log |Ti| where arg Ti = −180° − k·360°",
+    ),
+    term(
         "lc-resonance",
         "LC resonance",
         "Resonance of the inductor with the output bank: the plant falls by 40 dB per decade above it and loses up to 180°.",
@@ -106,7 +155,7 @@ pub static TERMS: &[Term] = &[
         "low-pole",
         "Low pole",
         "The output bank against load and stage where the inductor is no state of its own: its current rests every period, or a current loop holds it.",
-        "discontinuous: (2 − M)/((1 − M)·2π·R·C) of a buck, (2M − 1)/((M − 1)·2π·R·C) of a boost, 1/(π·R·C) of a buck-boost",
+        "discontinuous: (2 − M)/((1 − M)·2π·R·C) of a buck, (2M − 1)/((M − 1)·2π·R·C) of a boost, 1/(π·R·C) of a buck-boost; current mode: about 1/(2π·R·C), more with ramp and slopes",
     ),
     term(
         "second-pole",
@@ -126,6 +175,45 @@ pub static TERMS: &[Term] = &[
         "A stage that charges its inductor before it serves the output answers the wrong way first: gain rises as at a zero, \
          phase falls as at a pole. No compensator can take it away.",
         "f_RHP = (1 − D)²·R / (2π·L) of a boost, divided by D for a buck-boost",
+    ),
+    term(
+        "input-filter",
+        "Input filter",
+        "Undamped resonance of the input filter, where its output impedance peaks.",
+        "1 / (2π·√(Lf·Cin))",
+    ),
+    term(
+        "output-filter",
+        "Output filter",
+        "Resonance of the second stage: its inductor with the bank and its own capacitor in series. Inside the loop it turns the \
+         phase down by up to 180°.",
+        "1 / (2π·√(Lo·C·Co/(C + Co)))",
+    ),
+    term(
+        "filter-margin",
+        "Filter margin",
+        "Least distance of the input filter's output impedance Zo below the converter's input impedances ZD, ZN and Zi. \
+         Common practice: 6 dB at least.",
+        "min 20·log(|Z|/|Zo|) over ZD, ZN, Zi up to fs/2",
+    ),
+    term(
+        "filter-gain-change",
+        "Filter moves gain",
+        "Greatest change of the loop's gain by the input filter, against the same stage fed by an ideal source.",
+        "20·log |(1 + Zo/ZN) / (1 + Zo/ZD)|",
+    ),
+    term(
+        "filter-phase-change",
+        "Filter moves phase",
+        "Greatest change of the loop's phase by the input filter, against the same stage fed by an ideal source.",
+        "arg ((1 + Zo/ZN) / (1 + Zo/ZD))",
+    ),
+    term(
+        "input-impedance",
+        "Input impedance",
+        "At the stage's input terminals: ZD with the control voltage at rest, ZN with the control voltage that holds the output \
+         at rest, Zi with the loop closed. The filter's output impedance Zo must stay below them.",
+        "1/Zi = (1/ZD + T/ZN) / (1 + T)",
     ),
     term(
         "half-switching",

@@ -9,6 +9,7 @@
 
 use super::filter_values::InputFilter;
 use super::filters::Damping;
+use crate::quantity::{Unit, print_digits};
 
 /// A branch smaller than this against the filter's own part is not worth its resistor.
 const LEAST_CAPACITOR_RATIO: f64 = 1.0;
@@ -30,6 +31,18 @@ pub struct OptimumDamping {
     pub peak: f64,
     /// Where it lies [Hz].
     pub peak_hz: f64,
+}
+
+impl OptimumDamping {
+    /// The branch in words: "0.67 Ω + 1.18 mF across the input capacitor".
+    pub fn in_words(&self) -> String {
+        let (unit, place) = match self.kind {
+            Damping::Inductor => (Unit::Henry, "filter inductor"),
+            Damping::None | Damping::Capacitor => (Unit::Farad, "input capacitor"),
+        };
+        let part = print_digits(self.reactance_value, unit, 3);
+        format!("{} + {part} across the {place}", print_digits(self.resistance, Unit::Ohm, 3))
+    }
 }
 
 impl InputFilter {

@@ -177,6 +177,9 @@ fn parts_of(key: &str, branches: usize) -> Vec<String> {
             [one("stage.output-filter.inductance"), one("stage.output-filter.capacitance"), of_bank("capacitance")]
                 .concat()
         }
+        // In discontinuous conduction the bank discharges into the load, and the inductor answers within a period.
+        "low-pole" => [of_bank("capacitance"), one("stage.load.nominal")].concat(),
+        "second-pole" => [one("stage.inductor.inductance"), one("stage.switching-frequency")].concat(),
         "half-switching" => one("stage.switching-frequency"),
         _ => Vec::new(),
     }

@@ -443,4 +443,45 @@ mod tests {
         assert!(design.entries().iter().any(|row| row.path == "stage.bank.3.esr"));
         assert!(!design.entries().iter().any(|row| row.path == "stage.bank.4.esr"));
     }
+
+    #[test]
+    fn unusable_filters_are_named_and_nothing_is_lost() {
+        let fitted = [
+            ("stage.input-filter", "fitted"),
+            ("stage.input-filter.damping", "capacitor"),
+            ("stage.output-filter", "fitted"),
+            ("stage.output-filter.damping", "resistor"),
+        ];
+        for (path, text, reason) in [
+            ("stage.input-filter.inductance", "0", "above 0 H"),
+            ("stage.input-filter.resistance", "-1m", "0 Ω or above"),
+            ("stage.input-filter.damping.resistance", "0", "above 0 Ω"),
+            ("stage.input-filter.damping.capacitance", "-1u", "above 0 F"),
+            ("stage.input-filter.damping.inductance", "0", "above 0 H"),
+            ("stage.input-capacitor.capacitance", "0", "above 0 F"),
+            ("stage.output-filter.inductance", "0", "above 0 H"),
+            ("stage.output-filter.resistance", "-1", "0 Ω or above"),
+            ("stage.output-filter.capacitance", "0", "above 0 F"),
+            ("stage.output-filter.esr", "-1", "0 Ω or above"),
+            ("stage.output-filter.damping.resistance", "0", "above 0 Ω"),
+        ] {
+            let mut pairs = fitted.to_vec();
+            if path.ends_with("damping.inductance") {
+                pairs.push(("stage.input-filter.damping", "inductor"));
+            }
+            pairs.push((path, text));
+            let problem = only_problem(&pairs);
+            assert_eq!(problem.place, path);
+            assert!(problem.message.contains(reason), "{problem}");
+        }
+        // A filter brings its own capacitor: the choice of one goes, and comes back as it was.
+        let mut design = set(&[("stage.input-capacitor", "none"), ("stage.input-filter", "fitted")]);
+        assert!(!design.choice_rows().iter().any(|row| row.path == "stage.input-capacitor"));
+        assert!(!design.check().expect("usable").findings.iter().any(|f| f.place == "stage.input-capacitor"));
+        design.set_from_text("stage.input-filter.damping.resistance", "3").expect("kept");
+        design.set_from_text("stage.input-filter", "none").expect("an option");
+        assert!(design.choices.is("stage.input-capacitor", "none"));
+        design.set_from_text("stage.input-filter", "fitted").expect("an option");
+        assert_eq!(design.values.get("stage.input-filter.damping.resistance"), Some(3.0));
+    }
 }

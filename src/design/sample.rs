@@ -74,6 +74,12 @@ static ALL: &[Sample] = &[
         "A buck in valley current mode, as a data sheet states it: A/V, offset, clamp."
     ),
     sample!(
+        "tram-display.ron",
+        "Tram display",
+        "A buck behind an input filter whose damping keeps it off the converter's impedance."
+    ),
+    sample!("ultrasound-probe.ron", "Ultrasound probe", "A buck with a second-stage output filter inside the loop."),
+    sample!(
         "hive-scale.ron",
         "Hive scale",
         "A buck with a diode that falls into discontinuous conduction when its radio sleeps."

@@ -18,7 +18,7 @@ mod values;
 
 pub use bode::{Shown, bode};
 pub use compensator::compensator_schematic;
-pub use response::{ClosedLoop, response};
+pub use response::{ClosedLoop, in_words as margin_in_words, response};
 pub use stage::{schematic, stage_schematic};
 pub use step::{Event, step};
 pub use stroke::{Align, Dash, Figure, Mark, Place, Point, Role, Weight};

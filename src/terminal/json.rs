@@ -1,6 +1,7 @@
 //! The report as JSON. Its fields are documented in the room's docs and kept stable.
 
 use super::check::Report;
+use super::input_filter::{self, InputFilter};
 use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
@@ -24,6 +25,7 @@ struct Object<'a> {
     conditions: Vec<NineRow<'a>>,
     worst: Vec<Worst<'a>>,
     response: Vec<Response>,
+    input_filter: Option<InputFilter>,
     load_step: Option<LoadStep>,
     load_sweep: Option<super::sweep::Sweep>,
     requirements: Vec<Requirement<'a>>,
@@ -44,6 +46,7 @@ struct OperatingPoint {
     second_duty: Option<f64>,
     control_voltage: f64,
     input_current: f64,
+    load_voltage: f64,
     conduction_loss: f64,
     boundary_load: Option<f64>,
 }
@@ -93,6 +96,7 @@ struct Landmark {
 #[derive(Serialize)]
 struct Loop {
     stable: Option<bool>,
+    conditionally_stable: bool,
     crossovers: Vec<Crossover>,
     phase_crossovers: Vec<PhaseCrossover>,
     modulus_margin: f64,
@@ -131,6 +135,7 @@ struct NineRow<'a> {
     modulus_margin: Option<f64>,
     load_step_deviation_v: Option<f64>,
     settling_s: Option<f64>,
+    filter_margin_db: Option<f64>,
     problem: Option<&'a str>,
 }
 
@@ -225,6 +230,7 @@ fn object(report: &Report) -> Object<'_> {
         conditions: analysis.map(|a| a.conditions.iter().map(nine_row).collect()).unwrap_or_default(),
         worst: analysis.map(worst).unwrap_or_default(),
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
+        input_filter: detail.and_then(input_filter::object),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
         load_sweep: report.load_sweep.as_ref().map(super::sweep::json),
         requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
@@ -240,6 +246,7 @@ fn operating_point(detail: &Detail) -> OperatingPoint {
         second_duty: point.second_duty,
         control_voltage: detail.control.control_voltage,
         input_current: point.input_current,
+        load_voltage: point.load_voltage,
         conduction_loss: point.conduction_loss,
         boundary_load: detail.boundary_load,
     }
@@ -312,6 +319,7 @@ fn loop_gain(detail: &Detail) -> Loop {
         .map(|c| PhaseCrossover { frequency_hz: c.frequency_hz, gain_margin_db: c.gain_margin_db });
     Loop {
         stable: stable(&result.verdict),
+        conditionally_stable: result.conditionally_stable(),
         crossovers: crossovers.collect(),
         phase_crossovers: phase_crossovers.collect(),
         modulus_margin: margins.modulus_margin,
@@ -341,6 +349,7 @@ fn nine_row(row: &ConditionResult) -> NineRow<'_> {
         modulus_margin: margins.map(|m| m.modulus_margin),
         load_step_deviation_v: step.map(|s| s.deviation_v),
         settling_s: step.and_then(|s| s.settling_s),
+        filter_margin_db: summary.and_then(|s| s.input_filter).map(|f| f.least_margin().margin_db),
         problem: row.outcome.as_ref().err().map(|finding| finding.message.as_str()),
     }
 }

@@ -35,6 +35,7 @@
 
 mod arguments;
 mod check;
+mod input_filter;
 mod json;
 mod sweep;
 mod text;

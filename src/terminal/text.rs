@@ -1,6 +1,7 @@
 //! The report as text for people: aligned columns, one section per subject, every number with its condition.
 
 use super::check::Report;
+use super::input_filter;
 use crate::analysis::{Analysis, Curves, Detail, LimitKind, RequirementVerdict};
 use crate::design::{CheckedDesign, printable};
 use crate::finding::Finding;
@@ -27,6 +28,7 @@ pub(super) fn write(
     if let Ok(detail) = &analysis.shown {
         operating_point(&mut text, detail, analysis);
         landmarks(&mut text, detail);
+        input_filter(&mut text, detail);
         stability(&mut text, detail);
     }
     readouts(&mut text, analysis, design);
@@ -102,13 +104,34 @@ fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
             amperes(current.peak),
             amperes(current.rms)
         );
-        row(text, &format!("{} current", capitalised(inductor.name)), &figures);
+        let of = if inductor.name == "inductor" { " current" } else { "" };
+        row(text, &format!("{}{of}", capitalised(inductor.name)), &figures);
     }
     row(text, "Input current", &amperes(point.input_current));
+    if point.load_voltage < point.output_voltage {
+        let sensed = print(point.output_voltage, Unit::Volt);
+        let value = format!(
+            "{}, behind the second stage; {sensed} is regulated before it",
+            print(point.load_voltage, Unit::Volt)
+        );
+        row(text, "Voltage at the load", &value);
+    }
     row(text, "Conduction losses", &print(point.conduction_loss, Unit::Watt));
     row(text, "Control voltage", &print(detail.control.control_voltage, Unit::Volt));
     if let Some(load) = detail.boundary_load {
         row(text, "Discontinuous below", &format!("{} of load", amperes(load)));
+    }
+    text.push('\n');
+}
+
+fn input_filter(text: &mut String, detail: &Detail) {
+    let rows = input_filter::rows(detail);
+    if rows.is_empty() {
+        return;
+    }
+    text.push_str("Input filter against converter\n");
+    for (name, value) in rows {
+        row(text, &name, &value);
     }
     text.push('\n');
 }

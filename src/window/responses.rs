@@ -1,4 +1,5 @@
-//! Closed-loop responses over frequency: output impedance, line to output, reference to output; open loop dotted beside.
+//! Closed-loop responses over frequency: output impedance, line to output, reference to output, input impedance against the input
+//! filter's; open loop dashed beside.
 
 use eframe::egui::{self, Align2, Rect, Stroke, Ui, pos2, vec2};
 
@@ -8,7 +9,7 @@ use super::plot::{self, Pen, Plot};
 use super::steps;
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{ClosedLoop, Desk};
-use crate::analysis::Curves;
+use crate::analysis::{Curves, InputFilterResult};
 use crate::quantity::{self, Unit};
 
 /// Draws heading and plot into a rectangle.
@@ -21,13 +22,19 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         steps::empty(ui, frame, "No response at this condition.", palette);
         return;
     };
+    let which = desk.view.closed_loop;
+    if which == ClosedLoop::Input && detail.input_filter.is_none() {
+        steps::empty(ui, frame, "No input filter is fitted.", palette);
+        return;
+    }
     let curves = &detail.curves;
-    let (closed, open, unit) = chosen(curves, desk.view.closed_loop);
+    let (closed, open, unit) = which.of(detail);
+    let beside = which.beside(detail);
     let (from, to) = super::bode::frequency_range(desk);
     let plot = Plot {
         rect: frame,
         x: Axis::logarithmic(from, to, frame.left(), frame.right()),
-        y: value_axis(frame, closed, open, unit),
+        y: value_axis(frame, beside.iter().map(|curve| curve.0).chain([closed]).chain(open), unit),
     };
     grid(ui, &plot, unit, palette);
     let mut painter = ui.painter().clone();
@@ -42,11 +49,17 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     if let Some(open) = open {
         inner_plot.curve(&painter, log_hz, &inner(open), open_pen(palette));
     }
+    for (values, name) in &beside {
+        inner_plot.curve(&painter, log_hz, &inner(values), beside_pen(name, palette));
+    }
     inner_plot.curve(&painter, log_hz, &inner(closed), closed_pen(palette));
+    if let Some(filter) = detail.input_filter.as_ref().filter(|_| which == ClosedLoop::Input) {
+        margin(&painter, &plot, &filter.result, palette);
+    }
     if desk.view.closed_loop == ClosedLoop::Impedance && detail.loop_gain.stable() {
         peak(&painter, &plot, curves, palette);
     }
-    read(ui, &plot, (closed, open, unit), desk, palette);
+    read(ui, &plot, &Legend::new(which, (closed, open, unit), &beside, palette), desk, palette);
     if !detail.loop_gain.stable() {
         let at = plot.rect.center_bottom() - vec2(0.0, 14.0);
         let colours = (palette.problem, palette.canvas);
@@ -56,6 +69,15 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
 
 fn closed_pen(palette: &Palette) -> Pen {
     Pen { colour: palette.loop_gain, width: theme::CURVE, style: LineStyle::Solid }
+}
+
+/// The pen of a curve beside: the filter's own stands out.
+fn beside_pen(name: &str, palette: &Palette) -> Pen {
+    if name.starts_with("Zo") {
+        Pen { colour: palette.compensator, width: theme::CURVE, style: LineStyle::Solid }
+    } else {
+        Pen { colour: palette.plant, width: theme::THIN_CURVE, style: LineStyle::Dotted }
+    }
 }
 
 fn open_pen(palette: &Palette) -> Pen {
@@ -72,8 +94,13 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         (ClosedLoop::Line, "Line to output", "Line", "line-to-output"),
         (ClosedLoop::Reference, "Following", "Following", "following"),
     ];
+    // The fourth is there only with an input filter, or while it is still looked at.
+    let input = (ClosedLoop::Input, "Input impedance", "Input", "input-impedance");
+    let filtered =
+        desk.session.analysis().and_then(|a| a.shown.as_ref().ok()).is_some_and(|d| d.input_filter.is_some());
+    let fourth = (filtered || desk.view.closed_loop == ClosedLoop::Input).then_some(input);
     let narrow = inner.width() < steps::NARROW;
-    for (closed_loop, name, short, term) in names {
+    for (closed_loop, name, short, term) in names.into_iter().chain(fourth) {
         let chosen = desk.view.closed_loop == closed_loop;
         if steps::tab_ui(&mut row, (name, if narrow { short } else { name }), term, chosen) {
             desk.view.closed_loop = closed_loop;
@@ -81,19 +108,8 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     }
 }
 
-/// Closed-loop curve, open-loop curve and unit of what is shown.
-fn chosen(curves: &Curves, closed_loop: ClosedLoop) -> (&[f64], Option<&[f64]>, Unit) {
-    match closed_loop {
-        ClosedLoop::Impedance => {
-            (&curves.output_impedance_ohm, Some(&curves.open_loop_output_impedance_ohm), Unit::Ohm)
-        }
-        ClosedLoop::Line => (&curves.line_to_output_db, Some(&curves.open_loop_line_to_output_db), Unit::Decibel),
-        ClosedLoop::Reference => (&curves.reference_to_output_db, None, Unit::Decibel),
-    }
-}
-
-fn value_axis(frame: Rect, closed: &[f64], open: Option<&[f64]>, unit: Unit) -> Axis {
-    let all = closed.iter().chain(open.unwrap_or_default()).copied();
+fn value_axis<'a>(frame: Rect, shown: impl Iterator<Item = &'a [f64]>, unit: Unit) -> Axis {
+    let all = shown.flatten().copied();
     if unit == Unit::Ohm {
         let (least, greatest) = extent(all.filter(|value| *value > 0.0)).unwrap_or((1e-3, 1.0));
         let low = (least.log10() - 0.1).max(greatest.log10() - 6.0);
@@ -172,9 +188,54 @@ fn peak(painter: &egui::Painter, plot: &Plot, curves: &Curves, palette: &Palette
     plot::tag(painter, pos2(x, at.y - 2.0), align, &text, theme::strong(12.0), (palette.good, ground));
 }
 
+/// Draws the least margin between filter and converter.
+fn margin(painter: &egui::Painter, plot: &Plot, result: &InputFilterResult, palette: &Palette) {
+    let least = result.least_margin();
+    if !plot.x.holds(least.frequency_hz) {
+        return;
+    }
+    let ends = [least.filter_ohm, least.converter_ohm].map(|ohm| plot.at(least.frequency_hz, ohm));
+    let colour = if least.margin_db < 0.0 { palette.problem } else { palette.good };
+    painter.line_segment(ends, Stroke::new(theme::CURVE, colour));
+    for end in ends {
+        painter.circle_filled(end, 3.0, colour);
+    }
+    let (x, y) = (ends[0].x, 0.5 * (ends[0].y + ends[1].y));
+    let at_left = x + 160.0 > plot.rect.right();
+    let align = if at_left { Align2::RIGHT_CENTER } else { Align2::LEFT_CENTER };
+    let x = if at_left { x - 10.0 } else { x + 10.0 };
+    let ground = palette.canvas.gamma_multiply(0.8);
+    let words = crate::figure::margin_in_words(result);
+    plot::tag(painter, pos2(x, y), align, &words, theme::strong(12.0), (colour, ground));
+}
+
+/// What the lines mean: values, name, term and pen of each.
+struct Legend<'a> {
+    rows: Vec<(&'a [f64], &'static str, &'static str, Pen)>,
+    unit: Unit,
+}
+
+impl<'a> Legend<'a> {
+    fn new(
+        which: ClosedLoop,
+        (closed, open, unit): (&'a [f64], Option<&'a [f64]>, Unit),
+        beside: &[(&'a [f64], &'static str)],
+        palette: &Palette,
+    ) -> Self {
+        let names = match which {
+            ClosedLoop::Input => ["Zi, closed loop", "ZD, open loop"],
+            _ => ["closed loop", "open loop"],
+        };
+        let mut rows = vec![(closed, names[0], "closed-loop", closed_pen(palette))];
+        rows.extend(open.map(|values| (values, names[1], "open-loop", open_pen(palette))));
+        rows.extend(beside.iter().map(|(values, name)| (*values, *name, "input-impedance", beside_pen(name, palette))));
+        Legend { rows, unit }
+    }
+}
+
 /// The linked line under the pointer, the values there, and what the lines mean.
-fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut Desk<'_>, palette: &Palette) {
-    let (closed, open, unit) = shown;
+fn read(ui: &Ui, plot: &Plot, legend: &Legend<'_>, desk: &mut Desk<'_>, palette: &Palette) {
+    let unit = legend.unit;
     let painter = ui.painter().with_clip_rect(plot.rect);
     let pointer = ui.input(|input| input.pointer.hover_pos()).filter(|at| plot.rect.contains(*at));
     let cursor_hz = pointer.map(|at| plot.x.value(at.x)).or(desk.view.cursor_hz);
@@ -186,13 +247,8 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
     if let Some(frequency_hz) = cursor_hz {
         painter.vline(plot.x.at(frequency_hz), plot.rect.y_range(), Stroke::new(1.0, palette.weak.gamma_multiply(0.6)));
     }
-    let entries = [
-        (Some(closed), "closed loop", "closed-loop", closed_pen(palette)),
-        (open, "open loop", "open-loop", open_pen(palette)),
-    ];
     let mut y = plot.rect.top() + 12.0;
-    for (values, name, term, pen) in entries {
-        let Some(values) = values else { continue };
+    for (values, name, term, pen) in &legend.rows {
         let text = format!("{name}{}", value(values).unwrap_or_default());
         let ground = palette.canvas.gamma_multiply(0.85);
         let rect = plot::tag(
@@ -203,8 +259,8 @@ fn read(ui: &Ui, plot: &Plot, shown: (&[f64], Option<&[f64]>, Unit), desk: &mut 
             theme::small(),
             (palette.weak, ground),
         );
-        plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, pen);
-        let response = ui.interact(rect, ui.scope_id().with(term), egui::Sense::hover());
+        plot::sample(&painter, pos2(plot.rect.left() + 8.0, rect.center().y), 20.0, *pen);
+        let response = ui.interact(rect, ui.scope_id().with(name), egui::Sense::hover());
         response.widget_info(|| egui::WidgetInfo::labeled(egui::Role::Label, true, &text));
         super::explain::explained(ui, response, term, super::explain::nothing);
         y += 15.0;

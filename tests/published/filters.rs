@@ -1,10 +1,13 @@
 //! Input filters and second stages: worked examples of textbooks, and nodal equations written by hand.
 
 use crate::common::{
-    PUBLISHED, PUBLISHED_DEG, assert_absolute, assert_relative, at_one_condition, lossless, nominal, ratio,
+    PUBLISHED, PUBLISHED_DEG, analysed, assert_absolute, assert_relative, at_one_condition, checked, lossless, nominal,
+    ratio,
 };
+use crate::registry::of_topology;
 use crate::textbook::{buck, printed_network, set};
-use polewright::analysis::Curves;
+use polewright::analysis::{Curves, Level, Request, Shown, analyse};
+use polewright::converter;
 use polewright::design::Design;
 use polewright::linear::{Complex, Verdict};
 
@@ -221,6 +224,144 @@ fn the_extra_element_theorem() {
                     let zi = polar(&z.closed_loop_ohm, &z.closed_loop_deg);
                     let expected = (zd.inv() + t / zn) / (t + 1.0);
                     assert!((zi * expected - 1.0).norm() < 1e-6, "{topology} {mode}");
+                }
+            }
+        }
+    }
+}
+
+/// A loop the filter makes unstable is told so, by the filter's resonance; the remedy that comes with it is one press, and mends it.
+#[test]
+fn the_remedy_mends_what_the_filter_spoils() {
+    let mut design = buck();
+    printed_network(&mut design, Some(500.0));
+    with_filter(&mut design, 330e-6, 470e-6);
+    let analysis = analysed(&design, &[100.0], 20);
+    let told = &analysis.findings[0];
+    assert!(told.is_problem() && told.place == "stage.input-filter", "{told:?}");
+    assert!(told.message.contains("because of the input filter") && told.message.contains("404 Hz"), "{told:?}");
+    assert!(analysis.findings.iter().any(|f| f.message.contains("criterion is violated")), "{:?}", analysis.findings);
+    let result = analysis.conditions[4].outcome.as_ref().expect("computed").input_filter.expect("a filter");
+    assert_eq!(result.stable_without, Some(true));
+    let remedy = told.remedy.as_ref().expect("a remedy");
+    for (path, key) in &remedy.choices {
+        design.set_from_text(path, key).expect("an option");
+    }
+    for (path, value) in &remedy.values {
+        design.values.set(path, *value).expect("finite");
+    }
+    let mended = analysed(&design, &[100.0], 20);
+    assert!(mended.conditions.iter().all(|c| c.outcome.as_ref().is_ok_and(|s| s.loop_gain.stable())));
+    let margin = mended.conditions[4].outcome.as_ref().expect("computed").input_filter.expect("a filter");
+    assert!(margin.least_margin().margin_db > 5.9, "{margin:?}");
+    assert!(!mended.findings.iter().any(|f| f.place == "stage.input-filter"), "{:?}", mended.findings);
+}
+
+/// A load behind a second stage whose bank is sensed: closed-loop responses at the load by nodal equations, from the loop's own
+/// numbers. Above the crossover nothing but the second stage and the bank stands at the load.
+#[test]
+fn output_impedance_beyond_the_sense_point() {
+    let (lo, dcr, co, esr) = (1e-6, 0.01, 22e-6, 0.005);
+    let mut design = buck();
+    printed_network(&mut design, Some(500.0));
+    design.set_from_text("stage.output-filter", "fitted").expect("an option");
+    design.set_from_text("stage.load", "current").expect("an option");
+    set(
+        &mut design,
+        &[
+            ("stage.output-filter.inductance", lo),
+            ("stage.output-filter.resistance", dcr),
+            ("stage.output-filter.capacitance", co),
+            ("stage.output-filter.esr", esr),
+            ("stage.bank.1.esr", 0.01),
+        ],
+    );
+    let frequencies = [50.0, 1e3, 5e3, 20e3, 34e3];
+    for sense in ["bank", "load"] {
+        design.set_from_text("stage.output-filter.sense", sense).expect("an option");
+        let detail = nominal(&design, &frequencies);
+        let drop = if sense == "bank" { 5.0 * dcr } else { 0.0 };
+        assert_absolute("the load's voltage", detail.operating_point.load_voltage, 15.0 - drop, 1e-12);
+        let step = detail.steps.load.as_ref().expect("stable");
+        assert_absolute("before the step", step.initial_v, 15.0 - drop, 1e-12);
+        let c = &detail.curves;
+        for (k, f) in frequencies.iter().enumerate() {
+            let s = Complex::new(0.0, std::f64::consts::TAU * f);
+            let (series, shunt) = (s * lo + dcr, (s * co).inv() + esr);
+            // The buck's own output: inductor beside bank; it drives the second stage.
+            let bank = (s * 500e-6).inv() + 0.01;
+            let own = ((s * 50e-6).inv() + bank.inv()).inv();
+            let duty_gain = 28.0 / 4.0;
+            // Sensed voltage from control, and the divider into the second stage.
+            let chain = series + shunt;
+            let at_bank = (own.inv() + chain.inv()).inv() / (s * 50e-6) * duty_gain;
+            let over = shunt / chain;
+            let network = Complex::from_polar(ratio(c.compensator_db[k]), c.compensator_deg[k].to_radians());
+            // Injected current at the load, loop open: at the load and at the bank.
+            let open = (shunt.inv() + (series + own).inv()).inv();
+            let open_bank = open * own / (series + own);
+            let (sensed_from_control, sensed_from_load) =
+                if sense == "bank" { (at_bank, open_bank) } else { (at_bank * over, open) };
+            let t = sensed_from_control * network;
+            let closed = open - at_bank * over * network * sensed_from_load / (t + 1.0);
+            assert_relative("output impedance", c.output_impedance_ohm[k], closed.norm(), 1e-6);
+            let plant = Complex::from_polar(ratio(c.plant_db[k]), c.plant_deg[k].to_radians());
+            assert!((plant / sensed_from_control - 1.0).norm() < 1e-6);
+            assert_relative("open loop", c.open_loop_output_impedance_ohm[k], open.norm(), 1e-6);
+        }
+    }
+}
+
+/// Every topology behind every input filter and before every second stage, in every control mode: computed, through the file and back.
+#[test]
+fn every_topology_with_every_filter() {
+    for topology in converter::registry() {
+        for (input, damping) in [("none", "none"), ("fitted", "none"), ("fitted", "capacitor"), ("fitted", "inductor")]
+        {
+            for (output, across, sense) in
+                [("none", "none", "load"), ("fitted", "none", "load"), ("fitted", "resistor", "bank")]
+            {
+                for mode in ["voltage", "peak-current", "valley-current", "average-current"] {
+                    let mut design = of_topology(topology.key, topology.reach);
+                    let choices = [
+                        ("stage.input-filter", input),
+                        ("stage.input-filter.damping", damping),
+                        ("stage.output-filter", output),
+                        ("stage.output-filter.damping", across),
+                        ("stage.output-filter.sense", sense),
+                        ("control.mode", mode),
+                    ];
+                    for (path, key) in choices {
+                        design.set_from_text(path, key).expect("an option");
+                    }
+                    let mut text = Vec::new();
+                    polewright::design::file::write(&design, &mut text).expect("written");
+                    let back = polewright::design::file::read(&mut text.as_slice()).expect("read");
+                    assert_eq!(back, design, "{choices:?}");
+                    let request = Request {
+                        shown: Shown::Levels(Level::Nominal, Level::Greatest),
+                        frequencies_hz: vec![1e3, 1e4],
+                        band_frequencies_hz: Vec::new(),
+                        step_points: 20,
+                    };
+                    let analysis = analyse(&checked(&design), &request);
+                    let detail =
+                        analysis.shown.unwrap_or_else(|finding| panic!("{} {choices:?}: {finding:?}", topology.key));
+                    assert_eq!(detail.input_filter.is_some(), input == "fitted");
+                    let inductors = usize::from(input == "fitted")
+                        + usize::from(damping == "inductor")
+                        + usize::from(output == "fitted");
+                    assert_eq!(detail.operating_point.inductors.len(), 1 + inductors);
+                    let finite = |values: &[f64]| values.len() == 2 && values.iter().all(|v| v.is_finite());
+                    let c = &detail.curves;
+                    assert!(finite(&c.loop_db) && finite(&c.output_impedance_ohm) && finite(&c.line_to_output_db));
+                    if let Some(filter) = &detail.input_filter {
+                        let z = &filter.curves;
+                        for curve in [&z.filter_ohm, &z.open_loop_ohm, &z.nulled_ohm, &z.closed_loop_ohm] {
+                            assert!(finite(curve), "{choices:?}: {z:?}");
+                        }
+                        assert!(filter.result.margins.iter().all(|m| m.margin_db.is_finite()), "{filter:?}");
+                    }
                 }
             }
         }

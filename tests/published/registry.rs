@@ -19,7 +19,7 @@ fn sample_path(file: &str) -> String {
 }
 
 /// A design of this topology that its reach allows, from the defaults.
-fn of_topology(key: &str, reach: Reach) -> Design {
+pub(crate) fn of_topology(key: &str, reach: Reach) -> Design {
     let mut design = Design::default();
     design.set_from_text("stage.topology", key).expect("registered");
     let input = design.values.get("stage.input.greatest").expect("a default");

@@ -38,6 +38,8 @@ impl Place {
         let data = DataFolder::at(self.data());
         let mut harness = Harness::builder()
             .with_size(vec2(1280.0, 800.0))
+            // Threads wake the window whenever they have news.
+            .with_max_steps(64)
             .build_eframe(|cc| App::keeping(&cc.egui_ctx, design, path, data));
         harness.run();
         harness

@@ -61,6 +61,7 @@ enum ClosedLoopWord {
     Impedance,
     Line,
     Reference,
+    Input,
 }
 
 /// What is seen and how.
