@@ -209,6 +209,12 @@ pub static TERMS: &[Term] = &[
         "arg ((1 + Zo/ZN) / (1 + Zo/ZD))",
     ),
     term(
+        "load-voltage",
+        "Voltage at the load",
+        "What the load sees behind a second stage that is not sensed: the regulated voltage less the drop of the second winding.",
+        "Vload = V − Iload·Ro",
+    ),
+    term(
         "input-impedance",
         "Input impedance",
         "At the stage's input terminals: ZD with the control voltage at rest, ZN with the control voltage that holds the output \
