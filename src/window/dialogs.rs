@@ -2,11 +2,11 @@
 
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, TextEdit, Ui};
 
-use super::command::{COMMANDS, Command};
+use super::command::Command;
 use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
-use super::{bar, new_design, recents, recovery};
+use super::{bar, finder, new_design, recents, recovery};
 
 /// Width of a dialog [points].
 const DIALOG: f32 = 520.0;
