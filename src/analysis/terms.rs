@@ -177,6 +177,13 @@ pub static TERMS: &[Term] = &[
         "f_RHP = (1 − D)²·R / (2π·L) of a boost, divided by D for a buck-boost",
     ),
     term(
+        "input-filter",
+        "Input filter",
+        "Resonance of the input filter. The converter's input has a negative resistance, so the filter wants damping: its output \
+         impedance should stay well below the converter's input impedance.",
+        "f = 1 / (2π·√(Lf·Cin))",
+    ),
+    term(
         "output-filter",
         "Output filter",
         "Resonance of the second stage: its inductor with the bank and its own capacitor in series. Inside the loop it turns the \
@@ -220,19 +227,6 @@ pub static TERMS: &[Term] = &[
         "½ switching",
         "A modulator samples once a period: above half the switching frequency averaged curves mean nothing.",
         "fs / 2",
-    ),
-    term(
-        "input-filter",
-        "Input filter",
-        "Resonance of the input filter. The converter's input has a negative resistance, so the filter wants damping: its output \
-         impedance should stay well below the converter's input impedance.",
-        "f = 1 / (2π·√(Lf·Cin))",
-    ),
-    term(
-        "slope-factor",
-        "Slope factor mc",
-        "How much the compensating ramp steepens the slope that the comparator sees.",
-        "mc = 1 + Se / Sn",
     ),
     term("half-turn", "Half turn", "The negative feedback itself, from which the loop's lag is taken off.", "+180°"),
     term(
