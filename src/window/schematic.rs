@@ -100,7 +100,7 @@ pub(super) fn schematic_ui(ui: &mut Ui, sheet: Sheet, desk: &mut Desk<'_>) {
     let session = desk.session;
     let kept = desk.view.schematics.kept(sheet);
     kept.follow(sheet, session, room);
-    let [width, height] = kept.figure.size.map(|length| length as f32);
+    let [width, height] = kept.figure.size.map(narrow);
     if width <= 0.0 {
         return;
     }
@@ -125,8 +125,13 @@ struct Scale {
 
 impl Scale {
     fn at(self, [x, y]: figure::Point) -> Pos2 {
-        self.origin + vec2(x as f32, y as f32) * self.scale
+        self.origin + vec2(narrow(x), narrow(y)) * self.scale
     }
+}
+
+#[expect(clippy::cast_possible_truncation, reason = "lengths of a figure are a few hundred points")]
+fn narrow(length: f64) -> f32 {
+    length as f32
 }
 
 /// One part as a thing to press.
@@ -142,8 +147,7 @@ fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk
             ui.label(row);
         }
     });
-    let target = place.paths.iter().find(|path| desk.session.design().entries().iter().any(|row| row.path == **path));
-    let target = target.cloned().filter(|_| response.clicked());
+    let target = if response.clicked() { target(place, desk) } else { None };
     let painter = ui.painter();
     if response.hovered() {
         painter.rect_filled(rect, 3.0, palette(ui).accent_ground);
@@ -156,6 +160,12 @@ fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk
     if let Some(path) = target {
         desk.view.go_to(&path);
     }
+}
+
+/// The entry a part leads to: the first that has a field.
+fn target(place: &Place, desk: &Desk<'_>) -> Option<String> {
+    let applying = desk.session.design().entries();
+    place.paths.iter().find(|path| applying.iter().any(|entry| entry.path == **path)).cloned()
 }
 
 /// Names and values of the entries a part stands for, as far as they apply.
@@ -227,7 +237,7 @@ impl Brush<'_> {
         };
         let colour = |role| self.light.unwrap_or_else(|| theme::of_role(role, self.palette));
         let heavier = if self.light.is_some() { 1.35 } else { 1.0 };
-        let pen = |width: f64, role| Stroke::new((width as f32 * self.view.scale).max(1.0) * heavier, colour(role));
+        let pen = |width: f64, role| Stroke::new((narrow(width) * self.view.scale).max(1.0) * heavier, colour(role));
         match mark {
             Mark::Line { points, role, width, .. } => {
                 self.painter.add(Shape::line(points.iter().map(at).collect(), pen(*width, *role)));
@@ -237,14 +247,14 @@ impl Brush<'_> {
                 self.painter.add(Shape::convex_polygon(points, colour(*role), Stroke::NONE));
             }
             Mark::Circle { centre, radius, role, width } => {
-                let radius = *radius as f32 * self.view.scale;
+                let radius = narrow(*radius) * self.view.scale;
                 match width {
                     Some(width) => self.painter.circle_stroke(at(centre), radius, pen(*width, *role)),
                     None => self.painter.circle_filled(at(centre), radius, colour(*role)),
                 };
             }
             Mark::Text { at: anchor, text, role, size, weight, align } => {
-                let size = *size as f32 * self.view.scale;
+                let size = narrow(*size) * self.view.scale;
                 let font = match weight {
                     Weight::Regular => egui::FontId::new(size, egui::FontFamily::Proportional),
                     Weight::Bold => theme::strong(size),
