@@ -22,6 +22,8 @@ pub struct Shown {
 const ROOM: [f64; 4] = [62.0, 18.0, 76.0, 44.0];
 /// Distance between the gain's and the phase's frame [points].
 const GAP: f64 = 14.0;
+/// Mean width of a letter of a landmark's name [points]; names stand well apart, so an estimate serves.
+const LETTER: f64 = 6.0;
 /// Gains that are shown at most [dB].
 const GAINS: (f64, f64) = (-80.0, 100.0);
 
@@ -122,8 +124,6 @@ fn bands(figure: &mut Figure, analysis: &Analysis, (gain, phase): (&Chart, &Char
 fn landmarks(figure: &mut Figure, detail: &Detail, (gain, phase): (&Chart, &Chart)) {
     let mut marks: Vec<_> = detail.landmarks.iter().filter(|mark| gain.x.holds(mark.frequency_hz)).collect();
     marks.sort_by(|one, other| one.frequency_hz.total_cmp(&other.frequency_hz));
-    /// Mean width of a letter [points]; names stand well apart, so an estimate serves.
-    const LETTER: f64 = 6.0;
     let mut taken = [f64::NEG_INFINITY; 2];
     for mark in marks {
         for chart in [gain, phase] {

@@ -14,7 +14,7 @@ pub(super) struct InputFilter {
     peak_hz: f64,
     least_input_impedance_ohm: f64,
     least_input_impedance_hz: f64,
-    margins: Vec<Margin>,
+    margins: Vec<Distance>,
     gain_change_db: f64,
     gain_change_hz: f64,
     phase_change_deg: f64,
@@ -25,7 +25,7 @@ pub(super) struct InputFilter {
 }
 
 #[derive(Serialize)]
-struct Margin {
+struct Distance {
     against: &'static str,
     margin_db: f64,
     frequency_hz: f64,
@@ -60,7 +60,7 @@ struct Response {
 /// The object of a condition; none without a filter.
 pub(super) fn object(detail: &Detail) -> Option<InputFilter> {
     let InputFilterDetail { result, curves, damping } = detail.input_filter.as_ref()?;
-    let margins = result.margins.iter().map(|m| Margin {
+    let margins = result.margins.iter().map(|m| Distance {
         against: m.against.name(),
         margin_db: m.margin_db,
         frequency_hz: m.frequency_hz,

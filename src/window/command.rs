@@ -229,6 +229,8 @@ pub enum Command {
     ToggleReadouts,
     /// Show or fold the schematics.
     ToggleSchematics,
+    /// Go to the field of the entry with this path.
+    GoTo(&'static str),
     /// Show the searchable list of commands.
     ListCommands,
     /// Show the hint for who is new here, or close it.

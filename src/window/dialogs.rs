@@ -2,11 +2,11 @@
 
 use eframe::egui::{Button, Frame, Id, Key, Modal, RichText, ScrollArea, TextEdit, Ui};
 
-use super::command::{COMMANDS, Command};
+use super::command::Command;
 use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
-use super::{bar, new_design, recents, recovery};
+use super::{bar, finder, new_design, recents, recovery};
 
 /// Width of a dialog [points].
 const DIALOG: f32 = 520.0;
@@ -29,7 +29,7 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             Dialog::Unsaved(next) => unsaved_ui(ui, next, desk),
             Dialog::Overwrite { path } => recovery::overwrite_ui(ui, path, desk),
             Dialog::Recovery { discarding } => recovery::recovery_ui(ui, discarding, desk),
-            Dialog::Commands { search } => commands_ui(ui, search, desk),
+            Dialog::Commands { search } => finder::finder_ui(ui, search, desk),
         }
     });
     if response.should_close() {
@@ -153,34 +153,6 @@ fn unsaved_ui(ui: &mut Ui, next: &Command, desk: &mut Desk<'_>) {
         if ui.button("Cancel").clicked() {
             desk.ask(Command::Dismiss);
         }
-    });
-}
-
-fn commands_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
-    let edit = TextEdit::singleline(search).hint_text("search a command").desired_width(f32::INFINITY);
-    let response = ui.add(edit).accessible_name("Search a command");
-    let entered = response.lost_focus() && ui.input(|input| input.key_pressed(Key::Enter));
-    if ui.memory(|memory| memory.focused().is_none()) && !entered {
-        response.request_focus();
-    }
-    ui.add_space(6.0);
-    let wanted = search.to_lowercase();
-    let found: Vec<_> = COMMANDS
-        .iter()
-        .filter(|row| row.name.to_lowercase().contains(&wanted) || row.help.to_lowercase().contains(&wanted))
-        .collect();
-    if let (true, Some(first)) = (entered, found.first()) {
-        desk.ask(Command::Dismiss);
-        desk.ask(first.command.clone());
-    }
-    list(ui, "commands", 360.0).show(ui, |ui| {
-        for row in found {
-            if bar::command_ui(ui, row, false) {
-                desk.ask(Command::Dismiss);
-                desk.ask(row.command.clone());
-            }
-        }
-        recents::commands_ui(ui, &wanted, desk);
     });
 }
 

@@ -20,6 +20,7 @@ mod drawing;
 mod explain;
 mod export;
 mod files;
+mod finder;
 mod findings;
 mod form;
 mod goal;

@@ -43,12 +43,25 @@ fn rows(point: &OperatingPoint) -> Vec<Row> {
     for inductor in &point.inductors {
         let current = &inductor.current;
         let text = format!("{}, peak {}", amperes(current.average), amperes(current.peak));
-        let name = capital(inductor.name);
         let rms = format!("RMS {}.", amperes(current.rms));
+        // A filter's inductor has one row, which has little room: its ripple stands in the explanation.
+        if let Some(filter) = inductor.name.strip_suffix(" inductor") {
+            let further =
+                format!("Current of the {}, ripple {} peak to peak. {rms}", inductor.name, amperes(current.ripple));
+            rows.push(row("inductor-current", &capital(filter), text, further));
+            continue;
+        }
+        let name = capital(inductor.name);
         rows.push(row("inductor-current", &format!("{name} current"), text, rms));
         rows.push(row("inductor-ripple", &format!("{name} ripple"), amperes(current.ripple), none()));
     }
     rows.push(row("input-current", "Input current", amperes(point.input_current), none()));
+    if point.load_voltage < point.output_voltage {
+        let volts = |value| quantity::print_digits(value, Unit::Volt, 4);
+        let further =
+            format!("Behind the second stage; regulated is the bank's voltage, {}.", volts(point.output_voltage));
+        rows.push(row("load-voltage", "Voltage at the load", volts(point.load_voltage), further));
+    }
     let carried = format!("The bank carries {} RMS.", amperes(point.output_bank_rms));
     rows.push(row("output-step", "Output step", quantity::print_digits(point.output_step, Unit::Volt, 3), carried));
     let loss = |loss: &Loss| format!("{}: {}", loss.name, quantity::print_digits(loss.watts, Unit::Watt, 3));

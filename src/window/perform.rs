@@ -340,6 +340,10 @@ impl App {
                 let shown = view.schematics.shown();
                 view.schematics.show(!shown);
             }
+            Command::GoTo(path) => {
+                view.review = false;
+                view.go_to(path);
+            }
             Command::ListCommands => view.dialog = Some(Dialog::Commands { search: String::new() }),
             _ => {}
         }

@@ -31,11 +31,12 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let curves = &detail.curves;
     let (closed, open, unit) = which.of(detail);
     let beside = which.beside(detail);
+    let rows = 1 + usize::from(open.is_some()) + beside.len();
     let (from, to) = super::bode::frequency_range(desk);
     let plot = Plot {
         rect: frame,
         x: Axis::logarithmic(from, to, frame.left(), frame.right()),
-        y: value_axis(frame, beside.iter().map(|curve| curve.0).chain([closed]).chain(open), unit),
+        y: value_axis((frame, rows), beside.iter().map(|curve| curve.0).chain([closed]).chain(open), unit),
     };
     grid(ui, &plot, unit, palette);
     let mut painter = ui.painter().clone();
@@ -104,6 +105,9 @@ fn open_pen(palette: &Palette) -> Pen {
     Pen { colour: palette.held, width: theme::THIN_CURVE, style: LineStyle::Dashed }
 }
 
+/// Below this width four tabs have no room for their full names.
+const FOUR_TABS: f32 = 390.0;
+
 fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let inner = rect.with_min_x(rect.left() + theme::GUTTER - 2.0).with_max_x(rect.right() - theme::RIGHT_GUTTER);
     let mut row =
@@ -113,7 +117,8 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let filtered =
         desk.session.analysis().and_then(|a| a.shown.as_ref().ok()).is_some_and(|d| d.input_filter.is_some());
     let with_input = filtered || desk.view.closed_loop == ClosedLoop::Input;
-    let narrow = inner.width() < steps::NARROW;
+    let needed = if with_input { FOUR_TABS } else { steps::NARROW };
+    let narrow = inner.width() < needed;
     for (closed_loop, name, short, term) in NAMES {
         if closed_loop == ClosedLoop::Input && !with_input {
             continue;
@@ -125,13 +130,14 @@ fn heading_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     }
 }
 
-fn value_axis<'a>(frame: Rect, shown: impl Iterator<Item = &'a [f64]>, unit: Unit) -> Axis {
+fn value_axis<'a>((frame, rows): (Rect, usize), shown: impl Iterator<Item = &'a [f64]>, unit: Unit) -> Axis {
     let all = shown.flatten().copied();
     if unit == Unit::Ohm {
         let (least, greatest) = extent(all.filter(|value| *value > 0.0)).unwrap_or((1e-3, 1.0));
         let low = (least.log10() - 0.1).max(greatest.log10() - 6.0);
-        // A fifth of the height stays free above the curves for their names.
-        let high = greatest.log10() + 0.25 * (greatest.log10() - low) + 0.1;
+        // A fifth of the height stays free above the curves for their names, more for more of them.
+        let room = if rows > 2 { 0.5 } else { 0.25 };
+        let high = greatest.log10() + room * (greatest.log10() - low) + 0.1;
         return Axis::logarithmic(10f64.powf(low), 10f64.powf(high), frame.bottom(), frame.top());
     }
     let (least, greatest) = extent(all).unwrap_or((-40.0, 20.0));
@@ -222,7 +228,7 @@ fn margin(painter: &egui::Painter, plot: &Plot, result: &InputFilterResult, pale
     let x = if at_left { x - 10.0 } else { x + 10.0 };
     let ground = palette.canvas.gamma_multiply(0.8);
     let words = crate::figure::margin_in_words(result);
-    plot::tag(painter, pos2(x, y), align, &words, theme::strong(12.0), (colour, ground));
+    plot::tag(painter, pos2(x, y), align, &words, theme::strong(11.0), (colour, ground));
 }
 
 /// What the lines mean: values, name, term and pen of each.

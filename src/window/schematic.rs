@@ -13,6 +13,7 @@ use super::theme::{self, Palette, palette};
 use super::view::Desk;
 use crate::compensator::Compensator;
 
+use crate::figure::axis::narrow;
 use crate::figure::{self, Align, Figure, Mark, Numbers, Place, Weight};
 use crate::quantity::{self, Entry};
 
@@ -129,11 +130,6 @@ impl Scale {
     }
 }
 
-#[expect(clippy::cast_possible_truncation, reason = "lengths of a figure are a few hundred points")]
-fn narrow(length: f64) -> f32 {
-    length as f32
-}
-
 /// One part as a thing to press.
 fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk<'_>) {
     let Some(place) = desk.view.schematics.places(sheet).get(index) else { return };
@@ -189,19 +185,22 @@ fn paint(ui: &Ui, sheet: Sheet, view: Scale, desk: &Desk<'_>) {
         Sheet::Stage => palette.plant,
         Sheet::Compensator => palette.compensator,
     };
+    let plain = Brush { painter, palette, view, light: None };
+    let all = |marks: &[Mark], brush: Brush<'_>, shift: Option<egui::Vec2>| {
+        for mark in marks {
+            brush.mark(mark, shift);
+        }
+    };
+    let of = |range: std::ops::Range<usize>| figure.marks.get(range).unwrap_or_default();
     let mut done = 0;
     for (index, place) in figure.places.iter().enumerate() {
-        let wires = Brush { painter, palette, view, light: None };
-        figure.marks.get(done..place.marks.start).unwrap_or_default().iter().for_each(|mark| wires.mark(mark, None));
-        let lit = desk.lit_place(sheet, index, place).then_some(light);
-        let marks = figure.marks.get(place.marks.clone()).unwrap_or_default();
-        let brush = Brush { light: lit, ..wires };
-        let shift = marks.first().map(|mark| brush.onto_pixels(mark)).unwrap_or_default();
-        marks.iter().for_each(|mark| brush.mark(mark, Some(shift)));
+        all(of(done..place.marks.start), plain, None);
+        let marks = of(place.marks.clone());
+        let brush = Brush { light: desk.lit_place(sheet, index, place).then_some(light), ..plain };
+        all(marks, brush, marks.first().map(|mark| brush.onto_pixels(mark)));
         done = place.marks.end;
     }
-    let rest = Brush { painter, palette, view, light: None };
-    figure.marks.get(done..).unwrap_or_default().iter().for_each(|mark| rest.mark(mark, None));
+    all(of(done..figure.marks.len()), plain, None);
 }
 
 /// What marks are painted with.

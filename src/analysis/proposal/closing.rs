@@ -4,9 +4,9 @@
 //! The first try that meets all requirements is taken; where none does, the one that misses least. A bank that was proposed
 //! grows while the load step alone is missed.
 
-use super::Proposal;
 use super::assumption::{Assumption, Draft, full, text};
 use super::brief::{Brief, Parts};
+use super::propose::Proposal;
 use super::stage::{aim, rounded_up};
 use crate::analysis::loop_model::{LoopModel, Shared};
 use crate::analysis::{Analysis, Level, LimitKind, Request, RequirementVerdict, Shown, analyse};

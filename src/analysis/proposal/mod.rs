@@ -10,45 +10,16 @@
 //! | `assumption` | the design being filled in, each value with its reason |
 //! | `stage` | inductor, output bank, resistances, input |
 //! | `control` | modulator, amplifier, divider, requirements |
+//! | `propose` | these in their order, and what comes of them |
 //! | `closing` | the crossover and the compensator, tried at the nine conditions |
 
 mod assumption;
 mod brief;
 mod closing;
 mod control;
+mod propose;
 mod stage;
 
 pub use assumption::Assumption;
 pub use brief::{Brief, Parts};
-
-use super::result::RequirementVerdict;
-use crate::design::Design;
-use crate::finding::Finding;
-use assumption::Draft;
-
-/// A proposed design and what stands behind it.
-#[derive(Clone, Debug)]
-pub struct Proposal {
-    /// The design; its notes list the assumptions.
-    pub design: Design,
-    /// Every value that was not given, in the order it was assumed.
-    pub assumptions: Vec<Assumption>,
-    /// Its requirements over the nine conditions.
-    pub requirements: Vec<RequirementVerdict>,
-    /// Conditions without a result or with an unstable loop, and requirements that are missed, in sentences; empty when all is
-    /// met.
-    pub shortfalls: Vec<String>,
-}
-
-/// Proposes a design.
-///
-/// # Errors
-/// What is wrong with the brief, each problem at its entry; or why no operating point exists.
-pub fn propose(brief: &Brief) -> Result<Proposal, Vec<Finding>> {
-    brief.check()?;
-    let mut draft = Draft::new(brief)?;
-    control::before_the_stage(&mut draft);
-    stage::size(&mut draft, brief)?;
-    control::after_the_stage(&mut draft, brief)?;
-    closing::close(draft, brief)
-}
+pub use propose::{Proposal, propose};
