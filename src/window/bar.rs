@@ -120,6 +120,7 @@ fn chosen(command: &Command, desk: &Desk<'_>) -> bool {
         Command::Tie(kind) => desk.session.tied(*kind),
         Command::ToggleStage => desk.view.stage_column,
         Command::ToggleReadouts => desk.view.readout_column,
+        Command::ToggleSchematics => desk.view.schematics.shown(),
         Command::Theme(theme) => desk.view.theme == *theme,
         _ => false,
     }

@@ -13,6 +13,7 @@ use super::theme::{self, Palette, palette};
 use super::view::Desk;
 use crate::compensator::Compensator;
 
+use crate::figure::axis::narrow;
 use crate::figure::{self, Align, Figure, Mark, Numbers, Place, Weight};
 use crate::quantity::{self, Entry};
 
@@ -100,7 +101,7 @@ pub(super) fn schematic_ui(ui: &mut Ui, sheet: Sheet, desk: &mut Desk<'_>) {
     let session = desk.session;
     let kept = desk.view.schematics.kept(sheet);
     kept.follow(sheet, session, room);
-    let [width, height] = kept.figure.size.map(|length| length as f32);
+    let [width, height] = kept.figure.size.map(narrow);
     if width <= 0.0 {
         return;
     }
@@ -125,7 +126,7 @@ struct Scale {
 
 impl Scale {
     fn at(self, [x, y]: figure::Point) -> Pos2 {
-        self.origin + vec2(x as f32, y as f32) * self.scale
+        self.origin + vec2(narrow(x), narrow(y)) * self.scale
     }
 }
 
@@ -142,8 +143,7 @@ fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk
             ui.label(row);
         }
     });
-    let target = place.paths.iter().find(|path| desk.session.design().entries().iter().any(|row| row.path == **path));
-    let target = target.cloned().filter(|_| response.clicked());
+    let target = if response.clicked() { target(place, desk) } else { None };
     let painter = ui.painter();
     if response.hovered() {
         painter.rect_filled(rect, 3.0, palette(ui).accent_ground);
@@ -156,6 +156,12 @@ fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk
     if let Some(path) = target {
         desk.view.go_to(&path);
     }
+}
+
+/// The entry a part leads to: the first that has a field.
+fn target(place: &Place, desk: &Desk<'_>) -> Option<String> {
+    let applying = desk.session.design().entries();
+    place.paths.iter().find(|path| applying.iter().any(|entry| entry.path == **path)).cloned()
 }
 
 /// Names and values of the entries a part stands for, as far as they apply.
@@ -179,19 +185,22 @@ fn paint(ui: &Ui, sheet: Sheet, view: Scale, desk: &Desk<'_>) {
         Sheet::Stage => palette.plant,
         Sheet::Compensator => palette.compensator,
     };
+    let plain = Brush { painter, palette, view, light: None };
+    let all = |marks: &[Mark], brush: Brush<'_>, shift: Option<egui::Vec2>| {
+        for mark in marks {
+            brush.mark(mark, shift);
+        }
+    };
+    let of = |range: std::ops::Range<usize>| figure.marks.get(range).unwrap_or_default();
     let mut done = 0;
     for (index, place) in figure.places.iter().enumerate() {
-        let wires = Brush { painter, palette, view, light: None };
-        figure.marks.get(done..place.marks.start).unwrap_or_default().iter().for_each(|mark| wires.mark(mark, None));
-        let lit = desk.lit_place(sheet, index, place).then_some(light);
-        let marks = figure.marks.get(place.marks.clone()).unwrap_or_default();
-        let brush = Brush { light: lit, ..wires };
-        let shift = marks.first().map(|mark| brush.onto_pixels(mark)).unwrap_or_default();
-        marks.iter().for_each(|mark| brush.mark(mark, Some(shift)));
+        all(of(done..place.marks.start), plain, None);
+        let marks = of(place.marks.clone());
+        let brush = Brush { light: desk.lit_place(sheet, index, place).then_some(light), ..plain };
+        all(marks, brush, marks.first().map(|mark| brush.onto_pixels(mark)));
         done = place.marks.end;
     }
-    let rest = Brush { painter, palette, view, light: None };
-    figure.marks.get(done..).unwrap_or_default().iter().for_each(|mark| rest.mark(mark, None));
+    all(of(done..figure.marks.len()), plain, None);
 }
 
 /// What marks are painted with.
@@ -227,7 +236,7 @@ impl Brush<'_> {
         };
         let colour = |role| self.light.unwrap_or_else(|| theme::of_role(role, self.palette));
         let heavier = if self.light.is_some() { 1.35 } else { 1.0 };
-        let pen = |width: f64, role| Stroke::new((width as f32 * self.view.scale).max(1.0) * heavier, colour(role));
+        let pen = |width: f64, role| Stroke::new((narrow(width) * self.view.scale).max(1.0) * heavier, colour(role));
         match mark {
             Mark::Line { points, role, width, .. } => {
                 self.painter.add(Shape::line(points.iter().map(at).collect(), pen(*width, *role)));
@@ -237,14 +246,14 @@ impl Brush<'_> {
                 self.painter.add(Shape::convex_polygon(points, colour(*role), Stroke::NONE));
             }
             Mark::Circle { centre, radius, role, width } => {
-                let radius = *radius as f32 * self.view.scale;
+                let radius = narrow(*radius) * self.view.scale;
                 match width {
                     Some(width) => self.painter.circle_stroke(at(centre), radius, pen(*width, *role)),
                     None => self.painter.circle_filled(at(centre), radius, colour(*role)),
                 };
             }
             Mark::Text { at: anchor, text, role, size, weight, align } => {
-                let size = *size as f32 * self.view.scale;
+                let size = narrow(*size) * self.view.scale;
                 let font = match weight {
                     Weight::Regular => egui::FontId::new(size, egui::FontFamily::Proportional),
                     Weight::Bold => theme::strong(size),

@@ -254,9 +254,9 @@ impl View {
     pub(super) fn go_to(&mut self, path: &str) {
         self.readouts_first = path.starts_with("compensator.");
         if self.readouts_first {
-            self.readout_column = true
+            self.readout_column = true;
         } else {
-            self.stage_column = true
+            self.stage_column = true;
         }
         self.seek = Some(path.to_owned());
     }
