@@ -78,16 +78,21 @@ impl Chart {
         }
     }
 
-    /// Lines of a decade grid across, with labels at the decades when they have room below.
+    /// Lines of a decade grid of frequencies across, with labels at the decades when they have room below.
     pub(super) fn decades(&self, figure: &mut Figure, labels: bool) {
+        self.decades_of(figure, labels.then_some(Unit::Hertz));
+    }
+
+    /// Lines of a decade grid across, with labels in a unit at the decades; none without a unit.
+    pub(super) fn decades_of(&self, figure: &mut Figure, labels: Option<Unit>) {
         let (from, to) = self.x.range();
         let [[left, _], [right, bottom]] = self.corners;
         for DecadeLine { value, digit } in decade_lines(from, to) {
             let decade = digit == 1;
             self.vertical(figure, value, if decade { Role::GridStrong } else { Role::Grid }, (0.8, Dash::Solid));
-            if decade && labels {
+            if let Some(unit) = labels.filter(|_| decade) {
                 let at = [f64::from(self.x.at(value)).clamp(left + 10.0, right - 14.0), bottom + 6.0];
-                let words = print_digits(value, Unit::Hertz, 1);
+                let words = print_digits(value, unit, 1);
                 text(figure, at, &words, (Role::Quiet, SMALL, Weight::Regular), (Align::Middle, Align::Start));
             }
         }

@@ -11,6 +11,7 @@ mod response;
 mod stage;
 mod step;
 mod stroke;
+mod sweep;
 mod symbol;
 #[cfg(test)]
 mod tests;
@@ -22,4 +23,5 @@ pub use response::{ClosedLoop, in_words as margin_in_words, response};
 pub use stage::{schematic, stage_schematic};
 pub use step::{Event, step};
 pub use stroke::{Align, Dash, Figure, Mark, Place, Point, Role, Weight};
+pub use sweep::sweep;
 pub use values::Numbers;

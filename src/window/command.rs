@@ -49,6 +49,8 @@ pub enum Exported {
     Step,
     /// The closed-loop plot.
     Response,
+    /// The load sweep.
+    Sweep,
     /// The frequency curves.
     Curves,
     /// The time curve.
@@ -231,6 +233,8 @@ pub enum Command {
     ToggleSchematics,
     /// Go to the field of the entry with this path.
     GoTo(&'static str),
+    /// Show how the loop changes over the load.
+    SweepLoad,
     /// Show the searchable list of commands.
     ListCommands,
     /// Show the hint for who is new here, or close it.

@@ -99,6 +99,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Command::Export(Exported::Response),
     ),
     row(
+        "Load sweep as picture…",
+        Menu::Export,
+        None,
+        "Save crossover, phase margin and duty ratio over the load as PNG or SVG.",
+        Command::Export(Exported::Sweep),
+    ),
+    row(
         "Frequency curves as CSV…",
         Menu::Export,
         Some(key(CTRL_SHIFT, Key::E)),
@@ -215,6 +222,13 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(CTRL, Key::B)),
         "Show or hide the band the loop covers over the nine conditions.",
         Command::ToggleBand,
+    ),
+    row(
+        "Load sweep…",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F8)),
+        "Show crossover, phase margin and duty ratio over the load, and where conduction changes.",
+        Command::SweepLoad,
     ),
     row("Whole range", Menu::View, Some(key(CTRL, Key::Home)), "Show all frequencies again.", Command::WholeRange),
     row(

@@ -6,7 +6,7 @@ use super::command::Command;
 use super::export;
 use super::theme::{self, palette};
 use super::view::{Desk, Dialog};
-use super::{bar, finder, new_design, recents, recovery};
+use super::{bar, finder, new_design, recents, recovery, sweep};
 
 /// Width of a dialog [points].
 const DIALOG: f32 = 520.0;
@@ -20,9 +20,13 @@ pub(super) fn dialog_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             new_design::new_design_ui(ui, desk);
             return;
         }
+        if let Dialog::Sweep(drawn) = &dialog {
+            sweep::sweep_ui(ui, drawn, desk);
+            return;
+        }
         ui.set_width(DIALOG.min(ui.ctx().content_rect().width() - 60.0));
         match &mut dialog {
-            Dialog::New => {}
+            Dialog::New | Dialog::Sweep(_) => {}
             Dialog::Open { path } => open_ui(ui, path, desk),
             Dialog::SaveAs { path } => save_as_ui(ui, path, desk),
             Dialog::Export { what, path } => export::export_ui(ui, *what, path, desk),

@@ -28,6 +28,7 @@ impl Exported {
             Exported::Bode => "bode.png",
             Exported::Step => "step.png",
             Exported::Response => "response.png",
+            Exported::Sweep => "load-sweep.png",
             Exported::Curves => "curves.csv",
             Exported::StepCurve => "step.csv",
         }
@@ -39,6 +40,7 @@ impl Exported {
             Exported::Bode => "Save the Bode plot as a picture",
             Exported::Step => "Save the time plot as a picture",
             Exported::Response => "Save the closed-loop plot as a picture",
+            Exported::Sweep => "Save the load sweep as a picture",
             Exported::Curves => "Save the frequency curves as CSV",
             Exported::StepCurve => "Save the time curve as CSV",
         }
@@ -109,6 +111,9 @@ fn picture(session: &Session, view: &View, what: Exported, path: &Path) -> Resul
 }
 
 fn draw(session: &Session, view: &View, what: Exported) -> Result<Figure, String> {
+    if what == Exported::Sweep {
+        return super::sweep::figure(session);
+    }
     let analysis = usable(session)?;
     let title = &session.design().title;
     let held = session.held().map(|held| (held.name.as_str(), &held.analysis));

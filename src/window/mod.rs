@@ -11,6 +11,7 @@
 mod app;
 mod bar;
 mod bode;
+mod brush;
 mod command;
 mod command_table;
 mod conditions;
@@ -57,6 +58,7 @@ mod session;
 mod stage;
 mod step_marks;
 mod steps;
+mod sweep;
 mod theme;
 mod thin;
 mod ties;

@@ -340,6 +340,10 @@ impl App {
                 let shown = view.schematics.shown();
                 view.schematics.show(!shown);
             }
+            Command::SweepLoad => match super::sweep::figure(&self.session) {
+                Ok(figure) => view.dialog = Some(Dialog::Sweep(Box::new(figure))),
+                Err(text) => view.message = Some(Message { text, failed: true }),
+            },
             Command::GoTo(path) => {
                 view.review = false;
                 view.go_to(path);

@@ -2,19 +2,17 @@
 //!
 //! The figures are worked out once per analysis and width. Axes of parts are put onto whole pixels, so that wires stay crisp.
 
-use eframe::egui::{
-    self, Align2, CursorIcon, Id, Painter, Pos2, Rect, Sense, Shape, Stroke, StrokeKind, Ui, WidgetInfo,
-    emath::GuiRounding, pos2, vec2,
-};
+use eframe::egui::{self, CursorIcon, Id, Rect, Sense, Stroke, StrokeKind, Ui, WidgetInfo, emath::GuiRounding, vec2};
 
+use super::brush::{Brush, Scale};
 use super::pointed::{Pointed, Sheet};
 use super::session::Session;
-use super::theme::{self, Palette, palette};
+use super::theme::palette;
 use super::view::Desk;
 use crate::compensator::Compensator;
 
 use crate::figure::axis::narrow;
-use crate::figure::{self, Align, Figure, Mark, Numbers, Place, Weight};
+use crate::figure::{self, Figure, Mark, Numbers, Place};
 use crate::quantity::{self, Entry};
 
 /// Greatest size of a schematic against its own.
@@ -117,19 +115,6 @@ pub(super) fn schematic_ui(ui: &mut Ui, sheet: Sheet, desk: &mut Desk<'_>) {
     paint(ui, sheet, view, desk);
 }
 
-/// From the figure's lengths to the screen.
-#[derive(Clone, Copy, Debug)]
-struct Scale {
-    origin: Pos2,
-    scale: f32,
-}
-
-impl Scale {
-    fn at(self, [x, y]: figure::Point) -> Pos2 {
-        self.origin + vec2(narrow(x), narrow(y)) * self.scale
-    }
-}
-
 /// One part as a thing to press.
 fn part_ui(ui: &mut Ui, sheet: Sheet, index: usize, view: Scale, desk: &mut Desk<'_>) {
     let Some(place) = desk.view.schematics.places(sheet).get(index) else { return };
@@ -201,74 +186,4 @@ fn paint(ui: &Ui, sheet: Sheet, view: Scale, desk: &Desk<'_>) {
         done = place.marks.end;
     }
     all(of(done..figure.marks.len()), plain, None);
-}
-
-/// What marks are painted with.
-#[derive(Clone, Copy)]
-struct Brush<'a> {
-    painter: &'a Painter,
-    palette: &'a Palette,
-    view: Scale,
-    /// Colour of a part that is lit.
-    light: Option<egui::Color32>,
-}
-
-impl Brush<'_> {
-    /// What puts a part's first point onto the middle of a pixel; the whole part moves by it.
-    fn onto_pixels(&self, mark: &Mark) -> egui::Vec2 {
-        let first = match mark {
-            Mark::Line { points, .. } | Mark::Area { points, .. } => points.first().copied(),
-            Mark::Circle { centre, .. } => Some(*centre),
-            Mark::Text { .. } => None,
-        };
-        first.map(|point| self.view.at(point)).map(|at| self.snapped(at) - at).unwrap_or_default()
-    }
-
-    fn snapped(&self, at: Pos2) -> Pos2 {
-        pos2(self.painter.round_to_pixel_center(at.x), self.painter.round_to_pixel_center(at.y))
-    }
-
-    /// Paints a mark, moved by `shift`; without one, each of its points goes onto pixels.
-    fn mark(&self, mark: &Mark, shift: Option<egui::Vec2>) {
-        let at = |point: &figure::Point| {
-            let at = self.view.at(*point);
-            shift.map_or_else(|| self.snapped(at), |shift| at + shift)
-        };
-        let colour = |role| self.light.unwrap_or_else(|| theme::of_role(role, self.palette));
-        let heavier = if self.light.is_some() { 1.35 } else { 1.0 };
-        let pen = |width: f64, role| Stroke::new((narrow(width) * self.view.scale).max(1.0) * heavier, colour(role));
-        match mark {
-            Mark::Line { points, role, width, .. } => {
-                self.painter.add(Shape::line(points.iter().map(at).collect(), pen(*width, *role)));
-            }
-            Mark::Area { points, role } => {
-                let points = points.iter().map(at).collect();
-                self.painter.add(Shape::convex_polygon(points, colour(*role), Stroke::NONE));
-            }
-            Mark::Circle { centre, radius, role, width } => {
-                let radius = narrow(*radius) * self.view.scale;
-                match width {
-                    Some(width) => self.painter.circle_stroke(at(centre), radius, pen(*width, *role)),
-                    None => self.painter.circle_filled(at(centre), radius, colour(*role)),
-                };
-            }
-            Mark::Text { at: anchor, text, role, size, weight, align } => {
-                let size = narrow(*size) * self.view.scale;
-                let font = match weight {
-                    Weight::Regular => egui::FontId::new(size, egui::FontFamily::Proportional),
-                    Weight::Bold => theme::strong(size),
-                };
-                let place = self.view.at(*anchor);
-                self.painter.text(place, Align2([side(align.0), side(align.1)]), text, font, colour(*role));
-            }
-        }
-    }
-}
-
-fn side(align: Align) -> egui::Align {
-    match align {
-        Align::Start => egui::Align::Min,
-        Align::Middle => egui::Align::Center,
-        Align::End => egui::Align::Max,
-    }
 }

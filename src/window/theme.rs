@@ -6,7 +6,7 @@
 
 use std::sync::Arc;
 
-use crate::figure::Role;
+use crate::figure::{Dash, Role};
 use eframe::egui::{
     self, Color32, CornerRadius, FontData, FontDefinitions, FontFamily, FontId, Margin, Stroke, TextStyle,
     style::WidgetVisuals,
@@ -160,6 +160,16 @@ pub(super) enum LineStyle {
     DashDot,
     /// Dots: what is held, and the open loop.
     Dotted,
+}
+
+/// The style of a figure's line.
+pub(super) fn style_of(dash: Dash) -> LineStyle {
+    match dash {
+        Dash::Solid => LineStyle::Solid,
+        Dash::Dashed => LineStyle::Dashed,
+        Dash::DashDot => LineStyle::DashDot,
+        Dash::Dotted => LineStyle::Dotted,
+    }
 }
 
 impl LineStyle {

@@ -14,6 +14,7 @@ use super::schematic::Schematics;
 use super::session::Session;
 use super::what_if::WhatIf;
 
+use crate::figure::Figure;
 pub(super) use crate::figure::{ClosedLoop, Event};
 
 /// A question or a list over the window.
@@ -50,6 +51,8 @@ pub(super) enum Dialog {
         /// Journal whose removal was asked for and waits for a second word.
         discarding: Option<PathBuf>,
     },
+    /// The load sweep, worked out when it was asked for.
+    Sweep(Box<Figure>),
     /// The searchable list of commands.
     Commands {
         /// What is searched for.

@@ -2,6 +2,7 @@
 
 use eframe::egui;
 use egui_kittest::Harness;
+use egui_kittest::kittest::Queryable;
 use polewright::window::{App, Command, Exported};
 
 use super::{enter, usual};
@@ -43,4 +44,21 @@ fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
     enter(&mut harness, "Inductor", "0");
     let (message, file) = export(&mut harness, Exported::Bode, "stale.svg");
     assert!(message.failed && file.is_none() && message.text.contains("out of date"), "{}", message.text);
+}
+
+#[test]
+fn the_load_sweep_is_shown_and_saved() {
+    let folder = tempfile::tempdir().unwrap();
+    let mut harness = usual();
+    harness.key_press(egui::Key::F8);
+    harness.run();
+    harness.get_by_label("Load sweep");
+    harness.get_by_label("Close").click();
+    harness.run();
+    assert!(harness.query_by_label("Load sweep").is_none());
+    let path = folder.path().join("sweep.svg");
+    harness.state_mut().ask(Command::ExportPath { what: Exported::Sweep, path: path.clone() });
+    harness.run();
+    let svg = std::fs::read_to_string(path).unwrap();
+    assert!(svg.contains("Phase margin") && svg.contains("the current never rests here"));
 }
