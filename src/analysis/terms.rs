@@ -179,8 +179,9 @@ pub static TERMS: &[Term] = &[
     term(
         "input-filter",
         "Input filter",
-        "Undamped resonance of the input filter, where its output impedance peaks.",
-        "1 / (2π·√(Lf·Cin))",
+        "Resonance of the input filter. The converter's input has a negative resistance, so the filter wants damping: its output \
+         impedance should stay well below the converter's input impedance.",
+        "f = 1 / (2π·√(Lf·Cin))",
     ),
     term(
         "output-filter",
@@ -226,81 +227,6 @@ pub static TERMS: &[Term] = &[
         "½ switching",
         "A modulator samples once a period: above half the switching frequency averaged curves mean nothing.",
         "fs / 2",
-    ),
-    term(
-        "input-filter",
-        "Input filter",
-        "Resonance of the input filter. The converter's input has a negative resistance, so the filter wants damping: its output \
-         impedance should stay well below the converter's input impedance.",
-        "f = 1 / (2π·√(Lf·Cin))",
-    ),
-    term(
-        "output-filter",
-        "Output filter",
-        "Resonance of the second stage of the output filter: another half turn of lag above it where the loop senses behind it.",
-        "f = 1 / (2π·√(Lo·C·Co/(C + Co)))",
-    ),
-    term(
-        "low-pole",
-        "Low pole",
-        "With the inductor current commanded, the output bank and the load make one pole in place of the LC resonance.",
-        "fp = (1/R + T·(mc·D' − ½)/L) / (2π·C) of a buck",
-    ),
-    term(
-        "control-voltage",
-        "Control voltage",
-        "Control voltage that holds the operating point: through the ramp, or through sensed current and ramp at the comparator.",
-        "voltage mode: valley + D·ramp; peak current mode: Ri·I_peak + Se·D·T",
-    ),
-    term(
-        "sampling-quality",
-        "Qp at ½ switching",
-        "Quality factor of the pair of poles that sampling the current once a period makes at half the switching frequency. Common \
-         practice: near 1; beyond the subharmonic boundary there is none.",
-        "Qp = 1 / (π·(mc·D' − ½))",
-    ),
-    term(
-        "slope-factor",
-        "Slope factor mc",
-        "How much the compensating ramp steepens the slope that the comparator sees.",
-        "mc = 1 + Se / Sn",
-    ),
-    term(
-        "fast-multiplier",
-        "Fast multiplier α",
-        "By how much a small deviation of the current is multiplied every period; it dies out while α lies between −1 and 1.",
-        "peak: α = −(m2 − me) / (m1 + me)",
-    ),
-    term(
-        "compensating-ramp",
-        "Compensating ramp",
-        "Slope of the ramp added to the sensed current at the comparator; one ramp for all conditions.",
-        "Se = Ri·me",
-    ),
-    term(
-        "ramp-share",
-        "Ramp / current's slope",
-        "The ramp as a share of the slope it works against: the down-slope in peak, the up-slope in valley current mode. Common \
-         practice: one half to one.",
-        "me / m2 in peak, me / m1 in valley current mode",
-    ),
-    term(
-        "inner-crossover",
-        "Inner crossover",
-        "Where the gain of the inner current loop passes 0 dB, the control voltage at rest.",
-        "|Ti(j·2π·fci)| = 1",
-    ),
-    term(
-        "inner-phase-margin",
-        "Inner phase margin",
-        "Phase that is left at the crossover of the inner loop.",
-        "180° + arg Ti(j·2π·fci)",
-    ),
-    term(
-        "inner-gain-margin",
-        "Inner gain margin",
-        "How far the gain of the inner loop may rise until it oscillates.",
-        "−20·log |Ti| where arg Ti = −180° − k·360°",
     ),
     term("half-turn", "Half turn", "The negative feedback itself, from which the loop's lag is taken off.", "+180°"),
     term(

@@ -7,7 +7,7 @@ use crate::quantity::{self, Unit};
 
 /// How values are spread along an axis.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub(crate) enum Spacing {
+pub enum Spacing {
     /// Equal distances for equal differences.
     Linear,
     /// Equal distances for equal ratios.
@@ -16,7 +16,7 @@ pub(crate) enum Spacing {
 
 /// A range of values laid along a range of the screen.
 #[derive(Clone, Copy, Debug, PartialEq)]
-pub(crate) struct Axis {
+pub struct Axis {
     spacing: Spacing,
     low: f64,
     high: f64,
@@ -26,20 +26,20 @@ pub(crate) struct Axis {
 
 impl Axis {
     /// A linear axis from `from` at `start` to `to` at `end`.
-    pub(crate) fn linear(from: f64, to: f64, start: f32, end: f32) -> Self {
+    pub fn linear(from: f64, to: f64, start: f32, end: f32) -> Self {
         let high = if to > from { to } else { from + 1.0 };
         Axis { spacing: Spacing::Linear, low: from, high, start, end }
     }
 
     /// A logarithmic axis from `from` at `start` to `to` at `end`; both positive.
-    pub(crate) fn logarithmic(from: f64, to: f64, start: f32, end: f32) -> Self {
+    pub fn logarithmic(from: f64, to: f64, start: f32, end: f32) -> Self {
         let low = from.max(f64::MIN_POSITIVE).log10();
         let high = to.max(f64::MIN_POSITIVE).log10();
         Axis { spacing: Spacing::Logarithmic, ..Axis::linear(low, high, start, end) }
     }
 
     /// Screen position of a value [points].
-    pub(crate) fn at(&self, value: f64) -> f32 {
+    pub fn at(&self, value: f64) -> f32 {
         self.at_inner(match self.spacing {
             Spacing::Linear => value,
             Spacing::Logarithmic => value.max(f64::MIN_POSITIVE).log10(),
@@ -47,14 +47,14 @@ impl Axis {
     }
 
     /// Screen position of a value already in the axis' own measure: its decimal logarithm on a logarithmic axis.
-    pub(crate) fn at_inner(&self, inner: f64) -> f32 {
+    pub fn at_inner(&self, inner: f64) -> f32 {
         let share = ((inner - self.low) / (self.high - self.low)).clamp(-100.0, 100.0);
         let length = f64::from(self.end) - f64::from(self.start);
         narrow(f64::from(self.start) + share * length)
     }
 
     /// Value at a screen position.
-    pub(crate) fn value(&self, position: f32) -> f64 {
+    pub fn value(&self, position: f32) -> f64 {
         let share = f64::from(position - self.start) / f64::from(self.end - self.start);
         let inner = self.low + share * (self.high - self.low);
         match self.spacing {
@@ -64,7 +64,7 @@ impl Axis {
     }
 
     /// True when the value lies on the axis.
-    pub(crate) fn holds(&self, value: f64) -> bool {
+    pub fn holds(&self, value: f64) -> bool {
         let inner = match self.spacing {
             Spacing::Linear => value,
             Spacing::Logarithmic => value.max(f64::MIN_POSITIVE).log10(),
@@ -73,7 +73,7 @@ impl Axis {
     }
 
     /// Smallest and greatest value.
-    pub(crate) fn range(&self) -> (f64, f64) {
+    pub fn range(&self) -> (f64, f64) {
         match self.spacing {
             Spacing::Linear => (self.low, self.high),
             Spacing::Logarithmic => (10f64.powf(self.low), 10f64.powf(self.high)),
@@ -83,13 +83,13 @@ impl Axis {
 
 /// A screen coordinate from a number worked out in double precision; the loss is far below a pixel.
 #[expect(clippy::cast_possible_truncation, reason = "screen coordinates are a few thousand points at most")]
-pub(crate) fn narrow(value: f64) -> f32 {
+pub fn narrow(value: f64) -> f32 {
     value as f32
 }
 
 /// A line of a decade grid.
 #[derive(Clone, Copy, Debug, PartialEq)]
-pub(crate) struct DecadeLine {
+pub struct DecadeLine {
     /// Where it stands.
     pub value: f64,
     /// 1 on a decade, 2 to 9 within it.
@@ -97,7 +97,7 @@ pub(crate) struct DecadeLine {
 }
 
 /// Lines of a decade grid within a range, rising; at most twenty decades.
-pub(crate) fn decade_lines(from: f64, to: f64) -> impl Iterator<Item = DecadeLine> {
+pub fn decade_lines(from: f64, to: f64) -> impl Iterator<Item = DecadeLine> {
     let first = from.max(f64::MIN_POSITIVE).log10().floor();
     (0..20_u8)
         .flat_map(move |decade| {
@@ -109,7 +109,7 @@ pub(crate) fn decade_lines(from: f64, to: f64) -> impl Iterator<Item = DecadeLin
 }
 
 /// The step of a linear grid: 1, 2 or 5 times a power of ten, so that at most `most` steps fit into `span`.
-pub(crate) fn nice_step(span: f64, most: f64) -> f64 {
+pub fn nice_step(span: f64, most: f64) -> f64 {
     let raw = (span / most).max(f64::MIN_POSITIVE);
     let decade = 10f64.powf(raw.log10().floor());
     let scaled = raw / decade;
@@ -126,19 +126,19 @@ pub(crate) fn nice_step(span: f64, most: f64) -> f64 {
 }
 
 /// Multiples of `step` within a range, rising; at most two hundred.
-pub(crate) fn multiples(from: f64, to: f64, step: f64) -> impl Iterator<Item = f64> {
+pub fn multiples(from: f64, to: f64, step: f64) -> impl Iterator<Item = f64> {
     let first = (from / step - 1e-6).ceil();
     (0..200_u16).map(move |index| (first + f64::from(index)) * step).take_while(move |value| *value <= to + step * 1e-6)
 }
 
 /// Label of a grid line. Zeros behind the last digit are not printed, so six digits say what the grid needs and no more.
-pub(crate) fn grid_label(value: f64, step: f64, unit: Unit) -> String {
+pub fn grid_label(value: f64, step: f64, unit: Unit) -> String {
     let value = if value.abs() < step * 1e-6 { 0.0 } else { value };
     quantity::print_digits(value, unit, 6)
 }
 
 /// Value of a sampled curve between its points, or nothing outside them. `xs` rises.
-pub(crate) fn interpolate(xs: &[f64], ys: &[f64], x: f64) -> Option<f64> {
+pub fn interpolate(xs: &[f64], ys: &[f64], x: f64) -> Option<f64> {
     let after = xs.partition_point(|at| *at < x);
     if after == 0 {
         return (*xs.first()? - x).abs().lt(&1e-9).then(|| ys.first().copied()).flatten();

@@ -1,6 +1,6 @@
 //! Schematics and plots as neutral strokes, labels and colour roles: the window paints them, the exports write them.
 
-pub(crate) mod axis;
+pub mod axis;
 mod bode;
 mod chart;
 mod compensator;

@@ -16,17 +16,21 @@
 //! | `status` | `met`, `not met` or `unusable`, as the exit code |
 //! | `title` | title of the design; `null` when the file cannot be read |
 //! | `condition` | `{input_voltage, load_current, label}` of everything below that is not said to be over all conditions |
-//! | `operating_point` | `{duty, conduction, second_duty, control_voltage, input_current, conduction_loss, boundary_load}`; conduction is `continuous`, `forced continuous` or `discontinuous`, and `second_duty` the share of the period in which the rectifier then conducts, else `null` |
+//! | `operating_point` | `{duty, conduction, second_duty, control_voltage, input_current, conduction_loss, boundary_load, load_voltage}`; conduction is `continuous`, `forced continuous` or `discontinuous`, and `second_duty` the share of the period in which the rectifier then conducts, else `null` |
 //! | `inductors` | `[{name, average, ripple, peak}]` [A], ripple peak to peak |
 //! | `landmarks` | `[{name, frequency_hz}]`, textbook frequencies of the plant |
 //! | `control` | `{mode, control_voltage, clamp, sampling_quality, subharmonic, slope_factor, fast_multiplier, ramp_v_per_s, ramp_share, boundary_ramp_v_per_s, recommended_ramp_v_per_s, inner_loop}`: the control law at the condition; `sampling_quality` is `null` beyond the subharmonic boundary, all of sampling outside peak and valley current mode in continuous conduction |
 //! | `control.inner_loop` | `{stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin, output_voltage, slope_ratio}` of average current mode |
-//! | `loop` | `{stable, crossovers, phase_crossovers, modulus_margin, sensitivity_peak, delay_margin_s, gain_at_half_switching_db}`; `stable` is `null` when undecided |
+//! | `loop` | `{stable, conditionally_stable, crossovers, phase_crossovers, modulus_margin, sensitivity_peak, delay_margin_s, gain_at_half_switching_db}`; `stable` is `null` when undecided |
 //! | `loop.crossovers` | `[{frequency_hz, phase_margin_deg, falling, slope_db_per_decade}]`, all of them |
 //! | `loop.phase_crossovers` | `[{frequency_hz, gain_margin_db}]`, all of them |
-//! | `conditions` | the nine: `[{condition, input_voltage, load_current, duty, conduction, control_voltage, sampling_quality, stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin, load_step_deviation_v, settling_s, problem}]` |
+//! | `conditions` | the nine: `[{condition, input_voltage, load_current, duty, conduction, control_voltage, sampling_quality, stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin, load_step_deviation_v, settling_s, filter_margin_db, problem}]` |
 //! | `worst` | `[{requirement, condition, value}]` over the nine, by key of the read-out |
 //! | `response` | at the frequencies of `--at`, else in 1-2-5 steps from 10 Hz to half the switching frequency: `[{frequency_hz, plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, output_impedance_ohm, output_impedance_deg, line_to_output_db, line_to_output_deg, open_loop_output_impedance_ohm, open_loop_line_to_output_db}]`; plant is control voltage to output voltage with the modulator, compensator is output voltage to control voltage with the inversion taken out |
+//! | `input_filter` | `null` without one; `{resonance_hz, characteristic_impedance_ohm, peak_ohm, peak_hz, least_input_impedance_ohm, least_input_impedance_hz, margins, gain_change_db, gain_change_hz, phase_change_deg, phase_change_hz, stable_without, optimum_damping, response}`: the filter against the converter, and how far it moves the loop gain; `stable_without` only where the loop is unstable |
+//! | `input_filter.margins` | `[{against, margin_db, frequency_hz, converter_ohm, filter_ohm}]`: least distance of the filter's output impedance below each input impedance |
+//! | `input_filter.optimum_damping` | `{across, ratio, resistance_ohm, capacitance_f, inductance_h, peak_ohm, peak_hz}` |
+//! | `input_filter.response` | `[{frequency_hz, filter_ohm, filter_deg, open_loop_ohm, open_loop_deg, nulled_ohm, nulled_deg, closed_loop_ohm, closed_loop_deg}]` |
 //! | `load_step` | `{step_a, deviation_v, settling_s}` |
 //! | `load_sweep` | with `--load-sweep`, else `null`: per input voltage `[{input_voltage, boundary_load, points}]`; conduction is discontinuous below the boundary |
 //! | `load_sweep.points` | `[{load_current, duty, conduction, crossover_hz, phase_margin_deg, gain_margin_db, stable, problem}]`, rising; a point stands on either side of the boundary |

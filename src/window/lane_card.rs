@@ -178,7 +178,7 @@ mod tests {
                 let held = Held { lane: &lane, handle: row.left_center(), taken: &rows, in_hand: true };
                 let rect = place(bounds, vec2(260.0, 34.0), &held);
                 assert!(bounds.contains_rect(rect));
-                let free = |rect: Rect| !rows.iter().any(|row| row.intersects(rect));
+                let free = |rect: Rect| !rows.iter().any(|row| row.shrink(0.1).intersects(rect));
                 // A place somewhat larger than the card is hit by the stride of the search.
                 let roomy = vec2(260.0 + STRIDE, 34.0 + LANE_HEIGHT / 4.0);
                 let somewhere = (0..120_u8).any(|x| {

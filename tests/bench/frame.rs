@@ -61,10 +61,17 @@ impl Hand {
             pressed: true,
             modifiers: Modifiers::NONE,
         };
-        hand.turn(vec![Event::PointerMoved(hand.at)]);
+        // With Alt nothing snaps: every frame moves the lane and is analysed anew.
+        hand.turn(vec![Event::ModifiersChanged(Modifiers::ALT), Event::PointerMoved(hand.at)]);
         hand.turn(vec![press]);
         for _ in 0..20 {
             hand.drag();
+        }
+        let r2 = |hand: &Hand| hand.app.session().design().values.get("compensator.r2");
+        for _ in 0..2 * SWING {
+            let before = r2(&hand);
+            hand.drag();
+            assert!(r2(&hand) != before, "every frame moves the lane");
         }
         let name = hand.app.session().history().undo_name();
         assert!(name.is_some_and(|name| name.starts_with("Move ")), "the lane follows the hand: {name:?}");

@@ -6,6 +6,7 @@ use crate::common::{
 };
 use crate::registry::of_topology;
 use crate::textbook::{buck, printed_network, set};
+use polewright::analysis::loop_model::{LoopModel, Shared};
 use polewright::analysis::{Curves, Level, Request, Shown, analyse};
 use polewright::converter;
 use polewright::design::Design;
@@ -85,6 +86,18 @@ fn three_crossovers_of_a_stable_loop() {
             assert_eq!(crossover.falling, j != 1);
         }
         assert!(detail.loop_gain.stable());
+        if k == 0 {
+            // Slowest oscillating pair −250 ± j3989 Hz.
+            let checked = checked(&design);
+            let shared = Shared::new(&checked).expect("solvable");
+            let condition = converter::StageCondition { input_voltage: 28.0, load_current: 5.0, output_voltage: 15.0 };
+            let closed = LoopModel::new(&checked.stage, &shared, &condition).expect("a loop").closed(&shared);
+            let poles = closed.expect("joined").poles().expect("poles");
+            let oscillating = poles.iter().filter(|p| p.im > 0.0).max_by(|p, q| p.re.total_cmp(&q.re));
+            let pair = oscillating.expect("a pair") / std::f64::consts::TAU;
+            assert_absolute("growth of the slowest pair, as a frequency", pair.re, -250.0, 1.5);
+            assert_relative("its frequency", pair.im, 3989.0, PUBLISHED);
+        }
     }
 }
 

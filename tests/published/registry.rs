@@ -107,7 +107,7 @@ fn every_topology_in_every_control_mode() {
                         match &condition.outcome {
                             Ok(summary) => assert!(summary.control.control_voltage.is_finite(), "{told}"),
                             Err(why) => {
-                                assert!(why.place == "control.slope" && mode == "valley-current", "{told}: {why}")
+                                assert!(why.place == "control.slope" && mode == "valley-current", "{told}: {why}");
                             }
                         }
                     }

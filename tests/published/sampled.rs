@@ -8,6 +8,7 @@ use crate::common::{assert_absolute, assert_relative, at_one_condition, lossless
 use nalgebra::{DMatrix, DVector, RowDVector};
 use polewright::linear::{Complex, expm};
 use std::f64::consts::{PI, TAU};
+use std::fmt::Write as _;
 
 /// States: inductor current, capacitor voltage, filtered current.
 struct Interval {
@@ -209,7 +210,7 @@ fn control_to_output_is_that_of_the_switched_stage() {
         for (k, exact) in exact.iter().enumerate() {
             let gain = detail.curves.plant_db[k] - 20.0 * exact.norm().log10();
             let phase = (detail.curves.plant_deg[k] - exact.arg().to_degrees() + 180.0).rem_euclid(360.0) - 180.0;
-            worst += &format!(" {}: {gain:+.3} dB {phase:+.2}°;", shares[k]);
+            let _ = write!(worst, " {}: {gain:+.3} dB {phase:+.2}°;", shares[k]);
             assert!(gain.abs() < loose * decibels[k] && phase.abs() < loose * degrees[k], "{}:{worst}", case.name);
         }
         assert_relative(case.name, detail.control.control_voltage, control, 0.004);
