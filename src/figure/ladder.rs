@@ -34,10 +34,16 @@ pub(super) enum Manner {
     Under,
     /// Under the ground rail, in two rows by turns.
     InTurn,
+    /// The same, values alone.
+    Tight,
 }
 
 impl Manner {
-    pub(super) const ALL: [Manner; 3] = [Manner::Beside, Manner::Under, Manner::InTurn];
+    pub(super) const ALL: [Manner; 4] = [Manner::Beside, Manner::Under, Manner::InTurn, Manner::Tight];
+
+    fn in_turn(self) -> bool {
+        matches!(self, Manner::InTurn | Manner::Tight)
+    }
 }
 
 /// A part in its place.
@@ -199,7 +205,7 @@ impl Maker<'_> {
 
     fn column(&self, chain: &[Seat], second: bool, number: usize) -> Block {
         let mut words_top = self.heights.ground + UNDER;
-        if self.manner == Manner::InTurn && number % 2 == 1 {
+        if self.manner.in_turn() && number % 2 == 1 {
             words_top += self.row + 2.0;
         }
         let first_top = words_top;
@@ -211,13 +217,9 @@ impl Maker<'_> {
             }
             spots.push(spot);
         }
-        let mut claims: Vec<Frame> = spots
-            .iter()
-            .flat_map(|spot: &Spot| {
-                let words = spot.labels.iter().map(|(label, at, align)| label.frame(*at, *align));
-                words.chain([spot.place]).collect::<Vec<_>>()
-            })
-            .collect();
+        let words =
+            spots.iter().flat_map(|spot: &Spot| &spot.labels).map(|(label, at, align)| label.frame(*at, *align));
+        let mut claims: Vec<Frame> = words.chain(spots.iter().map(|spot| spot.place)).collect();
         claims.push(Frame::new(-1.0, self.heights.rail, 1.0, first_top));
         if number == 0 {
             claims.push(Frame::new(-7.0, self.heights.ground, 7.0, self.heights.ground + 11.0));
@@ -250,10 +252,10 @@ impl Maker<'_> {
             Manner::Beside => ([symbol.right + BESIDE, centre[1]], (Align::Start, Align::Middle), true),
             _ if corner => ([symbol.right + BESIDE, centre[1]], (Align::Start, Align::Middle), true),
             Manner::Under => ([0.0, words_top], (Align::Middle, Align::Start), count == 1),
-            Manner::InTurn => ([0.0, words_top], (Align::Middle, Align::Start), false),
+            Manner::InTurn | Manner::Tight => ([0.0, words_top], (Align::Middle, Align::Start), false),
         };
         let mut spot = spot(*seat, centre, way, vec![(label, at, align)], symbol, near);
-        if words_top > ground + UNDER && self.manner == Manner::InTurn && k == 0 && !corner {
+        if words_top > ground + UNDER && self.manner.in_turn() && k == 0 && !corner {
             spot.leader = Some([[0.0, ground + 2.0], [0.0, words_top - 1.0]]);
         }
         spot

@@ -24,10 +24,14 @@ pub fn schematic(sketch: &Sketch, numbers: &Numbers<'_>, width: f64) -> Figure {
     };
     let items = plan(sketch, wire);
     let words: Vec<Words> = sketch.parts.iter().map(|placed| Words::of(&placed.drawn, numbers)).collect();
-    let tried = Manner::ALL.map(|manner| ladder(&items, sketch, &words, manner, width));
-    let fits = tried.iter().position(|ladder| ladder.frame.right - ladder.frame.left <= width * OVER);
+    let terse: Vec<Words> = words.iter().map(Words::value_alone).collect();
+    let words_in = |manner| if manner == Manner::Tight { &terse } else { &words };
+    // In a drawing that full, designators and lesser numbers would leave no room to read the values.
+    let tried = Manner::ALL.map(|manner| (manner, ladder(&items, sketch, words_in(manner), manner, width)));
+    let fits = tried.iter().position(|(_, ladder)| ladder.frame.right - ladder.frame.left <= width * OVER);
     let [.., last] = &tried;
-    paint(sketch, &items, &words, fits.map_or(last, |at| &tried[at]))
+    let (manner, ladder) = fits.map_or(last, |at| &tried[at]);
+    paint(sketch, &items, words_in(*manner), ladder)
 }
 
 /// Terminals of one node on one rail.

@@ -77,6 +77,11 @@ impl Words {
         Words { designator: drawn.designator.clone(), quiet: quiet.collect(), value, name }
     }
 
+    /// The same without designator and what is written less loudly.
+    pub(super) fn value_alone(&self) -> Self {
+        Words { designator: String::new(), quiet: Vec::new(), ..self.clone() }
+    }
+
     /// Designator and value on one line, the rest below.
     pub(super) fn short_lines(&self) -> Vec<Line> {
         let quiet = self.quiet.iter().map(|text| Line::quiet(text));
