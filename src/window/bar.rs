@@ -1,11 +1,14 @@
 //! The top bar: which design, which condition, the menus; and messages under it.
 
-use eframe::egui::{self, Align, Button, Color32, Layout, Pos2, Rect, RichText, Shape, Ui, UiBuilder, pos2, vec2};
+use eframe::egui::{
+    self, Align, Button, Color32, Layout, Pos2, Rect, RichText, Shape, ThemePreference, Ui, UiBuilder, pos2, vec2,
+};
 
-use super::command::{COMMANDS, Command, Menu, Row};
+use super::command::{COMMANDS, Command, Curve, Exported, Menu, Row};
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{conditions, recents, recovery};
+use crate::compensator::LaneKind;
 use crate::design;
 
 /// Room that the words at the right of the bar take [points].
@@ -72,14 +75,33 @@ fn word_ui(ui: &mut Ui, word: &str, enabled: bool, help: &str, command: Command,
     }
 }
 
+/// Width of a menu [points].
+const MENU: f32 = 264.0;
+
+/// Whether a line stands above a command in its menu: what follows is of another kind.
+fn begins_group(command: &Command) -> bool {
+    matches!(
+        command,
+        Command::Toggle(Curve::Plant)
+            | Command::SweepLoad
+            | Command::WholeRange
+            | Command::ToggleStage
+            | Command::Theme(ThemePreference::Light)
+            | Command::Larger
+            | Command::ListCommands
+            | Command::RoundParts
+            | Command::Tie(LaneKind::Zero)
+            | Command::Export(Exported::Bode | Exported::Curves)
+            | Command::Reload
+            | Command::Quit
+    )
+}
+
 fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
-    ui.set_min_width(250.0);
-    for row in COMMANDS.iter().filter(|row| row.menu == menu) {
-        if command_ui(ui, row, chosen(&row.command, desk)) {
-            desk.ask(row.command.clone());
-            ui.close();
-        }
-    }
+    ui.set_width(MENU);
+    // What closes the window stands last, under the lists of files.
+    let of_menu = |row: &&Row| row.menu == menu && row.command != Command::Quit;
+    COMMANDS.iter().filter(of_menu).for_each(|row| menu_row_ui(ui, row, desk));
     if menu == Menu::Design {
         ui.separator();
         ui.menu_button("Copy and export", |ui| menu_ui(ui, Menu::Export, desk));
@@ -93,6 +115,17 @@ fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
                 ui.close();
             }
         });
+        COMMANDS.iter().filter(|row| row.command == Command::Quit).for_each(|row| menu_row_ui(ui, row, desk));
+    }
+}
+
+fn menu_row_ui(ui: &mut Ui, row: &Row, desk: &mut Desk<'_>) {
+    if begins_group(&row.command) {
+        ui.separator();
+    }
+    if command_ui(ui, row, chosen(&row.command, desk)) {
+        desk.ask(row.command.clone());
+        ui.close();
     }
 }
 
