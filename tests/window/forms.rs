@@ -56,3 +56,20 @@ fn every_option_of_every_choice_in_the_form() {
         }
     }
 }
+
+#[test]
+fn the_list_leads_to_the_field_of_an_entry() {
+    let mut harness = usual();
+    harness.key_press_modifiers(Modifiers::COMMAND, Key::K);
+    harness.run();
+    harness.get_by_label("Search a command").type_text("R2");
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+    let focused = harness.get_all_by_role(Role::TextInput).find(|node| node.is_focused());
+    focused.expect("a field with the cursor").type_text("4k7");
+    harness.run();
+    harness.key_press(Key::Enter);
+    harness.run();
+    assert!((value(&harness, "compensator.r2") - 4.7e3).abs() < 1e-9, "{}", value(&harness, "compensator.r2"));
+}
