@@ -280,7 +280,14 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     painter.galley(at, value_galley, palette.ink);
     painter.galley(pos2(rect.left(), rect.center().y - name.size().y / 2.0), name, palette.weak);
     if let Some(text) = worst_value(readout, analysis) {
-        painter.text(rect.right_center(), Align2::RIGHT_CENTER, text, theme::small(), palette.weak);
+        let layout = |text: &str| painter.layout_no_wrap(text.to_owned(), theme::small(), palette.weak);
+        // A sentence in both columns would run into itself.
+        let mut galley = layout(&text);
+        if text == value && shown_column(rect) + 6.0 > rect.right() - galley.size().x {
+            galley = layout("the same");
+        }
+        let at = Align2::RIGHT_CENTER.anchor_size(rect.right_center(), galley.size()).min;
+        painter.galley(at, galley, palette.weak);
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
