@@ -131,7 +131,10 @@ fn files_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     ui.menu_button("Samples", |ui| {
         let mut pressed = false;
         ui.set_width(SAMPLES);
-        scrolled(ui, "samples", |ui| pressed = samples_ui(ui, desk));
+        scrolled(ui, "samples", |ui| {
+            // A menu stretches the words of a line to its width.
+            ui.with_layout(Layout::top_down(Align::Min), |ui| pressed = samples_ui(ui, desk));
+        });
         if pressed {
             ui.close();
         }

@@ -18,10 +18,11 @@ use crate::quantity::{self, Unit};
 pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
     let palette = palette(ui);
     let galley = |text: &str| ui.painter().layout_no_wrap(text.to_owned(), theme::body(), palette.ink);
-    let mut text = chosen_words(roomy, desk);
-    if galley(&text).size().x + CHOOSER_EDGE > ui.available_width() {
-        text = chosen_words(false, desk);
-    }
+    let fits = |text: &String| galley(text).size().x + CHOOSER_EDGE <= ui.available_width();
+    let bare = desk.session.analysis().map(|analysis| short(&analysis.condition));
+    let words = [chosen_words(roomy, desk), chosen_words(false, desk)];
+    let last = bare.unwrap_or_else(|| words[1].clone());
+    let text = words.into_iter().find(fits).unwrap_or(last);
     let galley = galley(&text);
     let (rect, response) = ui.allocate_exact_size(vec2(galley.size().x + CHOOSER_EDGE, 28.0), Sense::click());
     let ground = if response.hovered() { palette.accent_ground } else { palette.field };
