@@ -66,7 +66,7 @@ fn the_list_leads_to_the_field_of_an_entry() {
     harness.run();
     harness.key_press(Key::Enter);
     harness.run();
-    let focused = harness.get_all_by_role(Role::TextInput).find(|node| node.is_focused());
+    let focused = harness.get_all_by_role(Role::TextInput).find(egui_kittest::Node::is_focused);
     focused.expect("a field with the cursor").type_text("4k7");
     harness.run();
     harness.key_press(Key::Enter);
