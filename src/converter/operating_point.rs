@@ -149,7 +149,19 @@ impl Intervals {
     }
 
     /// The duty ratio below the conversion curve's peak that gives `target` at output `row`, and its steady state.
+    ///
+    /// Searched with a resistor for the load, which draws the same at the target: a load of constant current, or the tangent of
+    /// one of constant power, can put a pole into the conversion curve, which a bracket would take for a root.
     pub(super) fn solve_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
+        if self.to_resistor.1 <= 0.0 {
+            return self.first_duty(target, row);
+        }
+        let found = self.with_resistor().first_duty(target, row);
+        // Where it is out of reach, the limit told is that of the load itself.
+        found.map_err(|by_resistor| self.first_duty(target, row).err().unwrap_or(by_resistor))
+    }
+
+    fn first_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
         let mut below = (0.0, f64::NEG_INFINITY);
         let mut best = (0.0, f64::NEG_INFINITY);
         for k in 0..=SCAN {
@@ -342,20 +354,51 @@ impl Stage {
             return None;
         }
         let mut load = condition.load_current;
-        // The average current is nearly proportional to the load and the ripple nearly independent of it.
-        for _ in 0..50 {
+        let (mut low, mut high, mut held) = (0.0, f64::INFINITY, false);
+        // The average current is nearly proportional to the load and the ripple nearly independent of it; where losses bend that
+        // too much, or the output cannot be held at a load tried, the bracket is halved.
+        for step in 1..=BOUNDARY_STEPS {
             let at = StageCondition { load_current: load, ..*condition };
-            let solution = self.solve_continuous(&at).ok()?;
-            let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
-            let next = load * (current.average - current.valley) / current.average;
-            if !(next.is_finite() && next > 0.0) {
-                return None;
+            let wanted = match self.solve_continuous(&at) {
+                Ok(solution) => {
+                    let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
+                    if current.valley < 0.0 {
+                        low = load;
+                    } else {
+                        (high, held) = (load, true);
+                    }
+                    let next = load * (current.average - current.valley) / current.average;
+                    if (next / load - 1.0).abs() < BOUNDARY_WITHIN {
+                        return Some(next);
+                    }
+                    next
+                }
+                Err(NoOperatingPoint::OutOfReach(OutOfReach::Above { .. })) => {
+                    (high, held) = (load, false);
+                    load
+                }
+                Err(_) => return None,
+            };
+            // Every fourth step halves in any case: near the greatest load that can be held the others only creep.
+            let steady = low < wanted && wanted < high && (step % 4 != 0 || low <= 0.0 || high.is_infinite());
+            load = match (steady, low > 0.0, high.is_finite()) {
+                (true, ..) => wanted,
+                (_, true, true) => (low * high).sqrt(),
+                (_, _, true) => high / BOUNDARY_STRIDE,
+                (_, true, _) => low * BOUNDARY_STRIDE,
+                _ => return None,
+            };
+            if high / low - 1.0 < BOUNDARY_WITHIN {
+                return held.then_some(high);
             }
-            if (next / load - 1.0).abs() < 1e-10 {
-                return Some(next);
-            }
-            load = next;
         }
         None
     }
 }
+
+/// Steps granted to the search for the boundary load, …
+const BOUNDARY_STEPS: u32 = 200;
+/// … how near it must come, as a fraction, …
+const BOUNDARY_WITHIN: f64 = 1e-10;
+/// … and its stride where only one end of the bracket is known.
+const BOUNDARY_STRIDE: f64 = 4.0;
