@@ -13,6 +13,8 @@ use polewright::window::App;
 
 #[path = "window/export.rs"]
 mod export;
+#[path = "window/forms.rs"]
+mod forms;
 #[path = "window/lanes.rs"]
 mod lanes;
 #[path = "window/safety.rs"]

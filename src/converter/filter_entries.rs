@@ -16,7 +16,7 @@ pub(super) const INPUT_INDUCTANCE: Entry = part(
 /// Its winding.
 pub(super) const INPUT_RESISTANCE: Entry = part(
     "stage.input-filter.resistance",
-    "Filter winding resistance",
+    "Filter winding",
     Unit::Ohm,
     Bounds::NonNegative,
     0.01,
@@ -159,7 +159,7 @@ pub(super) const OUTPUT: Choice = Choice {
 /// What damps the output filter.
 pub(super) const OUTPUT_DAMPING: Choice = Choice {
     path: "stage.output-filter.damping",
-    name: "Output filter damping",
+    name: "Output damping",
     options: &[
         ChoiceOption { key: "none", name: "None", help: "Only winding, ESR and load damp the second stage." },
         ChoiceOption {

@@ -226,7 +226,7 @@ pub(super) static COMMANDS: &[Row] = &[
     row(
         "Load sweep…",
         Menu::View,
-        Some(key(Modifiers::NONE, Key::F8)),
+        Some(key(Modifiers::NONE, Key::F9)),
         "Show crossover, phase margin and duty ratio over the load, and where conduction changes.",
         Command::SweepLoad,
     ),

@@ -32,6 +32,9 @@ pub(super) fn finder_ui(ui: &mut Ui, search: &mut String, desk: &mut Desk<'_>) {
         desk.ask(first);
     }
     dialogs::list(ui, "commands", 360.0).show(ui, |ui| {
+        if commands.is_empty() && entries.is_empty() {
+            ui.label(RichText::new("No command and no entry of this design is called so.").color(palette(ui).weak));
+        }
         for row in commands {
             if bar::command_ui(ui, row, false) {
                 desk.ask(Command::Dismiss);

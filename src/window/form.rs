@@ -214,7 +214,8 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
         })
         .inner
         .accessible_name(entry.name);
-    if response.gained_focus() {
+    // A focus that was asked for in the frame before is no longer news, so having it counts, not gaining it.
+    if response.has_focus() && !editing {
         text = exact_text(entry, desk);
         select_all(ui, id, &text);
         desk.view.field = Some(Field { path: entry.path, text });

@@ -50,7 +50,7 @@ fn plots_and_curves_go_into_files_and_tables_onto_the_clipboard() {
 fn the_load_sweep_is_shown_and_saved() {
     let folder = tempfile::tempdir().unwrap();
     let mut harness = usual();
-    harness.key_press(egui::Key::F8);
+    harness.key_press(egui::Key::F9);
     harness.run();
     harness.get_by_label("Load sweep");
     harness.get_by_label("Close").click();

@@ -20,6 +20,7 @@ const STOPS: &[Stop] = &[
     Stop { name: "open", reach: |harness| ask(harness, Command::Open) },
     Stop { name: "a new design", reach: |harness| ask(harness, Command::NewDesign) },
     Stop { name: "a picture to export", reach: |harness| ask(harness, Command::Export(Exported::Bode)) },
+    Stop { name: "the load sweep", reach: |harness| ask(harness, Command::SweepLoad) },
     Stop { name: "curves to export", reach: |harness| ask(harness, Command::Export(Exported::Curves)) },
     Stop { name: "what was left unsaved", reach: |harness| ask(harness, Command::FindUnsaved) },
     Stop { name: "the review", reach: |harness| ask(harness, Command::Review) },
