@@ -150,15 +150,36 @@ impl Intervals {
 
     /// The duty ratio below the conversion curve's peak that gives `target` at output `row`, and its steady state.
     ///
-    /// Searched with a resistor for the load, which draws the same at the target: a load of constant current, or the tangent of
-    /// one of constant power, can put a pole into the conversion curve, which a bracket would take for a root.
+    /// Searched with a resistor for the load, which draws the same at the target but for ripple on ESR, then polished with the load
+    /// itself: a load of constant current, or the tangent of one of constant power, can put a pole into the conversion curve, which a
+    /// bracket would take for a root.
     pub(super) fn solve_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
         if self.to_resistor.1 <= 0.0 {
             return self.first_duty(target, row);
         }
-        let found = self.with_resistor().first_duty(target, row);
-        // Where it is out of reach, the limit told is that of the load itself.
-        found.map_err(|by_resistor| self.first_duty(target, row).err().unwrap_or(by_resistor))
+        match self.with_resistor().first_duty(target, row) {
+            Ok(found) => Ok(self.polished(found, target, row)),
+            // The limit told is that of the load itself.
+            Err(by_resistor) => Err(self.first_duty(target, row).err().unwrap_or(by_resistor)),
+        }
+    }
+
+    /// Newton steps from a duty ratio that is nearly right.
+    fn polished(&self, found: (f64, DVector<f64>), target: f64, row: usize) -> (f64, DVector<f64>) {
+        let (start, mut duty) = (found.0, found.0);
+        let mut best = found;
+        for _ in 0..MOST_STEPS {
+            let Some(steady) = self.steady(duty, row) else { break };
+            let error = steady.output - target;
+            best = (duty, steady.x);
+            let next = duty - error / steady.slope;
+            let near = (next - start).abs() <= NEARLY_RIGHT * start.min(1.0 - start);
+            if !near || error.abs() <= 4.0 * f64::EPSILON * target.abs() || (next - duty).abs() <= f64::EPSILON * duty {
+                break;
+            }
+            duty = next;
+        }
+        best
     }
 
     fn first_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
@@ -227,6 +248,8 @@ impl Intervals {
 
 /// Points of the scan for the first bracket.
 const SCAN: u16 = 12;
+/// How far a duty ratio may be polished, as a fraction of it and of its rest.
+const NEARLY_RIGHT: f64 = 0.1;
 /// Refinements halve the bracket at worst, so this many reach the last bit.
 const MOST_STEPS: u32 = 60;
 

@@ -417,6 +417,21 @@ mod tests {
         assert_eq!(Modes::new(&system).unwrap().poles.len(), 3);
     }
 
+    /// Planted answer: a pair of Q 10⁶, a million turns until its envelope exp(σt) is a hundredth; the last turn beyond the band lies within
+    /// half a turn of that.
+    #[test]
+    fn a_pair_that_rings_for_a_million_turns_settles_where_its_envelope_does() {
+        let pair = Complex::new(-0.1, 2e5);
+        let found = settle(&system(&[], &[pair], pair.norm_sqr()), 0, 0, RampStep::ideal(1.0), 0.01).unwrap();
+        let envelope = 100.0_f64.ln() / 0.1;
+        let half_turn = std::f64::consts::PI / pair.im;
+        let t = found.settling_s.unwrap();
+        assert!(
+            t <= envelope + 1e-9 * envelope && t > envelope - 1.01 * half_turn - 1e-9 * envelope,
+            "{t}, {envelope}"
+        );
+    }
+
     /// Planted answer: a fast mode leaves the band while a slow one lives on far inside it.
     #[test]
     fn a_slow_small_mode_does_not_hide_the_exit_of_a_fast_one() {
