@@ -16,6 +16,9 @@ const LABEL_WIDTH: f64 = 74.0;
 /// Room a label of the axis along the left needs [points].
 const LABEL_HEIGHT: f64 = 22.0;
 
+/// Lines of a decade.
+const EVERY_DIGIT: [u8; 9] = [1, 2, 3, 4, 5, 6, 7, 8, 9];
+
 /// A frame with its axes.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Chart {
@@ -121,12 +124,14 @@ impl Chart {
         }
     }
 
-    /// Lines of a decade grid along the left, with labels at the decades.
+    /// Lines of a decade grid along the left, with labels at the decades, and between them where those are few.
     pub(super) fn level_decades(&self, figure: &mut Figure, unit: Unit) {
         let (low, high) = self.y.range();
+        let labelled = |digits: &[u8]| decade_lines(low, high).filter(|line| digits.contains(&line.digit)).count() > 1;
+        let digits = [&[1][..], &[1, 2, 5]].into_iter().find(|digits| labelled(digits)).unwrap_or(&EVERY_DIGIT);
         for DecadeLine { value, digit } in decade_lines(low, high) {
             self.level(figure, value, if digit == 1 { Role::GridStrong } else { Role::Grid });
-            if digit == 1 {
+            if digits.contains(&digit) {
                 self.level_label(figure, value, &print_digits(value, unit, 1));
             }
         }

@@ -16,6 +16,9 @@ const DASHES: [Dash; 3] = [Dash::Dashed, Dash::Solid, Dash::DashDot];
 /// Mean width of a letter of a mark's words [points].
 const LETTER: f64 = 6.0;
 
+/// Room below and above the curves as shares of their span; above stands the name of the quantity.
+const HEADROOM: (f64, f64) = (0.15, 0.32);
+
 /// A quantity over the load.
 struct Row {
     name: &'static str,
@@ -34,7 +37,7 @@ pub fn sweep(title: &str, sweep: &LoadSweep, size: [f64; 2]) -> Option<Figure> {
     let mut figure = Figure { size, ..Figure::default() };
     let points = sweep.lines.iter().flat_map(|line| &line.points);
     let (from, to) = extent(points.map(|point| point.load_current))?;
-    heading(&mut figure, title, "Over the load current, at least, nominal and greatest input voltage");
+    heading(&mut figure, title, "Over the load current, at the least, the nominal and the greatest input voltage.");
     let [left, right, top, bottom] = ROOM;
     let height = (size[1] - top - bottom - 2.0 * GAP) / 3.0;
     for (k, row) in ROWS.iter().enumerate() {
@@ -71,11 +74,13 @@ fn chart(sweep: &LoadSweep, row: &Row, corners: [[f64; 2]; 2], loads: (f64, f64)
     let all = sweep.lines.iter().flat_map(|line| values(line, row, |_| true));
     let (least, greatest) = extent(all)?;
     let across = Span::Logarithmic(loads.0, loads.1);
+    let (below, above) = HEADROOM;
     let up = if row.unit == Unit::Hertz {
-        Span::Logarithmic(least / 1.5, greatest * 1.5)
+        let ratio = (greatest / least).max(1.6);
+        Span::Logarithmic(least * ratio.powf(-below), greatest * ratio.powf(above))
     } else {
-        let room = (0.1 * (greatest - least)).max(1e-3 * greatest.abs()).max(1e-9);
-        Span::Linear(least - room, greatest + room)
+        let span = (greatest - least).max(0.02 * greatest.abs()).max(1e-9);
+        Span::Linear(below.mul_add(-span, least), above.mul_add(span, greatest))
     };
     Some(Chart::new(corners, across, up))
 }
@@ -108,9 +113,7 @@ fn panel(figure: &mut Figure, chart: &Chart, sweep: &LoadSweep, row: &Row, lowes
 fn boundaries(figure: &mut Figure, chart: &Chart, sweep: &LoadSweep) {
     let bottom = figure.size[1] - ROOM[3];
     let mut taken = f64::NEG_INFINITY;
-    let mut any = false;
     for boundary in sweep.lines.iter().filter_map(|line| line.boundary_load).filter(|load| chart.x.holds(*load)) {
-        any = true;
         let x = f64::from(chart.x.at(boundary));
         line(figure, vec![[x, ROOM[2]], [x, bottom]], Role::Landmark, (1.0, Dash::Dotted));
         let words = print_digits(boundary, Unit::Ampere, 3);
@@ -121,13 +124,22 @@ fn boundaries(figure: &mut Figure, chart: &Chart, sweep: &LoadSweep) {
             text(figure, at, &words, (Role::Quiet, SMALL, Weight::Regular), (Align::Middle, Align::End));
         }
     }
-    let words = if any {
-        "blue, left of its dotted line: discontinuous conduction. Dots: unstable."
-    } else {
-        "the current never rests here. Dots: unstable."
-    };
+    let words = remark(sweep);
     let at = [12.0, 46.0];
-    text(figure, at, words, (Role::Quiet, SMALL, Weight::Regular), (Align::Start, Align::Start));
+    text(figure, at, &words, (Role::Quiet, SMALL, Weight::Regular), (Align::Start, Align::Start));
+}
+
+/// How conduction and stability are told apart, as far as this sweep needs it.
+fn remark(sweep: &LoadSweep) -> String {
+    let figures = || sweep.lines.iter().flat_map(|line| &line.points).filter_map(|point| point.outcome.as_ref().ok());
+    let rests = |f: &LoadSweepFigures| f.conduction == Conduction::Discontinuous;
+    let conduction = match (figures().any(rests), figures().all(rests)) {
+        (false, _) => "No discontinuous conduction at these loads.",
+        (true, false) => "Thin and blue, left of its dotted line: discontinuous conduction.",
+        (true, true) => "Thin and blue: discontinuous conduction at all of these loads.",
+    };
+    let lost = figures().any(|f| f.stable == Some(false));
+    format!("{conduction}{}", if lost { " Dots: unstable." } else { "" })
 }
 
 #[cfg(test)]

@@ -1,11 +1,15 @@
 //! The top bar: which design, which condition, the menus; and messages under it.
 
-use eframe::egui::{self, Align, Button, Color32, Layout, Pos2, Rect, RichText, Shape, Ui, UiBuilder, pos2, vec2};
+use eframe::egui::{
+    self, Align, Button, Color32, Layout, Pos2, Rect, RichText, ScrollArea, Shape, ThemePreference, Ui, UiBuilder,
+    pos2, vec2,
+};
 
-use super::command::{COMMANDS, Command, Menu, Row};
+use super::command::{COMMANDS, Command, Curve, Exported, Menu, Row};
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{conditions, recents, recovery};
+use crate::compensator::LaneKind;
 use crate::design;
 
 /// Room that the words at the right of the bar take [points].
@@ -72,27 +76,78 @@ fn word_ui(ui: &mut Ui, word: &str, enabled: bool, help: &str, command: Command,
     }
 }
 
+/// Width of a menu [points].
+const MENU: f32 = 264.0;
+/// Width of the list of samples [points].
+const SAMPLES: f32 = 430.0;
+
+/// Whether a line stands above a command in its menu: what follows is of another kind.
+fn begins_group(command: &Command) -> bool {
+    matches!(
+        command,
+        Command::Toggle(Curve::Plant)
+            | Command::SweepLoad
+            | Command::WholeRange
+            | Command::ToggleStage
+            | Command::Theme(ThemePreference::Light)
+            | Command::Larger
+            | Command::ListCommands
+            | Command::RoundParts
+            | Command::Tie(LaneKind::Zero)
+            | Command::Export(Exported::Bode | Exported::Curves)
+            | Command::Reload
+            | Command::Quit
+    )
+}
+
 fn menu_ui(ui: &mut Ui, menu: Menu, desk: &mut Desk<'_>) {
-    ui.set_min_width(250.0);
-    for row in COMMANDS.iter().filter(|row| row.menu == menu) {
-        if command_ui(ui, row, chosen(&row.command, desk)) {
-            desk.ask(row.command.clone());
+    ui.set_width(MENU);
+    scrolled(ui, "menu", |ui| {
+        // What closes the window stands last, under the lists of files.
+        let of_menu = |row: &&Row| row.menu == menu && row.command != Command::Quit;
+        COMMANDS.iter().filter(of_menu).for_each(|row| menu_row_ui(ui, row, desk));
+        if menu == Menu::Design {
+            files_ui(ui, desk);
+            COMMANDS.iter().filter(|row| row.command == Command::Quit).for_each(|row| menu_row_ui(ui, row, desk));
+        }
+    });
+}
+
+/// A list that may be higher than the window, as menus are with large text.
+fn scrolled(ui: &mut Ui, salt: &str, lines: impl FnOnce(&mut Ui)) {
+    let height = ui.ctx().content_rect().height() - 2.0 * theme::BAR_HEIGHT;
+    ScrollArea::vertical().id_salt(salt).max_height(height.max(120.0)).show(ui, lines);
+}
+
+/// Lists that open beside the menu.
+fn files_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    ui.separator();
+    ui.menu_button("Copy and export", |ui| menu_ui(ui, Menu::Export, desk));
+    ui.menu_button("Recent files", |ui| {
+        if recents::recents_ui(ui, desk) {
             ui.close();
         }
-    }
-    if menu == Menu::Design {
+    });
+    ui.menu_button("Samples", |ui| {
+        let mut pressed = false;
+        ui.set_width(SAMPLES);
+        scrolled(ui, "samples", |ui| {
+            // A menu stretches the words of a line to its width.
+            ui.with_layout(Layout::top_down(Align::Min), |ui| pressed = samples_ui(ui, desk));
+        });
+        if pressed {
+            ui.close();
+        }
+    });
+}
+
+fn menu_row_ui(ui: &mut Ui, row: &Row, desk: &mut Desk<'_>) {
+    if begins_group(&row.command) {
         ui.separator();
-        ui.menu_button("Copy and export", |ui| menu_ui(ui, Menu::Export, desk));
-        ui.menu_button("Recent files", |ui| {
-            if recents::recents_ui(ui, desk) {
-                ui.close();
-            }
-        });
-        ui.menu_button("Samples", |ui| {
-            if samples_ui(ui, desk) {
-                ui.close();
-            }
-        });
+    }
+    if command_ui(ui, row, chosen(&row.command, desk)) {
+        desk.ask(row.command.clone());
+        ui.close();
     }
 }
 
@@ -129,7 +184,7 @@ fn chosen(command: &Command, desk: &Desk<'_>) -> bool {
 /// The sample designs, each with its line; true when one was pressed.
 pub(super) fn samples_ui(ui: &mut Ui, desk: &mut Desk<'_>) -> bool {
     let mut pressed = false;
-    ui.set_max_width(430.0);
+    ui.set_max_width(SAMPLES);
     for sample in design::sample::all() {
         let title = RichText::new(sample.title).color(palette(ui).accent);
         let response = ui.add(Button::new(title).frame(false));

@@ -17,22 +17,14 @@ use crate::quantity::{self, Unit};
 /// The chooser: says which condition is shown; pressed, it opens the map. Wheel and arrow commands step through.
 pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
     let palette = palette(ui);
-    let (input, load) = desk.session.shown();
-    let text = match desk.session.analysis() {
-        Some(analysis) if analysis.condition.levels.is_none() && roomy => {
-            format!("What if: {}", analysis.condition.label)
-        }
-        Some(analysis) if analysis.condition.levels.is_none() => format!("what if {}", short(&analysis.condition)),
-        Some(analysis) if roomy => {
-            let rests = |d: &Detail| d.operating_point.conduction == Conduction::Discontinuous;
-            let mode = if analysis.shown.as_deref().is_ok_and(rests) { ", discontinuous" } else { "" };
-            format!("Shown: {}{mode}", analysis.condition.label)
-        }
-        Some(analysis) => short(&analysis.condition),
-        None => format!("Shown: {} input, {} load", input.word(), load.word()),
-    };
-    let galley = ui.painter().layout_no_wrap(text.clone(), theme::body(), palette.ink);
-    let (rect, response) = ui.allocate_exact_size(vec2(galley.size().x + 76.0, 28.0), Sense::click());
+    let galley = |text: &str| ui.painter().layout_no_wrap(text.to_owned(), theme::body(), palette.ink);
+    let fits = |text: &String| galley(text).size().x + CHOOSER_EDGE <= ui.available_width();
+    let bare = desk.session.analysis().map(|analysis| short(&analysis.condition));
+    let words = [chosen_words(roomy, desk), chosen_words(false, desk)];
+    let last = bare.unwrap_or_else(|| words[1].clone());
+    let text = words.into_iter().find(fits).unwrap_or(last);
+    let galley = galley(&text);
+    let (rect, response) = ui.allocate_exact_size(vec2(galley.size().x + CHOOSER_EDGE, 28.0), Sense::click());
     let ground = if response.hovered() { palette.accent_ground } else { palette.field };
     ui.painter().rect(rect, 14.0, ground, Stroke::new(1.0, palette.field_edge), StrokeKind::Inside);
     glance(ui, pos2(rect.left() + 15.0, rect.center().y - 10.0), desk);
@@ -46,6 +38,8 @@ pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
     });
     super::legend::focus_ring(ui, &response);
     Popup::menu(&response).close_behavior(PopupCloseBehavior::CloseOnClickOutside).show(|ui| {
+        // Not the bare look of menu lines: the fields of the what-if are to be seen as fields.
+        ui.reset_style();
         ui.set_width(360.0);
         ui.label(RichText::new("Press a condition to show it in full.").color(palette.weak));
         let asked = desk.send.len();
@@ -57,6 +51,28 @@ pub(super) fn chooser_ui(ui: &mut Ui, roomy: bool, desk: &mut Desk<'_>) {
             ui.close();
         }
     });
+}
+
+/// Room of the chooser beside its words [points].
+const CHOOSER_EDGE: f32 = 76.0;
+
+/// The condition shown, in words as long as there is room for.
+fn chosen_words(roomy: bool, desk: &Desk<'_>) -> String {
+    let (input, load) = desk.session.shown();
+    let Some(analysis) = desk.session.analysis() else {
+        return format!("Shown: {} input, {} load", input.word(), load.word());
+    };
+    let condition = &analysis.condition;
+    match (condition.levels, roomy) {
+        (None, true) => format!("What if: {}", condition.label),
+        (None, false) => format!("what if {}", short(condition)),
+        (Some(_), true) => {
+            let rests = |d: &Detail| d.operating_point.conduction == Conduction::Discontinuous;
+            let mode = if analysis.shown.as_deref().is_ok_and(rests) { ", discontinuous" } else { "" };
+            format!("Shown: {}{mode}", condition.label)
+        }
+        (Some(_), false) => short(condition),
+    }
 }
 
 /// A condition in a few letters: "9 V, 1.5 A".
@@ -118,7 +134,7 @@ pub(super) fn map_ui(ui: &mut Ui, salt: &str, desk: &mut Desk<'_>) {
     let Some(analysis) = desk.session.analysis() else { return };
     let palette = palette(ui);
     let room = ui.available_width();
-    let (head, label, cell_height) = (17.0, 46.0, 34.0);
+    let (head, label, cell_height) = (17.0, 46.0, 36.0);
     let (rect, _) = ui.allocate_exact_size(vec2(room, head + 3.0 * cell_height), Sense::hover());
     let width = (room - label) / 3.0;
     for (index, result) in analysis.conditions.iter().take(9).enumerate() {
@@ -157,9 +173,9 @@ fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult,
     ui.painter().rect(cell, 4.0, ground, edge, StrokeKind::Inside);
     let ink = if missed { palette.amber } else { palette.ink };
     let painter = ui.painter().with_clip_rect(cell);
-    let lift = if under.is_empty() { 0.0 } else { 6.5 };
+    let lift = if under.is_empty() { 0.0 } else { 7.0 };
     painter.text(cell.center() - vec2(0.0, lift), Align2::CENTER_CENTER, &figure, theme::strong(12.5), ink);
-    painter.text(cell.center() + vec2(0.0, 7.5), Align2::CENTER_CENTER, under, theme::small(), palette.weak);
+    painter.text(cell.center() + vec2(0.0, 7.0), Align2::CENTER_CENTER, under, theme::small(), palette.weak);
     super::legend::focus_ring(ui, &response);
     let help = match &result.outcome {
         Ok(summary) => {

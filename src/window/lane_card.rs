@@ -98,10 +98,10 @@ fn lines(held: &Held<'_>, desk: &Desk<'_>) -> Vec<Vec<Change>> {
         Some(value) => quantity::print_digits(value, unit, 3),
         None => "none".to_owned(),
     };
-    let change = |name, pick: fn((f64, f64)) -> f64, unit| Change {
-        name,
-        before: Some(said(before.crossover.map(pick), unit, before.stable)),
-        now: said(now.crossover.map(pick), unit, now.stable),
+    let change = |name, pick: fn((f64, f64)) -> f64, unit| {
+        let before = said(before.crossover.map(pick), unit, before.stable);
+        let now = said(now.crossover.map(pick), unit, now.stable);
+        Change { name, before: (before != now).then_some(before), now }
     };
     let tenth = |pair: (f64, f64)| (pair.1 * 10.0).round() / 10.0;
     lines.push(vec![change("phase margin", tenth, Unit::Degree), change("crossover", |pair| pair.0, Unit::Hertz)]);

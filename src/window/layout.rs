@@ -148,7 +148,9 @@ fn findings_panel_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         let area = ScrollArea::vertical().id_salt("findings").auto_shrink(false);
         let output = area.show(ui, |ui| findings::findings_ui(ui, desk));
         let height = output.content_size.y + f32::from(FOOT_MARGIN.top) + 12.0;
-        if (height - desk.view.findings_height).abs() > 0.5 {
+        // The column above stays where it is while something is dragged.
+        let calm = ui.input(|input| !input.pointer.any_down());
+        if calm && (height - desk.view.findings_height).abs() > 0.5 {
             desk.view.findings_height = height;
             ui.ctx().request_repaint();
         }

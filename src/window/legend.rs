@@ -49,13 +49,13 @@ fn curve_ui(ui: &mut Ui, rect: Rect, curve: Curve, name: &str, desk: &mut Desk<'
     let painter = ui.painter();
     let middle = rect.center().y;
     let narrow = rect.width() < NARROW * 0.25;
-    let length = if narrow { 13.0 } else { 24.0 };
+    let length = if narrow { 13.0 } else { 16.0 };
     plot::sample(painter, pos2(rect.left(), middle), length, plot::Pen { colour: ink, ..pen });
     let text =
-        painter.text(pos2(rect.left() + length + 6.0, middle), Align2::LEFT_CENTER, name, theme::strong(12.0), ink);
+        painter.text(pos2(rect.left() + length + 5.0, middle), Align2::LEFT_CENTER, name, theme::strong(12.0), ink);
     let mut end = text.right();
     if let (true, Some(reading)) = (shown && !narrow, reading(desk, curve)) {
-        let at = pos2(text.right() + 8.0, middle);
+        let at = pos2(text.right() + 6.0, middle);
         end = painter.text(at, Align2::LEFT_CENTER, reading, theme::small(), palette.ink).right();
     }
     let press = Rect::from_min_max(rect.min, pos2(end.max(text.right()) + 4.0, rect.bottom()));
@@ -118,7 +118,7 @@ fn reading(desk: &Desk<'_>, curve: Curve) -> Option<String> {
     let phase = axis::interpolate(log_hz, phase_deg, at)?;
     let gain = quantity::print_digits(round(gain), Unit::Decibel, 4);
     let phase = quantity::print_digits(round(phase), Unit::Degree, 4);
-    Some(format!("{gain}   {phase}"))
+    Some(format!("{gain}  {phase}"))
 }
 
 fn round(value: f64) -> f64 {

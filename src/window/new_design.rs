@@ -169,9 +169,11 @@ fn buttons_ui(ui: &mut Ui, wide: bool, form: &mut NewDesign, desk: &mut Desk<'_>
         ui.add_space(14.0);
         ui.menu_button(RichText::new("Begin with a sample").color(palette(ui).accent), |ui| {
             ScrollArea::vertical().max_height(360.0).show(ui, |ui| {
-                if bar::samples_ui(ui, desk) {
-                    ui.close();
-                }
+                ui.with_layout(Layout::top_down(Align::Min), |ui| {
+                    if bar::samples_ui(ui, desk) {
+                        ui.close();
+                    }
+                });
             });
         });
         // Where the assumptions stand below the form, a word says that they are there.

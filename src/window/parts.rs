@@ -57,18 +57,41 @@ fn in_heading(path: &str) -> bool {
     matches!(path, "compensator.type" | "compensator.amplifier") || path.starts_with("compensator.series.")
 }
 
+/// Network and amplifier with the least widths of their fields [points].
+const CHOICES: [(&str, f32); 2] = [("compensator.type", 74.0), ("compensator.amplifier", 76.0)];
+/// Room of a choice's field beside its word [points].
+const CHOICE_EDGE: f32 = 36.0;
+
+/// The heading with the two choices at its right, or under it where a long word leaves no room.
 fn heading_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let design = desk.session.design();
+    let wide = |(path, least): (&str, f32)| {
+        let choice = design.choice_rows().into_iter().find(|row| row.path == path)?;
+        let option = choice.option(design.choices.get_or_default(choice))?;
+        let galley = ui.painter().layout_no_wrap(option.name.to_owned(), theme::body(), palette(ui).ink);
+        Some((galley.size().x + CHOICE_EDGE).max(least))
+    };
+    let needed: f32 = CHOICES.into_iter().filter_map(wide).map(|width| width + 4.0).sum();
+    let mut beside = false;
     ui.horizontal(|ui| {
         ui.label(RichText::new("Compensator").font(theme::strong(13.5)));
-        ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
-            ui.spacing_mut().item_spacing.x = 4.0;
-            for (path, width) in [("compensator.amplifier", 76.0), ("compensator.type", 74.0)] {
-                if let Some(choice) = desk.session.design().choice_rows().into_iter().find(|row| row.path == path) {
-                    form::choice_ui(ui, choice, width, desk);
-                }
-            }
-        });
+        beside = ui.available_width() >= needed;
+        if beside {
+            ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
+                CHOICES.into_iter().rev().for_each(|choice| heading_choice_ui(ui, choice, desk));
+            });
+        }
     });
+    if !beside {
+        ui.horizontal(|ui| CHOICES.into_iter().for_each(|choice| heading_choice_ui(ui, choice, desk)));
+    }
+}
+
+fn heading_choice_ui(ui: &mut Ui, (path, width): (&str, f32), desk: &mut Desk<'_>) {
+    ui.spacing_mut().item_spacing.x = 4.0;
+    if let Some(choice) = desk.session.design().choice_rows().into_iter().find(|row| row.path == path) {
+        form::choice_ui(ui, choice, width, desk);
+    }
 }
 
 /// Name of a part without its explanation: "R2" of "R2, sets the first zero".

@@ -45,7 +45,7 @@ pub(super) fn sorted(analysis: &Analysis) -> (Vec<&Readout>, Vec<&Readout>) {
 /// Read-outs in lines, shown value and worst value side by side.
 pub(super) fn small_rows_ui(ui: &mut Ui, readouts: &[&Readout], desk: &mut Desk<'_>) {
     let Some(analysis) = desk.session.analysis().filter(|_| !readouts.is_empty()) else { return };
-    header_ui(ui);
+    header_ui(ui, readouts.iter().any(|readout| worst_value(readout, analysis).is_some()));
     for readout in readouts {
         small_ui(ui, readout, analysis, desk);
     }
@@ -60,8 +60,8 @@ fn beside_the_point(readout: &Readout, analysis: &Analysis) -> bool {
         && conditions.into_iter().all(|summary| summary.right_half_plane_zero_hz.is_none())
 }
 
-/// What the two columns of the short rows are.
-fn header_ui(ui: &mut Ui) {
+/// What the two columns of the short rows are; the second is named only where it holds anything.
+fn header_ui(ui: &mut Ui, worst: bool) {
     let palette = palette(ui);
     let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), 15.0), Sense::hover());
     let small = theme::small();
@@ -72,7 +72,9 @@ fn header_ui(ui: &mut Ui) {
         small.clone(),
         palette.weak,
     );
-    ui.painter().text(rect.right_center(), Align2::RIGHT_CENTER, "worst of nine", small, palette.weak);
+    if worst {
+        ui.painter().text(rect.right_center(), Align2::RIGHT_CENTER, "worst of nine", small, palette.weak);
+    }
 }
 
 /// Right edge of the column of shown values in the short rows.
@@ -175,7 +177,7 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     let words = readout.value.is_none_or(|value| value == 0.0 && readout.at_zero.is_some());
     let (at, font) = if words { (at + vec2(0.0, 5.0), theme::strong(13.0)) } else { (at, look.value.clone()) };
     let shown = painter.text(at, Align2::LEFT_TOP, &value, font, ink(readout, analysis, palette));
-    if let Some(worst) = worst_text(readout, analysis) {
+    if let Some(worst) = missed_text(readout, analysis).or_else(|| worst_text(readout, analysis)) {
         let missed = readout.requirements.iter().any(|verdict| verdict.over_all_conditions && !verdict.met);
         let colour = if missed { palette.amber } else { palette.weak };
         // A long name leaves no room for the word, but the place at the right says it in every row.
@@ -199,9 +201,25 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();
     let _ = explain::explained(ui, response, readout.key, || further(readout));
-    if let (true, Some(worst)) = (clicked, &readout.worst) {
-        show_condition(worst.index, desk);
+    let missed = missed_at(readout, analysis).map(|(index, _)| index);
+    if let (true, Some(index)) = (clicked, missed.or(readout.worst.as_ref().map(|worst| worst.index))) {
+        show_condition(index, desk);
     }
+}
+
+/// Where the requirement that is missed most is missed, and the value there. A quantity with limits on both sides is worst at
+/// another condition for each of them.
+fn missed_at(readout: &Readout, analysis: &Analysis) -> Option<(usize, f64)> {
+    let verdict = decisive(readout).filter(|verdict| verdict.over_all_conditions && !verdict.met)?;
+    let index = analysis.conditions.iter().position(|result| result.condition.label == verdict.condition)?;
+    Some((index, verdict.value?))
+}
+
+/// The same in words.
+fn missed_text(readout: &Readout, analysis: &Analysis) -> Option<String> {
+    let (index, value) = missed_at(readout, analysis)?;
+    let condition = &analysis.conditions.get(index)?.condition;
+    Some(format!("{} at {}", readout.said(trimmed(value, readout.unit), 3), conditions::short(condition)))
 }
 
 /// The requirement that decides: a missed one first, else the one with least to spare.
@@ -262,7 +280,14 @@ fn small_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, desk: &mut Desk
     painter.galley(at, value_galley, palette.ink);
     painter.galley(pos2(rect.left(), rect.center().y - name.size().y / 2.0), name, palette.weak);
     if let Some(text) = worst_value(readout, analysis) {
-        painter.text(rect.right_center(), Align2::RIGHT_CENTER, text, theme::small(), palette.weak);
+        let layout = |text: &str| painter.layout_no_wrap(text.to_owned(), theme::small(), palette.weak);
+        // A sentence in both columns would run into itself.
+        let mut galley = layout(&text);
+        if text == value && shown_column(rect) + 6.0 > rect.right() - galley.size().x {
+            galley = layout("the same");
+        }
+        let at = Align2::RIGHT_CENTER.anchor_size(rect.right_center(), galley.size()).min;
+        painter.galley(at, galley, palette.weak);
     }
     announce(ui, &response, readout, &value);
     let clicked = response.clicked();

@@ -21,7 +21,7 @@ const COLUMN: (f32, f32, f32) = (0.32, 372.0, 540.0);
 /// Share of the height that the Bode plots take there.
 const UPPER: f32 = 0.6;
 /// What the row under them needs to show all of the operating point [points].
-const LOWER: f32 = 312.0;
+const LOWER: f32 = 318.0;
 /// Heights of the plots in a narrow window [points].
 const NARROW_PLOTS: (f32, f32) = (380.0, 200.0);
 /// What the keys do.

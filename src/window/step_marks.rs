@@ -3,24 +3,48 @@
 //! *Conventions*: a load or line step is judged by the extreme against the value before it; a reference step by how far the output
 //! runs beyond its new value, since the change itself is wanted.
 
-use eframe::egui::{Align2, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
+use eframe::egui::{Align2, Color32, Role, Sense, Stroke, Ui, WidgetInfo, pos2, vec2};
 
 use super::axis;
 use super::marks;
 use super::plot::{self, Plot};
 use super::theme::{self, Palette};
 use super::view::Event;
-use crate::analysis::Step;
+use crate::analysis::{Analysis, Step};
 use crate::quantity::{self, Unit};
 
+/// Which of a response's requirements the shown condition misses.
+#[derive(Clone, Copy, Debug, Default)]
+pub(super) struct Missed {
+    /// That on the deviation.
+    pub deviation: bool,
+    /// That on settling.
+    pub settling: bool,
+}
+
+impl Missed {
+    /// What is missed of an event; only a load step is asked anything.
+    pub(super) fn of(event: Event, analysis: &Analysis) -> Self {
+        let missed = |key| {
+            let of_key = analysis.readouts.iter().find(|readout| readout.key == key);
+            event == Event::Load && of_key.is_some_and(|readout| marks::misses(readout, analysis))
+        };
+        Missed { deviation: missed("load-step-deviation"), settling: missed("settling") }
+    }
+}
+
 /// Draws the marks of a step into its plot.
-pub(super) fn marks_ui(ui: &Ui, plot: &Plot, step: &Step, event: Event, palette: &Palette) {
+pub(super) fn marks_ui(ui: &Ui, plot: &Plot, step: &Step, event: Event, look: (&Missed, &Palette)) {
+    let (missed, palette) = look;
+    let ink = |missed| if missed { palette.amber } else { palette.good };
+    // The line first: the words of the extreme have a ground of their own.
+    if let Some(settling_s) = step.settling_s.filter(|time| *time > 0.0 && plot.x.holds(*time)) {
+        let colour = ink(missed.settling);
+        marks::tick(&ui.painter().with_clip_rect(plot.rect), plot.rect, plot.x.at(settling_s), colour);
+    }
     let extreme = extreme(step, event);
     if let Some(extreme) = &extreme {
-        extreme_ui(ui, plot, extreme, palette);
-    }
-    if let Some(settling_s) = step.settling_s.filter(|time| *time > 0.0 && plot.x.holds(*time)) {
-        marks::tick(&ui.painter().with_clip_rect(plot.rect), plot.rect, plot.x.at(settling_s), palette.good);
+        extreme_ui(ui, plot, extreme, (ink(missed.deviation), palette));
     }
     let words = words(step, event);
     let rises = step.deviation_v > 0.0;
@@ -46,6 +70,9 @@ struct Extreme {
     text: String,
 }
 
+/// Distance of the extreme's words from it [points].
+const BEYOND: f32 = 12.0;
+
 fn extreme(step: &Step, event: Event) -> Option<Extreme> {
     let (at_s, to_v) = (step.deviation_at_s?, step.initial_v + step.deviation_v);
     let volts = |value: f64| quantity::print_digits(value, Unit::Volt, 3);
@@ -63,13 +90,16 @@ fn extreme(step: &Step, event: Event) -> Option<Extreme> {
     })
 }
 
-fn extreme_ui(ui: &Ui, plot: &Plot, extreme: &Extreme, palette: &Palette) {
+/// A line from where it came, and its size beyond it, where the curve does not go.
+fn extreme_ui(ui: &Ui, plot: &Plot, extreme: &Extreme, look: (Color32, &Palette)) {
+    let (colour, palette) = look;
     let painter = ui.painter().with_clip_rect(plot.rect);
     let (from, to) = (plot.at(extreme.at_s, extreme.from_v), plot.at(extreme.at_s, extreme.to_v));
-    painter.line_segment([from, to], Stroke::new(1.5, palette.good));
+    painter.line_segment([from, to], Stroke::new(1.5, colour));
     let ground = palette.canvas.gamma_multiply(0.85);
-    let at = pos2(to.x + 8.0, to.y.clamp(plot.rect.top() + 8.0, plot.rect.bottom() - 9.0));
-    plot::tag(&painter, at, Align2::LEFT_CENTER, &extreme.text, theme::strong(12.5), (palette.good, ground));
+    let beyond = if to.y > from.y { BEYOND } else { -BEYOND };
+    let at = pos2(to.x, (to.y + beyond).clamp(plot.rect.top() + 8.0, plot.rect.bottom() - 9.0));
+    plot::tag(&painter, at, Align2::CENTER_CENTER, &extreme.text, theme::strong(12.5), (colour, ground));
 }
 
 /// The event and whether it settles.

@@ -5,7 +5,7 @@ use eframe::egui::{self, Align2, Rect, RichText, Stroke, Ui, pos2, vec2};
 use super::axis::{self, Axis};
 use super::drawing::extent;
 use super::plot::{Pen, Plot};
-use super::step_marks;
+use super::step_marks::{self, Missed};
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{Desk, Event};
 use crate::analysis::{Step, Steps};
@@ -38,7 +38,9 @@ pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let plot = axes(frame, step, held);
     let opacity = if desk.session.stale() { theme::STALE } else { 1.0 };
     draw(ui, &plot, step, held, (opacity, palette));
-    step_marks::marks_ui(ui, &plot, step, desk.view.event, palette);
+    let event = desk.view.event;
+    let missed = desk.session.analysis().map_or_else(Missed::default, |analysis| Missed::of(event, analysis));
+    step_marks::marks_ui(ui, &plot, step, event, (&missed, palette));
 }
 
 /// Plot within a rectangle that has a heading above and labels left and below.
@@ -116,7 +118,8 @@ fn axes(frame: Rect, step: &Step, held: Option<&Step>) -> Plot {
     Plot {
         rect: frame,
         x: Axis::linear(0.0, end, frame.left(), frame.right()),
-        y: Axis::linear(least - room, greatest + 2.0 * room, frame.bottom(), frame.top()),
+        // Words stand above and below the response.
+        y: Axis::linear(least - 2.0 * room, greatest + 2.0 * room, frame.bottom(), frame.top()),
     }
 }
 

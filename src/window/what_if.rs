@@ -67,7 +67,10 @@ pub(super) fn what_if_ui(ui: &mut Ui, salt: &str, desk: &mut Desk<'_>) {
         for (typed, name, unit, offered) in fields {
             entered |= field_ui(ui, typed, (salt, name), quantity::print(offered, unit));
         }
-        entered |= ui.button("Show").on_hover_text("Show this condition in full.").clicked();
+        entered |= ui
+            .button(RichText::new("Show").color(palette.accent))
+            .on_hover_text("Show this condition in full.")
+            .clicked();
     });
     if entered {
         let (input, load) = (form.input.read(Unit::Volt, offered.0), form.load.read(Unit::Ampere, offered.1));

@@ -60,5 +60,5 @@ fn the_load_sweep_is_shown_and_saved() {
     harness.state_mut().ask(Command::ExportPath { what: Exported::Sweep, path: path.clone() });
     harness.run();
     let svg = std::fs::read_to_string(path).unwrap();
-    assert!(svg.contains("Phase margin") && svg.contains("the current never rests here"));
+    assert!(svg.contains("Phase margin") && svg.contains("No discontinuous conduction"));
 }
