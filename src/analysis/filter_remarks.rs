@@ -15,6 +15,10 @@ use crate::quantity::{Unit, parse, print_digits};
 pub(super) const DAMPED_BELOW: f64 = 0.5;
 /// Margin below which the criterion is called narrowly met [dB].
 const NARROW_DB: f64 = 6.0;
+/// A damped peak within this factor of the one wanted has reached it.
+const REACHED: f64 = 1.1;
+/// Damping is offered only where it leaves no more than this part of the present peak.
+const HELPS: f64 = 0.95;
 /// A resonance below this many times the crossover stands where the loop is at work.
 const NEAR: f64 = 3.0;
 /// A damping capacitor beyond this many times the input capacitor says that the filter itself is wrong.
@@ -44,8 +48,8 @@ pub(super) fn filter_remarks(
     findings.extend(what_if(detail));
     // One press is enough: the gravest remark carries it.
     if let (Some((remedy, hint)), false) = (remedy, findings.is_empty()) {
-        let first = findings.remove(0).with_hint(hint).with_remedy(remedy);
-        findings.insert(0, first);
+        let first = findings.remove(0).with_hint(hint);
+        findings.insert(0, remedy.into_iter().fold(first, Finding::with_remedy));
     }
     findings
 }
@@ -130,10 +134,23 @@ fn near_crossover(filter: &InputFilter, found: &[At<'_>]) -> Option<Finding> {
     Some(Finding::notice("stage.input-filter", message))
 }
 
-/// Damping for the worst of the conditions, and the same in words.
-fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Remedy, String)> {
+/// Damping for the worst of the conditions where it helps, and the same in words.
+fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Option<Remedy>, String)> {
     let least = found.iter().map(|(_, _, r)| r.least_input_impedance_ohm).min_by(f64::total_cmp)?;
-    let damping = filter.damping_for(least * DAMPED_BELOW);
+    let wanted = least * DAMPED_BELOW;
+    let damping = filter.damping_for(wanted);
+    let part_unit = if damping.kind == Damping::Inductor { Unit::Henry } else { Unit::Farad };
+    let usable = |value: f64, unit: Unit| {
+        let (smallest, greatest) = unit.usable_magnitudes();
+        (smallest..=greatest).contains(&value)
+    };
+    let present = found.iter().map(|(_, _, r)| r.peak_ohm).fold(0.0, f64::max);
+    if damping.peak > present * HELPS
+        || !usable(damping.resistance, Unit::Ohm)
+        || !usable(damping.reactance_value, part_unit)
+    {
+        return Some((None, beyond_damping(filter, wanted)));
+    }
     let words = damping.in_words();
     let mut hint = format!(
         "damp the filter with {words}: its peak falls to {} at {}",
@@ -142,6 +159,9 @@ fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Remedy, String)> {
     );
     if damping.kind == Damping::Capacitor && damping.ratio > UNWIELDY {
         hint.push_str("; a smaller inductor or a larger input capacitor would need less");
+    }
+    if damping.peak > wanted * REACHED {
+        hint = format!("{hint}; {}", beyond_damping(filter, wanted));
     }
     let (key, part, unit) = match damping.kind {
         Damping::Inductor => ("inductor", "stage.input-filter.damping.inductance", Unit::Henry),
@@ -155,7 +175,28 @@ fn remedy(filter: &InputFilter, found: &[At<'_>]) -> Option<(Remedy, String)> {
         ],
         choices: vec![("stage.input-filter.damping".into(), key.into())],
     };
-    Some((remedy, hint))
+    Some((Some(remedy), hint))
+}
+
+/// What to change where no damping branch brings the filter down to an impedance [Ω].
+fn beyond_damping(filter: &InputFilter, wanted: f64) -> String {
+    let ohms = |value| print_digits(value, Unit::Ohm, 3);
+    let (direct, wanted_text) = (filter.source_resistance + filter.winding, ohms(wanted));
+    if direct > wanted {
+        return format!(
+            "no damping brings the filter down to {wanted_text}: source and winding alone have {}; lower their resistance, or draw less power",
+            ohms(direct)
+        );
+    }
+    if filter.esr > wanted {
+        return format!(
+            "this damping cannot bring the filter down to {wanted_text}: the input capacitor's ESR is {}; lower it, or enlarge the capacitor",
+            ohms(filter.esr)
+        );
+    }
+    format!(
+        "this damping cannot bring the filter down to {wanted_text}; a smaller inductor or a larger input capacitor lowers it"
+    )
 }
 
 /// The number as it is printed to three digits.

@@ -14,6 +14,7 @@ use crate::linear::{
     Complex, FactoredResponse, LinearError, Margins, Modes, Port, StateSpace, Verdict, Wire, Zpk,
     closed_loop_verdict_knowing, pade_delay,
 };
+use crate::quantity::{Unit, print};
 use nalgebra::DMatrix;
 
 /// What all conditions of a design share: the compensator, solved once.
@@ -113,8 +114,9 @@ impl LoopModel {
     /// A finding when the stage has no operating point there or a model is singular.
     pub fn new(stage: &Stage, shared: &Shared, condition: &StageCondition) -> Result<Self, Finding> {
         let averaged = stage.averaged(condition)?;
-        held_open(&shared.law, &averaged)?;
         let period = stage.switching_frequency.recip();
+        held_open(&shared.law, &averaged)?;
+        ended_blind(&shared.law, &averaged, period)?;
         let controlled = shared.law.controlled(&averaged, period).map_err(|e| model_finding(&e))?;
         let plant = Zpk::from_state_space(&controlled.stage, 0, 0).map_err(|e| model_finding(&e))?;
         let loop_zpk = plant.multiply(shared.compensator_response.zpk());
@@ -247,6 +249,26 @@ fn held_open(law: &ControlLaw, averaged: &AveragedModel) -> Result<(), Finding> 
             "Valley current mode needs a compensating ramp in discontinuous conduction: the current has come to rest and nothing else closes the switch.",
         )
         .with_hint("add a ramp, raise the load or the inductance, or choose a synchronous rectifier")),
+        _ => Ok(()),
+    }
+}
+
+/// Peak current mode that starts from rest with an on-time within the delay: the comparator would have to act on a filtered current
+/// that is not there yet.
+fn ended_blind(law: &ControlLaw, averaged: &AveragedModel, period: f64) -> Result<(), Finding> {
+    let point = &averaged.operating_point;
+    let resting = point.conduction == Conduction::Discontinuous;
+    let on_time = point.duty * period;
+    match law.current() {
+        Some((Edge::Peak, sense)) if resting && sense.filter_s > 0.0 && on_time <= law.delay_s => {
+            let message = format!(
+                "The on-time of {} is within the delay of {}: the current starts from rest and the comparator cannot end it so early; the converter skips periods.",
+                print(on_time, Unit::Second),
+                print(law.delay_s, Unit::Second)
+            );
+            Err(Finding::problem("control.delay", message)
+                .with_hint("shorten the delay, lower the switching frequency, or raise the least load"))
+        }
         _ => Ok(()),
     }
 }

@@ -1,7 +1,7 @@
 //! Tests of the analysis that need no outside reference: definitions put back, sums that close.
 
 use super::*;
-use crate::design::sample;
+use crate::design::{Design, sample};
 use crate::linear::FrequencyResponse;
 
 fn built_in() -> crate::design::CheckedDesign {
@@ -83,4 +83,43 @@ fn nominal_condition_is_the_middle_one() {
     assert_eq!(analysis.conditions[condition::NOMINAL].condition.levels, Some((Level::Nominal, Level::Nominal)));
     assert_eq!(analysis.conditions.len(), 9);
     assert_eq!(analysis.condition, analysis.conditions[condition::NOMINAL].condition);
+}
+
+/// The tangent of a constant-power load puts a pole into the conversion curve of a steep boost; beyond what the winding lets through
+/// there is no operating point, and none is made up at that pole.
+#[test]
+fn no_operating_point_is_found_at_a_pole_of_the_loads_tangent() {
+    let mut design = Design::default();
+    for (path, text) in [
+        ("stage.topology", "boost"),
+        ("stage.rectifier", "emulated"),
+        ("stage.load", "power"),
+        ("stage.output-filter", "fitted"),
+        ("stage.input-capacitor", "none"),
+        ("stage.bank", "1"),
+        ("stage.input.least", "7.07"),
+        ("stage.input.nominal", "12"),
+        ("stage.input.greatest", "16.9"),
+        ("stage.source.resistance", "0"),
+        ("stage.inductor.resistance", "53m"),
+        ("stage.switch.resistance", "17m"),
+        ("stage.synchronous.resistance", "8.5m"),
+        ("stage.load.least", "100m"),
+        ("stage.load.nominal", "2"),
+        ("stage.load.greatest", "6.7"),
+        ("stage.output.voltage", "60"),
+        ("compensator.reference", "1.2"),
+        ("compensator.divider.upper", "49k"),
+        ("compensator.divider.lower", "1k"),
+    ] {
+        design.set_from_text(path, text).unwrap();
+    }
+    let checked = design.check().unwrap();
+    let shown = Shown::Levels(Level::Least, Level::Greatest);
+    let analysis = analyse(&checked, &Request::spanning(shown, checked.stage.switching_frequency, 10));
+    // 7.07 V through 70 mΩ give 179 W at most, and 402 W are asked.
+    assert_eq!(analysis.shown.unwrap_err().place, "stage.output.voltage");
+    assert!(
+        analysis.conditions.iter().filter_map(|c| c.outcome.as_ref().ok()).all(|s| s.operating_point.on_slope > 0.0)
+    );
 }

@@ -20,6 +20,12 @@ pub struct InputFilter {
     pub damping_capacitance: f64,
     /// Inductor of a branch across the filter inductor [H]; zero without one.
     pub damping_inductance: f64,
+    /// Resistance of the source [Ω].
+    pub source_resistance: f64,
+    /// Resistance of the inductor's winding [Ω].
+    pub winding: f64,
+    /// ESR of the input capacitor [Ω].
+    pub esr: f64,
 }
 
 impl InputFilter {
@@ -36,6 +42,9 @@ impl InputFilter {
             damping_resistance: branch("resistance"),
             damping_capacitance: branch("capacitance"),
             damping_inductance: branch("inductance"),
+            source_resistance: get("stage.source.resistance"),
+            winding: get("stage.input-filter.resistance"),
+            esr: get("stage.input-capacitor.esr"),
         })
     }
 

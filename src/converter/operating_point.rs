@@ -149,7 +149,40 @@ impl Intervals {
     }
 
     /// The duty ratio below the conversion curve's peak that gives `target` at output `row`, and its steady state.
+    ///
+    /// Searched with a resistor for the load, which draws the same at the target but for ripple on ESR, then polished with the load
+    /// itself: a load of constant current, or the tangent of one of constant power, can put a pole into the conversion curve, which a
+    /// bracket would take for a root.
     pub(super) fn solve_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
+        if self.to_resistor.1 <= 0.0 {
+            return self.first_duty(target, row);
+        }
+        match self.with_resistor().first_duty(target, row) {
+            Ok(found) => Ok(self.polished(found, target, row)),
+            // The limit told is that of the load itself.
+            Err(by_resistor) => Err(self.first_duty(target, row).err().unwrap_or(by_resistor)),
+        }
+    }
+
+    /// Newton steps from a duty ratio that is nearly right.
+    fn polished(&self, found: (f64, DVector<f64>), target: f64, row: usize) -> (f64, DVector<f64>) {
+        let (start, mut duty) = (found.0, found.0);
+        let mut best = found;
+        for _ in 0..MOST_STEPS {
+            let Some(steady) = self.steady(duty, row) else { break };
+            let error = steady.output - target;
+            best = (duty, steady.x);
+            let next = duty - error / steady.slope;
+            let near = (next - start).abs() <= NEARLY_RIGHT * start.min(1.0 - start);
+            if !near || error.abs() <= 4.0 * f64::EPSILON * target.abs() || (next - duty).abs() <= f64::EPSILON * duty {
+                break;
+            }
+            duty = next;
+        }
+        best
+    }
+
+    fn first_duty(&self, target: f64, row: usize) -> Result<(f64, DVector<f64>), OutOfReach> {
         let mut below = (0.0, f64::NEG_INFINITY);
         let mut best = (0.0, f64::NEG_INFINITY);
         for k in 0..=SCAN {
@@ -215,6 +248,8 @@ impl Intervals {
 
 /// Points of the scan for the first bracket.
 const SCAN: u16 = 12;
+/// How far a duty ratio may be polished, as a fraction of it and of its rest.
+const NEARLY_RIGHT: f64 = 0.1;
 /// Refinements halve the bracket at worst, so this many reach the last bit.
 const MOST_STEPS: u32 = 60;
 
@@ -342,20 +377,51 @@ impl Stage {
             return None;
         }
         let mut load = condition.load_current;
-        // The average current is nearly proportional to the load and the ripple nearly independent of it.
-        for _ in 0..50 {
+        let (mut low, mut high, mut held) = (0.0, f64::INFINITY, false);
+        // The average current is nearly proportional to the load and the ripple nearly independent of it; where losses bend that
+        // too much, or the output cannot be held at a load tried, the bracket is halved.
+        for step in 1..=BOUNDARY_STEPS {
             let at = StageCondition { load_current: load, ..*condition };
-            let solution = self.solve_continuous(&at).ok()?;
-            let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
-            let next = load * (current.average - current.valley) / current.average;
-            if !(next.is_finite() && next > 0.0) {
-                return None;
+            let wanted = match self.solve_continuous(&at) {
+                Ok(solution) => {
+                    let (current, ..) = Waves::new(&solution, self.switching_frequency).switched_current();
+                    if current.valley < 0.0 {
+                        low = load;
+                    } else {
+                        (high, held) = (load, true);
+                    }
+                    let next = load * (current.average - current.valley) / current.average;
+                    if (next / load - 1.0).abs() < BOUNDARY_WITHIN {
+                        return Some(next);
+                    }
+                    next
+                }
+                Err(NoOperatingPoint::OutOfReach(OutOfReach::Above { .. })) => {
+                    (high, held) = (load, false);
+                    load
+                }
+                Err(_) => return None,
+            };
+            // Every fourth step halves in any case: near the greatest load that can be held the others only creep.
+            let steady = low < wanted && wanted < high && (step % 4 != 0 || low <= 0.0 || high.is_infinite());
+            load = match (steady, low > 0.0, high.is_finite()) {
+                (true, ..) => wanted,
+                (_, true, true) => (low * high).sqrt(),
+                (_, _, true) => high / BOUNDARY_STRIDE,
+                (_, true, _) => low * BOUNDARY_STRIDE,
+                _ => return None,
+            };
+            if high / low - 1.0 < BOUNDARY_WITHIN {
+                return held.then_some(high);
             }
-            if (next / load - 1.0).abs() < 1e-10 {
-                return Some(next);
-            }
-            load = next;
         }
         None
     }
 }
+
+/// Steps granted to the search for the boundary load, …
+const BOUNDARY_STEPS: u32 = 200;
+/// … how near it must come, as a fraction, …
+const BOUNDARY_WITHIN: f64 = 1e-10;
+/// … and its stride where only one end of the bracket is known.
+const BOUNDARY_STRIDE: f64 = 4.0;

@@ -15,6 +15,9 @@ const DEAD: f64 = 3e-8;
 /// Points looked at in one search at most; a mode of Q = 1,000 needs some ten thousand.
 const POINTS_AT_MOST: usize = 400_000;
 
+/// Radians of a lone ringing mode that are walked before its envelope enters the band.
+const TURNS_BEFORE: f64 = 60.0;
+
 /// A stretch of the response: `offset + slope·t + Σ Re(amplitude·exp(pole·t))`.
 pub(super) struct Segment<'a> {
     /// When it begins [s].
@@ -136,6 +139,18 @@ impl<'s> Walk<'s> {
         Point { t: self.t, value, rate }
     }
 
+    /// Where a single slowly decaying pair, all other modes smaller than `dead`, comes within a few turns of leaving a band for good; none
+    /// where that is near anyway. All that the walk would meet before is turns that leave the band again.
+    fn near_last_exit(&self, band: f64, dead: f64) -> Option<f64> {
+        let mut living = self.terms.iter().zip(self.segment.poles).filter(|(term, _)| term.norm() > dead);
+        let (Some((term, pole)), None) = (living.next(), living.next()) else { return None };
+        if pole.im == 0.0 || band <= 0.0 {
+            return None;
+        }
+        let ahead = (term.norm() / band).ln() / -pole.re - TURNS_BEFORE / pole.im.abs();
+        (ahead > TURNS_BEFORE / pole.im.abs()).then_some(self.t + ahead)
+    }
+
     /// Sum of the modes' magnitudes: what the response can still depart from its line.
     fn size(&self) -> f64 {
         self.terms.iter().map(|term| term.norm_sqr().sqrt()).sum()
@@ -223,6 +238,11 @@ impl<'s> Met<'s> {
             let dead = if extreme_is_over { for_band } else { for_band.min(DEAD * self.deviation.abs()) };
             if extreme_is_over && size <= self.band || endless && size <= DEAD * DEAD * self.deviation.abs() {
                 break;
+            }
+            if extreme_is_over && let Some(t) = walk.near_last_exit(self.band, for_band) {
+                walk = Walk::new(segment, t);
+                last = walk.point();
+                self.note(segment, t, last);
             }
             let Some(step) = walk.sensible_step(dead) else { break };
             let at_end = walk.t + step >= segment.length;
