@@ -26,6 +26,8 @@ fn window(size: Vec2, pixels_per_point: f32) -> Harness<'static, App> {
     let mut harness = Harness::builder()
         .with_size(size)
         .with_pixels_per_point(pixels_per_point)
+        // The thread that watches files may wake the window once more.
+        .with_max_steps(64)
         .build_eframe(|cc| App::new(&cc.egui_ctx, sample::built_in(), None));
     harness.run();
     harness

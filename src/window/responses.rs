@@ -9,11 +9,16 @@ use super::plot::{self, Pen, Plot};
 use super::steps;
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{ClosedLoop, Desk};
-use crate::analysis::{Curves, InputFilterResult};
+use crate::analysis::{Analysis, Curves, InputFilterResult};
 use crate::quantity::{self, Unit};
 
 /// Draws heading and plot into a rectangle.
 pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
+    let without = |analysis: &Analysis| analysis.shown.as_ref().is_ok_and(|detail| detail.input_filter.is_none());
+    if desk.view.closed_loop == ClosedLoop::Input && desk.session.analysis().is_some_and(without) {
+        // The filter is gone, or another design has none.
+        desk.view.closed_loop = ClosedLoop::default();
+    }
     heading_ui(ui, Rect::from_min_size(rect.min, vec2(rect.width(), steps::HEADING)), desk);
     let palette = palette(ui);
     let frame = steps::frame_of(rect);
@@ -24,10 +29,6 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         return;
     };
     let which = desk.view.closed_loop;
-    if which == ClosedLoop::Input && detail.input_filter.is_none() {
-        steps::empty(ui, frame, "No input filter is fitted.", palette);
-        return;
-    }
     let curves = &detail.curves;
     let (closed, open, unit) = which.of(detail);
     let beside = which.beside(detail);
