@@ -81,6 +81,14 @@ impl Axis {
     }
 }
 
+/// Least and greatest of the finite values.
+pub fn extent(values: impl Iterator<Item = f64>) -> Option<(f64, f64)> {
+    values.filter(|value| value.is_finite()).fold(None, |range, value| match range {
+        None => Some((value, value)),
+        Some((least, greatest)) => Some((f64::min(least, value), f64::max(greatest, value))),
+    })
+}
+
 /// A screen coordinate from a number worked out in double precision; the loss is far below a pixel.
 #[expect(clippy::cast_possible_truncation, reason = "screen coordinates are a few thousand points at most")]
 pub fn narrow(value: f64) -> f32 {

@@ -1,6 +1,7 @@
 //! Gain and phase of plant, compensator and loop over frequency, with the margins of the shown condition and its landmarks.
 
-use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, extent, heading, legend, line, text};
+use super::axis::extent;
+use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, heading, legend, line, text};
 use super::stroke::{Align, Dash, Figure, Mark, Role, Weight};
 use crate::analysis::{Analysis, Curves, Detail};
 use crate::quantity::{Unit, print_digits};

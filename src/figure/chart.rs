@@ -281,14 +281,6 @@ pub(super) fn legend(figure: &mut Figure, right_end: Point, entries: &[(Pen, Str
     }
 }
 
-/// Least and greatest of the finite values.
-pub(super) fn extent(values: impl Iterator<Item = f64>) -> Option<(f64, f64)> {
-    values.filter(|value| value.is_finite()).fold(None, |range, value| match range {
-        None => Some((value, value)),
-        Some((least, greatest)) => Some((f64::min(least, value), f64::max(greatest, value))),
-    })
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -1,7 +1,8 @@
 //! Closed-loop responses over frequency: output impedance, line to output, reference to output, input impedance; the open loop,
 //! and the input filter, beside.
 
-use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, extent, heading, legend, text};
+use super::axis::extent;
+use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, heading, legend, text};
 use super::stroke::{Align, Dash, Figure, Mark, Role, Weight};
 use crate::analysis::{Analysis, Curves, Detail, InputFilterResult};
 use crate::quantity::{Unit, print_digits};

@@ -1,6 +1,7 @@
 //! The time response to a load, line or reference step, with its deviation and the band it settles into.
 
-use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, extent, heading, legend, line, text};
+use super::axis::extent;
+use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, heading, legend, line, text};
 use super::stroke::{Align, Dash, Figure, Role, Weight};
 use crate::analysis::{Analysis, Step};
 use crate::quantity::{Unit, print_digits};

@@ -1,7 +1,8 @@
 //! The load sweep: crossover, phase margin and duty ratio over the load current at three input voltages, and where
 //! conduction changes.
 
-use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, extent, heading, legend, line, text};
+use super::axis::extent;
+use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, heading, legend, line, text};
 use super::stroke::{Align, Dash, Figure, Mark, Role, Weight};
 use crate::analysis::{LoadSweep, LoadSweepFigures, LoadSweepLine};
 use crate::converter::Conduction;

@@ -1,6 +1,7 @@
 //! What is worked out once per analysis so that a frame only has to place it: logarithms, bands, ranges of the axes.
 
 use crate::analysis::{Analysis, Curves};
+use crate::figure::axis::extent;
 
 /// Least and greatest loop gain and phase over the conditions that have any, on the band's frequencies.
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -61,14 +62,6 @@ fn band(analysis: &Analysis) -> Band {
         }
     }
     band
-}
-
-/// Least and greatest of the finite values.
-pub(super) fn extent(values: impl Iterator<Item = f64>) -> Option<(f64, f64)> {
-    values.filter(|value| value.is_finite()).fold(None, |range, value| match range {
-        None => Some((value, value)),
-        Some((least, greatest)) => Some((f64::min(least, value), f64::max(greatest, value))),
-    })
 }
 
 /// Range of the gain plot: whole steps of 20 dB around all curves, cut where nobody reads a loop any more [dB].

@@ -90,7 +90,8 @@ fn usable(session: &Session) -> Result<&crate::analysis::Analysis, String> {
     session.analysis().filter(|_| !session.stale()).ok_or_else(|| stale.to_owned())
 }
 
-fn checked(session: &Session) -> Result<CheckedDesign, String> {
+/// The checked design, or its first problem in words.
+pub(super) fn checked(session: &Session) -> Result<CheckedDesign, String> {
     let first = |problems: Vec<crate::finding::Finding>| problems.first().map_or_else(String::new, ToString::to_string);
     session.design().check().map_err(first)
 }

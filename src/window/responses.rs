@@ -3,8 +3,7 @@
 
 use eframe::egui::{self, Align2, Rect, Stroke, Ui, pos2, vec2};
 
-use super::axis::{self, Axis, DecadeLine, decade_lines};
-use super::drawing::extent;
+use super::axis::{self, Axis, DecadeLine, decade_lines, extent};
 use super::plot::{self, Pen, Plot};
 use super::steps;
 use super::theme::{self, LineStyle, Palette, palette};

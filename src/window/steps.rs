@@ -2,13 +2,12 @@
 
 use eframe::egui::{self, Align2, Rect, RichText, Stroke, Ui, pos2, vec2};
 
-use super::axis::{self, Axis};
-use super::drawing::extent;
+use super::axis::{self, Axis, extent};
 use super::plot::{Pen, Plot};
 use super::step_marks::{self, Missed};
 use super::theme::{self, LineStyle, Palette, palette};
 use super::view::{Desk, Event};
-use crate::analysis::{Step, Steps};
+use crate::analysis::Step;
 use crate::quantity::Unit;
 
 /// Height of a heading above a plot [points].
@@ -19,7 +18,7 @@ pub(super) const LABELS: f32 = 20.0;
 /// Draws heading and plot into a rectangle.
 pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let detail = desk.session.analysis().and_then(|analysis| analysis.shown.as_ref().ok());
-    let step = detail.and_then(|detail| chosen(&detail.steps, desk.view.event));
+    let step = desk.session.analysis().and_then(|analysis| desk.view.event.of(analysis));
     let heading = Rect::from_min_size(rect.min, vec2(rect.width(), HEADING));
     heading_ui(ui, heading, desk);
     let palette = palette(ui);
@@ -33,8 +32,7 @@ pub(super) fn steps_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
         empty(ui, frame, why, palette);
         return;
     };
-    let held = desk.session.held().and_then(|held| held.analysis.shown.as_ref().ok());
-    let held = held.and_then(|detail| chosen(&detail.steps, desk.view.event));
+    let held = desk.session.held().and_then(|held| desk.view.event.of(&held.analysis));
     let plot = axes(frame, step, held);
     let opacity = if desk.session.stale() { theme::STALE } else { 1.0 };
     draw(ui, &plot, step, held, (opacity, palette));
@@ -54,14 +52,6 @@ pub(super) fn empty(ui: &Ui, frame: Rect, why: &str, palette: &Palette) {
     ui.painter().rect_stroke(frame, 0.0, Stroke::new(1.0, palette.grid_strong), egui::StrokeKind::Middle);
     let galley = ui.painter().layout(why.to_owned(), theme::small(), palette.weak, frame.width() - 24.0);
     ui.painter().galley(frame.center() - galley.size() / 2.0, galley, palette.weak);
-}
-
-fn chosen(steps: &Steps, event: Event) -> Option<&Step> {
-    match event {
-        Event::Load => steps.load.as_ref(),
-        Event::Line => steps.line.as_ref(),
-        Event::Reference => steps.reference.as_ref(),
-    }
 }
 
 /// The events with their names, long and short, and the terms that explain them.

@@ -5,6 +5,7 @@ use eframe::egui::{self, RichText, Role, Sense, Ui, WidgetInfo, vec2};
 use super::brush::{Brush, Scale};
 use super::command::{Command, Exported};
 use super::dialogs;
+use super::export;
 use super::session::Session;
 use super::theme::palette;
 use super::view::Desk;
@@ -22,8 +23,7 @@ const AROUND: (f32, f32) = (80.0, 150.0);
 /// # Errors
 /// Why there is none, in words.
 pub(super) fn figure(session: &Session) -> Result<Figure, String> {
-    let first = |problems: Vec<crate::finding::Finding>| problems.first().map_or_else(String::new, ToString::to_string);
-    let design = session.design().check().map_err(first)?;
+    let design = export::checked(session)?;
     let sweep = load_sweep(&design, SWEEP_POINTS).map_err(|finding| finding.to_string())?;
     figure::sweep(&design.title, &sweep, SIZE).ok_or_else(|| "No load has a result.".to_owned())
 }
