@@ -13,6 +13,7 @@
 //! | `zpk` | zeros, poles and gain |
 //! | `cascade` | zeros, poles and gain back to state space, as a scaled cascade |
 //! | `response` | gain and unwrapped phase as the sum of the factors' phases, with an exact delay |
+//! | `discrete` | factors in z of a difference equation, at the frequencies of its samples |
 //! | `kernel` | logarithm and angle of four numbers at once |
 //! | `sampled` | a measured response that answers at a frequency |
 //! | `margins` | crossovers, phase, gain, modulus and delay margin of anything that answers at a frequency |
@@ -28,6 +29,7 @@
 mod cascade;
 mod delay;
 mod dense;
+mod discrete;
 mod eigen;
 mod error;
 mod exponential;
@@ -48,6 +50,7 @@ mod zeros;
 mod zpk;
 
 pub use delay::{pade_delay, pade_phase_error_deg};
+pub use discrete::DiscreteFactors;
 pub use eigen::eigenvalues;
 pub use error::LinearError;
 pub use exponential::expm;
