@@ -92,6 +92,8 @@ pub struct StageDrawing {
     sensed: Option<(Node, Node)>,
     /// Terminals of the load.
     load: Option<(Node, Node)>,
+    /// Terminals of the bank.
+    bank: Option<(Node, Node)>,
     filters: FilterParts,
     input_current_part: PartId,
     pub(super) inductors: Vec<PartId>,
@@ -111,6 +113,8 @@ pub(super) struct Rows {
     pub(super) output_voltage: usize,
     /// The voltage at the load's terminals.
     pub(super) load_voltage: usize,
+    /// The voltage of the bank, ahead of a second stage.
+    pub(super) bank_voltage: usize,
     pub(super) input_current: usize,
     pub(super) switch_current: usize,
     pub(super) rectifier_current: usize,
@@ -158,6 +162,7 @@ impl StageDrawing {
             supply,
             sensed: None,
             load: None,
+            bank: None,
             filters,
             input_current_part,
             inductors: Vec::new(),
@@ -238,7 +243,7 @@ impl StageDrawing {
         }
         let bank = (plus, minus);
         let (mut plus, mut minus) = bank;
-        self.sensed = Some(bank);
+        (self.sensed, self.bank) = (Some(bank), Some(bank));
         if let Some(filter) = self.options.output_filter {
             let mut canvas = Canvas { netlist: &mut self.netlist, sketch: &mut self.sketch, parts: &mut self.filters };
             (plus, minus) = draw_output_filter(&mut canvas, bank, filter);
@@ -258,7 +263,7 @@ impl StageDrawing {
 
     /// Asks for the outputs every stage answers with.
     pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
-        let (sensed, load) = (self.sensed?, self.load?);
+        let (sensed, load, bank) = (self.sensed?, self.load?, self.bank?);
         let (switch, rectifier) = (self.switch?, self.rectifier?);
         let ((from, to), (anode, cathode)) = (self.switch_ends?, self.rectifier_ends?);
         let n = &mut self.netlist;
@@ -268,6 +273,7 @@ impl StageDrawing {
         let rows = Rows {
             output_voltage: row(n.voltage_output("output voltage", sensed.0, sensed.1)),
             load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
+            bank_voltage: row(n.voltage_output("bank voltage", bank.0, bank.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
             switch_current: row(n.current_output("switch current", switch)),
             rectifier_current: row(n.current_output("rectifier current", rectifier)),

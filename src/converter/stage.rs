@@ -285,6 +285,16 @@ impl Stage {
         load_voltage(self.second_stage.as_ref(), condition.output_voltage, condition.load_current)
     }
 
+    /// Voltage of the output bank at a condition [V]: above the regulated one by the second stage's drop where the load's is regulated.
+    pub fn bank_voltage(&self, condition: &StageCondition) -> f64 {
+        match &self.second_stage {
+            Some(second) if second.sensed_at_load => {
+                condition.output_voltage + condition.load_current * second.dc_resistance
+            }
+            _ => condition.output_voltage,
+        }
+    }
+
     /// Value in a slot of the netlist.
     pub(super) fn slot_value(&self, slot: usize) -> f64 {
         self.plain.values.get(slot).copied().unwrap_or(0.0)

@@ -8,11 +8,14 @@
 //! |---|---|
 //! | `system` | configurations, probes, the switching rule |
 //! | `build` | the system of a stage, a law and a compensator at a condition |
+//! | `progress` | the cancel flag and the progress of slow work |
 
 mod build;
+mod progress;
 mod system;
 #[cfg(test)]
 mod tests;
 
 pub use build::{Driven, Joined};
+pub use progress::{Cancel, Progress};
 pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};
