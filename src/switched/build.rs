@@ -254,7 +254,7 @@ fn state_names(equations: &SwitchingEquations, layout: &Layout) -> Vec<String> {
         .collect()
 }
 
-/// The stage's outputs, all of them in its own order, then switched current, control voltage and what is compared.
+/// The stage's outputs, all of them in its own order, then switched current, control voltage, what is compared, and the sensed current.
 fn probes(equations: &SwitchingEquations) -> (Vec<Probe>, Places) {
     let rows = &equations.rows;
     let count = equations.conducting.c.nrows();
@@ -285,9 +285,12 @@ fn probes(equations: &SwitchingEquations) -> (Vec<Probe>, Places) {
     // Rows without a name carry the currents of lossy filter resistances.
     let unnamed = || Probe { name: String::new(), unit: Unit::Ampere };
     let mut probes: Vec<Probe> = named.into_iter().map(|probe| probe.unwrap_or_else(unnamed)).collect();
-    for (name, unit) in
-        [("switched current", Unit::Ampere), ("control voltage", Unit::Volt), ("compared voltage", Unit::Volt)]
-    {
+    for (name, unit) in [
+        ("switched current", Unit::Ampere),
+        ("control voltage", Unit::Volt),
+        ("compared voltage", Unit::Volt),
+        ("sensed current", Unit::Ampere),
+    ] {
         probes.push(Probe { name: name.to_owned(), unit });
     }
     let places = Places {
@@ -309,6 +312,7 @@ fn probes(equations: &SwitchingEquations) -> (Vec<Probe>, Places) {
         branch_currents: rows.branch_currents.clone(),
         control_voltage: count + 1,
         compared: count + 2,
+        sensed_current: count + 3,
     };
     (probes, places)
 }
@@ -348,7 +352,7 @@ impl Builder<'_> {
         }
         rates.extend(outer_rates);
         let compared = self.law.compared(&control, &sensed, inner_output);
-        outputs.extend([switched, control, compared]);
+        outputs.extend([switched, control, compared, sensed]);
         let n = layout.states();
         let split = |rows: &[RowDVector<f64>], from: usize, count: usize| {
             DMatrix::from_fn(rows.len(), count, |r, k| rows[r][from + k])

@@ -82,6 +82,8 @@ pub struct Places {
     pub control_voltage: usize,
     /// What the comparator compares with its ramp [V].
     pub compared: usize,
+    /// What current mode and current limit sense, behind the sense filter [A].
+    pub sensed_current: usize,
 }
 
 /// The comparator that ends an interval.
