@@ -99,6 +99,9 @@ pub struct StageDrawing {
     pub(super) inductors: Vec<PartId>,
     switch: Option<PartId>,
     rectifier: Option<PartId>,
+    /// Ends of the controlled switch and of the rectifier.
+    switch_ends: Option<(Node, Node)>,
+    rectifier_ends: Option<(Node, Node)>,
     branches: Vec<PartId>,
     drop: InputId,
 }
@@ -115,6 +118,12 @@ pub(super) struct Rows {
     pub(super) input_current: usize,
     pub(super) switch_current: usize,
     pub(super) rectifier_current: usize,
+    /// Voltage against ground of the controlled switch's end that is neither ground nor supply.
+    pub(super) switch_node: usize,
+    /// Voltage across the controlled switch.
+    pub(super) switch_voltage: usize,
+    /// Voltage across the rectifier, cathode against anode.
+    pub(super) rectifier_voltage: usize,
     pub(super) inductor_currents: Vec<usize>,
     pub(super) branch_currents: Vec<usize>,
     /// Name and current of the filters' inductors, which carry no switched current.
@@ -159,6 +168,8 @@ impl StageDrawing {
             inductors: Vec::new(),
             switch: None,
             rectifier: None,
+            switch_ends: None,
+            rectifier_ends: None,
             branches: Vec::new(),
             drop,
         }
@@ -183,6 +194,7 @@ impl StageDrawing {
     pub fn switch(&mut self, from: Node, to: Node) {
         let ohms = self.netlist.slot("stage.switch.resistance");
         self.switch = Some(self.netlist.switch(SWITCH, from, to, ohms));
+        self.switch_ends = Some((from, to));
         let drawn = Drawn::new(Symbol::Switch, "Switch", "S")
             .value("stage.switch.resistance")
             .quiet("stage.switching-frequency");
@@ -205,6 +217,7 @@ impl StageDrawing {
             self.netlist.switch(RECTIFIER, anode, cathode, ohms)
         };
         self.rectifier = Some(part);
+        self.rectifier_ends = Some((anode, cathode));
     }
 
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
@@ -252,7 +265,10 @@ impl StageDrawing {
     pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
         let (sensed, load, bank) = (self.sensed?, self.load?, self.bank?);
         let (switch, rectifier) = (self.switch?, self.rectifier?);
+        let ((from, to), (anode, cathode)) = (self.switch_ends?, self.rectifier_ends?);
         let n = &mut self.netlist;
+        let switch_node = if from.is_ground() || from == self.supply { to } else { from };
+        let ground = n.ground();
         let row = OutputId::index;
         let rows = Rows {
             output_voltage: row(n.voltage_output("output voltage", sensed.0, sensed.1)),
@@ -261,6 +277,9 @@ impl StageDrawing {
             input_current: row(n.current_output("input current", self.input_current_part)),
             switch_current: row(n.current_output("switch current", switch)),
             rectifier_current: row(n.current_output("rectifier current", rectifier)),
+            switch_node: row(n.voltage_output("switch-node voltage", switch_node, ground)),
+            switch_voltage: row(n.voltage_output("switch voltage", from, to)),
+            rectifier_voltage: row(n.voltage_output("rectifier voltage", cathode, anode)),
             inductor_currents: self
                 .inductors
                 .iter()
