@@ -12,6 +12,7 @@ use super::method::{
 use super::network::{Compensator, Kind};
 use super::place::{LEAST_RATIO, Placement};
 use crate::finding::Finding;
+use crate::linear::FrequencyResponse;
 
 /// Rounds of counting the amplifier with the plant; each shrinks what is left by the amplifier's error, far below 1.
 const ROUNDS: usize = 12;
@@ -38,6 +39,9 @@ impl Compensator {
     /// # Errors
     /// As [`k_factor`]: this type cannot give the boost, or a number of the goal is unusable.
     pub fn by_k_factor(&self, goal: &KFactorGoal, locks: &BTreeSet<String>) -> Result<Placement, Box<Finding>> {
+        if let Some(digital) = self.digital() {
+            return self.digital_by_k_factor(&digital, goal, locks);
+        }
         self.settle(goal.crossover_hz, locks, |gain_db, phase_deg| {
             let with_amplifier = KFactorGoal {
                 plant_gain_db: goal.plant_gain_db + gain_db,
@@ -58,6 +62,9 @@ impl Compensator {
     /// # Errors
     /// As [`pole_zero_rules`].
     pub fn by_rules(&self, goal: &RuleGoal, locks: &BTreeSet<String>) -> Result<RuledPlacement, Box<Finding>> {
+        if let Some(digital) = self.digital() {
+            return self.digital_by_rules(&digital, goal, locks);
+        }
         let RulePlacement { reasons, .. } = pole_zero_rules(self.kind, goal)?;
         let placement = self.settle(goal.crossover_hz, locks, |gain_db, _| {
             let with_amplifier = RuleGoal { plant_gain_db: goal.plant_gain_db + gain_db, ..*goal };
@@ -97,7 +104,7 @@ impl Compensator {
 
     /// Places what `method` asks for, given gain [dB] and phase [°] that the amplifier adds to the plant at the crossover,
     /// until those no longer change.
-    fn settle(
+    pub(super) fn settle(
         &self,
         crossover_hz: f64,
         locks: &BTreeSet<String>,
@@ -119,7 +126,10 @@ impl Compensator {
 
     /// What the amplifier's limits do to the response at a frequency: gain [dB] and phase [°] against the ideal network.
     pub fn amplifier_at(&self, frequency_hz: f64) -> Option<(f64, f64)> {
-        let actual = self.response().ok()?.at_hz(frequency_hz);
+        let actual = match self.digital() {
+            Some(digital) => digital.response().at_hz(frequency_hz),
+            None => self.response().ok()?.at_hz(frequency_hz),
+        };
         let difference = actual / self.ideal().at_hz(frequency_hz);
         let (gain_db, phase_deg) = (20.0 * difference.norm().log10(), difference.arg().to_degrees());
         (gain_db.is_finite() && phase_deg.is_finite()).then_some((gain_db, phase_deg))

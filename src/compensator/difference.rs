@@ -125,7 +125,13 @@ impl DifferenceEquation {
         // A pole at 1 is exact where the coefficients say so, and is taken out before the others are looked for.
         let poles = if denominator.iter().sum::<f64>() == 0.0 {
             let mut carried = 0.0;
-            let rest: Vec<f64> = denominator.iter().map(|c| { carried += c; carried }).collect();
+            let rest: Vec<f64> = denominator
+                .iter()
+                .map(|c| {
+                    carried += c;
+                    carried
+                })
+                .collect();
             let rest = rest.get(..denominator.len() - 1).unwrap_or_default();
             std::iter::once(Complex::ONE).chain(roots_of(rest)).collect()
         } else {
@@ -236,13 +242,7 @@ mod tests {
     const PERIOD: f64 = 5e-6;
 
     fn corners() -> Corners {
-        Corners {
-            gain: Some(400.0),
-            zero_1: Some(1.2e3),
-            pole_1: Some(30e3),
-            zero_2: Some(2.1e3),
-            pole_2: Some(70e3),
-        }
+        Corners { gain: Some(400.0), zero_1: Some(1.2e3), pole_1: Some(30e3), zero_2: Some(2.1e3), pole_2: Some(70e3) }
     }
 
     fn close(a: Complex, b: Complex, tolerance: f64) {

@@ -207,6 +207,17 @@ impl Digital {
         FactoredResponse::new(zpk, delay_s).with_discrete(factors)
     }
 
+    /// Writes where its lanes are wanted, and where its method is exact.
+    pub(super) fn write(&self, values: &mut Values) {
+        for (key, frequency_hz) in self.aims.iter() {
+            // Lanes stay within their rows' bounds, so the number is finite and is taken.
+            let _ = values.set(lane_path(key), frequency_hz);
+        }
+        if let Method::Prewarped(frequency_hz) = self.method {
+            let _ = values.set("compensator.digital.prewarp", frequency_hz);
+        }
+    }
+
     /// Least and greatest control voltage the output stands for [V].
     pub fn output_limits(&self) -> (f64, f64) {
         (self.output_zero, self.output_zero + self.output_range)
@@ -247,7 +258,8 @@ impl Digital {
         match self.rounded() {
             Err(too_large) => faults.push(self.overflow(too_large)),
             Ok(fixed) if fixed.forward.codes.iter().all(|code| *code == 0) => {
-                let message = "Rounded, every coefficient of the error is zero: the controller would not answer at all.";
+                let message =
+                    "Rounded, every coefficient of the error is zero: the controller would not answer at all.";
                 let hint = "enter more fraction bits, or leave them empty";
                 faults.push(Finding::problem("compensator.digital.fraction-bits", message).with_hint(hint));
             }
@@ -258,7 +270,9 @@ impl Digital {
     /// The finding about a coefficient that does not fit.
     fn overflow(&self, too_large: TooLarge) -> Finding {
         let (path, name, overflow, entered) = match too_large {
-            TooLarge::Feedback(o) => ("compensator.digital.feedback-fraction-bits", 'a', o, self.feedback_fraction_bits),
+            TooLarge::Feedback(o) => {
+                ("compensator.digital.feedback-fraction-bits", 'a', o, self.feedback_fraction_bits)
+            }
             TooLarge::Forward(o) => ("compensator.digital.fraction-bits", 'b', o, self.fraction_bits),
         };
         let index = if name == 'a' { overflow.index + 1 } else { overflow.index };
@@ -269,7 +283,8 @@ impl Digital {
                     "The coefficient {name}{index} = {value} overflows a word of {} bits with {places} fraction bits.",
                     self.bits
                 );
-                let finding = Finding::problem(path, message).with_hint("leave the fraction bits empty, or enter fewer");
+                let finding =
+                    Finding::problem(path, message).with_hint("leave the fraction bits empty, or enter fewer");
                 let exact = self.exact();
                 let group = if name == 'a' { &exact.feedback } else { &exact.forward };
                 match Codes::nearest(group, self.bits, None) {

@@ -139,12 +139,7 @@ impl Compensator {
     }
 
     /// Places the lanes of a difference equation that `wanted` names.
-    pub(super) fn place_digital(
-        &self,
-        digital: &Digital,
-        wanted: &Corners,
-        locks: &BTreeSet<String>,
-    ) -> Placement {
+    pub(super) fn place_digital(&self, digital: &Digital, wanted: &Corners, locks: &BTreeSet<String>) -> Placement {
         let (aimed, limit) = digital.aimed(wanted, locks);
         let compensator = Compensator { amplifier: Amplifier::Digital(aimed), ..self.clone() };
         let built = aimed.corners();
@@ -163,8 +158,8 @@ impl Compensator {
                 Some(format!("the {name} is at {}", print_digits(lane.as_built_hz, Unit::Hertz, 3)))
             })
             .collect();
-        let rounding = (!strayed.is_empty())
-            .then(|| format!("Rounded to words of {} bits, {}.", aimed.bits, strayed.join(", ")));
+        let rounding =
+            (!strayed.is_empty()).then(|| format!("Rounded to words of {} bits, {}.", aimed.bits, strayed.join(", ")));
         let why = match (limit, rounding) {
             (Some(limit), Some(rounding)) => Some(format!("{limit} {rounding}")),
             (limit, rounding) => limit.or(rounding),

@@ -99,7 +99,11 @@ impl Digital {
                 print(goal.phase_margin_deg, Unit::Degree),
                 if self.zeros == 1 { "one zero, its pole" } else { "two zeros, their poles" },
             );
-            let hint = if self.zeros == 1 { "choose two zeros; or lower the crossover" } else { "lower the crossover or the phase margin" };
+            let hint = if self.zeros == 1 {
+                "choose two zeros; or lower the crossover"
+            } else {
+                "lower the crossover or the phase margin"
+            };
             return Err(Box::new(Finding::problem("compensator.digital.zeros", message).with_hint(hint)));
         }
         let zero = (crossover / share.max(LEAST_SHARE_DEG).to_radians().tan()).min(half);

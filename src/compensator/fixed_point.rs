@@ -4,7 +4,7 @@
 //! 2^(N−1) − 1. Rounding is to the nearest code, half away from zero.
 
 /// Greatest number of fraction bits: beyond it 2^bits and a code of 32 bits no longer fit the whole numbers of a double together.
-pub const MOST_FRACTION_BITS: u32 = 62;
+pub(super) const MOST_FRACTION_BITS: u32 = 62;
 
 /// One group of coefficients that share a scale.
 #[derive(Clone, Debug, PartialEq)]
@@ -17,7 +17,7 @@ pub struct Codes {
 
 /// A coefficient that does not fit its word.
 #[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Overflow {
+pub(super) struct Overflow {
     /// Place in the group, from 0.
     pub index: usize,
     /// The coefficient.

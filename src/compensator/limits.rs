@@ -56,6 +56,9 @@ impl Compensator {
     /// # Errors
     /// As [`Compensator::state_space`].
     pub fn limited(&self) -> Result<Limited, NetworkError> {
+        if self.digital().is_some() {
+            return Err(NetworkError::Sampled);
+        }
         let (mut circuit, driven) = self.drawn();
         let (ground, force) = (circuit.netlist.ground(), circuit.netlist.input(FORCE));
         circuit.netlist.current_source(FORCE, ground, driven, force);

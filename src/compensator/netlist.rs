@@ -24,6 +24,8 @@ pub enum NetworkError {
     Circuit(CircuitError),
     /// The state equations could not be used.
     Linear(LinearError),
+    /// A difference equation is no network.
+    Sampled,
 }
 
 impl fmt::Display for NetworkError {
@@ -31,6 +33,7 @@ impl fmt::Display for NetworkError {
         match self {
             NetworkError::Circuit(error) => write!(f, "compensator network: {error}"),
             NetworkError::Linear(error) => write!(f, "compensator response: {error}"),
+            NetworkError::Sampled => f.write_str("a difference equation has no state equations in continuous time"),
         }
     }
 }
@@ -108,7 +111,7 @@ impl Compensator {
         let (far_end, driven) = self.fit_amplifier(&mut circuit, [vref, tap, vc]);
         if self.kind == Kind::One {
             circuit.fit(self, Part::C1, vc, far_end);
-        } else {
+        } else if self.has(Part::R2) {
             let inner = circuit.netlist.node("r2-c1");
             circuit.fit(self, Part::R2, vc, inner);
             circuit.fit(self, Part::C1, inner, far_end);
@@ -145,6 +148,8 @@ impl Compensator {
                 circuit.netlist.resistor("transconductance.output-resistance", vc, ground, resistance);
                 (ground, vc)
             }
+            // Sampled at the tap, which it does not load; what it computes is no part of a netlist.
+            Amplifier::Digital(_) => (ground, vc),
         }
     }
 
@@ -155,6 +160,9 @@ impl Compensator {
     /// # Errors
     /// When the netlist has no state equations; parts within the table's bounds do not lead there.
     pub fn state_space(&self) -> Result<StateSpace, NetworkError> {
+        if self.digital().is_some() {
+            return Err(NetworkError::Sampled);
+        }
         let circuit = self.netlist();
         let compiled = Compiled::new(&circuit.netlist, |_| true, &circuit.values)?;
         let (equations, _) = compiled.equations(&circuit.values)?.independent();

@@ -5,9 +5,10 @@
 //!
 //! *Bad input.* All entries that cannot be used are reported at once, each with its place, reason and hint.
 
-use super::entries::{CHOICES, ENTRIES, applies, chosen};
+use super::digital::Digital;
+use super::entries::{applies, choices as choice_rows, chosen, entries};
 use crate::finding::Finding;
-use crate::quantity::{Choices, Entry, Values};
+use crate::quantity::{Bounds, Choices, Entry, Unit, Values};
 
 /// How many poles and zeros the network has beside its integrator.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -75,6 +76,8 @@ pub enum Amplifier {
     OpAmp(OpAmp),
     /// A voltage-to-current amplifier with the network from its output to ground.
     Transconductance(Transconductance),
+    /// None: the output is sampled, and a difference equation computes the control voltage.
+    Digital(Digital),
 }
 
 impl Amplifier {
@@ -83,6 +86,7 @@ impl Amplifier {
         match self {
             Amplifier::OpAmp(a) => (a.output_least, a.output_greatest),
             Amplifier::Transconductance(a) => (a.output_least, a.output_greatest),
+            Amplifier::Digital(digital) => digital.output_limits(),
         }
     }
 }
@@ -148,9 +152,10 @@ impl Part {
 
     /// The part's row in the table of entries.
     pub fn entry(self) -> &'static Entry {
-        // The table and this list are fixed together; the first row stands in for one that is missing, and a test sees to it
+        // The table and this list are fixed together; an empty row stands in for one that is missing, and a test sees to it
         // that none is.
-        ENTRIES.iter().find(|row| row.path == self.path()).unwrap_or(&ENTRIES[0])
+        static NONE: Entry = Entry::new("compensator", "", Unit::One, Bounds::Finite, 0.0, "");
+        entries().find(|row| row.path == self.path()).unwrap_or(&NONE)
     }
 }
 
@@ -176,6 +181,11 @@ pub struct Parts {
 }
 
 impl Parts {
+    /// Fraction of the output voltage at the divider's tap, 0 to 1.
+    pub(super) fn divider_ratio(&self) -> f64 {
+        self.lower / (self.upper + self.lower)
+    }
+
     /// Value of one part [Ω or F].
     pub fn get(&self, part: Part) -> f64 {
         match part {
@@ -262,6 +272,7 @@ impl Compensator {
         };
         let amplifier = match chosen(choices, "compensator.amplifier") {
             "transconductance" => Amplifier::Transconductance(transconductance),
+            "digital" => Amplifier::Digital(Digital::read(values, choices, parts.divider_ratio(), &mut faults)),
             _ => Amplifier::OpAmp(op_amp),
         };
         faults.extend(output_room(&amplifier));
@@ -279,6 +290,9 @@ impl Compensator {
 
     /// Writes the values of the parts that the network has; nothing else changes when a lane moves or parts are rounded.
     pub fn write(&self, values: &mut Values) {
+        if let Some(digital) = self.digital() {
+            digital.write(values);
+        }
         for part in self.fitted() {
             // Every route to a part's value keeps it within the table's bounds, so it is finite and is taken.
             let _ = values.set(part.path(), self.parts.get(part));
@@ -292,6 +306,9 @@ impl Compensator {
 
     /// Whether the network has this part.
     pub fn has(&self, part: Part) -> bool {
+        if matches!(self.amplifier, Amplifier::Digital(_)) {
+            return matches!(part, Part::Upper | Part::Lower);
+        }
         match part {
             Part::Upper | Part::Lower | Part::C1 => true,
             Part::R2 | Part::C2 => self.kind != Kind::One,
@@ -307,14 +324,21 @@ impl Compensator {
 
     /// Fraction of the output voltage at the divider's tap, 0 to 1.
     pub fn divider_ratio(&self) -> f64 {
-        self.parts.lower / (self.parts.upper + self.parts.lower)
+        self.parts.divider_ratio()
+    }
+
+    /// The difference equation in place of an amplifier, with the divider as it stands.
+    pub fn digital(&self) -> Option<Digital> {
+        match self.amplifier {
+            Amplifier::Digital(digital) => Some(Digital { divider_ratio: self.divider_ratio(), ..digital }),
+            _ => None,
+        }
     }
 }
 
 /// One finding per choice that is none of its options.
 fn wrong_choices(choices: &Choices) -> Vec<Finding> {
-    CHOICES
-        .iter()
+    choice_rows()
         .filter_map(|row| {
             let key = choices.get(row.path)?;
             if row.options.iter().any(|option| option.key == key) {
@@ -332,7 +356,7 @@ fn wrong_choices(choices: &Choices) -> Vec<Finding> {
 /// Value at a path, the default where none was entered. An entry that applies must be within bounds; one that does not apply
 /// stands in with what was entered when that is usable, else with its default.
 fn read_entry(path: &str, values: &Values, choices: &Choices, faults: &mut Vec<Finding>) -> f64 {
-    let Some(entry) = ENTRIES.iter().find(|row| row.path == path) else { return f64::NAN };
+    let Some(entry) = entries().find(|row| row.path == path) else { return f64::NAN };
     let Some(value) = values.get_or_default(entry) else { return entry.default };
     match entry.check(value) {
         Ok(()) => value,
@@ -351,6 +375,8 @@ fn output_room(amplifier: &Amplifier) -> Option<Finding> {
     let place = match amplifier {
         Amplifier::OpAmp(_) => "compensator.op-amp.output-greatest",
         Amplifier::Transconductance(_) => "compensator.transconductance.output-greatest",
+        // Ranges are above zero by their rows.
+        Amplifier::Digital(_) => return None,
     };
     (least >= greatest).then(|| {
         Finding::problem(
@@ -367,7 +393,7 @@ mod tests {
 
     fn defaults() -> Values {
         let mut values = Values::new();
-        for row in ENTRIES {
+        for row in entries() {
             values.set(row.path, row.default).unwrap();
         }
         values
@@ -383,10 +409,10 @@ mod tests {
 
     #[test]
     fn every_default_is_usable_and_every_part_has_its_row() {
-        for row in ENTRIES {
+        for row in entries() {
             assert!(row.check(row.default).is_ok(), "{}", row.path);
         }
-        for row in CHOICES {
+        for row in choice_rows() {
             assert!(row.options.iter().any(|option| option.key == row.default), "{}", row.path);
         }
         for part in Part::ALL {

@@ -75,6 +75,9 @@ impl Compensator {
             let why = "A lane needs a frequency above zero.".to_owned();
             return Placed { compensator: self.clone(), as_built_hz: from, why: Some(why) };
         }
+        if let Some(digital) = self.digital() {
+            return self.move_digital(&digital, corner, frequency_hz, locks);
+        }
         let mut aim = present;
         *aim.slot(corner) = Some(frequency_hz);
         let (parts, why) = self.nearest_parts(&present, &aim, Some(corner), locks);
@@ -92,6 +95,9 @@ impl Compensator {
 
     /// Places every lane that `aims` names, the others staying where they are.
     pub fn place(&self, aims: &Corners, locks: &BTreeSet<String>) -> Placement {
+        if let Some(digital) = self.digital() {
+            return self.place_digital(&digital, aims, locks);
+        }
         let present = self.corners();
         let mut aim = present;
         for corner in Corner::ALL {
@@ -183,6 +189,8 @@ impl Compensator {
             _ => None,
         };
         match self.amplifier {
+            // A difference equation has lanes in place of parts, and its own way here.
+            Amplifier::Digital(_) => {}
             Amplifier::OpAmp(_) => {
                 if let (Anchor::R2, Some((zero, share))) = (self.anchor, share) {
                     let total = 1.0 / (TAU * zero * parts.r2) / (1.0 - share);
@@ -205,7 +213,7 @@ impl Compensator {
     fn fill_input(&self, parts: &mut Parts, aim: &Corners, moved: Option<Corner>) -> Result<(), String> {
         let (upper, lower) = (parts.upper, parts.lower);
         let source = match self.amplifier {
-            Amplifier::OpAmp(_) => 0.0,
+            Amplifier::OpAmp(_) | Amplifier::Digital(_) => 0.0,
             Amplifier::Transconductance(_) => parallel(upper, lower),
         };
         if self.has(Part::Feedforward) {
@@ -238,7 +246,7 @@ impl Compensator {
     /// Greatest ratio of second pole to second zero that moving a lane may reach; infinite around an op amp.
     pub fn greatest_ratio(&self) -> f64 {
         match self.amplifier {
-            Amplifier::OpAmp(_) => f64::INFINITY,
+            Amplifier::OpAmp(_) | Amplifier::Digital(_) => f64::INFINITY,
             Amplifier::Transconductance(_) => {
                 let source = parallel(self.parts.upper, self.parts.lower);
                 (self.parts.upper + LEAST_R3 * source) / ((1.0 + LEAST_R3) * source)

@@ -16,6 +16,8 @@
 //! | `discrete` | factors in z of a difference equation, at the frequencies of its samples |
 //! | `kernel` | logarithm and angle of four numbers at once |
 //! | `sampled` | a measured response that answers at a frequency |
+//! | `sampled_loop` | a system sampled once a period and driven through a difference equation: its exact map |
+//! | `sampled_step` | step responses of such a loop |
 //! | `margins` | crossovers, phase, gain, modulus and delay margin of anything that answers at a frequency |
 //! | `stability` | the verdict: closed-loop poles checked by the encirclement count on the exact delay |
 //! | `dense` | small dense matrices by rows of vectors |
@@ -42,6 +44,8 @@ pub(crate) mod precision;
 mod response;
 mod root;
 mod sampled;
+mod sampled_loop;
+mod sampled_step;
 mod settling;
 mod stability;
 mod state_space;
@@ -60,6 +64,8 @@ pub use modes::{Modes, StepMetrics, settle};
 pub use response::{FactorKind, FactorPhase, FactoredResponse, FrequencyResponse, LogPoint};
 pub(crate) use root::bracketed_root;
 pub use sampled::SampledResponse;
+pub use sampled_loop::{Drive, SampleTiming, SampledLoop};
+pub use sampled_step::{SampledInput, SampledOutput};
 pub use stability::{Verdict, closed_loop_verdict, closed_loop_verdict_knowing, encirclement_count};
 pub use state_space::StateSpace;
 pub use time::{RampStep, UniformGrid, step_response};
