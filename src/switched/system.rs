@@ -74,6 +74,8 @@ pub struct Places {
     pub rectifier_current: usize,
     /// Current that stops when both block [A].
     pub switched_current: usize,
+    /// What current mode senses, behind its filter [A].
+    pub sensed_current: usize,
     /// Currents of the inductors, those of the filters last [A].
     pub inductor_currents: Vec<usize>,
     /// Currents into the branches of the output bank [A].
