@@ -100,7 +100,7 @@ impl Stage {
     pub(super) fn averaged_rows(&self) -> Vec<usize> {
         std::iter::once(self.rows.output_voltage)
             .chain(self.rows.inductors.iter().take(1).map(|winding| winding.row))
-            .chain([self.rows.input_current, self.rows.load_voltage])
+            .chain([self.rows.input_current, self.rows.load_voltage, self.rows.bank_voltage])
             .collect()
     }
 

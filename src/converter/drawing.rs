@@ -7,6 +7,7 @@ use super::entries::{BRANCHES, branch_count};
 use super::filters::{
     Canvas, Damping, FilterParts, OutputFilter, draw_input_network, draw_output_filter, input_filter, output_filter,
 };
+use super::rows::{Rows, SwitchRow, WindingRow};
 use super::stage::{LoadKind, Rectifier};
 use super::topology_entries::{
     COUPLING, COUPLING_CAPACITOR, COUPLING_CAPACITOR_ESR, INDUCTORS, RATIO, SECOND_INDUCTOR, SECOND_WINDING, coupled,
@@ -59,54 +60,14 @@ pub struct StageDrawing {
     sensed: Option<(Node, Node)>,
     /// Terminals of the load.
     load: Option<(Node, Node)>,
+    /// Terminals of the bank.
+    bank: Option<(Node, Node)>,
     filters: FilterParts,
     input_current_part: PartId,
     windings: Vec<Winding>,
     switches: Vec<Switched>,
     branches: Vec<PartId>,
     drop: InputId,
-}
-
-/// Rows of the outputs every stage answers with.
-#[derive(Clone, Debug)]
-pub(super) struct Rows {
-    /// The regulated voltage, where divider and control sense it.
-    pub(super) output_voltage: usize,
-    /// The voltage at the load's terminals.
-    pub(super) load_voltage: usize,
-    pub(super) input_current: usize,
-    /// Switches and rectifiers.
-    pub(super) switches: Vec<SwitchRow>,
-    /// The inductors that carry switched current.
-    pub(super) inductors: Vec<WindingRow>,
-    pub(super) branch_currents: Vec<usize>,
-    /// Name and current of the filters' inductors, which carry no switched current.
-    pub(super) filter_inductors: Vec<(&'static str, usize)>,
-    /// Name, slot and current of the resistances of input network and output filter.
-    pub(super) filter_losses: Vec<(&'static str, usize, usize)>,
-}
-
-/// A switch or rectifier and the row of its current.
-#[derive(Clone, Copy, Debug)]
-pub(super) struct SwitchRow {
-    /// Its name in the netlist.
-    pub(super) name: &'static str,
-    pub(super) row: usize,
-    /// Slot of its resistance.
-    pub(super) ohms: usize,
-    /// Whether it has a diode's drop.
-    pub(super) diode: bool,
-}
-
-/// An inductor that carries switched current and the row of that.
-#[derive(Clone, Copy, Debug)]
-pub(super) struct WindingRow {
-    pub(super) name: &'static str,
-    /// Name of its loss.
-    pub(super) loss: &'static str,
-    pub(super) row: usize,
-    /// Slot of its resistance.
-    pub(super) ohms: usize,
 }
 
 /// An inductor drawn.
@@ -124,14 +85,9 @@ struct Switched {
     name: &'static str,
     part: PartId,
     ohms: Slot,
+    /// Of a rectifier, the cathode first.
+    ends: (Node, Node),
     diode: bool,
-}
-
-impl Rows {
-    /// The switch or rectifier of this name.
-    pub(super) fn switch(&self, name: &str) -> Option<SwitchRow> {
-        self.switches.iter().copied().find(|switch| switch.name == name)
-    }
 }
 
 /// Columns of the inputs every stage has.
@@ -164,6 +120,7 @@ impl StageDrawing {
             supply,
             sensed: None,
             load: None,
+            bank: None,
             filters,
             input_current_part,
             windings: Vec::new(),
@@ -210,7 +167,7 @@ impl StageDrawing {
     pub fn switch_called(&mut self, (name, shown, designator): (&'static str, &str, &str), from: Node, to: Node) {
         let ohms = self.netlist.slot("stage.switch.resistance");
         let part = self.netlist.switch(name, from, to, ohms);
-        self.switches.push(Switched { name, part, ohms, diode: false });
+        self.switches.push(Switched { name, part, ohms, ends: (from, to), diode: false });
         let drawn = Drawn::new(Symbol::Switch, shown, designator)
             .value("stage.switch.resistance")
             .quiet("stage.switching-frequency");
@@ -242,7 +199,7 @@ impl StageDrawing {
             self.sketch.part(anode, cathode, drawn);
             (self.netlist.switch(name, anode, cathode, ohms), ohms)
         };
-        self.switches.push(Switched { name, part, ohms, diode });
+        self.switches.push(Switched { name, part, ohms, ends: (cathode, anode), diode });
     }
 
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
@@ -326,7 +283,7 @@ impl StageDrawing {
         }
         let bank = (plus, minus);
         let (mut plus, mut minus) = bank;
-        self.sensed = Some(bank);
+        (self.sensed, self.bank) = (Some(bank), Some(bank));
         if let Some(filter) = self.options.output_filter {
             let mut canvas = Canvas { netlist: &mut self.netlist, sketch: &mut self.sketch, parts: &mut self.filters };
             (plus, minus) = draw_output_filter(&mut canvas, bank, filter);
@@ -346,12 +303,14 @@ impl StageDrawing {
 
     /// Asks for the outputs every stage answers with.
     pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
-        let (sensed, load) = (self.sensed?, self.load?);
+        let (sensed, load, bank) = (self.sensed?, self.load?, self.bank?);
         let n = &mut self.netlist;
+        let (ground, supply) = (n.ground(), self.supply);
         let row = OutputId::index;
         let rows = Rows {
             output_voltage: row(n.voltage_output("output voltage", sensed.0, sensed.1)),
             load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
+            bank_voltage: row(n.voltage_output("bank voltage", bank.0, bank.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
             switches: self
                 .switches
@@ -359,6 +318,8 @@ impl StageDrawing {
                 .map(|switch| SwitchRow {
                     name: switch.name,
                     row: row(n.current_output(switch.name, switch.part)),
+                    voltage: row(n.voltage_output(switch.name, switch.ends.0, switch.ends.1)),
+                    node: row(n.voltage_output(switch.name, free_end(switch.ends, supply), ground)),
                     ohms: switch.ohms.index(),
                     diode: switch.diode,
                 })
@@ -398,6 +359,11 @@ pub fn sketch(choices: &Choices) -> Option<Sketch> {
     let mut drawing = StageDrawing::new(Options::chosen(choices));
     (topology.draw)(&mut drawing);
     Some(drawing.sketch)
+}
+
+/// The end of a switch that is neither ground nor supply.
+fn free_end((from, to): (Node, Node), supply: Node) -> Node {
+    if from.is_ground() || from == supply { to } else { from }
 }
 
 /// Path of the inductance that every stage has.

@@ -1,9 +1,11 @@
 //! A stage's netlist, drawn and compiled for every interval of every region of operation.
 
 use super::cell::SwitchedCell;
-use super::drawing::{Options, Rows, StageDrawing};
+use super::drawing::{Options, StageDrawing};
+use super::rows::Rows;
 use super::topology::{SwitchSets, Topology};
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
+use nalgebra::DMatrix;
 
 /// A netlist drawn and compiled.
 #[derive(Clone, Debug)]
@@ -12,6 +14,8 @@ pub(super) struct Drawn {
     pub(super) rows: Rows,
     pub(super) values: Vec<f64>,
     pub(super) load_slot: Option<usize>,
+    /// Parts that hold the independent states.
+    pub(super) state_names: Vec<String>,
 }
 
 /// A netlist compiled for the intervals of one region of operation.
@@ -47,8 +51,11 @@ impl Drawn {
         let region = |sets: &'static SwitchSets| {
             Ok(Region { sets, on: compiled(sets.on)?, off: compiled(sets.off)?, idle: compiled(sets.idle)? })
         };
-        let regions = topology.switching.iter().map(region).collect::<Result<_, CircuitError>>()?;
-        Ok(Drawn { regions, rows, values, load_slot })
+        let regions = topology.switching.iter().map(region).collect::<Result<Vec<_>, CircuitError>>()?;
+        let all: Vec<String> = netlist.state_names().map(str::to_owned).collect();
+        let first: &Region = regions.first().ok_or_else(unfinished)?;
+        let state_names = kept_names(&all, &first.on.equations(&values)?.independent().1);
+        Ok(Drawn { regions, rows, values, load_slot, state_names })
     }
 
     /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.
@@ -79,4 +86,13 @@ impl Drawn {
         let cell = SwitchedCell::new(idle, (&on, row(sets.switch)?), (&off, row(sets.rectifier)?))?;
         Ok(Equations { on, off, cell })
     }
+}
+
+/// Names of the states kept of all, by the matrix that gives all from them.
+fn kept_names(all: &[String], basis: &DMatrix<f64>) -> Vec<String> {
+    let unit = |column: usize, row: usize| {
+        (0..basis.ncols()).all(|k| (basis[(row, k)] - f64::from(u8::from(k == column))).abs() < f64::EPSILON)
+    };
+    let name = |column: usize| (0..basis.nrows()).find(|row| unit(column, *row)).and_then(|row| all.get(row));
+    (0..basis.ncols()).map(|column| name(column).cloned().unwrap_or_default()).collect()
 }

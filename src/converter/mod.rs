@@ -24,9 +24,11 @@ mod pulse_point;
 #[cfg(test)]
 mod pulse_tests;
 mod registry;
+mod rows;
 pub mod signals;
 mod sizing;
 mod stage;
+mod switching;
 #[cfg(test)]
 mod tests;
 mod topologies;
@@ -46,5 +48,6 @@ pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, Ope
 pub use registry::{find, registry};
 pub use sizing::{Sized, Sizing};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
+pub use switching::{SwitchingEquations, SwitchingRows};
 pub use topology::{IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
 pub use topology_entries::{choices, entries, row};

@@ -5,9 +5,9 @@
 //! solutions the one below the peak of the conversion curve is found. Ripple is that of straight-line segments.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976.
 
-use super::drawing::{Rows, SwitchRow};
 use super::pulse::Pulse;
 use super::pulse_point::Found;
+use super::rows::{Rows, SwitchRow};
 use super::stage::{Intervals, OutOfReach, Stage, StageCondition};
 use super::waves::{ALWAYS, Waves};
 use crate::circuit::{CircuitError, StateEquations};

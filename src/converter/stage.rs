@@ -2,12 +2,13 @@
 
 use super::bank::{Branch, branch_value};
 use super::cell::SwitchedCell;
-use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, Rows};
+use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options};
 use super::drawn::{Drawn, Equations};
 use super::entries::{BRANCHES, applies, branch_count};
 use super::filter_values::{InputFilter, SecondStage};
 use super::filters::network_impedance;
 use super::registry::find;
+use super::rows::Rows;
 use super::signals::INPUTS;
 use super::topology::{SwitchSets, Topology, Voltages};
 use super::topology_entries::{self, COUPLING, COUPLING_CAPACITOR, RATIO, SECOND_INDUCTOR};
@@ -268,6 +269,16 @@ impl Stage {
         load_voltage(self.second_stage.as_ref(), condition.output_voltage, condition.load_current)
     }
 
+    /// Voltage of the output bank at a condition [V]: above the regulated one by the second stage's drop where the load's is regulated.
+    pub fn bank_voltage(&self, condition: &StageCondition) -> f64 {
+        match &self.second_stage {
+            Some(second) if second.sensed_at_load => {
+                condition.output_voltage + condition.load_current * second.dc_resistance
+            }
+            _ => condition.output_voltage,
+        }
+    }
+
     /// Value in a slot of the netlist.
     pub(super) fn slot_value(&self, slot: usize) -> f64 {
         self.plain.values.get(slot).copied().unwrap_or(0.0)
@@ -281,6 +292,11 @@ impl Stage {
     /// The topology.
     pub fn topology(&self) -> &'static Topology {
         self.topology
+    }
+
+    /// Parts that hold the states of operating point and waveforms.
+    pub(super) fn state_names(&self) -> &[String] {
+        &self.plain.state_names
     }
 
     /// Capacitance of the whole output bank, and of the second stage where one is fitted [F].
