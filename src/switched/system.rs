@@ -74,8 +74,6 @@ pub struct Places {
     pub rectifier_current: usize,
     /// Current that stops when both block [A].
     pub switched_current: usize,
-    /// What current mode senses, behind its filter [A].
-    pub sensed_current: usize,
     /// Currents of the inductors, those of the filters last [A].
     pub inductor_currents: Vec<usize>,
     /// Currents into the branches of the output bank [A].
@@ -84,6 +82,8 @@ pub struct Places {
     pub control_voltage: usize,
     /// What the comparator compares with its ramp [V].
     pub compared: usize,
+    /// What current mode and current limit sense, behind the sense filter [A].
+    pub sensed_current: usize,
 }
 
 /// The comparator that ends an interval.
