@@ -3,8 +3,11 @@
 //! *Conventions*: the plant runs from control voltage to output voltage, control law and delay included; the compensator
 //! from output voltage to control voltage with its inversion taken out; their product is the loop gain. The delay of the
 //! control voltage is exact in every frequency response and a third-order Padé form in the closed-loop state space; inside
-//! the inner loop of average current mode it is the latter in both.
+//! the inner loop of average current mode it is the latter in both. A loop with a difference equation is judged and followed by its exact map from
+//! sample to sample (`sampled`); its curves here are those of the unfolded band, as an analyser reads them.
 
+use super::motion::Motion;
+use super::sampled::SharedDigital;
 use crate::control::{CONTROL, ControlLaw, Controlled, Edge, Mode};
 use crate::converter::signals::LOAD_VOLTAGE;
 use crate::converter::{AveragedModel, Conduction, Stage, StageCondition};
@@ -26,6 +29,8 @@ pub struct Shared {
     pub compensator_response: FactoredResponse,
     /// The control law, its compensating ramp settled.
     pub law: ControlLaw,
+    /// The difference equation in place of a network: then `compensator` answers nothing.
+    pub digital: Option<SharedDigital>,
     delay: Option<StateSpace>,
 }
 
@@ -41,8 +46,15 @@ impl Shared {
         let singular = |e: &dyn std::fmt::Display| {
             Finding::problem("compensator", format!("The compensator cannot be solved: {e}."))
         };
-        let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
-        let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+        let digital = design.compensator.digital().map(SharedDigital::new);
+        let (compensator, compensator_response) = match &digital {
+            Some(digital) => (no_network().map_err(|e| singular(&e))?, digital.response()),
+            None => {
+                let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
+                let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+                (compensator, FactoredResponse::new(response, 0.0))
+            }
+        };
         let law = settled(design)?;
         let outside = !matches!(law.mode, Mode::Average(_));
         let delay = if law.delay_s > 0.0 && outside {
@@ -50,15 +62,37 @@ impl Shared {
         } else {
             None
         };
-        Ok(Shared { compensator, compensator_response: FactoredResponse::new(response, 0.0), law, delay })
+        Ok(Shared { compensator, compensator_response, law, digital, delay })
     }
 }
 
 impl Shared {
+    /// Control voltage from reference; `scale` is the output voltage over the reference.
+    ///
+    /// # Errors
+    /// As the reduction to zeros and poles.
+    pub(super) fn reference(&self, scale: f64) -> Result<FactoredResponse, LinearError> {
+        match &self.digital {
+            Some(digital) => Ok(digital.scaled_response(scale)),
+            None => Ok(FactoredResponse::new(Zpk::from_state_space(&self.compensator, 0, 1)?, 0.0)),
+        }
+    }
+
+    /// The same with the difference equation before rounding; none without one.
+    pub(super) fn before_rounding(&self) -> Option<Self> {
+        let exact = self.digital.as_ref()?.before_rounding();
+        Some(Shared { compensator_response: exact.response(), digital: Some(exact), ..self.clone() })
+    }
+
     /// The same with another control law of the same delay.
     pub(super) fn with_law(&self, law: ControlLaw) -> Self {
         Shared { law, ..self.clone() }
     }
+}
+
+/// State equations in the place of a network's where a difference equation works instead.
+fn no_network() -> Result<StateSpace, LinearError> {
+    StateSpace::constant(DMatrix::zeros(2, 2), &["vout", "vref"], &["vc", "error"])
 }
 
 /// The control law with its compensating ramp settled by the nominal condition.
@@ -93,6 +127,8 @@ pub struct LoopModel {
     pub plant: FactoredResponse,
     /// The loop gain.
     pub loop_gain: FactoredResponse,
+    /// From the start of a period to where a value set there acts [s]; none where the control voltage acts throughout.
+    pub modulator_delay_s: Option<f64>,
     /// Whether the load's voltage is another than the regulated one: a second stage stands behind the sense point.
     pub load_beyond: bool,
 }
@@ -119,10 +155,19 @@ impl LoopModel {
         ended_blind(&shared.law, &averaged, period)?;
         let controlled = shared.law.controlled(&averaged, period).map_err(|e| model_finding(&e))?;
         let plant = Zpk::from_state_space(&controlled.stage, 0, 0).map_err(|e| model_finding(&e))?;
-        let loop_zpk = plant.multiply(shared.compensator_response.zpk());
+        let compensator = &shared.compensator_response;
+        let loop_zpk = plant.multiply(compensator.zpk());
+        let decided = shared.law.decision_share(averaged.operating_point.duty);
+        let modulator_delay_s = shared.digital.as_ref().and(decided).map(|share| share * period);
+        let delay_s = controlled.delay_s + modulator_delay_s.unwrap_or(0.0);
+        let mut loop_gain = FactoredResponse::new(loop_zpk, delay_s + compensator.delay_s());
+        if let Some(factors) = compensator.discrete() {
+            loop_gain = loop_gain.with_discrete(factors.clone());
+        }
         Ok(LoopModel {
-            plant: FactoredResponse::new(plant, controlled.delay_s),
-            loop_gain: FactoredResponse::new(loop_zpk, controlled.delay_s),
+            plant: FactoredResponse::new(plant, delay_s),
+            loop_gain,
+            modulator_delay_s,
             controlled,
             averaged,
             load_beyond: stage.second_stage.is_some_and(|second| !second.sensed_at_load),
@@ -201,11 +246,16 @@ impl LoopModel {
     }
 
     /// Stability by the poles of the closed loop, checked by the encirclement count on the exact delay; and for a stable
-    /// loop its modes.
+    /// loop how it moves.
     ///
     /// # Errors
     /// As the joining of systems.
-    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Modes>), LinearError> {
+    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Motion>), LinearError> {
+        if let Some(digital) = &shared.digital {
+            let (verdict, sampled) = self.sampled(digital)?.judged()?;
+            let stable = matches!(verdict, Verdict::Stable { .. });
+            return Ok((verdict, stable.then_some(Motion::Sampled(sampled))));
+        }
         let (closed, poles, verdict) = self.judged(shared, margins)?;
         if !matches!(verdict, Verdict::Stable { .. }) {
             return Ok((verdict, None));
@@ -215,7 +265,7 @@ impl LoopModel {
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.with)?, 1.0)?;
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.without)?, -1.0)?;
         }
-        Ok((verdict, Some(modes)))
+        Ok((verdict, Some(Motion::Continuous(modes))))
     }
 }
 
@@ -225,6 +275,9 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn stability(&self, shared: &Shared, margins: &Margins) -> Result<Verdict, LinearError> {
+        if let Some(digital) = &shared.digital {
+            return self.sampled(digital)?.judged().map(|judged| judged.0);
+        }
         self.judged(shared, margins).map(|judged| judged.2)
     }
 

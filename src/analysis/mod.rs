@@ -10,6 +10,8 @@ mod control_figures;
 mod control_remarks;
 mod crossover_window;
 mod curves;
+mod digital;
+mod digital_remarks;
 mod filter_readouts;
 mod filter_remarks;
 mod filter_result;
@@ -17,6 +19,7 @@ mod impedance;
 mod ledger;
 mod load_sweep;
 pub mod loop_model;
+pub mod motion;
 mod pairs;
 mod placement;
 pub mod proposal;
@@ -24,6 +27,7 @@ mod readouts;
 mod remarks;
 mod requirement;
 mod result;
+pub mod sampled;
 mod stability_remarks;
 mod steps;
 pub mod terms;
@@ -31,6 +35,7 @@ pub mod terms;
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use digital::DigitalDetail;
 pub use filter_result::{
     Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
 };

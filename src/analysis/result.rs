@@ -4,6 +4,7 @@
 //! unwrapped upward from low frequency; the loop gain has the sign of the negative feedback taken out. Every result
 //! names the operating condition it was computed at.
 
+use super::digital::DigitalDetail;
 use super::filter_result::{InputFilterDetail, InputFilterResult};
 use crate::control::Sampling;
 use crate::converter::{Landmark, OperatingPoint};
@@ -156,6 +157,8 @@ pub enum LedgerRole {
     Compensator,
     /// Difference of the real amplifier to the ideal one.
     Amplifier,
+    /// What sampling and rounding make of the compensator.
+    Sampling,
     /// A pole or left-half-plane zero of the power stage.
     Plant,
     /// A right-half-plane zero or pole of the power stage.
@@ -235,6 +238,8 @@ pub struct Detail {
     pub loop_gain: LoopResult,
     /// Frequency curves on the requested grid.
     pub curves: Curves,
+    /// The difference equation, where the compensator is one.
+    pub digital: Option<DigitalDetail>,
     /// Input filter against converter, where one is fitted.
     pub input_filter: Option<InputFilterDetail>,
     /// Time responses.

@@ -13,6 +13,7 @@ use super::difference::{DifferenceEquation, Method};
 use super::digital_entries::{ENTRIES, applies, chosen, voltage_mode};
 use super::fixed_point::{Codes, Overflow};
 use super::lanes::Corners;
+use crate::converter::pulse_frequency;
 use crate::finding::{Finding, Remedy};
 use crate::linear::{Complex, FactoredResponse, Zpk};
 use crate::quantity::{Choices, Unit, Values, print, print_digits};
@@ -86,8 +87,8 @@ impl Digital {
     pub(super) fn read(values: &Values, choices: &Choices, divider_ratio: f64, faults: &mut Vec<Finding>) -> Self {
         let start = faults.len();
         let mut get = |path: &str| read_entry(path, values, choices, faults);
-        let switching = values.get("stage.switching-frequency").filter(|f| f.is_finite() && *f > 0.0);
-        let period_s = switching.unwrap_or(1.0).recip();
+        let pulses = pulse_frequency(values, choices);
+        let period_s = pulses.unwrap_or(1.0).recip();
         let duty_command = voltage_mode(choices);
         let lane = |path: &str, applies: bool, get: &mut dyn FnMut(&str) -> f64| applies.then(|| get(path));
         let order = if chosen(choices, "compensator.digital.order") == "2" { 2 } else { 3 };
@@ -139,7 +140,7 @@ impl Digital {
             held: choices.is("control.mode", "average-current"),
             divider_ratio,
         };
-        if faults.len() == start && switching.is_some() {
+        if faults.len() == start && pulses.is_some() {
             digital.check(values, faults);
         }
         digital
@@ -191,7 +192,11 @@ impl Digital {
     /// Control voltage from output voltage, inversion taken out: the equation at e^(jωT), its computation delay, and the hold of the
     /// converter behind it where that acts all the while. Known up to half the sampling frequency [V/V].
     pub fn response(&self) -> FactoredResponse {
-        let equation = self.equation();
+        self.response_of(&self.equation())
+    }
+
+    /// The same with another equation in its place.
+    pub fn response_of(&self, equation: &DifferenceEquation) -> FactoredResponse {
         let mut factors = equation.factors();
         let mut zpk = Zpk::constant(equation.gain() * self.scale());
         let delay_s = self.computation_s + equation.delays() as f64 * self.period_s;

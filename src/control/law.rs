@@ -103,7 +103,10 @@ impl ControlLaw {
     pub fn settled(&self, nominal: &OperatingPoint, period: f64) -> Self {
         let mut law = self.clone();
         if let Mode::Current(edge, sense) = &mut law.mode {
-            sense.settle(*edge, nominal, period, self.delay_s);
+            let mut referred = sense.referred(nominal);
+            referred.settle(*edge, nominal, period, self.delay_s);
+            // A slope at the comparator is the same for either current.
+            sense.slope = referred.slope;
         }
         law
     }
@@ -150,11 +153,12 @@ impl ControlLaw {
                 Ok(plain(law.close(&averaged.stage)?, ramp.voltage(point.duty, point.input_voltage), None))
             }
             Mode::Current(edge, sense) => {
+                let sense = sense.referred(point);
                 let stage = sense.controlled(*edge, averaged, period, self.delay_s)?;
                 let volts = sense.control_voltage(*edge, point, period, self.delay_s);
                 Ok(plain(stage, volts, sense.sampling(*edge, point, period, self.delay_s)))
             }
-            Mode::Average(average) => average.controlled(averaged, period, self.delay_s),
+            Mode::Average(average) => average.referred(point).controlled(averaged, period, self.delay_s),
         }
     }
 
@@ -162,7 +166,7 @@ impl ControlLaw {
     pub fn swing(&self, point: &OperatingPoint, period: f64) -> f64 {
         match &self.mode {
             Mode::Voltage(ramp) => ramp.at(point.input_voltage),
-            Mode::Current(edge, sense) => sense.swing(*edge, point, period),
+            Mode::Current(edge, sense) => sense.referred(point).swing(*edge, point, period),
             Mode::Average(average) => average.ramp.at(point.input_voltage),
         }
     }
@@ -177,6 +181,19 @@ impl ControlLaw {
             _ => (f64::NEG_INFINITY, f64::INFINITY),
         };
         (least, self.clamp.map_or(greatest, |clamp| clamp.min(greatest)))
+    }
+
+    /// How long into a period the comparator decides, as a share of it, where it decides once on the value the control voltage has at the
+    /// period's start; none where the control voltage acts throughout, as on the inner loop of average current mode.
+    ///
+    /// The delay that a value set once a period suffers there: of a uniformly sampled trailing edge D·T. Van de Sype, De Gussemé, Van den
+    /// Bossche & Melkebeek, APEC 2004 (from memory); in current mode the comparator reads the held value at its own edge.
+    pub fn decision_share(&self, duty: f64) -> Option<f64> {
+        match self.mode {
+            Mode::Voltage(_) | Mode::Current(Edge::Peak, _) => Some(duty),
+            Mode::Current(Edge::Valley, _) => Some(1.0 - duty),
+            Mode::Average(_) => None,
+        }
     }
 
     /// The current sense of peak and valley current mode.

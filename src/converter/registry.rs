@@ -1,22 +1,37 @@
 //! The registry of topologies: one line each.
 
-use super::drawing::Topology;
-use super::topologies::{boost, buck, buck_boost};
-use crate::quantity::ChoiceOption;
+use super::topologies::{boost, buck, buck_boost, flyback};
+use super::topology::Topology;
+use crate::quantity::{ChoiceOption, Choices, Values};
 
-static REGISTRY: [&Topology; 3] = [&buck::TOPOLOGY, &boost::TOPOLOGY, &buck_boost::TOPOLOGY];
+/// All topologies, in the order shown.
+static REGISTRY: &[&Topology] = &[&buck::TOPOLOGY, &boost::TOPOLOGY, &buck_boost::TOPOLOGY, &flyback::TOPOLOGY];
+
+const COUNT: usize = REGISTRY.len();
 
 /// The topologies as options of a choice, in registry order.
-pub(super) static OPTIONS: &[ChoiceOption] =
-    &[option(&buck::TOPOLOGY), option(&boost::TOPOLOGY), option(&buck_boost::TOPOLOGY)];
-
-const fn option(topology: &'static Topology) -> ChoiceOption {
-    ChoiceOption { key: topology.key, name: topology.name, help: topology.line }
-}
+pub(super) static OPTIONS: [ChoiceOption; COUNT] = {
+    let mut options = [ChoiceOption { key: "", name: "", help: "" }; COUNT];
+    let mut k = 0;
+    while k < COUNT {
+        let topology = REGISTRY[k];
+        options[k] = ChoiceOption { key: topology.key, name: topology.name, help: topology.line };
+        k += 1;
+    }
+    options
+};
 
 /// All topologies, in the order shown.
 pub fn registry() -> &'static [&'static Topology] {
-    &REGISTRY
+    REGISTRY
+}
+
+/// Frequency of the pulses of the stage that these values and choices describe [Hz]: of each switch, times the switches that take turns.
+/// None without a usable one.
+pub fn pulse_frequency(values: &Values, choices: &Choices) -> Option<f64> {
+    let pulses = choices.get("stage.topology").and_then(find).map_or(1, |topology| topology.pulses);
+    let frequency = values.get("stage.switching-frequency")? * f64::from(pulses);
+    (frequency.is_finite() && frequency > 0.0).then_some(frequency)
 }
 
 /// The topology with this key.

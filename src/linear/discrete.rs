@@ -42,7 +42,9 @@ impl DiscreteFactors {
         for (roots, sign) in [(&self.zeros, 1.0), (&self.poles, -1.0)] {
             for root in roots {
                 let turned = root * Complex::cis(-theta);
-                let value = Complex::ONE - turned;
+                // 1 − e^(−jθ) apart, so that a root near 1 keeps its digits at low frequency.
+                let half = (0.5 * theta).sin();
+                let value = (Complex::ONE - root) + root * Complex::new(2.0 * half * half, theta.sin());
                 let square = value.norm_sqr().max(LEAST_SQUARE);
                 // θ·d/dθ of ln(1 − r·e^(−jθ)).
                 let slope = Complex::I * turned * value.conj() * (theta / square);
@@ -113,7 +115,8 @@ mod tests {
             let point = all.log_point(f);
             let sign = if all.negative() { -1.0 } else { 1.0 };
             let expected = product(&all.zeros) / product(&all.poles) * sign;
-            assert!((point.value() / expected - 1.0).norm() < 1e-12, "{f}");
+            // The product itself loses what 1 − e^(−jθ) cancels.
+            assert!((point.value() / expected - 1.0).norm() < 1e-12 + 1e-15 / (f * all.period_s), "{f}");
             let (above, below) = (all.log_point(f * 1.0001), all.log_point(f / 1.0001));
             let width = 2.0 * 1.0001_f64.ln();
             assert_near(point.gain_slope, (above.ln_gain - below.ln_gain) / width, 1e-5);

@@ -430,3 +430,148 @@ impl Layout {
         next.rows_mut(start, order).copy_from(&rows);
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::precision::{assert_close, assert_complex_close};
+    use super::super::{FactoredResponse, FrequencyResponse, RampStep, SampledInput, SampledOutput};
+    use super::*;
+    use std::f64::consts::TAU;
+
+    /// A resonance with a zero, and a load that acts on its output directly as well.
+    fn plant() -> StateSpace {
+        let a = DMatrix::from_row_slice(2, 2, &[-3e3, -2.2e4, 2.0e4, -1.1e3]);
+        let b = DMatrix::from_row_slice(2, 2, &[6e4, 1e2, 0.0, -2e4]);
+        let c = DMatrix::from_row_slice(2, 2, &[0.02, 1.0, 0.0, 1.0]);
+        let d = DMatrix::from_row_slice(2, 2, &[0.0, -0.03, 0.0, 0.0]);
+        StateSpace::new(a, b, c, d, &["control", "load"], &["sensed", "shown"]).unwrap()
+    }
+
+    const FEEDBACK: [f64; 2] = [1.35, -0.35];
+    const FORWARD: [f64; 3] = [0.08, -0.075, 0.002];
+
+    fn sampled(delay_periods: f64, drive: Drive) -> SampledLoop {
+        let timing = SampleTiming { period_s: 1e-5, delay_s: delay_periods * 1e-5, drive };
+        SampledLoop::new(&plant(), &FEEDBACK, &FORWARD, timing).unwrap()
+    }
+
+    /// Definition: sampling sums the bands, each at its own place beside the sampling frequency (Poisson's sum).
+    #[test]
+    fn the_pulse_response_is_the_sum_of_all_bands() {
+        let period = 1e-5;
+        let plant = FactoredResponse::new(Zpk::from_state_space(&plant(), 0, 0).unwrap(), 0.0);
+        for (delay, drive) in [(0.37, Drive::Impulse), (1.62, Drive::Impulse), (0.0, Drive::Held), (1.2, Drive::Held)] {
+            let pulse = FactoredResponse::new(sampled(delay, drive).pulse_response_w().unwrap(), 0.0);
+            for f in [700.0, 9e3, 31e3] {
+                let in_w = (std::f64::consts::PI * f * period).tan() / (std::f64::consts::PI * period);
+                let mut sum = Complex::ZERO;
+                for band in -4000..=4000 {
+                    let shifted = f + f64::from(band) / period;
+                    let size = shifted.abs();
+                    let one_sided = plant.at_hz(size) * Complex::cis(-TAU * size * delay * period);
+                    let value = if shifted < 0.0 { one_sided.conj() } else { one_sided };
+                    let turn = Complex::new(0.0, TAU * shifted * period);
+                    sum += value * if drive == Drive::Held { (1.0 - (-turn).exp()) / turn } else { Complex::ONE };
+                }
+                // The sum converges with one over the number of bands.
+                assert_complex_close(pulse.at_hz(in_w), sum, 3e-4);
+            }
+        }
+    }
+
+    /// Two routes: the map against a walk with many small steps of its own.
+    #[test]
+    fn a_walk_by_small_steps_meets_the_map() {
+        let plant = plant();
+        for (delay, drive) in [(0.37, Drive::Impulse), (1.625, Drive::Impulse), (0.0, Drive::Held), (1.2, Drive::Held)]
+        {
+            let map = sampled(delay, drive);
+            let event = RampStep { from: 0.0, to: 2.0, rise_s: 1.3e-5 };
+            let grid = map.grid(40e-5, 321);
+            let shown = map.curve(SampledInput::Event(0), SampledOutput::Output(1), event, grid).unwrap();
+            let sensed = map.curve(SampledInput::Event(0), SampledOutput::Output(0), event, grid).unwrap();
+            // 2000 steps a period, so that delays fall on steps; a step is exact for a ramp.
+            let small = 1e-5 / 2000.0;
+            let step = expm(&(&pieces(&plant, 1e-5).unwrap().generator * small)).unwrap();
+            let (mut state, mut outputs, mut errors) = (DVector::zeros(2), vec![0.0; 3], [0.0; 3]);
+            let (mut acting, mut scheduled) = (0.0, Vec::<(usize, f64)>::new());
+            for k in 0..40 * 2000_usize {
+                let time = k as f64 * small;
+                let load = (time / event.rise_s).min(1.0) * event.to;
+                let slope = if time < event.rise_s - 0.5 * small { event.to / event.rise_s } else { 0.0 };
+                if k % 250 == 0 {
+                    let (x, place) = (&state, k / 250);
+                    assert_close(shown[place], x[1], 1e-9);
+                    let load = if k == 0 { 0.0 } else { load };
+                    assert_close(sensed[place], 0.02 * x[0] + x[1] - 0.03 * load, 1e-9);
+                }
+                if k % 2000 == 0 {
+                    let error = -(0.02 * state[0] + state[1] - 0.03 * load);
+                    errors = [error, errors[0], errors[1]];
+                    let u = FEEDBACK[0] * outputs[0]
+                        + FEEDBACK[1] * outputs[1]
+                        + FORWARD.iter().zip(&errors).map(|(b, e)| b * e).sum::<f64>();
+                    outputs = vec![u, outputs[0], outputs[1]];
+                    #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a few thousand")]
+                    scheduled.push((k + (delay * 2000.0).round() as usize, u));
+                }
+                if let Some((_, u)) = scheduled.iter().find(|(when, _)| *when == k) {
+                    match drive {
+                        Drive::Impulse => state += plant.b.column(0) * (*u * 1e-5),
+                        Drive::Held => acting = *u,
+                    }
+                }
+                let all = DVector::from_vec(vec![state[0], state[1], acting, load, slope]);
+                state = (&step * all).rows(0, 2).into_owned();
+            }
+        }
+    }
+
+    /// Two routes: the eigenvalues of the map are where the sampled loop gain is −1.
+    #[test]
+    fn poles_close_the_sampled_loop() {
+        for (delay, drive) in [(0.37, Drive::Impulse), (1.62, Drive::Impulse), (1.2, Drive::Held)] {
+            let map = sampled(delay, drive);
+            let pulse = map.pulse_response_w().unwrap();
+            for z in map.poles_z().unwrap().into_iter().filter(|z| z.norm() > 0.05) {
+                let w = 2e5 * (z - 1.0) / (z + 1.0);
+                let forward = FORWARD[0] + FORWARD[1] / z + FORWARD[2] / z / z;
+                let equation = forward / (1.0 - FEEDBACK[0] / z - FEEDBACK[1] / z / z);
+                assert_complex_close(equation * pulse.at(w), Complex::from(-1.0), 1e-6);
+            }
+        }
+    }
+
+    #[test]
+    fn deviation_and_settling_of_a_curve_looked_through() {
+        for drive in [Drive::Impulse, Drive::Held] {
+            let map = sampled(0.4, drive);
+            let event = RampStep { from: 0.0, to: 2.0, rise_s: 2.7e-5 };
+            let (input, output) = (SampledInput::Event(0), SampledOutput::Output(0));
+            let met = map.settle(input, output, event, 0.002).unwrap();
+            let grid = map.grid(40e-3, 32001);
+            assert!((grid.step_s - 1.25e-6).abs() < 1e-12);
+            let curve = map.curve(input, output, event, grid).unwrap();
+            let extreme = curve.iter().copied().fold(0.0, |a: f64, b| if b.abs() > a.abs() { b } else { a });
+            assert!((met.deviation / extreme - 1.0).abs() < 2e-3 && met.deviation.abs() >= extreme.abs());
+            assert!(met.final_value.abs() < 1e-12, "an integrator");
+            let last = curve.iter().rposition(|v| v.abs() > 0.002).unwrap();
+            let settling = met.settling_s.unwrap();
+            assert!((settling - last as f64 * grid.step_s).abs() < 1.3 * grid.step_s, "{settling}");
+            let coarse = map.curve(input, output, event, map.grid(40e-3, 801)).unwrap();
+            for (k, value) in coarse.iter().enumerate() {
+                assert_close(*value + 1.0, curve[k * 40] + 1.0, 1e-10);
+            }
+        }
+    }
+
+    #[test]
+    fn impossible_loops_are_errors() {
+        let timing = SampleTiming { period_s: 0.0, delay_s: 0.0, drive: Drive::Impulse };
+        assert!(SampledLoop::new(&plant(), &FEEDBACK, &FORWARD, timing).is_err());
+        let map = sampled(0.2, Drive::Impulse);
+        let event = RampStep::ideal(1.0);
+        assert!(map.settle(SampledInput::Event(7), SampledOutput::Control, event, 1.0).is_err());
+        assert!(map.settle(SampledInput::Reference, SampledOutput::Output(9), event, 1.0).is_err());
+    }
+}
