@@ -16,8 +16,12 @@ mod filter_figures;
 mod filter_tests;
 mod filter_values;
 mod filters;
+mod further;
 mod landmark;
 mod operating_point;
+mod phases;
+#[cfg(test)]
+mod phases_tests;
 mod pulse;
 mod pulse_point;
 #[cfg(test)]
@@ -38,6 +42,7 @@ pub use entries::{CHOICES, ENTRIES, applies};
 pub use filter_damping::OptimumDamping;
 pub use filter_values::{InputFilter, SecondStage};
 pub use filters::Damping;
+pub use further::{Further, FurtherValue};
 pub use landmark::{Landmark, RestingForms, RestingTextbook, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};

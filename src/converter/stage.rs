@@ -8,6 +8,7 @@ use super::drawing::{
 use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
 use super::filter_values::{InputFilter, SecondStage};
 use super::filters::network_impedance;
+use super::phases;
 use super::registry::find;
 use super::signals::INPUTS;
 use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
@@ -119,8 +120,10 @@ pub struct Stage {
     pub output_voltage: f64,
     /// Switching frequency [Hz].
     pub switching_frequency: f64,
-    /// Inductance [H].
+    /// Inductance [H], of all phases in parallel.
     pub inductance: f64,
+    /// How many equal phases there are, a whole number.
+    pub(super) phases: f64,
     /// Series resistances that carry the inductor's, switch's and rectifier's current, with their names [Ω].
     pub(super) resistances: Resistances,
     /// How the load current answers the output voltage.
@@ -185,13 +188,15 @@ impl Stage {
     }
 
     fn put_together(values: &Values, choices: &Choices, fed: Fed) -> Result<Self, Vec<Finding>> {
-        let get = |path: &str| {
+        let entered = |path: &str| {
             if fed == Fed::AtTerminals && path == "stage.source.resistance" {
                 return 0.0;
             }
             let entry = ENTRIES.iter().find(|entry| entry.path == path);
             entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
         };
+        let phases = phases::count(entered(phases::PHASES.path)).map_err(|problem| vec![problem])?;
+        let get = |path: &str| entered(path) / phases::divisor(path, phases);
         let key = choices.get("stage.topology").unwrap_or("boost");
         let Some(topology) = find(key) else {
             return Err(vec![Finding::problem("stage.topology", format!("No topology is called \"{key}\"."))]);
@@ -249,6 +254,7 @@ impl Stage {
             output_voltage: output,
             switching_frequency: get("stage.switching-frequency"),
             inductance: get("stage.inductor.inductance"),
+            phases,
             resistances,
             load,
             rectifier,
@@ -274,6 +280,21 @@ impl Stage {
     /// regulated.
     pub fn load_voltage(&self, condition: &StageCondition) -> f64 {
         load_voltage(self.second_stage.as_ref(), condition.output_voltage, condition.load_current)
+    }
+
+    /// How many equal phases there are, a whole number.
+    pub fn phases(&self) -> f64 {
+        self.phases
+    }
+
+    /// Whether the output bank carries switched current.
+    pub fn bank_is_switched(&self) -> bool {
+        self.plain.bank_is_switched()
+    }
+
+    /// Lowest frequency of the ripple at input and output [Hz]: that of all phases together.
+    pub fn ripple_frequency(&self) -> f64 {
+        self.switching_frequency * self.phases
     }
 
     /// Value in a slot of the netlist.
