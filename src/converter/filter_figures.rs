@@ -82,9 +82,7 @@ impl<'a> Orbit<'a> {
                 let first = (0..PARTS).rev().find(|k| *k as f64 <= place).unwrap_or(0);
                 let c = e.c.row(row);
                 let (Some(from), Some(to)) = (along.get(first), along.get(first + 1)) else { break };
-                let rate = |x: &DVector<f64>| {
-                    (c * (&e.a * x + &e.b * self.inputs))[0] * duration / PARTS as f64
-                };
+                let rate = |x: &DVector<f64>| (c * (&e.a * x + &e.b * self.inputs))[0] * duration / PARTS as f64;
                 let direct = (e.d.row(row) * self.inputs)[0];
                 value = direct + hermite(place - first as f64, [(c * from)[0], (c * to)[0]], [rate(from), rate(to)]);
             }
@@ -122,9 +120,7 @@ impl<'a> Orbit<'a> {
 /// The cubic through values and slopes at both ends of a unit interval.
 fn hermite(t: f64, values: [f64; 2], slopes: [f64; 2]) -> f64 {
     let rest = 1.0 - t;
-    values[0] * (1.0 + 2.0 * t) * rest * rest
-        + values[1] * t * t * (3.0 - 2.0 * t)
-        + slopes[0] * t * rest * rest
+    values[0] * (1.0 + 2.0 * t) * rest * rest + values[1] * t * t * (3.0 - 2.0 * t) + slopes[0] * t * rest * rest
         - slopes[1] * t * t * rest
 }
 

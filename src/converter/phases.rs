@@ -11,6 +11,7 @@
 use super::filter_figures::Orbit;
 use super::operating_point::CurrentFigures;
 use super::waves::{Flows, Waves};
+use crate::circuit::{Shows, Sketch};
 use crate::finding::Finding;
 use crate::quantity::{Bounds, Entry, Unit};
 
@@ -170,6 +171,19 @@ impl Orbit<'_> {
             peak: average + peak - mean,
             least: average + least - mean,
             rms: (average * average + variance).sqrt(),
+        }
+    }
+}
+
+/// Writes the number of phases at the parts of one phase, of which the schematic shows one.
+pub(super) fn counted(sketch: &mut Sketch) {
+    for placed in &mut sketch.parts {
+        let drawn = &mut placed.drawn;
+        if let Some(Shows::Entry(each)) = &drawn.value
+            && OF_ONE_PHASE.contains(&each.as_str())
+        {
+            drawn.value = Some(Shows::Count { count: PHASES.path.to_owned(), each: each.clone() });
+            drawn.paths.push(PHASES.path.to_owned());
         }
     }
 }

@@ -96,7 +96,8 @@ impl Explicit {
         let mut jump = 0.0;
         for (before, after) in &self.opening {
             push += (&before.a - &after.a) * &x + (&before.b - &after.b) * &self.inputs;
-            jump += ((before.c.row(0) - after.c.row(0)) * &x)[0] + ((before.d.row(0) - after.d.row(0)) * &self.inputs)[0];
+            jump +=
+                ((before.c.row(0) - after.c.row(0)) * &x)[0] + ((before.d.row(0) - after.d.row(0)) * &self.inputs)[0];
         }
         let _ = d;
         let (b, d) = (DMatrix::from_column_slice(a.nrows(), 1, push.as_slice()), DMatrix::from_element(1, 1, jump));
@@ -132,10 +133,8 @@ impl Explicit {
         let mut samples = Vec::new();
         for ((transition, push), (e, share)) in steps.iter().zip(&self.intervals) {
             for k in 0..=PARTS {
-                let value = rows
-                    .iter()
-                    .map(|row| (e.c.row(*row) * &x)[0] + (e.d.row(*row) * &self.inputs)[0])
-                    .sum::<f64>();
+                let value =
+                    rows.iter().map(|row| (e.c.row(*row) * &x)[0] + (e.d.row(*row) * &self.inputs)[0]).sum::<f64>();
                 let weight = if k == 0 || k == PARTS { 0.5 } else { 1.0 };
                 samples.push((value, weight * share / PARTS as f64));
                 if k < PARTS {
@@ -192,8 +191,7 @@ fn the_plant_is_that_of_a_circuit_with_every_phase_drawn() {
                 let condition = StageCondition { input_voltage, load_current: 6.0, output_voltage };
                 let model = stage.averaged(&condition).unwrap();
                 let explicit = Explicit::new(topology, phases, esr, &condition, model.operating_point.duty);
-                let (plant, expected) =
-                    (Zpk::from_state_space(&model.stage, 0, 0).unwrap(), explicit.vout_from_duty());
+                let (plant, expected) = (Zpk::from_state_space(&model.stage, 0, 0).unwrap(), explicit.vout_from_duty());
                 for f in [10.0, 1e3, 5e3, 2e4, 1e5] {
                     let (one, other): (Complex, Complex) = (plant.at_hz(f), expected.at_hz(f));
                     assert!((one / other - 1.0).norm() < within, "{topology} {phases} {esr}: {one} {other} at {f} Hz");
@@ -216,7 +214,10 @@ fn ripple_is_that_of_the_sum_of_the_phases() {
             let one = explicit.orbit(&[3]);
             let scale = swing(&one);
             let close = |what: &str, value: f64, expected: f64, scale: f64| {
-                assert!((value - expected).abs() < 0.02 * scale, "{topology} × {phases} {what}: {value} against {expected}");
+                assert!(
+                    (value - expected).abs() < 0.02 * scale,
+                    "{topology} × {phases} {what}: {value} against {expected}"
+                );
             };
             close("phase", point.inductors[0].current.ripple, scale, scale);
             close("sum", further(&point, "phases-together-ripple"), swing(&explicit.orbit(&inductors)), scale);
