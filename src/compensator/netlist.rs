@@ -82,6 +82,12 @@ impl ValuedNetlist {
 impl Compensator {
     /// The network with its amplifier as a netlist: reads like the schematic.
     pub fn netlist(&self) -> ValuedNetlist {
+        self.drawn().0
+    }
+
+    /// The netlist, and the node that the amplifier drives by a current: behind an op amp's gain ahead of its buffer, or the output
+    /// of a transconductance amplifier.
+    pub(super) fn drawn(&self) -> (ValuedNetlist, Node) {
         let mut circuit = ValuedNetlist { netlist: Netlist::new(), values: Vec::new() };
         let ground = circuit.netlist.ground();
         let [vout, vref, tap, vc] = ["vout", "vref", "tap", "vc"].map(|name| circuit.netlist.node(name));
@@ -99,7 +105,7 @@ impl Compensator {
         if self.has(Part::Feedforward) {
             circuit.fit(self, Part::Feedforward, vout, tap);
         }
-        let far_end = self.fit_amplifier(&mut circuit, [vref, tap, vc]);
+        let (far_end, driven) = self.fit_amplifier(&mut circuit, [vref, tap, vc]);
         if self.kind == Kind::One {
             circuit.fit(self, Part::C1, vc, far_end);
         } else {
@@ -110,12 +116,13 @@ impl Compensator {
         }
         circuit.netlist.voltage_output("vc", vc, ground);
         circuit.netlist.voltage_output("error", vref, tap);
-        circuit
+        (circuit, driven)
     }
 
     /// Fits the amplifier from its inputs `vref` (plus) and `tap` (minus) to `vc`, and returns the node where the far end of the
-    /// network from `vc` goes: the tap around an op amp, ground behind a transconductance amplifier.
-    fn fit_amplifier(&self, circuit: &mut ValuedNetlist, [vref, tap, vc]: [Node; 3]) -> Node {
+    /// network from `vc` goes, the tap around an op amp, ground behind a transconductance amplifier; and the node that the amplifier
+    /// drives by a current.
+    fn fit_amplifier(&self, circuit: &mut ValuedNetlist, [vref, tap, vc]: [Node; 3]) -> (Node, Node) {
         let ground = circuit.netlist.ground();
         match self.amplifier {
             Amplifier::OpAmp(amplifier) => {
@@ -129,14 +136,14 @@ impl Compensator {
                 circuit.netlist.resistor("op-amp.resistance", inner, ground, resistance);
                 circuit.netlist.capacitor("op-amp.capacitance", inner, ground, capacitance);
                 circuit.netlist.controlled_voltage("op-amp.buffer", vc, ground, unity, inner, ground);
-                tap
+                (tap, inner)
             }
             Amplifier::Transconductance(amplifier) => {
                 let gm = circuit.slot("transconductance.gm", amplifier.gm);
                 let resistance = circuit.slot("transconductance.output-resistance", amplifier.output_resistance);
                 circuit.netlist.controlled_current("transconductance.gm", ground, vc, gm, vref, tap);
                 circuit.netlist.resistor("transconductance.output-resistance", vc, ground, resistance);
-                ground
+                (ground, vc)
             }
         }
     }

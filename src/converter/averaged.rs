@@ -100,7 +100,7 @@ impl Stage {
     pub(super) fn averaged_rows(&self) -> Vec<usize> {
         std::iter::once(self.rows.output_voltage)
             .chain(self.rows.inductor_currents.iter().take(1).copied())
-            .chain([self.rows.input_current, self.rows.load_voltage])
+            .chain([self.rows.input_current, self.rows.load_voltage, self.rows.bank_voltage])
             .collect()
     }
 

@@ -92,11 +92,16 @@ pub struct StageDrawing {
     sensed: Option<(Node, Node)>,
     /// Terminals of the load.
     load: Option<(Node, Node)>,
+    /// Terminals of the bank.
+    bank: Option<(Node, Node)>,
     filters: FilterParts,
     input_current_part: PartId,
     pub(super) inductors: Vec<PartId>,
     switch: Option<PartId>,
     rectifier: Option<PartId>,
+    /// Ends of the controlled switch and of the rectifier.
+    switch_ends: Option<(Node, Node)>,
+    rectifier_ends: Option<(Node, Node)>,
     branches: Vec<PartId>,
     drop: InputId,
 }
@@ -108,9 +113,17 @@ pub(super) struct Rows {
     pub(super) output_voltage: usize,
     /// The voltage at the load's terminals.
     pub(super) load_voltage: usize,
+    /// The voltage of the bank, ahead of a second stage.
+    pub(super) bank_voltage: usize,
     pub(super) input_current: usize,
     pub(super) switch_current: usize,
     pub(super) rectifier_current: usize,
+    /// Voltage against ground of the controlled switch's end that is neither ground nor supply.
+    pub(super) switch_node: usize,
+    /// Voltage across the controlled switch.
+    pub(super) switch_voltage: usize,
+    /// Voltage across the rectifier, cathode against anode.
+    pub(super) rectifier_voltage: usize,
     pub(super) inductor_currents: Vec<usize>,
     pub(super) branch_currents: Vec<usize>,
     /// Name and current of the filters' inductors, which carry no switched current.
@@ -149,11 +162,14 @@ impl StageDrawing {
             supply,
             sensed: None,
             load: None,
+            bank: None,
             filters,
             input_current_part,
             inductors: Vec::new(),
             switch: None,
             rectifier: None,
+            switch_ends: None,
+            rectifier_ends: None,
             branches: Vec::new(),
             drop,
         }
@@ -178,6 +194,7 @@ impl StageDrawing {
     pub fn switch(&mut self, from: Node, to: Node) {
         let ohms = self.netlist.slot("stage.switch.resistance");
         self.switch = Some(self.netlist.switch(SWITCH, from, to, ohms));
+        self.switch_ends = Some((from, to));
         let drawn = Drawn::new(Symbol::Switch, "Switch", "S")
             .value("stage.switch.resistance")
             .quiet("stage.switching-frequency");
@@ -200,6 +217,7 @@ impl StageDrawing {
             self.netlist.switch(RECTIFIER, anode, cathode, ohms)
         };
         self.rectifier = Some(part);
+        self.rectifier_ends = Some((anode, cathode));
     }
 
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
@@ -225,7 +243,7 @@ impl StageDrawing {
         }
         let bank = (plus, minus);
         let (mut plus, mut minus) = bank;
-        self.sensed = Some(bank);
+        (self.sensed, self.bank) = (Some(bank), Some(bank));
         if let Some(filter) = self.options.output_filter {
             let mut canvas = Canvas { netlist: &mut self.netlist, sketch: &mut self.sketch, parts: &mut self.filters };
             (plus, minus) = draw_output_filter(&mut canvas, bank, filter);
@@ -245,16 +263,23 @@ impl StageDrawing {
 
     /// Asks for the outputs every stage answers with.
     pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
-        let (sensed, load) = (self.sensed?, self.load?);
+        let (sensed, load, bank) = (self.sensed?, self.load?, self.bank?);
         let (switch, rectifier) = (self.switch?, self.rectifier?);
+        let ((from, to), (anode, cathode)) = (self.switch_ends?, self.rectifier_ends?);
         let n = &mut self.netlist;
+        let switch_node = if from.is_ground() || from == self.supply { to } else { from };
+        let ground = n.ground();
         let row = OutputId::index;
         let rows = Rows {
             output_voltage: row(n.voltage_output("output voltage", sensed.0, sensed.1)),
             load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
+            bank_voltage: row(n.voltage_output("bank voltage", bank.0, bank.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
             switch_current: row(n.current_output("switch current", switch)),
             rectifier_current: row(n.current_output("rectifier current", rectifier)),
+            switch_node: row(n.voltage_output("switch-node voltage", switch_node, ground)),
+            switch_voltage: row(n.voltage_output("switch voltage", from, to)),
+            rectifier_voltage: row(n.voltage_output("rectifier voltage", cathode, anode)),
             inductor_currents: self
                 .inductors
                 .iter()

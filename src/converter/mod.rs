@@ -25,6 +25,7 @@ mod pulse_tests;
 mod registry;
 pub mod signals;
 mod stage;
+mod switching;
 #[cfg(test)]
 mod tests;
 mod topologies;
@@ -42,3 +43,4 @@ pub use landmark::{Landmark, RestingForms, RestingTextbook, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
+pub use switching::{SwitchingEquations, SwitchingRows};

@@ -51,7 +51,7 @@ fn derivatives_are_exact() {
                 |e: &crate::circuit::StateEquations| (&i.cell.c * (&e.a * &pulse.conducting + &e.b * inputs))[0];
             let own = [(&i.cell.c * x)[0], slope(&i.on) - slope(&i.off), pulse.on_slope];
             assert!((slope(&i.on) / pulse.on_slope - 1.0).abs() < 1e-12);
-            (rates.value, DVector::from_iterator(7, outputs.value.iter().copied().chain(own)))
+            (rates.value, DVector::from_iterator(8, outputs.value.iter().copied().chain(own)))
         };
         let (x, u, d) = (&solution.x, &solution.intervals.inputs, solution.duty);
         let compare = |up: (DVector<f64>, DVector<f64>),
@@ -186,7 +186,12 @@ fn two_inductors_rest_together() {
         assert!((pulse.second_duty / (found.duty / m) - 1.0).abs() < 1e-6);
         let duty = found.duty;
         let model = i
-            .linearise_pulse(&Solution::from_found(i.clone(), found), &pulse, &[row, inductor, inductor, row], period)
+            .linearise_pulse(
+                &Solution::from_found(i.clone(), found),
+                &pulse,
+                &[row, inductor, inductor, row, row],
+                period,
+            )
             .unwrap();
         let gain = model.dc_gain(0, 0).unwrap();
         assert!((gain / (vout / duty) - 1.0).abs() < 1e-6, "{gain} against {}", vout / duty);

@@ -14,6 +14,8 @@ pub const INDUCTOR_CURRENT: &str = "inductor current";
 pub const INPUT_CURRENT: &str = "input current";
 /// Output: voltage at the load's terminals, a magnitude [V]; the output voltage unless a second stage stands between.
 pub const LOAD_VOLTAGE: &str = "load voltage";
+/// Output: voltage of the output bank, ahead of a second stage, a magnitude [V]; the output voltage unless that is sensed at the load.
+pub const BANK_VOLTAGE: &str = "bank voltage";
 /// Output: average switched current [A], the one that stops when switch and rectifier block: the inductor's, or the
 /// sum of both in a stage of two inductors.
 pub const SWITCHED_CURRENT: &str = "switched current";
@@ -25,5 +27,13 @@ pub const ON_SLOPE: &str = "on slope";
 /// The inputs, in column order.
 pub(super) const INPUTS: [&str; 3] = [DUTY, INPUT_VOLTAGE, LOAD_CURRENT];
 /// The outputs, in row order.
-pub(super) const OUTPUTS: [&str; 7] =
-    [OUTPUT_VOLTAGE, INDUCTOR_CURRENT, INPUT_CURRENT, LOAD_VOLTAGE, SWITCHED_CURRENT, SLOPE_DIFFERENCE, ON_SLOPE];
+pub(super) const OUTPUTS: [&str; 8] = [
+    OUTPUT_VOLTAGE,
+    INDUCTOR_CURRENT,
+    INPUT_CURRENT,
+    LOAD_VOLTAGE,
+    BANK_VOLTAGE,
+    SWITCHED_CURRENT,
+    SLOPE_DIFFERENCE,
+    ON_SLOPE,
+];

@@ -170,6 +170,15 @@ pub(super) struct Intervals {
     pub(super) to_resistor: (usize, f64),
 }
 
+/// Names of the states kept of all, by the matrix that gives all from them.
+fn kept_names(all: &[String], basis: &DMatrix<f64>) -> Vec<String> {
+    let unit = |column: usize, row: usize| {
+        (0..basis.ncols()).all(|k| (basis[(row, k)] - f64::from(u8::from(k == column))).abs() < f64::EPSILON)
+    };
+    let name = |column: usize| (0..basis.nrows()).find(|row| unit(column, *row)).and_then(|row| all.get(row));
+    (0..basis.ncols()).map(|column| name(column).cloned().unwrap_or_default()).collect()
+}
+
 impl Stage {
     /// A stage from entered values, which must have been checked against their bounds and order; the output voltage is
     /// the one that reference and divider give.
@@ -276,6 +285,16 @@ impl Stage {
         load_voltage(self.second_stage.as_ref(), condition.output_voltage, condition.load_current)
     }
 
+    /// Voltage of the output bank at a condition [V]: above the regulated one by the second stage's drop where the load's is regulated.
+    pub fn bank_voltage(&self, condition: &StageCondition) -> f64 {
+        match &self.second_stage {
+            Some(second) if second.sensed_at_load => {
+                condition.output_voltage + condition.load_current * second.dc_resistance
+            }
+            _ => condition.output_voltage,
+        }
+    }
+
     /// Value in a slot of the netlist.
     pub(super) fn slot_value(&self, slot: usize) -> f64 {
         self.plain.values.get(slot).copied().unwrap_or(0.0)
@@ -284,6 +303,11 @@ impl Stage {
     /// The topology.
     pub fn topology(&self) -> &'static Topology {
         self.topology
+    }
+
+    /// Parts that hold the states of operating point and waveforms.
+    pub(super) fn state_names(&self) -> &[String] {
+        &self.plain.state_names
     }
 
     /// Capacitance of the whole output bank, and of the second stage where one is fitted [F].
@@ -371,6 +395,8 @@ struct Drawn {
     rows: Rows,
     values: Vec<f64>,
     load_slot: Option<usize>,
+    /// Parts that hold the independent states.
+    state_names: Vec<String>,
 }
 
 impl Drawn {
@@ -384,7 +410,9 @@ impl Drawn {
         let on = Compiled::new(&netlist, |part| part == SWITCH, &values)?;
         let off = Compiled::new(&netlist, |part| part == RECTIFIER, &values)?;
         let idle = Compiled::new(&netlist, |_| false, &values)?;
-        Ok(Drawn { on, off, idle, rows, values, load_slot })
+        let all: Vec<String> = netlist.state_names().map(str::to_owned).collect();
+        let state_names = kept_names(&all, &on.equations(&values)?.independent().1);
+        Ok(Drawn { on, off, idle, rows, values, load_slot, state_names })
     }
 
     /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.
