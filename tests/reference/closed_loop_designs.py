@@ -82,9 +82,9 @@ class Design:
             values[f"stage.input.{name}"] = self.vin[k]
             values[f"stage.load.{name}"] = self.load[k]
         if stage.topology in ("flyback", *FORWARD_FAMILY):
-            values |= {"stage.transformer.ratio": stage.ratio, "stage.transformer.leakage": stage.leakage}
+            values["stage.transformer.ratio"] = stage.ratio
         if stage.topology in FORWARD_FAMILY:
-            values["stage.transformer.magnetising"] = stage.magnetising
+            values |= {"stage.transformer.magnetising": stage.magnetising, "stage.transformer.leakage": stage.leakage}
         if stage.topology in TWO_INDUCTORS:
             choices["stage.inductors"] = "coupled" if stage.coupling else "separate"
             values["stage.second-inductor.inductance"], values["stage.second-inductor.resistance"] = stage.second

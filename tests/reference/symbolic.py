@@ -15,6 +15,7 @@ import sys
 
 import mpmath
 import sympy as sp
+from sympy.polys.matrices import DomainMatrix
 
 from output import write
 
@@ -59,13 +60,22 @@ def transfer(rates, states):
     by_duty = (on - off).subs(held).applyfunc(sp.simplify)
     by_vin = average.diff(vin)
     system = s * sp.eye(len(states)) - a
-    denominator = sp.Poly(sp.expand(sp.cancel(system.det(method="berkowitz"))), s)
+
+    def determinant(matrix):
+        """As a polynomial in s, its coefficients rational in the parts."""
+        field = DomainMatrix.from_Matrix(matrix).to_field()
+        top, bottom = sp.fraction(sp.cancel(field.domain.to_sympy(field.det())))
+        assert not bottom.has(s)
+        return sp.Poly(top, s), bottom
+
+    denominator, below = determinant(system)
 
     def numerator(column):
         # Cramer's rule for the output, the last state.
         replaced = system.copy()
         replaced[:, len(states) - 1] = column
-        return sp.Poly(sp.expand(sp.cancel(replaced.det(method="berkowitz"))), s)
+        top, bottom = determinant(replaced)
+        return top * sp.Poly(below / bottom, s)
 
     def ascending(poly, by):
         return [sp.factor(sp.cancel(coefficient / by)) for coefficient in reversed(poly.all_coeffs())]
