@@ -266,7 +266,11 @@ pub(super) fn loop_at(
         margins,
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0).max(NO_GAIN_DB),
         // What is sampled once a period sees ripple as a constant.
-        gain_at_switching: if shared.digital.is_some() { 0.0 } else { model.loop_gain.at_hz(fs).norm() },
+        gain_at_switching: if shared.digital.is_some() {
+            0.0
+        } else {
+            model.loop_gain.at_hz(design.stage.ripple_frequency()).norm()
+        },
     };
     Ok((model, loop_gain, modes))
 }
