@@ -260,9 +260,10 @@ pub(super) fn loop_at(
     // Far above the band the loop gain dies out and |1 + T| tends to one, so its least value is no more than that.
     margins.modulus_margin = margins.modulus_margin.min(1.0);
     margins.sensitivity_peak = margins.sensitivity_peak.max(1.0);
-    let (verdict, modes) = model.verdict(shared, &margins).map_err(|e| model_finding(&e))?;
+    let judged = model.verdict(shared, &margins).map_err(|e| model_finding(&e))?;
     let loop_gain = LoopResult {
-        verdict,
+        verdict: judged.verdict,
+        sampled: judged.sampled,
         margins,
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0).max(NO_GAIN_DB),
         // What is sampled once a period sees ripple as a constant.
@@ -272,7 +273,7 @@ pub(super) fn loop_at(
             model.loop_gain.at_hz(design.stage.ripple_frequency()).norm()
         },
     };
-    Ok((model, loop_gain, modes))
+    Ok((model, loop_gain, judged.motion))
 }
 
 /// The input filter against the converter, where one is fitted.

@@ -6,7 +6,7 @@ use super::result::{Condition, LoopResult};
 use super::sampled::SharedDigital;
 use crate::compensator::{Built, DifferenceEquation, Digital, FixedPoint};
 use crate::design::CheckedDesign;
-use crate::linear::{Complex, FrequencyResponse, LinearError, Margins, Verdict, margins};
+use crate::linear::{Complex, FrequencyResponse, LinearError, Verdict, margins};
 
 /// A difference equation at one condition.
 #[derive(Clone, Debug)]
@@ -23,8 +23,6 @@ pub struct DigitalDetail {
     pub lanes: Vec<Built>,
     /// From the start of a period to where a value set there acts [s]; none where the control voltage acts throughout.
     pub modulator_delay_s: Option<f64>,
-    /// Crossovers and margins of the sampled loop, all bands folded.
-    pub sampled: Margins,
     /// Closed-loop poles in the z plane.
     pub poles_z: Vec<Complex>,
     /// The loop with the equation before rounding.
@@ -59,7 +57,6 @@ pub(super) fn digital_detail(
         exact: digital.exact(),
         lanes: lanes.collect(),
         modulator_delay_s: model.modulator_delay_s,
-        sampled: sampled.margins(),
         poles_z: sampled.poles_z().unwrap_or_default(),
         before_rounding,
         equation: equation.clone(),
@@ -75,9 +72,10 @@ fn loop_result(
     let Ok(model) = LoopModel::new(&design.stage, shared, &condition.of_stage(&design.stage)) else { return Ok(None) };
     let fs = design.stage.switching_frequency;
     let margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
-    let verdict = model.stability(shared, &margins)?;
+    let judged = model.verdict(shared, &margins)?;
     Ok(Some(LoopResult {
-        verdict,
+        verdict: judged.verdict,
+        sampled: judged.sampled,
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
         gain_at_switching: 0.0,
         margins,

@@ -3,7 +3,7 @@
 use super::digital::{gain_at_rest, stable_before_rounding};
 use super::loop_model::Shared;
 use super::remarks::summaries;
-use super::result::{ConditionResult, Detail};
+use super::result::{ConditionResult, ConditionSummary, Detail};
 use crate::compensator::{Amplifier, Compensator, Rounding};
 use crate::design::CheckedDesign;
 use crate::finding::{Finding, Remedy};
@@ -31,7 +31,7 @@ pub(super) fn digital_remarks(
     findings.extend(destabilised(design, shared, conditions));
     findings.extend(integrator(design, shared, detail));
     findings.extend(detail.and_then(moved));
-    findings.extend(detail.and_then(folded));
+    findings.extend(folded(conditions));
     findings.push(Finding::note(
         BITS,
         format!(
@@ -138,26 +138,30 @@ fn margin(margins: &Margins) -> Option<f64> {
     margins.headline_crossover().map(|c| c.phase_margin_deg)
 }
 
-/// Margins of the sampled loop that differ from those of the curves.
-fn folded(detail: &Detail) -> Option<Finding> {
-    let sampled = &detail.digital.as_ref()?.sampled;
-    let plain = &detail.loop_gain.margins;
-    let (mine, theirs) = (margin(plain), margin(sampled));
-    let phases = mine.zip(theirs).filter(|(a, b)| (a - b).abs() > MARGIN_DEG);
-    let gains = plain.gain_margin_up_db().zip(sampled.gain_margin_up_db()).filter(|(a, b)| (a - b).abs() > MARGIN_DB);
-    if phases.is_none() && gains.is_none() {
-        return None;
-    }
+/// Margins of the sampled loop that differ from those of the curves, at the condition where they differ most.
+fn folded(conditions: &[ConditionResult]) -> Option<Finding> {
+    let apart = |(_, summary): &(&ConditionResult, &ConditionSummary)| {
+        let result = &summary.loop_gain;
+        let sampled = result.sampled.as_ref()?;
+        let degrees = margin(&result.margins).zip(margin(sampled)).map_or(0.0, |(a, b)| (a - b).abs());
+        let decibels = result.margins.gain_margin_up_db().zip(sampled.gain_margin_up_db());
+        let decibels = decibels.map_or(0.0, |(a, b)| (a - b).abs());
+        Some((degrees / MARGIN_DEG).max(decibels / MARGIN_DB)).filter(|apart| *apart > 1.0)
+    };
+    let (condition, summary, _) = summaries(conditions)
+        .filter_map(|row| apart(&row).map(|apart| (row.0, row.1, apart)))
+        .max_by(|a, b| a.2.total_cmp(&b.2))?;
+    let sampled = summary.loop_gain.sampled.as_ref()?;
     let crossover = sampled.headline_crossover()?;
     let gain = sampled.gain_margin_up_db().map_or("none".to_owned(), |db| print_digits(db, Unit::Decibel, 3));
     let message = format!(
-        "Sampling folds what the plant passes above half the sampling frequency: the sampled loop crosses over at {} with a phase margin of {} and a gain margin of {gain}, not what the curves show ({}).",
+        "Sampling folds what the plant passes above half the sampling frequency: at {} the sampled loop crosses over at {} with a phase margin of {} and a gain margin of {gain}, not as the curves have it.",
+        condition.condition.label,
         print(crossover.frequency_hz, Unit::Hertz),
         print_digits(crossover.phase_margin_deg, Unit::Degree, 3),
-        detail.condition.label
     );
     Some(
         Finding::notice("compensator.digital.computation", message)
-            .with_hint("stability and steps are those of the sampled loop"),
+            .with_hint("stability and steps are those of the sampled loop; a lower crossover brings both together"),
     )
 }

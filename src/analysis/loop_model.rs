@@ -133,6 +133,17 @@ pub struct LoopModel {
     pub load_beyond: bool,
 }
 
+/// What closing the loop leads to.
+#[derive(Clone, Debug)]
+pub struct Judged {
+    /// Stability.
+    pub verdict: Verdict,
+    /// Margins of the loop as it is sampled, where a difference equation is at work.
+    pub sampled: Option<Margins>,
+    /// How the loop moves, when it is stable.
+    pub motion: Option<Motion>,
+}
+
 /// A zero beyond this many switching frequencies is rounding of a path that is none.
 const FARTHEST_ZERO: f64 = 1000.0;
 
@@ -250,22 +261,20 @@ impl LoopModel {
     ///
     /// # Errors
     /// As the joining of systems.
-    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Motion>), LinearError> {
+    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<Judged, LinearError> {
         if let Some(digital) = &shared.digital {
-            let (verdict, sampled) = self.sampled(digital)?.judged()?;
-            let stable = matches!(verdict, Verdict::Stable { .. });
-            return Ok((verdict, stable.then_some(Motion::Sampled(sampled))));
+            return self.sampled(digital)?.judged();
         }
         let (closed, poles, verdict) = self.judged(shared, margins)?;
         if !matches!(verdict, Verdict::Stable { .. }) {
-            return Ok((verdict, None));
+            return Ok(Judged { verdict, sampled: None, motion: None });
         }
         let mut modes = Modes::with_poles(&closed, &poles)?;
         if let Some(bank) = &self.averaged.bank_inductance {
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.with)?, 1.0)?;
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.without)?, -1.0)?;
         }
-        Ok((verdict, Some(Motion::Continuous(modes))))
+        Ok(Judged { verdict, sampled: None, motion: Some(Motion::Continuous(modes)) })
     }
 }
 
@@ -276,7 +285,7 @@ impl LoopModel {
     /// As the joining of systems.
     pub fn stability(&self, shared: &Shared, margins: &Margins) -> Result<Verdict, LinearError> {
         if let Some(digital) = &shared.digital {
-            return self.sampled(digital)?.judged().map(|judged| judged.0);
+            return self.sampled(digital)?.judged().map(|judged| judged.verdict);
         }
         self.judged(shared, margins).map(|judged| judged.2)
     }

@@ -57,6 +57,8 @@ pub struct LoopResult {
     pub verdict: Verdict,
     /// All crossovers and margins between fs·1e-6 and fs/2.
     pub margins: Margins,
+    /// Those of a loop with a difference equation as it is sampled, all bands folded.
+    pub sampled: Option<Margins>,
     /// Gain of the loop at half the switching frequency [dB].
     pub gain_at_half_switching_db: f64,
     /// Magnitude of the loop gain at the switching frequency; large values make averaged numbers doubtful.

@@ -10,8 +10,8 @@
 //! *Source*: impulse-sampled model of the pulse: Maksimović & Zane, Small-signal discrete-time modeling of digitally controlled PWM converters,
 //! IEEE Trans. Power Electronics 22 (2007), 2552 (from memory).
 
-use super::loop_model::LoopModel;
-use super::motion::SampledMotion;
+use super::loop_model::{Judged, LoopModel};
+use super::motion::{Motion, SampledMotion};
 use crate::compensator::{DifferenceEquation, Digital};
 use crate::control::CONTROL;
 use crate::converter::BankInductance;
@@ -132,11 +132,11 @@ impl LoopModel {
 }
 
 impl SampledModel {
-    /// Stability by the map's eigenvalues, checked by the count of encirclements; and the map.
-    pub(super) fn judged(self) -> Result<(Verdict, SampledMotion), LinearError> {
+    /// Stability by the map's eigenvalues, checked by the count of encirclements; margins, and for a stable loop how it moves.
+    pub(super) fn judged(self) -> Result<Judged, LinearError> {
         let poles = self.motion.map.poles_w()?;
-        let verdict = closed_loop_verdict_knowing(&poles, &self.open, &self.margins_w());
-        let verdict = match verdict {
+        let in_w = self.margins_w();
+        let verdict = match closed_loop_verdict_knowing(&poles, &self.open, &in_w) {
             Verdict::Unstable { poles, .. } => {
                 let z = self.motion.map.poles_z()?;
                 let fastest = z.iter().copied().max_by(|p, q| p.norm().total_cmp(&q.norm())).unwrap_or(Complex::ONE);
@@ -145,7 +145,9 @@ impl SampledModel {
             }
             other => other,
         };
-        Ok((verdict, self.motion))
+        let sampled = Some(self.at_samples(in_w));
+        let motion = matches!(verdict, Verdict::Stable { .. }).then_some(Motion::Sampled(self.motion));
+        Ok(Judged { verdict, sampled, motion })
     }
 
     /// Eigenvalues of the map in the z plane.
@@ -161,12 +163,11 @@ impl SampledModel {
         margins(&self.open, fs * SEARCH_FROM, fs * SEARCH_TO)
     }
 
-    /// Crossovers and margins of the sampled loop, at the frequencies of its samples. A delay margin would not be a whole number of
-    /// periods, so there is none.
-    pub(super) fn margins(&self) -> Margins {
+    /// Crossovers and margins of the sampled loop, moved from the plane w to the frequencies of its samples. A delay margin would not be a whole
+    /// number of periods, so there is none.
+    fn at_samples(&self, mut margins: Margins) -> Margins {
         let period_s = self.motion.map.period_s();
         let hertz = |f: f64| (PI * f * period_s).atan() / (PI * period_s);
-        let mut margins = self.margins_w();
         for crossover in margins.crossovers.iter_mut().chain(&mut margins.above) {
             crossover.frequency_hz = hertz(crossover.frequency_hz);
         }
