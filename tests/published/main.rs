@@ -20,3 +20,4 @@ mod registry;
 mod sampled;
 mod switched;
 mod textbook;
+mod two_inductors;
