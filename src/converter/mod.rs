@@ -17,9 +17,13 @@ mod filter_figures;
 mod filter_tests;
 mod filter_values;
 mod filters;
+mod further;
 mod landmark;
 mod magnetics;
 mod operating_point;
+mod phases;
+#[cfg(test)]
+mod phases_tests;
 mod pulse;
 mod pulse_point;
 #[cfg(test)]
@@ -45,6 +49,7 @@ pub use entries::applies;
 pub use filter_damping::OptimumDamping;
 pub use filter_values::{InputFilter, SecondStage};
 pub use filters::Damping;
+pub use further::{Further, FurtherValue};
 pub use landmark::{BANK, Form, Landmark, RestingForms, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};

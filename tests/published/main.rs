@@ -19,5 +19,7 @@ mod reference;
 mod registry;
 mod sampled;
 mod switched;
+mod symbolic;
 mod textbook;
+mod topologies;
 mod two_inductors;
