@@ -9,14 +9,14 @@ pub fn all_entries() -> impl Iterator<Item = &'static Entry> {
     converter::ENTRIES
         .iter()
         .chain(control::ENTRIES.iter())
-        .chain(compensator::ENTRIES.iter())
+        .chain(compensator::entries())
         .chain(requirements::entries())
         .chain(events::ENTRIES.iter())
 }
 
 /// Every row for a choice, whether it applies or not.
 pub fn all_choices() -> impl Iterator<Item = &'static Choice> {
-    converter::CHOICES.iter().chain(control::CHOICES.iter()).chain(compensator::CHOICES.iter())
+    converter::CHOICES.iter().chain(control::CHOICES.iter()).chain(compensator::choices())
 }
 
 /// The row for a number at a path.
