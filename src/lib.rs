@@ -9,7 +9,7 @@
 //! * [`converter`]: the power stage: one file per topology, operating point, averaged model, landmarks.
 //! * [`compensator`]: networks around the error amplifier, parts from poles and zeros and back, placement.
 //! * [`control`]: what joins stage and compensator: the control law, from the modulator to current modes, and its delay.
-//! * [`switched`]: the exact side: the switched system of stage and control, without averaging.
+//! * [`switched`]: a stage and its control without averaging: the orbit that repeats, its exact responses and stability, transients.
 //! * [`design`]: the document an engineer enters, its check and its file.
 //! * [`analysis`]: a checked design in, every result of its nine conditions out.
 //! * [`figure`]: schematics and plots as neutral strokes, labels and colour roles.

@@ -22,6 +22,7 @@
 //! | `place` | parts from poles, zeros and gain: exactly, or the nearest and why |
 //! | `fit` | the nearest parts while some are kept |
 //! | `netlist` | the actual network, solved |
+//! | `limits` | where the amplifier's limits act, for whoever follows the network beyond them |
 //! | `preferred` | the series of preferred values |
 //! | `rounding` | parts of preferred value |
 //! | `method` | where poles and zeros might go: K factor, landmarks |
@@ -33,6 +34,7 @@ mod crossing;
 mod entries;
 mod fit;
 mod lanes;
+mod limits;
 mod method;
 mod netlist;
 mod network;
@@ -50,6 +52,7 @@ mod shunt_tests;
 pub use crossing::RuledPlacement;
 pub use entries::{applies, choices, entries};
 pub use lanes::{Corners, Lane, LaneKind};
+pub use limits::{Limit, LimitKind, Limited};
 pub use method::{KFactor, KFactorGoal, Reason, RuleGoal, RulePlacement, k_factor, pole_zero_rules};
 pub use netlist::{FAST, NetworkError, ValuedNetlist, joined_paths};
 pub use network::{Amplifier, Anchor, Compensator, Kind, OpAmp, Part, Parts, Transconductance};

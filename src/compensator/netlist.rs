@@ -79,8 +79,10 @@ impl ValuedNetlist {
         }
     }
 
-    /// Fits a voltage amplifier with one pole from plus and minus to its output: gain at DC and gain-bandwidth product [Hz].
-    pub(super) fn buffered(&mut self, name: &str, (dc_gain, bandwidth): (f64, f64), [plus, minus, out]: [Node; 3]) {
+    /// Fits a voltage amplifier with one pole from plus and minus to its output, from its gain at DC and gain-bandwidth product [Hz]; gives
+    /// the node ahead of its buffer.
+    pub(super) fn buffered(&mut self, name: &str, gain: (f64, f64), [plus, minus, out]: [Node; 3]) -> Node {
+        let (dc_gain, bandwidth) = gain;
         let ground = self.netlist.ground();
         let inner = self.netlist.node(name);
         let [gm_name, resistance_name, capacitance_name, buffer_name] =
@@ -94,6 +96,7 @@ impl ValuedNetlist {
         self.netlist.resistor(&resistance_name, inner, ground, resistance);
         self.netlist.capacitor(&capacitance_name, inner, ground, capacitance);
         self.netlist.controlled_voltage(&buffer_name, out, ground, unity, inner, ground);
+        inner
     }
 
     /// A voltage source that is an input.
@@ -106,6 +109,12 @@ impl ValuedNetlist {
 impl Compensator {
     /// The network with its amplifier as a netlist: reads like the schematic.
     pub fn netlist(&self) -> ValuedNetlist {
+        self.drawn().0
+    }
+
+    /// The netlist, and the node that the amplifier drives by a current: behind an op amp's gain ahead of its buffer, or the output
+    /// of a transconductance amplifier.
+    pub(super) fn drawn(&self) -> (ValuedNetlist, Node) {
         let mut circuit = ValuedNetlist { netlist: Netlist::new(), values: Vec::new() };
         let ground = circuit.netlist.ground();
         let [vout, vref, tap, vc] = ["vout", "vref", "tap", "vc"].map(|name| circuit.netlist.node(name));
@@ -121,12 +130,12 @@ impl Compensator {
             circuit.fit(self, Part::Feedforward, vout, tap);
         }
         if let Amplifier::ShuntRegulator(regulator) = self.amplifier {
-            self.fit_isolated(&regulator, &mut circuit, [vref, tap, vc]);
+            let driven = self.fit_isolated(&regulator, &mut circuit, [vref, tap, vc]);
             circuit.netlist.voltage_output("vc", vc, ground);
             circuit.netlist.voltage_output("error", vref, tap);
-            return circuit;
+            return (circuit, driven);
         }
-        let far_end = self.fit_amplifier(&mut circuit, [vref, tap, vc]);
+        let (far_end, driven) = self.fit_amplifier(&mut circuit, [vref, tap, vc]);
         if self.kind == Kind::One {
             circuit.fit(self, Part::C1, vc, far_end);
         } else {
@@ -137,7 +146,7 @@ impl Compensator {
         }
         circuit.netlist.voltage_output("vc", vc, ground);
         circuit.netlist.voltage_output("error", vref, tap);
-        circuit
+        (circuit, driven)
     }
 
     /// Fits r3 and c3 in series.
@@ -148,23 +157,24 @@ impl Compensator {
     }
 
     /// Fits the amplifier from its inputs `vref` (plus) and `tap` (minus) to `vc`, and returns the node where the far end of the
-    /// network from `vc` goes: the tap around an op amp, ground behind a transconductance amplifier.
-    fn fit_amplifier(&self, circuit: &mut ValuedNetlist, [vref, tap, vc]: [Node; 3]) -> Node {
+    /// network from `vc` goes, the tap around an op amp, ground behind a transconductance amplifier; and the node that the amplifier
+    /// drives by a current.
+    fn fit_amplifier(&self, circuit: &mut ValuedNetlist, [vref, tap, vc]: [Node; 3]) -> (Node, Node) {
         let ground = circuit.netlist.ground();
         match self.amplifier {
             Amplifier::OpAmp(amplifier) => {
-                circuit.buffered("op-amp", (amplifier.dc_gain, amplifier.gain_bandwidth_hz), [vref, tap, vc]);
-                tap
+                let gain = (amplifier.dc_gain, amplifier.gain_bandwidth_hz);
+                (tap, circuit.buffered("op-amp", gain, [vref, tap, vc]))
             }
             Amplifier::Transconductance(amplifier) => {
                 let gm = circuit.slot("transconductance.gm", amplifier.gm);
                 let resistance = circuit.slot("transconductance.output-resistance", amplifier.output_resistance);
                 circuit.netlist.controlled_current("transconductance.gm", ground, vc, gm, vref, tap);
                 circuit.netlist.resistor("transconductance.output-resistance", vc, ground, resistance);
-                ground
+                (ground, vc)
             }
             // Drawn by itself.
-            Amplifier::ShuntRegulator(_) => tap,
+            Amplifier::ShuntRegulator(_) => (tap, vc),
         }
     }
 

@@ -12,19 +12,20 @@ const SUPPLY: &str = "supply";
 
 impl Compensator {
     /// Fits regulator, LED, optocoupler and pull-up between reference, tap of the divider and control voltage: reads like the
-    /// schematic.
+    /// schematic. Gives the node that the regulator drives by a current.
     pub(super) fn fit_isolated(
         &self,
         regulator: &ShuntRegulator,
         circuit: &mut ValuedNetlist,
         [vref, tap, vc]: [Node; 3],
-    ) {
+    ) -> Node {
         let ground = circuit.netlist.ground();
         let [feed, anode, cathode, supply] =
             ["feed", "anode", "cathode", "supply"].map(|name| circuit.netlist.node(name));
         circuit.source(if regulator.has_fast_path() { FAST } else { LED_SUPPLY }, feed, ground);
         circuit.source(SUPPLY, supply, ground);
-        circuit.buffered("shunt", (regulator.dc_gain, regulator.gain_bandwidth_hz), [vref, tap, cathode]);
+        let driven =
+            circuit.buffered("shunt", (regulator.dc_gain, regulator.gain_bandwidth_hz), [vref, tap, cathode]);
         self.fit_slow_path(circuit, cathode, tap);
         circuit.fit(self, Part::Led, feed, anode);
         if self.has(Part::C3) {
@@ -43,6 +44,7 @@ impl Compensator {
         if self.kind != Kind::One {
             circuit.fit(self, Part::C2, vc, ground);
         }
+        driven
     }
 
     /// C1, with R2 in series where one is fitted, from the cathode back to the tap.

@@ -1,0 +1,193 @@
+//! A stage and its control as one piecewise linear system, and the rule that switches it.
+//!
+//! *Conventions*: x' = A·x + B·u, y = C·x + D·u in SI units over the same joint states, inputs and probes in every configuration; time
+//! within a period counts from the clock's edge. A load of constant power is its tangent, the bank's series inductance is left out.
+
+use crate::control::Edge;
+use crate::quantity::Unit;
+use nalgebra::{DMatrix, DVector, RowDVector};
+
+/// Names of the inputs of every switched system.
+pub mod inputs {
+    pub use crate::converter::signals::{INPUT_VOLTAGE, LOAD_CURRENT};
+    /// Forward drop of the rectifying diode [V].
+    pub const DIODE_DROP: &str = "diode drop";
+    /// Reference of the error amplifier [V].
+    pub const REFERENCE: &str = "reference";
+    /// Voltage in series between the sensed output and the compensator's input, where an analyser injects [V].
+    pub const INJECTED: &str = "injected";
+    /// Added to the compensator's output; all of the control voltage where the loop is open [V].
+    pub const CONTROL: &str = "control";
+}
+
+/// Which switches conduct.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Configuration {
+    /// The controlled switch.
+    Conducting,
+    /// The rectifier.
+    Freewheeling,
+    /// None.
+    Resting,
+}
+
+/// Equations of one configuration.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Piece {
+    /// States by states [1/s].
+    pub a: DMatrix<f64>,
+    /// States by inputs.
+    pub b: DMatrix<f64>,
+    /// Probes by states.
+    pub c: DMatrix<f64>,
+    /// Probes by inputs.
+    pub d: DMatrix<f64>,
+}
+
+/// A signal that can be looked at.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Probe {
+    /// Its name.
+    pub name: String,
+    /// Its unit: volt or ampere.
+    pub unit: Unit,
+}
+
+/// Rows of the probes that have a part to play.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Places {
+    /// Regulated voltage, a magnitude [V].
+    pub output_voltage: usize,
+    /// Voltage at the load's terminals, a magnitude [V].
+    pub load_voltage: usize,
+    /// Voltage of the switch node against ground [V].
+    pub switch_node: usize,
+    /// Voltage across the controlled switch [V].
+    pub switch_voltage: usize,
+    /// Voltage that the rectifier blocks [V].
+    pub rectifier_voltage: usize,
+    /// Current from the ideal source [A].
+    pub input_current: usize,
+    /// Current of the controlled switch [A].
+    pub switch_current: usize,
+    /// Current of the rectifier [A].
+    pub rectifier_current: usize,
+    /// Current that stops when both block [A].
+    pub switched_current: usize,
+    /// Currents of the inductors, those of the filters last [A].
+    pub inductor_currents: Vec<usize>,
+    /// Currents into the branches of the output bank [A].
+    pub branch_currents: Vec<usize>,
+    /// Control voltage [V].
+    pub control_voltage: usize,
+    /// What the comparator compares with its ramp [V].
+    pub compared: usize,
+    /// What current mode and current limit sense, behind the sense filter [A].
+    pub sensed_current: usize,
+}
+
+/// The comparator that ends an interval.
+///
+/// It compares probe `row`, in the configuration that the clock started, with a ramp: margin = y − valley − rate·t. At
+/// [`Edge::Peak`] the clock closes the switch and the margin's fall to zero opens it; at [`Edge::Valley`] the clock opens the
+/// switch and the margin's rise to zero closes it. The switches follow `delay_s` later.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Comparator {
+    /// Which switching instant it decides.
+    pub edge: Edge,
+    /// Probe that it compares.
+    pub row: usize,
+    /// The ramp as the clock starts it [V].
+    pub valley_v: f64,
+    /// Slope of the ramp [V/s] that no input sets.
+    pub rate: f64,
+    /// Slope of the ramp per volt of input voltage, from line feed-forward [1/s].
+    pub rate_per_input: f64,
+    /// From the comparator to the switches [s].
+    pub delay_s: f64,
+    /// How long after the clock the comparator is blind [s].
+    pub blanking_s: f64,
+    /// Shortest time the switch conducts [s].
+    pub on_time_least_s: f64,
+    /// Smallest duty ratio.
+    pub duty_least: f64,
+    /// Largest duty ratio.
+    pub duty_greatest: f64,
+    /// Greatest control voltage that is let through [V].
+    pub clamp: Option<f64>,
+}
+
+/// What ends the interval that the clock starts.
+#[derive(Clone, Debug, PartialEq)]
+pub enum Rule {
+    /// The switch conducts for this share of every period.
+    Given {
+        /// Duty ratio.
+        duty: f64,
+    },
+    /// A comparator decides.
+    Compared(Comparator),
+}
+
+/// A stage and its control as one piecewise linear system.
+#[derive(Clone, Debug)]
+pub struct SwitchedSystem {
+    /// Equations by [`Configuration`], in its order.
+    pub pieces: [Piece; 3],
+    /// Puts the states on the constraint of [`Configuration::Resting`] as that begins.
+    pub rest_projector: DMatrix<f64>,
+    /// The rectifier's current from the states: its fall to zero opens the rectifier. None where it conducts reverse current.
+    pub rest: Option<RowDVector<f64>>,
+    /// Applied to the states as a period ends: interleaved phases share one period and change names. None for a single phase.
+    pub rotation: Option<DMatrix<f64>>,
+    /// What holds each state.
+    pub state_names: Vec<String>,
+    /// Names of the inputs, in column order.
+    pub input_names: Vec<String>,
+    /// What can be looked at, in row order.
+    pub probes: Vec<Probe>,
+    /// Rows of the probes with a part to play.
+    pub places: Places,
+    /// Inputs at the condition.
+    pub steady_inputs: DVector<f64>,
+    /// What ends the interval that the clock starts.
+    pub rule: Rule,
+    /// Switching period [s].
+    pub period_s: f64,
+}
+
+impl SwitchedSystem {
+    /// Equations of a configuration.
+    pub fn piece(&self, configuration: Configuration) -> &Piece {
+        let [conducting, freewheeling, resting] = &self.pieces;
+        match configuration {
+            Configuration::Conducting => conducting,
+            Configuration::Freewheeling => freewheeling,
+            Configuration::Resting => resting,
+        }
+    }
+
+    /// Number of states.
+    pub fn order(&self) -> usize {
+        self.state_names.len()
+    }
+
+    /// Column of an input by name.
+    pub fn input(&self, name: &str) -> Option<usize> {
+        self.input_names.iter().position(|n| n == name)
+    }
+
+    /// Row of a probe by name.
+    pub fn probe(&self, name: &str) -> Option<usize> {
+        self.probes.iter().position(|probe| probe.name == name)
+    }
+
+    /// Slope of the comparator's ramp at its inputs [V/s]; zero where none compares.
+    pub fn ramp_rate(&self, inputs: &DVector<f64>) -> f64 {
+        let input = self.input(inputs::INPUT_VOLTAGE).and_then(|column| inputs.get(column)).copied().unwrap_or(0.0);
+        match &self.rule {
+            Rule::Given { .. } => 0.0,
+            Rule::Compared(comparator) => comparator.rate + comparator.rate_per_input * input,
+        }
+    }
+}
