@@ -12,7 +12,7 @@
 use std::fmt;
 
 use super::network::{Amplifier, Compensator, Kind, Part};
-use crate::circuit::{CircuitError, Compiled, Netlist, Node, Slot};
+use crate::circuit::{CircuitError, Compiled, Netlist, Node, PartId, Slot};
 use crate::linear::{Complex, LinearError, StateSpace, Zpk};
 
 /// Resistance inside a buffered amplifier's model [Ω]; any value gives the same response, this one keeps the equations well scaled.
@@ -48,6 +48,16 @@ impl From<LinearError> for NetworkError {
     fn from(error: LinearError) -> Self {
         NetworkError::Linear(error)
     }
+}
+
+/// Where limits of the amplifier act.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Driven {
+    /// The node that the amplifier drives by a current: ahead of the buffer of an op amp or shunt regulator, or the output of a
+    /// transconductance amplifier.
+    pub(super) node: Node,
+    /// The optocoupler's transistor, from its collector to ground, with the node of its collector.
+    pub(super) transistor: Option<(PartId, Node)>,
 }
 
 /// A netlist with the values that go with it.
@@ -112,9 +122,8 @@ impl Compensator {
         self.drawn().0
     }
 
-    /// The netlist, and the node that the amplifier drives by a current: behind an op amp's gain ahead of its buffer, or the output
-    /// of a transconductance amplifier.
-    pub(super) fn drawn(&self) -> (ValuedNetlist, Node) {
+    /// The netlist, and where the amplifier drives it.
+    pub(super) fn drawn(&self) -> (ValuedNetlist, Driven) {
         let mut circuit = ValuedNetlist { netlist: Netlist::new(), values: Vec::new() };
         let ground = circuit.netlist.ground();
         let [vout, vref, tap, vc] = ["vout", "vref", "tap", "vc"].map(|name| circuit.netlist.node(name));
@@ -146,7 +155,7 @@ impl Compensator {
         }
         circuit.netlist.voltage_output("vc", vc, ground);
         circuit.netlist.voltage_output("error", vref, tap);
-        (circuit, driven)
+        (circuit, Driven { node: driven, transistor: None })
     }
 
     /// Fits r3 and c3 in series.

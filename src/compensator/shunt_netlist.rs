@@ -1,6 +1,6 @@
 //! The netlist of isolated feedback: regulator with its network, LED and its resistors, optocoupler, pull-up.
 
-use super::netlist::{FAST, ValuedNetlist};
+use super::netlist::{Driven, FAST, ValuedNetlist};
 use super::network::{Compensator, Kind, Part};
 use super::shunt::{LedSupply, ShuntRegulator};
 use crate::circuit::Node;
@@ -12,20 +12,19 @@ const SUPPLY: &str = "supply";
 
 impl Compensator {
     /// Fits regulator, LED, optocoupler and pull-up between reference, tap of the divider and control voltage: reads like the
-    /// schematic. Gives the node that the regulator drives by a current.
+    /// schematic. Gives where regulator and transistor drive it.
     pub(super) fn fit_isolated(
         &self,
         regulator: &ShuntRegulator,
         circuit: &mut ValuedNetlist,
         [vref, tap, vc]: [Node; 3],
-    ) -> Node {
+    ) -> Driven {
         let ground = circuit.netlist.ground();
         let [feed, anode, cathode, supply] =
             ["feed", "anode", "cathode", "supply"].map(|name| circuit.netlist.node(name));
         circuit.source(if regulator.has_fast_path() { FAST } else { LED_SUPPLY }, feed, ground);
         circuit.source(SUPPLY, supply, ground);
-        let driven =
-            circuit.buffered("shunt", (regulator.dc_gain, regulator.gain_bandwidth_hz), [vref, tap, cathode]);
+        let node = circuit.buffered("shunt", (regulator.dc_gain, regulator.gain_bandwidth_hz), [vref, tap, cathode]);
         self.fit_slow_path(circuit, cathode, tap);
         circuit.fit(self, Part::Led, feed, anode);
         if self.has(Part::C3) {
@@ -37,14 +36,14 @@ impl Compensator {
         let led = circuit.netlist.resistor("opto.led", anode, junction, resistance);
         circuit.source(LED_DROP, junction, cathode);
         let ratio = circuit.slot("opto.transfer-ratio", regulator.ratio());
-        circuit.netlist.copied_current("opto.transistor", vc, ground, ratio, led);
+        let transistor = circuit.netlist.copied_current("opto.transistor", vc, ground, ratio, led);
         let own = circuit.slot("opto.capacitance", regulator.capacitance);
         circuit.netlist.capacitor("opto.capacitance", vc, ground, own);
         circuit.fit(self, Part::PullUp, supply, vc);
         if self.kind != Kind::One {
             circuit.fit(self, Part::C2, vc, ground);
         }
-        driven
+        Driven { node, transistor: Some((transistor, vc)) }
     }
 
     /// C1, with R2 in series where one is fitted, from the cathode back to the tap.
