@@ -5,6 +5,7 @@ use super::conduction::{discontinuous, resonates, step_leaves_mode};
 use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
 use super::filter_remarks::filter_remarks;
+use super::isolated_remarks::isolated_remarks;
 use super::loop_model::Shared;
 use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict, WindowEdge};
 use super::stability_remarks::{conditionally_stable, unstable, what_if_unstable};
@@ -37,6 +38,7 @@ pub(super) fn remarks(
     findings.extend(what_if_unstable(detail));
     findings.extend(filter_remarks(design, detail, conditions));
     findings.extend(control_remarks(design, shared, detail, conditions));
+    findings.extend(isolated_remarks(design, detail, conditions, window));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));
@@ -114,7 +116,8 @@ fn missed(verdict: &RequirementVerdict) -> Finding {
 /// Ripple at the comparator large enough to make averaged numbers doubtful.
 fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult]) -> Vec<Finding> {
     let fs = design.stage.switching_frequency;
-    let high = shared.compensator_response.at_hz(fs).norm();
+    // Several phases cancel the ripple below the frequency of all together.
+    let high = shared.compensator_response.at_hz(design.stage.ripple_frequency()).norm();
     let mut findings = Vec::new();
     let gain = summaries(conditions)
         .max_by(|a, b| a.1.loop_gain.gain_at_switching.total_cmp(&b.1.loop_gain.gain_at_switching));
@@ -144,7 +147,7 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
 fn step_leaves_limits(design: &CheckedDesign, detail: Option<&Detail>) -> Option<Finding> {
     let detail = detail?;
     let step = detail.steps.load.as_ref()?;
-    let (least, greatest) = design.compensator.amplifier.output_limits();
+    let (least, greatest) = design.compensator.output_limits();
     let followed = design.law.control_limits(detail.condition.input_voltage);
     let (least, greatest) = (least.max(followed.0), greatest.min(followed.1));
     let (low, high) = step.control_v;
@@ -213,6 +216,12 @@ fn model_limits(design: &CheckedDesign) -> Vec<Finding> {
         notes.push(Finding::note(
             "stage.load",
             "The constant-power load is taken by its tangent in all linear results.",
+        ));
+    }
+    if design.stage.phases() > 1.0 && design.stage.bank.iter().any(|b| b.esr > 0.0) && design.stage.bank_is_switched() {
+        notes.push(Finding::note(
+            "stage.phases",
+            "The averaged model lets all phases conduct at once through the output bank's ESR; driven one after the other they drop a little less there. The ESR zero is exact.",
         ));
     }
     if design.stage.bank.iter().any(|b| b.esl > 0.0) && !design.stage.bank_inductance_averaged() {

@@ -20,4 +20,6 @@ mod reference;
 mod registry;
 mod sampled;
 mod switched;
+mod symbolic;
 mod textbook;
+mod topologies;
