@@ -17,7 +17,7 @@ const REFERENCES: [&str; 3] = [
 
 #[test]
 fn plants_as_an_analyser_reads_them() {
-    for (design, row) in REFERENCES.iter().flat_map(|text| designs(text)) {
+    for (design, row) in REFERENCES.iter().flat_map(|text| designs(text, |row| row["switched"].is_object())) {
         let wanted = &row["switched"];
         let exact = exact_loop(&design, None);
         assert_relative(&design.title, exact.open.orbit().duty, number(&wanted["duty"]), 1e-9);
@@ -32,7 +32,7 @@ fn plants_as_an_analyser_reads_them() {
 
 #[test]
 fn multipliers_of_closed_loops() {
-    for (design, row) in REFERENCES.iter().flat_map(|text| designs(text)) {
+    for (design, row) in REFERENCES.iter().flat_map(|text| designs(text, |row| row["switched"].is_object())) {
         let stability = Stability::new(&exact_loop(&design, None).closed).expect("multipliers");
         let wanted = number(&row["switched"]["greatest_closed_multiplier"]);
         assert_absolute(&design.title, stability.growth_per_period(), wanted, 1e-6);
