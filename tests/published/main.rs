@@ -13,6 +13,7 @@ mod discontinuous;
 mod every_mode;
 mod filters;
 mod lossless;
+mod orbit;
 mod proposal;
 mod random;
 mod reference;
