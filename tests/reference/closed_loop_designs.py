@@ -53,7 +53,8 @@ class Design:
             "compensator.type": str(network.kind),
             "compensator.amplifier": network.amplifier,
         }
-        if network.kind != 3:
+        isolated = network.amplifier == "shunt-regulator"
+        if network.kind != 3 and not isolated:
             choices["compensator.feedforward-capacitor"] = "fitted" if network.cff else "none"
         values = {
             "stage.output.voltage": self.output,
@@ -105,6 +106,11 @@ class Design:
             values[f"stage.bank.{k}.esr"] = branch.esr
             values[f"stage.bank.{k}.esl"] = branch.esl
             values[f"stage.bank.{k}.count"] = branch.count
+        if isolated:
+            own_choices, own_values = network.entries()
+            # A part not fitted has no entry.
+            values = {path: value for path, value in values.items() if value or not path.startswith("compensator.")}
+            return choices | own_choices, values | own_values
         if network.kind == 3:
             values |= {"compensator.r3": network.r3, "compensator.c3": network.c3}
         if network.cff:

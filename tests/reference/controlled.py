@@ -175,11 +175,11 @@ class ControlledLoop(Loop):
 
     # --- frequency: scalar algebra at each frequency --------------------------------------------------------------
 
-    def stage_responses(self, s):
-        """Output from (vin, io, control voltage), and the inner loop gain where there is one."""
+    def stage_responses(self, s, of=None):
+        """Output, or another row of the stage, from (vin, io, control voltage), and the inner loop gain where there is one."""
         model, control = self.model, self.control
         states = model.states_at(s)  # from (vin, io, duty)
-        output = model.at(s)
+        output = model.at(s, of)
         late = np.exp(-s * self.design.delay)
         if control.mode == "average-current":
             current = model.current.x @ states + np.array([*model.current.u, model.current.d])
@@ -222,9 +222,13 @@ class ControlledLoop(Loop):
 
     # --- state space, the second route ------------------------------------------------------------------------------
 
-    def controlled(self):
-        """(A, B, C, D) of the stage under its control law, inputs (vin, io, control voltage), the delay as its Pade form."""
+    def controlled(self, of=None):
+        """(A, B, C, D) of the stage under its control law, inputs (vin, io, control voltage), the delay as its Pade form.
+
+        C and D give the output, or another row of the stage.
+        """
         m, control = self.model, self.control
+        of = of or m.output
         a_d, b_d, c_d, d_d = pade_modal(self.design.delay)
         n_p, n_d = len(m.a), len(a_d)
         average = control.mode == "average-current"
@@ -282,7 +286,7 @@ class ControlledLoop(Loop):
                     sensed = units[1]
                 slopes[e][0] = (late - control.sense * sensed - rest - law.d * duty - step * more) / (step * period / np.pi**2)
         slopes[p, :] = natural + np.outer(m.f, duty)
-        out = rows(m.output.x, m.output.u)[0] + m.output.d * duty
+        out = rows(of.x, of.u)[0] + of.d * duty
         if average:
             sensed = control.sense * (rows(m.current.x, m.current.u)[0] + m.current.d * duty)
             if behind:
