@@ -12,6 +12,7 @@ mod current_mode;
 mod discontinuous;
 mod every_mode;
 mod filters;
+mod isolated;
 mod lossless;
 mod orbit;
 mod proposal;
