@@ -6,8 +6,10 @@
 //! the inner loop of average current mode it is the latter in both. A loop with a difference equation is judged and followed by its exact map from
 //! sample to sample (`sampled`); its curves here are those of the unfolded band, as an analyser reads them.
 
+use super::fast_path::FastPath;
 use super::motion::Motion;
 use super::sampled::SharedDigital;
+use crate::compensator::{FAST, joined_paths};
 use crate::control::{CONTROL, ControlLaw, Controlled, Edge, Mode};
 use crate::converter::signals::LOAD_VOLTAGE;
 use crate::converter::{AveragedModel, Conduction, Stage, StageCondition};
@@ -23,10 +25,12 @@ use nalgebra::DMatrix;
 /// What all conditions of a design share: the compensator, solved once.
 #[derive(Clone, Debug)]
 pub struct Shared {
-    /// From "vout" and "vref" to "vc".
+    /// From "vout", "vref" and, where it has a fast path, "fast" to "vc".
     pub compensator: StateSpace,
-    /// −vc/vout.
+    /// −vc/vout, a fast path seeing the same voltage.
     pub compensator_response: FactoredResponse,
+    /// The fast path of isolated feedback, where there is one.
+    pub fast_path: Option<FastPath>,
     /// The control law, its compensating ramp settled.
     pub law: ControlLaw,
     /// The difference equation in place of a network: then `compensator` answers nothing.
@@ -51,10 +55,12 @@ impl Shared {
             Some(digital) => (no_network().map_err(|e| singular(&e))?, digital.response()),
             None => {
                 let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
-                let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+                let joined = joined_paths(compensator.clone()).map_err(|e| singular(&e))?;
+                let response = Zpk::from_state_space(&joined, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
                 (compensator, FactoredResponse::new(response, 0.0))
             }
         };
+        let fast_path = FastPath::new(design, &compensator).map_err(|e| singular(&e))?;
         let law = settled(design)?;
         let outside = !matches!(law.mode, Mode::Average(_));
         let delay = if law.delay_s > 0.0 && outside {
@@ -62,7 +68,7 @@ impl Shared {
         } else {
             None
         };
-        Ok(Shared { compensator, compensator_response, law, digital, delay })
+        Ok(Shared { compensator, compensator_response, fast_path, law, digital, delay })
     }
 }
 
@@ -131,6 +137,9 @@ pub struct LoopModel {
     pub modulator_delay_s: Option<f64>,
     /// Whether the load's voltage is another than the regulated one: a second stage stands behind the sense point.
     pub load_beyond: bool,
+    /// The fast path of isolated feedback, where it sees another voltage than the regulated one: the loop gain is the sum over both
+    /// paths.
+    pub apart: Option<FastPath>,
 }
 
 /// What closing the loop leads to.
@@ -167,7 +176,11 @@ impl LoopModel {
         let controlled = shared.law.controlled(&averaged, period).map_err(|e| model_finding(&e))?;
         let plant = Zpk::from_state_space(&controlled.stage, 0, 0).map_err(|e| model_finding(&e))?;
         let compensator = &shared.compensator_response;
-        let loop_zpk = plant.multiply(compensator.zpk());
+        let apart = shared.fast_path.as_ref().filter(|path| path.apart).cloned();
+        let loop_zpk = match &apart {
+            None => plant.multiply(compensator.zpk()),
+            Some(path) => path.loop_gain(&controlled.stage, &shared.compensator).map_err(|e| model_finding(&e))?,
+        };
         let decided = shared.law.decision_share(averaged.operating_point.duty);
         let modulator_delay_s = shared.digital.as_ref().and(decided).map(|share| share * period);
         let delay_s = controlled.delay_s + modulator_delay_s.unwrap_or(0.0);
@@ -182,6 +195,7 @@ impl LoopModel {
             controlled,
             averaged,
             load_beyond: stage.second_stage.is_some_and(|second| !second.sensed_at_load),
+            apart,
         })
     }
 
@@ -224,15 +238,24 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn closed(&self, shared: &Shared) -> Result<StateSpace, LinearError> {
+        self.closed_with(shared, &shared.compensator)
+    }
+
+    /// The same around another compensator with the same ports.
+    fn closed_with(&self, shared: &Shared, compensator: &StateSpace) -> Result<StateSpace, LinearError> {
         const STAGE: usize = 0;
         const COMPENSATOR: usize = 1;
         const TAP: usize = 2;
         let tap = StateSpace::constant(DMatrix::identity(1, 1), &["disturbance"], &["disturbance"])?;
-        let mut parts = vec![&self.controlled.stage, &shared.compensator, &tap];
+        let mut parts = vec![&self.controlled.stage, compensator, &tap];
         let mut wires = vec![
             wire(STAGE, "output voltage", COMPENSATOR, "vout", 1.0),
             wire(TAP, "disturbance", COMPENSATOR, "vout", 1.0),
         ];
+        if let Some(path) = &shared.fast_path {
+            wires.push(wire(STAGE, path.signal, COMPENSATOR, FAST, 1.0));
+            wires.push(wire(TAP, "disturbance", COMPENSATOR, FAST, 1.0));
+        }
         if let Some(delay) = &shared.delay {
             let place = parts.len();
             let (input, output) = (delay.inputs[0].as_str(), delay.outputs[0].as_str());
@@ -290,6 +313,21 @@ impl LoopModel {
         self.judged(shared, margins).map(|judged| judged.2)
     }
 
+    /// Stability with another compensator of the same ports, whose loop gain and margins these are.
+    ///
+    /// # Errors
+    /// As the joining of systems.
+    pub(super) fn stability_with(
+        &self,
+        shared: &Shared,
+        compensator: &StateSpace,
+        loop_gain: &FactoredResponse,
+        margins: &Margins,
+    ) -> Result<Verdict, LinearError> {
+        let poles = self.closed_with(shared, compensator)?.poles()?;
+        Ok(closed_loop_verdict_knowing(&poles, loop_gain, margins))
+    }
+
     fn judged(&self, shared: &Shared, margins: &Margins) -> Result<(StateSpace, Vec<Complex>, Verdict), LinearError> {
         let closed = self.closed(shared)?;
         let poles = closed.poles()?;
@@ -298,7 +336,7 @@ impl LoopModel {
     }
 }
 
-fn wire<'a>(from_part: usize, output: &'a str, to_part: usize, input: &'a str, gain: f64) -> Wire<'a> {
+pub(super) fn wire<'a>(from_part: usize, output: &'a str, to_part: usize, input: &'a str, gain: f64) -> Wire<'a> {
     Wire { from_part, output, to_part, input, gain }
 }
 

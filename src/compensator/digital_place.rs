@@ -14,6 +14,7 @@ use super::method::{KFactorGoal, RuleGoal, RulePlacement, check_goal, pole_zero_
 use super::network::{Amplifier, Compensator, Kind};
 use super::place::Placement;
 use crate::finding::Finding;
+use crate::linear::Complex;
 use crate::quantity::{Unit, print};
 
 /// Most that one zero is asked for [°]: beyond, it would be far below the crossover for nothing.
@@ -33,7 +34,7 @@ impl Compensator {
         locks: &BTreeSet<String>,
     ) -> Result<Placement, Box<Finding>> {
         let exact = self.exact_at(digital, goal.crossover_hz);
-        exact.settle(goal.crossover_hz, locks, |gain_db, phase_deg| {
+        exact.settle((goal.crossover_hz, Complex::ONE), locks, |gain_db, phase_deg| {
             let goal = KFactorGoal {
                 plant_gain_db: goal.plant_gain_db + gain_db,
                 plant_phase_deg: goal.plant_phase_deg + phase_deg,
@@ -55,7 +56,7 @@ impl Compensator {
     ) -> Result<RuledPlacement, Box<Finding>> {
         let (_, mut reasons) = digital.by_landmarks(goal)?;
         let exact = self.exact_at(digital, goal.crossover_hz);
-        let placement = exact.settle(goal.crossover_hz, locks, |gain_db, _| {
+        let placement = exact.settle((goal.crossover_hz, Complex::ONE), locks, |gain_db, _| {
             let goal = RuleGoal { plant_gain_db: goal.plant_gain_db + gain_db, ..*goal };
             digital.by_landmarks(&goal).map(|(corners, _)| corners)
         })?;

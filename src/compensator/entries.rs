@@ -4,23 +4,24 @@
 //! `r3`, `c3` across the upper divider resistor.
 
 use super::digital_entries as digital;
+use super::shunt_entries as shunt;
 use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 
 /// Resistances of a signal-level network [Ω]: wider than anything fitted, narrow enough to stop a slip of the prefix.
-const RESISTANCE: Bounds = Bounds::Between(1e-3, 1e9);
+pub(super) const RESISTANCE: Bounds = Bounds::Between(1e-3, 1e9);
 /// Capacitances of a signal-level network [F], likewise.
-const CAPACITANCE: Bounds = Bounds::Between(1e-16, 1.0);
+pub(super) const CAPACITANCE: Bounds = Bounds::Between(1e-16, 1.0);
 /// Voltages an amplifier's output may be limited to [V].
 const OUTPUT_VOLTAGE: Bounds = Bounds::Between(-1000.0, 1000.0);
 
 /// Every number a user enters for the compensator, in the order of the form.
 pub fn entries() -> impl Iterator<Item = &'static Entry> {
-    ENTRIES.iter().chain(digital::ENTRIES)
+    ENTRIES.iter().chain(shunt::ENTRIES).chain(digital::ENTRIES)
 }
 
 /// Every choice a user makes for the compensator, in the order of the form.
 pub fn choices() -> impl Iterator<Item = &'static Choice> {
-    CHOICES.iter().chain(digital::CHOICES)
+    CHOICES.iter().chain(shunt::CHOICES).chain(digital::CHOICES)
 }
 
 /// Numbers of the networks, and of op amp and transconductance amplifier.
@@ -229,6 +230,11 @@ const CHOICES: &[Choice] = &[
                 help: "A voltage-to-current amplifier with the network from its output to ground.",
             },
             ChoiceOption {
+                key: "shunt-regulator",
+                name: "regulator and optocoupler",
+                help: "Isolated feedback: a shunt regulator of the 431 type drives the LED of an optocoupler.",
+            },
+            ChoiceOption {
                 key: "digital",
                 name: "difference equation",
                 help: "The divided output is sampled once a period, and a difference equation computes the control.",
@@ -294,7 +300,10 @@ pub fn applies(path: &str, choices: &Choices) -> bool {
     if amplifier == "digital" {
         return digital::applies(path, choices);
     }
+    let isolated = amplifier == "shunt-regulator";
     match path {
+        "compensator.r2" if isolated => shunt::has_series_resistor(kind, choices),
+        "compensator.anchor" | "compensator.feedforward-capacitor" | "compensator.cff" if isolated => false,
         "compensator.r2" | "compensator.c2" | "compensator.anchor" => kind != "1",
         "compensator.r3" | "compensator.c3" => kind == "3",
         "compensator.feedforward-capacitor" => kind != "3",
@@ -302,6 +311,9 @@ pub fn applies(path: &str, choices: &Choices) -> bool {
         _ if path.starts_with("compensator.op-amp.") => amplifier == "op-amp",
         _ if path.starts_with("compensator.transconductance.") => amplifier == "transconductance",
         _ if path.starts_with("compensator.digital.") => false,
+        _ if path.starts_with("compensator.opto.") || path.starts_with("compensator.shunt.") => {
+            isolated && shunt::applies(path, kind, choices)
+        }
         _ => path.starts_with("compensator."),
     }
 }

@@ -152,7 +152,7 @@ fn rounding_that_hurts_is_told() {
     let off = &[
         ("compensator.digital.bits", "10"),
         ("compensator.digital.rounding", "nearest"),
-        ("compensator.digital.pole-1", "31k"),
+        ("compensator.digital.pole-1", "38k"),
     ];
     let lost = told(off, "compensator.digital.rounding", "Rounding moves the integrator's pole");
     assert!(lost.remedy.is_some());
@@ -185,7 +185,7 @@ fn unusable_entries_are_problems_at_their_place() {
             "from 0 to 62",
         ),
         (
-            &[("compensator.digital.feedback-fraction-bits", "15")],
+            &[("compensator.digital.pole-1", "10k"), ("compensator.digital.feedback-fraction-bits", "15")],
             "compensator.digital.feedback-fraction-bits",
             "overflows",
         ),
