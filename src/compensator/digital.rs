@@ -13,7 +13,6 @@ use super::difference::{DifferenceEquation, Method};
 use super::digital_entries::{ENTRIES, applies, chosen, voltage_mode};
 use super::fixed_point::{Codes, Overflow};
 use super::lanes::Corners;
-use crate::converter::pulse_frequency;
 use crate::finding::{Finding, Remedy};
 use crate::linear::{Complex, FactoredResponse, Zpk};
 use crate::quantity::{Choices, Unit, Values, print, print_digits};
@@ -84,11 +83,17 @@ pub(super) enum TooLarge {
 
 impl Digital {
     /// Reads entered values; what cannot be used is added to `faults`.
-    pub(super) fn read(values: &Values, choices: &Choices, divider_ratio: f64, faults: &mut Vec<Finding>) -> Self {
+    pub(super) fn read(
+        values: &Values,
+        choices: &Choices,
+        pulses_hz: Option<f64>,
+        divider_ratio: f64,
+        faults: &mut Vec<Finding>,
+    ) -> Self {
         let start = faults.len();
         let mut get = |path: &str| read_entry(path, values, choices, faults);
-        let pulses = pulse_frequency(values, choices);
-        let period_s = pulses.unwrap_or(1.0).recip();
+        let pulses_hz = pulses_hz.filter(|f| f.is_finite() && *f > 0.0);
+        let period_s = pulses_hz.unwrap_or(1.0).recip();
         let duty_command = voltage_mode(choices);
         let lane = |path: &str, applies: bool, get: &mut dyn FnMut(&str) -> f64| applies.then(|| get(path));
         let order = if chosen(choices, "compensator.digital.order") == "2" { 2 } else { 3 };
@@ -140,7 +145,7 @@ impl Digital {
             held: choices.is("control.mode", "average-current"),
             divider_ratio,
         };
-        if faults.len() == start && pulses.is_some() {
+        if faults.len() == start && pulses_hz.is_some() {
             digital.check(values, faults);
         }
         digital

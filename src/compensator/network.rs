@@ -266,6 +266,15 @@ impl Compensator {
     /// One finding for each choice that is not an option, each value that is out of bounds, and for output limits
     /// that leave no room.
     pub fn from_values(values: &Values, choices: &Choices) -> Result<Self, Vec<Finding>> {
+        Self::from_values_at(values, choices, values.get("stage.switching-frequency"))
+    }
+
+    /// The same where the stage's pulses come at another rate than its switch's own [Hz], as in one whose switches take turns: that is how
+    /// often a difference equation samples.
+    ///
+    /// # Errors
+    /// As [`Compensator::from_values`].
+    pub fn from_values_at(values: &Values, choices: &Choices, pulses_hz: Option<f64>) -> Result<Self, Vec<Finding>> {
         let mut faults = wrong_choices(choices);
         let mut read = |path: &str| read_entry(path, values, choices, &mut faults);
         let parts = Parts {
@@ -303,7 +312,9 @@ impl Compensator {
         };
         let amplifier = match chosen(choices, "compensator.amplifier") {
             "transconductance" => Amplifier::Transconductance(transconductance),
-            "digital" => Amplifier::Digital(Digital::read(values, choices, parts.divider_ratio(), &mut faults)),
+            "digital" => {
+                Amplifier::Digital(Digital::read(values, choices, pulses_hz, parts.divider_ratio(), &mut faults))
+            }
             "shunt-regulator" => Amplifier::ShuntRegulator(regulator),
             _ => Amplifier::OpAmp(op_amp),
         };

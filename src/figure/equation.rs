@@ -63,7 +63,8 @@ impl Sheet<'_> {
         self.resistor("compensator.divider.upper", "Rupper", [middle, AXIS], Way::Right);
         self.pen.line(&[[middle + HALF, AXIS], [tap, AXIS]]);
         self.pen.dot([tap, AXIS]);
-        let centre = [tap, AXIS + 8.0 + HALF];
+        // Below the upper resistor's name, beside which its own words stand.
+        let centre = [tap, AXIS + 20.0 + HALF];
         self.pen.line(&[[tap, AXIS], [tap, centre[1] - HALF]]);
         self.resistor("compensator.divider.lower", "Rlower", centre, Way::Down);
         self.pen.line(&[[tap, centre[1] + HALF], [tap, centre[1] + HALF + 3.0]]);
@@ -84,7 +85,7 @@ impl Sheet<'_> {
             frame = frame.union(self.label(&name, [centre[0], frame.bottom + 1.0], (Align::Middle, Align::Start)));
         } else {
             let words = Label::new(vec![Line::quiet(designator), Line::value(&text)]);
-            frame = frame.union(self.label(&words, [frame.left - 3.0, centre[1] + 9.0], (Align::End, Align::Middle)));
+            frame = frame.union(self.label(&words, [frame.left - 3.0, centre[1]], (Align::End, Align::Middle)));
         }
         let word = if designator == "Rupper" { "Upper divider resistor" } else { "Lower divider resistor" };
         self.place(format!("{word} {text}"), frame, &[path], start);
@@ -167,7 +168,7 @@ impl Sheet<'_> {
         self.pen.circle([x, AXIS], RING);
         self.claim(Frame::new(x - RING, AXIS - RING, x + RING, AXIS + RING));
         let start = self.pen.marks.len();
-        let end = AXIS + BLOCK + 18.0;
+        let end = AXIS + BLOCK + 25.0;
         self.pen.line(&[[x, AXIS + RING], [x, end - 2.2]]);
         self.pen.terminal([x, end]);
         let text = self.numbers.text("compensator.reference");

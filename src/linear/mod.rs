@@ -12,6 +12,7 @@
 //! | `zeros` | zeros of one input to one output |
 //! | `zpk` | zeros, poles and gain |
 //! | `cascade` | zeros, poles and gain back to state space, as a scaled cascade |
+//! | `answer` | gain and phase with their slopes, of anything that answers at a frequency |
 //! | `response` | gain and unwrapped phase as the sum of the factors' phases, with an exact delay |
 //! | `discrete` | factors in z of a difference equation, at the frequencies of its samples |
 //! | `kernel` | logarithm and angle of four numbers at once |
@@ -29,6 +30,7 @@
 //! | `settling` | extreme and last exit of a band along such a response |
 //! | `delay` | a delay as a rational all-pass, for poles and time responses |
 
+mod answer;
 mod cascade;
 mod delay;
 mod dense;
@@ -55,6 +57,7 @@ mod time;
 mod zeros;
 mod zpk;
 
+pub use answer::{FrequencyResponse, LogPoint};
 pub use delay::{pade_delay, pade_phase_error_deg};
 pub use discrete::DiscreteFactors;
 pub use eigen::eigenvalues;
@@ -64,7 +67,7 @@ pub use interconnect::{Port, Wire};
 pub use margins::{Crossover, Margins, PhaseCrossover, margins};
 pub use modes::{Modes, StepMetrics, settle};
 pub use resolvent::{Bench, Resolvent};
-pub use response::{FactorKind, FactorPhase, FactoredResponse, FrequencyResponse, LogPoint};
+pub use response::{FactorKind, FactorPhase, FactoredResponse};
 pub(crate) use root::bracketed_root;
 pub use sampled::SampledResponse;
 pub use sampled_loop::{Drive, SampleTiming, SampledLoop};
