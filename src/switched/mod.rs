@@ -13,9 +13,11 @@
 mod build;
 mod progress;
 mod system;
+mod transient;
 #[cfg(test)]
 mod tests;
 
 pub use build::{Driven, Joined};
 pub use progress::{Cancel, Progress};
+pub use transient::{Stopped, Trace, Waveforms};
 pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};

@@ -1,0 +1,21 @@
+//! The closed loop in time, period by period.
+
+mod advance;
+mod drive;
+mod flow;
+mod limiters;
+mod machine;
+mod mode;
+mod plant;
+mod run;
+mod samples;
+mod waveforms;
+
+pub use drive::Signal;
+pub use limiters::Amplifiers;
+pub use machine::Stopped;
+pub use run::{Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, run};
+pub use waveforms::{Trace, Waveforms};
+
+#[cfg(test)]
+mod tests;
