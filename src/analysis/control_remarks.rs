@@ -162,7 +162,8 @@ fn control_voltage(design: &CheckedDesign, law: &ControlLaw, cases: &[Case<'_>])
     let needed = |case: &&Case<'_>| case.control.control_voltage;
     let Some(most) = cases.iter().max_by(|a, b| needed(a).total_cmp(&needed(b))) else { return findings };
     let volts = |v| print_digits(v, Unit::Volt, 4);
-    let amperes = |case: &Case<'_>| print_digits(case.point.switched_current.peak, Unit::Ampere, 4);
+    let amperes =
+        |case: &Case<'_>| print_digits(case.point.sense_ratio * case.point.switched_current.peak, Unit::Ampere, 4);
     if let Some(clamp) = law.clamp.filter(|clamp| needed(&most) > *clamp) {
         let message = format!(
             "The clamp, {}, is below the control voltage of {} that a peak current of {} needs at {}: the output falls there.",

@@ -60,15 +60,14 @@ pub(super) fn highest_resonance<'a>(
         // Current mode leaves no resonance of inductor and output capacitor.
         return None;
     }
-    let resonance = |condition: &Condition| {
-        (design.stage.topology().resonance_hz)(&design.stage.textbook(&condition.of_stage(&design.stage)))
-    };
+    let form = design.stage.topology().landmark("lc-resonance")?;
+    let resonance = |condition: &Condition| (form.hz)(&design.stage.textbook(&condition.of_stage(&design.stage)));
     // In discontinuous conduction there is no resonance.
     let resonates = |c: &&ConditionResult| c.outcome.as_ref().map_or(true, resonates);
     conditions
         .iter()
         .filter(resonates)
-        .map(|c| (resonance(&c.condition), &c.condition))
+        .filter_map(|c| Some((resonance(&c.condition)?, &c.condition)))
         .max_by(|a, b| a.0.total_cmp(&b.0))
 }
 

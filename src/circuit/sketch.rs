@@ -42,6 +42,8 @@ pub enum Shows {
         /// Path of the value of one.
         each: String,
     },
+    /// A turns ratio, second to first: "1 : 0.25".
+    Turns(String),
     /// One entry over another.
     Ratio {
         /// Path of the entry above the line.
@@ -99,6 +101,13 @@ impl Drawn {
         self.also(paths)
     }
 
+    /// A turns ratio written below it.
+    #[must_use]
+    pub fn turns(mut self, path: &str) -> Self {
+        self.quiet.push(Shows::Turns(path.to_owned()));
+        self.also(&[path])
+    }
+
     /// A number written below it, from the entry at this path.
     #[must_use]
     pub fn quiet(mut self, path: &str) -> Self {
@@ -145,13 +154,20 @@ pub struct Placed {
 pub struct Sketch {
     /// The parts.
     pub parts: Vec<Placed>,
+    /// Returns of isolated circuits: nodes that stand on the ground rail without being the ground.
+    pub lows: Vec<Node>,
 }
 
 impl Sketch {
     /// A part where its nodes put it: down where it touches the ground, along the rail where it does not.
     pub fn part(&mut self, from: Node, to: Node, drawn: Drawn) {
-        let grounded = from.is_ground() || to.is_ground();
+        let grounded = self.is_low(from) || self.is_low(to);
         self.place(from, to, if grounded { Stand::Down } else { Stand::Along }, drawn);
+    }
+
+    /// Whether a node stands on the ground rail: the ground, or the return of an isolated circuit.
+    pub fn is_low(&self, node: Node) -> bool {
+        node.is_ground() || self.lows.contains(&node)
     }
 
     /// A part downward, also where only the next one reaches the ground.

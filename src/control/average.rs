@@ -10,8 +10,8 @@ use super::law::{CONTROL, Controlled};
 use super::modulator::Ramp;
 use super::sense::clamp_too_low;
 use crate::compensator::{Amplifier, Anchor, Compensator, Kind, OpAmp, Parts, Transconductance};
-use crate::converter::AveragedModel;
 use crate::converter::signals::{DUTY, INPUT_VOLTAGE, LOAD_CURRENT, SWITCHED_CURRENT};
+use crate::converter::{AveragedModel, OperatingPoint};
 use crate::finding::Finding;
 use crate::linear::{
     Complex, FactoredResponse, FrequencyResponse, LinearError, Port, StateSpace, Wire, Zpk, pade_delay,
@@ -29,7 +29,8 @@ const STRAIGHT: f64 = 1.0;
 /// Average current mode with usable values.
 #[derive(Clone, Debug, PartialEq)]
 pub struct AverageCurrent {
-    /// Sensed volts per ampere of switched current [V/A].
+    /// Sensed volts per ampere of the switch's current while it conducts, or of the switched one where it was
+    /// [`referred`](Self::referred) to that [V/A].
     pub ohms: f64,
     /// Time constant of the sense filter [s]; 0 for none.
     pub filter_s: f64,
@@ -94,6 +95,11 @@ impl AverageCurrent {
             reference: 0.0,
         };
         AverageCurrent { ohms: get("control.sense.gain"), filter_s: get("control.sense.filter"), inner, ramp }
+    }
+
+    /// The same as it acts on the switched current at an operating point: the switch carries so many times that one.
+    pub(super) fn referred(&self, point: &OperatingPoint) -> Self {
+        AverageCurrent { ohms: self.ohms * point.sense_ratio, ..self.clone() }
     }
 
     /// Problems between entries.

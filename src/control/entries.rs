@@ -13,8 +13,8 @@ const OUTPUT_VOLTAGE: Bounds = Bounds::Between(-1000.0, 1000.0);
 pub static ENTRIES: &[Entry] = &[
     Entry::new("control.ramp.amplitude", "Ramp, peak to peak", Unit::Volt, Bounds::Positive, 1.2, "Height of the ramp the control voltage is compared with; in average current mode the inner amplifier's output is. With line feed-forward, its height at the nominal input.").spread(0.1),
     Entry::new("control.ramp.valley", "Ramp, lowest point", Unit::Volt, Bounds::Finite, 0.0, "Voltage at which the duty ratio is zero."),
-    Entry::new("control.sense.gain", "Sense gain, V/A", Unit::Ohm, Bounds::Positive, 0.1, "Volts at the comparator per ampere of switched current: shunt times amplifier.").spread(0.05),
-    Entry::new("control.sense.transconductance", "Stage transconductance", Unit::Siemens, Bounds::Positive, 10.0, "Amperes of switched current per volt of control voltage, as data sheets give it for the whole stage, in A/V.").spread(0.2),
+    Entry::new("control.sense.gain", "Sense gain, V/A", Unit::Ohm, Bounds::Positive, 0.1, "Volts at the comparator per ampere of the controlled switch's current: shunt times amplifier. Behind a transformer that is the primary side's current.").spread(0.05),
+    Entry::new("control.sense.transconductance", "Stage transconductance", Unit::Siemens, Bounds::Positive, 10.0, "Amperes of the controlled switch's current per volt of control voltage, as data sheets give it for the whole stage, in A/V.").spread(0.2),
     Entry::new("control.sense.filter", "Sense filter", Unit::Second, Bounds::NonNegative, 0.0, "Time constant R·C of the filter between sense and comparator; 0 for none."),
     Entry::new("control.sense.divider", "Divider to the comparator", Unit::One, Bounds::PositiveUpTo(1.0), 1.0, "Comparator's volts per volt of control voltage; 1 for none. It turns the ramp at the comparator into volts of control."),
     Entry::new("control.sense.offset", "Control voltage of no current", Unit::Volt, Bounds::Between(-1000.0, 1000.0), 0.0, "Offset between control voltage and comparator, ahead of the divider."),

@@ -103,7 +103,10 @@ impl ControlLaw {
     pub fn settled(&self, nominal: &OperatingPoint, period: f64) -> Self {
         let mut law = self.clone();
         if let Mode::Current(edge, sense) = &mut law.mode {
-            sense.settle(*edge, nominal, period, self.delay_s);
+            let mut referred = sense.referred(nominal);
+            referred.settle(*edge, nominal, period, self.delay_s);
+            // A slope at the comparator is the same for either current.
+            sense.slope = referred.slope;
         }
         law
     }
@@ -150,11 +153,12 @@ impl ControlLaw {
                 Ok(plain(law.close(&averaged.stage)?, ramp.voltage(point.duty, point.input_voltage), None))
             }
             Mode::Current(edge, sense) => {
+                let sense = sense.referred(point);
                 let stage = sense.controlled(*edge, averaged, period, self.delay_s)?;
                 let volts = sense.control_voltage(*edge, point, period, self.delay_s);
                 Ok(plain(stage, volts, sense.sampling(*edge, point, period, self.delay_s)))
             }
-            Mode::Average(average) => average.controlled(averaged, period, self.delay_s),
+            Mode::Average(average) => average.referred(point).controlled(averaged, period, self.delay_s),
         }
     }
 
@@ -162,7 +166,7 @@ impl ControlLaw {
     pub fn swing(&self, point: &OperatingPoint, period: f64) -> f64 {
         match &self.mode {
             Mode::Voltage(ramp) => ramp.at(point.input_voltage),
-            Mode::Current(edge, sense) => sense.swing(*edge, point, period),
+            Mode::Current(edge, sense) => sense.referred(point).swing(*edge, point, period),
             Mode::Average(average) => average.ramp.at(point.input_voltage),
         }
     }

@@ -25,7 +25,8 @@ pub enum Slope {
 /// The current sense with usable values.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct CurrentSense {
-    /// Control voltage per ampere of switched current [V/A].
+    /// Control voltage per ampere of the switch's current, or of the switched one where it was [`referred`](Self::referred) to that
+    /// [V/A].
     pub ohms: f64,
     /// Time constant of the sense filter [s]; 0 for none.
     pub filter_s: f64,
@@ -66,7 +67,13 @@ impl CurrentSense {
         }
     }
 
-    /// Comparator's volts per ampere of switched current [V/A].
+    /// The same sense as it acts on the switched current at an operating point: the switch carries so many times that one.
+    #[must_use]
+    pub(super) fn referred(&self, point: &OperatingPoint) -> Self {
+        CurrentSense { ohms: self.ohms * point.sense_ratio, ..*self }
+    }
+
+    /// Comparator's volts per ampere, as of `ohms` [V/A].
     pub fn comparator_ohms(&self) -> f64 {
         self.ohms * self.divider
     }

@@ -6,7 +6,7 @@
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976. *Valid* below about a third of the switching frequency.
 
 use super::bank::{BankInductance, bank_inductance};
-use super::landmark::{Landmark, RestingTextbook, Textbook, landmarks, resting_landmarks, right_half_plane_zero_hz};
+use super::landmark::{Landmark, Textbook, landmarks, resting_landmarks, right_half_plane_zero_hz};
 use super::operating_point::{Conduction, NoOperatingPoint, OperatingPoint, Solution};
 use super::signals::{INPUTS, OUTPUTS};
 use super::stage::{OutOfReach, Stage, StageCondition, circuit_finding, with_duty};
@@ -99,7 +99,7 @@ impl Stage {
     /// Rows of the netlist's outputs that an averaged model answers with.
     pub(super) fn averaged_rows(&self) -> Vec<usize> {
         std::iter::once(self.rows.output_voltage)
-            .chain(self.rows.inductor_currents.iter().take(1).copied())
+            .chain(self.rows.inductors.iter().take(1).map(|winding| winding.row))
             .chain([self.rows.input_current, self.rows.load_voltage, self.rows.bank_voltage])
             .collect()
     }
@@ -117,26 +117,26 @@ impl Stage {
     }
 
     /// The lossless quantities textbook forms of discontinuous conduction are written in.
-    fn resting_textbook(&self, condition: &StageCondition) -> RestingTextbook {
-        let load_resistance = condition.output_voltage / condition.load_current;
-        let conversion = condition.output_voltage / condition.input_voltage;
-        let k = 2.0 * self.inductance * self.switching_frequency / load_resistance;
-        RestingTextbook {
-            duty: (self.topology().resting.duty)(conversion, k),
-            conversion,
-            capacitance: self.output_capacitance(),
-            load_resistance,
-            switching_frequency: self.switching_frequency,
-        }
+    fn resting_textbook(&self, condition: &StageCondition) -> Textbook {
+        let continuous = self.textbook(condition);
+        let forms = &self.topology().resting;
+        let k = 2.0 * (forms.inductance)(&continuous) * self.switching_frequency / continuous.load_resistance;
+        Textbook { duty: (forms.duty)(continuous.conversion, k), ..continuous }
     }
 
     /// The lossless quantities textbook formulas are written in.
     pub fn textbook(&self, condition: &StageCondition) -> Textbook {
         Textbook {
-            duty: (self.topology().ideal_duty)(condition.input_voltage, condition.output_voltage),
+            duty: (self.topology().ideal_duty)(&self.voltages(condition)),
+            conversion: condition.output_voltage / condition.input_voltage,
+            ratio: self.ratio,
             inductance: self.inductance,
+            second_inductance: self.second_inductance,
+            coupling: self.coupling,
+            coupling_capacitance: self.coupling_capacitance,
             capacitance: self.output_capacitance(),
             load_resistance: condition.output_voltage / condition.load_current,
+            switching_frequency: self.switching_frequency,
         }
     }
 

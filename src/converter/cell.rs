@@ -20,17 +20,25 @@ pub(super) struct SwitchedCell {
     pub(super) v: DVector<f64>,
     /// States without their switched current.
     pub(super) rest: DMatrix<f64>,
+    /// Current of the controlled switch per ampere of switched current, while it conducts: the turns ratio of a stage with a
+    /// transformer, 1 without.
+    pub(super) sense: f64,
 }
 
 /// A projector of another rank than expected shows as a remainder of the order of one.
 const RANK_TOLERANCE: f64 = 1e-9;
 
 impl SwitchedCell {
-    /// Reads the cell off the equations with both open, over the same states as `off`.
+    /// Reads the cell off the equations with both open, over the same states as those of the other intervals, which come with
+    /// the row of the switch's and of the rectifier's current.
     ///
     /// # Errors
     /// When the rectifier's opening does not stop exactly one current.
-    pub(super) fn new(idle: StateEquations, off: &StateEquations, rectifier_row: usize) -> Result<Self, CircuitError> {
+    pub(super) fn new(
+        idle: StateEquations,
+        (on, switch_row): (&StateEquations, usize),
+        (off, rectifier_row): (&StateEquations, usize),
+    ) -> Result<Self, CircuitError> {
         let unfit = || CircuitError::Floating { names: vec![format!("the current that stops with the {RECTIFIER}")] };
         let n = off.a.nrows();
         let rest = idle.projector.clone().ok_or_else(unfit)?;
@@ -43,6 +51,8 @@ impl SwitchedCell {
         if (&v * &c - &stopped).amax() > RANK_TOLERANCE * scale.abs() || flow.abs() <= RANK_TOLERANCE {
             return Err(unfit());
         }
-        Ok(SwitchedCell { idle, c: c * flow, v: v / flow, rest })
+        let v = v / flow;
+        let sense = on.c.row(switch_row).dot(&v.transpose());
+        Ok(SwitchedCell { idle, c: c * flow, v, rest, sense })
     }
 }

@@ -7,54 +7,21 @@ use super::entries::{BRANCHES, branch_count};
 use super::filters::{
     Canvas, Damping, FilterParts, OutputFilter, draw_input_network, draw_output_filter, input_filter, output_filter,
 };
-use super::landmark::{RestingForms, Textbook};
+use super::rows::{Rows, SwitchRow, WindingRow};
 use super::stage::{LoadKind, Rectifier};
+use super::topology_entries::{
+    COUPLING, COUPLING_CAPACITOR, COUPLING_CAPACITOR_ESR, INDUCTORS, RATIO, SECOND_INDUCTOR, SECOND_WINDING, coupled,
+};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
-
-/// A power-stage topology. One file reads like its schematic; textbook formulas serve as landmarks only.
-#[derive(Debug)]
-pub struct Topology {
-    /// Word in files and on the command line.
-    pub key: &'static str,
-    /// Name shown.
-    pub name: &'static str,
-    /// What it does, in one line.
-    pub line: &'static str,
-    /// Where its output can stand against its input.
-    pub reach: Reach,
-    /// Draws the stage's own parts.
-    pub draw: fn(&mut StageDrawing),
-    /// Lossless duty ratio in continuous conduction from input and output voltage [V].
-    pub ideal_duty: fn(f64, f64) -> f64,
-    /// Resonance of inductor and output capacitor [Hz].
-    pub resonance_hz: fn(&Textbook) -> f64,
-    /// The formula of the resonance, for people.
-    pub resonance_formula: &'static str,
-    /// Right-half-plane zero [Hz], where there is one.
-    pub right_half_plane_zero_hz: fn(&Textbook) -> Option<f64>,
-    /// The formula of the right-half-plane zero, for people.
-    pub right_half_plane_zero_formula: &'static str,
-    /// What holds in its place in discontinuous conduction.
-    pub resting: RestingForms,
-}
-
-/// Where an output can stand against the input.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Reach {
-    /// Below the input voltage.
-    BelowInput,
-    /// Above the input voltage.
-    AboveInput,
-    /// Anywhere.
-    Any,
-}
 
 /// What the drawing needs to know of the choices made.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) struct Options {
     /// Whether the rectifier is a diode, else a switch.
     pub(super) diode: bool,
+    /// Whether two inductors share a core.
+    pub(super) coupled: bool,
     pub(super) input_filter: Option<Damping>,
     pub(super) input_capacitor: bool,
     pub(super) output_filter: Option<OutputFilter>,
@@ -69,6 +36,7 @@ impl Options {
     pub(super) fn chosen(choices: &Choices) -> Self {
         Options {
             diode: Rectifier::chosen(choices) == Rectifier::Diode,
+            coupled: coupled(choices),
             input_filter: input_filter(choices),
             input_capacitor: choices.is("stage.input-filter", "fitted")
                 || choices.is("stage.input-capacitor", "fitted"),
@@ -96,40 +64,30 @@ pub struct StageDrawing {
     bank: Option<(Node, Node)>,
     filters: FilterParts,
     input_current_part: PartId,
-    pub(super) inductors: Vec<PartId>,
-    switch: Option<PartId>,
-    rectifier: Option<PartId>,
-    /// Ends of the controlled switch and of the rectifier.
-    switch_ends: Option<(Node, Node)>,
-    rectifier_ends: Option<(Node, Node)>,
+    windings: Vec<Winding>,
+    switches: Vec<Switched>,
     branches: Vec<PartId>,
     drop: InputId,
 }
 
-/// Rows of the outputs every stage answers with.
-#[derive(Clone, Debug)]
-pub(super) struct Rows {
-    /// The regulated voltage, where divider and control sense it.
-    pub(super) output_voltage: usize,
-    /// The voltage at the load's terminals.
-    pub(super) load_voltage: usize,
-    /// The voltage of the bank, ahead of a second stage.
-    pub(super) bank_voltage: usize,
-    pub(super) input_current: usize,
-    pub(super) switch_current: usize,
-    pub(super) rectifier_current: usize,
-    /// Voltage against ground of the controlled switch's end that is neither ground nor supply.
-    pub(super) switch_node: usize,
-    /// Voltage across the controlled switch.
-    pub(super) switch_voltage: usize,
-    /// Voltage across the rectifier, cathode against anode.
-    pub(super) rectifier_voltage: usize,
-    pub(super) inductor_currents: Vec<usize>,
-    pub(super) branch_currents: Vec<usize>,
-    /// Name and current of the filters' inductors, which carry no switched current.
-    pub(super) filter_inductors: Vec<(&'static str, usize)>,
-    /// Name, slot and current of the resistances of input network and output filter.
-    pub(super) filter_losses: Vec<(&'static str, usize, usize)>,
+/// An inductor drawn.
+#[derive(Clone, Copy, Debug)]
+struct Winding {
+    name: &'static str,
+    loss: &'static str,
+    part: PartId,
+    ohms: Slot,
+}
+
+/// A switch or rectifier drawn.
+#[derive(Clone, Copy, Debug)]
+struct Switched {
+    name: &'static str,
+    part: PartId,
+    ohms: Slot,
+    /// Of a rectifier, the cathode first.
+    ends: (Node, Node),
+    diode: bool,
 }
 
 /// Columns of the inputs every stage has.
@@ -165,11 +123,8 @@ impl StageDrawing {
             bank: None,
             filters,
             input_current_part,
-            inductors: Vec::new(),
-            switch: None,
-            rectifier: None,
-            switch_ends: None,
-            rectifier_ends: None,
+            windings: Vec::new(),
+            switches: Vec::new(),
             branches: Vec::new(),
             drop,
         }
@@ -190,12 +145,30 @@ impl StageDrawing {
         self.netlist.node(name)
     }
 
+    /// The return of an output that is isolated from the input. Nothing flows between the two, so the netlist may tie them
+    /// together; the schematic keeps them apart.
+    pub fn isolated_return(&mut self) -> Node {
+        let node = self.netlist.node("isolated return");
+        // No entry has this name, so its value is zero.
+        let wire = self.netlist.slot("tie");
+        let ground = self.netlist.ground();
+        self.netlist.resistor("tie", node, ground, wire);
+        self.sketch.lows.push(node);
+        node
+    }
+
     /// The controlled switch; it conducts for the duty ratio's share of the period.
     pub fn switch(&mut self, from: Node, to: Node) {
+        self.switch_called((SWITCH, "Switch", "S"), from, to);
+    }
+
+    /// A switch by its name in the netlist, which the topology's [`SwitchSets`](super::SwitchSets) use, its name for people and its
+    /// designator.
+    pub fn switch_called(&mut self, (name, shown, designator): (&'static str, &str, &str), from: Node, to: Node) {
         let ohms = self.netlist.slot("stage.switch.resistance");
-        self.switch = Some(self.netlist.switch(SWITCH, from, to, ohms));
-        self.switch_ends = Some((from, to));
-        let drawn = Drawn::new(Symbol::Switch, "Switch", "S")
+        let part = self.netlist.switch(name, from, to, ohms);
+        self.switches.push(Switched { name, part, ohms, ends: (from, to), diode: false });
+        let drawn = Drawn::new(Symbol::Switch, shown, designator)
             .value("stage.switch.resistance")
             .quiet("stage.switching-frequency");
         // Current flows from `from` to `to`, so the body of a transistor points the other way.
@@ -204,33 +177,100 @@ impl StageDrawing {
 
     /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
     pub fn rectifier(&mut self, anode: Node, cathode: Node) {
-        let part = if self.options.diode {
+        self.rectifier_called(RECTIFIER, anode, cathode);
+    }
+
+    /// A rectifier by its name in the netlist.
+    pub fn rectifier_called(&mut self, name: &'static str, anode: Node, cathode: Node) {
+        let count = self.switches.iter().filter(|switch| switch.name.contains(RECTIFIER)).count();
+        let numbered = |word: &str| if count == 0 { word.to_owned() } else { format!("{word}{}", count + 1) };
+        let diode = self.options.diode;
+        let (part, ohms) = if diode {
             let ohms = self.netlist.slot("stage.diode.resistance");
-            let drawn =
-                Drawn::new(Symbol::Diode, "Diode", "D").value("stage.diode.drop").quiet("stage.diode.resistance");
+            let drawn = Drawn::new(Symbol::Diode, "Diode", numbered("D"))
+                .value("stage.diode.drop")
+                .quiet("stage.diode.resistance");
             self.sketch.part(anode, cathode, drawn);
-            self.netlist.diode(RECTIFIER, anode, cathode, ohms, self.drop)
+            (self.netlist.diode(name, anode, cathode, ohms, self.drop), ohms)
         } else {
             let ohms = self.netlist.slot("stage.synchronous.resistance");
-            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", "SR").value("stage.synchronous.resistance");
+            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", numbered("SR"))
+                .value("stage.synchronous.resistance");
             self.sketch.part(anode, cathode, drawn);
-            self.netlist.switch(RECTIFIER, anode, cathode, ohms)
+            (self.netlist.switch(name, anode, cathode, ohms), ohms)
         };
-        self.rectifier = Some(part);
-        self.rectifier_ends = Some((anode, cathode));
+        self.switches.push(Switched { name, part, ohms, ends: (cathode, anode), diode });
     }
 
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
     pub fn inductor(&mut self, from: Node, to: Node) {
-        let inner = self.netlist.node("winding");
-        let (henries, ohms) =
-            (self.netlist.slot("stage.inductor.inductance"), self.netlist.slot("stage.inductor.resistance"));
-        let part = self.netlist.inductor("inductor", from, inner, henries);
-        self.inductors.push(part);
-        self.netlist.resistor("winding", inner, to, ohms);
-        let drawn = Drawn::new(Symbol::Inductor, "Inductor", "L")
-            .value("stage.inductor.inductance")
-            .quiet("stage.inductor.resistance");
+        self.wind(("inductor", "inductor winding"), (from, to), (INDUCTANCE, WINDING));
+        self.sketch.part(from, to, drawn_inductor(("Inductor", "L"), (INDUCTANCE, WINDING)));
+    }
+
+    /// The first of two inductors, likewise.
+    pub fn first_inductor(&mut self, from: Node, to: Node) {
+        self.wind(("inductor L1", "winding L1"), (from, to), (INDUCTANCE, WINDING));
+        let mut drawn = drawn_inductor(("Inductor L1", "L1"), (INDUCTANCE, WINDING)).also(&[INDUCTORS.path]);
+        if self.options.coupled {
+            drawn = drawn.quiet(COUPLING.path);
+        }
+        self.sketch.part(from, to, drawn);
+    }
+
+    /// The second of two inductors, coupled with the first where that is chosen, the dots at the nodes that are listed first.
+    pub fn second_inductor(&mut self, from: Node, to: Node) {
+        let paths = (SECOND_INDUCTOR.path, SECOND_WINDING.path);
+        let second = self.wind(("inductor L2", "winding L2"), (from, to), paths);
+        if let Some(first) = self.windings.first().filter(|_| self.options.coupled) {
+            let factor = self.netlist.slot(COUPLING.path);
+            self.netlist.couple(first.part, second, factor);
+        }
+        self.sketch.part(from, to, drawn_inductor(("Inductor L2", "L2"), paths));
+    }
+
+    /// Inductor and winding resistance in series, in the netlist alone.
+    fn wind(
+        &mut self,
+        (name, loss): (&'static str, &'static str),
+        (from, to): (Node, Node),
+        (inductance, resistance): (&str, &str),
+    ) -> PartId {
+        let inner = self.netlist.node(loss);
+        let (henries, ohms) = (self.netlist.slot(inductance), self.netlist.slot(resistance));
+        let part = self.netlist.inductor(name, from, inner, henries);
+        self.netlist.resistor(loss, inner, to, ohms);
+        self.windings.push(Winding { name, loss, part, ohms });
+        part
+    }
+
+    /// An ideal transformer of the turns ratio entered; both windings list their dotted ends first.
+    pub fn transformer(&mut self, first: (Node, Node), second: (Node, Node)) {
+        let ratio = self.netlist.slot(RATIO.path);
+        self.netlist.transformer("transformer", first, second, ratio);
+        let drawn =
+            Drawn::new(Symbol::Inductor, "Transformer", "T").shows(Shows::Turns(RATIO.path.to_owned()), &[RATIO.path]);
+        self.sketch.transformer(first, second, drawn);
+    }
+
+    /// A transformer whose magnetising inductance, at the first winding, is the stage's inductor.
+    pub fn storing_transformer(&mut self, first: (Node, Node), second: (Node, Node)) {
+        self.wind(("inductor", "inductor winding"), first, (INDUCTANCE, WINDING));
+        let ratio = self.netlist.slot(RATIO.path);
+        self.netlist.transformer("transformer", first, second, ratio);
+        let drawn = drawn_inductor(("Transformer", "T"), (INDUCTANCE, WINDING)).turns(RATIO.path);
+        self.sketch.transformer(first, second, drawn);
+    }
+
+    /// The capacitor that joins input side and output side, with its ESR.
+    pub fn coupling_capacitor(&mut self, from: Node, to: Node) {
+        let inner = self.netlist.node("coupling capacitor");
+        let farads = self.netlist.slot(COUPLING_CAPACITOR.path);
+        self.netlist.capacitor("coupling capacitor", from, inner, farads);
+        self.filters.resistor(&mut self.netlist, "coupling capacitor ESR", (inner, to), COUPLING_CAPACITOR_ESR.path);
+        let drawn = Drawn::new(Symbol::Capacitor, "Coupling capacitor", "Cc")
+            .value(COUPLING_CAPACITOR.path)
+            .quiet(COUPLING_CAPACITOR_ESR.path);
         self.sketch.part(from, to, drawn);
     }
 
@@ -264,26 +304,35 @@ impl StageDrawing {
     /// Asks for the outputs every stage answers with.
     pub(super) fn finish(mut self) -> Option<(Netlist, Rows)> {
         let (sensed, load, bank) = (self.sensed?, self.load?, self.bank?);
-        let (switch, rectifier) = (self.switch?, self.rectifier?);
-        let ((from, to), (anode, cathode)) = (self.switch_ends?, self.rectifier_ends?);
         let n = &mut self.netlist;
-        let switch_node = if from.is_ground() || from == self.supply { to } else { from };
-        let ground = n.ground();
+        let (ground, supply) = (n.ground(), self.supply);
         let row = OutputId::index;
         let rows = Rows {
             output_voltage: row(n.voltage_output("output voltage", sensed.0, sensed.1)),
             load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
             bank_voltage: row(n.voltage_output("bank voltage", bank.0, bank.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
-            switch_current: row(n.current_output("switch current", switch)),
-            rectifier_current: row(n.current_output("rectifier current", rectifier)),
-            switch_node: row(n.voltage_output("switch-node voltage", switch_node, ground)),
-            switch_voltage: row(n.voltage_output("switch voltage", from, to)),
-            rectifier_voltage: row(n.voltage_output("rectifier voltage", cathode, anode)),
-            inductor_currents: self
-                .inductors
+            switches: self
+                .switches
                 .iter()
-                .map(|part| row(n.current_output("inductor current", *part)))
+                .map(|switch| SwitchRow {
+                    name: switch.name,
+                    row: row(n.current_output(switch.name, switch.part)),
+                    voltage: row(n.voltage_output(switch.name, switch.ends.0, switch.ends.1)),
+                    node: row(n.voltage_output(switch.name, free_end(switch.ends, supply), ground)),
+                    ohms: switch.ohms.index(),
+                    diode: switch.diode,
+                })
+                .collect(),
+            inductors: self
+                .windings
+                .iter()
+                .map(|winding| WindingRow {
+                    name: winding.name,
+                    loss: winding.loss,
+                    row: row(n.current_output(winding.name, winding.part)),
+                    ohms: winding.ohms.index(),
+                })
                 .collect(),
             branch_currents: self.branches.iter().map(|part| row(n.current_output("branch current", *part))).collect(),
             filter_inductors: self
@@ -310,6 +359,20 @@ pub fn sketch(choices: &Choices) -> Option<Sketch> {
     let mut drawing = StageDrawing::new(Options::chosen(choices));
     (topology.draw)(&mut drawing);
     Some(drawing.sketch)
+}
+
+/// The end of a switch that is neither ground nor supply.
+fn free_end((from, to): (Node, Node), supply: Node) -> Node {
+    if from.is_ground() || from == supply { to } else { from }
+}
+
+/// Path of the inductance that every stage has.
+const INDUCTANCE: &str = "stage.inductor.inductance";
+/// Path of its winding's resistance.
+const WINDING: &str = "stage.inductor.resistance";
+
+fn drawn_inductor((name, designator): (&str, &str), (inductance, resistance): (&str, &str)) -> Drawn {
+    Drawn::new(Symbol::Inductor, name, designator).value(inductance).quiet(resistance)
 }
 
 fn drawn_source() -> Drawn {

@@ -2,13 +2,14 @@
 
 use super::filter_entries as filters;
 use super::stage::Rectifier;
+use super::topology_entries::own_applies;
 use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 
 /// Largest number of unlike branches in an output bank.
 pub(super) const BRANCHES: usize = 4;
 
-/// Numbers of the power stage, in form order.
-pub static ENTRIES: &[Entry] = &[
+/// Numbers that every power stage has, in form order.
+pub(super) static ENTRIES: &[Entry] = &[
     Entry::new(
         "stage.input.least",
         "Input, least",
@@ -228,12 +229,12 @@ pub(super) const fn part(
     }
 }
 
-/// Choices of the power stage, in form order.
-pub static CHOICES: &[Choice] = &[
+/// Choices that every power stage has, in form order.
+pub(super) static CHOICES: &[Choice] = &[
     Choice {
         path: "stage.topology",
         name: "Topology",
-        options: super::registry::OPTIONS,
+        options: &super::registry::OPTIONS,
         default: "boost",
         help: "How switch, rectifier and inductor are joined.",
     },
@@ -314,6 +315,9 @@ pub static CHOICES: &[Choice] = &[
 
 /// Whether an entry or choice of the stage plays a part under these choices.
 pub fn applies(path: &str, choices: &Choices) -> bool {
+    if let Some(applies) = own_applies(path, choices) {
+        return applies;
+    }
     let (input_filter, output_filter) =
         (choices.is("stage.input-filter", "fitted"), choices.is("stage.output-filter", "fitted"));
     let damped = |by: &str| input_filter && choices.is("stage.input-filter.damping", by);

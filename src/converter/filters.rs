@@ -63,7 +63,13 @@ pub(super) struct FilterParts {
 }
 
 impl FilterParts {
-    fn resistor(&mut self, netlist: &mut Netlist, name: &'static str, (from, to): (Node, Node), path: &str) -> PartId {
+    pub(super) fn resistor(
+        &mut self,
+        netlist: &mut Netlist,
+        name: &'static str,
+        (from, to): (Node, Node),
+        path: &str,
+    ) -> PartId {
         let ohms = netlist.slot(path);
         let part = netlist.resistor(name, from, to, ohms);
         self.lossy.push(Lossy { name, part, ohms });

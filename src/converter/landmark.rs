@@ -1,62 +1,124 @@
 //! Landmarks: the textbook frequencies of the plant. They are shown and tested against, and feed no curve.
 
-use super::drawing::Topology;
+use super::bank::Branch;
 use super::stage::{LoadKind, Stage};
+use super::topology::Topology;
 use crate::linear::Zpk;
 use std::f64::consts::TAU;
 
 /// The lossless quantities textbook formulas are written in.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Textbook {
-    /// Lossless duty ratio.
-    pub duty: f64,
-    /// Inductance [H].
-    pub inductance: f64,
-    /// Output capacitance [F].
-    pub capacitance: f64,
-    /// Output voltage over load current [Ω], whatever the load kind.
-    pub load_resistance: f64,
-}
-
-/// The lossless quantities textbook forms of discontinuous conduction are written in.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct RestingTextbook {
-    /// Lossless duty ratio.
+    /// Lossless duty ratio, of the conduction mode at hand.
     pub duty: f64,
     /// Output voltage over input voltage, M.
     pub conversion: f64,
+    /// Turns ratio, second to first; 1 without a transformer.
+    pub ratio: f64,
+    /// Inductance [H].
+    pub inductance: f64,
+    /// Inductance of the second inductor [H]; 0 without one.
+    pub second_inductance: f64,
+    /// Coupling factor of the two inductors; 0 where they are separate.
+    pub coupling: f64,
+    /// Capacitance of the coupling capacitor [F]; 0 without one.
+    pub coupling_capacitance: f64,
     /// Output capacitance [F].
     pub capacitance: f64,
     /// Output voltage over load current [Ω], whatever the load kind.
     pub load_resistance: f64,
-    /// Switching frequency [Hz].
+    /// Switching frequency of the pulses [Hz].
     pub switching_frequency: f64,
+}
+
+impl Textbook {
+    /// Mutual inductance of the two inductors [H].
+    pub fn mutual(&self) -> f64 {
+        self.coupling * (self.inductance * self.second_inductance).sqrt()
+    }
+}
+
+/// A landmark's textbook form.
+#[derive(Clone, Copy, Debug)]
+pub struct Form {
+    /// Stable key, as of [`Landmark`].
+    pub key: &'static str,
+    /// Name for people.
+    pub name: &'static str,
+    /// The formula, for people.
+    pub formula: &'static str,
+    /// Where it is [Hz]; none where there is none at these values.
+    pub hz: fn(&Textbook) -> Option<f64>,
+    /// Paths of the entries that make it; [`BANK`] stands for the capacitance of every branch.
+    pub parts: &'static [&'static str],
+}
+
+/// In the parts of a [`Form`], the output bank.
+pub const BANK: &str = "stage.bank";
+
+const INDUCTANCE: &str = "stage.inductor.inductance";
+
+impl Form {
+    /// Resonance of inductor and output bank.
+    pub const fn resonance(formula: &'static str, hz: fn(&Textbook) -> Option<f64>) -> Self {
+        Form { key: "lc-resonance", name: "LC resonance", formula, hz, parts: &[INDUCTANCE, BANK] }
+    }
+
+    /// Right-half-plane zero of a current that the output receives only while the switch is open.
+    pub const fn right_half_plane_zero(formula: &'static str, hz: fn(&Textbook) -> Option<f64>) -> Self {
+        let parts = &[INDUCTANCE, "stage.load.nominal"];
+        Form { key: "right-half-plane-zero", name: "RHP zero", formula, hz, parts }
+    }
+
+    /// Pole of the output bank and the load, of discontinuous conduction with a resistor for its load.
+    pub const fn low_pole(formula: &'static str, hz: fn(&Textbook) -> Option<f64>) -> Self {
+        Form { key: "low-pole", name: "Low pole", formula, hz, parts: &[BANK, "stage.load.nominal"] }
+    }
+
+    /// Pole of the inductor in discontinuous conduction, near or above the switching frequency.
+    pub const fn second_pole(formula: &'static str, hz: fn(&Textbook) -> Option<f64>) -> Self {
+        let parts = &[INDUCTANCE, "stage.switching-frequency"];
+        Form { key: "second-pole", name: "Second pole", formula, hz, parts }
+    }
+
+    /// Whether it follows from the output bank, and so holds for a bank of one kind of capacitor at the load only.
+    fn of_bank(&self) -> bool {
+        self.parts.contains(&BANK)
+    }
+
+    fn mark(&self, t: &Textbook, branches: usize) -> Option<Landmark> {
+        let frequency_hz = (self.hz)(t)?;
+        let parts = self.parts.iter().flat_map(|path| match *path {
+            BANK => (1..=branches).map(|k| format!("{BANK}.{k}.capacitance")).collect(),
+            path => vec![path.to_owned()],
+        });
+        let Form { key, name, formula, .. } = *self;
+        Some(Landmark { key, name, frequency_hz, formula, derived: false, parts: parts.collect() })
+    }
 }
 
 /// A topology's textbook forms of discontinuous conduction.
 #[derive(Clone, Copy, Debug)]
 pub struct RestingForms {
-    /// Lossless duty ratio from M and K = 2·L·fs/R.
+    /// The inductance L in K = 2·L·fs/R [H].
+    pub inductance: fn(&Textbook) -> f64,
+    /// Lossless duty ratio from M and K.
     pub duty: fn(f64, f64) -> f64,
-    /// Pole of the output capacitor [Hz].
-    pub low_pole_hz: fn(&RestingTextbook) -> f64,
-    /// Its formula, for people.
-    pub low_pole_formula: &'static str,
-    /// Pole of the inductor [Hz], near or above the switching frequency.
-    pub second_pole_hz: fn(&RestingTextbook) -> f64,
-    /// Its formula, for people.
-    pub second_pole_formula: &'static str,
-    /// Right-half-plane zero [Hz], where there is one.
-    pub right_half_plane_zero_hz: Option<fn(&RestingTextbook) -> f64>,
-    /// Its formula, for people.
-    pub right_half_plane_zero_formula: &'static str,
+    /// Landmarks, in the order shown.
+    pub landmarks: &'static [Form],
+}
+
+impl RestingForms {
+    /// No textbook forms.
+    pub const NONE: Self = RestingForms { inductance: |t| t.inductance, duty: |_, _| f64::NAN, landmarks: &[] };
 }
 
 /// A frequency worth knowing.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Landmark {
     /// Stable key: "lc-resonance", "esr-zero", "right-half-plane-zero", "input-filter", "output-filter",
-    /// "half-switching"; in discontinuous conduction "low-pole" and "second-pole" in place of the resonance.
+    /// "half-switching"; in discontinuous conduction "low-pole" and "second-pole" in place of the resonance. Stages of two
+    /// inductors have a "second-resonance" and a "zero-pair" as well.
     pub key: &'static str,
     /// Name for people.
     pub name: &'static str,
@@ -78,31 +140,68 @@ const READ_OFF_LOAD: &str = "read off the poles of the derived model: the textbo
 /// The landmarks of a stage: textbook forms for a bank of one kind of capacitor at the load, else read off the plant, which is
 /// that of the stage without its input filter.
 pub(super) fn landmarks(topology: &Topology, t: &Textbook, stage: &Stage, plant: &Zpk) -> Vec<Landmark> {
-    let mut marks = Vec::with_capacity(6);
-    let mut add = |key, name, frequency_hz: f64, formula, derived| {
-        if frequency_hz.is_finite() && frequency_hz > 0.0 {
-            let parts = parts_of(key, stage.bank.len());
-            marks.push(Landmark { key, name, frequency_hz, formula, derived, parts });
-        }
-    };
-    if let ([only], None) = (stage.bank.as_slice(), &stage.second_stage) {
-        add("lc-resonance", "LC resonance", (topology.resonance_hz)(t), topology.resonance_formula, false);
-        if only.esr > 0.0 {
-            add("esr-zero", "ESR zero", 1.0 / (TAU * only.esr * only.capacitance), "1 / (2π·ESR·C)", false);
-        }
-        if let Some(f) = (topology.right_half_plane_zero_hz)(t) {
-            add("right-half-plane-zero", "RHP zero", f, topology.right_half_plane_zero_formula, false);
-        }
-    } else {
-        let pair = plant.poles.iter().filter(|p| p.im > 0.0).map(|p| p.norm()).min_by(f64::total_cmp);
-        add("lc-resonance", "LC resonance", pair.unwrap_or(f64::NAN) / TAU, READ_OFF, true);
-        let left = plant.zeros.iter().filter(|z| z.re < 0.0 && z.im >= 0.0).map(|z| z.norm()).min_by(f64::total_cmp);
-        add("esr-zero", "ESR zero", left.unwrap_or(f64::NAN) / TAU, READ_OFF, true);
-        let right = right_half_plane_zero_hz(plant).filter(|_| topology.right_half_plane_zero_hz_exists());
-        add("right-half-plane-zero", "RHP zero", right.unwrap_or(f64::NAN), READ_OFF, true);
+    let branches = stage.bank.len();
+    let simple = bank_of_one(stage).is_some();
+    let mut marks = Vec::with_capacity(8);
+    for form in topology.landmarks {
+        let instead = match form.key {
+            _ if simple || !(form.of_bank() || form.key == ZERO) => form.mark(t, branches),
+            "lc-resonance" => {
+                let pair = plant.poles.iter().filter(|p| p.im > 0.0).map(|p| p.norm()).min_by(f64::total_cmp);
+                read_off(form.key, form.name, pair.map(|norm| norm / TAU), READ_OFF, branches)
+            }
+            ZERO => read_off(form.key, form.name, right_half_plane_zero_hz(plant), READ_OFF, branches),
+            _ => None,
+        };
+        marks.extend(instead);
     }
+    // Behind the resonance, ahead of what lies in the right half-plane.
+    let at = usize::from(topology.landmarks.first().is_some_and(|form| form.key == "lc-resonance")).min(marks.len());
+    marks.splice(at..at, esr_zero(stage, plant));
     marks.extend(filters_and_switching(stage));
+    marks.retain(sound);
     marks
+}
+
+const ZERO: &str = "right-half-plane-zero";
+
+/// The only branch of a bank right at the load.
+fn bank_of_one(stage: &Stage) -> Option<&Branch> {
+    match (stage.bank.as_slice(), &stage.second_stage) {
+        ([only], None) => Some(only),
+        _ => None,
+    }
+}
+
+fn sound(mark: &Landmark) -> bool {
+    mark.frequency_hz.is_finite() && mark.frequency_hz > 0.0
+}
+
+/// A landmark read off the plant's poles and zeros.
+fn read_off(
+    key: &'static str,
+    name: &'static str,
+    frequency_hz: Option<f64>,
+    formula: &'static str,
+    branches: usize,
+) -> Option<Landmark> {
+    Some(Landmark { key, name, frequency_hz: frequency_hz?, formula, derived: true, parts: parts_of(key, branches) })
+}
+
+fn esr_zero(stage: &Stage, plant: &Zpk) -> Option<Landmark> {
+    let (key, name, branches) = ("esr-zero", "ESR zero", stage.bank.len());
+    let Some(only) = bank_of_one(stage) else {
+        let left = plant.zeros.iter().filter(|z| z.re < 0.0 && z.im >= 0.0).map(|z| z.norm()).min_by(f64::total_cmp);
+        return read_off(key, name, left.map(|norm| norm / TAU), READ_OFF, branches);
+    };
+    (only.esr > 0.0).then(|| Landmark {
+        key,
+        name,
+        frequency_hz: 1.0 / (TAU * only.esr * only.capacitance),
+        formula: "1 / (2π·ESR·C)",
+        derived: false,
+        parts: parts_of(key, branches),
+    })
 }
 
 /// What conduction does not change: the filters' resonances and half the switching frequency.
@@ -120,45 +219,29 @@ fn filters_and_switching(stage: &Stage) -> Vec<Landmark> {
         mark("output-filter", "Output filter", resonance, "1 / (2π·√(Lo·C·Co/(C + Co)))")
     });
     let half = mark("half-switching", "½ switching", stage.switching_frequency / 2.0, "fs / 2");
-    let sound = |m: &Landmark| m.frequency_hz.is_finite() && m.frequency_hz > 0.0;
-    input.into_iter().chain(output).chain([half]).filter(sound).collect()
+    input.into_iter().chain(output).chain([half]).collect()
 }
 
 /// The landmarks of a stage in discontinuous conduction, where inductor and capacitor do not resonate.
-pub(super) fn resting_landmarks(topology: &Topology, t: &RestingTextbook, stage: &Stage, plant: &Zpk) -> Vec<Landmark> {
-    let forms = &topology.resting;
-    let mut marks = Vec::with_capacity(7);
-    let mut add = |key, name, frequency_hz: f64, formula, derived| {
-        if frequency_hz.is_finite() && frequency_hz > 0.0 {
-            let parts = parts_of(key, stage.bank.len());
-            marks.push(Landmark { key, name, frequency_hz, formula, derived, parts });
-        }
-    };
-    let only = match (stage.bank.as_slice(), &stage.second_stage) {
-        ([only], None) => Some(only),
-        _ => None,
-    };
-    if only.is_some() && stage.load == LoadKind::Resistor {
-        add("low-pole", "Low pole", (forms.low_pole_hz)(t), forms.low_pole_formula, false);
-    } else {
-        let why = if only.is_some() { READ_OFF_LOAD } else { READ_OFF };
-        let pole = plant.poles.iter().map(|p| p.norm()).min_by(f64::total_cmp);
-        add("low-pole", "Low pole", pole.unwrap_or(f64::NAN) / TAU, why, true);
+pub(super) fn resting_landmarks(topology: &Topology, t: &Textbook, stage: &Stage, plant: &Zpk) -> Vec<Landmark> {
+    let branches = stage.bank.len();
+    let simple = bank_of_one(stage).is_some();
+    let mut marks = Vec::with_capacity(8);
+    for form in topology.resting.landmarks.iter().filter(|form| form.key == "low-pole") {
+        marks.extend(if simple && stage.load == LoadKind::Resistor {
+            form.mark(t, branches)
+        } else {
+            let why = if simple { READ_OFF_LOAD } else { READ_OFF };
+            let pole = plant.poles.iter().map(|p| p.norm()).min_by(f64::total_cmp);
+            read_off(form.key, form.name, pole.map(|norm| norm / TAU), why, branches)
+        });
     }
-    if let Some(only) = only {
-        if only.esr > 0.0 {
-            add("esr-zero", "ESR zero", 1.0 / (TAU * only.esr * only.capacitance), "1 / (2π·ESR·C)", false);
-        }
-    } else {
-        let left = plant.zeros.iter().filter(|z| z.re < 0.0 && z.im >= 0.0).map(|z| z.norm()).min_by(f64::total_cmp);
-        add("esr-zero", "ESR zero", left.unwrap_or(f64::NAN) / TAU, READ_OFF, true);
-    }
+    marks.extend(esr_zero(stage, plant));
     // The inductor's corners do not know the bank.
-    add("second-pole", "Second pole", (forms.second_pole_hz)(t), forms.second_pole_formula, false);
-    if let Some(zero) = forms.right_half_plane_zero_hz {
-        add("right-half-plane-zero", "RHP zero", zero(t), forms.right_half_plane_zero_formula, false);
-    }
+    let others = topology.resting.landmarks.iter().filter(|form| form.key != "low-pole" && (simple || !form.of_bank()));
+    marks.extend(others.filter_map(|form| form.mark(t, branches)));
     marks.extend(filters_and_switching(stage));
+    marks.retain(sound);
     marks
 }
 
@@ -186,10 +269,4 @@ fn parts_of(key: &str, branches: usize) -> Vec<String> {
 /// The lowest right-half-plane zero of a plant [Hz].
 pub(super) fn right_half_plane_zero_hz(plant: &Zpk) -> Option<f64> {
     plant.zeros.iter().filter(|z| z.re > 0.0).map(|z| z.norm() / TAU).min_by(f64::total_cmp)
-}
-
-impl Topology {
-    fn right_half_plane_zero_hz_exists(&self) -> bool {
-        !self.right_half_plane_zero_formula.is_empty()
-    }
 }

@@ -5,11 +5,11 @@
 //! solutions the one below the peak of the conversion curve is found. Ripple is that of straight-line segments.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976.
 
-use super::drawing::Rows;
 use super::pulse::Pulse;
 use super::pulse_point::Found;
+use super::rows::{Rows, SwitchRow};
 use super::stage::{Intervals, OutOfReach, Stage, StageCondition};
-use super::waves::{ALWAYS, RECTIFIER, SWITCH, Waves};
+use super::waves::{ALWAYS, Waves};
 use crate::circuit::{CircuitError, StateEquations};
 use nalgebra::{DMatrix, DVector};
 
@@ -98,6 +98,9 @@ pub struct OperatingPoint {
     pub input_current: f64,
     /// The current that switch and rectifier carry in turn: the inductor's, or the sum of both in a stage of two.
     pub switched_current: SwitchedCurrent,
+    /// Current of the controlled switch, which current modes sense, per ampere of switched current: the turns ratio of a stage
+    /// with a transformer, 1 without.
+    pub sense_ratio: f64,
     /// Slope of the switched current while the switch conducts [A/s].
     pub on_slope: f64,
     /// Slope of the switched current while the rectifier conducts, negative [A/s].
@@ -314,12 +317,17 @@ impl Stage {
         let duty = solution.duty;
         let rows: &Rows = &self.rows;
         let mut inductors: Vec<InductorFigures> = rows
-            .inductor_currents
+            .inductors
             .iter()
-            .map(|row| InductorFigures { name: "inductor", current: waves.figures(&[*row], ALWAYS) })
+            .map(|winding| InductorFigures { name: winding.name, current: waves.figures(&[winding.row], ALWAYS) })
             .collect();
-        let switch = waves.figures(&[rows.switch_current], SWITCH);
-        let rectifier = waves.figures(&[rows.rectifier_current], RECTIFIER);
+        let sets = solution.intervals.sets;
+        let figures_of = |switch: &SwitchRow| {
+            let flows = [sets.on, sets.off, sets.idle].map(|closed| closed.contains(&switch.name));
+            waves.figures(&[switch.row], flows)
+        };
+        let named = |name| rows.switch(name).map(|switch| figures_of(&switch)).unwrap_or_default();
+        let (switch, rectifier) = (named(sets.switch), named(sets.rectifier));
         let bank = waves.figures(&rows.branch_currents, ALWAYS);
         let input = waves.figures(&[rows.input_current], ALWAYS);
         let (switched_current, on_slope, off_slope) = waves.switched_current();
@@ -328,21 +336,24 @@ impl Stage {
             None if self.rectifier.blocks() => Conduction::Continuous,
             None => Conduction::ForcedContinuous,
         };
-        let winding: f64 = inductors.iter().map(|i| i.current.rms.powi(2)).sum::<f64>() * self.resistances.winding;
         let branches: f64 = rows
             .branch_currents
             .iter()
             .zip(&self.bank)
             .map(|(row, branch)| waves.figures(&[*row], ALWAYS).rms.powi(2) * branch.esr)
             .sum();
-        let rectifier_loss = self.resistances.rectifier * rectifier.rms.powi(2) + self.diode_drop * rectifier.average;
-        let mut conduction_losses = vec![
-            Loss { name: "inductor winding", watts: winding },
-            Loss { name: "switch", watts: self.resistances.switch * switch.rms.powi(2) },
-            Loss { name: "rectifier", watts: rectifier_loss },
-            Loss { name: "output bank ESR", watts: branches },
-            Loss { name: "source resistance", watts: self.resistances.source * input.rms.powi(2) },
-        ];
+        let windings = rows.inductors.iter().zip(&inductors).map(|(winding, figures)| Loss {
+            name: winding.loss,
+            watts: self.slot_value(winding.ohms) * figures.current.rms.powi(2),
+        });
+        let switches = rows.switches.iter().map(|switch| {
+            let current = figures_of(switch);
+            let drop = if switch.diode { self.diode_drop * current.average } else { 0.0 };
+            Loss { name: switch.name, watts: self.slot_value(switch.ohms) * current.rms.powi(2) + drop }
+        });
+        let mut conduction_losses: Vec<Loss> = windings.chain(switches).collect();
+        conduction_losses.push(Loss { name: "output bank ESR", watts: branches });
+        conduction_losses.push(Loss { name: "source resistance", watts: self.source_resistance * input.rms.powi(2) });
         let lines = |row: usize| waves.figures(&[row], ALWAYS);
         let (filter_inductors, filter_losses) = self.filter_figures(waves.spans(), &solution.intervals.inputs, &lines);
         inductors.extend(filter_inductors);
@@ -357,6 +368,7 @@ impl Stage {
             load_current: condition.load_current,
             input_current: input.average,
             switched_current,
+            sense_ratio: solution.intervals.cell.sense,
             on_slope,
             off_slope,
             second_duty: solution.pulse.as_ref().map(|pulse| pulse.second_duty),

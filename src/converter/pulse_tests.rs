@@ -5,6 +5,7 @@ use super::operating_point::Solution;
 use super::pulse_point::Found;
 use super::registry::registry;
 use super::stage::{Intervals, Stage, StageCondition};
+use super::topology::IN_TURN;
 use crate::circuit::{Compiled, Netlist};
 use crate::quantity::{Choices, Values};
 use nalgebra::DVector;
@@ -142,7 +143,7 @@ fn two_inductors(l: [f64; 2], load: f64, vin: f64) -> (Intervals, [usize; 2]) {
     let s = names.map(|name| n.slot(name));
     n.voltage_source("source", supply, g, u);
     let first = n.inductor("L1", supply, a, s[0]);
-    n.switch("switch", a, g, s[5]);
+    let switch = n.switch("switch", a, g, s[5]);
     n.capacitor("C1", a, b, s[2]);
     n.inductor("L2", g, b, s[1]);
     let rectifier = n.diode("rectifier", b, out, s[5], drop);
@@ -151,11 +152,15 @@ fn two_inductors(l: [f64; 2], load: f64, vin: f64) -> (Intervals, [usize; 2]) {
     n.voltage_output("output voltage", out, g);
     n.current_output("rectifier current", rectifier);
     n.current_output("inductor current", first);
+    n.current_output("switch current", switch);
     let values = [l[0], l[1], 10e-6, 470e-6, load, 0.0];
     let equations = |closed: &str| Compiled::new(&n, |p| p == closed, &values).unwrap().equations(&values).unwrap();
     let (on, off) = (equations("switch"), equations("rectifier"));
-    let cell = SwitchedCell::new(equations("neither"), &off, 1).unwrap();
-    (Intervals { on, off, cell, inputs: DVector::from_vec(vec![vin, 0.0, 0.0]), to_resistor: (0, 0.0) }, [0, 2])
+    let cell = SwitchedCell::new(equations("neither"), (&on, 3), (&off, 1)).unwrap();
+    // The switch carries the sum of both currents, as the rectifier does.
+    assert!((cell.sense - 1.0).abs() < 1e-12);
+    let inputs = DVector::from_vec(vec![vin, 0.0, 0.0]);
+    (Intervals { on, off, cell, sets: &IN_TURN[0], inputs, to_resistor: (0, 0.0) }, [0, 2])
 }
 
 /// In a stage of two inductors the diode's rest ties both currents: what stops is their sum, over L1 ∥ L2. Such a stage converts as

@@ -1,22 +1,29 @@
 //! The registry of topologies: one line each.
 
-use super::drawing::Topology;
-use super::topologies::{boost, buck, buck_boost};
+use super::topologies::{boost, buck, buck_boost, flyback};
+use super::topology::Topology;
 use crate::quantity::ChoiceOption;
 
-static REGISTRY: [&Topology; 3] = [&buck::TOPOLOGY, &boost::TOPOLOGY, &buck_boost::TOPOLOGY];
+/// All topologies, in the order shown.
+static REGISTRY: &[&Topology] = &[&buck::TOPOLOGY, &boost::TOPOLOGY, &buck_boost::TOPOLOGY, &flyback::TOPOLOGY];
+
+const COUNT: usize = REGISTRY.len();
 
 /// The topologies as options of a choice, in registry order.
-pub(super) static OPTIONS: &[ChoiceOption] =
-    &[option(&buck::TOPOLOGY), option(&boost::TOPOLOGY), option(&buck_boost::TOPOLOGY)];
-
-const fn option(topology: &'static Topology) -> ChoiceOption {
-    ChoiceOption { key: topology.key, name: topology.name, help: topology.line }
-}
+pub(super) static OPTIONS: [ChoiceOption; COUNT] = {
+    let mut options = [ChoiceOption { key: "", name: "", help: "" }; COUNT];
+    let mut k = 0;
+    while k < COUNT {
+        let topology = REGISTRY[k];
+        options[k] = ChoiceOption { key: topology.key, name: topology.name, help: topology.line };
+        k += 1;
+    }
+    options
+};
 
 /// All topologies, in the order shown.
 pub fn registry() -> &'static [&'static Topology] {
-    &REGISTRY
+    REGISTRY
 }
 
 /// The topology with this key.

@@ -2,15 +2,17 @@
 
 use super::bank::{Branch, branch_value};
 use super::cell::SwitchedCell;
-use super::drawing::{
-    DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options, RECTIFIER, Rows, SWITCH, StageDrawing, Topology,
-};
-use super::entries::{BRANCHES, ENTRIES, applies, branch_count};
+use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options};
+use super::drawn::{Drawn, Equations};
+use super::entries::{BRANCHES, applies, branch_count};
 use super::filter_values::{InputFilter, SecondStage};
 use super::filters::network_impedance;
 use super::registry::find;
+use super::rows::Rows;
 use super::signals::INPUTS;
-use crate::circuit::{CircuitError, Compiled, Netlist, StateEquations};
+use super::topology::{SwitchSets, Topology, Voltages};
+use super::topology_entries::{self, COUPLING, COUPLING_CAPACITOR, RATIO, SECOND_INDUCTOR};
+use crate::circuit::{CircuitError, StateEquations};
 use crate::finding::Finding;
 use crate::linear::StateSpace;
 use crate::quantity::{Choices, Values};
@@ -63,14 +65,6 @@ impl Rectifier {
     pub fn blocks(self) -> bool {
         self != Rectifier::Synchronous
     }
-
-    /// Path of the entry that holds its resistance.
-    pub(super) fn resistance_path(self) -> &'static str {
-        match self {
-            Rectifier::Diode => "stage.diode.resistance",
-            Rectifier::Synchronous | Rectifier::Emulated => "stage.synchronous.resistance",
-        }
-    }
 }
 
 /// One operating condition of a stage.
@@ -117,12 +111,20 @@ pub struct Stage {
     pub load_currents: [f64; 3],
     /// Regulated output voltage, as a magnitude [V].
     pub output_voltage: f64,
-    /// Switching frequency [Hz].
+    /// Switching frequency of the pulses at the rectifier [Hz]: twice that of one switch in a double-ended stage.
     pub switching_frequency: f64,
     /// Inductance [H].
     pub inductance: f64,
-    /// Series resistances that carry the inductor's, switch's and rectifier's current, with their names [Ω].
-    pub(super) resistances: Resistances,
+    /// Turns ratio of the transformer, second to first; 1 without one.
+    pub ratio: f64,
+    /// Inductance of the second inductor [H]; 0 without one.
+    pub second_inductance: f64,
+    /// Coupling factor of the two inductors; 0 where they are separate.
+    pub coupling: f64,
+    /// Capacitance of the coupling capacitor [F]; 0 without one.
+    pub coupling_capacitance: f64,
+    /// Resistance of the source [Ω].
+    pub(super) source_resistance: f64,
     /// How the load current answers the output voltage.
     pub load: LoadKind,
     /// What conducts while the controlled switch is open.
@@ -148,15 +150,6 @@ enum Fed {
     AtTerminals,
 }
 
-/// Resistances that turn currents into conduction losses [Ω].
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub(super) struct Resistances {
-    pub(super) winding: f64,
-    pub(super) switch: f64,
-    pub(super) rectifier: f64,
-    pub(super) source: f64,
-}
-
 /// The state equations of the switching intervals at one condition.
 #[derive(Clone, Debug)]
 pub(super) struct Intervals {
@@ -164,19 +157,12 @@ pub(super) struct Intervals {
     pub(super) off: StateEquations,
     /// Both open, and the current that stops then; of a synchronous rectifier too, for which it names the switched current.
     pub(super) cell: SwitchedCell,
+    /// The switches that conduct in each.
+    pub(super) sets: &'static SwitchSets,
     /// Steady inputs: input voltage, load current, diode drop.
     pub(super) inputs: DVector<f64>,
     /// Row of the load's voltage, and the conductance that makes the load a resistor, its own current left out [S].
     pub(super) to_resistor: (usize, f64),
-}
-
-/// Names of the states kept of all, by the matrix that gives all from them.
-fn kept_names(all: &[String], basis: &DMatrix<f64>) -> Vec<String> {
-    let unit = |column: usize, row: usize| {
-        (0..basis.ncols()).all(|k| (basis[(row, k)] - f64::from(u8::from(k == column))).abs() < f64::EPSILON)
-    };
-    let name = |column: usize| (0..basis.nrows()).find(|row| unit(column, *row)).and_then(|row| all.get(row));
-    (0..basis.ncols()).map(|column| name(column).cloned().unwrap_or_default()).collect()
 }
 
 impl Stage {
@@ -198,7 +184,7 @@ impl Stage {
             if fed == Fed::AtTerminals && path == "stage.source.resistance" {
                 return 0.0;
             }
-            let entry = ENTRIES.iter().find(|entry| entry.path == path);
+            let entry = topology_entries::entries().iter().find(|entry| entry.path == path);
             entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
         };
         let key = choices.get("stage.topology").unwrap_or("boost");
@@ -210,18 +196,12 @@ impl Stage {
         let rectifier = Rectifier::chosen(choices);
         let bank: Vec<Branch> = (1..=branch_count(choices)).map(|k| entered_branch(k, &get)).collect();
         let load = LoadKind::chosen(choices);
-        let resistances = Resistances {
-            winding: get("stage.inductor.resistance"),
-            switch: get("stage.switch.resistance"),
-            rectifier: get(rectifier.resistance_path()),
-            source: get("stage.source.resistance"),
-        };
         let mut options = Options::chosen(choices);
         if fed == Fed::AtTerminals {
             options.input_filter = None;
         }
         // Across an ideal source a capacitor changes nothing but the source's own current.
-        options.input_capacitor &= resistances.source > 0.0 || options.input_filter.is_some();
+        options.input_capacitor &= get("stage.source.resistance") > 0.0 || options.input_filter.is_some();
         let input_filter = InputFilter::entered(choices, &get).filter(|_| fed == Fed::ThroughNetwork);
         let second_stage = SecondStage::entered(choices, &get);
         let output = get("stage.output.voltage");
@@ -256,9 +236,13 @@ impl Stage {
             input_voltages,
             load_currents,
             output_voltage: output,
-            switching_frequency: get("stage.switching-frequency"),
+            switching_frequency: get("stage.switching-frequency") * f64::from(topology.pulses),
             inductance: get("stage.inductor.inductance"),
-            resistances,
+            ratio: if applies(RATIO.path, choices) { get(RATIO.path) } else { 1.0 },
+            second_inductance: get(SECOND_INDUCTOR.path),
+            coupling: get(COUPLING.path),
+            coupling_capacitance: get(COUPLING_CAPACITOR.path),
+            source_resistance: get("stage.source.resistance"),
             load,
             rectifier,
             bank,
@@ -298,6 +282,11 @@ impl Stage {
     /// Value in a slot of the netlist.
     pub(super) fn slot_value(&self, slot: usize) -> f64 {
         self.plain.values.get(slot).copied().unwrap_or(0.0)
+    }
+
+    /// Input and output voltage of a condition, with the turns ratio.
+    pub(super) fn voltages(&self, condition: &StageCondition) -> Voltages {
+        Voltages { input: condition.input_voltage, output: condition.output_voltage, ratio: self.ratio }
     }
 
     /// The topology.
@@ -362,10 +351,8 @@ impl Stage {
         if let Some(slot) = drawn.load_slot {
             values[slot] = load_slot_value;
         }
-        let on = drawn.on.equations(&values)?;
-        let off = drawn.off.equations(&values)?.over_states_of(&on);
-        let idle = drawn.idle.equations(&values)?.over_states_of(&on);
-        let cell = SwitchedCell::new(idle, &off, drawn.rows.rectifier_current)?;
+        let sets = self.topology.sets(condition);
+        let Equations { on, off, cell } = drawn.equations(sets, &values)?;
         // Of the load's own −I/V, 0 or I/V.
         let to_resistor = match self.load {
             LoadKind::Resistor => 0.0,
@@ -373,7 +360,7 @@ impl Stage {
             LoadKind::Power => 2.0 * resistance.recip(),
         };
         let to_resistor = (drawn.rows.load_voltage, to_resistor);
-        Ok(Intervals { on: on.independent().0, off, cell, inputs, to_resistor })
+        Ok(Intervals { on, off, cell, sets, inputs, to_resistor })
     }
 }
 
@@ -384,47 +371,6 @@ pub(super) fn with_duty(duty: &DVector<f64>, netlist: &DMatrix<f64>) -> DMatrix<
         1 => netlist[(r, INPUT_VOLTAGE)],
         _ => netlist[(r, LOAD_CURRENT)],
     })
-}
-
-/// A netlist drawn and compiled for both intervals.
-#[derive(Clone, Debug)]
-struct Drawn {
-    on: Compiled,
-    off: Compiled,
-    idle: Compiled,
-    rows: Rows,
-    values: Vec<f64>,
-    load_slot: Option<usize>,
-    /// Parts that hold the independent states.
-    state_names: Vec<String>,
-}
-
-impl Drawn {
-    fn new(topology: &Topology, options: Options, lookup: &dyn Fn(&str) -> f64) -> Result<Self, CircuitError> {
-        let mut drawing = StageDrawing::new(options);
-        (topology.draw)(&mut drawing);
-        let unfinished = || CircuitError::Floating { names: vec![topology.name.to_owned()] };
-        let (netlist, rows): (Netlist, Rows) = drawing.finish().ok_or_else(unfinished)?;
-        let values: Vec<f64> = netlist.slot_names().iter().map(|name| lookup(name)).collect();
-        let load_slot = netlist.slot_names().iter().position(|name| name == "load resistance");
-        let on = Compiled::new(&netlist, |part| part == SWITCH, &values)?;
-        let off = Compiled::new(&netlist, |part| part == RECTIFIER, &values)?;
-        let idle = Compiled::new(&netlist, |_| false, &values)?;
-        let all: Vec<String> = netlist.state_names().map(str::to_owned).collect();
-        let state_names = kept_names(&all, &on.equations(&values)?.independent().1);
-        Ok(Drawn { on, off, idle, rows, values, load_slot, state_names })
-    }
-
-    /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.
-    fn bank_is_switched(&self) -> bool {
-        let (Ok(on), Ok(off)) = (self.on.equations(&self.values), self.off.equations(&self.values)) else {
-            return true;
-        };
-        self.rows.branch_currents.iter().any(|&row| {
-            let scale = on.c.row(row).amax().max(off.c.row(row).amax());
-            (on.c.row(row) - off.c.row(row)).amax() > 1e-9 * scale
-        })
-    }
 }
 
 /// Voltage at the load's terminals [V] from the regulated one.

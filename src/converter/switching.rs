@@ -4,7 +4,7 @@
 //! something only on the constraint that ties the states together: put the states there with `rest` as that interval begins.
 //! The bank's series inductance is left out: an edge into it would be an impulse.
 
-use super::drawing::Rows;
+use super::rows::{Rows, SwitchRow};
 use super::signals::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::stage::{Intervals, Stage, StageCondition, circuit_finding};
 use crate::circuit::StateEquations;
@@ -74,34 +74,39 @@ impl Stage {
     /// # Errors
     /// A finding for a netlist without state equations.
     pub fn switching(&self, condition: &StageCondition) -> Result<SwitchingEquations, Finding> {
-        let Intervals { on, off, cell, inputs, .. } = self.intervals(condition).map_err(|e| circuit_finding(&e))?;
+        let Intervals { on, off, cell, sets, inputs, .. } =
+            self.intervals(condition).map_err(|e| circuit_finding(&e))?;
+        let named = |name: &'static str| {
+            let missing = || Finding::problem("stage", format!("The stage has no part called {name}."));
+            self.rows.switch(name).ok_or_else(missing)
+        };
         Ok(SwitchingEquations {
             conducting: on,
             freewheeling: off,
             rest: cell.rest,
             resting: cell.idle,
-            sensed_current: cell.c.clone(),
+            sensed_current: &cell.c * cell.sense,
             switched_current: cell.c,
             state_names: self.state_names().to_vec(),
             input_names: [INPUT_VOLTAGE, LOAD_CURRENT, DIODE_DROP].map(str::to_owned).to_vec(),
             inputs,
-            rows: public_rows(&self.rows),
+            rows: public_rows(&self.rows, named(sets.switch)?, named(sets.rectifier)?),
             blocks: self.rectifier.blocks(),
         })
     }
 }
 
-fn public_rows(rows: &Rows) -> SwitchingRows {
+fn public_rows(rows: &Rows, switch: SwitchRow, rectifier: SwitchRow) -> SwitchingRows {
     SwitchingRows {
         output_voltage: rows.output_voltage,
         load_voltage: rows.load_voltage,
-        switch_node: rows.switch_node,
-        switch_voltage: rows.switch_voltage,
-        rectifier_voltage: rows.rectifier_voltage,
+        switch_node: switch.node,
+        switch_voltage: switch.voltage,
+        rectifier_voltage: rectifier.voltage,
         input_current: rows.input_current,
-        switch_current: rows.switch_current,
-        rectifier_current: rows.rectifier_current,
-        inductor_currents: rows.inductor_currents.clone(),
+        switch_current: switch.row,
+        rectifier_current: rectifier.row,
+        inductor_currents: rows.inductors.iter().map(|winding| winding.row).collect(),
         branch_currents: rows.branch_currents.clone(),
         filter_inductors: rows.filter_inductors.clone(),
     }

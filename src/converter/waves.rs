@@ -20,11 +20,6 @@ pub(super) type Flows = [bool; 3];
 
 /// A current that flows throughout.
 pub(super) const ALWAYS: Flows = [true; 3];
-/// The switch's current.
-pub(super) const SWITCH: Flows = [true, false, false];
-/// The rectifier's current.
-pub(super) const RECTIFIER: Flows = [false, true, false];
-
 /// The waveforms of a solved condition.
 pub(super) struct Waves<'a> {
     solution: &'a Solution,

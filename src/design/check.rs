@@ -126,9 +126,10 @@ impl Design {
         if let (Some(topology), Some(greatest)) = (topology, greatest)
             && output > 0.0
         {
+            let seen = topology.seen_input(greatest, self.turns_ratio());
             match topology.reach {
-                Reach::AboveInput if output <= greatest => problems.push(below_input(topology.name, output, greatest)),
-                Reach::BelowInput if output >= greatest => problems.push(above_input(topology.name, output, greatest)),
+                Reach::AboveInput if output <= seen => problems.push(below_input(topology.name, output, seen)),
+                Reach::BelowInput if output >= seen => problems.push(above_input(topology.name, output, seen)),
                 _ => {}
             }
         }
@@ -162,6 +163,7 @@ impl Design {
         let mut remarks = Vec::new();
         remarks.extend(self.values.get(OUTPUT).and_then(|entered| output_differs(entered, output)));
         remarks.extend(caution::caution(self, output));
+        remarks.extend(self.left_out());
         if self.choices.is("stage.input-capacitor", "none") && !self.choices.is("stage.input-filter", "fitted") {
             remarks.push(
                 Finding::notice(
@@ -174,6 +176,15 @@ impl Design {
             );
         }
         remarks
+    }
+}
+
+impl Design {
+    /// What the topology's model leaves out.
+    fn left_out(&self) -> impl Iterator<Item = Finding> {
+        let topology = self.choices.get("stage.topology").and_then(converter::find);
+        let remarks = topology.map_or(&[][..], |topology| topology.left_out);
+        remarks.iter().map(|remark| Finding::note(remark.place, remark.message).with_hint(remark.hint))
     }
 }
 

@@ -1,6 +1,7 @@
 //! The document: title, notes, choices and numbers by path, locks and aims, usable or not.
 
 use super::table;
+use crate::converter;
 use crate::finding::Finding;
 use crate::quantity::{Choice, Choices, Entry, Values};
 use std::collections::BTreeSet;
@@ -42,12 +43,21 @@ impl Default for Design {
 impl Design {
     /// Rows for numbers that apply under the present choices, in form order.
     pub fn entries(&self) -> Vec<&'static Entry> {
-        table::all_entries().filter(|entry| table::applies(entry.path, &self.choices)).collect()
+        table::all_entries()
+            .filter(|entry| table::applies(entry.path, &self.choices))
+            .map(|entry| converter::row(entry, &self.choices))
+            .collect()
     }
 
     /// Rows for choices that apply under the present choices, in form order.
     pub fn choice_rows(&self) -> Vec<&'static Choice> {
         table::all_choices().filter(|choice| table::applies(choice.path, &self.choices)).collect()
+    }
+
+    /// Turns ratio of the transformer, second to first; 1 without one.
+    pub(super) fn turns_ratio(&self) -> f64 {
+        let row = self.entries().into_iter().find(|row| row.path == "stage.transformer.ratio");
+        row.and_then(|row| self.values.get_or_default(row)).unwrap_or(1.0)
     }
 
     /// Sets the number or the choice at a path from text, as a form or `--set` gives it. An empty text clears an optional number.

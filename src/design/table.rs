@@ -6,8 +6,9 @@ use crate::{compensator, control, converter};
 
 /// Every row for a number, whether it applies or not.
 pub fn all_entries() -> impl Iterator<Item = &'static Entry> {
-    converter::ENTRIES
+    converter::entries()
         .iter()
+        .copied()
         .chain(control::ENTRIES.iter())
         .chain(compensator::ENTRIES.iter())
         .chain(requirements::entries())
@@ -16,7 +17,7 @@ pub fn all_entries() -> impl Iterator<Item = &'static Entry> {
 
 /// Every row for a choice, whether it applies or not.
 pub fn all_choices() -> impl Iterator<Item = &'static Choice> {
-    converter::CHOICES.iter().chain(control::CHOICES.iter()).chain(compensator::CHOICES.iter())
+    converter::choices().iter().copied().chain(control::CHOICES.iter()).chain(compensator::CHOICES.iter())
 }
 
 /// The row for a number at a path.

@@ -26,7 +26,7 @@ pub(super) enum Item {
 
 /// Sorts the parts; those for which `wire` says so are wires.
 pub(super) fn plan(sketch: &Sketch, wire: impl Fn(&Placed) -> bool) -> Vec<Item> {
-    let mut plan = Plan::default();
+    let mut plan = Plan { lows: sketch.lows.clone(), ..Plan::default() };
     let (wires, parts): (Vec<_>, Vec<_>) = sketch.parts.iter().enumerate().partition(|(_, placed)| wire(placed));
     for (_, placed) in wires {
         plan.join(placed.from, placed.to);
@@ -42,6 +42,8 @@ struct Plan {
     items: Vec<Item>,
     seen: Vec<Node>,
     joined: Vec<(Node, Node)>,
+    /// Nodes on the ground rail beside the ground.
+    lows: Vec<Node>,
 }
 
 impl Plan {
@@ -63,6 +65,10 @@ impl Plan {
         node
     }
 
+    fn low(&self, node: Node) -> bool {
+        node.is_ground() || self.lows.contains(&node)
+    }
+
     fn seat(&mut self, part: usize, placed: &Placed) {
         let (from, to) = (self.node(placed.from), self.node(placed.to));
         let straight = Seat { part, flipped: false, first: from, last: to };
@@ -76,17 +82,17 @@ impl Plan {
     }
 
     fn down(&mut self, straight: Seat, turned: Seat, placed: &Placed) {
+        let ends = self.lows.clone();
+        let lows = |node: Node| node.is_ground() || ends.contains(&node);
         if let Some(Item::Column { chain, .. }) = self.items.last_mut()
-            && let Some(end) = chain.last().map(|seat| seat.last).filter(|end| !end.is_ground())
+            && let Some(end) = chain.last().map(|seat| seat.last).filter(|end| !lows(*end))
             && let Some(seat) = [straight, turned].into_iter().find(|seat| seat.first == end)
         {
             chain.push(seat);
             return;
         }
-        let upside_down = straight.first.is_ground()
-            || (!straight.last.is_ground()
-                && self.seen.contains(&straight.last)
-                && !self.seen.contains(&straight.first));
+        let upside_down = self.low(straight.first)
+            || (!self.low(straight.last) && self.seen.contains(&straight.last) && !self.seen.contains(&straight.first));
         let second = placed.second.map(|(first, last)| (self.node(first), self.node(last)));
         self.seen.extend(second.iter().flat_map(|(first, last)| [*first, *last]));
         self.items.push(Item::Column { chain: vec![if upside_down { turned } else { straight }], second });

@@ -20,6 +20,7 @@
 //! | `dense` | small dense matrices by rows of vectors |
 //! | `exponential` | the matrix exponential |
 //! | `time` | exact step response on a uniform grid |
+//! | `resolvent` | many solves with s·1 − A at changing s |
 //! | `root` | a root between two values of opposite sign |
 //! | `modes` | a stable system taken apart into its modes, and its step response from them |
 //! | `settling` | extreme and last exit of a band along such a response |
@@ -37,6 +38,7 @@ mod margins;
 mod modes;
 #[cfg(test)]
 pub(crate) mod precision;
+mod resolvent;
 mod response;
 mod root;
 mod sampled;
@@ -54,6 +56,7 @@ pub use exponential::expm;
 pub use interconnect::{Port, Wire};
 pub use margins::{Crossover, Margins, PhaseCrossover, margins};
 pub use modes::{Modes, StepMetrics, settle};
+pub use resolvent::{Bench, Resolvent};
 pub use response::{FactorKind, FactorPhase, FactoredResponse, FrequencyResponse, LogPoint};
 pub(crate) use root::bracketed_root;
 pub use sampled::SampledResponse;

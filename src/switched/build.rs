@@ -4,6 +4,7 @@
 //! put together by what drives them, once for each configuration. *Conventions*: the sense filter and the comparator see the switched
 //! current in every interval; the comparator's volts are those behind its divider.
 
+use super::probes::stage_probes;
 use super::system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};
 use crate::circuit::StateEquations;
 use crate::control::{AverageCurrent, ControlLaw, Edge, Mode};
@@ -13,17 +14,38 @@ use crate::linear::StateSpace;
 use crate::quantity::Unit;
 use nalgebra::{DMatrix, DVector, RowDVector};
 
+/// A compensator that closes the loop.
+///
+/// Of its inputs "vout" is the sensed output voltage, those in `fed` are probes of the stage, those in `held` are constant; any other is
+/// an input of the system, zero at rest. Its output "vc" is the control voltage, further outputs are probes.
+#[derive(Clone, Debug)]
+pub struct Closing<'a> {
+    /// Its equations.
+    pub space: &'a StateSpace,
+    /// Inputs held at a value [V], "vref" among them.
+    pub held: Vec<(String, f64)>,
+    /// Inputs that follow a probe of the stage: their name, the probe's.
+    pub fed: Vec<(String, String)>,
+}
+
+impl<'a> Closing<'a> {
+    /// A compensator that knows nothing but the sensed voltage and its reference [V].
+    pub fn new(space: &'a StateSpace, reference: f64) -> Self {
+        Closing { space, held: vec![("vref".to_owned(), reference)], fed: Vec::new() }
+    }
+}
+
 /// What makes the control voltage.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Debug)]
 pub enum Driven<'a> {
-    /// The compensator: its state space with the inputs "vout" and "vref" and the output "vc", and its reference [V].
-    Loop(&'a StateSpace, f64),
+    /// The compensator.
+    Loop(Closing<'a>),
     /// A given control voltage [V]: the loop is open.
     Voltage(f64),
 }
 
 /// What is joined into a switched system.
-#[derive(Clone, Copy, Debug)]
+#[derive(Clone, Debug)]
 pub struct Joined<'a> {
     /// The stage.
     pub stage: &'a Stage,
@@ -40,10 +62,16 @@ struct Layout {
     inner: usize,
     outer: usize,
     stage_inputs: usize,
+    /// Names of the inputs beside the stage's own.
+    own: Vec<String>,
 }
 
-/// Inputs beside the stage's own.
+/// Inputs that every system has beside the stage's own.
 const OWN_INPUTS: [&str; 3] = [inputs::REFERENCE, inputs::INJECTED, inputs::CONTROL];
+/// Before the names of the inner compensator's further inputs and outputs.
+const INNER: &str = "inner ";
+/// Inputs of every compensator.
+const KNOWN_INPUTS: [&str; 2] = ["vout", "vref"];
 
 impl Layout {
     fn states(&self) -> usize {
@@ -51,7 +79,7 @@ impl Layout {
     }
 
     fn width(&self) -> usize {
-        self.states() + self.stage_inputs + OWN_INPUTS.len()
+        self.states() + self.stage_inputs + self.own.len()
     }
 
     fn zero(&self) -> RowDVector<f64> {
@@ -68,7 +96,7 @@ impl Layout {
     /// A row that is one of the own inputs.
     fn own(&self, name: &str) -> RowDVector<f64> {
         let mut row = self.zero();
-        if let Some(k) = OWN_INPUTS.iter().position(|own| *own == name) {
+        if let Some(k) = self.own.iter().position(|own| own == name) {
             row[self.states() + self.stage_inputs + k] = 1.0;
         }
         row
@@ -97,12 +125,13 @@ impl Layout {
         let rows = |by_states: &DMatrix<f64>, by_inputs: &DMatrix<f64>| {
             (0..by_states.nrows()).map(|r| driven(by_states.row(r).into(), by_inputs.row(r).into())).collect()
         };
-        Block { rates: rows(&block.a, &block.b), outputs: rows(&block.c, &block.d) }
+        Block { width: self.width(), rates: rows(&block.a, &block.b), outputs: rows(&block.c, &block.d) }
     }
 }
 
 /// A linear block's rates and outputs as rows over joint states and inputs.
 struct Block {
+    width: usize,
     rates: Vec<RowDVector<f64>>,
     outputs: Vec<RowDVector<f64>>,
 }
@@ -130,16 +159,11 @@ impl<'a> Law<'a> {
     }
 
     /// What the comparator compares, from control voltage, sensed current and the inner amplifier's output.
-    fn compared(
-        &self,
-        control: &RowDVector<f64>,
-        sensed: &RowDVector<f64>,
-        inner: Option<RowDVector<f64>>,
-    ) -> RowDVector<f64> {
+    fn compared(&self, control: &RowDVector<f64>, sensed: &RowDVector<f64>, inner: RowDVector<f64>) -> RowDVector<f64> {
         match &self.control.mode {
             Mode::Voltage(_) => control.clone(),
             Mode::Current(_, sense) => control * sense.divider - sensed * sense.comparator_ohms(),
-            Mode::Average(_) => inner.unwrap_or_else(|| control.clone()),
+            Mode::Average(_) => inner,
         }
     }
 
@@ -184,24 +208,27 @@ impl SwitchedSystem {
     ///
     /// # Errors
     /// A finding for a netlist or an inner compensator without state equations.
-    pub fn new(joined: Joined<'_>, condition: &StageCondition) -> Result<Self, Finding> {
+    pub fn new(joined: &Joined<'_>, condition: &StageCondition) -> Result<Self, Finding> {
         let equations = joined.stage.switching(condition)?;
         let law = Law::new(joined.law)?;
-        let outer = match joined.driven {
-            Driven::Loop(space, _) => Some(space),
+        let outer = match &joined.driven {
+            Driven::Loop(closing) => Some(closing),
             Driven::Voltage(_) => None,
         };
+        let (mut probes, places) = stage_probes(&equations);
         let layout = Layout {
             stage: equations.state_names.len(),
             filter: usize::from(law.filter_s > 0.0),
             inner: law.inner.as_ref().map_or(0, |(_, space)| space.order()),
-            outer: outer.map_or(0, StateSpace::order),
+            outer: outer.map_or(0, |closing| closing.space.order()),
             stage_inputs: equations.input_names.len(),
+            own: own_inputs(&law, outer),
         };
-        let (probes, places) = probes(&equations);
         let period_s = joined.stage.switching_frequency.recip();
-        let builder = Builder { layout: &layout, equations: &equations, law: &law, outer, places: &places };
+        let builder =
+            Builder { layout: &layout, equations: &equations, law: &law, outer, places: &places, probes: &probes };
         let pieces = [&equations.conducting, &equations.freewheeling, &equations.resting].map(|e| builder.piece(e));
+        probes.extend(further_probes(&law, outer));
         let pad = |row: &RowDVector<f64>| row.clone().resize_horizontally(layout.states(), 0.0);
         let mut rest_projector = DMatrix::identity(layout.states(), layout.states());
         rest_projector.view_mut((0, 0), (layout.stage, layout.stage)).copy_from(&equations.rest);
@@ -211,8 +238,8 @@ impl SwitchedSystem {
             rest: equations.blocks.then(|| pad(&equations.switched_current)),
             rotation: None,
             state_names: state_names(&equations, &layout),
-            input_names: equations.input_names.iter().cloned().chain(OWN_INPUTS.map(str::to_owned)).collect(),
-            steady_inputs: steady_inputs(&equations.inputs, joined.driven),
+            input_names: equations.input_names.iter().chain(&layout.own).cloned().collect(),
+            steady_inputs: steady_inputs(&equations.inputs, &joined.driven, &layout.own),
             rule: Rule::Compared(law.comparator(places.compared, period_s)),
             probes,
             places,
@@ -224,7 +251,7 @@ impl SwitchedSystem {
     ///
     /// # Errors
     /// As [`SwitchedSystem::new`].
-    pub fn at_point(joined: Joined<'_>, point: &OperatingPoint) -> Result<Self, Finding> {
+    pub fn at_point(joined: &Joined<'_>, point: &OperatingPoint) -> Result<Self, Finding> {
         let condition = StageCondition {
             input_voltage: point.input_voltage,
             load_current: point.load_current,
@@ -234,12 +261,52 @@ impl SwitchedSystem {
     }
 }
 
-fn steady_inputs(stage: &DVector<f64>, driven: Driven<'_>) -> DVector<f64> {
-    let (reference, control) = match driven {
-        Driven::Loop(_, reference) => (reference, 0.0),
-        Driven::Voltage(control) => (0.0, control),
+/// Inputs beside the stage's own: those of every system, then what compensator and inner compensator have beyond the usual.
+fn own_inputs(law: &Law<'_>, outer: Option<&Closing<'_>>) -> Vec<String> {
+    let further = |name: &&String| !KNOWN_INPUTS.contains(&name.as_str());
+    let of_outer = outer.into_iter().flat_map(|closing| {
+        let fed = |name: &String| closing.fed.iter().any(|(input, _)| input == name);
+        closing.space.inputs.iter().filter(further).filter(move |name| !fed(name))
+    });
+    let of_inner = law.inner.iter().flat_map(|(_, space)| space.inputs.iter().filter(further));
+    OWN_INPUTS
+        .map(str::to_owned)
+        .into_iter()
+        .chain(of_outer.cloned())
+        .chain(of_inner.map(|name| format!("{INNER}{name}")))
+        .collect()
+}
+
+/// Outputs of compensator and inner compensator beside the control voltage.
+fn further_probes(law: &Law<'_>, outer: Option<&Closing<'_>>) -> Vec<Probe> {
+    let further = |name: &&String| name.as_str() != "vc";
+    let of_outer = outer.into_iter().flat_map(|closing| closing.space.outputs.iter().filter(further)).cloned();
+    let of_inner = law.inner.iter().flat_map(|(_, space)| space.outputs.iter().filter(further));
+    of_outer
+        .chain(of_inner.map(|name| format!("{INNER}{name}")))
+        .map(|name| {
+            let unit = if name.ends_with("error") { Unit::Volt } else { Unit::One };
+            Probe { name, unit }
+        })
+        .collect()
+}
+
+fn steady_inputs(stage: &DVector<f64>, driven: &Driven<'_>, own: &[String]) -> DVector<f64> {
+    let value = |name: &str| match driven {
+        Driven::Loop(closing) => {
+            let name = if name == inputs::REFERENCE { "vref" } else { name };
+            closing.held.iter().find(|(held, _)| held == name).map_or(0.0, |(_, value)| *value)
+        }
+        Driven::Voltage(control) => {
+            if name == inputs::CONTROL {
+                *control
+            } else {
+                0.0
+            }
+        }
     };
-    DVector::from_iterator(stage.len() + OWN_INPUTS.len(), stage.iter().copied().chain([reference, 0.0, control]))
+    let own: Vec<f64> = own.iter().map(|name| value(name)).collect();
+    DVector::from_iterator(stage.len() + own.len(), stage.iter().chain(&own).copied())
 }
 
 fn state_names(equations: &SwitchingEquations, layout: &Layout) -> Vec<String> {
@@ -254,76 +321,14 @@ fn state_names(equations: &SwitchingEquations, layout: &Layout) -> Vec<String> {
         .collect()
 }
 
-/// The stage's outputs, all of them in its own order, then switched current, control voltage, what is compared, and the sensed current.
-fn probes(equations: &SwitchingEquations) -> (Vec<Probe>, Places) {
-    let rows = &equations.rows;
-    let count = equations.conducting.c.nrows();
-    let mut named = vec![None; count];
-    let mut name = |row: usize, name: String, unit: Unit| {
-        if let Some(place) = named.get_mut(row) {
-            *place = Some(Probe { name, unit });
-        }
-    };
-    name(rows.output_voltage, "output voltage".to_owned(), Unit::Volt);
-    name(rows.load_voltage, "load voltage".to_owned(), Unit::Volt);
-    name(rows.switch_node, "switch-node voltage".to_owned(), Unit::Volt);
-    name(rows.switch_voltage, "switch voltage".to_owned(), Unit::Volt);
-    name(rows.rectifier_voltage, "rectifier voltage".to_owned(), Unit::Volt);
-    name(rows.input_current, "input current".to_owned(), Unit::Ampere);
-    name(rows.switch_current, "switch current".to_owned(), Unit::Ampere);
-    name(rows.rectifier_current, "rectifier current".to_owned(), Unit::Ampere);
-    let counted = |what: &str, k: usize, of: usize| if of == 1 { what.to_owned() } else { format!("{what} {}", k + 1) };
-    for (k, row) in rows.inductor_currents.iter().enumerate() {
-        name(*row, counted("inductor current", k, rows.inductor_currents.len()), Unit::Ampere);
-    }
-    for (k, row) in rows.branch_currents.iter().enumerate() {
-        name(*row, counted("output capacitor current", k, rows.branch_currents.len()), Unit::Ampere);
-    }
-    for (what, row) in &rows.filter_inductors {
-        name(*row, format!("{what} current"), Unit::Ampere);
-    }
-    // Rows without a name carry the currents of lossy filter resistances.
-    let unnamed = || Probe { name: String::new(), unit: Unit::Ampere };
-    let mut probes: Vec<Probe> = named.into_iter().map(|probe| probe.unwrap_or_else(unnamed)).collect();
-    for (name, unit) in [
-        ("switched current", Unit::Ampere),
-        ("control voltage", Unit::Volt),
-        ("compared voltage", Unit::Volt),
-        ("sensed current", Unit::Ampere),
-    ] {
-        probes.push(Probe { name: name.to_owned(), unit });
-    }
-    let places = Places {
-        output_voltage: rows.output_voltage,
-        load_voltage: rows.load_voltage,
-        switch_node: rows.switch_node,
-        switch_voltage: rows.switch_voltage,
-        rectifier_voltage: rows.rectifier_voltage,
-        input_current: rows.input_current,
-        switch_current: rows.switch_current,
-        rectifier_current: rows.rectifier_current,
-        switched_current: count,
-        inductor_currents: rows
-            .inductor_currents
-            .iter()
-            .copied()
-            .chain(rows.filter_inductors.iter().map(|(_, row)| *row))
-            .collect(),
-        branch_currents: rows.branch_currents.clone(),
-        control_voltage: count + 1,
-        compared: count + 2,
-        sensed_current: count + 3,
-    };
-    (probes, places)
-}
-
 /// What the pieces of one system share.
 struct Builder<'a> {
     layout: &'a Layout,
     equations: &'a SwitchingEquations,
     law: &'a Law<'a>,
-    outer: Option<&'a StateSpace>,
+    outer: Option<&'a Closing<'a>>,
     places: &'a Places,
+    probes: &'a [Probe],
 }
 
 impl Builder<'_> {
@@ -342,17 +347,23 @@ impl Builder<'_> {
             sensed = filtered;
         }
         let output = outputs.get(self.places.output_voltage).cloned().unwrap_or_else(|| layout.zero());
-        let (outer_rates, control) = self.control(&output);
-        let mut inner_output = None;
+        let outer = self.outer(&output, &outputs);
+        let control = outer.control;
+        let mut inner = Controlling::none(layout.zero());
         if let Some((average, space)) = &self.law.inner {
-            let drive = |name: &str| if name == "vref" { control.clone() } else { &sensed * average.ohms };
-            let block = layout.block(space, layout.stage + layout.filter, &drive);
-            inner_output = space.output("vc").and_then(|row| block.outputs.get(row).cloned());
-            rates.extend(block.rates);
+            let drive = |name: &str| match name {
+                "vref" => control.clone(),
+                "vout" => &sensed * average.ohms,
+                _ => layout.own(&format!("{INNER}{name}")),
+            };
+            inner = Controlling::new(layout.block(space, layout.stage + layout.filter, &drive), space);
         }
-        rates.extend(outer_rates);
-        let compared = self.law.compared(&control, &sensed, inner_output);
-        outputs.extend([switched, control, compared, sensed]);
+        rates.extend(inner.rates);
+        rates.extend(outer.rates);
+        let compared = self.law.compared(&control, &sensed, inner.control);
+        outputs.extend([switched, sensed, control, compared]);
+        outputs.extend(outer.further);
+        outputs.extend(inner.further);
         let n = layout.states();
         let split = |rows: &[RowDVector<f64>], from: usize, count: usize| {
             DMatrix::from_fn(rows.len(), count, |r, k| rows[r][from + k])
@@ -361,19 +372,47 @@ impl Builder<'_> {
         Piece { a: split(&rates, 0, n), b: split(&rates, n, m), c: split(&outputs, 0, n), d: split(&outputs, n, m) }
     }
 
-    /// Rates of the compensator's states, and the control voltage.
-    fn control(&self, output: &RowDVector<f64>) -> (Vec<RowDVector<f64>>, RowDVector<f64>) {
+    /// The compensator; without one the control voltage is what is added to it.
+    fn outer(&self, output: &RowDVector<f64>, outputs: &[RowDVector<f64>]) -> Controlling {
         let layout = self.layout;
         let added = layout.own(inputs::CONTROL);
-        let Some(space) = self.outer else { return (Vec::new(), added) };
+        let Some(closing) = self.outer else { return Controlling::none(added) };
+        let space = closing.space;
         let drive = |name: &str| match name {
             "vout" => output + layout.own(inputs::INJECTED),
             "vref" => layout.own(inputs::REFERENCE),
-            _ => layout.zero(),
+            _ => {
+                let fed = closing.fed.iter().find(|(input, _)| input == name).map(|(_, probe)| probe);
+                let probe = fed.and_then(|fed| self.probes.iter().position(|probe| probe.name == *fed));
+                probe.and_then(|row| outputs.get(row).cloned()).unwrap_or_else(|| layout.own(name))
+            }
         };
-        let block = layout.block(space, layout.stage + layout.filter + layout.inner, &drive);
-        let control = space.output("vc").and_then(|row| block.outputs.get(row));
-        (block.rates, control.map_or_else(|| added.clone(), |control| control + &added))
+        let mut outer =
+            Controlling::new(layout.block(space, layout.stage + layout.filter + layout.inner, &drive), space);
+        outer.control += added;
+        outer
+    }
+}
+
+/// A compensator's rates, its control voltage and what else it gives.
+struct Controlling {
+    rates: Vec<RowDVector<f64>>,
+    control: RowDVector<f64>,
+    further: Vec<RowDVector<f64>>,
+}
+
+impl Controlling {
+    fn none(control: RowDVector<f64>) -> Self {
+        Controlling { rates: Vec::new(), control, further: Vec::new() }
+    }
+
+    fn new(block: Block, space: &StateSpace) -> Self {
+        let (mut control, mut further) = (None, Vec::new());
+        for (name, row) in space.outputs.iter().zip(block.outputs) {
+            if name == "vc" { control = Some(row) } else { further.push(row) }
+        }
+        let control = control.unwrap_or_else(|| RowDVector::zeros(block.width));
+        Controlling { rates: block.rates, control, further }
     }
 }
 

@@ -8,16 +8,18 @@
 //! |---|---|
 //! | `system` | configurations, probes, the switching rule |
 //! | `build` | the system of a stage, a law and a compensator at a condition |
+//! | `probes` | what can be looked at, and where it stands |
 //! | `progress` | the cancel flag and the progress of slow work |
 
 mod build;
+mod probes;
 mod progress;
 mod system;
 mod transient;
 #[cfg(test)]
 mod tests;
 
-pub use build::{Driven, Joined};
+pub use build::{Closing, Driven, Joined};
 pub use progress::{Cancel, Progress};
 pub use transient::{Stopped, Trace, Waveforms};
 pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};

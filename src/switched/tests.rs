@@ -44,8 +44,8 @@ impl Case {
 
     fn system(&self) -> SwitchedSystem {
         let space = self.compensator.state_space().unwrap();
-        let driven = Driven::Loop(&space, self.compensator.reference);
-        SwitchedSystem::at_point(Joined { stage: &self.stage, law: &self.law, driven }, &self.point).unwrap()
+        let driven = Driven::Loop(Closing::new(&space, self.compensator.reference));
+        SwitchedSystem::at_point(&Joined { stage: &self.stage, law: &self.law, driven }, &self.point).unwrap()
     }
 }
 

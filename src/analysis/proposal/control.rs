@@ -81,7 +81,7 @@ fn requirements(draft: &mut Draft, switching: f64) {
     for (path, value, reason) in practice {
         draft.assume(path, value, reason, true);
     }
-    let with_zero = |topology: &crate::converter::Topology| !topology.right_half_plane_zero_formula.is_empty();
+    let with_zero = |topology: &crate::converter::Topology| topology.landmark("right-half-plane-zero").is_some();
     let topology = draft.design.choices.get("stage.topology").and_then(crate::converter::find);
     if topology.is_some_and(with_zero) {
         draft.assume("requirement.right-half-plane-ratio.worst", 3.0, "three to five times the crossover", true);

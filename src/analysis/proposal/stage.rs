@@ -8,7 +8,7 @@
 use super::assumption::{Draft, set, text};
 use super::brief::Brief;
 use crate::compensator::Series;
-use crate::converter::{OperatingPoint, StageCondition};
+use crate::converter::{self, CurrentFigures, OperatingPoint, Sizing, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::quantity::Unit;
@@ -47,6 +47,7 @@ pub(super) fn size(draft: &mut Draft, brief: &Brief) -> Result<(), Vec<Finding>>
     for path in RESISTANCES {
         set(&mut draft.design, path, 0.0);
     }
+    own_parts(draft, brief);
     if brief.ripple().is_some() {
         // Any values do to find volt-seconds and averages.
         set(&mut draft.design, "stage.inductor.inductance", first_inductance(brief));
@@ -61,6 +62,20 @@ pub(super) fn size(draft: &mut Draft, brief: &Brief) -> Result<(), Vec<Finding>>
     esr(draft, brief, &points);
     input(draft, brief, &points);
     Ok(())
+}
+
+/// What the topology has of its own.
+fn own_parts(draft: &mut Draft, brief: &Brief) {
+    let Some(topology) = converter::find(&brief.topology) else { return };
+    let sizing = Sizing {
+        input: (brief.get("stage.input.least"), brief.get("stage.input.greatest")),
+        output: brief.get("stage.output.voltage"),
+        load: brief.get("stage.load.greatest"),
+        switching_frequency: brief.get("stage.switching-frequency") * f64::from(topology.pulses),
+    };
+    for size in (topology.sizing)(&sizing) {
+        draft.assume(size.path, size.value, size.reason, size.common_practice);
+    }
 }
 
 /// An inductance of the right order [H]: the whole output voltage over a period, a tenth of the power's current.
@@ -85,14 +100,16 @@ fn greatest(points: &[OperatingPoint], of: impl Fn(&OperatingPoint) -> f64) -> f
 }
 
 /// Greatest of a figure over the inductors of an operating point.
-fn of_inductors(point: &OperatingPoint, of: impl Fn(&crate::converter::CurrentFigures) -> f64) -> f64 {
+fn of_inductors(point: &OperatingPoint, of: impl Fn(&CurrentFigures) -> f64) -> f64 {
     point.inductors.iter().map(|inductor| of(&inductor.current)).fold(0.0, f64::max)
 }
 
 fn inductor(draft: &mut Draft) -> Result<(), Vec<Finding>> {
     let points = full_load(&draft.checked()?)?;
-    let average = greatest(&points, |point| of_inductors(point, |current| current.average.abs()));
-    let swing = greatest(&points, |point| of_inductors(point, |current| current.ripple));
+    let first = |of: fn(&CurrentFigures) -> f64| {
+        greatest(&points, |point| point.inductors.first().map_or(0.0, |inductor| of(&inductor.current)))
+    };
+    let (average, swing) = (first(|current| current.average.abs()), first(|current| current.ripple));
     // Ripple times inductance is the volt-seconds of the switch's on time, whatever the inductance.
     let volt_seconds = swing * draft.get("stage.inductor.inductance");
     let inductance = Series::E12.nearest(volt_seconds / (RIPPLE_SHARE * average));
@@ -111,7 +128,7 @@ fn inductor(draft: &mut Draft) -> Result<(), Vec<Finding>> {
 fn resistances(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
     let watts = LOSS_SHARE * brief.get("stage.output.voltage") * brief.get("stage.load.greatest");
     let currents = [
-        ("stage.inductor.resistance", greatest(points, |point| of_inductors(point, |current| current.rms))),
+        ("stage.inductor.resistance", greatest(points, |point| point.inductors.first().map_or(0.0, |i| i.current.rms))),
         ("stage.switch.resistance", greatest(points, |point| point.switch.rms)),
         ("stage.synchronous.resistance", greatest(points, |point| point.rectifier.rms)),
     ];
@@ -137,9 +154,7 @@ fn resistances(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
 /// The crossover the stage is sized for [Hz], and why.
 pub(super) fn aim(design: &CheckedDesign) -> (f64, String) {
     let switching = design.stage.switching_frequency / BELOW_SWITCHING;
-    let zero = textbooks(design)
-        .filter_map(|t| (design.stage.topology().right_half_plane_zero_hz)(&t))
-        .fold(f64::INFINITY, f64::min);
+    let zero = textbook_landmark(design, "right-half-plane-zero").fold(f64::INFINITY, f64::min);
     if zero / BELOW_ZERO < switching {
         let at = text(zero, Unit::Hertz);
         return (zero / BELOW_ZERO, format!("a quarter of the lowest right-half-plane zero, {at}"));
@@ -147,8 +162,14 @@ pub(super) fn aim(design: &CheckedDesign) -> (f64, String) {
     (switching, "a tenth of the switching frequency".to_owned())
 }
 
+/// A textbook landmark at the nine conditions, where there is one [Hz].
+fn textbook_landmark(design: &CheckedDesign, key: &str) -> impl Iterator<Item = f64> {
+    let form = design.stage.topology().landmark(key);
+    textbooks(design).filter_map(move |t| (form?.hz)(&t))
+}
+
 /// Lossless quantities at the nine conditions.
-fn textbooks(design: &CheckedDesign) -> impl Iterator<Item = crate::converter::Textbook> + '_ {
+fn textbooks(design: &CheckedDesign) -> impl Iterator<Item = converter::Textbook> + '_ {
     let stage = &design.stage;
     stage.input_voltages.into_iter().flat_map(move |input_voltage| {
         stage.load_currents.into_iter().map(move |load_current| {
@@ -162,7 +183,7 @@ fn bank(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint], ripple: f64
     let design = draft.checked()?;
     let (crossover, why) = aim(&design);
     let present = draft.get("stage.bank.1.capacitance");
-    let resonance = textbooks(&design).map(|t| (design.stage.topology().resonance_hz)(&t)).fold(0.0, f64::max);
+    let resonance = textbook_landmark(&design, "lc-resonance").fold(0.0, f64::max);
     let rms = greatest(points, |point| point.output_bank_rms);
     let step = brief.load_step() / (std::f64::consts::TAU * crossover * brief.deviation());
     let needs = [
@@ -192,14 +213,14 @@ pub(super) fn rounded_up(value: f64) -> f64 {
 }
 
 fn esr(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
-    let peak = greatest(points, |point| of_inductors(point, |current| current.peak.abs()));
+    let peak = greatest(points, |point| point.switched_current.peak);
     let capacitance = draft.get("stage.bank.1.capacitance");
     let by_step = ESR_SHARE * brief.deviation() / brief.load_step();
     let by_ripple = brief.ripple().map_or(f64::INFINITY, |ripple| (1.0 - CHARGE_SHARE) * ripple / peak);
     let by_kind = ESR_TIME / capacitance;
     let mut needs = [
         (by_step, "takes a fifth of the deviation allowed at the load step"),
-        (by_ripple, "takes what ripple the charge leaves, by the inductor's peak current"),
+        (by_ripple, "takes what ripple the charge leaves, by the rectifier's peak current"),
         (by_kind, "ceramic capacitors: ESR·C about 0.5 µs with the wiring"),
     ];
     needs.sort_by(|one, other| one.0.total_cmp(&other.0));

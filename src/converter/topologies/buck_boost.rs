@@ -4,8 +4,9 @@
 //! *Source* of the landmarks: Erickson & Maksimovic, Fundamentals of Power Electronics, 3rd ed., Table 8.2; in discontinuous
 //! conduction ch. 15 and Table 5.2, M = Vout/Vin, K = 2·L·fs/R (forms from memory).
 
-use crate::converter::drawing::{Reach, StageDrawing, Topology};
-use crate::converter::landmark::RestingForms;
+use crate::converter::drawing::StageDrawing;
+use crate::converter::landmark::{Form, RestingForms};
+use crate::converter::topology::{Reach, Topology};
 use std::f64::consts::{PI, TAU};
 
 /// The inverting buck-boost.
@@ -15,20 +16,26 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     line: "Negative output of any magnitude; the inductor stands between switch node and ground.",
     reach: Reach::Any,
     draw,
-    ideal_duty: |input, output| output / (input + output),
-    resonance_hz: |t| (1.0 - t.duty) / (TAU * (t.inductance * t.capacitance).sqrt()),
-    resonance_formula: "(1 − D) / (2π·√(L·C))",
-    right_half_plane_zero_hz: |t| Some((1.0 - t.duty).powi(2) * t.load_resistance / (TAU * t.duty * t.inductance)),
-    right_half_plane_zero_formula: "(1 − D)²·R / (2π·D·L)",
+    ideal_duty: |v| v.output / (v.input + v.output),
+    highest_voltage: |v| v.input + v.output,
+    landmarks: &[
+        Form::resonance("(1 − D) / (2π·√(L·C))", |t| {
+            Some((1.0 - t.duty) / (TAU * (t.inductance * t.capacitance).sqrt()))
+        }),
+        Form::right_half_plane_zero("(1 − D)²·R / (2π·D·L)", |t| {
+            Some((1.0 - t.duty).powi(2) * t.load_resistance / (TAU * t.duty * t.inductance))
+        }),
+    ],
     resting: RestingForms {
         duty: |m, k| m * k.sqrt(),
-        low_pole_hz: |t| 1.0 / (PI * t.load_resistance * t.capacitance),
-        low_pole_formula: "1 / (π·R·C)",
-        second_pole_hz: |t| t.conversion * t.switching_frequency / (PI * t.duty),
-        second_pole_formula: "M·fs / (π·D)",
-        right_half_plane_zero_hz: Some(|t| t.switching_frequency / (PI * t.duty)),
-        right_half_plane_zero_formula: "fs / (π·D)",
+        landmarks: &[
+            Form::low_pole("1 / (π·R·C)", |t| Some(1.0 / (PI * t.load_resistance * t.capacitance))),
+            Form::second_pole("M·fs / (π·D)", |t| Some(t.conversion * t.switching_frequency / (PI * t.duty))),
+            Form::right_half_plane_zero("fs / (π·D)", |t| Some(t.switching_frequency / (PI * t.duty))),
+        ],
+        ..RestingForms::NONE
     },
+    ..Topology::COMMON
 };
 
 fn draw(stage: &mut StageDrawing) {

@@ -3,3 +3,4 @@
 pub(super) mod boost;
 pub(super) mod buck;
 pub(super) mod buck_boost;
+pub(super) mod flyback;

@@ -1,0 +1,53 @@
+//! First sizes of a topology's own parts for a new design, from lossless forms.
+
+/// What a first size may follow from.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Sizing {
+    /// Least and greatest input voltage [V].
+    pub input: (f64, f64),
+    /// Output voltage, as a magnitude [V].
+    pub output: f64,
+    /// Greatest load current [A].
+    pub load: f64,
+    /// Switching frequency of the pulses [Hz].
+    pub switching_frequency: f64,
+}
+
+/// A first size of one entry.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Sized {
+    /// Path of the entry.
+    pub path: &'static str,
+    /// Its value [SI unit of the entry].
+    pub value: f64,
+    /// Why it is so.
+    pub reason: String,
+    /// True for a rule of thumb of the trade, which no law stands behind.
+    pub common_practice: bool,
+}
+
+impl Sized {
+    /// A size by a rule of thumb, to two digits: more would pretend to know more.
+    pub fn by_rule(path: &'static str, value: f64, reason: impl Into<String>) -> Self {
+        Sized { path, value: two_digits(value), reason: reason.into(), common_practice: true }
+    }
+}
+
+/// A positive number to two significant digits.
+fn two_digits(value: f64) -> f64 {
+    let step = 10_f64.powf(value.log10().floor() - 1.0);
+    if step.is_finite() && step > 0.0 { (value / step).round() * step } else { value }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::two_digits;
+
+    #[test]
+    fn two_digits_are_kept() {
+        for (value, kept) in [(0.23456, 0.23), (1.0, 1.0), (98.7, 99.0), (4.567e-6, 4.6e-6)] {
+            assert!((two_digits(value) / kept - 1.0).abs() < 1e-12, "{value}");
+        }
+        assert!(two_digits(f64::NAN).is_nan());
+    }
+}
