@@ -24,15 +24,6 @@ pub(super) enum Act {
     },
 }
 
-/// By what a limiter acts.
-#[derive(Clone, Debug)]
-pub(super) enum Force {
-    /// An input of the system, by its column.
-    Input(usize),
-    /// What one unit of it adds to the rates of the system's states.
-    States(DVector<f64>),
-}
-
 /// A limit that can act.
 #[derive(Clone, Debug)]
 pub(super) struct Limiter {
@@ -41,7 +32,8 @@ pub(super) struct Limiter {
     pub(super) name: &'static str,
     /// Its signal over the system's states and inputs, by configuration.
     pub(super) signal: [(RowDVector<f64>, RowDVector<f64>); 3],
-    pub(super) force: Force,
+    /// Input by which it acts.
+    pub(super) force: usize,
     pub(super) least: f64,
     pub(super) greatest: f64,
 }
@@ -99,15 +91,10 @@ impl Plant {
             all.view_mut((n, n), (probes - 1, m)).copy_from(&(&piece.d * &weights));
             for (i, limiter) in limiters.iter().enumerate() {
                 let force = n + m + i;
-                match &limiter.force {
-                    Force::States(states) => all.view_mut((0, force), (order, 1)).copy_from(states),
-                    Force::Input(input) => {
-                        all.view_mut((0, force), (order, 1)).copy_from(&piece.b.column(*input));
-                        all.view_mut((n, force), (probes - 1, 1)).copy_from(&piece.d.column(*input));
-                        for (j, other) in limiters.iter().enumerate() {
-                            all[(n + probes + j, force)] = other.signal[k].1[*input];
-                        }
-                    }
+                all.view_mut((0, force), (order, 1)).copy_from(&piece.b.column(limiter.force));
+                all.view_mut((n, force), (probes - 1, 1)).copy_from(&piece.d.column(limiter.force));
+                for (j, other) in limiters.iter().enumerate() {
+                    all[(n + probes + j, force)] = other.signal[k].1[limiter.force];
                 }
                 let (by_states, by_inputs) = &limiter.signal[k];
                 all.view_mut((n + probes + i, 0), (1, order)).copy_from(by_states);

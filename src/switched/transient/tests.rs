@@ -1,6 +1,6 @@
 //! Tests of the closed loop in time.
 
-use super::super::{Cancel, Configuration, Driven, Joined, Progress, Rule, SwitchedSystem};
+use super::super::{Cancel, Closing, Configuration, Driven, Joined, Progress, Rule, SwitchedSystem};
 use super::*;
 use crate::compensator::{Compensator, Limited};
 use crate::control::{ControlLaw, Mode};
@@ -44,8 +44,8 @@ impl Case {
             Mode::Average(average) => Some(average.inner.limited().unwrap()),
             _ => None,
         };
-        let driven = Driven::Loop(&outer.space, compensator.reference);
-        let system = SwitchedSystem::at_point(Joined { stage: &stage, law: &law, driven }, &point).unwrap();
+        let driven = Driven::Loop(Closing::new(&outer.space, compensator.reference));
+        let system = SwitchedSystem::at_point(&Joined { stage: &stage, law: &law, driven }, &point).unwrap();
         let Rule::Compared(comparator) = &system.rule else { panic!("a comparator") };
         let nothing = match &law.mode {
             Mode::Current(_, sense) => (system.places.control_voltage, sense.offset),
@@ -57,7 +57,7 @@ impl Case {
     fn scenario(&self, periods: usize) -> Scenario<'_> {
         let places = &self.system.places;
         Scenario {
-            amplifiers: Amplifiers { outer: Some(&self.outer), inner: self.inner.as_ref() },
+            amplifiers: Amplifiers { outer: &self.outer.limits, inner: self.inner.as_ref().map_or(&[], |inner| &inner.limits) },
             input_voltage: Signal::constant(self.point.input_voltage),
             reference: Signal::constant(self.reference),
             sink: Signal::constant(0.0),
