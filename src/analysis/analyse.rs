@@ -247,7 +247,7 @@ pub(super) fn loop_at(
         verdict,
         margins,
         gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
-        gain_at_switching: model.loop_gain.at_hz(fs).norm(),
+        gain_at_switching: model.loop_gain.at_hz(design.stage.ripple_frequency()).norm(),
     };
     Ok((model, loop_gain, modes))
 }

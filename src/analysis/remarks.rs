@@ -114,7 +114,8 @@ fn missed(verdict: &RequirementVerdict) -> Finding {
 /// Ripple at the comparator large enough to make averaged numbers doubtful.
 fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult]) -> Vec<Finding> {
     let fs = design.stage.switching_frequency;
-    let high = shared.compensator_response.at_hz(fs).norm();
+    // Several phases cancel the ripple below the frequency of all together.
+    let high = shared.compensator_response.at_hz(design.stage.ripple_frequency()).norm();
     let mut findings = Vec::new();
     let gain = summaries(conditions)
         .max_by(|a, b| a.1.loop_gain.gain_at_switching.total_cmp(&b.1.loop_gain.gain_at_switching));
@@ -213,6 +214,12 @@ fn model_limits(design: &CheckedDesign) -> Vec<Finding> {
         notes.push(Finding::note(
             "stage.load",
             "The constant-power load is taken by its tangent in all linear results.",
+        ));
+    }
+    if design.stage.phases() > 1.0 && design.stage.bank.iter().any(|b| b.esr > 0.0) && design.stage.bank_is_switched() {
+        notes.push(Finding::note(
+            "stage.phases",
+            "The averaged model lets all phases conduct at once through the output bank's ESR; driven one after the other they drop a little less there. The ESR zero is exact.",
         ));
     }
     if design.stage.bank.iter().any(|b| b.esl > 0.0) && !design.stage.bank_inductance_averaged() {

@@ -7,6 +7,7 @@ use super::entries::{BRANCHES, branch_count};
 use super::filters::{
     Canvas, Damping, FilterParts, OutputFilter, draw_input_network, draw_output_filter, input_filter, output_filter,
 };
+use super::phases::{PHASES, counted};
 use super::rows::{Rows, SwitchRow, WindingRow};
 use super::stage::{LoadKind, Rectifier};
 use super::topology_entries::{
@@ -358,6 +359,9 @@ pub fn sketch(choices: &Choices) -> Option<Sketch> {
     let topology = super::registry::find(choices.get("stage.topology").unwrap_or("boost"))?;
     let mut drawing = StageDrawing::new(Options::chosen(choices));
     (topology.draw)(&mut drawing);
+    if topology.has(PHASES.path) {
+        counted(&mut drawing.sketch);
+    }
     Some(drawing.sketch)
 }
 

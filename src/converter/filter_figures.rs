@@ -66,9 +66,37 @@ impl<'a> Orbit<'a> {
         })
     }
 
+    /// How long the period is [s].
+    pub(super) fn period(&self) -> f64 {
+        self.spans.iter().map(|span| span.1).sum()
+    }
+
+    /// An output row at a time from the start of the period [s], by the cubic through values and slopes of the samples.
+    pub(super) fn value(&self, row: usize, time: f64) -> f64 {
+        let mut start = 0.0;
+        let mut value = 0.0;
+        for ((e, duration), along) in self.spans.iter().zip(&self.states) {
+            let end = start + duration;
+            if *duration > 0.0 && time >= start {
+                let place = ((time - start) / duration * PARTS as f64).clamp(0.0, PARTS as f64);
+                let first = (0..PARTS).rev().find(|k| *k as f64 <= place).unwrap_or(0);
+                let c = e.c.row(row);
+                let (Some(from), Some(to)) = (along.get(first), along.get(first + 1)) else { break };
+                let rate = |x: &DVector<f64>| (c * (&e.a * x + &e.b * self.inputs))[0] * duration / PARTS as f64;
+                let direct = (e.d.row(row) * self.inputs)[0];
+                value = direct + hermite(place - first as f64, [(c * from)[0], (c * to)[0]], [rate(from), rate(to)]);
+            }
+            if time < end {
+                break;
+            }
+            start = end;
+        }
+        value
+    }
+
     /// Figures of the current at an output row, moved to its average in the averaged state [A].
     pub(super) fn figures(&self, row: usize, average: f64) -> CurrentFigures {
-        let period: f64 = self.spans.iter().map(|span| span.1).sum();
+        let period = self.period();
         let (mut mean, mut square) = (0.0, 0.0);
         let (mut least, mut peak) = (f64::INFINITY, f64::NEG_INFINITY);
         for (duration, values) in self.samples(row) {
@@ -87,6 +115,13 @@ impl<'a> Orbit<'a> {
             rms: (average * average + variance).sqrt(),
         }
     }
+}
+
+/// The cubic through values and slopes at both ends of a unit interval.
+fn hermite(t: f64, values: [f64; 2], slopes: [f64; 2]) -> f64 {
+    let rest = 1.0 - t;
+    values[0] * (1.0 + 2.0 * t) * rest * rest + values[1] * t * t * (3.0 - 2.0 * t) + slopes[0] * t * rest * rest
+        - slopes[1] * t * t * rest
 }
 
 /// Transition over a time and what the inputs add on the way: exp of [[A, B·u], [0, 0]].
@@ -124,7 +159,7 @@ impl Stage {
         let rows = &self.rows;
         let orbit = if rows.filter_inductors.is_empty() { None } else { Orbit::new(spans, inputs) };
         let figures = |row: usize| match &orbit {
-            Some(orbit) => orbit.figures(row, lines(row).average),
+            Some(orbit) => orbit.summed(row, lines(row).average, self.phases),
             None => lines(row),
         };
         // Without an orbit an inductor's ripple is not known, and nothing is said of it.

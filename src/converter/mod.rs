@@ -17,8 +17,12 @@ mod filter_figures;
 mod filter_tests;
 mod filter_values;
 mod filters;
+mod further;
 mod landmark;
 mod operating_point;
+mod phases;
+#[cfg(test)]
+mod phases_tests;
 mod pulse;
 mod pulse_point;
 #[cfg(test)]
@@ -43,6 +47,7 @@ pub use entries::applies;
 pub use filter_damping::OptimumDamping;
 pub use filter_values::{InputFilter, SecondStage};
 pub use filters::Damping;
+pub use further::{Further, FurtherValue};
 pub use landmark::{BANK, Form, Landmark, RestingForms, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};

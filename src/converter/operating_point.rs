@@ -5,6 +5,7 @@
 //! solutions the one below the peak of the conversion curve is found. Ripple is that of straight-line segments.
 //! *Source*: state-space averaging, Middlebrook & Ćuk 1976.
 
+use super::further::{Further, of_phases};
 use super::pulse::Pulse;
 use super::pulse_point::Found;
 use super::rows::{Rows, SwitchRow};
@@ -107,11 +108,13 @@ pub struct OperatingPoint {
     pub off_slope: f64,
     /// Fraction of the period in which the rectifier conducts, where that is not all the rest of it.
     pub second_duty: Option<f64>,
-    /// The inductors: those that carry switched current first, then those of the filters.
+    /// Figures that only some stages have.
+    pub further: Vec<Further>,
+    /// The inductors: those that carry switched current first, then those of the filters; of several phases one.
     pub inductors: Vec<InductorFigures>,
-    /// The controlled switch.
+    /// The controlled switch, of several phases one.
     pub switch: CurrentFigures,
-    /// The rectifier.
+    /// The rectifier, of several phases one.
     pub rectifier: CurrentFigures,
     /// RMS current of the whole output bank [A].
     pub output_bank_rms: f64,
@@ -328,8 +331,12 @@ impl Stage {
         };
         let named = |name| rows.switch(name).map(|switch| figures_of(&switch)).unwrap_or_default();
         let (switch, rectifier) = (named(sets.switch), named(sets.rectifier));
-        let bank = waves.figures(&rows.branch_currents, ALWAYS);
-        let input = waves.figures(&[rows.input_current], ALWAYS);
+        // What the phases share.
+        let shared = |rows: &[usize]| waves.summed(rows, ALWAYS, self.phases);
+        let bank = shared(&rows.branch_currents);
+        let input = shared(&[rows.input_current]);
+        let windings: Vec<usize> = rows.inductors.iter().map(|winding| winding.row).collect();
+        let further = of_phases(self.phases, shared(&windings), input);
         let (switched_current, on_slope, off_slope) = waves.switched_current();
         let conduction = match &solution.pulse {
             Some(_) => Conduction::Discontinuous,
@@ -340,7 +347,7 @@ impl Stage {
             .branch_currents
             .iter()
             .zip(&self.bank)
-            .map(|(row, branch)| waves.figures(&[*row], ALWAYS).rms.powi(2) * branch.esr)
+            .map(|(row, branch)| shared(&[*row]).rms.powi(2) * branch.esr)
             .sum();
         let windings = rows.inductors.iter().zip(&inductors).map(|(winding, figures)| Loss {
             name: winding.loss,
@@ -354,8 +361,11 @@ impl Stage {
         let mut conduction_losses: Vec<Loss> = windings.chain(switches).collect();
         conduction_losses.push(Loss { name: "output bank ESR", watts: branches });
         conduction_losses.push(Loss { name: "source resistance", watts: self.source_resistance * input.rms.powi(2) });
-        let lines = |row: usize| waves.figures(&[row], ALWAYS);
+        let lines = |row: usize| shared(&[row]);
         let (filter_inductors, filter_losses) = self.filter_figures(waves.spans(), &solution.intervals.inputs, &lines);
+        for inductor in &mut inductors {
+            inductor.current = inductor.current.of_one_phase(self.phases);
+        }
         inductors.extend(filter_inductors);
         conduction_losses.extend(filter_losses);
         conduction_losses.retain(|loss| loss.watts > 0.0);
@@ -372,11 +382,12 @@ impl Stage {
             on_slope,
             off_slope,
             second_duty: solution.pulse.as_ref().map(|pulse| pulse.second_duty),
+            further,
             inductors,
-            switch,
-            rectifier,
+            switch: switch.of_one_phase(self.phases),
+            rectifier: rectifier.of_one_phase(self.phases),
             output_bank_rms: bank.rms,
-            output_step: waves.step(rows.output_voltage),
+            output_step: waves.step(rows.output_voltage) / self.phases,
             conduction_loss: conduction_losses.iter().map(|loss| loss.watts).sum(),
             conduction_losses,
         }

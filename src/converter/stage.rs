@@ -7,6 +7,7 @@ use super::drawn::{Drawn, Equations};
 use super::entries::{BRANCHES, applies, branch_count};
 use super::filter_values::{InputFilter, SecondStage};
 use super::filters::network_impedance;
+use super::phases;
 use super::registry::find;
 use super::rows::Rows;
 use super::signals::INPUTS;
@@ -113,8 +114,10 @@ pub struct Stage {
     pub output_voltage: f64,
     /// Switching frequency of the pulses at the rectifier [Hz]: twice that of one switch in a double-ended stage.
     pub switching_frequency: f64,
-    /// Inductance [H].
+    /// Inductance [H], of all phases in parallel.
     pub inductance: f64,
+    /// How many equal phases there are, a whole number.
+    pub(super) phases: f64,
     /// Turns ratio of the transformer, second to first; 1 without one.
     pub ratio: f64,
     /// Inductance of the second inductor [H]; 0 without one.
@@ -180,13 +183,15 @@ impl Stage {
     }
 
     fn put_together(values: &Values, choices: &Choices, fed: Fed) -> Result<Self, Vec<Finding>> {
-        let get = |path: &str| {
+        let entered = |path: &str| {
             if fed == Fed::AtTerminals && path == "stage.source.resistance" {
                 return 0.0;
             }
             let entry = topology_entries::entries().iter().find(|entry| entry.path == path);
             entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
         };
+        let phases = phases::count(entered(phases::PHASES.path)).map_err(|problem| vec![problem])?;
+        let get = |path: &str| entered(path) / phases::divisor(path, phases);
         let key = choices.get("stage.topology").unwrap_or("boost");
         let Some(topology) = find(key) else {
             return Err(vec![Finding::problem("stage.topology", format!("No topology is called \"{key}\"."))]);
@@ -238,6 +243,7 @@ impl Stage {
             output_voltage: output,
             switching_frequency: get("stage.switching-frequency") * f64::from(topology.pulses),
             inductance: get("stage.inductor.inductance"),
+            phases,
             ratio: if applies(RATIO.path, choices) { get(RATIO.path) } else { 1.0 },
             second_inductance: get(SECOND_INDUCTOR.path),
             coupling: get(COUPLING.path),
@@ -267,6 +273,21 @@ impl Stage {
     /// regulated.
     pub fn load_voltage(&self, condition: &StageCondition) -> f64 {
         load_voltage(self.second_stage.as_ref(), condition.output_voltage, condition.load_current)
+    }
+
+    /// How many equal phases there are, a whole number.
+    pub fn phases(&self) -> f64 {
+        self.phases
+    }
+
+    /// Whether the output bank carries switched current.
+    pub fn bank_is_switched(&self) -> bool {
+        self.plain.bank_is_switched()
+    }
+
+    /// Lowest frequency of the ripple at input and output [Hz]: that of all phases together.
+    pub fn ripple_frequency(&self) -> f64 {
+        self.switching_frequency * self.phases
     }
 
     /// Voltage of the output bank at a condition [V]: above the regulated one by the second stage's drop where the load's is regulated.
@@ -352,7 +373,9 @@ impl Stage {
             values[slot] = load_slot_value;
         }
         let sets = self.topology.sets(condition);
-        let Equations { on, off, cell } = drawn.equations(sets, &values)?;
+        let Equations { on, off, mut cell } = drawn.equations(sets, &values)?;
+        // What is sensed is the current of one phase.
+        cell.sense /= self.phases;
         // Of the load's own −I/V, 0 or I/V.
         let to_resistor = match self.load {
             LoadKind::Resistor => 0.0,

@@ -4,6 +4,7 @@
 //! something only on the constraint that ties the states together: put the states there with `rest` as that interval begins.
 //! The bank's series inductance is left out: an edge into it would be an impulse.
 
+use super::phases::PHASES;
 use super::rows::{Rows, SwitchRow};
 use super::signals::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::stage::{Intervals, Stage, StageCondition, circuit_finding};
@@ -72,8 +73,14 @@ impl Stage {
     /// The equations of the switching intervals at a condition.
     ///
     /// # Errors
-    /// A finding for a netlist without state equations.
+    /// A finding for a netlist without state equations, and for several phases.
     pub fn switching(&self, condition: &StageCondition) -> Result<SwitchingEquations, Finding> {
+        if self.phases > 1.0 {
+            let message = "Interleaved phases are not followed switch by switch.";
+            return Err(Finding::problem(PHASES.path, message).with_hint(
+                "one phase with inductance and resistances over N averages alike, but its ripple is N times as large",
+            ));
+        }
         let Intervals { on, off, cell, sets, inputs, .. } =
             self.intervals(condition).map_err(|e| circuit_finding(&e))?;
         let named = |name: &'static str| {

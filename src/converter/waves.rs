@@ -77,6 +77,13 @@ impl<'a> Waves<'a> {
         (current, on, off)
     }
 
+    /// Middle value, swing and duration [s] of the sum of output rows in each interval, which flows in those marked.
+    pub(super) fn lines(&self, rows: &[usize], flows: Flows) -> Vec<(f64, f64, f64)> {
+        let segments = self.segments.iter().zip(flows);
+        let line = |segment: &Segment<'_>, flows| if flows { self.line(rows, segment) } else { (0.0, 0.0) };
+        segments.map(|(segment, flows)| (line(segment, flows), segment.duration)).map(|((m, s), d)| (m, s, d)).collect()
+    }
+
     /// Figures of the sum of output rows, which flows in the intervals marked.
     pub(super) fn figures(&self, rows: &[usize], flows: Flows) -> CurrentFigures {
         let mut figures = CurrentFigures { peak: f64::NEG_INFINITY, least: f64::INFINITY, ..CurrentFigures::default() };

@@ -3,6 +3,7 @@
 use super::check::Report;
 use super::input_filter::{self, InputFilter};
 use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
+use crate::converter::FurtherValue;
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{Margins, Verdict};
@@ -40,6 +41,13 @@ struct Condition<'a> {
 }
 
 #[derive(Serialize)]
+struct Further {
+    key: &'static str,
+    value: Option<f64>,
+    word: Option<&'static str>,
+}
+
+#[derive(Serialize)]
 struct OperatingPoint {
     duty: f64,
     conduction: &'static str,
@@ -49,6 +57,7 @@ struct OperatingPoint {
     load_voltage: f64,
     conduction_loss: f64,
     boundary_load: Option<f64>,
+    further: Vec<Further>,
 }
 
 #[derive(Serialize)]
@@ -249,7 +258,16 @@ fn operating_point(detail: &Detail) -> OperatingPoint {
         load_voltage: point.load_voltage,
         conduction_loss: point.conduction_loss,
         boundary_load: detail.boundary_load,
+        further: point.further.iter().map(further).collect(),
     }
+}
+
+fn further(figure: &crate::converter::Further) -> Further {
+    let (value, word) = match figure.value {
+        FurtherValue::Number(value, _) => (Some(value), None),
+        FurtherValue::Word(word) => (None, Some(word)),
+    };
+    Further { key: figure.key, value, word }
 }
 
 fn inductors(detail: &Detail) -> Vec<Inductor> {

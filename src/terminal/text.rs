@@ -95,6 +95,9 @@ fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
         row(text, "Rectifier conducts", &format!("{} of the period", print(second, Unit::Fraction)));
     }
     row(text, "Conduction", &conduction(detail, analysis));
+    for figure in &point.further {
+        row(text, figure.name, &figure.text(6));
+    }
     for inductor in &point.inductors {
         let current = &inductor.current;
         let figures = format!(

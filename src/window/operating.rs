@@ -40,6 +40,9 @@ fn rows(point: &OperatingPoint) -> Vec<Row> {
         row("duty-ratio", "Duty ratio", quantity::print_digits(point.duty, Unit::One, 3), none()),
         row("conduction", "Conduction", point.conduction.word().to_owned(), none()),
     ];
+    for figure in &point.further {
+        rows.push(row(figure.key, figure.name, figure.text(3), figure.help.to_owned()));
+    }
     for inductor in &point.inductors {
         let current = &inductor.current;
         let text = format!("{}, peak {}", amperes(current.average), amperes(current.peak));

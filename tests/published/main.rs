@@ -19,4 +19,6 @@ mod reference;
 mod registry;
 mod sampled;
 mod switched;
+mod symbolic;
 mod textbook;
+mod topologies;

@@ -32,6 +32,7 @@ class Loop:
 
     def __init__(self, design, vin, load):
         self.design, self.vin, self.load = design, vin, load
+        self.stage = design.stage.at(vin, design.regulated)
         self.model = averaged(design.stage, vin, design.regulated, load)
         self.ramp = design.effective_ramp(vin)
         self.line_to_duty = -self.model.duty / vin if design.feedforward else 0.0
@@ -62,7 +63,7 @@ class Loop:
 
     def margins(self):
         """All crossovers and phase crossovers between fs/1e6 and fs/2, and the modulus margin."""
-        fs = self.design.stage.fs
+        fs = self.design.stage.pulse_frequency
         x = np.linspace(np.log(fs * 1e-6), np.log(fs / 2.0), 6001)
         t = self.loop(np.exp(x))
 
@@ -227,7 +228,7 @@ class RampResponse:
 def check_with_control(loop, a, b, c, d, events):
     """python-control as the second route: closed-loop responses and a simulation."""
     system = control.ss(a, b, c[None, :], d[None, :])
-    fs = loop.design.stage.fs
+    fs = loop.design.stage.pulse_frequency
     f = np.geomspace(fs / 1e5, fs / 20.0, 25)
     ours = loop.responses(f)
     theirs = system(1j * TAU * f)[0]
@@ -300,7 +301,7 @@ def pairs(values):
 
 def result(design):
     choices, values = design.entries()
-    fs = design.stage.fs
+    fs = design.stage.pulse_frequency
     check_compensator(design.network, fs)
     nominal = Loop(design, design.vin[1], design.load[1])
     frequencies = np.geomspace(fs / 1e5, fs / 2.0, FREQUENCIES)

@@ -7,6 +7,7 @@ entry paths of a design file.
 from dataclasses import dataclass
 
 from amplifiers import Network
+from cells import FORWARD_FAMILY, TWO_INDUCTORS
 from stages import Branch, Stage
 
 
@@ -80,6 +81,18 @@ class Design:
         for k, name in enumerate(["least", "nominal", "greatest"]):
             values[f"stage.input.{name}"] = self.vin[k]
             values[f"stage.load.{name}"] = self.load[k]
+        if stage.topology in ("flyback", *FORWARD_FAMILY):
+            values["stage.transformer.ratio"] = stage.ratio
+        if stage.topology in FORWARD_FAMILY:
+            values |= {"stage.transformer.magnetising": stage.magnetising, "stage.transformer.leakage": stage.leakage}
+        if stage.topology in TWO_INDUCTORS:
+            choices["stage.inductors"] = "coupled" if stage.coupling else "separate"
+            values["stage.second-inductor.inductance"], values["stage.second-inductor.resistance"] = stage.second
+            values["stage.coupling-capacitor.capacitance"], values["stage.coupling-capacitor.esr"] = stage.coupling_capacitor
+            if stage.coupling:
+                values["stage.inductors.coupling"] = stage.coupling
+        if stage.phases > 1:
+            values["stage.phases"] = float(stage.phases)
         if stage.rectifier == "diode":
             values |= {"stage.diode.drop": stage.drop, "stage.diode.resistance": stage.diode}
         else:

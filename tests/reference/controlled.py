@@ -33,6 +33,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from amplifiers import Network
+from cells import FORWARD_FAMILY, natural_ramp
 from closed_loop import Loop, pade_modal
 from conduction import STEP, conduct
 
@@ -65,23 +66,26 @@ def triangle_behind_filter(at_end_of_on, d, m, period, tau, before):
 
 
 def remainder(control, model, delay, period):
-    """What the law adds to Ri (F s + M T k d) (in discontinuous conduction: all of it), as a function of (d, M, on slope)."""
+    """What the law adds to Ri (F s + M T k d) (in discontinuous conduction: all of it), as a function of (d, M, on slope, natural ramp).
+
+    The natural ramp [A/s] is the magnetising current's share in what the switch's sensor reads: peak control's alone.
+    """
     ri, se, tau = control.sense, control.slope, control.filter
 
-    def continuous(d, m, on):
+    def continuous(d, m, on, more):
         peak = control.mode == "peak-current"
         w = triangle_behind_filter(peak, d, m, period, tau, delay)
         drift = on - m * (1.0 - d)
-        ramp = se * (d * period - delay) if peak else -se * ((1.0 - d) * period - delay)
+        ramp = (se + ri * more) * (d * period - delay) if peak else -se * ((1.0 - d) * period - delay)
         return ri * (w - delay * drift) + ramp
 
-    def discontinuous(d, m, on):
+    def discontinuous(d, m, on, more):
         if control.mode == "valley-current":
             return -se * ((1.0 - d) * period - delay)
         t = d * period - delay
-        return ri * on * (t - tau * (1.0 - np.exp(-t / tau)) if tau else t) + se * t
+        return ri * on * (t - tau * (1.0 - np.exp(-t / tau)) if tau else t) + (se + ri * more) * t
 
-    def voltage(d, m, on):
+    def voltage(d, m, on, more):
         return control.ramp * d
 
     if control.mode == "voltage":
@@ -92,16 +96,18 @@ def remainder(control, model, delay, period):
 class Law:
     """The linearised law v = [Ri (F s + M T k d)] + x-row x + u-row u + d-number d, v the delayed control voltage."""
 
-    def __init__(self, control, model, delay, period, line_to_duty=0.0):
+    def __init__(self, control, model, delay, period, per_volt=0.0, line_to_duty=0.0):
         function = remainder(control, model, delay, period)
-        point = (model.duty, model.difference.value, model.on_slope.value)
+        # `per_volt` [A/s/V]: natural ramp for each volt that magnetises a transformer.
+        self.natural = per_volt * model.magnetised.value
+        point = (model.duty, model.difference.value, model.on_slope.value, self.natural)
         gradient = []
-        for k in range(3):
+        for k in range(4):
             z = [complex(value) for value in point]
             z[k] += 1j * STEP
             gradient.append(function(*z).imag / STEP)
-        by_d, by_m, by_on = gradient
-        rows = [(by_m, model.difference), (by_on, model.on_slope)]
+        by_d, by_m, by_on, by_more = gradient
+        rows = [(by_m, model.difference), (by_on, model.on_slope), (by_more * per_volt, model.magnetised)]
         sampled = control.mode in ("peak-current", "valley-current") and model.conduction == "continuous"
         self.x = sum(g * row.x for g, row in rows)
         self.u = sum(g * row.u for g, row in rows)
@@ -120,11 +126,14 @@ class ControlledLoop(Loop):
         self.design, self.vin, self.load = design, vin, load
         # A ramp that follows the input has its entered height at the nominal one.
         self.control = replace(design.control, ramp=design.effective_ramp(vin))
-        self.period = 1.0 / design.stage.fs
+        self.period = 1.0 / design.stage.pulse_frequency
+        self.stage = design.stage.at(vin, design.regulated)
         self.model = conduct(design.stage, vin, design.regulated, load)
         if self.control.mode != "average-current":
             line = -self.model.duty / vin if design.feedforward else 0.0
-            self.law = Law(self.control, self.model, design.delay, self.period, line)
+            transformer = self.stage.topology in FORWARD_FAMILY
+            per_volt = natural_ramp(self.stage) / self.stage.magnetising if transformer else 0.0
+            self.law = Law(self.control, self.model, design.delay, self.period, per_volt, line)
 
     @property
     def sampled(self):
@@ -145,7 +154,8 @@ class ControlledLoop(Loop):
         c, m, d, period = self.control, self.model, self.model.duty, self.period
         peak = c.mode == "peak-current"
         q = d if peak else 1.0 - d
-        g = 1.0 - q + c.slope / c.sense / m.difference.value
+        more = self.law.natural if peak else 0.0
+        g = 1.0 - q + (c.slope / c.sense + more) / m.difference.value
         p, e = self.memory()
         if p == 0.0:
             return 1.0 - 1.0 / g

@@ -11,8 +11,27 @@ import numpy as np
 from scipy.linalg import expm
 from scipy.optimize import brentq
 
+from cells import FORWARD_FAMILY
 from conduction import full
 from stages import equations
+
+
+def magnetise(stage, control, found, names):
+    """Adds a transformer's magnetising current where a sensor in the switch reads it; also what becomes of each state at the clock.
+
+    A forward converter's current starts from zero every period, a double-ended one's reverses with every pulse.
+    """
+    if stage.topology not in FORWARD_FAMILY or control.mode != "peak-current" or not np.isfinite(stage.magnetising):
+        return names, np.ones(len(names))
+    n = len(names)
+    for which, (a, b, c, d) in found.items():
+        wide = np.zeros((n + 1, n + 1))
+        wide[:n, :n] = a
+        wide[n, :n] = c[4] / stage.magnetising
+        read = np.zeros((len(c), 1))
+        read[1] = 1.0 if which == "on" else 0.0
+        found[which] = (wide, np.vstack([b, d[4] / stage.magnetising]), np.hstack([c, read]), d)
+    return [*names, "im"], np.append(np.ones(n), 0.0 if stage.topology == "forward" else -1.0)
 
 
 class Orbit:
@@ -21,14 +40,23 @@ class Orbit:
     def __init__(self, loop, closed=False):
         design, control = loop.design, loop.control
         self.loop, self.closed, self.control = loop, closed, control
+        self.since = 0.0  # how old the comparator's interval is when the orbit begins [s]
         self.period, self.delay = loop.period, design.delay
-        found, names = equations(design.stage, design.regulated, loop.load)
+        stage = loop.stage
+        self.discontinuous = loop.model.conduction == "discontinuous"
+        found, names = equations(stage, design.regulated, loop.load, not self.discontinuous)
+        names, turn = magnetise(stage, control, found, names)
         u = full(loop.vin)
         n_s = len(names)
         filtered = control.filter > 0.0
         inner = control.inner.state_space() if control.mode == "average-current" else None
         outer = design.network.state_space() if closed else None
         n = n_s + int(filtered) + (len(inner[0]) if inner else 0) + (len(outer[0]) if outer else 0)
+        self.switched = np.zeros(n)
+        self.switched[:n_s] = stage.sensed(names)
+        # What becomes of the state from the end of one period to the start of the next.
+        self.turn = np.eye(n)
+        self.turn[:n_s, :n_s] = np.diag(turn)
         self.n, width = n, n + 2  # columns: states, the constant 1, the control voltage where it is given
         at = n_s + int(filtered)
         i_slot = slice(at, at + (len(inner[0]) if inner else 0))
@@ -45,7 +73,7 @@ class Orbit:
         vc = control.divider * (vc - control.offset * row(n))
         self.intervals = {}
         for which, (a, b, c, d) in found.items():
-            stage_rows, outputs = np.zeros((n_s, width)), np.zeros((3, width))
+            stage_rows, outputs = np.zeros((n_s, width)), np.zeros((len(c), width))
             stage_rows[:, :n_s], stage_rows[:, n] = a, b @ u
             outputs[:, :n_s], outputs[:, n] = c, d @ u
             rows = np.zeros((n, width))
@@ -70,9 +98,11 @@ class Orbit:
             self.compare, self.slope = np.zeros(width), control.ramp / self.period
             self.compare[i_slot] = inner[2]
         else:
-            self.compare = vc - control.sense * row(n_s if filtered else 0)
+            read = np.zeros(width)
+            read[:n_s] = found["on"][2][1]
+            read = row(n_s) if filtered else read
+            self.compare = vc - control.sense * read
             self.slope = control.slope if control.mode == "peak-current" else -control.slope
-        self.discontinuous = loop.model.conduction == "discontinuous"
         self._find()
 
     def phases(self, duty, second):
@@ -102,7 +132,7 @@ class Orbit:
         f, g = np.eye(n), np.zeros(n)
         for _, _, step in steps:
             f, g = step[:n, :n] @ f, step[:n, :n] @ g + step[:n, n:n + 2] @ given
-        start = np.linalg.solve(np.eye(n) - f, g)
+        start = np.linalg.solve(np.eye(n) - self.turn @ f, self.turn @ g)
         state, ends, total = start, [], 0.0
         for which, length, step in steps:
             c = self.intervals[which][3]
@@ -115,7 +145,11 @@ class Orbit:
     def _trip(self, ends, duty, second, vc):
         """How far the comparator is from tripping where it should [V]."""
         length = self.phases(duty, second)[0][1]
-        return self.compare @ np.concatenate([ends[0], [1.0, vc]]) - self.slope * length
+        return self.compare @ np.concatenate([ends[0], [1.0, vc]]) - self.slope * (length + self.since)
+
+    def bracket(self, duty):
+        """Where to look for the exact duty ratio."""
+        return 0.85 * duty, min(1.15 * duty, 0.5 + 0.5 * duty)
 
     def _find(self):
         model = self.loop.model
@@ -124,7 +158,7 @@ class Orbit:
         def second_of(duty, vc):
             if not self.discontinuous:
                 return 1.0 - duty
-            return brentq(lambda d2: self._repeat(duty, d2, vc)[1][2][0], 0.5 * model.second,
+            return brentq(lambda d2: self.switched @ self._repeat(duty, d2, vc)[1][2], 0.5 * model.second,
                           min(1.5 * model.second, 1.0 - duty), xtol=1e-15, rtol=1e-14)
 
         # An open loop is held at its output voltage; a closed one finds it, through the comparator.
@@ -133,13 +167,13 @@ class Orbit:
                 second = second_of(duty, 0.0)
                 return self._trip(self._repeat(duty, second, 0.0)[1], duty, second, 0.0)
 
-            duty = brentq(off, 0.85 * model.duty, min(1.15 * model.duty, 0.5 + 0.5 * model.duty), xtol=1e-15, rtol=1e-14)
+            duty = brentq(off, *self.bracket(model.duty), xtol=1e-15, rtol=1e-14)
             vc = 0.0
         else:
             def off(duty):
                 return self._repeat(duty, second_of(duty, 0.0), 0.0)[2] - target
 
-            duty = brentq(off, 0.85 * model.duty, min(1.15 * model.duty, 0.5 + 0.5 * model.duty), xtol=1e-15, rtol=1e-14)
+            duty = brentq(off, *self.bracket(model.duty), xtol=1e-15, rtol=1e-14)
             second = second_of(duty, 0.0)
             at = [self._trip(self._repeat(duty, second, vc)[1], duty, second, vc) for vc in (0.0, 1.0)]
             vc = at[0] / (at[0] - at[1])
@@ -175,8 +209,9 @@ class Orbit:
                 trip = trip * np.exp(-1j * omega * self.delay)
                 continue
             if event == "clock":
+                psi = self.turn @ psi
                 continue
-            moved = -psi[0] / slope[0] if event == "zero" else trip
+            moved = -(self.switched @ psi) / (self.switched @ slope) if event == "zero" else trip
             following = self.intervals[phases[k + 1][0]]
             slope_after = following[0] @ state + np.column_stack([following[1], following[2]]) @ given
             psi = psi + np.outer(slope - slope_after, moved)

@@ -7,10 +7,12 @@ Source of the method: Middlebrook and Cuk, "A general unified approach to modell
 (1976); Erickson and Maksimovic, Fundamentals of Power Electronics, section on state-space averaging (from memory).
 """
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from scipy.optimize import brentq
+
+from cells import DOUBLE_ENDED, along, cell, sensed, state_names
 
 INPUTS = ["vin", "one", "io"]  # source voltage [V], a constant 1 for drops and constant load current, extra load current [A]
 
@@ -43,8 +45,8 @@ class Filter:
 class Stage:
     """A power stage as an engineer enters it."""
 
-    topology: str  # "buck", "boost" or "buck-boost"
-    fs: float  # switching frequency [Hz]
+    topology: str  # as in a design file
+    fs: float  # switching frequency of each switch [Hz]
     inductance: float  # [H]
     winding: float  # [ohm]
     switch: float  # on resistance [ohm]
@@ -58,11 +60,40 @@ class Stage:
     synchronous: float = 0.0  # on resistance of the synchronous rectifier [ohm]
     input_filter: Filter | None = None  # between the source's resistance and the stage's input
     output_filter: Filter | None = None  # between the bank and the load
+    ratio: float = 1.0  # transformer: secondary over primary turns
+    magnetising: float = np.inf  # transformer: inductance at the primary of a forward-type stage [H]
+    leakage: float = 0.0  # transformer: at the primary [H]
+    second: tuple = ()  # the output-side inductor of a SEPIC or Cuk stage: ([H], winding [ohm])
+    coupling: float = 0.0  # between the two inductors
+    coupling_capacitor: tuple = ()  # ([F], esr [ohm])
+    phases: int = 1  # equal phases driven alike, a period's Nth apart
+    region: str = ""  # of a four-switch stage: "buck" or "boost", once its voltages are known
+
+    @property
+    def pulse_frequency(self):
+        """How often the output filter sees a pulse [Hz]: the period of every law."""
+        return self.fs * (2.0 if self.topology in DOUBLE_ENDED else 1.0)
+
+    def at(self, vin, vout):
+        """The stage at its voltages, which decide the switches a four-switch stage moves."""
+        return replace(self, region="buck" if vin > vout else "boost") if self.topology == "four-switch" else self
+
+    def vector(self, shares, names):
+        """Numbers by state as a vector."""
+        return np.array([shares.get(name, 0.0) for name in names])
+
+    def sensed(self, names):
+        """Row of what the switch's current sensor reads."""
+        return self.vector(sensed(self), names)
+
+    def along(self, names):
+        """How the states go with one ampere of that."""
+        return self.vector(along(self), names)
 
 
 @dataclass
 class Averaged:
-    """Operating point and small-signal model x' = A x + B u + F d, y = C x + D u + G d about it; y = (vout, iL, iin)."""
+    """Operating point and small-signal model x' = A x + B u + F d, y = C x + D u + G d about it; y = (vout, sensed current, iin, bank)."""
 
     duty: float
     inductor_current: float  # [A]
@@ -102,11 +133,17 @@ def branch_currents(v_node_of, injected, branches):
     return v_node, currents
 
 
-def equations(stage, vout, load_current):
-    """{interval: (A, B, C, D)} of the on, off and idle interval for outputs (vout, iL, iin), and the names of the states."""
+def equations(stage, vout, load_current, commutates=True, cells=None):
+    """{interval: (A, B, C, D)} of the on, off and idle interval for outputs (vout, sensed current, iin, voltage of the bank, voltage that
+    magnetises a transformer), and the names of the states.  The sensed current is the switch's, which flows on in the rectifier.
+
+    `cells`: (names of their states, {interval: function of (row, one) giving a cell}) in place of the stage's own three.
+    """
     branches = stage.bank
     with_esl = any(branch.esl > 0.0 for branch in branches)
-    names = ["iL"] + [f"v{k}" for k in range(len(branches))]
+    own, made = cells or (state_names(stage.topology), {
+        which: lambda row, one, which=which: cell(stage, which, row, one, commutates) for which in ["on", "off", "idle"]})
+    names = own + [f"v{k}" for k in range(len(branches))]
     if with_esl:
         names += [f"i{k}" for k in range(len(branches))]
     if stage.input_capacitor:
@@ -120,8 +157,8 @@ def equations(stage, vout, load_current):
     def row(name):
         return np.array([1.0 if column == name else 0.0 for column in columns])
 
-    i_l, vin, one, io = row("iL"), row("vin"), row("one"), row("io")
-    zero = np.zeros(len(columns))
+    vin, one, io = row("vin"), row("one"), row("io")
+    read = stage.sensed(columns)
 
     # The load: a conductance in parallel with a constant current, both at the regulated output.
     conductance, constant = {
@@ -198,38 +235,18 @@ def equations(stage, vout, load_current):
         return v_bank, v_out
 
     def interval(which):
-        on = which == "on"
-        resistance = stage.switch if on else (stage.diode if stage.rectifier == "diode" else stage.synchronous)
-        drop = 0.0 if on or stage.rectifier != "diode" else stage.drop
-        lost = (resistance + stage.winding) * i_l + drop * one
-        if which == "idle":
-            drawn, delivered = zero, zero
-        elif stage.topology == "buck":
-            drawn, delivered = (i_l if on else zero), i_l
-        elif stage.topology == "boost":
-            drawn, delivered = i_l, (zero if on else i_l)
-        else:
-            drawn, delivered = (i_l, zero) if on else (zero, i_l)
+        part = made[which](row, one)
         slopes = {}
-        v_node, i_in = input_node(drawn, slopes)
-        v_bank, v_out = output_nodes(delivered, slopes)
-        # Voltage across the inductor, losses taken off; none while the current rests at zero.
-        v_l = {
-            ("buck", "on"): v_node - v_bank,
-            ("buck", "off"): -v_bank,
-            ("boost", "on"): v_node,
-            ("boost", "off"): v_node - v_bank,
-            ("buck-boost", "on"): v_node,
-            ("buck-boost", "off"): -v_bank,
-        }.get((stage.topology, which), lost) - lost
-        slopes["iL"] = v_l / stage.inductance
-
+        v_node, i_in = input_node(part.drawn, slopes)
+        v_bank, v_out = output_nodes(part.delivered, slopes)
+        slopes |= part.slopes(v_node, v_bank)
         n = len(names)
         ab = np.array([slopes[name] for name in names])
-        cd = np.array([v_out, zero if which == "idle" else i_l, i_in])
+        magnetised = part.magnetised(v_node) if part.magnetised else 0.0 * read
+        cd = np.array([v_out, 0.0 * read if which == "idle" else read, i_in, v_bank, magnetised])
         return ab[:, :n], ab[:, n:], cd[:, :n], cd[:, n:]
 
-    return {which: interval(which) for which in ["on", "off", "idle"]}, names
+    return {which: interval(which) for which in made}, names
 
 
 def intervals(stage, vout, load_current):
@@ -240,6 +257,7 @@ def intervals(stage, vout, load_current):
 
 def averaged(stage, vin, vout, load_current, check=True):
     """Duty ratio with all losses for the wanted output (the solution below the conversion curve's peak), and the model."""
+    stage = stage.at(vin, vout)
     on, off, names = intervals(stage, vout, load_current)
     u = np.array([vin, 1.0, 0.0])
 
@@ -262,8 +280,8 @@ def averaged(stage, vin, vout, load_current, check=True):
     y = c @ x + d @ u
     f = (on[0] - off[0]) @ x + (on[1] - off[1]) @ u
     g = (on[2] - off[2]) @ x + (on[3] - off[3]) @ u
-    on_slope = (on[0] @ x + on[1] @ u)[0]
+    on_slope = stage.sensed(names) @ (on[0] @ x + on[1] @ u)
     model = Averaged(duty, y[1], y[2], a, b, c, d, f, g, on_slope, names)
     # Continuous conduction is what these equations are about.
-    assert not check or y[1] > 0.5 * on_slope * duty / stage.fs, "discontinuous conduction"
+    assert not check or y[1] > 0.5 * on_slope * duty / stage.pulse_frequency, "discontinuous conduction"
     return model

@@ -196,7 +196,7 @@ fn bank(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint], ripple: f64
             ),
         ),
         (
-            rms / (2.0 * design.stage.switching_frequency * CHARGE_SHARE * ripple),
+            rms / (2.0 * design.stage.ripple_frequency() * CHARGE_SHARE * ripple),
             format!("ripple: ΔV = I_rms / (2·fs·C) at most, with {} RMS in the bank", text(rms, Unit::Ampere)),
         ),
     ];

@@ -5,6 +5,7 @@
 
 use crate::converter::drawing::StageDrawing;
 use crate::converter::landmark::{Form, RestingForms};
+use crate::converter::phases::PHASES;
 use crate::converter::topology::{Reach, Topology};
 use std::f64::consts::{PI, TAU};
 
@@ -15,6 +16,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     line: "Output above the input; the inductor stands at the input.",
     reach: Reach::AboveInput,
     draw,
+    entries: &[&PHASES],
     ideal_duty: |v| 1.0 - v.input / v.output,
     landmarks: &[
         Form::resonance("(1 − D) / (2π·√(L·C))", |t| {

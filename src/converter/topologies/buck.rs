@@ -5,6 +5,7 @@
 
 use crate::converter::drawing::StageDrawing;
 use crate::converter::landmark::{Form, RestingForms};
+use crate::converter::phases::PHASES;
 use crate::converter::topology::{Reach, Topology};
 use std::f64::consts::{PI, TAU};
 
@@ -15,6 +16,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     line: "Output below the input; the switch stands between input and inductor.",
     reach: Reach::BelowInput,
     draw,
+    entries: &[&PHASES],
     ideal_duty: |v| v.output / v.input,
     landmarks: &[Form::resonance("1 / (2π·√(L·C))", |t| {
         Some(1.0 / (TAU * (t.inductance * t.capacitance).sqrt()))

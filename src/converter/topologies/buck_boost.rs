@@ -6,6 +6,7 @@
 
 use crate::converter::drawing::StageDrawing;
 use crate::converter::landmark::{Form, RestingForms};
+use crate::converter::phases::PHASES;
 use crate::converter::topology::{Reach, Topology};
 use std::f64::consts::{PI, TAU};
 
@@ -16,6 +17,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     line: "Negative output of any magnitude; the inductor stands between switch node and ground.",
     reach: Reach::Any,
     draw,
+    entries: &[&PHASES],
     ideal_duty: |v| v.output / (v.input + v.output),
     highest_voltage: |v| v.input + v.output,
     landmarks: &[

@@ -1,0 +1,36 @@
+//! Transformers, two inductors, four switches and interleaved phases against independent calculations in Python.
+//!
+//! *Source*: `tests/reference/topologies.py`: cells written by hand (`tests/reference/cells.py`), averaged in both conduction modes, and
+//! the exact switched stage (`tests/reference/orbit.py`; N phases each by itself in `tests/reference/interleaved.py`). Nothing there knows
+//! this crate.
+//!
+//! *Tolerance*: 1e-6 against the averaged equations. Against the switched stage, to a fifth of the pulse frequency, what averaging costs.
+
+use crate::controlled::{compare_laws, compare_switched};
+use crate::reference::{compare_conditions, compare_responses, compare_steps, designs};
+use polewright::design::Design;
+use serde_json::Value;
+
+const TOPOLOGIES: &str = include_str!("../reference/topologies.json");
+
+/// Every design of one topology.
+fn each(topology: &str, least: usize, compare: impl Fn(&Design, &Value)) {
+    let found: Vec<_> = designs(TOPOLOGIES, |row| row["choices"]["stage.topology"].as_str() == Some(topology));
+    assert!(found.len() >= least, "{} of {topology}", found.len());
+    for (design, row) in &found {
+        compare(design, row);
+    }
+}
+
+fn agree(topology: &str, least: usize) {
+    each(topology, least, compare_responses);
+    each(topology, least, compare_conditions);
+    each(topology, least, compare_laws);
+    each(topology, least, compare_steps);
+    each(topology, least, compare_switched);
+}
+
+#[test]
+fn flyback_in_both_conduction_modes_and_with_an_output_filter() {
+    agree("flyback", 3);
+}
