@@ -29,6 +29,7 @@ mod steps;
 pub mod terms;
 #[cfg(test)]
 mod tests;
+mod transient;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
 pub use filter_result::{
@@ -41,3 +42,4 @@ pub use result::{
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,
     StepFigures, Steps, WindowEdge, Worst,
 };
+pub use transient::{MOST_PERIODS, Transient, TransientEvent, TransientFigures, TransientRequest, transient};

@@ -15,11 +15,14 @@ mod build;
 mod probes;
 mod progress;
 mod system;
-mod transient;
 #[cfg(test)]
 mod tests;
+mod transient;
 
 pub use build::{Closing, Driven, Joined};
 pub use progress::{Cancel, Progress};
-pub use transient::{Stopped, Trace, Waveforms};
 pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};
+pub use transient::{
+    Amplifiers, AtRest, Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, Signal, Stopped, Trace, Waveforms,
+    simulate,
+};

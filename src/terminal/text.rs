@@ -71,7 +71,7 @@ pub(super) fn padded(text: &str, width: usize) -> String {
     format!("{text}{}", " ".repeat(missing))
 }
 
-fn row(text: &mut String, name: &str, value: &str) {
+pub(super) fn row(text: &mut String, name: &str, value: &str) {
     let _ = writeln!(text, "  {}{value}", padded(name, NAMES));
 }
 
@@ -265,7 +265,7 @@ fn requirements(text: &mut String, verdicts: &[RequirementVerdict]) {
     text.push('\n');
 }
 
-fn findings(text: &mut String, findings: &[Finding]) {
+pub(super) fn findings(text: &mut String, findings: &[Finding]) {
     if findings.is_empty() {
         return;
     }

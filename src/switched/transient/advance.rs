@@ -53,14 +53,7 @@ const TURNS: usize = 60;
 impl Mode {
     /// Advances the extended state by at most `limit`, to the first instant at which one of the watches (their places as bits) leaves
     /// its interval. `ramp` is what the comparator's signal is compared with.
-    pub(super) fn advance(
-        &self,
-        z: &mut [f64],
-        limit: f64,
-        active: u32,
-        ramp: Ramp,
-        scratch: &mut Scratch,
-    ) -> Reached {
+    pub(super) fn advance(&self, z: &mut [f64], limit: f64, active: u32, ramp: Ramp, scratch: &mut Scratch) -> Reached {
         let moving = z[self.flow.n + self.flow.m..].iter().any(|s| *s != 0.0);
         let mut elapsed = 0.0;
         // A step of rounding is no step.
@@ -98,11 +91,6 @@ impl Mode {
             }
         }
         Reached { elapsed: limit, ended_by: None }
-    }
-
-    /// Advances without watching.
-    pub(super) fn carry(&self, z: &mut [f64], time: f64, scratch: &mut Scratch) {
-        self.advance(z, time, 0, Ramp::default(), scratch);
     }
 
     fn take(&self, z: &mut [f64], x: &[f64], time: f64) {
@@ -267,7 +255,11 @@ fn leaves(watch: &Watch, polynomial: &[f64], within: f64) -> Option<f64> {
     let mut x = low + (bracket - low) * start / (start - value(bracket).0);
     for _ in 0..TURNS {
         let (v, slope) = value(x);
-        if v > 0.0 { low = x } else { high = x }
+        if v > 0.0 {
+            low = x
+        } else {
+            high = x
+        }
         let mut next = x - v / slope;
         if !(next > low && next < high) {
             if (next - x).abs() <= 2.0 * f64::EPSILON {

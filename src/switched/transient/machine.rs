@@ -124,7 +124,8 @@ impl Machine {
             z[k] = x / plant.scale[k];
         }
         let modes = vec![None; 3 * 3_usize.pow(u32::try_from(limiters).unwrap_or(0))];
-        let sides = plant.limiters.iter().map(|l| if matches!(l.act, Act::Sink { .. }) { Side::Greatest } else { Side::Free });
+        let sides =
+            plant.limiters.iter().map(|l| if matches!(l.act, Act::Sink { .. }) { Side::Greatest } else { Side::Free });
         Machine {
             scratch: Scratch::new(n),
             sides: sides.collect(),
@@ -159,17 +160,13 @@ impl Machine {
     /// What limits acted, and in how many periods.
     pub(super) fn limited(&self, by_current: u64) -> Vec<(&'static str, u64)> {
         let limiters = self.plant.limiters.iter().zip(&self.acted).map(|(limiter, count)| (limiter.name, *count));
-        limiters
-            .chain([("current limit", by_current)])
-            .filter(|(name, count)| !name.is_empty() && *count > 0)
-            .collect()
+        limiters.chain([("current limit", by_current)]).filter(|(name, count)| !name.is_empty() && *count > 0).collect()
     }
 
-    /// States of the system now.
-    #[cfg(test)]
-    pub(super) fn state(&self) -> DVector<f64> {
+    /// States of the system now, and its configuration.
+    pub(super) fn state(&self) -> (DVector<f64>, Configuration) {
         let order = self.plant.integral();
-        DVector::from_fn(order, |k, _| self.z[k] * self.plant.scale[k])
+        (DVector::from_fn(order, |k, _| self.z[k] * self.plant.scale[k]), self.configuration)
     }
 
     /// Values of the recorded probes now.
@@ -537,15 +534,29 @@ fn other_side(plant: &Plant, mode: &Mode, z: &[f64], sides: &[Side]) -> Option<(
         let signal = dot(&held.signal, &z[..held.signal.len()]);
         let (least, greatest) = (limiter.least, limiter.greatest);
         let next = match limiter.act {
-            Act::Sink { .. } => if signal > 0.0 { Side::Greatest } else { Side::Free },
+            Act::Sink { .. } => {
+                if signal > 0.0 {
+                    Side::Greatest
+                } else {
+                    Side::Free
+                }
+            }
             Act::Saturate => {
-                if signal > greatest { Side::Greatest } else if signal < least { Side::Least } else { Side::Free }
+                if signal > greatest {
+                    Side::Greatest
+                } else if signal < least {
+                    Side::Least
+                } else {
+                    Side::Free
+                }
             }
             Act::Hold => {
                 let rate = dot(&held.rate, &z[..held.rate.len()]);
                 let close = AT_LIMIT * (greatest.abs().min(1e3) + least.abs().min(1e3));
                 match side {
-                    Side::Free if signal > greatest + close || signal >= greatest - close && rate > 0.0 => Side::Greatest,
+                    Side::Free if signal > greatest + close || signal >= greatest - close && rate > 0.0 => {
+                        Side::Greatest
+                    }
                     Side::Free if signal < least - close || signal <= least + close && rate < 0.0 => Side::Least,
                     Side::Greatest if rate < 0.0 => Side::Free,
                     Side::Least if rate > 0.0 => Side::Free,

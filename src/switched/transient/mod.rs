@@ -7,6 +7,7 @@ mod limiters;
 mod machine;
 mod mode;
 mod plant;
+mod rest;
 mod run;
 mod samples;
 mod waveforms;
@@ -14,7 +15,8 @@ mod waveforms;
 pub use drive::Signal;
 pub use limiters::Amplifiers;
 pub use machine::Stopped;
-pub use run::{Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, run};
+pub use rest::AtRest;
+pub use run::{Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, simulate};
 pub use waveforms::{Trace, Waveforms};
 
 #[cfg(test)]

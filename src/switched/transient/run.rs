@@ -1,13 +1,12 @@
 //! A run of the closed loop from clock to clock: what drives it, and what came of it.
 
-use super::super::{Cancel, Configuration, Progress, Rule, SwitchedSystem, inputs};
+use super::super::{Cancel, Configuration, Progress, SwitchedSystem, inputs};
 use super::drive::Signal;
 use super::limiters::{Amplifiers, limiters, sink};
 use super::machine::{ConstantPower, Machine, Setup, Stopped};
 use super::plant::{Forcing, Limiter, Plant};
 use super::samples::Samples;
 use super::waveforms::Waveforms;
-use crate::control::Edge;
 use nalgebra::DVector;
 
 /// How the load takes its current in time.
@@ -85,6 +84,8 @@ pub struct Run {
     pub skipped: u64,
     /// Values of the recorded probes at the times asked for.
     pub kept: Vec<Vec<f64>>,
+    /// States and configuration at the last clock.
+    pub end: (DVector<f64>, Configuration),
     /// Why it ended early; none where it did not.
     pub stopped: Option<Stopped>,
     /// Whether it was cancelled.
@@ -185,7 +186,14 @@ pub(super) fn machine(system: &SwitchedSystem, scenario: &Scenario<'_>) -> Machi
         power,
     };
     let plant = Plant::new(system, &forcing, all);
-    Machine::new(plant, setup, signals, (scenario.from_s, &scenario.start.0), scenario.start.1, samples(system, scenario))
+    Machine::new(
+        plant,
+        setup,
+        signals,
+        (scenario.from_s, &scenario.start.0),
+        scenario.start.1,
+        samples(system, scenario),
+    )
 }
 
 fn samples(system: &SwitchedSystem, scenario: &Scenario<'_>) -> Samples {
@@ -198,13 +206,21 @@ fn samples(system: &SwitchedSystem, scenario: &Scenario<'_>) -> Samples {
     let periods = (scenario.to_s - scenario.from_s) / system.period_s;
     // Some points for each column, but at least at eighths and at most at 32nds of a period.
     let wanted = 3.0 * scenario.columns as f64 / periods.max(1.0);
-    let spacing = if wanted > 16.0 { 1 } else if wanted > 8.0 { 2 } else if wanted > 4.0 { 4 } else { 8 };
+    let spacing = if wanted > 16.0 {
+        1
+    } else if wanted > 8.0 {
+        2
+    } else if wanted > 4.0 {
+        4
+    } else {
+        8
+    };
     let waveforms = Waveforms::new(&shown, scenario.from_s, scenario.to_s, scenario.columns);
     Samples::new(waveforms, spacing, scenario.times_s.clone())
 }
 
 /// Runs the closed loop.
-pub fn run(
+pub fn simulate(
     system: &SwitchedSystem,
     scenario: &Scenario<'_>,
     cancel: &Cancel,
@@ -212,7 +228,7 @@ pub fn run(
     stream: &mut dyn FnMut(&Waveforms),
 ) -> Run {
     let mut machine = machine(system, scenario);
-    let total = ((scenario.to_s - scenario.from_s) / system.period_s).ceil().max(1.0) as u64;
+    let total = ((scenario.to_s - scenario.from_s) / system.period_s).round().max(1.0) as u64;
     let shown_every = (total / SHOWN).max(1);
     let mut cycles = Vec::with_capacity(usize::try_from(total).unwrap_or(0));
     let (mut stopped, mut cancelled, mut begun) = (None, false, false);
@@ -249,6 +265,7 @@ pub fn run(
         progress.set(1.0);
     }
     let limited = machine.limited(current_limited);
+    let end = machine.state();
     let samples = machine.samples;
     let extremes = samples.least.iter().copied().zip(samples.greatest.iter().copied()).collect();
     Run {
@@ -259,12 +276,8 @@ pub fn run(
         rested,
         skipped,
         kept: samples.kept,
+        end,
         stopped,
         cancelled,
     }
-}
-
-/// Whether the clock closes the switch.
-pub(super) fn clock_closes(rule: &Rule) -> bool {
-    !matches!(rule, Rule::Compared(comparator) if comparator.edge == Edge::Valley)
 }

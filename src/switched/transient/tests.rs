@@ -57,7 +57,10 @@ impl Case {
     fn scenario(&self, periods: usize) -> Scenario<'_> {
         let places = &self.system.places;
         Scenario {
-            amplifiers: Amplifiers { outer: &self.outer.limits, inner: self.inner.as_ref().map_or(&[], |inner| &inner.limits) },
+            amplifiers: Amplifiers {
+                outer: &self.outer.limits,
+                inner: self.inner.as_ref().map_or(&[], |inner| &inner.limits),
+            },
             input_voltage: Signal::constant(self.point.input_voltage),
             reference: Signal::constant(self.reference),
             sink: Signal::constant(0.0),
@@ -75,7 +78,7 @@ impl Case {
     }
 
     fn run(&self, scenario: &Scenario<'_>) -> Run {
-        run(&self.system, scenario, &Cancel::new(), &Progress::new(), &mut |_| {})
+        simulate(&self.system, scenario, &Cancel::new(), &Progress::new(), &mut |_| {})
     }
 }
 
@@ -86,7 +89,12 @@ fn starts_from_zero_and_comes_to_the_operating_point() {
         let begun = std::time::Instant::now();
         let run = case.run(&case.scenario(5000));
         eprintln!("{mode}: {:?} {:?}", begun.elapsed(), run.stopped);
-        eprintln!("{:?} {:?} {:?}", run.limited, run.extremes, run.cycles.iter().step_by(500).map(|c| (c.mean_v, c.duty)).collect::<Vec<_>>());
+        eprintln!(
+            "{:?} {:?} {:?}",
+            run.limited,
+            run.extremes,
+            run.cycles.iter().step_by(500).map(|c| (c.mean_v, c.duty)).collect::<Vec<_>>()
+        );
         eprintln!("{} {}", case.point.load_voltage, case.point.duty);
     }
 }

@@ -41,7 +41,14 @@ impl Waveforms {
             least: vec![f64::INFINITY; columns],
             greatest: vec![f64::NEG_INFINITY; columns],
         });
-        Waveforms { from_s, column_s: (to_s - from_s) / columns as f64, filled: 0, traces: traces.collect(), last: Vec::new(), last_s: from_s }
+        Waveforms {
+            from_s,
+            column_s: (to_s - from_s) / columns as f64,
+            filled: 0,
+            traces: traces.collect(),
+            last: Vec::new(),
+            last_s: from_s,
+        }
     }
 
     /// Columns in all.
@@ -81,7 +88,8 @@ impl Waveforms {
     fn bridge(&mut self, place: usize, time_s: f64, values: &[f64]) {
         let (last_s, from) = (self.last_s, self.filled);
         for k in from..place {
-            let share = if time_s > last_s { ((self.time_s(k) - last_s) / (time_s - last_s)).clamp(0.0, 1.0) } else { 1.0 };
+            let share =
+                if time_s > last_s { ((self.time_s(k) - last_s) / (time_s - last_s)).clamp(0.0, 1.0) } else { 1.0 };
             for ((trace, before), value) in self.traces.iter_mut().zip(&self.last).zip(values) {
                 let between = before + share * (value - before);
                 trace.least[k] = between;
