@@ -5,7 +5,7 @@
 use crate::switched::{Trace, Waveforms};
 use std::io::{self, Write};
 
-/// Name of a signal's column: "load voltage" in volts becomes "load_voltage_v".
+/// Name of a signal's column: "load voltage" in volts becomes `load_voltage_v`.
 fn heading(trace: &Trace, which: &str) -> String {
     let unit = trace.unit.symbol().to_lowercase();
     format!("{}_{unit}_{which}", trace.name.replace([' ', '-'], "_"))

@@ -24,6 +24,9 @@ struct Followed {
     transient: Transient,
 }
 
+/// The run with its notices, or what cannot be used.
+type Ran = Result<(Followed, Vec<Finding>), Vec<Finding>>;
+
 /// Follows the design and reports to `out`; in text, what cannot be used is told on `err`.
 ///
 /// # Errors
@@ -63,9 +66,9 @@ pub fn transient(request: &TransientCommand, out: &mut impl Write, err: &mut imp
         printable(&report(&heading, request, followed.as_ref(), &notices))
     };
     if followed.is_none() && !request.json {
-        err.write_all(text.as_bytes())?
+        err.write_all(text.as_bytes())?;
     } else {
-        out.write_all(text.as_bytes())?
+        out.write_all(text.as_bytes())?;
     }
     out.flush()?;
     written?;
@@ -73,7 +76,7 @@ pub fn transient(request: &TransientCommand, out: &mut impl Write, err: &mut imp
 }
 
 /// Title of the design where it can be read; the run with its notices, or what cannot be used.
-fn run(request: &TransientCommand) -> (Option<String>, Result<(Followed, Vec<Finding>), Vec<Finding>>) {
+fn run(request: &TransientCommand) -> (Option<String>, Ran) {
     let mut design = match file::load(&request.file) {
         Ok(design) => design,
         Err(error) => return (None, Err(error.findings())),

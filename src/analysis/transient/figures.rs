@@ -14,12 +14,14 @@ pub(super) struct Asked {
     pub(super) period_s: f64,
     /// Half width of the settling band [V].
     pub(super) band_v: f64,
+    /// Voltage before where nothing is shown of it [V].
+    pub(super) at_first_v: f64,
     /// When the event ends: an overload's end, else 0 [s].
     pub(super) over_s: f64,
 }
 
-/// The last share of the run is taken as its end …
-const END: f64 = 0.02;
+/// The last of so many parts of the run is taken as its end …
+const END: usize = 50;
 /// … of at most so many periods.
 const END_PERIODS: usize = 200;
 
@@ -27,8 +29,8 @@ pub(super) fn figures(model: &Model, run: &Run, asked: &Asked) -> TransientFigur
     let time = |k: usize| asked.from_s + (k as f64 + 0.5) * asked.period_s;
     let begin = run.cycles.iter().enumerate().position(|(k, _)| time(k) >= 0.0).unwrap_or(run.cycles.len());
     let (ahead, after) = run.cycles.split_at(begin);
-    let before_v = mean(ahead).unwrap_or(0.0);
-    let ending = ((END * after.len() as f64).ceil() as usize).clamp(1, END_PERIODS);
+    let before_v = mean(ahead).unwrap_or(asked.at_first_v);
+    let ending = (after.len() / END).clamp(1, END_PERIODS);
     let after_v = mean(&after[after.len().saturating_sub(ending)..]);
     let mut figures = TransientFigures {
         before_v,

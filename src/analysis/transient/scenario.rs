@@ -18,7 +18,7 @@ const LEAST_PERIODS: f64 = 20.0;
 pub(super) struct Span {
     /// From the event's begin [s].
     pub(super) to_s: f64,
-    /// Shown ahead of it [s], whole periods.
+    /// Shown ahead of it [s], whole periods; none at start-up.
     pub(super) ahead_s: f64,
     /// Whether it was cut at the most that is followed.
     pub(super) cut: bool,
@@ -31,13 +31,14 @@ pub(super) fn span(design: &CheckedDesign, request: &TransientRequest, step_s: O
     let events = &design.events;
     let wanted = request.span_s.unwrap_or(match request.event {
         TransientEvent::StartUp => 1.25 * events.soft_start_s + 4.0 * step,
-        TransientEvent::Overload => events.overload_s + 4.0 * step,
+        // An amplifier at its limit takes its time to come back.
+        TransientEvent::Overload => events.overload_s + 10.0 * step,
         _ => step,
     });
     let wanted = wanted.max(LEAST_PERIODS * period);
     let to_s = wanted.min(MOST_PERIODS * period);
     let ahead = (AHEAD * to_s / period).ceil().max(2.0);
-    let ahead = if request.event == TransientEvent::StartUp { 2.0 } else { ahead };
+    let ahead = if request.event == TransientEvent::StartUp { 0.0 } else { ahead };
     Span { to_s, ahead_s: ahead * period, cut: to_s < wanted }
 }
 

@@ -48,6 +48,7 @@ pub fn transient(
         from_s: scenario.from_s,
         period_s: model.system.period_s,
         band_v: design.events.settling_band * design.stage.output_voltage,
+        at_first_v: design.events.prebias_v,
         over_s: if request.event == TransientEvent::Overload { overload_end } else { 0.0 },
     };
     let figures = figures(&model, &run, &asked);

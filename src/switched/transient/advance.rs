@@ -5,7 +5,7 @@
 //! time, whose root is found by Newton's method kept within a bracket. So an instant is exact, and a signal that only touches its end
 //! between two grid points is not missed.
 
-use super::flow::{TERMS, dot};
+use super::flow::{TERMS, dot, whole};
 use super::mode::{Mode, Watch};
 
 /// What a watch is compared with as time goes on: the signal less offset and less rate times time.
@@ -62,7 +62,7 @@ impl Mode {
             let mut span = limit - elapsed;
             for t in 0..self.flow.tables.len() {
                 let table = &self.flow.tables[t];
-                let steps = ((span / table.step * (1.0 + 1e-15)) as usize).min(table.count);
+                let steps = whole(span / table.step * (1.0 + 1e-15)).min(table.count);
                 if steps == 0 {
                     continue;
                 }
@@ -246,7 +246,8 @@ fn leaves(watch: &Watch, polynomial: &[f64], within: f64) -> Option<f64> {
     let mut low = 0.0;
     if value(0.0).0 <= 0.0 {
         // By rounding it is there already: it leaves at once, unless it first moves inward.
-        low = (1..TURNS).map(|k| bracket * 0.5_f64.powi(k as i32)).find(|x| value(*x).0 > 0.0).unwrap_or(0.0);
+        let halves = std::iter::successors(Some(0.5 * bracket), |x| Some(0.5 * x)).take(TURNS);
+        low = halves.into_iter().find(|x| value(*x).0 > 0.0).unwrap_or(0.0);
         if low <= 0.0 {
             return Some(0.0);
         }
@@ -256,9 +257,9 @@ fn leaves(watch: &Watch, polynomial: &[f64], within: f64) -> Option<f64> {
     for _ in 0..TURNS {
         let (v, slope) = value(x);
         if v > 0.0 {
-            low = x
+            low = x;
         } else {
-            high = x
+            high = x;
         }
         let mut next = x - v / slope;
         if !(next > low && next < high) {

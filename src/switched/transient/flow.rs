@@ -21,6 +21,12 @@ const TABLES: usize = 9;
 /// Terms of the series at most, the state itself counted.
 pub(super) const TERMS: usize = 14;
 
+/// The whole part of a number that is not negative; what is not finite counts as nothing.
+#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "cut on purpose, and saturating")]
+pub(super) fn whole(x: f64) -> usize {
+    x as usize
+}
+
 /// Multiplies a padded map with a vector: `out` takes the sum of the columns.
 pub(super) fn multiply(map: &[f64], vector: &[f64], out: &mut [f64]) {
     match out.len() {
@@ -162,7 +168,9 @@ impl Flow {
                 multiply(&self.rate[n * stride..], &z[n + m..], forced);
                 this.iter_mut().zip(forced).for_each(|(v, f)| *v += *f * time);
             }
-            this.iter_mut().for_each(|v| *v *= factor);
+            for value in this {
+                *value *= factor;
+            }
         }
         count
     }
@@ -201,7 +209,7 @@ mod tests {
             let mut out = vec![0.0; flow.stride];
             let mut left = time;
             for (k, table) in flow.tables.iter().enumerate() {
-                let steps = ((left / table.step) as usize).min(table.count);
+                let steps = whole(left / table.step).min(table.count);
                 if steps > 0 {
                     flow.step(k, steps, &z, true, &mut out);
                     z[..3].copy_from_slice(&out[..3]);

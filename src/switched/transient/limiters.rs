@@ -51,7 +51,9 @@ fn of_amplifier(system: &SwitchedSystem, limit: &Limit, which: &str, output: usi
     let mut signal = probe(system, row);
     if let Some(control) = system.input(inputs::CONTROL) {
         // What is let through is another matter than what the amplifier gives.
-        signal.iter_mut().for_each(|(_, by_inputs)| by_inputs[control] = 0.0);
+        for (_, by_inputs) in &mut signal {
+            by_inputs[control] = 0.0;
+        }
     }
     let act = match limit.kind {
         LimitKind::Hold => Act::Hold,

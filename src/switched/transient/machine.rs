@@ -1,16 +1,13 @@
-//! Period after period: clock, comparator, current limit, rectifier and limiters, each at its exact instant.
-//!
-//! *Conventions*: the clock closes the switch (in valley current mode it opens it). The switch follows the comparator, or the current
-//! limit, a delay later, not before the least on-time and within the limits of the duty ratio. A pulse is left out where the control
-//! voltage asks for nothing at the clock and no least duty ratio is set. Both are blind during the blanking.
+//! The running converter: what is closed, where every limiter stands, and how it comes from one event to the next.
 
-use super::super::{Comparator, Configuration, Rule};
+use super::super::{Configuration, Rule};
 use super::advance::{Ramp, Reached, Scratch};
 use super::drive::Signal;
 use super::flow::dot;
 use super::mode::{Mode, Role, Side, Watched};
 use super::plant::{Act, Plant};
 use super::samples::Samples;
+use super::settle::{other_configuration, other_side};
 use crate::control::Edge;
 use nalgebra::DVector;
 
@@ -76,33 +73,33 @@ const HELD: f64 = 1.0 / 32.0;
 /// The running converter.
 #[derive(Clone, Debug)]
 pub(super) struct Machine {
-    plant: Plant,
-    setup: Setup,
+    pub(super) plant: Plant,
+    pub(super) setup: Setup,
     signals: Vec<Signal>,
-    modes: Vec<Option<Box<Mode>>>,
+    pub(super) modes: Vec<Option<Box<Mode>>>,
     scratch: Scratch,
     /// Scaled states, forcing signals, their slopes.
-    z: Vec<f64>,
+    pub(super) z: Vec<f64>,
     before: Vec<f64>,
-    configuration: Configuration,
+    pub(super) configuration: Configuration,
     sides: Vec<Side>,
     /// Time of the first clock [s], and periods since.
     first_s: f64,
-    periods: u64,
+    pub(super) periods: u64,
     /// Time since the clock [s].
-    since: f64,
-    on_s: f64,
-    rested: bool,
-    changes: usize,
+    pub(super) since: f64,
+    pub(super) on_s: f64,
+    pub(super) rested: bool,
+    pub(super) changes: usize,
     /// Periods in which each limiter acted.
     pub(super) acted: Vec<u64>,
-    acting: Vec<bool>,
+    pub(super) acting: Vec<bool>,
     pub(super) samples: Samples,
 }
 
 /// What ended a stretch.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
-enum Ended {
+pub(super) enum Ended {
     InTime,
     ByComparator,
     ByCurrentLimit,
@@ -170,7 +167,7 @@ impl Machine {
     }
 
     /// Values of the recorded probes now.
-    fn probed(&mut self) -> Result<&[f64], Stopped> {
+    pub(super) fn probed(&mut self) -> Result<&[f64], Stopped> {
         let place = self.ready()?;
         if let Some(mode) = self.modes[place].as_deref() {
             self.samples.probe(mode, &self.z);
@@ -179,7 +176,7 @@ impl Machine {
     }
 
     /// Place of the present mode, made where it is not there yet.
-    fn ready(&mut self) -> Result<usize, Stopped> {
+    pub(super) fn ready(&mut self) -> Result<usize, Stopped> {
         let sides = self.sides.iter().fold(0, |place, side| place * 3 + *side as usize);
         let place = sides * 3 + self.configuration as usize;
         if self.modes.get(place).is_some_and(Option::is_none) {
@@ -217,7 +214,7 @@ impl Machine {
     }
 
     /// Sets the forcing signals and their slopes to those just after now.
-    fn follow(&mut self) -> Result<(), Stopped> {
+    pub(super) fn follow(&mut self) -> Result<(), Stopped> {
         let (n, m, now) = (self.plant.n, self.plant.m, self.time_s());
         for (k, signal) in self.signals.iter().enumerate() {
             let (value, slope) = signal.at(now);
@@ -237,7 +234,7 @@ impl Machine {
     }
 
     /// Brings configuration and sides in agreement with states that may have jumped.
-    fn settle(&mut self) -> Result<(), Stopped> {
+    pub(super) fn settle(&mut self) -> Result<(), Stopped> {
         for _ in 0..=2 * self.sides.len() + 4 {
             let place = self.ready()?;
             let Some(mode) = self.modes[place].as_deref() else { return Err(Stopped::Unsolvable) };
@@ -284,7 +281,7 @@ impl Machine {
     }
 
     /// Changes the switches, and records both sides of the edge.
-    fn switch(&mut self, configuration: Configuration) -> Result<(), Stopped> {
+    pub(super) fn switch(&mut self, configuration: Configuration) -> Result<(), Stopped> {
         if configuration == self.configuration {
             return Ok(());
         }
@@ -302,7 +299,7 @@ impl Machine {
     }
 
     /// Runs on to a time since the clock, or to the comparator or current limit where they are looked at.
-    fn run_to(&mut self, target: f64, looking: bool) -> Result<Ended, Stopped> {
+    pub(super) fn run_to(&mut self, target: f64, looking: bool) -> Result<Ended, Stopped> {
         while self.since < target {
             let clock = self.clock_s();
             let now = clock + self.since;
@@ -385,188 +382,12 @@ impl Machine {
             }
         }
     }
-
-    /// One period from clock to clock.
-    pub(super) fn period(&mut self) -> Result<Period, Stopped> {
-        self.changes = 0;
-        self.on_s = 0.0;
-        self.rested = self.configuration == Configuration::Resting;
-        self.acting.iter_mut().for_each(|acting| *acting = false);
-        let integral = self.plant.integral();
-        self.z[integral] = 0.0;
-        if let Some(ramp) = self.plant.ramp {
-            self.z[ramp] = 0.0;
-        }
-        self.follow()?;
-        self.settle()?;
-        let rule = self.setup.rule.clone();
-        let period = self.setup.period_s;
-        let mut limited = false;
-        match &rule {
-            Rule::Given { duty } => {
-                self.switch(Configuration::Conducting)?;
-                self.run_to(duty * period, false)?;
-                self.switch(Configuration::Freewheeling)?;
-            }
-            Rule::Compared(comparator) => match comparator.edge {
-                Edge::Peak => limited = self.pulse(comparator)?,
-                Edge::Valley => limited = self.gap(comparator)?,
-            },
-        }
-        self.run_to(period, false)?;
-        let mean_v = self.z[integral] * self.plant.scale[integral] / period;
-        for (acted, acting) in self.acted.iter_mut().zip(&self.acting) {
-            *acted += u64::from(*acting);
-        }
-        self.periods += 1;
-        self.since = 0.0;
-        Ok(Period { mean_v, duty: self.on_s / period, rested: self.rested, current_limited: limited })
-    }
-
-    /// The clock closes the switch; comparator or current limit opens it. Tells whether it was the limit.
-    fn pulse(&mut self, comparator: &Comparator) -> Result<bool, Stopped> {
-        let period = self.setup.period_s;
-        let least = comparator.on_time_least_s.max(comparator.duty_least * period);
-        let greatest = comparator.duty_greatest * period;
-        if let Some((row, level)) = self.setup.nothing
-            && comparator.duty_least <= 0.0
-            && self.probed()?[row] <= level
-        {
-            // The switch opens also where it had no time to before.
-            self.open()?;
-            return Ok(false);
-        }
-        self.switch(Configuration::Conducting)?;
-        let last = (greatest - comparator.delay_s).max(0.0);
-        let (ended, limited) = self.look(comparator.blanking_s.min(last), last)?;
-        let trip = self.since;
-        let until = if ended { (trip + comparator.delay_s).max(least).min(greatest) } else { greatest };
-        self.run_to(until, false)?;
-        if until < period {
-            self.open()?;
-        }
-        Ok(limited)
-    }
-
-    /// The clock opens the switch; the comparator closes it, and the current limit may open it again.
-    fn gap(&mut self, comparator: &Comparator) -> Result<bool, Stopped> {
-        let period = self.setup.period_s;
-        let least = (1.0 - comparator.duty_greatest) * period;
-        let greatest = ((1.0 - comparator.duty_least) * period).min(period - comparator.on_time_least_s);
-        self.open()?;
-        let last = (greatest - comparator.delay_s).max(0.0);
-        let (ended, _) = self.look(comparator.blanking_s.min(last), last)?;
-        let until = if ended { (self.since + comparator.delay_s).max(least).min(greatest) } else { greatest };
-        self.run_to(until, false)?;
-        if until >= period {
-            return Ok(false);
-        }
-        self.switch(Configuration::Conducting)?;
-        if self.setup.current_limit.is_none() || self.run_to(period, true)? == Ended::InTime {
-            return Ok(false);
-        }
-        let opens = self.since + comparator.delay_s;
-        self.run_to(opens.min(period), false)?;
-        if opens < period {
-            self.open()?;
-        }
-        Ok(true)
-    }
-
-    /// Looks at comparator and current limit from the end of the blanking until `last`. Tells whether one tripped, and whether it
-    /// was the limit.
-    fn look(&mut self, blind: f64, last: f64) -> Result<(bool, bool), Stopped> {
-        self.run_to(blind, false)?;
-        let place = self.ready()?;
-        if let Some(mode) = self.modes[place].as_deref() {
-            let ramp = ramp(&self.setup.rule, self.since);
-            for watch in &mode.watches {
-                let value = dot(&watch.row, &self.z[..watch.row.len()]);
-                let tripped = match watch.role {
-                    Role::Comparator => watch.out(value - ramp.offset),
-                    Role::CurrentLimit => watch.out(value),
-                    _ => false,
-                };
-                if tripped {
-                    return Ok((true, watch.role == Role::CurrentLimit));
-                }
-            }
-        }
-        let ended = self.run_to(last, true)?;
-        Ok((ended != Ended::InTime, ended == Ended::ByCurrentLimit))
-    }
-
-    /// Opens the switch; the rectifier conducts where it has a current to carry.
-    fn open(&mut self) -> Result<(), Stopped> {
-        if self.configuration == Configuration::Conducting { self.switch(Configuration::Freewheeling) } else { Ok(()) }
-    }
 }
 
 /// What the comparator's signal is compared with from a time since the clock on.
-fn ramp(rule: &Rule, since: f64) -> Ramp {
+pub(super) fn ramp(rule: &Rule, since: f64) -> Ramp {
     match rule {
         Rule::Given { .. } => Ramp::default(),
         Rule::Compared(c) => Ramp { offset: c.valley_v + c.rate * since, rate: c.rate },
     }
-}
-
-/// The configuration the states ask for, where it is another: the rectifier opens without current, and closes where it would get one.
-fn other_configuration(plant: &Plant, mode: &Mode, z: &[f64], now: Configuration) -> Option<Configuration> {
-    let rest = plant.rest.as_ref()?;
-    let rate = dot(&mode.wake, &z[..mode.wake.len()]);
-    match now {
-        Configuration::Freewheeling => {
-            let current = dot(rest, &z[..rest.len()]);
-            (current < 0.0 || current <= 0.0 && rate <= 0.0).then_some(Configuration::Resting)
-        }
-        Configuration::Resting => (rate > 0.0).then_some(Configuration::Freewheeling),
-        Configuration::Conducting => None,
-    }
-}
-
-/// Of a limit's span, what counts as being there.
-const AT_LIMIT: f64 = 1e-12;
-
-/// A limiter that has to change its side, and to which.
-fn other_side(plant: &Plant, mode: &Mode, z: &[f64], sides: &[Side]) -> Option<(usize, Side)> {
-    for (i, (limiter, side)) in plant.limiters.iter().zip(sides).enumerate() {
-        let held = &mode.held[i];
-        let signal = dot(&held.signal, &z[..held.signal.len()]);
-        let (least, greatest) = (limiter.least, limiter.greatest);
-        let next = match limiter.act {
-            Act::Sink { .. } => {
-                if signal > 0.0 {
-                    Side::Greatest
-                } else {
-                    Side::Free
-                }
-            }
-            Act::Saturate => {
-                if signal > greatest {
-                    Side::Greatest
-                } else if signal < least {
-                    Side::Least
-                } else {
-                    Side::Free
-                }
-            }
-            Act::Hold => {
-                let rate = dot(&held.rate, &z[..held.rate.len()]);
-                let close = AT_LIMIT * (greatest.abs().min(1e3) + least.abs().min(1e3));
-                match side {
-                    Side::Free if signal > greatest + close || signal >= greatest - close && rate > 0.0 => {
-                        Side::Greatest
-                    }
-                    Side::Free if signal < least - close || signal <= least + close && rate < 0.0 => Side::Least,
-                    Side::Greatest if rate < 0.0 => Side::Free,
-                    Side::Least if rate > 0.0 => Side::Free,
-                    _ => *side,
-                }
-            }
-        };
-        if next != *side {
-            return Some((i, next));
-        }
-    }
-    None
 }

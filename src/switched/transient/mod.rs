@@ -6,10 +6,12 @@ mod flow;
 mod limiters;
 mod machine;
 mod mode;
+mod period;
 mod plant;
 mod rest;
 mod run;
 mod samples;
+mod settle;
 mod waveforms;
 
 pub use drive::Signal;

@@ -22,7 +22,7 @@ pub struct AtRest<'a> {
 const SINGULAR: f64 = 1e-11;
 
 /// Solution of least size of a·x = b; zero where there is none.
-fn solve(a: DMatrix<f64>, b: &DVector<f64>) -> DVector<f64> {
+fn solve(a: &DMatrix<f64>, b: &DVector<f64>) -> DVector<f64> {
     let n = a.ncols();
     if n == 0 || a.nrows() == 0 {
         return DVector::zeros(n);
@@ -33,7 +33,7 @@ fn solve(a: DMatrix<f64>, b: &DVector<f64>) -> DVector<f64> {
     let b = DVector::from_fn(b.len(), |i, _| b[i] / sizes[i]);
     let svd = scaled.svd(true, true);
     let least = SINGULAR * svd.singular_values.amax();
-    svd.solve(&b, least).map_or_else(|_missing| DVector::zeros(n), |x| x)
+    svd.solve(&b, least).unwrap_or_else(|_missing| DVector::zeros(n))
 }
 
 impl SwitchedSystem {
@@ -59,7 +59,7 @@ impl SwitchedSystem {
         let inner = place("inner compensator").unwrap_or(outer);
         let mut x = DVector::zeros(self.order());
         let drive = &piece.b * &u;
-        let stage = solve(a.view((0, 0), (inner, inner)).into_owned(), &-drive.rows(0, inner).into_owned());
+        let stage = solve(&a.view((0, 0), (inner, inner)).into_owned(), &-drive.rows(0, inner).into_owned());
         x.rows_mut(0, inner).copy_from(&stage);
         x = &self.rest_projector * x;
         for (limits, which, from, to, row) in [
@@ -69,9 +69,9 @@ impl SwitchedSystem {
             let drive = &piece.a * &x + &drive;
             let a = piece.a.view((from, from), (to - from, to - from)).into_owned();
             let drive = -drive.rows(from, to - from).into_owned();
-            let free = solve(a.clone(), &drive);
+            let free = solve(&a, &drive);
             let output = piece.c.view((row, from), (1, to - from)).into_owned();
-            let beyond = (&piece.c.row(row) * &x)[0] + (&piece.d.row(row) * &u)[0];
+            let beyond = (piece.c.row(row) * &x)[0] + (piece.d.row(row) * &u)[0];
             let volts = beyond + (&output * &free).sum();
             let held = limits.iter().find(|limit| limit.kind == LimitKind::Hold).and_then(|limit| level(limit, volts));
             let force = limits.first().and_then(|limit| self.input(&format!("{which}{}", limit.force)));
@@ -83,7 +83,7 @@ impl SwitchedSystem {
                     all.view_mut((0, n), (n, 1)).copy_from(&piece.b.view((from, force), (n, 1)));
                     all.view_mut((n, 0), (1, n)).copy_from(&output);
                     let asked = drive.push(level - beyond);
-                    solve(all, &asked).rows(0, n).into_owned()
+                    solve(&all, &asked).rows(0, n).into_owned()
                 }
                 _ => free,
             };

@@ -2,6 +2,7 @@
 
 use super::super::{Cancel, Configuration, Progress, SwitchedSystem, inputs};
 use super::drive::Signal;
+use super::flow::whole;
 use super::limiters::{Amplifiers, limiters, sink};
 use super::machine::{ConstantPower, Machine, Setup, Stopped};
 use super::plant::{Forcing, Limiter, Plant};
@@ -93,9 +94,9 @@ pub struct Run {
 }
 
 /// The cancel flag is read once in so many periods.
-const READ_EVERY: u64 = 200;
+const READ_EVERY: usize = 200;
 /// The waveforms are shown so many times in a run.
-const SHOWN: u64 = 30;
+const SHOWN: usize = 30;
 /// A sink takes its current down to this share of the load's voltage.
 pub const SINK_FALLS: f64 = 0.1;
 /// A constant power is taken down to this share of the load's voltage.
@@ -228,9 +229,9 @@ pub fn simulate(
     stream: &mut dyn FnMut(&Waveforms),
 ) -> Run {
     let mut machine = machine(system, scenario);
-    let total = ((scenario.to_s - scenario.from_s) / system.period_s).round().max(1.0) as u64;
+    let total = whole(((scenario.to_s - scenario.from_s) / system.period_s).round()).max(1);
     let shown_every = (total / SHOWN).max(1);
-    let mut cycles = Vec::with_capacity(usize::try_from(total).unwrap_or(0));
+    let mut cycles = Vec::with_capacity(total);
     let (mut stopped, mut cancelled, mut begun) = (None, false, false);
     let (mut rested, mut skipped, mut current_limited) = (0, 0, 0);
     for k in 0..total {

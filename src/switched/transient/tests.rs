@@ -82,19 +82,49 @@ impl Case {
     }
 }
 
+/// A boost whose loop is closed well.
+const BOOST: [(&str, f64); 12] = [
+    ("stage.bank.1.capacitance", 33e-6),
+    ("stage.bank.1.count", 5.0),
+    ("stage.bank.1.esr", 18e-3),
+    ("control.ramp.valley", 0.3),
+    ("compensator.reference", 1.2),
+    ("compensator.divider.upper", 38.3e3),
+    ("compensator.divider.lower", 2.02e3),
+    ("compensator.r2", 2.32e3),
+    ("compensator.c1", 56e-9),
+    ("compensator.c2", 470e-12),
+    ("compensator.r3", 845.0),
+    ("compensator.c3", 3.3e-9),
+];
+
+/// Two routes: from zero the switched loop comes to the averaged operating point, and stays there to rounding.
 #[test]
 fn starts_from_zero_and_comes_to_the_operating_point() {
-    for mode in ["voltage", "peak-current", "valley-current", "average-current"] {
-        let case = Case::new("boost", &[("control.mode", mode)], &[]);
-        let begun = std::time::Instant::now();
-        let run = case.run(&case.scenario(5000));
-        eprintln!("{mode}: {:?} {:?}", begun.elapsed(), run.stopped);
-        eprintln!(
-            "{:?} {:?} {:?}",
-            run.limited,
-            run.extremes,
-            run.cycles.iter().step_by(500).map(|c| (c.mean_v, c.duty)).collect::<Vec<_>>()
-        );
-        eprintln!("{} {}", case.point.load_voltage, case.point.duty);
-    }
+    let case = Case::new("boost", &[], &BOOST);
+    let run = case.run(&case.scenario(3000));
+    assert!(run.stopped.is_none() && !run.cancelled);
+    let [.., before, last] = run.cycles[..] else { panic!("periods") };
+    assert!((last.mean_v - before.mean_v).abs() < 1e-10 * last.mean_v, "{before:?} {last:?}");
+    assert!((last.mean_v - case.point.load_voltage).abs() < 2e-3 * last.mean_v, "{last:?}");
+    assert!((last.duty - case.point.duty).abs() < 2e-3, "{last:?} {}", case.point.duty);
+    assert!(run.limited.iter().any(|(name, _)| *name == "amplifier output"), "{:?}", run.limited);
+    // The amplifier never left its limits by more than rounding.
+    assert!(run.extremes[1].0 > 0.05 - 1e-9 && run.extremes[1].1 < 4.5 + 1e-9, "{:?}", run.extremes[1]);
+}
+
+/// The cancel flag is read at least every thousand periods: counted by the periods run after it.
+#[test]
+fn a_cancelled_run_ends_within_a_thousand_periods() {
+    let case = Case::new("boost", &[], &BOOST);
+    let cancel = Cancel::new();
+    let mut shown_at = None;
+    let run = simulate(&case.system, &case.scenario(1_000_000), &cancel, &Progress::new(), &mut |waveforms| {
+        cancel.cancel();
+        shown_at.get_or_insert(waveforms.filled);
+    });
+    assert!(run.cancelled);
+    // It is shown first after a thirtieth of the run.
+    assert!(run.cycles.len() <= 1_000_000 / 30 + 1000, "{}", run.cycles.len());
+    assert!(shown_at.is_some_and(|filled| filled > 0 && filled <= run.waveforms.filled));
 }

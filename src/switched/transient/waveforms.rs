@@ -1,5 +1,6 @@
 //! Waveforms thinned to the columns of a plot: of every column the least and the greatest value stay.
 
+use super::flow::whole;
 use crate::quantity::Unit;
 
 /// One signal over time.
@@ -68,7 +69,7 @@ impl Waveforms {
 
     /// Takes a sample; times do not fall.
     pub(super) fn sample(&mut self, time_s: f64, values: &[f64]) {
-        let place = ((time_s - self.from_s) / self.column_s).max(0.0) as usize;
+        let place = whole((time_s - self.from_s) / self.column_s);
         let place = place.min(self.columns().saturating_sub(1));
         if place >= self.filled {
             self.bridge(place, time_s, values);
