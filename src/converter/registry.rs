@@ -1,11 +1,19 @@
 //! The registry of topologies: one line each.
 
-use super::topologies::{boost, buck, buck_boost, flyback};
+use super::topologies::{boost, buck, buck_boost, cuk, flyback, sepic};
 use super::topology::Topology;
 use crate::quantity::ChoiceOption;
 
 /// All topologies, in the order shown.
-static REGISTRY: &[&Topology] = &[&buck::TOPOLOGY, &boost::TOPOLOGY, &buck_boost::TOPOLOGY, &flyback::TOPOLOGY];
+#[rustfmt::skip]
+static REGISTRY: &[&Topology] = &[
+    &buck::TOPOLOGY,
+    &boost::TOPOLOGY,
+    &buck_boost::TOPOLOGY,
+    &sepic::TOPOLOGY,
+    &cuk::TOPOLOGY,
+    &flyback::TOPOLOGY,
+];
 
 const COUNT: usize = REGISTRY.len();
 
