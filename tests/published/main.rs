@@ -11,6 +11,7 @@ mod cross_checks;
 mod current_mode;
 mod discontinuous;
 mod every_mode;
+mod exact;
 mod filters;
 mod isolated;
 mod lossless;
