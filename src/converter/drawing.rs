@@ -55,8 +55,10 @@ pub struct StageDrawing {
     pub(super) netlist: Netlist,
     /// Where the parts stand in the schematic.
     pub(super) sketch: Sketch,
-    options: Options,
-    supply: Node,
+    pub(super) options: Options,
+    pub(super) supply: Node,
+    /// Ends of the primary winding of a transformer that stores nothing.
+    pub(super) primary: Option<(Node, Node)>,
     /// Terminals of the regulated voltage.
     sensed: Option<(Node, Node)>,
     /// Terminals of the load.
@@ -66,9 +68,9 @@ pub struct StageDrawing {
     filters: FilterParts,
     input_current_part: PartId,
     windings: Vec<Winding>,
-    switches: Vec<Switched>,
+    pub(super) switches: Vec<Switched>,
     branches: Vec<PartId>,
-    drop: InputId,
+    pub(super) drop: InputId,
 }
 
 /// An inductor drawn.
@@ -82,13 +84,13 @@ struct Winding {
 
 /// A switch or rectifier drawn.
 #[derive(Clone, Copy, Debug)]
-struct Switched {
-    name: &'static str,
-    part: PartId,
-    ohms: Slot,
+pub(super) struct Switched {
+    pub(super) name: &'static str,
+    pub(super) part: PartId,
+    pub(super) ohms: Slot,
     /// Of a rectifier, the cathode first.
-    ends: (Node, Node),
-    diode: bool,
+    pub(super) ends: (Node, Node),
+    pub(super) diode: bool,
 }
 
 /// Columns of the inputs every stage has.
@@ -119,6 +121,7 @@ impl StageDrawing {
             sketch,
             options,
             supply,
+            primary: None,
             sensed: None,
             load: None,
             bank: None,
@@ -150,8 +153,7 @@ impl StageDrawing {
     /// together; the schematic keeps them apart.
     pub fn isolated_return(&mut self) -> Node {
         let node = self.netlist.node("isolated return");
-        // No entry has this name, so its value is zero.
-        let wire = self.netlist.slot("tie");
+        let wire = self.netlist.slot(TIE);
         let ground = self.netlist.ground();
         self.netlist.resistor("tie", node, ground, wire);
         self.sketch.lows.push(node);
@@ -165,15 +167,25 @@ impl StageDrawing {
 
     /// A switch by its name in the netlist, which the topology's [`SwitchSets`](super::SwitchSets) use, its name for people and its
     /// designator.
-    pub fn switch_called(&mut self, (name, shown, designator): (&'static str, &str, &str), from: Node, to: Node) {
+    pub fn switch_called(&mut self, names: (&'static str, &str, &str), from: Node, to: Node) {
+        self.switch_between(names, (from, to), (from, to));
+    }
+
+    /// The same between two nodes of the netlist, drawn between two of the sketch.
+    pub(super) fn switch_between(
+        &mut self,
+        (name, shown, designator): (&'static str, &str, &str),
+        ends: (Node, Node),
+        seen: (Node, Node),
+    ) {
         let ohms = self.netlist.slot("stage.switch.resistance");
-        let part = self.netlist.switch(name, from, to, ohms);
-        self.switches.push(Switched { name, part, ohms, ends: (from, to), diode: false });
+        let part = self.netlist.switch(name, ends.0, ends.1, ohms);
+        self.switches.push(Switched { name, part, ohms, ends, diode: false });
         let drawn = Drawn::new(Symbol::Switch, shown, designator)
             .value("stage.switch.resistance")
             .quiet("stage.switching-frequency");
-        // Current flows from `from` to `to`, so the body of a transistor points the other way.
-        self.sketch.part(to, from, drawn);
+        // Current flows from the first end to the second, so the body of a transistor points the other way.
+        self.sketch.part(seen.1, seen.0, drawn);
     }
 
     /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
@@ -186,21 +198,26 @@ impl StageDrawing {
         let count = self.switches.iter().filter(|switch| switch.name.contains(RECTIFIER)).count();
         let numbered = |word: &str| if count == 0 { word.to_owned() } else { format!("{word}{}", count + 1) };
         let diode = self.options.diode;
-        let (part, ohms) = if diode {
-            let ohms = self.netlist.slot("stage.diode.resistance");
-            let drawn = Drawn::new(Symbol::Diode, "Diode", numbered("D"))
-                .value("stage.diode.drop")
-                .quiet("stage.diode.resistance");
-            self.sketch.part(anode, cathode, drawn);
-            (self.netlist.diode(name, anode, cathode, ohms, self.drop), ohms)
+        let (drawn, path) = self.drawn_rectifier(&numbered(if diode { "D" } else { "SR" }));
+        let ohms = self.netlist.slot(path);
+        self.sketch.part(anode, cathode, drawn);
+        let part = if diode {
+            self.netlist.diode(name, anode, cathode, ohms, self.drop)
         } else {
-            let ohms = self.netlist.slot("stage.synchronous.resistance");
-            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", numbered("SR"))
-                .value("stage.synchronous.resistance");
-            self.sketch.part(anode, cathode, drawn);
-            (self.netlist.switch(name, anode, cathode, ohms), ohms)
+            self.netlist.switch(name, anode, cathode, ohms)
         };
         self.switches.push(Switched { name, part, ohms, ends: (cathode, anode), diode });
+    }
+
+    /// A rectifier as it is drawn, and the path of its resistance.
+    pub(super) fn drawn_rectifier(&self, designator: &str) -> (Drawn, &'static str) {
+        if self.options.diode {
+            let path = "stage.diode.resistance";
+            (Drawn::new(Symbol::Diode, "Diode", designator).value("stage.diode.drop").quiet(path), path)
+        } else {
+            let path = "stage.synchronous.resistance";
+            (Drawn::new(Symbol::Switch, "Synchronous rectifier", designator).value(path), path)
+        }
     }
 
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
@@ -231,7 +248,7 @@ impl StageDrawing {
     }
 
     /// Inductor and winding resistance in series, in the netlist alone.
-    fn wind(
+    pub(super) fn wind(
         &mut self,
         (name, loss): (&'static str, &'static str),
         (from, to): (Node, Node),
@@ -313,6 +330,7 @@ impl StageDrawing {
             load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
             bank_voltage: row(n.voltage_output("bank voltage", bank.0, bank.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
+            primary_voltage: self.primary.map(|(plus, minus)| row(n.voltage_output("primary voltage", plus, minus))),
             switches: self
                 .switches
                 .iter()
@@ -370,12 +388,15 @@ fn free_end((from, to): (Node, Node), supply: Node) -> Node {
     if from.is_ground() || from == supply { to } else { from }
 }
 
-/// Path of the inductance that every stage has.
-const INDUCTANCE: &str = "stage.inductor.inductance";
-/// Path of its winding's resistance.
-const WINDING: &str = "stage.inductor.resistance";
+/// Name of a slot whose value is zero, as no entry has it.
+pub(super) const TIE: &str = "tie";
 
-fn drawn_inductor((name, designator): (&str, &str), (inductance, resistance): (&str, &str)) -> Drawn {
+/// Path of the inductance that every stage has.
+pub(super) const INDUCTANCE: &str = "stage.inductor.inductance";
+/// Path of its winding's resistance.
+pub(super) const WINDING: &str = "stage.inductor.resistance";
+
+pub(super) fn drawn_inductor((name, designator): (&str, &str), (inductance, resistance): (&str, &str)) -> Drawn {
     Drawn::new(Symbol::Inductor, name, designator).value(inductance).quiet(resistance)
 }
 

@@ -1,11 +1,21 @@
 //! The registry of topologies: one line each.
 
-use super::topologies::{boost, buck, buck_boost, flyback};
+use super::topologies::{boost, buck, buck_boost, flyback, forward, four_switch, full_bridge, half_bridge, push_pull};
 use super::topology::Topology;
 use crate::quantity::ChoiceOption;
 
 /// All topologies, in the order shown.
-static REGISTRY: &[&Topology] = &[&buck::TOPOLOGY, &boost::TOPOLOGY, &buck_boost::TOPOLOGY, &flyback::TOPOLOGY];
+static REGISTRY: &[&Topology] = &[
+    &buck::TOPOLOGY,
+    &boost::TOPOLOGY,
+    &buck_boost::TOPOLOGY,
+    &four_switch::TOPOLOGY,
+    &flyback::TOPOLOGY,
+    &forward::TOPOLOGY,
+    &push_pull::TOPOLOGY,
+    &half_bridge::TOPOLOGY,
+    &full_bridge::TOPOLOGY,
+];
 
 const COUNT: usize = REGISTRY.len();
 

@@ -1,6 +1,7 @@
 //! A power stage with usable values: its netlist drawn and compiled, ready for any operating condition.
 
 use super::bank::{Branch, branch_value};
+use super::buck_derived::{COMMUTATION, MAGNETISING, commutation_resistance};
 use super::cell::SwitchedCell;
 use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options};
 use super::drawn::{Drawn, Equations};
@@ -11,13 +12,13 @@ use super::phases;
 use super::registry::find;
 use super::rows::Rows;
 use super::signals::INPUTS;
-use super::topology::{SwitchSets, Topology, Voltages};
+use super::topology::{DutyLimit, SwitchSets, Topology, Voltages};
 use super::topology_entries::{self, COUPLING, COUPLING_CAPACITOR, RATIO, SECOND_INDUCTOR};
 use crate::circuit::{CircuitError, StateEquations};
 use crate::finding::Finding;
 use crate::linear::StateSpace;
 use crate::quantity::{Choices, Values};
-use nalgebra::{DMatrix, DVector};
+use nalgebra::{DMatrix, DVector, RowDVector};
 
 /// How the load current answers the output voltage.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -120,6 +121,10 @@ pub struct Stage {
     pub(super) phases: f64,
     /// Turns ratio of the transformer, second to first; 1 without one.
     pub ratio: f64,
+    /// Magnetising inductance of a transformer that stores nothing, at its primary [H]; 0 without one.
+    pub magnetising: f64,
+    /// Greatest duty ratio that the circuit bears, where it sets one.
+    pub duty_limit: Option<DutyLimit>,
     /// Inductance of the second inductor [H]; 0 without one.
     pub second_inductance: f64,
     /// Coupling factor of the two inductors; 0 where they are separate.
@@ -162,6 +167,9 @@ pub(super) struct Intervals {
     pub(super) cell: SwitchedCell,
     /// The switches that conduct in each.
     pub(super) sets: &'static SwitchSets,
+    /// Row of the primary's voltage, and the ramp per volt there, in amperes of switched current [A/(V·s)], that a magnetising current
+    /// adds to what is sensed.
+    pub(super) natural: Option<(usize, f64)>,
     /// Steady inputs: input voltage, load current, diode drop.
     pub(super) inputs: DVector<f64>,
     /// Row of the load's voltage, and the conductance that makes the load a resistor, its own current left out [S].
@@ -212,7 +220,8 @@ impl Stage {
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
             "load resistance" => load_voltage(second_stage.as_ref(), output, load_currents[1]) / load_currents[1],
-            _ => branch_value(name, &bank).unwrap_or_else(|| get(name)),
+            COMMUTATION => commutation_resistance(&get) * f64::from(topology.pulses),
+            _ => branch_value(name, &bank).unwrap_or_else(|| multiple(name, &get)),
         };
         let drawn = Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?;
         // A load that is not a resistor leaves the inductance undamped where it stands right at the bank.
@@ -245,6 +254,8 @@ impl Stage {
             inductance: get("stage.inductor.inductance"),
             phases,
             ratio: if applies(RATIO.path, choices) { get(RATIO.path) } else { 1.0 },
+            magnetising: get(MAGNETISING.path),
+            duty_limit: (topology.duty_limit)(&get),
             second_inductance: get(SECOND_INDUCTOR.path),
             coupling: get(COUPLING.path),
             coupling_capacitance: get(COUPLING_CAPACITOR.path),
@@ -308,6 +319,11 @@ impl Stage {
     /// Input and output voltage of a condition, with the turns ratio.
     pub(super) fn voltages(&self, condition: &StageCondition) -> Voltages {
         Voltages { input: condition.input_voltage, output: condition.output_voltage, ratio: self.ratio }
+    }
+
+    /// Value in the slot of this name; none where the netlist has no such slot.
+    pub(super) fn slot_named(&self, name: &str) -> Option<f64> {
+        self.plain.slot_named(name)
     }
 
     /// The topology.
@@ -383,7 +399,28 @@ impl Stage {
             LoadKind::Power => 2.0 * resistance.recip(),
         };
         let to_resistor = (drawn.rows.load_voltage, to_resistor);
-        Ok(Intervals { on, off, cell, sets, inputs, to_resistor })
+        let natural = drawn.rows.primary_voltage.filter(|_| self.magnetising > 0.0);
+        let natural = natural.map(|row| (row, self.topology.magnetising_ramp / (self.magnetising * cell.sense)));
+        Ok(Intervals { on, off, cell, sets, natural, inputs, to_resistor })
+    }
+}
+
+impl Intervals {
+    /// Rows over states and inputs of the ramp that a magnetising current adds to what is sensed, in amperes of switched current [A/s].
+    pub(super) fn natural_rows(&self) -> (RowDVector<f64>, RowDVector<f64>) {
+        match self.natural {
+            Some((row, gain)) => (self.on.c.row(row) * gain, self.on.d.row(row) * gain),
+            None => (RowDVector::zeros(self.on.a.nrows()), RowDVector::zeros(self.on.b.ncols())),
+        }
+    }
+}
+
+/// Value of a slot: an entry's, so many times an entry's where its name says so (`0.5 × path`), or a plain number.
+fn multiple(name: &str, get: &dyn Fn(&str) -> f64) -> f64 {
+    let factor = |text: &str| text.parse::<f64>().ok();
+    match name.split_once(" × ").and_then(|(times, path)| Some((factor(times)?, path))) {
+        Some((times, path)) => times * get(path),
+        None => factor(name).unwrap_or_else(|| get(name)),
     }
 }
 
