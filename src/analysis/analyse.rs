@@ -8,6 +8,8 @@ use super::filter_readouts::filter_readouts;
 use super::filter_remarks::DAMPED_BELOW;
 use super::filter_result::{InputFilterDetail, InputFilterResult};
 use super::impedance::Interface;
+use super::isolated::{IsolatedFigures, isolated_figures};
+use super::isolated_readouts::isolated_readouts;
 use super::ledger::ledger;
 use super::loop_model::{LoopModel, Shared, model_finding};
 use super::readouts::readouts;
@@ -172,6 +174,7 @@ fn conclude(
         readouts: [
             readouts(detail, &conditions, &requirements, design.events.settling_band),
             filter_readouts(detail, &conditions),
+            isolated_readouts(detail, &conditions),
         ]
         .concat(),
         shown,
@@ -195,6 +198,7 @@ struct Worked {
     right_half_plane_zero_hz: Option<f64>,
     /// The input filter's interface with what was found there.
     input_filter: Option<(Interface, InputFilterResult)>,
+    isolated: Option<IsolatedFigures>,
 }
 
 impl Worked {
@@ -207,6 +211,7 @@ impl Worked {
             control: self.control,
             load_step: self.load_step,
             input_filter: self.input_filter.map(|(_, result)| result),
+            isolated: self.isolated,
             right_half_plane_zero_hz: self.right_half_plane_zero_hz,
             loop_db,
             loop_deg,
@@ -222,7 +227,9 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
     let control = control_figures(&model, fs * SEARCH_FROM, fs * SEARCH_TO).map_err(|e| model_finding(&e))?;
     let right_half_plane_zero_hz = model.right_half_plane_zero_hz(&design.stage).map_err(|e| model_finding(&e))?;
     let input_filter = filter_interface(design, shared, &stage_condition, &model, &loop_gain)?;
-    Ok(Worked { model, modes, loop_gain, control, load_step, right_half_plane_zero_hz, input_filter })
+    let isolated = isolated_figures(design, shared, &model, &stage_condition, (fs * SEARCH_FROM, fs * SEARCH_TO))
+        .map_err(|e| model_finding(&e))?;
+    Ok(Worked { model, modes, loop_gain, control, load_step, right_half_plane_zero_hz, input_filter, isolated })
 }
 
 /// Model, margins and verdict at a condition; and for a stable loop its modes.
@@ -351,6 +358,7 @@ fn detailed(
         steps: steps.map_err(|e| model_finding(&e))?,
         ledger,
         control: worked.control.clone(),
+        isolated: worked.isolated.clone(),
         ramp: shared.law.current().map(|(_, sense)| sense.ramp()),
     })
 }

@@ -176,7 +176,11 @@ fn control_voltage(design: &CheckedDesign, law: &ControlLaw, cases: &[Case<'_>])
             Finding::problem("control.clamp", message).with_hint("raise the clamp, lower the sense gain or the ramp"),
         );
     }
-    let (least, greatest) = design.compensator.amplifier.output_limits();
+    // What limits isolated feedback is told by its own remarks, over the spread of its transfer ratio.
+    if design.compensator.isolated().is_some() {
+        return findings;
+    }
+    let (least, greatest) = design.compensator.output_limits();
     let lowest = cases.iter().min_by(|a, b| needed(a).total_cmp(&needed(b))).filter(|case| needed(case) < least);
     let above = (needed(&most) > greatest).then_some((most, greatest, "greatest"));
     if let Some((case, limit, end)) = above.or(lowest.map(|case| (case, least, "least"))) {
@@ -188,7 +192,7 @@ fn control_voltage(design: &CheckedDesign, law: &ControlLaw, cases: &[Case<'_>])
         );
         let path = match design.compensator.amplifier {
             crate::compensator::Amplifier::OpAmp(_) => "compensator.op-amp",
-            crate::compensator::Amplifier::Transconductance(_) => "compensator.transconductance",
+            _ => "compensator.transconductance",
         };
         findings.push(
             Finding::problem(format!("{path}.output-{end}"), message)

@@ -3,6 +3,7 @@
 //! *Conventions*: closed-loop quantities are the open-loop ones over 1 + T with the exact delay; the output impedance
 //! counts current drawn by the load as positive, so a resistive output reads positive. All three are taken at the load's terminals.
 
+use super::fast_path::Fed;
 use super::loop_model::{LoopModel, Shared};
 use super::result::Curves;
 use crate::control::CONTROL;
@@ -51,7 +52,7 @@ pub(super) fn curves(
         ..Curves::default()
     };
     let reference_offset_db = db(reference_scale);
-    let beyond = if model.load_beyond { Some(Beyond::new(model)?) } else { None };
+    let beyond = if model.load_beyond || model.apart.is_some() { Some(Beyond::new(model)?) } else { None };
     for k in 0..n {
         if let Some(beyond) = &beyond {
             let loop_gain = polar(loop_db[k], loop_deg[k]);
@@ -78,13 +79,15 @@ pub(super) fn curves(
     Ok(Curves { plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, ..c })
 }
 
-/// Responses of a load behind a second stage, whose voltage is not the regulated one.
+/// Responses of a load whose voltage is not all that the feedback reads: it stands behind a second stage, or a fast path reads another
+/// voltage beside.
 ///
-/// With w a disturbance, y the load's voltage, s the sensed one and r = y/s as the control voltage drives both:
-/// y/w closed = y/w open − r·T/(1 + T)·(s/w open).
+/// With w a disturbance, u the control voltage, y the load's voltage and s what the feedback reads:
+/// y/w closed = y/w open − y/u·T/(1 + T)·(s/w)/(s/u).
 struct Beyond {
     load: [FactoredResponse; 3],
-    sensed: [FactoredResponse; 3],
+    fed: [Fed; 3],
+    sensed_from_control: FactoredResponse,
 }
 
 /// What they come to at one frequency.
@@ -96,17 +99,20 @@ struct BeyondAt {
 
 impl Beyond {
     fn new(model: &LoopModel) -> Result<Self, LinearError> {
-        let row = |output: &str| -> Result<[FactoredResponse; 3], LinearError> {
-            let from = |input: &str| model.open_loop(output, input).map(|zpk| FactoredResponse::new(zpk, 0.0));
-            Ok([from(CONTROL)?, from(INPUT_VOLTAGE)?, from(LOAD_CURRENT)?])
-        };
-        Ok(Beyond { load: row(LOAD_VOLTAGE)?, sensed: row(OUTPUT_VOLTAGE)? })
+        let load = |input: &str| model.open_loop(LOAD_VOLTAGE, input).map(|zpk| FactoredResponse::new(zpk, 0.0));
+        let fed = |input: &str| Fed::new(model, input);
+        Ok(Beyond {
+            load: [load(CONTROL)?, load(INPUT_VOLTAGE)?, load(LOAD_CURRENT)?],
+            fed: [fed(CONTROL)?, fed(INPUT_VOLTAGE)?, fed(LOAD_CURRENT)?],
+            sensed_from_control: FactoredResponse::new(model.open_loop(OUTPUT_VOLTAGE, CONTROL)?, 0.0),
+        })
     }
 
     fn at(&self, f: f64, loop_gain: Complex) -> BeyondAt {
-        let load_over_sensed = self.load[0].at_hz(f) / self.sensed[0].at_hz(f);
-        let held = load_over_sensed * loop_gain / (loop_gain + 1.0);
-        let closed = |input: usize| self.load[input].at_hz(f) - held * self.sensed[input].at_hz(f);
+        let load = self.load[0].at_hz(f);
+        let held = load / self.fed[0].at_hz(f) * loop_gain / (loop_gain + 1.0);
+        let closed = |input: usize| self.load[input].at_hz(f) - held * self.fed[input].at_hz(f);
+        let load_over_sensed = load / self.sensed_from_control.at_hz(f);
         BeyondAt { impedance: -closed(2), line: closed(1), load_over_sensed }
     }
 }

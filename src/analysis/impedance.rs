@@ -2,7 +2,8 @@
 //! the loop.
 //!
 //! *Method*: the stage without its filter, fed by an ideal source at the voltage the filter leaves at its terminals, answers there
-//! with three input impedances: ZD with the control voltage at rest, ZN with the control voltage that holds the output at rest, and
+//! with three input impedances: ZD with the control voltage at rest, ZN with the control voltage that holds what the feedback reads at
+//! rest (the output; with two unlike paths their sum), and
 //! Zi with the loop closed, 1/Zi = (1/ZD + T/ZN)/(1 + T). With the filter's output impedance Zo the loop gain is
 //! T·(1 + Zo/ZN)/(1 + Zo/ZD): it stays what it was where |Zo| is far below |ZN| and |ZD|, and the loop stays stable where |Zo| is
 //! below |Zi| throughout (sufficient, not necessary).
@@ -11,9 +12,11 @@
 //! *Source*: Middlebrook, IEEE Industry Applications Society Annual Meeting 1976, 366; Erickson & Maksimovic, Fundamentals of Power
 //! Electronics, 3rd ed., ch. 17 (extra element theorem; from memory).
 
+use super::fast_path::Fed;
 use super::filter_result::{Against, ImpedanceCurves, ImpedanceMargin, InputFilterResult, LargestChange};
 use super::loop_model::{LoopModel, Shared, model_finding};
-use crate::converter::signals::{INPUT_CURRENT, OUTPUT_VOLTAGE};
+use crate::control::CONTROL;
+use crate::converter::signals::{INPUT_CURRENT, INPUT_VOLTAGE};
 use crate::converter::{Stage, StageCondition};
 use crate::finding::Finding;
 use crate::linear::{Complex, FactoredResponse, FrequencyResponse, LinearError, StateSpace, Verdict, Zpk, margins};
@@ -36,8 +39,9 @@ pub(super) struct Interface {
     filter: FactoredResponse,
     current_from_input: FactoredResponse,
     current_from_control: FactoredResponse,
-    output_from_input: FactoredResponse,
-    output_from_control: FactoredResponse,
+    /// What the feedback reads.
+    fed_from_input: Fed,
+    fed_from_control: Fed,
 }
 
 /// The impedances at one frequency [Ω].
@@ -74,13 +78,14 @@ impl Interface {
         };
         let controlled = &without.controlled.stage;
         let row = |name: &str| controlled.need_output(name).map_err(|e| model_finding(&e));
-        let (output, current) = (row(OUTPUT_VOLTAGE)?, row(INPUT_CURRENT)?);
+        let current = row(INPUT_CURRENT)?;
+        let fed = |input: &str| Fed::new(&without, input).map_err(|e| model_finding(&e));
         Ok(Some(Interface {
             filter: entry(network, 0, 0)?,
             current_from_input: entry(controlled, current, 1)?,
             current_from_control: entry(controlled, current, 0)?,
-            output_from_input: entry(controlled, output, 1)?,
-            output_from_control: entry(controlled, output, 0)?,
+            fed_from_input: fed(INPUT_VOLTAGE)?,
+            fed_from_control: fed(CONTROL)?,
             without,
             shared,
         }))
@@ -89,7 +94,7 @@ impl Interface {
     /// The impedances at a frequency [Hz]. The delay of the control voltage drops out of ZN and stands in T.
     fn at(&self, f: f64) -> Impedances {
         let direct = self.current_from_input.at_hz(f);
-        let holding = self.output_from_input.at_hz(f) / self.output_from_control.at_hz(f);
+        let holding = self.fed_from_input.at_hz(f) / self.fed_from_control.at_hz(f);
         let nulled = direct - self.current_from_control.at_hz(f) * holding;
         let loop_gain = self.without.loop_gain.at_hz(f);
         let closed = (direct + loop_gain * nulled) / (loop_gain + 1.0);

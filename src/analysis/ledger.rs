@@ -6,6 +6,7 @@ use super::pairs::{Pair, pairs};
 use super::result::{Ledger, LedgerRole, LedgerRow};
 use crate::compensator::{Compensator, LaneKind};
 use crate::converter::Landmark;
+use crate::converter::signals::LOAD_VOLTAGE;
 use crate::linear::{FactorKind, FactorPhase, FactoredResponse};
 use crate::quantity::{Unit, print_digits};
 use std::f64::consts::TAU;
@@ -47,6 +48,7 @@ pub(super) fn ledger(
         lane: None,
         landmark: None,
     });
+    rows.extend(fast_path_row(model, shared, crossover_hz));
     let mut small = 0.0;
     let mut factors = model.plant.factor_phases_deg(crossover_hz);
     let cancelling = pairs(&mut factors);
@@ -88,6 +90,20 @@ pub(super) fn ledger(
     Ledger { frequency_hz: crossover_hz, rows, phase_margin_deg }
 }
 
+/// What a fast path does that does not read the regulated voltage: the loop's phase beside that of plant and compensator.
+fn fast_path_row(model: &LoopModel, shared: &Shared, f: f64) -> Option<LedgerRow> {
+    let path = model.apart.as_ref()?;
+    let product = model.plant.phase_deg(f) + shared.compensator_response.phase_deg(f);
+    let place = if path.signal == LOAD_VOLTAGE { "at the load" } else { "at the bank" };
+    Some(LedgerRow {
+        label: format!("fast path {place}"),
+        degrees: wrapped(model.loop_gain.phase_deg(f) - product),
+        role: LedgerRole::Compensator,
+        lane: None,
+        landmark: None,
+    })
+}
+
 /// One row per lane, and one for what the ideal network has beside its lanes.
 fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64) -> Vec<LedgerRow> {
     let mut rows: Vec<LedgerRow> = compensator
@@ -99,6 +115,7 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
             let (label, degrees) = match lane.kind {
                 LaneKind::Gain => ("integrator".to_owned(), -90.0),
                 LaneKind::Zero => (format!("zero {at}"), turn),
+                LaneKind::Pole if lane.of_optocoupler => (format!("optocoupler with C2 {at}"), -turn),
                 LaneKind::Pole => (format!("pole {at}"), -turn),
             };
             LedgerRow { label, degrees, role: LedgerRole::Compensator, lane: Some(lane.key), landmark: None }
@@ -106,8 +123,10 @@ fn compensator_rows(compensator: &Compensator, ideal: &FactoredResponse, f: f64)
         .collect();
     let beside = ideal.phase_deg(f) - rows.iter().map(|row| row.degrees).sum::<f64>();
     if beside.abs() > 1e-6 {
+        let named = compensator.beside_lanes();
+        let label = named.map(|(what, hz)| format!("{what} {}", print_digits(hz, Unit::Hertz, 3)));
         rows.push(LedgerRow {
-            label: "network beside its lanes".into(),
+            label: label.unwrap_or_else(|| "network beside its lanes".into()),
             degrees: beside,
             role: LedgerRole::Compensator,
             lane: None,

@@ -5,6 +5,8 @@
 //! control voltage is exact in every frequency response and a third-order Padé form in the closed-loop state space; inside
 //! the inner loop of average current mode it is the latter in both.
 
+use super::fast_path::FastPath;
+use crate::compensator::{FAST, joined_paths};
 use crate::control::{CONTROL, ControlLaw, Controlled, Edge, Mode};
 use crate::converter::signals::LOAD_VOLTAGE;
 use crate::converter::{AveragedModel, Conduction, Stage, StageCondition};
@@ -20,10 +22,12 @@ use nalgebra::DMatrix;
 /// What all conditions of a design share: the compensator, solved once.
 #[derive(Clone, Debug)]
 pub struct Shared {
-    /// From "vout" and "vref" to "vc".
+    /// From "vout", "vref" and, where it has a fast path, "fast" to "vc".
     pub compensator: StateSpace,
-    /// −vc/vout.
+    /// −vc/vout, a fast path seeing the same voltage.
     pub compensator_response: FactoredResponse,
+    /// The fast path of isolated feedback, where there is one.
+    pub fast_path: Option<FastPath>,
     /// The control law, its compensating ramp settled.
     pub law: ControlLaw,
     delay: Option<StateSpace>,
@@ -42,7 +46,9 @@ impl Shared {
             Finding::problem("compensator", format!("The compensator cannot be solved: {e}."))
         };
         let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
-        let response = Zpk::from_state_space(&compensator, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+        let joined = joined_paths(compensator.clone()).map_err(|e| singular(&e))?;
+        let response = Zpk::from_state_space(&joined, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+        let fast_path = FastPath::new(design, &compensator).map_err(|e| singular(&e))?;
         let law = settled(design)?;
         let outside = !matches!(law.mode, Mode::Average(_));
         let delay = if law.delay_s > 0.0 && outside {
@@ -50,7 +56,8 @@ impl Shared {
         } else {
             None
         };
-        Ok(Shared { compensator, compensator_response: FactoredResponse::new(response, 0.0), law, delay })
+        let compensator_response = FactoredResponse::new(response, 0.0);
+        Ok(Shared { compensator, compensator_response, fast_path, law, delay })
     }
 }
 
@@ -95,6 +102,9 @@ pub struct LoopModel {
     pub loop_gain: FactoredResponse,
     /// Whether the load's voltage is another than the regulated one: a second stage stands behind the sense point.
     pub load_beyond: bool,
+    /// The fast path of isolated feedback, where it sees another voltage than the regulated one: the loop gain is the sum over both
+    /// paths.
+    pub apart: Option<FastPath>,
 }
 
 /// A zero beyond this many switching frequencies is rounding of a path that is none.
@@ -119,13 +129,18 @@ impl LoopModel {
         ended_blind(&shared.law, &averaged, period)?;
         let controlled = shared.law.controlled(&averaged, period).map_err(|e| model_finding(&e))?;
         let plant = Zpk::from_state_space(&controlled.stage, 0, 0).map_err(|e| model_finding(&e))?;
-        let loop_zpk = plant.multiply(shared.compensator_response.zpk());
+        let apart = shared.fast_path.as_ref().filter(|path| path.apart).cloned();
+        let loop_zpk = match &apart {
+            None => plant.multiply(shared.compensator_response.zpk()),
+            Some(path) => path.loop_gain(&controlled.stage, &shared.compensator).map_err(|e| model_finding(&e))?,
+        };
         Ok(LoopModel {
             plant: FactoredResponse::new(plant, controlled.delay_s),
             loop_gain: FactoredResponse::new(loop_zpk, controlled.delay_s),
             controlled,
             averaged,
             load_beyond: stage.second_stage.is_some_and(|second| !second.sensed_at_load),
+            apart,
         })
     }
 
@@ -168,15 +183,24 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn closed(&self, shared: &Shared) -> Result<StateSpace, LinearError> {
+        self.closed_with(shared, &shared.compensator)
+    }
+
+    /// The same around another compensator with the same ports.
+    fn closed_with(&self, shared: &Shared, compensator: &StateSpace) -> Result<StateSpace, LinearError> {
         const STAGE: usize = 0;
         const COMPENSATOR: usize = 1;
         const TAP: usize = 2;
         let tap = StateSpace::constant(DMatrix::identity(1, 1), &["disturbance"], &["disturbance"])?;
-        let mut parts = vec![&self.controlled.stage, &shared.compensator, &tap];
+        let mut parts = vec![&self.controlled.stage, compensator, &tap];
         let mut wires = vec![
             wire(STAGE, "output voltage", COMPENSATOR, "vout", 1.0),
             wire(TAP, "disturbance", COMPENSATOR, "vout", 1.0),
         ];
+        if let Some(path) = &shared.fast_path {
+            wires.push(wire(STAGE, path.signal, COMPENSATOR, FAST, 1.0));
+            wires.push(wire(TAP, "disturbance", COMPENSATOR, FAST, 1.0));
+        }
         if let Some(delay) = &shared.delay {
             let place = parts.len();
             let (input, output) = (delay.inputs[0].as_str(), delay.outputs[0].as_str());
@@ -228,6 +252,21 @@ impl LoopModel {
         self.judged(shared, margins).map(|judged| judged.2)
     }
 
+    /// Stability with another compensator of the same ports, whose loop gain and margins these are.
+    ///
+    /// # Errors
+    /// As the joining of systems.
+    pub(super) fn stability_with(
+        &self,
+        shared: &Shared,
+        compensator: &StateSpace,
+        loop_gain: &FactoredResponse,
+        margins: &Margins,
+    ) -> Result<Verdict, LinearError> {
+        let poles = self.closed_with(shared, compensator)?.poles()?;
+        Ok(closed_loop_verdict_knowing(&poles, loop_gain, margins))
+    }
+
     fn judged(&self, shared: &Shared, margins: &Margins) -> Result<(StateSpace, Vec<Complex>, Verdict), LinearError> {
         let closed = self.closed(shared)?;
         let poles = closed.poles()?;
@@ -236,7 +275,7 @@ impl LoopModel {
     }
 }
 
-fn wire<'a>(from_part: usize, output: &'a str, to_part: usize, input: &'a str, gain: f64) -> Wire<'a> {
+pub(super) fn wire<'a>(from_part: usize, output: &'a str, to_part: usize, input: &'a str, gain: f64) -> Wire<'a> {
     Wire { from_part, output, to_part, input, gain }
 }
 

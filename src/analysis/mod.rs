@@ -10,10 +10,14 @@ mod control_figures;
 mod control_remarks;
 mod crossover_window;
 mod curves;
+mod fast_path;
 mod filter_readouts;
 mod filter_remarks;
 mod filter_result;
 mod impedance;
+mod isolated;
+mod isolated_readouts;
+mod isolated_remarks;
 mod ledger;
 mod load_sweep;
 pub mod loop_model;
@@ -31,9 +35,11 @@ pub mod terms;
 mod tests;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use fast_path::FastPath;
 pub use filter_result::{
     Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,
 };
+pub use isolated::{AtRatio, IsolatedFigures};
 pub use load_sweep::{LoadSweep, LoadSweepFigures, LoadSweepLine, LoadSweepPoint, SWEEP_POINTS, load_sweep};
 pub use placement::{Goal, place_by_k_factor, place_by_rules, usual_goal};
 pub use result::{

@@ -9,6 +9,7 @@ use super::result::{Analysis, Detail};
 use crate::compensator::{KFactorGoal, Placement, RuleGoal, RuledPlacement};
 use crate::design::{Asked, CheckedDesign, Scope};
 use crate::finding::Finding;
+use crate::linear::Complex;
 use crate::quantity::{Unit, print};
 use std::collections::BTreeSet;
 
@@ -68,7 +69,7 @@ pub fn place_by_k_factor(
         plant_gain_db: first(&detail.curves.plant_db),
         plant_phase_deg: first(&detail.curves.plant_deg),
     };
-    design.compensator.by_k_factor(&goal, locks)
+    design.compensator.by_k_factor_apart(&goal, fast_over_sensed(design, &detail), locks)
 }
 
 /// The compensator placed by the plant's landmarks, crossing over at the goal's crossover at the condition `shown`.
@@ -92,7 +93,19 @@ pub fn place_by_rules(
         right_half_plane_zero_hz: summaries.filter_map(|s| s.right_half_plane_zero_hz).min_by(f64::total_cmp),
         switching_frequency_hz: design.stage.switching_frequency,
     };
-    design.compensator.by_rules(&goal, locks)
+    design.compensator.by_rules_apart(&goal, fast_over_sensed(design, &detail), locks)
+}
+
+/// The plant to the voltage that a fast path reads over the plant to the regulated one, at the only frequency of a detail: from
+/// T = P·(Cs + r·Cf) with the present parts.
+fn fast_over_sensed(design: &CheckedDesign, detail: &Detail) -> Complex {
+    let curves = &detail.curves;
+    let polar = |db: &[f64], deg: &[f64]| Complex::from_polar(10f64.powf(first(db) / 20.0), first(deg).to_radians());
+    let feedback = polar(&curves.loop_db, &curves.loop_deg) / polar(&curves.plant_db, &curves.plant_deg);
+    match design.compensator.paths_at(first(&curves.frequencies_hz)) {
+        Some([slow, fast]) if fast != Complex::ZERO => (feedback - slow) / fast,
+        _ => Complex::ONE,
+    }
 }
 
 /// The plant at the goal's crossover, everything else left out.

@@ -5,6 +5,7 @@ use super::conduction::{discontinuous, resonates, step_leaves_mode};
 use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
 use super::filter_remarks::filter_remarks;
+use super::isolated_remarks::isolated_remarks;
 use super::loop_model::Shared;
 use super::result::{ConditionResult, ConditionSummary, CrossoverWindow, Detail, RequirementVerdict, WindowEdge};
 use super::stability_remarks::{conditionally_stable, unstable, what_if_unstable};
@@ -37,6 +38,7 @@ pub(super) fn remarks(
     findings.extend(what_if_unstable(detail));
     findings.extend(filter_remarks(design, detail, conditions));
     findings.extend(control_remarks(design, shared, detail, conditions));
+    findings.extend(isolated_remarks(design, detail, conditions, window));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
     findings.extend(ripple(design, shared, conditions));
@@ -145,7 +147,7 @@ fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult
 fn step_leaves_limits(design: &CheckedDesign, detail: Option<&Detail>) -> Option<Finding> {
     let detail = detail?;
     let step = detail.steps.load.as_ref()?;
-    let (least, greatest) = design.compensator.amplifier.output_limits();
+    let (least, greatest) = design.compensator.output_limits();
     let followed = design.law.control_limits(detail.condition.input_voltage);
     let (least, greatest) = (least.max(followed.0), greatest.min(followed.1));
     let (low, high) = step.control_v;

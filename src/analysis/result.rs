@@ -5,6 +5,7 @@
 //! names the operating condition it was computed at.
 
 use super::filter_result::{InputFilterDetail, InputFilterResult};
+use super::isolated::IsolatedFigures;
 use crate::control::Sampling;
 use crate::converter::{Landmark, OperatingPoint};
 use crate::finding::Finding;
@@ -237,6 +238,8 @@ pub struct Detail {
     pub curves: Curves,
     /// Input filter against converter, where one is fitted.
     pub input_filter: Option<InputFilterDetail>,
+    /// Operating point and ends of the transfer ratio, where the feedback is isolated.
+    pub isolated: Option<IsolatedFigures>,
     /// Time responses.
     pub steps: Steps,
     /// Phase ledger; absent when the loop has no crossover.
@@ -269,6 +272,8 @@ pub struct ConditionSummary {
     pub load_step: Option<StepFigures>,
     /// Input filter against converter, where one is fitted.
     pub input_filter: Option<InputFilterResult>,
+    /// Operating point and ends of the transfer ratio, where the feedback is isolated.
+    pub isolated: Option<IsolatedFigures>,
     /// Lowest right-half-plane zero of the plant [Hz].
     pub right_half_plane_zero_hz: Option<f64>,
     /// Loop gain on the band grid [dB].

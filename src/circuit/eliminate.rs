@@ -125,7 +125,10 @@ impl Tableau {
         for (k, part) in netlist.parts.iter().enumerate() {
             let has_current = !matches!(
                 part.kind,
-                Kind::Inductor { .. } | Kind::CurrentSource { .. } | Kind::ControlledCurrent { .. }
+                Kind::Inductor { .. }
+                    | Kind::CurrentSource { .. }
+                    | Kind::ControlledCurrent { .. }
+                    | Kind::CopiedCurrent { .. }
             );
             if has_current {
                 column_of_part[k] = Some(unknowns.len());
@@ -197,6 +200,15 @@ impl Tableau {
                     }
                 }
             }
+            Kind::CopiedCurrent { gain, of } => {
+                if let Some(column) = self.column_of_part[of.0] {
+                    for (node, sign) in [(from, 1.0), (to, -1.0)] {
+                        if node.0 > 0 {
+                            self.put(node.0 - 1, column, sign, Some(gain.0));
+                        }
+                    }
+                }
+            }
             Kind::Transformer { ratio, second } => {
                 if let Some(column) = self.column_of_part[k] {
                     self.place_transformer(column, (from, to), second, ratio.0);
@@ -255,7 +267,8 @@ impl Tableau {
             Kind::Transformer { .. }
             | Kind::Inductor { .. }
             | Kind::CurrentSource { .. }
-            | Kind::ControlledCurrent { .. } => {}
+            | Kind::ControlledCurrent { .. }
+            | Kind::CopiedCurrent { .. } => {}
         }
     }
 }

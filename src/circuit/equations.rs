@@ -246,6 +246,9 @@ impl Compiled {
                 Kind::ControlledCurrent { siemens, plus, minus } => {
                     voltage(plus, minus).into_iter().map(|(c, sign)| (c, sign * values[siemens.0])).collect()
                 }
+                Kind::CopiedCurrent { gain, of } => {
+                    self.current(of).into_iter().map(|(c, sign)| (c, sign * values[gain.0])).collect()
+                }
                 _ => self.current(part),
             },
         }

@@ -71,6 +71,7 @@ pub(super) enum Kind {
     Diode { ohms: Slot, drop: InputId },
     ControlledVoltage { gain: Slot, plus: Node, minus: Node },
     ControlledCurrent { siemens: Slot, plus: Node, minus: Node },
+    CopiedCurrent { gain: Slot, of: PartId },
     Transformer { ratio: Slot, second: (Node, Node) },
 }
 
@@ -253,6 +254,12 @@ impl Netlist {
         minus: Node,
     ) -> PartId {
         self.add(name, Kind::ControlledCurrent { siemens, plus, minus }, from, to)
+    }
+
+    /// A current source of `gain` times the current of another part, which is no inductor and no current source, flowing from `from`
+    /// to `to` inside it.
+    pub fn copied_current(&mut self, name: &str, from: Node, to: Node, gain: Slot, of: PartId) -> PartId {
+        self.add(name, Kind::CopiedCurrent { gain, of }, from, to)
     }
 
     /// An ideal transformer with turns ratio second to first; `first` and `second` list their dotted ends first.

@@ -60,6 +60,30 @@ fn cut_off_inductor_is_constrained() {
     assert_eq!(eq.independent().0.a.nrows(), 0);
 }
 
+/// A source that copies the current of a branch: with the branch's resistance zero, too, where no voltage could tell the current.
+#[test]
+fn a_copied_current_follows_its_branch() {
+    let mut n = Netlist::new();
+    let (g, a, b, out) = (n.ground(), n.node("a"), n.node("b"), n.node("out"));
+    let (u, w) = (n.input("v"), n.input("w"));
+    let (r, straight, gain, load) = (n.slot("r"), n.slot("straight"), n.slot("gain"), n.slot("load"));
+    n.voltage_source("V", a, g, u);
+    n.resistor("R", a, b, r);
+    let inner = n.node("inner");
+    let branch = n.resistor("straight", b, inner, straight);
+    n.voltage_source("W", inner, g, w);
+    let copy = n.copied_current("copy", out, g, gain, branch);
+    n.resistor("load", out, g, load);
+    n.voltage_output("v", out, g);
+    n.current_output("i", copy);
+    for straight in [0.0, 30.0] {
+        let v = [100.0, straight, 2.5, 40.0];
+        let eq = Compiled::new(&n, |_| true, &v).unwrap().equations(&v).unwrap();
+        let current = 2.5 / (100.0 + straight);
+        close(&eq.d, &[-40.0 * current, 40.0 * current, current, -current]);
+    }
+}
+
 /// Two capacitors in parallel act as one of the summed capacitance.
 #[test]
 fn capacitor_loop_acts_as_their_sum() {

@@ -12,6 +12,7 @@ use super::method::{
 use super::network::{Compensator, Kind};
 use super::place::{LEAST_RATIO, Placement};
 use crate::finding::Finding;
+use crate::linear::Complex;
 
 /// Rounds of counting the amplifier with the plant; each shrinks what is left by the amplifier's error, far below 1.
 const ROUNDS: usize = 12;
@@ -38,15 +39,30 @@ impl Compensator {
     /// # Errors
     /// As [`k_factor`]: this type cannot give the boost, or a number of the goal is unusable.
     pub fn by_k_factor(&self, goal: &KFactorGoal, locks: &BTreeSet<String>) -> Result<Placement, Box<Finding>> {
-        self.settle(goal.crossover_hz, locks, |gain_db, phase_deg| {
+        self.by_k_factor_apart(goal, Complex::ONE, locks)
+    }
+
+    /// The same where the fast path of isolated feedback does not see the sensed voltage: `fast_over_sensed` is the plant to the one
+    /// over the plant to the other at the crossover.
+    ///
+    /// # Errors
+    /// As [`Compensator::by_k_factor`].
+    pub fn by_k_factor_apart(
+        &self,
+        goal: &KFactorGoal,
+        fast_over_sensed: Complex,
+        locks: &BTreeSet<String>,
+    ) -> Result<Placement, Box<Finding>> {
+        self.settle((goal.crossover_hz, fast_over_sensed), locks, |gain_db, phase_deg| {
             let with_amplifier = KFactorGoal {
                 plant_gain_db: goal.plant_gain_db + gain_db,
                 plant_phase_deg: goal.plant_phase_deg + phase_deg,
                 ..*goal
             };
             let placed = k_factor(self.kind, &with_amplifier)?;
-            if self.kind == Kind::Three && placed.pole_over_zero > self.greatest_ratio() {
-                self.uneven_pairs(&with_amplifier, placed.boost_deg)
+            if self.kind == Kind::Three && placed.pole_over_zero > self.greatest_ratio_for(&placed.corners) {
+                let ratio = self.greatest_ratio_for(&placed.corners);
+                self.uneven_pairs(&with_amplifier, placed.boost_deg, ratio)
             } else {
                 Ok(placed.corners)
             }
@@ -58,13 +74,26 @@ impl Compensator {
     /// # Errors
     /// As [`pole_zero_rules`].
     pub fn by_rules(&self, goal: &RuleGoal, locks: &BTreeSet<String>) -> Result<RuledPlacement, Box<Finding>> {
+        self.by_rules_apart(goal, Complex::ONE, locks)
+    }
+
+    /// The same where the fast path of isolated feedback does not see the sensed voltage, as in [`Compensator::by_k_factor_apart`].
+    ///
+    /// # Errors
+    /// As [`Compensator::by_rules`].
+    pub fn by_rules_apart(
+        &self,
+        goal: &RuleGoal,
+        fast_over_sensed: Complex,
+        locks: &BTreeSet<String>,
+    ) -> Result<RuledPlacement, Box<Finding>> {
         let RulePlacement { reasons, .. } = pole_zero_rules(self.kind, goal)?;
-        let placement = self.settle(goal.crossover_hz, locks, |gain_db, _| {
+        let placement = self.settle((goal.crossover_hz, fast_over_sensed), locks, |gain_db, _| {
             let with_amplifier = RuleGoal { plant_gain_db: goal.plant_gain_db + gain_db, ..*goal };
             let mut corners = pole_zero_rules(self.kind, &with_amplifier)?.corners;
             if let (Kind::Three, Some(zero), Some(pole)) = (self.kind, corners.zero_2, corners.pole_2) {
                 // What the divider forbids is known beforehand, so the gain allows for it.
-                corners.pole_2 = Some(pole.min(zero * self.greatest_ratio()).max(zero * LEAST_RATIO));
+                corners.pole_2 = Some(pole.min(zero * self.greatest_ratio_for(&corners)).max(zero * LEAST_RATIO));
                 set_gain(&mut corners, goal.crossover_hz, with_amplifier.plant_gain_db);
             }
             Ok(corners)
@@ -72,15 +101,24 @@ impl Compensator {
         Ok(RuledPlacement { placement, reasons })
     }
 
-    /// A type III whose second pair is as wide as the divider lets it be, the first pair making up the boost.
-    fn uneven_pairs(&self, goal: &KFactorGoal, boost_deg: f64) -> Result<Corners, Box<Finding>> {
-        let ratio = self.greatest_ratio().max(LEAST_RATIO);
+    /// A type III whose second pair is as wide as what it stands across lets it be, the first pair making up the boost.
+    fn uneven_pairs(&self, goal: &KFactorGoal, boost_deg: f64, greatest_ratio: f64) -> Result<Corners, Box<Finding>> {
+        let ratio = greatest_ratio.max(LEAST_RATIO);
         let rest_deg = boost_deg - boost_of(ratio);
         if rest_deg > GREATEST_PAIR_BOOST_DEG {
+            let (what, hint) = if self.isolated().is_some() {
+                (
+                    "The LED's own resistance",
+                    "lower the crossover or the phase margin; a greater LED resistor widens the range",
+                )
+            } else {
+                (
+                    "The divider",
+                    "lower the crossover or the phase margin; a lower reference voltage or an op amp widens the range",
+                )
+            };
             let message =
-                "The divider leaves the second pole and zero too close together for the boost this plant needs";
-            let hint =
-                "lower the crossover or the phase margin; a lower reference voltage or an op amp widens the range";
+                format!("{what} leaves the second pole and zero too close together for the boost this plant needs");
             return Err(Box::new(Finding::problem("compensator.amplifier", message).with_hint(hint)));
         }
         let (first, second) = (spread_for(rest_deg).max(LEAST_RATIO.sqrt()), ratio.sqrt());
@@ -99,14 +137,18 @@ impl Compensator {
     /// until those no longer change.
     fn settle(
         &self,
-        crossover_hz: f64,
+        (crossover_hz, fast_over_sensed): (f64, Complex),
         locks: &BTreeSet<String>,
         method: impl Fn(f64, f64) -> Result<Corners, Box<Finding>>,
     ) -> Result<Placement, Box<Finding>> {
         let (mut gain_db, mut phase_deg) = (0.0, 0.0);
         let mut placement = self.place(&method(gain_db, phase_deg)?, locks);
         for _ in 0..ROUNDS {
-            let Some((new_gain_db, new_phase_deg)) = placement.compensator.amplifier_at(crossover_hz) else { break };
+            let Some((new_gain_db, new_phase_deg)) =
+                placement.compensator.actual_over_ideal(crossover_hz, fast_over_sensed)
+            else {
+                break;
+            };
             let change = (new_gain_db - gain_db).abs().max((new_phase_deg - phase_deg).abs());
             (gain_db, phase_deg) = (new_gain_db, new_phase_deg);
             if change < SETTLED {
@@ -117,10 +159,11 @@ impl Compensator {
         Ok(placement)
     }
 
-    /// What the amplifier's limits do to the response at a frequency: gain [dB] and phase [°] against the ideal network.
-    pub fn amplifier_at(&self, frequency_hz: f64) -> Option<(f64, f64)> {
-        let actual = self.response().ok()?.at_hz(frequency_hz);
-        let difference = actual / self.ideal().at_hz(frequency_hz);
+    /// What the amplifier's limits, and a fast path that sees another voltage, do to the response at a frequency: gain [dB] and phase
+    /// [°] against the ideal network.
+    fn actual_over_ideal(&self, frequency_hz: f64, fast_over_sensed: Complex) -> Option<(f64, f64)> {
+        let [slow, fast] = self.paths_at(frequency_hz)?;
+        let difference = (slow + fast * fast_over_sensed) / self.ideal().at_hz(frequency_hz);
         let (gain_db, phase_deg) = (20.0 * difference.norm().log10(), difference.arg().to_degrees());
         (gain_db.is_finite() && phase_deg.is_finite()).then_some((gain_db, phase_deg))
     }

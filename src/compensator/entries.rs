@@ -3,17 +3,28 @@
 //! *Conventions.* Paths start with `compensator.`; a part is named as in the drawings: `r2`, `c1` in series, `c2` across them,
 //! `r3`, `c3` across the upper divider resistor.
 
+use super::shunt_entries as shunt;
 use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 
 /// Resistances of a signal-level network [Ω]: wider than anything fitted, narrow enough to stop a slip of the prefix.
-const RESISTANCE: Bounds = Bounds::Between(1e-3, 1e9);
+pub(super) const RESISTANCE: Bounds = Bounds::Between(1e-3, 1e9);
 /// Capacitances of a signal-level network [F], likewise.
-const CAPACITANCE: Bounds = Bounds::Between(1e-16, 1.0);
+pub(super) const CAPACITANCE: Bounds = Bounds::Between(1e-16, 1.0);
 /// Voltages an amplifier's output may be limited to [V].
 const OUTPUT_VOLTAGE: Bounds = Bounds::Between(-1000.0, 1000.0);
 
 /// Every number a user enters for the compensator, in the order of the form.
-pub const ENTRIES: &[Entry] = &[
+pub fn entries() -> impl Iterator<Item = &'static Entry> {
+    ENTRIES.iter().chain(shunt::ENTRIES)
+}
+
+/// Every choice a user makes for the compensator, in the order of the form.
+pub fn choices() -> impl Iterator<Item = &'static Choice> {
+    CHOICES.iter().chain(shunt::CHOICES)
+}
+
+/// Numbers of the networks, and of op amp and transconductance amplifier.
+const ENTRIES: &[Entry] = &[
     Entry::new(
         "compensator.reference",
         "Reference voltage",
@@ -186,8 +197,8 @@ const SERIES_OPTIONS: &[ChoiceOption] = &[
     ChoiceOption { key: "E192", name: "E192", help: "192 values per decade, usually 0.5 % or better." },
 ];
 
-/// Every choice a user makes for the compensator, in the order of the form.
-pub const CHOICES: &[Choice] = &[
+/// Choices of network, amplifier and preferred values.
+const CHOICES: &[Choice] = &[
     Choice {
         path: "compensator.type",
         name: "Network",
@@ -216,6 +227,11 @@ pub const CHOICES: &[Choice] = &[
                 key: "transconductance",
                 name: "transconductance",
                 help: "A voltage-to-current amplifier with the network from its output to ground.",
+            },
+            ChoiceOption {
+                key: "shunt-regulator",
+                name: "regulator and optocoupler",
+                help: "Isolated feedback: a shunt regulator of the 431 type drives the LED of an optocoupler.",
             },
         ],
         default: "op-amp",
@@ -267,21 +283,27 @@ pub const CHOICES: &[Choice] = &[
 
 /// Chosen option at a path; the table's default while nothing was chosen.
 pub(super) fn chosen<'a>(choices: &'a Choices, path: &str) -> &'a str {
-    let default = CHOICES.iter().find(|row| row.path == path).map_or("", |row| row.default);
+    let default = self::choices().find(|row| row.path == path).map_or("", |row| row.default);
     choices.get(path).unwrap_or(default)
 }
 
 /// Whether the entry or choice at `path` belongs to the network that `choices` describe. Paths of other rooms never apply.
 pub fn applies(path: &str, choices: &Choices) -> bool {
     let kind = chosen(choices, "compensator.type");
-    let op_amp = chosen(choices, "compensator.amplifier") == "op-amp";
+    let amplifier = chosen(choices, "compensator.amplifier");
+    let isolated = amplifier == "shunt-regulator";
     match path {
+        "compensator.r2" if isolated => shunt::has_series_resistor(kind, choices),
+        "compensator.anchor" | "compensator.feedforward-capacitor" | "compensator.cff" if isolated => false,
         "compensator.r2" | "compensator.c2" | "compensator.anchor" => kind != "1",
         "compensator.r3" | "compensator.c3" => kind == "3",
         "compensator.feedforward-capacitor" => kind != "3",
         "compensator.cff" => kind != "3" && chosen(choices, "compensator.feedforward-capacitor") == "fitted",
-        _ if path.starts_with("compensator.op-amp.") => op_amp,
-        _ if path.starts_with("compensator.transconductance.") => !op_amp,
+        _ if path.starts_with("compensator.op-amp.") => amplifier == "op-amp",
+        _ if path.starts_with("compensator.transconductance.") => amplifier == "transconductance",
+        _ if path.starts_with("compensator.opto.") || path.starts_with("compensator.shunt.") => {
+            isolated && shunt::applies(path, kind, choices)
+        }
         _ => path.starts_with("compensator."),
     }
 }

@@ -64,6 +64,7 @@ pub(super) fn fit(task: &Fit<'_>) -> Parts {
 /// it holds the upper one too.
 fn free_parts(task: &Fit<'_>) -> Vec<Part> {
     let op_amp = matches!(task.start.amplifier, Amplifier::OpAmp(_));
+    // With isolated feedback what holds the operating point is among the kept parts.
     task.start
         .fitted()
         .into_iter()
@@ -139,6 +140,9 @@ fn stepped(from: &Compensator, free: &[Part], step: &DVector<f64>) -> Compensato
 /// Least and greatest value a part may take [Ω or F]; the upper divider resistor also minds the lower one that follows it.
 fn range(at: &Compensator, part: Part) -> (f64, f64) {
     let Bounds::Between(mut least, mut greatest) = part.entry().bounds else { return (0.0, f64::INFINITY) };
+    if let (Part::Led, Some(regulator)) = (part, at.isolated()) {
+        greatest = greatest.min(at.led_limit(regulator).max(at.parts.led));
+    }
     if part == Part::Upper
         && let Bounds::Between(lower_least, lower_greatest) = Part::Lower.entry().bounds
     {

@@ -10,7 +10,8 @@
 
 use std::f64::consts::TAU;
 
-use super::network::{Amplifier, Compensator, Kind, Part};
+use super::network::{Amplifier, Compensator, Kind, Part, Parts};
+use super::shunt::ShuntRegulator;
 use crate::linear::{Complex, Zpk};
 
 /// What a lane moves.
@@ -41,6 +42,8 @@ pub struct Lane {
     pub formula: &'static str,
     /// What it is for.
     pub help: &'static str,
+    /// Whether it is the pole that an optocoupler makes with its pull-up and the capacitor beside it.
+    pub of_optocoupler: bool,
 }
 
 /// Which lane, inside this room.
@@ -155,7 +158,7 @@ impl Corners {
 }
 
 /// Corner frequency of a resistance and a capacitance [Hz].
-fn corner_hz(resistance: f64, capacitance: f64) -> f64 {
+pub(super) fn corner_hz(resistance: f64, capacitance: f64) -> f64 {
     1.0 / (TAU * resistance * capacitance)
 }
 
@@ -172,22 +175,47 @@ impl Compensator {
         let gain = match self.amplifier {
             Amplifier::OpAmp(_) => corner_hz(parts.upper, capacitance),
             Amplifier::Transconductance(a) => a.gm * self.divider_ratio() / (TAU * capacitance),
+            Amplifier::ShuntRegulator(a) => a.branch_gain(parts) * corner_hz(parts.upper, parts.c1),
         };
         let mut corners = Corners { gain: Some(gain), ..Corners::default() };
         if self.kind != Kind::One {
-            corners.zero_1 = Some(corner_hz(parts.r2, parts.c1));
-            corners.pole_1 = Some(corner_hz(parts.r2, parts.c1 * parts.c2 / (parts.c1 + parts.c2)));
+            (corners.zero_1, corners.pole_1) = match self.amplifier {
+                Amplifier::ShuntRegulator(a) => {
+                    let collector = parts.c2 + a.capacitance;
+                    (Some(corner_hz(self.zero_resistance(parts), parts.c1)), Some(corner_hz(parts.pull_up, collector)))
+                }
+                _ => {
+                    let both = parts.c1 * parts.c2 / (parts.c1 + parts.c2);
+                    (Some(corner_hz(parts.r2, parts.c1)), Some(corner_hz(parts.r2, both)))
+                }
+            };
         }
         let loads_divider = matches!(self.amplifier, Amplifier::Transconductance(_));
         if self.has(Part::C3) {
-            let behind = if loads_divider { parallel(parts.upper, parts.lower) } else { 0.0 };
-            corners.zero_2 = Some(corner_hz(parts.upper + parts.r3, parts.c3));
+            let (across, behind) = self.across(parts);
+            corners.zero_2 = Some(corner_hz(across + parts.r3, parts.c3));
             corners.pole_2 = Some(corner_hz(behind + parts.r3, parts.c3));
         } else if self.has(Part::Feedforward) {
             corners.zero_2 = Some(corner_hz(parts.upper, parts.feedforward));
             corners.pole_2 = loads_divider.then(|| corner_hz(parallel(parts.upper, parts.lower), parts.feedforward));
         }
         corners
+    }
+
+    /// The resistance that r3 and c3 stand across, and what stands in parallel with it as the branch sees it [Ω].
+    pub(super) fn across(&self, parts: &Parts) -> (f64, f64) {
+        match self.amplifier {
+            Amplifier::OpAmp(_) => (parts.upper, 0.0),
+            Amplifier::Transconductance(_) => (parts.upper, parallel(parts.upper, parts.lower)),
+            Amplifier::ShuntRegulator(a) => (parts.led, parallel(parts.led, a.led_side(parts))),
+        }
+    }
+
+    /// The resistance that makes the first zero with c1 [Ω]: a fast path adds the upper resistor to r2.
+    pub(super) fn zero_resistance(&self, parts: &Parts) -> f64 {
+        let r2 = if self.has(Part::R2) { parts.r2 } else { 0.0 };
+        let fast = self.isolated().is_some_and(ShuntRegulator::has_fast_path);
+        if fast { r2 + parts.upper } else { r2 }
     }
 
     /// The lanes of this network with where the parts put them, amplifier ideal.
@@ -205,6 +233,7 @@ impl Compensator {
                     parts: parts.iter().map(|part| part.path()).collect(),
                     formula,
                     help: corner.help(),
+                    of_optocoupler: corner == Corner::Pole1 && self.isolated().is_some(),
                 })
             })
             .collect()
@@ -212,6 +241,9 @@ impl Compensator {
 
     /// Formula and parts behind a lane.
     fn origin(&self, corner: Corner) -> (&'static str, &'static [Part]) {
+        if let Amplifier::ShuntRegulator(regulator) = self.amplifier {
+            return self.isolated_origin(&regulator, corner);
+        }
         use Part::{C1, C2, C3, Feedforward, Lower, R2, R3, Upper};
         let op_amp = matches!(self.amplifier, Amplifier::OpAmp(_));
         let branch = self.has(C3);
@@ -234,7 +266,18 @@ impl Compensator {
 
     /// Control voltage from output voltage with an ideal amplifier, inversion taken out [V/V].
     pub fn ideal(&self) -> Zpk {
-        ideal_response(&self.corners())
+        let mut ideal = ideal_response(&self.corners());
+        if let Some((_, frequency)) = self.beside_lanes() {
+            ideal.poles.push(Complex::new(-TAU * frequency, 0.0));
+            ideal.gain *= TAU * frequency;
+        }
+        ideal
+    }
+
+    /// Poles that the ideal network has beside its lanes, with what makes them [Hz].
+    pub fn beside_lanes(&self) -> Option<(&'static str, f64)> {
+        let regulator = self.isolated().filter(|_| self.kind == Kind::One)?;
+        Some(("optocoupler", corner_hz(self.parts.pull_up, regulator.capacitance)))
     }
 }
 

@@ -5,9 +5,10 @@
 //!
 //! *Bad input.* All entries that cannot be used are reported at once, each with its place, reason and hint.
 
-use super::entries::{CHOICES, ENTRIES, applies, chosen};
+use super::entries::{applies, chosen, entries};
+use super::shunt::ShuntRegulator;
 use crate::finding::Finding;
-use crate::quantity::{Choices, Entry, Values};
+use crate::quantity::{Bounds, Choices, Entry, Unit, Values};
 
 /// How many poles and zeros the network has beside its integrator.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -75,16 +76,8 @@ pub enum Amplifier {
     OpAmp(OpAmp),
     /// A voltage-to-current amplifier with the network from its output to ground.
     Transconductance(Transconductance),
-}
-
-impl Amplifier {
-    /// Least and greatest output voltage [V].
-    pub fn output_limits(&self) -> (f64, f64) {
-        match self {
-            Amplifier::OpAmp(a) => (a.output_least, a.output_greatest),
-            Amplifier::Transconductance(a) => (a.output_least, a.output_greatest),
-        }
-    }
+    /// A shunt regulator that drives an optocoupler.
+    ShuntRegulator(ShuntRegulator),
 }
 
 /// The name of a part, as in the drawings.
@@ -106,12 +99,29 @@ pub enum Part {
     C3,
     /// Capacitor straight across the upper resistor.
     Feedforward,
+    /// Resistor that feeds the LED of an optocoupler.
+    Led,
+    /// Resistor across that LED.
+    Bias,
+    /// Pull-up at the optocoupler's collector.
+    PullUp,
 }
 
 impl Part {
     /// Every part, in the order of the form.
-    pub const ALL: [Part; 8] =
-        [Part::Upper, Part::Lower, Part::R2, Part::C1, Part::C2, Part::R3, Part::C3, Part::Feedforward];
+    pub const ALL: [Part; 11] = [
+        Part::Upper,
+        Part::Lower,
+        Part::R2,
+        Part::C1,
+        Part::C2,
+        Part::R3,
+        Part::C3,
+        Part::Feedforward,
+        Part::Led,
+        Part::Bias,
+        Part::PullUp,
+    ];
 
     /// Path of the part's entry.
     pub fn path(self) -> &'static str {
@@ -124,6 +134,9 @@ impl Part {
             Part::R3 => "compensator.r3",
             Part::C3 => "compensator.c3",
             Part::Feedforward => "compensator.cff",
+            Part::Led => "compensator.opto.led-resistor",
+            Part::Bias => "compensator.opto.bias-resistor",
+            Part::PullUp => "compensator.opto.pull-up",
         }
     }
 
@@ -138,19 +151,23 @@ impl Part {
             Part::R3 => "R3",
             Part::C3 => "C3",
             Part::Feedforward => "the feed-forward capacitor",
+            Part::Led => "the LED resistor",
+            Part::Bias => "the bias resistor",
+            Part::PullUp => "the pull-up",
         }
     }
 
     /// Whether it is a resistor; otherwise a capacitor.
     pub fn is_resistor(self) -> bool {
-        matches!(self, Part::Upper | Part::Lower | Part::R2 | Part::R3)
+        !matches!(self, Part::C1 | Part::C2 | Part::C3 | Part::Feedforward)
     }
 
     /// The part's row in the table of entries.
     pub fn entry(self) -> &'static Entry {
-        // The table and this list are fixed together; the first row stands in for one that is missing, and a test sees to it
-        // that none is.
-        ENTRIES.iter().find(|row| row.path == self.path()).unwrap_or(&ENTRIES[0])
+        // The table and this list are fixed together; a row without bounds stands in for one that is missing, and a test sees to
+        // it that none is.
+        static MISSING: Entry = Entry::new("", "", Unit::One, Bounds::Finite, 0.0, "");
+        entries().find(|row| row.path == self.path()).unwrap_or(&MISSING)
     }
 }
 
@@ -173,6 +190,12 @@ pub struct Parts {
     pub c3: f64,
     /// Capacitor straight across the upper resistor [F].
     pub feedforward: f64,
+    /// Resistor that feeds the LED of an optocoupler [Ω].
+    pub led: f64,
+    /// Resistor across that LED [Ω].
+    pub bias: f64,
+    /// Pull-up at the optocoupler's collector [Ω].
+    pub pull_up: f64,
 }
 
 impl Parts {
@@ -187,6 +210,9 @@ impl Parts {
             Part::R3 => self.r3,
             Part::C3 => self.c3,
             Part::Feedforward => self.feedforward,
+            Part::Led => self.led,
+            Part::Bias => self.bias,
+            Part::PullUp => self.pull_up,
         }
     }
 
@@ -201,6 +227,9 @@ impl Parts {
             Part::R3 => self.r3 = value,
             Part::C3 => self.c3 = value,
             Part::Feedforward => self.feedforward = value,
+            Part::Led => self.led = value,
+            Part::Bias => self.bias = value,
+            Part::PullUp => self.pull_up = value,
         }
     }
 }
@@ -240,6 +269,9 @@ impl Compensator {
             r3: read("compensator.r3"),
             c3: read("compensator.c3"),
             feedforward: read("compensator.cff"),
+            led: read("compensator.opto.led-resistor"),
+            bias: read("compensator.opto.bias-resistor"),
+            pull_up: read("compensator.opto.pull-up"),
         };
         let reference = read("compensator.reference");
         let op_amp = OpAmp {
@@ -255,6 +287,7 @@ impl Compensator {
             output_least: read("compensator.transconductance.output-least"),
             output_greatest: read("compensator.transconductance.output-greatest"),
         };
+        let regulator = ShuntRegulator::read(&mut read, choices);
         let kind = match chosen(choices, "compensator.type") {
             "1" => Kind::One,
             "2" => Kind::Two,
@@ -262,6 +295,7 @@ impl Compensator {
         };
         let amplifier = match chosen(choices, "compensator.amplifier") {
             "transconductance" => Amplifier::Transconductance(transconductance),
+            "shunt-regulator" => Amplifier::ShuntRegulator(regulator),
             _ => Amplifier::OpAmp(op_amp),
         };
         faults.extend(output_room(&amplifier));
@@ -269,12 +303,14 @@ impl Compensator {
             "r2" => Anchor::R2,
             _ => Anchor::Upper,
         };
-        let has_feedforward = kind != Kind::Three && chosen(choices, "compensator.feedforward-capacitor") == "fitted";
+        let straight = kind != Kind::Three && !matches!(amplifier, Amplifier::ShuntRegulator(_));
+        let has_feedforward = straight && chosen(choices, "compensator.feedforward-capacitor") == "fitted";
+        let made = Self { kind, amplifier, anchor, has_feedforward, parts, reference };
         if faults.is_empty() {
-            Ok(Self { kind, amplifier, anchor, has_feedforward, parts, reference })
-        } else {
-            Err(faults)
+            // What contradicts itself among usable numbers.
+            faults.extend(made.isolated().into_iter().flat_map(|a| a.problems(kind, &parts, made.dc_output_voltage())));
         }
+        if faults.is_empty() { Ok(made) } else { Err(faults) }
     }
 
     /// Writes the values of the parts that the network has; nothing else changes when a lane moves or parts are rounded.
@@ -294,9 +330,11 @@ impl Compensator {
     pub fn has(&self, part: Part) -> bool {
         match part {
             Part::Upper | Part::Lower | Part::C1 => true,
+            Part::R2 if self.isolated().is_some_and(|regulator| !regulator.has_series_resistor) => false,
             Part::R2 | Part::C2 => self.kind != Kind::One,
             Part::R3 | Part::C3 => self.kind == Kind::Three,
             Part::Feedforward => self.has_feedforward && self.kind != Kind::Three,
+            Part::Led | Part::Bias | Part::PullUp => self.isolated().is_some(),
         }
     }
 
@@ -313,8 +351,7 @@ impl Compensator {
 
 /// One finding per choice that is none of its options.
 fn wrong_choices(choices: &Choices) -> Vec<Finding> {
-    CHOICES
-        .iter()
+    super::entries::choices()
         .filter_map(|row| {
             let key = choices.get(row.path)?;
             if row.options.iter().any(|option| option.key == key) {
@@ -332,7 +369,7 @@ fn wrong_choices(choices: &Choices) -> Vec<Finding> {
 /// Value at a path, the default where none was entered. An entry that applies must be within bounds; one that does not apply
 /// stands in with what was entered when that is usable, else with its default.
 fn read_entry(path: &str, values: &Values, choices: &Choices, faults: &mut Vec<Finding>) -> f64 {
-    let Some(entry) = ENTRIES.iter().find(|row| row.path == path) else { return f64::NAN };
+    let Some(entry) = entries().find(|row| row.path == path) else { return f64::NAN };
     let Some(value) = values.get_or_default(entry) else { return entry.default };
     match entry.check(value) {
         Ok(()) => value,
@@ -347,10 +384,13 @@ fn read_entry(path: &str, values: &Values, choices: &Choices, faults: &mut Vec<F
 
 /// A finding when the amplifier's least output voltage is not below its greatest.
 fn output_room(amplifier: &Amplifier) -> Option<Finding> {
-    let (least, greatest) = amplifier.output_limits();
-    let place = match amplifier {
-        Amplifier::OpAmp(_) => "compensator.op-amp.output-greatest",
-        Amplifier::Transconductance(_) => "compensator.transconductance.output-greatest",
+    let (least, greatest, place) = match amplifier {
+        Amplifier::OpAmp(a) => (a.output_least, a.output_greatest, "compensator.op-amp.output-greatest"),
+        Amplifier::Transconductance(a) => {
+            (a.output_least, a.output_greatest, "compensator.transconductance.output-greatest")
+        }
+        // Its room follows from the parts.
+        Amplifier::ShuntRegulator(_) => return None,
     };
     (least >= greatest).then(|| {
         Finding::problem(
@@ -367,7 +407,7 @@ mod tests {
 
     fn defaults() -> Values {
         let mut values = Values::new();
-        for row in ENTRIES {
+        for row in entries() {
             values.set(row.path, row.default).unwrap();
         }
         values
@@ -383,10 +423,10 @@ mod tests {
 
     #[test]
     fn every_default_is_usable_and_every_part_has_its_row() {
-        for row in ENTRIES {
+        for row in entries() {
             assert!(row.check(row.default).is_ok(), "{}", row.path);
         }
-        for row in CHOICES {
+        for row in super::super::entries::choices() {
             assert!(row.options.iter().any(|option| option.key == row.default), "{}", row.path);
         }
         for part in Part::ALL {

@@ -12,7 +12,7 @@ use std::collections::BTreeSet;
 use std::f64::consts::TAU;
 
 use super::fit::{Fit, fit};
-use super::lanes::{Corner, Corners, parallel};
+use super::lanes::{Corner, Corners};
 use super::network::{Amplifier, Anchor, Compensator, Kind, Part, Parts};
 use crate::quantity::{Unit, print, print_digits};
 
@@ -128,7 +128,10 @@ impl Compensator {
         let changes_kept = |parts: &Parts| kept.iter().any(|&p| changed(self.parts.get(p), parts.get(p)));
         match self.exact_parts(aim, moved) {
             Ok(parts) if !changes_kept(&parts) => (self.settled(parts), None),
-            Ok(_) => (fit(&Fit { start: self, aim, moved, kept: &kept }), Some(keeps(&kept))),
+            Ok(_) => {
+                let why = join(Some(keeps(&kept)), self.floor_of_kept(&kept));
+                (fit(&Fit { start: self, aim, moved, kept: &kept }), why)
+            }
             Err(limit) => {
                 // The last reachable place on the straight way, in log frequency, from where the lanes are.
                 let (mut reached, mut beyond) = (0.0, 1.0);
@@ -156,21 +159,27 @@ impl Compensator {
         }
     }
 
-    /// Parts that stay: the locked ones, the anchor, and behind a transconductance amplifier the divider.
+    /// Parts that stay: the locked ones, the anchor, behind a transconductance amplifier the divider, and with isolated feedback all
+    /// that holds its operating point.
     fn kept(&self, locks: &BTreeSet<String>) -> Vec<Part> {
-        let anchor = match self.anchor {
+        let stays = |part: Part| match self.amplifier {
+            Amplifier::OpAmp(_) => part == self.anchor_part(),
+            Amplifier::Transconductance(_) => part == self.anchor_part() || matches!(part, Part::Upper | Part::Lower),
+            Amplifier::ShuntRegulator(regulator) => match part {
+                Part::Upper | Part::Lower | Part::PullUp | Part::Bias => true,
+                Part::Led => self.kind == Kind::One || (self.has(Part::R2) && regulator.keeps_led_resistor),
+                Part::R2 => !regulator.keeps_led_resistor,
+                _ => false,
+            },
+        };
+        self.fitted().into_iter().filter(|&part| stays(part) || locks.contains(part.path())).collect()
+    }
+
+    fn anchor_part(&self) -> Part {
+        match self.anchor {
             Anchor::R2 if self.kind != Kind::One => Part::R2,
             _ => Part::Upper,
-        };
-        let divider_stays = matches!(self.amplifier, Amplifier::Transconductance(_));
-        self.fitted()
-            .into_iter()
-            .filter(|&part| {
-                part == anchor
-                    || locks.contains(part.path())
-                    || (divider_stays && matches!(part, Part::Upper | Part::Lower))
-            })
-            .collect()
+        }
     }
 
     /// Parts that put every lane exactly at `aim`, or the limit that forbids it.
@@ -178,6 +187,7 @@ impl Compensator {
         let mut parts = self.parts;
         let gain = aim.gain.unwrap_or(f64::NAN);
         let share = match (aim.zero_1, aim.pole_1) {
+            _ if self.isolated().is_some() => None,
             (Some(zero), Some(pole)) if pole < zero * LEAST_RATIO * (1.0 - 1e-12) => return Err(order_limit()),
             (Some(zero), Some(pole)) => Some((zero, zero / pole)),
             _ => None,
@@ -195,19 +205,16 @@ impl Compensator {
             Amplifier::Transconductance(a) => {
                 fill_feedback(&mut parts, a.gm * self.divider_ratio() / (TAU * gain), share);
             }
+            Amplifier::ShuntRegulator(regulator) => parts = self.isolated_parts(&regulator, aim)?,
         }
         self.fill_input(&mut parts, aim, moved)?;
         self.within_bounds(&parts)?;
         Ok(parts)
     }
 
-    /// Branch across the upper resistor.
+    /// Branch across the upper resistor, or the LED's.
     fn fill_input(&self, parts: &mut Parts, aim: &Corners, moved: Option<Corner>) -> Result<(), String> {
-        let (upper, lower) = (parts.upper, parts.lower);
-        let source = match self.amplifier {
-            Amplifier::OpAmp(_) => 0.0,
-            Amplifier::Transconductance(_) => parallel(upper, lower),
-        };
+        let (upper, source) = self.across(parts);
         if self.has(Part::Feedforward) {
             parts.feedforward = match (aim.zero_2, aim.pole_2, moved) {
                 (_, Some(pole), Some(Corner::Pole2)) => 1.0 / (TAU * pole * source),
@@ -220,7 +227,7 @@ impl Compensator {
             return Err(order_limit());
         }
         let ratio = pole / zero;
-        if ratio > self.greatest_ratio() * (1.0 + 1e-12) && !self.is_present_ratio(ratio) {
+        if ratio > self.greatest_ratio_of(parts) * (1.0 + 1e-12) && !self.is_present_ratio(ratio) {
             return Err(self.ratio_limit());
         }
         parts.r3 = (upper - ratio * source) * zero / (pole - zero);
@@ -237,27 +244,33 @@ impl Compensator {
 
     /// Greatest ratio of second pole to second zero that moving a lane may reach; infinite around an op amp.
     pub fn greatest_ratio(&self) -> f64 {
-        match self.amplifier {
-            Amplifier::OpAmp(_) => f64::INFINITY,
-            Amplifier::Transconductance(_) => {
-                let source = parallel(self.parts.upper, self.parts.lower);
-                (self.parts.upper + LEAST_R3 * source) / ((1.0 + LEAST_R3) * source)
-            }
-        }
+        self.greatest_ratio_of(&self.parts)
+    }
+
+    /// The same where other lanes are moved, too: an LED resistor that follows them widens or narrows it.
+    pub(super) fn greatest_ratio_for(&self, aim: &Corners) -> f64 {
+        self.greatest_ratio_of(&self.aimed_parts(aim))
+    }
+
+    fn greatest_ratio_of(&self, parts: &Parts) -> f64 {
+        let (across, source) = self.across(parts);
+        if source > 0.0 { (across + LEAST_R3 * source) / ((1.0 + LEAST_R3) * source) } else { f64::INFINITY }
     }
 
     /// The aim with each pole brought to where its zero and the divider let it be, and why.
     fn in_order(&self, aim: &Corners) -> (Corners, Option<String>) {
-        let mut aim = *aim;
-        let mut why = None;
-        if let (Some(zero), Some(pole)) = (aim.zero_1, aim.pole_1)
+        let (mut aim, mut why) = match self.isolated() {
+            Some(regulator) => self.isolated_order(regulator, aim),
+            None => (*aim, None),
+        };
+        if let (Some(zero), Some(pole), None) = (aim.zero_1, aim.pole_1, self.isolated())
             && pole < zero * LEAST_RATIO
         {
             aim.pole_1 = Some(zero * LEAST_RATIO);
             why = Some(order_limit());
         }
         if let (true, Some(zero), Some(pole)) = (self.has(Part::C3), aim.zero_2, aim.pole_2) {
-            let most = self.greatest_ratio();
+            let most = self.greatest_ratio_for(&aim);
             if pole > zero * most && !self.is_present_ratio(pole / zero) {
                 aim.pole_2 = Some(zero * most);
                 why = join(why, Some(self.ratio_limit()));
@@ -309,10 +322,15 @@ impl Compensator {
 
     /// Why the second pole and zero cannot be further apart.
     fn ratio_limit(&self) -> String {
+        let (across, source) = self.across(&self.parts);
+        let most = print_digits(across / source, Unit::One, 3);
+        let (word, ratio) = if self.isolated().is_some() {
+            ("Across the LED resistor", "1 + Rled/(Rd || Rbias)")
+        } else {
+            ("With a transconductance amplifier", "1 + Rupper/Rlower")
+        };
         format!(
-            "With a transconductance amplifier the second pole is less than 1 + Rupper/Rlower = {} times the second zero: \
-             beyond, R3 would have to be negative.",
-            print_digits(1.0 + self.parts.upper / self.parts.lower, Unit::One, 3)
+            "{word} the second pole is less than {ratio} = {most} times the second zero: beyond, R3 would have to be negative."
         )
     }
 }
@@ -340,7 +358,7 @@ fn keeps(kept: &[Part]) -> String {
 }
 
 /// Joins two reasons.
-fn join(first: Option<String>, second: Option<String>) -> Option<String> {
+pub(super) fn join(first: Option<String>, second: Option<String>) -> Option<String> {
     match (first, second) {
         (Some(first), Some(second)) => Some(format!("{first} {second}")),
         (first, second) => first.or(second),
@@ -393,6 +411,9 @@ mod tests {
             r3: 470.0,
             c3: 4.7e-9,
             feedforward: 330e-12,
+            led: 1.5e3,
+            bias: 1e3,
+            pull_up: 4.7e3,
         };
         Compensator { kind, amplifier, anchor, has_feedforward: false, parts, reference: 2.5 }
     }

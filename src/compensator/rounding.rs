@@ -5,7 +5,7 @@
 
 use std::collections::BTreeSet;
 
-use super::network::{Amplifier, Compensator, Part};
+use super::network::{Amplifier, Compensator, Part, Parts};
 use super::preferred::{Series, round_ratio};
 
 impl Compensator {
@@ -18,26 +18,50 @@ impl Compensator {
         let (upper, lower) = round_ratio(parts.upper, parts.lower, resistors, locked(Part::Upper), locked(Part::Lower));
         let follow = upper / parts.upper;
         (parts.upper, parts.lower) = (upper, lower);
-        for part in self.fitted() {
-            let beside_divider = matches!(part, Part::R3 | Part::C3 | Part::Feedforward);
-            let follows = beside_divider || matches!(self.amplifier, Amplifier::OpAmp(_));
-            if matches!(part, Part::Upper | Part::Lower) || locked(part) {
+        let isolated = self.isolated().is_some();
+        if isolated && !locked(Part::PullUp) {
+            parts.pull_up = resistors.nearest(parts.pull_up);
+        }
+        // What others follow goes first.
+        let mut order = self.fitted();
+        order.sort_by_key(|part| *part != Part::Led);
+        for part in order {
+            let held = matches!(part, Part::Upper | Part::Lower) || (isolated && part == Part::PullUp);
+            if held || locked(part) {
                 continue;
             }
-            let value = self.parts.get(part);
-            let (series, wanted) = match (part.is_resistor(), follows) {
-                (true, true) => (resistors, value * follow),
-                (false, true) => (capacitors, value / follow),
-                (true, false) => (resistors, value),
-                (false, false) => (capacitors, value),
-            };
-            let entry = part.entry();
+            let wanted = self.wanted_beside(&rounded.parts, part, follow);
+            let series = if part.is_resistor() { resistors } else { capacitors };
             let nearest = series.nearest(wanted);
-            if entry.check(nearest).is_ok() {
-                parts.set(part, nearest);
+            if part.entry().check(nearest).is_ok() {
+                rounded.parts.set(part, nearest);
             }
         }
         rounded
+    }
+
+    /// What a part should be beside parts that are rounded already, so that the lanes stay; `follow` is what the divider's impedance
+    /// was multiplied by.
+    fn wanted_beside(&self, rounded: &Parts, part: Part, follow: f64) -> f64 {
+        let value = self.parts.get(part);
+        let impedance = match self.amplifier {
+            Amplifier::OpAmp(_) => follow,
+            Amplifier::Transconductance(_) if matches!(part, Part::R3 | Part::C3 | Part::Feedforward) => follow,
+            Amplifier::Transconductance(_) => 1.0,
+            Amplifier::ShuntRegulator(regulator) => match part {
+                Part::R2 | Part::C1 => follow,
+                Part::Led => rounded.pull_up / self.parts.pull_up,
+                Part::R3 | Part::C3 => rounded.led / self.parts.led,
+                Part::C2 => {
+                    let own = regulator.capacitance;
+                    let pull_up = rounded.pull_up / self.parts.pull_up;
+                    // As much as the pull-up leaves of it; its own value where the optocoupler's is too much already.
+                    return Some((value + own) / pull_up - own).filter(|c2| *c2 > 0.0).unwrap_or(value);
+                }
+                _ => 1.0,
+            },
+        };
+        if part.is_resistor() { value * impedance } else { value / impedance }
     }
 }
 

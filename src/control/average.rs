@@ -85,6 +85,9 @@ impl AverageCurrent {
             r3: 0.0,
             c3: 0.0,
             feedforward: 0.0,
+            led: 0.0,
+            bias: 0.0,
+            pull_up: 0.0,
         };
         let inner = Compensator {
             kind: Kind::Two,
@@ -106,7 +109,7 @@ impl AverageCurrent {
     pub(super) fn problems(&self, clamp: Option<f64>) -> Vec<Finding> {
         let mut problems: Vec<Finding> =
             clamp.filter(|clamp| *clamp <= 0.0).map(|clamp| clamp_too_low(clamp, 0.0)).into_iter().collect();
-        let (least, greatest) = self.inner.amplifier.output_limits();
+        let (least, greatest) = self.inner.output_limits();
         if least >= greatest {
             let message = format!(
                 "The inner amplifier's least output, {}, must be below its greatest, {}.",
@@ -145,7 +148,7 @@ impl AverageCurrent {
         let inner = InnerLoop {
             loop_gain,
             output_voltage,
-            output_limits: self.inner.amplifier.output_limits(),
+            output_limits: self.inner.output_limits(),
             slope_ratio: amplified * self.ohms * point.off_slope.abs() / ramp_slope,
         };
         Ok(Controlled { stage, delay_s: 0.0, control_voltage, sampling: None, inner: Some(inner) })

@@ -11,7 +11,7 @@
 
 use super::entries::part;
 use super::landmark::{Form, RestingForms};
-use super::sizing::{Sized, Sizing};
+use super::sizing::{Sized, Sizing, two_digits};
 use super::topology::LeftOut;
 use super::topology_entries::RATIO;
 use crate::quantity::{Bounds, Entry, Unit};
@@ -118,23 +118,19 @@ pub(super) fn first_sizes(given: &Sizing, duty: f64, share: f64) -> Vec<Sized> {
     /// Leakage over magnetising inductance.
     const LEAKAGE_SHARE: f64 = 0.003;
     let least = given.input.0 * share;
-    let ratio = Sized::by_rule(
-        RATIO.path,
-        given.output * WITH_LOSSES / (duty * least),
-        format!(
-            "n = 1.06·Vout / (D·Vin), with D {duty} at the least input{}",
-            if share < 1.0 { ", half of which the primary sees" } else { "" }
-        ),
-    );
-    let reflected = ratio.value * given.load;
+    let ratio = two_digits(given.output * WITH_LOSSES / (duty * least));
+    let why = if share < 1.0 { ", half of which the primary sees" } else { "" };
+    let reflected = ratio * given.load;
     // The volt-seconds of a pulse are those of the output, whatever the input.
-    let volt_seconds = given.output / (ratio.value * given.switching_frequency);
-    let magnetising = Sized::by_rule(
-        MAGNETISING.path,
-        volt_seconds / (MAGNETISING_SHARE * reflected),
-        "its current swings by a tenth of the reflected full load current",
-    );
-    let leakage =
-        Sized::by_rule(LEAKAGE.path, LEAKAGE_SHARE * magnetising.value, "0.3 % of the magnetising inductance");
-    vec![ratio, magnetising, leakage]
+    let volt_seconds = given.output / (ratio * given.switching_frequency);
+    let magnetising = two_digits(volt_seconds / (MAGNETISING_SHARE * reflected));
+    vec![
+        Sized::by_rule(RATIO.path, ratio, format!("n = 1.06·Vout / (D·Vin), with D {duty} at the least input{why}")),
+        Sized::by_rule(
+            MAGNETISING.path,
+            magnetising,
+            "its current swings by a tenth of the reflected full load current",
+        ),
+        Sized::by_rule(LEAKAGE.path, LEAKAGE_SHARE * magnetising, "0.3 % of the magnetising inductance"),
+    ]
 }

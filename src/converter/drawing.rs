@@ -10,9 +10,7 @@ use super::filters::{
 use super::phases::{PHASES, counted};
 use super::rows::{Rows, SwitchRow, WindingRow};
 use super::stage::{LoadKind, Rectifier};
-use super::topology_entries::{
-    COUPLING, COUPLING_CAPACITOR, COUPLING_CAPACITOR_ESR, INDUCTORS, RATIO, SECOND_INDUCTOR, SECOND_WINDING, coupled,
-};
+use super::topology_entries::{coupled, damped};
 use crate::circuit::{Drawn, InputId, Netlist, Node, OutputId, PartId, Shows, Sketch, Slot, Symbol};
 use crate::quantity::{Choices, Unit};
 
@@ -23,6 +21,8 @@ pub(super) struct Options {
     pub(super) diode: bool,
     /// Whether two inductors share a core.
     pub(super) coupled: bool,
+    /// Whether a branch damps the coupling capacitor.
+    pub(super) coupling_damped: bool,
     pub(super) input_filter: Option<Damping>,
     pub(super) input_capacitor: bool,
     pub(super) output_filter: Option<OutputFilter>,
@@ -38,6 +38,7 @@ impl Options {
         Options {
             diode: Rectifier::chosen(choices) == Rectifier::Diode,
             coupled: coupled(choices),
+            coupling_damped: damped(choices),
             input_filter: input_filter(choices),
             input_capacitor: choices.is("stage.input-filter", "fitted")
                 || choices.is("stage.input-capacitor", "fitted"),
@@ -65,9 +66,9 @@ pub struct StageDrawing {
     load: Option<(Node, Node)>,
     /// Terminals of the bank.
     bank: Option<(Node, Node)>,
-    filters: FilterParts,
+    pub(super) filters: FilterParts,
     input_current_part: PartId,
-    windings: Vec<Winding>,
+    pub(super) windings: Vec<Winding>,
     pub(super) switches: Vec<Switched>,
     branches: Vec<PartId>,
     pub(super) drop: InputId,
@@ -75,11 +76,11 @@ pub struct StageDrawing {
 
 /// An inductor drawn.
 #[derive(Clone, Copy, Debug)]
-struct Winding {
-    name: &'static str,
-    loss: &'static str,
-    part: PartId,
-    ohms: Slot,
+pub(super) struct Winding {
+    pub(super) name: &'static str,
+    pub(super) loss: &'static str,
+    pub(super) part: PartId,
+    pub(super) ohms: Slot,
 }
 
 /// A switch or rectifier drawn.
@@ -220,78 +221,6 @@ impl StageDrawing {
         }
     }
 
-    /// The inductor with its winding resistance; its current counts from `from` to `to`.
-    pub fn inductor(&mut self, from: Node, to: Node) {
-        self.wind(("inductor", "inductor winding"), (from, to), (INDUCTANCE, WINDING));
-        self.sketch.part(from, to, drawn_inductor(("Inductor", "L"), (INDUCTANCE, WINDING)));
-    }
-
-    /// The first of two inductors, likewise.
-    pub fn first_inductor(&mut self, from: Node, to: Node) {
-        self.wind(("inductor L1", "winding L1"), (from, to), (INDUCTANCE, WINDING));
-        let mut drawn = drawn_inductor(("Inductor L1", "L1"), (INDUCTANCE, WINDING)).also(&[INDUCTORS.path]);
-        if self.options.coupled {
-            drawn = drawn.quiet(COUPLING.path);
-        }
-        self.sketch.part(from, to, drawn);
-    }
-
-    /// The second of two inductors, coupled with the first where that is chosen, the dots at the nodes that are listed first.
-    pub fn second_inductor(&mut self, from: Node, to: Node) {
-        let paths = (SECOND_INDUCTOR.path, SECOND_WINDING.path);
-        let second = self.wind(("inductor L2", "winding L2"), (from, to), paths);
-        if let Some(first) = self.windings.first().filter(|_| self.options.coupled) {
-            let factor = self.netlist.slot(COUPLING.path);
-            self.netlist.couple(first.part, second, factor);
-        }
-        self.sketch.part(from, to, drawn_inductor(("Inductor L2", "L2"), paths));
-    }
-
-    /// Inductor and winding resistance in series, in the netlist alone.
-    pub(super) fn wind(
-        &mut self,
-        (name, loss): (&'static str, &'static str),
-        (from, to): (Node, Node),
-        (inductance, resistance): (&str, &str),
-    ) -> PartId {
-        let inner = self.netlist.node(loss);
-        let (henries, ohms) = (self.netlist.slot(inductance), self.netlist.slot(resistance));
-        let part = self.netlist.inductor(name, from, inner, henries);
-        self.netlist.resistor(loss, inner, to, ohms);
-        self.windings.push(Winding { name, loss, part, ohms });
-        part
-    }
-
-    /// An ideal transformer of the turns ratio entered; both windings list their dotted ends first.
-    pub fn transformer(&mut self, first: (Node, Node), second: (Node, Node)) {
-        let ratio = self.netlist.slot(RATIO.path);
-        self.netlist.transformer("transformer", first, second, ratio);
-        let drawn =
-            Drawn::new(Symbol::Inductor, "Transformer", "T").shows(Shows::Turns(RATIO.path.to_owned()), &[RATIO.path]);
-        self.sketch.transformer(first, second, drawn);
-    }
-
-    /// A transformer whose magnetising inductance, at the first winding, is the stage's inductor.
-    pub fn storing_transformer(&mut self, first: (Node, Node), second: (Node, Node)) {
-        self.wind(("inductor", "inductor winding"), first, (INDUCTANCE, WINDING));
-        let ratio = self.netlist.slot(RATIO.path);
-        self.netlist.transformer("transformer", first, second, ratio);
-        let drawn = drawn_inductor(("Transformer", "T"), (INDUCTANCE, WINDING)).turns(RATIO.path);
-        self.sketch.transformer(first, second, drawn);
-    }
-
-    /// The capacitor that joins input side and output side, with its ESR.
-    pub fn coupling_capacitor(&mut self, from: Node, to: Node) {
-        let inner = self.netlist.node("coupling capacitor");
-        let farads = self.netlist.slot(COUPLING_CAPACITOR.path);
-        self.netlist.capacitor("coupling capacitor", from, inner, farads);
-        self.filters.resistor(&mut self.netlist, "coupling capacitor ESR", (inner, to), COUPLING_CAPACITOR_ESR.path);
-        let drawn = Drawn::new(Symbol::Capacitor, "Coupling capacitor", "Cc")
-            .value(COUPLING_CAPACITOR.path)
-            .quiet(COUPLING_CAPACITOR_ESR.path);
-        self.sketch.part(from, to, drawn);
-    }
-
     /// Output bank and load between the output's terminals, the output filter between them where one is fitted.
     pub fn output(&mut self, plus: Node, minus: Node) {
         for k in 0..self.options.branches {
@@ -390,15 +319,6 @@ fn free_end((from, to): (Node, Node), supply: Node) -> Node {
 
 /// Name of a slot whose value is zero, as no entry has it.
 pub(super) const TIE: &str = "tie";
-
-/// Path of the inductance that every stage has.
-pub(super) const INDUCTANCE: &str = "stage.inductor.inductance";
-/// Path of its winding's resistance.
-pub(super) const WINDING: &str = "stage.inductor.resistance";
-
-pub(super) fn drawn_inductor((name, designator): (&str, &str), (inductance, resistance): (&str, &str)) -> Drawn {
-    Drawn::new(Symbol::Inductor, name, designator).value(inductance).quiet(resistance)
-}
 
 fn drawn_source() -> Drawn {
     let paths = ["stage.input.least", "stage.input.greatest"];

@@ -1,7 +1,8 @@
 //! What a buck behind a transformer draws that the other stages do not have.
 
 use super::buck_derived::{AT_REST, COMMUTATION, FREEWHEEL, LEAKAGE, MAGNETISING, PULSE};
-use super::drawing::{INDUCTANCE, SWITCH, StageDrawing, Switched, TIE, WINDING, drawn_inductor};
+use super::drawing::{SWITCH, StageDrawing, Switched, TIE};
+use super::magnetics::{INDUCTANCE, WINDING, drawn_inductor};
 use super::topology_entries::RATIO;
 use crate::circuit::{Drawn, Node, Shows, Symbol};
 

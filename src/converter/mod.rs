@@ -22,6 +22,7 @@ mod filter_values;
 mod filters;
 mod further;
 mod landmark;
+mod magnetics;
 mod operating_point;
 mod phases;
 #[cfg(test)]
@@ -42,6 +43,7 @@ mod tests;
 mod topologies;
 mod topology;
 mod topology_entries;
+mod two_inductors;
 mod waves;
 
 pub use averaged::AveragedModel;
@@ -55,8 +57,8 @@ pub use further::{Further, FurtherValue};
 pub use landmark::{BANK, Form, Landmark, RestingForms, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, registry};
-pub use sizing::{Sized, Sizing};
+pub use sizing::{Size, Sized, Sizing};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
 pub use switching::{SwitchingEquations, SwitchingRows};
 pub use topology::{DutyLimit, Entered, IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
-pub use topology_entries::{choices, entries, row};
+pub use topology_entries::{choices, entries, is_common, row};

@@ -108,7 +108,12 @@ fn brackets_and_newton_find_the_same_point() {
                 let loaded = solution.intervals.with_resistor();
                 let bracketed = loaded.bracket_pulse(near, stage.switching_frequency.recip(), target, row).unwrap();
                 let off = (bracketed.duty / solution.duty - 1.0).abs();
-                let tolerance = if load == "resistor" { 1e-9 } else { 1e-7 };
+                let mut tolerance: f64 = if load == "resistor" { 1e-9 } else { 1e-7 };
+                if stage.second_inductance > 0.0 {
+                    // The current round through two inductors hangs on what rounding leaves across their windings: it does not
+                    // shrink with the load.
+                    tolerance = tolerance.max(1e-15 / share);
+                }
                 assert!(off < tolerance, "{} {load} {share}: {} and {}", topology.key, bracketed.duty, solution.duty);
             }
         }

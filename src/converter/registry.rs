@@ -1,15 +1,19 @@
 //! The registry of topologies: one line each.
 
-use super::topologies::{boost, buck, buck_boost, flyback, forward, four_switch, full_bridge, half_bridge, push_pull};
+use super::topologies::{boost, buck, buck_boost, cuk, flyback, sepic};
+use super::topologies::{forward, four_switch, full_bridge, half_bridge, push_pull};
 use super::topology::Topology;
 use crate::quantity::ChoiceOption;
 
 /// All topologies, in the order shown.
+#[rustfmt::skip]
 static REGISTRY: &[&Topology] = &[
     &buck::TOPOLOGY,
     &boost::TOPOLOGY,
     &buck_boost::TOPOLOGY,
     &four_switch::TOPOLOGY,
+    &sepic::TOPOLOGY,
+    &cuk::TOPOLOGY,
     &flyback::TOPOLOGY,
     &forward::TOPOLOGY,
     &push_pull::TOPOLOGY,

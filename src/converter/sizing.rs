@@ -11,15 +11,26 @@ pub struct Sizing {
     pub load: f64,
     /// Switching frequency of the pulses [Hz].
     pub switching_frequency: f64,
+    /// The inductance, where it is given [H].
+    pub inductance: Option<f64>,
 }
 
-/// A first size of one entry.
+/// A number or an option.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Size {
+    /// A number [SI unit of its entry].
+    Value(f64),
+    /// Key of an option of a choice.
+    Option(&'static str),
+}
+
+/// A first size of one entry, or what to choose.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Sized {
-    /// Path of the entry.
+    /// Path of the entry or choice.
     pub path: &'static str,
-    /// Its value [SI unit of the entry].
-    pub value: f64,
+    /// The number or option.
+    pub size: Size,
     /// Why it is so.
     pub reason: String,
     /// True for a rule of thumb of the trade, which no law stands behind.
@@ -29,12 +40,17 @@ pub struct Sized {
 impl Sized {
     /// A size by a rule of thumb, to two digits: more would pretend to know more.
     pub fn by_rule(path: &'static str, value: f64, reason: impl Into<String>) -> Self {
-        Sized { path, value: two_digits(value), reason: reason.into(), common_practice: true }
+        Sized { path, size: Size::Value(two_digits(value)), reason: reason.into(), common_practice: true }
+    }
+
+    /// An option chosen by common practice.
+    pub fn chosen(path: &'static str, key: &'static str, reason: impl Into<String>) -> Self {
+        Sized { path, size: Size::Option(key), reason: reason.into(), common_practice: true }
     }
 }
 
 /// A positive number to two significant digits.
-fn two_digits(value: f64) -> f64 {
+pub(super) fn two_digits(value: f64) -> f64 {
     let step = 10_f64.powf(value.log10().floor() - 1.0);
     if step.is_finite() && step > 0.0 { (value / step).round() * step } else { value }
 }

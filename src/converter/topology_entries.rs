@@ -40,6 +40,28 @@ pub(super) static PRIMARY_WINDING: Entry = part(
 )
 .spread(0.1);
 
+/// The inductor at the input, of a stage of two.
+pub(super) static INPUT_SIDE_INDUCTOR: Entry = part(
+    "stage.inductor.inductance",
+    "Inductor L1, input side",
+    Unit::Henry,
+    Bounds::Positive,
+    10e-6,
+    "Inductance of the inductor at the input at its operating current, saturation taken into account; of a coupled pair, with the other winding open.",
+)
+.spread(0.2);
+
+/// Its winding.
+pub(super) static INPUT_SIDE_WINDING: Entry = part(
+    "stage.inductor.resistance",
+    "Winding resistance L1",
+    Unit::Ohm,
+    Bounds::NonNegative,
+    0.018,
+    "Resistance of the first inductor's winding.",
+)
+.spread(0.1);
+
 /// The other inductor of a stage of two.
 pub(super) static SECOND_INDUCTOR: Entry = part(
     "stage.second-inductor.inductance",
@@ -104,14 +126,68 @@ pub(super) static COUPLING_CAPACITOR_ESR: Entry = part(
     "Equivalent series resistance of the coupling capacitor.",
 );
 
+/// Whether a branch damps the resonance of the coupling capacitor with the inductors.
+pub(super) static DAMPING: Choice = Choice {
+    path: "stage.coupling-capacitor.damping",
+    name: "Coupling capacitor's damping",
+    options: &[
+        ChoiceOption {
+            key: "none",
+            name: "None",
+            help: "ESR and windings alone damp the resonance with the inductors.",
+        },
+        ChoiceOption {
+            key: "capacitor",
+            name: "Resistor and capacitor",
+            help: "A resistor in series with a larger capacitor, across the coupling capacitor.",
+        },
+    ],
+    default: "none",
+    help: "Branch across the coupling capacitor, whose resonance with the inductors turns the phase by whole turns when it is not damped.",
+};
+
+/// Capacitor of that branch.
+pub(super) static DAMPING_CAPACITANCE: Entry = part(
+    "stage.coupling-capacitor.damping.capacitance",
+    "Damping capacitor",
+    Unit::Farad,
+    Bounds::Positive,
+    47e-6,
+    "Capacitor in series with the damping resistor, as it is at bias and temperature. Common practice: four times the coupling capacitor or more.",
+);
+
+/// Resistor of that branch.
+pub(super) static DAMPING_RESISTANCE: Entry = part(
+    "stage.coupling-capacitor.damping.resistance",
+    "Damping resistor",
+    Unit::Ohm,
+    Bounds::Positive,
+    1.5,
+    "Resistor in series with the damping capacitor, its ESR included. Common practice: 0.6 times the characteristic impedance of inductors and coupling capacitor, where the branch's capacitor is four times that.",
+);
+
 /// Own rows that play a part whatever is chosen.
 pub(super) fn always(_: &str, _: &Choices) -> bool {
     true
 }
 
+/// Own rows of a stage of two inductors: a coupling factor only for coupled ones, a damping branch only where one is fitted.
+pub(super) fn of_two_inductors(path: &str, choices: &Choices) -> bool {
+    match path {
+        _ if path == COUPLING.path => coupled(choices),
+        _ if path == DAMPING_CAPACITANCE.path || path == DAMPING_RESISTANCE.path => damped(choices),
+        _ => true,
+    }
+}
+
 /// Whether the two inductors share a core.
 pub(super) fn coupled(choices: &Choices) -> bool {
     choices.is(INDUCTORS.path, "coupled")
+}
+
+/// Whether a branch damps the coupling capacitor.
+pub(super) fn damped(choices: &Choices) -> bool {
+    choices.is(DAMPING.path, "capacitor")
 }
 
 /// Row after which the own rows of topologies stand in the form.
@@ -161,14 +237,17 @@ fn chosen(choices: &Choices) -> Option<&'static super::Topology> {
     find(choices.get("stage.topology").unwrap_or("boost"))
 }
 
+/// Whether a row, number or choice, is not one that only some topologies have.
+pub fn is_common(path: &str) -> bool {
+    // Few rows are in any topology's list, so that is asked first.
+    !registry().iter().any(|topology| topology.has(path))
+        || super::entries::ENTRIES.iter().any(|entry| entry.path == path)
+        || super::entries::CHOICES.iter().any(|choice| choice.path == path)
+}
+
 /// Whether a row that only some topologies have plays a part; none for a row that all have.
 pub(super) fn own_applies(path: &str, choices: &Choices) -> Option<bool> {
-    if !registry().iter().any(|topology| topology.has(path)) {
-        return None;
-    }
-    let common = super::entries::ENTRIES.iter().any(|entry| entry.path == path)
-        || super::entries::CHOICES.iter().any(|choice| choice.path == path);
-    if common {
+    if is_common(path) {
         return None;
     }
     Some(chosen(choices).is_some_and(|topology| topology.has(path) && (topology.applies)(path, choices)))

@@ -89,14 +89,17 @@ impl Design {
     fn choose(&mut self, choice: &'static Choice, key: &str) -> Result<(), Finding> {
         let option = choice.option(key).ok_or_else(|| unknown_option(choice, key))?;
         self.choices.set(choice.path, option.key);
+        self.complete_choices();
         self.complete_values();
         Ok(())
     }
 
-    /// Gives every choice that is not made its default. A file of an earlier release lacks the choices added since.
+    /// Gives every choice that is not made its default; one that only some topologies have, where the one chosen has it. A file of
+    /// an earlier release lacks the choices added since.
     pub(super) fn complete_choices(&mut self) {
         for choice in table::all_choices() {
-            if self.choices.get(choice.path).is_none() {
+            let asked = converter::is_common(choice.path) || table::applies(choice.path, &self.choices);
+            if asked && self.choices.get(choice.path).is_none() {
                 self.choices.set(choice.path, choice.default);
             }
         }

@@ -10,14 +10,14 @@ pub fn all_entries() -> impl Iterator<Item = &'static Entry> {
         .iter()
         .copied()
         .chain(control::ENTRIES.iter())
-        .chain(compensator::ENTRIES.iter())
+        .chain(compensator::entries())
         .chain(requirements::entries())
         .chain(events::ENTRIES.iter())
 }
 
 /// Every row for a choice, whether it applies or not.
 pub fn all_choices() -> impl Iterator<Item = &'static Choice> {
-    converter::choices().iter().copied().chain(control::CHOICES.iter()).chain(compensator::CHOICES.iter())
+    converter::choices().iter().copied().chain(control::CHOICES.iter()).chain(compensator::choices())
 }
 
 /// The row for a number at a path.

@@ -35,6 +35,9 @@ fn designator(part: Part) -> &'static str {
         Part::R3 => "R3",
         Part::C3 => "C3",
         Part::Feedforward => "Cff",
+        Part::Led => "Rled",
+        Part::Bias => "Rbias",
+        Part::PullUp => "Rpull",
     }
 }
 

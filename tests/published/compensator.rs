@@ -97,6 +97,9 @@ fn op_amp_network(kind: Kind, upper: f64) -> Compensator {
             r3: 1e3,
             c3: 1e-9,
             feedforward: 1e-10,
+            led: 1e3,
+            bias: 1e3,
+            pull_up: 4.7e3,
         },
         reference: 5.0,
     }

@@ -22,3 +22,4 @@ mod switched;
 mod symbolic;
 mod textbook;
 mod topologies;
+mod two_inductors;

@@ -8,7 +8,7 @@
 use super::assumption::{Draft, set, text};
 use super::brief::Brief;
 use crate::compensator::Series;
-use crate::converter::{self, CurrentFigures, OperatingPoint, Sizing, StageCondition};
+use crate::converter::{self, CurrentFigures, OperatingPoint, Size, Sizing, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::quantity::Unit;
@@ -21,6 +21,8 @@ const LOSS_SHARE: f64 = 0.005;
 const BELOW_SWITCHING: f64 = 10.0;
 /// Lowest right-half-plane zero over the crossover aimed at.
 const BELOW_ZERO: f64 = 4.0;
+/// Landmarks that lag where other zeros lead: a pair that the load turns into the right half-plane counts.
+const ZEROS: [&str; 2] = ["right-half-plane-zero", "zero-pair"];
 /// Crossover aimed at over the highest resonance.
 const ABOVE_RESONANCE: f64 = 2.5;
 /// Share of the allowed ripple that the bank's charge may take; the rest is the ESR's.
@@ -72,9 +74,13 @@ fn own_parts(draft: &mut Draft, brief: &Brief) {
         output: brief.get("stage.output.voltage"),
         load: brief.get("stage.load.greatest"),
         switching_frequency: brief.get("stage.switching-frequency") * f64::from(topology.pulses),
+        inductance: brief.ripple().is_none().then(|| brief.get("stage.inductor.inductance")),
     };
     for size in (topology.sizing)(&sizing) {
-        draft.assume(size.path, size.value, size.reason, size.common_practice);
+        match size.size {
+            Size::Value(value) => draft.assume(size.path, value, size.reason, size.common_practice),
+            Size::Option(key) => draft.choose(size.path, key, &size.reason, size.common_practice),
+        }
     }
 }
 
@@ -154,10 +160,11 @@ fn resistances(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
 /// The crossover the stage is sized for [Hz], and why.
 pub(super) fn aim(design: &CheckedDesign) -> (f64, String) {
     let switching = design.stage.switching_frequency / BELOW_SWITCHING;
-    let zero = textbook_landmark(design, "right-half-plane-zero").fold(f64::INFINITY, f64::min);
+    let zeros = ZEROS.into_iter().flat_map(|key| textbook_landmark(design, key));
+    let zero = zeros.fold(f64::INFINITY, f64::min);
     if zero / BELOW_ZERO < switching {
         let at = text(zero, Unit::Hertz);
-        return (zero / BELOW_ZERO, format!("a quarter of the lowest right-half-plane zero, {at}"));
+        return (zero / BELOW_ZERO, format!("a quarter of the lowest zero that lags, {at}"));
     }
     (switching, "a tenth of the switching frequency".to_owned())
 }
