@@ -71,7 +71,7 @@ pub(super) const RESTING: RestingForms = RestingForms {
 /// What the commutation's model leaves out.
 pub(super) const LEAKAGE_LEFT_OUT: LeftOut = LeftOut {
     place: LEAKAGE.path,
-    message: "Leakage inductance counts as the resistance n²·Lleak·f in series with the inductor, by its average current. What it \
+    message: "Leakage inductance counts as the resistance n²·Lleak·f in series with the inductor, by its average current while that flows continuously. What it \
               takes is not a loss where clamp or body diodes return it to the input, so the input current is overstated by that \
               much; ringing and clamp are left out.",
     hint: "look at the duty ratio at full load and least input, where the delay of the pulses costs most",

@@ -91,7 +91,8 @@ impl Stage {
             let help = "Swing of the transformer's magnetising current, peak to peak, at the primary; it is in the switch's peak.";
             further.push(Further::number("magnetising-swing", "Magnetising swing", swing, Unit::Ampere, help));
         }
-        let ohms = self.slot_named(COMMUTATION).unwrap_or(0.0);
+        let delayed = solution.pulse.is_none();
+        let ohms = self.slot_named(COMMUTATION).filter(|_| delayed).unwrap_or(0.0);
         if let Some(volts) = volts.filter(|_| ohms > 0.0) {
             let current = (&solution.intervals.cell.c * &solution.x)[0];
             let lost = ohms * current / (self.ratio * volts);

@@ -60,10 +60,9 @@ impl Drawn {
         Ok(Drawn { regions, rows, values, load_slot, slot_names, state_names })
     }
 
-    /// Value in the slot of this name.
-    pub(super) fn slot_named(&self, name: &str) -> Option<f64> {
-        let slot = self.slot_names.iter().position(|known| known == name)?;
-        self.values.get(slot).copied()
+    /// The slot of this name.
+    pub(super) fn slot(&self, name: &str) -> Option<usize> {
+        self.slot_names.iter().position(|known| known == name)
     }
 
     /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.

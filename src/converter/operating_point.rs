@@ -290,6 +290,10 @@ impl Stage {
         }
         let Solution { intervals, duty, x, .. } = solution;
         let start = Found { duty, x, pulse: None };
+        let intervals = match self.intervals_from_rest(condition) {
+            Some(from_rest) => from_rest.map_err(NoOperatingPoint::Circuit)?,
+            None => intervals,
+        };
         let found = intervals
             .solve_pulse(&start, self.switching_frequency.recip(), condition.output_voltage, self.rows.output_voltage)
             .map_err(NoOperatingPoint::OutOfReach)?;

@@ -158,6 +158,15 @@ enum Fed {
     AtTerminals,
 }
 
+/// What a transformer's leakage inductance has to take over as the switch closes.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Commutation {
+    /// The inductor's current.
+    AtCurrent,
+    /// None: the current has come to rest.
+    FromRest,
+}
+
 /// The state equations of the switching intervals at one condition.
 #[derive(Clone, Debug)]
 pub(super) struct Intervals {
@@ -323,7 +332,7 @@ impl Stage {
 
     /// Value in the slot of this name; none where the netlist has no such slot.
     pub(super) fn slot_named(&self, name: &str) -> Option<f64> {
-        self.plain.slot_named(name)
+        self.plain.slot(name).map(|slot| self.slot_value(slot))
     }
 
     /// The topology.
@@ -356,7 +365,13 @@ impl Stage {
     /// # Errors
     /// As netlist extraction.
     pub(super) fn intervals(&self, condition: &StageCondition) -> Result<Intervals, CircuitError> {
-        self.intervals_of(&self.plain, condition)
+        self.intervals_of(&self.plain, condition, Commutation::AtCurrent)
+    }
+
+    /// The same where every pulse starts from no current, and so commutates at once; none where that changes nothing.
+    pub(super) fn intervals_from_rest(&self, condition: &StageCondition) -> Option<Result<Intervals, CircuitError>> {
+        let delayed = self.slot_named(COMMUTATION).is_some_and(|ohms| ohms > 0.0);
+        delayed.then(|| self.intervals_of(&self.plain, condition, Commutation::FromRest))
     }
 
     /// The same with the bank's series inductance, where it is an ordinary part of the averaged model.
@@ -364,15 +379,23 @@ impl Stage {
         &self,
         condition: &StageCondition,
     ) -> Option<Result<Intervals, CircuitError>> {
-        self.with_inductance.as_ref().map(|drawn| self.intervals_of(drawn, condition))
+        self.with_inductance.as_ref().map(|drawn| self.intervals_of(drawn, condition, Commutation::AtCurrent))
     }
 
-    fn intervals_of(&self, drawn: &Drawn, condition: &StageCondition) -> Result<Intervals, CircuitError> {
+    fn intervals_of(
+        &self,
+        drawn: &Drawn,
+        condition: &StageCondition,
+        commutation: Commutation,
+    ) -> Result<Intervals, CircuitError> {
         let resistance = self.load_voltage(condition) / condition.load_current;
         let mut inputs = DVector::zeros(3);
         inputs[INPUT_VOLTAGE] = condition.input_voltage;
         inputs[DIODE_DROP] = self.diode_drop;
         let mut values = drawn.values.clone();
+        if let Some(slot) = drawn.slot(COMMUTATION).filter(|_| commutation == Commutation::FromRest) {
+            values[slot] = 0.0;
+        }
         let load_slot_value = match self.load {
             LoadKind::Resistor => resistance,
             LoadKind::Current => {

@@ -14,6 +14,8 @@ mod every_mode;
 mod filters;
 mod lossless;
 mod proposal;
+mod pulsed;
+mod pulsed_findings;
 mod random;
 mod reference;
 mod registry;
