@@ -9,15 +9,36 @@
 //! | `system` | configurations, probes, the switching rule |
 //! | `build` | the system of a stage, a law and a compensator at a condition |
 //! | `probes` | what can be looked at, and where it stands |
+//! | `phase` | the phases of a period and the events between them |
+//! | `flow` | what a phase makes of the state it begins with |
+//! | `orbit` | the steady period: states, instants, conduction mode |
+//! | `search` | the Newton steps that find it |
+//! | `perturbed` | a small change of the orbit over one period |
+//! | `response` | what an analyser reads, at any frequency |
+//! | `quantity` | plant, loop gain, impedance, line and reference response as such readings |
+//! | `stability` | multipliers, and the name of an instability |
 //! | `progress` | the cancel flag and the progress of slow work |
 
 mod build;
+mod flow;
+mod orbit;
+mod perturbed;
+mod phase;
 mod probes;
 mod progress;
+mod quantity;
+mod response;
+mod search;
+mod stability;
 mod system;
 #[cfg(test)]
 mod tests;
 
 pub use build::{Closing, Driven, Joined};
+pub use orbit::{Goal, Orbit, Start};
+pub use phase::{Event, Phase};
 pub use progress::{Cancel, Progress};
+pub use quantity::{ExactLoop, Quantity, Reader, SampledLoop};
+pub use response::{Reading, Response, Scratch, UNDEFINED_WITHIN, defined};
+pub use stability::{Instability, Stability};
 pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};

@@ -42,6 +42,11 @@ impl Case {
         Case { stage, law, compensator, point }
     }
 
+    fn open(&self) -> SwitchedSystem {
+        let driven = Driven::Voltage(0.0);
+        SwitchedSystem::at_point(&Joined { stage: &self.stage, law: &self.law, driven }, &self.point).unwrap()
+    }
+
     fn system(&self) -> SwitchedSystem {
         let space = self.compensator.state_space().unwrap();
         let driven = Driven::Loop(Closing::new(&space, self.compensator.reference));
@@ -90,6 +95,36 @@ fn every_topology_under_every_law_rests_on_average_at_its_operating_point() {
                 topology.key
             );
             assert!(system.state_names.iter().all(|name| !name.is_empty()));
+        }
+    }
+}
+
+/// Definition: the orbit's states repeat, its comparator trips, and charge and volt-seconds balance: a mean capacitor current of
+/// nothing, a mean output as wanted.
+#[test]
+fn every_topology_under_every_law_has_its_orbit() {
+    for topology in registry() {
+        for (mode, rectifier, load) in MODES
+            .iter()
+            .flat_map(|mode| ["synchronous", "diode"].map(|rectifier| (*mode, rectifier)))
+            .flat_map(|(mode, rectifier)| [2.0, 0.05].map(|load| (mode, rectifier, load)))
+        {
+            let entries = [
+                ("stage.output.voltage", reachable(topology)),
+                ("stage.load.least", load),
+                ("stage.load.nominal", load),
+                ("stage.load.greatest", load),
+                // Little ripple at the comparator.
+                ("compensator.r2", 100.0),
+                ("compensator.r3", 1e6),
+            ];
+            let case = Case::new(topology.key, &[("control.mode", mode), ("stage.rectifier", rectifier)], &entries);
+            let what = format!("{} {mode} {rectifier} {load} A", topology.key);
+            let system = case.open();
+            let goal = Goal::Output(case.point.output_voltage);
+            let orbit = Orbit::find(&system, Start::of(&case.point), goal).unwrap_or_else(|f| panic!("{what}: {f:?}"));
+            assert_eq!(orbit.conduction, case.point.conduction, "{what}");
+            assert!((orbit.duty / case.point.duty - 1.0).abs() < 0.02, "{what}: {}", orbit.duty);
         }
     }
 }

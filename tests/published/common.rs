@@ -1,7 +1,11 @@
 //! What the checks share: designs by entry path, analyses of them, and the one way floats are compared.
 
+use polewright::analysis::loop_model::Shared;
 use polewright::analysis::{Analysis, Detail, Level, Request, Shown, analyse};
+use polewright::converter::StageCondition;
 use polewright::design::{CheckedDesign, Design};
+use polewright::finding::Finding;
+use polewright::switched::{Closing, Driven, ExactLoop, Joined, Start, SwitchedSystem};
 
 /// A design with every choice and value at its default but these.
 pub(crate) fn design(choices: &[(&str, &str)], values: &[(&str, f64)]) -> Design {
@@ -107,3 +111,27 @@ pub(crate) fn assert_absolute(what: &str, value: f64, wanted: f64, amount: f64) 
 pub(crate) const PUBLISHED: f64 = 0.005;
 /// Tolerance for published phases [°].
 pub(crate) const PUBLISHED_DEG: f64 = 0.3;
+
+/// The switched loop at the nominal condition or another, solved exactly.
+pub(crate) fn try_exact_loop(design: &Design, condition: Option<StageCondition>) -> Result<ExactLoop, Finding> {
+    let checked = checked(design);
+    let stage = &checked.stage;
+    let nominal = StageCondition {
+        input_voltage: stage.input_voltages[1],
+        load_current: stage.load_currents[1],
+        output_voltage: stage.output_voltage,
+    };
+    let condition = condition.unwrap_or(nominal);
+    let shared = Shared::new(&checked)?;
+    let point = stage.averaged(&condition)?.operating_point;
+    let closing = Closing::new(&shared.compensator, checked.compensator.reference);
+    let joined = |driven| Joined { stage, law: &shared.law, driven };
+    let closed = SwitchedSystem::new(&joined(Driven::Loop(closing)), &condition)?;
+    let open = SwitchedSystem::new(&joined(Driven::Voltage(0.0)), &condition)?;
+    ExactLoop::new(&closed, &open, Start::of(&point), condition.output_voltage)
+}
+
+/// The same, or the finding as a panic.
+pub(crate) fn exact_loop(design: &Design, condition: Option<StageCondition>) -> ExactLoop {
+    try_exact_loop(design, condition).unwrap_or_else(|finding| panic!("{}: {finding:?}", design.title))
+}

@@ -34,3 +34,10 @@ fn agree(topology: &str, least: usize) {
 fn flyback_in_both_conduction_modes_and_with_an_output_filter() {
     agree("flyback", 3);
 }
+
+/// The reference draws each phase by itself; one phase of an Nth of the impedances must do as well.
+#[test]
+fn interleaved_phases_in_voltage_and_current_mode() {
+    agree("buck", 1);
+    agree("boost", 1);
+}

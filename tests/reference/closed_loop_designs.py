@@ -53,7 +53,8 @@ class Design:
             "compensator.type": str(network.kind),
             "compensator.amplifier": network.amplifier,
         }
-        if network.kind != 3:
+        isolated = network.amplifier in ("shunt-regulator", "digital")
+        if network.kind != 3 and not isolated:
             choices["compensator.feedforward-capacitor"] = "fitted" if network.cff else "none"
         values = {
             "stage.output.voltage": self.output,
@@ -67,9 +68,7 @@ class Design:
             "compensator.reference": network.reference,
             "compensator.divider.upper": network.upper,
             "compensator.divider.lower": network.lower,
-            "compensator.c1": network.c1,
-            "compensator.c2": network.c2,
-            "compensator.r2": network.r2,
+            **{f"compensator.{part}": getattr(network, part) for part in ("c1", "c2", "r2") if hasattr(network, part)},
             "event.load-step.change": self.load_step[0],
             "event.load-step.slew": self.load_step[1],
             "event.line-step.change": self.line_step[0],
@@ -105,6 +104,13 @@ class Design:
             values[f"stage.bank.{k}.esr"] = branch.esr
             values[f"stage.bank.{k}.esl"] = branch.esl
             values[f"stage.bank.{k}.count"] = branch.count
+        if isolated:
+            own_choices, own_values = network.entries()
+            # A part not fitted has no entry.
+            values = {path: value for path, value in values.items() if value or not path.startswith("compensator.")}
+            if network.amplifier == "digital":
+                del choices["compensator.type"]
+            return choices | own_choices, values | own_values
         if network.kind == 3:
             values |= {"compensator.r3": network.r3, "compensator.c3": network.c3}
         if network.cff:

@@ -55,13 +55,14 @@ class Model:
     off_slope: float  # negative [A/s]
     first: float  # average of the first inductor's current [A]
     first_slope: float  # its slope while the switch conducts [A/s]
+    bank: Row  # voltage of the output bank, ahead of a second stage [V]
     magnetised: Row  # what magnetises a transformer while the switch conducts [V]
     names: list
 
-    def at(self, s):
-        """The output's response to (vin, io, duty) at the complex frequencies s, one row each."""
-        x = self.states_at(s)
-        return self.output.x @ x + np.array([*self.output.u, self.output.d])
+    def at(self, s, of=None):
+        """The response of the output, or of another row, to (vin, io, duty) at the complex frequencies s, one row each."""
+        of = of or self.output
+        return of.x @ self.states_at(s) + np.array([*of.u, of.d])
 
     def states_at(self, s):
         """The states' responses to (vin, io, duty) at the complex frequencies s."""
@@ -171,7 +172,7 @@ def discontinuous(stage, vin, vout, load):
     assert 0.0 < z[n] < share < 1.0, ("not discontinuous", z[n], share)
     return Model("discontinuous", z[n], share - z[n], z[:n], by_x[:n], by_u[:n], by_d[:n],
                  row(n), row(n + 1), row(n + 2), row(n + 6), row(n + 5), value[n + 8],
-                 z[0] / stage.phases, value[n + 9] / stage.phases, row(n + 10), names)
+                 z[0] / stage.phases, value[n + 9] / stage.phases, row(n + 3), row(n + 10), names)
 
 
 def triangle(stage, vin, vout, load):
@@ -221,7 +222,7 @@ def continuous(stage, vin, vout, load, forced):
     valley = q @ x - duty / stage.pulse_frequency * on_slope.value / 2.0
     model = Model("continuous", duty, 1.0 - duty, x, plain.a, plain.b[:, [0, 2]], plain.f, row(0), row(1), row(2), difference,
                   on_slope, q @ (a2 @ x + b2 @ u), x[0] / stage.phases,
-                  (a1[0] @ x + b1[0] @ u) / stage.phases, magnetised, names)
+                  (a1[0] @ x + b1[0] @ u) / stage.phases, row(3), magnetised, names)
     return model, valley >= 0.0 or forced
 
 

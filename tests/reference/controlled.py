@@ -175,11 +175,11 @@ class ControlledLoop(Loop):
 
     # --- frequency: scalar algebra at each frequency --------------------------------------------------------------
 
-    def stage_responses(self, s):
-        """Output from (vin, io, control voltage), and the inner loop gain where there is one."""
+    def stage_responses(self, s, of=None):
+        """Output, or another row of the stage, from (vin, io, control voltage), and the inner loop gain where there is one."""
         model, control = self.model, self.control
         states = model.states_at(s)  # from (vin, io, duty)
-        output = model.at(s)
+        output = model.at(s, of)
         late = np.exp(-s * self.design.delay)
         if control.mode == "average-current":
             current = model.current.x @ states + np.array([*model.current.u, model.current.d])
@@ -222,10 +222,14 @@ class ControlledLoop(Loop):
 
     # --- state space, the second route ------------------------------------------------------------------------------
 
-    def controlled(self):
-        """(A, B, C, D) of the stage under its control law, inputs (vin, io, control voltage), the delay as its Pade form."""
+    def controlled(self, of=None, late=True):
+        """(A, B, C, D) of the stage under its control law, inputs (vin, io, control voltage), the delay as its Pade form or left out.
+
+        C and D give the output, or another row of the stage.
+        """
         m, control = self.model, self.control
-        a_d, b_d, c_d, d_d = pade_modal(self.design.delay)
+        of = of or m.output
+        a_d, b_d, c_d, d_d = pade_modal(self.design.delay if late else 0.0)
         n_p, n_d = len(m.a), len(a_d)
         average = control.mode == "average-current"
         behind = int(average and control.filter > 0.0)
@@ -252,18 +256,18 @@ class ControlledLoop(Loop):
             given[e] = c_i
         else:
             given = vc
-        late = d_d * given
-        late[q] += c_d
+        given_late = d_d * given
+        given_late[q] += c_d
         slopes[q, q] = a_d
         slopes[q, :] += np.outer(b_d, given)
         natural = rows(m.a, m.b)
         if average:
-            duty = late / control.ramp
+            duty = given_late / control.ramp
         else:
             law = self.law
             rest = rows(law.x, law.u)[0]
             if not self.sampled:
-                duty = (late - rest) / law.d
+                duty = (given_late - rest) / law.d
             else:
                 # The duty ratio is a state, since k ends in x/pi^2; behind it the filtered current, the filtered duty ratio, and
                 # e [1/(1 - p) - 1/(z - p)] = e/(1 - p)^2 x/(1 + (1 + p)/(1 - p) x/2 + x^2/pi^2) in two states.
@@ -280,9 +284,9 @@ class ControlledLoop(Loop):
                     slopes[e][4] = duty - square * units[3] - (1.0 + past) / (1.0 - past) / 2.0 * square * period * units[4]
                     more = tau / period * (units[2] - duty) + now / (1.0 - past)**2 * square * period * units[4]
                     sensed = units[1]
-                slopes[e][0] = (late - control.sense * sensed - rest - law.d * duty - step * more) / (step * period / np.pi**2)
+                slopes[e][0] = (given_late - control.sense * sensed - rest - law.d * duty - step * more) / (step * period / np.pi**2)
         slopes[p, :] = natural + np.outer(m.f, duty)
-        out = rows(m.output.x, m.output.u)[0] + m.output.d * duty
+        out = rows(of.x, of.u)[0] + of.d * duty
         if average:
             sensed = control.sense * (rows(m.current.x, m.current.u)[0] + m.current.d * duty)
             if behind:

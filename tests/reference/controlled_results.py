@@ -83,8 +83,8 @@ def against_switched(loop):
     return found
 
 
-def condition(design, vin, load):
-    loop = ControlledLoop(design, vin, load)
+def condition(design, vin, load, loop_type=ControlledLoop):
+    loop = loop_type(design, vin, load)
     model = loop.model
     stable = bool(np.all(loop.poles().real < 0.0))
     found = {

@@ -90,6 +90,10 @@ class Orbit:
                 rows[o_slot, o_slot] = outer[0]
                 rows[o_slot] += np.outer(outer[1][:, 0], outputs[0])
                 rows[o_slot, n] += outer[1][:, 1] * design.network.reference
+                if outer[1].shape[1] > 2:
+                    # Isolated feedback: what feeds the LED, and its constants.
+                    rows[o_slot] += np.outer(outer[1][:, 2], outputs[3 if design.network.fast == "bank" else 0])
+                    rows[o_slot, n] += outer[1][:, 3]
             self.intervals[which] = (rows[:, :n], rows[:, n], rows[:, n + 1], outputs[0])
         # The comparator trips where compare . (states, 1, vc) = ramp slope . time since its interval began.
         if control.mode == "voltage":
