@@ -130,6 +130,8 @@ impl Design {
         {
             let seen = topology.seen_input(greatest, self.turns_ratio());
             match topology.reach {
+                // A turns ratio that cannot be used has a problem of its own.
+                _ if seen <= 0.0 => {}
                 Reach::AboveInput if output <= seen => problems.push(below_input(topology.name, output, seen)),
                 Reach::BelowInput if output >= seen => problems.push(above_input(topology.name, output, seen)),
                 _ => {}

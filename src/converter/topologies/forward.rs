@@ -8,12 +8,16 @@ use crate::converter::buck_derived::{
     AT_REST, LANDMARKS, LEAKAGE, LEAKAGE_LEFT_OUT, MAGNETISING, MAGNETISING_LEFT_OUT, RESTING, first_sizes,
 };
 use crate::converter::drawing::{RECTIFIER, SWITCH, StageDrawing};
+use crate::converter::sizing::Sized;
 use crate::converter::topology::{DutyLimit, Reach, SwitchSets, Topology};
-use crate::converter::topology_entries::RATIO;
+use crate::converter::topology_entries::turns_ratio;
 use crate::quantity::{Bounds, Entry, Unit};
 
 /// Rectifier that conducts with the switch.
 const FORWARD: &str = "forward rectifier";
+
+/// Turns ratio; the duty ratio is limited, so it is larger than where it is not.
+static TURNS: Entry = turns_ratio(1.5);
 
 /// Turns of the reset winding.
 static RESET: Entry = Entry::new(
@@ -32,7 +36,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     line: "Isolated buck with one switch; a reset winding limits the duty ratio.",
     reach: Reach::BelowInput,
     draw,
-    entries: &[&RATIO, &MAGNETISING, &LEAKAGE, &RESET],
+    entries: &[&TURNS, &MAGNETISING, &LEAKAGE, &RESET],
     switching: &[SwitchSets {
         name: "",
         on: &[SWITCH, FORWARD],
@@ -54,7 +58,11 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     highest_voltage: |v| (2.0 * v.input).max(v.ratio * v.input).max(v.output),
     landmarks: LANDMARKS,
     resting: RESTING,
-    sizing: |given| first_sizes(given, 0.4, 1.0),
+    sizing: |given| {
+        let reset =
+            Sized::by_rule(RESET.path, 1.0, "as many turns as the primary winding: the duty ratio may reach a half");
+        [first_sizes(given, 0.4, 1.0), vec![reset]].concat()
+    },
     left_out: &[LEAKAGE_LEFT_OUT, MAGNETISING_LEFT_OUT],
     ..Topology::COMMON
 };

@@ -11,7 +11,11 @@ use crate::converter::buck_derived::{
 };
 use crate::converter::drawing::{SWITCH, StageDrawing};
 use crate::converter::topology::{LeftOut, Reach, SwitchSets, Topology};
-use crate::converter::topology_entries::RATIO;
+use crate::converter::topology_entries::turns_ratio;
+use crate::quantity::Entry;
+
+/// Turns ratio; half the input asks for twice of it.
+static TURNS: Entry = turns_ratio(2.0);
 
 /// The half-bridge.
 pub(in crate::converter) static TOPOLOGY: Topology = Topology {
@@ -20,7 +24,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     line: "Isolated buck from a high input: two switches drive the transformer from half the input.",
     reach: Reach::BelowInput,
     draw,
-    entries: &[&RATIO, &MAGNETISING, &LEAKAGE],
+    entries: &[&TURNS, &MAGNETISING, &LEAKAGE],
     switching: &[SwitchSets {
         name: "",
         on: &[SWITCH, PULSE],
