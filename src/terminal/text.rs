@@ -96,7 +96,7 @@ fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
     }
     row(text, "Conduction", &conduction(detail, analysis));
     for figure in &point.further {
-        row(text, figure.name, &figure.text(6));
+        row(text, figure.name, &figure.text(4));
     }
     for inductor in &point.inductors {
         let current = &inductor.current;

@@ -17,6 +17,8 @@ mod isolated;
 mod lossless;
 mod orbit;
 mod proposal;
+mod pulsed;
+mod pulsed_findings;
 mod random;
 mod reference;
 mod registry;
