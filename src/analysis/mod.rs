@@ -37,6 +37,7 @@ mod steps;
 pub mod terms;
 #[cfg(test)]
 mod tests;
+mod transient;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
 pub use digital::DigitalDetail;
@@ -52,3 +53,4 @@ pub use result::{
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,
     StepFigures, Steps, WindowEdge, Worst,
 };
+pub use transient::{MOST_PERIODS, Transient, TransientEvent, TransientFigures, TransientRequest, transient};
