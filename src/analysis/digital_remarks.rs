@@ -79,14 +79,14 @@ fn integrator(design: &CheckedDesign, shared: &Shared, detail: Option<&Detail>) 
         )
     };
     let finding = Finding::notice("compensator.digital.rounding", message);
-    let keeps = kept(design);
-    Some(match keeps {
-        true => finding.with_hint("let rounding keep the integrator").with_remedy(Remedy {
+    Some(if kept(design) {
+        finding.with_hint("let rounding keep the integrator").with_remedy(Remedy {
             label: "Keep the integrator".into(),
             values: Vec::new(),
             choices: vec![("compensator.digital.rounding".into(), "integrator".into())],
-        }),
-        false => finding.with_hint("enter a longer word"),
+        })
+    } else {
+        finding.with_hint("enter a longer word")
     })
 }
 

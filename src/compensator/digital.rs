@@ -287,33 +287,28 @@ impl Digital {
         };
         let index = if name == 'a' { overflow.index + 1 } else { overflow.index };
         let value = print_digits(overflow.value, Unit::One, 4);
-        match entered {
-            Some(places) => {
-                let message = format!(
-                    "The coefficient {name}{index} = {value} overflows a word of {} bits with {places} fraction bits.",
-                    self.bits
-                );
-                let finding =
-                    Finding::problem(path, message).with_hint("leave the fraction bits empty, or enter fewer");
-                let exact = self.exact();
-                let group = if name == 'a' { &exact.feedback } else { &exact.forward };
-                match Codes::nearest(group, self.bits, None) {
-                    Ok(codes) => finding.with_remedy(Remedy {
-                        label: format!("Enter {}", codes.fraction_bits),
-                        values: vec![(path.to_owned(), f64::from(codes.fraction_bits))],
-                        choices: Vec::new(),
-                    }),
-                    Err(_) => finding,
-                }
-            }
-            None => {
-                let message = format!(
-                    "The coefficient {name}{index} = {value} overflows a word of {} bits even without fraction bits.",
-                    self.bits
-                );
-                Finding::problem("compensator.digital.bits", message)
-                    .with_hint("enter a longer word, or lower the gain")
-            }
+        let Some(places) = entered else {
+            let message = format!(
+                "The coefficient {name}{index} = {value} overflows a word of {} bits even without fraction bits.",
+                self.bits
+            );
+            return Finding::problem("compensator.digital.bits", message)
+                .with_hint("enter a longer word, or lower the gain");
+        };
+        let message = format!(
+            "The coefficient {name}{index} = {value} overflows a word of {} bits with {places} fraction bits.",
+            self.bits
+        );
+        let finding = Finding::problem(path, message).with_hint("leave the fraction bits empty, or enter fewer");
+        let exact = self.exact();
+        let group = if name == 'a' { &exact.feedback } else { &exact.forward };
+        match Codes::nearest(group, self.bits, None) {
+            Ok(codes) => finding.with_remedy(Remedy {
+                label: format!("Enter {}", codes.fraction_bits),
+                values: vec![(path.to_owned(), f64::from(codes.fraction_bits))],
+                choices: Vec::new(),
+            }),
+            Err(_) => finding,
         }
     }
 }

@@ -250,10 +250,10 @@ impl Compensator {
 
     /// Formula and parts behind a lane.
     fn origin(&self, corner: Corner) -> (&'static str, &'static [Part]) {
+        use Part::{C1, C2, C3, Feedforward, Lower, R2, R3, Upper};
         if let Amplifier::ShuntRegulator(regulator) = self.amplifier {
             return self.isolated_origin(&regulator, corner);
         }
-        use Part::{C1, C2, C3, Feedforward, Lower, R2, R3, Upper};
         if let Amplifier::Digital(digital) = self.amplifier {
             let integrator = "(1 − z⁻¹) · C / T at z = 1, over 2π";
             return (if corner == Corner::Gain { integrator } else { digital.method.formula() }, &[]);
