@@ -19,6 +19,8 @@ mod filter_values;
 mod filters;
 mod further;
 mod landmark;
+#[cfg(test)]
+mod made_up;
 mod magnetics;
 mod operating_point;
 mod phases;

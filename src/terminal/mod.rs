@@ -41,6 +41,8 @@ mod arguments;
 mod check;
 mod input_filter;
 mod json;
+#[cfg(test)]
+mod made_up_tests;
 mod sweep;
 mod text;
 
