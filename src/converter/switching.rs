@@ -22,6 +22,8 @@ pub struct SwitchingRows {
     pub output_voltage: usize,
     /// Voltage at the load's terminals, a magnitude [V].
     pub load_voltage: usize,
+    /// Voltage of the output bank, ahead of a second stage, a magnitude [V].
+    pub bank_voltage: usize,
     /// Voltage of the switch node against ground [V].
     pub switch_node: usize,
     /// Voltage across the controlled switch [V].
@@ -107,6 +109,7 @@ fn public_rows(rows: &Rows, switch: SwitchRow, rectifier: SwitchRow) -> Switchin
     SwitchingRows {
         output_voltage: rows.output_voltage,
         load_voltage: rows.load_voltage,
+        bank_voltage: rows.bank_voltage,
         switch_node: switch.node,
         switch_voltage: switch.voltage,
         rectifier_voltage: rectifier.voltage,
