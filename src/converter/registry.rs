@@ -10,9 +10,14 @@ static REGISTRY: &[&Topology] = &[
     &topologies::buck::TOPOLOGY,
     &topologies::boost::TOPOLOGY,
     &topologies::buck_boost::TOPOLOGY,
+    &topologies::four_switch::TOPOLOGY,
     &topologies::sepic::TOPOLOGY,
     &topologies::cuk::TOPOLOGY,
     &topologies::flyback::TOPOLOGY,
+    &topologies::forward::TOPOLOGY,
+    &topologies::push_pull::TOPOLOGY,
+    &topologies::half_bridge::TOPOLOGY,
+    &topologies::full_bridge::TOPOLOGY,
     #[cfg(test)] &super::made_up::TOPOLOGY,
 ];
 

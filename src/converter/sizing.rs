@@ -50,7 +50,7 @@ impl Sized {
 }
 
 /// A positive number to two significant digits, as one would write it: 7.5e-6, not a rounding error beside it.
-fn two_digits(value: f64) -> f64 {
+pub(super) fn two_digits(value: f64) -> f64 {
     let exponent = value.log10().floor() - 1.0;
     if !exponent.is_finite() {
         return value;
