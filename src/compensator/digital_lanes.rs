@@ -74,7 +74,7 @@ impl Digital {
                 continue;
             }
             let highest = if corner == Corner::Gain { f64::INFINITY } else { self.highest_hz() };
-            if frequency_hz > highest {
+            if frequency_hz > highest * (1.0 + 1e-9) {
                 why = Some(format!(
                     "Sampled once a period, no pole or zero stands above half that rate, {}.",
                     print(highest, Unit::Hertz)
