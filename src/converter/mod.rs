@@ -6,8 +6,11 @@
 
 mod averaged;
 mod bank;
+mod buck_derived;
 mod cell;
+mod devices;
 mod drawing;
+mod drawing_pulses;
 mod drawn;
 mod entries;
 mod filter_damping;
@@ -28,6 +31,7 @@ mod pulse;
 mod pulse_point;
 #[cfg(test)]
 mod pulse_tests;
+mod regions;
 mod registry;
 mod rows;
 pub mod signals;
@@ -52,9 +56,9 @@ pub use filters::Damping;
 pub use further::{Further, FurtherValue};
 pub use landmark::{BANK, Form, Landmark, RestingForms, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
-pub use registry::{find, registry};
+pub use registry::{find, pulse_frequency, registry};
 pub use sizing::{Size, Sized, Sizing};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
 pub use switching::{SwitchingEquations, SwitchingRows};
-pub use topology::{IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
+pub use topology::{DutyLimit, Entered, IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
 pub use topology_entries::{choices, entries, is_common, row};

@@ -5,6 +5,7 @@
 //! and an entered voltage that differs is a notice.
 
 use super::document::{Design, unknown_option};
+use super::duty_limit::core_saturates;
 use super::{Events, Requirements, caution, table};
 use crate::compensator::Compensator;
 use crate::control::ControlLaw;
@@ -41,6 +42,15 @@ pub struct CheckedDesign {
 }
 
 impl Design {
+    /// The compensator alone, as far as it can be used without the rest.
+    ///
+    /// # Errors
+    /// Every problem of its entries.
+    pub fn compensator(&self) -> Result<Compensator, Vec<Finding>> {
+        let pulses_hz = converter::pulse_frequency(&self.values, &self.choices);
+        Compensator::from_values_at(&self.values, &self.choices, pulses_hz)
+    }
+
     /// Turns the entries into typed parts.
     ///
     /// # Errors
@@ -50,7 +60,7 @@ impl Design {
         problems.extend(self.order_problems());
         problems.extend(self.reach_problems());
         let mut rooms = Rooms { problems };
-        let compensator = rooms.build("compensator", || Compensator::from_values(&self.values, &self.choices));
+        let compensator = rooms.build("compensator", || self.compensator());
         let law = rooms.build("control", || ControlLaw::from_values(&self.values, &self.choices));
         let requirements = rooms.build("requirement", || Requirements::from_values(&self.values));
         let events = rooms.build("event", || Ok(Events::from_values(&self.values)));
@@ -60,7 +70,8 @@ impl Design {
             (Some(stage), Some(law), Some(compensator), Some(requirements), Some(events))
                 if rooms.problems.is_empty() =>
             {
-                let findings = self.remarks(&compensator);
+                let mut findings = self.remarks(&compensator);
+                findings.extend(core_saturates(&stage, &law));
                 let title = self.title.clone();
                 Ok(CheckedDesign { title, stage, law, compensator, requirements, events, findings })
             }
@@ -128,6 +139,8 @@ impl Design {
         {
             let seen = topology.seen_input(greatest, self.turns_ratio());
             match topology.reach {
+                // A turns ratio that cannot be used has a problem of its own.
+                _ if seen <= 0.0 => {}
                 Reach::AboveInput if output <= seen => problems.push(below_input(topology.name, output, seen)),
                 Reach::BelowInput if output >= seen => problems.push(above_input(topology.name, output, seen)),
                 _ => {}

@@ -29,6 +29,7 @@ pub(super) fn write(
         operating_point(&mut text, detail, analysis);
         landmarks(&mut text, detail);
         input_filter(&mut text, detail);
+        text.push_str(&super::digital::text(detail));
         stability(&mut text, detail);
     }
     readouts(&mut text, analysis, design);
@@ -96,7 +97,7 @@ fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
     }
     row(text, "Conduction", &conduction(detail, analysis));
     for figure in &point.further {
-        row(text, figure.name, &figure.text(6));
+        row(text, figure.name, &figure.text(4));
     }
     for inductor in &point.inductors {
         let current = &inductor.current;

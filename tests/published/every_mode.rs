@@ -32,6 +32,8 @@ fn design_of(topology: &Topology, mode: &str, rectifier: &str, over_boundary: f6
     let output = match topology.reach {
         Reach::BelowInput => 5.0,
         Reach::AboveInput => 24.0,
+        // Away from the input where a stage changes its region.
+        Reach::Any if topology.switching.len() > 1 => 7.0,
         Reach::Any => 12.0,
     };
     let values = [
@@ -64,7 +66,7 @@ fn design_of(topology: &Topology, mode: &str, rectifier: &str, over_boundary: f6
     design
 }
 
-fn each(try_one: impl Fn(&Design, Conduction)) {
+pub(crate) fn each(try_one: impl Fn(&Design, Conduction)) {
     let mut count = 0;
     for topology in converter::registry() {
         for mode in MODES {
@@ -114,7 +116,7 @@ fn every_mode_goes_through_a_file() {
 }
 
 /// A number in the text that is none, if there is one; prose of the findings has no such words.
-fn no_number(text: &str) -> Option<&str> {
+pub(crate) fn no_number(text: &str) -> Option<&str> {
     text.split(|c: char| !c.is_alphanumeric()).find(|word| matches!(*word, "NaN" | "inf"))
 }
 
