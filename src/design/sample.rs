@@ -90,6 +90,11 @@ static ALL: &[Sample] = &[
         "A boost whose synchronous switch emulates a diode: both conduction modes in one day's work."
     ),
     sample!(
+        "canal-lock.ron",
+        "Canal lock",
+        "A flyback with isolated feedback, its fast path taken ahead of a second stage."
+    ),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."
