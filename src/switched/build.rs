@@ -149,10 +149,10 @@ impl<'a> Law<'a> {
             Mode::Voltage(_) => (0.0, None),
             Mode::Current(_, sense) => (sense.filter_s, None),
             Mode::Average(average) => {
-                let space = average.inner.state_space().map_err(|error| {
+                let limited = average.inner.limited().map_err(|error| {
                     Finding::problem("control.inner", format!("The inner compensator cannot be solved: {error}."))
                 })?;
-                (average.filter_s, Some((average.as_ref(), space)))
+                (average.filter_s, Some((average.as_ref(), limited.space)))
             }
         };
         Ok(Law { control: law, filter_s, inner })

@@ -21,6 +21,7 @@
 //! | `stress` | peak, RMS and mean of every probe, and the output's ripple taken apart |
 //! | `facts` | what ripple at the comparator does to the loop, in numbers |
 //! | `progress` | the cancel flag and the progress of slow work |
+//! | `transient` | the closed loop in time, period by period, with all its limits |
 
 mod build;
 mod facts;
@@ -38,6 +39,7 @@ mod stress;
 mod system;
 #[cfg(test)]
 mod tests;
+mod transient;
 mod waveforms;
 
 pub use build::{Closing, Driven, Joined};
@@ -50,4 +52,8 @@ pub use response::{Reading, Response, Scratch, UNDEFINED_WITHIN, defined};
 pub use stability::{Instability, Stability};
 pub use stress::{Figures, OutputRipple};
 pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, Simplified, SwitchedSystem, inputs};
+pub use transient::{
+    Amplifiers, AtRest, Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, Signal, Stopped, Trace, Waveforms,
+    simulate,
+};
 pub use waveforms::SteadyWaveforms;
