@@ -177,26 +177,16 @@ fn designs() -> Vec<(String, Design)> {
     all
 }
 
-/// Every combination of all other choices of the stage, which add filters and what is not thought of yet.
+/// Every combination of all other choices of the stage, which add filters and what is not thought of yet; of those that only some
+/// topologies have, with these alone.
 fn further() -> Vec<(String, Design)> {
-    let known = ["stage.topology", "stage.bank", "stage.load", "stage.rectifier"];
-    let others =
-        design::all_choices().filter(|choice| choice.path.starts_with("stage.") && !known.contains(&choice.path));
-    let mut combinations: Vec<Vec<(&str, &str)>> = vec![Vec::new()];
-    for choice in others {
-        let each = |chosen: &Vec<(&'static str, &'static str)>| {
-            let one = |key| chosen.iter().copied().chain([(choice.path, key)]).collect::<Vec<_>>();
-            choice.options.iter().map(|option| one(option.key)).collect::<Vec<_>>()
-        };
-        combinations = combinations.iter().flat_map(each).collect();
-    }
     let mut all = Vec::new();
     for topology in converter::registry() {
         for bank in ["1", "4"] {
-            for combination in &combinations {
+            for combination in combinations(topology) {
                 let mut design = Design::default();
                 design.values.set("stage.source.resistance", 0.0125).unwrap();
-                for (path, key) in combination.iter().chain(&[("stage.topology", topology.key), ("stage.bank", bank)]) {
+                for (path, key) in [("stage.topology", topology.key), ("stage.bank", bank)].iter().chain(&combination) {
                     design.set_from_text(path, key).unwrap();
                 }
                 all.push((format!("{} {bank} {combination:?}", topology.key), design));
@@ -204,6 +194,23 @@ fn further() -> Vec<(String, Design)> {
         }
     }
     all
+}
+
+fn combinations(topology: &converter::Topology) -> Vec<Vec<(&'static str, &'static str)>> {
+    let known = ["stage.topology", "stage.bank", "stage.load", "stage.rectifier"];
+    let own = |path: &str| topology.choices.iter().any(|choice| choice.path == path);
+    let others = converter::choices()
+        .iter()
+        .filter(|choice| !known.contains(&choice.path) && (converter::is_common(choice.path) || own(choice.path)));
+    let mut combinations = vec![Vec::new()];
+    for choice in others {
+        let each = |chosen: &Vec<(&'static str, &'static str)>| {
+            let one = |key| chosen.iter().copied().chain([(choice.path, key)]).collect::<Vec<_>>();
+            choice.options.iter().map(|option| one(option.key)).collect::<Vec<_>>()
+        };
+        combinations = combinations.iter().flat_map(each).collect();
+    }
+    combinations
 }
 
 #[test]
@@ -285,6 +292,41 @@ fn schematics_of_isolated_feedback_keep_the_rules_and_have_every_part() {
             let stands = |path: &str| figure.places.iter().any(|place| place.paths.iter().any(|p| p == path));
             for entry in design.entries().iter().filter(|entry| entry.path.starts_with("compensator.")) {
                 assert!(stands(entry.path), "{what}: {}", entry.path);
+            }
+        }
+    }
+}
+
+#[test]
+fn drawings_of_difference_equations_keep_the_rules_and_have_every_entry() {
+    for mode in ["voltage", "peak-current", "average-current"] {
+        for order in ["2", "3"] {
+            for zeros in ["1", "2"] {
+                for (bits, frequency) in [(16.0, 300e3), (32.0, 1.234e6), (8.0, 20e3)] {
+                    let mut design = Design::default();
+                    for (path, key) in [
+                        ("compensator.amplifier", "digital"),
+                        ("control.mode", mode),
+                        ("compensator.digital.order", order),
+                        ("compensator.digital.zeros", zeros),
+                        ("compensator.digital.method", "tustin-prewarped"),
+                    ] {
+                        design.set_from_text(path, key).unwrap();
+                    }
+                    design.values.set("compensator.digital.bits", bits).unwrap();
+                    design.values.set("stage.switching-frequency", frequency).unwrap();
+                    for lane in ["pole-1", "pole-2", "prewarp"] {
+                        design.values.set(&format!("compensator.digital.{lane}"), 0.2 * frequency).unwrap();
+                    }
+                    let compensator = Compensator::from_values(&design.values, &design.choices).unwrap();
+                    let figure = compensator_schematic(&compensator, &numbers(&design));
+                    let what = format!("{mode} {order} {zeros} {bits}");
+                    keeps_rules(&figure, &what);
+                    let stands = |path: &str| figure.places.iter().any(|place| place.paths.iter().any(|p| p == path));
+                    for entry in design.entries().iter().filter(|entry| entry.path.starts_with("compensator.")) {
+                        assert!(stands(entry.path), "{what}: {}", entry.path);
+                    }
+                }
             }
         }
     }

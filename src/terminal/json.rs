@@ -1,6 +1,7 @@
 //! The report as JSON. Its fields are documented in the room's docs and kept stable.
 
 use super::check::Report;
+use super::digital::{self, Digital};
 use super::input_filter::{self, InputFilter};
 use super::isolated::{self, Isolated};
 use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
@@ -27,6 +28,7 @@ struct Object<'a> {
     conditions: Vec<NineRow<'a>>,
     worst: Vec<Worst<'a>>,
     response: Vec<Response>,
+    digital: Option<Digital>,
     input_filter: Option<InputFilter>,
     isolated: Option<Isolated>,
     load_step: Option<LoadStep>,
@@ -243,6 +245,7 @@ fn object(report: &Report) -> Object<'_> {
         conditions: analysis.map(|a| a.conditions.iter().map(nine_row).collect()).unwrap_or_default(),
         worst: analysis.map(worst).unwrap_or_default(),
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
+        digital: detail.and_then(digital::object),
         input_filter: detail.and_then(input_filter::object),
         isolated: report.results.as_ref().zip(detail).and_then(|((design, _), d)| isolated::object(design, d)),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),

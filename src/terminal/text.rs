@@ -32,6 +32,7 @@ pub(super) fn write(
         landmarks(&mut text, detail);
         input_filter(&mut text, detail);
         over_the_ratio(&mut text, analysis);
+        text.push_str(&super::digital::text(detail));
         stability(&mut text, detail);
     }
     readouts(&mut text, analysis, design);
