@@ -90,6 +90,14 @@ static ALL: &[Sample] = &[
         "A boost whose synchronous switch emulates a diode: both conduction modes in one day's work."
     ),
     sample!(
+        "ridge-relay.ron",
+        "Ridge relay",
+        "A four-switch buck-boost: a boost from an empty battery, a buck from the panels."
+    ),
+    sample!("loom-vision.ron", "Loom vision", "Three interleaved buck phases in peak current mode, 1.2 V at 60 A."),
+    sample!("signal-box.ron", "Signal box", "A forward whose magnetising current does the work of slope compensation."),
+    sample!("slipway-hoist.ron", "Slipway hoist", "A full bridge from a 390 V bus, two pulses per switching period."),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."
