@@ -146,6 +146,49 @@ pub static TERMS: &[Term] = &[
         "GM = −20·log |Ti| where arg Ti = −180° − k·360°",
     ),
     term(
+        "crossover-least-ratio",
+        "Crossover, least ratio",
+        "Crossover at the least transfer ratio of the optocoupler: the loop gain is proportional to it.",
+        "|T(j·2π·fc)| = 1 with T·least / nominal",
+    ),
+    term(
+        "phase-margin-least-ratio",
+        "Phase margin, least ratio",
+        "Phase margin at the least transfer ratio of the optocoupler.",
+        "PM = 180° + arg T(j·2π·fc) with T·least / nominal",
+    ),
+    term(
+        "crossover-greatest-ratio",
+        "Crossover, greatest ratio",
+        "Crossover at the greatest transfer ratio of the optocoupler: the loop gain is proportional to it.",
+        "|T(j·2π·fc)| = 1 with T·greatest / nominal",
+    ),
+    term(
+        "phase-margin-greatest-ratio",
+        "Phase margin, greatest ratio",
+        "Phase margin at the greatest transfer ratio of the optocoupler.",
+        "PM = 180° + arg T(j·2π·fc) with T·greatest / nominal",
+    ),
+    term(
+        "led-current",
+        "LED current",
+        "Current in the optocoupler's LED that holds the control voltage.",
+        "(Vsupply − Vc) / (ratio·Rpull)",
+    ),
+    term(
+        "cathode-current",
+        "Cathode current",
+        "Current in the shunt regulator: the LED's and that of the bias resistor across it. Below its least current the regulator \
+         does not regulate.",
+        "I_LED + V_LED / Rbias",
+    ),
+    term(
+        "cathode-voltage",
+        "Cathode voltage",
+        "What LED and LED resistor leave for the shunt regulator. Below its least voltage it cannot pull any further.",
+        "Vfeed − V_LED − Rled·I_cathode",
+    ),
+    term(
         "lc-resonance",
         "LC resonance",
         "Resonance of the inductor with the output bank: the plant falls by 40 dB per decade above it and loses up to 180°.",

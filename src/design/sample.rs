@@ -101,6 +101,11 @@ static ALL: &[Sample] = &[
     sample!("signal-box.ron", "Signal box", "A forward whose magnetising current does the work of slope compensation."),
     sample!("slipway-hoist.ron", "Slipway hoist", "A full bridge from a 390 V bus, two pulses per switching period."),
     sample!(
+        "canal-lock.ron",
+        "Canal lock",
+        "A flyback with isolated feedback, its fast path taken ahead of a second stage."
+    ),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."

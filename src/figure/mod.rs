@@ -5,6 +5,7 @@ mod bode;
 mod chart;
 mod compensator;
 mod equation;
+mod isolated;
 mod ladder;
 mod pen;
 mod plan;

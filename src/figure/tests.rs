@@ -263,6 +263,41 @@ fn compensator_schematics_keep_the_rules_and_have_every_part() {
 }
 
 #[test]
+fn schematics_of_isolated_feedback_keep_the_rules_and_have_every_part() {
+    for (kind, fast, series) in [
+        ("1", "none", "none"),
+        ("2", "load", "none"),
+        ("2", "bank", "fitted"),
+        ("2", "none", "none"),
+        ("3", "load", "none"),
+        ("3", "bank", "fitted"),
+        ("3", "none", "none"),
+    ] {
+        for (speed, led) in [("pole", 1e3), ("capacitance", 12.34)] {
+            let mut design = Design::default();
+            for (path, key) in [
+                ("compensator.type", kind),
+                ("compensator.amplifier", "shunt-regulator"),
+                ("compensator.opto.fast-path", fast),
+                ("compensator.shunt.series-resistor", series),
+                ("compensator.opto.speed", speed),
+            ] {
+                design.set_from_text(path, key).unwrap();
+            }
+            design.values.set("compensator.opto.led-resistor", led).unwrap();
+            let compensator = Compensator::from_values(&design.values, &design.choices).unwrap();
+            let figure = compensator_schematic(&compensator, &numbers(&design));
+            let what = format!("{kind} {fast} {series}");
+            keeps_rules(&figure, &what);
+            let stands = |path: &str| figure.places.iter().any(|place| place.paths.iter().any(|p| p == path));
+            for entry in design.entries().iter().filter(|entry| entry.path.starts_with("compensator.")) {
+                assert!(stands(entry.path), "{what}: {}", entry.path);
+            }
+        }
+    }
+}
+
+#[test]
 fn drawings_of_difference_equations_keep_the_rules_and_have_every_entry() {
     for mode in ["voltage", "peak-current", "average-current"] {
         for order in ["2", "3"] {

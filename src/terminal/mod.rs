@@ -24,13 +24,15 @@
 //! | `loop` | `{stable, conditionally_stable, crossovers, phase_crossovers, modulus_margin, sensitivity_peak, delay_margin_s, gain_at_half_switching_db}`; `stable` is `null` when undecided |
 //! | `loop.crossovers` | `[{frequency_hz, phase_margin_deg, falling, slope_db_per_decade}]`, all of them |
 //! | `loop.phase_crossovers` | `[{frequency_hz, gain_margin_db}]`, all of them |
-//! | `conditions` | the nine: `[{condition, input_voltage, load_current, duty, conduction, control_voltage, sampling_quality, stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin, load_step_deviation_v, settling_s, filter_margin_db, problem}]` |
+//! | `conditions` | the nine: `[{condition, input_voltage, load_current, duty, conduction, control_voltage, sampling_quality, stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin, load_step_deviation_v, settling_s, filter_margin_db, at_least_ratio, at_greatest_ratio, problem}]` |
 //! | `worst` | `[{requirement, condition, value}]` over the nine, by key of the read-out |
 //! | `response` | at the frequencies of `--at`, else in 1-2-5 steps from 10 Hz to half the switching frequency: `[{frequency_hz, plant_db, plant_deg, compensator_db, compensator_deg, loop_db, loop_deg, output_impedance_ohm, output_impedance_deg, line_to_output_db, line_to_output_deg, open_loop_output_impedance_ohm, open_loop_line_to_output_db}]`; plant is control voltage to output voltage with the modulator, compensator is output voltage to control voltage with the inversion taken out |
 //! | `input_filter` | `null` without one; `{resonance_hz, characteristic_impedance_ohm, peak_ohm, peak_hz, least_input_impedance_ohm, least_input_impedance_hz, margins, gain_change_db, gain_change_hz, phase_change_deg, phase_change_hz, stable_without, optimum_damping, response}`: the filter against the converter, and how far it moves the loop gain; `stable_without` only where the loop is unstable |
 //! | `input_filter.margins` | `[{against, margin_db, frequency_hz, converter_ohm, filter_ohm}]`: least distance of the filter's output impedance below each input impedance |
 //! | `input_filter.optimum_damping` | `{across, ratio, resistance_ohm, capacitance_f, inductance_h, peak_ohm, peak_hz}` |
 //! | `input_filter.response` | `[{frequency_hz, filter_ohm, filter_deg, open_loop_ohm, open_loop_deg, nulled_ohm, nulled_deg, closed_loop_ohm, closed_loop_deg}]` |
+//! | `isolated` | `null` unless a regulator with optocoupler closes the loop; `{transfer_ratio, fast_path, fast_path_gain_db, least_crossover_hz, led_current, cathode_current, cathode_voltage, control_voltage_least, control_voltage_greatest, greatest_led_resistor, output_error_v, at_least_ratio, at_greatest_ratio}`: `transfer_ratio` is `[least, nominal, greatest]`, `fast_path` `load`, `bank` or `none`, `least_crossover_hz` what the fast path alone would make, the control voltages what the least ratio reaches downwards and the greatest upwards, `output_error_v` that of the regulator's finite gain |
+//! | `isolated.at_least_ratio`, `isolated.at_greatest_ratio` | `{stable, crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin}` of the loop there; also in every row of `conditions`, else `null` |
 //! | `digital` | `null` without a difference equation; `{method, exact_at_hz, sample_period_s, computation_s, modulator_delay_s, held, input_range_v, output_range_v, word_length, forward_fraction_bits, feedback_fraction_bits, equation, feedback, forward, lanes, before_rounding, sampled_loop, poles_z}`; `modulator_delay_s` is `null` where the value is `held` for a period |
 //! | `digital.feedback`, `digital.forward` | `[{value, exact, code}]`: a1, a2, … and b0, b1, …; value is code / 2^fraction bits, exact the value before rounding |
 //! | `digital.lanes` | `[{key, aim_hz, as_built_hz}]` |
@@ -60,6 +62,7 @@ mod arguments;
 mod check;
 mod digital;
 mod input_filter;
+mod isolated;
 mod json;
 #[cfg(test)]
 mod made_up_tests;
