@@ -1,5 +1,6 @@
 //! The switched closed loop of a design at a condition, with all its limits, and the state it starts from.
 
+use super::super::digital::refuse_switched;
 use super::super::loop_model::Shared;
 use super::super::result::Condition;
 use crate::compensator::{FAST, Limit, Limited};
@@ -40,6 +41,7 @@ impl Model {
     /// # Errors
     /// A finding for what cannot be solved.
     pub(super) fn new(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Self, Finding> {
+        refuse_switched(design)?;
         let stage = &design.stage;
         let at = StageCondition {
             input_voltage: condition.input_voltage,
