@@ -5,6 +5,7 @@
 //! *Source*: the trade's usual definitions, as in Erickson & Maksimovic, Fundamentals of Power Electronics, 3rd ed., ch. 2, 3, 8
 //! and 9, and Åström & Murray, Feedback Systems, 2nd ed., 10 (modulus margin, sensitivity), from memory.
 
+use super::switched_terms;
 use crate::converter::Landmark;
 
 /// A term with its meaning.
@@ -27,7 +28,7 @@ impl Term {
     }
 }
 
-const fn term(key: &'static str, name: &'static str, text: &'static str, formula: &'static str) -> Term {
+pub(super) const fn term(key: &'static str, name: &'static str, text: &'static str, formula: &'static str) -> Term {
     Term { key, name, text, formula }
 }
 
@@ -447,7 +448,7 @@ pub static TERMS: &[Term] = &[
 
 /// The term with this key.
 pub fn find(key: &str) -> Option<&'static Term> {
-    TERMS.iter().find(|term| term.key == key)
+    TERMS.iter().chain(switched_terms::TERMS).find(|term| term.key == key)
 }
 
 /// The term behind an entry that states a requirement: of `requirement.phase-margin.worst` the phase margin.
@@ -473,7 +474,7 @@ mod tests {
     #[test]
     fn every_term_stands_once_and_says_something() {
         let mut seen = BTreeSet::new();
-        for term in TERMS {
+        for term in TERMS.iter().chain(switched_terms::TERMS) {
             assert!(seen.insert(term.key), "{} stands twice", term.key);
             assert!(!term.name.is_empty() && term.text.ends_with('.') && !term.formula.ends_with('.'), "{}", term.key);
         }

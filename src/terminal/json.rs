@@ -33,6 +33,7 @@ struct Object<'a> {
     isolated: Option<Isolated>,
     load_step: Option<LoadStep>,
     load_sweep: Option<super::sweep::Sweep>,
+    switched: Option<super::switched::Object>,
     requirements: Vec<Requirement<'a>>,
     findings: Vec<FindingRow<'a>>,
 }
@@ -250,6 +251,7 @@ fn object(report: &Report) -> Object<'_> {
         isolated: report.results.as_ref().zip(detail).and_then(|((design, _), d)| isolated::object(design, d)),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
         load_sweep: report.load_sweep.as_ref().map(super::sweep::json),
+        switched: report.switched.as_ref().map(super::switched::json),
         requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
         findings: report.findings.iter().map(finding_row).collect(),
     }

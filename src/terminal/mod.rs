@@ -16,7 +16,7 @@
 //! | `status` | `met`, `not met` or `unusable`, as the exit code |
 //! | `title` | title of the design; `null` when the file cannot be read |
 //! | `condition` | `{input_voltage, load_current, label}` of everything below that is not said to be over all conditions |
-//! | `operating_point` | `{duty, conduction, second_duty, control_voltage, input_current, conduction_loss, boundary_load, load_voltage}`; conduction is `continuous`, `forced continuous` or `discontinuous`, and `second_duty` the share of the period in which the rectifier then conducts, else `null` |
+//! | `operating_point` | `{duty, conduction, second_duty, control_voltage, input_current, conduction_loss, boundary_load, load_voltage, further}`; `further` is `[{key, value, word}]`, what only some stages have; conduction is `continuous`, `forced continuous` or `discontinuous`, and `second_duty` the share of the period in which the rectifier then conducts, else `null` |
 //! | `inductors` | `[{name, average, ripple, peak}]` [A], ripple peak to peak |
 //! | `landmarks` | `[{name, frequency_hz}]`, textbook frequencies of the plant |
 //! | `control` | `{mode, control_voltage, clamp, sampling_quality, subharmonic, slope_factor, fast_multiplier, ramp_v_per_s, ramp_share, boundary_ramp_v_per_s, recommended_ramp_v_per_s, inner_loop}`: the control law at the condition; `sampling_quality` is `null` beyond the subharmonic boundary, all of sampling outside peak and valley current mode in continuous conduction |
@@ -42,6 +42,9 @@
 //! | `load_step` | `{step_a, deviation_v, settling_s}` |
 //! | `load_sweep` | with `--load-sweep`, else `null`: per input voltage `[{input_voltage, boundary_load, points}]`; conduction is discontinuous below the boundary |
 //! | `load_sweep.points` | `[{load_current, duty, conduction, crossover_hz, phase_margin_deg, gain_margin_db, stable, problem}]`, rising; a point stands on either side of the boundary |
+//! | `switched` | with `--switched`, else `null`; the exact switched model: `{stable, stability, oscillation_hz, multipliers, greatest_multiplier, crossovers, phase_crossovers, modulus_margin, sensitivity_peak, averaged_holds_to_hz, averaged_looked_to_hz, averaged_left_by, response, stress, output_ripple_v, output_ripple_capacitive_v, output_ripple_resistive_v, problem}`; crossings as of `loop`, multipliers `[{re, im}]`, the greatest first |
+//! | `switched.response` | `[{frequency_hz, plant_db, plant_deg, loop_db, loop_deg, output_impedance_ohm, output_impedance_deg}]`, `null` where a reading is undefined |
+//! | `switched.stress` | `[{name, unit, greatest, least, rms, average}]` over one steady period; no RMS value of a voltage |
 //! | `requirements` | `[{name, limit, value, met, condition, reason}]`, named by path |
 //! | `findings` | `[{severity, where, message, hint}]`; severity is `note`, `notice` or `problem`, `where` a path, a place in the file or an option of the command line, empty for the whole design |
 //!
@@ -67,6 +70,7 @@ mod json;
 #[cfg(test)]
 mod made_up_tests;
 mod sweep;
+mod switched;
 mod text;
 mod transient;
 

@@ -42,6 +42,9 @@ pub(super) fn write(
             response_table(&mut text, &detail.curves);
         }
     }
+    if let (Some(switched), Ok(detail)) = (&report.switched, &analysis.shown) {
+        super::switched::text(&mut text, switched, detail);
+    }
     if let Some(sweep) = &report.load_sweep {
         super::sweep::text(&mut text, sweep);
     }
