@@ -43,6 +43,7 @@ impl Machine {
         for (acted, acting) in self.acted.iter_mut().zip(&self.acting) {
             *acted += u64::from(*acting);
         }
+        self.end_period();
         self.periods += 1;
         self.since = 0.0;
         Ok(Period { mean_v, duty: self.on_s / period, rested: self.rested, current_limited: limited })
