@@ -41,3 +41,17 @@ fn interleaved_phases_in_voltage_and_current_mode() {
     agree("buck", 1);
     agree("boost", 1);
 }
+
+/// Leakage counts in continuous conduction only, the magnetising current in peak current mode only.
+#[test]
+fn bucks_behind_a_transformer() {
+    agree("forward", 3);
+    agree("push-pull", 1);
+    agree("half-bridge", 1);
+    agree("full-bridge", 2);
+}
+
+#[test]
+fn four_switches_in_both_regions() {
+    agree("four-switch", 3);
+}

@@ -9,7 +9,7 @@ use super::plant::{Act, Plant};
 use super::samples::Samples;
 use super::settle::{other_configuration, other_side};
 use crate::control::Edge;
-use nalgebra::{DMatrix, DVector};
+use nalgebra::DVector;
 
 /// Why a run ended before its time.
 #[derive(Clone, Debug, PartialEq)]
@@ -43,8 +43,6 @@ pub(super) struct ConstantPower {
 pub(super) struct Setup {
     pub(super) rule: Rule,
     pub(super) period_s: f64,
-    /// Applied to the system's states as a period ends.
-    pub(super) rotation: Option<DMatrix<f64>>,
     /// Row of the sensed current among the probes, and the limit on it [A].
     pub(super) current_limit: Option<(usize, f64)>,
     /// Recorded row, and the level at or below which the control asks for nothing; none where it always asks.
@@ -166,17 +164,6 @@ impl Machine {
     pub(super) fn state(&self) -> (DVector<f64>, Configuration) {
         let order = self.plant.integral();
         (DVector::from_fn(order, |k, _| self.z[k] * self.plant.scale[k]), self.configuration)
-    }
-
-    /// What becomes of the states as a period ends: a core is reset, or driven the other way by the next pulse.
-    pub(super) fn end_period(&mut self) {
-        let Some(rotation) = &self.setup.rotation else { return };
-        let order = self.plant.integral();
-        let scale = &self.plant.scale;
-        let turned = rotation * DVector::from_fn(order, |k, _| self.z[k] * scale[k]);
-        for (k, x) in turned.iter().enumerate() {
-            self.z[k] = x / scale[k];
-        }
     }
 
     /// Values of the recorded probes now.

@@ -179,7 +179,6 @@ pub(super) fn machine(system: &SwitchedSystem, scenario: &Scenario<'_>) -> Machi
     let power = power.map(|power| ConstantPower { row: place(system.places.load_voltage), ..power });
     let nothing = scenario.nothing.map(|(row, level)| (place(row), level));
     let setup = Setup {
-        rotation: system.rotation.clone(),
         rule: system.rule.clone(),
         period_s: system.period_s,
         current_limit: scenario.current_limit.map(|limit| (system.places.sensed_current, limit)),
