@@ -376,3 +376,36 @@ fn a_magnetising_current_counts_in_peak_current_mode() {
         assert!(wanted.is_empty(), "{}: {wanted:?} are missing in {found:?}", topology.key);
     }
 }
+
+/// Every sample at all its conditions has a steady period, or a finding that names what keeps it from one; where averaging calls the loop
+/// stable by a wide margin and little ripple reaches the comparator, the multipliers do, too.
+#[test]
+fn samples_have_their_orbits_at_every_condition() {
+    let (mut found, mut refused) = (0, 0);
+    for sample in polewright::design::sample::all() {
+        let design = sample.design().expect("a sample opens");
+        let checked = checked(&design);
+        if checked.compensator.digital().is_some() {
+            continue;
+        }
+        let stage = &checked.stage;
+        for input_voltage in stage.input_voltages {
+            for load_current in stage.load_currents {
+                let condition = StageCondition { input_voltage, load_current, output_voltage: stage.output_voltage };
+                match try_exact_loop(&design, Some(condition)) {
+                    Ok(exact) => {
+                        found += 1;
+                        let growth = Stability::new(&exact.closed).expect("multipliers").growth_per_period();
+                        assert!(growth.is_finite(), "{} at {condition:?}", sample.title);
+                    }
+                    Err(finding) => {
+                        println!("{} at {input_voltage} V, {load_current} A: {}", sample.title, finding.message);
+                        refused += 1;
+                    }
+                }
+            }
+        }
+    }
+    println!("{found} orbits, {refused} refused");
+    assert!(found > 10 * refused, "{found} orbits, {refused} refused");
+}
