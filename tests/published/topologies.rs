@@ -41,3 +41,13 @@ fn interleaved_phases_in_voltage_and_current_mode() {
     agree("buck", 1);
     agree("boost", 1);
 }
+
+#[test]
+fn sepic_with_inductors_apart_and_coupled_in_both_conduction_modes() {
+    agree("sepic", 3);
+}
+
+#[test]
+fn cuk_with_inductors_apart_and_coupled_in_both_conduction_modes() {
+    agree("cuk", 3);
+}
