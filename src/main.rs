@@ -1,6 +1,6 @@
 //! Chooses between the window and the terminal.
 
-use polewright::terminal::{self, Command, Opening, Usage};
+use polewright::terminal::{self, Command, Opening, Outcome, Usage};
 use std::io::{self, Write};
 use std::process::ExitCode;
 use std::time::Instant;
@@ -12,12 +12,8 @@ fn main() -> ExitCode {
     let started = Instant::now();
     let (mut out, mut err) = (io::stdout().lock(), io::stderr().lock());
     let code = match terminal::parse(std::env::args_os()) {
-        Ok(Command::Check(request)) => match terminal::check(&request, &mut out, &mut err) {
-            Ok(outcome) => outcome.code(),
-            // The reader went away, as `head` does: what it wanted it has.
-            Err(error) if error.kind() == io::ErrorKind::BrokenPipe => 0,
-            Err(error) => say(&mut err, &format!("The report could not be written: {error}.\n"), UNUSABLE),
-        },
+        Ok(Command::Check(request)) => ended(terminal::check(&request, &mut out, &mut err), &mut err),
+        Ok(Command::Transient(request)) => ended(terminal::transient(&request, &mut out, &mut err), &mut err),
         Ok(Command::Open(opening)) => {
             drop((out, err));
             match open(opening, started) {
@@ -29,6 +25,16 @@ fn main() -> ExitCode {
         Err(Usage { text, is_error: false }) => say(&mut out, &text, 0),
     };
     ExitCode::from(code)
+}
+
+/// Exit code of a report that was written, or could not be.
+fn ended(outcome: io::Result<Outcome>, err: &mut impl Write) -> u8 {
+    match outcome {
+        Ok(outcome) => outcome.code(),
+        // The reader went away, as `head` does: what it wanted it has.
+        Err(error) if error.kind() == io::ErrorKind::BrokenPipe => 0,
+        Err(error) => say(err, &format!("The report could not be written: {error}.\n"), UNUSABLE),
+    }
 }
 
 /// Prints a text as far as that is possible and passes the exit code on.

@@ -19,7 +19,7 @@ use super::result::{
     Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, Detail, Level, LoopResult, Steps,
 };
 use super::steps::{load_figures, steps};
-use crate::converter::{Conduction, StageCondition};
+use crate::converter::{Conduction, DutyLimit, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::linear::{FrequencyResponse, Modes, Verdict, Zpk, margins};
@@ -243,7 +243,7 @@ pub(super) fn loop_at(
 ) -> Result<(LoopModel, LoopResult, Option<Modes>), Finding> {
     let stage_condition = condition.of_stage(&design.stage);
     let model = LoopModel::new(&design.stage, shared, &stage_condition)?;
-    refuse_out_of_limits(design, &model)?;
+    refuse_out_of_limits(design, &model, &stage_condition)?;
     let fs = design.stage.switching_frequency;
     let mut margins = margins(&model.loop_gain, fs * SEARCH_FROM, fs * SEARCH_TO);
     // Far above the band the loop gain dies out and |1 + T| tends to one, so its least value is no more than that.
@@ -275,13 +275,20 @@ fn filter_interface(
 }
 
 /// Conditions that cannot be held: a duty ratio beyond the modulator's limits.
-fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(), Finding> {
+fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel, condition: &StageCondition) -> Result<(), Finding> {
     let duty = model.averaged.operating_point.duty;
     let (least, greatest) = (design.law.duty_least, design.law.duty_greatest);
+    if let Some(limit) = design.stage.duty_limit.filter(|limit| duty > limit.greatest) {
+        return Err(beyond_the_circuit(duty, &limit));
+    }
     if (least..=greatest).contains(&duty) {
         return Ok(());
     }
     let needed = print_digits(duty, Unit::One, 3);
+    let reason = format!("a duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}");
+    if let Some(between) = design.stage.between_regions(condition, &reason) {
+        return Err(between);
+    }
     let message = format!("A duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}.");
     let resting = model.averaged.operating_point.conduction == Conduction::Discontinuous;
     Err(if duty > greatest {
@@ -292,6 +299,18 @@ fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel) -> Result<(),
     } else {
         Finding::problem("control.duty.least", message).with_hint("widen the duty limits or the input range")
     })
+}
+
+/// A duty ratio that the circuit does not bear.
+fn beyond_the_circuit(duty: f64, limit: &DutyLimit) -> Finding {
+    let message = format!(
+        "A duty ratio of {} is needed, and the circuit bears {}: {}.",
+        print_digits(duty, Unit::One, 3),
+        print_digits(limit.greatest, Unit::One, 3),
+        limit.why
+    );
+    Finding::problem(limit.place, message)
+        .with_hint("raise the turns ratio Ns/Np or the least input, or change what sets the limit")
 }
 
 fn detailed(

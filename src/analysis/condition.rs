@@ -1,10 +1,19 @@
 //! The nine operating conditions of a design, and a what-if beside them.
 
+use super::analyse::Shown;
 use super::result::{Condition, Level};
 use crate::converter::{Stage, StageCondition};
 use crate::quantity::{Unit, print};
 
 impl Condition {
+    /// The condition that is shown: one of the nine, or a what-if.
+    pub fn shown(stage: &Stage, shown: Shown) -> Self {
+        match shown {
+            Shown::Levels(input, load) => Condition::at_levels(stage, input, load),
+            Shown::At { input_voltage, load_current } => Condition::what_if(input_voltage, load_current),
+        }
+    }
+
     /// The condition at two levels of a stage's ranges.
     pub(super) fn at_levels(stage: &Stage, input: Level, load: Level) -> Self {
         let input_voltage = stage.input_voltages[input as usize];

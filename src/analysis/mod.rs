@@ -33,6 +33,7 @@ mod steps;
 pub mod terms;
 #[cfg(test)]
 mod tests;
+mod transient;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
 pub use fast_path::FastPath;
@@ -47,3 +48,4 @@ pub use result::{
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,
     StepFigures, Steps, WindowEdge, Worst,
 };
+pub use transient::{MOST_PERIODS, Transient, TransientEvent, TransientFigures, TransientRequest, transient};

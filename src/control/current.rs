@@ -10,6 +10,9 @@
 //! current counts from the next period on, 1/(z − 1) = 1/x − ½ + x/π² with z = (1 + x/2 + x²/π²)/(1 − x/2 + x²/π²), which is
 //! exact at half the switching frequency. The same z serves 1/(z − p).
 //!
+//! A transformer's magnetising current is part of what is sensed in peak current mode and acts as a ramp of its own, whose slope
+//! follows the input: it adds to ramp, and its small change times the on-time to the left side. A sense filter's lag of it is left out.
+//!
 //! *Source*: own derivation from the exact steps of the current; at fixed voltages without filter it is Ridley 1991,
 //! 1/(π·Qp) = mc·(1 − D) − ½. Against the exact sampled-data response of boost and buck it errs below 0.1 dB up to a tenth of the
 //! switching frequency and about 1 dB at a third, with any filter.
@@ -20,7 +23,9 @@ use super::rested::Rested;
 use super::sampling::Interval;
 use super::sense::CurrentSense;
 use super::statics::StaticLaw;
-use crate::converter::signals::{INPUT_VOLTAGE, LOAD_CURRENT, ON_SLOPE, SLOPE_DIFFERENCE, SWITCHED_CURRENT};
+use crate::converter::signals::{
+    INPUT_VOLTAGE, LOAD_CURRENT, NATURAL_RAMP, ON_SLOPE, SLOPE_DIFFERENCE, SWITCHED_CURRENT,
+};
 use crate::converter::{AveragedModel, Conduction, OperatingPoint};
 use crate::linear::{LinearError, StateSpace};
 use nalgebra::{DMatrix, RowDVector};
@@ -75,7 +80,9 @@ impl CurrentSense {
             return self.started_at_rest(edge, stage, point, period, delay);
         }
         let interval = self.interval(edge, point, period, delay);
-        Sampled { sense: self, edge, interval, stage, difference: point.on_slope - point.off_slope }.close()
+        let difference = point.on_slope - point.off_slope;
+        let natural = edge.natural(point);
+        Sampled { sense: self, edge, interval, stage, difference, natural }.close()
     }
 
     /// Discontinuous conduction: sensed current, and ramp, against the control voltage, solved for the duty ratio.
@@ -93,8 +100,9 @@ impl CurrentSense {
             let [over_duty, over_slope, over_average] = Rested::new(self, point, period, delay).derivatives();
             sensed = slope.times(over_slope).plus(over_average, &Signal::of(stage, SWITCHED_CURRENT)?);
             sensed.duty += over_duty;
+            sensed = sensed.plus(point.duty * period - delay, &Signal::of(stage, NATURAL_RAMP)?);
         }
-        sensed.duty += self.ramp_amperes() * period;
+        sensed.duty += self.ramp_at(edge, point) * period;
         if !(sensed.duty.is_finite() && sensed.duty > 0.0) {
             return Err(LinearError::AlgebraicLoop);
         }
@@ -115,6 +123,8 @@ struct Sampled<'a> {
     stage: &'a StateSpace,
     /// M [A/s].
     difference: f64,
+    /// Ramp that the sensed current has of its own [A/s].
+    natural: f64,
 }
 
 impl Sampled<'_> {
@@ -174,7 +184,11 @@ impl Sampled<'_> {
         };
         let mut sum = difference.times(self.edge.sign() * interval.ripple()).plus(-interval.delay, &sensed_slope);
         sum.duty += self.difference * (interval.ripple_over_share() - self.sense.filter_s)
-            + self.sense.ramp_amperes() * interval.period;
+            + (self.sense.ramp_amperes() + self.natural) * interval.period;
+        if self.edge == Edge::Peak {
+            let on_time = interval.share * interval.period - interval.delay;
+            sum = sum.plus(on_time, &Signal::of(stage, NATURAL_RAMP)?);
+        }
         if self.sense.filter_s <= 0.0 {
             sum = sum.plus(1.0, &Signal::of(stage, SWITCHED_CURRENT)?);
         }

@@ -24,6 +24,7 @@ pub static ENTRIES: &[Entry] = &[
     Entry::new("control.blanking", "Blanking", Unit::Second, Bounds::NonNegative, 100e-9, "How long after the clock's edge the comparator is blind."),
     Entry::new("control.on-time.least", "Least on-time", Unit::Second, Bounds::NonNegative, 0.0, "Shortest time the switch conducts; 0 for none."),
     Entry::new("control.clamp", "Control voltage clamp", Unit::Volt, Bounds::Between(-1000.0, 1000.0), 3.0, "Greatest control voltage that is let through: it limits the current. Empty for none.").optional(),
+    Entry::new("control.current-limit", "Current limit", Unit::Ampere, Bounds::Positive, 5.0, "Sensed current that ends the pulse in every period, whatever the control voltage asks; it acts in the switched transient. Empty for none.").optional(),
     Entry::new("control.inner.r1", "Inner R1, input", Unit::Ohm, RESISTANCE, 10e3, "From the sensed current to the inner op amp's input.").spread(0.01),
     Entry::new("control.inner.r2", "Inner R2, sets the zero", Unit::Ohm, RESISTANCE, 22e3, "In series with C1: around the inner op amp, or from the transconductance amplifier's output to ground.").spread(0.01),
     Entry::new("control.inner.c1", "Inner C1, integrating capacitor", Unit::Farad, CAPACITANCE, 680e-12, "In series with R2.").spread(0.1),

@@ -50,6 +50,8 @@ pub struct ControlLaw {
     pub delay_s: f64,
     /// Greatest control voltage that is let through [V].
     pub clamp: Option<f64>,
+    /// Sensed current that ends the pulse in every period [A].
+    pub current_limit: Option<f64>,
 }
 
 /// The stage as the control voltage drives it.
@@ -93,6 +95,7 @@ impl ControlLaw {
             duty_greatest: get("control.duty.greatest"),
             delay_s: get("control.delay"),
             clamp,
+            current_limit: values.get("control.current-limit"),
         };
         let problems = law.problems(values.get("stage.switching-frequency"));
         if problems.is_empty() { Ok(law) } else { Err(problems) }

@@ -78,7 +78,7 @@ impl Interval {
 /// The sampling figures at one condition in continuous conduction.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Sampling {
-    /// Slope factor mc = 1 + ramp / slope of the sensed interval.
+    /// Slope factor mc = 1 + ramp / slope of the sensed interval, the ramp that the current has of its own included.
     pub slope_factor: f64,
     /// 1/(π·Qp); zero at the boundary of subharmonic oscillation, negative beyond.
     pub damping: f64,
@@ -93,13 +93,16 @@ pub struct Sampling {
 }
 
 impl Sampling {
-    /// The figures for a ramp of `ramp` amperes per second; `gain` is the comparator's volts per ampere.
+    /// The figures for a ramp of `ramp` amperes per second beside the one the sensed current has of its own; `gain` is the
+    /// comparator's volts per ampere.
     pub(super) fn new(interval: &Interval, edge: Edge, point: &OperatingPoint, ramp: f64, gain: f64) -> Self {
         let difference = point.on_slope - point.off_slope;
-        let g = interval.slope() + ramp / difference;
-        let volts = |amperes: f64| (gain * amperes).max(0.0);
+        let natural = edge.natural(point);
+        let whole = ramp + natural;
+        let g = interval.slope() + whole / difference;
+        let volts = |amperes: f64| (gain * (amperes - natural)).max(0.0);
         Sampling {
-            slope_factor: 1.0 + ramp / sensed_slope(edge, point).abs(),
+            slope_factor: 1.0 + whole / sensed_slope(edge, point).abs(),
             damping: g - interval.boundary(),
             fast_multiplier: fast_multiplier(interval, g),
             boundary_ramp: volts(interval.ramp_for(f64::INFINITY, difference)),

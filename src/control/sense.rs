@@ -88,6 +88,12 @@ impl CurrentSense {
         self.ramp() / self.comparator_ohms()
     }
 
+    /// The same with the ramp that the sensed current has of its own [A/s]: only the switch carries a magnetising current, so
+    /// only a peak has it.
+    pub(super) fn ramp_at(&self, edge: Edge, point: &OperatingPoint) -> f64 {
+        self.ramp_amperes() + edge.natural(point)
+    }
+
     pub(super) fn unsettled(&self) -> bool {
         !matches!(self.slope, Slope::Rate(_))
     }
@@ -101,7 +107,8 @@ impl CurrentSense {
                 let difference = nominal.on_slope - nominal.off_slope;
                 // The share of continuous conduction, also where the nominal condition is discontinuous.
                 let share = opposing_slope(edge, nominal) / difference;
-                self.interval_of(share, period, delay).ramp_for(quality, difference).max(0.0)
+                let whole = self.interval_of(share, period, delay).ramp_for(quality, difference);
+                (whole - edge.natural(nominal)).max(0.0)
             }
         };
         self.slope = Slope::Rate(amperes * self.comparator_ohms());
@@ -126,7 +133,7 @@ impl CurrentSense {
     /// Control voltage that holds an operating point [V].
     pub(super) fn control_voltage(&self, edge: Edge, point: &OperatingPoint, period: f64, delay: f64) -> f64 {
         let interval = self.interval(edge, point, period, delay);
-        let ramp = self.ramp_amperes() * (interval.share * period - delay);
+        let ramp = self.ramp_at(edge, point) * (interval.share * period - delay);
         let amperes = match (point.conduction, edge) {
             (Conduction::Discontinuous, Edge::Peak) => Rested::new(self, point, period, delay).sensed() + ramp,
             // The current has come to rest; the ramp alone meets the control voltage.
@@ -144,7 +151,7 @@ impl CurrentSense {
     /// Swing of sensed current and ramp over a period, as control voltage [V].
     pub(super) fn swing(&self, edge: Edge, point: &OperatingPoint, period: f64) -> f64 {
         let time = edge.share(point.duty) * period;
-        self.ohms * (sensed_slope(edge, point).abs() + self.ramp_amperes()) * time
+        self.ohms * (sensed_slope(edge, point).abs() + self.ramp_at(edge, point)) * time
     }
 
     /// Problems between entries.
@@ -188,6 +195,14 @@ impl Edge {
         match self {
             Edge::Peak => duty,
             Edge::Valley => 1.0 - duty,
+        }
+    }
+
+    /// Ramp that the sensed current has of its own, in amperes of switched current [A/s].
+    pub(super) fn natural(self, point: &OperatingPoint) -> f64 {
+        match self {
+            Edge::Peak => point.natural_ramp,
+            Edge::Valley => 0.0,
         }
     }
 

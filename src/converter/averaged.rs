@@ -35,7 +35,12 @@ impl Stage {
     /// A finding when no duty ratio gives the output; it names the greatest output that can be had.
     pub fn averaged(&self, condition: &StageCondition) -> Result<AveragedModel, Finding> {
         self.refuse_drop(condition)?;
-        let solution = self.solve(condition).map_err(|why| no_operating_point(&why, condition))?;
+        let solution = self.solve(condition).map_err(|why| {
+            let told = no_operating_point(&why, condition);
+            let reason = told.message.trim_end_matches('.');
+            let out_of_reach = matches!(why, NoOperatingPoint::OutOfReach(_));
+            self.between_regions(condition, reason).filter(|_| out_of_reach).unwrap_or(told)
+        })?;
         let operating_point = self.figures(condition, &solution);
         let with_inductance = self.intervals_with_inductance(condition).filter(|_| solution.pulse.is_none());
         let inductance_left_out = with_inductance.is_none();
@@ -86,10 +91,11 @@ impl Stage {
         let s = &i.cell.c;
         let (slope_x, slope_u) = (s * (&i.on.a - &i.off.a), s * (&i.on.b - &i.off.b));
         let (on_x, on_u) = (s * &i.on.a, s * &i.on.b);
-        // Switched current and its slopes have no direct path from the duty ratio.
-        let c = stacked(&c, &[s, &slope_x, &on_x]);
+        // Switched current, its slopes and a ramp beside it have no direct path from the duty ratio.
+        let (natural_x, natural_u) = i.natural_rows();
+        let c = stacked(&c, &[s, &slope_x, &on_x, &natural_x]);
         let none = RowDVector::zeros(d.ncols());
-        let d = stacked(&d, &[&none, &slope_u, &on_u]);
+        let d = stacked(&d, &[&none, &slope_u, &on_u, &natural_u]);
         let jump = jump.resize_vertically(c.nrows(), 0.0);
         let b = with_duty(&push, &b);
         let d = with_duty(&jump, &d);
@@ -121,7 +127,7 @@ impl Stage {
         let continuous = self.textbook(condition);
         let forms = &self.topology().resting;
         let k = 2.0 * (forms.inductance)(&continuous) * self.switching_frequency / continuous.load_resistance;
-        Textbook { duty: (forms.duty)(continuous.conversion, k), ..continuous }
+        Textbook { duty: (forms.duty)((forms.conversion)(&continuous), k), ..continuous }
     }
 
     /// The lossless quantities textbook formulas are written in.
@@ -129,6 +135,7 @@ impl Stage {
         Textbook {
             duty: (self.topology().ideal_duty)(&self.voltages(condition)),
             conversion: condition.output_voltage / condition.input_voltage,
+            seen_conversion: condition.output_voltage / self.topology().seen_input(condition.input_voltage, self.ratio),
             ratio: self.ratio,
             inductance: self.inductance,
             second_inductance: self.second_inductance,

@@ -57,7 +57,9 @@ pub struct StageDrawing {
     /// Where the parts stand in the schematic.
     pub(super) sketch: Sketch,
     pub(super) options: Options,
-    supply: Node,
+    pub(super) supply: Node,
+    /// Ends of the primary winding of a transformer that stores nothing.
+    pub(super) primary: Option<(Node, Node)>,
     /// Terminals of the regulated voltage.
     sensed: Option<(Node, Node)>,
     /// Terminals of the load.
@@ -67,9 +69,9 @@ pub struct StageDrawing {
     pub(super) filters: FilterParts,
     input_current_part: PartId,
     pub(super) windings: Vec<Winding>,
-    switches: Vec<Switched>,
+    pub(super) switches: Vec<Switched>,
     branches: Vec<PartId>,
-    drop: InputId,
+    pub(super) drop: InputId,
 }
 
 /// An inductor drawn.
@@ -83,13 +85,13 @@ pub(super) struct Winding {
 
 /// A switch or rectifier drawn.
 #[derive(Clone, Copy, Debug)]
-struct Switched {
-    name: &'static str,
-    part: PartId,
-    ohms: Slot,
+pub(super) struct Switched {
+    pub(super) name: &'static str,
+    pub(super) part: PartId,
+    pub(super) ohms: Slot,
     /// Of a rectifier, the cathode first.
-    ends: (Node, Node),
-    diode: bool,
+    pub(super) ends: (Node, Node),
+    pub(super) diode: bool,
 }
 
 /// Columns of the inputs every stage has.
@@ -120,6 +122,7 @@ impl StageDrawing {
             sketch,
             options,
             supply,
+            primary: None,
             sensed: None,
             load: None,
             bank: None,
@@ -151,8 +154,7 @@ impl StageDrawing {
     /// together; the schematic keeps them apart.
     pub fn isolated_return(&mut self) -> Node {
         let node = self.netlist.node("isolated return");
-        // No entry has this name, so its value is zero.
-        let wire = self.netlist.slot("tie");
+        let wire = self.netlist.slot(TIE);
         let ground = self.netlist.ground();
         self.netlist.resistor("tie", node, ground, wire);
         self.sketch.lows.push(node);
@@ -166,15 +168,25 @@ impl StageDrawing {
 
     /// A switch by its name in the netlist, which the topology's [`SwitchSets`](super::SwitchSets) use, its name for people and its
     /// designator.
-    pub fn switch_called(&mut self, (name, shown, designator): (&'static str, &str, &str), from: Node, to: Node) {
+    pub fn switch_called(&mut self, names: (&'static str, &str, &str), from: Node, to: Node) {
+        self.switch_between(names, (from, to), (from, to));
+    }
+
+    /// The same between two nodes of the netlist, drawn between two of the sketch.
+    pub(super) fn switch_between(
+        &mut self,
+        (name, shown, designator): (&'static str, &str, &str),
+        ends: (Node, Node),
+        seen: (Node, Node),
+    ) {
         let ohms = self.netlist.slot("stage.switch.resistance");
-        let part = self.netlist.switch(name, from, to, ohms);
-        self.switches.push(Switched { name, part, ohms, ends: (from, to), diode: false });
+        let part = self.netlist.switch(name, ends.0, ends.1, ohms);
+        self.switches.push(Switched { name, part, ohms, ends, diode: false });
         let drawn = Drawn::new(Symbol::Switch, shown, designator)
             .value("stage.switch.resistance")
             .quiet("stage.switching-frequency");
-        // Current flows from `from` to `to`, so the body of a transistor points the other way.
-        self.sketch.part(to, from, drawn);
+        // Current flows from the first end to the second, so the body of a transistor points the other way.
+        self.sketch.part(seen.1, seen.0, drawn);
     }
 
     /// The rectifier, from anode to cathode: a diode or a synchronous switch, as chosen.
@@ -187,21 +199,26 @@ impl StageDrawing {
         let count = self.switches.iter().filter(|switch| switch.name.contains(RECTIFIER)).count();
         let numbered = |word: &str| if count == 0 { word.to_owned() } else { format!("{word}{}", count + 1) };
         let diode = self.options.diode;
-        let (part, ohms) = if diode {
-            let ohms = self.netlist.slot("stage.diode.resistance");
-            let drawn = Drawn::new(Symbol::Diode, "Diode", numbered("D"))
-                .value("stage.diode.drop")
-                .quiet("stage.diode.resistance");
-            self.sketch.part(anode, cathode, drawn);
-            (self.netlist.diode(name, anode, cathode, ohms, self.drop), ohms)
+        let (drawn, path) = self.drawn_rectifier(&numbered(if diode { "D" } else { "SR" }));
+        let ohms = self.netlist.slot(path);
+        self.sketch.part(anode, cathode, drawn);
+        let part = if diode {
+            self.netlist.diode(name, anode, cathode, ohms, self.drop)
         } else {
-            let ohms = self.netlist.slot("stage.synchronous.resistance");
-            let drawn = Drawn::new(Symbol::Switch, "Synchronous rectifier", numbered("SR"))
-                .value("stage.synchronous.resistance");
-            self.sketch.part(anode, cathode, drawn);
-            (self.netlist.switch(name, anode, cathode, ohms), ohms)
+            self.netlist.switch(name, anode, cathode, ohms)
         };
         self.switches.push(Switched { name, part, ohms, ends: (cathode, anode), diode });
+    }
+
+    /// A rectifier as it is drawn, and the path of its resistance.
+    pub(super) fn drawn_rectifier(&self, designator: &str) -> (Drawn, &'static str) {
+        if self.options.diode {
+            let path = "stage.diode.resistance";
+            (Drawn::new(Symbol::Diode, "Diode", designator).value("stage.diode.drop").quiet(path), path)
+        } else {
+            let path = "stage.synchronous.resistance";
+            (Drawn::new(Symbol::Switch, "Synchronous rectifier", designator).value(path), path)
+        }
     }
 
     /// Output bank and load between the output's terminals, the output filter between them where one is fitted.
@@ -242,6 +259,7 @@ impl StageDrawing {
             load_voltage: row(n.voltage_output("load voltage", load.0, load.1)),
             bank_voltage: row(n.voltage_output("bank voltage", bank.0, bank.1)),
             input_current: row(n.current_output("input current", self.input_current_part)),
+            primary_voltage: self.primary.map(|(plus, minus)| row(n.voltage_output("primary voltage", plus, minus))),
             switches: self
                 .switches
                 .iter()
@@ -298,6 +316,9 @@ pub fn sketch(choices: &Choices) -> Option<Sketch> {
 fn free_end((from, to): (Node, Node), supply: Node) -> Node {
     if from.is_ground() || from == supply { to } else { from }
 }
+
+/// Name of a slot whose value is zero, as no entry has it.
+pub(super) const TIE: &str = "tie";
 
 fn drawn_source() -> Drawn {
     let paths = ["stage.input.least", "stage.input.greatest"];

@@ -14,6 +14,7 @@ pub(super) struct Drawn {
     pub(super) rows: Rows,
     pub(super) values: Vec<f64>,
     pub(super) load_slot: Option<usize>,
+    slot_names: Vec<String>,
     /// Parts that hold the independent states.
     pub(super) state_names: Vec<String>,
 }
@@ -51,11 +52,17 @@ impl Drawn {
         let region = |sets: &'static SwitchSets| {
             Ok(Region { sets, on: compiled(sets.on)?, off: compiled(sets.off)?, idle: compiled(sets.idle)? })
         };
+        let slot_names = netlist.slot_names().to_vec();
         let regions = topology.switching.iter().map(region).collect::<Result<Vec<_>, CircuitError>>()?;
         let all: Vec<String> = netlist.state_names().map(str::to_owned).collect();
         let first: &Region = regions.first().ok_or_else(unfinished)?;
         let state_names = kept_names(&all, &first.on.equations(&values)?.independent().1);
-        Ok(Drawn { regions, rows, values, load_slot, state_names })
+        Ok(Drawn { regions, rows, values, load_slot, slot_names, state_names })
+    }
+
+    /// The slot of this name.
+    pub(super) fn slot(&self, name: &str) -> Option<usize> {
+        self.slot_names.iter().position(|known| known == name)
     }
 
     /// Whether the bank's current jumps as the switches change over: its expression differs between the intervals.

@@ -30,6 +30,10 @@ impl Further {
         Further { key, name, value: FurtherValue::Number(value, unit), help }
     }
 
+    pub(super) fn word(key: &'static str, name: &'static str, word: &'static str, help: &'static str) -> Self {
+        Further { key, name, value: FurtherValue::Word(word), help }
+    }
+
     /// Its value as text with so many digits.
     pub fn text(&self, digits: usize) -> String {
         match self.value {

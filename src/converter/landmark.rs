@@ -13,6 +13,8 @@ pub struct Textbook {
     pub duty: f64,
     /// Output voltage over input voltage, M.
     pub conversion: f64,
+    /// Output voltage over the input as the transformer gives it.
+    pub seen_conversion: f64,
     /// Turns ratio, second to first; 1 without a transformer.
     pub ratio: f64,
     /// Inductance [H].
@@ -102,6 +104,8 @@ impl Form {
 pub struct RestingForms {
     /// The inductance L in K = 2·L·fs/R [H].
     pub inductance: fn(&Textbook) -> f64,
+    /// The conversion M that its duty ratio is written in.
+    pub conversion: fn(&Textbook) -> f64,
     /// Lossless duty ratio from M and K.
     pub duty: fn(f64, f64) -> f64,
     /// Landmarks, in the order shown.
@@ -110,7 +114,12 @@ pub struct RestingForms {
 
 impl RestingForms {
     /// No textbook forms.
-    pub const NONE: Self = RestingForms { inductance: |t| t.inductance, duty: |_, _| f64::NAN, landmarks: &[] };
+    pub const NONE: Self = RestingForms {
+        inductance: |t| t.inductance,
+        conversion: |t| t.conversion,
+        duty: |_, _| f64::NAN,
+        landmarks: &[],
+    };
 }
 
 /// A frequency worth knowing.

@@ -36,7 +36,7 @@ impl StageDrawing {
     }
 
     /// Inductor and winding resistance in series, in the netlist alone.
-    fn wind(
+    pub(super) fn wind(
         &mut self,
         (name, loss): (&'static str, &'static str),
         (from, to): (Node, Node),
@@ -99,10 +99,10 @@ impl StageDrawing {
 }
 
 /// Path of the inductance that every stage has.
-const INDUCTANCE: &str = "stage.inductor.inductance";
+pub(super) const INDUCTANCE: &str = "stage.inductor.inductance";
 /// Path of its winding's resistance.
-const WINDING: &str = "stage.inductor.resistance";
+pub(super) const WINDING: &str = "stage.inductor.resistance";
 
-fn drawn_inductor((name, designator): (&str, &str), (inductance, resistance): (&str, &str)) -> Drawn {
+pub(super) fn drawn_inductor((name, designator): (&str, &str), (inductance, resistance): (&str, &str)) -> Drawn {
     Drawn::new(Symbol::Inductor, name, designator).value(inductance).quiet(resistance)
 }

@@ -6,8 +6,11 @@
 
 mod averaged;
 mod bank;
+mod buck_derived;
 mod cell;
+mod devices;
 mod drawing;
+mod drawing_pulses;
 mod drawn;
 mod entries;
 mod filter_damping;
@@ -28,6 +31,7 @@ mod pulse;
 mod pulse_point;
 #[cfg(test)]
 mod pulse_tests;
+mod regions;
 mod registry;
 mod rows;
 pub mod signals;
@@ -56,5 +60,5 @@ pub use registry::{find, registry};
 pub use sizing::{Size, Sized, Sizing};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
 pub use switching::{SwitchingEquations, SwitchingRows};
-pub use topology::{IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
+pub use topology::{DutyLimit, Entered, IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
 pub use topology_entries::{choices, entries, is_common, row};

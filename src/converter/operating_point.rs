@@ -104,6 +104,8 @@ pub struct OperatingPoint {
     pub sense_ratio: f64,
     /// Slope of the switched current while the switch conducts [A/s].
     pub on_slope: f64,
+    /// Ramp that a transformer's magnetising current adds to what is sensed at a peak, in amperes of switched current [A/s]; 0 without.
+    pub natural_ramp: f64,
     /// Slope of the switched current while the rectifier conducts, negative [A/s].
     pub off_slope: f64,
     /// Fraction of the period in which the rectifier conducts, where that is not all the rest of it.
@@ -288,6 +290,10 @@ impl Stage {
         }
         let Solution { intervals, duty, x, .. } = solution;
         let start = Found { duty, x, pulse: None };
+        let intervals = match self.intervals_from_rest(condition) {
+            Some(from_rest) => from_rest.map_err(NoOperatingPoint::Circuit)?,
+            None => intervals,
+        };
         let found = intervals
             .solve_pulse(&start, self.switching_frequency.recip(), condition.output_voltage, self.rows.output_voltage)
             .map_err(NoOperatingPoint::OutOfReach)?;
@@ -329,14 +335,13 @@ impl Stage {
             let flows = [sets.on, sets.off, sets.idle].map(|closed| closed.contains(&switch.name));
             waves.figures(&[switch.row], flows)
         };
-        let named = |name| rows.switch(name).map(|switch| figures_of(&switch)).unwrap_or_default();
-        let (switch, rectifier) = (named(sets.switch), named(sets.rectifier));
+        let devices = self.devices(&waves, solution);
         // What the phases share.
         let shared = |rows: &[usize]| waves.summed(rows, ALWAYS, self.phases);
         let bank = shared(&rows.branch_currents);
         let input = shared(&[rows.input_current]);
         let windings: Vec<usize> = rows.inductors.iter().map(|winding| winding.row).collect();
-        let further = of_phases(self.phases, shared(&windings), input);
+        let further = [devices.further, of_phases(self.phases, shared(&windings), input)].concat();
         let (switched_current, on_slope, off_slope) = waves.switched_current();
         let conduction = match &solution.pulse {
             Some(_) => Conduction::Discontinuous,
@@ -380,12 +385,13 @@ impl Stage {
             switched_current,
             sense_ratio: solution.intervals.cell.sense,
             on_slope,
+            natural_ramp: devices.natural_ramp,
             off_slope,
             second_duty: solution.pulse.as_ref().map(|pulse| pulse.second_duty),
             further,
             inductors,
-            switch: switch.of_one_phase(self.phases),
-            rectifier: rectifier.of_one_phase(self.phases),
+            switch: devices.switch,
+            rectifier: devices.rectifier,
             output_bank_rms: bank.rms,
             output_step: waves.step(rows.output_voltage) / self.phases,
             conduction_loss: conduction_losses.iter().map(|loss| loss.watts).sum(),

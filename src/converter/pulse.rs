@@ -164,6 +164,8 @@ impl Intervals {
         let c = &self.cell.c;
         let (turn, push) = (c * (&self.on.a - &self.off.a), c * (&self.on.b - &self.off.b));
         let lifted = (&turn * &self.cell.v)[0];
+        let (natural_x, natural_u) = self.natural_rows();
+        let natural = (&natural_x * &self.cell.v)[0];
         // m1 = 2h/(d·T).
         let slope = 2.0 / (duty * period);
         let own = [
@@ -174,6 +176,11 @@ impl Intervals {
                 duty: half.duty * lifted,
             },
             Derivative { x: &half.x * slope, u: &half.u * slope, duty: half.duty * slope - pulse.on_slope / duty },
+            Derivative {
+                x: &natural_x * &self.cell.rest + &half.x * natural,
+                u: natural_u + &half.u * natural,
+                duty: half.duty * natural,
+            },
         ];
         let below = rows.len();
         let stack = |top: &DMatrix<f64>, row: fn(&Derivative) -> &RowDVector<f64>| {

@@ -118,7 +118,15 @@ impl Intervals {
         let mut inputs = self.inputs.clone();
         inputs[LOAD_CURRENT] = 0.0;
         let cell = SwitchedCell { idle: load(&self.cell.idle), ..self.cell.clone() };
-        Intervals { on: load(&self.on), off: load(&self.off), cell, sets: self.sets, inputs, to_resistor: (row, 0.0) }
+        Intervals {
+            on: load(&self.on),
+            off: load(&self.off),
+            cell,
+            sets: self.sets,
+            natural: self.natural,
+            inputs,
+            to_resistor: (row, 0.0),
+        }
     }
 
     /// The lowest duty ratio that gives the output, from brackets.

@@ -165,7 +165,7 @@ fn two_inductors(l: [f64; 2], load: f64, vin: f64) -> (Intervals, [usize; 2]) {
     // The switch carries the sum of both currents, as the rectifier does.
     assert!((cell.sense - 1.0).abs() < 1e-12);
     let inputs = DVector::from_vec(vec![vin, 0.0, 0.0]);
-    (Intervals { on, off, cell, sets: &IN_TURN[0], inputs, to_resistor: (0, 0.0) }, [0, 2])
+    (Intervals { on, off, cell, sets: &IN_TURN[0], natural: None, inputs, to_resistor: (0, 0.0) }, [0, 2])
 }
 
 /// In a stage of two inductors the diode's rest ties both currents: what stops is their sum, over L1 ∥ L2. Such a stage converts as

@@ -1,6 +1,7 @@
 //! The registry of topologies: one line each.
 
 use super::topologies::{boost, buck, buck_boost, cuk, flyback, sepic};
+use super::topologies::{forward, four_switch, full_bridge, half_bridge, push_pull};
 use super::topology::Topology;
 use crate::quantity::ChoiceOption;
 
@@ -10,9 +11,14 @@ static REGISTRY: &[&Topology] = &[
     &buck::TOPOLOGY,
     &boost::TOPOLOGY,
     &buck_boost::TOPOLOGY,
+    &four_switch::TOPOLOGY,
     &sepic::TOPOLOGY,
     &cuk::TOPOLOGY,
     &flyback::TOPOLOGY,
+    &forward::TOPOLOGY,
+    &push_pull::TOPOLOGY,
+    &half_bridge::TOPOLOGY,
+    &full_bridge::TOPOLOGY,
 ];
 
 const COUNT: usize = REGISTRY.len();

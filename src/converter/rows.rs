@@ -10,6 +10,8 @@ pub(super) struct Rows {
     /// The voltage of the bank, ahead of a second stage.
     pub(super) bank_voltage: usize,
     pub(super) input_current: usize,
+    /// The voltage across the primary winding of a transformer that stores nothing.
+    pub(super) primary_voltage: Option<usize>,
     /// Switches and rectifiers.
     pub(super) switches: Vec<SwitchRow>,
     /// The inductors that carry switched current.

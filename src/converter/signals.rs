@@ -24,10 +24,14 @@ pub const SLOPE_DIFFERENCE: &str = "slope difference";
 /// Output: slope of the switched current while the switch conducts [A/s].
 pub const ON_SLOPE: &str = "on slope";
 
+/// Output: slope of a current that adds to the sensed one as a ramp, in amperes of switched current [A/s]: a transformer's
+/// magnetising current.
+pub const NATURAL_RAMP: &str = "natural ramp";
+
 /// The inputs, in column order.
 pub(super) const INPUTS: [&str; 3] = [DUTY, INPUT_VOLTAGE, LOAD_CURRENT];
 /// The outputs, in row order.
-pub(super) const OUTPUTS: [&str; 8] = [
+pub(super) const OUTPUTS: [&str; 9] = [
     OUTPUT_VOLTAGE,
     INDUCTOR_CURRENT,
     INPUT_CURRENT,
@@ -36,4 +40,5 @@ pub(super) const OUTPUTS: [&str; 8] = [
     SWITCHED_CURRENT,
     SLOPE_DIFFERENCE,
     ON_SLOPE,
+    NATURAL_RAMP,
 ];

@@ -50,7 +50,7 @@ impl Sized {
 }
 
 /// A positive number to two significant digits.
-fn two_digits(value: f64) -> f64 {
+pub(super) fn two_digits(value: f64) -> f64 {
     let step = 10_f64.powf(value.log10().floor() - 1.0);
     if step.is_finite() && step > 0.0 { (value / step).round() * step } else { value }
 }

@@ -1,6 +1,7 @@
 //! A power stage with usable values: its netlist drawn and compiled, ready for any operating condition.
 
 use super::bank::{Branch, branch_value};
+use super::buck_derived::{COMMUTATION, MAGNETISING, commutation_resistance};
 use super::cell::SwitchedCell;
 use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options};
 use super::drawn::{Drawn, Equations};
@@ -11,13 +12,13 @@ use super::phases;
 use super::registry::find;
 use super::rows::Rows;
 use super::signals::INPUTS;
-use super::topology::{SwitchSets, Topology, Voltages};
+use super::topology::{DutyLimit, SwitchSets, Topology, Voltages};
 use super::topology_entries::{self, COUPLING, COUPLING_CAPACITOR, RATIO, SECOND_INDUCTOR};
 use crate::circuit::{CircuitError, StateEquations};
 use crate::finding::Finding;
 use crate::linear::StateSpace;
 use crate::quantity::{Choices, Values};
-use nalgebra::{DMatrix, DVector};
+use nalgebra::{DMatrix, DVector, RowDVector};
 
 /// How the load current answers the output voltage.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -120,6 +121,10 @@ pub struct Stage {
     pub(super) phases: f64,
     /// Turns ratio of the transformer, second to first; 1 without one.
     pub ratio: f64,
+    /// Magnetising inductance of a transformer that stores nothing, at its primary [H]; 0 without one.
+    pub magnetising: f64,
+    /// Greatest duty ratio that the circuit bears, where it sets one.
+    pub duty_limit: Option<DutyLimit>,
     /// Inductance of the second inductor [H]; 0 without one.
     pub second_inductance: f64,
     /// Coupling factor of the two inductors; 0 where they are separate.
@@ -153,6 +158,15 @@ enum Fed {
     AtTerminals,
 }
 
+/// What a transformer's leakage inductance has to take over as the switch closes.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Commutation {
+    /// The inductor's current.
+    AtCurrent,
+    /// None: the current has come to rest.
+    FromRest,
+}
+
 /// The state equations of the switching intervals at one condition.
 #[derive(Clone, Debug)]
 pub(super) struct Intervals {
@@ -162,6 +176,9 @@ pub(super) struct Intervals {
     pub(super) cell: SwitchedCell,
     /// The switches that conduct in each.
     pub(super) sets: &'static SwitchSets,
+    /// Row of the primary's voltage, and the ramp per volt there, in amperes of switched current [A/(V·s)], that a magnetising current
+    /// adds to what is sensed.
+    pub(super) natural: Option<(usize, f64)>,
     /// Steady inputs: input voltage, load current, diode drop.
     pub(super) inputs: DVector<f64>,
     /// Row of the load's voltage, and the conductance that makes the load a resistor, its own current left out [S].
@@ -212,7 +229,8 @@ impl Stage {
         let output = get("stage.output.voltage");
         let lookup = |name: &str| match name {
             "load resistance" => load_voltage(second_stage.as_ref(), output, load_currents[1]) / load_currents[1],
-            _ => branch_value(name, &bank).unwrap_or_else(|| get(name)),
+            COMMUTATION => commutation_resistance(&get) * f64::from(topology.pulses),
+            _ => branch_value(name, &bank).unwrap_or_else(|| multiple(name, &get)),
         };
         let drawn = Drawn::new(topology, options, &lookup).map_err(|e| vec![circuit_finding(&e)])?;
         // A load that is not a resistor leaves the inductance undamped where it stands right at the bank.
@@ -245,6 +263,8 @@ impl Stage {
             inductance: get("stage.inductor.inductance"),
             phases,
             ratio: if applies(RATIO.path, choices) { get(RATIO.path) } else { 1.0 },
+            magnetising: get(MAGNETISING.path),
+            duty_limit: (topology.duty_limit)(&get),
             second_inductance: get(SECOND_INDUCTOR.path),
             coupling: get(COUPLING.path),
             coupling_capacitance: get(COUPLING_CAPACITOR.path),
@@ -310,6 +330,11 @@ impl Stage {
         Voltages { input: condition.input_voltage, output: condition.output_voltage, ratio: self.ratio }
     }
 
+    /// Value in the slot of this name; none where the netlist has no such slot.
+    pub(super) fn slot_named(&self, name: &str) -> Option<f64> {
+        self.plain.slot(name).map(|slot| self.slot_value(slot))
+    }
+
     /// The topology.
     pub fn topology(&self) -> &'static Topology {
         self.topology
@@ -340,7 +365,13 @@ impl Stage {
     /// # Errors
     /// As netlist extraction.
     pub(super) fn intervals(&self, condition: &StageCondition) -> Result<Intervals, CircuitError> {
-        self.intervals_of(&self.plain, condition)
+        self.intervals_of(&self.plain, condition, Commutation::AtCurrent)
+    }
+
+    /// The same where every pulse starts from no current, and so commutates at once; none where that changes nothing.
+    pub(super) fn intervals_from_rest(&self, condition: &StageCondition) -> Option<Result<Intervals, CircuitError>> {
+        let delayed = self.slot_named(COMMUTATION).is_some_and(|ohms| ohms > 0.0);
+        delayed.then(|| self.intervals_of(&self.plain, condition, Commutation::FromRest))
     }
 
     /// The same with the bank's series inductance, where it is an ordinary part of the averaged model.
@@ -348,15 +379,23 @@ impl Stage {
         &self,
         condition: &StageCondition,
     ) -> Option<Result<Intervals, CircuitError>> {
-        self.with_inductance.as_ref().map(|drawn| self.intervals_of(drawn, condition))
+        self.with_inductance.as_ref().map(|drawn| self.intervals_of(drawn, condition, Commutation::AtCurrent))
     }
 
-    fn intervals_of(&self, drawn: &Drawn, condition: &StageCondition) -> Result<Intervals, CircuitError> {
+    fn intervals_of(
+        &self,
+        drawn: &Drawn,
+        condition: &StageCondition,
+        commutation: Commutation,
+    ) -> Result<Intervals, CircuitError> {
         let resistance = self.load_voltage(condition) / condition.load_current;
         let mut inputs = DVector::zeros(3);
         inputs[INPUT_VOLTAGE] = condition.input_voltage;
         inputs[DIODE_DROP] = self.diode_drop;
         let mut values = drawn.values.clone();
+        if let Some(slot) = drawn.slot(COMMUTATION).filter(|_| commutation == Commutation::FromRest) {
+            values[slot] = 0.0;
+        }
         let load_slot_value = match self.load {
             LoadKind::Resistor => resistance,
             LoadKind::Current => {
@@ -383,7 +422,28 @@ impl Stage {
             LoadKind::Power => 2.0 * resistance.recip(),
         };
         let to_resistor = (drawn.rows.load_voltage, to_resistor);
-        Ok(Intervals { on, off, cell, sets, inputs, to_resistor })
+        let natural = drawn.rows.primary_voltage.filter(|_| self.magnetising > 0.0);
+        let natural = natural.map(|row| (row, self.topology.magnetising_ramp / (self.magnetising * cell.sense)));
+        Ok(Intervals { on, off, cell, sets, natural, inputs, to_resistor })
+    }
+}
+
+impl Intervals {
+    /// Rows over states and inputs of the ramp that a magnetising current adds to what is sensed, in amperes of switched current [A/s].
+    pub(super) fn natural_rows(&self) -> (RowDVector<f64>, RowDVector<f64>) {
+        match self.natural {
+            Some((row, gain)) => (self.on.c.row(row) * gain, self.on.d.row(row) * gain),
+            None => (RowDVector::zeros(self.on.a.nrows()), RowDVector::zeros(self.on.b.ncols())),
+        }
+    }
+}
+
+/// Value of a slot: an entry's, so many times an entry's where its name says so (`0.5 × path`), or a plain number.
+fn multiple(name: &str, get: &dyn Fn(&str) -> f64) -> f64 {
+    let factor = |text: &str| text.parse::<f64>().ok();
+    match name.split_once(" × ").and_then(|(times, path)| Some((factor(times)?, path))) {
+        Some((times, path)) => times * get(path),
+        None => factor(name).unwrap_or_else(|| get(name)),
     }
 }
 

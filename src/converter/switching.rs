@@ -8,7 +8,7 @@ use super::phases::PHASES;
 use super::rows::{Rows, SwitchRow};
 use super::signals::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::stage::{Intervals, Stage, StageCondition, circuit_finding};
-use crate::circuit::StateEquations;
+use crate::circuit::{CircuitError, StateEquations};
 use crate::finding::Finding;
 use nalgebra::{DMatrix, DVector, RowDVector};
 
@@ -22,6 +22,8 @@ pub struct SwitchingRows {
     pub output_voltage: usize,
     /// Voltage at the load's terminals, a magnitude [V].
     pub load_voltage: usize,
+    /// Voltage of the output bank, ahead of a second stage, a magnitude [V].
+    pub bank_voltage: usize,
     /// Voltage of the switch node against ground [V].
     pub switch_node: usize,
     /// Voltage across the controlled switch [V].
@@ -70,6 +72,14 @@ pub struct SwitchingEquations {
 }
 
 impl Stage {
+    /// The equations of the intervals as the conduction mode at a condition has them; it matters to a leakage inductance alone.
+    fn intervals_in_mode(&self, condition: &StageCondition) -> Result<Intervals, CircuitError> {
+        match self.intervals_from_rest(condition) {
+            Some(from_rest) if self.solve(condition).is_ok_and(|solution| solution.pulse.is_some()) => from_rest,
+            _ => self.intervals(condition),
+        }
+    }
+
     /// The equations of the switching intervals at a condition.
     ///
     /// # Errors
@@ -82,7 +92,7 @@ impl Stage {
             ));
         }
         let Intervals { on, off, cell, sets, inputs, .. } =
-            self.intervals(condition).map_err(|e| circuit_finding(&e))?;
+            self.intervals_in_mode(condition).map_err(|e| circuit_finding(&e))?;
         let named = |name: &'static str| {
             let missing = || Finding::problem("stage", format!("The stage has no part called {name}."));
             self.rows.switch(name).ok_or_else(missing)
@@ -107,6 +117,7 @@ fn public_rows(rows: &Rows, switch: SwitchRow, rectifier: SwitchRow) -> Switchin
     SwitchingRows {
         output_voltage: rows.output_voltage,
         load_voltage: rows.load_voltage,
+        bank_voltage: rows.bank_voltage,
         switch_node: switch.node,
         switch_voltage: switch.voltage,
         rectifier_voltage: rectifier.voltage,

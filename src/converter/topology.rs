@@ -38,6 +38,11 @@ pub struct Topology {
     pub input_share: f64,
     /// Lossless duty ratio in continuous conduction.
     pub ideal_duty: fn(&Voltages) -> f64,
+    /// Greatest duty ratio that the circuit bears, whatever the modulator gives, from its entries by path.
+    pub duty_limit: fn(&Entered<'_>) -> Option<DutyLimit>,
+    /// Share of the slope of a transformer's magnetising current that acts as a ramp on the sensed current; 0 where that current is
+    /// the switched one itself, or there is none.
+    pub magnetising_ramp: f64,
     /// Greatest voltage between two points of the circuit [V], without ringing.
     pub highest_voltage: fn(&Voltages) -> f64,
     /// Textbook landmarks of continuous conduction, in the order shown.
@@ -93,6 +98,20 @@ pub struct SwitchSets {
 pub static IN_TURN: &[SwitchSets] =
     &[SwitchSets { name: "", on: &[SWITCH], off: &[RECTIFIER], idle: &[], switch: SWITCH, rectifier: RECTIFIER }];
 
+/// Entered values by path.
+pub type Entered<'a> = dyn Fn(&str) -> f64 + 'a;
+
+/// A greatest duty ratio that the circuit sets.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct DutyLimit {
+    /// The duty ratio.
+    pub greatest: f64,
+    /// Path of the entry that sets it.
+    pub place: &'static str,
+    /// How, and what happens above it.
+    pub why: &'static str,
+}
+
 /// A remark about what a topology's model leaves out.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct LeftOut {
@@ -120,6 +139,8 @@ impl Topology {
         pulses: 1,
         input_share: 1.0,
         ideal_duty: |_| f64::NAN,
+        duty_limit: |_| None,
+        magnetising_ramp: 0.0,
         highest_voltage: |v| v.input.max(v.output),
         landmarks: &[],
         resting: RestingForms::NONE,

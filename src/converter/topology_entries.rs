@@ -9,14 +9,19 @@ use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 use std::sync::LazyLock;
 
 /// Turns ratio of the transformer.
-pub(super) static RATIO: Entry = Entry::new(
-    "stage.transformer.ratio",
-    "Turns ratio, Ns/Np",
-    Unit::One,
-    Bounds::Between(1e-3, 1e3),
-    1.0,
-    "Turns of the secondary winding over turns of the primary winding.",
-);
+pub(super) static RATIO: Entry = turns_ratio(1.0);
+
+/// The row of a turns ratio, with the default that suits a topology.
+pub(super) const fn turns_ratio(default: f64) -> Entry {
+    Entry::new(
+        "stage.transformer.ratio",
+        "Turns ratio, Ns/Np",
+        Unit::One,
+        Bounds::Between(1e-3, 1e3),
+        default,
+        "Turns of the secondary winding over turns of the primary winding.",
+    )
+}
 
 /// Magnetising inductance in the place of the inductor.
 pub(super) static MAGNETISING_INDUCTOR: Entry = part(

@@ -86,19 +86,7 @@ impl<'a> Waves<'a> {
 
     /// Figures of the sum of output rows, which flows in the intervals marked.
     pub(super) fn figures(&self, rows: &[usize], flows: Flows) -> CurrentFigures {
-        let mut figures = CurrentFigures { peak: f64::NEG_INFINITY, least: f64::INFINITY, ..CurrentFigures::default() };
-        let mut square = 0.0;
-        for (segment, flows) in self.segments.iter().zip(flows) {
-            let share = segment.duration / self.period;
-            let (middle, swing) = if flows { self.line(rows, segment) } else { (0.0, 0.0) };
-            figures.average += share * middle;
-            square += share * (middle * middle + swing * swing / 12.0);
-            figures.peak = figures.peak.max(middle + swing.abs() / 2.0);
-            figures.least = figures.least.min(middle - swing.abs() / 2.0);
-            figures.ripple = figures.ripple.max(swing.abs());
-        }
-        figures.rms = square.sqrt();
-        figures
+        figures_of_lines(&self.lines(rows, flows))
     }
 
     /// Jump of an output where the switch opens, the states holding still.
@@ -107,4 +95,24 @@ impl<'a> Waves<'a> {
         let ((on, rise), (off, fall)) = (self.line(&[row], on), self.line(&[row], off));
         ((off - fall / 2.0) - (on + rise / 2.0)).abs()
     }
+}
+
+/// Figures of a current of lines: middle value, swing and duration [s] of each, a whole period in all.
+pub(super) fn figures_of_lines(lines: &[(f64, f64, f64)]) -> CurrentFigures {
+    if lines.is_empty() {
+        return CurrentFigures::default();
+    }
+    let period: f64 = lines.iter().map(|line| line.2).sum();
+    let mut figures = CurrentFigures { peak: f64::NEG_INFINITY, least: f64::INFINITY, ..CurrentFigures::default() };
+    let mut square = 0.0;
+    for (middle, swing, duration) in lines {
+        let share = duration / period;
+        figures.average += share * middle;
+        square += share * (middle * middle + swing * swing / 12.0);
+        figures.peak = figures.peak.max(middle + swing.abs() / 2.0);
+        figures.least = figures.least.min(middle - swing.abs() / 2.0);
+        figures.ripple = figures.ripple.max(swing.abs());
+    }
+    figures.rms = square.sqrt();
+    figures
 }

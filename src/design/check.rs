@@ -5,6 +5,7 @@
 //! and an entered voltage that differs is a notice.
 
 use super::document::{Design, unknown_option};
+use super::duty_limit::core_saturates;
 use super::{Events, Requirements, caution, table};
 use crate::compensator::Compensator;
 use crate::control::ControlLaw;
@@ -60,7 +61,8 @@ impl Design {
             (Some(stage), Some(law), Some(compensator), Some(requirements), Some(events))
                 if rooms.problems.is_empty() =>
             {
-                let findings = self.remarks(&compensator);
+                let mut findings = self.remarks(&compensator);
+                findings.extend(core_saturates(&stage, &law));
                 let title = self.title.clone();
                 Ok(CheckedDesign { title, stage, law, compensator, requirements, events, findings })
             }
@@ -128,6 +130,8 @@ impl Design {
         {
             let seen = topology.seen_input(greatest, self.turns_ratio());
             match topology.reach {
+                // A turns ratio that cannot be used has a problem of its own.
+                _ if seen <= 0.0 => {}
                 Reach::AboveInput if output <= seen => problems.push(below_input(topology.name, output, seen)),
                 Reach::BelowInput if output >= seen => problems.push(above_input(topology.name, output, seen)),
                 _ => {}

@@ -1,4 +1,4 @@
-//! The steps a design is tried with: load, line and reference, each with its slew, and the band that counts as settled.
+//! What a design is tried with: steps of load, line and reference, each with its slew, the band that counts as settled, start-up and overload.
 
 use crate::quantity::{Bounds, Entry, Unit, Values};
 
@@ -60,9 +60,57 @@ const SETTLING_BAND: Entry = Entry::new(
     "The output has settled once it stays within this fraction of the output voltage around its final value.",
 );
 
+const SOFT_START: Entry = Entry::new(
+    "event.soft-start",
+    "Soft start",
+    Unit::Second,
+    Bounds::NonNegative,
+    2e-3,
+    "Time in which the reference rises from zero at start-up. Empty for none: it is there at once.",
+)
+.optional();
+const PREBIAS: Entry = Entry::new(
+    "event.start-up.prebias",
+    "Output before start-up",
+    Unit::Volt,
+    Bounds::NonNegative,
+    1.0,
+    "Voltage that the output is charged to as the converter starts. Empty for none: it starts from zero.",
+)
+.optional();
+const OVERLOAD_CURRENT: Entry = Entry::new(
+    "event.overload.current",
+    "Overload current",
+    Unit::Ampere,
+    Bounds::Positive,
+    10.0,
+    "Load current while the overload lasts; a short is one far beyond what the converter can give. Empty for twice the greatest load.",
+)
+.optional();
+const OVERLOAD_TIME: Entry = Entry::new(
+    "event.overload.time",
+    "Overload, how long",
+    Unit::Second,
+    Bounds::Positive,
+    1e-3,
+    "How long the overload lasts. Empty for 1 ms.",
+)
+.optional();
+
 /// The rows of the table, in form order.
-pub(super) static ENTRIES: [Entry; 7] =
-    [LOAD_CHANGE, LOAD_SLEW, LINE_CHANGE, LINE_SLEW, REFERENCE_CHANGE, REFERENCE_SLEW, SETTLING_BAND];
+pub(super) static ENTRIES: [Entry; 11] = [
+    LOAD_CHANGE,
+    LOAD_SLEW,
+    LINE_CHANGE,
+    LINE_SLEW,
+    REFERENCE_CHANGE,
+    REFERENCE_SLEW,
+    SETTLING_BAND,
+    SOFT_START,
+    PREBIAS,
+    OVERLOAD_CURRENT,
+    OVERLOAD_TIME,
+];
 
 /// A change at a limited slew.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -91,6 +139,14 @@ pub struct Events {
     pub reference_step: Event,
     /// Half-width of the band that counts as settled, as a fraction of the output voltage.
     pub settling_band: f64,
+    /// Time in which the reference rises at start-up [s]; 0 for at once.
+    pub soft_start_s: f64,
+    /// Voltage of the output as the converter starts [V].
+    pub prebias_v: f64,
+    /// Load current of an overload [A]; none for twice the greatest load.
+    pub overload_a: Option<f64>,
+    /// How long an overload lasts [s].
+    pub overload_s: f64,
 }
 
 impl Events {
@@ -102,6 +158,10 @@ impl Events {
             line_step: Event { change: read(&LINE_CHANGE), slew: read(&LINE_SLEW) },
             reference_step: Event { change: read(&REFERENCE_CHANGE), slew: read(&REFERENCE_SLEW) },
             settling_band: read(&SETTLING_BAND),
+            soft_start_s: values.get(SOFT_START.path).unwrap_or(0.0),
+            prebias_v: values.get(PREBIAS.path).unwrap_or(0.0),
+            overload_a: values.get(OVERLOAD_CURRENT.path),
+            overload_s: read(&OVERLOAD_TIME),
         }
     }
 }
@@ -121,5 +181,10 @@ mod tests {
         assert!((events.load_step.rise_s() - 0.5e-6).abs() < 1e-18);
         assert_eq!(events.settling_band.to_bits(), 0.02_f64.to_bits());
         assert_eq!(events.line_step.change.to_bits(), LINE_CHANGE.default.to_bits());
+        assert_eq!((events.soft_start_s.to_bits(), events.overload_a), (0.0_f64.to_bits(), None));
+        values.set("event.soft-start", 3e-3).expect("finite");
+        values.set("event.overload.current", 8.0).expect("finite");
+        let events = Events::from_values(&values);
+        assert_eq!((events.soft_start_s.to_bits(), events.overload_a), (3e-3_f64.to_bits(), Some(8.0)));
     }
 }

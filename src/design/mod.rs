@@ -8,6 +8,7 @@ mod caution;
 mod check;
 mod difference;
 mod document;
+mod duty_limit;
 mod events;
 pub mod file;
 mod requirements;

@@ -5,9 +5,11 @@ mod curves;
 mod png;
 mod svg;
 mod table;
+mod waveforms;
 
 pub use curves::{write_curves, write_step};
 #[cfg(feature = "window")]
 pub use png::{PictureError, png};
 pub use svg::svg;
 pub use table::{margin_table, parts_list};
+pub use waveforms::write_waveforms;

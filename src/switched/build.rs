@@ -5,10 +5,10 @@
 //! current in every interval; the comparator's volts are those behind its divider.
 
 use super::probes::stage_probes;
-use super::system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};
+use super::system::{Comparator, Configuration, Piece, Places, Probe, Rule, Simplified, SwitchedSystem, inputs};
 use crate::circuit::StateEquations;
 use crate::control::{AverageCurrent, ControlLaw, Edge, Mode};
-use crate::converter::{OperatingPoint, Stage, StageCondition, SwitchingEquations};
+use crate::converter::{LoadKind, OperatingPoint, Stage, StageCondition, SwitchingEquations};
 use crate::finding::Finding;
 use crate::linear::StateSpace;
 use crate::quantity::Unit;
@@ -149,10 +149,10 @@ impl<'a> Law<'a> {
             Mode::Voltage(_) => (0.0, None),
             Mode::Current(_, sense) => (sense.filter_s, None),
             Mode::Average(average) => {
-                let space = average.inner.state_space().map_err(|error| {
+                let limited = average.inner.limited().map_err(|error| {
                     Finding::problem("control.inner", format!("The inner compensator cannot be solved: {error}."))
                 })?;
-                (average.filter_s, Some((average.as_ref(), space)))
+                (average.filter_s, Some((average.as_ref(), limited.space)))
             }
         };
         Ok(Law { control: law, filter_s, inner })
@@ -244,6 +244,11 @@ impl SwitchedSystem {
             probes,
             places,
             period_s,
+            bank_esr: joined.stage.bank.iter().map(|branch| branch.esr).collect(),
+            simplified: Simplified {
+                power_tangent: joined.stage.load == LoadKind::Power,
+                inductance_left_out: joined.stage.bank.iter().any(|branch| branch.esl > 0.0),
+            },
         })
     }
 

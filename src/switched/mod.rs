@@ -17,9 +17,14 @@
 //! | `response` | what an analyser reads, at any frequency |
 //! | `quantity` | plant, loop gain, impedance, line and reference response as such readings |
 //! | `stability` | multipliers, and the name of an instability |
+//! | `waveforms` | one steady period of every probe |
+//! | `stress` | peak, RMS and mean of every probe, and the output's ripple taken apart |
+//! | `facts` | what ripple at the comparator does to the loop, in numbers |
 //! | `progress` | the cancel flag and the progress of slow work |
+//! | `transient` | the closed loop in time, period by period, with all its limits |
 
 mod build;
+mod facts;
 mod flow;
 mod orbit;
 mod perturbed;
@@ -30,15 +35,25 @@ mod quantity;
 mod response;
 mod search;
 mod stability;
+mod stress;
 mod system;
 #[cfg(test)]
 mod tests;
+mod transient;
+mod waveforms;
 
 pub use build::{Closing, Driven, Joined};
+pub use facts::{RIPPLE_WARNING, RippleFacts};
 pub use orbit::{Goal, Orbit, Start};
 pub use phase::{Event, Phase};
 pub use progress::{Cancel, Progress};
 pub use quantity::{ExactLoop, Quantity, Reader, SampledLoop};
 pub use response::{Reading, Response, Scratch, UNDEFINED_WITHIN, defined};
 pub use stability::{Instability, Stability};
-pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, SwitchedSystem, inputs};
+pub use stress::{Figures, OutputRipple};
+pub use system::{Comparator, Configuration, Piece, Places, Probe, Rule, Simplified, SwitchedSystem, inputs};
+pub use transient::{
+    Amplifiers, AtRest, Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, Signal, Stopped, Trace, Waveforms,
+    simulate,
+};
+pub use waveforms::SteadyWaveforms;

@@ -16,6 +16,7 @@ pub(super) fn stage_probes(equations: &SwitchingEquations) -> (Vec<Probe>, Place
     };
     name(rows.output_voltage, "output voltage".to_owned(), Unit::Volt);
     name(rows.load_voltage, "load voltage".to_owned(), Unit::Volt);
+    name(rows.bank_voltage, "bank voltage".to_owned(), Unit::Volt);
     name(rows.switch_node, "switch-node voltage".to_owned(), Unit::Volt);
     name(rows.switch_voltage, "switch voltage".to_owned(), Unit::Volt);
     name(rows.rectifier_voltage, "rectifier voltage".to_owned(), Unit::Volt);
@@ -46,6 +47,7 @@ pub(super) fn stage_probes(equations: &SwitchingEquations) -> (Vec<Probe>, Place
     let places = Places {
         output_voltage: rows.output_voltage,
         load_voltage: rows.load_voltage,
+        bank_voltage: rows.bank_voltage,
         switch_node: rows.switch_node,
         switch_voltage: rows.switch_voltage,
         rectifier_voltage: rows.rectifier_voltage,

@@ -60,6 +60,8 @@ pub struct Places {
     pub output_voltage: usize,
     /// Voltage at the load's terminals, a magnitude [V].
     pub load_voltage: usize,
+    /// Voltage of the output bank, ahead of a second stage, a magnitude [V].
+    pub bank_voltage: usize,
     /// Voltage of the switch node against ground [V].
     pub switch_node: usize,
     /// Voltage across the controlled switch [V].
@@ -154,6 +156,19 @@ pub struct SwitchedSystem {
     pub rule: Rule,
     /// Switching period [s].
     pub period_s: f64,
+    /// Series resistance of each branch of the output bank [Ω].
+    pub bank_esr: Vec<f64>,
+    /// What this system leaves out or stands in for.
+    pub simplified: Simplified,
+}
+
+/// What a switched system leaves out or stands in for; to be said where its results are shown.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct Simplified {
+    /// A load of constant power is its tangent.
+    pub power_tangent: bool,
+    /// The bank has series inductance, which is left out: an edge into it would be an impulse.
+    pub inductance_left_out: bool,
 }
 
 impl SwitchedSystem {

@@ -21,6 +21,11 @@ struct Case {
 impl Case {
     /// A topology with every entry at its default but these.
     fn new(topology: &str, chosen: &[(&str, &str)], entries: &[(&str, f64)]) -> Self {
+        Self::try_new(topology, chosen, entries).unwrap()
+    }
+
+    /// The same; none where the stage has no operating point.
+    fn try_new(topology: &str, chosen: &[(&str, &str)], entries: &[(&str, f64)]) -> Option<Self> {
         let (mut values, mut choices) = (Values::new(), Choices::new());
         choices.set("stage.topology", topology);
         for (path, key) in chosen {
@@ -37,9 +42,9 @@ impl Case {
             load_current: stage.load_currents[1],
             output_voltage: stage.output_voltage,
         };
-        let point = stage.averaged(&condition).unwrap().operating_point;
+        let point = stage.averaged(&condition).ok()?.operating_point;
         law = law.settled(&point, stage.switching_frequency.recip());
-        Case { stage, law, compensator, point }
+        Some(Case { stage, law, compensator, point })
     }
 
     fn open(&self) -> SwitchedSystem {
@@ -51,6 +56,16 @@ impl Case {
         let space = self.compensator.state_space().unwrap();
         let driven = Driven::Loop(Closing::new(&space, self.compensator.reference));
         SwitchedSystem::at_point(&Joined { stage: &self.stage, law: &self.law, driven }, &self.point).unwrap()
+    }
+}
+
+/// Numbers drawn by a multiplicative congruence (Park & Miller, from memory): alike in every run.
+struct Draw(u64);
+
+impl Draw {
+    fn between(&mut self, low: f64, high: f64) -> f64 {
+        self.0 = self.0 * 48_271 % 2_147_483_647;
+        low * (high / low).powf(self.0 as f64 / 2_147_483_647.0)
     }
 }
 
@@ -125,6 +140,91 @@ fn every_topology_under_every_law_has_its_orbit() {
             let orbit = Orbit::find(&system, Start::of(&case.point), goal).unwrap_or_else(|f| panic!("{what}: {f:?}"));
             assert_eq!(orbit.conduction, case.point.conduction, "{what}");
             assert!((orbit.duty / case.point.duty - 1.0).abs() < 0.02, "{what}: {}", orbit.duty);
+        }
+    }
+}
+
+/// Conservation: over a steady period every capacitor's charge and every inductor's volt-seconds balance, as the integral of all
+/// rates shows beside the sum of what it is made of; on designs drawn at random, loop closed.
+#[test]
+fn charge_and_volt_seconds_balance_on_random_designs() {
+    let mut draw = Draw(7);
+    let mut found = 0;
+    for topology in registry() {
+        for k in 0..40 {
+            let mode = MODES[k % 4];
+            let output = reachable(topology) * draw.between(0.8, 1.2);
+            let entries = [
+                ("stage.output.voltage", output),
+                ("stage.load.nominal", draw.between(0.02, 3.0)),
+                ("stage.inductor.inductance", draw.between(2e-6, 40e-6)),
+                ("stage.bank.1.capacitance", draw.between(20e-6, 500e-6)),
+                ("stage.bank.1.esr", draw.between(1e-3, 20e-3)),
+                ("compensator.divider.upper", 10e3 * (output / 2.5 - 1.0)),
+                ("compensator.divider.lower", 10e3),
+                ("compensator.reference", 2.5),
+                ("compensator.r2", draw.between(500.0, 5e3)),
+                ("control.ramp.amplitude", draw.between(1.0, 3.0)),
+            ];
+            let rectifier = ["diode", "synchronous", "emulated"][k % 3];
+            let chosen = [("control.mode", mode), ("stage.rectifier", rectifier), ("compensator.type", "2")];
+            let Some(case) = Case::try_new(topology.key, &chosen, &entries) else { continue };
+            let Ok(orbit) = Orbit::find(&case.system(), Start::of(&case.point), Goal::AsDriven) else { continue };
+            found += 1;
+            let n = orbit.system.order();
+            let (mut net, mut gross) = (DVector::zeros(n), DVector::zeros(n));
+            for (phase, start) in orbit.phases.iter().zip(&orbit.starts) {
+                let piece = orbit.system.piece(phase.configuration);
+                let integral = orbit.integral(phase.length_s, piece, start).unwrap();
+                let inputs = &orbit.inputs * phase.length_s;
+                net += &piece.a * &integral + &piece.b * &inputs;
+                gross += piece.a.abs() * integral.abs() + piece.b.abs() * inputs.abs();
+            }
+            for (state, name) in orbit.system.state_names.iter().enumerate() {
+                let off = net[state].abs() / gross[state];
+                assert!(off < 1e-9, "{} {mode}: {name} is off by {off:e}", topology.key);
+            }
+            let figures = orbit.figures().unwrap();
+            for row in &orbit.system.places.branch_currents {
+                let current = figures[*row];
+                assert!(current.mean.abs() < 1e-9 * current.peak(), "{} {mode}: {current:?}", topology.key);
+            }
+        }
+    }
+    assert!(found >= 60, "only {found} designs have an orbit");
+}
+
+/// Two routes: a linear compensator turns an injection at its input into one at its output, so the loop gain is the same read at either.
+#[test]
+fn the_loop_gain_is_the_same_at_either_end_of_the_compensator() {
+    for topology in registry() {
+        for mode in MODES {
+            let output = reachable(topology);
+            let entries = [
+                ("stage.output.voltage", output),
+                ("compensator.divider.upper", 10e3 * (output / 2.5 - 1.0)),
+                ("compensator.divider.lower", 10e3),
+                ("compensator.reference", 2.5),
+                ("compensator.r2", 1e3),
+            ];
+            let chosen = [("control.mode", mode), ("compensator.type", "2")];
+            let Some(case) = Case::try_new(topology.key, &chosen, &entries) else { continue };
+            let Ok(orbit) = Orbit::find(&case.system(), Start::of(&case.point), Goal::AsDriven) else { continue };
+            let response = Response::new(orbit).unwrap();
+            let fs = response.orbit().system.period_s.recip();
+            let mut behind = Reader::new(&response, Quantity::LoopGain).unwrap();
+            let ahead = response.reading(inputs::INJECTED, &[response.orbit().system.places.output_voltage]).unwrap();
+            for share in [1e-3, 0.03, 0.31, 0.77, 1.7] {
+                let returned = ahead.values(share * fs).unwrap()[0];
+                let (first, second) = (-returned / (1.0 + returned), behind.at(share * fs).unwrap());
+                let error = (first - second).norm() / second.norm();
+                assert!(error < 1e-8, "{} {mode} at {share} fs: {first} and {second}", topology.key);
+                // Definition: Lf/(1 + Ls − Lf).
+                if let Some(both) = behind.sampled_loop(share * fs) {
+                    let error = (both.read() - second).norm() / second.norm();
+                    assert!(error < 1e-8, "{} {mode} at {share} fs: {both:?}", topology.key);
+                }
+            }
         }
     }
 }

@@ -1,5 +1,6 @@
 //! The arguments of the command line, read into typed requests.
 
+use crate::analysis::TransientEvent;
 use crate::design::printable;
 use crate::quantity::{Bounds, Unit};
 use clap::error::ErrorKind;
@@ -15,6 +16,8 @@ pub enum Command {
     Open(Opening),
     /// Check designs and report.
     Check(CheckRequest),
+    /// Follow a design through an event, period by period.
+    Transient(TransientCommand),
 }
 
 /// How the window is opened.
@@ -42,6 +45,29 @@ pub struct CheckRequest {
     /// Whether the load is swept too.
     pub load_sweep: bool,
     /// Entries set before the check, by path, in the order given.
+    pub settings: Vec<(String, String)>,
+}
+
+/// What `polewright transient` asks for.
+#[derive(Clone, Debug, PartialEq)]
+pub struct TransientCommand {
+    /// The design file.
+    pub file: PathBuf,
+    /// The event.
+    pub event: TransientEvent,
+    /// Report as JSON.
+    pub json: bool,
+    /// File that takes the waveforms as comma-separated values.
+    pub csv: Option<PathBuf>,
+    /// Rows of that file.
+    pub rows: usize,
+    /// Time from the event on [s]; none leaves it to the event.
+    pub span_s: Option<f64>,
+    /// Input voltage in place of the nominal one [V].
+    pub input_voltage: Option<f64>,
+    /// Load current in place of the nominal one [A].
+    pub load_current: Option<f64>,
+    /// Entries set before the run, by path, in the order given.
     pub settings: Vec<(String, String)>,
 }
 
@@ -75,6 +101,10 @@ enum Task {
     /// Exit code: 0 when every loop is stable and every requirement is met, 1 when one is not, 2 when an input cannot be used; the
     /// worst of all files.
     Check(CheckArguments),
+    /// Follow the switched closed loop of a design through an event, period by period.
+    ///
+    /// Exit code: 0 when the run came to its end, 1 when it stopped before, 2 when an input cannot be used.
+    Transient(TransientArguments),
 }
 
 #[derive(Args)]
@@ -102,6 +132,36 @@ struct CheckArguments {
     settings: Vec<(String, String)>,
 }
 
+#[derive(Args)]
+struct TransientArguments {
+    /// Design file.
+    file: PathBuf,
+    /// The event: start-up, load-step, line-step, reference-step or overload.
+    #[arg(long, value_parser = event)]
+    event: TransientEvent,
+    /// Report as JSON: one object.
+    #[arg(long)]
+    json: bool,
+    /// Write the waveforms to this file: comma-separated values, least and greatest of every signal in each row's time.
+    #[arg(long, value_name = "OUT")]
+    csv: Option<PathBuf>,
+    /// Rows of the waveforms.
+    #[arg(long, value_name = "COUNT", default_value_t = 2000, value_parser = clap::value_parser!(u32).range(10..=1_000_000))]
+    rows: u32,
+    /// How long the event is followed, such as 5m for 5 ms.
+    #[arg(long, value_name = "TIME", value_parser = time, allow_hyphen_values = true)]
+    span: Option<f64>,
+    /// Input voltage in place of the nominal one, such as 11.5.
+    #[arg(long, value_name = "VOLTAGE", value_parser = voltage, allow_hyphen_values = true)]
+    input_voltage: Option<f64>,
+    /// Load current in place of the nominal one, such as 800m.
+    #[arg(long, value_name = "CURRENT", value_parser = current, allow_hyphen_values = true)]
+    load_current: Option<f64>,
+    /// Set an entry or a choice before the run, such as event.soft-start=3m; may be repeated.
+    #[arg(long = "set", value_name = "PATH=VALUE", value_parser = setting)]
+    settings: Vec<(String, String)>,
+}
+
 /// Reads the arguments, the program's own name first.
 ///
 /// # Errors
@@ -111,6 +171,7 @@ pub fn parse(arguments: impl IntoIterator<Item = OsString>) -> Result<Command, U
     match arguments.command {
         None => Ok(Command::Open(Opening { file: arguments.file, measure: arguments.measure })),
         Some(Task::Check(check)) => Ok(Command::Check(check.into())),
+        Some(Task::Transient(transient)) => Ok(Command::Transient(transient.into())),
     }
 }
 
@@ -124,6 +185,26 @@ impl From<CheckArguments> for CheckRequest {
         let CheckArguments { files, json, at, input_voltage, load_current, load_sweep, settings } = arguments;
         Self { files, json, at_hz: at, input_voltage, load_current, load_sweep, settings }
     }
+}
+
+impl From<TransientArguments> for TransientCommand {
+    fn from(arguments: TransientArguments) -> Self {
+        let TransientArguments { file, event, json, csv, rows, span, input_voltage, load_current, settings } =
+            arguments;
+        let rows = usize::try_from(rows).unwrap_or(usize::MAX);
+        Self { file, event, json, csv, rows, span_s: span, input_voltage, load_current, settings }
+    }
+}
+
+fn event(text: &str) -> Result<TransientEvent, String> {
+    TransientEvent::from_key(text).ok_or_else(|| {
+        let keys: Vec<&str> = TransientEvent::ALL.iter().map(|event| event.key()).collect();
+        format!("choose one of {}", keys.join(", "))
+    })
+}
+
+fn time(text: &str) -> Result<f64, String> {
+    positive(text, Unit::Second)
 }
 
 fn positive(text: &str, unit: Unit) -> Result<f64, String> {
@@ -185,6 +266,16 @@ mod tests {
     }
 
     #[test]
+    fn a_transient_is_read() {
+        let line = "polewright transient a.ron --event overload --csv out.csv --span 5m --load-current 2 --set event.overload.time=2m";
+        let Ok(Command::Transient(request)) = read(line) else { panic!("a transient") };
+        assert_eq!((request.event, request.rows), (TransientEvent::Overload, 2000));
+        assert_eq!((request.span_s, request.load_current), (Some(5e-3), Some(2.0)));
+        assert_eq!(request.csv, Some("out.csv".into()));
+        assert_eq!(request.settings, [("event.overload.time".into(), "2m".into())]);
+    }
+
+    #[test]
     fn wrong_arguments_are_told() {
         for (line, said) in [
             ("polewright check", "required"),
@@ -195,6 +286,11 @@ mod tests {
             ("polewright check a.ron --at \u{1b}[31m", "\u{FFFD}[31m"),
             ("polewright check a.ron --set stage.topology", "PATH=VALUE"),
             ("polewright check a.ron --jsno", "--json"),
+            ("polewright transient a.ron", "--event"),
+            ("polewright transient a.ron --event load", "load-step"),
+            ("polewright transient a.ron --event load-step --span -1m", "above 0 s"),
+            ("polewright transient a.ron --event load-step --rows 0", "10.."),
+            ("polewright transient --event load-step", "required"),
             ("polewright --measure 0", "above 0 s"),
             ("polewright --measure 2h", "not"),
             ("polewright --measure 4000", "the most that is taken"),

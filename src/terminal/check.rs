@@ -118,7 +118,7 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
     {
         findings.insert(0, finding.clone());
     }
-    findings.extend(outside(request, &checked.stage));
+    findings.extend(outside((request.input_voltage, request.load_current), &checked.stage));
     let outcome = judge(&analysis);
     // A compensator that cannot be solved has been told by the analysis.
     let load_sweep = request.load_sweep.then(|| load_sweep(&checked, SWEEP_POINTS).ok()).flatten();
@@ -126,27 +126,32 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
 }
 
 /// Sets entries by path; every one that is wrong is told.
-fn set(design: &mut Design, settings: &[(String, String)]) -> Vec<Finding> {
+pub(super) fn set(design: &mut Design, settings: &[(String, String)]) -> Vec<Finding> {
     settings.iter().filter_map(|(path, value)| design.set_from_text(path, value).err()).collect()
 }
 
-fn asked(request: &CheckRequest, stage: &Stage) -> Request {
-    let shown = match (request.input_voltage, request.load_current) {
+/// The condition asked for: the nominal one where nothing else is.
+pub(super) fn shown(asked: (Option<f64>, Option<f64>), stage: &Stage) -> Shown {
+    match asked {
         (None, None) => Shown::Levels(Level::Nominal, Level::Nominal),
         (input, load) => Shown::At {
             input_voltage: input.unwrap_or(stage.input_voltages[Level::Nominal as usize]),
             load_current: load.unwrap_or(stage.load_currents[Level::Nominal as usize]),
         },
-    };
+    }
+}
+
+fn asked(request: &CheckRequest, stage: &Stage) -> Request {
+    let shown = shown((request.input_voltage, request.load_current), stage);
     let frequencies_hz = request.at_hz.clone().unwrap_or_else(|| one_two_five(stage.switching_frequency / 2.0));
     Request { shown, frequencies_hz, band_frequencies_hz: Vec::new(), step_points: STEP_POINTS }
 }
 
 /// A note for each value asked for that lies outside what the design is entered for.
-fn outside(request: &CheckRequest, stage: &Stage) -> Vec<Finding> {
+pub(super) fn outside((input_voltage, load_current): (Option<f64>, Option<f64>), stage: &Stage) -> Vec<Finding> {
     let asked = [
-        ("--input-voltage", "input voltage", request.input_voltage, stage.input_voltages, Unit::Volt),
-        ("--load-current", "load current", request.load_current, stage.load_currents, Unit::Ampere),
+        ("--input-voltage", "input voltage", input_voltage, stage.input_voltages, Unit::Volt),
+        ("--load-current", "load current", load_current, stage.load_currents, Unit::Ampere),
     ];
     let note = |(option, name, value, [least, _, greatest], unit): (&str, &str, Option<f64>, [f64; 3], Unit)| {
         let value = value.filter(|value| !(least..=greatest).contains(value))?;

@@ -190,7 +190,7 @@ struct Requirement<'a> {
 }
 
 #[derive(Serialize)]
-struct FindingRow<'a> {
+pub(super) struct FindingRow<'a> {
     severity: &'static str,
     #[serde(rename = "where")]
     place: &'a str,
@@ -207,7 +207,7 @@ pub(super) fn write(reports: &[Report], out: &mut impl Write) -> io::Result<()> 
 }
 
 /// The control characters that JSON allows as they are, escaped as well: some terminals obey them. They can only stand in texts.
-fn escaped(json: &str) -> String {
+pub(super) fn escaped(json: &str) -> String {
     let mut safe = String::with_capacity(json.len());
     for c in json.chars() {
         if ('\u{7F}'..='\u{9F}').contains(&c) {
@@ -422,7 +422,7 @@ fn requirement(verdict: &RequirementVerdict) -> Requirement<'_> {
     }
 }
 
-fn finding_row(finding: &Finding) -> FindingRow<'_> {
+pub(super) fn finding_row(finding: &Finding) -> FindingRow<'_> {
     FindingRow {
         severity: finding.severity.word(),
         place: &finding.place,

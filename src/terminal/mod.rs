@@ -1,10 +1,10 @@
 //! The command line: the same results as text and JSON.
 //!
 //! `polewright [FILE]` opens the window on a file, or on the built-in design. `polewright check FILE...` prints what the window would
-//! show. Exit code: 0 when every loop is stable and every requirement met in all files, 1 when one is not, 2 when an input
+//! show, `polewright transient FILE --event ...` follows the switched loop through an event. Exit code of a check: 0 when every loop is stable and every requirement met in all files, 1 when one is not, 2 when an input
 //! cannot be used (a file, an entry, an argument, or a condition asked for that has no operating point); the worst of all files.
 //!
-//! # The JSON report (`--json`)
+//! # The JSON report of a check (`--json`)
 //!
 //! Always an array, one object per file in the order given, an unusable file too. SI units, frequencies in hertz, phases in
 //! degrees, fractions as ratios. What is undefined or infinite is `null`; a list that cannot be computed is empty. Fields may
@@ -36,6 +36,19 @@
 //! | `load_sweep.points` | `[{load_current, duty, conduction, crossover_hz, phase_margin_deg, gain_margin_db, stable, problem}]`, rising; a point stands on either side of the boundary |
 //! | `requirements` | `[{name, limit, value, met, condition, reason}]`, named by path |
 //! | `findings` | `[{severity, where, message, hint}]`; severity is `note`, `notice` or `problem`, `where` a path, a place in the file or an option of the command line, empty for the whole design |
+//!
+//! # The JSON report of a transient
+//!
+//! One object. Voltages [V] are the load's, means over a period unless the ripple is said to be in them.
+//!
+//! | field | meaning |
+//! |---|---|
+//! | `file`, `status`, `title`, `condition`, `findings` | as in a check; `status` is `done`, `stopped` or `unusable` |
+//! | `event` | `start-up`, `load-step`, `line-step`, `reference-step` or `overload` |
+//! | `from_s`, `to_s` | what was followed; the event begins at 0 |
+//! | `figures` | `{before_v, after_v, deviation_v, deviation_at_s, rebound_v, settling_s, least_v, greatest_v, peak_inductor_a, peak_switch_a, periods, rested_periods, skipped_periods, limits}`; deviation is against the voltage before, at start-up and for a reference step beyond the final one; `least_v` and `greatest_v` hold the ripple; settling counts from the event, for an overload from its end |
+//! | `figures.limits` | `[{name, periods}]`: limits that acted |
+//! | `prediction` | of the small-signal model, `{deviation_v, deviation_at_s, settling_s}`; `null` for start-up, overload, and a linear loop that is not stable |
 
 mod arguments;
 mod check;
@@ -43,6 +56,8 @@ mod input_filter;
 mod json;
 mod sweep;
 mod text;
+mod transient;
 
-pub use arguments::{CheckRequest, Command, Opening, Usage, parse};
+pub use arguments::{CheckRequest, Command, Opening, TransientCommand, Usage, parse};
 pub use check::{Outcome, check};
+pub use transient::transient;

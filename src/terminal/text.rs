@@ -71,7 +71,7 @@ pub(super) fn padded(text: &str, width: usize) -> String {
     format!("{text}{}", " ".repeat(missing))
 }
 
-fn row(text: &mut String, name: &str, value: &str) {
+pub(super) fn row(text: &mut String, name: &str, value: &str) {
     let _ = writeln!(text, "  {}{value}", padded(name, NAMES));
 }
 
@@ -96,7 +96,7 @@ fn operating_point(text: &mut String, detail: &Detail, analysis: &Analysis) {
     }
     row(text, "Conduction", &conduction(detail, analysis));
     for figure in &point.further {
-        row(text, figure.name, &figure.text(6));
+        row(text, figure.name, &figure.text(4));
     }
     for inductor in &point.inductors {
         let current = &inductor.current;
@@ -265,7 +265,7 @@ fn requirements(text: &mut String, verdicts: &[RequirementVerdict]) {
     text.push('\n');
 }
 
-fn findings(text: &mut String, findings: &[Finding]) {
+pub(super) fn findings(text: &mut String, findings: &[Finding]) {
     if findings.is_empty() {
         return;
     }

@@ -32,6 +32,8 @@ fn design_of(topology: &Topology, mode: &str, rectifier: &str, over_boundary: f6
     let output = match topology.reach {
         Reach::BelowInput => 5.0,
         Reach::AboveInput => 24.0,
+        // Away from the input where a stage changes its region.
+        Reach::Any if topology.switching.len() > 1 => 7.0,
         Reach::Any => 12.0,
     };
     let values = [

@@ -18,6 +18,14 @@ fn brief(reach: Reach, topology: &str, random: &mut Random) -> Brief {
         Reach::AboveInput => greatest * random.between(1.1, 4.0),
         Reach::Any => random.between(0.3, 1.5) * least,
     };
+    // A stage of two regions is asked for what one of them holds at each of the inputs that are analysed.
+    let regions = converter_regions(topology);
+    let inputs = [least, f64::midpoint(least, greatest), greatest];
+    let output = if regions > 1 && inputs.iter().any(|input| (output / input - 1.0).abs() < 0.2) {
+        output.min(0.75 * least)
+    } else {
+        output
+    };
     let full = random.log(2.0, 60.0) / output;
     let step = full * random.between(0.25, 0.6);
     for (path, value) in [
@@ -34,6 +42,10 @@ fn brief(reach: Reach, topology: &str, random: &mut Random) -> Brief {
         brief.values.set(path, value).expect("finite");
     }
     brief
+}
+
+fn converter_regions(topology: &str) -> usize {
+    registry().iter().find(|known| known.key == topology).map_or(1, |known| known.switching.len())
 }
 
 #[test]

@@ -23,7 +23,10 @@ pub(crate) fn of_topology(key: &str, reach: Reach) -> Design {
     let mut design = Design::default();
     design.set_from_text("stage.topology", key).expect("registered");
     let input = design.values.get("stage.input.greatest").expect("a default");
+    // Away from the input where a stage changes its region.
+    let regions = converter::find(key).map_or(0, |topology| topology.switching.len());
     let output = match reach {
+        Reach::Any if regions > 1 => 1.4 * input,
         Reach::BelowInput => 0.3 * input,
         Reach::AboveInput => 1.6 * input,
         Reach::Any => input,

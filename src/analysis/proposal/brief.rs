@@ -68,9 +68,12 @@ impl Brief {
 
     /// An output voltage that suits a topology at the usual input [V].
     pub fn usual_output(topology: &str) -> Option<f64> {
-        Some(match converter::find(topology)?.reach {
+        let topology = converter::find(topology)?;
+        Some(match topology.reach {
             Reach::BelowInput => 5.0,
             Reach::AboveInput => 24.0,
+            // Well above the input where a stage would change its region.
+            Reach::Any if topology.switching.len() > 1 => 24.0,
             Reach::Any => 12.0,
         })
     }

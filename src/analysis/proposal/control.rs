@@ -1,7 +1,6 @@
 //! What stands around the stage: rectifier, modulator, divider, amplifier, requirements.
 
 use super::assumption::{Draft, text};
-use super::brief::Brief;
 use super::stage::aim;
 use crate::compensator::{Series, round_ratio};
 use crate::finding::Finding;
@@ -44,8 +43,9 @@ pub(super) fn before_the_stage(draft: &mut Draft) {
 }
 
 /// Modulator, amplifier and requirements.
-pub(super) fn after_the_stage(draft: &mut Draft, brief: &Brief) -> Result<(), Vec<Finding>> {
-    let switching = brief.get("stage.switching-frequency");
+pub(super) fn after_the_stage(draft: &mut Draft) -> Result<(), Vec<Finding>> {
+    // That of the pulses, in a double-ended stage twice that of a switch.
+    let switching = draft.checked()?.stage.switching_frequency;
     draft.assume("control.ramp.amplitude", 1.2, "a usual ramp; take the controller's", true);
     draft.assume("control.ramp.valley", 0.5, "keeps the control voltage off the amplifier's lower end", true);
     let (delay, share) = DELAY;
@@ -66,6 +66,10 @@ pub(super) fn after_the_stage(draft: &mut Draft, brief: &Brief) -> Result<(), Ve
         true,
     );
     draft.assume("compensator.op-amp.output-greatest", 4.5, "a 5 V supply less its headroom", true);
+    // The circuit's own limit on the duty ratio, a little below so that rounding does not leave it above.
+    if let Some(limit) = draft.checked()?.stage.duty_limit {
+        draft.assume("control.duty.greatest", (limit.greatest * 100.0).floor() / 100.0, limit.why, false);
+    }
     requirements(draft, switching);
     Ok(())
 }

@@ -30,6 +30,6 @@ pub fn propose(brief: &Brief) -> Result<Proposal, Vec<Finding>> {
     let mut draft = Draft::new(brief)?;
     control::before_the_stage(&mut draft);
     stage::size(&mut draft, brief)?;
-    control::after_the_stage(&mut draft, brief)?;
+    control::after_the_stage(&mut draft)?;
     closing::close(draft, brief)
 }

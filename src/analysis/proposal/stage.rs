@@ -105,11 +105,6 @@ fn greatest(points: &[OperatingPoint], of: impl Fn(&OperatingPoint) -> f64) -> f
     points.iter().map(of).fold(0.0, f64::max)
 }
 
-/// Greatest of a figure over the inductors of an operating point.
-fn of_inductors(point: &OperatingPoint, of: impl Fn(&CurrentFigures) -> f64) -> f64 {
-    point.inductors.iter().map(|inductor| of(&inductor.current)).fold(0.0, f64::max)
-}
-
 fn inductor(draft: &mut Draft) -> Result<(), Vec<Finding>> {
     let points = full_load(&draft.checked()?)?;
     let first = |of: fn(&CurrentFigures) -> f64| {
@@ -239,9 +234,12 @@ fn esr(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
 /// The input capacitor: a charge of a quarter of the inductor's current over a period is the most a switch asks of it, D·(1 − D)
 /// being a quarter at most.
 fn input(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
-    let amperes = greatest(points, |point| of_inductors(point, |current| current.average.abs()));
+    // What the switch carries while it conducts.
+    let amperes = greatest(points, |point| (point.sense_ratio * point.switched_current.average).abs());
     let volts = INPUT_RIPPLE * brief.get("stage.input.least");
-    let farads = rounded_up(amperes / (4.0 * brief.get("stage.switching-frequency") * volts));
+    let frequency =
+        draft.checked().map_or(brief.get("stage.switching-frequency"), |design| design.stage.switching_frequency);
+    let farads = rounded_up(amperes / (4.0 * frequency * volts));
     draft.choose("stage.input-capacitor", "fitted", "a switched input needs one", true);
     draft.assume(
         "stage.input-capacitor.capacitance",

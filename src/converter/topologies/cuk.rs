@@ -31,6 +31,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
         two::upper_resonance(RESONANCES_HIGH, |t| Some(two::upper_hz(t, second_coefficient(t)))),
     ],
     resting: RestingForms {
+        conversion: |t| t.conversion,
         inductance: two::parallel,
         duty: |m, k| m * k.sqrt(),
         landmarks: &[Form::low_pole("1 / (π·R·C)", |t| Some(1.0 / (PI * t.load_resistance * t.capacitance)))],

@@ -35,6 +35,7 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
         ),
     ],
     resting: RestingForms {
+        conversion: |t| t.conversion,
         inductance: two::parallel,
         duty: |m, k| m * k.sqrt(),
         landmarks: &[Form::low_pole("1 / (π·R·C)", |t| Some(1.0 / (PI * t.load_resistance * t.capacitance)))],

@@ -1,0 +1,174 @@
+//! The transient of a design: starts it where it runs steadily, or rests, and follows it through the event.
+
+use super::super::analyse::loop_at;
+use super::super::loop_model::Shared;
+use super::super::result::{Condition, Step};
+use super::super::steps::steps;
+use super::event::{TransientEvent, TransientRequest};
+use super::figures::{Asked, figures};
+use super::model::Model;
+use super::result::Transient;
+use super::scenario::{Span, overload, scenario, span};
+use crate::converter::LoadKind;
+use crate::design::CheckedDesign;
+use crate::finding::Finding;
+use crate::quantity::{Unit, print, print_digits};
+use crate::switched::{Cancel, Configuration, POWER_FALLS, Progress, Run, SINK_FALLS, Stopped, Waveforms, simulate};
+use nalgebra::DVector;
+
+/// Points of the small-signal prediction.
+const PREDICTED: usize = 1000;
+
+/// Follows a design's switched closed loop through an event. `stream` is shown what there is so far some thirty times on the way.
+///
+/// # Errors
+/// A finding where the condition has no operating point, or a model cannot be solved.
+pub fn transient(
+    design: &CheckedDesign,
+    condition: &Condition,
+    request: &TransientRequest,
+    cancel: &Cancel,
+    progress: &Progress,
+    stream: &mut dyn FnMut(&Waveforms),
+) -> Result<Transient, Finding> {
+    let shared = Shared::new(design)?;
+    let model = Model::new(design, &shared, condition)?;
+    let (prediction, step_s) = prediction(design, &shared, condition, request)?;
+    let span = span(design, request, step_s);
+    let at = (condition.input_voltage, condition.load_current);
+    let start = match request.event {
+        TransientEvent::StartUp => model.system.at_rest(&model.at_rest(design.events.prebias_v)),
+        _ => steady(design, &model, request, at, cancel),
+    };
+    let scenario = scenario(design, &model, request, at, span, start);
+    let run = simulate(&model.system, &scenario, cancel, progress, stream);
+    let (overload_end, _) = overload(design, condition.load_current);
+    let asked = Asked {
+        event: request.event,
+        from_s: scenario.from_s,
+        period_s: model.system.period_s,
+        band_v: design.events.settling_band * design.stage.output_voltage,
+        at_first_v: design.events.prebias_v,
+        over_s: if request.event == TransientEvent::Overload { overload_end } else { 0.0 },
+    };
+    let figures = figures(&model, &run, &asked);
+    Ok(Transient {
+        condition: condition.clone(),
+        event: request.event,
+        notices: notices(design, request, span, &run),
+        waveforms: run.waveforms,
+        figures,
+        prediction,
+        cancelled: run.cancelled,
+    })
+}
+
+/// The small-signal prediction of the same step, and how long such a plot runs [s].
+fn prediction(
+    design: &CheckedDesign,
+    shared: &Shared,
+    condition: &Condition,
+    request: &TransientRequest,
+) -> Result<(Option<Step>, Option<f64>), Finding> {
+    let (model, result, modes) = loop_at(design, shared, condition)?;
+    let Some(modes) = modes else { return Ok((None, None)) };
+    let at_rest = (model.averaged.operating_point.load_voltage, model.controlled.control_voltage);
+    let crossover = result.margins.headline_crossover().map(|c| c.frequency_hz);
+    let Ok(all) = steps(design, &modes, crossover, at_rest, PREDICTED) else { return Ok((None, None)) };
+    let length = |step: &Option<Step>| step.as_ref().and_then(|step| step.times_s.last().copied());
+    let longest = [&all.load, &all.line, &all.reference].into_iter().filter_map(length).fold(0.0, f64::max);
+    let predicted = match request.event {
+        TransientEvent::LoadStep => &all.load,
+        TransientEvent::LineStep => &all.line,
+        TransientEvent::ReferenceStep => &all.reference,
+        TransientEvent::StartUp | TransientEvent::Overload => &None,
+    };
+    let own = length(predicted).or(length(&all.load));
+    Ok((predicted.clone(), own.or((longest > 0.0).then_some(longest))))
+}
+
+/// What is to be known about a result.
+fn notices(design: &CheckedDesign, request: &TransientRequest, span: Span, run: &Run) -> Vec<Finding> {
+    let mut notices = Vec::new();
+    let percent = |share: f64| print_digits(share, Unit::Fraction, 2);
+    match &run.stopped {
+        Some(Stopped::Unsolvable) => notices.push(
+            Finding::problem("", "The run stopped: its numbers left their range.")
+                .with_hint("values many decades apart, or a loop that grows without limit"),
+        ),
+        Some(Stopped::Chattering { at_s }) => notices.push(
+            Finding::problem(
+                "",
+                format!("The run stopped at {}: limits change sides without end there.", print(*at_s, Unit::Second)),
+            )
+            .with_hint("a limit acts on another that acts on it"),
+        ),
+        None => {}
+    }
+    if span.cut {
+        notices.push(Finding::notice("", format!("The run was cut at {}.", print(span.to_s, Unit::Second))));
+    }
+    let load = match design.stage.load {
+        LoadKind::Power => Some(format!(
+            "The constant-power load is taken by its tangent over each 32nd of a period, and as a resistor below {} of its voltage.",
+            percent(POWER_FALLS)
+        )),
+        LoadKind::Current => Some(format!(
+            "The constant-current load falls in proportion to the voltage below {} of it.",
+            percent(SINK_FALLS)
+        )),
+        LoadKind::Resistor => None,
+    };
+    notices.extend(load.map(|text| Finding::note("stage.load", text)));
+    if design.stage.bank.iter().any(|branch| branch.esl > 0.0) {
+        notices.push(Finding::note(
+            "stage.bank",
+            "The bank's series inductance is left out: an edge into it would be an impulse.",
+        ));
+    }
+    if request.event == TransientEvent::StartUp && design.law.current_limit.is_none() {
+        notices.push(
+            Finding::note(
+                "control.current-limit",
+                "No current limit is entered: at start-up the control voltage alone limits the current.",
+            )
+            .with_hint("enter the sensed current at which the pulse ends"),
+        );
+    }
+    notices
+}
+
+/// Stretches of so many periods are run to come to a steady state where no orbit is found, and so many of them at most.
+const STRETCH: usize = 400;
+const STRETCHES: usize = 50;
+/// A state has come to rest when a period changes it by less than this share of the greatest of its kind.
+const AT_REST: f64 = 1e-10;
+
+/// State and configuration at a clock of the steady period.
+fn steady(
+    design: &CheckedDesign,
+    model: &Model,
+    request: &TransientRequest,
+    at: (f64, f64),
+    cancel: &Cancel,
+) -> (DVector<f64>, Configuration) {
+    let period = model.system.period_s;
+    let mut start = model.system.at_rest(&model.at_rest(model.load_voltage));
+    let still = TransientRequest { columns: 1, ..*request };
+    let follow = |start, periods: usize| {
+        let span = Span { to_s: 0.0, ahead_s: periods as f64 * period, cut: false };
+        let scenario = scenario(design, model, &still, at, span, start);
+        simulate(&model.system, &scenario, cancel, &Progress::new(), &mut |_| {}).end
+    };
+    for _ in 0..STRETCHES {
+        start = follow(start, STRETCH);
+        let (next, configuration) = follow(start.clone(), 1);
+        let moved = (&next - &start.0).amax();
+        let there = moved <= AT_REST * start.0.amax();
+        start = (next, configuration);
+        if there || cancel.is_cancelled() {
+            break;
+        }
+    }
+    start
+}
