@@ -4,6 +4,7 @@ use super::condition::index_of;
 use super::control_figures::control_figures;
 use super::crossover_window::window;
 use super::curves::curves;
+use super::digital::{digital_detail, highest_hz};
 use super::filter_readouts::filter_readouts;
 use super::filter_remarks::DAMPED_BELOW;
 use super::filter_result::{InputFilterDetail, InputFilterResult};
@@ -12,6 +13,7 @@ use super::isolated::{IsolatedFigures, isolated_figures};
 use super::isolated_readouts::isolated_readouts;
 use super::ledger::ledger;
 use super::loop_model::{LoopModel, Shared, model_finding};
+use super::motion::Motion;
 use super::readouts::readouts;
 use super::remarks::remarks;
 use super::requirement::verdict;
@@ -22,7 +24,7 @@ use super::steps::{load_figures, steps};
 use crate::converter::{Conduction, DutyLimit, StageCondition};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
-use crate::linear::{FrequencyResponse, Modes, Verdict, Zpk, margins};
+use crate::linear::{FrequencyResponse, Verdict, margins};
 use crate::quantity::{Unit, print_digits};
 use std::sync::atomic::{AtomicUsize, Ordering};
 
@@ -66,6 +68,18 @@ impl Request {
     }
 }
 
+impl Request {
+    /// The same without frequencies above a limit [Hz].
+    fn up_to(&self, highest_hz: f64) -> Self {
+        let within = |list: &[f64]| list.iter().copied().filter(|f| *f <= highest_hz).collect();
+        Request {
+            frequencies_hz: within(&self.frequencies_hz),
+            band_frequencies_hz: within(&self.band_frequencies_hz),
+            ..self.clone()
+        }
+    }
+}
+
 /// Frequencies evenly spaced on a logarithmic axis, both ends included [Hz].
 pub fn logarithmic(from_hz: f64, to_hz: f64, points: usize) -> Vec<f64> {
     let last = points.saturating_sub(1).max(1) as f64;
@@ -76,10 +90,14 @@ pub fn logarithmic(from_hz: f64, to_hz: f64, points: usize) -> Vec<f64> {
 /// Margins are searched from this share of the switching frequency …
 pub(super) const SEARCH_FROM: f64 = 1e-6;
 /// … to this one.
-const SEARCH_TO: f64 = 0.5;
+pub(super) const SEARCH_TO: f64 = 0.5;
+
+/// A gain that is none [dB]: zeros at half the sampling frequency leave nothing there.
+const NO_GAIN_DB: f64 = -200.0;
 
 /// Analyses a checked design.
 pub fn analyse(design: &CheckedDesign, request: &Request) -> Analysis {
+    let request = &request.up_to(highest_hz(design));
     let shared = Shared::new(design);
     let (condition, place) = match request.shown {
         Shown::Levels(input, load) => (Condition::at_levels(&design.stage, input, load), Some(index_of(input, load))),
@@ -191,7 +209,7 @@ fn conclude(
 struct Worked {
     model: LoopModel,
     /// Modes of the closed loop, when it is stable.
-    modes: Option<Modes>,
+    modes: Option<Motion>,
     loop_gain: LoopResult,
     control: ControlFigures,
     load_step: Option<super::result::StepFigures>,
@@ -240,7 +258,7 @@ pub(super) fn loop_at(
     design: &CheckedDesign,
     shared: &Shared,
     condition: &Condition,
-) -> Result<(LoopModel, LoopResult, Option<Modes>), Finding> {
+) -> Result<(LoopModel, LoopResult, Option<Motion>), Finding> {
     let stage_condition = condition.of_stage(&design.stage);
     let model = LoopModel::new(&design.stage, shared, &stage_condition)?;
     refuse_out_of_limits(design, &model, &stage_condition)?;
@@ -249,14 +267,20 @@ pub(super) fn loop_at(
     // Far above the band the loop gain dies out and |1 + T| tends to one, so its least value is no more than that.
     margins.modulus_margin = margins.modulus_margin.min(1.0);
     margins.sensitivity_peak = margins.sensitivity_peak.max(1.0);
-    let (verdict, modes) = model.verdict(shared, &margins).map_err(|e| model_finding(&e))?;
+    let judged = model.verdict(shared, &margins).map_err(|e| model_finding(&e))?;
     let loop_gain = LoopResult {
-        verdict,
+        verdict: judged.verdict,
+        sampled: judged.sampled,
         margins,
-        gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0),
-        gain_at_switching: model.loop_gain.at_hz(design.stage.ripple_frequency()).norm(),
+        gain_at_half_switching_db: model.loop_gain.gain_db(fs / 2.0).max(NO_GAIN_DB),
+        // What is sampled once a period sees ripple as a constant.
+        gain_at_switching: if shared.digital.is_some() {
+            0.0
+        } else {
+            model.loop_gain.at_hz(design.stage.ripple_frequency()).norm()
+        },
     };
-    Ok((model, loop_gain, modes))
+    Ok((model, loop_gain, judged.motion))
 }
 
 /// The input filter against the converter, where one is fitted.
@@ -334,9 +358,10 @@ fn detailed(
                 damping: filter.damping_for(result.least_input_impedance_ohm * DAMPED_BELOW),
             }
         });
-    let reference = Zpk::from_state_space(&shared.compensator, 0, 1).map_err(|e| model_finding(&e))?;
     let scale = design.compensator.dc_output_voltage() / design.compensator.reference;
+    let reference = shared.reference(scale).map_err(|e| model_finding(&e))?;
     let curves = curves(model, shared, &reference, &request.frequencies_hz, scale).map_err(|e| model_finding(&e))?;
+    let digital = digital_detail(design, shared, model, condition).map_err(|e| model_finding(&e))?;
     let crossover = worked.loop_gain.margins.headline_crossover();
     let ledger = crossover.map(|c| ledger(model, shared, &design.compensator, &landmarks, c.frequency_hz));
     let operating_point = model.averaged.operating_point.clone();
@@ -354,6 +379,7 @@ fn detailed(
         landmarks,
         loop_gain: worked.loop_gain.clone(),
         curves,
+        digital,
         input_filter,
         steps: steps.map_err(|e| model_finding(&e))?,
         ledger,

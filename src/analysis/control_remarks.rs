@@ -4,6 +4,7 @@
 use super::loop_model::Shared;
 use super::remarks::summaries;
 use super::result::{Condition, ConditionResult, ControlFigures, Detail};
+use crate::compensator::Amplifier;
 use crate::control::{ControlLaw, CurrentSense, Edge, ramp_remedy};
 use crate::converter::OperatingPoint;
 use crate::design::CheckedDesign;
@@ -191,12 +192,13 @@ fn control_voltage(design: &CheckedDesign, law: &ControlLaw, cases: &[Case<'_>])
             volts(limit)
         );
         let path = match design.compensator.amplifier {
-            crate::compensator::Amplifier::OpAmp(_) => "compensator.op-amp",
-            _ => "compensator.transconductance",
+            Amplifier::OpAmp(_) => format!("compensator.op-amp.output-{end}"),
+            Amplifier::Transconductance(_) => format!("compensator.transconductance.output-{end}"),
+            Amplifier::ShuntRegulator(_) => return findings,
+            Amplifier::Digital(_) => "compensator.digital.output-range".to_owned(),
         };
         findings.push(
-            Finding::problem(format!("{path}.output-{end}"), message)
-                .with_hint("change the sense gain or the offset, or the amplifier's supply"),
+            Finding::problem(path, message).with_hint("change the sense gain or the offset, or the amplifier's supply"),
         );
     }
     findings

@@ -104,6 +104,10 @@ fn switching_edge(design: &CheckedDesign) -> Option<(WindowEdge, Cause)> {
 }
 
 fn amplifier_edge(design: &CheckedDesign, shared: &Shared) -> Option<(WindowEdge, Cause)> {
+    if shared.digital.is_some() {
+        // What sampling and computation take is in the loop; it ends nothing.
+        return None;
+    }
     let ideal = FactoredResponse::new(design.compensator.ideal(), 0.0);
     let lag = |f: f64| ideal.phase_deg(f) - shared.compensator_response.phase_deg(f);
     let top = design.stage.switching_frequency / 2.0;

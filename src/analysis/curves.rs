@@ -8,7 +8,7 @@ use super::loop_model::{LoopModel, Shared};
 use super::result::Curves;
 use crate::control::CONTROL;
 use crate::converter::signals::{INPUT_VOLTAGE, LOAD_CURRENT, LOAD_VOLTAGE, OUTPUT_VOLTAGE};
-use crate::linear::{Complex, FactoredResponse, FrequencyResponse, LinearError, Zpk};
+use crate::linear::{Complex, FactoredResponse, FrequencyResponse, LinearError};
 
 /// Decibels of a magnitude.
 fn db(magnitude: f64) -> f64 {
@@ -22,7 +22,7 @@ fn db(magnitude: f64) -> f64 {
 pub(super) fn curves(
     model: &LoopModel,
     shared: &Shared,
-    reference: &Zpk,
+    reference: &FactoredResponse,
     frequencies_hz: &[f64],
     reference_scale: f64,
 ) -> Result<Curves, LinearError> {
@@ -44,7 +44,7 @@ pub(super) fn curves(
         }
     }
     let (line_db, line_deg) = both(&FactoredResponse::new(model.open_loop(LOAD_VOLTAGE, INPUT_VOLTAGE)?, 0.0));
-    let (reference_db, reference_deg) = both(&FactoredResponse::new(reference.clone(), 0.0));
+    let (reference_db, reference_deg) = both(reference);
     let mut c = Curves {
         frequencies_hz: frequencies_hz.to_vec(),
         open_loop_output_impedance_ohm: impedance_db.iter().map(|g| from_db(*g)).collect(),

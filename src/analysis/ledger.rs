@@ -4,7 +4,7 @@ use super::curves::wrapped;
 use super::loop_model::{LoopModel, Shared};
 use super::pairs::{Pair, pairs};
 use super::result::{Ledger, LedgerRole, LedgerRow};
-use crate::compensator::{Compensator, LaneKind};
+use crate::compensator::{Compensator, Digital, LaneKind};
 use crate::converter::Landmark;
 use crate::converter::signals::LOAD_VOLTAGE;
 use crate::linear::{FactorKind, FactorPhase, FactoredResponse};
@@ -41,13 +41,10 @@ pub(super) fn ledger(
     let ideal = FactoredResponse::new(compensator.ideal(), 0.0);
     rows.extend(compensator_rows(compensator, &ideal, crossover_hz));
     let amplifier = shared.compensator_response.phase_deg(crossover_hz) - ideal.phase_deg(crossover_hz);
-    rows.push(LedgerRow {
-        label: "amplifier".into(),
-        degrees: amplifier,
-        role: LedgerRole::Amplifier,
-        lane: None,
-        landmark: None,
-    });
+    match &shared.digital {
+        Some(digital) => rows.extend(sampling_rows(&digital.digital, amplifier, crossover_hz)),
+        None => rows.push(plain_row("amplifier", amplifier, LedgerRole::Amplifier)),
+    }
     rows.extend(fast_path_row(model, shared, crossover_hz));
     let mut small = 0.0;
     let mut factors = model.plant.factor_phases_deg(crossover_hz);
@@ -56,7 +53,10 @@ pub(super) fn ledger(
         if factor.phase_deg.abs() < SMALL_DEG && factor.kind != FactorKind::Delay {
             small += factor.phase_deg;
         } else {
-            rows.push(plant_row(&factor, landmarks, model));
+            rows.extend(
+                delays_apart(&factor, model, crossover_hz)
+                    .unwrap_or_else(|| vec![plant_row(&factor, landmarks, model)]),
+            );
         }
     }
     for pair in cancelling {
@@ -88,6 +88,37 @@ pub(super) fn ledger(
         });
     }
     Ledger { frequency_hz: crossover_hz, rows, phase_margin_deg }
+}
+
+/// A row that belongs to no lane and no landmark.
+fn plain_row(label: &str, degrees: f64, role: LedgerRole) -> LedgerRow {
+    LedgerRow { label: label.into(), degrees, role, lane: None, landmark: None }
+}
+
+/// What a difference equation adds to its lanes: computation and hold by their delays, sampling and rounding by the rest.
+fn sampling_rows(digital: &Digital, beside_lanes: f64, f: f64) -> Vec<LedgerRow> {
+    let computation = -360.0 * f * digital.computation_s;
+    let hold = if digital.held { -180.0 * f * digital.period_s } else { 0.0 };
+    let mut rows = vec![plain_row("sampling", beside_lanes - computation - hold, LedgerRole::Sampling)];
+    for (label, degrees) in [("computation", computation), ("hold of the converter", hold)] {
+        if degrees != 0.0 {
+            rows.push(plain_row(label, degrees, LedgerRole::Delay));
+        }
+    }
+    rows
+}
+
+/// The plant's delay with the modulator's apart from it.
+fn delays_apart(factor: &FactorPhase, model: &LoopModel, f: f64) -> Option<Vec<LedgerRow>> {
+    let modulator = model.modulator_delay_s.filter(|_| factor.kind == FactorKind::Delay)?;
+    let share = -360.0 * f * modulator;
+    let mut rows = vec![plain_row("modulator", share, LedgerRole::Delay)];
+    if model.controlled.delay_s > 0.0 {
+        rows.push(plain_row("delay", factor.phase_deg - share, LedgerRole::Delay));
+    } else if let Some(first) = rows.first_mut() {
+        first.degrees = factor.phase_deg;
+    }
+    Some(rows)
 }
 
 /// What a fast path does that does not read the regulated voltage: the loop's phase beside that of plant and compensator.

@@ -3,9 +3,12 @@
 //! *Conventions*: the plant runs from control voltage to output voltage, control law and delay included; the compensator
 //! from output voltage to control voltage with its inversion taken out; their product is the loop gain. The delay of the
 //! control voltage is exact in every frequency response and a third-order Padé form in the closed-loop state space; inside
-//! the inner loop of average current mode it is the latter in both.
+//! the inner loop of average current mode it is the latter in both. A loop with a difference equation is judged and followed by its exact map from
+//! sample to sample (`sampled`); its curves here are those of the unfolded band, as an analyser reads them.
 
 use super::fast_path::FastPath;
+use super::motion::Motion;
+use super::sampled::SharedDigital;
 use crate::compensator::{FAST, joined_paths};
 use crate::control::{CONTROL, ControlLaw, Controlled, Edge, Mode};
 use crate::converter::signals::LOAD_VOLTAGE;
@@ -30,6 +33,8 @@ pub struct Shared {
     pub fast_path: Option<FastPath>,
     /// The control law, its compensating ramp settled.
     pub law: ControlLaw,
+    /// The difference equation in place of a network: then `compensator` answers nothing.
+    pub digital: Option<SharedDigital>,
     delay: Option<StateSpace>,
 }
 
@@ -45,9 +50,16 @@ impl Shared {
         let singular = |e: &dyn std::fmt::Display| {
             Finding::problem("compensator", format!("The compensator cannot be solved: {e}."))
         };
-        let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
-        let joined = joined_paths(compensator.clone()).map_err(|e| singular(&e))?;
-        let response = Zpk::from_state_space(&joined, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+        let digital = design.compensator.digital().map(SharedDigital::new);
+        let (compensator, compensator_response) = match &digital {
+            Some(digital) => (no_network().map_err(|e| singular(&e))?, digital.response()),
+            None => {
+                let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
+                let joined = joined_paths(compensator.clone()).map_err(|e| singular(&e))?;
+                let response = Zpk::from_state_space(&joined, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+                (compensator, FactoredResponse::new(response, 0.0))
+            }
+        };
         let fast_path = FastPath::new(design, &compensator).map_err(|e| singular(&e))?;
         let law = settled(design)?;
         let outside = !matches!(law.mode, Mode::Average(_));
@@ -56,16 +68,37 @@ impl Shared {
         } else {
             None
         };
-        let compensator_response = FactoredResponse::new(response, 0.0);
-        Ok(Shared { compensator, compensator_response, fast_path, law, delay })
+        Ok(Shared { compensator, compensator_response, fast_path, law, digital, delay })
     }
 }
 
 impl Shared {
+    /// Control voltage from reference; `scale` is the output voltage over the reference.
+    ///
+    /// # Errors
+    /// As the reduction to zeros and poles.
+    pub(super) fn reference(&self, scale: f64) -> Result<FactoredResponse, LinearError> {
+        match &self.digital {
+            Some(digital) => Ok(digital.scaled_response(scale)),
+            None => Ok(FactoredResponse::new(Zpk::from_state_space(&self.compensator, 0, 1)?, 0.0)),
+        }
+    }
+
+    /// The same with the difference equation before rounding; none without one.
+    pub(super) fn before_rounding(&self) -> Option<Self> {
+        let exact = self.digital.as_ref()?.before_rounding();
+        Some(Shared { compensator_response: exact.response(), digital: Some(exact), ..self.clone() })
+    }
+
     /// The same with another control law of the same delay.
     pub(super) fn with_law(&self, law: ControlLaw) -> Self {
         Shared { law, ..self.clone() }
     }
+}
+
+/// State equations in the place of a network's where a difference equation works instead.
+fn no_network() -> Result<StateSpace, LinearError> {
+    StateSpace::constant(DMatrix::zeros(2, 2), &["vout", "vref"], &["vc", "error"])
 }
 
 /// The control law with its compensating ramp settled by the nominal condition.
@@ -100,11 +133,24 @@ pub struct LoopModel {
     pub plant: FactoredResponse,
     /// The loop gain.
     pub loop_gain: FactoredResponse,
+    /// From the start of a period to where a value set there acts [s]; none where the control voltage acts throughout.
+    pub modulator_delay_s: Option<f64>,
     /// Whether the load's voltage is another than the regulated one: a second stage stands behind the sense point.
     pub load_beyond: bool,
     /// The fast path of isolated feedback, where it sees another voltage than the regulated one: the loop gain is the sum over both
     /// paths.
     pub apart: Option<FastPath>,
+}
+
+/// What closing the loop leads to.
+#[derive(Clone, Debug)]
+pub struct Judged {
+    /// Stability.
+    pub verdict: Verdict,
+    /// Margins of the loop as it is sampled, where a difference equation is at work.
+    pub sampled: Option<Margins>,
+    /// How the loop moves, when it is stable.
+    pub motion: Option<Motion>,
 }
 
 /// A zero beyond this many switching frequencies is rounding of a path that is none.
@@ -129,14 +175,23 @@ impl LoopModel {
         ended_blind(&shared.law, &averaged, period)?;
         let controlled = shared.law.controlled(&averaged, period).map_err(|e| model_finding(&e))?;
         let plant = Zpk::from_state_space(&controlled.stage, 0, 0).map_err(|e| model_finding(&e))?;
+        let compensator = &shared.compensator_response;
         let apart = shared.fast_path.as_ref().filter(|path| path.apart).cloned();
         let loop_zpk = match &apart {
-            None => plant.multiply(shared.compensator_response.zpk()),
+            None => plant.multiply(compensator.zpk()),
             Some(path) => path.loop_gain(&controlled.stage, &shared.compensator).map_err(|e| model_finding(&e))?,
         };
+        let decided = shared.law.decision_share(averaged.operating_point.duty);
+        let modulator_delay_s = shared.digital.as_ref().and(decided).map(|share| share * period);
+        let delay_s = controlled.delay_s + modulator_delay_s.unwrap_or(0.0);
+        let mut loop_gain = FactoredResponse::new(loop_zpk, delay_s + compensator.delay_s());
+        if let Some(factors) = compensator.discrete() {
+            loop_gain = loop_gain.with_discrete(factors.clone());
+        }
         Ok(LoopModel {
-            plant: FactoredResponse::new(plant, controlled.delay_s),
-            loop_gain: FactoredResponse::new(loop_zpk, controlled.delay_s),
+            plant: FactoredResponse::new(plant, delay_s),
+            loop_gain,
+            modulator_delay_s,
             controlled,
             averaged,
             load_beyond: stage.second_stage.is_some_and(|second| !second.sensed_at_load),
@@ -225,21 +280,24 @@ impl LoopModel {
     }
 
     /// Stability by the poles of the closed loop, checked by the encirclement count on the exact delay; and for a stable
-    /// loop its modes.
+    /// loop how it moves.
     ///
     /// # Errors
     /// As the joining of systems.
-    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<(Verdict, Option<Modes>), LinearError> {
+    pub fn verdict(&self, shared: &Shared, margins: &Margins) -> Result<Judged, LinearError> {
+        if let Some(digital) = &shared.digital {
+            return self.sampled(digital)?.judged();
+        }
         let (closed, poles, verdict) = self.judged(shared, margins)?;
         if !matches!(verdict, Verdict::Stable { .. }) {
-            return Ok((verdict, None));
+            return Ok(Judged { verdict, sampled: None, motion: None });
         }
         let mut modes = Modes::with_poles(&closed, &poles)?;
         if let Some(bank) = &self.averaged.bank_inductance {
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.with)?, 1.0)?;
             modes.add_through(LOAD, DISTURBANCE, &Modes::new(&bank.without)?, -1.0)?;
         }
-        Ok((verdict, Some(modes)))
+        Ok(Judged { verdict, sampled: None, motion: Some(Motion::Continuous(modes)) })
     }
 }
 
@@ -249,6 +307,9 @@ impl LoopModel {
     /// # Errors
     /// As the joining of systems.
     pub fn stability(&self, shared: &Shared, margins: &Margins) -> Result<Verdict, LinearError> {
+        if let Some(digital) = &shared.digital {
+            return self.sampled(digital)?.judged().map(|judged| judged.verdict);
+        }
         self.judged(shared, margins).map(|judged| judged.2)
     }
 

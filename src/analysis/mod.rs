@@ -10,6 +10,8 @@ mod control_figures;
 mod control_remarks;
 mod crossover_window;
 mod curves;
+mod digital;
+mod digital_remarks;
 mod fast_path;
 mod filter_readouts;
 mod filter_remarks;
@@ -21,6 +23,7 @@ mod isolated_remarks;
 mod ledger;
 mod load_sweep;
 pub mod loop_model;
+pub mod motion;
 mod pairs;
 mod placement;
 pub mod proposal;
@@ -28,6 +31,7 @@ mod readouts;
 mod remarks;
 mod requirement;
 mod result;
+pub mod sampled;
 mod stability_remarks;
 mod steps;
 pub mod terms;
@@ -36,6 +40,7 @@ mod tests;
 mod transient;
 
 pub use analyse::{Request, Shown, analyse, logarithmic};
+pub use digital::DigitalDetail;
 pub use fast_path::FastPath;
 pub use filter_result::{
     Against, ImpedanceCurves, ImpedanceMargin, InputFilterDetail, InputFilterResult, LargestChange,

@@ -4,6 +4,7 @@ use super::condition::NOMINAL;
 use super::conduction::{discontinuous, resonates, step_leaves_mode};
 use super::control_remarks::control_remarks;
 use super::crossover_window::nominal_crossover;
+use super::digital_remarks::digital_remarks;
 use super::filter_remarks::filter_remarks;
 use super::isolated_remarks::isolated_remarks;
 use super::loop_model::Shared;
@@ -38,6 +39,7 @@ pub(super) fn remarks(
     findings.extend(what_if_unstable(detail));
     findings.extend(filter_remarks(design, detail, conditions));
     findings.extend(control_remarks(design, shared, detail, conditions));
+    findings.extend(digital_remarks(design, shared, detail, conditions));
     findings.extend(isolated_remarks(design, detail, conditions, window));
     findings.extend(beyond_the_model(conditions));
     findings.extend(verdicts.iter().filter(|v| !v.met).map(missed));
@@ -115,6 +117,9 @@ fn missed(verdict: &RequirementVerdict) -> Finding {
 
 /// Ripple at the comparator large enough to make averaged numbers doubtful.
 fn ripple(design: &CheckedDesign, shared: &Shared, conditions: &[ConditionResult]) -> Vec<Finding> {
+    if shared.digital.is_some() {
+        return Vec::new();
+    }
     let fs = design.stage.switching_frequency;
     // Several phases cancel the ripple below the frequency of all together.
     let high = shared.compensator_response.at_hz(design.stage.ripple_frequency()).norm();

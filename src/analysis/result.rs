@@ -4,6 +4,7 @@
 //! unwrapped upward from low frequency; the loop gain has the sign of the negative feedback taken out. Every result
 //! names the operating condition it was computed at.
 
+use super::digital::DigitalDetail;
 use super::filter_result::{InputFilterDetail, InputFilterResult};
 use super::isolated::IsolatedFigures;
 use crate::control::Sampling;
@@ -57,6 +58,8 @@ pub struct LoopResult {
     pub verdict: Verdict,
     /// All crossovers and margins between fs·1e-6 and fs/2.
     pub margins: Margins,
+    /// Those of a loop with a difference equation as it is sampled, all bands folded.
+    pub sampled: Option<Margins>,
     /// Gain of the loop at half the switching frequency [dB].
     pub gain_at_half_switching_db: f64,
     /// Magnitude of the loop gain at the switching frequency; large values make averaged numbers doubtful.
@@ -157,6 +160,8 @@ pub enum LedgerRole {
     Compensator,
     /// Difference of the real amplifier to the ideal one.
     Amplifier,
+    /// What sampling and rounding make of the compensator.
+    Sampling,
     /// A pole or left-half-plane zero of the power stage.
     Plant,
     /// A right-half-plane zero or pole of the power stage.
@@ -236,6 +241,8 @@ pub struct Detail {
     pub loop_gain: LoopResult,
     /// Frequency curves on the requested grid.
     pub curves: Curves,
+    /// The difference equation, where the compensator is one.
+    pub digital: Option<DigitalDetail>,
     /// Input filter against converter, where one is fitted.
     pub input_filter: Option<InputFilterDetail>,
     /// Operating point and ends of the transfer ratio, where the feedback is isolated.

@@ -4,9 +4,10 @@
 //! before; settling is the last exit from the band around the final value. Linear prediction: limits of amplifier and
 //! duty ratio do not act, and the results say so where they would.
 
+use super::motion::Motion;
 use super::result::{Step, StepFigures, Steps};
 use crate::design::{CheckedDesign, Event};
-use crate::linear::{LinearError, Modes, RampStep, UniformGrid};
+use crate::linear::{LinearError, RampStep};
 use std::f64::consts::TAU;
 
 /// Columns of the closed loop's inputs.
@@ -34,7 +35,7 @@ fn band_v(design: &CheckedDesign) -> f64 {
 ///
 /// # Errors
 /// As taking the closed loop apart into its modes.
-pub(super) fn load_figures(design: &CheckedDesign, modes: &Modes) -> Result<StepFigures, LinearError> {
+pub(super) fn load_figures(design: &CheckedDesign, modes: &Motion) -> Result<StepFigures, LinearError> {
     let metrics = modes.settle(LOAD, OUTPUT, ramp(design.events.load_step), band_v(design))?;
     Ok(StepFigures { deviation_v: metrics.deviation, settling_s: metrics.settling_s })
 }
@@ -46,7 +47,7 @@ pub(super) fn load_figures(design: &CheckedDesign, modes: &Modes) -> Result<Step
 /// As taking the response from the modes.
 pub(super) fn steps(
     design: &CheckedDesign,
-    modes: &Modes,
+    modes: &Motion,
     crossover_hz: Option<f64>,
     at_rest: (f64, f64),
     points: usize,
@@ -64,7 +65,7 @@ pub(super) fn steps(
 }
 
 struct Context<'a> {
-    modes: &'a Modes,
+    modes: &'a Motion,
     design: &'a CheckedDesign,
     crossover_hz: Option<f64>,
     /// Load's voltage before the event [V].
@@ -82,7 +83,7 @@ impl Context<'_> {
         let band = band_v(self.design);
         let metrics = self.modes.settle(input, OUTPUT, change, band)?;
         let span = self.span_s(metrics.settling_s, change.rise_s);
-        let grid = UniformGrid { step_s: span / (self.points - 1) as f64, count: self.points };
+        let grid = self.modes.grid(span, self.points);
         let before = self.before;
         let output = self.modes.curve(input, OUTPUT, change, grid)?;
         let control = self.modes.curve(input, CONTROL, change, grid)?;

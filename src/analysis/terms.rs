@@ -254,12 +254,23 @@ pub static TERMS: &[Term] = &[
         "arg of actual response − arg of ideal response",
     ),
     term(
+        "sampling-share",
+        "Sampling",
+        "What the difference equation, its coefficients rounded, adds to a continuous response with the same poles and zeros.",
+        "arg of C at z = e^(jωT) − arg of ideal response",
+    ),
+    term(
         "plant-phase",
         "Poles and zeros of the stage",
         "Share of a pole, a pair of poles or a zero of the averaged power stage.",
         "pole −arctan(f / f0), zero +arctan(f / f0); a pair of poles turns from 0° to −180° about its resonance",
     ),
-    term("delay", "Delay", "Comparator, logic and driver. Exact in responses and margins.", "−360°·f·td"),
+    term(
+        "delay",
+        "Delay",
+        "Comparator, logic and driver; with a difference equation computation, and the pulse width being set once a period: D·T of a trailing edge. Exact in responses and margins.",
+        "−360°·f·td",
+    ),
     term("turns", "Whole turns", "Whole turns taken out, so that the sum is the phase margin.", "k·360°"),
     term(
         "lane-gain",

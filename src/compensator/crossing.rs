@@ -53,6 +53,9 @@ impl Compensator {
         fast_over_sensed: Complex,
         locks: &BTreeSet<String>,
     ) -> Result<Placement, Box<Finding>> {
+        if let Some(digital) = self.digital() {
+            return self.digital_by_k_factor(&digital, goal, locks);
+        }
         self.settle((goal.crossover_hz, fast_over_sensed), locks, |gain_db, phase_deg| {
             let with_amplifier = KFactorGoal {
                 plant_gain_db: goal.plant_gain_db + gain_db,
@@ -87,6 +90,9 @@ impl Compensator {
         fast_over_sensed: Complex,
         locks: &BTreeSet<String>,
     ) -> Result<RuledPlacement, Box<Finding>> {
+        if let Some(digital) = self.digital() {
+            return self.digital_by_rules(&digital, goal, locks);
+        }
         let RulePlacement { reasons, .. } = pole_zero_rules(self.kind, goal)?;
         let placement = self.settle((goal.crossover_hz, fast_over_sensed), locks, |gain_db, _| {
             let with_amplifier = RuleGoal { plant_gain_db: goal.plant_gain_db + gain_db, ..*goal };
@@ -135,7 +141,7 @@ impl Compensator {
 
     /// Places what `method` asks for, given gain [dB] and phase [°] that the amplifier adds to the plant at the crossover,
     /// until those no longer change.
-    fn settle(
+    pub(super) fn settle(
         &self,
         (crossover_hz, fast_over_sensed): (f64, Complex),
         locks: &BTreeSet<String>,

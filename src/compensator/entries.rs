@@ -3,6 +3,7 @@
 //! *Conventions.* Paths start with `compensator.`; a part is named as in the drawings: `r2`, `c1` in series, `c2` across them,
 //! `r3`, `c3` across the upper divider resistor.
 
+use super::digital_entries as digital;
 use super::shunt_entries as shunt;
 use crate::quantity::{Bounds, Choice, ChoiceOption, Choices, Entry, Unit};
 
@@ -15,12 +16,12 @@ const OUTPUT_VOLTAGE: Bounds = Bounds::Between(-1000.0, 1000.0);
 
 /// Every number a user enters for the compensator, in the order of the form.
 pub fn entries() -> impl Iterator<Item = &'static Entry> {
-    ENTRIES.iter().chain(shunt::ENTRIES)
+    ENTRIES.iter().chain(shunt::ENTRIES).chain(digital::ENTRIES)
 }
 
 /// Every choice a user makes for the compensator, in the order of the form.
 pub fn choices() -> impl Iterator<Item = &'static Choice> {
-    CHOICES.iter().chain(shunt::CHOICES)
+    CHOICES.iter().chain(shunt::CHOICES).chain(digital::CHOICES)
 }
 
 /// Numbers of the networks, and of op amp and transconductance amplifier.
@@ -233,6 +234,11 @@ const CHOICES: &[Choice] = &[
                 name: "regulator and optocoupler",
                 help: "Isolated feedback: a shunt regulator of the 431 type drives the LED of an optocoupler.",
             },
+            ChoiceOption {
+                key: "digital",
+                name: "difference equation",
+                help: "The divided output is sampled once a period, and a difference equation computes the control.",
+            },
         ],
         default: "op-amp",
         help: "What kind of error amplifier the controller has.",
@@ -291,6 +297,9 @@ pub(super) fn chosen<'a>(choices: &'a Choices, path: &str) -> &'a str {
 pub fn applies(path: &str, choices: &Choices) -> bool {
     let kind = chosen(choices, "compensator.type");
     let amplifier = chosen(choices, "compensator.amplifier");
+    if amplifier == "digital" {
+        return digital::applies(path, choices);
+    }
     let isolated = amplifier == "shunt-regulator";
     match path {
         "compensator.r2" if isolated => shunt::has_series_resistor(kind, choices),
@@ -301,6 +310,7 @@ pub fn applies(path: &str, choices: &Choices) -> bool {
         "compensator.cff" => kind != "3" && chosen(choices, "compensator.feedforward-capacitor") == "fitted",
         _ if path.starts_with("compensator.op-amp.") => amplifier == "op-amp",
         _ if path.starts_with("compensator.transconductance.") => amplifier == "transconductance",
+        _ if path.starts_with("compensator.digital.") => false,
         _ if path.starts_with("compensator.opto.") || path.starts_with("compensator.shunt.") => {
             isolated && shunt::applies(path, kind, choices)
         }

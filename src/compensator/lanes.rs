@@ -10,6 +10,7 @@
 
 use std::f64::consts::TAU;
 
+use super::digital::lane_path;
 use super::network::{Amplifier, Compensator, Kind, Part, Parts};
 use super::shunt::ShuntRegulator;
 use crate::linear::{Complex, Zpk};
@@ -73,7 +74,7 @@ impl Corner {
         Corner::ALL.into_iter().find(|corner| corner.key() == key)
     }
 
-    fn name(self) -> &'static str {
+    pub(super) fn name(self) -> &'static str {
         match self {
             Corner::Gain => "integrator gain",
             Corner::Zero1 => "first zero",
@@ -170,11 +171,15 @@ pub(super) fn parallel(a: f64, b: f64) -> f64 {
 impl Compensator {
     /// Where the parts put every lane of this network, amplifier ideal.
     pub fn corners(&self) -> Corners {
+        if let Some(digital) = self.digital() {
+            return digital.corners();
+        }
         let parts = &self.parts;
         let capacitance = if self.kind == Kind::One { parts.c1 } else { parts.c1 + parts.c2 };
         let gain = match self.amplifier {
             Amplifier::OpAmp(_) => corner_hz(parts.upper, capacitance),
             Amplifier::Transconductance(a) => a.gm * self.divider_ratio() / (TAU * capacitance),
+            Amplifier::Digital(_) => f64::NAN,
             Amplifier::ShuntRegulator(a) => a.branch_gain(parts) * corner_hz(parts.upper, parts.c1),
         };
         let mut corners = Corners { gain: Some(gain), ..Corners::default() };
@@ -205,7 +210,7 @@ impl Compensator {
     /// The resistance that r3 and c3 stand across, and what stands in parallel with it as the branch sees it [Ω].
     pub(super) fn across(&self, parts: &Parts) -> (f64, f64) {
         match self.amplifier {
-            Amplifier::OpAmp(_) => (parts.upper, 0.0),
+            Amplifier::OpAmp(_) | Amplifier::Digital(_) => (parts.upper, 0.0),
             Amplifier::Transconductance(_) => (parts.upper, parallel(parts.upper, parts.lower)),
             Amplifier::ShuntRegulator(a) => (parts.led, parallel(parts.led, a.led_side(parts))),
         }
@@ -225,12 +230,16 @@ impl Compensator {
             .into_iter()
             .filter_map(|corner| {
                 let (formula, parts) = self.origin(corner);
+                let parts = match self.amplifier {
+                    Amplifier::Digital(_) => vec![lane_path(corner.key())],
+                    _ => parts.iter().map(|part| part.path()).collect(),
+                };
                 Some(Lane {
                     key: corner.key(),
                     name: corner.name(),
                     kind: corner.kind(),
                     frequency_hz: corners.at(corner)?,
-                    parts: parts.iter().map(|part| part.path()).collect(),
+                    parts,
                     formula,
                     help: corner.help(),
                     of_optocoupler: corner == Corner::Pole1 && self.isolated().is_some(),
@@ -245,6 +254,10 @@ impl Compensator {
             return self.isolated_origin(&regulator, corner);
         }
         use Part::{C1, C2, C3, Feedforward, Lower, R2, R3, Upper};
+        if let Amplifier::Digital(digital) = self.amplifier {
+            let integrator = "(1 − z⁻¹) · C / T at z = 1, over 2π";
+            return (if corner == Corner::Gain { integrator } else { digital.method.formula() }, &[]);
+        }
         let op_amp = matches!(self.amplifier, Amplifier::OpAmp(_));
         let branch = self.has(C3);
         match corner {

@@ -64,6 +64,9 @@ impl Compensator {
     /// # Errors
     /// As [`Compensator::state_space`].
     pub fn limited(&self) -> Result<Limited, NetworkError> {
+        if self.digital().is_some() {
+            return Err(NetworkError::Sampled);
+        }
         let (mut circuit, driven) = self.drawn();
         if let (Some(regulator), Some(transistor)) = (self.isolated(), driven.transistor) {
             return isolated(circuit, regulator, driven.node, transistor);

@@ -198,7 +198,7 @@ fn usable(frequency: Option<f64>) -> Option<f64> {
 }
 
 /// Refuses numbers that no placement can work with.
-fn check_goal(crossover_hz: f64, plant_gain_db: f64, boost_deg: f64) -> Result<(), Box<Finding>> {
+pub(super) fn check_goal(crossover_hz: f64, plant_gain_db: f64, boost_deg: f64) -> Result<(), Box<Finding>> {
     let usable = crossover_hz.is_finite() && crossover_hz > 0.0 && plant_gain_db.abs() < 1e3 && boost_deg.is_finite();
     if usable {
         return Ok(());

@@ -23,6 +23,12 @@
 //! | `fit` | the nearest parts while some are kept |
 //! | `netlist` | the actual network, solved |
 //! | `limits` | where the amplifier's limits act, for whoever follows the network beyond them |
+//! | `digital` | a compensator that is a difference equation |
+//! | `digital_entries` | its rows |
+//! | `difference` | its coefficients from poles and zeros by a method, and back |
+//! | `fixed_point` | coefficients as whole numbers of a word length |
+//! | `digital_lanes` | its lanes, as wanted and as built |
+//! | `digital_place` | the placement methods for it |
 //! | `preferred` | the series of preferred values |
 //! | `rounding` | parts of preferred value |
 //! | `method` | where poles and zeros might go: K factor, landmarks |
@@ -31,8 +37,14 @@
 //! | `crossing` | those methods carried out with the actual amplifier |
 
 mod crossing;
+mod difference;
+mod digital;
+mod digital_entries;
+mod digital_lanes;
+mod digital_place;
 mod entries;
 mod fit;
+mod fixed_point;
 mod lanes;
 mod limits;
 mod method;
@@ -50,7 +62,10 @@ mod shunt_place;
 mod shunt_tests;
 
 pub use crossing::RuledPlacement;
+pub use difference::{DifferenceEquation, Method};
+pub use digital::{Digital, FixedPoint, Rounding};
 pub use entries::{applies, choices, entries};
+pub use fixed_point::{Codes, limits};
 pub use lanes::{Corners, Lane, LaneKind};
 pub use limits::{Limit, LimitKind, Limited};
 pub use method::{KFactor, KFactorGoal, Reason, RuleGoal, RulePlacement, k_factor, pole_zero_rules};

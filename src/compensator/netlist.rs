@@ -13,7 +13,7 @@ use std::fmt;
 
 use super::network::{Amplifier, Compensator, Kind, Part};
 use crate::circuit::{CircuitError, Compiled, Netlist, Node, PartId, Slot};
-use crate::linear::{Complex, LinearError, StateSpace, Zpk};
+use crate::linear::{Complex, FrequencyResponse, LinearError, StateSpace, Zpk};
 
 /// Resistance inside a buffered amplifier's model [Ω]; any value gives the same response, this one keeps the equations well scaled.
 const INNER_RESISTANCE: f64 = 1e6;
@@ -25,6 +25,8 @@ pub enum NetworkError {
     Circuit(CircuitError),
     /// The state equations could not be used.
     Linear(LinearError),
+    /// A difference equation is no network.
+    Sampled,
 }
 
 impl fmt::Display for NetworkError {
@@ -32,6 +34,7 @@ impl fmt::Display for NetworkError {
         match self {
             NetworkError::Circuit(error) => write!(f, "compensator network: {error}"),
             NetworkError::Linear(error) => write!(f, "compensator response: {error}"),
+            NetworkError::Sampled => f.write_str("a difference equation has no state equations in continuous time"),
         }
     }
 }
@@ -147,7 +150,7 @@ impl Compensator {
         let (far_end, driven) = self.fit_amplifier(&mut circuit, [vref, tap, vc]);
         if self.kind == Kind::One {
             circuit.fit(self, Part::C1, vc, far_end);
-        } else {
+        } else if self.has(Part::R2) {
             let inner = circuit.netlist.node("r2-c1");
             circuit.fit(self, Part::R2, vc, inner);
             circuit.fit(self, Part::C1, inner, far_end);
@@ -182,6 +185,8 @@ impl Compensator {
                 circuit.netlist.resistor("transconductance.output-resistance", vc, ground, resistance);
                 (ground, vc)
             }
+            // Sampled at the tap, which it does not load; what it computes is no part of a netlist.
+            Amplifier::Digital(_) => (ground, vc),
             // Drawn by itself.
             Amplifier::ShuntRegulator(_) => (tap, vc),
         }
@@ -195,6 +200,9 @@ impl Compensator {
     /// # Errors
     /// When the netlist has no state equations; parts within the table's bounds do not lead there.
     pub fn state_space(&self) -> Result<StateSpace, NetworkError> {
+        if self.digital().is_some() {
+            return Err(NetworkError::Sampled);
+        }
         let circuit = self.netlist();
         let compiled = Compiled::new(&circuit.netlist, |_| true, &circuit.values)?;
         let (equations, _) = compiled.equations(&circuit.values)?.independent();
@@ -213,6 +221,9 @@ impl Compensator {
     /// The slow and the fast path's share of the response at a frequency, inversion taken out [V/V]; the fast one is zero where
     /// there is none.
     pub fn paths_at(&self, frequency_hz: f64) -> Option<[Complex; 2]> {
+        if let Some(digital) = self.digital() {
+            return Some([digital.response().at_hz(frequency_hz), Complex::ZERO]);
+        }
         let system = self.state_space().ok()?;
         let s = Complex::new(0.0, std::f64::consts::TAU * frequency_hz);
         let slow = -system.entry_at(0, 0, s)?;

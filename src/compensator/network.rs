@@ -5,6 +5,7 @@
 //!
 //! *Bad input.* All entries that cannot be used are reported at once, each with its place, reason and hint.
 
+use super::digital::Digital;
 use super::entries::{applies, chosen, entries};
 use super::shunt::ShuntRegulator;
 use crate::finding::Finding;
@@ -76,6 +77,8 @@ pub enum Amplifier {
     OpAmp(OpAmp),
     /// A voltage-to-current amplifier with the network from its output to ground.
     Transconductance(Transconductance),
+    /// None: the output is sampled, and a difference equation computes the control voltage.
+    Digital(Digital),
     /// A shunt regulator that drives an optocoupler.
     ShuntRegulator(ShuntRegulator),
 }
@@ -199,6 +202,11 @@ pub struct Parts {
 }
 
 impl Parts {
+    /// Fraction of the output voltage at the divider's tap, 0 to 1.
+    pub(super) fn divider_ratio(&self) -> f64 {
+        self.lower / (self.upper + self.lower)
+    }
+
     /// Value of one part [Ω or F].
     pub fn get(&self, part: Part) -> f64 {
         match part {
@@ -258,6 +266,15 @@ impl Compensator {
     /// One finding for each choice that is not an option, each value that is out of bounds, and for output limits
     /// that leave no room.
     pub fn from_values(values: &Values, choices: &Choices) -> Result<Self, Vec<Finding>> {
+        Self::from_values_at(values, choices, values.get("stage.switching-frequency"))
+    }
+
+    /// The same where the stage's pulses come at another rate than its switch's own [Hz], as in one whose switches take turns: that is how
+    /// often a difference equation samples.
+    ///
+    /// # Errors
+    /// As [`Compensator::from_values`].
+    pub fn from_values_at(values: &Values, choices: &Choices, pulses_hz: Option<f64>) -> Result<Self, Vec<Finding>> {
         let mut faults = wrong_choices(choices);
         let mut read = |path: &str| read_entry(path, values, choices, &mut faults);
         let parts = Parts {
@@ -295,6 +312,9 @@ impl Compensator {
         };
         let amplifier = match chosen(choices, "compensator.amplifier") {
             "transconductance" => Amplifier::Transconductance(transconductance),
+            "digital" => {
+                Amplifier::Digital(Digital::read(values, choices, pulses_hz, parts.divider_ratio(), &mut faults))
+            }
             "shunt-regulator" => Amplifier::ShuntRegulator(regulator),
             _ => Amplifier::OpAmp(op_amp),
         };
@@ -315,6 +335,9 @@ impl Compensator {
 
     /// Writes the values of the parts that the network has; nothing else changes when a lane moves or parts are rounded.
     pub fn write(&self, values: &mut Values) {
+        if let Some(digital) = self.digital() {
+            digital.write(values);
+        }
         for part in self.fitted() {
             // Every route to a part's value keeps it within the table's bounds, so it is finite and is taken.
             let _ = values.set(part.path(), self.parts.get(part));
@@ -328,6 +351,9 @@ impl Compensator {
 
     /// Whether the network has this part.
     pub fn has(&self, part: Part) -> bool {
+        if matches!(self.amplifier, Amplifier::Digital(_)) {
+            return matches!(part, Part::Upper | Part::Lower);
+        }
         match part {
             Part::Upper | Part::Lower | Part::C1 => true,
             Part::R2 if self.isolated().is_some_and(|regulator| !regulator.has_series_resistor) => false,
@@ -345,7 +371,15 @@ impl Compensator {
 
     /// Fraction of the output voltage at the divider's tap, 0 to 1.
     pub fn divider_ratio(&self) -> f64 {
-        self.parts.lower / (self.parts.upper + self.parts.lower)
+        self.parts.divider_ratio()
+    }
+
+    /// The difference equation in place of an amplifier, with the divider as it stands.
+    pub fn digital(&self) -> Option<Digital> {
+        match self.amplifier {
+            Amplifier::Digital(digital) => Some(Digital { divider_ratio: self.divider_ratio(), ..digital }),
+            _ => None,
+        }
     }
 }
 
@@ -389,8 +423,8 @@ fn output_room(amplifier: &Amplifier) -> Option<Finding> {
         Amplifier::Transconductance(a) => {
             (a.output_least, a.output_greatest, "compensator.transconductance.output-greatest")
         }
-        // Its room follows from the parts.
-        Amplifier::ShuntRegulator(_) => return None,
+        // Its room follows from the parts, a converter's range is above zero by its row.
+        Amplifier::ShuntRegulator(_) | Amplifier::Digital(_) => return None,
     };
     (least >= greatest).then(|| {
         Finding::problem(

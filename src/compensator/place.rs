@@ -75,6 +75,9 @@ impl Compensator {
             let why = "A lane needs a frequency above zero.".to_owned();
             return Placed { compensator: self.clone(), as_built_hz: from, why: Some(why) };
         }
+        if let Some(digital) = self.digital() {
+            return self.move_digital(&digital, corner, frequency_hz, locks);
+        }
         let mut aim = present;
         *aim.slot(corner) = Some(frequency_hz);
         let (parts, why) = self.nearest_parts(&present, &aim, Some(corner), locks);
@@ -92,6 +95,9 @@ impl Compensator {
 
     /// Places every lane that `aims` names, the others staying where they are.
     pub fn place(&self, aims: &Corners, locks: &BTreeSet<String>) -> Placement {
+        if let Some(digital) = self.digital() {
+            return self.place_digital(&digital, aims, locks);
+        }
         let present = self.corners();
         let mut aim = present;
         for corner in Corner::ALL {
@@ -164,6 +170,7 @@ impl Compensator {
     fn kept(&self, locks: &BTreeSet<String>) -> Vec<Part> {
         let stays = |part: Part| match self.amplifier {
             Amplifier::OpAmp(_) => part == self.anchor_part(),
+            Amplifier::Digital(_) => true,
             Amplifier::Transconductance(_) => part == self.anchor_part() || matches!(part, Part::Upper | Part::Lower),
             Amplifier::ShuntRegulator(regulator) => match part {
                 Part::Upper | Part::Lower | Part::PullUp | Part::Bias => true,
@@ -193,6 +200,8 @@ impl Compensator {
             _ => None,
         };
         match self.amplifier {
+            // A difference equation has lanes in place of parts, and its own way here.
+            Amplifier::Digital(_) => {}
             Amplifier::OpAmp(_) => {
                 if let (Anchor::R2, Some((zero, share))) = (self.anchor, share) {
                     let total = 1.0 / (TAU * zero * parts.r2) / (1.0 - share);

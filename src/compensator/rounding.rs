@@ -45,7 +45,7 @@ impl Compensator {
     fn wanted_beside(&self, rounded: &Parts, part: Part, follow: f64) -> f64 {
         let value = self.parts.get(part);
         let impedance = match self.amplifier {
-            Amplifier::OpAmp(_) => follow,
+            Amplifier::OpAmp(_) | Amplifier::Digital(_) => follow,
             Amplifier::Transconductance(_) if matches!(part, Part::R3 | Part::C3 | Part::Feedforward) => follow,
             Amplifier::Transconductance(_) => 1.0,
             Amplifier::ShuntRegulator(regulator) => match part {

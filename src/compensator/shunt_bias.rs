@@ -72,6 +72,7 @@ impl Compensator {
         match &self.amplifier {
             Amplifier::OpAmp(a) => (a.output_least, a.output_greatest),
             Amplifier::Transconductance(a) => (a.output_least, a.output_greatest),
+            Amplifier::Digital(digital) => digital.output_limits(),
             Amplifier::ShuntRegulator(a) => a.control_limits(&self.parts, self.dc_output_voltage(), a.ratio()),
         }
     }

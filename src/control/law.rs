@@ -186,6 +186,19 @@ impl ControlLaw {
         (least, self.clamp.map_or(greatest, |clamp| clamp.min(greatest)))
     }
 
+    /// How long into a period the comparator decides, as a share of it, where it decides once on the value the control voltage has at the
+    /// period's start; none where the control voltage acts throughout, as on the inner loop of average current mode.
+    ///
+    /// The delay that a value set once a period suffers there: of a uniformly sampled trailing edge D·T. Van de Sype, De Gussemé, Van den
+    /// Bossche & Melkebeek, APEC 2004 (from memory); in current mode the comparator reads the held value at its own edge.
+    pub fn decision_share(&self, duty: f64) -> Option<f64> {
+        match self.mode {
+            Mode::Voltage(_) | Mode::Current(Edge::Peak, _) => Some(duty),
+            Mode::Current(Edge::Valley, _) => Some(1.0 - duty),
+            Mode::Average(_) => None,
+        }
+    }
+
     /// The current sense of peak and valley current mode.
     pub fn current(&self) -> Option<(Edge, &CurrentSense)> {
         if let Mode::Current(edge, sense) = &self.mode { Some((*edge, sense)) } else { None }

@@ -56,7 +56,7 @@ pub use filters::Damping;
 pub use further::{Further, FurtherValue};
 pub use landmark::{BANK, Form, Landmark, RestingForms, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
-pub use registry::{find, registry};
+pub use registry::{find, pulse_frequency, registry};
 pub use sizing::{Size, Sized, Sizing};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
 pub use switching::{SwitchingEquations, SwitchingRows};

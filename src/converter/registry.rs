@@ -3,7 +3,7 @@
 use super::topologies::{boost, buck, buck_boost, cuk, flyback, sepic};
 use super::topologies::{forward, four_switch, full_bridge, half_bridge, push_pull};
 use super::topology::Topology;
-use crate::quantity::ChoiceOption;
+use crate::quantity::{ChoiceOption, Choices, Values};
 
 /// All topologies, in the order shown.
 #[rustfmt::skip]
@@ -38,6 +38,14 @@ pub(super) static OPTIONS: [ChoiceOption; COUNT] = {
 /// All topologies, in the order shown.
 pub fn registry() -> &'static [&'static Topology] {
     REGISTRY
+}
+
+/// Frequency of the pulses of the stage that these values and choices describe [Hz]: of each switch, times the switches that take turns.
+/// None without a usable one.
+pub fn pulse_frequency(values: &Values, choices: &Choices) -> Option<f64> {
+    let pulses = choices.get("stage.topology").and_then(find).map_or(1, |topology| topology.pulses);
+    let frequency = values.get("stage.switching-frequency")? * f64::from(pulses);
+    (frequency.is_finite() && frequency > 0.0).then_some(frequency)
 }
 
 /// The topology with this key.

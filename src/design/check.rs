@@ -42,6 +42,15 @@ pub struct CheckedDesign {
 }
 
 impl Design {
+    /// The compensator alone, as far as it can be used without the rest.
+    ///
+    /// # Errors
+    /// Every problem of its entries.
+    pub fn compensator(&self) -> Result<Compensator, Vec<Finding>> {
+        let pulses_hz = converter::pulse_frequency(&self.values, &self.choices);
+        Compensator::from_values_at(&self.values, &self.choices, pulses_hz)
+    }
+
     /// Turns the entries into typed parts.
     ///
     /// # Errors
@@ -51,7 +60,7 @@ impl Design {
         problems.extend(self.order_problems());
         problems.extend(self.reach_problems());
         let mut rooms = Rooms { problems };
-        let compensator = rooms.build("compensator", || Compensator::from_values(&self.values, &self.choices));
+        let compensator = rooms.build("compensator", || self.compensator());
         let law = rooms.build("control", || ControlLaw::from_values(&self.values, &self.choices));
         let requirements = rooms.build("requirement", || Requirements::from_values(&self.values));
         let events = rooms.build("event", || Ok(Events::from_values(&self.values)));

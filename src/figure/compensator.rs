@@ -54,6 +54,9 @@ struct Sheet<'a> {
 
 /// The schematic of a compensator.
 pub fn compensator_schematic(compensator: &Compensator, numbers: &Numbers<'_>) -> Figure {
+    if let Some(digital) = compensator.digital() {
+        return super::equation::equation_figure(&digital, numbers);
+    }
     let mut sheet = Sheet { pen: Pen::default(), places: Vec::new(), frame: Frame::new(0.0, 0.0, 0.0, 0.0), numbers };
     let op_amp = matches!(compensator.amplifier, Amplifier::OpAmp(_));
     let over = match compensator.kind {

@@ -4,6 +4,7 @@ pub mod axis;
 mod bode;
 mod chart;
 mod compensator;
+mod equation;
 mod ladder;
 mod pen;
 mod plan;

@@ -255,6 +255,41 @@ fn compensator_schematics_keep_the_rules_and_have_every_part() {
     }
 }
 
+#[test]
+fn drawings_of_difference_equations_keep_the_rules_and_have_every_entry() {
+    for mode in ["voltage", "peak-current", "average-current"] {
+        for order in ["2", "3"] {
+            for zeros in ["1", "2"] {
+                for (bits, frequency) in [(16.0, 300e3), (32.0, 1.234e6), (8.0, 20e3)] {
+                    let mut design = Design::default();
+                    for (path, key) in [
+                        ("compensator.amplifier", "digital"),
+                        ("control.mode", mode),
+                        ("compensator.digital.order", order),
+                        ("compensator.digital.zeros", zeros),
+                        ("compensator.digital.method", "tustin-prewarped"),
+                    ] {
+                        design.set_from_text(path, key).unwrap();
+                    }
+                    design.values.set("compensator.digital.bits", bits).unwrap();
+                    design.values.set("stage.switching-frequency", frequency).unwrap();
+                    for lane in ["pole-1", "pole-2", "prewarp"] {
+                        design.values.set(&format!("compensator.digital.{lane}"), 0.2 * frequency).unwrap();
+                    }
+                    let compensator = Compensator::from_values(&design.values, &design.choices).unwrap();
+                    let figure = compensator_schematic(&compensator, &numbers(&design));
+                    let what = format!("{mode} {order} {zeros} {bits}");
+                    keeps_rules(&figure, &what);
+                    let stands = |path: &str| figure.places.iter().any(|place| place.paths.iter().any(|p| p == path));
+                    for entry in design.entries().iter().filter(|entry| entry.path.starts_with("compensator.")) {
+                        assert!(stands(entry.path), "{what}: {}", entry.path);
+                    }
+                }
+            }
+        }
+    }
+}
+
 /// Stages that no topology draws yet: parts over others, chains in columns, a transformer, a capacitor along the rail.
 #[test]
 fn sketches_of_other_stages_keep_the_rules() {

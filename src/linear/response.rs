@@ -13,7 +13,7 @@ use std::f64::consts::{LN_10, PI, TAU};
 use wide::f64x4;
 
 use super::kernel::{angle, ln_ratio};
-use super::{Complex, Zpk};
+use super::{Complex, DiscreteFactors, FrequencyResponse, LogPoint, Zpk};
 
 /// Sections multiplied before a logarithm is taken: keeps the squares within the number range for corners 1e18 away.
 const SECTIONS_PER_GROUP: usize = 4;
@@ -23,54 +23,6 @@ const BLOCK: usize = 4;
 
 /// Decibels per neper.
 const DB_PER_NEPER: f64 = 20.0 / LN_10;
-
-/// Logarithmic gain and phase at one frequency, with their slopes.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct LogPoint {
-    /// Natural logarithm of the magnitude.
-    pub ln_gain: f64,
-    /// Unwrapped phase [rad].
-    pub phase_rad: f64,
-    /// d ln|T| / d ln f; 1 is 20 dB per decade.
-    pub gain_slope: f64,
-    /// d phase / d ln f [rad].
-    pub phase_slope: f64,
-}
-
-impl LogPoint {
-    /// The complex value; a magnitude beyond the number range is cut off at 1e±300.
-    pub fn value(&self) -> Complex {
-        Complex::from_polar(self.ln_gain.clamp(-690.0, 690.0).exp(), self.phase_rad)
-    }
-}
-
-/// Anything that answers at a frequency: a model, or a measured response.
-pub trait FrequencyResponse {
-    /// Gain and unwrapped phase at a frequency [Hz], with their slopes.
-    fn log_point(&self, f_hz: f64) -> LogPoint;
-
-    /// Frequencies [Hz], in any order, where a scan must look closely: resonances, notches, measured points.
-    fn breakpoints_hz(&self) -> Vec<f64>;
-
-    /// The band [Hz] in which the response is known; everything when `None`.
-    fn band_hz(&self) -> Option<(f64, f64)> {
-        None
-    }
-
-    /// The complex value at a frequency [Hz].
-    fn at_hz(&self, f_hz: f64) -> Complex {
-        self.log_point(f_hz).value()
-    }
-
-    /// ln|T| and unwrapped phase [rad] at many frequencies [Hz]; the three slices are of one length.
-    fn log_curve(&self, frequencies_hz: &[f64], ln_gain: &mut [f64], phase_rad: &mut [f64]) {
-        for ((f, gain), phase) in frequencies_hz.iter().zip(ln_gain).zip(phase_rad) {
-            let point = self.log_point(*f);
-            *gain = point.ln_gain;
-            *phase = point.phase_rad;
-        }
-    }
-}
 
 /// What a factor of a response is.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -117,6 +69,7 @@ pub struct FactoredResponse {
     /// ln of the gain with every factor in the form 1 − s/root; −∞ for a response that is zero.
     ln_scale: f64,
     negative: bool,
+    discrete: Option<DiscreteFactors>,
 }
 
 impl FactoredResponse {
@@ -136,7 +89,21 @@ impl FactoredResponse {
             }
         }
         let (zeros, poles) = (sections(&zpk.zeros), sections(&zpk.poles));
-        Self { zpk, delay_s, zeros, poles, origin, ln_scale, negative }
+        Self { zpk, delay_s, zeros, poles, origin, ln_scale, negative, discrete: None }
+    }
+
+    /// The same times factors in z = e^(jωT), with their gain at `1 − r·z⁻¹`. Everything but gain and phase, such as the encirclement count, knows nothing of
+    /// them; a search for margins ends at half the sampling frequency.
+    #[must_use]
+    pub fn with_discrete(mut self, factors: DiscreteFactors) -> Self {
+        self.negative ^= factors.negative();
+        self.discrete = Some(factors);
+        self
+    }
+
+    /// Factors in z, where there are some.
+    pub fn discrete(&self) -> Option<&DiscreteFactors> {
+        self.discrete.as_ref()
     }
 
     /// Zeros, poles and gain.
@@ -208,8 +175,27 @@ impl FactoredResponse {
 
     /// Gain and phase in the units asked for, in blocks of many frequencies and a remainder.
     fn scan(&self, frequencies_hz: &[f64], gain: &mut [f64], phase: &mut [f64], gain_unit: f64, phase_unit: f64) {
-        const POINTS: usize = 4 * BLOCK;
         let count = frequencies_hz.len().min(gain.len()).min(phase.len());
+        self.scan_continuous(frequencies_hz, gain, phase, (gain_unit, phase_unit), count);
+        if let Some(discrete) = &self.discrete {
+            for ((f, gain), phase) in frequencies_hz.iter().zip(gain).zip(phase) {
+                let point = discrete.log_point(*f);
+                *gain += point.ln_gain * gain_unit;
+                *phase += point.phase_rad * phase_unit;
+            }
+        }
+    }
+
+    /// The same without factors in z.
+    fn scan_continuous(
+        &self,
+        frequencies_hz: &[f64],
+        gain: &mut [f64],
+        phase: &mut [f64],
+        (gain_unit, phase_unit): (f64, f64),
+        count: usize,
+    ) {
+        const POINTS: usize = 4 * BLOCK;
         let whole = count - count % POINTS;
         let mut done = 0;
         while done < whole {
@@ -313,15 +299,25 @@ impl FrequencyResponse for FactoredResponse {
             }
         }
         let first = |v: f64x4| v.to_array()[0];
-        LogPoint { ln_gain: first(values.ln_gain[0]), phase_rad: first(values.phase[0]), gain_slope, phase_slope }
+        let continuous =
+            LogPoint { ln_gain: first(values.ln_gain[0]), phase_rad: first(values.phase[0]), gain_slope, phase_slope };
+        match &self.discrete {
+            Some(discrete) => continuous.times(&discrete.log_point(f_hz)),
+            None => continuous,
+        }
     }
 
     fn log_curve(&self, frequencies_hz: &[f64], ln_gain: &mut [f64], phase_rad: &mut [f64]) {
         self.scan(frequencies_hz, ln_gain, phase_rad, 1.0, 1.0);
     }
 
+    fn band_hz(&self) -> Option<(f64, f64)> {
+        self.discrete.as_ref().map(|discrete| (0.0, discrete.highest_hz()))
+    }
+
     fn breakpoints_hz(&self) -> Vec<f64> {
-        let mut found = Vec::with_capacity(8 * (self.zpk.zeros.len() + self.zpk.poles.len()));
+        let mut found = self.discrete.as_ref().map(DiscreteFactors::breakpoints_hz).unwrap_or_default();
+        found.reserve(8 * (self.zpk.zeros.len() + self.zpk.poles.len()));
         for root in self.zpk.zeros.iter().chain(&self.zpk.poles).filter(|r| r.im > 0.0) {
             let size = root.norm();
             // Half the width of the resonance in ln f; below 1e-12 the points fall together.

@@ -1,5 +1,6 @@
 //! What leaves the program: pictures, tables, curves.
 
+pub mod coefficients;
 mod curves;
 #[cfg(feature = "window")]
 mod png;

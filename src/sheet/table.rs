@@ -1,5 +1,6 @@
 //! Tables for the clipboard: rows with tabs between the columns, so that they paste into a spreadsheet, a mail or a ticket.
 
+use super::coefficients::coefficient_list;
 use crate::analysis::{Analysis, LimitKind, Readout};
 use crate::compensator::Series;
 use crate::design::{CheckedDesign, Design, entry, printable};
@@ -19,7 +20,11 @@ pub fn parts_list(design: &Design, checked: &CheckedDesign) -> String {
         let value = print(checked.compensator.parts.get(part), entry.unit);
         rows.push(row(&[entry.name, &value, series.key(), kept]));
     }
-    headed(&design.title, "compensator parts", &rows)
+    let parts = headed(&design.title, "compensator parts", &rows);
+    match checked.compensator.digital().and_then(|digital| coefficient_list(&design.title, &digital)) {
+        Some(coefficients) => format!("{parts}\n{coefficients}"),
+        None => parts,
+    }
 }
 
 /// Every read-out: at the shown condition, worst of the conditions and where, what is required and whether it is met.

@@ -1,6 +1,7 @@
 //! The report as JSON. Its fields are documented in the room's docs and kept stable.
 
 use super::check::Report;
+use super::digital::{self, Digital};
 use super::input_filter::{self, InputFilter};
 use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
 use crate::converter::FurtherValue;
@@ -26,6 +27,7 @@ struct Object<'a> {
     conditions: Vec<NineRow<'a>>,
     worst: Vec<Worst<'a>>,
     response: Vec<Response>,
+    digital: Option<Digital>,
     input_filter: Option<InputFilter>,
     load_step: Option<LoadStep>,
     load_sweep: Option<super::sweep::Sweep>,
@@ -239,6 +241,7 @@ fn object(report: &Report) -> Object<'_> {
         conditions: analysis.map(|a| a.conditions.iter().map(nine_row).collect()).unwrap_or_default(),
         worst: analysis.map(worst).unwrap_or_default(),
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
+        digital: detail.and_then(digital::object),
         input_filter: detail.and_then(input_filter::object),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
         load_sweep: report.load_sweep.as_ref().map(super::sweep::json),

@@ -31,6 +31,12 @@
 //! | `input_filter.margins` | `[{against, margin_db, frequency_hz, converter_ohm, filter_ohm}]`: least distance of the filter's output impedance below each input impedance |
 //! | `input_filter.optimum_damping` | `{across, ratio, resistance_ohm, capacitance_f, inductance_h, peak_ohm, peak_hz}` |
 //! | `input_filter.response` | `[{frequency_hz, filter_ohm, filter_deg, open_loop_ohm, open_loop_deg, nulled_ohm, nulled_deg, closed_loop_ohm, closed_loop_deg}]` |
+//! | `digital` | `null` without a difference equation; `{method, exact_at_hz, sample_period_s, computation_s, modulator_delay_s, held, input_range_v, output_range_v, word_length, forward_fraction_bits, feedback_fraction_bits, equation, feedback, forward, lanes, before_rounding, sampled_loop, poles_z}`; `modulator_delay_s` is `null` where the value is `held` for a period |
+//! | `digital.feedback`, `digital.forward` | `[{value, exact, code}]`: a1, a2, … and b0, b1, …; value is code / 2^fraction bits, exact the value before rounding |
+//! | `digital.lanes` | `[{key, aim_hz, as_built_hz}]` |
+//! | `digital.before_rounding` | `{stable, crossover_hz, phase_margin_deg, gain_margin_db}` of the loop with the coefficients before rounding |
+//! | `digital.sampled_loop` | `{crossover_hz, phase_margin_deg, gain_margin_db, modulus_margin}` of the loop as it is sampled, all bands folded |
+//! | `digital.poles_z` | `[[re, im]]`, closed-loop poles in the z plane |
 //! | `load_step` | `{step_a, deviation_v, settling_s}` |
 //! | `load_sweep` | with `--load-sweep`, else `null`: per input voltage `[{input_voltage, boundary_load, points}]`; conduction is discontinuous below the boundary |
 //! | `load_sweep.points` | `[{load_current, duty, conduction, crossover_hz, phase_margin_deg, gain_margin_db, stable, problem}]`, rising; a point stands on either side of the boundary |
@@ -52,6 +58,7 @@
 
 mod arguments;
 mod check;
+mod digital;
 mod input_filter;
 mod json;
 mod sweep;

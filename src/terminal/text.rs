@@ -29,6 +29,7 @@ pub(super) fn write(
         operating_point(&mut text, detail, analysis);
         landmarks(&mut text, detail);
         input_filter(&mut text, detail);
+        text.push_str(&super::digital::text(detail));
         stability(&mut text, detail);
     }
     readouts(&mut text, analysis, design);

@@ -57,7 +57,7 @@ fn colour(role: LedgerRole, palette: &Palette) -> Color32 {
     match role {
         LedgerRole::HalfTurn | LedgerRole::Turns => palette.held,
         LedgerRole::Compensator => palette.compensator,
-        LedgerRole::Amplifier => palette.compensator.gamma_multiply(0.6),
+        LedgerRole::Amplifier | LedgerRole::Sampling => palette.compensator.gamma_multiply(0.6),
         LedgerRole::Plant => palette.plant,
         LedgerRole::RightHalfPlane => palette.plant.gamma_multiply(0.75),
         LedgerRole::Delay => palette.weak,
@@ -101,6 +101,7 @@ fn term(row: &LedgerRow) -> &'static str {
         (LedgerRole::Compensator, Some(lane)) if lane.starts_with("pole") => "compensator-pole",
         (LedgerRole::Compensator, _) => "compensator-zero",
         (LedgerRole::Amplifier, _) => "amplifier",
+        (LedgerRole::Sampling, _) => "sampling-share",
         (LedgerRole::Plant, _) => "plant-phase",
         (LedgerRole::RightHalfPlane, _) => "right-half-plane-zero",
         (LedgerRole::Delay, _) => "delay",

@@ -11,7 +11,7 @@ use super::findings::lower_first;
 use super::session::{BadText, Session};
 use super::view::{Dialog, Message};
 use crate::analysis::Level;
-use crate::compensator::{Compensator, Series};
+use crate::compensator::Series;
 use crate::design;
 
 /// Step of the text size, and its least and greatest.
@@ -376,7 +376,7 @@ fn enter(session: &mut Session, path: &'static str, text: String) {
 fn round_parts(session: &mut Session) {
     session.change("Round parts to their series", None, |document| {
         let design = &mut document.design;
-        if let Ok(compensator) = Compensator::from_values(&design.values, &design.choices) {
+        if let Ok(compensator) = design.compensator() {
             let series = |path: &str| design.choices.get(path).and_then(Series::from_key).unwrap_or(Series::Exact);
             let (resistors, capacitors) =
                 (series("compensator.series.resistors"), series("compensator.series.capacitors"));

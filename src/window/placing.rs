@@ -95,7 +95,7 @@ impl Session {
     /// Moves a lane, and with it what it is tied to, by finding parts for it, reckoned from where the gesture began.
     pub fn move_lane(&mut self, key: &'static str, frequency_hz: f64, gesture: Gesture) {
         let start = self.design_before(gesture);
-        let Ok(compensator) = Compensator::from_values(&start.values, &start.choices) else { return };
+        let Ok(compensator) = start.compensator() else { return };
         let moved = self.moved_together(&compensator, key, frequency_hz);
         let locks = start.locks.clone();
         let (compensator, why) = match moved.as_slice() {

@@ -9,7 +9,6 @@ use super::pointed::{Pointed, Sheet};
 use super::session::Session;
 use super::theme::palette;
 use super::view::Desk;
-use crate::compensator::Compensator;
 
 use crate::figure::axis::narrow;
 use crate::figure::{self, Figure, Mark, Numbers, Place};
@@ -80,9 +79,9 @@ impl Kept {
         let numbers = Numbers { design, condition: condition.filter(|_| !session.stale()) };
         let figure = match sheet {
             Sheet::Stage => figure::stage_schematic(&numbers, f64::from(width)),
-            Sheet::Compensator => Compensator::from_values(&design.values, &design.choices)
-                .ok()
-                .map(|compensator| figure::compensator_schematic(&compensator, &numbers)),
+            Sheet::Compensator => {
+                design.compensator().ok().map(|compensator| figure::compensator_schematic(&compensator, &numbers))
+            }
         };
         if let Some(figure) = figure {
             self.figure = figure;

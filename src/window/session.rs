@@ -11,7 +11,7 @@ use super::held::{Held, Tries};
 use super::history::{Gesture, History};
 use super::placing::Hand;
 use crate::analysis::{self, Analysis, Level, Request, Shown};
-use crate::compensator::{Compensator, Lane};
+use crate::compensator::Lane;
 use crate::design::{CheckedDesign, Design};
 use crate::finding::Finding;
 
@@ -361,7 +361,7 @@ impl Session {
         self.analysed = Some(self.generation);
         self.problems = self.document.bad_texts.values().map(|bad| bad.finding.clone()).collect();
         let design = &self.document.design;
-        if let Ok(compensator) = Compensator::from_values(&design.values, &design.choices) {
+        if let Ok(compensator) = design.compensator() {
             self.lanes = compensator.lanes();
         }
         let request = self.request();

@@ -66,7 +66,7 @@ fn design_of(topology: &Topology, mode: &str, rectifier: &str, over_boundary: f6
     design
 }
 
-fn each(try_one: impl Fn(&Design, Conduction)) {
+pub(crate) fn each(try_one: impl Fn(&Design, Conduction)) {
     let mut count = 0;
     for topology in converter::registry() {
         for mode in MODES {
@@ -116,7 +116,7 @@ fn every_mode_goes_through_a_file() {
 }
 
 /// A number in the text that is none, if there is one; prose of the findings has no such words.
-fn no_number(text: &str) -> Option<&str> {
+pub(crate) fn no_number(text: &str) -> Option<&str> {
     text.split(|c: char| !c.is_alphanumeric()).find(|word| matches!(*word, "NaN" | "inf"))
 }
 

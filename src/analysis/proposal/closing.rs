@@ -10,7 +10,7 @@ use super::propose::Proposal;
 use super::stage::{aim, rounded_up};
 use crate::analysis::loop_model::{LoopModel, Shared};
 use crate::analysis::{Analysis, Level, LimitKind, Request, RequirementVerdict, Shown, analyse};
-use crate::compensator::{Compensator, KFactorGoal, Part, Series};
+use crate::compensator::{KFactorGoal, Part, Series};
 use crate::converter::StageCondition;
 use crate::design::{self, CheckedDesign, Design};
 use crate::finding::Finding;
@@ -206,7 +206,7 @@ fn aim_text(draft: &Draft) -> String {
 
 /// The parts of the compensator as assumptions.
 fn compensator(draft: &mut Draft, margin_deg: f64) {
-    let Ok(compensator) = Compensator::from_values(&draft.design.values, &draft.design.choices) else { return };
+    let Ok(compensator) = draft.design.compensator() else { return };
     let at = text(margin_deg, Unit::Degree);
     for part in compensator.fitted().into_iter().filter(|part| !matches!(part, Part::Upper | Part::Lower)) {
         let Some(entry) = design::entry(part.path()) else { continue };
