@@ -4,6 +4,7 @@
 //! rounded intermediate results.
 #![expect(clippy::expect_used, clippy::panic, reason = "a test may stop at a wrong or missing value")]
 
+mod analyser;
 mod common;
 mod compensator;
 mod controlled;

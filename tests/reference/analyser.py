@@ -78,11 +78,14 @@ class Analyser(Orbit):
         for p, (which, length, event) in enumerate(phases):
             a, b1, bv, out = self.intervals[which]
             rotated = a - 1j * omega * np.eye(n)
-            step = expm(rotated * length)
+            # The exponential, its integral and that one's in one, for an interval may hold a current that nothing damps.
+            grown = np.zeros((3 * n, 3 * n), complex)
+            grown[:n, :n], grown[:n, n:2 * n], grown[n:2 * n, 2 * n:] = rotated, np.eye(n), np.eye(n)
+            grown = expm(grown * length)
+            step, once, twice = grown[:n, :n], grown[:n, n:2 * n], grown[:n, 2 * n:]
             drive = self.drives[which] @ unit
-            forced = np.linalg.solve(rotated, step - np.eye(n)) @ drive
-            after = step @ psi + forced
-            integral = np.linalg.solve(rotated, after - psi - drive * length)
+            after = step @ psi + once @ drive
+            integral = once @ psi + twice @ drive
             read[0] += out[:n] @ integral + self.direct[which] @ unit * length
             read[1] += self.control_row @ integral
             psi = after
@@ -207,7 +210,7 @@ def result(design):
         "mean_output": float(analyser.mean), "frequencies_hz": frequencies.tolist(),
         "responses": {name: pairs(curve) for name, curve in read.items()},
         "plant": pairs(Orbit(loop).plant(frequencies)),
-        "multipliers": pairs(z for z in multipliers if abs(z) > 1e-4),
+        "multipliers": pairs(sorted((z for z in multipliers if abs(z) > 1e-4), key=lambda z: (-round(abs(z), 9), z.imag))),
         "figures": {name: [float(v) for v in row] for name, row in analyser.figures().items()},
     }
 
