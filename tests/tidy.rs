@@ -204,7 +204,7 @@ fn every_topology_file_is_registered() {
     for file in rust_files("src/converter/topologies").into_iter().filter(|file| !file.ends_with("mod.rs")) {
         let name = file.file_stem().and_then(|stem| stem.to_str()).expect("UTF-8").to_owned();
         assert!(declared.contains(&format!("mod {name};")), "{name} is not declared");
-        assert!(registry.contains(&format!("&{name}::TOPOLOGY")), "{name} is not registered");
+        assert!(registry.contains(&format!("&topologies::{name}::TOPOLOGY,")), "{name} is not registered");
         count += 1;
     }
     assert_eq!(count, polewright::converter::registry().len());

@@ -15,8 +15,11 @@ use std::f64::consts::TAU;
 const SMALL_DEG: f64 = 0.05;
 
 /// How the rows of the stage begin that belong to a landmark, with its key.
-const LANDMARKS: [(&str, &str); 5] = [
+const LANDMARKS: [(&str, &str); 8] = [
     ("LC resonance", "lc-resonance"),
+    ("second resonance", "second-resonance"),
+    ("zero pair", "zero-pair"),
+    ("RHP zero pair", "zero-pair"),
     ("ESR zero", "esr-zero"),
     ("RHP zero", "right-half-plane-zero"),
     ("low pole", "low-pole"),
@@ -191,7 +194,10 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
         FactorKind::Zero if right && model.controlled.inner.is_some() && f > half => {
             (format!("delay of the inner loop {at}"), LedgerRole::Delay)
         }
-        FactorKind::Zero if right => (format!("RHP zero {at}"), LedgerRole::RightHalfPlane),
+        FactorKind::Zero if right => {
+            let pair = if factor.root.im == 0.0 { "" } else { " pair" };
+            (format!("RHP zero{pair} {at}"), LedgerRole::RightHalfPlane)
+        }
         FactorKind::Zero if factor.root.im != 0.0 => (format!("zero pair {at}"), LedgerRole::Plant),
         FactorKind::Zero if near("esr-zero") => (format!("ESR zero {at}"), LedgerRole::Plant),
         FactorKind::Zero => (format!("stage zero {at}"), LedgerRole::Plant),
@@ -206,6 +212,9 @@ fn plant_row(factor: &FactorPhase, landmarks: &[Landmark], model: &LoopModel) ->
         }
         FactorKind::Pole if factor.root.im != 0.0 && near("lc-resonance") => {
             (format!("LC resonance {at}"), LedgerRole::Plant)
+        }
+        FactorKind::Pole if factor.root.im != 0.0 && near("second-resonance") => {
+            (format!("second resonance {at}"), LedgerRole::Plant)
         }
         FactorKind::Pole if factor.root.im != 0.0 => (format!("resonance {at}"), LedgerRole::Plant),
         FactorKind::Pole if near("second-pole") => (format!("second pole {at}"), LedgerRole::Plant),

@@ -149,7 +149,22 @@ pub static TERMS: &[Term] = &[
         "lc-resonance",
         "LC resonance",
         "Resonance of the inductor with the output bank: the plant falls by 40 dB per decade above it and loses up to 180°.",
-        "f0 = 1 / (2π·√(Le·C)), Le = L of a buck, L/(1 − D)² of a boost or buck-boost",
+        "f0 = 1 / (2π·√(Le·C)), Le = L of a buck, L/(1 − D)² of a boost or buck-boost, n²·L/(1 − D)² of a flyback; of two inductors the lower root of their characteristic equation",
+    ),
+    term(
+        "second-resonance",
+        "Second resonance",
+        "Resonance of the coupling capacitor with both inductors: the plant falls by another 40 dB per decade above it. Near it stands a \
+         zero pair; where that lies in the right half-plane the two do not cancel but turn the phase by a whole turn. Lo is what the \
+         output sees, Lr what a current round through both inductors sees.",
+        "upper ω of C·Cc·(L1·L2 − M²)·ω⁴ − a2·ω² + (1 − D)² = 0; Lo = L1·D² + L2·(1 − D)² + 2M·D·(1 − D), Lr = L1 + L2 − 2M; a2 = C·Lo + Cc·Lr·(1 − D)² of a SEPIC, C·Lo + Cc·L1 of a Ćuk",
+    ),
+    term(
+        "zero-pair",
+        "Zero pair",
+        "Where the coupling capacitor takes the current that should reach the output. The load turns the pair into the right half-plane; \
+         losses, or a damping branch across the coupling capacitor, turn it back. Undamped it is the end of the loop's crossover.",
+        "SEPIC: 1 / (2π·√((L1 + L2 − 2M)·Cc)); Ćuk: √(1 − D) / (2π·√((L1 − M)·Cc))",
     ),
     term(
         "low-pole",
@@ -174,7 +189,7 @@ pub static TERMS: &[Term] = &[
         "RHP zero",
         "A stage that charges its inductor before it serves the output answers the wrong way first: gain rises as at a zero, \
          phase falls as at a pole. No compensator can take it away.",
-        "f_RHP = (1 − D)²·R / (2π·L) of a boost, divided by D for a buck-boost",
+        "f_RHP = (1 − D)²·R / (2π·L) of a boost, divided by D for a buck-boost, by D·n² for a flyback",
     ),
     term(
         "input-filter",

@@ -23,7 +23,7 @@ impl ControlLaw {
         }
         let parts = low_pole_parts(&stage);
         // The current loop takes the inductor out of the plant, in either conduction mode.
-        stage.retain(|mark| !matches!(mark.key, "lc-resonance" | "low-pole" | "second-pole"));
+        stage.retain(|mark| !matches!(mark.key, "lc-resonance" | "second-resonance" | "low-pole" | "second-pole"));
         let lowest = plant.poles.iter().filter(|p| p.im == 0.0 && p.re < 0.0).map(|p| -p.re / TAU);
         if let Some(frequency_hz) = lowest.min_by(f64::total_cmp) {
             let low =

@@ -3,7 +3,7 @@
 use super::bank::Branch;
 use super::stage::{LoadKind, Stage};
 use super::topology::Topology;
-use crate::linear::Zpk;
+use crate::linear::{Complex, Zpk};
 use std::f64::consts::TAU;
 
 /// The lossless quantities textbook formulas are written in.
@@ -200,7 +200,9 @@ fn read_off(
 fn esr_zero(stage: &Stage, plant: &Zpk) -> Option<Landmark> {
     let (key, name, branches) = ("esr-zero", "ESR zero", stage.bank.len());
     let Some(only) = bank_of_one(stage) else {
-        let left = plant.zeros.iter().filter(|z| z.re < 0.0 && z.im >= 0.0).map(|z| z.norm()).min_by(f64::total_cmp);
+        // A pair of the coupling capacitor is none of the bank's.
+        let of_bank = |z: &&Complex| z.re < 0.0 && (z.im == 0.0 || z.im > 0.0 && stage.coupling_capacitance <= 0.0);
+        let left = plant.zeros.iter().filter(of_bank).map(|z| z.norm()).min_by(f64::total_cmp);
         return read_off(key, name, left.map(|norm| norm / TAU), READ_OFF, branches);
     };
     (only.esr > 0.0).then(|| Landmark {

@@ -22,6 +22,8 @@ mod filter_values;
 mod filters;
 mod further;
 mod landmark;
+#[cfg(test)]
+mod made_up;
 mod magnetics;
 mod operating_point;
 mod phases;

@@ -1,24 +1,24 @@
 //! The registry of topologies: one line each.
 
-use super::topologies::{boost, buck, buck_boost, cuk, flyback, sepic};
-use super::topologies::{forward, four_switch, full_bridge, half_bridge, push_pull};
+use super::topologies;
 use super::topology::Topology;
 use crate::quantity::{ChoiceOption, Choices, Values};
 
 /// All topologies, in the order shown.
 #[rustfmt::skip]
 static REGISTRY: &[&Topology] = &[
-    &buck::TOPOLOGY,
-    &boost::TOPOLOGY,
-    &buck_boost::TOPOLOGY,
-    &four_switch::TOPOLOGY,
-    &sepic::TOPOLOGY,
-    &cuk::TOPOLOGY,
-    &flyback::TOPOLOGY,
-    &forward::TOPOLOGY,
-    &push_pull::TOPOLOGY,
-    &half_bridge::TOPOLOGY,
-    &full_bridge::TOPOLOGY,
+    &topologies::buck::TOPOLOGY,
+    &topologies::boost::TOPOLOGY,
+    &topologies::buck_boost::TOPOLOGY,
+    &topologies::four_switch::TOPOLOGY,
+    &topologies::sepic::TOPOLOGY,
+    &topologies::cuk::TOPOLOGY,
+    &topologies::flyback::TOPOLOGY,
+    &topologies::forward::TOPOLOGY,
+    &topologies::push_pull::TOPOLOGY,
+    &topologies::half_bridge::TOPOLOGY,
+    &topologies::full_bridge::TOPOLOGY,
+    #[cfg(test)] &super::made_up::TOPOLOGY,
 ];
 
 const COUNT: usize = REGISTRY.len();

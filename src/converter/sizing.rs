@@ -49,10 +49,15 @@ impl Sized {
     }
 }
 
-/// A positive number to two significant digits.
+/// A positive number to two significant digits, as one would write it: 7.5e-6, not a rounding error beside it.
 pub(super) fn two_digits(value: f64) -> f64 {
-    let step = 10_f64.powf(value.log10().floor() - 1.0);
-    if step.is_finite() && step > 0.0 { (value / step).round() * step } else { value }
+    let exponent = value.log10().floor() - 1.0;
+    if !exponent.is_finite() {
+        return value;
+    }
+    // Powers of ten with a positive exponent are exact as far as entries reach, those with a negative one are not.
+    let power = 10_f64.powf(exponent.abs()).round();
+    if exponent < 0.0 { (value * power).round() / power } else { (value / power).round() * power }
 }
 
 #[cfg(test)]
@@ -64,6 +69,7 @@ mod tests {
         for (value, kept) in [(0.23456, 0.23), (1.0, 1.0), (98.7, 99.0), (4.567e-6, 4.6e-6)] {
             assert!((two_digits(value) / kept - 1.0).abs() < 1e-12, "{value}");
         }
+        assert_eq!(two_digits(7.49999e-6).to_bits(), 7.5e-6_f64.to_bits());
         assert!(two_digits(f64::NAN).is_nan());
     }
 }

@@ -89,6 +89,9 @@ static ALL: &[Sample] = &[
         "Tide gauge",
         "A boost whose synchronous switch emulates a diode: both conduction modes in one day's work."
     ),
+    sample!("ferry-gate.ron", "Ferry gate", "An isolated flyback in peak current mode, sensed on the primary side."),
+    sample!("market-stall.ron", "Market stall", "A SEPIC whose coupled inductors move the zero pair out of the way."),
+    sample!("organ-tuner.ron", "Organ tuner", "A Ćuk whose coupling capacitor is damped by a branch."),
     sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",

@@ -177,26 +177,16 @@ fn designs() -> Vec<(String, Design)> {
     all
 }
 
-/// Every combination of all other choices of the stage, which add filters and what is not thought of yet.
+/// Every combination of all other choices of the stage, which add filters and what is not thought of yet; of those that only some
+/// topologies have, with these alone.
 fn further() -> Vec<(String, Design)> {
-    let known = ["stage.topology", "stage.bank", "stage.load", "stage.rectifier"];
-    let others =
-        design::all_choices().filter(|choice| choice.path.starts_with("stage.") && !known.contains(&choice.path));
-    let mut combinations: Vec<Vec<(&str, &str)>> = vec![Vec::new()];
-    for choice in others {
-        let each = |chosen: &Vec<(&'static str, &'static str)>| {
-            let one = |key| chosen.iter().copied().chain([(choice.path, key)]).collect::<Vec<_>>();
-            choice.options.iter().map(|option| one(option.key)).collect::<Vec<_>>()
-        };
-        combinations = combinations.iter().flat_map(each).collect();
-    }
     let mut all = Vec::new();
     for topology in converter::registry() {
         for bank in ["1", "4"] {
-            for combination in &combinations {
+            for combination in combinations(topology) {
                 let mut design = Design::default();
                 design.values.set("stage.source.resistance", 0.0125).unwrap();
-                for (path, key) in combination.iter().chain(&[("stage.topology", topology.key), ("stage.bank", bank)]) {
+                for (path, key) in [("stage.topology", topology.key), ("stage.bank", bank)].iter().chain(&combination) {
                     design.set_from_text(path, key).unwrap();
                 }
                 all.push((format!("{} {bank} {combination:?}", topology.key), design));
@@ -204,6 +194,23 @@ fn further() -> Vec<(String, Design)> {
         }
     }
     all
+}
+
+fn combinations(topology: &converter::Topology) -> Vec<Vec<(&'static str, &'static str)>> {
+    let known = ["stage.topology", "stage.bank", "stage.load", "stage.rectifier"];
+    let own = |path: &str| topology.choices.iter().any(|choice| choice.path == path);
+    let others = converter::choices()
+        .iter()
+        .filter(|choice| !known.contains(&choice.path) && (converter::is_common(choice.path) || own(choice.path)));
+    let mut combinations = vec![Vec::new()];
+    for choice in others {
+        let each = |chosen: &Vec<(&'static str, &'static str)>| {
+            let one = |key| chosen.iter().copied().chain([(choice.path, key)]).collect::<Vec<_>>();
+            choice.options.iter().map(|option| one(option.key)).collect::<Vec<_>>()
+        };
+        combinations = combinations.iter().flat_map(each).collect();
+    }
+    combinations
 }
 
 #[test]

@@ -61,6 +61,8 @@ mod check;
 mod digital;
 mod input_filter;
 mod json;
+#[cfg(test)]
+mod made_up_tests;
 mod sweep;
 mod text;
 mod transient;

@@ -80,8 +80,9 @@ pub(crate) fn compare_switched(design: &Design, row: &Value) {
     }
     // A disturbance of the current, one period later: by straight lines here, by the map of the orbit there.
     let multiplier = analysed(design, &[1e3], 10).shown.ok().and_then(|detail| detail.control.sampling);
-    if let Some(sampling) = multiplier {
-        assert_absolute(&design.title, sampling.fast_multiplier, number(&switched["fast_multiplier"]), 0.02);
+    // Where a magnetising current turns its sign every pulse, there is no one multiplier, and the reference gives none.
+    if let Some((sampling, exact)) = multiplier.zip(switched["fast_multiplier"].as_f64()) {
+        assert_absolute(&design.title, sampling.fast_multiplier, exact, 0.02);
     }
 }
 

@@ -3,6 +3,7 @@
 use crate::common::{assert_absolute, checked, ratio};
 use crate::random::Random;
 use polewright::analysis::{Analysis, Level, Request, Shown, analyse};
+use polewright::converter;
 use polewright::design::{Design, sample};
 
 fn request(input: Level, load: Level, frequencies_hz: Vec<f64>) -> Request {
@@ -89,12 +90,12 @@ pub(crate) fn non_number(analysis: &Analysis) -> Option<String> {
 }
 
 /// A design over a range far wider than sense, its entries within their bounds.
-fn random_design(random: &mut Random) -> Design {
+fn random_design(random: &mut Random, topologies: &[&str]) -> Design {
     let mut design = Design::default();
     let choose = |design: &mut Design, path: &str, keys: &[&str], random: &mut Random| {
         design.set_from_text(path, random.pick::<&str>(keys)).expect("an option");
     };
-    choose(&mut design, "stage.topology", &["buck", "boost", "buck-boost"], random);
+    choose(&mut design, "stage.topology", topologies, random);
     choose(&mut design, "stage.rectifier", &["diode", "synchronous", "emulated"], random);
     choose(&mut design, "stage.load", &["resistor", "current", "power"], random);
     choose(&mut design, "stage.input-capacitor", &["none", "fitted"], random);
@@ -102,6 +103,11 @@ fn random_design(random: &mut Random) -> Design {
     choose(&mut design, "control.feedforward", &["none", "line"], random);
     choose(&mut design, "compensator.type", &["1", "2", "3"], random);
     choose(&mut design, "compensator.amplifier", &["op-amp", "transconductance"], random);
+    let own: Vec<_> = design.choice_rows().into_iter().filter(|row| !converter::is_common(row.path)).collect();
+    for row in own {
+        let keys: Vec<&str> = row.options.iter().map(|option| option.key).collect();
+        choose(&mut design, row.path, &keys, random);
+    }
     if !design.choices.is("compensator.type", "3") {
         choose(&mut design, "compensator.feedforward-capacitor", &["none", "fitted"], random);
     }
@@ -129,6 +135,8 @@ fn random_design(random: &mut Random) -> Design {
     for path in paths {
         let range = match path.rsplit('.').next() {
             Some("inductance" | "capacitance") => (1e-8, 1e-1),
+            Some("ratio") => (0.01, 50.0),
+            Some("coupling") => (1e-3, 0.999),
             Some("resistance") if path.starts_with("stage") => (1e-4, vout / load),
             Some("esr") => (1e-5, 10.0),
             Some("esl") => (1e-11, 1e-6),
@@ -144,7 +152,7 @@ fn random_design(random: &mut Random) -> Design {
         };
         // Nothing at all is as legal as any size for what may be absent.
         let may_be_absent = matches!(path.rsplit('.').next(), Some("esr" | "esl" | "delay"))
-            || (path.starts_with("stage") && path.ends_with("resistance"));
+            || (path.starts_with("stage") && path.ends_with("resistance") && !path.contains("damping"));
         let value = if may_be_absent && random.between(0.0, 1.0) < 0.3 { 0.0 } else { random.log(range.0, range.1) };
         design.values.set(path, value).expect("finite");
     }
@@ -154,10 +162,20 @@ fn random_design(random: &mut Random) -> Design {
 /// Whatever is entered, an analysis ends and every number in it is a number; what cannot be computed is a finding.
 #[test]
 fn random_designs_give_numbers_or_findings() {
-    let mut random = Random::new(7);
+    numbers_or_findings(7, 1500, &["buck", "boost", "buck-boost"]);
+}
+
+/// The same with a transformer or two inductors.
+#[test]
+fn random_designs_of_other_topologies_give_numbers_or_findings() {
+    numbers_or_findings(8, 1500, &["sepic", "cuk", "flyback"]);
+}
+
+fn numbers_or_findings(seed: u64, count: usize, topologies: &[&str]) {
+    let mut random = Random::new(seed);
     let (mut usable, mut computed) = (0, 0);
-    for _ in 0..1500 {
-        let design = random_design(&mut random);
+    for _ in 0..count {
+        let design = random_design(&mut random, topologies);
         let Ok(checked) = design.check() else { continue };
         usable += 1;
         let fs = design.values.get("stage.switching-frequency").expect("entered");
@@ -168,6 +186,6 @@ fn random_designs_give_numbers_or_findings() {
             panic!("a result is no number: …{text}… in {design:?}");
         }
     }
-    assert!(usable > 1000, "{usable} designs could be used");
-    assert!(computed > 300, "{computed} designs were computed");
+    assert!(usable * 3 > count * 2, "{usable} designs could be used");
+    assert!(computed * 5 > count, "{computed} designs were computed");
 }

@@ -30,3 +30,4 @@ mod symbolic;
 mod textbook;
 mod topologies;
 mod two_inductors;
+mod wrong_parts;

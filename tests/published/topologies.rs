@@ -51,3 +51,17 @@ fn sepic_with_inductors_apart_and_coupled_in_both_conduction_modes() {
 fn cuk_with_inductors_apart_and_coupled_in_both_conduction_modes() {
     agree("cuk", 3);
 }
+
+/// Leakage counts in continuous conduction only, the magnetising current in peak current mode only.
+#[test]
+fn bucks_behind_a_transformer() {
+    agree("forward", 3);
+    agree("push-pull", 1);
+    agree("half-bridge", 1);
+    agree("full-bridge", 2);
+}
+
+#[test]
+fn four_switches_in_both_regions() {
+    agree("four-switch", 3);
+}

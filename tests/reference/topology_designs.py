@@ -105,7 +105,7 @@ BRIDGED = [
     design(
         "peak-current push-pull, constant current, input capacitor, magnetising current sensed, delay",
         Stage("push-pull", 100e3, 15e-6, 0.01, 0.01, "diode", [Branch(220e-6, 0.015, 0.0, 2)], "current", 0.01, (470e-6, 0.02),
-              drop=0.5, diode=0.01, ratio=1.5, magnetising=150e-6, leakage=0.05e-6),
+              drop=0.5, diode=0.01, ratio=1.8, magnetising=150e-6, leakage=0.05e-6),
         (10.0, 12.0, 15.0), 12.0, (2.0, 4.0, 6.0), Control("peak-current", 0.02, 20e3),
         op2(2.5, 20e3, 5230.0, 11e-9, 11e3, 620e-12),
         delay=80e-9, load_step=(1.0, 1e6), line_step=(1.0, 1e5), reference_step=(0.2, 1e4), band=0.002),
@@ -119,7 +119,7 @@ BRIDGED = [
     design(
         "voltage-mode full-bridge behind a damped input filter, constant power, delay",
         Stage("full-bridge", 80e3, 10e-6, 4e-3, 0.03, "synchronous", [Branch(470e-6, 0.008, 0.0, 2)], "power", 0.01,
-              synchronous=4e-3, ratio=0.35, magnetising=200e-6, leakage=0.6e-6,
+              synchronous=4e-3, ratio=0.4, magnetising=200e-6, leakage=0.6e-6,
               input_filter=Filter(4.7e-6, 10e-3, 22e-6, 5e-3, damping=(0.5, 100e-6))),
         (40.0, 48.0, 60.0), 12.0, (5.0, 10.0, 20.0), Control("voltage", ramp=1.5),
         op3(1.25, 20e3, 2320.0, 12e-9, 8200.0, 470e-12, 750.0, 5.1e-9),

@@ -1,6 +1,7 @@
 //! The design being filled in: every value that was not given is told with its reason.
 
 use super::brief::Brief;
+use crate::converter;
 use crate::design::{self, CheckedDesign, Design};
 use crate::finding::Finding;
 use crate::quantity::{print, print_digits};
@@ -64,7 +65,7 @@ impl Draft {
     /// Assumes a number, for a reason.
     pub(super) fn assume(&mut self, path: &'static str, value: f64, reason: impl Into<String>, common_practice: bool) {
         set(&mut self.design, path, value);
-        let Some(entry) = design::entry(path) else { return };
+        let Some(entry) = design::entry(path).map(|entry| converter::row(entry, &self.design.choices)) else { return };
         self.assumptions.retain(|assumption| assumption.path != path);
         self.assumptions.push(Assumption {
             name: entry.name.to_owned(),

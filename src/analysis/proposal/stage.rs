@@ -21,8 +21,9 @@ const LOSS_SHARE: f64 = 0.005;
 const BELOW_SWITCHING: f64 = 10.0;
 /// Lowest right-half-plane zero over the crossover aimed at.
 const BELOW_ZERO: f64 = 4.0;
-/// Landmarks that lag where other zeros lead: a pair that the load turns into the right half-plane counts.
-const ZEROS: [&str; 2] = ["right-half-plane-zero", "zero-pair"];
+/// Landmarks that lag where other zeros lead, with their names: a pair that the load turns into the right half-plane counts.
+const ZEROS: [(&str, &str); 2] =
+    [("right-half-plane-zero", "right-half-plane zero"), ("zero-pair", "zero pair of the coupling capacitor")];
 /// Crossover aimed at over the highest resonance.
 const ABOVE_RESONANCE: f64 = 2.5;
 /// Share of the allowed ripple that the bank's charge may take; the rest is the ESR's.
@@ -155,11 +156,14 @@ fn resistances(draft: &mut Draft, brief: &Brief, points: &[OperatingPoint]) {
 /// The crossover the stage is sized for [Hz], and why.
 pub(super) fn aim(design: &CheckedDesign) -> (f64, String) {
     let switching = design.stage.switching_frequency / BELOW_SWITCHING;
-    let zeros = ZEROS.into_iter().flat_map(|key| textbook_landmark(design, key));
-    let zero = zeros.fold(f64::INFINITY, f64::min);
+    let lowest = |(key, name)| {
+        let hz = textbook_landmark(design, key).fold(f64::INFINITY, f64::min);
+        (hz, name)
+    };
+    let [one, other] = ZEROS.map(lowest);
+    let (zero, name) = if one.0 <= other.0 { one } else { other };
     if zero / BELOW_ZERO < switching {
-        let at = text(zero, Unit::Hertz);
-        return (zero / BELOW_ZERO, format!("a quarter of the lowest zero that lags, {at}"));
+        return (zero / BELOW_ZERO, format!("a quarter of the lowest {name}, {}", text(zero, Unit::Hertz)));
     }
     (switching, "a tenth of the switching frequency".to_owned())
 }

@@ -44,10 +44,9 @@ pub(in crate::converter) static TOPOLOGY: Topology = Topology {
     ..Topology::COMMON
 };
 
-const RESONANCES_LOW: &str =
-    "lower ω of C·Cc·(L1·L2 − M²)·ω⁴ − (C·(L1·D² + L2·D'² + 2M·D·D') + Cc·(L1 + L2 − 2M)·D'²)·ω² + D'² = 0, D' = 1 − D";
-const RESONANCES_HIGH: &str =
-    "upper ω of C·Cc·(L1·L2 − M²)·ω⁴ − (C·(L1·D² + L2·D'² + 2M·D·D') + Cc·(L1 + L2 − 2M)·D'²)·ω² + D'² = 0, D' = 1 − D";
+/// Lo and Lr are told with the terms: what the output sees, and what a current round through both inductors sees.
+const RESONANCES_LOW: &str = "lower ω of C·Cc·(L1·L2 − M²)·ω⁴ − a2·ω² + (1 − D)² = 0, a2 = C·Lo + Cc·Lr·(1 − D)²";
+const RESONANCES_HIGH: &str = "upper ω of C·Cc·(L1·L2 − M²)·ω⁴ − a2·ω² + (1 − D)² = 0, a2 = C·Lo + Cc·Lr·(1 − D)²";
 
 /// Coefficient of ω² of the undamped poles [s²].
 fn second_coefficient(t: &Textbook) -> f64 {
