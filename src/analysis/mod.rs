@@ -53,4 +53,6 @@ pub use result::{
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,
     StepFigures, Steps, WindowEdge, Worst,
 };
-pub use transient::{MOST_PERIODS, Transient, TransientEvent, TransientFigures, TransientRequest, transient};
+pub use transient::{
+    MOST_PERIODS, Transient, TransientEvent, TransientFigures, TransientRequest, transient, transient_at,
+};

@@ -21,4 +21,4 @@ mod work;
 
 pub use event::{MOST_PERIODS, TransientEvent, TransientRequest};
 pub use result::{Transient, TransientFigures};
-pub use work::transient;
+pub use work::{transient, transient_at};

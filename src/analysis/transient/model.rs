@@ -2,7 +2,7 @@
 
 use super::super::loop_model::Shared;
 use super::super::result::Condition;
-use crate::compensator::{Limit, Limited};
+use crate::compensator::{FAST, Limit, Limited};
 use crate::control::{ControlLaw, Mode};
 use crate::converter::{LoadKind, StageCondition};
 use crate::design::CheckedDesign;
@@ -54,7 +54,10 @@ impl Model {
             Mode::Average(average) => average.inner.limited().map_err(|e| unsolved("control.inner", &e))?.limits,
             _ => Vec::new(),
         };
-        let driven = Driven::Loop(Closing::new(&outer.space, design.compensator.reference));
+        let held = design.compensator.steady_inputs().into_iter().map(|(name, volts)| (name.to_owned(), volts));
+        let fed = shared.fast_path.as_ref().map(|path| (FAST.to_owned(), path.signal.to_owned()));
+        let driven =
+            Driven::Loop(Closing { space: &outer.space, held: held.collect(), fed: fed.into_iter().collect() });
         let mut system = SwitchedSystem::new(&Joined { stage, law: &shared.law, driven }, &at)?;
         let load_voltage = stage.load_voltage(&at);
         let siemens = condition.load_current / load_voltage;

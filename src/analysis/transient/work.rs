@@ -1,19 +1,23 @@
 //! The transient of a design: starts it where it runs steadily, or rests, and follows it through the event.
 
 use super::super::analyse::loop_at;
-use super::super::loop_model::Shared;
-use super::super::result::{Condition, Step};
+use super::super::loop_model::{LoopModel, Shared};
+use super::super::motion::Motion;
+use super::super::result::{Condition, LoopResult, Step};
 use super::super::steps::steps;
 use super::event::{TransientEvent, TransientRequest};
 use super::figures::{Asked, figures};
 use super::model::Model;
 use super::result::Transient;
 use super::scenario::{Span, overload, scenario, span};
-use crate::converter::LoadKind;
+use crate::converter::{LoadKind, OperatingPoint};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::quantity::{Unit, print, print_digits};
-use crate::switched::{Cancel, Configuration, POWER_FALLS, Progress, Run, SINK_FALLS, Stopped, Waveforms, simulate};
+use crate::switched::{
+    Cancel, Configuration, Goal, Orbit, POWER_FALLS, Progress, Run, SINK_FALLS, Scenario, Start, Stopped, Waveforms,
+    simulate,
+};
 use nalgebra::DVector;
 
 /// Points of the small-signal prediction.
@@ -31,21 +35,12 @@ pub fn transient(
     progress: &Progress,
     stream: &mut dyn FnMut(&Waveforms),
 ) -> Result<Transient, Finding> {
-    let shared = Shared::new(design)?;
-    let model = Model::new(design, &shared, condition)?;
-    let (prediction, step_s) = prediction(design, &shared, condition, request)?;
-    let span = span(design, request, step_s);
-    let at = (condition.input_voltage, condition.load_current);
-    let start = match request.event {
-        TransientEvent::StartUp => model.system.at_rest(&model.at_rest(design.events.prebias_v)),
-        _ => steady(design, &model, request, at, cancel),
-    };
-    let scenario = scenario(design, &model, request, at, span, start);
-    let run = simulate(&model.system, &scenario, cancel, progress, stream);
+    let followed = follow(design, condition, request, &[], (cancel, progress, stream))?;
+    let Followed { model, span, prediction, from_s, run } = followed;
     let (overload_end, _) = overload(design, condition.load_current);
     let asked = Asked {
         event: request.event,
-        from_s: scenario.from_s,
+        from_s,
         period_s: model.system.period_s,
         band_v: design.events.settling_band * design.stage.output_voltage,
         at_first_v: design.events.prebias_v,
@@ -63,18 +58,71 @@ pub fn transient(
     })
 }
 
+/// The values of the signals at given times from the event's begin [s], rising, each by its name: for whoever compares or plots points
+/// of his own.
+///
+/// # Errors
+/// As [`transient`].
+pub fn transient_at(
+    design: &CheckedDesign,
+    condition: &Condition,
+    event: TransientEvent,
+    times_s: &[f64],
+) -> Result<Vec<(String, Vec<f64>)>, Finding> {
+    let request = TransientRequest { event, columns: 1, span_s: times_s.last().copied() };
+    let (cancel, progress) = (Cancel::new(), Progress::new());
+    let Followed { run, .. } = follow(design, condition, &request, times_s, (&cancel, &progress, &mut |_| {}))?;
+    let named = run.waveforms.traces.iter().enumerate();
+    let values = |place: usize| run.kept.iter().filter_map(|row| row.get(place).copied()).collect();
+    Ok(named.map(|(place, trace)| (trace.name.clone(), values(place))).collect())
+}
+
+/// A run with what it was made from.
+struct Followed {
+    model: Model,
+    span: Span,
+    prediction: Option<Step>,
+    from_s: f64,
+    run: Run,
+}
+
+/// Who watches a run: may stop it, sees how far it is, and what there is so far.
+type Watching<'a> = (&'a Cancel, &'a Progress, &'a mut dyn FnMut(&Waveforms));
+
+fn follow(
+    design: &CheckedDesign,
+    condition: &Condition,
+    request: &TransientRequest,
+    times_s: &[f64],
+    (cancel, progress, stream): Watching<'_>,
+) -> Result<Followed, Finding> {
+    let shared = Shared::new(design)?;
+    let model = Model::new(design, &shared, condition)?;
+    let averaged = loop_at(design, &shared, condition)?;
+    let (prediction, step_s) = prediction(design, &averaged, request);
+    let span = span(design, request, step_s);
+    let at = (condition.input_voltage, condition.load_current);
+    let start = match request.event {
+        TransientEvent::StartUp => model.system.at_rest(&model.at_rest(design.events.prebias_v)),
+        _ => steady(&model, &averaged.0.averaged.operating_point)
+            .unwrap_or_else(|| approached(design, &model, request, at, cancel)),
+    };
+    let scenario = Scenario { times_s: times_s.to_vec(), ..scenario(design, &model, request, at, span, start) };
+    let run = simulate(&model.system, &scenario, cancel, progress, stream);
+    let from_s = scenario.from_s;
+    Ok(Followed { model, span, prediction, from_s, run })
+}
+
 /// The small-signal prediction of the same step, and how long such a plot runs [s].
 fn prediction(
     design: &CheckedDesign,
-    shared: &Shared,
-    condition: &Condition,
+    (model, result, modes): &(LoopModel, LoopResult, Option<Motion>),
     request: &TransientRequest,
-) -> Result<(Option<Step>, Option<f64>), Finding> {
-    let (model, result, modes) = loop_at(design, shared, condition)?;
-    let Some(modes) = modes else { return Ok((None, None)) };
+) -> (Option<Step>, Option<f64>) {
+    let Some(modes) = modes else { return (None, None) };
     let at_rest = (model.averaged.operating_point.load_voltage, model.controlled.control_voltage);
     let crossover = result.margins.headline_crossover().map(|c| c.frequency_hz);
-    let Ok(all) = steps(design, &modes, crossover, at_rest, PREDICTED) else { return Ok((None, None)) };
+    let Ok(all) = steps(design, modes, crossover, at_rest, PREDICTED) else { return (None, None) };
     let length = |step: &Option<Step>| step.as_ref().and_then(|step| step.times_s.last().copied());
     let longest = [&all.load, &all.line, &all.reference].into_iter().filter_map(length).fold(0.0, f64::max);
     let predicted = match request.event {
@@ -84,7 +132,7 @@ fn prediction(
         TransientEvent::StartUp | TransientEvent::Overload => &None,
     };
     let own = length(predicted).or(length(&all.load));
-    Ok((predicted.clone(), own.or((longest > 0.0).then_some(longest))))
+    (predicted.clone(), own.or((longest > 0.0).then_some(longest)))
 }
 
 /// What is to be known about a result.
@@ -144,8 +192,15 @@ const STRETCHES: usize = 50;
 /// A state has come to rest when a period changes it by less than this share of the greatest of its kind.
 const AT_REST: f64 = 1e-10;
 
-/// State and configuration at a clock of the steady period.
-fn steady(
+/// State and configuration at a clock of the steady period; none where none is found.
+fn steady(model: &Model, point: &OperatingPoint) -> Option<(DVector<f64>, Configuration)> {
+    let orbit = Orbit::find(&model.system, Start::of(point), Goal::AsDriven).ok()?;
+    Some((orbit.starts.first()?.clone(), orbit.phases.last()?.configuration))
+}
+
+/// State and configuration at a clock that the converter comes to by itself: where a limit keeps it from the steady period, or where
+/// that does not hold itself.
+fn approached(
     design: &CheckedDesign,
     model: &Model,
     request: &TransientRequest,

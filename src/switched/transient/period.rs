@@ -9,6 +9,7 @@ use super::flow::dot;
 use super::machine::{Ended, Machine, Period, Stopped, ramp};
 use super::mode::Role;
 use crate::control::Edge;
+use nalgebra::DVector;
 
 impl Machine {
     /// One period from clock to clock.
@@ -42,6 +43,11 @@ impl Machine {
         let mean_v = self.z[integral] * self.plant.scale[integral] / period;
         for (acted, acting) in self.acted.iter_mut().zip(&self.acting) {
             *acted += u64::from(*acting);
+        }
+        if let Some(rotation) = &self.plant.rotation {
+            let n = self.plant.n;
+            let x = DVector::from_column_slice(&self.z[..n]);
+            self.z[..n].copy_from_slice((rotation * x).as_slice());
         }
         self.periods += 1;
         self.since = 0.0;

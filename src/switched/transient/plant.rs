@@ -62,6 +62,8 @@ pub(super) struct Plant {
     pub(super) rest: Option<Vec<f64>>,
     /// Puts the scaled states on the constraint of the resting interval.
     pub(super) projector: DMatrix<f64>,
+    /// Applied to the scaled states as a period ends; none for a single phase.
+    pub(super) rotation: Option<DMatrix<f64>>,
     /// State that is the ramp, where line feed-forward makes it one.
     pub(super) ramp: Option<usize>,
 }
@@ -125,10 +127,14 @@ impl Plant {
             }
         }
         let rest = rests.map(|rest| (0..n).map(|k| if k < order { rest[k] * scale[k] } else { 0.0 }).collect());
-        let mut projector = DMatrix::identity(n, n);
-        projector.view_mut((0, 0), (order, order)).copy_from(&system.rest_projector);
-        let projector = DMatrix::from_fn(n, n, |i, j| projector[(i, j)] * scale[j] / scale[i]);
-        Plant { n, m, limiters, rows, probes, scale, rest, projector, ramp: fed.map(|_| order + 1) }
+        let scaled = |of: &DMatrix<f64>| {
+            let mut all = DMatrix::identity(n, n);
+            all.view_mut((0, 0), (order, order)).copy_from(of);
+            DMatrix::from_fn(n, n, |i, j| all[(i, j)] * scale[j] / scale[i])
+        };
+        let projector = scaled(&system.rest_projector);
+        let rotation = system.rotation.as_ref().map(scaled);
+        Plant { n, m, limiters, rows, probes, scale, rest, projector, rotation, ramp: fed.map(|_| order + 1) }
     }
 
     /// State that is the integral of the load's voltage since the clock.

@@ -19,45 +19,40 @@ pub(super) fn other_configuration(plant: &Plant, mode: &Mode, z: &[f64], now: Co
     }
 }
 
-/// Of a limit's span, what counts as being there.
-const AT_LIMIT: f64 = 1e-12;
+/// Of what a signal is summed from, this share is rounding.
+const ROUNDING: f64 = 1e-12;
 
-/// A limiter that has to change its side, and to which.
+/// A signal, and what of it is rounding.
+fn read(row: &[f64], z: &[f64]) -> (f64, f64) {
+    let size: f64 = row.iter().zip(z).map(|(r, x)| (r * x).abs()).sum();
+    (dot(row, &z[..row.len()]), ROUNDING * size)
+}
+
+/// A limiter that has to change its side, and to which. Within rounding it stays where it is.
 pub(super) fn other_side(plant: &Plant, mode: &Mode, z: &[f64], sides: &[Side]) -> Option<(usize, Side)> {
     for (i, (limiter, side)) in plant.limiters.iter().zip(sides).enumerate() {
         let held = &mode.held[i];
-        let signal = dot(&held.signal, &z[..held.signal.len()]);
+        let (signal, close) = read(&held.signal, z);
         let (least, greatest) = (limiter.least, limiter.greatest);
-        let next = match limiter.act {
-            Act::Sink { .. } => {
-                if signal > 0.0 {
-                    Side::Greatest
-                } else {
-                    Side::Free
-                }
-            }
-            Act::Saturate => {
-                if signal > greatest {
-                    Side::Greatest
-                } else if signal < least {
-                    Side::Least
-                } else {
-                    Side::Free
-                }
-            }
-            Act::Hold => {
-                let rate = dot(&held.rate, &z[..held.rate.len()]);
-                let close = AT_LIMIT * (greatest.abs().min(1e3) + least.abs().min(1e3));
+        let next = match (limiter.act, side) {
+            (Act::Sink { .. }, _) if signal > close => Side::Greatest,
+            (Act::Sink { .. }, _) if signal < -close => Side::Free,
+            (Act::Saturate, _) if signal > greatest + close => Side::Greatest,
+            (Act::Saturate, _) if signal < least - close => Side::Least,
+            (Act::Saturate, _) if signal < greatest - close && signal > least + close => Side::Free,
+            (Act::Hold, _) => {
+                let (rate, still) = read(&held.rate, z);
                 match side {
-                    Side::Free if signal > greatest + close || signal >= greatest - close && rate > 0.0 => {
+                    Side::Free if signal > greatest + close || signal >= greatest - close && rate > still => {
                         Side::Greatest
                     }
-                    Side::Free if signal < least - close || signal <= least + close && rate < 0.0 => Side::Least,
-                    Side::Greatest if rate < 0.0 => Side::Free,
-                    Side::Least if rate > 0.0 => Side::Free,
+                    Side::Free if signal < least - close || signal <= least + close && rate < -still => Side::Least,
+                    Side::Greatest if rate < -still => Side::Free,
+                    Side::Least if rate > still => Side::Free,
                     _ => *side,
                 }
             }
+            _ => *side,
         };
         if next != *side {
             return Some((i, next));
