@@ -8,7 +8,7 @@
 
 use crate::common::{assert_absolute, assert_relative, checked};
 use crate::reference::{complex, designs, list, number, numbers};
-use polewright::analysis::Shared;
+use polewright::analysis::loop_model::Shared;
 use polewright::converter::StageCondition;
 use polewright::design::Design;
 use polewright::switched::{Closing, Driven, ExactLoop, Joined, Quantity, Stability, Start, SwitchedSystem};

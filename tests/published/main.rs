@@ -10,6 +10,7 @@ mod compensator;
 mod controlled;
 mod cross_checks;
 mod current_mode;
+mod digital;
 mod digital_forms;
 mod discontinuous;
 mod every_mode;

@@ -214,7 +214,7 @@ def random_cases(count):
         method = ["tustin", "tustin-prewarped", "matched"][k % 3]
         digital = Digital(
             method, log(fs / 1e3, fs / 20.0), tuple(log(fs / 2e3, fs / 20.0) for _ in range(zeros)),
-            tuple(log(fs / 20.0, fs / 2.2) for _ in range(order - 1)), 1.2, 10e3, log(1e3, 10e3), log(1.0, 5.0),
+            tuple(log(fs / 20.0, fs / 2.2) for _ in range(order - 1)), 1.2, 10e3, log(1e3, 10e3), log(1.6, 5.0),
             bits=draw.choice([10, 12, 16, 18, 24, 32]), prewarp=log(fs / 50.0, fs / 4.0) if method == "tustin-prewarped" else 0.0,
             computation=draw.choice([0.0, 0.3 / fs, 0.9 / fs]), rounding=draw.choice(["integrator", "integrator", "nearest"]),
         )
