@@ -48,8 +48,8 @@ fn coefficients_codes_and_responses_are_those_of_the_libraries() {
         let codes = digital.fixed_point().expect("it fits");
         assert_codes(&what("feedback codes"), &codes.feedback.codes, &words["feedback_codes"]);
         assert_codes(&what("forward codes"), &codes.forward.codes, &words["forward_codes"]);
-        assert_coefficients(&what("feedback words"), &equation.feedback, &words["feedback"], 0.0);
-        assert_coefficients(&what("forward words"), &equation.forward, &words["forward"], 0.0);
+        assert_coefficients(&what("feedback words"), &equation.feedback, &words["feedback"], 1e-15);
+        assert_coefficients(&what("forward words"), &equation.forward, &words["forward"], 1e-15);
         let response = digital.response();
         for (f, wanted) in numbers(&row["frequencies_hz"]).iter().zip(complex(&row["response"])) {
             let off = (response.at_hz(*f) - wanted).norm() / wanted.norm();
@@ -102,7 +102,7 @@ fn poles_of_the_map_and_the_modulator_delay() {
     each(|design, row| {
         let digital = nominal(design, 10).digital.expect("a difference equation");
         let wanted: Vec<Complex> = complex(&row["poles_z"]);
-        let found: Vec<_> = digital.poles_z.iter().filter(|z| z.norm() > 1e-6).collect();
+        let found: Vec<_> = digital.poles_z.iter().filter(|z| z.norm() > 1e-3).collect();
         assert_eq!(found.len(), wanted.len(), "{}: {found:?}, wanted {wanted:?}", design.title);
         for wanted in wanted {
             let nearest = found.iter().map(|z| (*z - wanted).norm()).fold(f64::INFINITY, f64::min);

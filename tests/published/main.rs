@@ -30,5 +30,6 @@ mod switched;
 mod symbolic;
 mod textbook;
 mod topologies;
+mod transient;
 mod two_inductors;
 mod wrong_parts;

@@ -404,7 +404,7 @@ def closed_loop(design):
         loop = p * nominal.period * z**-whole * answer_at(nominal.words, digital.scale(nominal.full), z)
         assert abs(1.0 + loop) < 1e-6 * max(abs(loop), 1.0), (z, loop)
     assert np.all(np.abs(multipliers) < 1.0)
-    frequencies = np.geomspace(fs / 1e5, fs / 2.0 * 0.999, 30)
+    frequencies = np.geomspace(fs / 1e5, 0.48 * fs, 30)
     conditions = []
     for vin in design.vin:
         for load in design.load:
@@ -423,7 +423,7 @@ def closed_loop(design):
         "responses": {name: pairs(curve) for name, curve in nominal.responses(frequencies).items()},
         "sampled_loop": pairs(nominal.sampled_loop(frequencies)),
         "conditions": conditions,
-        "poles_z": pairs(sorted(multipliers[np.abs(multipliers) > 1e-6], key=lambda z: (-round(abs(z), 10), z.imag))),
+        "poles_z": pairs(sorted(multipliers[np.abs(multipliers) > 1e-3], key=lambda z: (-round(abs(z), 10), z.imag))),
         "parts": PARTS,
         "steps": nominal.steps(60),
     }

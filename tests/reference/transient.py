@@ -26,6 +26,7 @@ from output import write
 from stages import equations
 
 RELATIVE = 1e-10
+MOST = 1.0  # of a step, as a share of the fastest mode's time: the interpolation between steps is of lower order than they are
 SAMPLES = 300  # times of a run's record
 
 
@@ -130,6 +131,7 @@ class Run:
         self.switched[:n_s] = self.stage.sensed(self.stage_names)
         # Amplifiers: (state held, its limits, drive's name).
         self.amplifiers = [(self.outer.start, limits.output)] + ([(self.inner.start, limits.inner)] if inner else [])
+        self.fastest = max(np.max(np.abs(np.linalg.eigvals(rows[:, :n]))) for rows, _, _ in self.pieces.values())
         self.held = [0] * len(self.amplifiers)
         self.saturated = 0
         self.records = []
@@ -236,7 +238,7 @@ class Run:
                 stop.terminal, stop.direction = True, -1
                 wrapped.append(stop)
             solution = solve_ivp(lambda tt, xx: a @ xx + b @ self.inputs(tt), (t, stop_at), x, method="DOP853", rtol=RELATIVE,
-                                 atol=1e-12 * np.maximum(np.abs(self.scale), 1e-6), events=wrapped, dense_output=True)
+                                 atol=1e-12 * np.maximum(np.abs(self.scale), 1e-6), events=wrapped, dense_output=True, max_step=MOST / self.fastest)
             assert solution.success
             self.record(which, t, solution)
             t, x = solution.t[-1], solution.y[:, -1]
