@@ -13,6 +13,9 @@ use std::io::{BufRead, BufReader};
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output, Stdio};
 
+#[path = "terminal/switched.rs"]
+mod switched;
+
 fn program() -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_polewright"));
     command.stdin(Stdio::null());
@@ -410,7 +413,7 @@ fn the_documented_fields_are_there() {
     let (section, _) = section.split_once("\n## ").expect("a next section");
     // Findings and requirements, an inner loop, filters: together they report every field.
     let samples = ["trail-radio.ron", "winch-buffer.ron", "tram-display.ron", "ultrasound-probe.ron"].map(sample_path);
-    let samples = samples.iter().map(String::as_str).chain(["--json", "--load-sweep"]);
+    let samples = samples.iter().map(String::as_str).chain(["--json", "--load-sweep", "--switched"]);
     let report = text(&check(&samples.collect::<Vec<_>>()).stdout).to_owned();
     let rows = section.lines().filter(|line| line.starts_with("| `"));
     let named = rows.flat_map(|line| line.split('`').skip(1).step_by(2));
@@ -465,7 +468,7 @@ fn every_field_of_the_report_is_documented() {
     let words: BTreeSet<&str> = docs.split(|c: char| !(c.is_ascii_alphanumeric() || c == '_')).collect();
     let mut reported = BTreeSet::new();
     for sample in sample::all() {
-        keys(&json(&check(&[&sample_path(sample.file), "--json", "--load-sweep"]))[0], &mut reported);
+        keys(&json(&check(&[&sample_path(sample.file), "--json", "--load-sweep", "--switched"]))[0], &mut reported);
     }
     let missing: Vec<&String> = reported.iter().filter(|key| !words.contains(key.as_str())).collect();
     assert!(missing.is_empty(), "{missing:?}");

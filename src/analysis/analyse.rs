@@ -88,7 +88,7 @@ pub fn logarithmic(from_hz: f64, to_hz: f64, points: usize) -> Vec<f64> {
 }
 
 /// Margins are searched from this share of the switching frequency …
-pub(super) const SEARCH_FROM: f64 = 1e-6;
+pub(in crate::analysis) const SEARCH_FROM: f64 = 1e-6;
 /// … to this one.
 pub(super) const SEARCH_TO: f64 = 0.5;
 
@@ -254,7 +254,7 @@ fn work(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Resul
 ///
 /// # Errors
 /// A finding when the condition cannot be held or its model cannot be solved.
-pub(super) fn loop_at(
+pub(in crate::analysis) fn loop_at(
     design: &CheckedDesign,
     shared: &Shared,
     condition: &Condition,

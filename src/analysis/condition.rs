@@ -15,7 +15,7 @@ impl Condition {
     }
 
     /// The condition at two levels of a stage's ranges.
-    pub(super) fn at_levels(stage: &Stage, input: Level, load: Level) -> Self {
+    pub(in crate::analysis) fn at_levels(stage: &Stage, input: Level, load: Level) -> Self {
         let input_voltage = stage.input_voltages[input as usize];
         let load_current = stage.load_currents[load as usize];
         let label = format!(
@@ -29,7 +29,7 @@ impl Condition {
     }
 
     /// A condition of the user's own.
-    pub(super) fn what_if(input_voltage: f64, load_current: f64) -> Self {
+    pub(in crate::analysis) fn what_if(input_voltage: f64, load_current: f64) -> Self {
         let label = format!("input {}, load {}", print(input_voltage, Unit::Volt), print(load_current, Unit::Ampere));
         Condition { input_voltage, load_current, label, levels: None }
     }

@@ -4,11 +4,13 @@
 //! at another ratio is the nominal one times their quotient; stability there is decided by its own closed-loop poles.
 
 use super::loop_model::{LoopModel, Shared};
+use super::result::ConditionSummary;
 use crate::compensator::{Bias, LedSupply};
 use crate::control::CONTROL;
 use crate::converter::StageCondition;
 use crate::design::CheckedDesign;
 use crate::linear::{FactoredResponse, LinearError, Margins, StateSpace, Verdict, margins};
+use crate::quantity::{Unit, print, print_digits};
 
 /// The loop at one end of the transfer ratio.
 #[derive(Clone, Debug)]
@@ -47,8 +49,27 @@ pub struct IsolatedFigures {
     /// The loop at the least and at the greatest transfer ratio.
     pub ends: [AtRatio; 2],
     /// Crossover that the fast path alone would make [Hz]: gain and zero lanes cannot bring the loop's below it. None without a fast
-    /// path, or where it makes none.
+    /// path, where it makes none, and where it reads another voltage than the slow one: there the two may take from one another.
     pub floor_crossover_hz: Option<f64>,
+}
+
+impl ConditionSummary {
+    /// What a condition comes to beside its headline, in lines: crossover and phase margin at the ends of a transfer ratio.
+    pub fn beside(&self) -> Vec<String> {
+        let end = |at: &AtRatio| {
+            let ratio = print(at.ratio, Unit::Fraction);
+            match at.headline() {
+                _ if !at.stable() => format!("not stable at a transfer ratio of {ratio}"),
+                Some((hz, deg)) => format!(
+                    "{}, {} at a transfer ratio of {ratio}",
+                    print_digits(hz, Unit::Hertz, 3),
+                    print_digits(deg, Unit::Degree, 3)
+                ),
+                None => format!("no crossover at a transfer ratio of {ratio}"),
+            }
+        };
+        self.isolated.iter().flat_map(|figures| &figures.ends).map(end).collect()
+    }
 }
 
 /// Works isolated feedback out at a condition; none where the feedback is not isolated.
@@ -82,12 +103,12 @@ pub(super) fn isolated_figures(
         Ok(AtRatio { ratio, verdict, margins: found })
     };
     let floor_crossover_hz = match &shared.fast_path {
-        Some(path) => {
+        Some(path) if !path.apart => {
             let alone = model.open_loop(path.signal, CONTROL)?.multiply(path.paths[1].zpk());
             let found = margins(&FactoredResponse::new(alone, model.controlled.delay_s), from_hz, to_hz);
             found.crossovers.iter().map(|crossover| crossover.frequency_hz).max_by(f64::total_cmp)
         }
-        None => None,
+        _ => None,
     };
     let divided = compensator.dc_output_voltage() / compensator.reference;
     Ok(Some(IsolatedFigures {

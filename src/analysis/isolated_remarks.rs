@@ -9,6 +9,7 @@ use crate::compensator::{Series, ShuntRegulator};
 use crate::design::{Asked, CheckedDesign, Scope};
 use crate::finding::{Finding, Remedy};
 use crate::quantity::{Unit, print, print_digits};
+use std::fmt::Write as _;
 
 /// Share of the output that finite gain may move it by without more than a note.
 const REGULATION: f64 = 5e-3;
@@ -225,24 +226,26 @@ fn floor(
 ) -> Option<Finding> {
     let gain = design.compensator.fast_path_gain()?;
     let (at, figures) = nominal?;
-    let least_hz = figures.floor_crossover_hz?;
-    let above = window.upper.as_ref().filter(|edge| least_hz > edge.frequency_hz);
+    let least_hz = figures.floor_crossover_hz;
+    let above = window.upper.as_ref().filter(|edge| least_hz.is_some_and(|hz| hz > edge.frequency_hz));
     let greatest = design
         .compensator
         .greatest_led_resistor(design.compensator.dc_output_voltage(), design.compensator.isolated()?.saturation)?;
     let room = greatest > design.compensator.parts.led;
     let mut message = format!(
-        "The fast path holds the gain at {} ({}) at least up to its pole, transfer ratio × pull-up / LED resistor: gain and first zero cannot bring the crossover below {} at {}.",
+        "The fast path holds the gain at {} ({}) at least up to its pole, transfer ratio × pull-up / LED resistor",
         print_digits(gain, Unit::One, 3),
         print_digits(20.0 * gain.log10(), Unit::Decibel, 3),
-        print_digits(least_hz, Unit::Hertz, 3),
-        at.label
     );
+    let bound = least_hz.map(|hz| {
+        let hz = print_digits(hz, Unit::Hertz, 3);
+        format!(": gain and first zero cannot bring the crossover below {hz} at {}", at.label)
+    });
+    message.push_str(&bound.unwrap_or_default());
+    message.push('.');
     if let Some(edge) = above {
-        message.push_str(&format!(
-            " That is above the crossover window's upper edge {}.",
-            print_digits(edge.frequency_hz, Unit::Hertz, 3)
-        ));
+        let edge = print_digits(edge.frequency_hz, Unit::Hertz, 3);
+        let _ = write!(message, " That is above the crossover window's upper edge {edge}.");
     }
     let hint = if room {
         format!(

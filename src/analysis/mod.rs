@@ -28,12 +28,14 @@ mod pairs;
 mod placement;
 pub mod proposal;
 mod readouts;
+mod referee;
 mod remarks;
 mod requirement;
 mod result;
 pub mod sampled;
 mod stability_remarks;
 mod steps;
+mod switched_terms;
 pub mod terms;
 #[cfg(test)]
 mod tests;
@@ -48,6 +50,9 @@ pub use filter_result::{
 pub use isolated::{AtRatio, IsolatedFigures};
 pub use load_sweep::{LoadSweep, LoadSweepFigures, LoadSweepLine, LoadSweepPoint, SWEEP_POINTS, load_sweep};
 pub use placement::{Goal, place_by_k_factor, place_by_rules, usual_goal};
+pub use referee::{
+    ExactCurves, Reach, ReachedBy, Referee, Steady, Stress, SwitchedStability, Wave, WaveKind, referee, steady,
+};
 pub use result::{
     Analysis, Condition, ConditionResult, ConditionSummary, ControlFigures, CrossoverWindow, Curves, Detail,
     InnerResult, Ledger, LedgerRole, LedgerRow, Level, LimitKind, LoopResult, Readout, RequirementVerdict, Step,

@@ -5,6 +5,7 @@
 //! *Source*: the trade's usual definitions, as in Erickson & Maksimovic, Fundamentals of Power Electronics, 3rd ed., ch. 2, 3, 8
 //! and 9, and Åström & Murray, Feedback Systems, 2nd ed., 10 (modulus margin, sensitivity), from memory.
 
+use super::switched_terms;
 use crate::converter::Landmark;
 
 /// A term with its meaning.
@@ -27,7 +28,7 @@ impl Term {
     }
 }
 
-const fn term(key: &'static str, name: &'static str, text: &'static str, formula: &'static str) -> Term {
+pub(super) const fn term(key: &'static str, name: &'static str, text: &'static str, formula: &'static str) -> Term {
     Term { key, name, text, formula }
 }
 
@@ -144,6 +145,49 @@ pub static TERMS: &[Term] = &[
         "Inner gain margin",
         "How far the inner loop's gain may rise until the current loop oscillates.",
         "GM = −20·log |Ti| where arg Ti = −180° − k·360°",
+    ),
+    term(
+        "crossover-least-ratio",
+        "Crossover, least ratio",
+        "Crossover at the least transfer ratio of the optocoupler: the loop gain is proportional to it.",
+        "|T(j·2π·fc)| = 1 with T·least / nominal",
+    ),
+    term(
+        "phase-margin-least-ratio",
+        "Phase margin, least ratio",
+        "Phase margin at the least transfer ratio of the optocoupler.",
+        "PM = 180° + arg T(j·2π·fc) with T·least / nominal",
+    ),
+    term(
+        "crossover-greatest-ratio",
+        "Crossover, greatest ratio",
+        "Crossover at the greatest transfer ratio of the optocoupler: the loop gain is proportional to it.",
+        "|T(j·2π·fc)| = 1 with T·greatest / nominal",
+    ),
+    term(
+        "phase-margin-greatest-ratio",
+        "Phase margin, greatest ratio",
+        "Phase margin at the greatest transfer ratio of the optocoupler.",
+        "PM = 180° + arg T(j·2π·fc) with T·greatest / nominal",
+    ),
+    term(
+        "led-current",
+        "LED current",
+        "Current in the optocoupler's LED that holds the control voltage.",
+        "(Vsupply − Vc) / (ratio·Rpull)",
+    ),
+    term(
+        "cathode-current",
+        "Cathode current",
+        "Current in the shunt regulator: the LED's and that of the bias resistor across it. Below its least current the regulator \
+         does not regulate.",
+        "I_LED + V_LED / Rbias",
+    ),
+    term(
+        "cathode-voltage",
+        "Cathode voltage",
+        "What LED and LED resistor leave for the shunt regulator. Below its least voltage it cannot pull any further.",
+        "Vfeed − V_LED − Rled·I_cathode",
     ),
     term(
         "lc-resonance",
@@ -404,7 +448,7 @@ pub static TERMS: &[Term] = &[
 
 /// The term with this key.
 pub fn find(key: &str) -> Option<&'static Term> {
-    TERMS.iter().find(|term| term.key == key)
+    TERMS.iter().chain(switched_terms::TERMS).find(|term| term.key == key)
 }
 
 /// The term behind an entry that states a requirement: of `requirement.phase-margin.worst` the phase margin.
@@ -430,7 +474,7 @@ mod tests {
     #[test]
     fn every_term_stands_once_and_says_something() {
         let mut seen = BTreeSet::new();
-        for term in TERMS {
+        for term in TERMS.iter().chain(switched_terms::TERMS) {
             assert!(seen.insert(term.key), "{} stands twice", term.key);
             assert!(!term.name.is_empty() && term.text.ends_with('.') && !term.formula.ends_with('.'), "{}", term.key);
         }

@@ -184,16 +184,11 @@ impl Compensator {
         };
         let mut corners = Corners { gain: Some(gain), ..Corners::default() };
         if self.kind != Kind::One {
-            (corners.zero_1, corners.pole_1) = match self.amplifier {
-                Amplifier::ShuntRegulator(a) => {
-                    let collector = parts.c2 + a.capacitance;
-                    (Some(corner_hz(self.zero_resistance(parts), parts.c1)), Some(corner_hz(parts.pull_up, collector)))
-                }
-                _ => {
-                    let both = parts.c1 * parts.c2 / (parts.c1 + parts.c2);
-                    (Some(corner_hz(parts.r2, parts.c1)), Some(corner_hz(parts.r2, both)))
-                }
-            };
+            let feedback = || (parts.r2, parts.c1 * parts.c2 / (parts.c1 + parts.c2));
+            let (resistance, capacitance) =
+                self.isolated().map_or_else(feedback, |regulator| (parts.pull_up, parts.c2 + regulator.capacitance));
+            corners.zero_1 = Some(corner_hz(self.zero_resistance(parts), parts.c1));
+            corners.pole_1 = Some(corner_hz(resistance, capacitance));
         }
         let loads_divider = matches!(self.amplifier, Amplifier::Transconductance(_));
         if self.has(Part::C3) {
@@ -250,10 +245,10 @@ impl Compensator {
 
     /// Formula and parts behind a lane.
     fn origin(&self, corner: Corner) -> (&'static str, &'static [Part]) {
+        use Part::{C1, C2, C3, Feedforward, Lower, R2, R3, Upper};
         if let Amplifier::ShuntRegulator(regulator) = self.amplifier {
             return self.isolated_origin(&regulator, corner);
         }
-        use Part::{C1, C2, C3, Feedforward, Lower, R2, R3, Upper};
         if let Amplifier::Digital(digital) = self.amplifier {
             let integrator = "(1 − z⁻¹) · C / T at z = 1, over 2π";
             return (if corner == Corner::Gain { integrator } else { digital.method.formula() }, &[]);

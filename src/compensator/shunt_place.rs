@@ -88,7 +88,7 @@ impl Compensator {
         let greatest = self.led_limit(regulator);
         if parts.led > greatest.max(self.parts.led) * (1.0 + ROUNDING) {
             let at_limit = Parts { led: greatest.max(self.parts.led), ..*parts };
-            return Err(self.led_floor(regulator, &at_limit));
+            return Err(led_floor(regulator, &at_limit));
         }
         if parts.led <= 0.0 {
             return Err(format!(
@@ -109,7 +109,7 @@ impl Compensator {
             let least = regulator.branch_gain(&at_limit) * zero * self.zero_resistance(&at_limit) / at_limit.upper;
             if gain < least * (1.0 - ROUNDING) {
                 aim.gain = Some(least);
-                why = Some(self.led_floor(regulator, &at_limit));
+                why = Some(led_floor(regulator, &at_limit));
             }
         }
         let highest = corner_hz(self.parts.pull_up, regulator.capacitance * (1.0 + 2.0 * LEAST_SHARE));
@@ -139,25 +139,26 @@ impl Compensator {
         kept.contains(&Part::Led).then(|| floor(regulator.branch_gain(&self.parts), "with the LED resistor kept"))
     }
 
-    fn led_floor(&self, regulator: &ShuntRegulator, at_limit: &Parts) -> String {
-        let led = print_digits(at_limit.led, Unit::Ohm, 3);
-        let reason = format!(
-            "with an LED resistor of {led}: a greater one leaves LED and regulator too little to pull the control voltage down at the least transfer ratio"
-        );
-        if regulator.has_fast_path() {
-            floor(regulator.branch_gain(at_limit), &reason)
-        } else {
-            format!(
-                "The LED branch has a gain of at least {}, {reason}.",
-                print_digits(regulator.branch_gain(at_limit), Unit::One, 3)
-            )
-        }
-    }
-
     fn pole_limit(&self, regulator: &ShuntRegulator) -> String {
         format!(
             "With this pull-up the optocoupler alone has its pole at {}: a higher one needs a smaller pull-up.",
             print(corner_hz(self.parts.pull_up, regulator.capacitance), Unit::Hertz)
+        )
+    }
+}
+
+/// Why the LED resistor cannot grow, and so the gain not fall.
+fn led_floor(regulator: &ShuntRegulator, at_limit: &Parts) -> String {
+    let led = print_digits(at_limit.led, Unit::Ohm, 3);
+    let reason = format!(
+        "with an LED resistor of {led}: a greater one leaves LED and regulator too little to pull the control voltage down at the least transfer ratio"
+    );
+    if regulator.has_fast_path() {
+        floor(regulator.branch_gain(at_limit), &reason)
+    } else {
+        format!(
+            "The LED branch has a gain of at least {}, {reason}.",
+            print_digits(regulator.branch_gain(at_limit), Unit::One, 3)
         )
     }
 }

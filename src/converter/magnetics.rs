@@ -17,7 +17,9 @@ impl StageDrawing {
     /// The first of two inductors, likewise.
     pub fn first_inductor(&mut self, from: Node, to: Node) {
         self.wind(("inductor L1", "winding L1"), (from, to), (INDUCTANCE, WINDING));
-        let mut drawn = drawn_inductor(("Inductor L1", "L1"), (INDUCTANCE, WINDING)).also(&[INDUCTORS.path]);
+        let mut drawn = drawn_inductor(("Inductor L1", "L1"), (INDUCTANCE, WINDING))
+            .also(&[INDUCTORS.path])
+            .dotted(self.options.coupled);
         if self.options.coupled {
             drawn = drawn.quiet(COUPLING.path);
         }
@@ -32,7 +34,7 @@ impl StageDrawing {
             let factor = self.netlist.slot(COUPLING.path);
             self.netlist.couple(first.part, second, factor);
         }
-        self.sketch.part(from, to, drawn_inductor(("Inductor L2", "L2"), paths));
+        self.sketch.part(from, to, drawn_inductor(("Inductor L2", "L2"), paths).dotted(self.options.coupled));
     }
 
     /// Inductor and winding resistance in series, in the netlist alone.

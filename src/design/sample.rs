@@ -93,6 +93,11 @@ static ALL: &[Sample] = &[
     sample!("market-stall.ron", "Market stall", "A SEPIC whose coupled inductors move the zero pair out of the way."),
     sample!("organ-tuner.ron", "Organ tuner", "A Ćuk whose coupling capacitor is damped by a branch."),
     sample!(
+        "canal-lock.ron",
+        "Canal lock",
+        "A flyback with isolated feedback, its fast path taken ahead of a second stage."
+    ),
+    sample!(
         "bench-exercise.ron",
         "Bench exercise, unstable on purpose",
         "An integrator that crosses above the LC resonance, to be mended."

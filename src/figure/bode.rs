@@ -3,7 +3,7 @@
 use super::axis::extent;
 use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, heading, legend, line, text};
 use super::stroke::{Align, Dash, Figure, Mark, Role, Weight};
-use crate::analysis::{Analysis, Curves, Detail};
+use crate::analysis::{Analysis, Curves, Detail, Referee};
 use crate::quantity::{Unit, print_digits};
 
 /// Which curves a Bode plot shows.
@@ -34,7 +34,7 @@ const GAINS: (f64, f64) = (-80.0, 100.0);
 pub fn bode(
     title: &str,
     analysis: &Analysis,
-    held: Option<(&str, &Analysis)>,
+    (held, exact): (Option<(&str, &Analysis)>, Option<&Referee>),
     shown: Shown,
     size: [f64; 2],
 ) -> Option<Figure> {
@@ -59,6 +59,9 @@ pub fn bode(
         pair(&mut figure, (&gain, &phase), (&held.curves, &held.curves.loop_db, &held.curves.loop_deg), pen);
         names.push((pen, format!("held: {name}")));
     }
+    if let Some(exact) = exact {
+        names.extend(exact_curves(&mut figure, (&gain, &phase), exact, shown));
+    }
     for (wanted, role, name) in [
         (shown.plant, Role::Plant, "plant"),
         (shown.compensator, Role::Compensator, "compensator"),
@@ -73,8 +76,52 @@ pub fn bode(
     gain.frame(&mut figure);
     phase.frame(&mut figure);
     margins(&mut figure, detail, (&gain, &phase));
+    if let Some(exact) = exact {
+        reach(&mut figure, exact, &gain);
+    }
     legend(&mut figure, [size[0] - ROOM[1], ROOM[2] - 14.0], &names);
     Some(figure)
+}
+
+/// Width of an exact curve, under the averaged one [points].
+pub(super) const EXACT_WIDTH: f64 = 5.5;
+
+/// Exact curves of what is shown, with a word for the legend.
+fn exact_curves(figure: &mut Figure, charts: (&Chart, &Chart), exact: &Referee, shown: Shown) -> Option<(Pen, String)> {
+    let curves = &exact.curves;
+    let pen = |role| Pen { role, width: EXACT_WIDTH, dash: Dash::Solid };
+    let of = [
+        (shown.plant, Role::ExactPlant, &curves.plant_db, &curves.plant_deg),
+        (shown.loop_gain, Role::ExactLoop, &curves.loop_db, &curves.loop_deg),
+    ];
+    let mut last = None;
+    for (_, role, db, deg) in of.into_iter().filter(|(wanted, ..)| *wanted) {
+        charts.0.curve(figure, &curves.frequencies_hz, db, pen(role));
+        charts.1.curve(figure, &curves.frequencies_hz, deg, pen(role));
+        last = Some((pen(role), "exact".to_owned()));
+    }
+    last
+}
+
+/// Up to where the averaged model holds, between gain and phase.
+fn reach(figure: &mut Figure, exact: &Referee, gain: &Chart) {
+    let [[left, _], [right, bottom]] = gain.corners;
+    let Some(hz) = exact.reach.frequency_hz else { return };
+    let (x, y) = (f64::from(gain.x.at(hz)).clamp(left, right), bottom + GAP / 2.0);
+    let words = match exact.reach.by {
+        Some(_) => format!("averaged holds to {}", print_digits(hz, Unit::Hertz, 3)),
+        None => "averaged holds throughout".to_owned(),
+    };
+    // The words stand in the line where they have the room, else behind it.
+    let width = LETTER * words.chars().count() as f64;
+    let within = x - left > width + 30.0;
+    let (end, align) = if within { (x - width - 16.0, Align::End) } else { (x, Align::Start) };
+    line(figure, vec![[left, y], [end, y]], Role::Landmark, (1.5, Dash::Solid));
+    if gain.x.holds(hz) {
+        line(figure, vec![[x, y - 4.5], [x, y + 4.5]], Role::Landmark, (1.5, Dash::Solid));
+    }
+    let at = [if within { x - 7.0 } else { x + 7.0 }, y];
+    text(figure, at, &words, (Role::Quiet, 10.0, Weight::Regular), (align, Align::Middle));
 }
 
 fn of(curves: &Curves, role: Role) -> (Pen, &[f64], &[f64]) {

@@ -103,13 +103,20 @@ impl Chart {
 
     /// Lines and labels of a linear grid across.
     pub(super) fn columns(&self, figure: &mut Figure, unit: Unit) {
+        self.columns_of(figure, Some(unit));
+    }
+
+    /// Lines of a linear grid across, with labels in a unit; none without one.
+    pub(super) fn columns_of(&self, figure: &mut Figure, labels: Option<Unit>) {
         let ((from, to), [[left, _], [right, bottom]]) = (self.x.range(), self.corners);
         let step = nice_step(to - from, ((right - left) / LABEL_WIDTH).max(1.0));
         for value in multiples(from, to, step) {
             self.vertical(figure, value, Role::Grid, (0.8, Dash::Solid));
-            let at = [f64::from(self.x.at(value)).min(right - 10.0), bottom + 6.0];
-            let words = grid_label(value, step, unit);
-            text(figure, at, &words, (Role::Quiet, SMALL, Weight::Regular), (Align::Middle, Align::Start));
+            if let Some(unit) = labels {
+                let at = [f64::from(self.x.at(value)).min(right - 10.0), bottom + 6.0];
+                let words = grid_label(value, step, unit);
+                text(figure, at, &words, (Role::Quiet, SMALL, Weight::Regular), (Align::Middle, Align::Start));
+            }
         }
     }
 

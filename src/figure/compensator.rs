@@ -1,7 +1,7 @@
 //! The schematic of a compensator: divider, amplifier, and the network around it or behind it.
 //!
 //! An op amp has its network over it, from its output back to the tap of the divider. A transconductance amplifier has the same
-//! parts from its output down to ground.
+//! parts from its output down to ground. Isolated feedback is drawn in `isolated`.
 
 use super::pen::{Frame, Label, Line, Pen, finished};
 use super::stroke::{Align, Figure, Place};
@@ -45,11 +45,11 @@ fn designator(part: Part) -> &'static str {
 type Anchored = (Label, [f64; 2], (Align, Align));
 
 /// A drawing in progress.
-struct Sheet<'a> {
-    pen: Pen,
+pub(super) struct Sheet<'a> {
+    pub(super) pen: Pen,
     places: Vec<Place>,
     frame: Frame,
-    numbers: &'a Numbers<'a>,
+    pub(super) numbers: &'a Numbers<'a>,
 }
 
 /// The schematic of a compensator.
@@ -58,6 +58,11 @@ pub fn compensator_schematic(compensator: &Compensator, numbers: &Numbers<'_>) -
         return super::equation::equation_figure(&digital, numbers);
     }
     let mut sheet = Sheet { pen: Pen::default(), places: Vec::new(), frame: Frame::new(0.0, 0.0, 0.0, 0.0), numbers };
+    if let Some(regulator) = compensator.isolated() {
+        let end = sheet.isolated(compensator, regulator);
+        sheet.control(end);
+        return finished(sheet.pen.marks, sheet.places, sheet.frame.grown(2.0));
+    }
     let op_amp = matches!(compensator.amplifier, Amplifier::OpAmp(_));
     let over = match compensator.kind {
         _ if !op_amp => 0.0,
@@ -74,7 +79,7 @@ pub fn compensator_schematic(compensator: &Compensator, numbers: &Numbers<'_>) -
 }
 
 impl Sheet<'_> {
-    fn claim(&mut self, frame: Frame) {
+    pub(super) fn claim(&mut self, frame: Frame) {
         self.frame = self.frame.union(frame);
     }
 
@@ -91,11 +96,16 @@ impl Sheet<'_> {
     }
 
     /// A part in a column, designator and value at one side.
-    fn down(&mut self, part: Part, centre: [f64; 2], words_at_left: bool) {
+    pub(super) fn down(&mut self, part: Part, centre: [f64; 2], words_at_left: bool) {
         let frame = symbol::frame(kind(part), Way::Down).moved(centre[0], centre[1]);
-        let lines = vec![Line::quiet(designator(part)), Line::value(&self.numbers.text(part.path()))];
+        let words = self.words(part);
         let (x, align) = if words_at_left { (frame.left - 3.0, Align::End) } else { (frame.right + 3.0, Align::Start) };
-        self.part(part, centre, Way::Down, &[(Label::new(lines), [x, centre[1]], (align, Align::Middle))]);
+        self.part(part, centre, Way::Down, &[(words, [x, centre[1]], (align, Align::Middle))]);
+    }
+
+    /// Designator and value of a part, one below the other.
+    pub(super) fn words(&self, part: Part) -> Label {
+        Label::new(vec![Line::quiet(designator(part)), Line::value(&self.numbers.text(part.path()))])
     }
 
     fn part(&mut self, part: Part, centre: [f64; 2], way: Way, words: &[Anchored]) {
@@ -115,7 +125,7 @@ impl Sheet<'_> {
         self.place(name, frame, vec![part.path().to_owned()], start);
     }
 
-    fn place(&mut self, name: String, frame: Frame, paths: Vec<String>, start: usize) {
+    pub(super) fn place(&mut self, name: String, frame: Frame, paths: Vec<String>, start: usize) {
         self.claim(frame);
         self.places.push(Place { name, corners: frame.corners(), paths, marks: start..self.pen.marks.len() });
     }
@@ -156,13 +166,13 @@ impl Sheet<'_> {
     }
 
     /// Room for parts on one line, their words included.
-    fn row_width(&self, parts: &[Part]) -> f64 {
+    pub(super) fn row_width(&self, parts: &[Part]) -> f64 {
         let width = |part: &Part| Line::value(&self.numbers.text(part.path())).width() + 6.0;
         parts.iter().map(width).fold(PART, f64::max) * parts.len() as f64 + 6.0
     }
 
     /// Parts on one line between two places.
-    fn row(&mut self, parts: &[Part], (from, to): (f64, f64), y: f64) {
+    pub(super) fn row(&mut self, parts: &[Part], (from, to): (f64, f64), y: f64) {
         let pitch = (to - from) / parts.len() as f64;
         let mut x = from;
         for (k, part) in parts.iter().enumerate() {
@@ -174,7 +184,7 @@ impl Sheet<'_> {
         self.pen.line(&[[x, y], [to, y]]);
     }
 
-    fn ground(&mut self, at: [f64; 2]) {
+    pub(super) fn ground(&mut self, at: [f64; 2]) {
         self.pen.ground(at);
         self.claim(Frame::new(at[0] - 6.0, at[1], at[0] + 6.0, at[1] + 11.0));
     }

@@ -5,6 +5,7 @@ mod bode;
 mod chart;
 mod compensator;
 mod equation;
+mod isolated;
 mod ladder;
 mod pen;
 mod plan;
@@ -16,7 +17,10 @@ mod sweep;
 mod symbol;
 #[cfg(test)]
 mod tests;
+mod time_chart;
+mod transient;
 mod values;
+mod waves;
 
 pub use bode::{Shown, bode};
 pub use compensator::compensator_schematic;
@@ -25,4 +29,7 @@ pub use stage::{schematic, stage_schematic};
 pub use step::{Event, step};
 pub use stroke::{Align, Dash, Figure, Mark, Place, Point, Role, Weight};
 pub use sweep::sweep;
+pub use time_chart::{Frame, Instant, Panel, TimeChart, Trace, TraceLook};
+pub use transient::transient;
 pub use values::Numbers;
+pub use waves::waves;

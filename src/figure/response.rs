@@ -2,9 +2,10 @@
 //! and the input filter, beside.
 
 use super::axis::extent;
+use super::bode::EXACT_WIDTH;
 use super::chart::{Chart, Pen, SMALL, Span, WIDTHS, heading, legend, text};
 use super::stroke::{Align, Dash, Figure, Mark, Role, Weight};
-use crate::analysis::{Analysis, Curves, Detail, InputFilterResult};
+use crate::analysis::{Analysis, Curves, Detail, InputFilterResult, Referee};
 use crate::quantity::{Unit, print_digits};
 
 /// Closed-loop response shown over frequency.
@@ -70,7 +71,7 @@ impl ClosedLoop {
 pub fn response(
     title: &str,
     analysis: &Analysis,
-    held: Option<(&str, &Analysis)>,
+    (held, exact): (Option<(&str, &Analysis)>, Option<&Referee>),
     which: ClosedLoop,
     size: [f64; 2],
 ) -> Option<Figure> {
@@ -101,6 +102,11 @@ pub fn response(
         let pen = Pen { role: Role::Held, width: WIDTHS.1, dash: Dash::Dashed };
         chart.curve(&mut figure, xs, open, pen);
         names.push((pen, "open loop".to_owned()));
+    }
+    if let Some(exact) = exact.filter(|_| which == ClosedLoop::Impedance) {
+        let pen = Pen { role: Role::ExactLoop, width: EXACT_WIDTH, dash: Dash::Solid };
+        chart.curve(&mut figure, &exact.curves.frequencies_hz, &exact.curves.output_impedance_ohm, pen);
+        names.push((pen, "exact".to_owned()));
     }
     let pen = Pen { role: Role::LoopGain, width: WIDTHS.0, dash: Dash::Solid };
     chart.curve(&mut figure, xs, closed, pen);

@@ -29,6 +29,10 @@ pub enum Role {
     Compensator,
     /// The loop gain, and closed-loop responses.
     LoopGain,
+    /// The exact plant, broad under the averaged one.
+    ExactPlant,
+    /// The exact loop gain or closed-loop response, broad under the averaged one; the ripple about a mean.
+    ExactLoop,
     /// A held curve, and the open loop beside the closed one.
     Held,
     /// A measured curve.

@@ -1,7 +1,8 @@
 //! Whole registry: schematics of every topology under every choice that draws parts, and of every compensator, keep their rules.
 
+use super::plan::{Item, plan};
 use super::{Figure, Mark, Numbers, Place, Point, compensator_schematic, schematic, stage_schematic};
-use crate::circuit::{Drawn, Netlist, Sketch, Symbol};
+use crate::circuit::{Drawn, Netlist, Node, Sketch, Symbol};
 use crate::compensator::Compensator;
 use crate::converter;
 use crate::design::{self, Design, sample};
@@ -223,6 +224,32 @@ fn stage_schematics_keep_the_rules() {
     }
 }
 
+/// The wire of a node runs along one rail: on both it would be two wires that do not meet.
+#[test]
+fn every_node_stands_on_one_rail() {
+    for (what, design) in designs() {
+        let sketch = converter::sketch(&design.choices).unwrap();
+        let mut seats: Vec<(Node, bool)> = Vec::new();
+        for item in plan(&sketch, |_| false) {
+            match item {
+                Item::Along { main, .. } => {
+                    seats.extend(main.first().map(|seat| (seat.first, true)));
+                    seats.extend(main.last().map(|seat| (seat.last, true)));
+                }
+                Item::Column { chain, second } => {
+                    seats.extend(chain.first().map(|seat| (seat.first, true)));
+                    seats.extend(chain.last().map(|seat| (seat.last, false)));
+                    seats.extend(second.into_iter().flat_map(|w| [(w.upper, true), (w.lower, false)]));
+                }
+            }
+        }
+        for (node, upper) in &seats {
+            let same = seats.iter().filter(|(other, _)| other == node).all(|(_, rail)| rail == upper);
+            assert!(same, "{what}: {node:?} stands on both rails");
+        }
+    }
+}
+
 /// A choice may add entries of parts; whatever applies and can be seen in a circuit stands at some place.
 #[test]
 fn every_part_with_entries_is_in_the_schematic() {
@@ -257,6 +284,41 @@ fn compensator_schematics_keep_the_rules_and_have_every_part() {
                         assert!(stands(entry.path), "{what}: {}", entry.path);
                     }
                 }
+            }
+        }
+    }
+}
+
+#[test]
+fn schematics_of_isolated_feedback_keep_the_rules_and_have_every_part() {
+    for (kind, fast, series) in [
+        ("1", "none", "none"),
+        ("2", "load", "none"),
+        ("2", "bank", "fitted"),
+        ("2", "none", "none"),
+        ("3", "load", "none"),
+        ("3", "bank", "fitted"),
+        ("3", "none", "none"),
+    ] {
+        for (speed, led) in [("pole", 1e3), ("capacitance", 12.34)] {
+            let mut design = Design::default();
+            for (path, key) in [
+                ("compensator.type", kind),
+                ("compensator.amplifier", "shunt-regulator"),
+                ("compensator.opto.fast-path", fast),
+                ("compensator.shunt.series-resistor", series),
+                ("compensator.opto.speed", speed),
+            ] {
+                design.set_from_text(path, key).unwrap();
+            }
+            design.values.set("compensator.opto.led-resistor", led).unwrap();
+            let compensator = Compensator::from_values(&design.values, &design.choices).unwrap();
+            let figure = compensator_schematic(&compensator, &numbers(&design));
+            let what = format!("{kind} {fast} {series}");
+            keeps_rules(&figure, &what);
+            let stands = |path: &str| figure.places.iter().any(|place| place.paths.iter().any(|p| p == path));
+            for entry in design.entries().iter().filter(|entry| entry.path.starts_with("compensator.")) {
+                assert!(stands(entry.path), "{what}: {}", entry.path);
             }
         }
     }

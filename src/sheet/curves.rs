@@ -3,11 +3,12 @@
 //! *Conventions*: numbers are printed so that they read back bit for bit, with a decimal point; a value that is not finite is
 //! an empty field.
 
-use crate::analysis::{Curves, Step};
+use crate::analysis::{Curves, Steady, Step};
+use crate::quantity::Unit;
 use std::io::{self, Write};
 
 /// A column: its name and its values.
-type Column<'a> = (&'static str, &'a [f64]);
+type Column<'a> = (&'a str, &'a [f64]);
 
 /// Writes the frequency curves of one condition.
 ///
@@ -40,6 +41,32 @@ pub fn write_curves(curves: &Curves, out: impl Write) -> io::Result<()> {
 /// As the writer.
 pub fn write_step(step: &Step, out: impl Write) -> io::Result<()> {
     write(&[("time_s", &step.times_s), ("output_voltage_v", &step.output_v)], out)
+}
+
+/// Writes the waveforms of a steady period: a row for every sampled instant, two at an instant where values jump.
+///
+/// # Errors
+/// As the writer.
+pub fn write_waves(steady: &Steady, out: impl Write) -> io::Result<()> {
+    let Some(first) = steady.waves.first() else { return Ok(()) };
+    let names =
+        steady.waves.iter().map(|wave| column_name(&wave.name, if wave.unit() == Unit::Volt { "v" } else { "a" }));
+    let names: Vec<String> = std::iter::once("time_s".to_owned()).chain(names).collect();
+    let values: Vec<&[f64]> =
+        std::iter::once(&*first.times_s).chain(steady.waves.iter().map(|wave| &*wave.values)).collect();
+    write_named(&names, &values, out)
+}
+
+/// A name as a column's: "inductor current" in amperes is `inductor_current_a`.
+fn column_name(name: &str, unit: &str) -> String {
+    let plain: String =
+        name.chars().map(|c| if c.is_ascii_alphanumeric() { c.to_ascii_lowercase() } else { '_' }).collect();
+    if unit.is_empty() { plain } else { format!("{plain}_{unit}") }
+}
+
+fn write_named(names: &[String], values: &[&[f64]], out: impl Write) -> io::Result<()> {
+    let columns: Vec<Column<'_>> = names.iter().map(String::as_str).zip(values.iter().copied()).collect();
+    write(&columns, out)
 }
 
 fn write(columns: &[Column<'_>], out: impl Write) -> io::Result<()> {
@@ -80,5 +107,21 @@ mod tests {
         let mut reader = csv::Reader::from_reader(text.as_bytes());
         let read: Vec<Option<f64>> = reader.records().map(|row| row.expect("a row")[1].parse().ok()).collect();
         assert_eq!(read, [Some(values[0]), None, Some(values[2]), Some(values[3])]);
+    }
+
+    #[test]
+    fn waveforms_have_a_column_each_with_its_unit() {
+        use crate::analysis::{Level, Shown, steady};
+        let design = crate::design::sample::built_in().check().expect("usable");
+        let steady = steady(&design, Shown::Levels(Level::Nominal, Level::Nominal)).expect("it has one");
+        let mut bytes = Vec::new();
+        write_waves(&steady, &mut bytes).expect("written");
+        let text = String::from_utf8(bytes).expect("text");
+        let mut reader = csv::Reader::from_reader(text.as_bytes());
+        let names = reader.headers().expect("a heading").clone();
+        assert_eq!(names.len(), steady.waves.len() + 1);
+        assert_eq!((&names[0], &names[1]), ("time_s", "inductor_a"));
+        assert!(names.iter().any(|name| name == "switch_node_v"), "{names:?}");
+        assert_eq!(reader.records().count(), steady.waves[0].times_s.len());
     }
 }

@@ -8,7 +8,7 @@ mod svg;
 mod table;
 mod waveforms;
 
-pub use curves::{write_curves, write_step};
+pub use curves::{write_curves, write_step, write_waves};
 #[cfg(feature = "window")]
 pub use png::{PictureError, png};
 pub use svg::svg;

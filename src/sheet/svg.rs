@@ -17,6 +17,8 @@ fn colour(role: Role) -> &'static str {
         Role::Good => "#127a56",
         Role::Missed => "#b45a00",
         Role::Plant => "#0086a8",
+        Role::ExactPlant => "#9fd6e4",
+        Role::ExactLoop => "#bcbec4",
         Role::Compensator => "#9c3f8a",
         Role::Held => "#7c7e82",
         Role::Measured => "#8a6a00",

@@ -44,6 +44,8 @@ pub struct CheckRequest {
     pub load_current: Option<f64>,
     /// Whether the load is swept too.
     pub load_sweep: bool,
+    /// Whether the exact switched model is asked, too.
+    pub switched: bool,
     /// Entries set before the check, by path, in the order given.
     pub settings: Vec<(String, String)>,
 }
@@ -127,6 +129,10 @@ struct CheckArguments {
     /// Sweep the load at three input voltages: duty ratio, conduction, crossover, margins.
     #[arg(long)]
     load_sweep: bool,
+    /// Ask the exact switched model, too: margins as an analyser reads them, multipliers, how far the averaged model holds, what the
+    /// parts bear.
+    #[arg(long)]
+    switched: bool,
     /// Set an entry or a choice before the check, such as stage.inductor.inductance=8.2u; may be repeated.
     #[arg(long = "set", value_name = "PATH=VALUE", value_parser = setting)]
     settings: Vec<(String, String)>,
@@ -182,8 +188,8 @@ fn usage(error: &clap::Error) -> Usage {
 
 impl From<CheckArguments> for CheckRequest {
     fn from(arguments: CheckArguments) -> Self {
-        let CheckArguments { files, json, at, input_voltage, load_current, load_sweep, settings } = arguments;
-        Self { files, json, at_hz: at, input_voltage, load_current, load_sweep, settings }
+        let CheckArguments { files, json, at, input_voltage, load_current, load_sweep, switched, settings } = arguments;
+        Self { files, json, at_hz: at, input_voltage, load_current, load_sweep, switched, settings }
     }
 }
 
@@ -254,14 +260,14 @@ mod tests {
 
     #[test]
     fn a_check_is_read_in_engineering_notation() {
-        let line = "polewright check a.ron b.ron --json --at 100,1k,10k --input-voltage 11.5V --load-current 800m --load-sweep \
+        let line = "polewright check a.ron b.ron --json --at 100,1k,10k --input-voltage 11.5V --load-current 800m --load-sweep --switched \
                     --set stage.inductor.inductance=8.2u --set stage.topology=buck";
         let Ok(Command::Check(request)) = read(line) else { panic!("a check") };
         assert_eq!(request.files, [PathBuf::from("a.ron"), PathBuf::from("b.ron")]);
         assert!(request.json);
         assert_eq!(request.at_hz, Some(vec![100.0, 1e3, 1e4]));
         assert_eq!((request.input_voltage, request.load_current), (Some(11.5), Some(0.8)));
-        assert!(request.load_sweep);
+        assert!(request.load_sweep && request.switched);
         assert_eq!(request.settings[1], ("stage.topology".into(), "buck".into()));
     }
 

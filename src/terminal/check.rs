@@ -1,8 +1,9 @@
 //! `polewright check`: reads, sets, checks and analyses each file, and reports.
 
 use super::arguments::CheckRequest;
+use super::switched::Switched;
 use super::{json, text};
-use crate::analysis::{Analysis, Level, LoadSweep, Request, SWEEP_POINTS, Shown, analyse, load_sweep};
+use crate::analysis::{Analysis, Level, LoadSweep, Request, SWEEP_POINTS, Shown, analyse, load_sweep, referee, steady};
 use crate::converter::Stage;
 use crate::design::{CheckedDesign, Design, file};
 use crate::finding::Finding;
@@ -59,6 +60,8 @@ pub(super) struct Report {
     pub(super) results: Option<(CheckedDesign, Analysis)>,
     /// The load sweep, where it was asked for and could be computed.
     pub(super) load_sweep: Option<LoadSweep>,
+    /// What the exact switched model says, where it was asked for.
+    pub(super) switched: Option<Switched>,
     /// All findings, the gravest first.
     pub(super) findings: Vec<Finding>,
 }
@@ -95,6 +98,7 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
         outcome: Outcome::Unusable,
         results: None,
         load_sweep: None,
+        switched: None,
         findings,
     };
     let mut design = match file::load(path) {
@@ -111,7 +115,8 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
             return unusable(title, problems);
         }
     };
-    let analysis = analyse(&checked, &asked(request, &checked.stage));
+    let asked = asked(request, &checked.stage);
+    let analysis = analyse(&checked, &asked);
     let mut findings = analysis.findings.clone();
     if let Err(finding) = &analysis.shown
         && !findings.contains(finding)
@@ -119,10 +124,20 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
         findings.insert(0, finding.clone());
     }
     findings.extend(outside((request.input_voltage, request.load_current), &checked.stage));
-    let outcome = judge(&analysis);
+    let switched = request
+        .switched
+        .then(|| Switched { referee: referee(&checked, &asked), steady: steady(&checked, asked.shown).ok() });
+    let mut outcome = judge(&analysis);
+    if let Some(Ok(exact)) = switched.as_ref().map(|switched| &switched.referee) {
+        findings.extend(exact.findings.iter().cloned());
+        findings.sort_by_key(|finding| std::cmp::Reverse(finding.severity));
+        if !exact.stability.is_stable() {
+            outcome = outcome.max(Outcome::NotMet);
+        }
+    }
     // A compensator that cannot be solved has been told by the analysis.
     let load_sweep = request.load_sweep.then(|| load_sweep(&checked, SWEEP_POINTS).ok()).flatten();
-    Report { file, title, outcome, results: Some((checked, analysis)), load_sweep, findings }
+    Report { file, title, outcome, results: Some((checked, analysis)), load_sweep, switched, findings }
 }
 
 /// Sets entries by path; every one that is wrong is told.

@@ -3,6 +3,7 @@
 use super::check::Report;
 use super::digital::{self, Digital};
 use super::input_filter::{self, InputFilter};
+use super::isolated::{self, Isolated};
 use crate::analysis::{Analysis, ConditionResult, Curves, Detail, RequirementVerdict};
 use crate::converter::FurtherValue;
 use crate::design::CheckedDesign;
@@ -29,8 +30,10 @@ struct Object<'a> {
     response: Vec<Response>,
     digital: Option<Digital>,
     input_filter: Option<InputFilter>,
+    isolated: Option<Isolated>,
     load_step: Option<LoadStep>,
     load_sweep: Option<super::sweep::Sweep>,
+    switched: Option<super::switched::Object>,
     requirements: Vec<Requirement<'a>>,
     findings: Vec<FindingRow<'a>>,
 }
@@ -147,6 +150,8 @@ struct NineRow<'a> {
     load_step_deviation_v: Option<f64>,
     settling_s: Option<f64>,
     filter_margin_db: Option<f64>,
+    at_least_ratio: Option<isolated::End>,
+    at_greatest_ratio: Option<isolated::End>,
     problem: Option<&'a str>,
 }
 
@@ -243,8 +248,10 @@ fn object(report: &Report) -> Object<'_> {
         response: detail.map(|d| response(&d.curves)).unwrap_or_default(),
         digital: detail.and_then(digital::object),
         input_filter: detail.and_then(input_filter::object),
+        isolated: report.results.as_ref().zip(detail).and_then(|((design, _), d)| isolated::object(design, d)),
         load_step: report.results.as_ref().map(|(design, _)| load_step(design, detail)),
         load_sweep: report.load_sweep.as_ref().map(super::sweep::json),
+        switched: report.switched.as_ref().map(super::switched::json),
         requirements: analysis.map(|a| a.requirements.iter().map(requirement).collect()).unwrap_or_default(),
         findings: report.findings.iter().map(finding_row).collect(),
     }
@@ -355,6 +362,7 @@ fn nine_row(row: &ConditionResult) -> NineRow<'_> {
     let margins = summary.map(|s| &s.loop_gain.margins);
     let crossover = margins.and_then(Margins::headline_crossover);
     let step = summary.and_then(|s| s.load_step);
+    let end = |k: usize| summary.and_then(|s| s.isolated.as_ref()).map(|f| isolated::end(&f.ends[k]));
     NineRow {
         condition: &row.condition.label,
         input_voltage: row.condition.input_voltage,
@@ -371,6 +379,8 @@ fn nine_row(row: &ConditionResult) -> NineRow<'_> {
         load_step_deviation_v: step.map(|s| s.deviation_v),
         settling_s: step.and_then(|s| s.settling_s),
         filter_margin_db: summary.and_then(|s| s.input_filter).map(|f| f.least_margin().margin_db),
+        at_least_ratio: end(0),
+        at_greatest_ratio: end(1),
         problem: row.outcome.as_ref().err().map(|finding| finding.message.as_str()),
     }
 }

@@ -117,6 +117,7 @@ fn it_goes_through_a_file_and_a_report() {
         input_voltage: None,
         load_current: None,
         load_sweep: false,
+        switched: false,
     };
     let run = |settings: &[(&str, &str)]| {
         let (mut out, mut err) = (Vec::new(), Vec::new());

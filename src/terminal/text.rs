@@ -1,7 +1,7 @@
 //! The report as text for people: aligned columns, one section per subject, every number with its condition.
 
 use super::check::Report;
-use super::input_filter;
+use super::{input_filter, isolated};
 use crate::analysis::{Analysis, Curves, Detail, LimitKind, RequirementVerdict};
 use crate::design::{CheckedDesign, printable};
 use crate::finding::Finding;
@@ -12,6 +12,8 @@ use std::io::{self, Write};
 
 /// Width of the column of names [characters].
 const NAMES: usize = 26;
+/// Width of a condition in words.
+const CONDITIONS: usize = 46;
 
 /// Width of lines of running text [characters].
 const LINE: usize = 100;
@@ -29,6 +31,7 @@ pub(super) fn write(
         operating_point(&mut text, detail, analysis);
         landmarks(&mut text, detail);
         input_filter(&mut text, detail);
+        over_the_ratio(&mut text, analysis);
         text.push_str(&super::digital::text(detail));
         stability(&mut text, detail);
     }
@@ -38,6 +41,9 @@ pub(super) fn write(
         if response {
             response_table(&mut text, &detail.curves);
         }
+    }
+    if let (Some(switched), Ok(detail)) = (&report.switched, &analysis.shown) {
+        super::switched::text(&mut text, switched, detail);
     }
     if let Some(sweep) = &report.load_sweep {
         super::sweep::text(&mut text, sweep);
@@ -136,6 +142,19 @@ fn input_filter(text: &mut String, detail: &Detail) {
     text.push_str("Input filter against converter\n");
     for (name, value) in rows {
         row(text, &name, &value);
+    }
+    text.push('\n');
+}
+
+/// Isolated feedback: what the ends of the transfer ratio make of every condition.
+fn over_the_ratio(text: &mut String, analysis: &Analysis) {
+    let rows = isolated::rows(analysis);
+    if rows.is_empty() {
+        return;
+    }
+    text.push_str("Over the transfer ratio\n");
+    for (condition, ends) in rows {
+        let _ = writeln!(text, "  {}{ends}", padded(&condition, CONDITIONS));
     }
     text.push('\n');
 }

@@ -5,13 +5,15 @@ use std::path::PathBuf;
 use eframe::egui::{self, FocusDirection, Key, Modifiers, Rect, Ui, ViewportCommand};
 
 use super::command::{COMMANDS, Command, Row};
+use super::exact::Wanted;
 use super::files::FileDialogs;
+use super::pages::Page;
 use super::safety::Kept;
 use super::session::Session;
 use super::theme;
 use super::view::{Desk, View};
 use super::{dialogs, layout};
-use crate::analysis;
+use crate::analysis::{self, Transient};
 use crate::design::Design;
 
 /// The window's state: the work, the view, and what was asked for since the last turn.
@@ -88,6 +90,16 @@ impl App {
     pub fn lit(&mut self) -> Vec<String> {
         let desk = Desk { session: &self.session, kept: &self.kept, view: &mut self.view, send: &mut self.asked };
         desk.lit()
+    }
+
+    /// The transient that is shown, when it is that of the present design.
+    pub fn transient(&self) -> Option<&Transient> {
+        self.view.transient.result()
+    }
+
+    /// True while a transient runs.
+    pub fn transient_runs(&self) -> bool {
+        self.view.transient.runs()
     }
 
     /// The message under the bar, if any.
@@ -195,6 +207,12 @@ impl App {
         self.session.ask_frequencies(frequencies_hz);
     }
 
+    /// What is looked at beside the averaged results.
+    fn ask_exact(&mut self) {
+        let waveforms = self.view.page == Page::Waveforms && !self.view.review;
+        self.session.ask_exact(Wanted { referee: self.view.exact, steady: waveforms });
+    }
+
     fn name_window(&mut self, ctx: &egui::Context) {
         let design = self.session.design();
         let edited = if self.session.unsaved() { ", edited" } else { "" };
@@ -217,7 +235,9 @@ impl eframe::App for App {
             self.perform(command, ctx);
         }
         self.ask_frequencies();
+        self.ask_exact();
         self.session.refresh();
+        self.follow_transient(ctx);
         self.keep_up(ctx);
         self.name_window(ctx);
     }

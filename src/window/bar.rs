@@ -6,6 +6,7 @@ use eframe::egui::{
 };
 
 use super::command::{COMMANDS, Command, Curve, Exported, Menu, Row};
+use super::pages::Page;
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{conditions, recents, recovery};
@@ -86,6 +87,7 @@ fn begins_group(command: &Command) -> bool {
     matches!(
         command,
         Command::Toggle(Curve::Plant)
+            | Command::Page(Page::Loop)
             | Command::SweepLoad
             | Command::WholeRange
             | Command::ToggleStage
@@ -172,6 +174,8 @@ fn chosen(command: &Command, desk: &Desk<'_>) -> bool {
     match command {
         Command::Toggle(curve) => desk.view.shows(*curve),
         Command::ToggleBand => desk.view.band,
+        Command::ToggleExact => desk.view.exact,
+        Command::Page(page) => desk.view.page == *page,
         Command::Tie(kind) => desk.session.tied(*kind),
         Command::ToggleStage => desk.view.stage_column,
         Command::ToggleReadouts => desk.view.readout_column,

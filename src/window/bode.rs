@@ -4,6 +4,7 @@ use eframe::egui::{self, Align2, Rect, Sense, Stroke, Ui, WidgetInfo, pos2, vec2
 
 use super::axis::{self, Axis};
 use super::crossover;
+use super::exact_curves;
 use super::held::Held;
 use super::lanes;
 use super::legend;
@@ -40,7 +41,7 @@ const HEAD: f32 = 24.0;
 /// Height of what stands under the lanes [points].
 const FOOT: f32 = 58.0;
 /// Distance between gain and phase [points].
-const GAP: f32 = 17.0;
+pub(super) const GAP: f32 = 17.0;
 
 /// Draws the stack into all room of the `Ui`.
 pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
@@ -65,10 +66,12 @@ pub(super) fn bode_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             held_curves(&painter, &stack, held, palette);
         }
         if let Ok(detail) = &analysis.shown {
+            exact_curves::curves(&painter, &stack, desk, palette);
             curves(&painter, &stack, detail, desk, palette);
             marks::margins(&painter, &stack, analysis, detail, palette);
         }
         marks::foot_ui(ui, &stack, analysis, desk);
+        exact_curves::reach_ui(ui, &stack, desk);
     }
     cursor_line(ui, &stack, desk.view, palette);
     legend::legend_ui(ui, head, desk);

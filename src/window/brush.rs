@@ -1,6 +1,6 @@
 //! A figure's marks painted onto the screen: roles become the theme's colours, points become pixels.
 
-use eframe::egui::{self, Align2, Painter, Pos2, Shape, Stroke, pos2, vec2};
+use eframe::egui::{self, Align2, Mesh, Painter, Pos2, Shape, Stroke, pos2, vec2};
 
 use super::theme::{self, Palette};
 use crate::figure::axis::narrow;
@@ -71,8 +71,8 @@ impl Brush<'_> {
                 }
             }
             Mark::Area { points, role } => {
-                let points = points.iter().map(at).collect();
-                self.painter.add(Shape::convex_polygon(points, colour(*role), Stroke::NONE));
+                let points: Vec<Pos2> = points.iter().map(at).collect();
+                self.painter.add(area(points, colour(*role)));
             }
             Mark::Circle { centre, radius, role, width } => {
                 let radius = narrow(*radius) * self.view.scale;
@@ -92,6 +92,25 @@ impl Brush<'_> {
             }
         }
     }
+}
+
+/// A filled polygon. One of many corners is a band between two curves, which need not be convex.
+fn area(points: Vec<Pos2>, colour: egui::Color32) -> Shape {
+    if points.len() < 6 {
+        return Shape::convex_polygon(points, colour, Stroke::NONE);
+    }
+    let mut mesh = Mesh::default();
+    let pairs = points.iter().zip(points.iter().rev()).take(points.len() / 2);
+    for (index, (upper, lower)) in (0_u32..).zip(pairs) {
+        mesh.colored_vertex(*upper, colour);
+        mesh.colored_vertex(*lower, colour);
+        if index > 0 {
+            let at = 2 * index;
+            mesh.add_triangle(at - 2, at - 1, at);
+            mesh.add_triangle(at - 1, at, at + 1);
+        }
+    }
+    Shape::mesh(mesh)
 }
 
 fn side(align: Align) -> egui::Align {

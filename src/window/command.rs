@@ -6,6 +6,7 @@ use eframe::egui::ThemePreference;
 
 pub(super) use super::command_table::{COMMANDS, Menu, Row};
 use super::history::Gesture;
+use super::pages::Page;
 use super::placing::Method;
 use crate::analysis::Level;
 use crate::compensator::LaneKind;
@@ -55,6 +56,14 @@ pub enum Exported {
     Curves,
     /// The time curve.
     StepCurve,
+    /// Waveforms of a steady period.
+    Waves,
+    /// The same as numbers.
+    WaveCurves,
+    /// What follows an event.
+    Transient,
+    /// The same as numbers.
+    TransientCurves,
 }
 
 /// A request to the window, from a menu, a key, a field or a handle.
@@ -203,6 +212,14 @@ pub enum Command {
     Toggle(Curve),
     /// Show or hide the band over the nine conditions.
     ToggleBand,
+    /// Show or hide the exact curves beside the averaged ones.
+    ToggleExact,
+    /// Show another page in the middle column.
+    Page(Page),
+    /// Run the transient that is shown again.
+    RunTransient,
+    /// Stop the run of the transient.
+    StopTransient,
     /// Show the whole frequency range again.
     WholeRange,
     /// Show fewer frequencies, or more.

@@ -3,6 +3,7 @@
 use eframe::egui::{Key, KeyboardShortcut, Modifiers, ThemePreference};
 
 use super::command::{Command, Curve, Exported, Pan, Zoom};
+use super::pages::Page;
 use super::placing::Method;
 use crate::compensator::LaneKind;
 
@@ -119,6 +120,34 @@ pub(super) static COMMANDS: &[Row] = &[
         "Save the step response that is shown as comma-separated values.",
         Command::Export(Exported::StepCurve),
     ),
+    row(
+        "Waveforms as picture…",
+        Menu::Export,
+        None,
+        "Save the waveforms of one steady period as PNG or SVG.",
+        Command::Export(Exported::Waves),
+    ),
+    row(
+        "Waveforms as CSV…",
+        Menu::Export,
+        None,
+        "Save the waveforms of one steady period as comma-separated values.",
+        Command::Export(Exported::WaveCurves),
+    ),
+    row(
+        "Transient as picture…",
+        Menu::Export,
+        None,
+        "Save the run that the transient page shows as PNG or SVG.",
+        Command::Export(Exported::Transient),
+    ),
+    row(
+        "Transient as CSV…",
+        Menu::Export,
+        None,
+        "Save the run that the transient page shows as comma-separated values.",
+        Command::Export(Exported::TransientCurves),
+    ),
     row("Reload", Menu::Design, None, "Take over what the file holds now; can be undone.", Command::Reload),
     row(
         "Recover unsaved work…",
@@ -222,6 +251,48 @@ pub(super) static COMMANDS: &[Row] = &[
         Some(key(CTRL, Key::B)),
         "Show or hide the band the loop covers over the nine conditions.",
         Command::ToggleBand,
+    ),
+    row(
+        "Exact curves",
+        Menu::View,
+        Some(key(CTRL, Key::Num4)),
+        "Show or hide what the exact switched model says beside the averaged one.",
+        Command::ToggleExact,
+    ),
+    row(
+        "Loop",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F2)),
+        "Show the Bode plots with their lanes.",
+        Command::Page(Page::Loop),
+    ),
+    row(
+        "Waveforms",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F3)),
+        "Show one steady period of the switched loop and what its parts bear.",
+        Command::Page(Page::Waveforms),
+    ),
+    row(
+        "Transient",
+        Menu::View,
+        Some(key(Modifiers::NONE, Key::F4)),
+        "Show the switched loop cycle by cycle after an event.",
+        Command::Page(Page::Transient),
+    ),
+    row(
+        "Run the transient again",
+        Menu::View,
+        Some(key(CTRL, Key::T)),
+        "Run the event of the transient page again, from the start.",
+        Command::RunTransient,
+    ),
+    row(
+        "Stop the transient",
+        Menu::View,
+        Some(key(CTRL_SHIFT, Key::T)),
+        "Stop the run that is under way; what it has found so far stays.",
+        Command::StopTransient,
     ),
     row(
         "Load sweep…",

@@ -179,7 +179,8 @@ fn cell_ui(ui: &mut Ui, cell: Rect, id: (&str, usize), result: &ConditionResult,
     super::legend::focus_ring(ui, &response);
     let help = match &result.outcome {
         Ok(summary) => {
-            format!("{}\n{} conduction", result.condition.label, summary.operating_point.conduction.word())
+            let conduction = format!("{} conduction", summary.operating_point.conduction.word());
+            [vec![result.condition.label.clone(), conduction], summary.beside()].concat().join("\n")
         }
         Err(finding) => format!("{}\n{}", result.condition.label, finding.message),
     };

@@ -11,6 +11,7 @@ use super::dialogs;
 use super::files;
 use super::session::Session;
 use super::theme::palette;
+use super::time_export;
 use super::view::{Desk, Dialog, Message, View};
 use crate::design::{self, CheckedDesign};
 use crate::figure::{self, Figure};
@@ -31,6 +32,10 @@ impl Exported {
             Exported::Sweep => "load-sweep.png",
             Exported::Curves => "curves.csv",
             Exported::StepCurve => "step.csv",
+            Exported::Waves => "waveforms.png",
+            Exported::WaveCurves => "waveforms.csv",
+            Exported::Transient => "transient.png",
+            Exported::TransientCurves => "transient.csv",
         }
     }
 
@@ -43,11 +48,15 @@ impl Exported {
             Exported::Sweep => "Save the load sweep as a picture",
             Exported::Curves => "Save the frequency curves as CSV",
             Exported::StepCurve => "Save the time curve as CSV",
+            Exported::Waves => "Save the waveforms as a picture",
+            Exported::WaveCurves => "Save the waveforms as CSV",
+            Exported::Transient => "Save the transient as a picture",
+            Exported::TransientCurves => "Save the transient as CSV",
         }
     }
 
     fn is_picture(self) -> bool {
-        !matches!(self, Exported::Curves | Exported::StepCurve)
+        !matches!(self, Exported::Curves | Exported::StepCurve | Exported::WaveCurves | Exported::TransientCurves)
     }
 }
 
@@ -85,7 +94,7 @@ impl App {
 }
 
 /// The present results; none while an entry cannot be used, for what is put out must not be out of date.
-fn usable(session: &Session) -> Result<&crate::analysis::Analysis, String> {
+pub(super) fn usable(session: &Session) -> Result<&crate::analysis::Analysis, String> {
     let stale = "An entry cannot be used, so the results are out of date. Mend it first.";
     session.analysis().filter(|_| !session.stale()).ok_or_else(|| stale.to_owned())
 }
@@ -115,12 +124,16 @@ fn draw(session: &Session, view: &View, what: Exported) -> Result<Figure, String
     if what == Exported::Sweep {
         return super::sweep::figure(session);
     }
+    if let Some(chart) = time_export::chart(session, view, what) {
+        return chart.map(|chart| chart.figure(PLOT.0, true).0);
+    }
     let analysis = usable(session)?;
     let title = &session.design().title;
     let held = session.held().map(|held| (held.name.as_str(), &held.analysis));
+    let exact = session.referee().filter(|_| view.exact).and_then(|exact| exact.as_ref().ok());
     let drawn = match what {
         Exported::Step => figure::step(title, analysis, held, view.event, SMALL_PLOT),
-        Exported::Response => figure::response(title, analysis, held, view.closed_loop, SMALL_PLOT),
+        Exported::Response => figure::response(title, analysis, (held, exact), view.closed_loop, SMALL_PLOT),
         _ => {
             let shown = figure::Shown {
                 plant: view.plant,
@@ -128,13 +141,16 @@ fn draw(session: &Session, view: &View, what: Exported) -> Result<Figure, String
                 loop_gain: view.loop_gain,
                 band: view.band,
             };
-            figure::bode(title, analysis, held, shown, PLOT.0)
+            figure::bode(title, analysis, (held, exact), shown, PLOT.0)
         }
     };
     drawn.ok_or_else(|| "There is no such result at this condition.".to_owned())
 }
 
 fn curves(session: &Session, view: &View, what: Exported) -> Result<Vec<u8>, String> {
+    if let Some(written) = time_export::numbers(session, view, what) {
+        return written;
+    }
     let analysis = usable(session)?;
     let none = || "There is no such result at this condition.".to_owned();
     let mut bytes = Vec::new();

@@ -12,8 +12,10 @@ use crate::finding::{Finding, Severity};
 pub(super) fn findings_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let session = desk.session;
     let remarks = session.analysis().map_or(&[][..], |analysis| &analysis.findings);
-    let remarks = if session.stale() { &[] } else { remarks };
-    let all = session.problems().iter().chain(remarks);
+    let exact = session.referee().and_then(|referee| referee.as_ref().ok()).map_or(&[][..], |exact| &exact.findings);
+    let (remarks, exact) = if session.stale() { (&[][..], &[][..]) } else { (remarks, exact) };
+    let mut all: Vec<&Finding> = session.problems().iter().chain(remarks).chain(exact).collect();
+    all.sort_by_key(|finding| std::cmp::Reverse(finding.severity));
     ui.label(RichText::new("Findings").font(theme::strong(13.5)));
     let mut none = true;
     for finding in all {

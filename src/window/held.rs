@@ -28,6 +28,11 @@ impl Held {
         format!("{}: {}", self.number, self.name)
     }
 
+    /// The design and what was asked of it.
+    pub(super) fn worked_out(&self) -> (&CheckedDesign, &Request) {
+        (&self.design, &self.request)
+    }
+
     /// Works the design out again when another condition or other frequencies are shown, so that like stands beside like.
     fn follow(&mut self, request: &Request) {
         if self.request != *request {

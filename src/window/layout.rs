@@ -2,14 +2,15 @@
 //!
 //! A narrow window, or one with large text, has room for one column beside the plots; F6 and F7 say which.
 
-use eframe::egui::{self, CentralPanel, Frame, Margin, Panel, Rect, ScrollArea, Stroke, Ui, UiBuilder, pos2};
+use eframe::egui::{CentralPanel, Frame, Margin, Panel, Rect, ScrollArea, Stroke, Ui, UiBuilder, pos2, vec2};
 
+use super::pages::{self, Page};
 use super::pointed::Sheet;
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{
-    bar, bode, conditions, findings, hint, ledger, operating, parts, readouts, recovery, responses, review, schematic,
-    stage, steps, tries, verdict,
+    bar, bode, conditions, exact_curves, findings, hint, ledger, operating, parts, readouts, recovery, responses,
+    review, schematic, stage, steps, transient, tries, verdict, waves,
 };
 
 /// Height that steps and responses take under the Bode plots, as a share of the room.
@@ -161,8 +162,25 @@ fn gap(ui: &mut Ui) {
     ui.add_space(12.0);
 }
 
-/// Bode plots with lanes above, time and closed-loop plots below; scrolls when the window is low.
+/// The row of pages, and the page under it.
 fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    let room = ui.available_rect_before_wrap();
+    let (row, page) = room.split_top_bottom_at_y(room.top() + pages::HEIGHT);
+    let rest = pages::pages_ui(ui, row.translate(vec2(0.0, 3.0)), desk);
+    match desk.view.page {
+        Page::Loop => {
+            exact_curves::switch_ui(ui, rest, desk);
+            let mut page_ui = ui.new_child(UiBuilder::new().max_rect(page));
+            loop_ui(&mut page_ui, desk);
+        }
+        Page::Waveforms => waves::waves_ui(ui, page, desk),
+        Page::Transient => transient::transient_ui(ui, page, desk),
+    }
+    ui.advance_cursor_after_rect(room);
+}
+
+/// Bode plots with lanes above, time and closed-loop plots below; scrolls when the window is low.
+fn loop_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     let room = ui.available_rect_before_wrap();
     let rows = if room.width() < SIDE_BY_SIDE { 2.0 } else { 1.0 };
     let lower = (room.height() * LOWER_SHARE).max(LEAST_LOWER) * rows;
@@ -173,7 +191,7 @@ fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         return;
     }
     ScrollArea::vertical().id_salt("plots").auto_shrink(false).show(ui, |ui| {
-        let (_, whole) = ui.allocate_space(egui::vec2(room.width(), upper + lower));
+        let (_, whole) = ui.allocate_space(vec2(room.width(), upper + lower));
         plots_ui(ui, whole, upper, desk);
     });
 }

@@ -315,7 +315,16 @@ impl App {
             Command::PreviousCondition => self.session.step_condition(8),
             Command::Toggle(curve) => view.toggle(*curve),
             Command::ToggleBand => view.band = !view.band,
+            Command::ToggleExact => view.exact = !view.exact,
+            Command::Page(page) => {
+                if std::mem::take(&mut view.review) {
+                    self.session.review(None);
+                }
+                view.page = *page;
+            }
             Command::Tie(kind) => self.session.tie(*kind, !self.session.tied(*kind)),
+            Command::RunTransient => view.transient.again(),
+            Command::StopTransient => view.transient.stop(),
             Command::WholeRange => view.range_hz = None,
             Command::Zoom(zoom) => self.zoom(*zoom),
             Command::Pan(pan) => self.pan(*pan),

@@ -4,6 +4,7 @@ use eframe::egui::{Align2, Color32, FontId, Painter, Rect, Role, Sense, Ui, Widg
 
 use super::command::Command;
 use super::conditions;
+use super::exact_readouts::{self, Beside};
 use super::explain;
 use super::marks;
 use super::theme::{self, Palette, palette};
@@ -19,6 +20,8 @@ const PAGE: f32 = 58.0;
 const SHORT: f32 = 19.0;
 /// Where the shown values of the short rows end, as a share of the width.
 const SHOWN: f32 = 0.68;
+/// Room that an exact value beside the averaged one wants at least [points].
+const BESIDE: f32 = 62.0;
 /// Read-outs that stand large even while nothing is asked of them.
 const LARGE: [&str; 4] = ["crossover", "phase-margin", "gain-margin", "modulus-margin"];
 
@@ -31,6 +34,7 @@ pub(super) fn readouts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
         large_ui(ui, readout, analysis, &look, desk);
     }
     small_rows_ui(ui, &small, desk);
+    exact_readouts::rows_ui(ui, desk);
 }
 
 /// Read-outs that stand large and those that stand in lines.
@@ -78,7 +82,7 @@ fn header_ui(ui: &mut Ui, worst: bool) {
 }
 
 /// Right edge of the column of shown values in the short rows.
-fn shown_column(rect: Rect) -> f32 {
+pub(super) fn shown_column(rect: Rect) -> f32 {
     rect.left() + rect.width() * SHOWN
 }
 
@@ -188,17 +192,31 @@ pub(super) fn large_ui(ui: &mut Ui, readout: &Readout, analysis: &Analysis, look
         }
         painter.galley(pos2(rect.right() - galley.size().x, rect.top() + 1.0), galley, colour);
     }
+    let beside = Beside::of(readout, analysis, desk, palette);
+    let mut free_to = rect.right();
     if let Some(verdict) = verdict {
         let colour = if verdict.met { palette.good } else { palette.amber };
-        let layout = |font| painter.layout_no_wrap(verdict_text(verdict), font, colour);
-        let mut galley = layout(look.verdict.clone());
-        if shown.right() + 8.0 > rect.right() - galley.size().x {
-            galley = layout(theme::small());
-        }
-        painter.galley(pos2(rect.right() - galley.size().x, rect.top() + look.tops.1), galley, colour);
+        let layout = |(font, text): (FontId, String)| painter.layout_no_wrap(text, font, colour);
+        // As much of it as leaves room for the exact value: the bar shows the limit, too.
+        let whole = verdict_text(verdict);
+        let apart = whole.split_once(", ").map_or(String::new(), |(_, apart)| apart.to_owned());
+        let wanted = shown.right() + if beside.is_some() { BESIDE } else { 8.0 };
+        let fonts = [(look.verdict.clone(), whole.clone()), (theme::small(), whole.clone()), (theme::small(), apart)];
+        let count = if beside.is_some() && fonts[2].1.len() > 1 { 3 } else { 2 };
+        let mut galleys = fonts.into_iter().take(count).map(layout);
+        let fits = |galley: &std::sync::Arc<eframe::egui::Galley>| wanted <= rect.right() - galley.size().x;
+        let galley = galleys.find(fits).unwrap_or_else(|| layout((theme::small(), whole)));
+        free_to -= galley.size().x;
+        painter.galley(pos2(free_to, rect.top() + look.tops.1), galley, colour);
         bar(painter, rect, verdict, palette);
     }
-    announce(ui, &response, readout, &value);
+    let mut said = value.clone();
+    if let Some(beside) = beside {
+        let from = shown.right() + 8.0;
+        beside.write(painter, (from, shown.bottom() - look.value.size * 0.42, free_to - 6.0 - from), palette);
+        said = format!("{value}, {}", beside.said());
+    }
+    announce(ui, &response, readout, &said);
     let clicked = response.clicked();
     let _ = explain::explained(ui, response, readout.key, || further(readout));
     let missed = missed_at(readout, analysis).map(|(index, _)| index);

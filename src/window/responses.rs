@@ -4,6 +4,7 @@
 use eframe::egui::{self, Align2, Rect, Stroke, Ui, pos2, vec2};
 
 use super::axis::{self, Axis, DecadeLine, decade_lines, extent};
+use super::exact_curves;
 use super::plot::{self, Pen, Plot};
 use super::steps;
 use super::theme::{self, LineStyle, Palette, palette};
@@ -53,6 +54,9 @@ pub(super) fn responses_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     }
     for (values, name) in &beside {
         inner_plot.curve(&painter, log_hz, &inner(values), beside_pen(name, palette));
+    }
+    if let Some(exact) = exact_curves::impedance(desk).filter(|_| which == ClosedLoop::Impedance) {
+        inner_plot.curve(&painter, desk.session.exact_log_hz(), &inner(exact), exact_curves::loop_pen(palette));
     }
     inner_plot.curve(&painter, log_hz, &inner(closed), closed_pen(palette));
     if let Some(filter) = detail.input_filter.as_ref().filter(|_| which == ClosedLoop::Input) {

@@ -12,7 +12,7 @@ use super::command::Command;
 use super::readouts::Look;
 use super::theme::{self, palette};
 use super::view::Desk;
-use super::{bar, bode, conditions, findings, ledger, operating, readouts, steps, verdict, what_if};
+use super::{bar, bode, conditions, exact_readouts, findings, ledger, operating, readouts, steps, verdict, what_if};
 
 /// Width from which read-outs stand beside the plots [points].
 const WIDE: f32 = 900.0;
@@ -195,6 +195,7 @@ fn results_ui(ui: &mut Ui, columns: usize, desk: &mut Desk<'_>) {
         });
     }
     readouts::small_rows_ui(ui, &small, desk);
+    exact_readouts::rows_ui(ui, desk);
 }
 
 /// Bode plots above; load step, the nine conditions and the operating point below.

@@ -5,12 +5,14 @@
 
 use std::collections::BTreeMap;
 use std::path::PathBuf;
+use std::sync::atomic::{AtomicU64, Ordering};
 
 use super::drawing::Drawing;
+use super::exact::{Exact, Found, Wanted, beside};
 use super::held::{Held, Tries};
 use super::history::{Gesture, History};
 use super::placing::Hand;
-use crate::analysis::{self, Analysis, Level, Request, Shown};
+use crate::analysis::{self, Analysis, Level, Referee, Request, Shown, Steady};
 use crate::compensator::Lane;
 use crate::design::{CheckedDesign, Design};
 use crate::finding::Finding;
@@ -48,6 +50,7 @@ pub struct Session {
     what_if: Option<(f64, f64)>,
     frequencies_hz: Vec<f64>,
     generation: u64,
+    subject: u64,
     analysed: Option<u64>,
     analysis: Option<Analysis>,
     drawing: Drawing,
@@ -57,7 +60,15 @@ pub struct Session {
     worked_out: Option<(CheckedDesign, Request)>,
     tries: Tries,
     reviewed: Option<usize>,
+    /// The exact results beside the averaged ones.
+    exact: Exact,
     pub(super) hand: Hand,
+}
+
+/// The next number for something to look at.
+fn next_subject() -> u64 {
+    static LAST: AtomicU64 = AtomicU64::new(0);
+    LAST.fetch_add(1, Ordering::Relaxed) + 1
 }
 
 /// Decades shown below the switching frequency: from the integrator to where switching hides the rest.
@@ -79,6 +90,7 @@ impl Session {
             what_if: None,
             frequencies_hz: Vec::new(),
             generation: 0,
+            subject: next_subject(),
             analysed: None,
             analysis: None,
             drawing: Drawing::default(),
@@ -87,6 +99,7 @@ impl Session {
             worked_out: None,
             tries: Tries::default(),
             reviewed: None,
+            exact: Exact::default(),
             hand: Hand::default(),
         }
     }
@@ -165,7 +178,7 @@ impl Session {
         if !self.shows(input, load) {
             self.what_if = None;
             self.shown = (input, load);
-            self.generation += 1;
+            self.moved();
         }
     }
 
@@ -178,8 +191,24 @@ impl Session {
     pub fn show_what_if(&mut self, input_voltage: f64, load_current: f64) {
         if self.what_if != Some((input_voltage, load_current)) {
             self.what_if = Some((input_voltage, load_current));
-            self.generation += 1;
+            self.moved();
         }
+    }
+
+    /// What is looked at has changed: the document, the condition, or which try.
+    fn moved(&mut self) {
+        self.generation += 1;
+        self.subject = next_subject();
+    }
+
+    /// A number for what is looked at: it moves with document, condition and try, and no two windows or documents share one.
+    pub(super) fn subject(&self) -> u64 {
+        self.subject
+    }
+
+    /// The design that the latest results belong to, a held one while that is reviewed.
+    pub(super) fn examined(&self) -> Option<&CheckedDesign> {
+        self.reviewed().map(|held| held.worked_out().0).or(self.worked_out.as_ref().map(|worked_out| &worked_out.0))
     }
 
     /// Asks for curves at these frequencies [Hz].
@@ -188,6 +217,28 @@ impl Session {
             self.frequencies_hz = frequencies_hz;
             self.generation += 1;
         }
+    }
+
+    /// Asks for exact results beside the averaged ones.
+    pub(super) fn ask_exact(&mut self, wanted: Wanted) {
+        if self.exact.ask(wanted) {
+            self.generation += 1;
+        }
+    }
+
+    /// What the exact switched model says beside the latest results, where it was asked for.
+    pub fn referee(&self) -> Option<&Result<Referee, Finding>> {
+        self.exact.referee()
+    }
+
+    /// Decimal logarithms of the frequencies of its curves [Hz].
+    pub(super) fn exact_log_hz(&self) -> &[f64] {
+        self.exact.log_hz()
+    }
+
+    /// One steady period of the switched loop, where it was asked for.
+    pub fn steady(&self) -> Option<&Result<Steady, Finding>> {
+        self.exact.steady()
     }
 
     /// The latest results; stale when [`Session::stale`] says so.
@@ -272,7 +323,7 @@ impl Session {
     /// Puts a held try, by its number, or the present design in the place of what is shown.
     pub fn review(&mut self, number: Option<usize>) {
         self.reviewed = number;
-        self.generation += 1;
+        self.moved();
     }
 
     /// Reviews the next of present design and held tries, or the one before, round and round.
@@ -318,7 +369,7 @@ impl Session {
         change(&mut self.document);
         if self.document != before {
             self.history.record(name, before, gesture);
-            self.generation += 1;
+            self.moved();
             self.revision += 1;
         }
     }
@@ -332,7 +383,7 @@ impl Session {
     pub fn undo(&mut self) {
         if let Some(document) = self.history.undo(&self.document) {
             self.document = document;
-            self.generation += 1;
+            self.moved();
             self.revision += 1;
         }
     }
@@ -341,7 +392,7 @@ impl Session {
     pub fn redo(&mut self) {
         if let Some(document) = self.history.redo(&self.document) {
             self.document = document;
-            self.generation += 1;
+            self.moved();
             self.revision += 1;
         }
     }
@@ -367,7 +418,9 @@ impl Session {
         let request = self.request();
         match self.document.design.check() {
             Ok(checked) => {
-                let analysis = analysis::analyse(&checked, &request);
+                let wanted = self.exact.wanted_now(self.reviewed.is_none());
+                let (analysis, exact) = beside(&checked, &request, wanted);
+                self.exact.take(exact);
                 self.drawing = Drawing::new(&analysis);
                 self.hand.usual_goal = Some(analysis::usual_goal(&checked, &analysis));
                 self.analysis = Some(analysis);
@@ -376,6 +429,10 @@ impl Session {
             Err(problems) => self.problems.extend(problems),
         }
         self.tries.follow(self.reviewed, &request);
+        if let Some((design, request)) = self.reviewed().map(Held::worked_out) {
+            let found = Found::work_out(design, request, self.exact.wanted_now(true));
+            self.exact.take(found);
+        }
         true
     }
 

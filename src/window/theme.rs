@@ -53,6 +53,8 @@ pub(super) struct Palette {
     pub compensator: Color32,
     /// The loop gain.
     pub loop_gain: Color32,
+    /// The exact plant and the exact loop gain, broad and pale under the averaged ones.
+    pub exact: [Color32; 2],
     /// A held curve, and the open loop beside the closed one.
     pub held: Color32,
     /// A landmark of the plant.
@@ -85,6 +87,7 @@ const LIGHT: Palette = Palette {
     plant: Color32::from_rgb(0x00, 0x86, 0xa8),
     compensator: Color32::from_rgb(0x9c, 0x3f, 0x8a),
     loop_gain: Color32::from_rgb(0x16, 0x17, 0x19),
+    exact: [Color32::from_rgb(0x9f, 0xd6, 0xe4), Color32::from_rgb(0xbc, 0xbe, 0xc4)],
     held: Color32::from_rgb(0x8c, 0x8e, 0x92),
     landmark: Color32::from_rgb(0x78, 0x7a, 0x7e),
     band: Color32::from_rgb(0xe3, 0xe7, 0xee),
@@ -112,6 +115,7 @@ const DARK: Palette = Palette {
     plant: Color32::from_rgb(0x4f, 0xc3, 0xe0),
     compensator: Color32::from_rgb(0xdc, 0x8f, 0xcc),
     loop_gain: Color32::from_rgb(0xf4, 0xf4, 0xf4),
+    exact: [Color32::from_rgb(0x1e, 0x5f, 0x70), Color32::from_rgb(0x66, 0x6a, 0x72)],
     held: Color32::from_rgb(0x80, 0x85, 0x8c),
     landmark: Color32::from_rgb(0x8a, 0x8f, 0x96),
     band: Color32::from_rgb(0x2c, 0x32, 0x3c),
@@ -137,6 +141,8 @@ pub(super) fn of_role(role: Role, palette: &Palette) -> Color32 {
         Role::Plant => palette.plant,
         Role::Compensator => palette.compensator,
         Role::LoopGain => palette.loop_gain,
+        Role::ExactPlant => palette.exact[0],
+        Role::ExactLoop => palette.exact[1],
         Role::Held | Role::Measured => palette.held,
         Role::Band => palette.band,
         Role::Settle => palette.settle,
@@ -208,6 +214,8 @@ pub(super) const HANDLE: f32 = 6.5;
 pub(super) const STALE: f32 = 0.42;
 /// Width of the main curve [points].
 pub(super) const CURVE: f32 = 1.9;
+/// Width of an exact curve, under the averaged one [points].
+pub(super) const EXACT_CURVE: f32 = 5.5;
 /// Width of the curves beside it [points].
 pub(super) const THIN_CURVE: f32 = 1.4;
 

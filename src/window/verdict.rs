@@ -2,6 +2,7 @@
 
 use eframe::egui::{RichText, Ui};
 
+use super::exact_readouts;
 use super::theme::{self, palette};
 use super::view::Desk;
 use crate::linear::Verdict;
@@ -11,8 +12,12 @@ use crate::quantity::{self, Unit};
 pub(super) fn verdict_ui(ui: &mut Ui, desk: &Desk<'_>) {
     let Some(Ok(detail)) = desk.session.analysis().map(|analysis| &analysis.shown) else { return };
     let palette = palette(ui);
-    let Some((word, why)) = words(&detail.loop_gain.verdict) else { return };
-    let grave = !detail.loop_gain.stable();
+    let of_averaged = words(&detail.loop_gain.verdict);
+    // An averaged loop that is stable may not be when it is switched: that comes first.
+    let exact = desk.session.referee().and_then(|exact| exact_readouts::instability(exact.as_ref().ok()?));
+    let exact = exact.filter(|_| detail.loop_gain.stable());
+    let grave = !detail.loop_gain.stable() || exact.is_some();
+    let Some((word, why)) = exact.or(of_averaged) else { return };
     let colour = if grave { palette.problem } else { palette.ink };
     ui.label(RichText::new(word).font(theme::figure()).color(colour));
     ui.label(RichText::new(why).font(theme::small()).color(palette.weak));

@@ -8,10 +8,13 @@ use super::command::{Command, Curve, Exported};
 use super::goal::GoalFields;
 use super::history::Gesture;
 use super::new_design::NewDesign;
+use super::pages::Page;
 use super::pointed::{Pointed, Pointing};
 use super::safety::Kept;
 use super::schematic::Schematics;
 use super::session::Session;
+use super::time_plot::TimePlot;
+use super::transient::TransientPage;
 use super::what_if::WhatIf;
 
 use crate::figure::Figure;
@@ -123,6 +126,14 @@ pub(super) struct View {
     pub loop_gain: bool,
     /// Band over the nine conditions.
     pub band: bool,
+    /// Exact curves beside the averaged ones.
+    pub exact: bool,
+    /// What the middle column shows.
+    pub page: Page,
+    /// Waveforms of a steady period, as last drawn.
+    pub waves: TimePlot,
+    /// What follows an event.
+    pub transient: TransientPage,
     /// Columns beside the plots.
     pub stage_column: bool,
     pub readout_column: bool,
@@ -198,6 +209,10 @@ impl Default for View {
             compensator: true,
             loop_gain: true,
             band: true,
+            exact: true,
+            page: Page::default(),
+            waves: TimePlot::default(),
+            transient: TransientPage::default(),
             stage_column: true,
             readout_column: true,
             one_column: false,

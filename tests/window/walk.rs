@@ -3,7 +3,7 @@
 use super::*;
 use eframe::egui::accesskit::{Action, Role as NodeRole};
 use egui_kittest::kittest::NodeT;
-use polewright::window::{Command, Exported, command_names};
+use polewright::window::{Command, Exported, Page, command_names};
 
 /// A stop of the walk: its name, and what leads there from a window on the built-in design.
 struct Stop {
@@ -96,6 +96,9 @@ const STOPS: &[Stop] = &[
             press(harness, &name);
         },
     },
+    Stop { name: "the waveforms", reach: |harness| ask(harness, Command::Page(Page::Waveforms)) },
+    Stop { name: "the transient", reach: |harness| ask(harness, Command::Page(Page::Transient)) },
+    Stop { name: "a transient to export", reach: |harness| ask(harness, Command::Export(Exported::Transient)) },
     Stop { name: "the line step", reach: |harness| press(harness, "Line step") },
     Stop { name: "the line to the output", reach: |harness| press(harness, "Line to output") },
     Stop {

@@ -76,6 +76,7 @@ pub(in crate::window) struct Look {
     pub compensator: bool,
     pub loop_gain: bool,
     pub band: bool,
+    pub exact: bool,
     pub stage_column: bool,
     pub readout_column: bool,
     /// Which column has the room for one.
@@ -112,6 +113,7 @@ impl Look {
             compensator: view.compensator,
             loop_gain: view.loop_gain,
             band: view.band,
+            exact: view.exact,
             stage_column: view.stage_column,
             readout_column: view.readout_column,
             readouts_first: view.readouts_first,
@@ -141,6 +143,7 @@ impl Look {
         view.compensator = self.compensator;
         view.loop_gain = self.loop_gain;
         view.band = self.band;
+        view.exact = self.exact;
         view.stage_column = self.stage_column;
         view.readout_column = self.readout_column;
         view.readouts_first = self.readouts_first;
