@@ -45,7 +45,7 @@ fn agree_as(topology: &str, form: &str, primary: Option<f64>, seed: u64) {
     let mut random = Random::new(seed);
     for _ in 0..1000 {
         let input = random.log(2.0, 150.0);
-        let ratio = primary.map(|share| (share, random.log(0.02, 10.0)));
+        let ratio = primary.map(|share| (share, random.log(0.1, 5.0)));
         // What the form's own input is for each volt of it.
         let seen = ratio.map_or(1.0, |(share, turns)| share * turns);
         let vin = input * seen;

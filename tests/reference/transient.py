@@ -353,7 +353,7 @@ def run(case):
         # The orbit comes back to itself under the events' integrator.
         again = Run(design, vin, load, limits)
         end = again.go(start, 0.9 * period, [])
-        assert np.max(np.abs(end - start) / (np.abs(start) + 1e-3)) < 1e-7, (case["title"], end - start)
+        assert np.max(np.abs(end - start) / (np.abs(start) + 1e-2)) < 1e-7, (case["title"], end - start)
     span = case["periods"] * period
     # No multiple of the period, so that no time stands at a clock's edge.
     times = (np.arange(SAMPLES) + 0.5) * span / SAMPLES + 0.137 * period
