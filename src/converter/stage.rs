@@ -205,6 +205,7 @@ impl Stage {
                 return 0.0;
             }
             let entry = topology_entries::entries().iter().find(|entry| entry.path == path);
+            let entry = entry.map(|entry| topology_entries::row(entry, choices));
             entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
         };
         let phases = phases::count(entered(phases::PHASES.path)).map_err(|problem| vec![problem])?;
