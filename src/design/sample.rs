@@ -89,6 +89,11 @@ static ALL: &[Sample] = &[
         "Tide gauge",
         "A boost whose synchronous switch emulates a diode: both conduction modes in one day's work."
     ),
+    sample!(
+        "star-tracker.ron",
+        "Star tracker",
+        "A buck with a difference equation in a microcontroller, coefficients in words of 16 bits."
+    ),
     sample!("ferry-gate.ron", "Ferry gate", "An isolated flyback in peak current mode, sensed on the primary side."),
     sample!("market-stall.ron", "Market stall", "A SEPIC whose coupled inductors move the zero pair out of the way."),
     sample!("organ-tuner.ron", "Organ tuner", "A Ćuk whose coupling capacitor is damped by a branch."),
