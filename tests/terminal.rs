@@ -16,6 +16,9 @@ use std::process::{Command, Output, Stdio};
 #[path = "terminal/switched.rs"]
 mod switched;
 
+#[path = "terminal/transient.rs"]
+mod transient;
+
 fn program() -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_polewright"));
     command.stdin(Stdio::null());

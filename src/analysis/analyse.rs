@@ -93,7 +93,7 @@ pub(in crate::analysis) const SEARCH_FROM: f64 = 1e-6;
 pub(super) const SEARCH_TO: f64 = 0.5;
 
 /// A gain that is none [dB]: zeros at half the sampling frequency leave nothing there.
-const NO_GAIN_DB: f64 = -200.0;
+pub(super) const NO_GAIN_DB: f64 = -200.0;
 
 /// Analyses a checked design.
 pub fn analyse(design: &CheckedDesign, request: &Request) -> Analysis {

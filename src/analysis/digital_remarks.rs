@@ -17,6 +17,9 @@ const MARGIN_DEG: f64 = 3.0;
 /// Change of the gain margin [dB] that is worth a word.
 const MARGIN_DB: f64 = 1.0;
 
+/// Gain margin that is ample [dB]; common practice.
+const AMPLE_DB: f64 = 10.0;
+
 const BITS: &str = "compensator.digital.bits";
 
 /// All remarks about a difference equation; none without one.
@@ -79,14 +82,14 @@ fn integrator(design: &CheckedDesign, shared: &Shared, detail: Option<&Detail>) 
         )
     };
     let finding = Finding::notice("compensator.digital.rounding", message);
-    let keeps = kept(design);
-    Some(match keeps {
-        true => finding.with_hint("let rounding keep the integrator").with_remedy(Remedy {
+    Some(if kept(design) {
+        finding.with_hint("let rounding keep the integrator").with_remedy(Remedy {
             label: "Keep the integrator".into(),
             values: Vec::new(),
             choices: vec![("compensator.digital.rounding".into(), "integrator".into())],
-        }),
-        false => finding.with_hint("enter a longer word"),
+        })
+    } else {
+        finding.with_hint("enter a longer word")
     })
 }
 
@@ -145,7 +148,8 @@ fn folded(conditions: &[ConditionResult]) -> Option<Finding> {
         let sampled = result.sampled.as_ref()?;
         let degrees = margin(&result.margins).zip(margin(sampled)).map_or(0.0, |(a, b)| (a - b).abs());
         let decibels = result.margins.gain_margin_up_db().zip(sampled.gain_margin_up_db());
-        let decibels = decibels.map_or(0.0, |(a, b)| (a - b).abs());
+        // A gain margin that is ample either way is not worth a word.
+        let decibels = decibels.filter(|(a, b)| a.min(*b) < AMPLE_DB).map_or(0.0, |(a, b)| (a - b).abs());
         Some((degrees / MARGIN_DEG).max(decibels / MARGIN_DB)).filter(|apart| *apart > 1.0)
     };
     let (condition, summary, _) = summaries(conditions)

@@ -51,14 +51,13 @@ impl Shared {
             Finding::problem("compensator", format!("The compensator cannot be solved: {e}."))
         };
         let digital = design.compensator.digital().map(SharedDigital::new);
-        let (compensator, compensator_response) = match &digital {
-            Some(digital) => (no_network().map_err(|e| singular(&e))?, digital.response()),
-            None => {
-                let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
-                let joined = joined_paths(compensator.clone()).map_err(|e| singular(&e))?;
-                let response = Zpk::from_state_space(&joined, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
-                (compensator, FactoredResponse::new(response, 0.0))
-            }
+        let (compensator, compensator_response) = if let Some(digital) = &digital {
+            (no_network().map_err(|e| singular(&e))?, digital.response())
+        } else {
+            let compensator = design.compensator.state_space().map_err(|e| singular(&e))?;
+            let joined = joined_paths(compensator.clone()).map_err(|e| singular(&e))?;
+            let response = Zpk::from_state_space(&joined, 0, 0).map_err(|e| singular(&e))?.scaled(-1.0);
+            (compensator, FactoredResponse::new(response, 0.0))
         };
         let fast_path = FastPath::new(design, &compensator).map_err(|e| singular(&e))?;
         let law = settled(design)?;

@@ -20,6 +20,8 @@ mod impedance;
 mod isolated;
 mod isolated_readouts;
 mod isolated_remarks;
+#[cfg(test)]
+mod isolated_tests;
 mod ledger;
 mod load_sweep;
 pub mod loop_model;

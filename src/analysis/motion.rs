@@ -13,7 +13,7 @@ pub enum Motion {
     /// A continuous loop by its modes.
     Continuous(Modes),
     /// A loop with a difference equation. Its reference counts as the change it asks of the output.
-    Sampled(SampledMotion),
+    Sampled(Box<SampledMotion>),
 }
 
 /// A sampled loop with its reference.

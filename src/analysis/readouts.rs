@@ -1,5 +1,6 @@
 //! The neutral list of read-outs that window, terminal and sheet print.
 
+use super::analyse::NO_GAIN_DB;
 use super::requirement::worst_shown;
 use super::result::{ConditionResult, Detail, InnerResult, Readout, RequirementVerdict, Worst};
 use crate::design::Asked;
@@ -78,7 +79,7 @@ static ROWS: &[Row] = &[
         asked: None,
         absent: "none",
         help: "Loop gain at half the switching frequency; the averaged model ends there.",
-        take: |d| Some(d.loop_gain.gain_at_half_switching_db),
+        take: |d| Some(d.loop_gain.gain_at_half_switching_db).filter(|db| *db > NO_GAIN_DB),
     },
     Row {
         key: "right-half-plane-ratio",

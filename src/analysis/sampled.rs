@@ -146,7 +146,7 @@ impl SampledModel {
             other => other,
         };
         let sampled = Some(self.at_samples(in_w));
-        let motion = matches!(verdict, Verdict::Stable { .. }).then_some(Motion::Sampled(self.motion));
+        let motion = matches!(verdict, Verdict::Stable { .. }).then(|| Motion::Sampled(Box::new(self.motion)));
         Ok(Judged { verdict, sampled, motion })
     }
 
@@ -183,9 +183,9 @@ impl SampledModel {
 /// The controlled stage with its bank's series inductance: inputs control, load current, input voltage; outputs the sensed and the
 /// load's voltage.
 fn driven(stage: &StateSpace, bank: Option<&BankInductance>) -> Result<StateSpace, LinearError> {
+    const STAGE: usize = 0;
     let inputs = [CONTROL, LOAD_CURRENT, INPUT_VOLTAGE];
     let Some(bank) = bank else { return stage.subsystem(&[OUTPUT_VOLTAGE, LOAD_VOLTAGE], &inputs) };
-    const STAGE: usize = 0;
     let mut without = bank.without.clone();
     without.c.neg_mut();
     without.d.neg_mut();

@@ -42,8 +42,13 @@ pub enum Shows {
         /// Path of the value of one.
         each: String,
     },
-    /// A turns ratio, second to first: "1 : 0.25".
-    Turns(String),
+    /// The value of an entry that needs a word before it: "1 : 0.25", "k = 0.97".
+    Led {
+        /// What stands before it.
+        words: &'static str,
+        /// Path of the entry.
+        path: String,
+    },
     /// One entry over another.
     Ratio {
         /// Path of the entry above the line.
@@ -70,6 +75,8 @@ pub struct Drawn {
     pub quiet: Vec<Shows>,
     /// Paths of all entries it stands for, the most important first.
     pub paths: Vec<String>,
+    /// True for a coupled inductor: a dot stands at its first node.
+    pub dotted: bool,
     /// True for a part that is a piece of wire, and drawn as one, where its value is zero.
     pub wire_at_zero: bool,
 }
@@ -78,13 +85,29 @@ impl Drawn {
     /// A part without numbers.
     pub fn new(symbol: Symbol, name: impl Into<String>, designator: impl Into<String>) -> Self {
         let (name, designator) = (name.into(), designator.into());
-        Drawn { symbol, name, designator, value: None, quiet: Vec::new(), paths: Vec::new(), wire_at_zero: false }
+        Drawn {
+            symbol,
+            name,
+            designator,
+            value: None,
+            quiet: Vec::new(),
+            paths: Vec::new(),
+            dotted: false,
+            wire_at_zero: false,
+        }
     }
 
     /// The same, but where its value is zero only a wire is drawn.
     #[must_use]
     pub fn wire_at_zero(mut self) -> Self {
         self.wire_at_zero = true;
+        self
+    }
+
+    /// The same with a dot at its first node, where `coupled` says so.
+    #[must_use]
+    pub fn dotted(mut self, coupled: bool) -> Self {
+        self.dotted = coupled;
         self
     }
 
@@ -101,10 +124,10 @@ impl Drawn {
         self.also(paths)
     }
 
-    /// A turns ratio written below it.
+    /// A number written below it, with a word before it.
     #[must_use]
-    pub fn turns(mut self, path: &str) -> Self {
-        self.quiet.push(Shows::Turns(path.to_owned()));
+    pub fn led(mut self, words: &'static str, path: &str) -> Self {
+        self.quiet.push(Shows::Led { words, path: path.to_owned() });
         self.also(&[path])
     }
 

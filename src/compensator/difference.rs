@@ -97,19 +97,7 @@ impl DifferenceEquation {
         poles.extend(poles_hz.iter().map(in_z));
         zeros.resize(order.max(zeros.len()), -Complex::ONE);
         let gain = TAU * corners.gain.unwrap_or(0.0) * scale;
-        let gain = gain
-            * match method.stretch(period_s) {
-                // Π(1 + k/ωz)/Π(1 + k/ωp) of the factors (k + ω)(1 − r·z⁻¹)/(ω·(1 + z⁻¹)), and k·(1 − z⁻¹)/(1 + z⁻¹) of the integrator.
-                Some(k) => {
-                    let factor = |f: &f64| 1.0 + k / (TAU * f);
-                    zeros_hz.iter().map(factor).product::<f64>() / poles_hz.iter().map(factor).product::<f64>() / k
-                }
-                // (1 − z⁻¹)·C/T at z = 1 is the gain.
-                None => {
-                    let at_one = |roots: &[Complex]| roots.iter().map(|r| 1.0 - r.re).product::<f64>();
-                    period_s * at_one(&poles[1..]) / at_one(&zeros)
-                }
-            };
+        let gain = gain * method_gain(method, [&zeros_hz, &poles_hz], [&zeros, &poles], period_s);
         let roots = Roots { gain, delays: 0, zeros, poles };
         let forward = expanded(&roots.zeros).into_iter().map(|c| gain * c).collect();
         let feedback = expanded(&roots.poles).into_iter().skip(1).map(|c| -c).collect();
@@ -170,6 +158,24 @@ impl DifferenceEquation {
     pub fn at(&self, z: Complex) -> Complex {
         let sum = |coefficients: &[f64]| coefficients.iter().rev().fold(Complex::ZERO, |sum, c| sum / z + *c);
         sum(&self.forward) / (1.0 - sum(&self.feedback) / z)
+    }
+}
+
+/// Gain in front of the factors 1 − r·z⁻¹ of an integrator of gain 1 with these zeros and poles, in hertz and in z.
+fn method_gain(
+    method: Method,
+    [zeros_hz, poles_hz]: [&[f64]; 2],
+    [zeros, poles]: [&[Complex]; 2],
+    period_s: f64,
+) -> f64 {
+    if let Some(k) = method.stretch(period_s) {
+        // Π(1 + k/ωz)/Π(1 + k/ωp) of the factors (k + ω)(1 − r·z⁻¹)/(ω·(1 + z⁻¹)), and k·(1 − z⁻¹)/(1 + z⁻¹) of the integrator.
+        let factor = |f: &f64| 1.0 + k / (TAU * f);
+        zeros_hz.iter().map(factor).product::<f64>() / poles_hz.iter().map(factor).product::<f64>() / k
+    } else {
+        // (1 − z⁻¹)·C/T at z = 1 is the gain.
+        let at_one = |roots: &[Complex]| roots.iter().map(|r| 1.0 - r.re).product::<f64>();
+        period_s * at_one(&poles[1..]) / at_one(zeros)
     }
 }
 

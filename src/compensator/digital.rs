@@ -17,6 +17,9 @@ use crate::finding::{Finding, Remedy};
 use crate::linear::{Complex, FactoredResponse, Zpk};
 use crate::quantity::{Choices, Unit, Values, print, print_digits};
 
+/// How far below half the sampling frequency Tustin's rule may be exact, as a share: there its stretch has no end.
+const LEAST_BELOW_HALF: f64 = 1e-3;
+
 /// How coefficients become codes.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Rounding {
@@ -240,9 +243,9 @@ impl Digital {
             faults.extend(above_half(lane_path(key), frequency_hz, half));
         }
         if let Method::Prewarped(f) = self.method
-            && f >= half
+            && f > half * (1.0 - LEAST_BELOW_HALF)
         {
-            faults.extend(above_half("compensator.digital.prewarp", f, half.next_down()));
+            faults.extend(above_half("compensator.digital.prewarp", f, half * (1.0 - 2.0 * LEAST_BELOW_HALF)));
         }
         if self.computation_s > self.period_s {
             let message = format!(
@@ -287,36 +290,34 @@ impl Digital {
         };
         let index = if name == 'a' { overflow.index + 1 } else { overflow.index };
         let value = print_digits(overflow.value, Unit::One, 4);
-        match entered {
-            Some(places) => {
-                let message = format!(
-                    "The coefficient {name}{index} = {value} overflows a word of {} bits with {places} fraction bits.",
-                    self.bits
-                );
-                let finding =
-                    Finding::problem(path, message).with_hint("leave the fraction bits empty, or enter fewer");
-                let exact = self.exact();
-                let group = if name == 'a' { &exact.feedback } else { &exact.forward };
-                match Codes::nearest(group, self.bits, None) {
-                    Ok(codes) => finding.with_remedy(Remedy {
-                        label: format!("Enter {}", codes.fraction_bits),
-                        values: vec![(path.to_owned(), f64::from(codes.fraction_bits))],
-                        choices: Vec::new(),
-                    }),
-                    Err(_) => finding,
-                }
-            }
-            None => {
-                let message = format!(
-                    "The coefficient {name}{index} = {value} overflows a word of {} bits even without fraction bits.",
-                    self.bits
-                );
-                Finding::problem("compensator.digital.bits", message)
-                    .with_hint("enter a longer word, or lower the gain")
-            }
+        let Some(places) = entered else {
+            let message = format!(
+                "The coefficient {name}{index} = {value} overflows a word of {} bits even without fraction bits.",
+                self.bits
+            );
+            return Finding::problem("compensator.digital.bits", message)
+                .with_hint("enter a longer word, or lower the gain");
+        };
+        let message = format!(
+            "The coefficient {name}{index} = {value} overflows a word of {} bits with {places} fraction bits.",
+            self.bits
+        );
+        let finding = Finding::problem(path, message).with_hint("leave the fraction bits empty, or enter fewer");
+        let exact = self.exact();
+        let group = if name == 'a' { &exact.feedback } else { &exact.forward };
+        match Codes::nearest(group, self.bits, None) {
+            Ok(codes) => finding.with_remedy(Remedy {
+                label: format!("Enter {}", codes.fraction_bits),
+                values: vec![(path.to_owned(), f64::from(codes.fraction_bits))],
+                choices: Vec::new(),
+            }),
+            Err(_) => finding,
         }
     }
 }
+
+/// A frequency beyond a limit by this part of it is the limit, rounded.
+const ROUNDING: f64 = 1e-9;
 
 /// Path of the entry of a lane.
 pub(super) fn lane_path(key: &str) -> &'static str {
@@ -325,7 +326,7 @@ pub(super) fn lane_path(key: &str) -> &'static str {
 
 fn above_half(path: &'static str, frequency_hz: f64, half: f64) -> Option<Finding> {
     let name = ENTRIES.iter().find(|row| row.path == path)?.name;
-    (frequency_hz > half).then(|| {
+    (frequency_hz > half * (1.0 + ROUNDING)).then(|| {
         let message = format!(
             "{name}, {}, is above half the sampling frequency, {}.",
             print(frequency_hz, Unit::Hertz),

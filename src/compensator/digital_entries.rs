@@ -11,7 +11,7 @@ const FULL_SCALE: Bounds = Bounds::Between(1e-3, 1000.0);
 pub(super) const ENTRIES: &[Entry] = &[
     Entry::new(
         "compensator.digital.gain",
-        "Gain, integrator's crossover",
+        "Integrator's gain",
         Unit::Hertz,
         FREQUENCY,
         300.0,
@@ -142,7 +142,7 @@ pub(super) const CHOICES: &[Choice] = &[
             },
             ChoiceOption {
                 key: "tustin-prewarped",
-                name: "Tustin, exact at a frequency",
+                name: "Tustin, prewarped",
                 help: "The trapezoidal rule, stretched so that it is exact at a stated frequency.",
             },
             ChoiceOption {

@@ -39,7 +39,8 @@ impl Digital {
         zeros.resize(self.order, Complex::ZERO);
         zeros.sort_by(|p, q| q.re.total_cmp(&p.re));
         zeros.truncate(self.zeros);
-        let in_order = |roots: Vec<Complex>, aims: [Option<f64>; 2]| ordered(roots.iter().map(hertz).collect(), aims);
+        let in_order =
+            |roots: Vec<Complex>, aims: [Option<f64>; 2]| ordered(&roots.iter().map(hertz).collect::<Vec<_>>(), aims);
         let [zero_1, zero_2] = in_order(zeros, [self.aims.zero_1, self.aims.zero_2]);
         let [pole_1, pole_2] = in_order(poles, [self.aims.pole_1, self.aims.pole_2]);
         let gain = Some(self.integrator_hz(equation, integrator));
@@ -73,7 +74,7 @@ impl Digital {
                 continue;
             }
             let highest = if corner == Corner::Gain { f64::INFINITY } else { self.highest_hz() };
-            if frequency_hz > highest {
+            if frequency_hz > highest * (1.0 + 1e-9) {
                 why = Some(format!(
                     "Sampled once a period, no pole or zero stands above half that rate, {}.",
                     print(highest, Unit::Hertz)
@@ -178,7 +179,7 @@ fn apart(poles: &[Complex]) -> (Complex, Vec<Complex>) {
 }
 
 /// At most two frequencies, in the order that is nearer to the aims.
-fn ordered(found: Vec<f64>, aims: [Option<f64>; 2]) -> [Option<f64>; 2] {
+fn ordered(found: &[f64], aims: [Option<f64>; 2]) -> [Option<f64>; 2] {
     let found = [found.first().copied(), found.get(1).copied()];
     let ([Some(a), Some(b)], [Some(first), Some(second)]) = (found, aims) else { return found };
     let apart = |x: f64, y: f64| (x / first).ln().abs() + (y / second).ln().abs();

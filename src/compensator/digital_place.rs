@@ -69,7 +69,7 @@ impl Compensator {
         let mut digital = *digital;
         if let Method::Prewarped(f) = &mut digital.method
             && crossover_hz > 0.0
-            && crossover_hz < 0.5 / digital.period_s
+            && crossover_hz < 0.49 / digital.period_s
         {
             *f = crossover_hz;
         }

@@ -197,9 +197,8 @@ impl StageDrawing {
     /// A rectifier by its name in the netlist.
     pub fn rectifier_called(&mut self, name: &'static str, anode: Node, cathode: Node) {
         let count = self.switches.iter().filter(|switch| switch.name.contains(RECTIFIER)).count();
-        let numbered = |word: &str| if count == 0 { word.to_owned() } else { format!("{word}{}", count + 1) };
         let diode = self.options.diode;
-        let (drawn, path) = self.drawn_rectifier(&numbered(if diode { "D" } else { "SR" }));
+        let (drawn, path) = self.drawn_rectifier(count + 1);
         let ohms = self.netlist.slot(path);
         self.sketch.part(anode, cathode, drawn);
         let part = if diode {
@@ -210,14 +209,17 @@ impl StageDrawing {
         self.switches.push(Switched { name, part, ohms, ends: (cathode, anode), diode });
     }
 
-    /// A rectifier as it is drawn, and the path of its resistance.
-    pub(super) fn drawn_rectifier(&self, designator: &str) -> (Drawn, &'static str) {
+    /// The rectifier of this number as it is drawn, and the path of its resistance.
+    pub(super) fn drawn_rectifier(&self, number: usize) -> (Drawn, &'static str) {
+        let numbered = |word: &str, gap| if number == 1 { word.to_owned() } else { format!("{word}{gap}{number}") };
         if self.options.diode {
             let path = "stage.diode.resistance";
-            (Drawn::new(Symbol::Diode, "Diode", designator).value("stage.diode.drop").quiet(path), path)
+            let drawn = Drawn::new(Symbol::Diode, numbered("Diode", " "), numbered("D", ""));
+            (drawn.value("stage.diode.drop").quiet(path), path)
         } else {
             let path = "stage.synchronous.resistance";
-            (Drawn::new(Symbol::Switch, "Synchronous rectifier", designator).value(path), path)
+            let name = numbered("Synchronous rectifier", " ");
+            (Drawn::new(Symbol::Switch, name, numbered("SR", "")).value(path), path)
         }
     }
 

@@ -21,7 +21,11 @@ impl StageDrawing {
         self.sketch.transformer(first, second, drawn_transformer());
         let tie = self.netlist.slot(TIE);
         self.netlist.resistor("half of the input", first.1, ground, tie);
-        self.sketch.part(first.1, ground, Drawn::new(Symbol::Capacitor, "Divider capacitor, of two", "Ch"));
+        self.sketch.part(
+            first.1,
+            ground,
+            Drawn::new(Symbol::Capacitor, "Divider capacitor, of two", "Ch").also(&["stage.topology"]),
+        );
     }
 
     fn pulse_windings(&mut self, first: (Node, Node), second: (Node, Node)) {
@@ -45,7 +49,7 @@ impl StageDrawing {
     /// between pulses.
     pub fn centre_tap(&mut self, secondary: Node, tap: Node, cathode: Node) {
         self.rectifier_called(PULSE, secondary, cathode);
-        let (drawn, path) = self.drawn_rectifier(if self.options.diode { "D'" } else { "SR'" });
+        let (drawn, path) = self.drawn_rectifier(2);
         let ohms = self.netlist.slot(&format!("0.5 × {path}"));
         let diode = self.options.diode;
         let part = if diode {
@@ -69,7 +73,7 @@ impl StageDrawing {
 
 fn drawn_transformer() -> Drawn {
     Drawn::new(Symbol::Inductor, "Transformer", "T")
-        .shows(Shows::Turns(RATIO.path.to_owned()), &[RATIO.path])
+        .shows(Shows::Led { words: "1 : ", path: RATIO.path.to_owned() }, &[RATIO.path])
         .quiet(MAGNETISING.path)
         .also(&[LEAKAGE.path])
 }

@@ -61,6 +61,6 @@ pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, Ope
 pub use registry::{find, pulse_frequency, registry};
 pub use sizing::{Size, Sized, Sizing};
 pub use stage::{LoadKind, OutOfReach, Rectifier, Stage, StageCondition};
-pub use switching::{SwitchingEquations, SwitchingRows};
+pub use switching::{Magnetising, SwitchingEquations, SwitchingRows};
 pub use topology::{DutyLimit, Entered, IN_TURN, LeftOut, Reach, SwitchSets, Topology, Voltages};
 pub use topology_entries::{choices, entries, is_common, row};

@@ -3,9 +3,9 @@
 use super::cell::SwitchedCell;
 use super::operating_point::Solution;
 use super::pulse_point::Found;
-use super::registry::registry;
+use super::registry::{find, registry};
 use super::stage::{Intervals, Stage, StageCondition};
-use super::topology::IN_TURN;
+use super::topology::{IN_TURN, Reach};
 use crate::circuit::{Compiled, Netlist};
 use crate::quantity::{Choices, Values};
 use nalgebra::DVector;
@@ -20,7 +20,8 @@ fn stage(topology: &str, chosen: &[(&str, &str)]) -> (Stage, StageCondition) {
     for (path, key) in chosen {
         choices.set(path, key);
     }
-    let output = if topology == "buck" { 5.0 } else { 24.0 };
+    let reach = find(topology).unwrap().reach;
+    let output = if reach == Reach::BelowInput { 5.0 } else { 24.0 };
     values.set("stage.output.voltage", output).unwrap();
     let condition = StageCondition { input_voltage: 12.0, load_current: 3.0, output_voltage: output };
     (Stage::from_values(&values, &choices).unwrap(), condition)
@@ -113,6 +114,10 @@ fn brackets_and_newton_find_the_same_point() {
                     // The current round through two inductors hangs on what rounding leaves across their windings: it does not
                     // shrink with the load.
                     tolerance = tolerance.max(1e-15 / share);
+                }
+                if stage.magnetising > 0.0 {
+                    // What rounding leaves between the windings does not shrink with the load either.
+                    tolerance = tolerance.max(1e-20 / share);
                 }
                 assert!(off < tolerance, "{} {load} {share}: {} and {}", topology.key, bracketed.duty, solution.duty);
             }

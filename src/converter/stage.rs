@@ -205,6 +205,7 @@ impl Stage {
                 return 0.0;
             }
             let entry = topology_entries::entries().iter().find(|entry| entry.path == path);
+            let entry = entry.map(|entry| topology_entries::row(entry, choices));
             entry.filter(|e| applies(e.path, choices)).and_then(|e| values.get_or_default(e)).unwrap_or(0.0)
         };
         let phases = phases::count(entered(phases::PHASES.path)).map_err(|problem| vec![problem])?;
@@ -298,6 +299,15 @@ impl Stage {
     /// How many equal phases there are, a whole number.
     pub fn phases(&self) -> f64 {
         self.phases
+    }
+
+    /// Ramp that a transformer's magnetising current adds to the switch's, per volt of input [A/(V·s)], the drop of the switch left out.
+    pub fn natural_ramp_per_volt(&self) -> f64 {
+        if self.magnetising > 0.0 {
+            self.topology.magnetising_ramp * self.topology.input_share / self.magnetising
+        } else {
+            0.0
+        }
     }
 
     /// Whether the output bank carries switched current.

@@ -44,6 +44,15 @@ pub struct SwitchingRows {
     pub filter_inductors: Vec<(&'static str, usize)>,
 }
 
+/// A transformer's magnetising current as the controlled switch carries it.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Magnetising {
+    /// Its slope while the switch conducts, from states and inputs [A/s].
+    pub slope: (RowDVector<f64>, RowDVector<f64>),
+    /// What becomes of it for the next period: 0 where the core is reset, −1 where the next pulse drives it the other way.
+    pub turn: f64,
+}
+
 /// The equations of the switching intervals at a condition.
 #[derive(Clone, Debug)]
 pub struct SwitchingEquations {
@@ -59,6 +68,8 @@ pub struct SwitchingEquations {
     pub switched_current: RowDVector<f64>,
     /// What current mode senses, from the states [A].
     pub sensed_current: RowDVector<f64>,
+    /// What a magnetising current that is no state of the stage adds to what the controlled switch carries.
+    pub magnetising: Option<Magnetising>,
     /// Parts that hold the states.
     pub state_names: Vec<String>,
     /// Names of the inputs.
@@ -91,8 +102,9 @@ impl Stage {
                 "one phase with inductance and resistances over N averages alike, but its ripple is N times as large",
             ));
         }
-        let Intervals { on, off, cell, sets, inputs, .. } =
-            self.intervals_in_mode(condition).map_err(|e| circuit_finding(&e))?;
+        let intervals = self.intervals_in_mode(condition).map_err(|e| circuit_finding(&e))?;
+        let magnetising = self.magnetising(&intervals);
+        let Intervals { on, off, cell, sets, inputs, .. } = intervals;
         let named = |name: &'static str| {
             let missing = || Finding::problem("stage", format!("The stage has no part called {name}."));
             self.rows.switch(name).ok_or_else(missing)
@@ -104,12 +116,26 @@ impl Stage {
             resting: cell.idle,
             sensed_current: &cell.c * cell.sense,
             switched_current: cell.c,
+            magnetising,
             state_names: self.state_names().to_vec(),
             input_names: [INPUT_VOLTAGE, LOAD_CURRENT, DIODE_DROP].map(str::to_owned).to_vec(),
             inputs,
             rows: public_rows(&self.rows, named(sets.switch)?, named(sets.rectifier)?),
             blocks: self.rectifier.blocks(),
         })
+    }
+}
+
+impl Stage {
+    /// The magnetising current, from the ramp that averages it: a share κ of its slope, 1 where the core is reset every period. From
+    /// m0 = turn·(m0 + Δ) and κ·Δ = m0 + Δ follows turn = 1 − 1/κ.
+    fn magnetising(&self, intervals: &Intervals) -> Option<Magnetising> {
+        let share = self.topology().magnetising_ramp;
+        intervals.natural.filter(|_| share > 0.0)?;
+        let (by_states, by_inputs) = intervals.natural_rows();
+        // Of switched current there, of the switch's own here.
+        let whole = intervals.cell.sense / share;
+        Some(Magnetising { slope: (by_states * whole, by_inputs * whole), turn: 1.0 - share.recip() })
     }
 }
 

@@ -134,7 +134,7 @@ pub(super) static COUPLING_CAPACITOR_ESR: Entry = part(
 /// Whether a branch damps the resonance of the coupling capacitor with the inductors.
 pub(super) static DAMPING: Choice = Choice {
     path: "stage.coupling-capacitor.damping",
-    name: "Coupling capacitor's damping",
+    name: "Coupling damping",
     options: &[
         ChoiceOption {
             key: "none",

@@ -1,7 +1,7 @@
 //! The drawing of a difference equation: from the converter's output through divider, sampling and equation to the control, and the equation
 //! under it with its coefficients.
 
-use super::pen::{Frame, Label, Line, Pen, ROW, VALUE, finished, text_width};
+use super::pen::{Frame, Label, Line, Pen, QUIET, ROW, VALUE, finished, text_width};
 use super::stroke::{Align, Figure, Place, Role};
 use super::symbol::{self, HALF, Way};
 use super::values::Numbers;
@@ -34,6 +34,11 @@ pub(super) fn equation_figure(digital: &Digital, numbers: &Numbers<'_>) -> Figur
     finished(sheet.pen.marks, sheet.places, sheet.frame.grown(2.0))
 }
 
+/// Width of a block with a word in it [points].
+fn block_width(word: &str) -> f64 {
+    (text_width(word, VALUE) + 10.0).max(30.0)
+}
+
 impl Sheet<'_> {
     fn claim(&mut self, frame: Frame) {
         self.frame = self.frame.union(frame);
@@ -54,7 +59,7 @@ impl Sheet<'_> {
 
     /// The output's terminal and the divider; gives the place of its tap.
     fn divider(&mut self) -> f64 {
-        let (middle, tap) = (40.0, 74.0);
+        let (middle, tap) = (44.0, 71.0);
         self.pen.line(&[[2.2, AXIS], [middle - HALF, AXIS]]);
         self.pen.terminal([0.0, AXIS]);
         self.claim(Frame::new(-3.0, AXIS - 3.0, 3.0, AXIS + 3.0));
@@ -93,16 +98,16 @@ impl Sheet<'_> {
 
     /// A block on the line with a word in it and a number under it; gives its right end.
     fn block(&mut self, left: f64, word: &str, under: &str, name: String, paths: &[&str]) -> f64 {
-        let width = (text_width(word, VALUE) + 12.0).max(30.0);
+        let width = block_width(word);
         let start = self.pen.marks.len();
         let (right, top, bottom) = (left + width, AXIS - BLOCK, AXIS + BLOCK);
         self.pen.line(&[[left, top], [right, top], [right, bottom], [left, bottom], [left, top]]);
         self.pen.text(word, Role::Ink, VALUE, [f64::midpoint(left, right), AXIS], Align::Middle);
-        let mut frame = Frame::new(left, top, right, bottom);
+        let frame = Frame::new(left, top, right, bottom);
         if !under.is_empty() {
             let label = Label::new(vec![Line::quiet(under)]);
             let at = [f64::midpoint(left, right), bottom + 2.0];
-            frame = frame.union(self.label(&label, at, (Align::Middle, Align::Start)));
+            self.label(&label, at, (Align::Middle, Align::Start));
         }
         if paths.is_empty() {
             self.claim(frame);
@@ -116,14 +121,17 @@ impl Sheet<'_> {
     fn chain(&mut self, digital: &Digital, tap: f64) -> f64 {
         let wire = |sheet: &mut Self, from: f64, to: f64| sheet.pen.line(&[[from, AXIS], [to, AXIS]]);
         let range = self.numbers.text("compensator.digital.input-range");
-        let left = tap + 14.0;
+        let left = tap + 10.0;
         wire(self, tap, left);
         let name = format!("Analog-to-digital converter, {range}");
         let right = self.block(left, "A/D", &range, name, &["compensator.digital.input-range"]);
-        let ring = right + 10.0 + RING;
+        let ring = right + 9.0 + RING;
         wire(self, right, ring - RING);
         self.reference(ring);
-        let left = ring + RING + 10.0;
+        // What stands under the block keeps clear of the reference's wire.
+        let period = print_digits(digital.period_s, Unit::Second, 3);
+        let under = text_width(&format!("each {period}"), QUIET);
+        let left = (ring + RING + 8.0).max(ring + 4.0 + (under - block_width("C(z)")) / 2.0);
         wire(self, ring + RING, left);
         let paths = [
             "compensator.digital.gain",
@@ -136,16 +144,9 @@ impl Sheet<'_> {
             "compensator.digital.fraction-bits",
             "compensator.digital.feedback-fraction-bits",
         ];
-        let period = print_digits(digital.period_s, Unit::Second, 3);
         let name = format!("Difference equation, every {period}, {} bits", digital.bits);
         let right = self.block(left, "C(z)", &format!("each {period}"), name, &paths);
-        let delay = self.numbers.text("compensator.digital.computation");
-        let left = right + 8.0 + 0.5 * (text_width(&format!("each {period}"), 9.5) - (right - left)).max(0.0);
-        wire(self, right, left);
-        let name = format!("Sample to update {delay}");
-        let right = self.block(left, "delay", &delay, name, &["compensator.digital.computation"]);
-        let left = right + 8.0;
-        wire(self, right, left);
+        let left = self.wait([right, (right + under) / 2.0 - (right - left) / 2.0]);
         let right = if digital.duty_command {
             self.block(left, "PWM", "", String::new(), &[])
         } else {
@@ -160,6 +161,20 @@ impl Sheet<'_> {
         let at = [(end + 3.0).max(right + 3.0 + word.width()), AXIS + BLOCK + 2.0];
         self.claim(Frame::new(end, AXIS - 3.0, end + 3.0, AXIS + 3.0));
         self.label(&word, at, (Align::End, Align::Start));
+        end
+    }
+
+    /// What passes from sample to update, over the wire behind the equation; gives where the next block begins. `from` is the wire's start and where
+    /// what stands under the block before it ends.
+    fn wait(&mut self, from: [f64; 2]) -> f64 {
+        let text = self.numbers.text("compensator.digital.computation");
+        let label = Label::new(vec![Line::value(&text)]);
+        let end = (from[0] + label.width() + 8.0).max(from[1] + 6.0);
+        self.pen.line(&[[from[0], AXIS], [end, AXIS]]);
+        let start = self.pen.marks.len();
+        let at = [f64::midpoint(from[0], end), AXIS - 3.0];
+        let frame = self.label(&label, at, (Align::Middle, Align::End));
+        self.place(format!("Sample to update {text}"), frame, &["compensator.digital.computation"], start);
         end
     }
 
@@ -196,7 +211,7 @@ impl Sheet<'_> {
         ];
         for (lead, row) in ["u[n] = ", "+ "].into_iter().zip(&rows) {
             let text = format!("{lead}{}", row.join(" + "));
-            let x = if lead.starts_with('u') { 0.0 } else { text_width("u[n] =", 9.5) - text_width("+ ", 9.5) };
+            let x = if lead.starts_with('u') { 0.0 } else { text_width("u[n] =", QUIET) - text_width("+ ", QUIET) };
             self.label(&Label::new(vec![Line::quiet(&text)]), [x, y], (Align::Start, Align::Start));
             y += ROW + 1.0;
         }

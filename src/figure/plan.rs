@@ -21,7 +21,16 @@ pub(super) enum Item {
     /// Parts on the rail, and those over them on a line of their own.
     Along { main: Vec<Seat>, over: Vec<Seat> },
     /// Parts one below the other; a second winding beside the first part.
-    Column { chain: Vec<Seat>, second: Option<(Node, Node)> },
+    Column { chain: Vec<Seat>, second: Option<Winding> },
+}
+
+/// The second winding of a transformer.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(super) struct Winding {
+    pub(super) upper: Node,
+    pub(super) lower: Node,
+    /// True when its dot is at the lower end.
+    pub(super) turned: bool,
 }
 
 /// Sorts the parts; those for which `wire` says so are wires.
@@ -93,8 +102,14 @@ impl Plan {
         }
         let upside_down = self.low(straight.first)
             || (!self.low(straight.last) && self.seen.contains(&straight.last) && !self.seen.contains(&straight.first));
-        let second = placed.second.map(|(first, last)| (self.node(first), self.node(last)));
-        self.seen.extend(second.iter().flat_map(|(first, last)| [*first, *last]));
+        let second = placed.second.map(|(first, last)| {
+            let (first, last) = (self.node(first), self.node(last));
+            // An end on the ground rail stands below, wherever the dot is.
+            let turned = self.low(first) && !self.low(last);
+            let (upper, lower) = if turned { (last, first) } else { (first, last) };
+            Winding { upper, lower, turned }
+        });
+        self.seen.extend(second.iter().flat_map(|winding| [winding.upper, winding.lower]));
         self.items.push(Item::Column { chain: vec![if upside_down { turned } else { straight }], second });
     }
 

@@ -2,11 +2,11 @@
 
 use super::ladder::{Block, Heights, Ladder, Manner, Spot, WINDINGS, ladder};
 use super::pen::{Pen, finished};
-use super::plan::{Item, plan};
+use super::plan::{Item, Winding, plan};
 use super::stroke::{Figure, Place};
 use super::symbol::{self, HALF};
 use super::values::{Numbers, Words};
-use crate::circuit::{Node, Placed, Sketch, Symbol};
+use crate::circuit::{Drawn, Node, Placed, Sketch};
 use crate::converter;
 
 /// How far a drawing may be wider than wished before its words stand elsewhere: shrunk by as much they can still be read.
@@ -59,15 +59,15 @@ fn paint(sketch: &Sketch, items: &[Item], words: &[Words], ladder: &Ladder) -> F
     wires(&mut pen, items, ladder);
     let mut places = Vec::new();
     for ((item, block), x) in items.iter().zip(&ladder.blocks).zip(&ladder.places) {
-        let second = matches!(item, Item::Column { second: Some(_), .. });
+        let second = if let Item::Column { second, .. } = item { *second } else { None };
         for (k, spot) in block.spots.iter().enumerate() {
             let start = pen.marks.len();
             part(
                 &mut pen,
-                sketch.parts[spot.seat.part].drawn.symbol,
+                &sketch.parts[spot.seat.part].drawn,
                 spot,
                 *x,
-                (second && k == 0).then_some(ladder.heights),
+                second.filter(|_| k == 0).map(|winding| (winding, ladder.heights)),
             );
             places.push(Place {
                 name: words[spot.seat.part].name.clone(),
@@ -80,12 +80,15 @@ fn paint(sketch: &Sketch, items: &[Item], words: &[Words], ladder: &Ladder) -> F
     finished(pen.marks, places, ladder.frame)
 }
 
-/// One part with its words; `windings` gives the rails to a transformer's.
-fn part(pen: &mut Pen, symbol: Symbol, spot: &Spot, x: f64, windings: Option<Heights>) {
+/// One part with its words; a transformer's comes with its second winding and the rails.
+fn part(pen: &mut Pen, drawn: &Drawn, spot: &Spot, x: f64, second: Option<(Winding, Heights)>) {
     let centre = [x + spot.centre[0], spot.centre[1]];
-    match windings {
-        Some(heights) => transformer(pen, centre, heights),
-        None => symbol::draw(pen, symbol, centre, spot.way),
+    match second {
+        Some((second, heights)) => transformer(pen, centre, spot.seat.flipped, second, heights),
+        None => symbol::draw(pen, drawn.symbol, centre, spot.way),
+    }
+    if drawn.dotted {
+        symbol::dot(pen, centre, spot.way);
     }
     for (label, at, align) in &spot.labels {
         pen.label(label, [x + at[0], at[1]], *align);
@@ -107,7 +110,7 @@ fn wires(pen: &mut Pen, items: &[Item], ladder: &Ladder) {
                 column_wires(pen, block, *x, ladder.heights);
                 let ends = chain.first().zip(chain.last()).map(|(first, last)| (first.first, last.last));
                 for ((first, last), x) in
-                    ends.map(|ends| (ends, *x)).into_iter().chain(second.map(|s| (s, x + WINDINGS)))
+                    ends.map(|ends| (ends, *x)).into_iter().chain(second.map(|s| ((s.upper, s.lower), x + WINDINGS)))
                 {
                     reach(&mut rails.upper, first, x);
                     reach(&mut rails.lower, last, x);
@@ -191,15 +194,16 @@ fn ground(pen: &mut Pen, lower: &[Reach], ladder: &Ladder) {
 }
 
 /// Two windings with their core and the dots of their first ends.
-fn transformer(pen: &mut Pen, centre: [f64; 2], heights: Heights) {
+fn transformer(pen: &mut Pen, centre: [f64; 2], first_turned: bool, second: Winding, heights: Heights) {
     let [x, y] = centre;
     symbol::winding(pen, centre, true);
     symbol::winding(pen, [x + WINDINGS, y], false);
     for side in [x + 8.5, x + 12.5] {
         pen.line(&[[side, y - HALF], [side, y + HALF]]);
     }
-    for side in [x - 4.0, x + WINDINGS + 4.0] {
-        pen.dot([side, y - HALF + 3.0]);
+    for (side, turned) in [(x - 4.0, first_turned), (x + WINDINGS + 4.0, second.turned)] {
+        let end = HALF - 3.0;
+        pen.dot([side, if turned { y + end } else { y - end }]);
     }
     pen.line(&[[x + WINDINGS, heights.rail], [x + WINDINGS, y - HALF]]);
     pen.line(&[[x + WINDINGS, y + HALF], [x + WINDINGS, heights.ground]]);

@@ -1,7 +1,8 @@
 //! Whole registry: schematics of every topology under every choice that draws parts, and of every compensator, keep their rules.
 
+use super::plan::{Item, plan};
 use super::{Figure, Mark, Numbers, Place, Point, compensator_schematic, schematic, stage_schematic};
-use crate::circuit::{Drawn, Netlist, Sketch, Symbol};
+use crate::circuit::{Drawn, Netlist, Node, Sketch, Symbol};
 use crate::compensator::Compensator;
 use crate::converter;
 use crate::design::{self, Design, sample};
@@ -219,6 +220,32 @@ fn stage_schematics_keep_the_rules() {
         for width in WIDTHS {
             let figure = stage_schematic(&numbers(&design), width).unwrap();
             keeps_rules(&figure, &format!("{what} at {width}"));
+        }
+    }
+}
+
+/// The wire of a node runs along one rail: on both it would be two wires that do not meet.
+#[test]
+fn every_node_stands_on_one_rail() {
+    for (what, design) in designs() {
+        let sketch = converter::sketch(&design.choices).unwrap();
+        let mut seats: Vec<(Node, bool)> = Vec::new();
+        for item in plan(&sketch, |_| false) {
+            match item {
+                Item::Along { main, .. } => {
+                    seats.extend(main.first().map(|seat| (seat.first, true)));
+                    seats.extend(main.last().map(|seat| (seat.last, true)));
+                }
+                Item::Column { chain, second } => {
+                    seats.extend(chain.first().map(|seat| (seat.first, true)));
+                    seats.extend(chain.last().map(|seat| (seat.last, false)));
+                    seats.extend(second.into_iter().flat_map(|w| [(w.upper, true), (w.lower, false)]));
+                }
+            }
+        }
+        for (node, upper) in &seats {
+            let same = seats.iter().filter(|(other, _)| other == node).all(|(_, rail)| rail == upper);
+            assert!(same, "{what}: {node:?} stands on both rails");
         }
     }
 }

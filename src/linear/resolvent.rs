@@ -62,8 +62,7 @@ impl Resolvent {
             return false;
         }
         let Bench { upper, below } = bench;
-        upper.clear();
-        below.clear();
+        // Whatever stands there from the last solve is overwritten before it is read.
         upper.resize(n * n, Complex::ZERO);
         below.resize(n, Complex::ZERO);
         // `below` holds the row still to be eliminated, `upper` the finished ones.

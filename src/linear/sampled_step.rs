@@ -6,7 +6,7 @@
 use nalgebra::{DMatrix, DVector};
 
 use super::sampled_loop::{PARTS, SampledLoop};
-use super::{LinearError, RampStep, StepMetrics, UniformGrid};
+use super::{Complex, LinearError, RampStep, StepMetrics, UniformGrid};
 
 /// What an event acts on.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -157,9 +157,9 @@ fn power(matrix: &DMatrix<f64>, mut exponent: usize) -> DMatrix<f64> {
 }
 
 /// Power of two of periods that may be leaped when so many periods have passed; none when all modes are dead.
-fn leap(less_one: &[super::Complex], passed: usize) -> Option<usize> {
+fn leap(less_one: &[Complex], passed: usize) -> Option<usize> {
     let alive = less_one.iter().map(|d| (d + 1.0).ln()).filter(|ln| -ln.re * (passed as f64) < DEAD_NEPERS);
-    let fastest = alive.map(|ln| ln.norm()).fold(0.0, f64::max);
+    let fastest = alive.map(Complex::norm).fold(0.0, f64::max);
     if fastest == 0.0 {
         return None;
     }
@@ -175,6 +175,14 @@ fn leap(less_one: &[super::Complex], passed: usize) -> Option<usize> {
 struct Rest {
     states: DVector<f64>,
     values: Vec<f64>,
+}
+
+/// What the end of a ramp inside a period changes.
+struct Bend {
+    /// The output at the ends of the period's parts.
+    outputs: Vec<f64>,
+    /// The plant's states at the period's end.
+    states: DVector<f64>,
 }
 
 /// A walk along a response.
@@ -266,8 +274,8 @@ impl<'a> Walk<'a> {
         all
     }
 
-    /// What the end of the ramp inside this period changes: for each part's end output and state.
-    fn bend(&self) -> Result<Option<(Vec<f64>, DVector<f64>)>, LinearError> {
+    /// What the end of the ramp inside this period changes; none where it does not end here.
+    fn bend(&self) -> Result<Option<Bend>, LinearError> {
         let SampledInput::Event(k) = self.input else { return Ok(None) };
         let into = self.event.rise_s - self.start_s();
         if !(into > 0.0 && into < self.sampled.period_s) {
@@ -276,7 +284,7 @@ impl<'a> Walk<'a> {
         let pieces = &self.sampled.pieces;
         let (n, slope) = (pieces.states, self.change() / self.event.rise_s);
         let input = n + 1 + k;
-        let mut outputs = vec![0.0; PARTS];
+        let mut outputs = Vec::with_capacity(PARTS + 1);
         let mut carried: Option<DVector<f64>> = None;
         for part in 0..=PARTS {
             let after = part as f64 * pieces.part_s - into;
@@ -288,12 +296,14 @@ impl<'a> Walk<'a> {
                 }
                 None => None,
             };
-            if let (Some(state), Some(place), true) = (&carried, self.place, part < PARTS) {
-                outputs[part] =
-                    pieces.c.row(place).transpose().dot(&state.rows(0, n)) + pieces.d[(place, k)] * state[input];
-            }
+            outputs.push(match (&carried, self.place) {
+                (Some(state), Some(place)) => {
+                    pieces.c.row(place).transpose().dot(&state.rows(0, n)) + pieces.d[(place, k)] * state[input]
+                }
+                _ => 0.0,
+            });
         }
-        Ok(carried.map(|state| (outputs, state.rows(0, n).into_owned())))
+        Ok(carried.map(|state| Bend { outputs, states: state.rows(0, n).into_owned() }))
     }
 
     /// Appends times and values of this period.
@@ -301,7 +311,7 @@ impl<'a> Walk<'a> {
         let values = &self.rows * self.extended();
         let bend = self.bend()?;
         for part in 0..PARTS {
-            let more = bend.as_ref().map_or(0.0, |(outputs, _)| outputs[part]);
+            let more = bend.as_ref().and_then(|bend| bend.outputs.get(part)).copied().unwrap_or(0.0);
             trace.push((self.start_s() + part as f64 * self.sampled.pieces.part_s, values[part] + more));
         }
         Ok(())
@@ -310,9 +320,9 @@ impl<'a> Walk<'a> {
     /// On to the next period.
     fn advance(&mut self) -> Result<(), LinearError> {
         let mut next = &self.sampled.next * self.extended();
-        if let Some((_, state)) = self.bend()? {
-            let mut plant = next.rows_mut(0, state.len());
-            plant += &state;
+        if let Some(bend) = self.bend()? {
+            let mut plant = next.rows_mut(0, bend.states.len());
+            plant += &bend.states;
         }
         self.states = next;
         self.period += 1;

@@ -58,6 +58,8 @@ pub struct Joined<'a> {
 /// Where the parts of the joint state begin, and how wide a row is.
 struct Layout {
     stage: usize,
+    /// The magnetising current, where the comparator sees it.
+    magnetising: usize,
     filter: usize,
     inner: usize,
     outer: usize,
@@ -75,7 +77,19 @@ const KNOWN_INPUTS: [&str; 2] = ["vout", "vref"];
 
 impl Layout {
     fn states(&self) -> usize {
-        self.stage + self.filter + self.inner + self.outer
+        self.stage + self.magnetising + self.filter + self.inner + self.outer
+    }
+
+    fn filter_place(&self) -> usize {
+        self.stage + self.magnetising
+    }
+
+    fn inner_place(&self) -> usize {
+        self.filter_place() + self.filter
+    }
+
+    fn outer_place(&self) -> usize {
+        self.inner_place() + self.inner
     }
 
     fn width(&self) -> usize {
@@ -158,6 +172,11 @@ impl<'a> Law<'a> {
         Ok(Law { control: law, filter_s, inner })
     }
 
+    /// Whether the comparator sees the controlled switch's own current, a magnetising current with it.
+    fn senses_the_switch(&self) -> bool {
+        matches!(self.control.mode, Mode::Current(Edge::Peak, _))
+    }
+
     /// What the comparator compares, from control voltage, sensed current and the inner amplifier's output.
     fn compared(&self, control: &RowDVector<f64>, sensed: &RowDVector<f64>, inner: RowDVector<f64>) -> RowDVector<f64> {
         match &self.control.mode {
@@ -167,7 +186,8 @@ impl<'a> Law<'a> {
         }
     }
 
-    fn comparator(&self, row: usize, period: f64) -> Comparator {
+    /// `natural` is the ramp that a transformer's magnetising current adds to what is sensed, per volt of input [A/(V·s)].
+    fn comparator(&self, row: usize, period: f64, natural: f64) -> Comparator {
         let law = self.control;
         let mut comparator = Comparator {
             edge: Edge::Peak,
@@ -189,6 +209,9 @@ impl<'a> Law<'a> {
                 comparator.edge = *edge;
                 comparator.valley_v = sense.divider * sense.offset;
                 comparator.rate = if *edge == Edge::Peak { sense.ramp() } else { -sense.ramp() };
+                if *edge == Edge::Peak {
+                    comparator.rate_per_input = sense.comparator_ohms() * natural;
+                }
                 comparator.blanking_s = sense.blanking_s;
                 comparator.on_time_least_s = sense.on_time_least_s;
                 return comparator;
@@ -218,6 +241,7 @@ impl SwitchedSystem {
         let (mut probes, places) = stage_probes(&equations);
         let layout = Layout {
             stage: equations.state_names.len(),
+            magnetising: usize::from(equations.magnetising.is_some() && law.senses_the_switch()),
             filter: usize::from(law.filter_s > 0.0),
             inner: law.inner.as_ref().map_or(0, |(_, space)| space.order()),
             outer: outer.map_or(0, |closing| closing.space.order()),
@@ -227,7 +251,12 @@ impl SwitchedSystem {
         let period_s = joined.stage.switching_frequency.recip();
         let builder =
             Builder { layout: &layout, equations: &equations, law: &law, outer, places: &places, probes: &probes };
-        let pieces = [&equations.conducting, &equations.freewheeling, &equations.resting].map(|e| builder.piece(e));
+        let pieces = [
+            (&equations.conducting, Configuration::Conducting),
+            (&equations.freewheeling, Configuration::Freewheeling),
+            (&equations.resting, Configuration::Resting),
+        ]
+        .map(|(equations, configuration)| builder.piece(equations, configuration));
         probes.extend(further_probes(&law, outer));
         let pad = |row: &RowDVector<f64>| row.clone().resize_horizontally(layout.states(), 0.0);
         let mut rest_projector = DMatrix::identity(layout.states(), layout.states());
@@ -236,11 +265,11 @@ impl SwitchedSystem {
             pieces,
             rest_projector,
             rest: equations.blocks.then(|| pad(&equations.switched_current)),
-            rotation: None,
+            rotation: rotation(&equations, &layout),
             state_names: state_names(&equations, &layout),
             input_names: equations.input_names.iter().chain(&layout.own).cloned().collect(),
             steady_inputs: steady_inputs(&equations.inputs, &joined.driven, &layout.own),
-            rule: Rule::Compared(law.comparator(places.compared, period_s)),
+            rule: Rule::Compared(law.comparator(places.compared, period_s, joined.stage.natural_ramp_per_volt())),
             probes,
             places,
             period_s,
@@ -314,12 +343,21 @@ fn steady_inputs(stage: &DVector<f64>, driven: &Driven<'_>, own: &[String]) -> D
     DVector::from_iterator(stage.len() + own.len(), stage.iter().chain(&own).copied())
 }
 
+/// What becomes of the magnetising current as a period ends.
+fn rotation(equations: &SwitchingEquations, layout: &Layout) -> Option<DMatrix<f64>> {
+    let magnetising = equations.magnetising.as_ref().filter(|_| layout.magnetising > 0)?;
+    let mut rotation = DMatrix::identity(layout.states(), layout.states());
+    rotation[(layout.stage, layout.stage)] = magnetising.turn;
+    Some(rotation)
+}
+
 fn state_names(equations: &SwitchingEquations, layout: &Layout) -> Vec<String> {
     let numbered = |what: &'static str, count: usize| (1..=count).map(move |k| format!("{what} {k}"));
     equations
         .state_names
         .iter()
         .cloned()
+        .chain((0..layout.magnetising).map(|_| "magnetising current".to_owned()))
         .chain((0..layout.filter).map(|_| "sense filter".to_owned()))
         .chain(numbered("inner compensator", layout.inner))
         .chain(numbered("compensator", layout.outer))
@@ -337,7 +375,7 @@ struct Builder<'a> {
 }
 
 impl Builder<'_> {
-    fn piece(&self, e: &StateEquations) -> Piece {
+    fn piece(&self, e: &StateEquations, configuration: Configuration) -> Piece {
         let layout = self.layout;
         let stage_row =
             |a: &DMatrix<f64>, b: &DMatrix<f64>, r: usize| layout.of_stage(&a.row(r).into(), &b.row(r).into());
@@ -346,8 +384,16 @@ impl Builder<'_> {
         let none = RowDVector::zeros(layout.stage_inputs);
         let switched = layout.of_stage(&self.equations.switched_current, &none);
         let mut sensed = layout.of_stage(&self.equations.sensed_current, &none);
+        if let Some(magnetising) = self.equations.magnetising.as_ref().filter(|_| layout.magnetising > 0) {
+            let (by_states, by_inputs) = &magnetising.slope;
+            let conducts = configuration == Configuration::Conducting;
+            rates.push(if conducts { layout.of_stage(by_states, by_inputs) } else { layout.zero() });
+            if conducts {
+                sensed += layout.state(layout.stage);
+            }
+        }
         if layout.filter > 0 {
-            let filtered = layout.state(layout.stage);
+            let filtered = layout.state(layout.filter_place());
             rates.push((&sensed - &filtered) / self.law.filter_s);
             sensed = filtered;
         }
@@ -361,7 +407,7 @@ impl Builder<'_> {
                 "vout" => &sensed * average.ohms,
                 _ => layout.own(&format!("{INNER}{name}")),
             };
-            inner = Controlling::new(layout.block(space, layout.stage + layout.filter, &drive), space);
+            inner = Controlling::new(layout.block(space, layout.inner_place(), &drive), space);
         }
         rates.extend(inner.rates);
         rates.extend(outer.rates);
@@ -392,8 +438,7 @@ impl Builder<'_> {
                 probe.and_then(|row| outputs.get(row).cloned()).unwrap_or_else(|| layout.own(name))
             }
         };
-        let mut outer =
-            Controlling::new(layout.block(space, layout.stage + layout.filter + layout.inner, &drive), space);
+        let mut outer = Controlling::new(layout.block(space, layout.outer_place(), &drive), space);
         outer.control += added;
         outer
     }

@@ -256,9 +256,12 @@ impl Reading<'_> {
         }
         let s = Complex::new(0.0, omega);
         scratch.change.resize(n, Complex::ZERO);
+        // The spans follow each other from the clock's edge on.
+        let mut to = Complex::ONE;
         for (k, (span, rows)) in response.spans.iter().zip(&self.rows).enumerate() {
             let Some(piece) = &response.pieces[span.configuration] else { continue };
-            let (from, to) = (turn(-omega, span.start_s), turn(-omega, span.end_s));
+            let from = to;
+            to = turn(-omega, span.end_s);
             let start = &scratch.start;
             let states = start.iter().copied().chain([trip]);
             scratch.change.fill(Complex::ZERO);

@@ -140,7 +140,7 @@ pub struct SwitchedSystem {
     pub rest_projector: DMatrix<f64>,
     /// The rectifier's current from the states: its fall to zero opens the rectifier. None where it conducts reverse current.
     pub rest: Option<RowDVector<f64>>,
-    /// Applied to the states as a period ends: interleaved phases share one period and change names. None for a single phase.
+    /// Applied to the states as a period ends: a core is reset, or driven the other way by the next pulse. None where nothing changes.
     pub rotation: Option<DMatrix<f64>>,
     /// What holds each state.
     pub state_names: Vec<String>,

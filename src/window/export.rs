@@ -80,7 +80,9 @@ impl App {
             }
             Command::CopyParts => checked(&self.session).map(|checked| {
                 ctx.copy_text(sheet::parts_list(self.session.design(), &checked));
-                "The parts list is on the clipboard.".to_owned()
+                let digital = checked.compensator.digital().is_some();
+                let what = if digital { "Parts and coefficients are" } else { "The parts list is" };
+                format!("{what} on the clipboard.")
             }),
             Command::CopyMargins => usable(&self.session).map(|analysis| {
                 ctx.copy_text(sheet::margin_table(self.session.design(), analysis));

@@ -206,7 +206,11 @@ pub(super) fn field_ui(ui: &mut Ui, entry: &'static Entry, width: f32, desk: &mu
             let edit = TextEdit::singleline(&mut text)
                 .id(id)
                 .font(FontSelection::FontId(theme::body()))
-                .hint_text(if entry.optional { "not asked" } else { "" })
+                .hint_text(match entry.path.split('.').next() {
+                    Some("requirement") if entry.optional => "not asked",
+                    _ if entry.optional => "empty",
+                    _ => "",
+                })
                 .margin(egui::Margin::symmetric(4, 2))
                 .desired_width(width)
                 .clip_text(true);

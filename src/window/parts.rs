@@ -32,10 +32,15 @@ pub(super) fn parts_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
     }
     ui.add_space(3.0);
     round_ui(ui, desk);
+    coefficients_ui(ui, desk);
     ui.add_space(3.0);
     super::goal::goal_ui(ui, desk);
-    let header = egui::CollapsingHeader::new(RichText::new("Divider, amplifier, anchor").color(palette(ui).weak))
-        .id_salt("compensator entries")
+    // Where little more than a divider is made of parts, what the rest is made of stands open.
+    let few = parts.len() <= 2;
+    let title = if few { "Method, words, converters" } else { "Divider, amplifier, anchor" };
+    let header = egui::CollapsingHeader::new(RichText::new(title).color(palette(ui).weak))
+        .id_salt(("compensator entries", few))
+        .default_open(few)
         .open(sought(desk).then_some(true))
         .show_unindented(ui, |ui| {
             form::section_ui(ui, "compensator", |path| !is_part(path) && !in_heading(path), desk);
@@ -147,6 +152,18 @@ fn lock_ui(ui: &mut Ui, entry: &'static Entry, desk: &mut Desk<'_>) {
     };
     if response.on_hover_text(help).clicked() {
         desk.ask(Command::Lock { path: entry.path, locked: !locked });
+    }
+}
+
+/// The coefficients of a difference equation, to be taken to where they are typed in.
+fn coefficients_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+    if desk.session.design().compensator().ok().and_then(|compensator| compensator.digital()).is_none() {
+        return;
+    }
+    let button = egui::Button::new(RichText::new("Copy coefficients").color(palette(ui).accent));
+    let help = "The difference equation with its coefficients as values, codes and scale, onto the clipboard.";
+    if ui.add(button).on_hover_text(help).clicked() {
+        desk.ask(Command::CopyParts);
     }
 }
 

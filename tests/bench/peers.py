@@ -1,8 +1,9 @@
-"""Times general-purpose Python libraries at the same three tasks as tests/bench/linear.rs, and prints medians and ratios.
+"""Times general-purpose Python libraries at the same tasks as the crate's benchmarks, and prints medians and ratios.
 
 Tasks, on one loop of six states: W1 gain in dB and unwrapped phase at 2,000 frequencies; W2 all crossovers and margins;
 W3 the closed loop's step response at 1,000 times. Each is done by the call of a control library, as its user would, and by
-the best plain numpy/scipy found here; of several ways the fastest counts. One thread.
+the best plain numpy/scipy found here; of several ways the fastest counts. One thread. W6, the exact switched loop, is in
+switched_peers.py.
 
     peers.py                     medians of the Python side
     peers.py --criterion DIR     the same beside the medians of `cargo bench`, with ratios and aims
@@ -24,6 +25,7 @@ import control  # noqa: E402
 import numpy as np  # noqa: E402
 import scipy.linalg  # noqa: E402
 import scipy.signal  # noqa: E402
+import switched_peers  # noqa: E402
 
 warnings.filterwarnings("ignore")
 
@@ -303,6 +305,24 @@ def text(seconds):
     return f"{seconds * 1e6:,.1f} µs"
 
 
+def beside_w6(criterion):
+    """The exact switched loop: scipy frequency by frequency and numpy all at once; the aim is a time."""
+    switched_peers.check()
+    (key, name), (plain, best) = switched_peers.NAME, switched_peers.TASKS
+    print(f"{key} {name}")
+    times = {task.__name__: median_seconds(task) for task in plain + best}
+    for task, seconds in times.items():
+        print(f"    {task:28}{text(seconds):>16}")
+    if not criterion:
+        return False
+    ours = criterion_median(criterion, key)
+    met = ours <= switched_peers.AIM_S
+    print(f"    {'this crate':28}{text(ours):>16} (aim {text(switched_peers.AIM_S)}){'' if met else '   MISSED'}")
+    for side, tasks in (("plain scipy", plain), ("best numpy", best)):
+        print(f"    {side:14}{min(times[task.__name__] for task in tasks) / ours:10,.1f} ×")
+    return not met
+
+
 def main():
     parser = argparse.ArgumentParser()
     parser.add_argument("--criterion", help="folder of criterion's results, target/criterion")
@@ -323,6 +343,7 @@ def main():
                 met = ratio >= aim
                 missed |= not met
                 print(f"    {side:14}{ratio:10,.1f} × (aim {aim} ×){'' if met else '   MISSED'}")
+    missed |= beside_w6(options.criterion)
     if options.criterion:
         # No library does this task; the aim is a time: one edit must fit well inside a frame.
         ours = criterion_median(options.criterion, "W8")

@@ -124,7 +124,9 @@ pub(crate) fn try_exact_loop(design: &Design, condition: Option<StageCondition>)
     let condition = condition.unwrap_or(nominal);
     let shared = Shared::new(&checked)?;
     let point = stage.averaged(&condition)?.operating_point;
-    let closing = Closing::new(&shared.compensator, checked.compensator.reference);
+    let held = checked.compensator.steady_inputs().into_iter().map(|(name, volts)| (name.to_owned(), volts)).collect();
+    let fed = shared.fast_path.iter().map(|path| ("fast".to_owned(), path.signal.to_owned())).collect();
+    let closing = Closing { space: &shared.compensator, held, fed };
     let joined = |driven| Joined { stage, law: &shared.law, driven };
     let closed = SwitchedSystem::new(&joined(Driven::Loop(closing)), &condition)?;
     let open = SwitchedSystem::new(&joined(Driven::Voltage(0.0)), &condition)?;

@@ -11,7 +11,9 @@ use crate::reference::polar;
 use polewright::converter::{Conduction, StageCondition, registry};
 use polewright::design::Design;
 use polewright::linear::Complex;
-use polewright::switched::{Goal, Instability, Orbit, Quantity, Stability, Start, SwitchedSystem, inputs};
+use polewright::switched::{
+    Configuration, Goal, Instability, Orbit, Phase, Quantity, Stability, Start, SwitchedSystem, inputs,
+};
 
 /// A design of a topology that its defaults fit: an output it reaches, the divider for it, a type II with little ripple.
 fn usual(topology: &str, mode: &str, rectifier: &str, load: f64) -> Design {
@@ -99,8 +101,7 @@ fn a_slow_change_of_the_control_voltage_walks_along_the_steady_curve() {
 }
 
 fn second_duty(orbit: &Orbit) -> Option<f64> {
-    let freewheels =
-        |p: &&polewright::switched::Phase| p.configuration == polewright::switched::Configuration::Freewheeling;
+    let freewheels = |p: &&Phase| p.configuration == Configuration::Freewheeling;
     let share = orbit.phases.iter().filter(freewheels).map(|p| p.length_s).sum::<f64>() / orbit.system.period_s;
     (orbit.conduction == Conduction::Discontinuous).then_some(share)
 }
@@ -307,4 +308,104 @@ fn averaging_holds_over_the_registry_as_far_as_stated() {
         count += 1;
     });
     assert!(count >= 50, "only {count} designs");
+}
+
+/// The exact multipliers of a double-ended stage in peak current mode with a magnetising current that turns sign: straight lines give
+/// z² − ((μ − M)/S)·z − 1 + (μ + M)/S = 0 with S = m1 + μ + ramp, M = m1 + m2 and μ the magnetising slope, all as the switch sees
+/// them (own derivation from m[k+1] = −(m[k] + μ·T·d)). A forward's, reset every period, is an external ramp: α with r = (μ + ramp)/m2.
+///
+/// *Tolerance*: 1e-4; drops and a finite bank bend the straight lines by so much.
+#[test]
+fn a_magnetising_current_counts_in_peak_current_mode() {
+    for topology in registry().iter().filter(|t| t.magnetising_ramp > 0.0) {
+        let (input, output, ratio, fs) = (48.0, 6.0, 0.5, 100e3);
+        let mut design = lossless(
+            topology.key,
+            &[
+                ("stage.output.voltage", output),
+                ("stage.switching-frequency", fs),
+                ("stage.transformer.ratio", ratio),
+                ("stage.transformer.magnetising", 100e-6),
+                ("stage.transformer.leakage", 0.0),
+                ("stage.inductor.inductance", 10e-6),
+                ("stage.bank.1.capacitance", 1.0),
+                ("stage.bank.1.count", 1e3),
+                ("control.sense.gain", 0.1),
+                ("control.sense.filter", 0.0),
+                ("control.sense.divider", 1.0),
+                ("control.sense.offset", 0.0),
+                ("control.blanking", 0.0),
+                ("control.slope.rate", 0.0),
+                ("compensator.reference", 2.5),
+                ("compensator.divider.upper", 10e3 * (output / 2.5 - 1.0)),
+                ("compensator.divider.lower", 10e3),
+            ],
+        );
+        for (path, key) in [("control.mode", "peak-current"), ("control.slope", "rate")] {
+            design.set_from_text(path, key).expect("an option");
+        }
+        at_one_condition(&mut design, input, 20.0);
+        design.title = topology.name.to_owned();
+        let exact = exact_loop(&design, None);
+        let orbit = exact.open.orbit();
+        let (index, inputs) =
+            (orbit.system.state_names.iter().position(|name| name == "magnetising current"), &orbit.inputs);
+        let index = index.expect("a magnetising current");
+        let slope = |configuration, row: usize| {
+            let piece = orbit.system.piece(configuration);
+            let x = &orbit.starts[usize::from(configuration == Configuration::Freewheeling)];
+            (piece.c.row(row) * (&piece.a * x + &piece.b * inputs))[0]
+        };
+        let sensed = orbit.system.places.sensed_current;
+        let mu = {
+            let piece = orbit.system.piece(Configuration::Conducting);
+            (piece.a.row(index) * &orbit.starts[0] + piece.b.row(index) * inputs)[0]
+        };
+        // While the rectifier conducts the sensed row holds the inductor's share alone.
+        let (m1, m2) = (slope(Configuration::Conducting, sensed) - mu, -slope(Configuration::Freewheeling, sensed));
+        let mut wanted = if topology.magnetising_ramp < 1.0 {
+            let (s, m) = (m1 + mu, m1 + m2);
+            let (sum, product) = ((mu - m) / s, (mu + m) / s - 1.0);
+            let root = Complex::new(sum * sum / 4.0 - product, 0.0).sqrt();
+            vec![sum / 2.0 + root, sum / 2.0 - root]
+        } else {
+            vec![Complex::new(-(m2 - mu) / (m1 + mu), 0.0)]
+        };
+        let found = Stability::new(&exact.open).expect("multipliers").multipliers;
+        wanted.retain(|w| !found.iter().any(|m| (m - w).norm() < 1e-4));
+        assert!(wanted.is_empty(), "{}: {wanted:?} are missing in {found:?}", topology.key);
+    }
+}
+
+/// Every sample at all its conditions has a steady period, or a finding that names what keeps it from one; where averaging calls the loop
+/// stable by a wide margin and little ripple reaches the comparator, the multipliers do, too.
+#[test]
+fn samples_have_their_orbits_at_every_condition() {
+    let (mut found, mut refused) = (0, 0);
+    for sample in polewright::design::sample::all() {
+        let design = sample.design().expect("a sample opens");
+        let checked = checked(&design);
+        if checked.compensator.digital().is_some() {
+            continue;
+        }
+        let stage = &checked.stage;
+        for input_voltage in stage.input_voltages {
+            for load_current in stage.load_currents {
+                let condition = StageCondition { input_voltage, load_current, output_voltage: stage.output_voltage };
+                match try_exact_loop(&design, Some(condition)) {
+                    Ok(exact) => {
+                        found += 1;
+                        let growth = Stability::new(&exact.closed).expect("multipliers").growth_per_period();
+                        assert!(growth.is_finite(), "{} at {condition:?}", sample.title);
+                    }
+                    Err(finding) => {
+                        println!("{} at {input_voltage} V, {load_current} A: {}", sample.title, finding.message);
+                        refused += 1;
+                    }
+                }
+            }
+        }
+    }
+    println!("{found} orbits, {refused} refused");
+    assert!(found > 10 * refused, "{found} orbits, {refused} refused");
 }

@@ -78,10 +78,10 @@ fn bucks(t: &Textbook) -> bool {
 fn draw(stage: &mut StageDrawing) {
     let (supply, ground, output) = (stage.supply(), stage.ground(), stage.node("output"));
     let (input_side, output_side) = (stage.node("input side"), stage.node("output side"));
-    stage.switch_called((A, "Switch A", "A"), supply, input_side);
+    stage.switch_called((A, "Switch A", "SA"), supply, input_side);
     stage.rectifier_called(B, ground, input_side);
     stage.inductor(input_side, output_side);
-    stage.switch_called((C, "Switch C", "C"), output_side, ground);
+    stage.switch_called((C, "Switch C", "SC"), output_side, ground);
     stage.rectifier_called(D, output_side, output);
     stage.output(output, ground);
 }

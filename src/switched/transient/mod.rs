@@ -22,4 +22,8 @@ pub use run::{Cycle, Load, POWER_FALLS, Run, SINK_FALLS, Scenario, simulate};
 pub use waveforms::{Trace, Waveforms};
 
 #[cfg(test)]
+mod balance_tests;
+#[cfg(test)]
+mod brute_tests;
+#[cfg(test)]
 mod tests;
