@@ -28,6 +28,10 @@ impl Model {
     pub(super) fn new(design: &CheckedDesign, shown: Shown) -> Result<Self, Finding> {
         refuse_switched(design)?;
         let shared = Shared::new(design)?;
+        if shared.digital.is_some() {
+            let message = "The exact switched model does not follow a difference equation; the averaged results solve its sampled loop.";
+            return Err(Finding::notice("compensator.amplifier", message));
+        }
         let condition = match shown {
             Shown::Levels(input, load) => Condition::at_levels(&design.stage, input, load),
             Shown::At { input_voltage, load_current } => Condition::what_if(input_voltage, load_current),
