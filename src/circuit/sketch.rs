@@ -42,8 +42,13 @@ pub enum Shows {
         /// Path of the value of one.
         each: String,
     },
-    /// A turns ratio, second to first: "1 : 0.25".
-    Turns(String),
+    /// The value of an entry that needs a word before it: "1 : 0.25", "k = 0.97".
+    Led {
+        /// What stands before it.
+        words: &'static str,
+        /// Path of the entry.
+        path: String,
+    },
     /// One entry over another.
     Ratio {
         /// Path of the entry above the line.
@@ -119,10 +124,10 @@ impl Drawn {
         self.also(paths)
     }
 
-    /// A turns ratio written below it.
+    /// A number written below it, with a word before it.
     #[must_use]
-    pub fn turns(mut self, path: &str) -> Self {
-        self.quiet.push(Shows::Turns(path.to_owned()));
+    pub fn led(mut self, words: &'static str, path: &str) -> Self {
+        self.quiet.push(Shows::Led { words, path: path.to_owned() });
         self.also(&[path])
     }
 

@@ -73,7 +73,7 @@ impl StageDrawing {
 
 fn drawn_transformer() -> Drawn {
     Drawn::new(Symbol::Inductor, "Transformer", "T")
-        .shows(Shows::Turns(RATIO.path.to_owned()), &[RATIO.path])
+        .shows(Shows::Led { words: "1 : ", path: RATIO.path.to_owned() }, &[RATIO.path])
         .quiet(MAGNETISING.path)
         .also(&[LEAKAGE.path])
 }

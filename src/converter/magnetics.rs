@@ -5,7 +5,7 @@ use super::topology_entries::{
     COUPLING, COUPLING_CAPACITOR, COUPLING_CAPACITOR_ESR, DAMPING, DAMPING_CAPACITANCE, DAMPING_RESISTANCE, INDUCTORS,
     RATIO, SECOND_INDUCTOR, SECOND_WINDING,
 };
-use crate::circuit::{Drawn, Node, PartId, Shows, Symbol};
+use crate::circuit::{Drawn, Node, PartId, Symbol};
 
 impl StageDrawing {
     /// The inductor with its winding resistance; its current counts from `from` to `to`.
@@ -21,7 +21,7 @@ impl StageDrawing {
             .also(&[INDUCTORS.path])
             .dotted(self.options.coupled);
         if self.options.coupled {
-            drawn = drawn.quiet(COUPLING.path);
+            drawn = drawn.led("k = ", COUPLING.path);
         }
         self.sketch.part(from, to, drawn);
     }
@@ -52,21 +52,12 @@ impl StageDrawing {
         part
     }
 
-    /// An ideal transformer of the turns ratio entered; both windings list their dotted ends first.
-    pub fn transformer(&mut self, first: (Node, Node), second: (Node, Node)) {
-        let ratio = self.netlist.slot(RATIO.path);
-        self.netlist.transformer("transformer", first, second, ratio);
-        let drawn =
-            Drawn::new(Symbol::Inductor, "Transformer", "T").shows(Shows::Turns(RATIO.path.to_owned()), &[RATIO.path]);
-        self.sketch.transformer(first, second, drawn);
-    }
-
     /// A transformer whose magnetising inductance, at the first winding, is the stage's inductor.
     pub fn storing_transformer(&mut self, first: (Node, Node), second: (Node, Node)) {
         self.wind(("inductor", "inductor winding"), first, (INDUCTANCE, WINDING));
         let ratio = self.netlist.slot(RATIO.path);
         self.netlist.transformer("transformer", first, second, ratio);
-        let drawn = drawn_inductor(("Transformer", "T"), (INDUCTANCE, WINDING)).turns(RATIO.path);
+        let drawn = drawn_inductor(("Transformer", "T"), (INDUCTANCE, WINDING)).led("1 : ", RATIO.path);
         self.sketch.transformer(first, second, drawn);
     }
 

@@ -97,7 +97,7 @@ pub(super) fn draw(pen: &mut Pen, symbol: Symbol, centre: Point, way: Way) {
 
 /// The dot of a coupled inductor, beside its first terminal.
 pub(super) fn dot(pen: &mut Pen, centre: Point, way: Way) {
-    pen.dot(way.at(centre, -HALF - 0.5, -3.4));
+    pen.dot(way.at(centre, -HALF - 0.5, -4.6));
 }
 
 /// The winding of a transformer, its terminals above and below; it bulges towards the core.

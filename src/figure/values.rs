@@ -37,7 +37,7 @@ impl Numbers<'_> {
     fn shown(&self, shows: &Shows) -> String {
         match shows {
             Shows::Entry(path) => self.text(path),
-            Shows::Turns(path) => format!("1 : {}", self.text(path)),
+            Shows::Led { words, path } => format!("{words}{}", self.text(path)),
             Shows::Count { count, each } => match self.get(count) {
                 Some((count, _)) if count > 1.0 => {
                     format!("{} × {}", print_digits(count, Unit::One, 4), self.text(each))
@@ -55,7 +55,7 @@ impl Numbers<'_> {
     pub(super) fn is_zero(&self, shows: &Shows) -> bool {
         let path = match shows {
             Shows::Entry(path)
-            | Shows::Turns(path)
+            | Shows::Led { path, .. }
             | Shows::Count { each: path, .. }
             | Shows::Ratio { over: path, .. } => path,
         };

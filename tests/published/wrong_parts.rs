@@ -7,7 +7,9 @@ use crate::common::{checked, design};
 use polewright::design::{Design, entry, file};
 
 /// A topology with its choices, a path, a text that cannot be used and the reason.
-const WRONG: [(&str, &[(&str, &str)], &str, &str, &str); 22] = [
+type Wrong = (&'static str, &'static [(&'static str, &'static str)], &'static str, &'static str, &'static str);
+
+const WRONG: [Wrong; 22] = [
     ("flyback", &[], "stage.transformer.ratio", "0", "from 0.001 to 1000"),
     ("flyback", &[], "stage.transformer.ratio", "-0.5", "from 0.001 to 1000"),
     ("flyback", &[], "stage.transformer.ratio", "1e6", "from 0.001 to 1000"),
