@@ -4,7 +4,7 @@ use super::super::loop_model::Shared;
 use super::super::result::Condition;
 use crate::compensator::{FAST, Limit, Limited};
 use crate::control::{ControlLaw, Mode};
-use crate::converter::{LoadKind, StageCondition};
+use crate::converter::{LoadKind, StageCondition, not_followed};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::quantity::Unit;
@@ -41,6 +41,9 @@ impl Model {
     /// A finding for what cannot be solved.
     pub(super) fn new(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Self, Finding> {
         let stage = &design.stage;
+        if stage.phases() > 1.0 {
+            return Err(not_followed("over time, phases would have to be told apart; their steady period is exact"));
+        }
         let at = StageCondition {
             input_voltage: condition.input_voltage,
             load_current: condition.load_current,
