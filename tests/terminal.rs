@@ -16,6 +16,9 @@ use std::process::{Command, Output, Stdio};
 #[path = "terminal/switched.rs"]
 mod switched;
 
+#[path = "terminal/transient.rs"]
+mod transient;
+
 fn program() -> Command {
     let mut command = Command::new(env!("CARGO_BIN_EXE_polewright"));
     command.stdin(Stdio::null());
@@ -411,8 +414,16 @@ fn the_documented_fields_are_there() {
     let readme = fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("README.md")).expect("the README");
     let (_, section) = readme.split_once("### The JSON").expect("a section on the JSON");
     let (section, _) = section.split_once("\n## ").expect("a next section");
-    // Findings and requirements, an inner loop, filters: together they report every field.
-    let samples = ["trail-radio.ron", "winch-buffer.ron", "tram-display.ron", "ultrasound-probe.ron"].map(sample_path);
+    // Findings and requirements, an inner loop, filters, phases, isolated feedback: together they report every field.
+    let samples = [
+        "canal-lock.ron",
+        "loom-vision.ron",
+        "trail-radio.ron",
+        "winch-buffer.ron",
+        "tram-display.ron",
+        "ultrasound-probe.ron",
+    ]
+    .map(sample_path);
     let samples = samples.iter().map(String::as_str).chain(["--json", "--load-sweep", "--switched"]);
     let report = text(&check(&samples.collect::<Vec<_>>()).stdout).to_owned();
     let rows = section.lines().filter(|line| line.starts_with("| `"));

@@ -6,6 +6,7 @@ use super::result::{Condition, LoopResult};
 use super::sampled::SharedDigital;
 use crate::compensator::{Built, DifferenceEquation, Digital, FixedPoint};
 use crate::design::CheckedDesign;
+use crate::finding::Finding;
 use crate::linear::{Complex, FrequencyResponse, LinearError, Verdict, margins};
 
 /// A difference equation at one condition.
@@ -80,6 +81,19 @@ fn loop_result(
         gain_at_switching: 0.0,
         margins,
     }))
+}
+
+/// Refuses the exact side for a difference equation: neither its steady period nor its cycles are followed with sampled control.
+///
+/// # Errors
+/// The finding that says so.
+pub(super) fn refuse_switched(design: &CheckedDesign) -> Result<(), Finding> {
+    if design.compensator.digital().is_none() {
+        return Ok(());
+    }
+    let message = "The exact switched model is not offered for a difference equation: waveforms, multipliers and transients are those of analog control only. Stability and steps shown are those of the sampled loop on the averaged stage.";
+    Err(Finding::problem("compensator.amplifier", message)
+        .with_hint("choose an op amp with the same poles and zeros to see ripple and stress of the stage"))
 }
 
 /// Whether the loop is stable before rounding at a condition; none where that is not known.

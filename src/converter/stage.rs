@@ -306,15 +306,6 @@ impl Stage {
         self.phases
     }
 
-    /// Ramp that a transformer's magnetising current adds to the switch's, per volt of input [A/(V·s)], the drop of the switch left out.
-    pub fn natural_ramp_per_volt(&self) -> f64 {
-        if self.magnetising > 0.0 {
-            self.topology.magnetising_ramp * self.topology.input_share / self.magnetising
-        } else {
-            0.0
-        }
-    }
-
     /// Whether the output bank carries switched current.
     pub fn bank_is_switched(&self) -> bool {
         self.plain.bank_is_switched()

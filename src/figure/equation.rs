@@ -146,7 +146,7 @@ impl Sheet<'_> {
         ];
         let name = format!("Difference equation, every {period}, {} bits", digital.bits);
         let right = self.block(left, "C(z)", &format!("each {period}"), name, &paths);
-        let left = self.wait([right, (right + under) / 2.0 - (right - left) / 2.0]);
+        let left = self.wait([right, f64::midpoint(left, right) + under / 2.0]);
         let right = if digital.duty_command {
             self.block(left, "PWM", "", String::new(), &[])
         } else {

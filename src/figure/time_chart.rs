@@ -199,13 +199,23 @@ impl TimeChart {
     fn instants(&self, figure: &mut Figure, frames: &[Frame], y: f64) {
         let Some(first) = frames.first() else { return };
         let mut taken = f64::NEG_INFINITY;
-        for instant in self.instants.iter().filter(|instant| first.x.holds(instant.at_s)) {
+        let shown: Vec<&Instant> = self.instants.iter().filter(|instant| first.x.holds(instant.at_s)).collect();
+        let width = |instant: &Instant| LETTER * instant.name.chars().count() as f64;
+        for (k, instant) in shown.iter().enumerate() {
             let x = f64::from(first.x.at(instant.at_s));
             for Frame { corners: [[_, top], [_, bottom]], .. } in frames {
                 line(figure, vec![[x, *top], [x, *bottom]], Role::Landmark, (1.0, Dash::Dotted));
             }
-            let half = LETTER * instant.name.chars().count() as f64 / 2.0;
-            let middle = x.clamp(half + 4.0, (figure.size[0] - half - 4.0).max(half + 4.0));
+            let half = width(instant) / 2.0;
+            // Two that stand close make way for each other: one ends at its line, the other begins there.
+            let near = |other: Option<&&Instant>| {
+                other.is_some_and(|other| {
+                    (f64::from(first.x.at(other.at_s)) - x).abs() < half + width(other) / 2.0 + 8.0
+                })
+            };
+            let way =
+                f64::from(i8::from(k > 0 && near(shown.get(k.wrapping_sub(1)))) - i8::from(near(shown.get(k + 1))));
+            let middle = way.mul_add(half + 3.0, x).clamp(half + 4.0, (figure.size[0] - half - 4.0).max(half + 4.0));
             if middle - half > taken + 8.0 && !instant.name.is_empty() {
                 taken = middle + half;
                 let words = (Role::Landmark, SMALL, Weight::Regular);

@@ -187,8 +187,7 @@ impl<'a> Law<'a> {
         }
     }
 
-    /// `natural` is the ramp that a transformer's magnetising current adds to what is sensed, per volt of input [A/(V·s)].
-    fn comparator(&self, row: usize, period: f64, natural: f64) -> Comparator {
+    fn comparator(&self, row: usize, period: f64) -> Comparator {
         let law = self.control;
         let mut comparator = Comparator {
             edge: Edge::Peak,
@@ -211,9 +210,6 @@ impl<'a> Law<'a> {
                 comparator.edge = *edge;
                 comparator.valley_v = sense.divider * sense.offset;
                 comparator.rate = if *edge == Edge::Peak { sense.ramp() } else { -sense.ramp() };
-                if *edge == Edge::Peak {
-                    comparator.rate_per_input = sense.comparator_ohms() * natural;
-                }
                 comparator.blanking_s = sense.blanking_s;
                 comparator.on_time_least_s = sense.on_time_least_s;
                 return comparator;
@@ -277,7 +273,7 @@ impl SwitchedSystem {
             steady_inputs: steady_inputs(&equations.inputs, &joined.driven, &layout.own),
             rule: Rule::Compared(Comparator {
                 since_s: interleaved.map_or(0.0, |i| i.always as f64 * period_s),
-                ..law.comparator(places.compared, switching_period_s, joined.stage.natural_ramp_per_volt())
+                ..law.comparator(places.compared, switching_period_s)
             }),
             interleaving: interleaved.map(Interleaving::new),
             probes,

@@ -173,8 +173,11 @@ fn middle_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
             let mut page_ui = ui.new_child(UiBuilder::new().max_rect(page));
             loop_ui(&mut page_ui, desk);
         }
-        Page::Waveforms => waves::waves_ui(ui, page, desk),
-        Page::Transient => transient::transient_ui(ui, page, desk),
+        Page::Waveforms => pages::page_ui(ui, page, waves::LEAST, |ui, rect| waves::waves_ui(ui, rect, desk)),
+        Page::Transient => {
+            transient::run_ui(ui, rest, desk);
+            pages::page_ui(ui, page, transient::LEAST, |ui, rect| transient::transient_ui(ui, rect, desk));
+        }
     }
     ui.advance_cursor_after_rect(room);
 }

@@ -26,6 +26,19 @@ const NAMES: [(Page, &str, &str); 3] = [
     (Page::Transient, "Transient", "page-transient"),
 ];
 
+/// Draws a page that wants so much height; it scrolls where there is less.
+pub(super) fn page_ui(ui: &mut Ui, rect: Rect, least: f32, draw: impl FnOnce(&mut Ui, Rect)) {
+    if rect.height() >= least {
+        draw(ui, rect);
+        return;
+    }
+    let mut inner = ui.new_child(egui::UiBuilder::new().max_rect(rect));
+    egui::ScrollArea::vertical().id_salt("page").auto_shrink(false).show(&mut inner, |ui| {
+        let (_, whole) = ui.allocate_space(egui::vec2(rect.width(), least));
+        draw(ui, whole);
+    });
+}
+
 /// Height of the row of pages [points].
 pub(super) const HEIGHT: f32 = 24.0;
 

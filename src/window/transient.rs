@@ -19,6 +19,10 @@ use crate::figure;
 use crate::finding::Finding;
 use crate::switched::Waveforms;
 
+/// Least height of the page before it scrolls [points].
+pub(super) const LEAST: f32 = 460.0;
+/// Width below which the names of the events are short [points].
+const NARROW: f32 = 420.0;
 /// Height of the row of events [points].
 const HEAD: f32 = 26.0;
 /// Time between frames while a run is under way and its progress is shown [s].
@@ -158,22 +162,23 @@ fn head_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
     let inner = rect.with_min_x(rect.left() + theme::GUTTER + 2.0).with_max_x(rect.right() - theme::RIGHT_GUTTER - 4.0);
     let mut row =
         ui.new_child(UiBuilder::new().max_rect(inner).layout(egui::Layout::left_to_right(egui::Align::Center)));
-    row.spacing_mut().item_spacing.x = 12.0;
+    let narrow = inner.width() < NARROW;
+    row.spacing_mut().item_spacing.x = if narrow { 7.0 } else { 12.0 };
     for event in TransientEvent::ALL {
         let chosen = desk.view.transient.event == event;
-        if tab_ui(&mut row, (event.name(), event.name()), event.key(), chosen) && !chosen {
+        let shown = if narrow { event.name().trim_end_matches(" step") } else { event.name() };
+        if tab_ui(&mut row, (event.name(), shown), event.key(), chosen) && !chosen {
             desk.view.transient.event = event;
             ui.ctx().request_repaint();
         }
     }
-    let rest = inner.with_min_x(row.min_rect().right() + 12.0);
-    let mut right =
-        ui.new_child(UiBuilder::new().max_rect(rest).layout(egui::Layout::right_to_left(egui::Align::Center)));
-    run_ui(&mut right, desk);
 }
 
-/// How far the run is and its stop, or its start anew.
-fn run_ui(ui: &mut Ui, desk: &mut Desk<'_>) {
+/// How far the run is and its stop, or its start anew, at the right end of a row.
+pub(super) fn run_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
+    let mut right =
+        ui.new_child(UiBuilder::new().max_rect(rect).layout(egui::Layout::right_to_left(egui::Align::Center)));
+    let ui = &mut right;
     let accent = palette(ui).accent;
     let Some(share) = desk.view.transient.worker.share() else {
         if ui.button(RichText::new("Run again").color(accent)).clicked() {

@@ -11,6 +11,15 @@ use crate::quantity::{self, Unit};
 const ROW: f32 = 18.0;
 /// Where the simulated and the predicted values end, as shares of the width.
 const COLUMNS: (f32, f32) = (0.52, 0.76);
+/// The same in a narrow column, and the width below which it is one [points].
+const NARROW: ((f32, f32), f32) = ((0.68, 1.0), 420.0);
+/// Values longer than this take the room of both columns [characters].
+const LONG: usize = 14;
+
+/// The columns of a width.
+fn columns(width: f32) -> (f32, f32) {
+    if width < NARROW.1 { NARROW.0 } else { COLUMNS }
+}
 
 /// What stands under the plot.
 pub(super) struct Lines {
@@ -27,6 +36,7 @@ pub(super) fn lines(run: &Transient) -> Lines {
     let figures = &run.figures;
     let step = run.prediction.as_ref();
     let volts = |value: f64| quantity::print_digits(value, Unit::Volt, 3);
+    let four = |value: f64| quantity::print_digits(value, Unit::Volt, 4);
     let amperes = |value: f64| quantity::print_digits(value, Unit::Ampere, 3);
     let seconds = |value: f64| quantity::print_digits(value, Unit::Second, 3);
     let or_none = |value: Option<f64>, print: &dyn Fn(f64) -> String| value.map_or("none".to_owned(), print);
@@ -61,7 +71,7 @@ pub(super) fn lines(run: &Transient) -> Lines {
     ];
     rows.push((
         "Output, ripple included",
-        format!("{} to {}", volts(figures.least_v), volts(figures.greatest_v)),
+        format!("{} to {}", four(figures.least_v), four(figures.greatest_v)),
         none(),
         "transient-range",
     ));
@@ -118,9 +128,10 @@ fn header_ui(ui: &mut Ui, predicted: bool) {
     let painter = ui.painter();
     let at = |share: f32| pos2(rect.left() + rect.width() * share, rect.center().y);
     painter.text(rect.left_center(), Align2::LEFT_CENTER, "What happens", theme::strong(12.5), palette.ink);
-    painter.text(at(COLUMNS.0), Align2::RIGHT_CENTER, "cycle by cycle", theme::small(), palette.weak);
+    let (simulated, beside) = columns(rect.width());
+    painter.text(at(simulated), Align2::RIGHT_CENTER, "cycle by cycle", theme::small(), palette.weak);
     if predicted {
-        painter.text(at(COLUMNS.1), Align2::RIGHT_CENTER, "predicted", theme::small(), palette.weak);
+        painter.text(at(beside), Align2::RIGHT_CENTER, "predicted", theme::small(), palette.weak);
     }
 }
 
@@ -130,8 +141,10 @@ fn row_ui(ui: &mut Ui, (name, simulated, predicted, term): &(&'static str, Strin
     let painter = ui.painter().with_clip_rect(rect);
     let at = |share: f32| pos2(rect.left() + rect.width() * share, rect.center().y);
     painter.text(rect.left_center(), Align2::LEFT_CENTER, name, theme::small(), palette.weak);
-    painter.text(at(COLUMNS.0), Align2::RIGHT_CENTER, simulated, theme::body(), palette.ink);
-    painter.text(at(COLUMNS.1), Align2::RIGHT_CENTER, predicted, theme::body(), palette.weak);
+    let (first, second) = columns(rect.width());
+    let long = predicted.is_empty() && simulated.chars().count() > LONG;
+    painter.text(at(if long { second } else { first }), Align2::RIGHT_CENTER, simulated, theme::body(), palette.ink);
+    painter.text(at(second), Align2::RIGHT_CENTER, predicted, theme::body(), palette.weak);
     let beside = if predicted.is_empty() { String::new() } else { format!(", predicted {predicted}") };
     response.widget_info(|| WidgetInfo::labeled(Role::Label, true, format!("{name}: {simulated}{beside}")));
     let _ = explain::explained(ui, response, term, explain::nothing);

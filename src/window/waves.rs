@@ -11,6 +11,8 @@ use crate::quantity;
 
 /// Least height of the waveforms [points].
 const LEAST_CHART: f32 = 300.0;
+/// Least height of the page before it scrolls [points].
+pub(super) const LEAST: f32 = 480.0;
 /// Height of a row of the table [points].
 const ROW: f32 = 18.0;
 /// Where the columns of numbers end, as shares of the table's width: peak, least, RMS, average.

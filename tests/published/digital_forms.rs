@@ -3,8 +3,9 @@
 use crate::common::{analysed, checked};
 use crate::cross_checks::non_number;
 use crate::every_mode::{each, no_number};
-use polewright::analysis::{Analysis, LedgerRole};
+use polewright::analysis::{Analysis, Goal, LedgerRole, Level, Shown, place_by_k_factor, place_by_rules};
 use polewright::design::{Design, file, sample};
+use std::collections::BTreeSet;
 
 const FORMS: [(&str, &str); 4] = [("2", "1"), ("2", "2"), ("3", "1"), ("3", "2")];
 const METHODS: [&str; 3] = ["tustin", "tustin-prewarped", "matched"];
@@ -264,4 +265,63 @@ fn the_terminal_tells_the_equation() {
     let scale = 2f64.powf(digital["forward_fraction_bits"].as_f64().expect("bits"));
     assert!((code / scale - digital["forward"][0]["value"].as_f64().expect("a value")).abs() < 1e-12);
     assert!(digital["sampled_loop"]["phase_margin_deg"].is_number());
+}
+
+/// Definition: the K factor's goal is |T| = 1 and 180° + phase at the crossover; met as far as rounding to 24 bits lets it. The rules cross where asked.
+#[test]
+fn placing_meets_its_goal_in_every_form() {
+    let goal = Goal { crossover_hz: 22e3, phase_margin_deg: 52.0 };
+    let shown = Shown::Levels(Level::Nominal, Level::Nominal);
+    for (order, zeros) in FORMS {
+        for method in METHODS {
+            // A current command leaves a plant that one zero is enough for.
+            let mut pairs = vec![
+                ("compensator.digital.order", order),
+                ("compensator.digital.zeros", zeros),
+                ("compensator.digital.method", method),
+                ("compensator.digital.bits", "24"),
+            ];
+            if zeros == "1" {
+                pairs.push(("control.mode", "peak-current"));
+            }
+            let design = buck(&pairs);
+            let read = checked(&design);
+            let placement = place_by_k_factor(&read, &BTreeSet::new(), shown, goal)
+                .unwrap_or_else(|finding| panic!("{pairs:?}: {finding}"));
+            let mut placed = design.clone();
+            placement.compensator.write(&mut placed.values);
+            let (gain_db, phase_deg) = at(&placed, goal.crossover_hz);
+            assert!(gain_db.abs() < 2e-3, "{pairs:?}: {gain_db} dB");
+            assert!((180.0 + phase_deg - 52.0).abs() < 2e-2, "{pairs:?}: {phase_deg}°");
+            let ruled = place_by_rules(&read, &BTreeSet::new(), shown, goal).expect("placed");
+            let mut placed = design.clone();
+            ruled.placement.compensator.write(&mut placed.values);
+            assert!(at(&placed, goal.crossover_hz).0.abs() < 2e-3, "{pairs:?}");
+            assert!(ruled.reasons.len() == ruled.placement.lanes.len(), "{pairs:?}: {:?}", ruled.reasons);
+        }
+    }
+}
+
+/// A lane goes where it is asked to as far as its word lets it, and never above half the sampling frequency.
+#[test]
+fn lanes_are_moved_and_stop_at_half_the_sampling_frequency() {
+    let compensator = checked(&buck(&[])).compensator;
+    for (key, wanted, reached) in
+        [("zero-1", 5.5e3, 5.5e3), ("pole-2", 170e3, 170e3), ("pole-1", 400e3, 250e3), ("gain", 2e3, 2e3)]
+    {
+        let placed = compensator.move_lane(key, wanted, &BTreeSet::new());
+        assert!((placed.as_built_hz / reached - 1.0).abs() < 0.01, "{key}: {}", placed.as_built_hz);
+        assert_eq!(placed.why.is_some(), reached < wanted, "{key}: {:?}", placed.why);
+    }
+    let beyond = compensator.move_lane("gain", 1e9, &BTreeSet::new());
+    assert!(beyond.why.is_some_and(|why| why.contains("overflow")));
+    assert!(beyond.compensator.digital().is_some_and(|digital| digital.fixed_point().is_some()));
+}
+
+#[test]
+fn the_exact_side_says_that_it_is_not_offered() {
+    let read = checked(&buck(&[]));
+    let shown = Shown::Levels(Level::Nominal, Level::Nominal);
+    let refused = polewright::analysis::steady(&read, shown).expect_err("not offered");
+    assert!(refused.message.contains("not offered"), "{refused}");
 }

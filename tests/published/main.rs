@@ -4,11 +4,13 @@
 //! rounded intermediate results.
 #![expect(clippy::expect_used, clippy::panic, reason = "a test may stop at a wrong or missing value")]
 
+mod analyser;
 mod common;
 mod compensator;
 mod controlled;
 mod cross_checks;
 mod current_mode;
+mod digital;
 mod digital_forms;
 mod discontinuous;
 mod every_mode;
@@ -29,5 +31,6 @@ mod switched;
 mod symbolic;
 mod textbook;
 mod topologies;
+mod transient;
 mod two_inductors;
 mod wrong_parts;

@@ -31,11 +31,11 @@ pub(crate) fn complex(value: &Value) -> Vec<Complex> {
     list(value).iter().map(|pair| Complex::new(number(&pair[0]), number(&pair[1]))).collect()
 }
 
-fn texts(value: &Value) -> Vec<(&str, &str)> {
+pub(crate) fn texts(value: &Value) -> Vec<(&str, &str)> {
     value.as_object().expect("an object").iter().map(|(k, v)| (k.as_str(), v.as_str().expect("a text"))).collect()
 }
 
-fn values(value: &Value) -> Vec<(&str, f64)> {
+pub(crate) fn values(value: &Value) -> Vec<(&str, f64)> {
     value.as_object().expect("an object").iter().map(|(k, v)| (k.as_str(), number(v))).collect()
 }
 

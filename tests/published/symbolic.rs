@@ -84,3 +84,15 @@ fn agree(title: &str) {
 fn flyback_equals_its_derivation() {
     agree("flyback");
 }
+
+#[test]
+fn sepic_equals_its_derivation() {
+    agree("SEPIC");
+    agree("SEPIC, coupled");
+}
+
+#[test]
+fn cuk_equals_its_derivation() {
+    agree("Cuk");
+    agree("Cuk, coupled");
+}

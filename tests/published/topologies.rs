@@ -42,6 +42,16 @@ fn interleaved_phases_in_voltage_and_current_mode() {
     agree("boost", 1);
 }
 
+#[test]
+fn sepic_with_inductors_apart_and_coupled_in_both_conduction_modes() {
+    agree("sepic", 3);
+}
+
+#[test]
+fn cuk_with_inductors_apart_and_coupled_in_both_conduction_modes() {
+    agree("cuk", 3);
+}
+
 /// Leakage counts in continuous conduction only, the magnetising current in peak current mode only.
 #[test]
 fn bucks_behind_a_transformer() {

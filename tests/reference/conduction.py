@@ -54,7 +54,7 @@ class Model:
     on_slope: Row  # [A/s]
     off_slope: float  # negative [A/s]
     first: float  # average of the first inductor's current [A]
-    first_slope: float  # its slope while the switch conducts [A/s]
+    first_ripple: float  # its ripple, peak to peak [A]
     bank: Row  # voltage of the output bank, ahead of a second stage [V]
     magnetised: Row  # what magnetises a transformer while the switch conducts [V]
     names: list
@@ -76,7 +76,7 @@ def full(vin, io=0.0):
 
 
 def rates(found, cell, x, u, duty):
-    """(x', outputs, on slope, off slope, d1 + d2, on slope of the first state, magnetising voltage) of the discontinuous average.
+    """(x', outputs, on slope, off slope, d1 + d2, rises of the first state, magnetising voltage) of the discontinuous average.
 
     `cell` is (period, q, e).
     """
@@ -94,7 +94,9 @@ def rates(found, cell, x, u, duty):
     slope = duty * on + d2 * off + idle * (a0 @ rest + b0 @ u)
     outputs = duty * (c1 @ flowing + e1 @ u) + d2 * (c2 @ flowing + e2 @ u) + idle * (c0 @ rest + e0 @ u)
     outputs[1] = current
-    return slope, outputs, m1, q @ off, share, on[0], c1[4] @ flowing + e1[4] @ u
+    # The first inductor's current at the ends of the three intervals, from where it began.
+    rises = np.array([duty * on[0], d2 * off[0], idle * (a0 @ rest + b0 @ u)[0]]) * period
+    return slope, outputs, m1, q @ off, share, rises, c1[4] @ flowing + e1[4] @ u
 
 
 def derivative(function, x, u, duty):
@@ -159,8 +161,8 @@ def discontinuous(stage, vin, vout, load):
         raise AssertionError("no discontinuous operating point")
 
     def everything(x, uu, d):
-        slope, outputs, m1, m2, share, first, magnetised = rates(found, cell, x, uu, d)
-        return np.concatenate([slope, outputs, [m1, m1 - m2, share, m2, first, magnetised]])
+        slope, outputs, m1, m2, share, rises, magnetised = rates(found, cell, x, uu, d)
+        return np.concatenate([slope, outputs, [m1, m1 - m2, share, m2, magnetised], rises])
 
     value, by_x, by_u, by_d = derivative(everything, z[:n].astype(complex), u.astype(complex), z[n] + 0j)
     value = value.real
@@ -169,10 +171,11 @@ def discontinuous(stage, vin, vout, load):
         return Row(value[k], by_x[k], by_u[k], by_d[k])
 
     share = value[n + 7]
+    corners = np.cumsum(value[n + 10:])
     assert 0.0 < z[n] < share < 1.0, ("not discontinuous", z[n], share)
     return Model("discontinuous", z[n], share - z[n], z[:n], by_x[:n], by_u[:n], by_d[:n],
                  row(n), row(n + 1), row(n + 2), row(n + 6), row(n + 5), value[n + 8],
-                 z[0] / stage.phases, value[n + 9] / stage.phases, row(n + 3), row(n + 10), names)
+                 z[0] / stage.phases, np.ptp(corners) / stage.phases, row(n + 3), row(n + 9), names)
 
 
 def triangle(stage, vin, vout, load):
@@ -222,7 +225,7 @@ def continuous(stage, vin, vout, load, forced):
     valley = q @ x - duty / stage.pulse_frequency * on_slope.value / 2.0
     model = Model("continuous", duty, 1.0 - duty, x, plain.a, plain.b[:, [0, 2]], plain.f, row(0), row(1), row(2), difference,
                   on_slope, q @ (a2 @ x + b2 @ u), x[0] / stage.phases,
-                  (a1[0] @ x + b1[0] @ u) / stage.phases, row(3), magnetised, names)
+                  (a1[0] @ x + b1[0] @ u) * duty / stage.pulse_frequency / stage.phases, row(3), magnetised, names)
     return model, valley >= 0.0 or forced
 
 

@@ -95,7 +95,7 @@ def condition(design, vin, load, loop_type=ControlledLoop):
         "second_duty": float(model.second),
         "inductor_current": float(model.first),
         "input_current": float(model.input_current.value),
-        "inductor_ripple": float(model.first_slope * model.duty / design.stage.pulse_frequency),
+        "inductor_ripple": float(model.first_ripple),
         "stable": stable,
         **loop.margins(),
     }

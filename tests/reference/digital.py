@@ -214,7 +214,7 @@ def random_cases(count):
         method = ["tustin", "tustin-prewarped", "matched"][k % 3]
         digital = Digital(
             method, log(fs / 1e3, fs / 20.0), tuple(log(fs / 2e3, fs / 20.0) for _ in range(zeros)),
-            tuple(log(fs / 20.0, fs / 2.2) for _ in range(order - 1)), 1.2, 10e3, log(1e3, 10e3), log(1.0, 5.0),
+            tuple(log(fs / 20.0, fs / 2.2) for _ in range(order - 1)), 1.2, 10e3, log(1e3, 10e3), log(1.6, 5.0),
             bits=draw.choice([10, 12, 16, 18, 24, 32]), prewarp=log(fs / 50.0, fs / 4.0) if method == "tustin-prewarped" else 0.0,
             computation=draw.choice([0.0, 0.3 / fs, 0.9 / fs]), rounding=draw.choice(["integrator", "integrator", "nearest"]),
         )
@@ -404,7 +404,7 @@ def closed_loop(design):
         loop = p * nominal.period * z**-whole * answer_at(nominal.words, digital.scale(nominal.full), z)
         assert abs(1.0 + loop) < 1e-6 * max(abs(loop), 1.0), (z, loop)
     assert np.all(np.abs(multipliers) < 1.0)
-    frequencies = np.geomspace(fs / 1e5, fs / 2.0 * 0.999, 30)
+    frequencies = np.geomspace(fs / 1e5, 0.48 * fs, 30)
     conditions = []
     for vin in design.vin:
         for load in design.load:
@@ -423,7 +423,7 @@ def closed_loop(design):
         "responses": {name: pairs(curve) for name, curve in nominal.responses(frequencies).items()},
         "sampled_loop": pairs(nominal.sampled_loop(frequencies)),
         "conditions": conditions,
-        "poles_z": pairs(sorted(multipliers[np.abs(multipliers) > 1e-6], key=lambda z: (-round(abs(z), 10), z.imag))),
+        "poles_z": pairs(sorted(multipliers[np.abs(multipliers) > 1e-3], key=lambda z: (-round(abs(z), 10), z.imag))),
         "parts": PARTS,
         "steps": nominal.steps(60),
     }

@@ -14,7 +14,7 @@ use crate::switched::{ExactLoop, Instability, Quantity, Reader, RippleFacts, Sta
 use std::cell::RefCell;
 
 /// Most frequencies of the curves: straight lines between so many are not seen under curves as broad as these.
-const MOST_POINTS: usize = 200;
+const MOST_POINTS: usize = 150;
 /// Margins are searched to this share of the switching frequency: just below half of it no reading is defined.
 const SEARCH_TO: f64 = 0.495;
 /// How far product and running loop may lie apart at the crossover before the product's own margins are looked for: as a ratio.

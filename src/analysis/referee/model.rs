@@ -1,6 +1,7 @@
 //! The switched systems of a design at a condition, closed and open, beside the averaged loop.
 
 use crate::analysis::analyse::loop_at;
+use crate::analysis::digital::refuse_switched;
 use crate::analysis::loop_model::{LoopModel, Shared};
 use crate::analysis::{Condition, LoopResult, Shown};
 use crate::compensator::FAST;
@@ -25,7 +26,12 @@ impl Model {
     /// # Errors
     /// A finding where the averaged or the switched model cannot be built.
     pub(super) fn new(design: &CheckedDesign, shown: Shown) -> Result<Self, Finding> {
+        refuse_switched(design)?;
         let shared = Shared::new(design)?;
+        if shared.digital.is_some() {
+            let message = "The exact switched model does not follow a difference equation; the averaged results solve its sampled loop.";
+            return Err(Finding::notice("compensator.amplifier", message));
+        }
         let condition = match shown {
             Shown::Levels(input, load) => Condition::at_levels(&design.stage, input, load),
             Shown::At { input_voltage, load_current } => Condition::what_if(input_voltage, load_current),

@@ -10,7 +10,7 @@ const FROM: f64 = 1e-4;
 /// … to this one: beyond half the switching frequency an averaged model says nothing, and there a reading is undefined.
 const TO: f64 = 0.495;
 /// Steps of the look; resonances are far wider.
-const STEPS: usize = 60;
+const STEPS: usize = 44;
 /// Halvings of the step in which it leaves: to a ten-thousandth of a frequency.
 const HALVINGS: usize = 10;
 

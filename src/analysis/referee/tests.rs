@@ -14,13 +14,23 @@ fn request(design: &CheckedDesign, frequencies_hz: &[f64]) -> Request {
     }
 }
 
+/// The result, where the exact side follows what a sample is made of; else the reason names what it does not follow.
+fn told<T>(file: &str, result: Result<T, crate::finding::Finding>) -> Option<T> {
+    let refused = |message: &str| message.contains("difference equation") || message.contains("Interleaved phases");
+    match result {
+        Ok(found) => Some(found),
+        Err(why) if refused(&why.message) => None,
+        Err(why) => panic!("{file}: {why}"),
+    }
+}
+
 /// Definitions, on every sample: at each crossover the curve reads 0 dB and its phase is the margin less 180°; at each phase crossing it
 /// reads the gain margin; the greatest multiplier decides; the reach lies where the two models part.
 #[test]
 fn margins_put_back_into_their_definitions() {
     for sample in sample::all() {
         let design = sample.design().expect("read").check().expect("usable");
-        let exact = referee(&design, &request(&design, &[1e3])).unwrap_or_else(|why| panic!("{}: {why}", sample.file));
+        let Some(exact) = told(sample.file, referee(&design, &request(&design, &[1e3]))) else { continue };
         for crossover in &exact.margins.crossovers {
             let there = referee(&design, &request(&design, &[crossover.frequency_hz])).expect("as before").curves;
             assert!(there.loop_db[0].abs() < 1e-6, "{}: {} dB", sample.file, there.loop_db[0]);
@@ -62,7 +72,7 @@ fn margins_put_back_into_their_definitions() {
 fn a_steady_period_rests_about_the_operating_point() {
     for sample in sample::all() {
         let design = sample.design().expect("read").check().expect("usable");
-        let steady = steady(&design, NOMINAL).unwrap_or_else(|why| panic!("{}: {why}", sample.file));
+        let Some(steady) = told(sample.file, steady(&design, NOMINAL)) else { continue };
         let averaged = analyse(&design, &request(&design, &[1e3])).shown.expect("as before");
         let point = &averaged.operating_point;
         let of = |begin: &str| steady.stress.iter().find(|stress| stress.name.starts_with(begin)).expect(begin);

@@ -1,5 +1,6 @@
 //! The switched closed loop of a design at a condition, with all its limits, and the state it starts from.
 
+use super::super::digital::refuse_switched;
 use super::super::loop_model::Shared;
 use super::super::result::Condition;
 use crate::compensator::{FAST, Limit, Limited};
@@ -40,6 +41,7 @@ impl Model {
     /// # Errors
     /// A finding for what cannot be solved.
     pub(super) fn new(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Self, Finding> {
+        refuse_switched(design)?;
         let stage = &design.stage;
         if stage.phases() > 1.0 {
             return Err(not_followed("over time, phases would have to be told apart; their steady period is exact"));
@@ -52,6 +54,13 @@ impl Model {
         let unsolved = |what: &str, why: &dyn std::fmt::Display| {
             Finding::problem(what, format!("The network with its limits cannot be solved: {why}."))
         };
+        if design.compensator.digital().is_some() {
+            return Err(Finding::problem(
+                "compensator.amplifier",
+                "A difference equation is not followed switch by switch.",
+            )
+            .with_hint("its exact sampled loop and its steps are in the check; a network of parts can be followed"));
+        }
         let outer = design.compensator.limited().map_err(|e| unsolved("compensator", &e))?;
         let inner = match &shared.law.mode {
             Mode::Average(average) => average.inner.limited().map_err(|e| unsolved("control.inner", &e))?.limits,

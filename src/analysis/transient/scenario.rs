@@ -100,3 +100,20 @@ pub(super) fn scenario<'a>(
     }
     scenario
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::design::sample;
+
+    #[test]
+    fn a_span_is_cut_at_what_is_followed_at_most() {
+        let design = sample::built_in().check().expect("sound");
+        let request = |span_s| TransientRequest { event: TransientEvent::LoadStep, columns: 100, span_s };
+        let asked = span(&design, &request(Some(1e9)), None);
+        assert!(asked.cut && (asked.to_s * design.stage.switching_frequency - MOST_PERIODS).abs() < 1e-3);
+        let short = span(&design, &request(Some(1e-12)), Some(1e-3));
+        assert!(!short.cut && short.to_s > 0.0 && short.ahead_s > 0.0);
+        assert!((span(&design, &request(None), Some(1e-3)).to_s - 1e-3).abs() < 1e-15);
+    }
+}

@@ -9,17 +9,17 @@ use crate::quantity::{Choices, Values};
 use nalgebra::DVector;
 
 /// A closed loop at its nominal condition.
-struct Case {
-    system: SwitchedSystem,
+pub(super) struct Case {
+    pub(super) system: SwitchedSystem,
     outer: Limited,
     inner: Option<Limited>,
-    point: OperatingPoint,
+    pub(super) point: OperatingPoint,
     reference: f64,
     nothing: (usize, f64),
 }
 
 impl Case {
-    fn new(topology: &str, chosen: &[(&str, &str)], entries: &[(&str, f64)]) -> Self {
+    pub(super) fn new(topology: &str, chosen: &[(&str, &str)], entries: &[(&str, f64)]) -> Self {
         let (mut values, mut choices) = (Values::new(), Choices::new());
         choices.set("stage.topology", topology);
         for (path, key) in chosen {
@@ -54,7 +54,7 @@ impl Case {
         Case { system, outer, inner, point, reference: compensator.reference, nothing }
     }
 
-    fn scenario(&self, periods: usize) -> Scenario<'_> {
+    pub(super) fn scenario(&self, periods: usize) -> Scenario<'_> {
         let places = &self.system.places;
         Scenario {
             amplifiers: Amplifiers {
