@@ -27,7 +27,7 @@ pub fn steady(design: &CheckedDesign, shown: Shown) -> Result<Steady, Finding> {
     let ripple = orbit.output_ripple()?;
     Ok(Steady {
         condition: model.condition.clone(),
-        period_s: orbit.system.period_s,
+        period_s: orbit.system.switching_period_s(),
         instants: instants(&orbit, &waveforms),
         stress: stress(&orbit.system, &orbit.figures()?),
         ripple_v: ripple.map_or([f64::NAN; 3], |ripple| [ripple.bank, ripple.capacitive, ripple.resistive]),
@@ -42,7 +42,10 @@ fn instants(orbit: &Orbit, waveforms: &SteadyWaveforms) -> Vec<(f64, &'static st
     let switches = |closes: bool| if closes { "switch closes" } else { "switch opens" };
     let mut found = vec![(0.0, switches(conducts(0)))];
     let delayed = orbit.phases.iter().any(|phase| phase.end == Event::Switch && phase.length_s > 0.0);
-    for (place, (at_s, event)) in waveforms.events.iter().enumerate() {
+    // Of several phases the one that is shown opens in one share of the period.
+    let shown = orbit.system.interleaving.as_ref().map_or(0, |interleaving| interleaving.always);
+    let events = waveforms.events.iter().skip(shown * orbit.phases.len()).take(orbit.phases.len());
+    for (place, (at_s, event)) in events.enumerate() {
         let name = match event {
             // Without a delay the comparator's trip is the switch's own instant.
             Event::Compare if delayed => "comparator trips",
