@@ -51,6 +51,13 @@ impl Model {
         let unsolved = |what: &str, why: &dyn std::fmt::Display| {
             Finding::problem(what, format!("The network with its limits cannot be solved: {why}."))
         };
+        if design.compensator.digital().is_some() {
+            return Err(Finding::problem(
+                "compensator.amplifier",
+                "A difference equation is not followed switch by switch.",
+            )
+            .with_hint("its exact sampled loop and its steps are in the check; a network of parts can be followed"));
+        }
         let outer = design.compensator.limited().map_err(|e| unsolved("compensator", &e))?;
         let inner = match &shared.law.mode {
             Mode::Average(average) => average.inner.limited().map_err(|e| unsolved("control.inner", &e))?.limits,

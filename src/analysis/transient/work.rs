@@ -105,6 +105,7 @@ fn follow(
     let start = match request.event {
         TransientEvent::StartUp => model.system.at_rest(&model.at_rest(design.events.prebias_v)),
         _ => steady(&model, &averaged.0.averaged.operating_point)
+            .filter(|start| holds(design, &model, request, at, start))
             .unwrap_or_else(|| approached(design, &model, request, at, cancel)),
     };
     let scenario = Scenario { times_s: times_s.to_vec(), ..scenario(design, &model, request, at, span, start) };
@@ -196,6 +197,20 @@ const AT_REST: f64 = 1e-10;
 fn steady(model: &Model, point: &OperatingPoint) -> Option<(DVector<f64>, Configuration)> {
     let orbit = Orbit::find(&model.system, Start::of(point), Goal::AsDriven).ok()?;
     Some((orbit.starts.first()?.clone(), orbit.phases.last()?.configuration))
+}
+
+/// Whether no limit acts in the steady period.
+fn holds(
+    design: &CheckedDesign,
+    model: &Model,
+    request: &TransientRequest,
+    at: (f64, f64),
+    start: &(DVector<f64>, Configuration),
+) -> bool {
+    let still = TransientRequest { columns: 1, ..*request };
+    let span = Span { to_s: 0.0, ahead_s: 2.0 * model.system.period_s, cut: false };
+    let scenario = scenario(design, model, &still, at, span, start.clone());
+    simulate(&model.system, &scenario, &Cancel::new(), &Progress::new(), &mut |_| {}).limited.is_empty()
 }
 
 /// State and configuration at a clock that the converter comes to by itself: where a limit keeps it from the steady period, or where
