@@ -192,13 +192,18 @@ impl Comparator {
         let seconds = |time: f64| print(time, Unit::Second);
         let near = 1e-9 * period;
         let problem = |path: &str, message: String| Some(Finding::problem(path, message));
+        let skipping = |path: &str, message: String| {
+            problem(path, message).map(|found| {
+                found.with_hint("shorten it, lower the switching frequency, or raise the least load; the transient shows the pulses skipped")
+            })
+        };
         if trip < -near || (trip < self.blanking_s - near && self.edge == Edge::Peak) {
             let message = format!(
                 "The on-time of {} is within blanking and delay, {}: the converter skips periods.",
                 seconds(on_time),
                 seconds(self.blanking_s + self.delay_s)
             );
-            return problem(if self.blanking_s > 0.0 { "control.blanking" } else { "control.delay" }, message);
+            return skipping(if self.blanking_s > 0.0 { "control.blanking" } else { "control.delay" }, message);
         }
         if on_time < self.on_time_least_s - near {
             let message = format!(
@@ -206,7 +211,7 @@ impl Comparator {
                 seconds(on_time),
                 seconds(self.on_time_least_s)
             );
-            return problem("control.on-time.least", message);
+            return skipping("control.on-time.least", message);
         }
         let duty = on_time / period;
         for (path, limit, passed) in [

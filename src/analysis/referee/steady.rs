@@ -10,7 +10,7 @@ use crate::switched::{Event, Figures, Goal, Orbit, SteadyWaveforms, SwitchedSyst
 
 /// Samples of a period: about as many as its plot has columns.
 const SAMPLES: usize = 400;
-/// A mean below this share of the greatest value is rounding.
+/// A value below this share of the greatest value is rounding.
 const ROUNDING: f64 = 1e-9;
 /// Names of the output's two voltages, where a second stage parts them.
 const LOAD: &str = "load";
@@ -113,15 +113,15 @@ fn stress(system: &SwitchedSystem, figures: &[Figures]) -> Vec<Stress> {
     let voltages = [&places.switch_voltage, &places.rectifier_voltage, &places.load_voltage, &places.control_voltage];
     let row = |row: &usize, unit: Unit| {
         let (probe, figures) = (system.probes.get(*row)?, figures.get(*row)?);
-        // A capacitor's mean current is nothing but rounding.
-        let average = if figures.mean.abs() < ROUNDING * figures.peak() { 0.0 } else { figures.mean };
+        // A capacitor's mean current is nothing but rounding, as is what is left of a current at rest.
+        let rounded = |value: f64| if value.abs() < ROUNDING * figures.peak() { 0.0 } else { value };
         Some(Stress {
             name: probe.name.clone(),
             unit,
-            peak: figures.greatest,
-            least: figures.least,
+            peak: rounded(figures.greatest),
+            least: rounded(figures.least),
             rms: (unit == Unit::Ampere).then_some(figures.rms),
-            average,
+            average: rounded(figures.mean),
         })
     };
     let currents = currents.map(|place| row(place, Unit::Ampere));
