@@ -104,8 +104,8 @@ fn choice_row_ui(ui: &mut Ui, choice: &'static Choice, desk: &mut Desk<'_>) {
     row_ui(ui, (choice.name, choice.help), CHOICE_LABEL_SHARE, |ui, width| choice_ui(ui, choice, width, desk));
 }
 
-/// Greatest height of a list of options before it scrolls.
-pub(super) const LIST_HEIGHT: f32 = 360.0;
+/// Most of the window's height that a list of options takes before it scrolls.
+pub(super) const LIST_SHARE: f32 = 0.7;
 
 /// One option in a list that may scroll: the keyboard's focus is brought into sight. Returns whether it was pressed.
 pub(super) fn option_ui(ui: &mut Ui, option: &ChoiceOption, chosen: bool) -> bool {
@@ -124,8 +124,8 @@ pub(super) fn choice_ui(ui: &mut Ui, choice: &'static Choice, width: f32, desk: 
     let response = egui::ComboBox::from_id_salt(choice.path)
         .selected_text(text)
         .width(width)
+        .height(ui.ctx().content_rect().height() * LIST_SHARE)
         .truncate()
-        .height(LIST_HEIGHT)
         .show_ui(ui, |ui| {
             for option in choice.options {
                 if option_ui(ui, option, option.key == key) && option.key != key {

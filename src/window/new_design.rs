@@ -10,7 +10,7 @@ use eframe::egui::{
 };
 
 use super::command::Command;
-use super::form::{LIST_HEIGHT, option_ui};
+use super::form::{LIST_SHARE, option_ui};
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{bar, findings, form};
@@ -226,7 +226,7 @@ fn topology_ui(ui: &mut Ui, form: &mut NewDesign) {
             let response = ComboBox::from_id_salt("new topology")
                 .selected_text(text)
                 .width(190.0)
-                .height(LIST_HEIGHT)
+                .height(ui.ctx().content_rect().height() * LIST_SHARE)
                 .show_ui(ui, |ui| {
                     for option in choice.options {
                         let chosen = option.key == form.topology;
