@@ -413,7 +413,7 @@ fn without_a_display_the_program_says_what_is_missing() {
 fn the_documented_fields_are_there() {
     let readme = fs::read_to_string(Path::new(env!("CARGO_MANIFEST_DIR")).join("README.md")).expect("the README");
     let (_, section) = readme.split_once("### The JSON").expect("a section on the JSON");
-    let (section, _) = section.split_once("\n### ").expect("a next section");
+    let (section, _) = section.split_once("\n##").expect("a next section");
     // Findings and requirements, an inner loop, filters, phases, isolated feedback, a difference equation: together they report every field.
     let samples = [
         "canal-lock.ron",

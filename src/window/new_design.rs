@@ -222,10 +222,16 @@ fn topology_ui(ui: &mut Ui, form: &mut NewDesign) {
         ui.label(RichText::new(choice.name).color(palette(ui).weak)).on_hover_text(choice.help);
         ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
             let text = RichText::new(chosen).color(palette(ui).accent);
-            let response = ComboBox::from_id_salt("new topology").selected_text(text).width(190.0).show_ui(ui, |ui| {
+            let list = ComboBox::from_id_salt("new topology").selected_text(text).width(190.0);
+            let height = ui.ctx().content_rect().height() * form::LIST_SHARE;
+            let response = list.height(height).show_ui(ui, |ui| {
                 for option in choice.options {
                     let chosen = option.key == form.topology;
-                    if ui.selectable_label(chosen, option.name).on_hover_text(option.help).clicked() && !chosen {
+                    let response = ui.selectable_label(chosen, option.name).on_hover_text(option.help);
+                    if response.gained_focus() {
+                        response.scroll_to_me(None);
+                    }
+                    if response.clicked() && !chosen {
                         wanted = Some(option.key);
                     }
                 }
