@@ -40,7 +40,7 @@ fn nothing_flows_and_the_output_is_empty() {
         ["0.123", "5m", "30m"],
     ];
     let mut rested = 0;
-    for topology in converter::all() {
+    for topology in converter::registry() {
         for volts in [["28.718455470916588", "55.13943450415985"], ["36", "12"], ["12", "5"], ["10", "36"]] {
             for ohms in ohms {
                 let Ok(design) = stage(topology.key, ohms, volts).check() else { continue };
