@@ -19,6 +19,9 @@ mod result;
 mod scenario;
 mod work;
 
+#[cfg(test)]
+mod rest_tests;
+
 pub use event::{MOST_PERIODS, TransientEvent, TransientRequest};
 pub use result::{Transient, TransientFigures};
 pub use work::{transient, transient_at};

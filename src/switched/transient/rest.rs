@@ -21,6 +21,9 @@ pub struct AtRest<'a> {
 /// Singular values below this share of the greatest are none.
 const SINGULAR: f64 = 1e-11;
 
+/// Rates below this share of those with a switch closed are rounding.
+const ROUNDING: f64 = 1e-9;
+
 /// Solution of least size of a·x = b; zero where there is none.
 fn solve(a: &DMatrix<f64>, b: &DVector<f64>) -> DVector<f64> {
     let n = a.ncols();
@@ -58,7 +61,15 @@ impl SwitchedSystem {
         let outer = place("compensator").unwrap_or(self.order());
         let inner = place("inner compensator").unwrap_or(outer);
         let mut x = DVector::zeros(self.order());
-        let drive = &piece.b * &u;
+        let mut drive = &piece.b * &u;
+        // What a state at rest has for a rate is rounding, and told apart by its rates with a switch closed.
+        for row in 0..inner {
+            let usual = self.pieces.iter().map(|piece| piece.a.row(row).amax()).fold(0.0, f64::max);
+            if a.row(row).amax() <= ROUNDING * usual {
+                a.row_mut(row).fill(0.0);
+                drive[row] = 0.0;
+            }
+        }
         let stage = solve(&a.view((0, 0), (inner, inner)).into_owned(), &-drive.rows(0, inner).into_owned());
         x.rows_mut(0, inner).copy_from(&stage);
         x = &self.rest_projector * x;
