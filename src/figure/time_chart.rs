@@ -230,18 +230,22 @@ fn row(figure: &mut Figure, panel: &Panel, at: Point, right: f64) {
     let [mut x, y] = at;
     text(figure, at, &panel.name, (Role::Ink, SMALL, Weight::Bold), (Align::Start, Align::Middle));
     x += (LETTER + 0.4) * panel.name.chars().count() as f64 + 16.0;
+    // Where they have no room at their ease, they stand closer.
+    let wanted = |trace: &Trace| SAMPLE + 20.0 + LETTER * trace.name.chars().count() as f64;
+    let ease = x + panel.traces.iter().filter(|trace| !trace.name.is_empty()).map(wanted).sum::<f64>() <= right;
+    let (sample, letter, gap) = if ease { (SAMPLE, LETTER, 14.0) } else { (12.0, 5.5, 7.0) };
     let (main, beside): (Vec<&Trace>, Vec<&Trace>) =
         panel.traces.iter().rev().filter(|trace| !trace.name.is_empty()).partition(|trace| trace.look.main);
     for trace in main.into_iter().chain(beside) {
-        let width = SAMPLE + 6.0 + LETTER * trace.name.chars().count() as f64;
+        let width = sample + 5.0 + letter * trace.name.chars().count() as f64;
         if x + width > right {
             return;
         }
         let pen = trace.look.pen();
-        line(figure, vec![[x, y], [x + SAMPLE, y]], pen.role, (pen.width, pen.dash));
+        line(figure, vec![[x, y], [x + sample, y]], pen.role, (pen.width, pen.dash));
         let words = (Role::Quiet, SMALL, Weight::Regular);
-        text(figure, [x + SAMPLE + 6.0, y], &trace.name, words, (Align::Start, Align::Middle));
-        x += width + 14.0;
+        text(figure, [x + sample + 5.0, y], &trace.name, words, (Align::Start, Align::Middle));
+        x += width + gap;
     }
 }
 
