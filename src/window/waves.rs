@@ -74,7 +74,8 @@ fn header_ui(ui: &mut Ui) {
     let palette = palette(ui);
     let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), ROW), Sense::hover());
     let painter = ui.painter();
-    painter.text(rect.left_center(), Align2::LEFT_CENTER, "What the parts bear", theme::strong(12.5), palette.ink);
+    let title = if rect.width() < NARROW { "Stress" } else { "What the parts bear" };
+    painter.text(rect.left_center(), Align2::LEFT_CENTER, title, theme::strong(12.5), palette.ink);
     for (name, share) in COLUMNS {
         let at = pos2(rect.left() + rect.width() * share, rect.center().y);
         painter.text(at, Align2::RIGHT_CENTER, name, theme::small(), palette.weak);
