@@ -30,7 +30,7 @@ const STRAIGHT: f64 = 1.0;
 #[derive(Clone, Debug, PartialEq)]
 pub struct AverageCurrent {
     /// Sensed volts per ampere of the switch's current while it conducts, or of the switched one where it was
-    /// [`referred`](Self::referred) to that [V/A].
+    /// referred to that [V/A].
     pub ohms: f64,
     /// Time constant of the sense filter [s]; 0 for none.
     pub filter_s: f64,

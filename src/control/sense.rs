@@ -25,7 +25,7 @@ pub enum Slope {
 /// The current sense with usable values.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct CurrentSense {
-    /// Control voltage per ampere of the switch's current, or of the switched one where it was [`referred`](Self::referred) to that
+    /// Control voltage per ampere of the switch's current, or of the switched one where it was referred to that
     /// [V/A].
     pub ohms: f64,
     /// Time constant of the sense filter [s]; 0 for none.
