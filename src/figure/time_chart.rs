@@ -153,19 +153,22 @@ impl TimeChart {
         let top = ABOVE.0 + if headed { ABOVE.1 } else { 0.0 };
         let count = self.panels.len();
         let shares: f64 = self.panels.iter().map(|panel| panel.share).sum();
-        let free = (size[1] - top - AROUND.2 - ROW * count as f64).max(1.0);
+        let heads: Vec<Head<'_>> = self.panels.iter().map(|panel| Head::new(panel, size[0] - AROUND.1)).collect();
+        let words: f64 = heads.iter().map(Head::height).sum();
+        let free = (size[1] - top - AROUND.2 - words).max(1.0);
         let mut frames: Vec<Frame> = Vec::with_capacity(count);
         let mut y = top;
-        for (k, panel) in self.panels.iter().enumerate() {
+        for (k, (panel, head)) in self.panels.iter().zip(&heads).enumerate() {
+            let above = head.height();
             let height = free * panel.share / shares.max(1e-9);
-            let corners = [[AROUND.0, y + ROW], [size[0] - AROUND.1, y + ROW + height]];
+            let corners = [[AROUND.0, y + above], [size[0] - AROUND.1, y + above + height]];
             let (least, greatest) = panel.range().unwrap_or((0.0, 1.0));
             let across = Span::Linear(self.span_s.0, self.span_s.1);
             let chart = Chart::new(corners, across, Span::Linear(least, greatest));
-            row(&mut figure, panel, [AROUND.0, y + ROW / 2.0], size[0] - AROUND.1);
+            head.draw(&mut figure, panel, y);
             self.panel(&mut figure, panel, &chart, k + 1 == count);
             frames.push(Frame { corners, x: chart.x, y: chart.y });
-            y += ROW + height;
+            y += above + height;
         }
         self.instants(&mut figure, &frames, top - 4.0);
         (figure, frames)
@@ -225,23 +228,53 @@ impl TimeChart {
     }
 }
 
-/// The row above a frame: its name, then the lines with theirs as far as there is room.
-fn row(figure: &mut Figure, panel: &Panel, at: Point, right: f64) {
-    let [mut x, y] = at;
-    text(figure, at, &panel.name, (Role::Ink, SMALL, Weight::Bold), (Align::Start, Align::Middle));
-    x += (LETTER + 0.4) * panel.name.chars().count() as f64 + 16.0;
-    let (main, beside): (Vec<&Trace>, Vec<&Trace>) =
-        panel.traces.iter().rev().filter(|trace| !trace.name.is_empty()).partition(|trace| trace.look.main);
-    for trace in main.into_iter().chain(beside) {
-        let width = SAMPLE + 6.0 + LETTER * trace.name.chars().count() as f64;
-        if x + width > right {
-            return;
+/// What stands above a frame: its name and the lines with theirs, in as many rows as they need.
+struct Head<'a> {
+    /// Where each begins across [points], and in which row.
+    names: Vec<(f64, usize, &'a Trace)>,
+    /// Length of the pieces of line [points].
+    sample: f64,
+    rows: usize,
+}
+
+impl<'a> Head<'a> {
+    fn new(panel: &'a Panel, right: f64) -> Self {
+        let left = AROUND.0;
+        let (main, beside): (Vec<&Trace>, Vec<&Trace>) =
+            panel.traces.iter().rev().filter(|trace| !trace.name.is_empty()).partition(|trace| trace.look.main);
+        let named: Vec<&Trace> = main.into_iter().chain(beside).collect();
+        let start = (LETTER + 0.4).mul_add(panel.name.chars().count() as f64, left + 16.0);
+        // Where they have no room at their ease, they stand closer; where that is not enough, in further rows.
+        let wanted = |trace: &&Trace| SAMPLE + 20.0 + LETTER * trace.name.chars().count() as f64;
+        let ease = start + named.iter().map(wanted).sum::<f64>() <= right;
+        let (sample, letter, gap) = if ease { (SAMPLE, LETTER, 14.0) } else { (12.0, 5.5, 7.0) };
+        let (mut x, mut row) = (start, 0);
+        let mut names = Vec::with_capacity(named.len());
+        for trace in named {
+            let width = letter.mul_add(trace.name.chars().count() as f64, sample + 5.0);
+            if x + width > right && x > left {
+                (x, row) = (left, row + 1);
+            }
+            names.push((x, row, trace));
+            x += width + gap;
         }
-        let pen = trace.look.pen();
-        line(figure, vec![[x, y], [x + SAMPLE, y]], pen.role, (pen.width, pen.dash));
-        let words = (Role::Quiet, SMALL, Weight::Regular);
-        text(figure, [x + SAMPLE + 6.0, y], &trace.name, words, (Align::Start, Align::Middle));
-        x += width + 14.0;
+        Head { names, sample, rows: row + 1 }
+    }
+
+    fn height(&self) -> f64 {
+        ROW * self.rows as f64
+    }
+
+    fn draw(&self, figure: &mut Figure, panel: &Panel, top: f64) {
+        let middle = |row: usize| ROW.mul_add(row as f64 + 0.5, top);
+        let at = [AROUND.0, middle(0)];
+        text(figure, at, &panel.name, (Role::Ink, SMALL, Weight::Bold), (Align::Start, Align::Middle));
+        for (x, row, trace) in &self.names {
+            let (pen, y) = (trace.look.pen(), middle(*row));
+            line(figure, vec![[*x, y], [x + self.sample, y]], pen.role, (pen.width, pen.dash));
+            let words = (Role::Quiet, SMALL, Weight::Regular);
+            text(figure, [x + self.sample + 5.0, y], &trace.name, words, (Align::Start, Align::Middle));
+        }
     }
 }
 

@@ -9,7 +9,7 @@ use crate::switched::{self, Waveforms};
 
 /// The panels: name, unit, height against the others, and the signals in it by how their names begin, the one read first first.
 const PANELS: [(&str, Unit, f64, &[&str]); 4] = [
-    ("Output voltage", Unit::Volt, 1.7, &["load voltage", "output voltage"]),
+    ("Output", Unit::Volt, 1.7, &["load voltage", "output voltage"]),
     ("Currents", Unit::Ampere, 1.0, &["inductor current", "load current"]),
     ("Control voltage", Unit::Volt, 1.0, &["control voltage"]),
     ("Input voltage", Unit::Volt, 0.5, &["input voltage"]),
@@ -36,7 +36,7 @@ pub fn transient(title: &str, condition: &str, waveforms: &Waveforms, prediction
             "cycle by cycle".clone_into(&mut simulated.name);
         }
         output.traces.push(Trace {
-            name: "small-signal prediction".to_owned(),
+            name: "predicted".to_owned(),
             times_s: step.times_s.clone(),
             values: step.output_v.clone(),
             reach: Vec::new(),

@@ -13,10 +13,12 @@ use crate::quantity;
 const LEAST_CHART: f32 = 300.0;
 /// Least height of the page before it scrolls [points].
 pub(super) const LEAST: f32 = 480.0;
+/// Width of the table below which its numbers are short [points].
+const NARROW: f32 = 420.0;
 /// Height of a row of the table [points].
 const ROW: f32 = 18.0;
 /// Where the columns of numbers end, as shares of the table's width: peak, least, RMS, average.
-const COLUMNS: [(&str, f32); 4] = [("greatest", 0.55), ("least", 0.7), ("RMS", 0.85), ("average", 1.0)];
+const COLUMNS: [(&str, f32); 4] = [("greatest", 0.55), ("least", 0.7), ("RMS", 0.85), ("mean", 1.0)];
 
 /// Draws waveforms and table into a rectangle.
 pub(super) fn waves_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {
@@ -72,7 +74,8 @@ fn header_ui(ui: &mut Ui) {
     let palette = palette(ui);
     let (rect, _) = ui.allocate_exact_size(vec2(ui.available_width(), ROW), Sense::hover());
     let painter = ui.painter();
-    painter.text(rect.left_center(), Align2::LEFT_CENTER, "What the parts bear", theme::strong(12.5), palette.ink);
+    let title = if rect.width() < NARROW { "Stress" } else { "What the parts bear" };
+    painter.text(rect.left_center(), Align2::LEFT_CENTER, title, theme::strong(12.5), palette.ink);
     for (name, share) in COLUMNS {
         let at = pos2(rect.left() + rect.width() * share, rect.center().y);
         painter.text(at, Align2::RIGHT_CENTER, name, theme::small(), palette.weak);
@@ -82,14 +85,17 @@ fn header_ui(ui: &mut Ui) {
 fn row_ui(ui: &mut Ui, stress: &Stress) {
     let palette = palette(ui);
     let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), ROW), Sense::hover());
-    let print = |value: f64| quantity::print_digits(value, stress.unit, 4);
+    // Three digits are enough where the columns are narrow.
+    let digits = if rect.width() < NARROW { 3 } else { 4 };
+    let font = if rect.width() < NARROW { theme::small() } else { theme::body() };
+    let print = |value: f64| quantity::print_digits(value, stress.unit, digits);
     let values =
         [print(stress.peak), print(stress.least), stress.rms.map_or(String::new(), print), print(stress.average)];
     let painter = ui.painter().with_clip_rect(rect);
     painter.text(rect.left_center(), Align2::LEFT_CENTER, &stress.name, theme::small(), palette.weak);
     for ((_, share), value) in COLUMNS.iter().zip(&values) {
         let at = pos2(rect.left() + rect.width() * share, rect.center().y);
-        painter.text(at, Align2::RIGHT_CENTER, value, theme::body(), palette.ink);
+        painter.text(at, Align2::RIGHT_CENTER, value, font.clone(), palette.ink);
     }
     let words = COLUMNS.iter().zip(&values).filter(|(_, value)| !value.is_empty());
     let words: Vec<String> = words.map(|((name, _), value)| format!("{name} {value}")).collect();
