@@ -84,7 +84,12 @@ impl Mode {
                 continue;
             }
             let count = self.flow.series(z, span, moving, &mut scratch.terms);
-            let ended = self.root(z, span, count, active, ramp, elapsed, scratch);
+            // A limiter's polynomial is made where its end is out, or something is near.
+            let often = if near { active } else { active & !self.rare };
+            let mut ended = self.root(z, span, count, often, ramp, elapsed, scratch);
+            if ended.is_none() && often != active && self.out_after(z, span, count, active & self.rare, scratch) {
+                ended = self.root(z, span, count, active, ramp, elapsed, scratch);
+            }
             let share = ended.map_or(1.0, |(_, share)| share);
             self.sum(z, count, share, span, scratch);
             elapsed += span * share;
@@ -182,6 +187,23 @@ impl Mode {
             }
         }
         first
+    }
+
+    /// Whether one of some signals is out at the end of a short span.
+    fn out_after(&self, z: &[f64], span: f64, count: usize, which: u32, scratch: &mut Scratch) -> bool {
+        let (n, m, stride) = (self.flow.n, self.flow.m, self.flow.stride);
+        let Scratch { out, terms, .. } = scratch;
+        out.fill(0.0);
+        for term in terms[..count * stride].chunks_exact(stride) {
+            for (sum, value) in out.iter_mut().zip(term) {
+                *sum += value;
+            }
+        }
+        let (signals, slopes) = (&z[n..n + m], &z[n + m..]);
+        self.watched(which, Ramp::default()).any(|(_, watch, _)| {
+            let later = dot(&watch.row[n..], signals) + dot(&watch.row[n..], slopes) * span;
+            watch.out(dot(&watch.row[..n], &out[..n]) + later)
+        })
     }
 
     fn sum(&self, z: &mut [f64], count: usize, share: f64, span: f64, scratch: &mut Scratch) {

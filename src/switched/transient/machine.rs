@@ -323,7 +323,9 @@ impl Machine {
             self.before.copy_from_slice(&self.z);
             let Reached { elapsed, ended_by } =
                 mode.advance(&mut self.z, until - self.since, active, ramp, &mut self.scratch);
-            self.samples.between(mode, &self.before, now, elapsed);
+            if self.periods % self.samples.every == 0 {
+                self.samples.between(mode, &self.before, now, elapsed);
+            }
             let role = ended_by.and_then(|k| mode.watches.get(k)).map(|watch| watch.role);
             if self.configuration == Configuration::Conducting {
                 self.on_s += elapsed;
