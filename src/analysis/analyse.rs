@@ -309,11 +309,13 @@ fn refuse_out_of_limits(design: &CheckedDesign, model: &LoopModel, condition: &S
         return Ok(());
     }
     let needed = print_digits(duty, Unit::One, 3);
-    let reason = format!("a duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}");
+    // A limit that a proposal or a file computed is not told to its last digit.
+    let given = [least, greatest].map(|limit| print_digits(limit, Unit::One, 3)).join(" to ");
+    let reason = format!("a duty ratio of {needed} is needed, and the modulator gives {given}");
     if let Some(between) = design.stage.between_regions(condition, &reason) {
         return Err(between);
     }
-    let message = format!("A duty ratio of {needed} is needed, and the modulator gives {least} to {greatest}.");
+    let message = format!("A duty ratio of {needed} is needed, and the modulator gives {given}.");
     let resting = model.averaged.operating_point.conduction == Conduction::Discontinuous;
     Err(if duty > greatest {
         Finding::problem("control.duty.greatest", message).with_hint("widen the duty limits or the input range")

@@ -80,6 +80,7 @@ pub(super) struct Winding {
     pub(super) name: &'static str,
     pub(super) loss: &'static str,
     pub(super) part: PartId,
+    pub(super) ends: (Node, Node),
     pub(super) ohms: Slot,
 }
 

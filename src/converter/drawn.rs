@@ -96,7 +96,7 @@ impl Drawn {
 }
 
 /// Names of the states kept of all, by the matrix that gives all from them.
-fn kept_names(all: &[String], basis: &DMatrix<f64>) -> Vec<String> {
+pub(super) fn kept_names(all: &[String], basis: &DMatrix<f64>) -> Vec<String> {
     let unit = |column: usize, row: usize| {
         (0..basis.ncols()).all(|k| (basis[(row, k)] - f64::from(u8::from(k == column))).abs() < f64::EPSILON)
     };

@@ -48,7 +48,7 @@ impl StageDrawing {
         let (henries, ohms) = (self.netlist.slot(inductance), self.netlist.slot(resistance));
         let part = self.netlist.inductor(name, from, inner, henries);
         self.netlist.resistor(loss, inner, to, ohms);
-        self.windings.push(Winding { name, loss, part, ohms });
+        self.windings.push(Winding { name, loss, part, ends: (from, to), ohms });
         part
     }
 

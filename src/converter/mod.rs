@@ -21,7 +21,9 @@ mod filter_tests;
 mod filter_values;
 mod filters;
 mod further;
+mod interleaved;
 mod landmark;
+mod load;
 #[cfg(test)]
 mod made_up;
 mod magnetics;
@@ -56,6 +58,8 @@ pub use filter_damping::OptimumDamping;
 pub use filter_values::{InputFilter, SecondStage};
 pub use filters::Damping;
 pub use further::{Further, FurtherValue};
+pub use interleaved::Interleaved;
+pub(crate) use interleaved::not_followed;
 pub use landmark::{BANK, Form, Landmark, RestingForms, Textbook};
 pub use operating_point::{Conduction, CurrentFigures, InductorFigures, Loss, OperatingPoint, SwitchedCurrent};
 pub use registry::{find, pulse_frequency, registry};

@@ -3,11 +3,13 @@
 use super::bank::{Branch, branch_value};
 use super::buck_derived::{COMMUTATION, MAGNETISING, commutation_resistance};
 use super::cell::SwitchedCell;
-use super::drawing::{DIODE_DROP, INPUT_VOLTAGE, LOAD_CURRENT, Options};
+use super::drawing::{INPUT_VOLTAGE, LOAD_CURRENT, Options};
 use super::drawn::{Drawn, Equations};
 use super::entries::{BRANCHES, applies, branch_count};
 use super::filter_values::{InputFilter, SecondStage};
 use super::filters::network_impedance;
+use super::interleaved::PhasesDrawn;
+use super::load::Loaded;
 use super::phases;
 use super::registry::find;
 use super::rows::Rows;
@@ -119,6 +121,8 @@ pub struct Stage {
     pub inductance: f64,
     /// How many equal phases there are, a whole number.
     pub(super) phases: f64,
+    /// The stage with every phase drawn, where there are several.
+    pub(super) phases_drawn: Option<PhasesDrawn>,
     /// Turns ratio of the transformer, second to first; 1 without one.
     pub ratio: f64,
     /// Magnetising inductance of a transformer that stores nothing, at its primary [H]; 0 without one.
@@ -263,6 +267,7 @@ impl Stage {
             switching_frequency: get("stage.switching-frequency") * f64::from(topology.pulses),
             inductance: get("stage.inductor.inductance"),
             phases,
+            phases_drawn: PhasesDrawn::new(topology, options, phases),
             ratio: if applies(RATIO.path, choices) { get(RATIO.path) } else { 1.0 },
             magnetising: get(MAGNETISING.path),
             duty_limit: (topology.duty_limit)(&get),
@@ -389,39 +394,18 @@ impl Stage {
         condition: &StageCondition,
         commutation: Commutation,
     ) -> Result<Intervals, CircuitError> {
-        let resistance = self.load_voltage(condition) / condition.load_current;
-        let mut inputs = DVector::zeros(3);
-        inputs[INPUT_VOLTAGE] = condition.input_voltage;
-        inputs[DIODE_DROP] = self.diode_drop;
+        let Loaded { ohms, inputs, to_resistor } = self.loaded(condition);
         let mut values = drawn.values.clone();
         if let Some(slot) = drawn.slot(COMMUTATION).filter(|_| commutation == Commutation::FromRest) {
             values[slot] = 0.0;
         }
-        let load_slot_value = match self.load {
-            LoadKind::Resistor => resistance,
-            LoadKind::Current => {
-                inputs[LOAD_CURRENT] = condition.load_current;
-                0.0
-            }
-            // The tangent at V, I: conductance −I/V beside a source of 2·I.
-            LoadKind::Power => {
-                inputs[LOAD_CURRENT] = 2.0 * condition.load_current;
-                -resistance
-            }
-        };
         if let Some(slot) = drawn.load_slot {
-            values[slot] = load_slot_value;
+            values[slot] = ohms;
         }
         let sets = self.topology.sets(condition);
         let Equations { on, off, mut cell } = drawn.equations(sets, &values)?;
         // What is sensed is the current of one phase.
         cell.sense /= self.phases;
-        // Of the load's own −I/V, 0 or I/V.
-        let to_resistor = match self.load {
-            LoadKind::Resistor => 0.0,
-            LoadKind::Current => resistance.recip(),
-            LoadKind::Power => 2.0 * resistance.recip(),
-        };
         let to_resistor = (drawn.rows.load_voltage, to_resistor);
         let natural = drawn.rows.primary_voltage.filter(|_| self.magnetising > 0.0);
         let natural = natural.map(|row| (row, self.topology.magnetising_ramp / (self.magnetising * cell.sense)));

@@ -4,7 +4,7 @@
 //! something only on the constraint that ties the states together: put the states there with `rest` as that interval begins.
 //! The bank's series inductance is left out: an edge into it would be an impulse.
 
-use super::phases::PHASES;
+use super::interleaved::Interleaved;
 use super::rows::{Rows, SwitchRow};
 use super::signals::{INPUT_VOLTAGE, LOAD_CURRENT};
 use super::stage::{Intervals, Stage, StageCondition, circuit_finding};
@@ -13,7 +13,7 @@ use crate::finding::Finding;
 use nalgebra::{DMatrix, DVector, RowDVector};
 
 /// Name of the input that is the rectifier's drop.
-const DIODE_DROP: &str = "diode drop";
+pub(super) const DIODE_DROP: &str = "diode drop";
 
 /// Rows of `C` and `D` by what they answer with.
 #[derive(Clone, Debug, PartialEq)]
@@ -80,6 +80,8 @@ pub struct SwitchingEquations {
     pub rows: SwitchingRows,
     /// Whether the rectifier stops reverse current.
     pub blocks: bool,
+    /// How several phases hang together: the equations are then those of a share of the period.
+    pub interleaved: Option<Interleaved>,
 }
 
 impl Stage {
@@ -94,13 +96,10 @@ impl Stage {
     /// The equations of the switching intervals at a condition.
     ///
     /// # Errors
-    /// A finding for a netlist without state equations, and for several phases.
+    /// A finding for a netlist without state equations, and for several phases that are not followed.
     pub fn switching(&self, condition: &StageCondition) -> Result<SwitchingEquations, Finding> {
-        if self.phases > 1.0 {
-            let message = "Interleaved phases are not followed switch by switch.";
-            return Err(Finding::problem(PHASES.path, message).with_hint(
-                "one phase with inductance and resistances over N averages alike, but its ripple is N times as large",
-            ));
+        if let Some(drawn) = &self.phases_drawn {
+            return self.interleaved(drawn, condition);
         }
         let intervals = self.intervals_in_mode(condition).map_err(|e| circuit_finding(&e))?;
         let magnetising = self.magnetising(&intervals);
@@ -122,6 +121,7 @@ impl Stage {
             inputs,
             rows: public_rows(&self.rows, named(sets.switch)?, named(sets.rectifier)?),
             blocks: self.rectifier.blocks(),
+            interleaved: None,
         })
     }
 }
@@ -139,7 +139,7 @@ impl Stage {
     }
 }
 
-fn public_rows(rows: &Rows, switch: SwitchRow, rectifier: SwitchRow) -> SwitchingRows {
+pub(super) fn public_rows(rows: &Rows, switch: SwitchRow, rectifier: SwitchRow) -> SwitchingRows {
     SwitchingRows {
         output_voltage: rows.output_voltage,
         load_voltage: rows.load_voltage,

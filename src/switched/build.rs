@@ -4,6 +4,7 @@
 //! put together by what drives them, once for each configuration. *Conventions*: the sense filter and the comparator see the switched
 //! current in every interval; the comparator's volts are those behind its divider.
 
+use super::interleave::{Interleaving, followed, rename};
 use super::probes::stage_probes;
 use super::system::{Comparator, Configuration, Piece, Places, Probe, Rule, Simplified, SwitchedSystem, inputs};
 use crate::circuit::StateEquations;
@@ -192,6 +193,7 @@ impl<'a> Law<'a> {
             edge: Edge::Peak,
             row,
             valley_v: 0.0,
+            since_s: 0.0,
             rate: 0.0,
             rate_per_input: 0.0,
             delay_s: law.delay_s,
@@ -230,6 +232,9 @@ impl SwitchedSystem {
     pub fn new(joined: &Joined<'_>, condition: &StageCondition) -> Result<Self, Finding> {
         let equations = joined.stage.switching(condition)?;
         let law = Law::new(joined.law)?;
+        let interleaved = equations.interleaved.as_ref();
+        followed(interleaved, joined.law)?;
+        let phases = interleaved.map_or(1, |i| i.phases);
         let outer = match &joined.driven {
             Driven::Loop(closing) => Some(closing),
             Driven::Voltage(_) => None,
@@ -238,13 +243,14 @@ impl SwitchedSystem {
         let layout = Layout {
             stage: equations.state_names.len(),
             magnetising: usize::from(equations.magnetising.is_some() && law.senses_the_switch()),
-            filter: usize::from(law.filter_s > 0.0),
+            filter: if law.filter_s > 0.0 { phases } else { 0 },
             inner: law.inner.as_ref().map_or(0, |(_, space)| space.order()),
             outer: outer.map_or(0, |closing| closing.space.order()),
             stage_inputs: equations.input_names.len(),
             own: own_inputs(&law, outer),
         };
-        let period_s = joined.stage.switching_frequency.recip();
+        let switching_period_s = joined.stage.switching_frequency.recip();
+        let period_s = switching_period_s / phases as f64;
         let builder =
             Builder { layout: &layout, equations: &equations, law: &law, outer, places: &places, probes: &probes };
         let pieces = [
@@ -260,12 +266,16 @@ impl SwitchedSystem {
         Ok(SwitchedSystem {
             pieces,
             rest_projector,
-            rest: equations.blocks.then(|| pad(&equations.switched_current)),
+            rest: equations.blocks.then(|| pad(interleaved.map_or(&equations.switched_current, |i| &i.last))),
             rotation: rotation(&equations, &layout),
             state_names: state_names(&equations, &layout),
             input_names: equations.input_names.iter().chain(&layout.own).cloned().collect(),
             steady_inputs: steady_inputs(&equations.inputs, &joined.driven, &layout.own),
-            rule: Rule::Compared(law.comparator(places.compared, period_s)),
+            rule: Rule::Compared(Comparator {
+                since_s: interleaved.map_or(0.0, |i| i.always as f64 * period_s),
+                ..law.comparator(places.compared, switching_period_s)
+            }),
+            interleaving: interleaved.map(Interleaving::new),
             probes,
             places,
             period_s,
@@ -339,12 +349,19 @@ fn steady_inputs(stage: &DVector<f64>, driven: &Driven<'_>, own: &[String]) -> D
     DVector::from_iterator(stage.len() + own.len(), stage.iter().chain(&own).copied())
 }
 
-/// What becomes of the magnetising current as a period ends.
+/// What becomes of the magnetising current as a period ends, and of several phases.
 fn rotation(equations: &SwitchingEquations, layout: &Layout) -> Option<DMatrix<f64>> {
-    let magnetising = equations.magnetising.as_ref().filter(|_| layout.magnetising > 0)?;
+    let magnetising = equations.magnetising.as_ref().filter(|_| layout.magnetising > 0);
     let mut rotation = DMatrix::identity(layout.states(), layout.states());
-    rotation[(layout.stage, layout.stage)] = magnetising.turn;
-    Some(rotation)
+    if let Some(magnetising) = magnetising {
+        rotation[(layout.stage, layout.stage)] = magnetising.turn;
+    }
+    if let Some(interleaved) = &equations.interleaved {
+        let filters: Vec<usize> = (0..layout.filter).map(|k| layout.filter_place() + k).collect();
+        rename(&mut rotation, &interleaved.states);
+        rename(&mut rotation, &filters);
+    }
+    (magnetising.is_some() || equations.interleaved.is_some()).then_some(rotation)
 }
 
 fn state_names(equations: &SwitchingEquations, layout: &Layout) -> Vec<String> {
@@ -389,9 +406,14 @@ impl Builder<'_> {
             }
         }
         if layout.filter > 0 {
-            let filtered = layout.state(layout.filter_place());
-            rates.push((&sensed - &filtered) / self.law.filter_s);
-            sensed = filtered;
+            let (sources, awake) = match &self.equations.interleaved {
+                Some(i) => (i.sensed.iter().map(|row| layout.of_stage(row, &none)).collect(), i.always),
+                None => (vec![sensed], 0),
+            };
+            let filtered = |k: usize| layout.state(layout.filter_place() + k);
+            let rate = |(k, source): (usize, &RowDVector<f64>)| (source - filtered(k)) / self.law.filter_s;
+            rates.extend(sources.iter().enumerate().map(rate));
+            sensed = filtered(awake);
         }
         let output = outputs.get(self.places.output_voltage).cloned().unwrap_or_else(|| layout.zero());
         let outer = self.outer(&output, &outputs);

@@ -63,7 +63,7 @@ impl RippleFacts {
         let sense = if comparator.edge == Edge::Peak { 1.0 } else { -1.0 };
         let ripple_slope = sense * gain * slope;
         let still_slope = ripple_slope - sense * response.margin_slope();
-        let ramp = system.ramp_rate(inputs).abs() * system.period_s;
+        let ramp = system.ramp_rate(inputs).abs() * system.switching_period_s();
         let compared_swing = if row == comparator.row { ramp } else { swing(comparator.row).max(ramp) };
         let (output_step, step_resistance) = output_step(orbit);
         Ok(Some(RippleFacts {

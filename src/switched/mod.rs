@@ -10,6 +10,7 @@
 //! | `build` | the system of a stage, a law and a compensator at a condition |
 //! | `probes` | what can be looked at, and where it stands |
 //! | `phase` | the phases of a period and the events between them |
+//! | `interleave` | several phases: a share of the period, and what it says of the whole |
 //! | `flow` | what a phase makes of the state it begins with |
 //! | `orbit` | the steady period: states, instants, conduction mode |
 //! | `search` | the Newton steps that find it |
@@ -26,6 +27,7 @@
 mod build;
 mod facts;
 mod flow;
+mod interleave;
 mod orbit;
 mod perturbed;
 mod phase;
@@ -44,6 +46,7 @@ mod waveforms;
 
 pub use build::{Closing, Driven, Joined};
 pub use facts::{RIPPLE_WARNING, RippleFacts};
+pub use interleave::Interleaving;
 pub use orbit::{Goal, Orbit, Start};
 pub use phase::{Event, Phase};
 pub use progress::{Cancel, Progress};

@@ -10,7 +10,7 @@ use super::phase::{Event, Instants, Phase};
 use super::search::{Guess, Search, Sweep, Wanted};
 use super::system::{Comparator, Configuration, Rule, SwitchedSystem, inputs};
 use crate::control::Edge;
-use crate::converter::{Conduction, OperatingPoint};
+use crate::converter::{Conduction, OperatingPoint, not_followed};
 use crate::finding::Finding;
 use crate::quantity::{Unit, print};
 use nalgebra::DVector;
@@ -82,13 +82,17 @@ impl Orbit {
                 return Err(unsettled());
             }
             let Some((guess, sweep)) = search.find(first_guess(system, start, rests)) else {
-                rests = !rests && system.rest.is_some();
+                rests = !rests && system.rest.is_some() && system.interleaving.is_none();
                 continue;
             };
             if rests == flows_back(system, &sweep, rests) {
                 let orbit = Orbit::of(system, guess, sweep);
+                orbit.within_share()?;
                 orbit.within_limits()?;
                 return Ok(orbit);
+            }
+            if system.interleaving.is_some() {
+                return Err(not_followed("their currents come to rest here, and that is not followed phase by phase"));
             }
             rests = !rests;
         }
@@ -108,7 +112,7 @@ impl Orbit {
             phases: sweep.phases,
             starts: sweep.starts,
             ends: sweep.ends,
-            duty: on / system.period_s,
+            duty: (on + system.since()) / system.switching_period_s(),
             conduction,
         }
     }
@@ -131,10 +135,10 @@ impl Orbit {
     /// Refuses an orbit that the controller's limits keep it from.
     fn within_limits(&self) -> Result<(), Finding> {
         let Some((comparator, place)) = self.comparator() else { return Ok(()) };
-        let period = self.system.period_s;
+        let period = self.system.switching_period_s();
         let trip = self.phases.get(place).map_or(0.0, |phase| phase.start_s + phase.length_s);
         let on_time = self.duty * period;
-        if let Some(problem) = comparator.limit_passed(trip, on_time, period) {
+        if let Some(problem) = comparator.limit_passed(trip + comparator.since_s, on_time, period) {
             return Err(problem);
         }
         let control = self.value_at_end(place, self.system.places.control_voltage);
@@ -165,9 +169,14 @@ impl Orbit {
             let mut x = start.clone();
             for k in 0..LOOKS {
                 let at = phase.start_s + step * k as f64;
-                let margin = piece.value(comparator.row, &x, &self.inputs) - comparator.valley_v - rate * at;
+                let margin = piece.value(comparator.row, &x, &self.inputs)
+                    - comparator.valley_v
+                    - rate * (at + comparator.since_s);
                 // At the trip itself the margin is zero; a look just ahead of it says nothing.
-                if at >= comparator.blanking_s && trip - at > 1e-6 * self.system.period_s && sense * margin < 0.0 {
+                if at + comparator.since_s >= comparator.blanking_s
+                    && trip - at > 1e-6 * self.system.period_s
+                    && sense * margin < 0.0
+                {
                     return true;
                 }
                 x = flow.end(&x);
@@ -183,13 +192,18 @@ impl Comparator {
         let seconds = |time: f64| print(time, Unit::Second);
         let near = 1e-9 * period;
         let problem = |path: &str, message: String| Some(Finding::problem(path, message));
+        let skipping = |path: &str, message: String| {
+            problem(path, message).map(|found| {
+                found.with_hint("shorten it, lower the switching frequency, or raise the least load; the transient shows the pulses skipped")
+            })
+        };
         if trip < -near || (trip < self.blanking_s - near && self.edge == Edge::Peak) {
             let message = format!(
                 "The on-time of {} is within blanking and delay, {}: the converter skips periods.",
                 seconds(on_time),
                 seconds(self.blanking_s + self.delay_s)
             );
-            return problem(if self.blanking_s > 0.0 { "control.blanking" } else { "control.delay" }, message);
+            return skipping(if self.blanking_s > 0.0 { "control.blanking" } else { "control.delay" }, message);
         }
         if on_time < self.on_time_least_s - near {
             let message = format!(
@@ -197,7 +211,7 @@ impl Comparator {
                 seconds(on_time),
                 seconds(self.on_time_least_s)
             );
-            return problem("control.on-time.least", message);
+            return skipping("control.on-time.least", message);
         }
         let duty = on_time / period;
         for (path, limit, passed) in [
@@ -218,7 +232,7 @@ impl Comparator {
 /// The guess that the averaged point gives.
 fn first_guess(system: &SwitchedSystem, start: Start, rests: bool) -> Guess {
     let period = system.period_s;
-    let on = start.duty * period;
+    let on = system.opens_at(start.duty);
     let (edge, delay) = match &system.rule {
         Rule::Compared(comparator) => (comparator.edge, comparator.delay_s),
         Rule::Given { .. } => (Edge::Peak, 0.0),
@@ -229,7 +243,7 @@ fn first_guess(system: &SwitchedSystem, start: Start, rests: bool) -> Guess {
         Edge::Valley => (period - on, freewheels),
     };
     // The switches follow the comparator; a trip ahead of the clock is found out later.
-    let compare = if let Rule::Given { duty } = system.rule { duty * period } else { switched - delay };
+    let compare = if let Rule::Given { duty } = system.rule { system.opens_at(duty) } else { switched - delay };
     Guess {
         x: DVector::zeros(system.order()),
         instants: Instants { compare, rest: rests.then_some(rest) },

@@ -33,7 +33,10 @@ pub(super) fn stage_probes(equations: &SwitchingEquations) -> (Vec<Probe>, Place
     for (what, row) in &rows.filter_inductors {
         name(*row, format!("{what} current"), Unit::Ampere);
     }
-    // Rows without a name carry the currents of lossy filter resistances.
+    if let Some(interleaved) = &equations.interleaved {
+        name(interleaved.together, "inductor currents together".to_owned(), Unit::Ampere);
+    }
+    // Rows without a name carry the currents of lossy filter resistances, and what is the same of other phases.
     let unnamed = || Probe { name: String::new(), unit: Unit::Ampere };
     let mut probes: Vec<Probe> = named.into_iter().map(|probe| probe.unwrap_or_else(unnamed)).collect();
     for (name, unit) in [

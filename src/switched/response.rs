@@ -181,7 +181,8 @@ impl Response {
         let (Some(phase), system) = (self.orbit.phases.get(place), &self.orbit.system) else { return 0.0 };
         let direct = system.piece(phase.configuration).d[(comparator.row, column)];
         let line = system.input(inputs::INPUT_VOLTAGE) == Some(column);
-        let ramp = if line { comparator.rate_per_input * (phase.start_s + phase.length_s) } else { 0.0 };
+        let ramp =
+            if line { comparator.rate_per_input * (phase.start_s + phase.length_s + comparator.since_s) } else { 0.0 };
         direct - ramp
     }
 }

@@ -207,7 +207,8 @@ impl Search<'_> {
             (Event::Compare, Rule::Compared(comparator), _) => {
                 let rate = system.ramp_rate(&guess.inputs);
                 let value = piece.value(comparator.row, &carried.x, &guess.inputs);
-                residual[n + COMPARE] = value - comparator.valley_v - rate * guess.instants.compare;
+                residual[n + COMPARE] =
+                    value - comparator.valley_v - rate * (guess.instants.compare + comparator.since_s);
                 let mut row = piece.c.row(comparator.row) * &carried.by;
                 row[n + COMPARE] -= rate;
                 if let Some((column, _)) = self.wanted.output {

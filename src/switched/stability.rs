@@ -2,7 +2,8 @@
 //!
 //! *Conventions*: a small change of the orbit is multiplied by μ from period to period; the orbit is stable where every |μ| < 1. A real μ
 //! below −1 doubles the period (the fast-scale or subharmonic oscillation), a complex pair outside the circle oscillates slowly
-//! beside the switching, a real μ above 1 drifts away. *Source*: Floquet; Iu & Tse, IEEE Trans. Circuits Syst. I 50 (2003), 679 and
+//! beside the switching, a real μ above 1 drifts away. Of interleaved phases the period is that of each switch, and the multipliers are those of
+//! what they do alike and of what they do against each other: how their currents share. *Source*: Floquet; Iu & Tse, IEEE Trans. Circuits Syst. I 50 (2003), 679 and
 //! El Aroudi et al., Int. J. Bifurcation Chaos 17 (2007), on slow-scale and fast-scale instability (from memory).
 
 use super::response::Response;
@@ -52,8 +53,13 @@ impl Stability {
         let mut multipliers = eigenvalues(&response.monodromy()).map_err(|error| {
             Finding::problem("", format!("The multipliers of the switched loop cannot be found: {error}."))
         })?;
+        if let Some(interleaving) = &response.orbit().system.interleaving {
+            for multiplier in &mut multipliers {
+                *multiplier = over_all(*multiplier, interleaving.phases);
+            }
+        }
         multipliers.sort_by(|p, q| q.norm().total_cmp(&p.norm()).then(q.im.total_cmp(&p.im)));
-        let period_s = response.orbit().system.period_s;
+        let period_s = response.orbit().system.switching_period_s();
         let instability = multipliers.first().filter(|m| m.norm() >= 1.0).map(|m| named(*m, period_s));
         let nearest_to_doubling =
             multipliers.iter().filter(|m| m.im == 0.0 && m.re < 0.0).map(|m| m.re).min_by(f64::total_cmp);
@@ -71,6 +77,14 @@ impl Stability {
     }
 }
 
+/// Multiplier of a whole switching period from that of a share of it; what rounding leaves beside the real axis is taken off.
+fn over_all(multiplier: Complex, shares: usize) -> Complex {
+    let all = (0..shares).fold(Complex::ONE, |product, _| product * multiplier);
+    if all.im.abs() <= ON_THE_AXIS * all.norm() { Complex::new(all.re, 0.0) } else { all }
+}
+
+/// A power of a multiplier nearer to the real axis than this share of it is on it.
+const ON_THE_AXIS: f64 = 1e-9;
 /// A pair nearer than this to the negative axis [rad] counts as doubling that has just begun to turn.
 const NEARLY_HALF: f64 = 0.02 * PI;
 

@@ -190,7 +190,11 @@ impl Orbit {
             mean: mean / system.period_s,
             rms: (signal.square / system.period_s).sqrt(),
         });
-        Ok(figures.collect())
+        let mut figures: Vec<Figures> = figures.collect();
+        if let Some(interleaving) = &system.interleaving {
+            interleaving.over_all(&mut figures);
+        }
+        Ok(figures)
     }
 
     /// Integral of the states over a phase.

@@ -3,6 +3,7 @@
 //! *Conventions*: x' = A·x + B·u, y = C·x + D·u in SI units over the same joint states, inputs and probes in every configuration; time
 //! within a period counts from the clock's edge. A load of constant power is its tangent, the bank's series inductance is left out.
 
+use super::interleave::Interleaving;
 use crate::control::Edge;
 use crate::quantity::Unit;
 use nalgebra::{DMatrix, DVector, RowDVector};
@@ -90,7 +91,7 @@ pub struct Places {
 
 /// The comparator that ends an interval.
 ///
-/// It compares probe `row`, in the configuration that the clock started, with a ramp: margin = y − valley − rate·t. At
+/// It compares probe `row`, in the configuration that the clock started, with a ramp: margin = y − valley − rate·(t + since). At
 /// [`Edge::Peak`] the clock closes the switch and the margin's fall to zero opens it; at [`Edge::Valley`] the clock opens the
 /// switch and the margin's rise to zero closes it. The switches follow `delay_s` later.
 #[derive(Clone, Debug, PartialEq)]
@@ -101,6 +102,8 @@ pub struct Comparator {
     pub row: usize,
     /// The ramp as the clock starts it [V].
     pub valley_v: f64,
+    /// How long the ramp has run as the clock starts the period, with several phases [s].
+    pub since_s: f64,
     /// Slope of the ramp [V/s] that no input sets.
     pub rate: f64,
     /// Slope of the ramp per volt of input voltage, from line feed-forward [1/s].
@@ -140,7 +143,7 @@ pub struct SwitchedSystem {
     pub rest_projector: DMatrix<f64>,
     /// The rectifier's current from the states: its fall to zero opens the rectifier. None where it conducts reverse current.
     pub rest: Option<RowDVector<f64>>,
-    /// Applied to the states as a period ends: a core is reset, or driven the other way by the next pulse. None where nothing changes.
+    /// Applied to the states as a period ends: a core is reset, or driven the other way by the next pulse, phases are renamed. None where nothing changes.
     pub rotation: Option<DMatrix<f64>>,
     /// What holds each state.
     pub state_names: Vec<String>,
@@ -154,7 +157,9 @@ pub struct SwitchedSystem {
     pub steady_inputs: DVector<f64>,
     /// What ends the interval that the clock starts.
     pub rule: Rule,
-    /// Switching period [s].
+    /// Several phases, of which the period is a share; none for one.
+    pub interleaving: Option<Interleaving>,
+    /// Period [s]: that of the switches, or with several phases so many parts of that.
     pub period_s: f64,
     /// Series resistance of each branch of the output bank [Ω].
     pub bank_esr: Vec<f64>,

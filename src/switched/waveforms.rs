@@ -1,6 +1,8 @@
 //! One steady period of every probe.
 //!
 //! *Conventions*: time counts from the clock's edge [s]. At a switching instant a time stands twice, with the values before and after.
+//! With several phases, probes of a part are those of one phase over its whole period; what is sensed and compared is that of the phase whose
+//! switch opens within each share of it.
 
 use super::flow::Flow;
 use super::orbit::Orbit;
@@ -30,6 +32,12 @@ impl Orbit {
     /// # Errors
     /// A finding where an exponential leaves the number range.
     pub fn waveforms(&self, points: usize) -> Result<SteadyWaveforms, Finding> {
+        let Some(interleaving) = &self.system.interleaving else { return self.period_waveforms(points) };
+        let share = self.period_waveforms(points / interleaving.phases.max(1))?;
+        Ok(interleaving.repeated(&share, self.system.period_s))
+    }
+
+    fn period_waveforms(&self, points: usize) -> Result<SteadyWaveforms, Finding> {
         let system = &self.system;
         let mut found = SteadyWaveforms {
             times_s: Vec::with_capacity(points),
@@ -60,7 +68,7 @@ impl Orbit {
                     trace.push(*value);
                 }
                 if let (Some(ramp), Some((comparator, _))) = (&mut found.ramp, self.comparator()) {
-                    ramp.push(comparator.valley_v + rate * at);
+                    ramp.push(comparator.valley_v + rate * (at + comparator.since_s));
                 }
                 x = flow.end(&x);
             }

@@ -180,7 +180,11 @@ pub(super) fn text(text: &mut String, switched: &Switched, detail: &Detail) {
     let exact = match &switched.referee {
         Ok(exact) => exact,
         Err(finding) => {
-            let _ = writeln!(text, "  {}\n", finding.message);
+            let _ = writeln!(text, "  {}", finding.message);
+            if let Some(hint) = &finding.hint {
+                let _ = writeln!(text, "  Hint: {hint}");
+            }
+            text.push('\n');
             return;
         }
     };
@@ -200,7 +204,8 @@ pub(super) fn text(text: &mut String, switched: &Switched, detail: &Detail) {
     pair("Phase margin", Unit::Degree, &|m| m.headline_crossover().map(|c| c.phase_margin_deg));
     pair("Gain margin", Unit::Decibel, &Margins::gain_margin_up_db);
     pair("Modulus margin", Unit::One, &|m| Some(m.modulus_margin));
-    let number = |value: f64| print_digits(value, Unit::One, 4);
+    // What has wholly died away after a period is left to rounding.
+    let number = |value: f64| print_digits(if value.abs() < 1e-12 { 0.0 } else { value }, Unit::One, 4);
     let upper = exact.multipliers.iter().filter(|multiplier| multiplier.im >= 0.0);
     let multipliers = upper.map(|multiplier| match multiplier.im {
         0.0 => number(multiplier.re),
@@ -228,11 +233,18 @@ fn reach(reach: &Reach) -> String {
 
 fn table(text: &mut String, steady: &Steady) {
     let _ = writeln!(text, "What the parts bear over one steady period of {}", print(steady.period_s, Unit::Second));
-    row(text, "", &["greatest", "least", "RMS", "average"]);
+    // A name may be longer than the column of names, a probe's number behind it included.
+    let longest = steady.stress.iter().map(|stress| stress.name.chars().count()).max().unwrap_or(0);
+    let names = WIDTHS.0.max(longest + 2);
+    let mut row = |name: &str, cells: &[&str]| {
+        let cells: String = cells.iter().map(|cell| padded(cell, WIDTHS.1)).collect();
+        let _ = writeln!(text, "  {}{}", padded(name, names), cells.trim_end());
+    };
+    row("", &["greatest", "least", "RMS", "average"]);
     for stress in &steady.stress {
         let number = |value: f64| print_digits(value, stress.unit, 4);
         let rms = stress.rms.map_or(String::new(), number);
-        row(text, &stress.name, &[&number(stress.peak), &number(stress.least), &rms, &number(stress.average)]);
+        row(&stress.name, &[&number(stress.peak), &number(stress.least), &rms, &number(stress.average)]);
     }
     let volts = |value: f64| print_digits(value, Unit::Volt, 3);
     let [whole, capacitive, resistive] = steady.ripple_v.map(volts);

@@ -16,7 +16,7 @@ use super::pointed::Pointed;
 use super::theme::{self, palette};
 use super::view::{Desk, Field};
 use crate::analysis::terms;
-use crate::quantity::{self, Choice, Entry};
+use crate::quantity::{self, Choice, ChoiceOption, Entry};
 
 /// What a form row stands for.
 enum Item {
@@ -104,6 +104,18 @@ fn choice_row_ui(ui: &mut Ui, choice: &'static Choice, desk: &mut Desk<'_>) {
     row_ui(ui, (choice.name, choice.help), CHOICE_LABEL_SHARE, |ui, width| choice_ui(ui, choice, width, desk));
 }
 
+/// Most of the window's height that a list of options takes before it scrolls.
+pub(super) const LIST_SHARE: f32 = 0.7;
+
+/// One option in a list that may scroll: the keyboard's focus is brought into sight. Returns whether it was pressed.
+pub(super) fn option_ui(ui: &mut Ui, option: &ChoiceOption, chosen: bool) -> bool {
+    let response = ui.selectable_label(chosen, option.name).on_hover_text(option.help);
+    if response.gained_focus() {
+        response.scroll_to_me(None);
+    }
+    response.clicked()
+}
+
 /// A choice between options, as a list that opens.
 pub(super) fn choice_ui(ui: &mut Ui, choice: &'static Choice, width: f32, desk: &mut Desk<'_>) {
     let key = desk.session.design().choices.get_or_default(choice);
@@ -112,11 +124,11 @@ pub(super) fn choice_ui(ui: &mut Ui, choice: &'static Choice, width: f32, desk: 
     let response = egui::ComboBox::from_id_salt(choice.path)
         .selected_text(text)
         .width(width)
+        .height(ui.ctx().content_rect().height() * LIST_SHARE)
         .truncate()
         .show_ui(ui, |ui| {
             for option in choice.options {
-                let response = ui.selectable_label(option.key == key, option.name).on_hover_text(option.help);
-                if response.clicked() && option.key != key {
+                if option_ui(ui, option, option.key == key) && option.key != key {
                     desk.ask(Command::Choose { path: choice.path, key: option.key });
                 }
             }

@@ -10,6 +10,7 @@ use eframe::egui::{
 };
 
 use super::command::Command;
+use super::form::{LIST_SHARE, option_ui};
 use super::theme::{self, palette};
 use super::view::Desk;
 use super::{bar, findings, form};
@@ -222,14 +223,18 @@ fn topology_ui(ui: &mut Ui, form: &mut NewDesign) {
         ui.label(RichText::new(choice.name).color(palette(ui).weak)).on_hover_text(choice.help);
         ui.with_layout(Layout::right_to_left(Align::Center), |ui| {
             let text = RichText::new(chosen).color(palette(ui).accent);
-            let response = ComboBox::from_id_salt("new topology").selected_text(text).width(190.0).show_ui(ui, |ui| {
-                for option in choice.options {
-                    let chosen = option.key == form.topology;
-                    if ui.selectable_label(chosen, option.name).on_hover_text(option.help).clicked() && !chosen {
-                        wanted = Some(option.key);
+            let response = ComboBox::from_id_salt("new topology")
+                .selected_text(text)
+                .width(190.0)
+                .height(ui.ctx().content_rect().height() * LIST_SHARE)
+                .show_ui(ui, |ui| {
+                    for option in choice.options {
+                        let chosen = option.key == form.topology;
+                        if option_ui(ui, option, chosen) && !chosen {
+                            wanted = Some(option.key);
+                        }
                     }
-                }
-            });
+                });
             response.response.widget_info(|| {
                 let mut info = egui::WidgetInfo::labeled(egui::Role::ComboBox, true, "Topology of the new design");
                 info.current_text_value = Some(chosen.to_owned());

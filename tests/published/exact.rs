@@ -144,7 +144,7 @@ fn slow_changes_of_reference_line_and_load_walk_along_the_closed_loop_s_steady_c
 }
 
 /// C7's buck and boost in peak current mode without losses, an output capacitance that does not move, and a ramp of r times the down-slope.
-fn current_loop(topology: &str, (input, output): (f64, f64), r: f64) -> Design {
+pub(crate) fn current_loop(topology: &str, (input, output): (f64, f64), r: f64) -> Design {
     let mut design = lossless(
         topology,
         &[

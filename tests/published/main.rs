@@ -16,6 +16,7 @@ mod discontinuous;
 mod every_mode;
 mod exact;
 mod filters;
+mod interleaved;
 mod isolated;
 mod lossless;
 mod orbit;

@@ -57,6 +57,14 @@ fn every_sample_has_its_exact_side_in_both_reports() {
         {
             assert!(printed.contains(word), "{}: {word}\n{printed}", sample.file);
         }
+        for stress in &period.stress {
+            // Name and number stand apart, and a current at rest is none.
+            assert!(printed.contains(&format!("\n  {}  ", stress.name)), "{}: {}\n{printed}", sample.file, stress.name);
+            let greatest = stress.peak.abs().max(stress.least.abs());
+            for value in [stress.peak, stress.least, stress.average] {
+                assert!(value == 0.0 || value.abs() >= 1e-9 * greatest, "{}: {} {value}", sample.file, stress.name);
+            }
+        }
     }
 }
 
@@ -65,6 +73,16 @@ fn without_being_asked_there_is_none() {
     let path = sample_path("gimbal-rail.ron");
     assert!(json(&check(&[&path, "--json"]))[0]["switched"].is_null());
     assert!(!text(&check(&[&path]).stdout).contains("Exact switched model"));
+}
+
+#[test]
+fn a_duty_ratio_out_of_reach_is_told_in_few_digits() {
+    let path = sample_path("hive-scale.ron");
+    let output = check(&[&path, "--switched", "--set", "control.duty.greatest=0.1234567891"]);
+    let told = format!("{}{}", text(&output.stdout), text(&output.stderr));
+    let told = told.split_whitespace().collect::<Vec<_>>().join(" ");
+    assert_eq!(code(&output), 2, "{told}");
+    assert!(told.contains("gives 0.02 to 0.123."), "{told}");
 }
 
 /// Common practice: a buck in peak current mode without a ramp doubles its period above half the duty ratio.

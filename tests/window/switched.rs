@@ -20,7 +20,7 @@ fn labelled<'h>(harness: &'h Harness<'_, App>, begin: &'h str) -> egui_kittest::
 
 /// Steps until the run under way has ended; nothing is timed, a run that never ends hangs the test.
 fn finish(harness: &mut Harness<'_, App>) {
-    harness.step();
+    harness.run();
     while harness.state().transient_runs() {
         harness.step();
         std::thread::yield_now();

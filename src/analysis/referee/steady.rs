@@ -10,7 +10,7 @@ use crate::switched::{Event, Figures, Goal, Orbit, SteadyWaveforms, SwitchedSyst
 
 /// Samples of a period: about as many as its plot has columns.
 const SAMPLES: usize = 400;
-/// A mean below this share of the greatest value is rounding.
+/// A value below this share of the greatest value is rounding.
 const ROUNDING: f64 = 1e-9;
 /// Names of the output's two voltages, where a second stage parts them.
 const LOAD: &str = "load";
@@ -27,7 +27,7 @@ pub fn steady(design: &CheckedDesign, shown: Shown) -> Result<Steady, Finding> {
     let ripple = orbit.output_ripple()?;
     Ok(Steady {
         condition: model.condition.clone(),
-        period_s: orbit.system.period_s,
+        period_s: orbit.system.switching_period_s(),
         instants: instants(&orbit, &waveforms),
         stress: stress(&orbit.system, &orbit.figures()?),
         ripple_v: ripple.map_or([f64::NAN; 3], |ripple| [ripple.bank, ripple.capacitive, ripple.resistive]),
@@ -42,7 +42,10 @@ fn instants(orbit: &Orbit, waveforms: &SteadyWaveforms) -> Vec<(f64, &'static st
     let switches = |closes: bool| if closes { "switch closes" } else { "switch opens" };
     let mut found = vec![(0.0, switches(conducts(0)))];
     let delayed = orbit.phases.iter().any(|phase| phase.end == Event::Switch && phase.length_s > 0.0);
-    for (place, (at_s, event)) in waveforms.events.iter().enumerate() {
+    // Of several phases the one that is shown opens in one share of the period.
+    let shown = orbit.system.interleaving.as_ref().map_or(0, |interleaving| interleaving.always);
+    let events = waveforms.events.iter().skip(shown * orbit.phases.len()).take(orbit.phases.len());
+    for (place, (at_s, event)) in events.enumerate() {
         let name = match event {
             // Without a delay the comparator's trip is the switch's own instant.
             Event::Compare if delayed => "comparator trips",
@@ -110,15 +113,15 @@ fn stress(system: &SwitchedSystem, figures: &[Figures]) -> Vec<Stress> {
     let voltages = [&places.switch_voltage, &places.rectifier_voltage, &places.load_voltage, &places.control_voltage];
     let row = |row: &usize, unit: Unit| {
         let (probe, figures) = (system.probes.get(*row)?, figures.get(*row)?);
-        // A capacitor's mean current is nothing but rounding.
-        let average = if figures.mean.abs() < ROUNDING * figures.peak() { 0.0 } else { figures.mean };
+        // A capacitor's mean current is nothing but rounding, as is what is left of a current at rest.
+        let rounded = |value: f64| if value.abs() < ROUNDING * figures.peak() { 0.0 } else { value };
         Some(Stress {
             name: probe.name.clone(),
             unit,
-            peak: figures.greatest,
-            least: figures.least,
+            peak: rounded(figures.greatest),
+            least: rounded(figures.least),
             rms: (unit == Unit::Ampere).then_some(figures.rms),
-            average,
+            average: rounded(figures.mean),
         })
     };
     let currents = currents.map(|place| row(place, Unit::Ampere));

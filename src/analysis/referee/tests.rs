@@ -16,7 +16,7 @@ fn request(design: &CheckedDesign, frequencies_hz: &[f64]) -> Request {
 
 /// The result, where the exact side follows what a sample is made of; else the reason names what it does not follow.
 fn told<T>(file: &str, result: Result<T, crate::finding::Finding>) -> Option<T> {
-    let refused = |message: &str| message.contains("difference equation") || message.contains("Interleaved phases");
+    let refused = |message: &str| message.contains("difference equation");
     match result {
         Ok(found) => Some(found),
         Err(why) if refused(&why.message) => None,

@@ -5,7 +5,7 @@ use super::super::loop_model::Shared;
 use super::super::result::Condition;
 use crate::compensator::{FAST, Limit, Limited};
 use crate::control::{ControlLaw, Mode};
-use crate::converter::{LoadKind, StageCondition};
+use crate::converter::{LoadKind, StageCondition, not_followed};
 use crate::design::CheckedDesign;
 use crate::finding::Finding;
 use crate::quantity::Unit;
@@ -43,6 +43,9 @@ impl Model {
     pub(super) fn new(design: &CheckedDesign, shared: &Shared, condition: &Condition) -> Result<Self, Finding> {
         refuse_switched(design)?;
         let stage = &design.stage;
+        if stage.phases() > 1.0 {
+            return Err(not_followed("over time, phases would have to be told apart; their steady period is exact"));
+        }
         let at = StageCondition {
             input_voltage: condition.input_voltage,
             load_current: condition.load_current,

@@ -13,10 +13,13 @@ const AHEAD: f64 = 0.05;
 /// At least so many periods are shown.
 const LEAST_PERIODS: f64 = 20.0;
 
+/// By so much of a period a span may lie beyond whole ones: rounding of what was asked.
+const WHOLE: f64 = 1e-6;
+
 /// How long an event is followed.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(super) struct Span {
-    /// From the event's begin [s].
+    /// From the event's begin [s], whole periods.
     pub(super) to_s: f64,
     /// Shown ahead of it [s], whole periods; none at start-up.
     pub(super) ahead_s: f64,
@@ -36,10 +39,12 @@ pub(super) fn span(design: &CheckedDesign, request: &TransientRequest, step_s: O
         _ => step,
     });
     let wanted = wanted.max(LEAST_PERIODS * period);
-    let to_s = wanted.min(MOST_PERIODS * period);
+    let cut = wanted > MOST_PERIODS * period;
+    // Whole periods: those that are run cover all that is shown, and no more.
+    let to_s = (wanted / period - WHOLE).ceil().min(MOST_PERIODS) * period;
     let ahead = (AHEAD * to_s / period).ceil().max(2.0);
     let ahead = if request.event == TransientEvent::StartUp { 0.0 } else { ahead };
-    Span { to_s, ahead_s: ahead * period, cut: to_s < wanted }
+    Span { to_s, ahead_s: ahead * period, cut }
 }
 
 /// End of an overload [s], and its change of the load current [A].
@@ -112,6 +117,12 @@ mod tests {
         let request = |span_s| TransientRequest { event: TransientEvent::LoadStep, columns: 100, span_s };
         let asked = span(&design, &request(Some(1e9)), None);
         assert!(asked.cut && (asked.to_s * design.stage.switching_frequency - MOST_PERIODS).abs() < 1e-3);
+        // A period begun is followed to its end; rounding begins none.
+        let period = design.stage.switching_frequency.recip();
+        let periods = |asked: f64| (span(&design, &request(Some(asked * period)), None).to_s / period).round();
+        let given = span(&design, &request(Some(100.5 * period)), None).to_s / period;
+        assert!((given - given.round()).abs() < 1e-9, "{given}");
+        assert_eq!([periods(100.5), periods(100.0), periods(100.0 + 1e-9)], [101.0, 100.0, 100.0]);
         let short = span(&design, &request(Some(1e-12)), Some(1e-3));
         assert!(!short.cut && short.to_s > 0.0 && short.ahead_s > 0.0);
         assert!((span(&design, &request(None), Some(1e-3)).to_s - 1e-3).abs() < 1e-15);
