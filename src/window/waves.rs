@@ -18,7 +18,7 @@ const NARROW: f32 = 420.0;
 /// Height of a row of the table [points].
 const ROW: f32 = 18.0;
 /// Where the columns of numbers end, as shares of the table's width: peak, least, RMS, average.
-const COLUMNS: [(&str, f32); 4] = [("greatest", 0.55), ("least", 0.7), ("RMS", 0.85), ("average", 1.0)];
+const COLUMNS: [(&str, f32); 4] = [("greatest", 0.55), ("least", 0.7), ("RMS", 0.85), ("mean", 1.0)];
 
 /// Draws waveforms and table into a rectangle.
 pub(super) fn waves_ui(ui: &mut Ui, rect: Rect, desk: &mut Desk<'_>) {

@@ -6,7 +6,7 @@
 //! between two grid points is not missed.
 
 use super::flow::{TERMS, dot, whole};
-use super::mode::{Mode, Watch};
+use super::mode::{Mode, Role, Watch};
 
 /// What a watch is compared with as time goes on: the signal less offset and less rate times time.
 #[derive(Clone, Copy, Debug, Default)]
@@ -32,7 +32,7 @@ impl Scratch {
         Scratch {
             out: vec![0.0; stride],
             terms: vec![0.0; stride * (TERMS + 1)],
-            values: vec![0.0; 64],
+            values: vec![0.0; 64 + BLOCK],
             polynomial: [0.0; TERMS],
         }
     }
@@ -60,13 +60,15 @@ impl Mode {
         let least = limit * 1e-15;
         while limit - elapsed > least {
             let mut span = limit - elapsed;
+            let mut near = false;
             for t in 0..self.flow.tables.len() {
                 let table = &self.flow.tables[t];
                 let steps = whole(span / table.step * (1.0 + 1e-15)).min(table.count);
                 if steps == 0 {
                     continue;
                 }
-                let first = self.first_exit(z, (t, steps), active, ramp, elapsed, moving, &mut scratch.values);
+                let first = self.first_exit(z, (t, steps), active, ramp, elapsed, (moving, near), &mut scratch.values);
+                near |= first.is_some();
                 let sure = first.map_or(steps, |step| step - 1);
                 if sure > 0 {
                     self.flow.step(t, sure, z, moving, &mut scratch.out);
@@ -82,7 +84,12 @@ impl Mode {
                 continue;
             }
             let count = self.flow.series(z, span, moving, &mut scratch.terms);
-            let ended = self.root(z, span, count, active, ramp, elapsed, scratch);
+            // A limiter's polynomial is made where its end is out, or something is near.
+            let often = if near { active } else { active & !self.rare };
+            let mut ended = self.root(z, span, count, often, ramp, elapsed, scratch);
+            if ended.is_none() && often != active && self.out_after(z, span, count, active & self.rare, scratch) {
+                ended = self.root(z, span, count, active, ramp, elapsed, scratch);
+            }
             let share = ended.map_or(1.0, |(_, share)| share);
             self.sum(z, count, share, span, scratch);
             elapsed += span * share;
@@ -103,12 +110,13 @@ impl Mode {
     /// The watched signals that are active, with what they are compared with.
     fn watched(&self, active: u32, ramp: Ramp) -> impl Iterator<Item = (usize, &Watch, Ramp)> {
         self.watches.iter().enumerate().filter(move |(k, _)| active & (1 << k) != 0).map(move |(k, watch)| {
-            let ramp = if watch.role == super::mode::Role::Comparator { ramp } else { Ramp::default() };
+            let ramp = if watch.role == Role::Comparator { ramp } else { Ramp::default() };
             (k, watch, ramp)
         })
     }
 
-    /// The first of some steps of a table in which a signal leaves its interval, or may touch its end.
+    /// The first of some steps of a table in which a signal leaves its interval, or may touch its end. A limiter is looked at now and then
+    /// only, unless something is `near`: it leaves to stay, and a touch of its limit is nothing.
     #[expect(clippy::too_many_arguments, reason = "one kernel, called from one place")]
     fn first_exit(
         &self,
@@ -117,7 +125,7 @@ impl Mode {
         active: u32,
         ramp: Ramp,
         elapsed: f64,
-        moving: bool,
+        (moving, near): (bool, bool),
         values: &mut [f64],
     ) -> Option<usize> {
         let table = &self.flow.tables[t];
@@ -125,23 +133,28 @@ impl Mode {
         let mut first = None;
         let mut within = steps;
         for (_, watch, ramp) in self.watched(active, ramp) {
-            let (start, later) = values.split_at_mut(1);
-            let later = &mut later[..within];
-            start[0] = dot(&watch.row, &z[..watch.row.len()]) - ramp.offset - ramp.rate * elapsed;
-            later.fill(0.0);
-            for (column, factor) in watch.tables[t].chunks_exact(table.count).zip(&z[..used]) {
-                for (sum, entry) in later.iter_mut().zip(column) {
-                    *sum += entry * factor;
+            if !near && matches!(watch.role, Role::Limiter(_)) {
+                if let Some(step) = rare_exit(watch, t, table.count, &z[..used], within) {
+                    first = Some(step);
+                    within = step;
                 }
+                continue;
             }
-            if watch.role == super::mode::Role::Comparator {
-                for (k, value) in later.iter_mut().enumerate() {
-                    *value -= ramp.offset + ramp.rate * (elapsed + table.step * (k + 1) as f64);
+            values[0] = dot(&watch.row, &z[..watch.row.len()]) - ramp.offset - ramp.rate * elapsed;
+            let mut seen = 0;
+            while seen < within {
+                let sums = block(&watch.tables[t], table.count, &z[..used], seen);
+                for (k, (value, sum)) in values[seen + 1..].iter_mut().zip(sums).enumerate() {
+                    *value = sum - ramp.offset - ramp.rate * (elapsed + table.step * (seen + k + 1) as f64);
                 }
-            }
-            if let Some(step) = exit(watch, &values[..=within], t == 0) {
-                first = Some(step);
-                within = step;
+                // A parabola needs the neighbours of the block's first values.
+                let from = seen.saturating_sub(2);
+                seen = (seen + BLOCK).min(within);
+                if let Some(step) = exit(watch, &values[from..=seen], t == 0) {
+                    first = Some(from + step);
+                    within = from + step;
+                    break;
+                }
             }
         }
         first
@@ -176,6 +189,23 @@ impl Mode {
         first
     }
 
+    /// Whether one of some signals is out at the end of a short span.
+    fn out_after(&self, z: &[f64], span: f64, count: usize, which: u32, scratch: &mut Scratch) -> bool {
+        let (n, m, stride) = (self.flow.n, self.flow.m, self.flow.stride);
+        let Scratch { out, terms, .. } = scratch;
+        out.fill(0.0);
+        for term in terms[..count * stride].chunks_exact(stride) {
+            for (sum, value) in out.iter_mut().zip(term) {
+                *sum += value;
+            }
+        }
+        let (signals, slopes) = (&z[n..n + m], &z[n + m..]);
+        self.watched(which, Ramp::default()).any(|(_, watch, _)| {
+            let later = dot(&watch.row[n..], signals) + dot(&watch.row[n..], slopes) * span;
+            watch.out(dot(&watch.row[..n], &out[..n]) + later)
+        })
+    }
+
     fn sum(&self, z: &mut [f64], count: usize, share: f64, span: f64, scratch: &mut Scratch) {
         let stride = self.flow.stride;
         let Scratch { out, terms, .. } = scratch;
@@ -187,6 +217,37 @@ impl Mode {
         }
         self.take(z, out, span * share);
     }
+}
+
+/// Steps that are summed at once; the tables' lengths are multiples of it.
+const BLOCK: usize = 8;
+
+/// A signal after the next steps of a table, from the column-wise table.
+fn block(columns: &[f64], count: usize, z: &[f64], from: usize) -> [f64; BLOCK] {
+    let mut sums = [0.0; BLOCK];
+    for (column, factor) in columns.chunks_exact(count).zip(z) {
+        if let Some(entries) = column.get(from..).and_then(<[f64]>::first_chunk::<BLOCK>) {
+            for k in 0..BLOCK {
+                sums[k] += entries[k] * factor;
+            }
+        }
+    }
+    sums
+}
+
+/// The first of the steps a block apart, and of the last one, after which a signal is out: the step behind the one before.
+fn rare_exit(watch: &Watch, t: usize, count: usize, z: &[f64], steps: usize) -> Option<usize> {
+    let mut before = 0;
+    while before < steps {
+        let step = (before + BLOCK).min(steps);
+        let columns = watch.tables[t].chunks_exact(count);
+        let value: f64 = columns.zip(z).map(|(column, factor)| column[step - 1] * factor).sum();
+        if watch.out(value) {
+            return Some(before + 1);
+        }
+        before = step;
+    }
+    None
 }
 
 /// The first step after which a signal is out, or within which a parabola through its neighbours touches its end.

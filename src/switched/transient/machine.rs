@@ -70,6 +70,9 @@ const CHANGES: usize = 400;
 /// A load of constant power is held over this share of the period at most.
 const HELD: f64 = 1.0 / 32.0;
 
+/// A sink that could take more than its level by this share of it does not fall off within an interval.
+const FAR: f64 = 1.0;
+
 /// The running converter.
 #[derive(Clone, Debug)]
 pub(super) struct Machine {
@@ -285,13 +288,14 @@ impl Machine {
         if configuration == self.configuration {
             return Ok(());
         }
+        self.record()?;
         self.enter(configuration);
         self.follow()?;
         self.settle()?;
         self.record()
     }
 
-    fn record(&mut self) -> Result<(), Stopped> {
+    pub(super) fn record(&mut self) -> Result<(), Stopped> {
         let time = self.time_s();
         self.probed()?;
         self.samples.take(time);
@@ -314,17 +318,14 @@ impl Machine {
             }
             let place = self.ready()?;
             let Some(mode) = self.modes[place].as_deref() else { return Err(Stopped::Unsolvable) };
-            let mut active = 0_u32;
-            for (k, watch) in mode.watches.iter().enumerate() {
-                if looking || !matches!(watch.role, Role::Comparator | Role::CurrentLimit) {
-                    active |= 1 << k;
-                }
-            }
+            let active = self.looked_at(mode, looking);
             let ramp = ramp(&self.setup.rule, self.since);
             self.before.copy_from_slice(&self.z);
             let Reached { elapsed, ended_by } =
                 mode.advance(&mut self.z, until - self.since, active, ramp, &mut self.scratch);
-            self.samples.between(mode, &self.before, now, elapsed);
+            if self.periods % self.samples.every == 0 {
+                self.samples.between(mode, &self.before, now, elapsed);
+            }
             let role = ended_by.and_then(|k| mode.watches.get(k)).map(|watch| watch.role);
             if self.configuration == Configuration::Conducting {
                 self.on_s += elapsed;
@@ -336,7 +337,9 @@ impl Machine {
             for (acting, side) in self.acting.iter_mut().zip(&self.sides) {
                 *acting |= *side != Side::Free;
             }
-            self.record()?;
+            if self.time_s() >= self.samples.next_s() {
+                self.record()?;
+            }
             match role {
                 Some(Role::Comparator) => return Ok(Ended::ByComparator),
                 Some(Role::CurrentLimit) => return Ok(Ended::ByCurrentLimit),
@@ -362,6 +365,25 @@ impl Machine {
             }
         }
         Ok(Ended::InTime)
+    }
+
+    /// The watches to look at, as bits. A sink whose voltage is far above where it falls off is left to the ends of the interval.
+    fn looked_at(&self, mode: &Mode, looking: bool) -> u32 {
+        let mut active = 0;
+        for (k, watch) in mode.watches.iter().enumerate() {
+            let at = match watch.role {
+                Role::Comparator | Role::CurrentLimit => looking,
+                Role::Limiter(i) => match self.plant.limiters[i].act {
+                    Act::Sink { level, .. } if self.sides[i] != Side::Free => {
+                        dot(&watch.row, &self.z[..watch.row.len()]) < FAR * self.z[self.plant.n + level].abs()
+                    }
+                    _ => true,
+                },
+                Role::Rectifier | Role::Wake => true,
+            };
+            active |= u32::from(at) << k;
+        }
+        active
     }
 
     /// The side a limiter changes to as its watch tells.

@@ -87,6 +87,8 @@ pub(super) struct Held {
 pub(super) struct Mode {
     pub(super) flow: Flow,
     pub(super) watches: Vec<Watch>,
+    /// Those that are looked at now and then only, as bits.
+    pub(super) rare: u32,
     /// All probes over states and forcing signals, columns padded.
     pub(super) probes: Vec<f64>,
     /// Length of a column of the probes.
@@ -217,7 +219,9 @@ impl Mode {
                 probes[j * probe_stride + r] = value;
             }
         }
-        Ok(Mode { flow, watches, probes, probe_stride, held, wake })
+        let rare = watches.iter().enumerate().filter(|(_, watch)| matches!(watch.role, Role::Limiter(_)));
+        let rare = rare.fold(0, |bits, (k, _)| bits | 1 << k);
+        Ok(Mode { flow, watches, rare, probes, probe_stride, held, wake })
     }
 }
 

@@ -40,6 +40,7 @@ impl Machine {
             },
         }
         self.run_to(period, false)?;
+        self.record()?;
         let mean_v = self.z[integral] * self.plant.scale[integral] / period;
         for (acted, acting) in self.acted.iter_mut().zip(&self.acting) {
             *acted += u64::from(*acting);

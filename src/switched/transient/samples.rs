@@ -12,6 +12,8 @@ pub(super) struct Samples {
     pub(super) waveforms: Waveforms,
     /// Steps of the first table between samples within an interval.
     spacing: usize,
+    /// One period in so many is sampled within its intervals; the edges of all are.
+    pub(super) every: u64,
     /// Greatest value of each probe so far, and least.
     pub(super) greatest: Vec<f64>,
     pub(super) least: Vec<f64>,
@@ -24,12 +26,13 @@ pub(super) struct Samples {
 
 impl Samples {
     /// Of some probes into waveforms.
-    pub(super) fn new(waveforms: Waveforms, spacing: usize, times_s: Vec<f64>) -> Self {
+    pub(super) fn new(waveforms: Waveforms, (spacing, every): (usize, u64), times_s: Vec<f64>) -> Self {
         let count = waveforms.traces.len();
         Samples {
             values: Vec::new(),
             waveforms,
             spacing: spacing.max(1),
+            every: every.max(1),
             greatest: vec![f64::NEG_INFINITY; count],
             least: vec![f64::INFINITY; count],
             times_s,
