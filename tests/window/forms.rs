@@ -17,9 +17,9 @@ fn form_is_whole(harness: &Harness<'_, App>, told: &str) {
     // Field and part; both name the inductor as its topology does.
     let path = "stage.inductor.inductance";
     let design = session.design();
-    let field = design.entries().into_iter().find(|entry| entry.path == path).expect("applies").name;
-    let sketch = converter::sketch(&design.choices).expect("registered");
-    let part = sketch.parts.iter().find(|placed| placed.drawn.paths.iter().any(|of| of == path)).expect("drawn");
+    let field = design.entries().into_iter().find(|entry| entry.path == path).unwrap().name;
+    let sketch = converter::sketch(&design.choices).unwrap();
+    let part = sketch.parts.iter().find(|placed| placed.drawn.paths.iter().any(|of| of == path)).unwrap();
     for name in [field, part.drawn.name.as_str()] {
         assert!(harness.query_all_by_label_contains(name).count() >= 1, "{told}: {name}");
     }

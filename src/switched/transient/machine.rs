@@ -323,7 +323,7 @@ impl Machine {
             self.before.copy_from_slice(&self.z);
             let Reached { elapsed, ended_by } =
                 mode.advance(&mut self.z, until - self.since, active, ramp, &mut self.scratch);
-            if self.periods % self.samples.every == 0 {
+            if self.periods.is_multiple_of(self.samples.every) {
                 self.samples.between(mode, &self.before, now, elapsed);
             }
             let role = ended_by.and_then(|k| mode.watches.get(k)).map(|watch| watch.role);
