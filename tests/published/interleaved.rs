@@ -106,7 +106,7 @@ fn three_boosts_written_out_over_the_whole_period() {
         let design = phases("boost", 3.0, (vin, output), load, &further);
         let orbit = exact_loop(&design, None).open.orbit().clone();
         let r = output / load;
-        let conducts = |k: usize, time: f64| (time - f64::from(k) / 3.0).rem_euclid(1.0) < orbit.duty;
+        let conducts = |k: usize, time: f64| (time - k as f64 / 3.0).rem_euclid(1.0) < orbit.duty;
         let mut corners: Vec<f64> = (0..3).map(|k| f64::from(k) / 3.0).collect();
         corners.extend((0..3).map(|k| (f64::from(k) / 3.0 + orbit.duty).rem_euclid(1.0)));
         corners.push(1.0);
