@@ -10,9 +10,10 @@
 //! (from memory).
 
 use super::difference::{DifferenceEquation, Method};
-use super::digital_entries::{ENTRIES, applies, chosen, voltage_mode};
+use super::digital_entries::{ENTRIES, chosen, voltage_mode};
 use super::fixed_point::{Codes, Overflow};
 use super::lanes::Corners;
+use super::network::read_entry;
 use crate::finding::{Finding, Remedy};
 use crate::linear::{Complex, FactoredResponse, Zpk};
 use crate::quantity::{Choices, Unit, Values, print, print_digits};
@@ -335,21 +336,6 @@ fn above_half(path: &'static str, frequency_hz: f64, half: f64) -> Option<Findin
         Finding::problem(path, message)
             .with_hint("the output is sampled once a period, so nothing above half that rate can be placed")
     })
-}
-
-/// Value at a path, the default where none was entered; one out of bounds is a fault where the row applies.
-fn read_entry(path: &str, values: &Values, choices: &Choices, faults: &mut Vec<Finding>) -> f64 {
-    let Some(entry) = ENTRIES.iter().find(|row| row.path == path) else { return f64::NAN };
-    let value = values.get(path).unwrap_or(entry.default);
-    match entry.check(value) {
-        Ok(()) => value,
-        Err(reason) => {
-            if applies(path, choices) {
-                faults.push(Finding::problem(path, format!("{} {reason}", entry.name)).with_hint(entry.help));
-            }
-            entry.default
-        }
-    }
 }
 
 /// A number of bits.

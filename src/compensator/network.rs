@@ -402,7 +402,7 @@ fn wrong_choices(choices: &Choices) -> Vec<Finding> {
 
 /// Value at a path, the default where none was entered. An entry that applies must be within bounds; one that does not apply
 /// stands in with what was entered when that is usable, else with its default.
-fn read_entry(path: &str, values: &Values, choices: &Choices, faults: &mut Vec<Finding>) -> f64 {
+pub(super) fn read_entry(path: &str, values: &Values, choices: &Choices, faults: &mut Vec<Finding>) -> f64 {
     let Some(entry) = entries().find(|row| row.path == path) else { return f64::NAN };
     let Some(value) = values.get_or_default(entry) else { return entry.default };
     match entry.check(value) {

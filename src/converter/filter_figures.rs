@@ -106,14 +106,7 @@ impl<'a> Orbit<'a> {
             least = values.iter().copied().fold(least, f64::min);
             peak = values.iter().copied().fold(peak, f64::max);
         }
-        let variance = (square - mean * mean).max(0.0);
-        CurrentFigures {
-            average,
-            ripple: peak - least,
-            peak: average + peak - mean,
-            least: average + least - mean,
-            rms: (average * average + variance).sqrt(),
-        }
+        CurrentFigures::moved(average, (mean, square), (least, peak))
     }
 }
 

@@ -51,6 +51,20 @@ pub struct CurrentFigures {
     pub rms: f64,
 }
 
+impl CurrentFigures {
+    /// Figures of a waveform of this mean and mean square [A, A²] and these extremes [A], moved to another average [A].
+    pub(super) fn moved(average: f64, (mean, square): (f64, f64), (least, peak): (f64, f64)) -> Self {
+        let variance = (square - mean * mean).max(0.0);
+        CurrentFigures {
+            average,
+            ripple: peak - least,
+            peak: average + peak - mean,
+            least: average + least - mean,
+            rms: (average * average + variance).sqrt(),
+        }
+    }
+}
+
 /// An inductor and its current.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct InductorFigures {

@@ -164,14 +164,7 @@ impl Orbit<'_> {
             least = least.min(value);
             peak = peak.max(value);
         }
-        let variance = (square - mean * mean).max(0.0);
-        CurrentFigures {
-            average,
-            ripple: peak - least,
-            peak: average + peak - mean,
-            least: average + least - mean,
-            rms: (average * average + variance).sqrt(),
-        }
+        CurrentFigures::moved(average, (mean, square), (least, peak))
     }
 }
 

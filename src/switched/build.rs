@@ -415,7 +415,7 @@ impl Builder<'_> {
             rates.extend(sources.iter().enumerate().map(rate));
             sensed = filtered(awake);
         }
-        let output = outputs.get(self.places.output_voltage).cloned().unwrap_or_else(|| layout.zero());
+        let output = outputs.get(self.places.stage.output_voltage).cloned().unwrap_or_else(|| layout.zero());
         let outer = self.outer(&output, &outputs);
         let control = outer.control;
         let mut inner = Controlling::none(layout.zero());

@@ -83,7 +83,7 @@ fn output_step(orbit: &Orbit) -> (f64, f64) {
     let acts = |event: Event| matches!(event, Event::Switch | Event::Given);
     let Some(place) = orbit.phases.iter().position(|phase| acts(phase.end)) else { return (0.0, 0.0) };
     let (Some(phase), Some(x)) = (orbit.phases.get(place), orbit.ends.get(place)) else { return (0.0, 0.0) };
-    let row = system.places.output_voltage;
+    let row = system.places.stage.output_voltage;
     let (before, behind) =
         (system.piece(phase.configuration), system.piece(after(&system.rule, phase.configuration, phase.end)));
     let step = behind.value(row, x, &orbit.inputs) - before.value(row, x, &orbit.inputs);

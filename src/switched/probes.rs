@@ -48,15 +48,7 @@ pub(super) fn stage_probes(equations: &SwitchingEquations) -> (Vec<Probe>, Place
         probes.push(Probe { name: name.to_owned(), unit });
     }
     let places = Places {
-        output_voltage: rows.output_voltage,
-        load_voltage: rows.load_voltage,
-        bank_voltage: rows.bank_voltage,
-        switch_node: rows.switch_node,
-        switch_voltage: rows.switch_voltage,
-        rectifier_voltage: rows.rectifier_voltage,
-        input_current: rows.input_current,
-        switch_current: rows.switch_current,
-        rectifier_current: rows.rectifier_current,
+        stage: rows.clone(),
         switched_current: count,
         inductor_currents: rows
             .inductor_currents
@@ -64,7 +56,6 @@ pub(super) fn stage_probes(equations: &SwitchingEquations) -> (Vec<Probe>, Place
             .copied()
             .chain(rows.filter_inductors.iter().map(|(_, row)| *row))
             .collect(),
-        branch_currents: rows.branch_currents.clone(),
         sensed_current: count + 1,
         control_voltage: count + 2,
         compared: count + 3,

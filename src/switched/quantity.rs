@@ -105,11 +105,11 @@ impl<'a> Reader<'a> {
         let system = &response.orbit().system;
         let places = &system.places;
         let (input, probe) = match quantity {
-            Quantity::Plant => (inputs::CONTROL, places.output_voltage),
+            Quantity::Plant => (inputs::CONTROL, places.stage.output_voltage),
             Quantity::LoopGain => (inputs::CONTROL, places.control_voltage),
-            Quantity::OutputImpedance => (inputs::LOAD_CURRENT, places.load_voltage),
-            Quantity::LineToOutput => (inputs::INPUT_VOLTAGE, places.load_voltage),
-            Quantity::ReferenceToOutput => (inputs::REFERENCE, places.load_voltage),
+            Quantity::OutputImpedance => (inputs::LOAD_CURRENT, places.stage.load_voltage),
+            Quantity::LineToOutput => (inputs::INPUT_VOLTAGE, places.stage.load_voltage),
+            Quantity::ReferenceToOutput => (inputs::REFERENCE, places.stage.load_voltage),
         };
         let reading = response.reading(input, &[probe])?;
         let (control_row, period_s) = (places.control_voltage, system.period_s);

@@ -165,7 +165,7 @@ impl Search<'_> {
         let (system, n) = (self.system, self.system.order());
         let piece = system.piece(phase.configuration);
         let flow = if let Some((column, _)) = self.wanted.output {
-            let place = (system.places.output_voltage, column);
+            let place = (system.places.stage.output_voltage, column);
             let read = ReadFlow::new(piece, &guess.inputs, phase.length_s, place).ok()?;
             carried.mean += (&read.read * &carried.x)[0] + read.read_push;
             carried.mean_by += &read.read * &carried.by;
@@ -184,7 +184,7 @@ impl Search<'_> {
         carried.x = flow.end(&carried.x);
         if lengthens.iter().any(|k| *k != 0.0) {
             let rates = piece.rates(&carried.x, &guess.inputs);
-            let output = piece.value(system.places.output_voltage, &carried.x, &guess.inputs);
+            let output = piece.value(system.places.stage.output_voltage, &carried.x, &guess.inputs);
             for (k, lengthens) in lengthens.into_iter().enumerate() {
                 carried.by.column_mut(n + k).axpy(lengthens, &rates, 1.0);
                 carried.mean_by[n + k] += lengthens * output;

@@ -127,20 +127,20 @@ impl Orbit {
         let places = &self.system.places;
         let probes = self.system.probes.len();
         // The voltage on each branch's capacitance: the bank's less what its resistance drops.
-        let branches = places.branch_currents.len();
+        let branches = places.stage.branch_currents.len();
         let mut extra = DMatrix::zeros(branches, probes);
-        for (k, (row, esr)) in places.branch_currents.iter().zip(&self.system.bank_esr).enumerate() {
-            extra[(k, places.bank_voltage)] = 1.0;
+        for (k, (row, esr)) in places.stage.branch_currents.iter().zip(&self.system.bank_esr).enumerate() {
+            extra[(k, places.stage.bank_voltage)] = 1.0;
             extra[(k, *row)] = -esr;
         }
         let figures = self.gather(&extra)?;
-        let current = |k: usize| places.branch_currents.get(k).and_then(|row| figures.get(*row));
+        let current = |k: usize| places.stage.branch_currents.get(k).and_then(|row| figures.get(*row));
         let most = (0..branches)
             .max_by(|p, q| current(*p).map_or(0.0, |f| f.rms).total_cmp(&current(*q).map_or(0.0, |f| f.rms)));
         let ripple = most.and_then(|branch| {
             Some(OutputRipple {
-                load: figures.get(places.load_voltage)?.swing(),
-                bank: figures.get(places.bank_voltage)?.swing(),
+                load: figures.get(places.stage.load_voltage)?.swing(),
+                bank: figures.get(places.stage.bank_voltage)?.swing(),
                 capacitive: figures.get(probes + branch)?.swing(),
                 resistive: current(branch)?.swing() * self.system.bank_esr.get(branch)?,
                 branch,

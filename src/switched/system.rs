@@ -5,6 +5,7 @@
 
 use super::interleave::Interleaving;
 use crate::control::Edge;
+use crate::converter::SwitchingRows;
 use crate::quantity::Unit;
 use nalgebra::{DMatrix, DVector, RowDVector};
 
@@ -57,30 +58,12 @@ pub struct Probe {
 /// Rows of the probes that have a part to play.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Places {
-    /// Regulated voltage, a magnitude [V].
-    pub output_voltage: usize,
-    /// Voltage at the load's terminals, a magnitude [V].
-    pub load_voltage: usize,
-    /// Voltage of the output bank, ahead of a second stage, a magnitude [V].
-    pub bank_voltage: usize,
-    /// Voltage of the switch node against ground [V].
-    pub switch_node: usize,
-    /// Voltage across the controlled switch [V].
-    pub switch_voltage: usize,
-    /// Voltage that the rectifier blocks [V].
-    pub rectifier_voltage: usize,
-    /// Current from the ideal source [A].
-    pub input_current: usize,
-    /// Current of the controlled switch [A].
-    pub switch_current: usize,
-    /// Current of the rectifier [A].
-    pub rectifier_current: usize,
+    /// The stage's own outputs.
+    pub stage: SwitchingRows,
     /// Current that stops when both block [A].
     pub switched_current: usize,
     /// Currents of the inductors, those of the filters last [A].
     pub inductor_currents: Vec<usize>,
-    /// Currents into the branches of the output bank [A].
-    pub branch_currents: Vec<usize>,
     /// Control voltage [V].
     pub control_voltage: usize,
     /// What the comparator compares with its ramp [V].

@@ -109,7 +109,7 @@ fn every_topology_under_every_law_rests_on_average_at_its_operating_point() {
             // The compensator hangs on the stage, so the stage's own rest is that of the joint equations.
             let x: DVector<f64> = a.lu().solve(&-(b * &system.steady_inputs)).unwrap();
             let outputs = c * x + d * &system.steady_inputs;
-            let output = outputs[system.places.output_voltage];
+            let output = outputs[system.places.stage.output_voltage];
             assert!((output / case.point.output_voltage - 1.0).abs() < 1e-6, "{} {mode}: {output}", topology.key);
             let current = outputs[system.places.switched_current];
             assert!(
@@ -195,7 +195,7 @@ fn charge_and_volt_seconds_balance_on_random_designs() {
                 assert!(off < 1e-9, "{} {mode}: {name} is off by {off:e}", topology.key);
             }
             let figures = orbit.figures().unwrap();
-            for row in &orbit.system.places.branch_currents {
+            for row in &orbit.system.places.stage.branch_currents {
                 let current = figures[*row];
                 assert!(current.mean.abs() < 1e-9 * current.peak(), "{} {mode}: {current:?}", topology.key);
             }
@@ -223,7 +223,8 @@ fn the_loop_gain_is_the_same_at_either_end_of_the_compensator() {
             let response = Response::new(orbit).unwrap();
             let fs = response.orbit().system.period_s.recip();
             let mut behind = Reader::new(&response, Quantity::LoopGain).unwrap();
-            let ahead = response.reading(inputs::INJECTED, &[response.orbit().system.places.output_voltage]).unwrap();
+            let ahead =
+                response.reading(inputs::INJECTED, &[response.orbit().system.places.stage.output_voltage]).unwrap();
             for share in [1e-3, 0.03, 0.31, 0.77, 1.7] {
                 let returned = ahead.values(share * fs).unwrap()[0];
                 let (first, second) = (-returned / (1.0 + returned), behind.at(share * fs).unwrap());

@@ -107,6 +107,7 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
     };
     let title = Some(design.title.clone());
     let mut problems = set(&mut design, &request.settings);
+    let idle = without_part(&design, &request.settings);
     let checked = match design.check() {
         Ok(checked) if problems.is_empty() => checked,
         Ok(_) => return unusable(title, problems),
@@ -124,6 +125,7 @@ fn report(path: &Path, request: &CheckRequest) -> Report {
         findings.insert(0, finding.clone());
     }
     findings.extend(outside((request.input_voltage, request.load_current), &checked.stage));
+    findings.extend(idle);
     let switched = request
         .switched
         .then(|| Switched { referee: referee(&checked, &asked), steady: steady(&checked, asked.shown).ok() });
@@ -193,4 +195,14 @@ fn judge(analysis: &Analysis) -> Outcome {
     };
     let all_sound = detail.loop_gain.stable() && analysis.conditions.iter().all(|c| sound(&c.outcome));
     if all_sound && analysis.all_met() { Outcome::Met } else { Outcome::NotMet }
+}
+
+/// Notes about entries that were set and play no part under the choices made.
+pub(super) fn without_part(design: &Design, settings: &[(String, String)]) -> Vec<Finding> {
+    let plays = |path: &str| {
+        design.entries().iter().any(|entry| entry.path == path)
+            || design.choice_rows().iter().any(|choice| choice.path == path)
+    };
+    let idle = settings.iter().filter(|(path, _)| !plays(path));
+    idle.map(|(path, _)| Finding::note(path, "It was set, but plays no part in a design of these choices.")).collect()
 }

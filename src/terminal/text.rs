@@ -72,9 +72,10 @@ fn heading(report: &Report) -> String {
     }
 }
 
-/// A name padded to its column; widths are counted in characters, as all that is printed here is one column wide.
+/// A name padded to its column, one that fills it set apart by a space; widths are counted in characters, as all that is printed
+/// here is one column wide.
 pub(super) fn padded(text: &str, width: usize) -> String {
-    let missing = width.saturating_sub(text.chars().count());
+    let missing = width.saturating_sub(text.chars().count()).max(1);
     format!("{text}{}", " ".repeat(missing))
 }
 

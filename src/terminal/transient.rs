@@ -1,7 +1,7 @@
 //! `polewright transient`: reads, sets and checks a design, follows it through an event, reports, and writes the waveforms.
 
 use super::arguments::TransientCommand;
-use super::check::{Outcome, outside, set, shown};
+use super::check::{Outcome, outside, set, shown, without_part};
 use super::json::{FindingRow, escaped, finding_row};
 use super::text::{findings, row};
 use crate::analysis::{
@@ -14,8 +14,7 @@ use crate::sheet::write_waveforms;
 use crate::switched::{Cancel, Progress};
 use serde::Serialize;
 use std::fmt::Write as _;
-use std::fs::File;
-use std::io::{self, BufWriter, Write};
+use std::io::{self, Write};
 use std::path::Path;
 
 /// A run that was made.
@@ -63,7 +62,7 @@ pub fn transient(request: &TransientCommand, out: &mut impl Write, err: &mut imp
         format!("{}\n", escaped(&serde_json::to_string_pretty(&object)?))
     } else {
         let heading = title.map_or(file.clone(), |title| format!("{title} ({file})")).replace(['\n', '\r'], " ");
-        printable(&report(&heading, request, followed.as_ref(), &notices))
+        printable(&report(&heading, request, (followed.as_ref(), written.is_ok()), &notices))
     };
     if followed.is_none() && !request.json {
         err.write_all(text.as_bytes())?;
@@ -83,6 +82,7 @@ fn run(request: &TransientCommand) -> (Option<String>, Ran) {
     };
     let title = Some(design.title.clone());
     let mut problems = set(&mut design, &request.settings);
+    let idle = without_part(&design, &request.settings);
     let checked = match design.check() {
         Ok(checked) if problems.is_empty() => checked,
         Ok(_) => return (title, Err(problems)),
@@ -99,6 +99,7 @@ fn run(request: &TransientCommand) -> (Option<String>, Ran) {
         Ok(transient) => {
             let mut notices = transient.notices.clone();
             notices.extend(outside(asked, &checked.stage));
+            notices.extend(idle);
             (title, Ok((Followed { design: checked, transient }, notices)))
         }
         Err(problem) => (title, Err(vec![problem])),
@@ -107,8 +108,9 @@ fn run(request: &TransientCommand) -> (Option<String>, Ran) {
 
 fn write_csv(transient: &Transient, path: &Path) -> io::Result<()> {
     let named = |error: io::Error| io::Error::new(error.kind(), format!("{}: {error}", path.display()));
-    let file = File::create(path).map_err(named)?;
-    write_waveforms(&transient.waveforms, BufWriter::new(file)).map_err(named)
+    let mut bytes = Vec::new();
+    write_waveforms(&transient.waveforms, &mut bytes).map_err(named)?;
+    file::replace(path, &bytes).map_err(named)
 }
 
 fn end_s(transient: &Transient) -> f64 {
@@ -121,13 +123,19 @@ fn signed(value: f64) -> String {
     format!("{}{}", if value > 0.0 { "+" } else { "" }, print(value, Unit::Volt))
 }
 
-fn report(heading: &str, request: &TransientCommand, followed: Option<&Followed>, notices: &[Finding]) -> String {
+/// The report; `written` says whether the waveforms asked for are in their file.
+fn report(
+    heading: &str,
+    request: &TransientCommand,
+    (followed, written): (Option<&Followed>, bool),
+    notices: &[Finding],
+) -> String {
     let mut text = format!("{heading}\n");
     if let Some(followed) = followed {
         let (transient, design) = (&followed.transient, &followed.design);
         let _ = writeln!(text, "{} at {}\n", transient.event.name(), transient.condition.label);
         told(&mut text, transient, design);
-        if let Some(path) = &request.csv {
+        if let Some(path) = request.csv.as_ref().filter(|_| written) {
             let _ = writeln!(text, "Waveforms: {}\n", path.display());
         }
     }

@@ -88,7 +88,7 @@ fn multipliers_and_figures_are_those_of_the_independent_orbit() {
         let places = &orbit.system.places;
         let figures = orbit.figures().expect("finite");
         for (name, probe) in
-            [("first_inductor", places.inductor_currents[0]), ("output_voltage", places.output_voltage)]
+            [("first_inductor", places.inductor_currents[0]), ("output_voltage", places.stage.output_voltage)]
         {
             let [least, greatest, mean, rms] = list(&row["figures"][name]) else { panic!("four figures") };
             let (found, scale) = (&figures[probe], number(rms));

@@ -91,7 +91,7 @@ fn a_slow_change_of_the_control_voltage_walks_along_the_steady_curve() {
         let start = Start { duty: orbit.duty, second_duty: second_duty(orbit) };
         let control = orbit.inputs[system.input(inputs::CONTROL).expect("an input")];
         let wanted =
-            slope(&system, start, inputs::CONTROL, 2e-3 * control.abs().max(0.05), system.places.output_voltage);
+            slope(&system, start, inputs::CONTROL, 2e-3 * control.abs().max(0.05), system.places.stage.output_voltage);
         let slow = 1e-9 / system.period_s;
         let found = exact.reader(Quantity::Plant).expect("a plant").at(slow).expect("a value");
         nearly(&design.title, found, wanted);
@@ -114,7 +114,7 @@ fn slow_changes_of_reference_line_and_load_walk_along_the_closed_loop_s_steady_c
         let Ok(exact) = try_exact_loop(design, None) else { return };
         let orbit = exact.closed.orbit();
         let start = Start { duty: orbit.duty, second_duty: second_duty(orbit) };
-        let (system, row) = (&orbit.system, orbit.system.places.load_voltage);
+        let (system, row) = (&orbit.system, orbit.system.places.stage.load_voltage);
         let slow = 1e-9 / system.period_s;
         let read = |quantity| exact.reader(quantity).expect("a reading").at(slow).expect("a value");
         nearly(

@@ -1,6 +1,6 @@
 //! The exact switched model in the reports: what they print is what the library gives, and the exit code follows it.
 
-use super::{check, code, json, number, sample_path, text};
+use super::{check, code, json, number, program, sample_path, text};
 use polewright::analysis::{Level, Request, Shown, referee, steady};
 use polewright::design::file::load;
 use polewright::design::sample;
@@ -114,4 +114,22 @@ fn a_switched_loop_that_is_not_stable_is_not_met() {
     let told = report["findings"].as_array().expect("a list").iter();
     let told: Vec<&str> = told.filter_map(|finding| finding["message"].as_str()).collect();
     assert!(told.iter().any(|message| message.contains("period doubling")), "{told:?}");
+}
+
+/// What is set and plays no part is said; a file that cannot be written is told and not named as written.
+#[test]
+fn idle_settings_and_unwritable_waveforms_are_told() {
+    let sample = sample_path("harbour-light.ron");
+    let told = check(&[&sample, "--set", "stage.transformer.ratio=0.5"]);
+    assert!(text(&told.stdout).contains("plays no part"), "{}", text(&told.stdout));
+    let told = check(&[&sample, "--set", "stage.inductor.inductance=20u"]);
+    assert!(!text(&told.stdout).contains("plays no part"), "{}", text(&told.stdout));
+    let folder = tempfile::tempdir().expect("a folder");
+    let path = folder.path().join("missing").join("x.csv");
+    let path = path.to_str().expect("a path");
+    let ended =
+        program().args(["transient", sample.as_str(), "--event", "load-step", "--csv", path]).output().expect("runs");
+    assert!(!ended.status.success() && text(&ended.stderr).contains("x.csv"), "{}", text(&ended.stderr));
+    assert!(!text(&ended.stdout).contains("Waveforms:"), "{}", text(&ended.stdout));
+    assert!(std::fs::read_dir(folder.path()).expect("a folder").next().is_none());
 }

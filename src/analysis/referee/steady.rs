@@ -67,13 +67,13 @@ fn rows(system: &SwitchedSystem) -> Vec<(usize, WaveKind, String)> {
     };
     let mut rows: Vec<(usize, WaveKind, String)> = Vec::new();
     rows.extend(places.inductor_currents.iter().map(|row| (*row, WaveKind::Inductor, name(*row))));
-    rows.push((places.switch_current, WaveKind::Switch, "switch".to_owned()));
-    rows.push((places.rectifier_current, WaveKind::Rectifier, "rectifier".to_owned()));
-    rows.extend(places.branch_currents.iter().map(|row| (*row, WaveKind::Capacitor, name(*row))));
-    rows.push((places.input_current, WaveKind::Input, "input".to_owned()));
-    rows.push((places.switch_node, WaveKind::SwitchNode, "switch node".to_owned()));
-    rows.push((places.load_voltage, WaveKind::Output, LOAD.to_owned()));
-    rows.push((places.output_voltage, WaveKind::Output, SENSED.to_owned()));
+    rows.push((places.stage.switch_current, WaveKind::Switch, "switch".to_owned()));
+    rows.push((places.stage.rectifier_current, WaveKind::Rectifier, "rectifier".to_owned()));
+    rows.extend(places.stage.branch_currents.iter().map(|row| (*row, WaveKind::Capacitor, name(*row))));
+    rows.push((places.stage.input_current, WaveKind::Input, "input".to_owned()));
+    rows.push((places.stage.switch_node, WaveKind::SwitchNode, "switch node".to_owned()));
+    rows.push((places.stage.load_voltage, WaveKind::Output, LOAD.to_owned()));
+    rows.push((places.stage.output_voltage, WaveKind::Output, SENSED.to_owned()));
     rows.push((places.control_voltage, WaveKind::Control, "control".to_owned()));
     rows.push((places.compared, WaveKind::Control, "compared".to_owned()));
     rows
@@ -108,9 +108,15 @@ fn waves(orbit: &Orbit, mut waveforms: SteadyWaveforms) -> Vec<Wave> {
 
 fn stress(system: &SwitchedSystem, figures: &[Figures]) -> Vec<Stress> {
     let places = &system.places;
-    let currents = places.inductor_currents.iter().chain([&places.switch_current, &places.rectifier_current]);
-    let currents = currents.chain(&places.branch_currents).chain([&places.input_current]);
-    let voltages = [&places.switch_voltage, &places.rectifier_voltage, &places.load_voltage, &places.control_voltage];
+    let currents =
+        places.inductor_currents.iter().chain([&places.stage.switch_current, &places.stage.rectifier_current]);
+    let currents = currents.chain(&places.stage.branch_currents).chain([&places.stage.input_current]);
+    let voltages = [
+        &places.stage.switch_voltage,
+        &places.stage.rectifier_voltage,
+        &places.stage.load_voltage,
+        &places.control_voltage,
+    ];
     let row = |row: &usize, unit: Unit| {
         let (probe, figures) = (system.probes.get(*row)?, figures.get(*row)?);
         // A capacitor's mean current is nothing but rounding, as is what is left of a current at rest.

@@ -119,7 +119,7 @@ impl Model {
 /// Adds input voltage and load current to what can be looked at.
 fn add_outside(system: &mut SwitchedSystem, siemens: f64) {
     let columns = [inputs::INPUT_VOLTAGE, inputs::LOAD_CURRENT].map(|name| system.input(name));
-    let load_row = system.places.load_voltage;
+    let load_row = system.places.stage.load_voltage;
     for piece in &mut system.pieces {
         let last = piece.c.nrows();
         let (c, d) = (std::mem::take(&mut piece.c), std::mem::take(&mut piece.d));
@@ -150,17 +150,22 @@ fn nothing(system: &SwitchedSystem, law: &ControlLaw) -> Option<(usize, f64)> {
 /// Probes in the order shown; places of the inductors and of the switch among them.
 fn shown(system: &SwitchedSystem) -> (Vec<usize>, Vec<usize>, usize) {
     let places = &system.places;
-    let outside = system.probe(LOAD).unwrap_or(places.load_voltage);
-    let mut rows = vec![places.load_voltage];
-    if places.output_voltage != places.load_voltage {
-        rows.push(places.output_voltage);
+    let outside = system.probe(LOAD).unwrap_or(places.stage.load_voltage);
+    let mut rows = vec![places.stage.load_voltage];
+    if places.stage.output_voltage != places.stage.load_voltage {
+        rows.push(places.stage.output_voltage);
     }
     rows.extend([outside, places.control_voltage]);
     let first = rows.len();
     rows.extend(&places.inductor_currents);
     let inductors = (first..rows.len()).collect();
     let switch = rows.len();
-    rows.extend([places.switch_current, places.rectifier_current, places.switch_node, places.input_current]);
+    rows.extend([
+        places.stage.switch_current,
+        places.stage.rectifier_current,
+        places.stage.switch_node,
+        places.stage.input_current,
+    ]);
     rows.extend(system.probe("input voltage"));
     (rows, inductors, switch)
 }

@@ -49,7 +49,7 @@ fn nothing_flows_and_the_output_is_empty() {
                 let Ok(model) = Model::new(&design, &shared, &condition) else { continue };
                 let (x, configuration) = model.system.at_rest(&model.at_rest(0.0));
                 let (piece, places) = (model.system.piece(configuration), &model.system.places);
-                let held = (piece.c.row(places.load_voltage) * &x)[0];
+                let held = (piece.c.row(places.stage.load_voltage) * &x)[0];
                 assert!(held.abs() < 1e-6, "{} {volts:?} {ohms:?}: {held} V", topology.key);
                 for row in &places.inductor_currents {
                     let flows = (piece.c.row(*row) * &x)[0];

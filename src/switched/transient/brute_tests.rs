@@ -30,8 +30,8 @@ fn listened(system: &SwitchedSystem, omega: f64) -> SwitchedSystem {
         (a[(n, n + 1)], a[(n + 1, n)]) = (omega, -omega);
         for (k, injected) in [(n + 2, 0.0), (n + 4, 1.0)] {
             (a[(k, k + 1)], a[(k + 1, k)]) = (-omega, omega);
-            let row = c.row(system.places.output_voltage).into_owned();
-            let direct = piece.d.row(system.places.output_voltage).into_owned();
+            let row = c.row(system.places.stage.output_voltage).into_owned();
+            let direct = piece.d.row(system.places.stage.output_voltage).into_owned();
             let sum = a.row(k) + row;
             a.row_mut(k).copy_from(&sum);
             a[(k, n)] += injected;

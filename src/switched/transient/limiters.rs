@@ -69,7 +69,7 @@ pub(super) fn sink(system: &SwitchedSystem, siemens: f64, level: usize) -> Optio
     Some(Limiter {
         act: Act::Sink { siemens, level },
         name: "",
-        signal: probe(system, system.places.load_voltage),
+        signal: probe(system, system.places.stage.load_voltage),
         force: system.input(inputs::LOAD_CURRENT)?,
         least: f64::NEG_INFINITY,
         greatest: f64::INFINITY,

@@ -102,7 +102,7 @@ impl Plant {
                 all.view_mut((n + probes + i, 0), (1, order)).copy_from(by_states);
                 all.view_mut((n + probes + i, n), (1, m)).copy_from(&(by_inputs * &weights));
             }
-            let integral = all.row(n + system.places.load_voltage).into_owned();
+            let integral = all.row(n + system.places.stage.load_voltage).into_owned();
             all.row_mut(order).copy_from(&integral);
             if let Some(comparator) = fed {
                 let input = system.input(inputs::INPUT_VOLTAGE).unwrap_or(0);

@@ -52,8 +52,8 @@ impl SwitchedSystem {
         let mut a = piece.a.clone();
         if let Some(load) = self.input(inputs::LOAD_CURRENT) {
             let g = rest.load_siemens;
-            let row = piece.c.row(self.places.load_voltage).into_owned();
-            let through = piece.d[(self.places.load_voltage, load)];
+            let row = piece.c.row(self.places.stage.load_voltage).into_owned();
+            let through = piece.d[(self.places.stage.load_voltage, load)];
             a += piece.b.column(load) * row * (g / (1.0 - g * through));
             u[load] = -rest.output_v * rest.total_siemens;
         }

@@ -176,7 +176,7 @@ pub(super) fn machine(system: &SwitchedSystem, scenario: &Scenario<'_>) -> Machi
             recorded.len() - 1
         })
     };
-    let power = power.map(|power| ConstantPower { row: place(system.places.load_voltage), ..power });
+    let power = power.map(|power| ConstantPower { row: place(system.places.stage.load_voltage), ..power });
     let nothing = scenario.nothing.map(|(row, level)| (place(row), level));
     let setup = Setup {
         rule: system.rule.clone(),

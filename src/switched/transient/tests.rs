@@ -72,7 +72,7 @@ impl Case {
             to_s: periods as f64 * self.system.period_s,
             start: (DVector::zeros(self.system.order()), Configuration::Freewheeling),
             columns: 1000,
-            recorded: vec![places.load_voltage, places.control_voltage, places.inductor_currents[0]],
+            recorded: vec![places.stage.load_voltage, places.control_voltage, places.inductor_currents[0]],
             times_s: Vec::new(),
         }
     }
