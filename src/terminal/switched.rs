@@ -251,6 +251,6 @@ fn table(text: &mut String, steady: &Steady) {
     let _ = writeln!(
         text,
         "  {}{whole} peak to peak; {capacitive} from the charge of the capacitors, {resistive} across their ESR\n",
-        padded("Output ripple", WIDTHS.0)
+        padded("output bank ripple", names)
     );
 }

@@ -1,6 +1,6 @@
 //! The operating point of the shown condition: duty ratio, currents, losses.
 
-use eframe::egui::{Align2, RichText, Role, Sense, Ui, WidgetInfo, vec2};
+use eframe::egui::{RichText, Role, Sense, Ui, Vec2, WidgetInfo, pos2, vec2};
 
 use super::explain;
 use super::theme::{self, palette};
@@ -79,12 +79,23 @@ fn capital(word: &str) -> String {
     letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
 }
 
+/// Height of a line, and the least room between name and value on one.
+const LINE: f32 = 18.0;
+const APART: f32 = 8.0;
+
+/// Name and value on one line; the value on a line of its own where both have no room.
 fn row_ui(ui: &mut Ui, row: &Row) {
     let palette = palette(ui);
-    let (rect, response) = ui.allocate_exact_size(vec2(ui.available_width(), 18.0), Sense::hover());
-    let painter = ui.painter();
-    painter.text(rect.left_center(), Align2::LEFT_CENTER, &row.name, theme::body(), palette.weak);
-    painter.text(rect.right_center(), Align2::RIGHT_CENTER, &row.value, theme::body(), palette.ink);
+    let galley = |text: &str, color| ui.painter().layout_no_wrap(text.to_owned(), theme::body(), color);
+    let (name, value) = (galley(&row.name, palette.weak), galley(&row.value, palette.ink));
+    let width = ui.available_width();
+    let lines = if name.size().x + value.size().x + APART > width { 2.0 } else { 1.0 };
+    let (rect, response) = ui.allocate_exact_size(vec2(width, lines * LINE), Sense::hover());
+    let place = |size: Vec2, x: f32, line: f32| pos2(x, rect.top() + (line - 0.5) * LINE - size.y / 2.0);
+    let (name_at, value_at) =
+        (place(name.size(), rect.left(), 1.0), place(value.size(), rect.right() - value.size().x, lines));
+    ui.painter().galley(name_at, name, palette.weak);
+    ui.painter().galley(value_at, value, palette.ink);
     response.widget_info(|| WidgetInfo::labeled(Role::Label, true, format!("{}: {}", row.name, row.value)));
     explain::explained(ui, response, row.term, || row.further.clone());
 }

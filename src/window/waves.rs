@@ -63,7 +63,7 @@ fn table_ui(ui: &mut Ui, rect: Rect, steady: &Steady) {
         let volts = |value| quantity::print_digits(value, quantity::Unit::Volt, 3);
         let [whole, capacitive, resistive] = steady.ripple_v.map(volts);
         let text = format!(
-            "Output ripple {whole} peak to peak; {capacitive} of the capacitances alone, {resistive} of their ESR alone."
+            "Ripple of the output bank {whole} peak to peak; {capacitive} of the capacitances alone, {resistive} of their ESR alone."
         );
         ui.add_space(3.0);
         ui.add(egui::Label::new(RichText::new(text).font(theme::small()).color(palette(ui).weak)).wrap());

@@ -53,7 +53,8 @@ fn every_sample_has_its_exact_side_in_both_reports() {
         same(&exact["output_ripple_v"], period.ripple_v[0]);
         let plain = check(&[&path, "--switched"]);
         let printed = text(&plain.stdout);
-        for word in ["Exact switched model", "Multipliers", "Averaged holds to", "What the parts bear", "Output ripple"]
+        for word in
+            ["Exact switched model", "Multipliers", "Averaged holds to", "What the parts bear", "output bank ripple"]
         {
             assert!(printed.contains(word), "{}: {word}\n{printed}", sample.file);
         }
